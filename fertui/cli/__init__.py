@@ -1,0 +1,1 @@
+"""The command line: plain text or JSON of what the workbench answers."""

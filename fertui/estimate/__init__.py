@@ -1,0 +1,1 @@
+"""Where a loop is and where it goes: assimilation, forecast, hindcast, notices."""

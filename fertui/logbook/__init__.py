@@ -1,0 +1,1 @@
+"""What happened: append-only entries in SQLite, import, export, backup."""

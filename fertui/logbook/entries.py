@@ -1,0 +1,58 @@
+"""What an entry of the logbook is. Immutable; a correction is a new entry that names the one it supersedes."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from datetime import datetime
+
+
+@dataclass(frozen=True, slots=True)
+class Value:
+    """One value of an entry: as written, with unit and species, and the canonical number.
+
+    Canonical units: mmol/L for ions, umol/L for micronutrients, meq/L for HCO3, mS/cm at 25 C, L, kg, degrees C, J/cm2, %.
+    ``number`` is None for words (salt, tank, source, reason, lab ...); ``below`` marks ``<0.1``: number is the limit.
+    """
+
+    name: str
+    text: str
+    number: float | None = None
+    unit: str = ""
+    species: str = ""
+    below: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Entry:
+    """One line of the logbook. Times are aware and in UTC. ``number`` is None until the store gave it one."""
+
+    kind: str
+    loop: str
+    at: datetime
+    entered: datetime
+    by: str
+    values: tuple[Value, ...] = ()
+    number: int | None = None
+    point: str = ""
+    zone: str = ""
+    method: str = ""
+    instrument: str = ""
+    note: str = ""
+    doubtful: str = ""
+    supersedes: int | None = None
+    why: str = ""
+    void: bool = False
+
+    def value(self, name: str) -> Value | None:
+        """The value of that name, or None."""
+        return next((value for value in self.values if value.name == name), None)
+
+    def number_of(self, name: str) -> float | None:
+        """Canonical number of the value of that name, or None."""
+        value = self.value(name)
+        return None if value is None else value.number
+
+    def text_of(self, name: str) -> str:
+        """Text of the value of that name as written, or ''."""
+        value = self.value(name)
+        return "" if value is None else value.text

@@ -1,0 +1,1 @@
+"""Physics of one recirculating loop on arrays: uptake, circulation, simulation, account. Knows chemistry alone."""

@@ -1,0 +1,1 @@
+"""Sheets, handover and report as text, CSV and JSON."""

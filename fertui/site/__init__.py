@@ -1,0 +1,1 @@
+"""A grower's site: ``site.toml`` read, checked and written."""

@@ -1,0 +1,1 @@
+"""One function a use case; the only door for the command line and the terminal interface."""
