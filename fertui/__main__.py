@@ -1,0 +1,5 @@
+"""``python -m fertui``."""
+
+from fertui.cli.main import main
+
+raise SystemExit(main())

@@ -1,0 +1,69 @@
+"""Entry point: which command runs, and what its end means to the shell."""
+
+from __future__ import annotations
+
+import os
+import sys
+import traceback
+from collections.abc import Sequence
+from datetime import datetime
+from pathlib import Path
+
+from fertui.refusals import FileTrouble, Refusal
+
+FINE, NO, REFUSED, FILE_TROUBLE, INTERNAL = range(5)
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run one command; returns its exit code. stdout is data, stderr is talk."""
+    words = list(sys.argv[1:] if arguments is None else arguments)
+    try:
+        return _run(words)
+    except Refusal as refusal:
+        return _say(str(refusal), REFUSED)
+    except FileTrouble as trouble:
+        return _say(str(trouble), FILE_TROUBLE)
+    except BrokenPipeError:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return FINE
+    except OSError as trouble:
+        return _say(f"{trouble.strerror or trouble}: {trouble.filename or ''}".rstrip(": "), FILE_TROUBLE)
+    except KeyboardInterrupt:
+        return _say("Stopped.", 130)
+    except Exception:
+        return _say(f"fertui met a fault of its own. What it knows is in {_log_fault()}", INTERNAL)
+
+
+def _run(words: list[str]) -> int:
+    from fertui.cli import parser
+
+    tree = parser.build()
+    if not words:
+        print(tree.format_help())
+        return FINE
+    if not words[0].startswith("-") and words[0] not in parser.COMMANDS:
+        words.insert(0, "open")
+    options = tree.parse_args(words)
+    if options.version:
+        from fertui import __version__
+
+        print(f"fertui {__version__}")
+        return FINE
+    if options.command is None:
+        raise Refusal("No command given. See 'fertui --help'.")
+    from fertui.cli.commands import run
+
+    return run(options)
+
+
+def _say(sentence: str, code: int) -> int:
+    print(f"fertui: {sentence}", file=sys.stderr)
+    return code
+
+
+def _log_fault() -> Path:
+    folder = Path(os.environ.get("XDG_STATE_HOME") or Path.home() / ".local" / "state") / "fertui"
+    folder.mkdir(parents=True, exist_ok=True)
+    path = folder / f"fault-{datetime.now():%Y%m%d-%H%M%S}.log"
+    path.write_text(traceback.format_exc(), encoding="utf-8")
+    return path

@@ -1,0 +1,187 @@
+"""The commands and their options. Examples first: each help text opens with a line that works as it stands."""
+
+from __future__ import annotations
+
+import argparse
+from typing import NoReturn
+
+from fertui.refusals import Refusal
+
+ABOUT = """\
+Track the ions behind the EC of a recirculated nutrient solution, see when K : Ca : Mg, Na or NH4 leave their band,
+and plan what brings them back.
+
+  fertui demo                              look around in an invented site
+  fertui new north --crop tomato --medium coir --layout drain-blend --area 1200
+  fertui record north reading point=drain EC=4.1 pH=5.7 by=MK
+  fertui today north                       state and what to look at, as plain text
+  fertui north                             the terminal interface
+"""
+CLOSING = """\
+exit codes: 0 fine, 1 the answer is no, 2 usage or input refused, 3 logbook or file trouble, 4 internal fault
+fertui advises and you decide. It is no alarm system and no controller.
+"""
+
+
+class Parser(argparse.ArgumentParser):
+    """An argument parser that leaves exit codes to the entry point."""
+
+    def error(self, message: str) -> NoReturn:
+        raise Refusal(f"{message}. See '{self.prog} --help'.")
+
+
+COMMANDS = frozenset(
+    "open demo new completion record supersede void import export backup restore today analysis drift balance forecast "
+    "hindcast plan stock acid round handover report logbook supplies site check".split()
+)
+
+
+def build() -> Parser:
+    """The whole command tree."""
+    parser = Parser(
+        prog="fertui", description=ABOUT, epilog=CLOSING, formatter_class=argparse.RawDescriptionHelpFormatter
+    )
+    parser.add_argument("--version", action="store_true", help="print the version")
+    commands = parser.add_subparsers(dest="command", metavar="COMMAND", parser_class=Parser)
+    _site_commands(commands)
+    _write_commands(commands)
+    _read_commands(commands)
+    _paper_commands(commands)
+    return parser
+
+
+def _add(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:  # type: ignore[type-arg]
+    return commands.add_parser(
+        name, help=about, description=f"  {example}\n\n{about}", formatter_class=argparse.RawDescriptionHelpFormatter
+    )
+
+
+def _site_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+    opened = _add(commands, "open", "open the terminal interface", "fertui open north")
+    opened.add_argument("site", metavar="SITE")
+    opened.add_argument("--at", metavar="TIME", help="show the site as of that time")
+    demo = _add(commands, "demo", "build an invented site and open it", "fertui demo --into demo-site")
+    demo.add_argument("--into", metavar="DIR", help="where to build it (default: a fresh temporary folder)")
+    demo.add_argument("--text", action="store_true", help="print today, forecast and plan instead of opening it")
+    new = _add(
+        commands, "new", "make a site folder from options, or by asking",
+        "fertui new north --crop tomato --medium coir --layout drain-blend --area 1200",
+    )
+    new.add_argument("dir", metavar="DIR")
+    for option, about in NEW_OPTIONS.items():
+        new.add_argument(f"--{option}", metavar=option.upper().replace("-", "_"), help=about)
+    _add(commands, "completion", "print a completion script for bash or zsh", "fertui completion bash").add_argument(
+        "shell", choices=["bash", "zsh"]
+    )
+
+
+NEW_OPTIONS = {
+    "crop": "crop by name, such as tomato or lettuce",
+    "medium": "none, stone-wool, perlite, pumice, coir, coir-new or peat",
+    "layout": "shared-tank, drain-blend or known-feed",
+    "area": "cropped area of the loop [m2]",
+    "tank": "shared tank [L]",
+    "drain-store": "drain store [L]",
+    "medium-volume": "medium [L per m2]",
+    "root-zone-water": "water the medium holds [L per m2]",
+    "target": "target by name: the crop's own, hoagland-1, hoagland-2, steiner",
+    "supplies": "salts and acids on the shelf, separated by commas (default: the common salts)",
+    "stage": "stage of the crop",
+    "name": "name of the site (default: the folder's)",
+    "loop": "name of the loop",
+    "timezone": "time zone such as Europe/Rome (default: this machine's)",
+}
+
+
+def _write_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+    record = _add(commands, "record", "append one entry to the logbook",
+                  "fertui record north reading point=drain EC=4.1 pH=5.7 by=MK")
+    record.add_argument("site", metavar="SITE")
+    record.add_argument("kind", metavar="KIND")
+    record.add_argument("values", nargs="*", metavar="name=value")
+    record.add_argument("--loop", metavar="NAME")
+    correct = _add(commands, "supersede", "correct an entry; the old one stays visible",
+                   'fertui supersede north 41 Ca=5.1 why="misread the report" by=MK')
+    correct.add_argument("site", metavar="SITE")
+    correct.add_argument("number", metavar="NUMBER")
+    correct.add_argument("values", nargs="+", metavar="name=value")
+    strike = _add(commands, "void", "strike an entry; it stays visible",
+                  'fertui void north 41 why="wrong loop" by=MK')
+    strike.add_argument("site", metavar="SITE")
+    strike.add_argument("number", metavar="NUMBER")
+    strike.add_argument("values", nargs="+", metavar="name=value")
+    load = _add(commands, "import", "take in a table", "fertui import north lab.csv --as analysis --dry-run")
+    load.add_argument("site", metavar="SITE")
+    load.add_argument("file", metavar="FILE")
+    load.add_argument("--as", dest="kind", required=True, metavar="KIND")
+    load.add_argument("--dry-run", action="store_true", help="show each conversion and check, write nothing")
+    load.add_argument("--loop", metavar="NAME")
+    load.add_argument("--by", metavar="INITIALS", help="who, where the table has no column 'by'")
+    load.add_argument("--template", metavar="NAME", help="column mapping saved for a laboratory")
+    load.add_argument("--save-template", metavar="NAME", help="save the column mapping under this name")
+    load.add_argument("--json", action="store_true")
+    export = _add(commands, "export", "write the logbook as tables, one a kind", "fertui export north --into tables")
+    export.add_argument("site", metavar="SITE")
+    export.add_argument("--into", required=True, metavar="DIR")
+    backup = _add(commands, "backup", "write the whole book verbatim", "fertui backup north north.jsonl")
+    backup.add_argument("site", metavar="SITE")
+    backup.add_argument("file", metavar="FILE")
+    restore = _add(commands, "restore", "make a site folder from a backup", "fertui restore north.jsonl north-again")
+    restore.add_argument("file", metavar="FILE")
+    restore.add_argument("dir", metavar="DIR")
+
+
+def _reading(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:  # type: ignore[type-arg]
+    parser = _add(commands, name, about, example)
+    parser.add_argument("site", metavar="SITE")
+    parser.add_argument("--loop", metavar="NAME", help="a loop by name (default: the first)")
+    parser.add_argument("--at", metavar="TIME", help="hide events later than TIME (default: now)")
+    parser.add_argument("--known", metavar="TIME", help="also hide entries and corrections made after TIME")
+    parser.add_argument("--unit", choices=["mmol/L", "meq/L", "mg/L"], help="unit shown (default: the site's)")
+    parser.add_argument("--json", action="store_true", help="JSON instead of text")
+    return parser
+
+
+def _period(parser: Parser) -> None:
+    parser.add_argument("--from", dest="start", metavar="TIME", help="start of the period (default: 14 days before)")
+    parser.add_argument("--to", dest="end", metavar="TIME", help="end of the period (default: now)")
+
+
+def _read_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+    _reading(commands, "today", "state and what to look at", "fertui today north")
+    _reading(commands, "analysis", "last analysis against target", "fertui analysis north")
+    drift = _reading(commands, "drift", "shares, ions, EC, pH over time", "fertui drift north --days 28")
+    drift.add_argument("--days", default="28", metavar="N")
+    _period(_reading(commands, "balance", "account of each ion by cause", "fertui balance north --from 2026-05-01"))
+    forecast = _reading(commands, "forecast", "the days ahead", "fertui forecast north --days 14")
+    forecast.add_argument("--days", default="14", metavar="N")
+    hindcast = _reading(commands, "hindcast", "the record of past forecasts", "fertui hindcast north --inputs planned")
+    hindcast.add_argument("--inputs", choices=["logged", "planned"], default="logged")
+    hindcast.add_argument("--seed", metavar="N", help="another seed for the ensemble")
+    plan = _reading(commands, "plan", "what brings the ions back; records nothing", "fertui plan north --days 14")
+    plan.add_argument("--days", default="14", metavar="N", help="horizon; 0: right after mixing, the dosed tank only")
+    plan.add_argument("--target", metavar="NAME")
+    plan.add_argument("--supplies", metavar="A,B,...", help="only these, by name or formula")
+    plan.add_argument("--without", metavar="SALT", action="append", default=[], help="leave a salt out (repeatable)")
+    plan.add_argument("--steps", metavar="N", help="at most so many dosing steps (1-4)")
+    plan.add_argument("--salts", metavar="N", help="at most so many different salts")
+    plan.add_argument("--sheet", metavar="FILE", help="write the sheet to weigh and mix from")
+    plan.add_argument("--cautions-read", action="store_true", help="the cautions of acids and lyes have been read")
+    plan.add_argument("--label-strength", metavar="PERCENT", help="strength read off the acid's label")
+
+
+def _paper_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+    for name, about in (("stock", "stock-tank sheet"), ("acid", "acid sheet")):
+        sheet = _reading(commands, name, about, f"fertui {name} north")
+        sheet.add_argument("--sheet", metavar="FILE", help="write it to a file")
+        sheet.add_argument("--cautions-read", action="store_true", help="the cautions have been read")
+        sheet.add_argument("--label-strength", metavar="PERCENT", help="strength read off the acid's label")
+    _reading(commands, "round", "blank round sheet with last values", "fertui round north")
+    _reading(commands, "handover", "one-page shift handover", "fertui handover north")
+    _period(_reading(commands, "report", "report for consultant or auditor", "fertui report north --from 2026-05-01"))
+    _reading(commands, "logbook", "every entry, struck ones too", "fertui logbook north").add_argument(
+        "--kind", metavar="KIND"
+    )
+    _reading(commands, "supplies", "salts, acids, stock tanks", "fertui supplies north")
+    _reading(commands, "site", "targets, bands and limits, and where each comes from", "fertui site north")
+    _reading(commands, "check", "site file, logbook, watch list, this machine", "fertui check north")
