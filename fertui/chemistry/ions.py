@@ -11,27 +11,16 @@ from collections.abc import Mapping
 import numpy as np
 import numpy.typing as npt
 
+from fertui.chemistry.names import ATOMIC_WEIGHT, CATIONS, CHARGES, INDEX, IONS, MICRONUTRIENTS
+
+__all__ = [
+    "ATOMIC_WEIGHT", "CATIONS", "CATION_CHARGE", "CHARGE", "INDEX", "IONS", "MICRONUTRIENTS", "Array", "mapping", "vector",
+]
+
 Array = npt.NDArray[np.float64]
 
-IONS = ("K", "Ca", "Mg", "Na", "NH4", "NO3", "Cl", "SO4", "H2PO4", "HCO3")
-"""Order of the last axis of every composition."""
-
-CATIONS = IONS[:5]
-"""The five exchangeable cations, in the order the exchanger uses."""
-
-MICRONUTRIENTS = ("Fe", "Mn", "Zn", "B", "Cu", "Mo", "Si")
-"""Carried in umol/L through recipes, analyses and sheets, without exchange."""
-
-INDEX = {ion: position for position, ion in enumerate(IONS)}
-CHARGE: Array = np.array([1.0, 2.0, 2.0, 1.0, 1.0, -1.0, -1.0, -2.0, -1.0, -1.0])
+CHARGE: Array = np.array([CHARGES[ion] for ion in IONS], dtype=float)
 CATION_CHARGE: Array = CHARGE[:5]
-
-ATOMIC_WEIGHT = {
-    "H": 1.008, "B": 10.81, "C": 12.011, "N": 14.007, "O": 15.999, "Na": 22.990, "Mg": 24.305, "Si": 28.085,
-    "P": 30.974, "S": 32.06, "Cl": 35.45, "K": 39.098, "Ca": 40.078, "Mn": 54.938, "Fe": 55.845, "Cu": 63.546,
-    "Zn": 65.38, "Mo": 95.95,
-}
-"""Standard atomic weights, abridged to five digits: IUPAC CIAAW 2021 table, Pure Appl. Chem. 94:573 (from memory)."""
 
 
 def vector(ions_mmol_per_l: Mapping[str, float | Array]) -> Array:

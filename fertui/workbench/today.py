@@ -7,17 +7,7 @@ from dataclasses import dataclass
 from datetime import datetime
 
 from fertui.estimate.points import PointState
-
-
-@dataclass(frozen=True, slots=True)
-class Seen:
-    """The latest reading or analysis: when, where, and its canonical numbers by name (EC, pH, temperature, ions)."""
-
-    number: int
-    at: datetime
-    point: str
-    by: str
-    values: Mapping[str, float]
+from fertui.workbench.glance import Seen
 
 
 @dataclass(frozen=True, slots=True)
