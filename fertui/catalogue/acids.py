@@ -1,0 +1,140 @@
+"""Acids and liquid alkalis by name: density and content at the strength on the label."""
+
+from __future__ import annotations
+
+import difflib
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from functools import cache
+from itertools import pairwise
+from typing import Any
+
+from fertui.catalogue.figures import CatalogueError, Provenance, table
+from fertui.catalogue.formula import molar_mass
+
+
+@dataclass(frozen=True, slots=True)
+class Acid:
+    """An acid or a liquid alkali.
+
+    ``gives``: mol of each ion per mol (HCO3: alkalinity, negative for an acid). ``protons``: equivalents of alkalinity
+    consumed per mol, negative for an alkali. ``densities``: (strength [mass %], density at 20 C [kg/m3]), rising.
+    """
+
+    name: str
+    formula: str
+    gives: Mapping[str, float]
+    protons: float
+    densities: tuple[tuple[float, float], ...]
+    aliases: tuple[str, ...] = ()
+    cautions: tuple[str, ...] = ()
+    note: str = ""
+    sources: Mapping[float, Provenance] = field(default_factory=dict)
+
+    @property
+    def molar_mass(self) -> float:
+        """Molar mass [g/mol]."""
+        return molar_mass(self.formula)
+
+    @property
+    def is_acid(self) -> bool:
+        """Whether it consumes alkalinity."""
+        return self.protons > 0
+
+    @property
+    def strongest_pct(self) -> float:
+        """Highest strength [mass %] the density table reaches."""
+        return self.densities[-1][0]
+
+    def density(self, strength_pct: float) -> float:
+        """Density at 20 C [kg/L] of that strength [mass %], linear between the tabulated strengths.
+
+        Raises ``CatalogueError`` for a strength that is not above 0 and within the table.
+
+        >>> round(acid("nitric").density(60), 3)
+        1.367
+        """
+        self.check_strength(strength_pct)
+        for (thin, light), (strong, heavy) in pairwise(self.densities):
+            if strength_pct <= strong:
+                return (light + (strength_pct - thin) / (strong - thin) * (heavy - light)) / 1000.0
+        raise AssertionError("check_strength lets no strength beyond the table pass")
+
+    def mol_per_l(self, strength_pct: float, density_kg_per_l: float | None = None) -> float:
+        """Concentration [mol/L at 20 C] of that strength [mass %]; the label's density goes before the table's.
+
+        >>> round(acid("HNO3").mol_per_l(60), 2)
+        13.02
+        """
+        density = self.density(strength_pct) if density_kg_per_l is None else density_kg_per_l
+        return strength_pct / 100.0 * density * 1000.0 / self.molar_mass
+
+    def mmol_per_kg(self, strength_pct: float) -> dict[str, float]:
+        """mmol of each ion per kg of product (HCO3: alkalinity [meq/kg], negative in an acid); strength [mass %]."""
+        self.check_strength(strength_pct)
+        moles = 1e4 * strength_pct / self.molar_mass
+        return {ion: moles * count for ion, count in self.gives.items()}
+
+    def source(self, strength_pct: float) -> Provenance:
+        """Where the density at that strength comes from: the less certain of the two tabulated neighbours."""
+        self.check_strength(strength_pct)
+        for (thin, _), (strong, _) in pairwise(self.densities):
+            if strength_pct == strong:
+                return self.sources[strong]
+            if strength_pct < strong:
+                return max(self.sources[thin], self.sources[strong], key=lambda each: each.status == "from memory")
+        raise AssertionError("check_strength lets no strength beyond the table pass")
+
+    def check_strength(self, strength_pct: float) -> None:
+        """Refuse a strength [mass %] that is no number, not above 0, or beyond the density table."""
+        if not math.isfinite(strength_pct) or not 0.0 < strength_pct <= self.strongest_pct:
+            raise CatalogueError(
+                f"{self.name}: strength {strength_pct:g} % is not possible here; give the mass % on the label, "
+                f"above 0 and up to {self.strongest_pct:g} %."
+            )
+
+
+@cache
+def acids() -> tuple[Acid, ...]:
+    """Every acid and liquid alkali of the catalogue, in the order of ``acids.toml``."""
+    data = table("acids")
+    sources = {name: Provenance(**entry) for name, entry in data["sources"].items()}
+    return tuple(_acid(entry, sources) for entry in data["acids"])
+
+
+def acid(name: str) -> Acid:
+    """The acid or liquid alkali of that name, formula or alias.
+
+    Raises ``CatalogueError`` with the nearest names for one that is not in the catalogue.
+
+    >>> acid("sulphuric acid").formula
+    'H2SO4'
+    """
+    by_name = {_key(each): entry for entry in acids() for each in (entry.name, entry.formula, *entry.aliases)}
+    if _key(name) not in by_name:
+        near = difflib.get_close_matches(_key(name)[:60], by_name, n=2)
+        known = [by_name[each].name for each in near] or [entry.name for entry in acids()]
+        raise CatalogueError(f"{name[:60]!r} is not an acid or lye of the catalogue; known: {', '.join(known)}.")
+    return by_name[_key(name)]
+
+
+def _key(name: str) -> str:
+    return "".join(name.lower().split())
+
+
+def _acid(entry: Mapping[str, Any], sources: Mapping[str, Provenance]) -> Acid:
+    densities = tuple((float(strength), float(density)) for strength, density in entry["density"].items())
+    computed = {float(strength) for strength in entry["computed"]}
+    origin = {True: sources[entry["computed_source"]], False: sources[entry["density_source"]]}
+    return Acid(
+        name=entry["name"],
+        formula=entry["formula"],
+        gives=entry["gives"],
+        protons=entry["protons"],
+        densities=densities,
+        aliases=tuple(entry["aliases"]),
+        cautions=tuple(entry["cautions"]),
+        note=entry.get("note", ""),
+        sources={strength: origin[strength in computed] for strength, _ in densities},
+    )

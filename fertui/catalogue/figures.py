@@ -1,0 +1,78 @@
+"""What every number of the catalogue carries: where it comes from and how far that has been checked."""
+
+from __future__ import annotations
+
+import tomllib
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from importlib import resources
+from typing import Any
+
+from fertui.refusals import Refusal
+
+STATUSES = ("seen", "second-hand", "computed", "common practice", "derived", "from memory")
+"""How a number is known, best first: read in the source itself; read in a text that cites it; arithmetic on the
+numbers given; said in the trade without a source; our own inference; remembered and not yet verified."""
+
+UNVERIFIED = ("derived", "from memory")
+
+
+class CatalogueError(Refusal):
+    """A salt, acid, crop or label analysis that the catalogue cannot accept; the message says why and what to do."""
+
+
+@dataclass(frozen=True, slots=True)
+class Provenance:
+    """Where a number comes from (``text``) and how it is known (one of ``STATUSES``)."""
+
+    text: str
+    status: str
+
+    @property
+    def shown(self) -> str:
+        """The source as a grower sees it; what nobody has verified is called an unverified preset.
+
+        >>> Provenance("Sonneveld & Voogt 2009", "from memory").shown
+        'unverified preset (from memory: Sonneveld & Voogt 2009)'
+        >>> Provenance("Eurofins 2016", "second-hand").shown
+        'Eurofins 2016 (second-hand)'
+        """
+        if self.status in UNVERIFIED:
+            return f"unverified preset ({self.status}: {self.text})"
+        return self.text if self.status == "seen" else f"{self.text} ({self.status})"
+
+
+@dataclass(frozen=True, slots=True)
+class Range:
+    """A band or limit; a side that is None is open."""
+
+    low: float | None
+    high: float | None
+    source: Provenance
+
+
+@dataclass(frozen=True, slots=True)
+class Recipe:
+    """Ions [mmol/L], micronutrients [umol/L], EC [mS/cm at 25 C] and pH of a published solution or target.
+
+    ``unverified`` names the entries whose number does not come from ``source`` but is our own guess.
+    """
+
+    source: Provenance
+    ions: Mapping[str, float] = field(default_factory=dict)
+    micronutrients: Mapping[str, float] = field(default_factory=dict)
+    ec: float | None = None
+    ph: float | None = None
+    unverified: tuple[str, ...] = ()
+
+    @property
+    def shown_source(self) -> str:
+        """Source as a grower sees it, naming the numbers in it that are unverified presets."""
+        if not self.unverified:
+            return self.source.shown
+        return f"{self.source.shown}; unverified preset: {', '.join(self.unverified)}"
+
+
+def table(name: str) -> dict[str, Any]:
+    """One TOML file of this room, read."""
+    return tomllib.loads(resources.files("fertui.catalogue").joinpath(f"{name}.toml").read_text(encoding="utf-8"))
