@@ -2,37 +2,38 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime
+from typing import TYPE_CHECKING
 
-from fertui.estimate.points import PointState
-from fertui.workbench.glance import Seen
+from fertui.estimate.points import Estimated, PointState
+from fertui.logbook.entries import Entry
+from fertui.workbench.glance import Glance, Seen, glance
+
+if TYPE_CHECKING:
+    from fertui.estimate.assimilation import Estimate
+    from fertui.estimate.forecast import Forecast, LeavesBand
+    from fertui.estimate.notices import Notice
+
+SHARES = ("K share", "Ca share", "Mg share")
+LIMITED = ("Na", "NH4", "Cl")
 
 
 @dataclass(frozen=True, slots=True)
 class Gauge:
-    """One row of the managed point: its course of daily values, what the forecast says of it.
+    """One row of the managed point: its course of daily values and when it leaves its band.
 
-    ``what`` is ``K share``, ``Ca share``, ``Mg share``, or an ion with a limit (``Na``, ``NH4``, ``Cl``), ``EC``.
-    ``course`` holds one value a day, oldest first, today last, then the days ahead from ``today_index`` + 1 on.
+    ``what`` is ``K share``, ``Ca share``, ``Mg share``, an ion with a limit (``Na``, ``NH4``, ``Cl``) or ``EC``.
+    ``course`` holds one value a day, oldest first; the value of today stands at ``today_index``, the days ahead follow.
     """
 
     what: str
     unit: str
+    now: Estimated
     course: tuple[float, ...]
     today_index: int
     leaves: str
-
-
-@dataclass(frozen=True, slots=True)
-class Watch:
-    """Something to look at: ``severity`` is note, watch or act; ``key`` is the key to act with."""
-
-    code: str
-    severity: str
-    text: str
-    key: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,10 +56,122 @@ class Today:
     drain_pct: float | None
     light_sum_j_per_cm2: float | None
     stock_days_left: Mapping[str, float]
-    draw_differs_pct: float | None
     gauges: tuple[Gauge, ...]
-    watch: tuple[Watch, ...]
+    watch: tuple[Notice, ...]
     analyses_behind: int
-    not_logged: tuple[str, ...] = ()
     awaited: tuple[str, ...] = ()
     half_done: tuple[str, ...] = ()
+
+
+def today(estimate: Estimate, entries: Sequence[Entry], ahead: Forecast) -> Today:
+    """Put together what the estimate, its forecast and the logbook say of today."""
+    from fertui.estimate.notices import notices, stock_days_left
+
+    loop, at = estimate.loop, estimate.at
+    own = [entry for entry in entries if entry.loop == loop.name]
+    last = glance(loop, own, at)
+    return Today(
+        loop=loop.name,
+        layout=loop.layout,
+        crop=loop.crop,
+        stage=last.stage,
+        medium=loop.medium,
+        at=at,
+        managed_point=estimate.managed,
+        points=estimate.points(),
+        last_analysis=last.last_analysis,
+        last_reading=_newest(last),
+        readings=last.readings,
+        set_ec=last.set_ec,
+        set_ph=last.set_ph,
+        drain_pct=_latest_number(own, "drain_pct"),
+        light_sum_j_per_cm2=_latest_number(own, "light_sum"),
+        stock_days_left=stock_days_left(estimate.site, loop, entries, at),
+        gauges=gauges(estimate, ahead),
+        watch=notices(estimate, entries, ahead),
+        analyses_behind=estimate.analyses,
+        awaited=_awaited(own),
+        half_done=_half_done(own, at),
+    )
+
+
+def gauges(estimate: Estimate, ahead: Forecast) -> tuple[Gauge, ...]:
+    """Shares and limited ions of the managed point: 14 days back, the days ahead, and when each leaves its band."""
+    point = estimate.managed
+    past = [day.points[point] for day in estimate.trail if point in day.points][-15:-1]
+    now = estimate.points()[point]
+    course = [*past, now, *(day.points[point] for day in ahead.days)]
+    leaving = {each.what: each for each in ahead.leaves_band if each.point == point}
+    rows = []
+    for what in (*SHARES, *LIMITED, "EC"):
+        value = reading_of(now, what)
+        if value is None or (what in LIMITED and value.band is None):
+            continue
+        numbers = tuple(each.value for state in course if (each := reading_of(state, what)) is not None)
+        rows.append(Gauge(what, unit_of(what), value, numbers, len(past), in_words(leaving.get(what), len(ahead.days))))
+    return tuple(rows)
+
+
+def reading_of(state: PointState, what: str) -> Estimated | None:
+    """The number called ``what`` at a point: a share, an ion, EC or pH."""
+    if what == "EC":
+        return state.ec
+    if what == "pH":
+        return state.ph
+    if what.endswith(" share"):
+        ion = state.ions.get(what.removesuffix(" share"))
+        return None if ion is None else ion.share_pct
+    ion = state.ions.get(what)
+    return None if ion is None else ion.mmol_l
+
+
+def unit_of(what: str) -> str:
+    """Canonical unit of a number by its name."""
+    if what == "pH":
+        return ""
+    if what == "EC":
+        return "mS/cm"
+    return "%" if what.endswith(" share") else "mmol/L"
+
+
+def in_words(leaving: LeavesBand | None, horizon: int) -> str:
+    """When something leaves its band, with its range, as an operator would say it."""
+    if leaving is None:
+        return ""
+    if leaving.days.value == 0:
+        return f"out since {leaving.since:%a %d %b}" if leaving.since is not None else "out"
+    low, high = leaving.days.low, leaving.days.high
+    if leaving.days.value is None:
+        return f"not in {horizon} days" if low is None else f"{low:.0f} to over {horizon} days"
+    return f"in {leaving.days.value:.0f} ({low or 0:.0f}-{'over ' + str(horizon) if high is None else f'{high:.0f}'}) days"
+
+
+def _newest(last: Glance) -> Seen | None:
+    return max(last.readings.values(), key=lambda seen: seen.at, default=None)
+
+
+def _latest_number(entries: Iterable[Entry], name: str) -> float | None:
+    found = [number for entry in entries if (number := entry.number_of(name)) is not None]
+    return found[-1] if found else None
+
+
+def _awaited(entries: Sequence[Entry]) -> tuple[str, ...]:
+    """Samples sent whose analysis has not come back."""
+    sent = [entry for entry in entries if entry.kind == "sample"]
+    came = [entry for entry in entries if entry.kind == "analysis"]
+    return tuple(
+        f"sample of the {entry.point or 'loop'} sent {entry.at:%a %d %b}"
+        for entry in sent
+        if not any(result.point == entry.point and result.at >= entry.at for result in came)
+    )
+
+
+def _half_done(entries: Sequence[Entry], at: datetime) -> tuple[str, ...]:
+    """Doses planned for a time that has passed and not logged as done since."""
+    planned = [entry for entry in entries if entry.kind == "plan" and entry.text_of("salt") and entry.at <= at]
+    done = [(entry.text_of("salt"), entry.at) for entry in entries if entry.kind == "dose"]
+    return tuple(
+        f"{entry.text_of('salt')} {entry.number_of('kg') or 0:g} kg planned for {entry.at:%a %d %b}, not logged as done"
+        for entry in planned
+        if not any(salt == entry.text_of("salt") and when >= entry.at for salt, when in done)
+    )

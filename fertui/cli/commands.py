@@ -1,0 +1,348 @@
+"""What each command does: ask the workbench, print what it answers. Nothing is computed here."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Callable, Mapping
+from datetime import datetime
+from pathlib import Path
+from typing import Any
+
+from fertui.cli.main import FINE, NO
+from fertui.refusals import Refusal
+from fertui.workbench import Bench, open_site
+
+Options = argparse.Namespace
+
+
+def run(options: Options) -> int:
+    """Run the chosen command; returns its exit code."""
+    return COMMANDS[options.command](options)
+
+
+def opened(options: Options) -> int:
+    """``open``: the terminal interface."""
+    bench = open_site(options.site)
+    from fertui.tui.app import run as run_terminal
+
+    return run_terminal(bench.folder, at=_time(bench, options.at))
+
+
+def demo(options: Options) -> int:
+    """``demo``: build the invented site; show it or print it."""
+    from fertui.workbench.demo import build_demo
+
+    folder = build_demo(None if options.into is None else Path(options.into))
+    if not options.text:
+        print(f"The demo site is in {folder}", file=sys.stderr)
+        return opened(Options(site=str(folder), at=None))
+    from fertui.cli.views.demo import text
+
+    print(text(open_site(folder)))
+    return FINE
+
+
+def new(options: Options) -> int:
+    """``new``: a site from options, or by asking where there is a terminal."""
+    from fertui.cli.asking import make_site
+
+    return make_site(options)
+
+
+def completion(options: Options) -> int:
+    """``completion``: a script for the shell."""
+    from fertui.cli.completion import script
+
+    print(script(options.shell))
+    return FINE
+
+
+def record(options: Options) -> int:
+    """``record``: append one entry, print it as read back."""
+    bench = open_site(options.site)
+    entry = bench.record(options.kind, _fields(options.values), options.loop)
+    _print_entry(bench, entry)
+    return FINE
+
+
+def supersede(options: Options) -> int:
+    """``supersede``: a new entry that corrects an old one."""
+    bench = open_site(options.site)
+    fields, why, by = _correction(options)
+    _print_entry(bench, bench.supersede(_whole(options.number, "NUMBER"), fields, why, by))
+    return FINE
+
+
+def void(options: Options) -> int:
+    """``void``: strike an entry."""
+    bench = open_site(options.site)
+    fields, why, by = _correction(options)
+    if fields:
+        raise Refusal(f"void takes why= and by= only, not {', '.join(fields)}. To change values use 'fertui supersede'.")
+    _print_entry(bench, bench.void(_whole(options.number, "NUMBER"), why, by))
+    return FINE
+
+
+def import_table(options: Options) -> int:
+    """``import``: a table of one kind; a dry run writes nothing."""
+    from fertui.cli.views import as_json
+    from fertui.cli.views.tables import import_text
+
+    bench = open_site(options.site)
+    result = bench.import_table(
+        Path(options.file), options.kind, options.loop, dry_run=options.dry_run, by=options.by,
+        template=options.template, save_template=options.save_template,
+    )
+    print(as_json.dump({"schema": "fertui.import/1", **as_json.plain(result)}) if options.json else import_text(result))
+    return FINE
+
+
+def export(options: Options) -> int:
+    """``export``: the logbook as tables."""
+    for path in open_site(options.site).export(Path(options.into)):
+        print(path)
+    return FINE
+
+
+def backup(options: Options) -> int:
+    """``backup``: the whole book, verbatim."""
+    print(open_site(options.site).backup(Path(options.file)))
+    return FINE
+
+
+def restore(options: Options) -> int:
+    """``restore``: a site folder from a backup."""
+    from fertui.workbench.keeping import restore_site
+
+    print(restore_site(Path(options.file), Path(options.dir)))
+    return FINE
+
+
+def today(options: Options) -> int:
+    """``today``."""
+    from fertui.cli.views.today import document, text
+
+    bench, view = _reading(options)
+    state = bench.today(**view)
+    return _show(options, lambda: document(state), lambda: text(state, bench.site.timezone, _unit(bench, options)))
+
+
+def analysis(options: Options) -> int:
+    """``analysis``."""
+    from fertui.cli.views.analysis import document, text
+
+    bench, view = _reading(options)
+    found = bench.analysis(**view)
+    return _show(options, lambda: document(found), lambda: text(found, bench.site.timezone, _unit(bench, options)))
+
+
+def drift(options: Options) -> int:
+    """``drift``."""
+    from fertui.cli.views.analysis import drift_document, drift_text
+
+    bench, view = _reading(options)
+    course = bench.drift(days=_whole(options.days, "--days", 1, 3650), **view)
+    return _show(options, lambda: drift_document(course), lambda: drift_text(course, bench.site.timezone))
+
+
+def balance(options: Options) -> int:
+    """``balance``."""
+    from fertui.cli.views.balance import document, text
+
+    bench, view = _reading(options)
+    end = _time(bench, options.end) or view["at"]
+    account = bench.balance(view["loop"], _time(bench, options.start), end, view["known"])
+    name = bench.loop(view["loop"]).name
+    return _show(options, lambda: document(account, name), lambda: text(account, name, bench.site.timezone))
+
+
+def forecast(options: Options) -> int:
+    """``forecast``."""
+    from fertui.cli.views.forecast import document, text
+    from fertui.workbench.glance import managed_point
+
+    bench, view = _reading(options)
+    ahead = bench.forecast(days=_whole(options.days, "--days", 1, 60), **view)
+    loop = bench.loop(view["loop"])
+    return _show(
+        options,
+        lambda: document(ahead, loop.name),
+        lambda: text(ahead, loop.name, managed_point(loop), bench.site.timezone, _unit(bench, options)),
+    )
+
+
+def hindcast(options: Options) -> int:
+    """``hindcast``."""
+    from fertui.cli.views.forecast import record_document, record_text
+
+    bench, view = _reading(options)
+    seed = {} if options.seed is None else {"seed": _whole(options.seed, "--seed")}
+    past = bench.hindcast(inputs=options.inputs, **view, **seed)
+    name = bench.loop(view["loop"]).name
+    return _show(options, lambda: record_document(past, name), lambda: record_text(past, name, bench.site.timezone))
+
+
+def plan(options: Options) -> int:
+    """``plan``: exit code 1 where the answer is no."""
+    from fertui.cli.views.plan import document, text
+
+    bench, view = _reading(options)
+    made = bench.plan(days=_whole(options.days, "--days", 0, 60), **view, **_wishes(options))
+    if options.sheet:
+        bench.write_sheet(made, Path(options.sheet), options.cautions_read, options.label_strength)
+    _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, _unit(bench, options)))
+    return FINE if made.feasible else NO
+
+
+def _wishes(options: Options) -> dict[str, Any]:
+    wishes: dict[str, Any] = {"target": options.target, "without": tuple(options.without)}
+    wishes["supplies"] = None if options.supplies is None else _names(options.supplies)
+    wishes["steps"] = None if options.steps is None else _whole(options.steps, "--steps", 1, 4)
+    wishes["salts"] = None if options.salts is None else _whole(options.salts, "--salts", 1, 20)
+    return wishes
+
+
+def stock(options: Options) -> int:
+    """``stock``: exit code 1 where a pair of salts is refused."""
+    from fertui.cli.views.sheets import stock_document, stock_text
+
+    bench, view = _reading(options)
+    sheet = bench.stock(view["loop"])
+    if options.sheet:
+        bench.write_sheet(sheet, Path(options.sheet), options.cautions_read, options.label_strength)
+    _show(options, lambda: stock_document(sheet), lambda: stock_text(sheet))
+    return FINE if sheet.feasible else NO
+
+
+def acid(options: Options) -> int:
+    """``acid``: exit code 1 where there is no dose."""
+    from fertui.cli.views.sheets import acid_document, acid_text
+
+    bench, view = _reading(options)
+    sheet = bench.acid(view["loop"])
+    if options.sheet:
+        bench.write_sheet(sheet, Path(options.sheet), options.cautions_read, options.label_strength)
+    _show(options, lambda: acid_document(sheet), lambda: acid_text(sheet))
+    return FINE if sheet.feasible else NO
+
+
+def paper(options: Options) -> int:
+    """``round``, ``handover`` and ``report``: pages of text, or their data as JSON."""
+    bench, view = _reading(options)
+    if options.command == "report":
+        page = bench.report(view["loop"], _time(bench, options.start), _time(bench, options.end), view["known"])
+    else:
+        page = getattr(bench, options.command + ("_sheet" if options.command == "round" else ""))(**view)
+    from fertui.cli.views import as_json
+
+    schema = f"fertui.{options.command}/1"
+    return _show(options, lambda: {"schema": schema, **as_json.plain(page.data)}, lambda: page.text)
+
+
+def logbook(options: Options) -> int:
+    """``logbook``: every entry, struck ones too."""
+    from fertui.cli.views.tables import entries_document, entries_text
+
+    bench, view = _reading(options)
+    entries = bench.history(options.kind, view["loop"] if options.loop else None, view["at"])
+    return _show(options, lambda: entries_document(entries), lambda: entries_text(entries, bench.site.timezone))
+
+
+def supplies(options: Options) -> int:
+    """``supplies``."""
+    from fertui.cli.views.tables import supplies_document, supplies_text
+
+    bench, _ = _reading(options)
+    return _show(options, lambda: supplies_document(bench.site), lambda: supplies_text(bench.site))
+
+
+def site(options: Options) -> int:
+    """``site``: aims of a loop, each with where it comes from."""
+    from fertui.cli.views.tables import aims_document, aims_text
+
+    bench, view = _reading(options)
+    aims = bench.aims(view["loop"])
+    return _show(options, lambda: aims_document(aims), lambda: aims_text(aims, bench.site))
+
+
+def check(options: Options) -> int:
+    """``check``: exit code 1 where there is something to look at."""
+    from fertui.cli.views.tables import check_document, check_text
+
+    rows = open_site(options.site).check()
+    _show(options, lambda: check_document(rows), lambda: check_text(rows))
+    return FINE if all(row.passed for row in rows) else NO
+
+
+COMMANDS: Mapping[str, Callable[[Options], int]] = {
+    "open": opened, "demo": demo, "new": new, "completion": completion,
+    "record": record, "supersede": supersede, "void": void, "import": import_table, "export": export,
+    "backup": backup, "restore": restore,
+    "today": today, "analysis": analysis, "drift": drift, "balance": balance, "forecast": forecast,
+    "hindcast": hindcast, "plan": plan, "stock": stock, "acid": acid, "round": paper, "handover": paper,
+    "report": paper, "logbook": logbook, "supplies": supplies, "site": site, "check": check,
+}  # fmt: skip
+
+
+def _reading(options: Options) -> tuple[Bench, dict[str, Any]]:
+    """The bench, and which loop as of when."""
+    from fertui.workbench.bench import now
+
+    bench = open_site(options.site)
+    view = {"loop": options.loop, "at": _time(bench, options.at) or now(), "known": _time(bench, options.known)}
+    return bench, view
+
+
+def _show(options: Options, document: Callable[[], dict[str, Any]], text: Callable[[], str]) -> int:
+    from fertui.cli.views import as_json
+
+    print(as_json.dump(document()) if options.json else text())
+    return FINE
+
+
+def _unit(bench: Bench, options: Options) -> str:
+    return str(options.unit or bench.site.units)
+
+
+def _time(bench: Bench, written: str | None) -> datetime | None:
+    return None if written is None else bench.time(written)
+
+
+def _fields(words: list[str]) -> dict[str, str]:
+    """``name=value`` words as a mapping; refuses a word without '=' and a name given twice."""
+    fields: dict[str, str] = {}
+    for word in words:
+        name, sign, value = word.partition("=")
+        if not sign or not name:
+            raise Refusal(f"{word!r} is not name=value, such as EC=2.6 or note='filter cleaned'.")
+        if name in fields:
+            raise Refusal(f"{name!r} is given twice; give it once.")
+        fields[name] = value
+    return fields
+
+
+def _correction(options: Options) -> tuple[dict[str, str], str, str]:
+    fields = _fields(options.values)
+    why, by = fields.pop("why", ""), fields.pop("by", "")
+    return fields, why, by
+
+
+def _names(written: str) -> tuple[str, ...]:
+    return tuple(name.strip() for name in written.split(",") if name.strip())
+
+
+def _whole(written: str, what: str, lowest: int = 0, highest: int = 2**31) -> int:
+    try:
+        number = int(written)
+    except ValueError:
+        number = lowest - 1
+    if not lowest <= number <= highest:
+        raise Refusal(f"{what} {written!r} is not a whole number from {lowest} to {highest}.")
+    return number
+
+
+def _print_entry(bench: Bench, entry: Any) -> None:
+    from fertui.cli.views.tables import entry_text
+
+    print(entry_text(entry, bench.site.timezone))

@@ -1,0 +1,79 @@
+"""How an analysis and the course of past days read."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from fertui.cli.views import as_json, words
+from fertui.cli.views.today import POINT_WORDS
+from fertui.workbench.analysis import AnalysisRow, AnalysisView
+from fertui.workbench.drift import Drift
+
+
+def text(view: AnalysisView, timezone: str, unit: str) -> str:
+    """The report side by side: drip, managed point, previous, normalised, target, deviation."""
+    if view.managed is None and view.feed is None:
+        return f"{view.loop}: no analysis logged yet. Take one with 'fertui record SITE analysis point=... K=... Ca=...'."
+    lines = [f"{view.loop}: last analysis"]
+    for name, seen in (("drip", view.feed), (POINT_WORDS[view.managed_point], view.managed)):
+        if seen is not None:
+            numbers = "  ".join(f"{key} {words.number(seen.values[key])}" for key in ("EC", "pH") if key in seen.values)
+            lines.append(f"  {name}, {words.local(seen.at, timezone)}, entry {seen.number}: {numbers}")
+    if view.ec_reference is not None:
+        lines.append(f"  normalised to a nutrient EC of {view.ec_reference:.1f} mS/cm; Na, NH4, HCO3 not scaled")
+    lines += ["", *words.table(_rows(view.rows, view.managed_point, unit), right=range(1, 7))]
+    if any(row.feed is not None or row.managed is not None for row in view.micronutrients):
+        lines += ["", *words.table(_rows(view.micronutrients, view.managed_point, "umol/L"), right=range(1, 7))]
+    for point, checks in view.checks.items():
+        lines += ["", f"Checks of the {POINT_WORDS[point]} analysis"]
+        lines += [f"  {'ok ' if check.passed else '!  '}{check.what}: {_check(check)}" for check in checks]
+    return "\n".join([*lines, "", view.last_change] if view.last_change else lines)
+
+
+def _check(check: Any) -> str:
+    limit = "" if check.limit is None else f", limit {words.number(check.limit)} {check.unit}"
+    remark = f" {check.remark}" if check.remark else ""
+    return f"{words.number(check.value)} {check.unit}{limit}{remark} ({check.source})"
+
+
+def _rows(rows: Sequence[AnalysisRow], managed: str, unit: str) -> list[tuple[str, ...]]:
+    shown: list[tuple[str, ...]] = [
+        (unit, "drip", POINT_WORDS[managed], "previous", "normalised", "target", "off %", "in words")
+    ]
+    for row in rows:
+        if row.feed is None and row.managed is None:
+            continue
+        scale = words.factor(row.ion, unit)
+        numbers = [
+            words.ABSENT if value is None else words.number(value * scale)
+            for value in (row.feed, row.managed, row.previous, row.normalised, row.target)
+        ]
+        off = "" if row.deviation_pct is None else f"{row.deviation_pct:+.0f}"
+        shown.append((row.ion, *numbers, off, row.words))
+    return shown
+
+
+def document(view: AnalysisView) -> dict[str, Any]:
+    """``analysis --json``."""
+    return {"schema": "fertui.analysis/1", **as_json.plain(view)}
+
+
+def drift_text(course: Drift, timezone: str) -> str:
+    """The past days of the managed point as a table of daily values, then what was done and measured."""
+    shown = [each for each in course.series if each.what in ("K share", "Ca share", "Mg share", "Na", "NH4", "EC")]
+    rows: list[tuple[str, ...]] = [
+        (POINT_WORDS[course.point], *(f"{each.what} {each.unit}".rstrip() for each in shown))
+    ]
+    times = shown[0].times if shown else ()
+    for index, at in enumerate(times):
+        cells = [words.ranged(each.values[index]) if index < len(each.values) else words.ABSENT for each in shown]
+        rows.append((words.local(at, timezone)[:10], *cells))
+    lines = [f"{course.loop}: the past days", "", *words.table(rows), "", "Done and measured"]
+    lines += [f"  {words.local(mark.at, timezone)} {mark.kind}: {mark.text}" for mark in course.marks]
+    return "\n".join(lines)
+
+
+def drift_document(course: Drift) -> dict[str, Any]:
+    """``drift --json``."""
+    return {"schema": "fertui.drift/1", **as_json.plain(course)}

@@ -1,0 +1,105 @@
+"""How the days ahead and the record of past forecasts read."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from fertui.cli.views import as_json, words
+from fertui.cli.views.today import POINT_WORDS
+from fertui.estimate.forecast import Forecast, LeavesBand
+from fertui.estimate.hindcast import Hindcast
+from fertui.workbench.today import in_words, reading_of, unit_of
+
+SHOWN = ("K share", "Ca share", "Mg share", "Na", "NH4", "EC")
+
+
+def text(ahead: Forecast, loop: str, managed: str, timezone: str, unit: str) -> str:
+    """Every second day of the managed point with its 80 % range, then what leaves its band, and what was assumed."""
+    rows = [(POINT_WORDS[managed], *(f"{what} {_unit(what, unit)}".rstrip() for what in SHOWN))]
+    for day in ahead.days[1::2] if len(ahead.days) > 7 else ahead.days:
+        cells = []
+        for what in SHOWN:
+            value = reading_of(day.points[managed], what)
+            scale = words.factor(what, unit) if unit_of(what) == "mmol/L" else 1.0
+            cells.append(words.ABSENT if value is None else words.ranged(value, scale))
+        rows.append((words.local(day.at, timezone)[:10], *cells))
+    lines = [f"{loop}, {len(ahead.days)} days ahead ({_inputs(ahead)}), 80 % ranges", "", *words.table(rows), ""]
+    lines += ["Leaves its band"]
+    lines += [f"  {_leaves(each, len(ahead.days))}" for each in ahead.leaves_band] or ["  nothing within these days"]
+    lines += ["", "Assumed"] + [f"  {each}" for each in ahead.assumed]
+    return "\n".join(lines)
+
+
+def _unit(what: str, unit: str) -> str:
+    return unit if unit_of(what) == "mmol/L" else unit_of(what)
+
+
+def _inputs(ahead: Forecast) -> str:
+    return {"plan": "as planned", "routine": "routine carried on", "what-if": "what if"}[ahead.inputs]
+
+
+def _leaves(each: LeavesBand, horizon: int) -> str:
+    chance = "" if each.days.value == 0 else f", chance {100 * each.probability:.0f} %"
+    return f"{POINT_WORDS[each.point]} {each.what}: {in_words(each, horizon)}{chance}"
+
+
+def document(ahead: Forecast, loop: str) -> dict[str, Any]:
+    """The contract of ``forecast --json``."""
+    return {
+        "schema": "fertui.forecast/1",
+        "loop": loop,
+        "at": ahead.at,
+        "inputs": ahead.inputs,
+        "days": [{"at": day.at, "points": as_json.points(day.points)} for day in ahead.days],
+        "leaves_band": [
+            {
+                "point": each.point,
+                "what": each.what,
+                "at": each.at,
+                "days": {"value": each.days.value, "low": each.days.low, "high": each.days.high},
+                "since": each.since,
+                "probability": each.probability,
+            }
+            for each in ahead.leaves_band
+        ],
+        "assumed": list(ahead.assumed),
+    }
+
+
+ROW_KEYS = {
+    "measured_mmol_l": "measured_mmol_L",
+    "predicted_mmol_l": "predicted_mmol_L",
+    "no_change_mmol_l": "no_change_mmol_L",
+}
+
+
+def record_document(record: Hindcast, loop: str) -> dict[str, Any]:
+    """The contract of ``hindcast --json``."""
+    rows = [{ROW_KEYS.get(key, key): value for key, value in as_json.plain(row).items()} for row in record.rows]
+    return {
+        "schema": "fertui.hindcast/1",
+        "loop": loop,
+        "inputs": record.inputs,
+        "rows": rows,
+        "summary": as_json.plain(record.summary),
+    }
+
+
+def record_text(record: Hindcast, loop: str, timezone: str) -> str:
+    """The record: what was forecast, what was found, and whether it beat 'no change'."""
+    lines = [f"{loop}: past forecasts, inputs as {record.inputs}", ""]
+    rows = [("found", "point", "ion", "found", "forecast, 80 % range", "no change", "share found", "share forecast")]
+    for row in record.rows:
+        if row.ion not in ("K", "Ca", "Mg", "Na", "NO3") or row.cold_start:
+            continue
+        share = "" if row.predicted_share_pct is None else f"{row.predicted_share_pct:.0f} %"
+        found = "" if row.measured_share_pct is None else f"{row.measured_share_pct:.0f} %"
+        forecast = f"{words.number(row.predicted_mmol_l)} ({words.number(row.low)}-{words.number(row.high)})"
+        mark = " doubtful" if row.doubtful else ""
+        rows.append(
+            (
+                words.local(row.at, timezone)[:10] + mark, POINT_WORDS[row.point], row.ion, words.number(row.measured_mmol_l),
+                forecast, words.number(row.no_change_mmol_l), found, share,
+            )
+        )
+    return "\n".join([*lines, *words.table(rows), "", record.summary.words])

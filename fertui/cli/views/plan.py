@@ -1,0 +1,168 @@
+"""How a plan reads."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from fertui.cli.views import as_json, words
+from fertui.cli.views.today import POINT_WORDS
+from fertui.planning.values import Outlook, Plan
+from fertui.workbench.today import reading_of
+
+
+def text(plan: Plan, timezone: str, unit: str) -> str:
+    """The plan: the answer first, then what to do, before and after, limits, reasons, cautions."""
+    lines = [f"{plan.loop}: plan over {plan.horizon_days} days, for the {POINT_WORDS[plan.point]}"]
+    if not plan.feasible:
+        lines.append(f"No: {plan.reason}")
+    lines += [f"! {each}" for each in plan.notices]
+    lines += _recipe(plan, timezone, unit) + _steps(plan, timezone) + _acid(plan, timezone) + _renewal(plan)
+    lines += ["", *_outcome(plan)]
+    lines += _section("Limits that bind", [_binding(each) for each in plan.binding])
+    lines += _section("Rule of thumb beside it", plan.rule_of_thumb)
+    lines += _section("Why", plan.reasons)
+    lines += _section("Otherwise", [each.text for each in plan.sensitivity])
+    if plan.runner_up is not None:
+        lines += _section("Next best", [plan.runner_up.difference])
+    lines += _section("Step by step", plan.arithmetic)
+    lines += _section("Cautions", [f"{words.SIGNS.get(each.severity, '- ')}{each.text} ({each.source})" for each in plan.cautions])
+    return "\n".join(lines)
+
+
+def _section(title: str, rows: Any) -> list[str]:
+    return ["", title, *(f"  {row}" for row in rows)] if rows else []
+
+
+def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
+    if plan.recipe is None:
+        return []
+    recipe = plan.recipe
+    rows = [("feed", f"next {unit}", "change")]
+    for ion, amount in recipe.ions_mmol_l.items():
+        change = recipe.change_pct.get(ion)
+        rows.append((ion, words.number(amount * words.factor(ion, unit)), "" if change is None else f"{change:+.0f} %"))
+    lines = ["", f"Next recipe, EC {words.number(recipe.ec)} mS/cm", *words.table(rows, right=(1, 2))]
+    if len(recipe.stages) > 1:
+        lines += [f"  from {words.local(stage.at, timezone)}: EC {stage.ec:.1f} mS/cm" for stage in recipe.stages]
+    if recipe.sheet is not None:
+        for tank in recipe.sheet.tanks:
+            lines += ["", f"{tank.name} ({tank.content}), {tank.litres:.0f} L, 1:{tank.dilution:.0f}"]
+            lines += [f"  {each.words}" for each in tank.salts]
+    return lines
+
+
+def _steps(plan: Plan, timezone: str) -> list[str]:
+    if not plan.steps:
+        return []
+    rows = [("when", "salt", "", "kg", "into")]
+    rows += [
+        (words.local(each.at, timezone), each.salt, each.formula, f"{each.kg:g}", each.target.removeprefix("tank:"))
+        for each in plan.steps
+    ]
+    return ["", "Weigh and dissolve", *words.table(rows, right=(3,))]
+
+
+def _acid(plan: Plan, timezone: str) -> list[str]:
+    return [
+        f"{words.local(each.at, timezone)}: {each.litres:.2f} L {each.acid} {each.strength_pct:g} % "
+        f"({each.density_kg_per_l:.3f} kg/L) into {each.target.removeprefix('tank:')}; wait {each.wait_min:.0f} min, "
+        f"retest, go on only above pH {each.retest_ph:.1f}; stop at pH {each.stop_ph:.1f}"
+        for each in plan.acid
+    ]
+
+
+def _renewal(plan: Plan) -> list[str]:
+    if plan.renewal is None:
+        return []
+    renewal = plan.renewal
+    lines = [
+        "",
+        f"Renew {renewal.litres:.0f} L: {renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P leave with it; "
+        f"the year comes to {renewal.year_kg_n:.1f} kg N",
+    ]
+    return lines + [f"  {option.text}" for option in renewal.options]
+
+
+def _outcome(plan: Plan) -> list[str]:
+    rows = [("", "now", "with the plan", "without it")]
+    for what in ("K share", "Ca share", "Mg share", "EC", "Na", "NH4"):
+        cells = [_cell(outlook, plan.point, what) for outlook in (plan.before, plan.after, plan.after_without)]
+        rows.append((f"{what} {'%' if 'share' in what else 'mS/cm' if what == 'EC' else 'mmol/L'}", *cells))
+    return words.table(rows)
+
+
+def _cell(outlook: Outlook, point: str, what: str) -> str:
+    state = outlook.points.get(point)
+    value = None if state is None else reading_of(state, what)
+    return words.ABSENT if value is None else words.ranged(value)
+
+
+def _binding(each: Any) -> str:
+    source = f" ({each.source})" if each.source else ""
+    return f"{each.limit}: {words.number(each.value)} {each.unit}, reached {words.number(each.reached)}{source}"
+
+
+def document(plan: Plan) -> dict[str, Any]:
+    """The contract of ``plan --json``."""
+    recipe, renewal = plan.recipe, plan.renewal
+    return {
+        "schema": "fertui.plan/1",
+        "loop": plan.loop,
+        "layout": plan.layout,
+        "at": plan.at,
+        "feasible": plan.feasible,
+        "reason": plan.reason,
+        "horizon_days": plan.horizon_days,
+        "recipe": None
+        if recipe is None
+        else {
+            "ions_mmol_L": recipe.ions_mmol_l,
+            "change_pct": recipe.change_pct,
+            "EC_mS_cm": recipe.ec,
+            "tanks": [] if recipe.sheet is None else tanks(recipe.sheet),
+        },
+        "steps": [as_json.plain(step) for step in plan.steps],
+        "acid": [_acid_step(step) for step in plan.acid],
+        "renewal": None
+        if renewal is None
+        else {
+            "litres": renewal.litres,
+            "refill": renewal.refill,
+            "kg_N": renewal.kg_n,
+            "kg_P": renewal.kg_p,
+            "year_kg_N": renewal.year_kg_n,
+        },
+        "before": {"points": as_json.points(plan.before.points)},
+        "after": {"points": as_json.points(plan.after.points)},
+        "after_without": {"points": as_json.points(plan.after_without.points)},
+        "binding": [as_json.plain(each) for each in plan.binding],
+        "rule_of_thumb": list(plan.rule_of_thumb),
+        "reasons": list(plan.reasons),
+        "arithmetic": list(plan.arithmetic),
+        "sample_first": plan.sample_first,
+        "model_runs": plan.model_runs,
+        "solver_calls": plan.solver_calls,
+        "cautions": [as_json.plain(each) for each in plan.cautions],
+    }
+
+
+def tanks(sheet: Any) -> list[dict[str, Any]]:
+    """Stock tanks in the shape of the contract."""
+    return [
+        {
+            "name": tank.name,
+            "content": tank.content,
+            "litres": tank.litres,
+            "dilution": tank.dilution,
+            "salts": [{"salt": each.salt, "formula": each.formula, "kg": each.kg} for each in tank.salts],
+            "fits": tank.fits,
+        }
+        for tank in sheet.tanks
+    ]
+
+
+def _acid_step(step: Any) -> dict[str, Any]:
+    shown = as_json.plain(step)
+    shown["retest_pH"] = shown.pop("retest_ph")
+    shown["stop_pH"] = shown.pop("stop_ph")
+    return dict(shown)

@@ -1,0 +1,93 @@
+"""How today reads."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from fertui.cli.views import as_json, words
+from fertui.workbench.glance import Seen
+from fertui.workbench.today import Today
+
+POINT_WORDS = {
+    "feed": "drip", "root_zone": "root zone", "drain": "drain", "drain_store": "drain store", "tank": "tank",
+    "source": "source water",
+}
+
+
+def text(state: Today, timezone: str, unit: str) -> str:
+    """State, gauges and what to look at, in plain lines of at most 80 characters where the words allow it."""
+    lines = [_heading(state, timezone), ""]
+    lines += _readings(state)
+    lines += ["", *_gauges(state, unit), "", *_concentrations(state, unit), ""]
+    lines += ["To look at"]
+    lines += [f" {words.SIGNS[each.severity]} {each.text}" for each in state.watch] or ["    nothing"]
+    lines += [f" -  awaited: {each}" for each in state.awaited] + [f" -  {each}" for each in state.half_done]
+    return "\n".join(lines)
+
+
+def _heading(state: Today, timezone: str) -> str:
+    crop = ", ".join(part for part in (state.crop, state.stage, state.medium) if part and part != "none")
+    return f"{state.loop}: {crop}   as of {words.local(state.at, timezone)}"
+
+
+def _readings(state: Today) -> list[str]:
+    lines = []
+    for point, seen in state.readings.items():
+        numbers = [f"{name} {words.number(seen.values[name])}" for name in ("EC", "pH") if name in seen.values]
+        if numbers:
+            lines.append(f"{POINT_WORDS.get(point, point)}: {'  '.join(numbers)}  ({words.age(seen.at, state.at)})")
+    if state.set_ec is not None:
+        lines.append(f"set: EC {words.number(state.set_ec)} mS/cm" + (f"  pH {state.set_ph:.1f}" if state.set_ph else ""))
+    if state.stock_days_left:
+        left = "  ".join(f"{tank} {days:.1f} days" for tank, days in state.stock_days_left.items())
+        lines.append(f"stock left: {left}")
+    if state.last_analysis is not None:
+        behind = f"{state.analyses_behind} analyses behind the estimate"
+        lines.append(f"last analysis: {words.age(state.last_analysis.at, state.at)}; {behind}")
+    return lines
+
+
+def _gauges(state: Today, unit: str) -> list[str]:
+    where = POINT_WORDS[state.managed_point]
+    rows = [(where, "now, 80 % range", "band", "leaves its band")]
+    for gauge in state.gauges:
+        scale, shown = (1.0, gauge.unit) if gauge.unit != "mmol/L" else (words.factor(gauge.what, unit), unit)
+        now = f"{words.ranged(gauge.now, scale)} {shown}"
+        rows.append((gauge.what, now, words.band(gauge.now.band, scale), gauge.leaves))
+    return words.table(rows)
+
+
+def _concentrations(state: Today, unit: str) -> list[str]:
+    names = list(state.points)
+    rows = [(unit, *(POINT_WORDS[name] for name in names))]
+    for ion in state.points[state.managed_point].ions:
+        scale = words.factor(ion, unit)
+        cells = [words.ranged(state.points[name].ions[ion].mmol_l, scale) for name in names]
+        rows.append((ion, *cells))
+    rows.append(("EC mS/cm", *(words.ranged(state.points[name].ec) for name in names)))
+    return words.table(rows)
+
+
+def document(state: Today) -> dict[str, Any]:
+    """The contract of ``today --json``."""
+    return {
+        "schema": "fertui.today/1",
+        "loop": state.loop,
+        "layout": state.layout,
+        "crop": state.crop,
+        "stage": state.stage,
+        "medium": state.medium,
+        "at": state.at,
+        "points": as_json.points(state.points),
+        "last_analysis": _seen(state.last_analysis),
+        "last_reading": _seen(state.last_reading),
+        "analyses_behind": state.analyses_behind,
+        "stock_days_left": state.stock_days_left,
+        "watch": [{"code": each.code, "severity": each.severity, "text": each.text} for each in state.watch],
+    }
+
+
+def _seen(seen: Seen | None) -> dict[str, Any] | None:
+    if seen is None:
+        return None
+    return {"number": seen.number, "at": seen.at, "point": seen.point, "by": seen.by, "values": seen.values}

@@ -1,0 +1,102 @@
+"""Numbers, ranges, times and tables as an operator reads them: no more digits than they deserve."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from datetime import datetime
+from zoneinfo import ZoneInfo
+
+from fertui.chemistry.names import ATOMIC_WEIGHT, CHARGES
+from fertui.estimate.points import Band, Estimated
+
+ABSENT = "-"
+SIGNS = {"act": "!!", "watch": "! ", "note": "- "}
+
+MOLAR_MASS = {
+    **{ion: ATOMIC_WEIGHT[ion] for ion in ("K", "Ca", "Mg", "Na", "Cl")},
+    "NH4": ATOMIC_WEIGHT["N"] + 4 * ATOMIC_WEIGHT["H"],
+    "NO3": ATOMIC_WEIGHT["N"] + 3 * ATOMIC_WEIGHT["O"],
+    "SO4": ATOMIC_WEIGHT["S"] + 4 * ATOMIC_WEIGHT["O"],
+    "H2PO4": ATOMIC_WEIGHT["P"] + 2 * ATOMIC_WEIGHT["H"] + 4 * ATOMIC_WEIGHT["O"],
+    "HCO3": ATOMIC_WEIGHT["H"] + ATOMIC_WEIGHT["C"] + 3 * ATOMIC_WEIGHT["O"],
+}
+"""Grams per mol of the ion itself: mg/L on screen means the ion, never the element inside it."""
+
+
+def factor(ion: str, unit: str) -> float:
+    """What a concentration in mmol/L is multiplied by to be shown in ``unit``.
+
+    >>> factor("Ca", "meq/L")
+    2.0
+    """
+    if unit == "meq/L":
+        return float(abs(CHARGES.get(ion, 1)))
+    return MOLAR_MASS.get(ion, 1.0) if unit == "mg/L" else 1.0
+
+
+def number(value: float | None, digits: int | None = None) -> str:
+    """A number with one to three digits that mean something.
+
+    >>> number(4.56), number(0.213), number(123.4), number(None)
+    ('4.6', '0.21', '123', '-')
+    """
+    if value is None:
+        return ABSENT
+    if digits is None:
+        size = abs(value)
+        digits = 0 if size >= 100 else 1 if size >= 1 else 2
+    shown = f"{value:.{digits}f}"
+    return shown.removeprefix("-") if float(shown) == 0 else shown
+
+
+def ranged(value: Estimated, scale: float = 1.0) -> str:
+    """A value with its 80 % range.
+
+    >>> ranged(Estimated(4.6, 4.0, 5.2))
+    '4.6 (4.0-5.2)'
+    """
+    shown, low, high = (number(each * scale) for each in (value.value, value.low, value.high))
+    return shown if low == high else f"{shown} ({low}-{high})"
+
+
+def band(limits: Band | None, scale: float = 1.0) -> str:
+    """A band in words.
+
+    >>> band((18, 28)), band((None, 8)), band(None)
+    ('18-28', 'up to 8.0', '')
+    """
+    if limits is None:
+        return ""
+    low, high = limits
+    if low is None:
+        return "" if high is None else f"up to {number(high * scale)}"
+    if high is None:
+        return f"from {number(low * scale)}"
+    digits = 0 if float(low * scale).is_integer() and float(high * scale).is_integer() else None
+    return f"{number(low * scale, digits)}-{number(high * scale, digits)}"
+
+
+def local(at: datetime, timezone: str) -> str:
+    """A time on the clock of the site."""
+    return f"{at.astimezone(ZoneInfo(timezone)):%a %d %b %Y %H:%M}"
+
+
+def age(at: datetime, now: datetime) -> str:
+    """How old something is, in words."""
+    hours = (now - at).total_seconds() / 3600
+    return f"{hours:.0f} h old" if hours < 72 else f"{hours / 24:.0f} days old"
+
+
+def table(rows: Sequence[Sequence[str]], right: Sequence[int] = ()) -> list[str]:
+    """Rows as aligned lines; ``right`` names the columns set flush right."""
+    if not rows:
+        return []
+    widths = [max(len(row[column]) for row in rows) for column in range(len(rows[0]))]
+    lines = []
+    for row in rows:
+        cells = [
+            cell.rjust(width) if column in right else cell.ljust(width)
+            for column, (cell, width) in enumerate(zip(row, widths, strict=True))
+        ]
+        lines.append("  ".join(cells).rstrip())
+    return lines
