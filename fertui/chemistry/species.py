@@ -10,7 +10,7 @@ import re
 from dataclasses import dataclass
 from functools import cache
 
-from fertui.chemistry.ions import ATOMIC_WEIGHT, MICRONUTRIENTS
+from fertui.chemistry.names import ATOMIC_WEIGHT, MICRONUTRIENTS
 
 
 @dataclass(frozen=True, slots=True)

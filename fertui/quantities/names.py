@@ -1,4 +1,4 @@
-"""Names as people write them: of ions and the forms they are reported in, and heads of table columns."""
+"""Names as people write them: of ions and the forms they are reported in."""
 
 from __future__ import annotations
 
@@ -20,7 +20,8 @@ ALIASES: dict[str, str] = {
     "sulfur": "S", "sulphur": "S", "bicarbonate": "HCO3", "carbonate": "CO3", "CaO as Ca": "CaO",
     "Ca CaCO3": "Ca as CaCO3", "Mg CaCO3": "Mg as CaCO3", "calcium as CaCO3": "Ca as CaCO3",
     "alkalinity as CaCO3": "CaCO3", "alkalinity CaCO3": "CaCO3", "alk as CaCO3": "CaCO3",
-    "total alkalinity as CaCO3": "CaCO3", "alkalinity as HCO3": "HCO3", "HCO3 as CaCO3": "CaCO3", "bicarbonate as CaCO3": "CaCO3",
+    "total alkalinity as CaCO3": "CaCO3", "alkalinity as HCO3": "HCO3", "HCO3 as CaCO3": "CaCO3",
+    "bicarbonate as CaCO3": "CaCO3",
 }  # fmt: skip
 """Other names of a form."""
 
@@ -30,13 +31,6 @@ WITHOUT_MASS: dict[str, str] = {
     "acid capacity 4.3": "HCO3", "acid capacity to pH 4.3": "HCO3", "acid capacity to 4.3": "HCO3", "m-value": "HCO3",
 }  # fmt: skip
 """Names that say which ion is meant but not what its mg are the mg of: taken in mmol/L, meq/L and degrees only."""
-
-MEASURES: dict[str, tuple[str, str]] = {
-    "EC": ("EC", "EC"), "EC25": ("EC", "EC"), "conductivity": ("EC", "EC"), "soluble salts": ("EC", "EC"),
-    "SS": ("EC", "EC"), "pH": ("pH", "pH"), "temperature": ("temperature", "temperature"), "temp": ("temperature", "temperature"),
-    "light_sum": ("light_sum", "light"), "radiation_sum": ("light_sum", "light"),
-}  # fmt: skip
-"""What else a table of readings carries: canonical name and what it measures."""
 
 _REFUSED = {
     "n": ("N does not say nitrate or ammonium", "NO3-N, NH4-N", "write which of the two was measured"),
@@ -54,14 +48,6 @@ class Named(NamedTuple):
     has_mass: bool
 
 
-class Head(NamedTuple):
-    """Head of a column: canonical name, unit and form as written ('' where the canonical ones are meant)."""
-
-    name: str
-    unit: str
-    species: str
-
-
 def named(text: str) -> Named | None:
     """The form of an ion that a text names, or None; charges, sub- and superscripts do not matter.
 
@@ -70,7 +56,7 @@ def named(text: str) -> Named | None:
     >>> named("SO4 2-").species.name, named("N-NO3").species.name
     ('SO4', 'NO3-N')
     """
-    folded = _fold(text)
+    folded = fold(text)
     if folded in _REFUSED:
         raise QuantityError(*_REFUSED[folded])
     for candidate in (folded, folded.rstrip("+"), re.sub(r"\d\+?$", "", folded)):
@@ -93,9 +79,13 @@ def form(text: str) -> Named:
     import difflib
 
     near = difflib.get_close_matches(text.casefold(), [name.casefold() for name in SPECIES], n=1)
-    near_name = next((name for name in SPECIES if near and name.casefold() == near[0]), "")
-    advice = f"did you mean {near_name}?" if near_name else "check the name"
-    raise QuantityError(f"{quoted(text)} is not an ion this program knows", ", ".join(SPECIES), advice.rstrip("?"))
+    meant = next((name for name in SPECIES if near and name.casefold() == near[0]), "")
+    own_names = [each.name for each in SPECIES.values() if each.name == each.ion]
+    raise QuantityError(
+        f"{quoted(text)} is not an ion this program knows",
+        f"{', '.join(own_names)} and their usual forms (NO3-N, P2O5, K2O, CaCO3 ...)",
+        f"perhaps {meant} is meant" if meant else "check the name",
+    )
 
 
 def qualified(base: Named, qualifier: str) -> Named:
@@ -108,7 +98,7 @@ def qualified(base: Named, qualifier: str) -> Named:
     """
     ion = base.species.ion
     text = re.sub(r"^(as|als|of)\s+", "", qualifier.strip("() "), flags=re.IGNORECASE)
-    joined = {"n": f"{ion}-N", "caco3": "CaCO3" if ion == "HCO3" else f"{ion} as CaCO3"}.get(_fold(text), text)
+    joined = {"n": f"{ion}-N", "caco3": "CaCO3" if ion == "HCO3" else f"{ion} as CaCO3"}.get(fold(text), text)
     try:
         found = named(joined)
     except QuantityError:
@@ -120,37 +110,6 @@ def qualified(base: Named, qualifier: str) -> Named:
             "name the form once",
         )
     return found
-
-
-def column(head: str) -> Head:
-    """What a column head says: "NO3-N [mg/L]", "alkalinity [mg/L CaCO3]", "EC [10^-5 S/cm]", "K_mmol_L".
-
-    A name that is no ion and no measure comes back as written, with its unit. Raises ``QuantityError`` for an unknown
-    unit behind an ion or a measure.
-
-    >>> column("NO3-N [mg/L]")
-    Head(name='NO3', unit='mg/L', species='NO3-N')
-    >>> column("EC [10^-5 S/cm]").unit
-    '10^-5 S/cm'
-    >>> column("K_mmol_L")
-    Head(name='K', unit='mmol/L', species='')
-    """
-    name, unit = _parted(tidy(head))
-    measure = _measures().get(_fold(name))
-    if measure is not None:
-        if unit and measure[1] != "temperature":
-            units.factor(unit, measure[1])
-        return Head(measure[0], unit, "")
-    found = named(name)
-    if found is None:
-        return Head(name, unit, "")
-    unit, qualifier = unit_and_species(unit)
-    if qualifier:
-        found = qualified(found, qualifier)
-    if unit:
-        units.basis(unit)
-    own_name = found.has_mass and found.species.name == found.species.ion
-    return Head(found.species.ion, unit, "" if own_name else found.species.name if found.has_mass else name)
 
 
 def unit_and_species(text: str) -> tuple[str, str]:
@@ -168,30 +127,13 @@ def unit_and_species(text: str) -> tuple[str, str]:
     return (unit, species.strip()) if species and units.is_unit(unit) else (text, "")
 
 
-def _parted(head: str) -> tuple[str, str]:
-    """Name and unit of a head, the unit in brackets or behind underscores."""
-    bracketed = re.fullmatch(r"(.+?)\s*[\[(]\s*([^\[\]()]*?)\s*[\])]", head)
-    if bracketed:
-        return bracketed[1], bracketed[2]
-    parts = head.split("_")
-    for cut in range(1, len(parts)):
-        unit = "/".join(parts[cut:])
-        if units.is_unit(unit) and units.fold(unit) != "pct":
-            return "_".join(parts[:cut]), unit
-    return head, ""
-
-
-def _fold(name: str) -> str:
+def fold(name: str) -> str:
+    """One spelling for the many a name has: case, spaces, hyphens, underscores and dots do not matter."""
     return re.sub(r"[\s_\-.,()\u00b7]", "", tidy(name).casefold())
 
 
 @cache
 def _known() -> dict[str, Named]:
-    known = {_fold(name): Named(species, True) for name, species in SPECIES.items()}
-    known |= {_fold(name): Named(SPECIES[target], True) for name, target in ALIASES.items()}
-    return known | {_fold(name): Named(SPECIES[target], False) for name, target in WITHOUT_MASS.items()}
-
-
-@cache
-def _measures() -> dict[str, tuple[str, str]]:
-    return {_fold(name): measure for name, measure in MEASURES.items()}
+    known = {fold(name): Named(species, True) for name, species in SPECIES.items()}
+    known |= {fold(name): Named(SPECIES[target], True) for name, target in ALIASES.items()}
+    return known | {fold(name): Named(SPECIES[target], False) for name, target in WITHOUT_MASS.items()}

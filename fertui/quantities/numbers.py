@@ -59,7 +59,9 @@ def split(text: str | float, *, negative: bool = False) -> tuple[Number, str]:
     sign, digits, rest = found.groups()
     if _GROUPED_BY_SPACE.match(rest) or _GROUPED_BY_COMMA.fullmatch(digits) or "'" in digits:
         raise QuantityError(
-            f"{quoted(plain)} can be read as a decimal or with a mark between thousands", _ALLOWED, _rewritten(digits)
+            f"{quoted(plain)} has a mark that can stand between thousands or before decimals",
+            _ALLOWED,
+            "write 1234 for a number above a thousand, 1.234 for one just above 1",
         )
     return Number(_value(digits, plain, negative), sign == "<"), rest.strip()
 
@@ -96,10 +98,3 @@ def _why_none(plain: str) -> str:
     if not plain:
         return "the value is empty"
     return f"{quoted(plain)} does not begin with a number"
-
-
-def _rewritten(digits: str) -> str:
-    bare = digits.replace("'", "").replace(",", "")
-    return (
-        f"write {bare} without marks, or with a point such as {digits.replace(',', '.', 1)}" if bare else "rewrite it"
-    )

@@ -19,8 +19,8 @@ PER_LITRE: Mapping[str, Mapping[str, float]] = {
     "mg/L": {"mg/L": 1, "ppm": 1, "g/m3": 1, "ug/L": 1e-3, "ppb": 1e-3, "mg/m3": 1e-3, "g/L": 1e3, "kg/m3": 1e3},
     "mmol/L": {"mmol/L": 1, "mol/m3": 1, "mM": 1, "umol/L": 1e-3, "uM": 1e-3, "mmol/m3": 1e-3, "mol/L": 1e3},
     "meq/L": {"meq/L": 1, "me/L": 1, "mval/L": 1, "eq/m3": 1, "mmolc/L": 1, "ueq/L": 1e-3, "eq/L": 1e3},
-    "dH": {"dH": 1},
-    "fH": {"fH": 1},
+    "dH": {"dH": 1, "d": 1, "dGH": 1},
+    "fH": {"fH": 1, "f": 1},
 }
 """Units of concentration by their basis (mass, amount, equivalents, German and French degrees): worth in the basis.
 ppm by mass is taken as mg/L, which it is within 1 % in any solution a crop could live in."""
@@ -42,6 +42,9 @@ FACTORS: Mapping[str, Mapping[str, float]] = {
 }  # fmt: skip
 """Worth of a unit in the canonical one. Gallon, pound, ounce: exact by definition (NIST Handbook 44, from memory)."""
 
+SAME_EVERYWHERE = ("EC", "light")
+"""What may be asked of pint: gallons, tons and barrels differ between countries, so volumes and weights may not."""
+
 _TEMPERATURE = {"c": "C", "degc": "C", "celsius": "C", "f": "F", "degf": "F", "fahrenheit": "F"}
 _TRAPS = {
     "EC": (
@@ -50,6 +53,7 @@ _TRAPS = {
         "read the EC itself off the meter, in mS/cm",
     ),
     "litres": (r"gal|gals|gallons?", "is a US or an imperial gallon", "write US gal or imp gal"),
+    "kg": (r"tons?", "is a metric, a short or a long ton", "write it in kg"),
     "light": (r"u?mol/m2|mol", "counts photons, not energy", "enter the radiation sum in J/cm2 or MJ/m2"),
 }
 _FOR_PINT = re.compile(r"[a-z]+(\^?-?[1-4])?((\*|/| )[a-z]+(\^?-?[1-4])?){0,3}", re.IGNORECASE)
@@ -68,7 +72,7 @@ def factor(unit: str, what: str) -> float:
     known = _folded(what)
     if fold(unit) in known:
         return known[fold(unit)]
-    by_pint = pint_factor(unit, CANONICAL[what])
+    by_pint = pint_factor(unit, CANONICAL[what]) if what in SAME_EVERYWHERE else None
     if by_pint is None:
         raise _unknown(unit, what)
     return by_pint
