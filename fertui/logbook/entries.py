@@ -10,8 +10,10 @@ from datetime import datetime
 class Value:
     """One value of an entry: as written, with unit and species, and the canonical number.
 
-    Canonical units: mmol/L for ions, umol/L for micronutrients, meq/L for HCO3, mS/cm at 25 C, L, kg, degrees C, J/cm2, %.
-    ``number`` is None for words (salt, tank, source, reason, lab ...); ``below`` marks ``<0.1``: number is the limit.
+    Canonical units: mmol/L for ions, umol/L for micronutrients, meq/L for HCO3, mS/cm at 25 C, L, kg, degrees C,
+    J/cm2, %; the whole list is ``kinds.UNITS``. ``number`` is None for words (salt, tank, source, reason, lab ...),
+    which stand as the site spells them. ``unit`` and ``species`` are those written: ``mg/L`` and ``NO3-N``; '' where
+    the canonical ones were meant. ``below`` marks ``<0.1``: number is the limit of detection.
     """
 
     name: str
@@ -24,7 +26,11 @@ class Value:
 
 @dataclass(frozen=True, slots=True)
 class Entry:
-    """One line of the logbook. Times are aware and in UTC. ``number`` is None until the store gave it one."""
+    """One line of the logbook. Times are aware and in UTC. ``number`` is None until the store gave it one.
+
+    ``whole_day``: written without a time of day. An amount then covers that local day and ``at`` is its midnight; what
+    is measured or done at a moment stands at noon. ``doubtful`` (any text): kept and shown, never assimilated.
+    """
 
     kind: str
     loop: str
@@ -42,6 +48,7 @@ class Entry:
     supersedes: int | None = None
     why: str = ""
     void: bool = False
+    whole_day: bool = False
 
     def value(self, name: str) -> Value | None:
         """The value of that name, or None."""

@@ -1,0 +1,338 @@
+"""The logbook file: append-only SQLite that keeps every entry, safe against power cuts and other sessions."""
+
+from __future__ import annotations
+
+import hashlib
+import os
+import sqlite3
+import threading
+from collections.abc import Iterable, Iterator, Sequence
+from contextlib import contextmanager
+from dataclasses import replace
+from datetime import UTC, datetime
+from pathlib import Path
+from types import TracebackType
+from typing import Any
+
+from fertui.logbook import schema
+from fertui.logbook.codec import VALUE_FIELDS, check_storable, line_of, moment, moment_text, settled
+from fertui.logbook.entries import Entry, Value
+from fertui.logbook.errors import LogbookError, StoreError
+from fertui.logbook.files import check_regular, check_whole, create_private, publish
+
+FILE_NAME = "logbook.sqlite3"
+BUSY_SECONDS = 5.0
+FIRST_HASH = "0" * 64
+
+_COLUMNS = (
+    "number", "kind", "loop", "at", "entered", "by", "point", "zone", "method", "instrument", "note", "doubtful",
+    "supersedes", "why", "void", "whole_day",
+)  # fmt: skip
+_SELECT = "SELECT " + ", ".join(f"e.{column}" for column in _COLUMNS)
+_SELECT_VALUES = "SELECT v.entry, " + ", ".join(f"v.{name}" for name in VALUE_FIELDS)
+_INSERT = f"INSERT INTO entries ({', '.join(_COLUMNS)}, hash) VALUES ({', '.join('?' * (len(_COLUMNS) + 1))})"
+_VALUE_COLUMNS = ("entry", "position", *VALUE_FIELDS)
+_INSERT_VALUE = (
+    f"INSERT INTO entry_values ({', '.join(_VALUE_COLUMNS)}) VALUES ({', '.join('?' * len(_VALUE_COLUMNS))})"
+)
+
+
+class Logbook:
+    """An open logbook. Use it as a context manager; it may be called from several threads."""
+
+    def __init__(self, path: Path, connection: sqlite3.Connection, writable: bool) -> None:
+        """Use ``open`` or ``create``."""
+        self.path = path
+        self.writable = writable
+        self._connection = connection
+        self._lock = threading.RLock()
+
+    @classmethod
+    def create(cls, path: str | Path) -> Logbook:
+        """Make a new, empty logbook, readable by owner and group only, and open it.
+
+        Raises ``StoreError`` when the file is there already or cannot be made.
+        """
+        path = Path(path)
+        making = path.with_name(f".{path.name}.{os.getpid()}")
+        create_private(making)
+        try:
+            with _spoken(making), cls(making, _connect(making, f"file:{_quoted(making)}?mode=rw"), True) as book:
+                book._migrate()
+                book._connection.execute("PRAGMA journal_mode = WAL")
+            publish(making, path)
+        finally:
+            making.unlink(missing_ok=True)
+        return cls.open(path)
+
+    @classmethod
+    def open(cls, path: str | Path) -> Logbook:
+        """Open the logbook of a site; an older schema is brought up to date, a newer one refused untouched.
+
+        A file or folder that cannot be written opens for reading only. Raises ``StoreError`` when there is no logbook,
+        it is a link, empty, cut off, damaged, newer, or another program's.
+        """
+        path = Path(path)
+        check_regular(path)
+        check_whole(path)
+        writable = os.access(path, os.W_OK) and os.access(path.parent, os.W_OK)
+        with _spoken(path):
+            book = cls(path, _connect(path, _address(path, writable)), writable)
+            if book._version() < schema.VERSION and writable:
+                book._migrate()
+        return book
+
+    def close(self) -> None:
+        """Close the file; nothing depends on it being closed."""
+        self._connection.close()
+
+    def __enter__(self) -> Logbook:
+        return self
+
+    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, at: TracebackType | None) -> None:
+        self.close()
+
+    # reading
+
+    def entries(
+        self,
+        loop: str | None = None,
+        kinds: Iterable[str] | None = None,
+        since: datetime | None = None,
+        at: datetime | None = None,
+        known: datetime | None = None,
+    ) -> tuple[Entry, ...]:
+        """Effective entries (superseded and struck ones left out), ordered by time of the event and number.
+
+        ``loop``: of that loop and of the site as a whole. ``since`` .. ``at``: time of the event, both included.
+        ``known``: as the book stood then: entries and corrections made later are hidden.
+        """
+        known_text = moment_text(known) if known is not None else "9"
+        where, given = _where(loop, kinds, since, at)
+        where += (
+            "e.void = 0",
+            "e.entered <= ?",
+            "NOT EXISTS (SELECT 1 FROM entries c WHERE c.supersedes = e.number AND c.entered <= ?)",
+        )
+        return self._read(where, [*given, known_text, known_text], "e.at, e.number")
+
+    def history(
+        self,
+        loop: str | None = None,
+        kinds: Iterable[str] | None = None,
+        since: datetime | None = None,
+        at: datetime | None = None,
+        known: datetime | None = None,
+    ) -> tuple[Entry, ...]:
+        """Every entry verbatim, superseded, struck and striking ones too, in the order of their numbers."""
+        where, given = _where(loop, kinds, since, at)
+        if known is not None:
+            where, given = (*where, "e.entered <= ?"), [*given, moment_text(known)]
+        return self._read(where, given, "e.number")
+
+    def entry(self, number: int) -> Entry:
+        """The entry of that number as written, effective or not; raises ``LogbookError`` when there is none."""
+        found = self._read(("e.number = ?",), [number], "e.number") if 0 < number < 2**63 else ()
+        if not found:
+            raise LogbookError(f"there is no entry {number}; the last one is {self.last_number()}.")
+        return found[0]
+
+    def last(
+        self, kind: str, loop: str | None = None, before: datetime | None = None, point: str | None = None
+    ) -> Entry | None:
+        """The latest effective entry of a kind, of a point where one is given, before that time."""
+        where, given = _where(loop, (kind,), None, before)
+        where += ("e.void = 0", "NOT EXISTS (SELECT 1 FROM entries c WHERE c.supersedes = e.number)")
+        if point is not None:
+            where, given = (*where, "e.point = ?"), [*given, point]
+        found = self._read(where, given, "e.at DESC, e.number DESC LIMIT 1")
+        return found[0] if found else None
+
+    def superseded_by(self, number: int) -> int | None:
+        """Number of the entry that corrects or strikes this one, or None."""
+        return self._one("SELECT number FROM entries WHERE supersedes = ?", number)
+
+    def last_number(self) -> int:
+        """Number of the last entry, 0 in an empty book; it changes with every write, so caches key on it."""
+        return self._one("SELECT max(number) FROM entries") or 0
+
+    # writing
+
+    def append(self, entries: Entry | Sequence[Entry]) -> tuple[int, ...]:
+        """Write one entry or several in one transaction, all or none, and return their numbers.
+
+        Once this returns, they are on the disk. An entry that supersedes must say why and name one that is still
+        effective. Raises ``LogbookError`` for an entry that cannot be kept, ``StoreError`` for trouble with the file.
+        """
+        batch = (entries,) if isinstance(entries, Entry) else tuple(entries)
+        for entry in batch:
+            check_storable(entry)
+        with self._writing() as connection:
+            last, chain = connection.execute(
+                "SELECT number, hash FROM entries ORDER BY number DESC LIMIT 1"
+            ).fetchone() or (0, FIRST_HASH)
+            numbers = []
+            for number, entry in enumerate(batch, start=last + 1):
+                if entry.number not in (None, number):
+                    raise LogbookError(f"entry {entry.number} cannot follow entry {number - 1}.")
+                self._check_supersedes(entry, number)
+                chain = self._insert(replace(entry, number=number), chain)
+                numbers.append(number)
+        return tuple(numbers)
+
+    def void(self, number: int, why: str, by: str, now: datetime | None = None) -> int:
+        """Strike an entry: a new entry says who, when and why; the old one stays. Returns the new number."""
+        old = self.entry(number)
+        striking = replace(
+            old, entered=now or datetime.now(UTC), by=by, values=(), number=None, note="", doubtful="",
+            supersedes=number, why=why, void=True,
+        )  # fmt: skip
+        return self.append(striking)[0]
+
+    def _check_supersedes(self, entry: Entry, number: int) -> None:
+        if entry.supersedes is None:
+            return
+        if not entry.why.strip():
+            raise LogbookError(f'a correction of entry {entry.supersedes} needs its reason: why="...".')
+        if entry.supersedes >= number:
+            raise LogbookError(f"there is no entry {entry.supersedes} to correct; the last one is {number - 1}.")
+        later = self.superseded_by(entry.supersedes)
+        if later is not None:
+            raise LogbookError(f"entry {entry.supersedes} was already corrected by entry {later}; correct that one.")
+        if self._one("SELECT void FROM entries WHERE number = ?", entry.supersedes):
+            raise LogbookError(
+                f"entry {entry.supersedes} strikes another and cannot be corrected; record the event anew."
+            )
+
+    def _insert(self, entry: Entry, chain: str) -> str:
+        link = link_of(chain, entry)
+        row = [getattr(entry, column) for column in _COLUMNS]
+        row[3:5] = moment_text(entry.at), moment_text(entry.entered)
+        self._connection.execute(_INSERT, [*row, link])
+        values = (
+            [entry.number, position, *(getattr(value, name) for name in VALUE_FIELDS)]
+            for position, value in enumerate(map(settled, entry.values))
+        )
+        self._connection.executemany(_INSERT_VALUE, values)
+        return link
+
+    # the file
+
+    @contextmanager
+    def _writing(self) -> Iterator[sqlite3.Connection]:
+        if not self.writable:
+            raise StoreError(f"{self.path} cannot be written here (read-only file or folder); nothing was recorded.")
+        with self._lock, _spoken(self.path):
+            self._connection.execute("BEGIN IMMEDIATE")
+            try:
+                yield self._connection
+                self._connection.execute("COMMIT")
+            except BaseException:
+                if self._connection.in_transaction:
+                    self._connection.execute("ROLLBACK")
+                raise
+
+    def _migrate(self) -> None:
+        with self._writing() as connection:
+            schema.migrate(connection, self._version())
+
+    def _version(self) -> int:
+        return schema.version_of(self._connection, self.path)
+
+    def _one(self, query: str, *given: object) -> int | None:
+        with self._lock, _spoken(self.path):
+            row = self._connection.execute(query, given).fetchone()
+        return None if row is None else row[0]
+
+    def _read(self, where: Sequence[str], given: Sequence[object], order: str) -> tuple[Entry, ...]:
+        chosen = f"FROM entries e WHERE {' AND '.join(where) or '1'}"
+        picked = f"{_SELECT} {chosen} ORDER BY {order}"
+        values_of = (
+            f"{_SELECT_VALUES} FROM ({picked}) e JOIN entry_values v ON v.entry = e.number ORDER BY v.entry, v.position"
+        )
+        with self._lock, _spoken(self.path):
+            self._connection.execute("BEGIN")
+            try:
+                rows = self._connection.execute(picked, given).fetchall()
+                value_rows = self._connection.execute(values_of, given).fetchall()
+            finally:
+                self._connection.execute("COMMIT")
+        values: dict[int, list[Value]] = {}
+        for entry, name, text, number, unit, species, below in value_rows:
+            values.setdefault(entry, []).append(Value(name, text, number, unit, species, bool(below)))
+        return tuple(_entry(row, tuple(values.get(row[0], ()))) for row in rows)
+
+
+def link_of(chain: str, entry: Entry) -> str:
+    """SHA-256 over the link before and the entry's line: a changed or lost entry breaks every link after it."""
+    return hashlib.sha256(f"{chain}\n{line_of(entry)}".encode()).hexdigest()
+
+
+def _entry(row: Sequence[Any], values: tuple[Value, ...]) -> Entry:
+    plain = dict(zip(_COLUMNS, row, strict=True))
+    plain |= {"at": moment(plain["at"]), "entered": moment(plain["entered"]), "values": values}
+    return Entry(**{**plain, "void": bool(plain["void"]), "whole_day": bool(plain["whole_day"])})
+
+
+def _where(
+    loop: str | None, kinds: Iterable[str] | None, since: datetime | None, at: datetime | None
+) -> tuple[tuple[str, ...], list[object]]:
+    where: list[str] = []
+    given: list[object] = []
+    if loop is not None:
+        where.append("e.loop IN (?, '')")
+        given.append(loop)
+    if kinds is not None:
+        wanted = tuple(kinds)
+        where.append(f"e.kind IN ({', '.join('?' * len(wanted))})")
+        given.extend(wanted)
+    for limit, condition in ((since, "e.at >= ?"), (at, "e.at <= ?")):
+        if limit is not None:
+            where.append(condition)
+            given.append(moment_text(limit))
+    return tuple(where), given
+
+
+def _connect(path: Path, address: str) -> sqlite3.Connection:
+    connection = sqlite3.connect(address, uri=True, timeout=BUSY_SECONDS, isolation_level=None, check_same_thread=False)
+    connection.execute("PRAGMA synchronous = FULL")
+    connection.execute("PRAGMA foreign_keys = ON")
+    connection.execute("PRAGMA trusted_schema = OFF")
+    return connection
+
+
+def _address(path: Path, writable: bool) -> str:
+    # SQLite cannot open a WAL file in a folder it cannot write to; without a log beside it the file itself is whole.
+    alone = not path.with_name(path.name + "-wal").exists()
+    mode = "mode=rw" if writable else "mode=ro&immutable=1" if alone else "mode=ro"
+    return f"file:{_quoted(path)}?{mode}"
+
+
+def _quoted(path: Path) -> str:
+    absolute = os.fspath(path.absolute())
+    return absolute.replace("%", "%25").replace("?", "%3f").replace("#", "%23")
+
+
+_WORDS: dict[str, str] = {
+    "SQLITE_BUSY": "another session has been writing to it for more than 5 s; nothing was recorded, try again",
+    "SQLITE_FULL": "the disk is full; nothing was recorded. Make room and try again",
+    "SQLITE_READONLY": "it cannot be written (read-only file, folder or disk); nothing was recorded",
+    "SQLITE_CANTOPEN": "it cannot be opened; look at the rights of the file and its folder",
+    "SQLITE_CORRUPT": "it is damaged. Keep a copy; `fertui backup` saves what can still be read",
+    "SQLITE_NOTADB": "it is not a logbook, or its beginning is damaged. Restore a backup with `fertui restore`",
+    "SQLITE_IOERR": "the disk failed while it was read or written; nothing was recorded. Look after the disk first",
+    "SQLITE_PERM": "you have no right to use it",
+}
+
+
+@contextmanager
+def _spoken(path: Path) -> Iterator[None]:
+    """Turn what SQLite reports into a sentence about the file."""
+    try:
+        yield
+    except sqlite3.Error as error:
+        name = getattr(error, "sqlite_errorname", "") or type(error).__name__
+        words = next(
+            (text for start, text in _WORDS.items() if name.startswith(start)), f"SQLite says: {error} ({name})"
+        )
+        raise StoreError(f"{path}: {words}.") from error
