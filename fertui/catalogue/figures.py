@@ -52,6 +52,14 @@ class Range:
 
 
 @dataclass(frozen=True, slots=True)
+class Figure:
+    """One number with its source."""
+
+    value: float
+    source: Provenance
+
+
+@dataclass(frozen=True, slots=True)
 class Recipe:
     """Ions [mmol/L], micronutrients [umol/L], EC [mS/cm at 25 C] and pH of a published solution or target.
 

@@ -7,6 +7,7 @@ from collections import Counter
 from functools import cache
 
 from fertui.catalogue.figures import CatalogueError
+from fertui.chemistry.names import ATOMIC_WEIGHT
 
 TOKEN = re.compile(r"([A-Z][a-z]?)(\d*)|(\()|\)(\d*)")
 
@@ -53,15 +54,13 @@ def _part(text: str, formula: str) -> Counter[str]:
 
 @cache
 def molar_mass(formula: str) -> float:
-    """Molar mass [g/mol] from the atomic weights of ``fertui.chemistry.ions``.
+    """Molar mass [g/mol] from the atomic weights of ``fertui.chemistry.names``.
 
     Raises ``CatalogueError`` for an element that the catalogue does not know.
 
     >>> round(molar_mass("KNO3"), 2)
     101.1
     """
-    from fertui.chemistry.ions import ATOMIC_WEIGHT  # here: naming a salt must not cost the load of numpy
-
     unknown = [element for element in atoms(formula) if element not in ATOMIC_WEIGHT]
     if unknown:
         raise CatalogueError(f"{formula!r}: no atomic weight for {', '.join(unknown)}")

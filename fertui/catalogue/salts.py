@@ -11,6 +11,7 @@ from typing import Any
 
 from fertui.catalogue.figures import CatalogueError, Provenance, table
 from fertui.catalogue.formula import molar_mass
+from fertui.chemistry.names import CHARGES
 
 MICRONUTRIENT_CHARGE = {"Fe": 3, "Mn": 2, "Zn": 2, "B": 0, "Cu": 2, "Mo": -2, "Si": 0}
 """Charge of each micronutrient in solution where it is not chelated: boric and silicic acid, molybdate."""
@@ -56,10 +57,8 @@ class Salt:
 
     def charge_of(self, ion: str) -> int:
         """Charge of an ion or micronutrient as this salt brings it into solution."""
-        from fertui.chemistry.ions import CHARGE, INDEX
-
-        if ion in INDEX:
-            return int(CHARGE[INDEX[ion]])
+        if ion in CHARGES:
+            return CHARGES[ion]
         return MICRONUTRIENT_CHARGE[ion] if self.complex_charge is None else self.complex_charge
 
     def solubility(self, temperature_c: float) -> float | None:
