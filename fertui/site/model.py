@@ -22,7 +22,7 @@ class Sourced:
 
 @dataclass(frozen=True, slots=True)
 class Composition:
-    """Ions [mmol/L], micronutrients [umol/L], EC [mS/cm at 25 C] and pH of a water, recipe or target; None: not given."""
+    """Ions [mmol/L], micronutrients [umol/L], EC [mS/cm at 25 C] and pH of a water, recipe or target; None: unknown."""
 
     ions: Mapping[str, float] = field(default_factory=dict)
     micronutrients: Mapping[str, float] = field(default_factory=dict)
@@ -63,11 +63,12 @@ class StockTank:
     letter: str = ""
     salts_kg: Mapping[str, float] = field(default_factory=dict)
     storage_temperature_c: float = 10.0
+    source: str = ""
 
 
 @dataclass(frozen=True, slots=True)
 class Loop:
-    """One recirculating circuit with one root zone."""
+    """One recirculating circuit with one root zone; ``sources`` says where a number of it comes from, by field name."""
 
     name: str
     layout: str
@@ -93,11 +94,12 @@ class Loop:
     extract_factors: Mapping[str, float] = field(default_factory=dict)
     bands: Mapping[str, Mapping[str, Sourced]] = field(default_factory=dict)
     limits: Mapping[str, Mapping[str, Sourced]] = field(default_factory=dict)
+    sources: Mapping[str, str] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, slots=True)
 class Instrument:
-    """A meter or scale of the site; ``compensated`` says whether an EC meter already reads at 25 C (None: not asked)."""
+    """A meter or scale of the site; ``compensated``: whether an EC meter already reads at 25 C (None: not asked)."""
 
     name: str
     kind: str
