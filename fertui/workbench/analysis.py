@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 from fertui.chemistry.names import CHARGES, IONS, MICRONUTRIENTS
 from fertui.logbook.entries import Entry
 from fertui.site.model import Composition, Loop, Site
+from fertui.workbench.entering import check_analysis
 from fertui.workbench.glance import Seen, managed_point, seen
 
 if TYPE_CHECKING:
@@ -77,7 +78,7 @@ def analysis(site: Site, loop: Loop, entries: Sequence[Entry], at: datetime) -> 
             _row(ion, "umol/L", feed, managed, previous, target.micronutrients, None) for ion in MICRONUTRIENTS
         ),
         shares={ion: (share_of(managed, ion), share_of(previous, ion)) for ion in ("K", "Ca", "Mg")},
-        checks={entry.point: _checks(entry) for entry in (feed, managed) if entry is not None},
+        checks={entry.point: check_analysis(entry) for entry in (feed, managed) if entry is not None},
         last_change=_last_change(loop, entries, previous, managed),
     )
 
@@ -93,7 +94,7 @@ def _last(entries: Sequence[Entry]) -> Entry | None:
 
 
 def _target(site: Site, loop: Loop, point: str) -> Composition:
-    from fertui.site.aims import target_of
+    from fertui.site.presets import target_of
 
     targets = target_of(site, loop)
     return targets.get(point) or targets.get(managed_point(loop)) or Composition()
@@ -150,13 +151,6 @@ def share_of(entry: Entry | None, ion: str) -> float | None:
     charges = {each: CHARGES[each] * (amount or 0.0) for each, amount in amounts.items()}
     total = sum(charges.values())
     return 100.0 * charges[ion] / total if total > 0 else None
-
-
-def _checks(entry: Entry) -> tuple[Check, ...]:
-    from fertui.chemistry.verdicts import verdicts
-
-    ions = {ion: number for ion in IONS if (number := entry.number_of(ion)) is not None}
-    return verdicts(ions, ec_measured=entry.number_of("EC"), ph=entry.number_of("pH"))
 
 
 def _last_change(loop: Loop, entries: Sequence[Entry], previous: Entry | None, managed: Entry | None) -> str:

@@ -16,9 +16,11 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Balance
     from fertui.estimate.forecast import Forecast, Scenario
     from fertui.estimate.hindcast import Hindcast
+    from fertui.logbook.questions import Question
     from fertui.logbook.store import Logbook
     from fertui.planning.values import AcidSheet, Plan, StockSheet
     from fertui.site.model import Loop, Site
+    from fertui.workbench.aims import Aims
     from fertui.workbench.analysis import AnalysisView
     from fertui.workbench.checks import CheckRow
     from fertui.workbench.drift import Drift
@@ -190,12 +192,56 @@ class Bench:
 
         return check(self)
 
+    def time(self, written: str) -> datetime:
+        """A time as people write it, on the clock of the site."""
+        from fertui.logbook.times import read_moment
+
+        return read_moment(written, self.site.timezone, now())[0]
+
+    def history(
+        self, kind: str | None = None, loop: str | None = None, at: datetime | None = None
+    ) -> tuple[Entry, ...]:
+        """Every entry verbatim, struck ones too."""
+        from fertui.logbook.kinds import kind_named
+
+        kinds = None if kind is None else (kind_named(kind).name,)
+        return self.book.history(loop=None if loop is None else self.loop(loop).name, kinds=kinds, at=at)
+
+    def aims(self, loop: str | None = None) -> Aims:
+        """Targets, bands and limits of a loop, each with where it comes from."""
+        from fertui.workbench.aims import aims
+
+        return aims(self.site, self.loop(loop))
+
+    def questions(self, kind: str, fields: Mapping[str, str], loop: str | None = None) -> tuple[Question, ...]:
+        """What a careful colleague would ask before this entry is written."""
+        from fertui.logbook.questions import questions
+
+        return questions(self._read(kind, fields, loop), self.book, self.site)
+
     def record(self, kind: str, fields: Mapping[str, str], loop: str | None = None) -> Entry:
         """Append one entry and return it as read back from the logbook."""
+        return self._stored(self.book.append(self._read(kind, fields, loop)))
+
+    def supersede(self, number: int, fields: Mapping[str, str], why: str, by: str) -> Entry:
+        """Correct an entry by a new one; the old one stays visible."""
+        from fertui.logbook.parse import corrected
+
+        old = self.book.entry(number)
+        return self._stored(self.book.append(corrected(old, fields, self.site, datetime.now(UTC), why=why, by=by)))
+
+    def void(self, number: int, why: str, by: str) -> Entry:
+        """Strike an entry; it stays visible."""
+        return self._stored((self.book.void(number, why, by),))
+
+    def last_number(self) -> int:
+        """Number of the last entry: what another session wrote shows here."""
+        return self.book.last_number()
+
+    def _read(self, kind: str, fields: Mapping[str, str], loop: str | None) -> Entry:
         from fertui.logbook.parse import entry_from_text
 
-        entry = entry_from_text(kind, fields, self.site, self.loop(loop).name, now())
-        return self._stored(self.book.append(entry))
+        return entry_from_text(kind, fields, self.site, self.loop(loop), datetime.now(UTC))
 
     def _stored(self, numbers: Sequence[int]) -> Entry:
         return self.book.entry(numbers[-1])

@@ -32,7 +32,7 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
 
 
 def _check(check: Any) -> str:
-    limit = "" if check.limit is None else f", limit {words.number(check.limit)} {check.unit}"
+    limit = f", limit {check.limit}" if check.limit else ""
     remark = f" {check.remark}" if check.remark else ""
     return f"{words.number(check.value)} {check.unit}{limit}{remark} ({check.source})"
 
@@ -50,7 +50,7 @@ def _rows(rows: Sequence[AnalysisRow], managed: str, unit: str) -> list[tuple[st
             for value in (row.feed, row.managed, row.previous, row.normalised, row.target)
         ]
         off = "" if row.deviation_pct is None else f"{row.deviation_pct:+.0f}"
-        shown.append((row.ion, *numbers, off, row.words))
+        shown.append((words.label(row.ion, unit), *numbers, off, row.words))
     return shown
 
 

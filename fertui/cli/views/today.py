@@ -63,7 +63,7 @@ def _concentrations(state: Today, unit: str) -> list[str]:
     for ion in state.points[state.managed_point].ions:
         scale = words.factor(ion, unit)
         cells = [words.ranged(state.points[name].ions[ion].mmol_l, scale) for name in names]
-        rows.append((ion, *cells))
+        rows.append((words.label(ion, unit), *cells))
     rows.append(("EC mS/cm", *(words.ranged(state.points[name].ec) for name in names)))
     return words.table(rows)
 

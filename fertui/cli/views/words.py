@@ -6,22 +6,11 @@ from collections.abc import Sequence
 from datetime import datetime
 from zoneinfo import ZoneInfo
 
-from fertui.chemistry.names import ATOMIC_WEIGHT, CHARGES
 from fertui.estimate.points import Band, Estimated
+from fertui.workbench.units import shown
 
 ABSENT = "-"
 SIGNS = {"act": "!!", "watch": "! ", "note": "- "}
-
-MOLAR_MASS = {
-    **{ion: ATOMIC_WEIGHT[ion] for ion in ("K", "Ca", "Mg", "Na", "Cl")},
-    "NH4": ATOMIC_WEIGHT["N"] + 4 * ATOMIC_WEIGHT["H"],
-    "NO3": ATOMIC_WEIGHT["N"] + 3 * ATOMIC_WEIGHT["O"],
-    "SO4": ATOMIC_WEIGHT["S"] + 4 * ATOMIC_WEIGHT["O"],
-    "H2PO4": ATOMIC_WEIGHT["P"] + 2 * ATOMIC_WEIGHT["H"] + 4 * ATOMIC_WEIGHT["O"],
-    "HCO3": ATOMIC_WEIGHT["H"] + ATOMIC_WEIGHT["C"] + 3 * ATOMIC_WEIGHT["O"],
-}
-"""Grams per mol of the ion itself: mg/L on screen means the ion, never the element inside it."""
-
 
 def factor(ion: str, unit: str) -> float:
     """What a concentration in mmol/L is multiplied by to be shown in ``unit``.
@@ -29,9 +18,17 @@ def factor(ion: str, unit: str) -> float:
     >>> factor("Ca", "meq/L")
     2.0
     """
-    if unit == "meq/L":
-        return float(abs(CHARGES.get(ion, 1)))
-    return MOLAR_MASS.get(ion, 1.0) if unit == "mg/L" else 1.0
+    return shown(ion, 1.0, unit)[0]
+
+
+def label(ion: str, unit: str) -> str:
+    """The name an ion goes by in ``unit``: mg/L are of N, P and S.
+
+    >>> label("NO3", "mg/L"), label("NO3", "mmol/L")
+    ('NO3-N', 'NO3')
+    """
+    species = shown(ion, 1.0, unit)[1].partition(" ")[2]
+    return species or ion
 
 
 def number(value: float | None, digits: int | None = None) -> str:
@@ -45,8 +42,8 @@ def number(value: float | None, digits: int | None = None) -> str:
     if digits is None:
         size = abs(value)
         digits = 0 if size >= 100 else 1 if size >= 1 else 2
-    shown = f"{value:.{digits}f}"
-    return shown.removeprefix("-") if float(shown) == 0 else shown
+    written = f"{value:.{digits}f}"
+    return written.removeprefix("-") if float(written) == 0 else written
 
 
 def ranged(value: Estimated, scale: float = 1.0) -> str:
@@ -55,8 +52,8 @@ def ranged(value: Estimated, scale: float = 1.0) -> str:
     >>> ranged(Estimated(4.6, 4.0, 5.2))
     '4.6 (4.0-5.2)'
     """
-    shown, low, high = (number(each * scale) for each in (value.value, value.low, value.high))
-    return shown if low == high else f"{shown} ({low}-{high})"
+    middle, low, high = (number(each * scale) for each in (value.value, value.low, value.high))
+    return middle if low == high else f"{middle} ({low}-{high})"
 
 
 def band(limits: Band | None, scale: float = 1.0) -> str:

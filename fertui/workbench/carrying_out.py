@@ -1,0 +1,117 @@
+"""From a plan to what was done: intended steps are entries of their own, and count only when marked done."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from typing import TYPE_CHECKING
+
+from fertui.logbook.entries import Entry
+from fertui.refusals import Refusal
+
+if TYPE_CHECKING:
+    from fertui.planning.values import Plan
+
+Fields = dict[str, str]
+
+
+@dataclass(frozen=True, slots=True)
+class PlanItem:
+    """One intended step: what, how much, into what; ``done_number`` is the entry that carried it out."""
+
+    number: int
+    at: datetime
+    what: str
+    amount: float | None
+    unit: str
+    target: str
+    done_number: int | None
+
+
+def steps_of(plan: Plan, by: str) -> tuple[Fields, ...]:
+    """The texts of the plan entries a plan is accepted as: one a weighing, acid split, bleed or recipe."""
+    rows: list[Fields] = []
+    for step in plan.steps:
+        rows.append({"at": step.at.isoformat(), "salt": step.salt, "kg": f"{step.kg:g}", "tank": _tank(step.target)})
+    for split in plan.acid:
+        litres = f"{split.litres:.3f}"
+        rows.append({"at": split.at.isoformat(), "acid": split.acid, "litres": litres, "tank": _tank(split.target)})
+    if plan.renewal is not None:
+        rows.append({"at": plan.at.isoformat(), "bleed": f"{plan.renewal.litres:.0f}"})
+    if plan.recipe is not None:
+        ions = {ion: f"{amount:.3f}" for ion, amount in plan.recipe.ions_mmol_l.items()}
+        rows.append({"at": plan.at.isoformat(), "EC": f"{plan.recipe.ec:.2f}", **ions})
+    if not rows:
+        raise Refusal("This plan asks for nothing, so there is nothing to accept.")
+    return tuple({**row, "by": by} for row in rows)
+
+
+def _tank(target: str) -> str:
+    return target.removeprefix("tank:")
+
+
+def open_plans(entries: Sequence[Entry]) -> tuple[PlanItem, ...]:
+    """Every intended step of a loop's effective entries, with what carried it out."""
+    done = {int(number): entry.number for entry in entries if (number := entry.number_of("plan")) is not None}
+    return tuple(_item(entry, done) for entry in entries if entry.kind == "plan")
+
+
+def _item(entry: Entry, done: Mapping[int, int | None]) -> PlanItem:
+    what, name, unit = _subject(entry)
+    target = entry.text_of("tank") or ("feed" if what == "recipe" else "")
+    number = entry.number or 0
+    return PlanItem(number, entry.at, what, entry.number_of(name) if name else None, unit, target, done.get(number))
+
+
+def _subject(entry: Entry) -> tuple[str, str, str]:
+    """What a plan entry is about, the name of its amount, and the unit of that."""
+    if entry.text_of("salt"):
+        return entry.text_of("salt"), "kg", "kg"
+    if entry.text_of("acid"):
+        return entry.text_of("acid"), "litres", "L"
+    if entry.number_of("bleed") is not None:
+        return "bleed", "bleed", "L"
+    return "recipe", "", ""
+
+
+def done_fields(planned: Entry, by: str, amount: str | None, strength_pct: float | None) -> tuple[str, Fields]:
+    """Kind and texts of the entry that says a planned step was carried out, wholly or by ``amount``."""
+    if planned.kind != "plan":
+        raise Refusal(f"entry {planned.number} is a {planned.kind}, not a plan; mark the number of a plan entry as done.")
+    what, name, _ = _subject(planned)
+    fields: Fields = {"by": by, "plan": str(planned.number)}
+    if planned.text_of("tank"):
+        fields["tank"] = planned.text_of("tank")
+    number = amount or (planned.text_of(name) if name else "")
+    if name == "kg":
+        return "dose", {**fields, "salt": what, "kg": number}
+    if name == "litres":
+        strength = {} if strength_pct is None else {"strength": f"{strength_pct:g}"}
+        return "acid", {**fields, **strength, "acid": what, "litres": number}
+    if name == "bleed":
+        return "bleed", {**fields, "litres": number, "reason": "renewal"}
+    fields.pop("plan")
+    return "recipe", {**fields, **_ions(planned)}
+
+
+def _ions(planned: Entry) -> Fields:
+    return {value.name: f"{value.text} {value.unit}".strip() for value in planned.values if value.number is not None}
+
+
+def check_strength(acids: Iterable[tuple[str, float]], strength_pct: float | None) -> None:
+    """Refuse unless the strength read off the label is that of every acid of a plan or sheet.
+
+    >>> check_strength([("nitric acid", 38.0)], 38.0)
+    """
+    for name, planned in acids:
+        if strength_pct is None:
+            raise Refusal(
+                f"The sheet holds {name}. Read the cautions and give the strength on its label in percent; "
+                f"the plan counts on {planned:g} %."
+            )
+        if abs(strength_pct - planned) > 0.5:
+            raise Refusal(
+                f"The label says {strength_pct:g} %, the plan counts on {name} of {planned:g} %. "
+                f"Correct the strength under supplies in site.toml and plan again; nothing is released."
+            )

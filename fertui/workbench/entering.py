@@ -1,0 +1,57 @@
+"""What entry forms need before anything is written: what was understood, what was last, what an analysis says of itself."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from datetime import UTC, datetime
+from typing import TYPE_CHECKING
+
+from fertui.logbook.entries import Entry, Value
+from fertui.site.model import Loop, Site
+
+if TYPE_CHECKING:
+    from fertui.chemistry.verdicts import Check
+
+Place = tuple[str, str, str, str]
+"""Kind, point, field and tank: where a value belongs."""
+
+
+def echo(kind: str, name: str, text: str, site: Site, loop: Loop) -> str:
+    """What was understood of one value, with its canonical unit: ``730 mg/L = 11.8 mmol/L NO3``."""
+    from fertui.logbook.kinds import kind_named
+    from fertui.logbook.readers import field_named, read_value, unknown_name
+
+    chosen = kind_named(kind)
+    field = field_named(chosen, name)
+    if field is None:
+        raise unknown_name(chosen, name, ())
+    value = read_value(field, name, text, site, loop, datetime.now(UTC))
+    return said(value, field.unit)
+
+
+def said(value: Value, unit: str) -> str:
+    """A value in words: as written where it is a word, else the number kept."""
+    if value.number is None:
+        return value.text
+    kept = f"{'below ' if value.below else ''}{value.number:.4g} {unit}".strip()
+    as_ion = f" {value.name}" if value.species and value.species != value.name else ""
+    return kept + as_ion
+
+
+def previous(entries: Iterable[Entry]) -> Mapping[Place, tuple[str, datetime]]:
+    """The last value as written for every place a form asks for, from effective entries in order of time."""
+    last: dict[Place, tuple[str, datetime]] = {}
+    for entry in entries:
+        tank = entry.text_of("tank")
+        for value in entry.values:
+            last[(entry.kind, entry.point, value.name, tank)] = (f"{value.text} {value.unit}".strip(), entry.at)
+    return last
+
+
+def check_analysis(entry: Entry) -> tuple[Check, ...]:
+    """Charge balance and EC check of an analysis, whether or not it has been written down yet."""
+    from fertui.chemistry.names import IONS
+    from fertui.chemistry.verdicts import verdicts
+
+    ions = {ion: number for ion in IONS if (number := entry.number_of(ion)) is not None}
+    return verdicts(ions, ec_measured=entry.number_of("EC"), ph=entry.number_of("pH"))
