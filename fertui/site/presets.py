@@ -11,6 +11,8 @@ from fertui.catalogue.media import medium
 from fertui.site.checks import SiteError
 from fertui.site.model import Composition, Loop, Site, Sourced
 
+Ranges = Mapping[str, Mapping[str, Sourced]]
+
 ROOT_ZONE_LIKE = ("tank", "root_zone", "drain")
 """Points whose presets are those of the root zone: its solution drains, and a shared tank is all of it."""
 
@@ -39,17 +41,20 @@ def bands_of(site: Site, loop: Loop, point: str) -> dict[str, Sourced]:
     The loop's band goes before the site's, the site's before the crop's preset. Where the loop follows another target
     than its crop's, the presets of shares and EC lie around that target.
     """
-    return {**_preset_bands(site, loop, point), **site.bands.get(point, {}), **loop.bands.get(point, {})}
+    return _laid_over(_preset_bands(site, loop, point), site.bands, loop.bands, _standing_for(loop, point))
 
 
 def limits_of(site: Site, loop: Loop, point: str) -> dict[str, Sourced]:
-    """What -> limit at a point: an ion [mmol/L], micronutrient [umol/L] or EC, each with its source."""
-    preset = crop(loop.crop).limits.get(_preset_point(point), {})
-    return {
-        **{what: _sourced(each) for what, each in preset.items()},
-        **site.limits.get(point, {}),
-        **loop.limits.get(point, {}),
-    }
+    """What -> limit at a point: an ion [mmol/L], micronutrient [umol/L] or EC, each with its source.
+
+    A shared tank is what feeds the crop: its preset for NH4 is the feed's, all others are those of the root zone.
+    """
+    presets = crop(loop.crop).limits
+    found = {**presets.get(_preset_point(point), {})}
+    if _standing_for(loop, point)[0] == "tank":
+        found["NH4"] = presets["feed"]["NH4"]
+    preset = {what: _sourced(each) for what, each in found.items()}
+    return _laid_over(preset, site.limits, loop.limits, _standing_for(loop, point))
 
 
 def root_zone_water(loop: Loop) -> tuple[float, str]:
@@ -62,8 +67,10 @@ def root_zone_water(loop: Loop) -> tuple[float, str]:
     held = medium(loop.medium).water_fraction
     given = loop.medium_volume_l_per_m2
     volume = medium(loop.medium).volume_l_per_m2.mean if given is None else given
+    if not volume:
+        return 0.0, held.source.shown
     which = "of the usual" if given is None else "of"
-    return volume * held.mean, f"{held.mean:.0%} {which} {volume:g} L of medium per m2; {held.source.shown}"
+    return volume * held.mean, f"{100 * held.mean:.0f} % {which} {volume:g} L of medium per m2; {held.source.shown}"
 
 
 def _crop_target(name: str, loop: Loop) -> dict[str, Composition]:
@@ -87,6 +94,20 @@ def _preset_bands(site: Site, loop: Loop, point: str) -> dict[str, Sourced]:
             own = Recipe(Provenance(aim.source, "common practice"), aim.ions, ec=aim.ec)
             ranges = {**ranges, **bands_around(own, _preset_point(point))}
     return {what: _sourced(each) for what, each in ranges.items()}
+
+
+def _standing_for(loop: Loop, point: str) -> tuple[str, ...]:
+    """The point whose own ranges hold unless this one has its own, then the point itself."""
+    if loop.layout == "shared-tank" and loop.medium == "none" and point == "root_zone":
+        return "tank", point
+    return ("root_zone", point) if point == "drain" else (point,)
+
+
+def _laid_over(preset: dict[str, Sourced], site: Ranges, loop: Ranges, points: tuple[str, ...]) -> dict[str, Sourced]:
+    found = dict(preset)
+    for point in points:
+        found |= {**site.get(point, {}), **loop.get(point, {})}
+    return found
 
 
 def _preset_point(point: str) -> str:
