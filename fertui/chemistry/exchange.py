@@ -39,6 +39,7 @@ PHREEQC_SELECTIVITY: Array = np.array(
 """The constants of phreeqc.dat in the convention of this module: K 0.0631, Ca 1, Mg 0.631, Na 0.01259, NH4 0.0501."""
 
 _CHARGE_COLUMN = CATION_CHARGE[:, None]
+_ONES = np.ones(len(CATIONS))
 _DIVALENT = CATION_CHARGE == 2.0
 _EMPTY_SOLUTION = 1e-13
 _STEP_TOLERANCE = 1e-8
@@ -48,7 +49,7 @@ _MOST_STEPS = 200
 def loading(solution_mmol_per_l: Cations, selectivity: npt.ArrayLike) -> Array:
     """Equivalent fractions that an exchanger takes on in contact with plenty of a solution.
 
-    Arguments: ``solution_mmol_per_l`` (..., 5) [mmol/L] or mapping, ``selectivity`` (..., 5) in this module's convention.
+    Arguments: ``solution_mmol_per_l`` (..., 5) [mmol/L] or mapping; ``selectivity`` (..., 5) in the convention above.
     Returns fractions (..., 5) that sum to 1. Raises ``ValueError`` for a negative or not finite number and for a
     solution without any cation.
 
@@ -167,31 +168,33 @@ def _solve(
     total: Array, charge_total: Array, water: Array, capacity: Array, free: Array, k: Array
 ) -> tuple[Array, Array]:
     """Bracketed Newton for u = log s on log(charge on sites / charge in water) = log(capacity / free)."""
-    affinity = capacity / water * k / _CHARGE_COLUMN
+    log_affinity = np.log(capacity / water * k / _CHARGE_COLUMN)
     goal = np.log(capacity / free)
-    turning = (goal - np.log(affinity)) / _CHARGE_COLUMN
+    turning = (goal - log_affinity) / _CHARGE_COLUMN
     low, high = turning.min(axis=0), turning.max(axis=0)
-    u = (charge_total * turning).sum(axis=0) / charge_total.sum(axis=0)
+    u = (_ONES @ (charge_total * turning)) / (_ONES @ charge_total)
+    moved = high - low
     for _ in range(_MOST_STEPS):
-        held, in_water = _sigmoid(affinity, u)
+        held, in_water = _sigmoid(log_affinity, u)
         on_sites = charge_total * held
-        charge_held, charge_free = on_sites.sum(axis=0), (charge_total * in_water).sum(axis=0)
-        slope = (on_sites * in_water * _CHARGE_COLUMN).sum(axis=0)
+        charge_held, charge_free = _ONES @ on_sites, _ONES @ (charge_total * in_water)
+        slope = CATION_CHARGE @ (on_sites * in_water)
         excess = np.log(charge_held / charge_free) - goal
-        low, high = np.where(excess < 0.0, u, low), np.where(excess > 0.0, u, high)
-        new = u - excess / (slope * (1.0 / charge_held + 1.0 / charge_free))
-        new = np.where((new >= low) & (new <= high), new, 0.5 * (low + high))
-        moved = np.abs(new - u).max(initial=0.0)
-        u = new
-        if moved < _STEP_TOLERANCE:
+        np.copyto(low, u, where=excess < 0.0)
+        np.copyto(high, u, where=excess > 0.0)
+        step = -excess * charge_held * charge_free / (slope * (charge_held + charge_free))
+        wild = (u + step < low) | (u + step > high) | (np.abs(step) > 0.5 * moved + _STEP_TOLERANCE)
+        if wild.any():
+            step[wild] = (0.5 * (low + high) - u)[wild]
+        u, moved = u + step, np.abs(step)
+        if moved.max(initial=0.0) < _STEP_TOLERANCE:
             break
-    held, in_water = _sigmoid(affinity, u)
+    held, in_water = _sigmoid(log_affinity, u)
     return total * in_water / water, charge_total * held
 
 
-def _sigmoid(affinity: Array, u: Array) -> tuple[Array, Array]:
+def _sigmoid(log_affinity: Array, u: Array) -> tuple[Array, Array]:
     """Shares of every cation on the exchanger and in the water; they sum to 1 to rounding."""
-    s = np.exp(u)
-    ratio = affinity * np.where(_DIVALENT[:, None], s * s, s)
+    ratio = np.exp(log_affinity + _CHARGE_COLUMN * u)
     in_water = 1.0 / (1.0 + ratio)
     return ratio * in_water, in_water
