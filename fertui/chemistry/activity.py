@@ -28,6 +28,8 @@ CONVERGED = 1e-6
 """Relative change of the free ions at which the fixed point is taken as reached."""
 
 _ROUNDS = 200
+_TRACE = 1e-12
+_LN10 = float(np.log(10.0))
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,7 +97,9 @@ def speciate(
     _refuse_outside("pH", ph, 0.0, 14.0)
     _refuse_outside("temperature [degrees C]", temperature, 0.0, 40.0)
     state = _settled(_Amounts.of(totals, ph, temperature))
-    free = np.stack([np.broadcast_to(column, shape) for column in state.columns()], axis=-1)
+    free = np.empty((*shape, len(FREE_IONS)))
+    for position, column in enumerate(state.columns()):
+        free[..., position] = column
     in_range = (state.strength <= STRENGTH_LIMIT) & (temperature >= LOW_C) & (temperature <= HIGH_C)
     return Speciation(1e3 * free, state.strength, state.gamma, in_range)
 
@@ -183,10 +187,9 @@ class _State:
         return (k, ca, mg, na, nh4, no3, cl, self.so4, self.h2po4, self.hco3, *made_by_ph)
 
     def change(self, before: _State) -> float:
-        """Largest relative change of any free ion that pairs, and of gamma."""
-        new = (self.double, self.so4, self.h2po4, self.gamma)
-        old = (before.double, before.so4, before.h2po4, before.gamma)
-        return max(float(np.max(np.abs(n - o) / (n + 1e-12), initial=0.0)) for n, o in zip(new, old, strict=True))
+        """Largest relative change of the free ligands and of gamma, from which all else follows."""
+        new, old = (self.so4, self.h2po4, self.gamma), (before.so4, before.h2po4, before.gamma)
+        return max(float((np.abs(n - o) / (n + _TRACE)).max(initial=0.0)) for n, o in zip(new, old, strict=True))
 
 
 def _settled(amounts: _Amounts) -> _State:
@@ -206,7 +209,7 @@ def _settled(amounts: _Amounts) -> _State:
 def _gamma(strength: Array, slope: Array) -> Array:
     held = np.minimum(strength, STRENGTH_LIMIT)
     root = np.sqrt(held)
-    return np.exp(-np.log(10.0) * slope * (root / (1.0 + root) - 0.3 * held))
+    return np.exp(-_LN10 * slope * (root / (1.0 + root) - 0.3 * held))
 
 
 def _round(amounts: _Amounts, single: Array, double: Array, gamma: Array) -> _State:
@@ -214,7 +217,8 @@ def _round(amounts: _Amounts, single: Array, double: Array, gamma: Array) -> _St
 
     A pair of charges z and y binds with K gamma^(-2 z y): Davies' gamma depends on the charge alone.
     """
-    cube, fourth = gamma**3, gamma**4
+    square = gamma * gamma
+    cube, fourth = square * gamma, square * square
     eighth = fourth * fourth
     hpo4_ratio = amounts.hpo4_per_h2po4 / cube
     hso4_ratio = amounts.hso4_per_so4 * cube
