@@ -15,6 +15,7 @@ STATUSES = ("seen", "second-hand", "computed", "common practice", "derived", "fr
 numbers given; said in the trade without a source; our own inference; remembered and not yet verified."""
 
 UNVERIFIED = ("derived", "from memory")
+NO_SOURCE = "no source"
 
 
 class CatalogueError(Refusal):
@@ -34,11 +35,13 @@ class Provenance:
 
         >>> Provenance("Sonneveld & Voogt 2009", "from memory").shown
         'unverified preset (from memory: Sonneveld & Voogt 2009)'
-        >>> Provenance("Eurofins 2016", "second-hand").shown
-        'Eurofins 2016 (second-hand)'
+        >>> Provenance("Dutch booklet 2016", "second-hand").shown
+        'Dutch booklet 2016 (second-hand)'
         """
         if self.status in UNVERIFIED:
             return f"unverified preset ({self.status}: {self.text})"
+        if self.text == NO_SOURCE:
+            return f"{self.status}, {NO_SOURCE}"
         return self.text if self.status == "seen" else f"{self.text} ({self.status})"
 
 

@@ -23,6 +23,7 @@ class Salt:
 
     ``gives``: mol of each ion per mol of formula (HCO3: alkalinity). ``use``: nutrient, micronutrient, alkali or
     disinfectant. ``label_pct``: usual analysis [%] of a product without a fixed formula; ``needs_label``: no usual one.
+    ``stable_ph``: range in which a chelate keeps its metal.
     ``dissolves``: (temperature [C], g of this form per kg of added water) in rising temperature, () where unknown.
     """
 
@@ -35,6 +36,7 @@ class Salt:
     label_pct: Mapping[str, float] = field(default_factory=dict)
     needs_label: bool = False
     dissolves: tuple[tuple[float, float], ...] = ()
+    stable_ph: tuple[float, float] | None = None
     cautions: tuple[str, ...] = ()
     note: str = ""
     sources: Mapping[str, Provenance] = field(default_factory=dict)
@@ -134,6 +136,7 @@ def _salt(entry: Mapping[str, Any], sources: Mapping[str, Provenance]) -> Salt:
         **{key: entry[key] for key in plain if key in entry},
         aliases=tuple(entry["aliases"]),
         dissolves=_dissolves(entry),
+        stable_ph=tuple(entry["stable_ph"]) if "stable_ph" in entry else None,
         cautions=tuple(entry["cautions"]),
         sources=known,
     )
