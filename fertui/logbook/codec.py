@@ -97,7 +97,7 @@ def check_text(name: str, text: str, lines: bool = False) -> None:
 _NOT_ONE_LINE = re.compile("[\x00-\x1f\x7f-\x9f\ud800-\udfff]")
 _NOT_TEXT = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\ud800-\udfff]")
 _NUMBERED = (int, type(None))
-_TEXTS = ("kind", "loop", "by", "point", "zone", "method", "instrument", "note", "doubtful", "why")
+_TEXTS = ("kind", "loop", "by", "point", "zone", "method", "instrument", "note", "doubtful", "why", "flags")
 _TYPES: Mapping[str, Any] = {
     **dict.fromkeys(_TEXTS, str), "at": datetime, "entered": datetime, "values": tuple, "number": _NUMBERED,
     "supersedes": _NUMBERED, "void": bool, "whole_day": bool,

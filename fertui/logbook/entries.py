@@ -30,6 +30,7 @@ class Entry:
 
     ``whole_day``: written without a time of day. An amount then covers that local day and ``at`` is its midnight; what
     is measured or done at a moment stands at noon. ``doubtful`` (any text): kept and shown, never assimilated.
+    ``flags``: codes of the questions (``questions.py``) nobody answered when it was written, with spaces between.
     """
 
     kind: str
@@ -49,6 +50,7 @@ class Entry:
     why: str = ""
     void: bool = False
     whole_day: bool = False
+    flags: str = ""
 
     def value(self, name: str) -> Value | None:
         """The value of that name, or None."""

@@ -219,7 +219,7 @@ KINDS: Mapping[str, Kind] = {
                 PH,
                 *FEED_STEP,
                 Field("drain_share", "fraction", "share of drain in the blend, 0 to 1", low=0, high=1),
-                Field("premix_ec", "EC", "EC of drain and water before stock is added", low=0, high=30),
+                Field("premix_EC", "EC", "EC of drain and water before stock is added", low=0, high=30),
             ),
         ),
         Kind(
@@ -325,6 +325,16 @@ KINDS: Mapping[str, Kind] = {
     )
 }
 """Every kind by name, in the order of the design's table."""
+
+
+def unit_of(kind: Kind, name: str) -> str:
+    """Canonical unit of a value of a kind by its name; kg for the salts of a batch.
+
+    >>> unit_of(KINDS["plan"], "HCO3"), unit_of(KINDS["plan"], "drain"), unit_of(KINDS["batch"], "MKP")
+    ('meq/L', 'L/d', 'kg')
+    """
+    field = kind.field(name)
+    return "kg" if field is None else field.unit
 
 
 def kind_named(name: str) -> Kind:

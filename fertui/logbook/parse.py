@@ -12,6 +12,7 @@ from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import LogbookError
 from fertui.logbook.kinds import KILOGRAMS, KINDS, METHODS, WRITTEN_ABOUT_EVERY_ENTRY, Kind, kind_named, nearest
 from fertui.logbook.readers import field_named, read_value, supply_named, unknown_name
+from fertui.logbook.sampling import at_25, check_method
 from fertui.logbook.times import AHEAD, EARLIEST, noon, read_moment, zone
 from fertui.site.model import POINTS, Loop, Site
 
@@ -65,7 +66,12 @@ def _written(base: Entry, texts: Mapping[str, str], site: Site, loop: Loop, now:
     if kind.name == "note" and about.get("note") and "text" not in given:
         given["text"] = about.pop("note")
     values = _merged(base.values, _values(kind, given, site, loop, now))
-    entry = replace(base, values=_complete(kind, values, loop), **_about(kind, base, about, site, loop, now))
+    entry = replace(base, values=_complete(kind, values, site, loop), **_about(kind, base, about, site, loop, now))
+    entry = at_25(entry, site)
+    check_method(entry, loop)
+    until = entry.number_of("until")
+    if until is not None and until <= entry.at.timestamp():
+        raise LogbookError(f"until = {entry.text_of('until')!r} is not after the start of what is planned.")
     if not entry.by:
         raise LogbookError("by is missing: who made this entry? Give by=INITIALS or set FERTUI_OPERATOR.")
     check_storable(entry)
@@ -123,7 +129,7 @@ def _text(value: Value | None) -> str:
     return "" if value is None else value.text
 
 
-def _complete(kind: Kind, values: tuple[Value, ...], loop: Loop) -> tuple[Value, ...]:
+def _complete(kind: Kind, values: tuple[Value, ...], site: Site, loop: Loop) -> tuple[Value, ...]:
     names = {value.name for value in values}
     missing = [field.name for field in kind.fields if field.required and field.name not in names]
     if missing:
@@ -132,9 +138,20 @@ def _complete(kind: Kind, values: tuple[Value, ...], loop: Loop) -> tuple[Value,
         )
     if kind.name == "bleed" and "from" not in names:
         values = (*values, Value("from", _BLEED_FROM[loop.layout]))
+    if kind.name == "acid" and "strength" not in names:
+        values = (*values, _strength(values, site))
     if not values:
         raise LogbookError(f"{kind.name} has no value; give at least one of {', '.join(kind.names)}.")
     return values
+
+
+def _strength(values: Sequence[Value], site: Site) -> Value:
+    """Strength of the supply where the entry does not give one: an acid without strength is no record."""
+    acid = next(value.text for value in values if value.name == "acid")
+    supply = next((each for each in site.supplies if each.name == acid), None)
+    if supply is None or supply.strength_pct is None:
+        raise LogbookError(f'acid needs strength, read off the label of {acid}; for example strength="38 %".')
+    return Value("strength", f"{supply.strength_pct:g} %", supply.strength_pct, "%")
 
 
 def _example(kind: Kind, name: str) -> str:

@@ -29,6 +29,7 @@ CREATE TABLE entries (
   why        TEXT    NOT NULL,
   void       INTEGER NOT NULL,
   whole_day  INTEGER NOT NULL,
+  flags      TEXT    NOT NULL,
   hash       TEXT    NOT NULL   -- SHA-256 of the hash before and this entry's line
 ) STRICT;
 CREATE UNIQUE INDEX entries_superseded ON entries(supersedes) WHERE supersedes IS NOT NULL;

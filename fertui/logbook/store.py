@@ -26,7 +26,7 @@ FIRST_HASH = "0" * 64
 
 _COLUMNS = (
     "number", "kind", "loop", "at", "entered", "by", "point", "zone", "method", "instrument", "note", "doubtful",
-    "supersedes", "why", "void", "whole_day",
+    "supersedes", "why", "void", "whole_day", "flags",
 )  # fmt: skip
 _SELECT = "SELECT " + ", ".join(f"e.{column}" for column in _COLUMNS)
 _SELECT_VALUES = "SELECT v.entry, " + ", ".join(f"v.{name}" for name in VALUE_FIELDS)

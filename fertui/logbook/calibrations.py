@@ -1,0 +1,97 @@
+"""Instruments held against standards: how far off, which readings that puts in doubt, and the correction offered."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from datetime import datetime
+
+from fertui.logbook.entries import Entry
+from fertui.logbook.store import Logbook
+
+EC_FAIR_PCT = 5.0
+"""EC meters against a standard: over 5 % off clean or replace (Owen 2022, e-GRO blog 179)."""
+
+PH_GOOD = 0.05
+"""pH meters against a check buffer (vendor practice, low trust)."""
+
+_GOOD = ("good", "adjusted", "replaced")
+
+
+@dataclass(frozen=True, slots=True)
+class Doubted:
+    """A reading made between the last good check of its meter and the one that found it off.
+
+    ``corrected`` is what the reading would be if the meter had been off by then as it was when found: an offer only.
+    """
+
+    entry: Entry
+    quantity: str
+    read: float
+    corrected: float
+
+
+def deviation(calibration: Entry) -> float:
+    """How far the instrument was off: pH units for pH, per cent of the standard for everything else."""
+    standard, reading = calibration.number_of("standard") or 0.0, calibration.number_of("reading") or 0.0
+    if calibration.text_of("quantity") == "pH":
+        return reading - standard
+    return 100.0 * (reading - standard) / standard if standard else 0.0
+
+
+def is_good(calibration: Entry) -> bool:
+    """Whether the instrument may be trusted: its result says so, or where none is given, its deviation."""
+    result = calibration.text_of("result")
+    return result in _GOOD if result else _within(calibration)
+
+
+def _was_right(calibration: Entry) -> bool:
+    """Whether the instrument was right as found, before anything was adjusted."""
+    result = calibration.text_of("result")
+    return result == "good" or (result != "off" and _within(calibration))
+
+
+def _within(calibration: Entry) -> bool:
+    limit = PH_GOOD if calibration.text_of("quantity") == "pH" else EC_FAIR_PCT
+    return abs(deviation(calibration)) <= limit
+
+
+def standing(book: Logbook, instrument: str, at: datetime) -> tuple[Entry, ...]:
+    """The last calibration of an instrument for each quantity, up to a time."""
+    last = {
+        entry.text_of("quantity"): entry
+        for entry in book.entries(kinds=("calibration",), at=at)
+        if entry.instrument == instrument
+    }
+    return tuple(last.values())
+
+
+def doubted_by(book: Logbook, calibration: Entry) -> tuple[Doubted, ...]:
+    """Readings a calibration puts in doubt: those of its instrument since the last good check. Nothing is rewritten.
+
+    Empty when the instrument was found good. pH is corrected by the offset, everything else by the ratio.
+    """
+    quantity = calibration.text_of("quantity")
+    if _was_right(calibration):
+        return ()
+    earlier = [
+        entry
+        for entry in book.entries(kinds=("calibration",), at=calibration.at)
+        if entry.instrument == calibration.instrument
+        and entry.text_of("quantity") == quantity
+        and entry.number != calibration.number
+        and is_good(entry)
+    ]
+    since = earlier[-1].at if earlier else None
+    readings = book.entries(kinds=("reading",), since=since, at=calibration.at)
+    mine = [entry for entry in readings if entry.instrument == calibration.instrument]
+    found = ((entry, entry.number_of(quantity)) for entry in mine)
+    return tuple(
+        Doubted(entry, quantity, read, _corrected(read, calibration)) for entry, read in found if read is not None
+    )
+
+
+def _corrected(read: float, calibration: Entry) -> float:
+    standard, reading = calibration.number_of("standard") or 0.0, calibration.number_of("reading") or 0.0
+    if calibration.text_of("quantity") == "pH":
+        return read - (reading - standard)
+    return read * standard / reading if reading else read

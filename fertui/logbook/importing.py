@@ -1,0 +1,243 @@
+"""Tables into the logbook: read, shown, held against what is there, then written in one transaction or not at all."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from datetime import datetime, timedelta
+from pathlib import Path
+from zoneinfo import ZoneInfo
+
+from fertui.logbook.columns import Column, columns_of
+from fertui.logbook.dates import iso, order_of
+from fertui.logbook.entries import Entry, Value
+from fertui.logbook.errors import LogbookError
+from fertui.logbook.exporting import undefused
+from fertui.logbook.kinds import KINDS, Kind, kind_named, unit_of
+from fertui.logbook.parse import entry_from_text
+from fertui.logbook.questions import Question, flagged, questions_of_values
+from fertui.logbook.sheets import Sheet, read_sheet
+from fertui.logbook.store import Logbook
+from fertui.logbook.templates import Template
+from fertui.logbook.times import zone
+from fertui.refusals import Refusal
+from fertui.site.model import POINTS, Site
+
+POINT_WORDS: Mapping[str, str] = {
+    "drip": "feed", "dripper": "feed", "drip water": "feed", "inlet": "feed", "slab": "root_zone",
+    "root zone": "root_zone", "substrate": "root_zone", "gutter": "drain", "drainage": "drain", "drain water": "drain",
+    "drain store": "drain_store",
+}  # fmt: skip
+"""Words tables use for points (common practice, no source)."""
+
+MOST_TROUBLES = 20
+
+Signature = tuple[str, str, str, str, str, tuple[tuple[str, str], ...]]
+"""What makes two entries of a kind the same event."""
+
+
+@dataclass(frozen=True, slots=True)
+class ImportRow:
+    """One row: its entry, and whether it is ``new``, ``there`` already, or ``differs`` from the book (not written).
+
+    ``conversions`` says for each value what was written and what it became; ``questions`` what a careful reader asks.
+    """
+
+    line: int
+    entry: Entry
+    state: str
+    existing: int | None
+    conversions: tuple[str, ...]
+    questions: tuple[Question, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class ImportResult:
+    """What an import did, or with ``dry_run`` would do. ``written``: numbers of the new entries, empty on a dry run."""
+
+    kind: str
+    columns: tuple[Column, ...]
+    rows: tuple[ImportRow, ...]
+    written: tuple[int, ...]
+    dry_run: bool
+
+    def count(self, state: str) -> int:
+        """Rows in that state."""
+        return sum(row.state == state for row in self.rows)
+
+    def words(self) -> tuple[str, ...]:
+        """The result as lines of text."""
+        lines = [f"column {column.says()}" for column in self.columns]
+        for row in self.rows:
+            at = f" as entry {row.existing}" if row.existing else ""
+            lines.append(
+                f"line {row.line}: {row.state}{at}, {row.entry.at:%Y-%m-%d %H:%M} UTC {row.entry.point}".rstrip()
+            )
+            lines += [f"  {conversion}" for conversion in row.conversions]
+            lines += [f"  ? {question.text}" for question in row.questions]
+        did = "would be added (dry run, nothing written)" if self.dry_run else "added"
+        last = f"{self.count('new')} {self.kind} entries {did}, {self.count('there')} were there already"
+        differs = self.count("differs")
+        lines.append(
+            f"{last}, {differs} differ from what is there and were left out (fertui supersede)."
+            if differs
+            else f"{last}."
+        )
+        return tuple(lines)
+
+
+def import_table(
+    path: str | Path,
+    kind: str,
+    book: Logbook,
+    site: Site,
+    now: datetime,
+    *,
+    by: str = "",
+    loop: str | None = None,
+    template: Template | None = None,
+    dry_run: bool = False,
+) -> ImportResult:
+    """Read a table of entries of one kind and append those that are new, all in one transaction.
+
+    ``by``, ``loop``: for rows that do not say. Rows already there (same time, place and values, corrected since or not)
+    are not added again. Raises a ``Refusal`` that lists every trouble with its line; nothing is written then.
+    """
+    wanted = kind_named(kind)
+    source = _Source(wanted, template or Template(), site, now, by, loop)
+    sheet = read_sheet(path, source.template.delimiter, source.template.decimal)
+    columns = columns_of(sheet, wanted, source.template)
+    rows = tuple(_judged(_entries(sheet, columns, source), book, zone(site.timezone)))
+    new = [flagged(row.entry, row.questions) for row in rows if row.state == "new"]
+    written = book.append(new) if new and not dry_run else ()
+    return ImportResult(kind, columns, rows, written, dry_run)
+
+
+@dataclass(frozen=True, slots=True)
+class _Source:
+    """What holds for every row of one table."""
+
+    kind: Kind
+    template: Template
+    site: Site
+    now: datetime
+    by: str
+    loop: str | None
+
+
+def _entries(sheet: Sheet, columns: Sequence[Column], source: _Source) -> list[tuple[int, Entry]]:
+    at = next(place for place, column in enumerate(columns) if column.name == "at")
+    order = source.template.dates or order_of([row[at] for row in sheet.rows])
+    read, troubles = [], []
+    for line, row in zip(sheet.lines, sheet.rows, strict=True):
+        texts = _texts(sheet, row, columns, source)
+        if not any(texts.get(column.name) for column in columns if column.is_value):
+            continue
+        try:
+            read.append((line, _entry({**texts, "at": _moment(texts, order)}, source)))
+        except Refusal as refusal:
+            troubles.append(f"line {line}: {refusal}")
+    if troubles:
+        more = f"\n... and {len(troubles) - MOST_TROUBLES} more" if len(troubles) > MOST_TROUBLES else ""
+        raise LogbookError("nothing was imported:\n" + "\n".join(troubles[:MOST_TROUBLES]) + more)
+    if not read:
+        raise LogbookError(f"no row has a value of {source.kind.name}; nothing was imported.")
+    return read
+
+
+def _texts(sheet: Sheet, row: Sequence[str], columns: Sequence[Column], source: _Source) -> dict[str, str]:
+    texts: dict[str, str] = {}
+    for column, cell in zip(columns, row, strict=True):
+        if not column.name or not cell or cell in (*source.template.blank, "-", "n/a"):
+            continue
+        field = source.kind.field(column.field)
+        if column.is_value and (field is None or field.is_number):
+            cell = f"{sheet.number(cell)} {column.unit}".strip()
+        texts[column.name] = undefused(cell)
+    return texts
+
+
+def _moment(texts: Mapping[str, str], order: str) -> str:
+    if not texts.get("at"):
+        raise LogbookError("the row does not say when.")
+    return f"{iso(texts['at'], order)} {texts.get('time', '')}".strip()
+
+
+def _entry(texts: Mapping[str, str], source: _Source) -> Entry:
+    own = {name: text for name, text in source.template.values.items() if name != "loop"}
+    given = {"by": source.by, **own, **texts}
+    loop = given.pop("loop", None) or source.loop or source.template.values.get("loop")
+    given.pop("time", None)
+    if "point" in given:
+        given |= _placed(given["point"], source)
+    return entry_from_text(source.kind.name, given, source.site, loop, source.now)
+
+
+def _placed(written: str, source: _Source) -> dict[str, str]:
+    """The point as this program calls it; the name of a water means a sample of that source."""
+    point = source.template.points.get(written, written)
+    waters = {water.name.lower(): water.name for water in source.site.waters}
+    if point.lower() in waters and point not in POINTS:
+        return {"point": "source", "source": waters[point.lower()]}
+    return {"point": POINT_WORDS.get(point.lower().replace("_", " "), point)}
+
+
+def _judged(read: Sequence[tuple[int, Entry]], book: Logbook, here: ZoneInfo) -> Iterator[ImportRow]:
+    """Each row against the book: a signature in the book is used up by one row, so equal rows of one table stay two."""
+    moments = [entry.at for _, entry in read]
+    first, last = min(moments) - timedelta(days=1), max(moments) + timedelta(days=1)
+    past = book.history(kinds=(read[0][1].kind,), since=first, at=last)
+    there = _signatures(past, here)
+    for line, entry in read:
+        numbers = there.get(_signature(entry, here))
+        number = numbers.pop(0) if numbers else None
+        state, other = ("there", number) if number else _against(entry, past)
+        conversions = tuple(_conversion(KINDS[entry.kind], value) for value in entry.values)
+        asked = questions_of_values(entry) if state == "new" else ()
+        yield ImportRow(line, entry, state, other, conversions, asked)
+
+
+def _signatures(past: Sequence[Entry], here: ZoneInfo) -> dict[Signature, list[int]]:
+    """Numbers of the entries that carry each signature; an entry and its corrections count once for each."""
+    root: dict[int, int] = {}
+    carried: dict[Signature, dict[int, int]] = {}
+    for entry in past:
+        number = entry.number or 0
+        root[number] = root.get(entry.supersedes or number, number)
+        if not entry.void:
+            carried.setdefault(_signature(entry, here), {})[root[number]] = number
+    return {signature: sorted(numbers.values()) for signature, numbers in carried.items()}
+
+
+def _signature(entry: Entry, here: ZoneInfo) -> Signature:
+    values = sorted(
+        (value.name, value.text if value.number is None else f"{value.number:.9g}") for value in entry.values
+    )
+    when = f"{entry.at.astimezone(here):%Y-%m-%d}" if entry.whole_day else entry.at.isoformat()
+    return (entry.loop, when, entry.point, entry.zone, entry.method, tuple(values))
+
+
+def _against(entry: Entry, past: Sequence[Entry]) -> tuple[str, int | None]:
+    """An analysis of a sample that is in the book with other numbers is not a new one."""
+    if entry.kind != "analysis":
+        return "new", None
+    replaced = {each.supersedes for each in past}
+    names = {value.name for value in entry.values}
+    for other in past:
+        shared = any(value.number is not None and value.name in names for value in other.values)
+        if _sample(other) == _sample(entry) and shared and not other.void and other.number not in replaced:
+            return "differs", other.number
+    return "new", None
+
+
+def _sample(entry: Entry) -> tuple[object, ...]:
+    words = (entry.text_of("source"), entry.text_of("sample"))
+    return (entry.loop, entry.at, entry.point, entry.zone, entry.method, *words)
+
+
+def _conversion(kind: Kind, value: Value) -> str:
+    if value.number is None:
+        return f"{value.name}: {value.text}"
+    below = "below " if value.below else ""
+    species = f" {value.species}" if value.species else ""
+    return f"{value.name}: {value.text}{species} = {below}{value.number:.4g} {unit_of(kind, value.name)}".rstrip()
