@@ -3,15 +3,19 @@
 from __future__ import annotations
 
 import argparse
+import os
 import sys
 from collections.abc import Callable, Mapping
 from datetime import datetime
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from fertui.cli.main import FINE, NO
 from fertui.refusals import Refusal
 from fertui.workbench import Bench, open_site
+
+if TYPE_CHECKING:
+    from fertui.paper import Page
 
 Options = argparse.Namespace
 
@@ -61,8 +65,11 @@ def completion(options: Options) -> int:
 def record(options: Options) -> int:
     """``record``: append one entry, print it as read back."""
     bench = open_site(options.site)
-    entry = bench.record(options.kind, _fields(options.values), options.loop)
-    _print_entry(bench, entry)
+    fields = _fields(options.values)
+    fields.setdefault("by", os.environ.get("FERTUI_OPERATOR", ""))
+    for question in bench.questions(options.kind, fields, options.loop):
+        print(f"? {question.text}", file=sys.stderr)
+    _print_entry(bench, bench.record(options.kind, fields, options.loop, asked=False))
     return FINE
 
 
@@ -79,7 +86,9 @@ def void(options: Options) -> int:
     bench = open_site(options.site)
     fields, why, by = _correction(options)
     if fields:
-        raise Refusal(f"void takes why= and by= only, not {', '.join(fields)}. To change values use 'fertui supersede'.")
+        raise Refusal(
+            f"void takes why= and by= only, not {', '.join(fields)}. To change values use 'fertui supersede'."
+        )
     _print_entry(bench, bench.void(_whole(options.number, "NUMBER"), why, by))
     return FINE
 
@@ -91,8 +100,13 @@ def import_table(options: Options) -> int:
 
     bench = open_site(options.site)
     result = bench.import_table(
-        Path(options.file), options.kind, options.loop, dry_run=options.dry_run, by=options.by,
-        template=options.template, save_template=options.save_template,
+        Path(options.file),
+        options.kind,
+        options.loop,
+        dry_run=options.dry_run,
+        by=options.by,
+        template=options.template,
+        save_template=options.save_template,
     )
     print(as_json.dump({"schema": "fertui.import/1", **as_json.plain(result)}) if options.json else import_text(result))
     return FINE
@@ -190,7 +204,7 @@ def plan(options: Options) -> int:
     bench, view = _reading(options)
     made = bench.plan(days=_whole(options.days, "--days", 0, 60), **view, **_wishes(options))
     if options.sheet:
-        bench.write_sheet(made, Path(options.sheet), options.cautions_read, options.label_strength)
+        _release(bench, made, bench.plan_page(made), options)
     _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, _unit(bench, options)))
     return FINE if made.feasible else NO
 
@@ -205,26 +219,42 @@ def _wishes(options: Options) -> dict[str, Any]:
 
 def stock(options: Options) -> int:
     """``stock``: exit code 1 where a pair of salts is refused."""
-    from fertui.cli.views.sheets import stock_document, stock_text
+    from fertui.cli.views.sheets import stock_document
 
     bench, view = _reading(options)
     sheet = bench.stock(view["loop"])
-    if options.sheet:
-        bench.write_sheet(sheet, Path(options.sheet), options.cautions_read, options.label_strength)
-    _show(options, lambda: stock_document(sheet), lambda: stock_text(sheet))
+    page = bench.stock_page(sheet, view["loop"])
+    _release(bench, sheet, page, options)
+    _show(options, lambda: stock_document(sheet), lambda: page.text)
     return FINE if sheet.feasible else NO
 
 
 def acid(options: Options) -> int:
     """``acid``: exit code 1 where there is no dose."""
-    from fertui.cli.views.sheets import acid_document, acid_text
+    from fertui.cli.views.sheets import acid_document
 
     bench, view = _reading(options)
     sheet = bench.acid(view["loop"])
-    if options.sheet:
-        bench.write_sheet(sheet, Path(options.sheet), options.cautions_read, options.label_strength)
-    _show(options, lambda: acid_document(sheet), lambda: acid_text(sheet))
+    page = bench.acid_page(sheet, view["loop"])
+    _release(bench, sheet, page, options)
+    _show(options, lambda: acid_document(sheet), lambda: page.text)
     return FINE if sheet.feasible else NO
+
+
+def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
+    """Write a sheet to the file asked for; one with acid only after its cautions were read and its label matches."""
+    if not options.sheet:
+        return
+    strength = None if options.label_strength is None else _percent(options.label_strength)
+    bench.acknowledge(made, strength if options.cautions_read else None)
+    path = Path(options.sheet)
+    bench.write(page.csv() if path.suffix.lower() == ".csv" else page.text, path)
+
+
+def _percent(written: str) -> float:
+    from fertui.quantities import parse_number
+
+    return parse_number(written).value
 
 
 def paper(options: Options) -> int:
@@ -233,7 +263,7 @@ def paper(options: Options) -> int:
     if options.command == "report":
         page = bench.report(view["loop"], _time(bench, options.start), _time(bench, options.end), view["known"])
     else:
-        page = getattr(bench, options.command + ("_sheet" if options.command == "round" else ""))(**view)
+        page = bench.round_sheet(**view) if options.command == "round" else bench.handover(**view)
     from fertui.cli.views import as_json
 
     schema = f"fertui.{options.command}/1"
@@ -251,27 +281,32 @@ def logbook(options: Options) -> int:
 
 def supplies(options: Options) -> int:
     """``supplies``."""
-    from fertui.cli.views.tables import supplies_document, supplies_text
+    from fertui.cli.views import as_json
+    from fertui.cli.views.tables import supplies_text
 
-    bench, _ = _reading(options)
-    return _show(options, lambda: supplies_document(bench.site), lambda: supplies_text(bench.site))
+    bench, view = _reading(options)
+    shelf, tanks = bench.supplies_rows(), bench.stock_rows(view["loop"], view["at"])
+    document = {"schema": "fertui.supplies/1", "supplies": as_json.plain(shelf), "stock_tanks": as_json.plain(tanks)}
+    return _show(options, lambda: document, lambda: supplies_text(shelf, tanks))
 
 
 def site(options: Options) -> int:
     """``site``: aims of a loop, each with where it comes from."""
-    from fertui.cli.views.tables import aims_document, aims_text
+    from fertui.cli.views import as_json
+    from fertui.cli.views.tables import aims_text
 
     bench, view = _reading(options)
-    aims = bench.aims(view["loop"])
-    return _show(options, lambda: aims_document(aims), lambda: aims_text(aims, bench.site))
+    rows = bench.site_rows(view["loop"])
+    return _show(options, lambda: {"schema": "fertui.site/1", "rows": as_json.plain(rows)}, lambda: aims_text(rows))
 
 
 def check(options: Options) -> int:
     """``check``: exit code 1 where there is something to look at."""
-    from fertui.cli.views.tables import check_document, check_text
+    from fertui.cli.views import as_json
+    from fertui.cli.views.tables import check_text
 
     rows = open_site(options.site).check()
-    _show(options, lambda: check_document(rows), lambda: check_text(rows))
+    _show(options, lambda: {"schema": "fertui.check/1", "rows": as_json.plain(rows)}, lambda: check_text(rows))
     return FINE if all(row.passed for row in rows) else NO
 
 
@@ -324,7 +359,7 @@ def _fields(words: list[str]) -> dict[str, str]:
 
 def _correction(options: Options) -> tuple[dict[str, str], str, str]:
     fields = _fields(options.values)
-    why, by = fields.pop("why", ""), fields.pop("by", "")
+    why, by = fields.pop("why", ""), fields.pop("by", os.environ.get("FERTUI_OPERATOR", ""))
     return fields, why, by
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Mapping
 from typing import NoReturn
 
 from fertui.refusals import Refusal
@@ -31,9 +32,14 @@ class Parser(argparse.ArgumentParser):
 
 
 COMMANDS = frozenset(
-    "open demo new completion record supersede void import export backup restore today analysis drift balance forecast "
-    "hindcast plan stock acid round handover report logbook supplies site check".split()
-)
+    {
+        "open", "demo", "new", "completion",
+        "record", "supersede", "void", "import", "export", "backup", "restore",
+        "today", "analysis", "drift", "balance", "forecast", "hindcast", "plan",
+        "stock", "acid", "round", "handover", "report", "logbook", "supplies", "site", "check",
+    }
+)  # fmt: skip
+"""Every command: a first word that is none of them is a site folder."""
 
 
 def build() -> Parser:
@@ -50,6 +56,14 @@ def build() -> Parser:
     return parser
 
 
+def commands_of(parser: Parser) -> Mapping[str, Parser]:
+    """The commands of a parser by name."""
+    for action in parser._actions:
+        if isinstance(action, argparse._SubParsersAction):
+            return action.choices
+    return {}
+
+
 def _add(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:  # type: ignore[type-arg]
     return commands.add_parser(
         name, help=about, description=f"  {example}\n\n{about}", formatter_class=argparse.RawDescriptionHelpFormatter
@@ -64,7 +78,9 @@ def _site_commands(commands: argparse._SubParsersAction) -> None:  # type: ignor
     demo.add_argument("--into", metavar="DIR", help="where to build it (default: a fresh temporary folder)")
     demo.add_argument("--text", action="store_true", help="print today, forecast and plan instead of opening it")
     new = _add(
-        commands, "new", "make a site folder from options, or by asking",
+        commands,
+        "new",
+        "make a site folder from options, or by asking",
         "fertui new north --crop tomato --medium coir --layout drain-blend --area 1200",
     )
     new.add_argument("dir", metavar="DIR")
@@ -94,19 +110,26 @@ NEW_OPTIONS = {
 
 
 def _write_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
-    record = _add(commands, "record", "append one entry to the logbook",
-                  "fertui record north reading point=drain EC=4.1 pH=5.7 by=MK")
+    record = _add(
+        commands,
+        "record",
+        "append one entry to the logbook",
+        "fertui record north reading point=drain EC=4.1 pH=5.7 by=MK",
+    )
     record.add_argument("site", metavar="SITE")
     record.add_argument("kind", metavar="KIND")
     record.add_argument("values", nargs="*", metavar="name=value")
     record.add_argument("--loop", metavar="NAME")
-    correct = _add(commands, "supersede", "correct an entry; the old one stays visible",
-                   'fertui supersede north 41 Ca=5.1 why="misread the report" by=MK')
+    correct = _add(
+        commands,
+        "supersede",
+        "correct an entry; the old one stays visible",
+        'fertui supersede north 41 Ca=5.1 why="misread the report" by=MK',
+    )
     correct.add_argument("site", metavar="SITE")
     correct.add_argument("number", metavar="NUMBER")
     correct.add_argument("values", nargs="+", metavar="name=value")
-    strike = _add(commands, "void", "strike an entry; it stays visible",
-                  'fertui void north 41 why="wrong loop" by=MK')
+    strike = _add(commands, "void", "strike an entry; it stays visible", 'fertui void north 41 why="wrong loop" by=MK')
     strike.add_argument("site", metavar="SITE")
     strike.add_argument("number", metavar="NUMBER")
     strike.add_argument("values", nargs="+", metavar="name=value")

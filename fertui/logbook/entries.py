@@ -23,6 +23,15 @@ class Value:
     species: str = ""
     below: bool = False
 
+    @property
+    def written(self) -> str:
+        """The value as written, with its unit where that stood elsewhere (a column head, a form).
+
+        >>> Value("K", "8,0", 8.0, "mmol/L").written, Value("K", "280 mg/L", 7.16, "mg/L").written
+        ('8,0 mmol/L', '280 mg/L')
+        """
+        return self.text if not self.unit or self.text.endswith(self.unit) else f"{self.text} {self.unit}"
+
 
 @dataclass(frozen=True, slots=True)
 class Entry:

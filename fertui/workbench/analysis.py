@@ -23,7 +23,7 @@ REFERENCE_EC_BELOW_TARGET = 0.3
 
 @dataclass(frozen=True, slots=True)
 class AnalysisRow:
-    """One ion: feed, managed point, its previous analysis, normalised value, target, deviation of the normalised [%]."""
+    """One ion: feed, managed point, previous analysis, normalised value, target, deviation of the normalised [%]."""
 
     ion: str
     unit: str
@@ -133,7 +133,7 @@ def _row(
 
 
 def _in_words(ion: str, off_pct: float | None) -> str:
-    """Deviation in words; the steps of 25 and 50 % are those of the correction rule (Dutch booklet 2016, second-hand)."""
+    """Deviation in words, in the 25 and 50 % steps of the correction rule (Dutch booklet 2016, second-hand)."""
     if off_pct is None:
         return ""
     size, side = abs(off_pct), "high" if off_pct > 0 else "low"

@@ -12,18 +12,25 @@ from fertui.logbook.entries import Entry
 from fertui.workbench.glance import Glance, glance
 
 if TYPE_CHECKING:
+    from fertui.catalogue.cautions import Caution
+    from fertui.chemistry.verdicts import Check
     from fertui.estimate.assimilation import Estimate
     from fertui.estimate.balance import Balance
     from fertui.estimate.forecast import Forecast, Scenario
     from fertui.estimate.hindcast import Hindcast
+    from fertui.logbook.importing import ImportResult
     from fertui.logbook.questions import Question
     from fertui.logbook.store import Logbook
+    from fertui.paper import Page
     from fertui.planning.values import AcidSheet, Plan, StockSheet
+    from fertui.site.edit import SiteRow
     from fertui.site.model import Loop, Site
-    from fertui.workbench.aims import Aims
     from fertui.workbench.analysis import AnalysisView
+    from fertui.workbench.carrying_out import PlanItem
     from fertui.workbench.checks import CheckRow
     from fertui.workbench.drift import Drift
+    from fertui.workbench.entering import Place
+    from fertui.workbench.shelf import StockRow, SupplyRow
     from fertui.workbench.today import Today
 
 LOGBOOK = "logbook.sqlite3"
@@ -75,9 +82,7 @@ class Bench:
         recent = self.book.entries(loop=chosen.name, since=at - timedelta(days=60), at=at)
         return glance(chosen, recent, at)
 
-    def estimate(
-        self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None
-    ) -> Estimate:
+    def estimate(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Estimate:
         """Where the loop is; kept until the logbook or the minute changes."""
         from fertui.estimate.assimilation import assimilate
 
@@ -104,7 +109,9 @@ class Bench:
         states = [self.today(name, at, known) for name in self.loops]
         return tuple(sorted(states, key=lambda state: -sum(severity[each.severity] for each in state.watch)))
 
-    def analysis(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> AnalysisView:
+    def analysis(
+        self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None
+    ) -> AnalysisView:
         """The last analysis against target."""
         from fertui.workbench.analysis import analysis
 
@@ -198,6 +205,120 @@ class Bench:
 
         return read_moment(written, self.site.timezone, now())[0]
 
+    # papers
+
+    def round_sheet(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Page:
+        """Blank round sheet of a loop with its last values."""
+        from fertui.paper.rounds import round_sheet
+
+        chosen, at = self.loop(loop), at or now()
+        return round_sheet(self.site, chosen, self.book.entries(loop=chosen.name, at=at, known=known), at)
+
+    def handover(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Page:
+        """The shift handover: all loops, or the one named."""
+        from fertui.paper.rounds import handover
+        from fertui.workbench.carrying_out import open_plans
+
+        at = at or now()
+        entries = self.entries(at, known)
+        states = [self.today(name, at, known) for name in (self.loops if loop is None else (self.loop(loop).name,))]
+        steps = [
+            f"{each.what} {each.amount or 0:g} {each.unit}" for each in open_plans(entries) if not each.done_number
+        ]
+        watch = {state.loop: [notice.text for notice in state.watch] for state in states}
+        return handover(self.site, at, entries, watch, steps, [each for state in states for each in state.awaited])
+
+    def report(
+        self,
+        loop: str | None = None,
+        start: datetime | None = None,
+        end: datetime | None = None,
+        known: datetime | None = None,
+    ) -> Page:
+        """The report of a loop for consultant or inspector."""
+        from fertui.paper.report import report
+        from fertui.workbench.reporting import crop_water_l, discharges
+
+        chosen = self.loop(loop)
+        account = self.balance(loop, start, end, known)
+        estimate = self.estimate(loop, account.end, known)
+        effective = self.book.entries(loop=chosen.name, at=account.end, known=known)
+        history = self.book.history(loop=chosen.name, at=account.end, known=known)
+        lost = discharges(estimate, account.start, account.end)
+        water = crop_water_l(estimate, account.start, account.end)
+        return report(self.site, chosen, history, effective, account, lost, water)
+
+    def plan_page(self, plan: Plan) -> Page:
+        """The sheet of a plan."""
+        from fertui.paper.sheets import dose_sheet
+
+        return dose_sheet(plan, self.site.name, self.site.timezone)
+
+    def stock_page(self, sheet: StockSheet, loop: str | None = None) -> Page:
+        """The stock-tank sheet as a page."""
+        from fertui.paper.sheets import stock_page
+
+        return stock_page(sheet, self.loop(loop).name)
+
+    def acid_page(self, sheet: AcidSheet, loop: str | None = None) -> Page:
+        """The acid sheet as a page."""
+        from fertui.paper.sheets import acid_page
+
+        return acid_page(sheet, self.loop(loop).name)
+
+    def acknowledge(self, made: Plan | AcidSheet | StockSheet, strength_pct: float | None) -> None:
+        """Refuse unless the strength read off the label is the one a plan or sheet with acid counts on."""
+        from fertui.workbench.carrying_out import acids_of, check_strength
+
+        check_strength(acids_of(made), strength_pct)
+
+    def write(self, text: str, path: Path) -> Path:
+        """Write a sheet to a file that is not there yet."""
+        from fertui.workbench.keeping import write_new
+
+        return write_new(path, text)
+
+    # the shelf and the site
+
+    def supplies_rows(self) -> tuple[SupplyRow, ...]:
+        """Supplies with formula, label, amount left and hazards."""
+        from fertui.workbench.shelf import supply_rows
+
+        return supply_rows(self.site)
+
+    def stock_rows(self, loop: str | None = None, at: datetime | None = None) -> tuple[StockRow, ...]:
+        """Stock tanks of a loop with litres and days left."""
+        from fertui.estimate.notices import stock_days_left
+        from fertui.workbench.shelf import stock_rows
+
+        chosen, at = self.loop(loop), at or now()
+        entries = self.entries(at)
+        return stock_rows(self.site, chosen, entries, stock_days_left(self.site, chosen, entries, at))
+
+    def acid_cautions(self, acid: str, strength_pct: float | None = None) -> tuple[Caution, ...]:
+        """Cautions of an acid or lye at the strength on its label."""
+        from fertui.workbench.shelf import acid_cautions
+
+        return acid_cautions(self.site, acid, strength_pct)
+
+    def site_rows(self, loop: str | None = None) -> tuple[SiteRow, ...]:
+        """Targets, bands, limits and the rest of the site file, each with where it comes from."""
+        from fertui.site.edit import rows
+
+        return rows(self.site, self.loop(loop))
+
+    def change_site(self, key: str, text: str, by: str) -> Entry:
+        """Change one value of the site file, keep the old file, and log the new one whole."""
+        from fertui.site.edit import changed
+        from fertui.site.files import write_site
+
+        site = changed(self.site, key, text)
+        path = write_site(site, self.folder, datetime.now(UTC))
+        self.__dict__.pop("site", None)
+        return self.record("site", {"text": path.read_text(encoding="utf-8"), "by": by})
+
+    # the logbook
+
     def history(
         self, kind: str | None = None, loop: str | None = None, at: datetime | None = None
     ) -> tuple[Entry, ...]:
@@ -207,11 +328,22 @@ class Bench:
         kinds = None if kind is None else (kind_named(kind).name,)
         return self.book.history(loop=None if loop is None else self.loop(loop).name, kinds=kinds, at=at)
 
-    def aims(self, loop: str | None = None) -> Aims:
-        """Targets, bands and limits of a loop, each with where it comes from."""
-        from fertui.workbench.aims import aims
+    def last_number(self) -> int:
+        """Number of the last entry: what another session wrote shows here."""
+        return self.book.last_number()
 
-        return aims(self.site, self.loop(loop))
+    def echo(self, kind: str, name: str, text: str, loop: str | None = None) -> str:
+        """What was understood of one value; refuses what cannot be taken."""
+        from fertui.workbench.entering import echo
+
+        return echo(kind, name, text, self.site, self.loop(loop))
+
+    def previous(self, loop: str | None = None) -> Mapping[Place, tuple[str, datetime]]:
+        """The last value as written for every place a form asks for."""
+        from fertui.workbench.entering import previous
+
+        recent = self.book.entries(loop=self.loop(loop).name, since=now() - timedelta(days=60))
+        return previous(recent)
 
     def questions(self, kind: str, fields: Mapping[str, str], loop: str | None = None) -> tuple[Question, ...]:
         """What a careful colleague would ask before this entry is written."""
@@ -219,9 +351,20 @@ class Bench:
 
         return questions(self._read(kind, fields, loop), self.book, self.site)
 
-    def record(self, kind: str, fields: Mapping[str, str], loop: str | None = None) -> Entry:
-        """Append one entry and return it as read back from the logbook."""
-        return self._stored(self.book.append(self._read(kind, fields, loop)))
+    def check_analysis(self, fields: Mapping[str, str], loop: str | None = None) -> tuple[Check, ...]:
+        """Charge balance and EC check of an analysis before it is saved."""
+        from fertui.workbench.entering import check_analysis
+
+        return check_analysis(self._read("analysis", fields, loop))
+
+    def record(self, kind: str, fields: Mapping[str, str], loop: str | None = None, asked: bool = True) -> Entry:
+        """Append one entry, return it as read back; ``asked`` False: unanswered questions are kept with it as flags."""
+        from fertui.logbook.questions import flagged, questions
+
+        entry = self._read(kind, fields, loop)
+        if not asked:
+            entry = flagged(entry, questions(entry, self.book, self.site))
+        return self._stored(self.book.append(entry))
 
     def supersede(self, number: int, fields: Mapping[str, str], why: str, by: str) -> Entry:
         """Correct an entry by a new one; the old one stays visible."""
@@ -234,9 +377,54 @@ class Bench:
         """Strike an entry; it stays visible."""
         return self._stored((self.book.void(number, why, by),))
 
-    def last_number(self) -> int:
-        """Number of the last entry: what another session wrote shows here."""
-        return self.book.last_number()
+    def import_table(self, path: Path, kind: str, loop: str | None = None, **wishes: Any) -> ImportResult:
+        """Take in a table; ``wishes`` as in ``keeping.import_table``."""
+        from fertui.workbench.keeping import import_table
+
+        return import_table(self, path, kind, loop, **wishes)
+
+    def export(self, into: Path) -> tuple[Path, ...]:
+        """Write the logbook as tables, one a kind."""
+        from fertui.logbook.exporting import export
+
+        return export(self.book, into, self.site.timezone)
+
+    def backup(self, path: Path) -> Path:
+        """Write the whole book and the site file, verbatim."""
+        from fertui.logbook.backup import backup
+
+        return backup(self.folder, path)
+
+    # plans carried out
+
+    def accept_plan(self, plan: Plan, by: str) -> tuple[Entry, ...]:
+        """Log what is intended: one plan entry a step, all or none."""
+        from fertui.workbench.carrying_out import steps_of
+
+        entries = [self._read("plan", fields, plan.loop) for fields in steps_of(plan, by)]
+        return tuple(self.book.entry(number) for number in self.book.append(entries))
+
+    def open_plans(self, loop: str | None = None, at: datetime | None = None) -> tuple[PlanItem, ...]:
+        """Intended steps of a loop, done or not."""
+        from fertui.workbench.carrying_out import open_plans
+
+        return open_plans(self.book.entries(loop=self.loop(loop).name, at=at))
+
+    def mark_done(
+        self, number: int, by: str, amount: str | None = None, strength_pct: float | None = None, read: bool = False
+    ) -> Entry:
+        """Log a planned step as carried out, wholly or by ``amount``; ``read``: its cautions were acknowledged."""
+        from fertui.workbench.carrying_out import done_fields
+
+        planned = self.book.entry(number)
+        kind, fields = done_fields(planned, by, amount, strength_pct)
+        if kind == "acid":
+            fields["cautions"] = "acknowledged" if read else "not acknowledged"
+        return self.record(kind, fields, planned.loop)
+
+    def not_done(self, number: int, why: str, by: str) -> Entry:
+        """Strike an intended step that will not be carried out."""
+        return self.void(number, why, by)
 
     def _read(self, kind: str, fields: Mapping[str, str], loop: str | None) -> Entry:
         from fertui.logbook.parse import entry_from_text
@@ -248,8 +436,8 @@ class Bench:
 
 
 def now() -> datetime:
-    """The running minute, in UTC: answers within one minute are the same."""
-    return datetime.now(UTC).replace(second=0, microsecond=0)
+    """End of the running minute, in UTC: answers within a minute are the same, nothing just logged is hidden."""
+    return datetime.now(UTC).replace(second=59, microsecond=999999)
 
 
 def open_site(folder: str | Path) -> Bench:
@@ -258,5 +446,7 @@ def open_site(folder: str | Path) -> Bench:
 
     path = Path(folder)
     if not (path / "site.toml").is_file():
-        raise Refusal(f"{path} holds no site: no site.toml in it. Make one with 'fertui new {path}', or see 'fertui demo'.")
+        raise Refusal(
+            f"{path} holds no site: no site.toml in it. Make one with 'fertui new {path}', or see 'fertui demo'."
+        )
     return Bench(path)

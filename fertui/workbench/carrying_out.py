@@ -11,7 +11,7 @@ from fertui.logbook.entries import Entry
 from fertui.refusals import Refusal
 
 if TYPE_CHECKING:
-    from fertui.planning.values import Plan
+    from fertui.planning.values import AcidSheet, Plan, StockSheet
 
 Fields = dict[str, str]
 
@@ -78,7 +78,9 @@ def _subject(entry: Entry) -> tuple[str, str, str]:
 def done_fields(planned: Entry, by: str, amount: str | None, strength_pct: float | None) -> tuple[str, Fields]:
     """Kind and texts of the entry that says a planned step was carried out, wholly or by ``amount``."""
     if planned.kind != "plan":
-        raise Refusal(f"entry {planned.number} is a {planned.kind}, not a plan; mark the number of a plan entry as done.")
+        raise Refusal(
+            f"entry {planned.number} is a {planned.kind}, not a plan; mark the number of a plan entry as done."
+        )
     what, name, _ = _subject(planned)
     fields: Fields = {"by": by, "plan": str(planned.number)}
     if planned.text_of("tank"):
@@ -96,7 +98,15 @@ def done_fields(planned: Entry, by: str, amount: str | None, strength_pct: float
 
 
 def _ions(planned: Entry) -> Fields:
-    return {value.name: f"{value.text} {value.unit}".strip() for value in planned.values if value.number is not None}
+    return {value.name: value.written for value in planned.values if value.number is not None}
+
+
+def acids_of(made: Plan | AcidSheet | StockSheet) -> tuple[tuple[str, float], ...]:
+    """Acids of a plan or sheet with the strength each was counted at."""
+    splits = getattr(made, "acid", ())
+    if isinstance(splits, str):
+        return ((splits, made.strength_pct),) if made.splits else ()  # type: ignore[union-attr]
+    return tuple({(split.acid, split.strength_pct) for split in splits})
 
 
 def check_strength(acids: Iterable[tuple[str, float]], strength_pct: float | None) -> None:

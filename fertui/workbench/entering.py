@@ -1,4 +1,4 @@
-"""What entry forms need before anything is written: what was understood, what was last, what an analysis says of itself."""
+"""What entry forms need before anything is written: what was understood, what was last, what an analysis shows."""
 
 from __future__ import annotations
 
@@ -44,7 +44,7 @@ def previous(entries: Iterable[Entry]) -> Mapping[Place, tuple[str, datetime]]:
     for entry in entries:
         tank = entry.text_of("tank")
         for value in entry.values:
-            last[(entry.kind, entry.point, value.name, tank)] = (f"{value.text} {value.unit}".strip(), entry.at)
+            last[(entry.kind, entry.point, value.name, tank)] = (value.written, entry.at)
     return last
 
 

@@ -59,7 +59,17 @@ def glance(loop: Loop, entries: Iterable[Entry], at: datetime) -> Glance:
         elif entry.kind == "crop":
             stage = entry.text_of("stage") or stage
     return Glance(
-        loop.name, loop.layout, loop.crop, stage, loop.medium, at, managed_point(loop), readings, analysis, set_ec, set_ph
+        loop.name,
+        loop.layout,
+        loop.crop,
+        stage,
+        loop.medium,
+        at,
+        managed_point(loop),
+        readings,
+        analysis,
+        set_ec,
+        set_ph,
     )
 
 

@@ -143,7 +143,9 @@ def in_words(leaving: LeavesBand | None, horizon: int) -> str:
     low, high = leaving.days.low, leaving.days.high
     if leaving.days.value is None:
         return f"not in {horizon} days" if low is None else f"{low:.0f} to over {horizon} days"
-    return f"in {leaving.days.value:.0f} ({low or 0:.0f}-{'over ' + str(horizon) if high is None else f'{high:.0f}'}) days"
+    return (
+        f"in {leaving.days.value:.0f} ({low or 0:.0f}-{'over ' + str(horizon) if high is None else f'{high:.0f}'}) days"
+    )
 
 
 def _newest(last: Glance) -> Seen | None:

@@ -14,7 +14,9 @@ from fertui.workbench.drift import Drift
 def text(view: AnalysisView, timezone: str, unit: str) -> str:
     """The report side by side: drip, managed point, previous, normalised, target, deviation."""
     if view.managed is None and view.feed is None:
-        return f"{view.loop}: no analysis logged yet. Take one with 'fertui record SITE analysis point=... K=... Ca=...'."
+        return (
+            f"{view.loop}: no analysis logged yet. Take one with 'fertui record SITE analysis point=... K=... Ca=...'."
+        )
     lines = [f"{view.loop}: last analysis"]
     for name, seen in (("drip", view.feed), (POINT_WORDS[view.managed_point], view.managed)):
         if seen is not None:

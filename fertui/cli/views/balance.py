@@ -8,7 +8,17 @@ from fertui.cli.views import as_json, words
 from fertui.estimate.balance import Balance
 
 COLUMNS = (
-    "start_mmol", "make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained",
+    "start_mmol",
+    "make_up",
+    "stock",
+    "dose",
+    "acid",
+    "feed",
+    "uptake",
+    "exchange",
+    "bleed",
+    "drain",
+    "unexplained",
     "end_mmol",
 )
 
@@ -21,7 +31,11 @@ def text(account: Balance, loop: str, timezone: str) -> str:
     for ion, row in rows.items():
         shown.append((ion, *(f"{row[name] / 1000:.2f}" for name in used)))
     period = f"{words.local(account.start, timezone)} to {words.local(account.end, timezone)}"
-    head = [f"{loop}: account of {period}", "gains +, losses -; start + flows = end; tank, stores and root-zone solution", ""]
+    head = [
+        f"{loop}: account of {period}",
+        "gains +, losses -; start + flows = end; tank, stores and root-zone solution",
+        "",
+    ]
     return "\n".join(head + words.table(shown, right=range(1, len(used) + 1)))
 
 

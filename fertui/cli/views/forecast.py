@@ -98,8 +98,14 @@ def record_text(record: Hindcast, loop: str, timezone: str) -> str:
         mark = " doubtful" if row.doubtful else ""
         rows.append(
             (
-                words.local(row.at, timezone)[:10] + mark, POINT_WORDS[row.point], row.ion, words.number(row.measured_mmol_l),
-                forecast, words.number(row.no_change_mmol_l), found, share,
+                words.local(row.at, timezone)[:10] + mark,
+                POINT_WORDS[row.point],
+                row.ion,
+                words.number(row.measured_mmol_l),
+                forecast,
+                words.number(row.no_change_mmol_l),
+                found,
+                share,
             )
         )
     return "\n".join([*lines, *words.table(rows), "", record.summary.words])

@@ -25,7 +25,9 @@ def text(plan: Plan, timezone: str, unit: str) -> str:
     if plan.runner_up is not None:
         lines += _section("Next best", [plan.runner_up.difference])
     lines += _section("Step by step", plan.arithmetic)
-    lines += _section("Cautions", [f"{words.SIGNS.get(each.severity, '- ')}{each.text} ({each.source})" for each in plan.cautions])
+    lines += _section(
+        "Cautions", [f"{words.SIGNS.get(each.severity, '- ')}{each.text} ({each.source})" for each in plan.cautions]
+    )
     return "\n".join(lines)
 
 
@@ -40,7 +42,13 @@ def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
     rows = [("feed", f"next {unit}", "change")]
     for ion, amount in recipe.ions_mmol_l.items():
         change = recipe.change_pct.get(ion)
-        rows.append((words.label(ion, unit), words.number(amount * words.factor(ion, unit)), "" if change is None else f"{change:+.0f} %"))
+        rows.append(
+            (
+                words.label(ion, unit),
+                words.number(amount * words.factor(ion, unit)),
+                "" if change is None else f"{change:+.0f} %",
+            )
+        )
     lines = ["", f"Next recipe, EC {words.number(recipe.ec)} mS/cm", *words.table(rows, right=(1, 2))]
     if len(recipe.stages) > 1:
         lines += [f"  from {words.local(stage.at, timezone)}: EC {stage.ec:.1f} mS/cm" for stage in recipe.stages]

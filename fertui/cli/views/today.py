@@ -9,7 +9,11 @@ from fertui.workbench.glance import Seen
 from fertui.workbench.today import Today
 
 POINT_WORDS = {
-    "feed": "drip", "root_zone": "root zone", "drain": "drain", "drain_store": "drain store", "tank": "tank",
+    "feed": "drip",
+    "root_zone": "root zone",
+    "drain": "drain",
+    "drain_store": "drain store",
+    "tank": "tank",
     "source": "source water",
 }
 
@@ -37,7 +41,9 @@ def _readings(state: Today) -> list[str]:
         if numbers:
             lines.append(f"{POINT_WORDS.get(point, point)}: {'  '.join(numbers)}  ({words.age(seen.at, state.at)})")
     if state.set_ec is not None:
-        lines.append(f"set: EC {words.number(state.set_ec)} mS/cm" + (f"  pH {state.set_ph:.1f}" if state.set_ph else ""))
+        lines.append(
+            f"set: EC {words.number(state.set_ec)} mS/cm" + (f"  pH {state.set_ph:.1f}" if state.set_ph else "")
+        )
     if state.stock_days_left:
         left = "  ".join(f"{tank} {days:.1f} days" for tank, days in state.stock_days_left.items())
         lines.append(f"stock left: {left}")

@@ -12,6 +12,7 @@ from fertui.workbench.units import shown
 ABSENT = "-"
 SIGNS = {"act": "!!", "watch": "! ", "note": "- "}
 
+
 def factor(ion: str, unit: str) -> float:
     """What a concentration in mmol/L is multiplied by to be shown in ``unit``.
 

@@ -1,0 +1,92 @@
+"""How entries, imports, supplies, aims and checks read."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, Any
+
+from fertui.cli.views import as_json, words
+from fertui.logbook.entries import Entry, Value
+
+if TYPE_CHECKING:
+    from fertui.logbook.importing import ImportResult
+    from fertui.site.edit import SiteRow
+    from fertui.workbench.checks import CheckRow
+    from fertui.workbench.shelf import StockRow, SupplyRow
+
+
+def entry_text(entry: Entry, timezone: str) -> str:
+    """One entry in a line: number, time, loop, kind, place, values, who, and what became of it."""
+    values = " ".join(_value(value) for value in entry.values)
+    place = " ".join(part for part in (entry.point, entry.zone, entry.method) if part)
+    parts = [str(entry.number or "new"), words.local(entry.at, timezone), entry.loop, entry.kind, place, values]
+    parts.append(f"by {entry.by}")
+    if entry.supersedes is not None:
+        parts.append(f"{'strikes' if entry.void else 'corrects'} {entry.supersedes}: {entry.why}")
+    if entry.doubtful:
+        parts.append(f"doubtful: {entry.doubtful}")
+    if entry.note:
+        parts.append(f'"{entry.note}"')
+    return "  ".join(part for part in parts if part)
+
+
+def _value(value: Value) -> str:
+    species = f" as {value.species}" if value.species and value.species != value.name else ""
+    return f"{value.name}={value.written}{species}"
+
+
+def entries_text(entries: Sequence[Entry], timezone: str) -> str:
+    """Every entry, struck ones marked with an x."""
+    gone = {entry.supersedes for entry in entries}
+    lines = [("x " if entry.number in gone else "  ") + entry_text(entry, timezone) for entry in entries]
+    return "\n".join(lines) if lines else "The logbook is empty. Begin with 'fertui record SITE reading ...'."
+
+
+def entries_document(entries: Sequence[Entry]) -> dict[str, Any]:
+    """``logbook --json``."""
+    return {"schema": "fertui.logbook/1", "entries": [as_json.plain(entry) for entry in entries]}
+
+
+def import_text(result: ImportResult) -> str:
+    """What an import understood, asks about and wrote."""
+    lines = []
+    for row in result.rows:
+        state = row.state if row.existing is None else f"{row.state} (entry {row.existing})"
+        lines.append(f"line {row.line}: {row.entry.kind} {row.entry.point} {row.entry.at:%Y-%m-%d %H:%M} {state}")
+        if result.dry_run:
+            lines += [f"    {each}" for each in row.conversions]
+        lines += [f"  ? {each.text}" for each in row.questions]
+    done = "nothing was written (dry run)" if result.dry_run else f"{len(result.written)} entries written"
+    return "\n".join([*lines, f"{len(result.rows)} rows read; {done}."])
+
+
+def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> str:
+    """The shelf and the stock tanks."""
+    rows = [("supply", "formula", "label", "left kg", "price/kg")]
+    for each in supplies:
+        rows.append(
+            (each.name, each.formula, each.label, words.number(each.amount_kg), words.number(each.price_per_kg, 2))
+        )
+    lines = words.table(rows, right=(3, 4))
+    stock = [("stock tank", "letter", "litres", "left", "days left")]
+    stock += [
+        (each.name, each.letter, f"{each.litres:g}", words.number(each.litres_left), words.number(each.days_left))
+        for each in tanks
+    ]
+    return "\n".join([*lines, "", *words.table(stock, right=(2, 3, 4))])
+
+
+def aims_text(rows: Sequence[SiteRow]) -> str:
+    """Targets, bands, limits and settings with where each comes from."""
+    return "\n".join(
+        words.table([("key", "value", "unit", "from"), *((r.key, r.text, r.unit, r.source) for r in rows)])
+    )
+
+
+def check_text(rows: Sequence[CheckRow]) -> str:
+    """What was looked at; only what is not all right carries its remark."""
+    lines = []
+    for row in rows:
+        remark = f" -> {row.remark}" if row.remark and not row.passed else ""
+        lines.append(f"{'ok' if row.passed else '! '} {row.group}: {row.what}: {row.found}{remark}")
+    return "\n".join(lines)

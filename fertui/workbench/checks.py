@@ -1,0 +1,66 @@
+"""The check of a site: its file, its logbook, what to look at, and the machine it runs on, as rows."""
+
+from __future__ import annotations
+
+import locale
+import os
+import shutil
+import sqlite3
+import sys
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from fertui.workbench.bench import Bench
+
+LEAST_FREE_MB = 100
+
+
+@dataclass(frozen=True, slots=True)
+class CheckRow:
+    """One thing looked at: what, what was found, whether it is all right, and what to do where it is not."""
+
+    group: str
+    what: str
+    found: str
+    passed: bool
+    remark: str = ""
+
+
+def check(bench: Bench) -> tuple[CheckRow, ...]:
+    """All rows, site first. A site file that cannot be read raises as ever."""
+    return (*_site(bench), *_logbook(bench), *_watch(bench), *_machine(bench))
+
+
+def _site(bench: Bench) -> Iterator[CheckRow]:
+    site = bench.site
+    yield CheckRow("site", "site.toml", f"{len(site.loops)} loops, {len(site.supplies)} supplies", True)
+    for loop in site.loops:
+        if loop.layout != "known-feed" and not loop.water:
+            yield CheckRow("site", f"water of {loop.name}", "not named", False, "name its source water and analysis")
+
+
+def _logbook(bench: Bench) -> Iterator[CheckRow]:
+    from fertui.logbook.integrity import check_book
+
+    for row in check_book(bench.book.path):
+        yield CheckRow("logbook", row.what, row.found, row.passed, row.remark)
+
+
+def _watch(bench: Bench) -> Iterator[CheckRow]:
+    for name in bench.loops:
+        for notice in bench.today(name).watch:
+            yield CheckRow(f"watch {name}", notice.code, notice.text, notice.severity == "note")
+
+
+def _machine(bench: Bench) -> Iterator[CheckRow]:
+    free = shutil.disk_usage(bench.folder).free // 2**20
+    yield CheckRow("machine", "disk", f"{free} MB free", free > LEAST_FREE_MB, "make room before logging on")
+    encoding = locale.getpreferredencoding(False)
+    yield CheckRow("machine", "locale", encoding, True, "" if "UTF" in encoding.upper() else "screens use plain ASCII")
+    terminal = os.environ.get("TERM", "")
+    usable = terminal not in ("", "dumb")
+    yield CheckRow("machine", "terminal", terminal or "none", True, "" if usable else "use the plain commands here")
+    yield CheckRow("machine", "database", f"SQLite {sqlite3.sqlite_version}", sqlite3.sqlite_version_info >= (3, 37))
+    yield CheckRow("machine", "python", sys.version.split()[0], sys.version_info >= (3, 11))

@@ -1,0 +1,94 @@
+"""Keeping the book: tables in and out, backup and restore, new sites."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from fertui.refusals import FileTrouble, Refusal
+
+if TYPE_CHECKING:
+    from fertui.logbook.importing import ImportResult
+    from fertui.site.new import Question as SiteQuestion
+    from fertui.workbench.bench import Bench
+
+
+def import_table(
+    bench: Bench,
+    path: Path,
+    kind: str,
+    loop: str | None = None,
+    dry_run: bool = False,
+    by: str | None = None,
+    template: str | None = None,
+    save_template: str | None = None,
+) -> ImportResult:
+    """Take in a table of one kind, with the column mapping of a laboratory where one is named."""
+    from datetime import UTC, datetime
+
+    from fertui.logbook import importing, templates
+
+    mapping = None if template is None else templates.read_template(bench.folder, template)
+    result = importing.import_table(
+        path, kind, bench.book, bench.site, datetime.now(UTC), by=by or "", loop=loop, template=mapping, dry_run=dry_run
+    )
+    if save_template is not None:
+        templates.save_template(bench.folder, save_template, mapping or templates.Template())
+    return result
+
+
+def write_new(path: Path, text: str) -> Path:
+    """Write a text file that is not there yet; refuse to overwrite."""
+    try:
+        with path.open("x", encoding="utf-8") as file:
+            file.write(text if text.endswith("\n") else text + "\n")
+    except FileExistsError:
+        raise Refusal(f"{path} is there already; name another file, or move that one away.") from None
+    except OSError as trouble:
+        raise FileTrouble(f"{path} cannot be written: {trouble.strerror}. Name a folder you may write to.") from trouble
+    return path
+
+
+NUMBERS = {
+    "area": "area_m2",
+    "tank": "tank_l",
+    "drain-store": "drain_store_l",
+    "medium-volume": "medium_volume_l_per_m2",
+    "root-zone-water": "root_zone_water_l_per_m2",
+}
+"""Options of a new site that are numbers, by the name of the field they fill."""
+
+
+def make_new_site(folder: Path, answers: Mapping[str, str]) -> tuple[Path, tuple[str, ...]]:
+    """Make a site folder with an empty logbook from texts; returns the folder and what to log first."""
+    from fertui.logbook.store import Logbook
+    from fertui.quantities import parse_number
+    from fertui.site.new import first_steps, new_site
+    from fertui.workbench.bench import LOGBOOK
+
+    wishes: dict[str, Any] = {}
+    for name, text in answers.items():
+        if name in NUMBERS:
+            wishes[NUMBERS[name]] = parse_number(text).value
+        elif name == "supplies":
+            wishes[name] = tuple(each.strip() for each in text.split(",") if each.strip())
+        else:
+            wishes[name] = text
+    site = new_site(folder, **wishes)
+    Logbook.create(folder / LOGBOOK).close()
+    return folder, first_steps(site)
+
+
+def new_site_questions() -> tuple[SiteQuestion, ...]:
+    """What a new site is asked, in the order a grower knows the answers."""
+    from fertui.site.new import questions
+
+    return questions()
+
+
+def restore_site(path: Path, folder: Path) -> Path:
+    """Make a site folder from a backup."""
+    from fertui.logbook.backup import restore
+
+    return restore(path, folder)

@@ -1,0 +1,96 @@
+"""Supplies and stock tanks as rows: what stands where, how strong, how much is left, what to beware of."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from typing import TYPE_CHECKING
+
+from fertui.logbook.entries import Entry
+from fertui.site.model import Loop, Site, StockTank
+
+if TYPE_CHECKING:
+    from fertui.catalogue.cautions import Caution
+
+
+@dataclass(frozen=True, slots=True)
+class SupplyRow:
+    """One supply; ``label`` is its own analysis or strength where it differs from the formula."""
+
+    name: str
+    kind: str
+    formula: str
+    label: str
+    density_kg_per_l: float | None
+    price_per_kg: float | None
+    amount_kg: float | None
+    hazards: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class StockRow:
+    """One stock tank of a loop: since when, how many litres and days are left [None: not known]."""
+
+    name: str
+    letter: str
+    litres: float
+    dilution: float
+    mixed_at: datetime | None
+    recipe: str
+    litres_left: float | None
+    days_left: float | None
+
+
+def supply_rows(site: Site) -> tuple[SupplyRow, ...]:
+    """Every supply of a site with the cautions of its strength."""
+    from fertui.catalogue.cautions import cautions_of
+    from fertui.catalogue.supplies import of_supply
+
+    rows = []
+    for supply in site.supplies:
+        found = of_supply(supply)
+        label = ", ".join(f"{name} {percent:g} %" for name, percent in supply.label_pct.items())
+        if supply.strength_pct is not None:
+            label = f"{supply.strength_pct:g} %" + (f", {label}" if label else "")
+        density = supply.density_kg_per_l
+        if density is None and supply.strength_pct is not None and hasattr(found, "density"):
+            density = found.density(supply.strength_pct)
+        hazards = tuple(each.text for each in cautions_of([supply]))
+        rows.append(
+            SupplyRow(
+                supply.name, supply.kind, found.formula, label, density, supply.price_per_kg, supply.amount_kg, hazards
+            )
+        )
+    return tuple(rows)
+
+
+def stock_rows(
+    site: Site, loop: Loop, entries: Sequence[Entry], days_left: Mapping[str, float]
+) -> tuple[StockRow, ...]:
+    """Stock tanks of a loop: litres left are the last batch less what was used since."""
+    return tuple(_stock_row(tank, entries, days_left) for tank in site.stock_tanks if tank.name in loop.stock_tanks)
+
+
+def _stock_row(tank: StockTank, entries: Sequence[Entry], days_left: Mapping[str, float]) -> StockRow:
+    here = [entry for entry in entries if entry.text_of("tank") == tank.name]
+    batch = next((entry for entry in reversed(here) if entry.kind == "batch"), None)
+    left = None
+    if batch is not None:
+        used = sum(e.number_of("litres") or 0.0 for e in here if e.kind == "stock" and e.at >= batch.at)
+        left = max(0.0, (batch.number_of("litres") or 0.0) - used)
+    recipe = batch.text_of("recipe") if batch is not None else ""
+    mixed = None if batch is None else batch.at
+    return StockRow(tank.name, tank.letter, tank.litres, tank.dilution, mixed, recipe, left, days_left.get(tank.name))
+
+
+def acid_cautions(site: Site, acid: str, strength_pct: float | None) -> tuple[Caution, ...]:
+    """Cautions of an acid or lye at the strength read off its label."""
+    from dataclasses import replace
+
+    from fertui.catalogue.cautions import cautions_of
+    from fertui.site.model import Supply
+
+    shelved = next((supply for supply in site.supplies if supply.name == acid), None)
+    supply = shelved or Supply(acid, acid, strength_pct)
+    return cautions_of([supply if strength_pct is None else replace(supply, strength_pct=strength_pct)])
