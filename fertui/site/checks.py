@@ -138,7 +138,7 @@ class Table:
         return f" (found {shortened(near[0])}: is that meant?)" if near else ""
 
     def _checked(self, key: str, value: Any, low: float, high: float, unit: str) -> float:
-        allowed = f"a number from {low:g} to {high:g}{' ' + unit if unit else ''} is allowed."
+        allowed = f"a number from {plain(low)} to {plain(high)}{' ' + unit if unit else ''} is allowed."
         if isinstance(value, bool) or not isinstance(value, int | float):
             raise self.refuse(key, allowed)
         if not low <= value <= high or not math.isfinite(value):
@@ -151,6 +151,15 @@ def nearest(word: str, words: Collection[str]) -> str:
     folded = {each.lower(): each for each in words}
     near = difflib.get_close_matches(word[:60].lower(), folded, n=1)
     return f" (did you mean {folded[near[0]]}?)" if near else ""
+
+
+def plain(number: float) -> str:
+    """A number as a sentence writes it: no exponent.
+
+    >>> plain(1e7), plain(0.01)
+    ('10,000,000', '0.01')
+    """
+    return f"{number:,.6f}".rstrip("0").rstrip(".")
 
 
 def shortened(value: object) -> str:

@@ -19,6 +19,8 @@ from fertui.site.checks import SiteError
 from fertui.site.files import NAME, write_site
 from fertui.site.model import Composition, Loop, Site, StockTank, Supply, Water
 from fertui.site.presets import bands_of, limits_of, root_zone_water, target_of
+from fertui.site.reading import site_from
+from fertui.site.writing import tables_of
 
 COMMON_SALTS = (
     "calcium nitrate double salt",
@@ -90,7 +92,7 @@ def new_site(
         waters=(_water(water),),
         supplies=tuple(supply_from(each) for each in (COMMON_SALTS if supplies is None else supplies)),
     )
-    site = _with_defaults(site)
+    site = site_from(tables_of(_with_defaults(site)), f"the new {NAME}")
     _make(path)
     write_site(site, path, datetime.now(UTC))
     return site

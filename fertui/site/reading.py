@@ -195,7 +195,7 @@ def _ranges(table: Table) -> dict[str, dict[str, Sourced]]:
 
 
 def _ranges_of_point(table: Table) -> dict[str, Sourced]:
-    read = {}
+    read: dict[str, Sourced] = {}
     for key in table.data:
         what = key.replace("_share", " share")
         if what not in RANGED:
@@ -204,6 +204,8 @@ def _ranges_of_point(table: Table) -> dict[str, Sourced]:
             raise SiteError(
                 f"{table.file}, {table.place}: unknown key {shortened(key)}{near}; allowed: {', '.join(allowed)}."
             )
+        if what in read:
+            raise SiteError(f"{table.file}, {table.place}: {what} is given twice.")
         read[what] = _range(table.table(key), what)
     return read
 
