@@ -1,0 +1,55 @@
+"""How each question of a view is put to the workbench. The work runs on a desk, never in the app's own thread."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from datetime import datetime, timedelta
+from typing import TYPE_CHECKING, Any
+
+from fertui.tui.desk import Answer, Call
+from fertui.tui.snapshot import Ask
+
+if TYPE_CHECKING:
+    from fertui.workbench import Bench
+
+UseCase = Callable[["Bench", Ask, datetime], Any]
+
+
+def _plainly(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    return getattr(bench, ask.use_case)(ask.loop, at=moment, **dict(ask.options))
+
+
+def _overview(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    return bench.overview(at=moment)
+
+
+def _balance(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    return bench.balance(ask.loop, moment - timedelta(days=dict(ask.options)["days"]), moment)
+
+
+def _untimed(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    return getattr(bench, ask.use_case)(ask.loop, **dict(ask.options))
+
+
+def _whole(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    return getattr(bench, ask.use_case)(**dict(ask.options))
+
+
+def _history(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    return bench.history(at=moment)
+
+
+USE_CASES: dict[str, UseCase] = {
+    "overview": _overview, "balance": _balance, "stock": _untimed, "acid": _untimed, "aims": _untimed,
+    "check": _whole, "history": _history,
+}  # fmt: skip
+"""Use cases that take other arguments than loop and time."""
+
+QUICK = frozenset({"glance", "history", "aims", "stock", "acid", "analysis"})
+"""Use cases that run no model: they go to the desk that must not wait."""
+
+
+def call_for(ask: Ask, moment: datetime, then: Callable[[Ask, Answer], None]) -> Call:
+    """The call that works out one question as of ``moment``."""
+    use_case = USE_CASES.get(ask.use_case, _plainly)
+    return Call(lambda bench: use_case(bench, ask, moment), lambda answer: then(ask, answer), ask.use_case)

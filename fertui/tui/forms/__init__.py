@@ -1,0 +1,1 @@
+"""Entry forms: one for every kind of entry, all of one make."""

@@ -1,0 +1,266 @@
+"""The terminal interface: a frame of four parts, nine views, and one snapshot that all of them show."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import replace
+from datetime import UTC, datetime
+from functools import partial
+from typing import TYPE_CHECKING, Any, ClassVar, cast
+
+from textual.app import App, ComposeResult
+from textual.reactive import var
+from textual.screen import Screen
+
+from fertui.tui import leaving
+from fertui.tui.asking import QUICK, call_for
+from fertui.tui.desk import Answer, Call, Came, Desk
+from fertui.tui.driver import LineGone, ThinLineDriver
+from fertui.tui.faults import fault_sentence
+from fertui.tui.header_line import HeaderLine
+from fertui.tui.key_line import KeyLine, key_name
+from fertui.tui.keys import GLOBAL_KEYS, VIEW_NAMES
+from fertui.tui.settings import Settings
+from fertui.tui.snapshot import Ask, Snapshot
+from fertui.tui.stage import Stage
+from fertui.tui.terminal import Terminal
+from fertui.tui.themes import THEMES, usual_theme
+from fertui.tui.view import View
+from fertui.tui.view_line import ViewLine
+from fertui.tui.views import view_numbered
+
+if TYPE_CHECKING:
+    from fertui.workbench import Bench
+
+LOOK_FOR_NEWS_EVERY = 2.0
+"""Seconds between looks at the logbook for what other sessions wrote."""
+
+
+class Frame(Screen[None], inherit_bindings=False):
+    """The one screen: header, view names, stage, keys."""
+
+    def compose(self) -> ComposeResult:
+        """The four parts from top to bottom."""
+        yield HeaderLine()
+        yield ViewLine()
+        yield Stage()
+        yield KeyLine()
+
+    def on_mount(self) -> None:
+        """The parts stand: begin."""
+        cast("FertuiApp", self.app).begin()
+
+    def on_resize(self) -> None:
+        """A new size: nothing of what the terminal shows is known."""
+        cast("FertuiApp", self.app).forget_screen()
+
+
+class FertuiApp(App[int], inherit_bindings=False):
+    """Shows one site. Work goes to two desks: one that runs the model, one for what must not wait for it."""
+
+    CSS_PATH = "app.tcss"
+    ENABLE_COMMAND_PALETTE = False
+    BINDINGS: ClassVar = GLOBAL_KEYS
+
+    snapshot: var[Snapshot] = var(Snapshot, init=False)
+
+    def __init__(
+        self, open_bench: Callable[[], Bench], place: str, at: datetime | None, settings: Settings, terminal: Terminal
+    ) -> None:
+        super().__init__(driver_class=ThinLineDriver)
+        self.terminal, self.settings, self.place = terminal, settings, place
+        self.fixed_at = at
+        self.moment = at or datetime.now(UTC)
+        self.fault: BaseException | None = None
+        self.open_view = 1
+        self._notice = ("", "faint")
+        self._model = Desk("model", open_bench, self.post_message)
+        self._clerk = Desk("clerk", open_bench, self.post_message)
+        self._under_way: set[Ask] = set()
+        self._last_number = -1
+        for theme in THEMES:
+            self.register_theme(theme)
+        self.theme = settings.theme or usual_theme(terminal.colours)
+        self.animation_level = "none"
+        self.set_keymap(dict(settings.keys))
+
+    def get_default_screen(self) -> Screen[None]:
+        """The frame."""
+        return Frame()
+
+    def begin(self) -> None:
+        """Show the frame at once; numbers follow when the desks have them."""
+        leaving.on_signals(self._leave_at_once)
+        self.action_view(1)
+        self.set_interval(LOOK_FOR_NEWS_EVERY, self._look_for_news)
+        self.clerk(lambda bench: (bench.site, bench.loops, bench.last_number()), self._opened)
+
+    def _opened(self, answer: Answer) -> None:
+        if answer.value is None:
+            self.say(answer.trouble, "act")
+            return
+        site, loops, self._last_number = answer.value
+        unit = self.settings.unit or site.units
+        self.snapshot = replace(self.snapshot, site=site, loops=loops, loop=loops[0], unit=unit)
+
+    # the snapshot and what it lacks
+
+    def watch_snapshot(self) -> None:
+        """A new snapshot: draw it, and have worked out what it lacks."""
+        self.draw_frame()
+        if self.page is not None:
+            self.page.redraw()
+        self.work_out()
+
+    def work_out(self) -> None:
+        """Put to the desks what the open page needs and does not have."""
+        if self.page is None or not self.snapshot.loop:
+            return
+        for ask in self.page.asks(self.snapshot):
+            if self.snapshot.lacks(ask) and ask not in self._under_way:
+                self._under_way.add(ask)
+                desk = self._clerk if ask.use_case in QUICK else self._model
+                desk.put(call_for(ask, self.moment, partial(self._answered, self._last_number)))
+        self.update_keys()
+
+    def _answered(self, known: int, ask: Ask, answer: Answer) -> None:
+        self._under_way.discard(ask)
+        fresh = self.snapshot.with_answer(ask, answer)
+        self.snapshot = fresh if known == self._last_number else replace(fresh, stale=fresh.stale | {ask})
+
+    def on_came(self, message: Came) -> None:
+        """An answer of a desk: hand it to whoever asked."""
+        answer = message.answer
+        if answer.fault is not None:
+            answer = Answer(trouble=fault_sentence(message.call.name or "the logbook", answer.fault))
+        message.call.then(answer)
+
+    def clerk(self, work: Callable[[Bench], Any], then: Callable[[Answer], None], name: str = "") -> None:
+        """Have something quick done on the site and hear of it; it never waits for the model."""
+        self._clerk.put(Call(work, then, name))
+
+    def _look_for_news(self) -> None:
+        if self.snapshot.loop:
+            self.clerk(lambda bench: bench.last_number(), self._news)
+
+    def _news(self, answer: Answer) -> None:
+        if answer.value is not None and answer.value != self._last_number:
+            self.changed(answer.value)
+        elif answer.trouble:
+            self.say(answer.trouble, "act")
+
+    def changed(self, last_number: int) -> None:
+        """The logbook has new entries: what is shown stays until better answers come."""
+        self._last_number = last_number
+        self.moment = self.fixed_at or datetime.now(UTC)
+        self._model.instead([])
+        self._under_way.clear()
+        self.snapshot = self.snapshot.outdated()
+
+    # the frame
+
+    @property
+    def page(self) -> View | None:
+        """The page that shows."""
+        return self.query_one(Stage).top
+
+    def draw_frame(self) -> None:
+        """Header, view names and keys."""
+        now = self.snapshot
+        self.query_one(HeaderLine).say(self._where(), f"as of {self._local():%a %-d %b %H:%M}", now.initials)
+        loops = f"loop {now.loops.index(now.loop) + 1}/{len(now.loops)}" if len(now.loops) > 1 else ""
+        self.query_one(ViewLine).mark(VIEW_NAMES, self.open_view, loops)
+        self.update_keys()
+
+    def _where(self) -> str:
+        if self.snapshot.site is None:
+            return self.place
+        site, loop = self.snapshot.site, self.snapshot.site.loop(self.snapshot.loop)
+        grown = ", ".join(word for word in (loop.crop, loop.stage, loop.medium) if word and word != "none")
+        return f"{site.name}, {loop.name}: {grown}"
+
+    def _local(self) -> datetime:
+        if self.snapshot.site is None:
+            return self.moment.astimezone()
+        from zoneinfo import ZoneInfo
+
+        return self.moment.astimezone(ZoneInfo(self.snapshot.site.timezone))
+
+    def say(self, notice: str, ink: str = "faint") -> None:
+        """A notice in the bottom line, until the next key."""
+        self._notice = (notice, ink)
+        self.update_keys()
+
+    def update_keys(self) -> None:
+        """The bottom line: keys of the page and the frame, and what is going on."""
+        page = self.page
+        if page is None:
+            return
+        notice, ink = self._notice
+        if not notice and self._under_way:
+            notice = "working out " + ", ".join(sorted(ask.use_case for ask in self._under_way))
+        if not notice and page.below:
+            notice = f"{page.below} more below"
+        self.query_one(KeyLine).say(self._key_words(page), notice, ink)
+
+    def _key_words(self, page: View) -> list[tuple[str, str]]:
+        """Keys to show: those of the page first, each action once."""
+        own = {binding.id for bindings in page._bindings.key_to_bindings.values() for binding in bindings}
+        shown = {a.binding.id: a.binding for a in reversed(self.screen.active_bindings.values()) if a.binding.show}
+        ordered = sorted(reversed(shown.values()), key=lambda binding: binding.id not in own)
+        return [(key_name(binding.key), binding.description) for binding in ordered]
+
+    def forget_screen(self) -> None:
+        """Have everything sent again with the next repaint."""
+        if isinstance(self._driver, ThinLineDriver):
+            self._driver.forget_screen()
+
+    # actions
+
+    def action_view(self, number: int) -> None:
+        """Open a view."""
+        self.open_view = number
+        self._notice = ("", "faint")
+        self.query_one(Stage).open_view(number, view_numbered(number))
+        self.draw_frame()
+        if self.page is not None:
+            self.page.redraw()
+        self.work_out()
+
+    def action_loop(self, step: int) -> None:
+        """Show another loop."""
+        self.snapshot = self.snapshot.next_loop(step)
+
+    def choose_loop(self, name: str) -> None:
+        """Show a loop by name."""
+        self.snapshot = replace(self.snapshot, loop=name)
+
+    def action_unit(self) -> None:
+        """Show amounts in the next unit."""
+        self.snapshot = self.snapshot.next_unit()
+
+    def action_again(self) -> None:
+        """As of now, worked out again, drawn again."""
+        self.forget_screen()
+        self.changed(self._last_number)
+        self.refresh()
+
+    def action_leave(self) -> None:
+        """Leave with exit code 0."""
+        leaving.leave_soon(0)
+        self.exit(0, return_code=0)
+
+    # ends
+
+    def _leave_at_once(self, code: int) -> None:
+        leaving.leave_soon(code)
+        self.exit(code, return_code=code)
+
+    def on_line_gone(self, _: LineGone) -> None:
+        """The terminal hung up."""
+        self._leave_at_once(leaving.exit_code(1))
+
+    def _fatal_error(self) -> None:
+        """In place of a traceback over the screen: keep the fault for the entry point, which says one sentence."""
+        self.fault = self._exception
+        self._close_messages_no_wait()

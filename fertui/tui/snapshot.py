@@ -1,0 +1,66 @@
+"""What the screen shows: one frozen snapshot, replaced whole when something came or was chosen."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
+from typing import Any
+
+from fertui.tui.desk import Answer
+
+UNITS = ("mmol/L", "meq/L", "mg/L")
+
+
+@dataclass(frozen=True, slots=True)
+class Ask:
+    """A use case of the workbench with its arguments; what an answer is filed under."""
+
+    use_case: str
+    loop: str | None = None
+    options: tuple[tuple[str, Any], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Snapshot:
+    """Answers so far, the loop and unit chosen, who is at the keyboard, what is still being worked out."""
+
+    loops: tuple[str, ...] = ()
+    loop: str = ""
+    site: Any = None
+    unit: str = "mmol/L"
+    initials: str = ""
+    answers: Mapping[Ask, Answer] = field(default_factory=dict)
+    stale: frozenset[Ask] = frozenset()
+    waiting: tuple[str, ...] = ()
+
+    def get(self, ask: Ask) -> Any:
+        """The value of an answer, or None while there is none."""
+        answer = self.answers.get(ask)
+        return None if answer is None else answer.value
+
+    def trouble(self, ask: Ask) -> str:
+        """Why an answer could not be had, or ''."""
+        answer = self.answers.get(ask)
+        return "" if answer is None else answer.trouble
+
+    def lacks(self, ask: Ask) -> bool:
+        """Whether this has to be worked out: never asked, or the logbook has changed since."""
+        return ask not in self.answers or ask in self.stale
+
+    def with_answer(self, ask: Ask, answer: Answer) -> Snapshot:
+        """The snapshot with one more answer."""
+        return replace(self, answers={**self.answers, ask: answer}, stale=self.stale - {ask})
+
+    def outdated(self) -> Snapshot:
+        """The snapshot after the logbook changed: answers stay on screen until better ones come."""
+        return replace(self, stale=frozenset(self.answers))
+
+    def next_unit(self) -> Snapshot:
+        """The same in the next unit."""
+        return replace(self, unit=UNITS[(UNITS.index(self.unit) + 1) % len(UNITS)])
+
+    def next_loop(self, step: int) -> Snapshot:
+        """The same of another loop."""
+        if len(self.loops) < 2:
+            return self
+        return replace(self, loop=self.loops[(self.loops.index(self.loop) + step) % len(self.loops)])
