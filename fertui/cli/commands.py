@@ -28,9 +28,9 @@ def run(options: Options) -> int:
 def opened(options: Options) -> int:
     """``open``: the terminal interface."""
     bench = open_site(options.site)
-    from fertui.tui.app import run as run_terminal
-
-    return run_terminal(bench.folder, at=_time(bench, options.at))
+    if options.open_terminal is None:
+        raise Refusal("The terminal interface is not part of this installation; use the plain commands.")
+    return int(options.open_terminal(bench.folder, _time(bench, options.at)))
 
 
 def demo(options: Options) -> int:
@@ -40,7 +40,7 @@ def demo(options: Options) -> int:
     folder = build_demo(None if options.into is None else Path(options.into))
     if not options.text:
         print(f"The demo site is in {folder}", file=sys.stderr)
-        return opened(Options(site=str(folder), at=None))
+        return opened(Options(site=str(folder), at=None, open_terminal=options.open_terminal))
     from fertui.cli.views.demo import text
 
     print(text(open_site(folder)))
@@ -121,7 +121,8 @@ def export(options: Options) -> int:
 
 def backup(options: Options) -> int:
     """``backup``: the whole book, verbatim."""
-    print(open_site(options.site).backup(Path(options.file)))
+    count = open_site(options.site).backup(Path(options.file))
+    print(f"{options.file}: {count} entries")
     return FINE
 
 
@@ -295,8 +296,8 @@ def site(options: Options) -> int:
     from fertui.cli.views import as_json
     from fertui.cli.views.tables import aims_text
 
-    bench, view = _reading(options)
-    rows = bench.site_rows(view["loop"])
+    bench, _ = _reading(options)
+    rows = bench.site_rows()
     return _show(options, lambda: {"schema": "fertui.site/1", "rows": as_json.plain(rows)}, lambda: aims_text(rows))
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 import sys
 import traceback
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from datetime import datetime
 from pathlib import Path
 
@@ -14,11 +14,15 @@ from fertui.refusals import FileTrouble, Refusal
 FINE, NO, REFUSED, FILE_TROUBLE, INTERNAL = range(5)
 
 
-def main(arguments: Sequence[str] | None = None) -> int:
+OpenTerminal = Callable[[Path, datetime | None], int]
+"""Opens the terminal interface of a site folder as of a time; returns its exit code."""
+
+
+def run_command(arguments: Sequence[str] | None = None, open_terminal: OpenTerminal | None = None) -> int:
     """Run one command; returns its exit code. stdout is data, stderr is talk."""
     words = list(sys.argv[1:] if arguments is None else arguments)
     try:
-        return _run(words)
+        return _run(words, open_terminal)
     except Refusal as refusal:
         return _say(str(refusal), REFUSED)
     except FileTrouble as trouble:
@@ -34,7 +38,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return _say(f"fertui met a fault of its own. What it knows is in {_log_fault()}", INTERNAL)
 
 
-def _run(words: list[str]) -> int:
+def _run(words: list[str], open_terminal: OpenTerminal | None) -> int:
     from fertui.cli import parser
 
     tree = parser.build()
@@ -53,6 +57,7 @@ def _run(words: list[str]) -> int:
         raise Refusal("No command given. See 'fertui --help'.")
     from fertui.cli.commands import run
 
+    options.open_terminal = open_terminal
     return run(options)
 
 

@@ -64,13 +64,13 @@ def commands_of(parser: Parser) -> Mapping[str, Parser]:
     return {}
 
 
-def _add(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:  # type: ignore[type-arg]
+def _add(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:
     return commands.add_parser(
         name, help=about, description=f"  {example}\n\n{about}", formatter_class=argparse.RawDescriptionHelpFormatter
     )
 
 
-def _site_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+def _site_commands(commands: argparse._SubParsersAction) -> None:
     opened = _add(commands, "open", "open the terminal interface", "fertui open north")
     opened.add_argument("site", metavar="SITE")
     opened.add_argument("--at", metavar="TIME", help="show the site as of that time")
@@ -109,7 +109,7 @@ NEW_OPTIONS = {
 }
 
 
-def _write_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+def _write_commands(commands: argparse._SubParsersAction) -> None:
     record = _add(
         commands,
         "record",
@@ -154,7 +154,7 @@ def _write_commands(commands: argparse._SubParsersAction) -> None:  # type: igno
     restore.add_argument("dir", metavar="DIR")
 
 
-def _reading(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:  # type: ignore[type-arg]
+def _reading(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:
     parser = _add(commands, name, about, example)
     parser.add_argument("site", metavar="SITE")
     parser.add_argument("--loop", metavar="NAME", help="a loop by name (default: the first)")
@@ -170,7 +170,7 @@ def _period(parser: Parser) -> None:
     parser.add_argument("--to", dest="end", metavar="TIME", help="end of the period (default: now)")
 
 
-def _read_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+def _read_commands(commands: argparse._SubParsersAction) -> None:
     _reading(commands, "today", "state and what to look at", "fertui today north")
     _reading(commands, "analysis", "last analysis against target", "fertui analysis north")
     drift = _reading(commands, "drift", "shares, ions, EC, pH over time", "fertui drift north --days 28")
@@ -193,7 +193,7 @@ def _read_commands(commands: argparse._SubParsersAction) -> None:  # type: ignor
     plan.add_argument("--label-strength", metavar="PERCENT", help="strength read off the acid's label")
 
 
-def _paper_commands(commands: argparse._SubParsersAction) -> None:  # type: ignore[type-arg]
+def _paper_commands(commands: argparse._SubParsersAction) -> None:
     for name, about in (("stock", "stock-tank sheet"), ("acid", "acid sheet")):
         sheet = _reading(commands, name, about, f"fertui {name} north")
         sheet.add_argument("--sheet", metavar="FILE", help="write it to a file")

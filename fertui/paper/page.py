@@ -15,7 +15,7 @@ ADVICE = "fertui advises and you decide; the safety data sheet, site procedure a
 
 @dataclass(frozen=True, slots=True)
 class Page:
-    """One sheet: ``text`` to print, ``data`` for JSON, ``rows`` where it is a table for CSV (headed by the first row)."""
+    """One sheet: ``text`` to print, ``data`` for JSON, ``rows`` where it is a table for CSV."""
 
     text: str
     data: Mapping[str, Any]

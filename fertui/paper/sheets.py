@@ -64,10 +64,10 @@ def stock_page(sheet: StockSheet, loop: str) -> Page:
 
 def _card(tank: TankSheet) -> list[str]:
     letter = f", letter {tank.letter}" if tank.letter else ""
-    lines = [f"{tank.name}: {tank.content}{letter}, {tank.litres:g} L", f"  {tank.ratio}"]
+    lines = [f"{tank.name}: {tank.content}{letter}, {tank.litres:g} L", *folded(tank.ratio)]
     lines.append("  fill to two thirds with water, then dissolve one after the other:")
     for position, each in enumerate(tank.salts, start=1):
-        lines += folded(each.words, f"  {position}. ")
+        lines += folded(f"{each.salt} {each.formula}: {each.words}", f"  {position}. ")
     lines += [line for notice in tank.notices for line in folded(notice, "  - ")]
     if not tank.fits:
         lines.append("  ! does not fit: too much for this volume at its coldest")

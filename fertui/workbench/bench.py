@@ -23,7 +23,7 @@ if TYPE_CHECKING:
     from fertui.logbook.store import Logbook
     from fertui.paper import Page
     from fertui.planning.values import AcidSheet, Plan, StockSheet
-    from fertui.site.edit import SiteRow
+    from fertui.site.edit import Row as SiteRow
     from fertui.site.model import Loop, Site
     from fertui.workbench.analysis import AnalysisView
     from fertui.workbench.carrying_out import PlanItem
@@ -182,10 +182,12 @@ class Bench:
         return plan(self.estimate(loop, at, known), days=days, entries=self.entries(at, known), **wishes)
 
     def stock(self, loop: str | None = None) -> StockSheet:
-        """The stock-tank sheet of a loop's recipe."""
+        """The stock-tank sheet of the recipe a loop runs on, its target where none was logged."""
         from fertui.planning import stock_sheet
+        from fertui.workbench.carrying_out import running_recipe
 
-        return stock_sheet(self.site, self.loop(loop))
+        chosen = self.loop(loop)
+        return stock_sheet(self.site, chosen, recipe=running_recipe(self.site, chosen, self.entries()))
 
     def acid(self, loop: str | None = None) -> AcidSheet:
         """The acid sheet of a loop's make-up water."""
@@ -301,11 +303,11 @@ class Bench:
 
         return acid_cautions(self.site, acid, strength_pct)
 
-    def site_rows(self, loop: str | None = None) -> tuple[SiteRow, ...]:
-        """Targets, bands, limits and the rest of the site file, each with where it comes from."""
+    def site_rows(self) -> tuple[SiteRow, ...]:
+        """Every value of the site file by its dotted name, with where it comes from."""
         from fertui.site.edit import rows
 
-        return rows(self.site, self.loop(loop))
+        return rows(self.site)
 
     def change_site(self, key: str, text: str, by: str) -> Entry:
         """Change one value of the site file, keep the old file, and log the new one whole."""
@@ -389,11 +391,11 @@ class Bench:
 
         return export(self.book, into, self.site.timezone)
 
-    def backup(self, path: Path) -> Path:
-        """Write the whole book and the site file, verbatim."""
+    def backup(self, path: Path) -> int:
+        """Write the whole book and the site file, verbatim; returns the number of entries."""
         from fertui.logbook.backup import backup
 
-        return backup(self.folder, path)
+        return backup(self.book, path)
 
     # plans carried out
 

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 
 from fertui.logbook.entries import Entry
 from fertui.refusals import Refusal
+from fertui.site.model import Composition, Loop, Site
 
 if TYPE_CHECKING:
     from fertui.planning.values import AcidSheet, Plan, StockSheet
@@ -125,3 +126,22 @@ def check_strength(acids: Iterable[tuple[str, float]], strength_pct: float | Non
                 f"The label says {strength_pct:g} %, the plan counts on {name} of {planned:g} %. "
                 f"Correct the strength under supplies in site.toml and plan again; nothing is released."
             )
+
+
+def running_recipe(site: Site, loop: Loop, entries: Sequence[Entry]) -> Composition:
+    """The feed a loop runs on: the last recipe logged, else its target's feed."""
+    from fertui.chemistry.names import IONS, MICRONUTRIENTS
+    from fertui.site.presets import target_of
+
+    logged = [entry for entry in entries if entry.kind == "recipe" and entry.loop == loop.name]
+    if not logged:
+        return target_of(site, loop)["feed"]
+    last = logged[-1]
+    amounts = {value.name: value.number for value in last.values if value.number is not None}
+    return Composition(
+        {ion: amounts[ion] for ion in IONS if ion in amounts},
+        {name: amounts[name] for name in MICRONUTRIENTS if name in amounts},
+        amounts.get("EC"),
+        amounts.get("pH"),
+        f"recipe logged as entry {last.number}",
+    )

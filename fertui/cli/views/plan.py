@@ -55,14 +55,14 @@ def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
     if recipe.sheet is not None:
         for tank in recipe.sheet.tanks:
             lines += ["", f"{tank.name} ({tank.content}), {tank.litres:.0f} L, 1:{tank.dilution:.0f}"]
-            lines += [f"  {each.words}" for each in tank.salts]
+            lines += [f"  {each.salt}: {each.words}" for each in tank.salts]
     return lines
 
 
 def _steps(plan: Plan, timezone: str) -> list[str]:
     if not plan.steps:
         return []
-    rows = [("when", "salt", "", "kg", "into")]
+    rows: list[tuple[str, ...]] = [("when", "salt", "", "kg", "into")]
     rows += [
         (words.local(each.at, timezone), each.salt, each.formula, f"{each.kg:g}", each.target.removeprefix("tank:"))
         for each in plan.steps

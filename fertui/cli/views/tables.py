@@ -10,7 +10,7 @@ from fertui.logbook.entries import Entry, Value
 
 if TYPE_CHECKING:
     from fertui.logbook.importing import ImportResult
-    from fertui.site.edit import SiteRow
+    from fertui.site.edit import Row
     from fertui.workbench.checks import CheckRow
     from fertui.workbench.shelf import StockRow, SupplyRow
 
@@ -76,10 +76,10 @@ def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> s
     return "\n".join([*lines, "", *words.table(stock, right=(2, 3, 4))])
 
 
-def aims_text(rows: Sequence[SiteRow]) -> str:
+def aims_text(rows: Sequence[Row]) -> str:
     """Targets, bands, limits and settings with where each comes from."""
     return "\n".join(
-        words.table([("key", "value", "unit", "from"), *((r.key, r.text, r.unit, r.source) for r in rows)])
+        words.table([("key", "value", "from"), *((row.key, row.text, row.source) for row in rows)])
     )
 
 
