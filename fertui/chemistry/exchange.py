@@ -167,7 +167,12 @@ def _share_out(total: Array, water: Array, capacity: Array, k: Array) -> tuple[A
 def _solve(
     total: Array, charge_total: Array, water: Array, capacity: Array, free: Array, k: Array
 ) -> tuple[Array, Array]:
-    """Bracketed Newton for u = log s on log(charge on sites / charge in water) = log(capacity / free)."""
+    """Bracketed Newton for u = log s on log(charge on sites / charge in water) = log(capacity / free).
+
+    At ``turning`` a cation alone would split as the whole must, so the answer lies between the outermost two. Far from
+    it Newton can swing between two ends that hardly move; a step that leaves the bracket or is not half the one before
+    is therefore replaced by bisection.
+    """
     log_affinity = np.log(capacity / water * k / _CHARGE_COLUMN)
     goal = np.log(capacity / free)
     turning = (goal - log_affinity) / _CHARGE_COLUMN
@@ -183,11 +188,12 @@ def _solve(
         np.copyto(low, u, where=excess < 0.0)
         np.copyto(high, u, where=excess > 0.0)
         step = -excess * charge_held * charge_free / (slope * (charge_held + charge_free))
-        wild = (u + step < low) | (u + step > high) | (np.abs(step) > 0.5 * moved + _STEP_TOLERANCE)
+        unsettled = np.abs(step) > _STEP_TOLERANCE
+        wild = unsettled & ((u + step < low) | (u + step > high) | (np.abs(step) > 0.5 * moved))
         if wild.any():
             step[wild] = (0.5 * (low + high) - u)[wild]
         u, moved = u + step, np.abs(step)
-        if moved.max(initial=0.0) < _STEP_TOLERANCE:
+        if not unsettled.any():
             break
     held, in_water = _sigmoid(log_affinity, u)
     return total * in_water / water, charge_total * held

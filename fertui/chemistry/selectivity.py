@@ -80,7 +80,7 @@ def fit(
     untold = [CATIONS[each] for row, each in enumerate(_OTHERS) if information[row, row] <= 0.0]
     if untold:
         raise ValueError(f"no pair tells about {', '.join(untold)}; give a prior or a pair where it was measured")
-    covariance: Array = np.linalg.inv(information)
+    covariance = np.asarray(np.linalg.inv(information), dtype=np.float64)
     residuals = np.where(told[:, _OTHERS], seen - covariance @ weighted, np.nan)
     scatter = _scatter(residuals, error)
     return _fitted(covariance @ weighted, covariance * max(1.0, scatter) ** 2, residuals, scatter)
