@@ -12,7 +12,6 @@ from fertui.loop.values import (
     Drive,
     Event,
     Hold,
-    LinearEC,
     Medium,
     State,
     hold_ec,
@@ -22,7 +21,7 @@ from fertui.loop.values import (
 
 __all__ = [
     "CAUSE", "CAUSES", "INERT", "ROOT", "STORE", "UPTAKE_TABLE", "WATERS",
-    "Account", "Booking", "Circuit", "Discharge", "Drive", "Event", "Fluxes", "Hold", "Kinetics", "LinearEC", "Medium",
+    "Account", "Booking", "Circuit", "Discharge", "Drive", "Event", "Fluxes", "Hold", "Kinetics", "Medium",
     "Parameter", "Perturb", "Plants", "State", "Timeline", "Trajectory",
     "advance", "apply", "corrected", "discharged", "feed_composition", "hold_ec", "hold_ph", "no_fluxes", "simulate",
     "start", "temperature_notice", "uptake",

@@ -7,15 +7,16 @@ as the error it leaves allows.
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass, replace
 
 import numpy as np
 
 from fertui.chemistry.ions import CATION_CHARGE, CHARGE, INDEX, Array
 from fertui.loop.exchanger import capacity_of, equilibrated, intensity, nudged, retained
-from fertui.loop.transfer import two_volumes
+from fertui.loop.transfer import Pair, Response, Transfer, half_implicit, transfer
 from fertui.loop.uptake import Plants, conductance
-from fertui.loop.values import NOTHING, ROOT, STORE, Circuit, Drive, Hold, Medium, State
+from fertui.loop.values import ROOT, STORE, Circuit, Drive, Hold, Medium, State
 from fertui.loop.water import Flows, flows
 
 CAUSES = ("make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained")
@@ -24,7 +25,7 @@ CAUSE = {cause: position for position, cause in enumerate(CAUSES)}
 WATERS = ("make_up", "feed", "irrigation", "crop", "drain", "bleed")
 """Order of the water axis of ``Fluxes.litres``."""
 
-TOLERANCE = 0.04
+TOLERANCE = 0.01
 """Change of the losses over half a step, as a fraction of the amount they act on, that a step may have."""
 LONGEST_STEP_D = 1.0
 SHORTEST_STEP_D = 1.0 / 256.0
@@ -89,17 +90,23 @@ def advance(
 
 @dataclass(frozen=True, slots=True)
 class _Rates:
-    """Linear coefficients of a step; see ``transfer``. ``entering`` by cause (M, 10) [mmol/d], ``k`` [L/d]."""
+    """Linear coefficients of a step; see ``transfer``. ``entering`` by cause (M, 10) [mmol/d].
+
+    ``lost_store``, ``lost_root``, ``nitrified``: rates [1/d] at which amounts leave the loop or turn into nitrate;
+    ``charge_foreseen`` (M,): charge taken up [meq/d], already among the sources.
+    """
 
     p: Array
     q: Array
     r: Array
     w: Array
-    k: Array
     s0: Array
     s1: Array
     entering: dict[str, Array]
-    share: Array
+    lost_store: Array
+    lost_root: Array
+    nitrified: Array
+    charge_foreseen: Array
 
 
 def _step(
@@ -109,34 +116,34 @@ def _step(
 
     ``when``: place of its middle in the stretch of the drive, 0-1.
     """
-    water_flows = flows(circuit, drive, state.water_l, days, _store_share(circuit, drive, state.concentration(STORE)))
-    middle_l = np.maximum(state.water_l + 0.5 * days * water_flows.change, _LITTLE_L)
-    x0, x1 = state.ions_mmol[:, STORE], _with_sites(state)
-    first = _Retardation.of(medium, state.concentration(ROOT), middle_l[:, ROOT])
-    feed = drive.feed_at(when)
-    early = _rates(
-        circuit,
-        plants,
-        drive,
-        water_flows,
-        middle_l,
-        state.concentration(STORE),
-        state.concentration(ROOT),
-        first,
-        feed,
-    )
-    y0, y1 = _implicit(early, x0, x1, 0.5 * days)
-    second = first.moved(medium, y1, middle_l[:, ROOT])
-    c0, c1 = y0 / middle_l[:, STORE, None], y1 / second.volume
-    dosed, c0, c1 = _foreseen_doses(circuit, drive, c0, c1, middle_l, 0.5 * days)
+    store, root = state.concentration(STORE), state.concentration(ROOT)
+    water = flows(circuit, drive, state.water_l, days, _store_share(circuit, drive, store))
+    middle_l = np.maximum(state.water_l + 0.5 * days * water.change, _LITTLE_L)
+    retardation = _Retardation.of(medium, root, middle_l[:, ROOT])
+    x, feed = (state.ions_mmol[:, STORE], _with_sites(state)), drive.feed_at(when)
+    early = _rates(circuit, plants, drive, water, middle_l, store, root, retardation, feed)
+    y = _half_way(circuit, drive, early, x, middle_l, 0.5 * days)
+    retardation = retardation.moved(medium, y[1], middle_l[:, ROOT])
+    store, root = y[0] / middle_l[:, STORE, None], y[1] / retardation.volume
     if circuit.premix_ec is not None:
-        water_flows = flows(circuit, drive, state.water_l, days, _store_share(circuit, drive, c0))
-    rates = _rates(circuit, plants, drive, water_flows, middle_l, c0, c1, second, feed, dosed)
-    error = _error(early, rates, y1, middle_l[:, ROOT], days)
+        water = flows(circuit, drive, state.water_l, days, _store_share(circuit, drive, store))
+    late = _rates(circuit, plants, drive, water, middle_l, store, root, retardation, feed)
+    error = _error(early, late, y[1], middle_l[:, ROOT], days)
     if error > TOLERANCE and days > SHORTEST_STEP_D:
         return max(0.1, 0.9 * np.sqrt(TOLERANCE / error))
-    end, fluxes = _closed(circuit, medium, plants, drive, state, water_flows, rates, second, middle_l, days)
+    end, fluxes = _closed(circuit, medium, drive, state, x, water, late, retardation, middle_l, days)
     return end, fluxes, min(4.0, 0.9 * np.sqrt(TOLERANCE / max(error, 1e-9)))
+
+
+def _half_way(
+    circuit: Circuit, drive: Drive, rates: _Rates, x: Pair, middle_l: Array, days: float
+) -> Pair:
+    """Amounts half a step ahead, by an implicit step, with the doses that a held tank takes meanwhile."""
+    response = half_implicit(rates.p, rates.q, rates.r, rates.w, days)
+    y = response((x[0] + days * rates.s0, x[1] + days * rates.s1))
+    for _, rate in _tank_doses(circuit, drive, y, response, middle_l):
+        y = _added(y, _dosed(circuit, response, rate))
+    return y
 
 
 @dataclass(frozen=True, slots=True)
@@ -175,26 +182,27 @@ def _with_sites(state: State) -> Array:
 
 def _rates(
     circuit: Circuit, plants: Plants, drive: Drive, water: Flows, middle_l: Array, store: Array, root: Array,
-    retardation: _Retardation, feed: Array, dosed: dict[str, Array] | None = None,
+    retardation: _Retardation, feed: Array,
 ) -> _Rates:  # fmt: skip
     """Coefficients of the linear step at given concentrations (M, 10) of store and root zone."""
     k = conductance(plants, root, water.crop, drive.light, drive.excursion_c)
     c_min = plants.kinetics.c_min
     entering = _entering(circuit, drive, water, store, feed)
-    for cause, rate in (dosed or {}).items():
-        entering[cause] = entering.get(cause, NOTHING) + rate
-    into_store = circuit.fed == STORE and circuit.layout == "shared-tank"
     sources = sum(entering.values(), np.zeros_like(root))
-    taken_charge = (k * np.maximum(root - c_min, 0.0))[:, :-1] @ CHARGE[:-1]
-    s1 = k * c_min + (0.0 if into_store else sources)
-    s1[:, _ALK] -= taken_charge
-    out = k + water.lost_root[:, None]
-    out[:, _NH4] += drive.nitrification_per_d * middle_l[:, ROOT]
-    back, volume = water.back[:, None], middle_l[:, STORE, None]
+    charge = (k * np.maximum(root - c_min, 0.0))[:, :-1] @ CHARGE[:-1]
+    into_tank = circuit.layout == "shared-tank" and not circuit.mixed
+    s1 = k * c_min if into_tank else k * c_min + sources
+    s1[:, _ALK] -= charge
+    per_store, per_root = 1.0 / middle_l[:, STORE, None], 1.0 / retardation.volume
+    to_root, back, lost_root = (flow[:, None] for flow in (water.to_root, water.back, water.lost_root))
+    nitrified = drive.nitrification_per_d * middle_l[:, ROOT] * per_root[:, _NH4]
+    w = (back + lost_root + k) * per_root
+    w[:, _NH4] += nitrified
     return _Rates(
-        p=(water.to_root + water.lost_store)[:, None] / volume, q=back / retardation.volume,
-        r=water.to_root[:, None] / volume, w=(back + out) / retardation.volume, k=k,
-        s0=sources if into_store else np.zeros_like(root), s1=s1, entering=entering, share=water.to_root,
+        p=(to_root + water.lost_store[:, None]) * per_store, q=back * per_root, r=to_root * per_store, w=w,
+        s0=sources if into_tank else np.zeros_like(root), s1=s1, entering=entering,
+        lost_store=water.lost_store[:, None] * per_store, lost_root=lost_root * per_root, nitrified=nitrified,
+        charge_foreseen=charge,
     )  # fmt: skip
 
 
@@ -222,18 +230,31 @@ def _doses(holds: tuple[Hold, ...], mmol_l: Array) -> dict[str, Array]:
     return doses
 
 
-def _foreseen_doses(
-    circuit: Circuit, drive: Drive, store: Array, root: Array, middle_l: Array, days: float
-) -> tuple[dict[str, Array], Array, Array]:
-    """Rates [mmol/d] at which a held tank is dosed, from what it lacks half a step ahead; and the corrected middle."""
-    if not drive.holds or circuit.layout != "shared-tank":
-        return {}, store, root
-    vessel = root if circuit.mixed else store
-    litres = middle_l[:, circuit.fed, None]
-    doses = _doses(drive.holds, vessel)
-    corrected = vessel + sum(doses.values())
-    rates = {cause: per_litre * litres / days for cause, per_litre in doses.items()}
-    return (rates, store, corrected) if circuit.mixed else (rates, corrected, root)
+def _tank_doses(
+    circuit: Circuit, drive: Drive, end: Pair, response: Response, water_l: Array
+) -> Iterator[tuple[str, Array]]:
+    """Cause and steady rate (M, 10) of each hold that brings a tank to its set point at the end of a stretch.
+
+    ``end``: amounts there without doses; ``response`` of the amounts at the end to a rate.
+    """
+    if circuit.layout != "shared-tank":
+        return
+    own = response.f11 if circuit.mixed else response.f00
+    held, litres = end[circuit.fed], water_l[:, circuit.fed]
+    for hold in drive.holds:
+        lacking = hold.lacking(held, litres)
+        rate = (lacking / ((own * hold.proportions) @ hold.slope))[:, None] * hold.proportions
+        held = held + own * rate
+        yield hold.cause, rate
+
+
+def _dosed(circuit: Circuit, response: Response, rate: Array) -> Pair:
+    """What a rate (M, 10) into the tank makes of both volumes at the end of a stretch."""
+    return (response.f01 * rate, response.f11 * rate) if circuit.mixed else (response.f00 * rate, response.f10 * rate)
+
+
+def _added(y: Pair, more: Pair) -> Pair:
+    return y[0] + more[0], y[1] + more[1]
 
 
 def _hold_vessel(circuit: Circuit, drive: Drive, state: State, total: Fluxes) -> State:
@@ -262,62 +283,58 @@ def _store_share(circuit: Circuit, drive: Drive, store: Array) -> Array | None:
     return np.where(apart > 0, np.clip(share, 0.0, 1.0), 1.0)
 
 
-def _implicit(rates: _Rates, x0: Array, x1: Array, days: float) -> tuple[Array, Array]:
-    """Implicit Euler step of both volumes: first order, positive, cheap."""
-    a, b = 1.0 + days * rates.p, 1.0 + days * rates.w
-    from0, from1 = x0 + days * rates.s0, x1 + days * rates.s1
-    determinant = a * b - days * days * rates.q * rates.r
-    return (
-        (from0 * b + days * rates.q * from1) / determinant,
-        (from1 * a + days * rates.r * from0) / determinant,
-    )
-
-
 def _error(early: _Rates, late: _Rates, amounts: Array, water_l: Array, days: float) -> float:
     """Relative change that the change of loss rates over half a step makes; root mean square over members."""
-    changed = days * np.abs(late.w - early.w) * amounts / (np.abs(amounts) + _FLOOR_MMOL_L * water_l[:, None])
+    changed = np.abs(late.w - early.w) * amounts / (1.0 / days + late.w) / (np.abs(amounts) + _FLOOR_MMOL_L * water_l[:, None])
     worst = changed[:, :-1].max(axis=1)
     return float(np.sqrt(np.mean(worst * worst)))
 
 
 def _closed(
-    circuit: Circuit, medium: Medium, plants: Plants, drive: Drive, state: State, water: Flows, rates: _Rates,
+    circuit: Circuit, medium: Medium, drive: Drive, state: State, x: Pair, water: Flows, rates: _Rates,
     retardation: _Retardation, middle_l: Array, days: float,
 ) -> tuple[State, Fluxes]:  # fmt: skip
     """Exact linear step, exchange, and every flux by its cause."""
-    x0, x1 = state.ions_mmol[:, STORE], _with_sites(state)
-    end0, end1, stay0, stay1 = two_volumes(
-        x0, x1, rates.p, rates.q, rates.r, rates.w, rates.s0, rates.s1, days
-    )  # fmt: skip
-    in_water = stay1 / retardation.volume
     fluxes = no_fluxes(state.members)
     book = fluxes.by_cause
     for cause, rate in rates.entering.items():
         book[:, CAUSE[cause]] = rate * days
-    entered = book.sum(axis=1)
-    from_store = water.lost_store[:, None] * stay0 / middle_l[:, STORE, None]
-    from_root = water.lost_root[:, None] * in_water
-    taken = (x0 - end0) + (x1 - end1) + entered - from_store - from_root
-    taken[:, _ALK] = 0.0
-    _nitrify(drive, in_water * middle_l[:, ROOT, None], end1, taken)
-    taken[:, _ALK] += taken[:, :-1] @ CHARGE[:-1]
-    end1[:, _ALK] = x1[:, _ALK] + (x0 - end0)[:, _ALK] + (entered - from_store - from_root - taken)[:, _ALK]
-    book[:, CAUSE["uptake"]] = -taken
+    water_l = np.maximum(state.water_l + days * water.change, 0.0)
+    move = transfer(rates.p, rates.q, rates.r, rates.w, days)
+    end, stay = move.end(x, (rates.s0, rates.s1)), move.integral(x, (rates.s0, rates.s1))
+    for cause, rate in _tank_doses(circuit, drive, end, move.gained, water_l):
+        book[:, CAUSE[cause]] += rate * days
+        end, stay = _added(end, _dosed(circuit, move.gained, rate)), _added(stay, _dosed(circuit, move.ramp, rate))
+    _nitrify(drive, move, rates, end, stay)
+    _balance_charge(move, rates, x, end, stay, book)
+    from_store = rates.lost_store * stay[0]
+    from_root = rates.lost_root * stay[1]
+    book[:, CAUSE["uptake"]] = (end[0] - x[0]) + (end[1] - x[1]) - book.sum(axis=1) + from_store + from_root
     book[:, CAUSE["bleed"]] = -from_store
     book[:, CAUSE["drain" if circuit.layout == "known-feed" else "bleed"]] -= from_root
-    water_l = np.maximum(state.water_l + days * water.change, 0.0)
-    held = _exchange(medium, state, end1, water_l[:, ROOT], book)
-    ended = State(water_l, np.stack([end0, end1], axis=1), held)
+    held = _exchange(medium, state, end[1], water_l[:, ROOT], book)
     _book_water(water, days, from_store + from_root, fluxes)
-    return _hold_vessel(circuit, drive, ended, fluxes), fluxes
+    return State(water_l, np.stack(end, axis=1), held), fluxes
 
 
-def _nitrify(drive: Drive, litre_days: Array, end1: Array, taken: Array) -> None:
-    """Ammonium that nitrified comes back as nitrate; it stands in the account with what was taken up."""
+def _nitrify(drive: Drive, move: Transfer, rates: _Rates, end: Pair, stay: Pair) -> None:
+    """Ammonium that nitrified comes back as nitrate; in the account it stands with what was taken up."""
     if drive.nitrification_per_d:
-        nitrified = drive.nitrification_per_d * litre_days[:, _NH4]
-        end1[:, _NO3] += nitrified
-        taken[:, _NO3] -= nitrified
+        _return(move, end, stay, _NO3, rates.nitrified * stay[1][:, _NH4] / move.days)
+
+
+def _balance_charge(move: Transfer, rates: _Rates, x: Pair, end: Pair, stay: Pair, book: Array) -> None:
+    """Set alkalinity right: the charge that was taken up instead of the one foreseen when the step began."""
+    lost = rates.lost_store * stay[0] + rates.lost_root * stay[1]
+    taken = (x[0] - end[0]) + (x[1] - end[1]) + book.sum(axis=1) - lost
+    _return(move, end, stay, _ALK, rates.charge_foreseen - taken[:, :-1] @ CHARGE[:-1] / move.days)
+
+
+def _return(move: Transfer, end: Pair, stay: Pair, ion: int, rate: Array) -> None:
+    """A steady source (M,) [mmol/d] of one ion in the root zone, added to a step already taken; in place."""
+    for amounts, response in ((end, move.gained), (stay, move.ramp)):
+        amounts[0][:, ion] += response.f01[:, ion] * rate
+        amounts[1][:, ion] += response.f11[:, ion] * rate
 
 
 def _exchange(medium: Medium, state: State, end1: Array, root_l: Array, book: Array) -> Array:

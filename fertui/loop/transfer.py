@@ -1,13 +1,15 @@
-"""Exact solution of the linear exchange of water between two volumes, for every member and ion at once.
+"""Exact solution of two volumes that exchange water and lose some of it, for every member and ion at once.
 
     x0' = -p x0 + q x1 + s0          x1' = r x0 - w x1 + s1
 
 x0, x1 [mmol] in store and root zone; rates p >= r, w >= q [1/d]; sources s [mmol/d]. The matrix has two real
-eigenvalues, so every function f of it is f(A) = a I + d A with a divided difference d: no iteration, and with
-non-negative rates and sources no amount can become negative.
+eigenvalues, so any function of it is a combination of its values at both: no iteration, and with non-negative rates
+and sources no amount can become negative.
 """
 
 from __future__ import annotations
+
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -15,52 +17,93 @@ from fertui.chemistry.ions import Array
 
 _SMALL = 0.02
 _TWIN = 1e-7
+_TINY = 1e-30
+
+Pair = tuple[Array, Array]
 
 
-def two_volumes(
-    x0: Array, x1: Array, p: Array, q: Array, r: Array, w: Array, s0: Array, s1: Array, days: float
-) -> tuple[Array, Array, Array, Array]:
-    """Amounts after ``days`` and the time integrals of the amounts.
+@dataclass(frozen=True, slots=True)
+class Response:
+    """A function of the matrix: what store and root zone gain (first index) from store and root zone (second)."""
 
-    All arrays broadcast to (M, ions): amounts [mmol], rates [1/d], sources [mmol/d].
-    Returns (x0, x1) at the end [mmol] and (integral x0, integral x1) [mmol d].
+    f00: Array
+    f01: Array
+    f10: Array
+    f11: Array
 
-    >>> one, zero = np.ones((1, 1)), np.zeros((1, 1))
-    >>> end0, end1, _, _ = two_volumes(8 * one, zero, one, one, one, one, zero, zero, 50.0)
-    >>> round(float(end0[0, 0]), 6), round(float(end1[0, 0]), 6)
+    def __call__(self, x: Pair) -> Pair:
+        return self.f00 * x[0] + self.f01 * x[1], self.f10 * x[0] + self.f11 * x[1]
+
+
+@dataclass(frozen=True, slots=True)
+class Transfer:
+    """A stretch of time: ``kept`` of amounts at its start [-], ``gained`` per source rate [d], ``ramp`` [d2].
+
+    Amounts at the end are kept(x) + gained(s); their integrals over the stretch [mmol d] gained(x) + ramp(s).
+    """
+
+    days: float
+    kept: Response
+    gained: Response
+    ramp: Response
+
+    def end(self, x: Pair, s: Pair) -> Pair:
+        """Amounts [mmol] at the end of the stretch."""
+        return _sum(self.kept(x), self.gained(s))
+
+    def integral(self, x: Pair, s: Pair) -> Pair:
+        """Integrals of the amounts over the stretch [mmol d]."""
+        return _sum(self.gained(x), self.ramp(s))
+
+
+def transfer(p: Array, q: Array, r: Array, w: Array, days: float) -> Transfer:
+    """Exact transfer over ``days`` [d] for rates [1/d] that broadcast to (M, ions).
+
+    >>> one = np.ones((1, 1))
+    >>> end = transfer(one, one, one, one, 50.0).end((8 * one, 0 * one), (0 * one, 0 * one))
+    >>> round(float(end[0][0, 0]), 6), round(float(end[1][0, 0]), 6)
     (4.0, 4.0)
     """
     half_sum, half_difference = 0.5 * (p + w), 0.5 * (p - w)
-    root = np.maximum(np.sqrt(half_difference * half_difference + q * r), _TWIN * half_sum + 1e-30)
+    root = np.maximum(np.sqrt(half_difference * half_difference + q * r), _TWIN * half_sum + _TINY)
     fast = -(half_sum + root) * days
-    slow = -(p * w - q * r) / np.maximum(half_sum + root, 1e-30) * days
-    apart = 1.0 / (2.0 * root)
-    lean0, lean1 = root - half_difference, root + half_difference
-    grow_slow, grow_fast = np.exp(slow), np.exp(fast)
+    slow = (q * r - p * w) / (half_sum + root) * days
+    weight = 0.5 - half_difference * (0.5 / root)
+    twist = (0.5 / root, q, r)
+    kept = _response(np.exp(slow), np.exp(fast), weight, *twist)
     mean_slow, mean_fast = _phi1(slow), _phi1(fast)
-    ramp_slow, ramp_fast = _phi2(slow, mean_slow), _phi2(fast, mean_fast)
+    gained = _response(days * mean_slow, days * mean_fast, weight, *twist)
+    square = days * days
+    ramp = _response(square * _phi2(slow, mean_slow), square * _phi2(fast, mean_fast), weight, *twist)
+    return Transfer(days, kept, gained, ramp)
 
-    def apply(f_slow: Array, f_fast: Array, y0: Array, y1: Array) -> tuple[Array, Array]:
-        d = (f_slow - f_fast) * apart
-        f00 = (f_slow * lean0 + f_fast * lean1) * apart
-        f11 = (f_slow * lean1 + f_fast * lean0) * apart
-        return f00 * y0 + d * q * y1, d * r * y0 + f11 * y1
 
-    end0, end1 = apply(grow_slow, grow_fast, x0, x1)
-    from0, from1 = apply(mean_slow, mean_fast, s0 * days, s1 * days)
-    stay0, stay1 = apply(mean_slow * days, mean_fast * days, x0, x1)
-    come0, come1 = apply(ramp_slow * days, ramp_fast * days, s0 * days, s1 * days)
-    return end0 + from0, end1 + from1, stay0 + come0, stay1 + come1
+def half_implicit(p: Array, q: Array, r: Array, w: Array, days: float) -> Response:
+    """Implicit Euler step: first order, positive, cheap; end = response(x + days s)."""
+    a, b = 1.0 + days * p, 1.0 + days * w
+    scale = 1.0 / (a * b - days * days * q * r)
+    return Response(b * scale, days * q * scale, days * r * scale, a * scale)
+
+
+def _response(at_slow: Array, at_fast: Array, weight: Array, apart: Array, q: Array, r: Array) -> Response:
+    between = at_slow - at_fast
+    f00 = at_fast + between * weight
+    cross = between * apart
+    return Response(f00, cross * q, cross * r, at_slow + at_fast - f00)
+
+
+def _sum(a: Pair, b: Pair) -> Pair:
+    return a[0] + b[0], a[1] + b[1]
 
 
 def _phi1(z: Array) -> Array:
-    """(e^z - 1) / z, 1 at 0."""
-    safe = np.where(z == 0.0, 1.0, z)
-    return np.where(z == 0.0, 1.0, np.expm1(safe) / safe)
+    """(e^z - 1) / z for z <= 0, 1 at 0."""
+    away = np.minimum(z, -_TINY)
+    return np.expm1(away) / away
 
 
 def _phi2(z: Array, phi1: Array) -> Array:
     """(phi1(z) - 1) / z, by its series near 0 where the difference would cancel."""
-    near = np.abs(z) < _SMALL
+    near = z > -_SMALL
     series = 0.5 + z * (1 / 6 + z * (1 / 24 + z * (1 / 120 + z / 720)))
     return np.where(near, series, (phi1 - 1.0) / np.where(near, 1.0, z))
