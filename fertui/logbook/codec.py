@@ -11,6 +11,7 @@ from typing import Any
 
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import LogbookError
+from fertui.logbook.kinds import KINDS
 
 ENTRY_FIELDS = tuple(field.name for field in fields(Entry))
 VALUE_FIELDS = tuple(field.name for field in fields(Value))
@@ -32,8 +33,11 @@ def moment_text(moment: datetime) -> str:
 
 
 def moment(text: str) -> datetime:
-    """The aware UTC time of a text written by ``moment_text``."""
-    return datetime.fromisoformat(text)
+    """The aware UTC time of a text written by ``moment_text``; raises ``ValueError`` for one without a zone."""
+    read = datetime.fromisoformat(text)
+    if read.tzinfo is None:
+        raise ValueError(f"the time {text!r} has no zone")
+    return read if read.tzinfo is UTC else read.astimezone(UTC)
 
 
 def line_of(entry: Entry) -> str:
@@ -60,9 +64,11 @@ def entry_of(plain: Mapping[str, Any]) -> Entry:
         raise LogbookError(f"an entry has unknown keys {sorted(unknown)} and lacks {sorted(missing)}.")
     try:
         values = tuple(Value(**dict(zip(VALUE_FIELDS, value, strict=True))) for value in plain["values"])
-        times = {name: datetime.fromisoformat(plain[name]).astimezone(UTC) for name in ("at", "entered")}
+        times = {name: moment(plain[name]) for name in ("at", "entered")}
     except (TypeError, ValueError, OverflowError) as error:
         raise LogbookError(f"entry {plain['number']}: {error}.") from error
+    if plain["kind"] not in KINDS:
+        raise LogbookError(f"the kind {plain['kind']!r} is not known; was it written by a newer fertui?")
     entry = Entry(**{**plain, **times, "values": values})
     check_storable(entry)
     return entry

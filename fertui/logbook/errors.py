@@ -11,3 +11,7 @@ class LogbookError(Refusal):
 
 class StoreError(FileTrouble):
     """The logbook file cannot be read or written; says which file, why and what to do. Nothing was half written."""
+
+
+class DamageError(StoreError):
+    """The logbook file is damaged or cut off; what can still be read of it can be saved."""

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Iterable
 from pathlib import Path
 
-from fertui.logbook.errors import StoreError
+from fertui.logbook.errors import DamageError, StoreError
 
 FILE_MODE = 0o660
 FOLDER_MODE = 0o770
@@ -38,7 +39,7 @@ def check_whole(path: Path) -> None:
     except OSError as error:
         raise StoreError(f"{path} cannot be read: {error.strerror}.") from error
     if not head:
-        raise StoreError(f"{path} is empty (0 bytes); restore a backup with `fertui restore`.")
+        raise DamageError(f"{path} is empty (0 bytes); restore a backup with `fertui restore`.")
     if len(head) < 100 or not head.startswith(_MAGIC):
         raise StoreError(
             f"{path} is not a logbook, or its beginning is damaged; restore a backup with `fertui restore`."
@@ -47,9 +48,9 @@ def check_whole(path: Path) -> None:
     expected = int.from_bytes(head[28:32], "big") * (65536 if page == 1 else page)
     log = path.with_name(path.name + "-wal")
     if size < expected and not (log.exists() and log.stat().st_size):
-        raise StoreError(
-            f"{path} is cut off: {size:,} of {expected:,} bytes are there. Keep a copy; `fertui backup` saves what can "
-            "still be read, `fertui restore` makes a new logbook of it."
+        raise DamageError(
+            f"{path} is cut off: {size:,} of {expected:,} bytes are there. Keep a copy; `fertui backup` saves "
+            "what can still be read, `fertui restore` makes a new logbook of it."
         )
 
 
@@ -82,8 +83,13 @@ def make_private_folder(path: Path) -> None:
         raise StoreError(f"the folder {path} cannot be made: {error.strerror}.") from error
 
 
-def write_whole(path: Path, text: str) -> None:
-    """Write a text file so that a power cut leaves the old one or the new one, never half of it.
+def quoted(path: Path) -> str:
+    """The path as it stands in an SQLite address."""
+    return os.fspath(path.absolute()).replace("%", "%25").replace("?", "%3f").replace("#", "%23")
+
+
+def write_whole(path: Path, text: str | Iterable[str]) -> None:
+    """Write a text file, whole or in parts given; a power cut leaves the old one or the new one, never half of it.
 
     Raises ``StoreError`` when it cannot be written or a link stands in its place.
     """
@@ -95,7 +101,7 @@ def write_whole(path: Path, text: str) -> None:
         descriptor, name = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
         try:
             with os.fdopen(descriptor, "w", encoding="utf-8", newline="") as file:
-                file.write(text)
+                file.writelines((text,) if isinstance(text, str) else text)
                 file.flush()
                 os.fsync(file.fileno())
             os.chmod(name, FILE_MODE & ~_umask())

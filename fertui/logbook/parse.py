@@ -29,17 +29,21 @@ _BLEED_FROM = {"shared-tank": "tank", "drain-blend": "drain_store", "known-feed"
 _MAY_LIE_AHEAD = ("plan",)
 
 
-def entry_from_text(kind: str, texts: Mapping[str, str], site: Site, loop: Loop | str | None, now: datetime) -> Entry:
+def entry_from_text(
+    kind: str, texts: Mapping[str, str], site: Site, loop: Loop | str | None, now: datetime, *, whole: bool = True
+) -> Entry:
     """The entry that ``name=value`` texts describe; nothing is written.
 
     Values without unit are in the canonical unit of their field; ions may be named by form (``NO3-N``, ``P2O5``).
     ``at`` defaults to ``now`` (aware); empty texts count as not given. ``loop``: a loop, its name, or None: the first.
+    ``whole`` False: a half-filled form, to be asked about and not to be written; nothing is missing then.
     Raises ``LogbookError`` or another ``Refusal``, ready to be shown.
     """
     kind_named(kind)
     chosen = _loop(loop, site)
     blank = Entry(kind, "" if kind in _SITE_WIDE else chosen.name, now.astimezone(UTC), now.astimezone(UTC), by="")
-    return _written(blank, texts, site, chosen, now)
+    entry = _with_texts(blank, texts, site, chosen, now)
+    return _complete(entry, site, chosen) if whole else entry
 
 
 def corrected(old: Entry, changes: Mapping[str, str], site: Site, now: datetime, *, why: str, by: str) -> Entry:
@@ -56,24 +60,17 @@ def corrected(old: Entry, changes: Mapping[str, str], site: Site, now: datetime,
     chosen = site.loop(old.loop) if old.loop in {each.name for each in site.loops} else site.loops[0]
     entered = now.astimezone(UTC)
     base = replace(old, number=None, entered=entered, by="", supersedes=old.number, why=why.strip())
-    return _written(base, {"by": by, **changes}, site, chosen, now)
+    return _complete(_with_texts(base, {"by": by, **changes}, site, chosen, now), site, chosen)
 
 
-def _written(base: Entry, texts: Mapping[str, str], site: Site, loop: Loop, now: datetime) -> Entry:
+def _with_texts(base: Entry, texts: Mapping[str, str], site: Site, loop: Loop, now: datetime) -> Entry:
     kind = KINDS[base.kind]
     given = {name.strip(): text.strip() for name, text in texts.items()}
     about = {name: given.pop(name) for name in WRITTEN_ABOUT_EVERY_ENTRY if name in given}
     if kind.name == "note" and about.get("note") and "text" not in given:
         given["text"] = about.pop("note")
     values = _merged(base.values, _values(kind, given, site, loop, now))
-    entry = replace(base, values=_complete(kind, values, site, loop), **_about(kind, base, about, site, loop, now))
-    entry = at_25(entry, site)
-    check_method(entry, loop)
-    until = entry.number_of("until")
-    if until is not None and until <= entry.at.timestamp():
-        raise LogbookError(f"until = {entry.text_of('until')!r} is not after the start of what is planned.")
-    if not entry.by:
-        raise LogbookError("by is missing: who made this entry? Give by=INITIALS or set FERTUI_OPERATOR.")
+    entry = at_25(replace(base, values=values, **_about(kind, base, about, site, loop, now)), site)
     check_storable(entry)
     return entry
 
@@ -129,20 +126,33 @@ def _text(value: Value | None) -> str:
     return "" if value is None else value.text
 
 
-def _complete(kind: Kind, values: tuple[Value, ...], site: Site, loop: Loop) -> tuple[Value, ...]:
-    names = {value.name for value in values}
-    missing = [field.name for field in kind.fields if field.required and field.name not in names]
+def _complete(entry: Entry, site: Site, loop: Loop) -> Entry:
+    """The entry with what the site knows filled in; raises ``LogbookError`` for what is missing or contradicts."""
+    kind = KINDS[entry.kind]
+    if not entry.by:
+        raise LogbookError("by is missing: who made this entry? Give by=INITIALS or set FERTUI_OPERATOR.")
+    missing = [field.name for field in kind.fields if field.required and entry.value(field.name) is None]
     if missing:
-        raise LogbookError(
-            f"{kind.name} needs {', '.join(missing)}; for example {missing[0]}={_example(kind, missing[0])}."
-        )
-    if kind.name == "bleed" and "from" not in names:
-        values = (*values, Value("from", _BLEED_FROM[loop.layout]))
-    if kind.name == "acid" and "strength" not in names:
-        values = (*values, _strength(values, site))
-    if not values:
+        example = f"{missing[0]}={_example(kind, missing[0])}"
+        raise LogbookError(f"{kind.name} needs {', '.join(missing)}; for example {example}.")
+    if not entry.values:
         raise LogbookError(f"{kind.name} has no value; give at least one of {', '.join(kind.names)}.")
-    return values
+    if kind.name == "analysis" and not entry.point:
+        allowed = ", ".join(POINTS_BY_LAYOUT[loop.layout])
+        raise LogbookError(f"analysis needs its point: where was the sample taken? One of {allowed}.")
+    check_method(entry, loop)
+    until = entry.number_of("until")
+    if until is not None and until <= entry.at.timestamp():
+        raise LogbookError(f"until = {entry.text_of('until')!r} is not after the start of what is planned.")
+    return _filled_in(entry, site, loop)
+
+
+def _filled_in(entry: Entry, site: Site, loop: Loop) -> Entry:
+    if entry.kind == "bleed" and entry.value("from") is None:
+        return replace(entry, values=(*entry.values, Value("from", _BLEED_FROM[loop.layout])))
+    if entry.kind == "acid" and entry.value("strength") is None:
+        return replace(entry, values=(*entry.values, _strength(entry.values, site)))
+    return entry
 
 
 def _strength(values: Sequence[Value], site: Site) -> Value:
@@ -188,13 +198,11 @@ def _when(text: str, kind: Kind, site: Site, now: datetime) -> tuple[datetime, b
 def _point(kind: Kind, text: str, loop: Loop) -> str:
     allowed = POINTS_BY_LAYOUT[loop.layout]
     word = text.lower().replace(" ", "_").replace("-", "_")
-    if not text and kind.name == "analysis" and loop.layout != "shared-tank":
-        raise LogbookError(f"analysis needs its point: where was the sample taken? One of {', '.join(allowed)}.")
     if not text:
-        return allowed[0] if kind.sampled else ""
+        return allowed[0] if kind.sampled and (kind.name != "analysis" or loop.layout == "shared-tank") else ""
     if word not in allowed:
-        known = f"points of {loop.name} ({loop.layout}): {', '.join(allowed)}"
-        raise LogbookError(f"point = {text!r} is not known{nearest(word, POINTS)}; {known}.")
+        wrong = f"is no point of a {loop.layout} loop" if word in POINTS else f"is not known{nearest(word, POINTS)}"
+        raise LogbookError(f"point = {text!r} {wrong}. Points of {loop.name}: {', '.join(allowed)}.")
     return word
 
 

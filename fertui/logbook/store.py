@@ -7,7 +7,7 @@ import os
 import sqlite3
 import threading
 from collections.abc import Iterable, Iterator, Sequence
-from contextlib import contextmanager
+from contextlib import closing, contextmanager
 from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
@@ -17,8 +17,8 @@ from typing import Any
 from fertui.logbook import schema
 from fertui.logbook.codec import VALUE_FIELDS, check_storable, line_of, moment, moment_text, settled
 from fertui.logbook.entries import Entry, Value
-from fertui.logbook.errors import LogbookError, StoreError
-from fertui.logbook.files import check_regular, check_whole, create_private, publish
+from fertui.logbook.errors import DamageError, LogbookError, StoreError
+from fertui.logbook.files import check_regular, check_whole, create_private, publish, quoted
 
 FILE_NAME = "logbook.sqlite3"
 BUSY_SECONDS = 5.0
@@ -30,6 +30,7 @@ _COLUMNS = (
 )  # fmt: skip
 _SELECT = "SELECT " + ", ".join(f"e.{column}" for column in _COLUMNS)
 _SELECT_VALUES = "SELECT v.entry, " + ", ".join(f"v.{name}" for name in VALUE_FIELDS)
+_CHUNK = 1000
 _INSERT = f"INSERT INTO entries ({', '.join(_COLUMNS)}, hash) VALUES ({', '.join('?' * (len(_COLUMNS) + 1))})"
 _VALUE_COLUMNS = ("entry", "position", *VALUE_FIELDS)
 _INSERT_VALUE = (
@@ -57,7 +58,7 @@ class Logbook:
         making = path.with_name(f".{path.name}.{os.getpid()}")
         create_private(making)
         try:
-            with _spoken(making), cls(making, _connect(making, f"file:{_quoted(making)}?mode=rw"), True) as book:
+            with _spoken(making), cls(making, _connect(making, f"file:{quoted(making)}?mode=rw"), True) as book:
                 book._migrate()
                 book._connection.execute("PRAGMA journal_mode = WAL")
             publish(making, path)
@@ -155,6 +156,35 @@ class Logbook:
     def last_number(self) -> int:
         """Number of the last entry, 0 in an empty book; it changes with every write, so caches key on it."""
         return self._one("SELECT max(number) FROM entries") or 0
+
+    def verbatim(self) -> Iterator[Entry]:
+        """Every entry as written that is there at the start, one after the other, while the book may grow."""
+        last = self.last_number()
+        for first in range(1, last + 1, _CHUNK):
+            yield from self._read(("e.number BETWEEN ? AND ?",), [first, min(first + _CHUNK - 1, last)], "e.number")
+
+    def linked(self) -> Iterator[tuple[Entry, str]]:
+        """Every entry as written with the link of the chain that the file holds for it."""
+        for entry in self.verbatim():
+            with self._lock, _spoken(self.path):
+                row = self._connection.execute("SELECT hash FROM entries WHERE number = ?", (entry.number,)).fetchone()
+            yield entry, row[0]
+
+    def last_link(self) -> str:
+        """The last link of the chain."""
+        with self._lock, _spoken(self.path):
+            row = self._connection.execute("SELECT hash FROM entries ORDER BY number DESC LIMIT 1").fetchone()
+        return FIRST_HASH if row is None else row[0]
+
+    def sqlite_check(self) -> str:
+        """What SQLite's integrity check says: ``ok``, or its first complaint."""
+        with self._lock, _spoken(self.path):
+            return str(self._connection.execute("PRAGMA integrity_check(1)").fetchone()[0])
+
+    def copy_into(self, path: Path) -> None:
+        """Copy the file as it is at this moment into an empty one, while the book is in use."""
+        with self._lock, _spoken(path), closing(sqlite3.connect(f"file:{quoted(path)}?mode=rw", uri=True)) as copy:
+            self._connection.backup(copy)
 
     # writing
 
@@ -258,9 +288,12 @@ class Logbook:
             finally:
                 self._connection.execute("COMMIT")
         values: dict[int, list[Value]] = {}
-        for entry, name, text, number, unit, species, below in value_rows:
-            values.setdefault(entry, []).append(Value(name, text, number, unit, species, bool(below)))
-        return tuple(_entry(row, tuple(values.get(row[0], ()))) for row in rows)
+        for row in value_rows:
+            values.setdefault(row[0], []).append(value_of_row(row))
+        try:
+            return tuple(entry_of_row(row, tuple(values.get(row[0], ()))) for row in rows)
+        except (ValueError, TypeError) as error:
+            raise DamageError(f"{self.path}: {_DAMAGED} ({error}).") from error
 
 
 def link_of(chain: str, entry: Entry) -> str:
@@ -268,7 +301,24 @@ def link_of(chain: str, entry: Entry) -> str:
     return hashlib.sha256(f"{chain}\n{line_of(entry)}".encode()).hexdigest()
 
 
-def _entry(row: Sequence[Any], values: tuple[Value, ...]) -> Entry:
+def select_entry(where: str) -> str:
+    """Query for the columns that ``entry_of_row`` takes."""
+    return f"{_SELECT} FROM entries e WHERE {where}"
+
+
+def select_values(where: str) -> str:
+    """Query for the values of an entry in their order: entry, then the fields of ``Value``."""
+    return f"{_SELECT_VALUES} FROM entry_values v WHERE {where} ORDER BY v.entry, v.position"
+
+
+def value_of_row(row: Sequence[Any]) -> Value:
+    """The value of one row of ``select_values``."""
+    _, name, text, number, unit, species, below = row
+    return Value(name, text, number, unit, species, bool(below))
+
+
+def entry_of_row(row: Sequence[Any], values: tuple[Value, ...]) -> Entry:
+    """The entry of one row of ``entries``."""
     plain = dict(zip(_COLUMNS, row, strict=True))
     plain |= {"at": moment(plain["at"]), "entered": moment(plain["entered"]), "values": values}
     return Entry(**{**plain, "void": bool(plain["void"]), "whole_day": bool(plain["whole_day"])})
@@ -305,21 +355,15 @@ def _address(path: Path, writable: bool) -> str:
     # SQLite cannot open a WAL file in a folder it cannot write to; without a log beside it the file itself is whole.
     alone = not path.with_name(path.name + "-wal").exists()
     mode = "mode=rw" if writable else "mode=ro&immutable=1" if alone else "mode=ro"
-    return f"file:{_quoted(path)}?{mode}"
+    return f"file:{quoted(path)}?{mode}"
 
 
-def _quoted(path: Path) -> str:
-    absolute = os.fspath(path.absolute())
-    return absolute.replace("%", "%25").replace("?", "%3f").replace("#", "%23")
-
-
+_DAMAGED = "it is damaged. Keep a copy; `fertui backup` saves what can still be read"
 _WORDS: dict[str, str] = {
     "SQLITE_BUSY": "another session has been writing to it for more than 5 s; nothing was recorded, try again",
     "SQLITE_FULL": "the disk is full; nothing was recorded. Make room and try again",
     "SQLITE_READONLY": "it cannot be written (read-only file, folder or disk); nothing was recorded",
     "SQLITE_CANTOPEN": "it cannot be opened; look at the rights of the file and its folder",
-    "SQLITE_CORRUPT": "it is damaged. Keep a copy; `fertui backup` saves what can still be read",
-    "SQLITE_NOTADB": "it is not a logbook, or its beginning is damaged. Restore a backup with `fertui restore`",
     "SQLITE_IOERR": "the disk failed while it was read or written; nothing was recorded. Look after the disk first",
     "SQLITE_PERM": "you have no right to use it",
 }
@@ -332,6 +376,9 @@ def _spoken(path: Path) -> Iterator[None]:
         yield
     except sqlite3.Error as error:
         name = getattr(error, "sqlite_errorname", "") or type(error).__name__
+        damaged = name.startswith(("SQLITE_CORRUPT", "SQLITE_NOTADB")) or "decode" in str(error)
+        if damaged:
+            raise DamageError(f"{path}: {_DAMAGED} ({error}).") from error
         words = next(
             (text for start, text in _WORDS.items() if name.startswith(start)), f"SQLite says: {error} ({name})"
         )
