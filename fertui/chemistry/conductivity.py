@@ -166,7 +166,7 @@ def linearise(
     """Straight-line form of ``conductivity`` about one composition, for many compositions that scatter around it.
 
     ``ions_mmol_per_l``: mapping, or array (10,) [mmol/L]. ``step`` [mmol/L]: half width of the differences.
-    Range: within 2 % while the ions scatter by 30 % about the composition (checked in the tests).
+    Range: within 2.5 % while the ions scatter by 30 % about the composition (checked in the tests).
 
     >>> line = linearise({"K": 6, "Ca": 5, "Mg": 2, "NO3": 15, "SO4": 2, "H2PO4": 1})
     >>> round(float(line(line.at * 1.1)), 2)
