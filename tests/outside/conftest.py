@@ -2,12 +2,17 @@
 
 from __future__ import annotations
 
+import csv
+import os
 from collections.abc import Callable
+from pathlib import Path
 
 import numpy as np
 import pytest
 
 Columns = dict[str, np.ndarray]
+HOUSES = "rockwool_tomato_analyses.csv"
+HOUSES_SOURCE = "Hemming et al. 2020, 4TU.ResearchData, doi:10.4121/uuid:88d22c60-21b3-4ea8-90db-20249a5be2a7"
 
 
 @pytest.fixture(scope="session")
@@ -28,3 +33,14 @@ def phreeqc() -> Callable[[str, str], Columns]:
         return {name: np.array(values, dtype=object) for name, values in engine.GetSelectedOutput().items()}
 
     return run
+
+
+@pytest.fixture(scope="session")
+def houses() -> list[dict[str, str]]:
+    """Feed and drain analyses of two stone-wool tomato houses, as text by column; the file itself stays out of here."""
+    beside = Path(__file__).parents[2].parent / "shared" / "cases"
+    file = Path(os.environ.get("FERTUI_CASES", beside)) / HOUSES
+    if not file.exists():
+        pytest.skip(f"measured houses not found: put {HOUSES} ({HOUSES_SOURCE}) in the folder that FERTUI_CASES names")
+    with file.open(newline="") as lines:
+        return list(csv.DictReader(lines))
