@@ -75,7 +75,7 @@ def hazard_statements(kind: str, strength_pct: float | None = None) -> tuple[str
 
 
 def incompatibilities(kinds: Iterable[str], where: str = "shelf") -> tuple[Caution, ...]:
-    """What must not meet among these substances: ``where`` "shelf" (as sold), "stock" (one stock tank, all of them).
+    """What must not meet among these substances: ``where`` "shelf" (as sold) or "stock" (in one stock tank).
 
     >>> [each.code for each in incompatibilities(["magnesium sulfate", "calcium nitrate tetrahydrate"], "stock")]
     ['calcium-sulfate']
@@ -84,7 +84,7 @@ def incompatibilities(kinds: Iterable[str], where: str = "shelf") -> tuple[Cauti
     found = (
         _caution(pair)
         for pair in _data()["pairs"]
-        if where == "stock" or pair["where"] == "shelf"
+        if pair["where"] in (where, "anywhere")
         if any(_meet(pair["families"], one, other) for one, other in combinations(members, 2))
     )
     return tuple(found)
