@@ -10,6 +10,7 @@ from fertui.quantities import units
 from fertui.quantities.concentration import factor
 from fertui.quantities.names import fold, named, qualified, unit_and_species
 from fertui.quantities.numbers import tidy
+from fertui.quantities.refusal import QuantityError
 
 MEASURES: dict[str, tuple[str, str]] = {
     "EC": ("EC", "EC"), "EC25": ("EC", "EC"), "conductivity": ("EC", "EC"), "soluble salts": ("EC", "EC"),
@@ -31,8 +32,8 @@ class Head(NamedTuple):
 def column(head: str) -> Head:
     """What a column head says: "NO3-N [mg/L]", "alkalinity [mg/L CaCO3]", "EC [10^-5 S/cm]", "K_mmol_L".
 
-    A name that is no ion and no measure comes back as written, with its unit. Raises ``QuantityError`` for an unknown
-    unit behind an ion or a measure.
+    A name that is no ion and no measure comes back as written, with its unit. Raises ``QuantityError`` for no
+    name and for a unit that does not go with an ion or a measure.
 
     >>> column("NO3-N [mg/L]")
     Head(name='NO3', unit='mg/L', species='NO3-N')
@@ -42,6 +43,10 @@ def column(head: str) -> Head:
     Head(name='K', unit='mmol/L', species='')
     """
     name, unit = _parted(tidy(head))
+    if not name:
+        raise QuantityError(
+            "a column has no head", "a name, with its unit in brackets", "name it, for example K [mmol/L]"
+        )
     measure = _measures().get(fold(name))
     if measure is not None:
         if unit and measure[1] != "temperature":

@@ -123,8 +123,11 @@ def unit_and_species(text: str) -> tuple[str, str]:
     inside = re.fullmatch(r"([a-zA-Z\u00b5\u03bc]+)\s+(\S+)\s*(/\s*\S+)", text)
     if inside and units.is_unit(inside[1] + inside[3]):
         return inside[1] + inside[3].replace(" ", ""), inside[2]
-    unit, _, species = text.partition(" ")
-    return (unit, species.strip()) if species and units.is_unit(unit) else (text, "")
+    words = text.split(" ")
+    for cut in range(len(words) - 1, 0, -1):
+        if units.is_unit(" ".join(words[:cut])):
+            return " ".join(words[:cut]), " ".join(words[cut:]).strip()
+    return text, ""
 
 
 def fold(name: str) -> str:

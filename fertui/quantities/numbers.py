@@ -13,8 +13,8 @@ LONGEST = 60
 
 LARGEST = 1e12
 
-_NUMBER = re.compile(r"(<?)\s*([+-]?(?:\d[\d.,']*|[.,]\d+)(?:e[+-]?\d+)?)(.*)", re.IGNORECASE | re.DOTALL)
-_PLAIN = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:e[+-]?\d+)?", re.IGNORECASE)
+_NUMBER = re.compile(r"(<?)\s*([+-]?(?:\d[\d.,']*|[.,]\d+)(?:e[+-]?\d+)?)(.*)", re.IGNORECASE | re.DOTALL | re.ASCII)
+_PLAIN = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:e[+-]?\d+)?", re.IGNORECASE | re.ASCII)
 _GROUPED_BY_COMMA = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+(?:\.\d*)?")
 _GROUPED_BY_SPACE = re.compile(r"\s+\d{3}(?!\d|\s*\^)")
 _ALLOWED = "digits with at most one . or , as decimal mark; '<' in front for below detection"

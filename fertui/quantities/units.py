@@ -1,4 +1,7 @@
-"""Units as people write them. The common ones are a table; pint is asked, and loaded, only for what is not in it."""
+"""Units as people write them. The usual ones are tables; pint is asked, and loaded, for odd ones of concentration only.
+
+Gallons, tons and barrels differ between countries and pint knows one of each: volumes and weights stay with the tables.
+"""
 
 from __future__ import annotations
 
@@ -42,9 +45,6 @@ FACTORS: Mapping[str, Mapping[str, float]] = {
 }  # fmt: skip
 """Worth of a unit in the canonical one. Gallon, pound, ounce: exact by definition (NIST Handbook 44, from memory)."""
 
-SAME_EVERYWHERE = ("EC", "light")
-"""What may be asked of pint: gallons, tons and barrels differ between countries, so volumes and weights may not."""
-
 _TEMPERATURE = {"c": "C", "degc": "C", "celsius": "C", "f": "F", "degf": "F", "fahrenheit": "F"}
 _TRAPS = {
     "EC": (
@@ -56,7 +56,7 @@ _TRAPS = {
     "kg": (r"tons?", "is a metric, a short or a long ton", "write it in kg"),
     "light": (r"u?mol/m2|mol", "counts photons, not energy", "enter the radiation sum in J/cm2 or MJ/m2"),
 }
-_FOR_PINT = re.compile(r"[a-z]+(\^?-?[1-4])?((\*|/| )[a-z]+(\^?-?[1-4])?){0,3}", re.IGNORECASE)
+_FOR_PINT = re.compile(r"(?!.*(gal|ton|barrel))[a-z_]+\s*/\s*[a-z_]+(\^?[1-4])?", re.IGNORECASE)
 
 
 def factor(unit: str, what: str) -> float:
@@ -72,10 +72,7 @@ def factor(unit: str, what: str) -> float:
     known = _folded(what)
     if fold(unit) in known:
         return known[fold(unit)]
-    by_pint = pint_factor(unit, CANONICAL[what]) if what in SAME_EVERYWHERE else None
-    if by_pint is None:
-        raise _unknown(unit, what)
-    return by_pint
+    raise _unknown(unit, what)
 
 
 def basis(unit: str) -> tuple[str, float]:
@@ -144,7 +141,7 @@ def fold(unit: str) -> str:
 def pint_factor(unit: str, target: str) -> float | None:
     """What pint makes of a unit: its worth in ``target``, or None when it is unknown or of another dimension.
 
-    Only short products of unit names are handed over, never an expression to compute.
+    Only a unit over a unit is handed over, never an expression to compute.
 
     >>> round(pint_factor("oz/ft^3", "mg/L"), 1)
     1001.2
@@ -155,12 +152,9 @@ def pint_factor(unit: str, target: str) -> float | None:
     import pint
 
     try:
-        return float(registry.Quantity(1.0, unit).to(_PINT_NAMES.get(target, target)).magnitude)
+        return float(registry.Quantity(1.0, unit).to(target).magnitude)
     except (pint.PintError, ValueError, AttributeError):
         return None
-
-
-_PINT_NAMES = {"J/cm2": "J/cm^2", "L/d": "L/day", "%": "percent"}
 
 
 @cache
