@@ -1,0 +1,236 @@
+"""Where and when a plan is looked at, and what must hold there, as rows of a linear program.
+
+A checkpoint is a point of the loop at a time. Its composition is a straight line in the plan's variables about a plan
+that the full model has run, so every limit becomes a row: c(x) = now + slope (x - x0).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from fertui.chemistry.conductivity import conductivity
+from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
+from fertui.chemistry.minerals import saturation
+from fertui.planning.goal import LIMITED, SHARED, Goal
+
+SHARED_AT = np.array([INDEX[ion] for ion in SHARED])
+LIMITED_AT = np.array([INDEX[ion] for ion in LIMITED])
+GYPSUM_MOST, BRUSHITE_MOST = 0.0, 0.3
+"""Saturation a plan may reach; brushite stays up to there in the solutions of practice, or where it already is."""
+DRY_INDEX = -5.0
+"""Saturation index taken where an ion of the mineral is missing."""
+STEP = 0.02
+"""Half width of the numerical slopes of EC and saturation [mmol/L]."""
+
+
+@dataclass(frozen=True, slots=True)
+class Checkpoint:
+    """One point at one time; the share of its violations in the first aim is ``weight``, of its misfit ``aim_weight``.
+
+    ``base`` and ``now`` (10,) [mmol/L]: without the plan, and with the plan that was last run. ``slope`` (10,
+    variables). ``ec_factor``: what the loop's meter reads over what the ions make. ``before``: index of the
+    checkpoint just before a dose, whose EC the step is counted from; -1 where there is none.
+    """
+
+    name: str
+    point: str
+    day: float
+    goal: Goal
+    base: Array
+    now: Array
+    slope: Array
+    ph: float = 5.8
+    temperature_c: float = 20.0
+    ec_factor: float = 1.0
+    weight: float = 0.0
+    aim_weight: float = 0.0
+    before: int = -1
+
+
+@dataclass(frozen=True, slots=True)
+class Rows:
+    """``matrix x <= high`` with what each row limits, its limit in its own unit, and what a unit of it is."""
+
+    matrix: Array
+    high: Array
+    names: tuple[str, ...]
+    limits: tuple[float, ...]
+    units: tuple[str, ...]
+    sources: tuple[str, ...]
+
+    def tightened(self, by: Array) -> Rows:
+        """The same rows with less room."""
+        return replace(self, high=self.high - by)
+
+
+def ec_of(checkpoint: Checkpoint, composition: Array) -> Array:
+    """EC [mS/cm] as the loop's meter reads it, of compositions (..., 10)."""
+    return checkpoint.ec_factor * conductivity(np.maximum(composition, 0.0), ph=checkpoint.ph)
+
+
+def indices_of(checkpoint: Checkpoint, composition: Array) -> Array:
+    """Saturation index of gypsum and brushite (..., 2) of compositions (..., 10)."""
+    found = saturation(np.maximum(composition, 0.0), checkpoint.ph, checkpoint.temperature_c)
+    return np.maximum(np.stack([found["gypsum"], found["brushite"]], axis=-1), DRY_INDEX)
+
+
+def hard_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> Rows:
+    """Every limit of every checkpoint: EC and its step, NH4, Na, Cl, gypsum, brushite.
+
+    What is over its limit without the plan may stay where it is and not rise: adding none of it is allowed, more is
+    not.
+    """
+    parts = [part for each in checkpoints for part in _limits_of(each, checkpoints, x0)]
+    matrix = np.array([part[0] for part in parts]).reshape(len(parts), len(x0))
+    high = np.array([part[1] for part in parts])
+    names, limits = tuple(part[2] for part in parts), tuple(part[3] for part in parts)
+    return Rows(matrix, high, names, limits, tuple(part[4] for part in parts), tuple(part[5] for part in parts))
+
+
+Part = tuple[Array, float, str, float, str, str]
+
+
+def _limits_of(each: Checkpoint, checkpoints: Sequence[Checkpoint], x0: Array) -> list[Part]:
+    parts = [*_ec_parts(each, checkpoints, x0), *_ion_parts(each, x0), *_mineral_parts(each, x0)]
+    return [part for part in parts if np.isfinite(part[1])]
+
+
+def _slopes(each: Checkpoint) -> tuple[Array, Array, Array, Array]:
+    """EC and indices at ``now``, and their slopes in the ions: (), (2,), (10,), (10, 2)."""
+    moved = np.maximum(each.now, 0.0) + STEP * np.vstack([np.zeros(len(IONS)), np.eye(len(IONS))])
+    ec, index = ec_of(each, moved), indices_of(each, moved)
+    return ec[0], index[0], (ec[1:] - ec[0]) / STEP, (index[1:] - index[0]) / STEP
+
+
+def _ec_parts(each: Checkpoint, checkpoints: Sequence[Checkpoint], x0: Array) -> list[Part]:
+    ec, _, slope, _ = _slopes(each)
+    row = slope @ each.slope
+    most = max(each.goal.ec_most, float(ec_of(each, each.base)))
+    source = each.goal.sources.get("EC", "")
+    parts: list[Part] = [(row, most - float(ec) + float(row @ x0), f"EC, {each.name}", most, "mS/cm", source)]
+    if each.before >= 0:
+        earlier = checkpoints[each.before]
+        ec_before, _, slope_before, _ = _slopes(earlier)
+        rise = row - slope_before @ earlier.slope
+        room = each.goal.ec_step - float(ec - ec_before) + float(rise @ x0)
+        parts.append((rise, room, f"EC step, {each.name}", each.goal.ec_step, "mS/cm", "common practice"))
+    return parts
+
+
+def _ion_parts(each: Checkpoint, x0: Array) -> list[Part]:
+    most = np.maximum(each.goal.most, each.base)
+    parts: list[Part] = []
+    for i in LIMITED_AT:
+        if np.isfinite(each.goal.most[i]):
+            row = each.slope[i]
+            high = float(most[i] - each.now[i] + row @ x0)
+            parts.append(
+                (row, high, f"{IONS[i]}, {each.name}", float(most[i]), "mmol/L", each.goal.sources.get(IONS[i], ""))
+            )
+    return parts
+
+
+def _mineral_parts(each: Checkpoint, x0: Array) -> list[Part]:
+    _, index, _, slope = _slopes(each)
+    without = indices_of(each, each.base)
+    most = np.maximum([GYPSUM_MOST, BRUSHITE_MOST], without)
+    parts: list[Part] = []
+    for i, mineral in enumerate(("gypsum", "brushite")):
+        row = slope[:, i] @ each.slope
+        if index[i] > DRY_INDEX:
+            parts.append(
+                (row, float(most[i] - index[i] + row @ x0), f"{mineral}, {each.name}", float(most[i]), "SI", "")
+            )
+    return parts
+
+
+def exceeded(each: Checkpoint, composition: Array, before: Array | None = None) -> list[tuple[str, float, float]]:
+    """Hard limits that a composition (10,) passes at a checkpoint: (what, value, limit), with the full chemistry."""
+    found = [
+        ("EC", float(ec_of(each, composition)), max(each.goal.ec_most, float(ec_of(each, each.base)))),
+        *(
+            (IONS[i], float(composition[i]), float(max(each.goal.most[i], each.base[i])))
+            for i in LIMITED_AT
+        ),
+    ]  # fmt: skip
+    most = np.maximum([GYPSUM_MOST, BRUSHITE_MOST], indices_of(each, each.base))
+    found += [
+        (name, float(i), float(m))
+        for name, i, m in zip(("gypsum", "brushite"), indices_of(each, composition), most, strict=True)
+    ]
+    if before is not None:
+        found.append(("EC step", float(ec_of(each, composition) - ec_of(each, before)), each.goal.ec_step))
+    return [each for each in found if each[1] > each[2] + TOLERANCE[each[0]]]
+
+
+TOLERANCE = {"EC": 5e-3, "EC step": 5e-3, "gypsum": 1e-2, "brushite": 1e-2, "NH4": 1e-6, "Na": 1e-6, "Cl": 1e-6}
+"""How far the full model may pass a limit before the plan is taken back: half the last digit shown."""
+
+
+def violation_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Array, Array]:
+    """Rows ``matrix x - slack <= high`` of bands and soft upper limits, and each slack's cost; one slack a row.
+
+    Shares are counted in points of K + Ca + Mg as it is without the plan, limits in parts of themselves.
+    """
+    matrix, high, cost = [], [], []
+    z = CHARGE[SHARED_AT]
+    for each in checkpoints:
+        if each.weight <= 0.0:
+            continue
+        now, slope = z * each.now[SHARED_AT], z[:, None] * each.slope[SHARED_AT]
+        total, total_slope = now.sum(), slope.sum(axis=0)
+        scale = max(float((z * each.base[SHARED_AT]).sum()), float(total), 1.0)
+        for sign, bound in ((1.0, each.goal.share_high), (-1.0, each.goal.share_low)):
+            rows = sign * (slope - bound[:, None] * total_slope) / scale
+            matrix.append(rows)
+            high.append(rows @ x0 - sign * (now - bound * total) / scale)
+            cost.append(np.full(3, 10.0 * each.weight))
+        over = [i for i in LIMITED_AT if each.base[i] > each.goal.most[i]]
+        if over:
+            matrix.append(each.slope[over] / each.goal.most[over, None])
+            high.append((each.goal.most[over] - each.now[over] + each.slope[over] @ x0) / each.goal.most[over])
+            cost.append(np.full(len(over), each.weight))
+    n = len(x0)
+    return (
+        np.vstack([*matrix, np.zeros((0, n))]),
+        np.concatenate([*high, np.zeros(0)]),
+        np.concatenate([*cost, np.zeros(0)]),
+    )
+
+
+def violation(each: Checkpoint, composition: Array) -> float:
+    """By how many points [%] of K + Ca + Mg the shares of a composition (10,) leave their bands, summed."""
+    shared = CHARGE[SHARED_AT] * composition[SHARED_AT]
+    total = float(shared.sum())
+    if total <= 0.0:
+        return 100.0 if bool((each.goal.share_low > 0).any()) else 0.0
+    shares = shared / total
+    out = np.maximum(shares - each.goal.share_high, 0.0) + np.maximum(each.goal.share_low - shares, 0.0)
+    return 100.0 * float(out.sum())
+
+
+def misfit_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Array, Array]:
+    """Rows ``matrix x + under - over = value`` of the distance to the aim, and the cost of one unit off.
+
+    Ions the target does not name count a little where they would rise; sulfate, chloride and sodium count half.
+    """
+    matrix, value, cost = [], [], []
+    for each in checkpoints:
+        if each.aim_weight <= 0.0:
+            continue
+        named = ~np.isnan(each.goal.aim)
+        aim = np.where(named, each.goal.aim, each.base)
+        weight = np.where(named, 1.0, 0.1) * np.where(np.isin(IONS, ("SO4", "Cl", "Na")), 0.5, 1.0)
+        weight[INDEX["HCO3"]] = 0.0
+        matrix.append(each.slope)
+        value.append(aim - each.now + each.slope @ x0)
+        cost.append(each.aim_weight * weight / np.maximum(aim, 1.0))
+    n = len(x0)
+    return (
+        np.vstack([*matrix, np.zeros((0, n))]),
+        np.concatenate([*value, np.zeros(0)]),
+        np.concatenate([*cost, np.zeros(0)]),
+    )

@@ -1,0 +1,172 @@
+"""Runs of the full model, counted: the ensemble for what is shown, stacked mean members for responses and checks."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from datetime import datetime, timedelta
+from typing import Protocol
+
+import numpy as np
+
+from fertui.chemistry.ions import IONS, Array
+from fertui.estimate.points import PointState
+from fertui.site.model import Loop, Site
+
+JUST_AFTER = timedelta(minutes=1)
+"""A dose is given just after a full day from now, so that the day's composition is the one before it."""
+
+
+@dataclass(frozen=True, slots=True)
+class Addition:
+    """What goes into the dosed tank on one day [mmol], shape (10,) or (members, 10)."""
+
+    day: float
+    mmol: Array
+
+
+@dataclass(frozen=True, slots=True)
+class Exchange:
+    """Litres let go and refilled on one day, a number or (members,), with what the refill carries (10,) [mmol/L]."""
+
+    day: float
+    litres: float | Array
+    refill: Array
+
+
+@dataclass(frozen=True, slots=True)
+class Feed:
+    """The feed from one day on: ions (10,) or (members, 10) [mmol/L]."""
+
+    day: float
+    ions: Array
+
+
+@dataclass(frozen=True, slots=True)
+class Doing:
+    """What a plan does: additions to the tank, renewals, feeds."""
+
+    additions: tuple[Addition, ...] = ()
+    renewals: tuple[Exchange, ...] = ()
+    feeds: tuple[Feed, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Course:
+    """Compositions by point, (days + 1, members, 10) [mmol/L], and litres by point (days + 1, members); day 0 is
+    now."""
+
+    ions: Mapping[str, Array]
+    volumes_l: Mapping[str, Array]
+
+
+class Runs(Protocol):
+    """The model as planning uses it."""
+
+    @property
+    def count(self) -> int:
+        """Runs so far."""
+        ...
+
+    def settled(self, doing: Doing, members: int) -> Course:
+        """One run of so many copies of the mean loop, without noise; arrays in ``doing`` lead with the members."""
+        ...
+
+    def shown(self, doing: Doing) -> Mapping[str, PointState]:
+        """One run of the whole ensemble: the points at the horizon with their ranges."""
+        ...
+
+
+@dataclass(frozen=True, slots=True)
+class Situation:
+    """A loop now: its points, mean compositions [mmol/L] and litres; ``managed`` is the point it is steered by."""
+
+    site: Site
+    loop: Loop
+    at: datetime
+    managed: str
+    points: Mapping[str, PointState]
+    volumes_l: Mapping[str, float]
+    crop_water_l_per_m2_d: float = 0.0
+
+    def composition(self, point: str) -> Array:
+        """Mean composition of a point, shape (10,)."""
+        ions = self.points[point].ions
+        return np.array([ions[ion].mmol_l.value if ion in ions else 0.0 for ion in IONS])
+
+    def ph(self, point: str) -> float:
+        """pH of a point, 5.8 where it is not known."""
+        state = self.points.get(point)
+        return 5.8 if state is None or state.ph is None else state.ph.value
+
+
+@dataclass(slots=True)
+class ModelRuns:
+    """``Runs`` of an estimate over a horizon of whole days."""
+
+    estimate: object
+    days: int
+    count: int = field(default=0)
+
+    def settled(self, doing: Doing, members: int) -> Course:
+        """See ``Runs.settled``."""
+        from fertui.estimate.forecast import copies, trajectories
+
+        self.count += 1
+        course = trajectories(copies(self.estimate, members), self.days, self._scenario(doing), settled=True)
+        return Course(course.ions, course.volumes_l)
+
+    def shown(self, doing: Doing) -> Mapping[str, PointState]:
+        """See ``Runs.shown``."""
+        from fertui.estimate.forecast import forecast
+
+        self.count += 1
+        return forecast(self.estimate, self.days, self._scenario(doing)).days[-1].points
+
+    def _scenario(self, doing: Doing) -> object:
+        from fertui.estimate.forecast import Dose, FeedRecipe, Renewal, Scenario
+
+        return Scenario(
+            doses=tuple(Dose(self._at(each.day), adds_mmol=each.mmol) for each in doing.additions),
+            renewals=tuple(Renewal(self._at(each.day), each.litres, _by_ion(each.refill)) for each in doing.renewals),
+            recipes=tuple(FeedRecipe(self._at(each.day), _by_ion(each.ions)) for each in doing.feeds),
+        )
+
+    def _at(self, day: float) -> datetime:
+        return self.estimate.at + timedelta(days=day) + JUST_AFTER
+
+
+def _by_ion(ions: Array) -> dict[str, Array | float]:
+    return {ion: ions[..., i] for i, ion in enumerate(IONS)}
+
+
+def staffed_days(situation: Situation, days: int, steps: int) -> tuple[int, ...]:
+    """Days from now on which people are there, for at most so many steps: two as soon as can be, the rest spread out.
+
+    The last step leaves a quarter of the horizon to act.
+    """
+    from zoneinfo import ZoneInfo
+
+    here = situation.at.astimezone(ZoneInfo(situation.site.timezone))
+    staffed = [day for day in range(max(days, 1)) if f"{here + timedelta(days=day):%a}" in situation.site.staffed_days]
+    last = max((day for day in staffed if day <= 0.75 * days), default=staffed[0] if staffed else 0)
+    early = [day for day in staffed if day <= last] or [0]
+    if len(early) <= steps:
+        return tuple(early)
+    wanted = [0.0, *np.linspace(1.0, len(early) - 1.0, max(steps - 1, 1))[: steps - 1]]
+    return tuple(dict.fromkeys(early[round(index)] for index in wanted))
+
+
+def stacked(doings: Sequence[Doing]) -> Doing:
+    """Plans side by side on the member axis, for one run."""
+    additions = [
+        Addition(each.day, np.array([each.mmol if mine is doing else np.zeros(len(IONS)) for mine in doings]))
+        for doing in doings
+        for each in doing.additions
+    ]
+    renewals = [
+        Exchange(each.day, np.array([float(each.litres) if mine is doing else 0.0 for mine in doings]), each.refill)
+        for doing in doings
+        for each in doing.renewals
+    ]
+    return Doing(tuple(additions), tuple(renewals))
