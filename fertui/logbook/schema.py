@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import sqlite3
 from datetime import UTC, datetime
+from pathlib import Path
 
 from fertui.logbook.codec import moment_text
 from fertui.logbook.errors import StoreError
@@ -76,22 +77,33 @@ MIGRATIONS: tuple[tuple[str, str], ...] = (("first schema", VERSION_1),)
 VERSION = len(MIGRATIONS)
 
 
-def version_of(connection: sqlite3.Connection, path: object) -> int:
-    """Schema version of an open file, 0 for an empty one.
+def check_head(path: Path) -> None:
+    """Raise ``StoreError`` for a file of another program or a newer fertui by its first 72 bytes, without opening it.
 
-    Raises ``StoreError`` for a file of another program or of a newer fertui; neither is touched.
+    SQLite file format, section 1.3: user version at byte 60, application id at 68.
     """
+    with path.open("rb") as file:
+        head = file.read(72)
+    _check(int.from_bytes(head[60:64], "big"), int.from_bytes(head[68:72], "big"), path)
+
+
+def version_of(connection: sqlite3.Connection, path: object) -> int:
+    """Schema version of an open file, 0 for an empty one; raises ``StoreError`` as ``check_head`` does."""
     version = int(connection.execute("PRAGMA user_version").fetchone()[0])
     application = int(connection.execute("PRAGMA application_id").fetchone()[0])
-    tables = int(connection.execute("SELECT count(*) FROM sqlite_master").fetchone()[0])
-    if application != APPLICATION_ID and tables:
+    if version or application:
+        _check(version, application, path)
+    return version
+
+
+def _check(version: int, application: int, path: object) -> None:
+    if application != APPLICATION_ID:
         raise StoreError(f"{path} is a database of another program; it was left as it is.")
     if version > VERSION:
         raise StoreError(
             f"{path} was written by a newer fertui (schema {version}, this one knows up to {VERSION}); "
             "it was left as it is. Update fertui to open it."
         )
-    return version
 
 
 def migrate(connection: sqlite3.Connection, known: int) -> None:

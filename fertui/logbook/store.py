@@ -76,11 +76,16 @@ class Logbook:
         path = Path(path)
         check_regular(path)
         check_whole(path)
+        schema.check_head(path)
         writable = os.access(path, os.W_OK) and os.access(path.parent, os.W_OK)
         with _spoken(path):
             book = cls(path, _connect(path, _address(path, writable)), writable)
+        try:
             if book._version() < schema.VERSION and writable:
                 book._migrate()
+        except BaseException:
+            book.close()
+            raise
         return book
 
     def close(self) -> None:
@@ -267,7 +272,8 @@ class Logbook:
             schema.migrate(connection, self._version())
 
     def _version(self) -> int:
-        return schema.version_of(self._connection, self.path)
+        with self._lock, _spoken(self.path):
+            return schema.version_of(self._connection, self.path)
 
     def _one(self, query: str, *given: object) -> int | None:
         with self._lock, _spoken(self.path):
