@@ -35,7 +35,7 @@ def test_pure_water_carries_next_to_nothing() -> None:
 @settings(max_examples=25, deadline=None)
 @given(more=st.floats(0.2, 5.0), temperature=st.floats(5, 35))
 def test_more_of_a_free_ion_carries_more(ion: str, more: float, temperature: float) -> None:
-    """Holds for any ion while it adds to the strength less than it carries itself: K, Na, NH4, NO3, Cl, Ca, Mg, SO4, P."""
+    """An ion carries more itself than its strength and its pairs take from the others."""
     assert conductivity(TOMATO | {ion: TOMATO.get(ion, 0.0) + more}, temperature) > conductivity(TOMATO, temperature)
 
 

@@ -54,7 +54,7 @@ def test_nothing_is_guessed_of_a_balanced_analysis() -> None:
 
 
 def test_normalising_scales_all_but_sodium_ammonium_and_bicarbonate() -> None:
-    """EC 4.0 with Na 8: nutrient EC 3.2; target 3.5 gives reference 3.2, so nothing moves; at target 1.9 half remains."""
+    """EC 4.0, Na 8: nutrient EC 3.2. Target 3.5 means reference 3.2, nothing moves; at target 1.9 half remains."""
     ions = vector(HOAGLAND | {"Na": 8, "NH4": 1, "HCO3": 0.5})
     assert nutrient_ec(4.0, 8.0) == pytest.approx(3.2)
     assert normalised(ions, 4.0, 3.5) == pytest.approx(ions)
