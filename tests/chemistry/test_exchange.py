@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from fertui.chemistry.exchange import PHREEQC_SELECTIVITY, batch, cations, loading
+from fertui.chemistry.exchange import PHREEQC_SELECTIVITY, batch, cations, intensity, loading
 from fertui.chemistry.ions import CATION_CHARGE, CATIONS
 
 amounts = st.one_of(st.just(0.0), st.floats(1e-6, 1e5))
@@ -131,6 +131,16 @@ def test_more_of_a_cation_means_more_of_it_on_the_sites(name: str) -> None:
     total[:, CATIONS.index(name)] = np.linspace(1.0, 60.0, 20)
     _, exchanged = batch(total, 0.6, 40.0, PHREEQC_SELECTIVITY)
     assert (np.diff(exchanged[:, CATIONS.index(name)]) > 0.0).all()
+
+
+@pytest.mark.parametrize("off", [-40.0, -0.05, 0.0, 1e-6, 40.0])
+def test_where_the_search_starts_does_not_change_the_answer(off: float) -> None:
+    drain = np.array([[6.0, 5.0, 2.0, 3.0, 0.3], [2.0, 9.0, 4.0, 9.0, 0.0]])
+    total = 0.65 * drain + 40.0 * loading(drain, PHREEQC_SELECTIVITY) / CATION_CHARGE
+    start = np.log(intensity(drain, PHREEQC_SELECTIVITY)) + off
+    solution, _ = batch(total, 0.65, [40.0, 0.0], PHREEQC_SELECTIVITY, start)
+    np.testing.assert_allclose(solution[0], drain[0], rtol=1e-12)
+    np.testing.assert_allclose(solution[1], total[1] / 0.65, rtol=1e-15)
 
 
 def test_a_mapping_and_an_array_say_the_same() -> None:
