@@ -107,7 +107,7 @@ def apply(circuit: Circuit, medium: Medium, state: State, event: Event) -> tuple
 
 def _added(circuit: Circuit, state: State, event: Event, where: int) -> tuple[State, Fluxes]:
     fluxes = no_fluxes(state.members)
-    water, ions = state.water_l.copy(), state.ions_mmol.copy()
+    water, ions = state.water_l.copy(order="K"), state.ions_mmol.copy(order="K")
     ions[:, where] += event.ions_mmol
     water[:, where] += event.litres
     fluxes.by_cause[:, CAUSE[event.cause]] = event.ions_mmol
@@ -134,7 +134,7 @@ def _bled(state: State, event: Event, where: int) -> tuple[State, Fluxes]:
     litres = np.minimum(np.maximum(event.litres, 0.0), held)
     share = np.where(held > 0, litres / np.where(held > 0, held, 1.0), 0.0)
     out = share[:, None] * state.ions_mmol[:, where]
-    water, ions = state.water_l.copy(), state.ions_mmol.copy()
+    water, ions = state.water_l.copy(order="K"), state.ions_mmol.copy(order="K")
     water[:, where] = held - litres
     ions[:, where] -= out
     fluxes = no_fluxes(state.members)
@@ -144,7 +144,7 @@ def _bled(state: State, event: Event, where: int) -> tuple[State, Fluxes]:
 
 
 def _levelled(state: State, event: Event, where: int) -> State:
-    water = state.water_l.copy()
+    water = state.water_l.copy(order="K")
     water[:, where] = event.litres
     return replace(state, water_l=water)
 

@@ -146,24 +146,34 @@ class Plants:
             )
 
 
-def conductance(
-    plants: Plants, mmol_l: Array, crop_l_d: npt.ArrayLike, light: npt.ArrayLike = 1.0, excursion_c: float = 0.0
+def demand(
+    plants: Plants, crop_l_d: npt.ArrayLike, light: npt.ArrayLike = 1.0, excursion_c: float = 0.0
 ) -> Array:
+    """What does not depend on the solution (M, 10) or (1, 10): Tq UC m and the factors that are 1 at the reference.
+
+    ``crop_l_d`` scalar or (M,) [L/d]; ``light`` relative to the usual; ``excursion_c`` of the root temperature [C].
+    """
+    kin = plants.kinetics
+    at_reference = np.maximum(plants.reference - kin.c_min, _TRACE)
+    scale = (kin.km + at_reference) / at_reference * np.maximum(plants.reference, _TRACE) ** -kin.b
+    if excursion_c:
+        scale = scale * excursion_factor(excursion_c, kin.q10)
+    wanted = np.asfortranarray(np.atleast_2d(plants.uptake_concentration * plants.multiplier)) * scale
+    wanted = wanted * _drive(plants, crop_l_d, light)
+    wanted[:, -1] = 0.0
+    return wanted
+
+
+def conductance(plants: Plants, wanted: Array, mmol_l: Array) -> Array:
     """The k [L/d] (M, 10) for which uptake is k (c - Cmin)+: the form the implicit step needs.
 
-    ``mmol_l`` (M, 10) [mmol/L] of the root zone, ``crop_l_d`` scalar or (M,) [L/d]. Zero at and below Cmin.
+    ``wanted``: from ``demand``; ``mmol_l`` (M, 10) [mmol/L] of the root zone. Zero at and below Cmin.
     """
-    kin, reference = plants.kinetics, np.maximum(plants.reference, _TRACE)
+    kin = plants.kinetics
     above = mmol_l - kin.c_min
-    at_reference = np.maximum(plants.reference - kin.c_min, _TRACE)
-    demand = plants.uptake_concentration * plants.multiplier * ((kin.km + at_reference) / at_reference)
-    demand[..., -1] = 0.0
-    response = np.exp(kin.b * (np.log(np.maximum(mmol_l, _TRACE)) - np.log(reference)))
-    k = demand * response * _drive(plants, crop_l_d, light) / (kin.km + np.maximum(above, 0.0))
-    k *= _antagonism(plants, mmol_l)
-    if excursion_c:
-        k *= excursion_factor(excursion_c, kin.q10)
-    return np.where(above > 0.0, k, 0.0)
+    k = wanted * np.exp(kin.b * np.log(np.maximum(mmol_l, _TRACE))) / (kin.km + np.maximum(above, 0.0))
+    _oppose(plants, mmol_l, k)
+    return k * (above > 0.0)
 
 
 def uptake(
@@ -175,7 +185,7 @@ def uptake(
     >>> uptake(plants, np.full((1, 10), 4.0), 3.0)[0, :3]
     array([6., 6., 6.])
     """
-    k = conductance(plants, mmol_l, crop_l_d, light, excursion_c)
+    k = conductance(plants, demand(plants, crop_l_d, light, excursion_c), mmol_l)
     taken = k * np.maximum(mmol_l - plants.kinetics.c_min, 0.0)
     taken[:, -1] = taken[:, :-1] @ CHARGE[:-1]
     return taken
@@ -191,16 +201,16 @@ def _drive(plants: Plants, crop_l_d: npt.ArrayLike, light: npt.ArrayLike) -> Arr
     return plants.reference_l_d * by_water
 
 
-def _antagonism(plants: Plants, mmol_l: Array) -> Array:
-    """Factors r (M, 10): K and NH4 on Ca and Mg, one way and within 0.5-2; Na (as NaCl) on NO3; 1 at the reference."""
+def _oppose(plants: Plants, mmol_l: Array, k: Array) -> None:
+    """Antagonism, in place: K and NH4 on Ca and Mg, one way and within 0.5-2; Na (as NaCl) on NO3; 1 at the reference."""
     kin, reference = plants.kinetics, plants.reference
-    factors = np.ones_like(mmol_l)
     rivals = reference[_K] + reference[_NH4]
     if kin.antagonism and rivals > 0:
         crowd = np.maximum(mmol_l[:, _K] + mmol_l[:, _NH4], _TRACE) / rivals
-        factors[:, _CA] = factors[:, _MG] = np.clip(crowd**-kin.antagonism, 0.5, 2.0)
-    factors[:, _NO3] = (1.0 + reference[_NA] / kin.salt_half) / (1.0 + mmol_l[:, _NA] / kin.salt_half)
-    return factors
+        factor = np.minimum(np.maximum(np.exp(-kin.antagonism * np.log(crowd)), 0.5), 2.0)
+        k[:, _CA] *= factor
+        k[:, _MG] *= factor
+    k[:, _NO3] *= (1.0 + reference[_NA] / kin.salt_half) / (1.0 + mmol_l[:, _NA] / kin.salt_half)
 
 
 def excursion_factor(excursion_c: float, q10: float = 2.0) -> Array:

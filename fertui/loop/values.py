@@ -3,6 +3,7 @@
 Axes: M members; 2 compartments (``STORE``: shared tank or drain store, ``ROOT``: water of the root zone);
 10 ions in the order of ``fertui.chemistry.ions.IONS`` (HCO3 stands for alkalinity and may be negative);
 5 exchangeable cations. A number that is the same for all members may be given as a scalar or without the member axis.
+In memory the members lie side by side (Fortran order), which makes arithmetic on thin arrays about twice as fast.
 """
 
 from __future__ import annotations
@@ -109,7 +110,7 @@ class State:
     @property
     def members(self) -> int:
         """Number of members M."""
-        return self.water_l.shape[0]
+        return int(self.water_l.shape[0])
 
     def concentration(self, compartment: int) -> Array:
         """Concentrations [mmol/L] (M, 10) of one compartment; zero where it holds no water."""
@@ -118,7 +119,7 @@ class State:
 
     def with_concentration(self, compartment: int, mmol_l: Array) -> State:
         """The same water with other concentrations (10,) or (M, 10) [mmol/L]; the exchanger is left as it is."""
-        ions = self.ions_mmol.copy()
+        ions = self.ions_mmol.copy(order="K")
         ions[:, compartment] = self.water_l[:, compartment, None] * mmol_l
         return replace(self, ions_mmol=ions)
 
@@ -127,6 +128,10 @@ class State:
         if medium.inert:
             return self
         return replace(self, exchanged_meq=_members(medium.load(self.concentration(ROOT)), self.members, 5))
+
+    def laid_out(self) -> State:
+        """The same state with members side by side in memory."""
+        return State(*(np.asfortranarray(array) for array in (self.water_l, self.ions_mmol, self.exchanged_meq)))
 
     def equivalents_held(self) -> Array:
         """Amount of every cation on the exchanger [mmol] (M, 5)."""
@@ -155,7 +160,7 @@ def start(
     store_l = 0.0 if circuit.fed == ROOT else circuit.store_l
     water = np.tile([store_l, circuit.root_zone_l], (members, 1))
     ions = np.stack([store * store_l, root * circuit.root_zone_l], axis=1)
-    state = State(water, ions, np.zeros((members, 5)))
+    state = State(water, ions, np.zeros((members, 5))).laid_out()
     if held is None or medium.inert:
         return state.reloaded(medium)
     fractions = np.asarray(held, dtype=float)
@@ -270,4 +275,4 @@ class Event:
 
 
 def _members(values: Array, members: int, width: int) -> Array:
-    return np.broadcast_to(values, (members, width)).astype(float)
+    return np.asfortranarray(np.broadcast_to(values, (members, width)), dtype=float)
