@@ -121,8 +121,7 @@ def export(options: Options) -> int:
 
 def backup(options: Options) -> int:
     """``backup``: the whole book, verbatim."""
-    count = open_site(options.site).backup(Path(options.file))
-    print(f"{options.file}: {count} entries")
+    print(open_site(options.site).backup(Path(options.file)))
     return FINE
 
 
@@ -192,8 +191,8 @@ def hindcast(options: Options) -> int:
     from fertui.cli.views.forecast import record_document, record_text
 
     bench, view = _reading(options)
-    seed = {} if options.seed is None else {"seed": _whole(options.seed, "--seed")}
-    past = bench.hindcast(inputs=options.inputs, **view, **seed)
+    seed = None if options.seed is None else _whole(options.seed, "--seed")
+    past = bench.hindcast(inputs=options.inputs, seed=seed, **view)
     name = bench.loop(view["loop"]).name
     return _show(options, lambda: record_document(past, name), lambda: record_text(past, name, bench.site.timezone))
 
@@ -323,7 +322,7 @@ COMMANDS: Mapping[str, Callable[[Options], int]] = {
 
 def _reading(options: Options) -> tuple[Bench, dict[str, Any]]:
     """The bench, and which loop as of when."""
-    from fertui.workbench.bench import now
+    from fertui.workbench.clock import now
 
     bench = open_site(options.site)
     view = {"loop": options.loop, "at": _time(bench, options.at) or now(), "known": _time(bench, options.known)}

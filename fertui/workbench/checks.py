@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    from fertui.workbench.bench import Bench
+    from fertui.workbench.answers import Answers
 
 LEAST_FREE_MB = 100
 
@@ -28,12 +28,12 @@ class CheckRow:
     remark: str = ""
 
 
-def check(bench: Bench) -> tuple[CheckRow, ...]:
+def check(bench: Answers) -> tuple[CheckRow, ...]:
     """All rows, site first. A site file that cannot be read raises as ever."""
     return (*_site(bench), *_logbook(bench), *_watch(bench), *_machine(bench))
 
 
-def _site(bench: Bench) -> Iterator[CheckRow]:
+def _site(bench: Answers) -> Iterator[CheckRow]:
     site = bench.site
     yield CheckRow("site", "site.toml", f"{len(site.loops)} loops, {len(site.supplies)} supplies", True)
     for loop in site.loops:
@@ -41,20 +41,20 @@ def _site(bench: Bench) -> Iterator[CheckRow]:
             yield CheckRow("site", f"water of {loop.name}", "not named", False, "name its source water and analysis")
 
 
-def _logbook(bench: Bench) -> Iterator[CheckRow]:
+def _logbook(bench: Answers) -> Iterator[CheckRow]:
     from fertui.logbook.integrity import check_book
 
     for row in check_book(bench.book.path):
         yield CheckRow("logbook", row.what, row.found, row.passed, row.remark)
 
 
-def _watch(bench: Bench) -> Iterator[CheckRow]:
+def _watch(bench: Answers) -> Iterator[CheckRow]:
     for name in bench.loops:
         for notice in bench.today(name).watch:
             yield CheckRow(f"watch {name}", notice.code, notice.text, notice.severity == "note")
 
 
-def _machine(bench: Bench) -> Iterator[CheckRow]:
+def _machine(bench: Answers) -> Iterator[CheckRow]:
     free = shutil.disk_usage(bench.folder).free // 2**20
     yield CheckRow("machine", "disk", f"{free} MB free", free > LEAST_FREE_MB, "make room before logging on")
     encoding = locale.getpreferredencoding(False)

@@ -34,7 +34,7 @@ def build_demo(into: Path | None = None, now: datetime | None = None) -> Path:
     """
     from fertui.logbook.store import Logbook
     from fertui.site.files import read_site
-    from fertui.workbench.bench import LOGBOOK
+    from fertui.workbench.folder import LOGBOOK
 
     now = now or datetime.now(UTC)
     folder = Path(tempfile.mkdtemp(prefix="fertui-demo-")) if into is None else into

@@ -11,11 +11,11 @@ from fertui.refusals import FileTrouble, Refusal
 if TYPE_CHECKING:
     from fertui.logbook.importing import ImportResult
     from fertui.site.new import Question as SiteQuestion
-    from fertui.workbench.bench import Bench
+    from fertui.workbench.folder import SiteFolder
 
 
 def import_table(
-    bench: Bench,
+    bench: SiteFolder,
     path: Path,
     kind: str,
     loop: str | None = None,
@@ -65,7 +65,7 @@ def make_new_site(folder: Path, answers: Mapping[str, str]) -> tuple[Path, tuple
     from fertui.logbook.store import Logbook
     from fertui.quantities import parse_number
     from fertui.site.new import first_steps, new_site
-    from fertui.workbench.bench import LOGBOOK
+    from fertui.workbench.folder import LOGBOOK
 
     wishes: dict[str, Any] = {}
     for name, text in answers.items():

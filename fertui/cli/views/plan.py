@@ -92,7 +92,7 @@ def _renewal(plan: Plan) -> list[str]:
 
 
 def _outcome(plan: Plan) -> list[str]:
-    rows = [("", "now", "with the plan", "without it")]
+    rows: list[tuple[str, ...]] = [("", "now", "with the plan", "without it")]
     for what in ("K share", "Ca share", "Mg share", "EC", "Na", "NH4"):
         cells = [_cell(outlook, plan.point, what) for outlook in (plan.before, plan.after, plan.after_without)]
         rows.append((f"{what} {'%' if 'share' in what else 'mS/cm' if what == 'EC' else 'mmol/L'}", *cells))

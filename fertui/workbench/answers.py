@@ -1,0 +1,189 @@
+"""What a site is asked: state, account, forecast, plan, sheets, shelf, checks."""
+
+from __future__ import annotations
+
+from datetime import datetime, timedelta
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from fertui.workbench.clock import now
+from fertui.workbench.folder import SiteFolder
+from fertui.workbench.glance import Glance, glance
+
+if TYPE_CHECKING:
+    from fertui.catalogue.cautions import Caution
+    from fertui.estimate.assimilation import Estimate
+    from fertui.estimate.balance import Balance
+    from fertui.estimate.forecast import Forecast, Scenario
+    from fertui.estimate.hindcast import Hindcast
+    from fertui.planning.values import AcidSheet, Plan, StockSheet
+    from fertui.site.edit import Row as SiteRow
+    from fertui.workbench.analysis import AnalysisView
+    from fertui.workbench.checks import CheckRow
+    from fertui.workbench.drift import Drift
+    from fertui.workbench.shelf import StockRow, SupplyRow
+    from fertui.workbench.today import Today
+
+
+HORIZON_DAYS = 14
+
+
+class Answers(SiteFolder):
+    """Every read of the workbench."""
+
+    def __init__(self, folder: Path) -> None:
+        super().__init__(folder)
+        self._estimates: dict[tuple[Any, ...], Estimate] = {}
+
+    def glance(self, loop: str | None = None, at: datetime | None = None) -> Glance:
+        """Last known numbers of a loop, without running the model."""
+        chosen, at = self.loop(loop), at or now()
+        recent = self.book.entries(loop=chosen.name, since=at - timedelta(days=60), at=at)
+        return glance(chosen, recent, at)
+
+    def estimate(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Estimate:
+        """Where the loop is; kept until the logbook or the minute changes."""
+        from fertui.estimate.assimilation import assimilate
+
+        chosen, at = self.loop(loop), at or now()
+        key = (chosen.name, at, known, self.book.last_number())
+        if key not in self._estimates:
+            if len(self._estimates) > 8:
+                self._estimates.clear()
+            self._estimates[key] = assimilate(self.site, chosen, self.entries(at, known), at)
+        return self._estimates[key]
+
+    def today(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Today:
+        """State of a loop and what to look at."""
+        from fertui.workbench.today import today
+
+        at = at or now()
+        estimate = self.estimate(loop, at, known)
+        return today(estimate, self.entries(at, known), self.forecast(loop, HORIZON_DAYS, at, known))
+
+    def overview(self, at: datetime | None = None, known: datetime | None = None) -> tuple[Today, ...]:
+        """All loops, worst first."""
+        at = at or now()
+        severity = {"act": 100, "watch": 10, "note": 1}
+        states = [self.today(name, at, known) for name in self.loops]
+        return tuple(sorted(states, key=lambda state: -sum(severity[each.severity] for each in state.watch)))
+
+    def analysis(
+        self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None
+    ) -> AnalysisView:
+        """The last analysis against target."""
+        from fertui.workbench.analysis import analysis
+
+        chosen, at = self.loop(loop), at or now()
+        return analysis(self.site, chosen, self.entries(at, known), at)
+
+    def drift(
+        self, loop: str | None = None, days: int = 28, at: datetime | None = None, known: datetime | None = None
+    ) -> Drift:
+        """Shares, ions, EC and pH over the days past, with what was measured and done."""
+        from fertui.workbench.drift import drift
+
+        at = at or now()
+        return drift(self.estimate(loop, at, known), self.entries(at, known), days)
+
+    def balance(
+        self,
+        loop: str | None = None,
+        start: datetime | None = None,
+        end: datetime | None = None,
+        known: datetime | None = None,
+    ) -> Balance:
+        """The account of each ion by cause over a period."""
+        from fertui.estimate.balance import balance
+
+        end = end or now()
+        return balance(self.estimate(loop, end, known), start or end - timedelta(days=HORIZON_DAYS), end)
+
+    def forecast(
+        self,
+        loop: str | None = None,
+        days: int = HORIZON_DAYS,
+        at: datetime | None = None,
+        known: datetime | None = None,
+        scenario: Scenario | None = None,
+    ) -> Forecast:
+        """The days ahead under the logged routine, the plan entered, or a what-if."""
+        from fertui.estimate.forecast import ROUTINE, forecast
+
+        return forecast(self.estimate(loop, at or now(), known), days, scenario or ROUTINE)
+
+    def hindcast(
+        self,
+        loop: str | None = None,
+        at: datetime | None = None,
+        known: datetime | None = None,
+        inputs: str = "logged",
+        seed: int | None = None,
+    ) -> Hindcast:
+        """Past forecasts against what the laboratory then found."""
+        from fertui.estimate.hindcast import hindcast
+
+        chosen, at = self.loop(loop), at or now()
+        chance = {} if seed is None else {"seed": seed}
+        return hindcast(self.site, chosen, self.entries(at, known), at, inputs, **chance)
+
+    def plan(
+        self,
+        loop: str | None = None,
+        days: int = HORIZON_DAYS,
+        at: datetime | None = None,
+        known: datetime | None = None,
+        **wishes: Any,
+    ) -> Plan:
+        """What brings the ions back. ``wishes``: target, supplies, without, steps, salts of ``planning.plan``."""
+        from fertui.planning import plan
+
+        at = at or now()
+        return plan(self.estimate(loop, at, known), days=days, entries=self.entries(at, known), **wishes)
+
+    def stock(self, loop: str | None = None) -> StockSheet:
+        """The stock-tank sheet of the recipe a loop runs on, its target where none was logged."""
+        from fertui.planning import stock_sheet
+        from fertui.workbench.carrying_out import running_recipe
+
+        chosen = self.loop(loop)
+        return stock_sheet(self.site, chosen, recipe=running_recipe(self.site, chosen, self.entries()))
+
+    def acid(self, loop: str | None = None) -> AcidSheet:
+        """The acid sheet of a loop's make-up water."""
+        from fertui.planning import acid_sheet
+
+        return acid_sheet(self.site, self.loop(loop))
+
+    def check(self) -> tuple[CheckRow, ...]:
+        """Site file, logbook, watch list and this machine, as rows."""
+        from fertui.workbench.checks import check
+
+        return check(self)
+
+    def supplies_rows(self) -> tuple[SupplyRow, ...]:
+        """Supplies with formula, label, amount left and hazards."""
+        from fertui.workbench.shelf import supply_rows
+
+        return supply_rows(self.site)
+
+    def stock_rows(self, loop: str | None = None, at: datetime | None = None) -> tuple[StockRow, ...]:
+        """Stock tanks of a loop with litres and days left."""
+        from fertui.estimate.notices import stock_days_left
+        from fertui.workbench.shelf import stock_rows
+
+        chosen, at = self.loop(loop), at or now()
+        entries = self.entries(at)
+        return stock_rows(self.site, chosen, entries, stock_days_left(self.site, chosen, entries, at))
+
+    def acid_cautions(self, acid: str, strength_pct: float | None = None) -> tuple[Caution, ...]:
+        """Cautions of an acid or lye at the strength on its label."""
+        from fertui.workbench.shelf import acid_cautions
+
+        return acid_cautions(self.site, acid, strength_pct)
+
+    def site_rows(self) -> tuple[SiteRow, ...]:
+        """Every value of the site file by its dotted name, with where it comes from."""
+        from fertui.site.edit import rows
+
+        return rows(self.site)

@@ -1,0 +1,76 @@
+"""A site folder, opened: its site file, its logbook, its loops. Nothing heavy is loaded before it is asked for."""
+
+from __future__ import annotations
+
+from datetime import datetime
+from functools import cached_property
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from fertui.logbook.entries import Entry
+from fertui.workbench.clock import now
+
+if TYPE_CHECKING:
+    from fertui.logbook.store import Logbook
+    from fertui.site.model import Loop, Site
+
+
+LOGBOOK = "logbook.sqlite3"
+
+
+class SiteFolder:
+    """One site folder."""
+
+    def __init__(self, folder: Path) -> None:
+        self.folder = folder
+
+    @cached_property
+    def site(self) -> Site:
+        """The site as its file says now."""
+        from fertui.site.files import read_site
+
+        return read_site(self.folder)
+
+    @cached_property
+    def book(self) -> Logbook:
+        """The logbook, opened once."""
+        from fertui.logbook.store import Logbook
+
+        return Logbook.open(self.folder / LOGBOOK)
+
+    @property
+    def loops(self) -> tuple[str, ...]:
+        """Names of the loops in the order of the file."""
+        return tuple(loop.name for loop in self.site.loops)
+
+    def loop(self, name: str | None = None) -> Loop:
+        """A loop by name, the first when none is named."""
+        from fertui.refusals import Refusal
+
+        try:
+            return self.site.loop(name)
+        except KeyError as unknown:
+            raise Refusal(str(unknown.args[0])) from None
+
+    def entries(self, at: datetime | None = None, known: datetime | None = None) -> tuple[Entry, ...]:
+        """Effective entries of all loops up to ``at``, as they were known at ``known``."""
+        return self.book.entries(at=at or now(), known=known)
+
+    def time(self, written: str) -> datetime:
+        """A time as people write it, on the clock of the site."""
+        from fertui.logbook.times import read_moment
+
+        return read_moment(written, self.site.timezone, now())[0]
+
+    def history(
+        self, kind: str | None = None, loop: str | None = None, at: datetime | None = None
+    ) -> tuple[Entry, ...]:
+        """Every entry verbatim, struck ones too."""
+        from fertui.logbook.kinds import kind_named
+
+        kinds = None if kind is None else (kind_named(kind).name,)
+        return self.book.history(loop=None if loop is None else self.loop(loop).name, kinds=kinds, at=at)
+
+    def last_number(self) -> int:
+        """Number of the last entry: what another session wrote shows here."""
+        return self.book.last_number()

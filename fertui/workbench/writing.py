@@ -1,0 +1,134 @@
+"""What is written down: entries, corrections, tables, plans carried out, the site file."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from datetime import UTC, datetime, timedelta
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from fertui.logbook.entries import Entry
+from fertui.workbench.answers import Answers
+from fertui.workbench.clock import now
+
+if TYPE_CHECKING:
+    from fertui.chemistry.verdicts import Check
+    from fertui.logbook.importing import ImportResult
+    from fertui.logbook.questions import Question
+    from fertui.planning.values import Plan
+    from fertui.workbench.carrying_out import PlanItem
+    from fertui.workbench.entering import Place
+
+
+class Writing(Answers):
+    """Every write of the workbench."""
+
+    def echo(self, kind: str, name: str, text: str, loop: str | None = None) -> str:
+        """What was understood of one value; refuses what cannot be taken."""
+        from fertui.workbench.entering import echo
+
+        return echo(kind, name, text, self.site, self.loop(loop))
+
+    def previous(self, loop: str | None = None) -> Mapping[Place, tuple[str, datetime]]:
+        """The last value as written for every place a form asks for."""
+        from fertui.workbench.entering import previous
+
+        recent = self.book.entries(loop=self.loop(loop).name, since=now() - timedelta(days=60))
+        return previous(recent)
+
+    def questions(self, kind: str, fields: Mapping[str, str], loop: str | None = None) -> tuple[Question, ...]:
+        """What a careful colleague would ask before this entry is written."""
+        from fertui.logbook.questions import questions
+
+        return questions(self._read(kind, fields, loop), self.book, self.site)
+
+    def check_analysis(self, fields: Mapping[str, str], loop: str | None = None) -> tuple[Check, ...]:
+        """Charge balance and EC check of an analysis before it is saved."""
+        from fertui.workbench.entering import check_analysis
+
+        return check_analysis(self._read("analysis", fields, loop))
+
+    def record(self, kind: str, fields: Mapping[str, str], loop: str | None = None, asked: bool = True) -> Entry:
+        """Append one entry, return it as read back; ``asked`` False: unanswered questions are kept with it as flags."""
+        from fertui.logbook.questions import flagged, questions
+
+        entry = self._read(kind, fields, loop)
+        if not asked:
+            entry = flagged(entry, questions(entry, self.book, self.site))
+        return self._stored(self.book.append(entry))
+
+    def supersede(self, number: int, fields: Mapping[str, str], why: str, by: str) -> Entry:
+        """Correct an entry by a new one; the old one stays visible."""
+        from fertui.logbook.parse import corrected
+
+        old = self.book.entry(number)
+        return self._stored(self.book.append(corrected(old, fields, self.site, datetime.now(UTC), why=why, by=by)))
+
+    def void(self, number: int, why: str, by: str) -> Entry:
+        """Strike an entry; it stays visible."""
+        return self._stored((self.book.void(number, why, by),))
+
+    def import_table(self, path: Path, kind: str, loop: str | None = None, **wishes: Any) -> ImportResult:
+        """Take in a table; ``wishes`` as in ``keeping.import_table``."""
+        from fertui.workbench.keeping import import_table
+
+        return import_table(self, path, kind, loop, **wishes)
+
+    def export(self, into: Path) -> tuple[Path, ...]:
+        """Write the logbook as tables, one a kind."""
+        from fertui.logbook.exporting import export
+
+        return export(self.book, into, self.site.timezone)
+
+    def backup(self, path: Path) -> Path:
+        """Write the whole book and the site file, verbatim."""
+        from fertui.logbook.backup import backup
+
+        return backup(self.folder, path)
+
+    def change_site(self, key: str, text: str, by: str) -> Entry:
+        """Change one value of the site file, keep the old file, and log the new one whole."""
+        from fertui.site.edit import changed
+        from fertui.site.files import write_site
+
+        site = changed(self.site, key, text)
+        path = write_site(site, self.folder, datetime.now(UTC))
+        self.__dict__.pop("site", None)
+        return self.record("site", {"text": path.read_text(encoding="utf-8"), "by": by})
+
+    def accept_plan(self, plan: Plan, by: str) -> tuple[Entry, ...]:
+        """Log what is intended: one plan entry a step, all or none."""
+        from fertui.workbench.carrying_out import steps_of
+
+        entries = [self._read("plan", fields, plan.loop) for fields in steps_of(plan, by)]
+        return tuple(self.book.entry(number) for number in self.book.append(entries))
+
+    def open_plans(self, loop: str | None = None, at: datetime | None = None) -> tuple[PlanItem, ...]:
+        """Intended steps of a loop, done or not."""
+        from fertui.workbench.carrying_out import open_plans
+
+        return open_plans(self.book.entries(loop=self.loop(loop).name, at=at))
+
+    def mark_done(
+        self, number: int, by: str, amount: str | None = None, strength_pct: float | None = None, read: bool = False
+    ) -> Entry:
+        """Log a planned step as carried out, wholly or by ``amount``; ``read``: its cautions were acknowledged."""
+        from fertui.workbench.carrying_out import done_fields
+
+        planned = self.book.entry(number)
+        kind, fields = done_fields(planned, by, amount, strength_pct)
+        if kind == "acid":
+            fields["cautions"] = "acknowledged" if read else "not acknowledged"
+        return self.record(kind, fields, planned.loop)
+
+    def not_done(self, number: int, why: str, by: str) -> Entry:
+        """Strike an intended step that will not be carried out."""
+        return self.void(number, why, by)
+
+    def _read(self, kind: str, fields: Mapping[str, str], loop: str | None) -> Entry:
+        from fertui.logbook.parse import entry_from_text
+
+        return entry_from_text(kind, fields, self.site, self.loop(loop), datetime.now(UTC))
+
+    def _stored(self, numbers: Sequence[int]) -> Entry:
+        return self.book.entry(numbers[-1])
