@@ -38,7 +38,7 @@ def test_mass_of_one_form_in_another(written: str, wanted: str, factor: float) -
     assert converted(written, wanted) == pytest.approx(factor, rel=2e-4)
 
 
-# Oxide to element by division, as suppliers print it (hortinet.pl, lmiab.com).
+# Oxide to element by division, as suppliers of fertiliser print it (second-hand).
 @pytest.mark.parametrize(
     ("oxide", "element", "divisor"),
     [("P2O5", "P", 2.29), ("K2O", "K", 1.20), ("CaO", "Ca", 1.40), ("MgO", "Mg", 1.66), ("SO3", "S", 2.50)],
