@@ -82,7 +82,7 @@ def speciate(
 
     ``ions_mmol_per_l``: mapping, or array (..., 10) [mmol/L]; values below zero count as none, save for HCO3, which
     stands for alkalinity [meq/L]. ``ph`` (activity scale) and ``temperature_c`` broadcast over the leading axes.
-    Raises ``ValueError`` for a pH outside 0-14 or a temperature outside 0-40 degrees C.
+    Raises ``ValueError`` for an ion that is not finite, a pH outside 0-14 or a temperature outside 0-40 degrees C.
     Range: ionic strength to 0.5 mol/L, 5-35 degrees C; ``in_range`` of the answer says where it is left.
     Constants: ``equilibria``.
 
@@ -91,6 +91,8 @@ def speciate(
     0.0266
     """
     totals = composition(ions_mmol_per_l)
+    if not np.isfinite(totals).all():
+        raise ValueError("a composition needs a finite number for every ion; one that was not analysed is left out or 0")
     shape = np.broadcast_shapes(totals.shape[:-1], np.shape(ph), np.shape(temperature_c))
     totals = 1e-3 * np.moveaxis(np.broadcast_to(totals, (*shape, len(IONS))), -1, 0)
     ph, temperature = np.array(ph, float, ndmin=len(shape)), np.array(temperature_c, float, ndmin=len(shape))

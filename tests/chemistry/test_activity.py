@@ -94,6 +94,11 @@ def test_impossible_conditions_are_refused_by_name(ph: float, temperature: float
         speciate(TOMATO, ph, temperature)
 
 
+def test_a_missing_number_is_refused() -> None:
+    with pytest.raises(ValueError, match="finite"):
+        speciate(TOMATO | {"K": float("nan")})
+
+
 @pytest.mark.parametrize("name", EQUILIBRIA)
 def test_every_constant_has_a_reaction_and_a_source(name: str) -> None:
     equilibrium = EQUILIBRIA[name]
