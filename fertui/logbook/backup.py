@@ -178,7 +178,7 @@ def _numbered(path: Path) -> Iterator[tuple[int, str]]:
 
 def _site_text(folder: Path) -> str:
     try:
-        return (folder / SITE_FILE).read_text(encoding="utf-8")
+        return (folder / SITE_FILE).read_bytes().decode("utf-8")
     except FileNotFoundError:
         return ""
     except (OSError, UnicodeDecodeError) as error:
