@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING
 
 from fertui.refusals import Refusal
 from fertui.tui.frame import FertuiApp
-from fertui.tui.settings import Settings, read_settings
+from fertui.tui.settings import read_settings
 from fertui.tui.terminal import read_terminal
 
 if TYPE_CHECKING:
@@ -31,17 +31,18 @@ def run(site_folder: Path, at: datetime | None = None) -> int:
 
     if not (site_folder / "site.toml").is_file():
         open_bench()  # says what is wrong
-    return run_on(open_bench, site_folder.name, at)
+    return run_on(open_bench, site_folder, at)
 
 
-def run_on(open_bench: Callable[[], Bench], place: str, at: datetime | None = None) -> int:
+def run_on(open_bench: Callable[[], Bench], folder: Path, at: datetime | None = None) -> int:
     """The same on any workbench."""
     refuse_bare_terminal()
     if not os.environ.get("NO_COLOR"):
         os.environ.pop("NO_COLOR", None)  # set but empty asks for nothing
     sys.setswitchinterval(THREAD_TURN)
-    settings = read_settings(known_ids())
-    app = FertuiApp(open_bench, place, at, settings, read_terminal(ascii_wanted=settings.ascii))
+    settings = read_settings(known_ids)
+    terminal = read_terminal(ascii_wanted=settings.ascii)
+    app = FertuiApp(open_bench, folder, at, settings, terminal, os.environ.get("FERTUI_OPERATOR", ""))
     app.run(mouse=settings.mouse)
     if app.fault is not None:
         raise app.fault
@@ -51,7 +52,9 @@ def run_on(open_bench: Callable[[], Bench], place: str, at: datetime | None = No
 def refuse_bare_terminal() -> None:
     """A terminal that cannot move its cursor is told of the plain command."""
     if os.environ.get("TERM", "dumb") in ("dumb", ""):
-        raise Refusal("This terminal (TERM=dumb) cannot show screens. 'fertui today SITE' prints the same as plain text.")
+        raise Refusal(
+            "This terminal (TERM=dumb) cannot show screens. 'fertui today SITE' prints the same as plain text."
+        )
     if not (sys.stdin.isatty() and sys.stderr.isatty()):
         raise Refusal("There is no terminal here. 'fertui today SITE' prints the same as plain text.")
 

@@ -40,12 +40,12 @@ def _history(bench: Bench, ask: Ask, moment: datetime) -> Any:
 
 
 USE_CASES: dict[str, UseCase] = {
-    "overview": _overview, "balance": _balance, "stock": _untimed, "acid": _untimed, "aims": _untimed,
+    "overview": _overview, "balance": _balance, "stock": _untimed, "acid": _untimed, "aims": _untimed, "previous": _untimed,
     "check": _whole, "history": _history,
 }  # fmt: skip
 """Use cases that take other arguments than loop and time."""
 
-QUICK = frozenset({"glance", "history", "aims", "stock", "acid", "analysis"})
+QUICK = frozenset({"glance", "previous", "history", "aims", "stock", "acid", "analysis"})
 """Use cases that run no model: they go to the desk that must not wait."""
 
 

@@ -118,6 +118,6 @@ def age(moment: datetime, now: datetime) -> str:
     passed = now - moment
     if passed < timedelta(hours=1):
         return "under 1 h"
-    if passed < timedelta(hours=36):
+    if passed < timedelta(hours=48):
         return f"{passed / timedelta(hours=1):.0f} h"
     return f"{passed.days} days"

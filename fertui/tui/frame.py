@@ -6,25 +6,35 @@ from collections.abc import Callable
 from dataclasses import replace
 from datetime import UTC, datetime
 from functools import partial
+from pathlib import Path
 from typing import TYPE_CHECKING, Any, ClassVar, cast
 
+from textual import events
 from textual.app import App, ComposeResult
+from textual.geometry import Size
 from textual.reactive import var
 from textual.screen import Screen
 
+from fertui.refusals import FileTrouble, Refusal
 from fertui.tui import leaving
+from fertui.tui.actions import action_list
 from fertui.tui.asking import QUICK, call_for
 from fertui.tui.desk import Answer, Call, Came, Desk
+from fertui.tui.drafts import Draft, Drafts
 from fertui.tui.driver import LineGone, ThinLineDriver
 from fertui.tui.faults import fault_sentence
+from fertui.tui.forms.offer import offer
 from fertui.tui.header_line import HeaderLine
+from fertui.tui.help import HelpPage
+from fertui.tui.initials import Initials
 from fertui.tui.key_line import KeyLine, key_name
 from fertui.tui.keys import GLOBAL_KEYS, VIEW_NAMES
-from fertui.tui.settings import Settings
+from fertui.tui.prompt import Prompt
+from fertui.tui.settings import Settings, write_settings
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.stage import Stage
 from fertui.tui.terminal import Terminal
-from fertui.tui.themes import THEMES, usual_theme
+from fertui.tui.themes import NAMES, THEMES, usual_theme
 from fertui.tui.view import View
 from fertui.tui.view_line import ViewLine
 from fertui.tui.views import view_numbered
@@ -45,10 +55,11 @@ class Frame(Screen[None], inherit_bindings=False):
         yield ViewLine()
         yield Stage()
         yield KeyLine()
+        yield Prompt()
 
-    def on_mount(self) -> None:
+    async def on_mount(self) -> None:
         """The parts stand: begin."""
-        cast("FertuiApp", self.app).begin()
+        await cast("FertuiApp", self.app).begin()
 
     def on_resize(self) -> None:
         """A new size: nothing of what the terminal shows is known."""
@@ -65,10 +76,18 @@ class FertuiApp(App[int], inherit_bindings=False):
     snapshot: var[Snapshot] = var(Snapshot, init=False)
 
     def __init__(
-        self, open_bench: Callable[[], Bench], place: str, at: datetime | None, settings: Settings, terminal: Terminal
+        self,
+        open_bench: Callable[[], Bench],
+        folder: Path,
+        at: datetime | None,
+        settings: Settings,
+        terminal: Terminal,
+        operator: str = "",
     ) -> None:
         super().__init__(driver_class=ThinLineDriver)
-        self.terminal, self.settings, self.place = terminal, settings, place
+        self.terminal, self.settings, self.folder = terminal, settings, folder
+        self.drafts = Drafts(folder)
+        self.initials = Initials(operator, settings.initials_minutes)
         self.fixed_at = at
         self.moment = at or datetime.now(UTC)
         self.fault: BaseException | None = None
@@ -88,10 +107,10 @@ class FertuiApp(App[int], inherit_bindings=False):
         """The frame."""
         return Frame()
 
-    def begin(self) -> None:
+    async def begin(self) -> None:
         """Show the frame at once; numbers follow when the desks have them."""
         leaving.on_signals(self._leave_at_once)
-        self.action_view(1)
+        await self.action_view(1)
         self.set_interval(LOOK_FOR_NEWS_EVERY, self._look_for_news)
         self.clerk(lambda bench: (bench.site, bench.loops, bench.last_number()), self._opened)
 
@@ -140,6 +159,8 @@ class FertuiApp(App[int], inherit_bindings=False):
         self._clerk.put(Call(work, then, name))
 
     def _look_for_news(self) -> None:
+        if self.initials.now != self.snapshot.initials:
+            self.snapshot = replace(self.snapshot, initials=self.initials.now)
         if self.snapshot.loop:
             self.clerk(lambda bench: bench.last_number(), self._news)
 
@@ -174,7 +195,7 @@ class FertuiApp(App[int], inherit_bindings=False):
 
     def _where(self) -> str:
         if self.snapshot.site is None:
-            return self.place
+            return self.folder.name
         site, loop = self.snapshot.site, self.snapshot.site.loop(self.snapshot.loop)
         grown = ", ".join(word for word in (loop.crop, loop.stage, loop.medium) if word and word != "none")
         return f"{site.name}, {loop.name}: {grown}"
@@ -185,6 +206,14 @@ class FertuiApp(App[int], inherit_bindings=False):
         from zoneinfo import ZoneInfo
 
         return self.moment.astimezone(ZoneInfo(self.snapshot.site.timezone))
+
+    async def on_event(self, event: events.Event) -> None:
+        """Every key keeps the initials in force and clears the notice."""
+        if isinstance(event, events.Key) and not event.is_forwarded:
+            self.initials.touch()
+            if self._notice[0]:
+                self.say("")
+        await super().on_event(event)
 
     def say(self, notice: str, ink: str = "faint") -> None:
         """A notice in the bottom line, until the next key."""
@@ -208,7 +237,92 @@ class FertuiApp(App[int], inherit_bindings=False):
         own = {binding.id for bindings in page._bindings.key_to_bindings.values() for binding in bindings}
         shown = {a.binding.id: a.binding for a in reversed(self.screen.active_bindings.values()) if a.binding.show}
         ordered = sorted(reversed(shown.values()), key=lambda binding: binding.id not in own)
+        if self.query_one(Stage).piled:
+            ordered = [binding for binding in ordered if binding.id in own]
         return [(key_name(binding.key), binding.description) for binding in ordered]
+
+    # entries
+
+    async def action_enter(self, kind: str) -> None:
+        """Open the form of a kind, or first offer what was half filled in."""
+        if self.snapshot.site is None:
+            return
+        from fertui.tui.forms.form import Form
+        from fertui.tui.forms.kinds import form_for
+
+        site, loop = self.snapshot.site, self.snapshot.loop
+        form = Form(form_for(kind, site, site.loop(loop), self.snapshot.unit), loop)
+        draft = self.drafts.find(form.spec.kind, loop)
+        await self.open_page(form)
+        if draft is not None:
+            await self.open_page(offer(draft, form, self.moment))
+
+    async def action_entries(self) -> None:
+        """List the kinds that have no key of their own."""
+        from fertui.tui.chooser import Chooser, Option
+        from fertui.tui.forms.kinds import OTHER_KINDS
+
+        options = [Option(kind, about) for kind, about in OTHER_KINDS.items()]
+        await self.open_page(
+            Chooser("What has happened?", options, lambda kind: self.call_next(self.action_enter, kind))
+        )
+
+    def keep_draft(self, kind: str, loop: str, texts: tuple[str, ...]) -> None:
+        """Keep a half-filled form."""
+        self.drafts.keep(kind, loop, Draft(self.initials.now, datetime.now(UTC), texts))
+
+    def drop_draft(self, kind: str, loop: str) -> None:
+        """The form was saved or is not wanted."""
+        self.drafts.drop(kind, loop)
+
+    def with_initials(self, then: Callable[[str], None]) -> None:
+        """Go on with the initials of whoever is at the keyboard, asked for where they are not known."""
+        if self.initials.now:
+            then(self.initials.now)
+            return
+
+        def given(text: str) -> None:
+            try:
+                initials = self.initials.give(text)
+            except Refusal as no:
+                self.ask(str(no), given)
+                return
+            self.snapshot = replace(self.snapshot, initials=initials)
+            then(initials)
+
+        self.ask("Your initials:", given)
+
+    # pages and questions above a view
+
+    @property
+    def stage_size(self) -> Size:
+        """The room there is for a page."""
+        return self.query_one(Stage).size
+
+    async def open_page(self, page: View) -> None:
+        """Show a form, a list or a text above the view; keys that follow are for it."""
+        self._notice = ("", "faint")
+        await self.query_one(Stage).push(page)
+        self.work_out()
+
+    def close_page(self) -> None:
+        """Back to what was open before."""
+        self.query_one(Stage).pop()
+        if self.page is not None:
+            self.page.redraw()
+        self.work_out()
+
+    def ask(self, question: str, then: Callable[[str], None], text: str = "") -> None:
+        """Ask one question in the bottom line."""
+        self.query_one(KeyLine).display = False
+        self.query_one(Prompt).ask(question, then, text)
+
+    def end_prompt(self) -> None:
+        """Give the bottom line back to the keys and the page its focus."""
+        self.query_one(Prompt).display = False
+        self.query_one(KeyLine).display = True
+        if self.page is not None:
+            self.page.focus(scroll_visible=False)
 
     def forget_screen(self) -> None:
         """Have everything sent again with the next repaint."""
@@ -217,11 +331,11 @@ class FertuiApp(App[int], inherit_bindings=False):
 
     # actions
 
-    def action_view(self, number: int) -> None:
+    async def action_view(self, number: int) -> None:
         """Open a view."""
         self.open_view = number
         self._notice = ("", "faint")
-        self.query_one(Stage).open_view(number, view_numbered(number))
+        await self.query_one(Stage).open_view(number, view_numbered(number))
         self.draw_frame()
         if self.page is not None:
             self.page.redraw()
@@ -238,6 +352,29 @@ class FertuiApp(App[int], inherit_bindings=False):
     def action_unit(self) -> None:
         """Show amounts in the next unit."""
         self.snapshot = self.snapshot.next_unit()
+
+    def action_theme(self) -> None:
+        """The next look."""
+        self.theme = NAMES[(NAMES.index(self.theme) + 1) % len(NAMES)]
+        self.keep_settings(replace(self.settings, theme=self.theme))
+        self.say(f"colours: {self.theme}")
+
+    def keep_settings(self, settings: Settings) -> None:
+        """Remember a choice for the next time."""
+        self.settings = settings
+        try:
+            write_settings(settings)
+        except FileTrouble as trouble:
+            self.say(str(trouble), "watch")
+
+    async def action_actions(self) -> None:
+        """List every action."""
+        await self.open_page(action_list(self))
+
+    async def action_help(self) -> None:
+        """Help for the page that shows."""
+        if self.page is not None and not isinstance(self.page, HelpPage):
+            await self.open_page(HelpPage(self.page))
 
     def action_again(self) -> None:
         """As of now, worked out again, drawn again."""

@@ -8,7 +8,21 @@ from dataclasses import dataclass
 from functools import lru_cache
 from textwrap import wrap as wrap_words
 
-INKS = ("plain", "faint", "strong", "title", "good", "watch", "act", "accent", "band", "chosen", "field", "bar", "struck")
+INKS = (
+    "plain",
+    "faint",
+    "strong",
+    "title",
+    "good",
+    "watch",
+    "act",
+    "accent",
+    "band",
+    "chosen",
+    "field",
+    "bar",
+    "struck",
+)
 """Names of the inks; the style sheets give each its colour and weight."""
 
 

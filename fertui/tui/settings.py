@@ -8,7 +8,7 @@ from __future__ import annotations
 import difflib
 import os
 import sys
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
@@ -54,8 +54,8 @@ def state_folder(environment: Mapping[str, str] = os.environ, platform: str = sy
     return Path(environment.get("XDG_STATE_HOME") or home / ".local" / "state") / "fertui"
 
 
-def read_settings(known_keys: Iterable[str], folder: Path | None = None) -> Settings:
-    """The settings file, or the usual settings where there is none.
+def read_settings(known_keys: Callable[[], Iterable[str]], folder: Path | None = None) -> Settings:
+    """The settings file, or the usual settings where there is none. ``known_keys`` gives the ids keys may be set for.
 
     Raises ``Refusal`` naming file, key, value and what is allowed, with the nearest known key for an unknown one.
     """
@@ -67,14 +67,18 @@ def read_settings(known_keys: Iterable[str], folder: Path | None = None) -> Sett
     try:
         table = tomllib.loads(path.read_text(encoding="utf-8"))
     except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
-        raise Refusal(f"{path}: not readable as TOML ({error}). Correct it, or remove it for the usual settings.") from None
+        raise Refusal(
+            f"{path}: not readable as TOML ({error}). Correct it, or remove it for the usual settings."
+        ) from None
     for key, value in table.items():
         _check(path, key, value)
     bindings = table.get("keys", {})
-    known = set(known_keys)
+    known = set(known_keys()) if bindings else set()  # collecting them loads every view: only when keys are set
     for name, key in bindings.items():
         if name not in known:
-            raise Refusal(f"{path}: keys.{name} is not an action{_near(name, known)}. The list of actions (x) shows all names.")
+            raise Refusal(
+                f"{path}: keys.{name} is not an action{_near(name, known)}. The list of actions (x) shows all names."
+            )
         if not isinstance(key, str) or not key:
             raise Refusal(f"{path}: keys.{name} is {key!r}; it must be a key such as 'r', 'f2' or 'ctrl+o'.")
     return Settings(**table)
@@ -112,5 +116,7 @@ def write_settings(settings: Settings, folder: Path | None = None) -> Path:
         fresh.write_text(tomli_w.dumps(table), encoding="utf-8")
         fresh.replace(path)
     except OSError as error:
-        raise FileTrouble(f"{path}: settings could not be kept ({error.strerror}). They hold until you leave.") from None
+        raise FileTrouble(
+            f"{path}: settings could not be kept ({error.strerror}). They hold until you leave."
+        ) from None
     return path

@@ -31,7 +31,7 @@ class Stage(Widget):
         """Pages above the view."""
         return len(self._pile)
 
-    def open_view(self, number: int, make: type[View]) -> None:
+    async def open_view(self, number: int, make: type[View]) -> None:
         """Show a view and drop what was piled above the one before."""
         hidden = self.top
         for page in self._pile:
@@ -44,21 +44,21 @@ class Stage(Widget):
             self._views[number].display = True
         else:
             self._views[number] = make()
-            self._mount(self._views[number])
-        self._views[number].focus(scroll_visible=False)
+            await self._mount(self._views[number])
+        self.screen.set_focus(self._views[number], scroll_visible=False)
 
-    def _mount(self, page: View) -> None:
+    async def _mount(self, page: View) -> None:
         """Add a page with its lines ready, so that its first paint is not a blank one."""
         page.prepare(cast("FertuiApp", self.app).snapshot, self.size)
-        self.mount(page)
+        await self.mount(page)
 
-    def push(self, page: View) -> None:
+    async def push(self, page: View) -> None:
         """Show a page above the others."""
         if self.top is not None:
             self.top.display = False
         self._pile.append(page)
-        self._mount(page)
-        page.focus(scroll_visible=False)
+        await self._mount(page)
+        self.screen.set_focus(page, scroll_visible=False)
 
     def pop(self) -> None:
         """Take the top page away."""
@@ -66,4 +66,4 @@ class Stage(Widget):
             self._pile.pop().remove()
             if self.top is not None:
                 self.top.display = True
-                self.top.focus(scroll_visible=False)
+                self.screen.set_focus(self.top, scroll_visible=False)

@@ -69,6 +69,10 @@ class View(Page, can_focus=True):
         elif row >= self._top + self.size.height:
             self._top = row - self.size.height + 1
 
+    def action_close(self) -> None:
+        """Back to what was open before."""
+        self.fertui.close_page()
+
     def _scroll(self, top: int) -> None:
         self._top = max(0, min(top, self._total - self.size.height))
         self.redraw()
@@ -98,5 +102,11 @@ def waiting(snapshot: Snapshot, ask: Ask, what: str, width: int) -> list[Line]:
     """What stands in place of an answer: that it is being worked out, or the sentence why it cannot be had."""
     trouble = snapshot.trouble(ask)
     if trouble:
-        return [line(), *(line(" ", Span("! " if i == 0 else "  ", "watch"), text) for i, text in enumerate(wrap(trouble, width - 4)))]
+        return [
+            line(),
+            *(
+                line(" ", Span("! " if i == 0 else "  ", "watch"), text)
+                for i, text in enumerate(wrap(trouble, width - 4))
+            ),
+        ]
     return [line(), line(" ", Span(f"Working out {what}.", "faint"))]

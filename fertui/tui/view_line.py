@@ -23,7 +23,11 @@ def view_names(names: Sequence[str], open_view: int, loops: str, width: int) -> 
         for number, name in enumerate(names, 1):
             chosen = number == open_view
             if every or chosen:
-                spans += [between, Span(f"{number}", "chosen" if chosen else "accent"), Span(gap + name, "chosen" if chosen else "plain")]
+                spans += [
+                    between,
+                    Span(f"{number}", "chosen" if chosen else "accent"),
+                    Span(gap + name, "chosen" if chosen else "plain"),
+                ]
             else:
                 spans += [between, Span(f"{number}", "accent")]
         row = line(" ", *spans[1:])

@@ -8,7 +8,7 @@ from pathlib import Path
 from types import SimpleNamespace
 
 from fertui.estimate.points import Estimated, IonState, PointState
-from fertui.site.model import Loop, Site
+from fertui.workbench import Bench
 
 AT = datetime(2026, 12, 1, 7, 42, tzinfo=UTC)
 
@@ -33,38 +33,15 @@ def point(k=4.6, ca=11.2, mg=5.0, na=6.2):
     )  # fmt: skip
 
 
-class HandMade:
-    """Answers like the workbench of a site with two loops."""
+class HandMade(Bench):
+    """The demo's real logbook under results made by hand."""
 
-    def __init__(self, folder=Path(".")):
-        self.folder = folder
-        self.site = Site(
-            "North bay", "UTC",
-            (Loop("slabs", "drain-blend", 1000, "tomato", "coir", stage="5th truss", feed_ec=2.6),
-             Loop("gullies", "shared-tank", 200, "lettuce", "none", stage="head", tank_l=2000)),
-        )  # fmt: skip
-        self.loops = tuple(loop.name for loop in self.site.loops)
-
-    def last_number(self):
-        return 1
-
-    def glance(self, loop, at):
-        from fertui.workbench.glance import Glance, Seen
-
-        def seen(n, hours, where, **values):
-            return Seen(n, AT - timedelta(hours=hours), where, "MK", values)
-
-        readings = {"feed": seen(3, 0.5, "feed", EC=2.6, pH=5.6, temperature=19.5), "drain": seen(4, 0.5, "drain", EC=4.1, pH=5.9)}
-        if loop == "gullies":
-            readings = {"tank": seen(5, 20, "tank", EC=1.8, pH=6.1)}
-        l = self.site.loop(loop)
-        return Glance(loop, l.layout, l.crop, l.stage, l.medium, AT, "tank" if loop == "gullies" else "root_zone", readings, seen(2, 24 * 5, "root_zone", K=5), 2.6, 5.6)
-
-    def today(self, loop, at):
+    def today(self, loop=None, at=None, known=None):
         from fertui.workbench.today import Gauge, Today
 
-        where = "tank" if loop == "gullies" else "root_zone"
-        state = point() if loop == "slabs" else point(6.0, 4.0, 1.6, 3.0)
+        slabs = loop != "lettuce"
+        where = "root_zone" if slabs else "tank"
+        state = point() if slabs else point(6.0, 4.0, 1.6, 3.0)
         def gauge(what, now, unit, course, leaves):
             return Gauge(what, unit, now, tuple(course), 14, leaves)
         ions = state.ions
@@ -81,16 +58,20 @@ class HandMade:
             N("share_out", "act", "K share in the root zone is 12 %, band 18-28 %. EC is on set point, so EC did not show it.", "p"),
             N("analysis_old", "watch", "Analysis is 9 days old; a sample today would halve the range.", "e"),
             N("log_missing", "note", "Drain of yesterday is not logged.", "w"),
-        ) if loop == "slabs" else (N("x", "note", "No reading since yesterday 11:42.", "r"),)
+        ) if slabs else (N("x", "note", "No reading since yesterday 11:42.", "r"),)
         glance = self.glance(loop, at)
-        return Today(loop, glance.layout, glance.crop, glance.stage, glance.medium, AT, where, {where: state}, glance.last_analysis, None,
+        return Today(loop, glance.layout, glance.crop, glance.stage, glance.medium, at, where, {where: state}, glance.last_analysis, None,
                      glance.readings, 2.6, 5.6, 31.0, 640.0, {"calcium": 4.1, "sulfate": 2.9}, g, watch, 5, ("sample of the drain sent Mon 30 Nov",), ())
 
-    def overview(self, at):
+    def record_all(self, entries, loop):
+        return tuple(self.record(kind, texts, loop) for kind, texts in entries)
+
+    def overview(self, at=None, known=None):
         return tuple(self.today(name, at) for name in self.loops)
 
 
 if __name__ == "__main__":
     from fertui.tui.app import run_on
 
-    sys.exit(run_on(HandMade, "hand-made", AT))
+    here = Path(sys.argv[1])
+    sys.exit(run_on(lambda: HandMade(here), here))

@@ -182,13 +182,20 @@ def gauges(state: Today, snapshot: Snapshot, width: int) -> list[Line]:
     heads = fit("band", gauge_width + 1) if gauge_width else ""
     heads += fit("28 days", course_width + 1) if course_width else ""
     title = fit(f" {point_name(state.managed_point, state.layout)}", 11)
-    rows = [line(Span(title, "title"), Span(f"{snapshot.unit + ' (80 %)':>14} {'share':>7}  {heads}leaves band", "faint"))]
+    rows = [
+        line(Span(title, "title"), Span(f"{snapshot.unit + ' (80 %)':>14} {'share':>7}  {heads}leaves band", "faint"))
+    ]
     for each in state.gauges:
         label, value, limits = _amounts(each, point, snapshot.unit)
         ink = standing(each.now) or "faint"
         spark = (charts.course(each.course, each.today_index, course_width), " ") if course_width else ((), "")
         picture = charts.gauge(each.now, gauge_width, ink) if gauge_width else BLANK
-        row = line(f" {fit(label, 6)}", Span(f"{value[0]:>6}", "strong"), Span(f"{f'({value[1]})':>12}", "faint"), f" {limits:>7}  ")
+        row = line(
+            f" {fit(label, 6)}",
+            Span(f"{value[0]:>6}", "strong"),
+            Span(f"{f'({value[1]})':>12}", "faint"),
+            f" {limits:>7}  ",
+        )
         mark = Span(f"{MARKS[ink]} {each.leaves}", ink if ink != "good" else "plain")
         rows.append(line(*row, *picture, " " if gauge_width else "", *spark[0], spark[1], mark))
     return rows
@@ -242,7 +249,9 @@ def _notice(severity: str, text: str, key: str, width: int) -> list[Line]:
 def draw_overview(snapshot: Snapshot, chosen: int, width: int) -> list[Line]:
     """One block a loop, worst first: what it is, how its shares stand, the first thing to look at."""
     states = {state.loop: state for state in snapshot.get(Ask("overview")) or ()}
-    rows: list[Line] = [line(Span(fit(" All loops, worst first", width - 22), "title"), Span("Enter opens, v one loop", "faint"))]
+    rows: list[Line] = [
+        line(Span(fit(" All loops, worst first", width - 22), "title"), Span("Enter opens, v one loop", "faint"))
+    ]
     for index, name in enumerate(_order(snapshot)):
         rows += [BLANK, *_loop_block(name, snapshot, states.get(name), index == chosen, width)]
     trouble = snapshot.trouble(Ask("overview"))
@@ -262,7 +271,11 @@ def _loop_block(name: str, snapshot: Snapshot, state: Today | None, chosen: bool
     for each in state.gauges:
         ink = standing(each.now) or "faint"
         digits = 0 if each.unit == "%" else None
-        cells.append(line(Span(f"{MARKS[ink]} ", ink), f"{each.what} ", Span(f"{estimated(each.now, digits)[0]} {each.unit}", ink)))
+        cells.append(
+            line(
+                Span(f"{MARKS[ink]} ", ink), f"{each.what} ", Span(f"{estimated(each.now, digits)[0]} {each.unit}", ink)
+            )
+        )
     rows += _flow(cells, width)
     for notice in state.watch[:1]:
         rows += _notice(notice.severity, notice.text, notice.key, width)

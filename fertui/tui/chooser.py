@@ -1,0 +1,120 @@
+"""A list to choose from: move with the arrows or type part of a name, Enter takes it."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import ClassVar
+
+from textual import events
+from textual.binding import Binding
+
+from fertui.tui.ink import BLANK, Line, Span, cells, filled, fit, line, literal
+from fertui.tui.snapshot import Snapshot
+from fertui.tui.view import SCROLLING, View
+
+
+@dataclass(frozen=True, slots=True)
+class Option:
+    """Something to choose: what it is called, what it means, the key that does the same from outside, its value."""
+
+    name: str
+    about: str = ""
+    key: str = ""
+    value: str = ""
+
+
+class Chooser(View):
+    """Shows options, narrows them by what is typed, hands the chosen value over."""
+
+    TITLE = "Choose"
+    HELP = "Up and Down move the bar, Enter takes what is under it, typing narrows the list, Backspace widens it, Esc leaves."
+    BINDINGS: ClassVar = [
+        *(binding for binding in SCROLLING if binding.key != "pagedown,space"),
+        Binding("pagedown", "leaf(1)", "page down", show=False, id="page.pagedown", tooltip="A screenful down."),
+        Binding("enter", "take", "take it", id="choose.take", tooltip="Take what is under the bar."),
+        Binding("escape", "close", "leave", id="page.close", tooltip="Back to where you were."),
+    ]
+
+    def __init__(self, title: str, options: Sequence[Option], then: Callable[[str], None], narrows: bool = True) -> None:
+        super().__init__()
+        self._narrows = narrows
+        self._title, self._options, self._then = title, tuple(options), then
+        self._typed = ""
+        self._row = 0
+
+    @property
+    def _left(self) -> list[Option]:
+        wanted = self._typed.lower()
+        return [each for each in self._options if wanted in f"{each.name} {each.about}".lower()]
+
+    def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
+        """Title, what was typed, and the options left."""
+        narrowed = f"  containing {self._typed!r}" if self._typed else "  type to narrow" if self._narrows else ""
+        rows: list[Line] = [line(Span(f" {self._title}", "title"), Span(literal(narrowed), "faint")), BLANK]
+        size = max((cells(each.name) for each in self._options), default=0)
+        for index, each in enumerate(self._left):
+            rows.append(option_row(each, min(size, width - 20), index == self._row, width))
+        return (
+            rows
+            if len(rows) > 2
+            else [*rows, line(" ", Span("Nothing has that in it; Backspace widens the list.", "faint"))]
+        )
+
+    def on_key(self, event: events.Key) -> None:
+        """Typing narrows the list, where it may."""
+        if not self._narrows:
+            if event.is_printable:
+                event.stop()
+                event.prevent_default()
+            return
+        if event.is_printable and event.character:
+            self._typed += event.character
+        elif event.key == "backspace":
+            self._typed = self._typed[:-1]
+        else:
+            return
+        event.stop()
+        event.prevent_default()
+        self._row = 0
+        self.redraw()
+
+    def _move(self, row: int) -> None:
+        self._row = max(0, min(row, len(self._left) - 1))
+        self.reveal(self._row + 2)
+        self.redraw()
+
+    def action_up(self) -> None:
+        """The option above."""
+        self._move(self._row - 1)
+
+    def action_down(self) -> None:
+        """The option below."""
+        self._move(self._row + 1)
+
+    def action_leaf(self, leaves: int) -> None:
+        """A screenful of options on."""
+        self._move(self._row + leaves * (self.size.height - 3))
+
+    def action_top(self) -> None:
+        """The first option."""
+        self._move(0)
+
+    def action_bottom(self) -> None:
+        """The last option."""
+        self._move(len(self._options))
+
+    def action_take(self) -> None:
+        """Close the list and hand over."""
+        left = self._left
+        if left:
+            self.fertui.close_page()
+            self._then(left[self._row].value or left[self._row].name)
+
+
+def option_row(option: Option, size: int, chosen: bool, width: int) -> Line:
+    """Key, name and meaning in one line, the chosen one as a bar with a mark."""
+    mark = "▸ " if chosen else "  "
+    row = line(mark, Span(fit(option.key, 6), "accent"), Span(fit(literal(option.name), size), "strong"), "  ")
+    row = filled(line(*row, literal(option.about)), width)
+    return (Span("".join(span.text for span in row), "chosen"),) if chosen else row

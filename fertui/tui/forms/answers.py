@@ -1,0 +1,107 @@
+"""What a form has been told so far: texts, what was understood of them, what was asked about them. Immutable."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
+
+from fertui.tui.forms.spec import Asked, Spec
+from fertui.tui.typing_line import Typed
+
+
+@dataclass(frozen=True, slots=True)
+class Answers:
+    """The state of a form being filled in.
+
+    ``texts``: one a field. ``typed``: the field under the cursor as it is being typed. ``understood``: echo a field.
+    ``doubts``: what is odd about a field, by number; ``settled``: doubts that were answered by keeping the value.
+    """
+
+    spec: Spec
+    texts: tuple[str, ...]
+    at: int = 0
+    typed: Typed = field(default_factory=Typed)
+    understood: Mapping[int, str] = field(default_factory=dict)
+    doubts: Mapping[int, str] = field(default_factory=dict)
+    settled: frozenset[tuple[int, str]] = frozenset()
+
+    @classmethod
+    def blank(cls, spec: Spec) -> Answers:
+        """Nothing typed yet, defaults in their fields."""
+        return cls(spec, tuple(each.default for each in spec.fields)).moved(0)
+
+    @property
+    def current(self) -> Asked:
+        """The field under the cursor."""
+        return self.spec.fields[self.at]
+
+    @property
+    def changed(self) -> bool:
+        """Whether anything was typed or chosen."""
+        return self.with_typed_kept().texts != tuple(each.default for each in self.spec.fields)
+
+    def with_typed_kept(self) -> Answers:
+        """What is being typed counts as the text of its field."""
+        text = self.typed.text.strip()
+        if text == self.texts[self.at]:
+            return self
+        texts = (*self.texts[: self.at], text, *self.texts[self.at + 1 :])
+        without = {number: echo for number, echo in self.understood.items() if number != self.at}
+        return replace(self, texts=texts, understood=without)
+
+    def moved(self, to: int) -> Answers:
+        """The cursor in another field, what was typed kept."""
+        kept = self.with_typed_kept() if self.texts else self
+        to = max(0, min(to, len(self.spec.fields) - 1))
+        return replace(kept, at=to, typed=Typed.at_end(kept.texts[to]))
+
+    def next_group(self, step: int = 1) -> Answers:
+        """The cursor in the first field of the next group, round about."""
+        starts, number = [], 0
+        for group in self.spec.groups:
+            starts.append(number)
+            number += len(group.fields)
+        own = max(index for index, start in enumerate(starts) if start <= self.at)
+        return self.moved(starts[(own + step) % len(starts)])
+
+    def type(self, characters: str) -> Answers:
+        """Characters typed: into the text, or to pick a choice by its beginning."""
+        if self.current.choices:
+            return self._picked(characters)
+        return replace(self, typed=self.typed.insert(characters))
+
+    def edit(self, key: str) -> Answers | None:
+        """An editing key, None when it is none here."""
+        if self.current.choices:
+            step = {"left": -1, "right": 1, "space": 1}.get(key)
+            return None if step is None else self._stepped(step)
+        typed = self.typed.edit(key)
+        return None if typed is None else replace(self, typed=typed)
+
+    def _picked(self, characters: str) -> Answers:
+        """The next choice that begins with the character typed; a digit counts them from one."""
+        choices, character = self.current.choices, characters[:1].lower()
+        if character.isdigit() and 1 <= int(character) <= len(choices):
+            return replace(self, typed=Typed.at_end(choices[int(character) - 1]))
+        if character == " ":
+            return self._stepped(1)
+        here = choices.index(self.typed.text) if self.typed.text in choices else -1
+        for choice in (*choices[here + 1 :], *choices[: here + 1]):
+            if choice.lower().startswith(character):
+                return replace(self, typed=Typed.at_end(choice))
+        return self
+
+    def _stepped(self, step: int) -> Answers:
+        choices = self.current.choices
+        here = choices.index(self.typed.text) if self.typed.text in choices else -1 if step > 0 else 0
+        return replace(self, typed=Typed.at_end(choices[(here + step) % len(choices)]))
+
+    def heard(self, number: int, echo: str, doubt: str) -> Answers:
+        """What was understood of a field, and what is odd about it."""
+        doubts = {**self.doubts, number: doubt} if doubt else {n: d for n, d in self.doubts.items() if n != number}
+        return replace(self, understood={**self.understood, number: echo}, doubts=doubts)
+
+    def settle(self, number: int) -> Answers:
+        """The doubt about a field is answered: its value stays."""
+        doubts = {n: d for n, d in self.doubts.items() if n != number}
+        return replace(self, doubts=doubts, settled=self.settled | {(number, self.texts[number])})

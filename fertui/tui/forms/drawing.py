@@ -1,0 +1,144 @@
+"""How a form looks: label, field, unit, last value, what was understood; one or two columns; a word below."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from datetime import datetime
+
+from fertui.tui.figures import age
+from fertui.tui.forms.answers import Answers
+from fertui.tui.forms.spec import EVERY, Asked, Group
+from fertui.tui.ink import BLANK, Line, Span, cut, filled, fit, line, literal, wrap
+
+Last = Mapping[tuple[str, str, str, str], tuple[str, datetime]]
+NARROW = 76
+"""Columns below which a form of two columns becomes one of one."""
+
+
+def draw_form(answers: Answers, last: Last, now: datetime, width: int) -> tuple[list[Line], int]:
+    """All lines of the fields, and the line of the field under the cursor."""
+    if answers.spec.columns == 1 or width < NARROW:
+        return _one_column(answers, last, now, width)
+    return _two_columns(answers, last, now, width)
+
+
+def _one_column(answers: Answers, last: Last, now: datetime, width: int) -> tuple[list[Line], int]:
+    rows: list[Line] = []
+    number = at = 0
+    for group in answers.spec.groups:
+        if group.title:
+            rows.append(line(Span(f" {literal(group.title)}", "title")))
+        for _ in group.fields:
+            if number == answers.at:
+                at = len(rows)
+            rows.append(_row(answers, number, last, now, width))
+            number += 1
+    return rows, at
+
+
+def _row(answers: Answers, number: int, last: Last, now: datetime, width: int) -> Line:
+    each = answers.spec.fields[number]
+    here = number == answers.at
+    field_width = width - 27 if each.words else 24 if each.choices else 10
+    row = line(*_label(each, here, 22), *_field(answers, number, field_width))
+    if each.words or each.choices:
+        return row
+    before = last_of(last, answers, each)
+    said = f"last {_short(before[0])} ({age(before[1], now)})" if before else ""
+    row = line(*row, Span(f" {fit(each.unit, 7)}", "faint"), Span(f" {fit(said, 24)}", "faint"))
+    echo = answers.understood.get(number, "")
+    return line(*row, Span(cut(f"= {echo}", max(width - 68, 10)), "good")) if echo else row
+
+
+def _two_columns(answers: Answers, last: Last, now: datetime, width: int) -> tuple[list[Line], int]:
+    """The first group on top, the second on the left, the others on the right."""
+    first, left, *right = answers.spec.groups
+    rows: list[Line] = []
+    at = 0
+    for number, _ in enumerate(first.fields):
+        at = len(rows) if number == answers.at else at
+        rows.append(_row(answers, number, last, now, width))
+    half = (width - 1) // 2
+    start = len(first.fields)
+    one, one_at = _block(answers, [left], start, last, half)
+    two, two_at = _block(answers, right, start + len(left.fields), last, half)
+    at = at if answers.at < start else len(rows) + (one_at if answers.at < start + len(left.fields) else two_at)
+    height = max(len(one), len(two))
+    one, two = one + [BLANK] * (height - len(one)), two + [BLANK] * (height - len(two))
+    rows += [line(*_padded(a, half), " ", *b) for a, b in zip(one, two, strict=True)]
+    return rows, at
+
+
+def _block(answers: Answers, groups: Sequence[Group], number: int, last: Last, width: int) -> tuple[list[Line], int]:
+    rows: list[Line] = []
+    at = 0
+    for group in groups:
+        if group.title:
+            rows.append(line(Span(f" {group.title}", "title")))
+        for each in group.fields:
+            at = len(rows) if number == answers.at else at
+            rows.append(_cell(answers, each, number, last, width))
+            number += 1
+    return rows, at
+
+
+def _cell(answers: Answers, each: Asked, number: int, last: Last, width: int) -> Line:
+    here = number == answers.at
+    wide = each.words or bool(each.choices)
+    row = line(*_label(each, here, 15), *_field(answers, number, width - 18 if wide else 9))
+    if wide:
+        return row
+    echo = answers.understood.get(number, "")
+    before = last_of(last, answers, each)
+    said = Span(f"= {echo}", "good") if echo else Span(f"last {_short(before[0])}" if before else "", "faint")
+    return line(*row, Span(f" {fit(each.unit, 7)}", "faint"), Span(cut(said.text, width - 34), said.ink))
+
+
+def _label(each: Asked, here: bool, width: int) -> Line:
+    return line(
+        Span(" ▸ " if here else "   ", "accent"),
+        Span(fit(literal(each.label), width - 1) + " ", "strong" if here else "plain"),
+    )
+
+
+def _field(answers: Answers, number: int, width: int) -> Line:
+    each, here = answers.spec.fields[number], number == answers.at
+    ink = "watch" if number in answers.doubts else "field"
+    if each.choices:
+        text = literal((answers.typed.text if here else answers.texts[number]).replace("_", " "))
+        return line(Span(fit(f"< {text} >" if here else f"  {text}", width), "chosen" if here else ink))
+    if here:
+        return answers.typed.shown(width)
+    text = cut(literal(answers.texts[number]), width)
+    return line(Span(text + "_" * (width - len(text)), ink))
+
+
+def place_of(answers: Answers, each: Asked) -> tuple[str, str, str, str]:
+    """Where the last value of a field is found: kind, point, name and tank."""
+    part = answers.spec.parts[0 if each.entry == EVERY else each.entry]
+    chosen = dict(zip((f.name for f in answers.spec.fields if f.entry == each.entry), answers.texts, strict=False))
+    point = part.fixed.get("point") or chosen.get("point", "")
+    return part.kind, point, each.name, part.fixed.get("tank", chosen.get("tank", ""))
+
+
+def last_of(last: Last, answers: Answers, each: Asked) -> tuple[str, datetime] | None:
+    """The last value of a field; what belongs to the day and not to a point may have been logged with any."""
+    place = place_of(answers, each)
+    if each.name in ("light_sum", "drain_pct") and place not in last:
+        return next((found for (kind, _, name, _), found in last.items() if (kind, name) == (place[0], each.name)), None)
+    return last.get(place)
+
+
+def _short(text: str) -> str:
+    """A value as written, without its unit."""
+    return literal(text.split(" ")[0])
+
+
+def _padded(row: Line, width: int) -> Line:
+    return filled(row, width)
+
+
+def messages(words: Sequence[tuple[str, str]], width: int, height: int) -> list[Line]:
+    """Sentences in their ink, wrapped, at most ``height`` lines."""
+    rows = [line(Span(f" {text}", ink)) for words, ink in words for text in wrap(literal(words), width - 2)]
+    return rows[:height]

@@ -1,0 +1,326 @@
+"""A form being filled in: the walk from field to field, what is asked back, saving."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import replace
+from typing import TYPE_CHECKING, Any, ClassVar
+
+from textual import events
+from textual.binding import Binding
+
+from fertui.tui.desk import Answer
+from fertui.tui.forms.answers import Answers
+from fertui.tui.forms.drawing import Last, draw_form, last_of, messages
+from fertui.tui.forms.spec import Spec, Texts, entries_of
+from fertui.tui.ink import BLANK, Line, Span, line, literal
+from fertui.tui.snapshot import Ask, Snapshot
+from fertui.tui.view import View
+
+if TYPE_CHECKING:
+    from fertui.workbench import Bench
+
+MESSAGE_ROWS = 4
+"""Lines at the foot of a form for what is asked back and what does not fit together."""
+
+
+class Form(View):
+    """Asks the fields of a form, one after the other, and makes entries of them."""
+
+    TITLE = "Entry"
+    BINDINGS: ClassVar = [
+        Binding(
+            "enter",
+            "next",
+            "next",
+            id="form.next",
+            tooltip="Keep the value, go to the next field; after the last: save.",
+        ),
+        Binding("down", "step(1)", "down", show=False, id="form.down", tooltip="The field below."),
+        Binding("up", "step(-1)", "up", show=False, id="form.up", tooltip="The field above."),
+        Binding("tab", "group(1)", "group", id="form.group", tooltip="The first field of the next group."),
+        Binding("shift+tab", "group(-1)", "group before", show=False, id="form.back", tooltip="The group before."),
+        Binding("plus,f2", "save", "save", id="form.save", tooltip="Save (in a text field F2, as + is text there)."),
+        Binding("asterisk,f3", "same", "last value", id="form.same", tooltip="Take the last value again."),
+        Binding(
+            "escape", "close", "leave", id="form.leave", tooltip="Leave; what was typed is kept and offered again."
+        ),
+        Binding("f1,question_mark", "help", "help", id="help", tooltip="What this form is for."),
+    ]
+
+    def __init__(self, spec: Spec, loop: str, saved: Callable[[], None] | None = None) -> None:
+        super().__init__()
+        self.TITLE, self.HELP = spec.title, spec.help  # type: ignore[misc]
+        self.spec, self.loop = spec, loop
+        self.answers = Answers.blank(spec)
+        self._saved = saved
+        self._words: list[tuple[str, str]] = []
+        self._held: list[events.Key] = []
+        self._waiting = self._done = False
+        self._doubted: dict[int, tuple[str, ...]] = {}
+        self._confirmed: frozenset[str] = frozenset()
+
+    # drawing
+
+    def asks(self, snapshot: Snapshot) -> tuple[Ask, ...]:
+        """The last values."""
+        return (Ask("previous", self.loop),)
+
+    def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
+        """Title, fields, and at the foot what is said back."""
+        last: Last = snapshot.get(Ask("previous", self.loop)) or {}
+        rows, at = draw_form(self.answers, last, self.fertui.moment, width)
+        unit = f"bare numbers of ions are {self.spec.unit}" if self.spec.unit else "empty: not measured"
+        title = line(Span(f" {self.spec.title}, {literal(self.loop)}", "title"), Span(f"   {unit}", "faint"))
+        height = max(1, self.stage_height - 1 - self._foot)
+        top = max(0, min(at - height + 2, len(rows) - height))
+        shown = [*rows[top : top + height], *[BLANK] * (height - len(rows))]
+        return [title, *shown, *messages(self._words, width, self._foot)]
+
+    @property
+    def stage_height(self) -> int:
+        """Rows there are for the form."""
+        return self.size.height or self.fertui.stage_size.height
+
+    @property
+    def _foot(self) -> int:
+        return MESSAGE_ROWS
+
+    def say(self, *words: tuple[str, str]) -> None:
+        """Say sentences at the foot, each in its ink."""
+        self._words = list(words)
+        self.redraw()
+
+    # keys
+
+    def on_key(self, event: events.Key) -> None:
+        """Typing goes into the field; what is no text is left to the keys of the form."""
+        if self._waiting:
+            self._held.append(event)
+            event.stop()
+            event.prevent_default()
+        elif self._take(event):
+            event.stop()
+            event.prevent_default()
+
+    def _take(self, event: events.Key) -> bool:
+        """Whether the key was text or an editing key; then it is in the field."""
+        current = self.answers.current
+        if event.is_printable and event.character:
+            if current.is_number and event.character in "+*?":
+                return False
+            self._set(self.answers.type(event.character))
+            return True
+        edited = self.answers.edit(event.key)
+        if edited is None:
+            return False
+        self._set(edited)
+        return True
+
+    def on_paste(self, event: events.Paste) -> None:
+        """Pasted text counts as typed."""
+        event.stop()
+        if not self.answers.current.choices:
+            self._set(self.answers.type(event.text))
+
+    def _set(self, answers: Answers) -> None:
+        self.answers = answers
+        self.redraw()
+
+    def action_step(self, step: int) -> None:
+        """The field above or below."""
+        self._leave_field(lambda: self._set(self.answers.moved(self.answers.at + step)))
+
+    def action_group(self, step: int) -> None:
+        """The first field of another group."""
+        self._leave_field(lambda: self._set(self.answers.next_group(step)))
+
+    def action_next(self) -> None:
+        """The next field; after the last one, save."""
+        at = self.answers.at
+        if at in self.answers.doubts and self.answers.typed.text == self.answers.texts[at]:
+            self._confirmed |= set(self._doubted.get(at, ()))
+            self.answers = self.answers.settle(at)
+        if at + 1 < len(self.spec.fields):
+            self._leave_field(lambda: self._set(self.answers.moved(at + 1)))
+        else:
+            self.action_save()
+
+    def action_same(self) -> None:
+        """The last value again."""
+        last: Last = self.fertui.snapshot.get(Ask("previous", self.loop)) or {}
+        before = last_of(last, self.answers, self.answers.current)
+        if before is None:
+            self.say(("There is no last value of this in the logbook.", "watch"))
+        else:
+            self._set(replace(self.answers, typed=type(self.answers.typed).at_end(before[0])))
+
+    def action_close(self) -> None:
+        """Leave; what was typed is kept."""
+        self.keep_draft()
+        self._close()
+
+    def _close(self) -> None:
+        self._done = True
+        self.fertui.close_page()
+
+    # what a field holds
+
+    def _leave_field(self, go_on: Callable[[], None]) -> None:
+        """Have the field understood before the cursor leaves it; a refusal or a doubt keeps it there."""
+        self.answers = self.answers.with_typed_kept()
+        number, text = self.answers.at, self.answers.texts[self.answers.at]
+        each = self.answers.current
+        settled = (number, text) in self.answers.settled or number in self.answers.understood
+        if not text or each.choices or each.words or settled:
+            self._words = []
+            go_on()
+            return
+        kind, texts = self._entry_with(number)
+        loop = self.loop
+
+        def look(bench: Bench) -> tuple[str, tuple[str, ...]]:
+            return bench.echo(kind, each.name, texts[each.name], loop), _doubt(bench, kind, texts, each.name, loop)
+
+        self._waiting = True
+        self.fertui.clerk(look, lambda answer: self._heard(number, answer, go_on), "a field")
+
+    def _heard(self, number: int, answer: Answer, go_on: Callable[[], None]) -> None:
+        self._waiting = False
+        if answer.value is None:
+            self.say((answer.trouble, "act"))
+        else:
+            echo, self._doubted[number] = answer.value
+            doubts = self._doubted[number]
+            self.answers = self.answers.heard(number, echo, " ".join(doubts))
+            if doubts:
+                self.say(*((doubt, "watch") for doubt in doubts), ("Enter keeps it; or type it again.", "faint"))
+            else:
+                self._words = []
+                go_on()
+                self.keep_draft()
+        self._release()
+
+    def _release(self) -> None:
+        """Keys that came while the form waited, in their order."""
+        while self._held and not self._waiting:
+            event = self._held.pop(0)
+            if self._done or not self._take(event):
+                self.app.post_message(events.Key(event.key, event.character))
+                break
+        for event in self._held if not self._waiting else ():
+            self.app.post_message(events.Key(event.key, event.character))
+        if not self._waiting:
+            self._held.clear()
+
+    def _entry_with(self, number: int) -> tuple[str, Texts]:
+        """Kind and texts of the entry a field belongs to, as far as it is filled in."""
+        each = self.spec.fields[number]
+        part = self.spec.parts[max(each.entry, 0)]
+        for kind, texts in entries_of(self.spec, self.answers.texts):
+            if kind == part.kind and part.fixed.items() <= texts.items() and each.name in texts:
+                return kind, {**texts, "by": self.fertui.snapshot.initials or "?"}
+        return part.kind, {**part.fixed, each.name: self.answers.texts[number], "by": "?"}
+
+    # saving
+
+    def action_save(self) -> None:
+        """Look the whole form over, ask for initials where needed, write, and show what was read back."""
+        self._leave_field(self._look_over)
+
+    def _look_over(self) -> None:
+        found = entries_of(self.spec, self.answers.texts)
+        if not found:
+            self.say(("Nothing is filled in yet. Esc leaves the form.", "watch"))
+            return
+        by, loop = self.fertui.snapshot.initials or "?", self.loop
+        self._waiting = True
+        self.fertui.clerk(lambda bench: _look(bench, found, by, loop), self._looked, "the form")
+
+    def _looked(self, answer: Answer) -> None:
+        self._waiting = False
+        if answer.value is None:
+            self.say((answer.trouble, "act"))
+            self._release()
+            return
+        open_questions = [text for text in answer.value if text not in self._confirmed]
+        if open_questions:
+            self._confirmed |= set(open_questions)
+            self.say(
+                *((text, "watch") for text in open_questions), ("Save again (+ or F2) to keep it as it is.", "faint")
+            )
+            self._release()
+            return
+        self.fertui.with_initials(self._write)
+
+    def _write(self, initials: str) -> None:
+        entries = [(kind, {**texts, "by": initials}) for kind, texts in entries_of(self.spec, self.answers.texts)]
+        loop = self.loop
+        self._waiting = True
+        self.fertui.clerk(lambda bench: _record(bench, entries, loop), self._written, "saving")
+
+    def _written(self, answer: Answer) -> None:
+        self._waiting = False
+        if answer.value is None:
+            self.say((answer.trouble, "act"), ("Nothing was saved; the form is kept.", "faint"))
+            self.keep_draft()
+            self._release()
+            return
+        written, last_number = answer.value
+        self.fertui.drop_draft(self.spec.kind, self.loop)
+        self._close()
+        self.fertui.changed(last_number)
+        self.fertui.say(saved_words(written), "good")
+        if self._saved is not None:
+            self._saved()
+        self._release()
+
+    # drafts
+
+    def keep_draft(self) -> None:
+        """Keep what is typed so far."""
+        if self.answers.changed and not self._done:
+            self.fertui.keep_draft(self.spec.kind, self.loop, self.answers.with_typed_kept().texts)
+
+    def take_up(self, texts: tuple[str, ...]) -> None:
+        """Go on with a draft of this form."""
+        if len(texts) == len(self.spec.fields):
+            first_empty = next((i for i, text in enumerate(texts) if not text), 0)
+            self._set(
+                replace(self.answers, texts=texts, typed=type(self.answers.typed).at_end(texts[0]), at=0).moved(
+                    first_empty
+                )
+            )
+
+
+def _doubt(bench: Bench, kind: str, texts: Texts, name: str, loop: str) -> tuple[str, ...]:
+    """What is odd about one field of an entry that may not be complete yet."""
+    from fertui.refusals import Refusal
+
+    try:
+        asked = bench.questions(kind, texts, loop)
+    except Refusal:  # an incomplete entry cannot be asked about as a whole; the value itself was understood
+        return ()
+    return tuple(question.text for question in asked if question.field and question.field.lower() == name.lower())
+
+
+def _look(bench: Bench, found: list[tuple[str, Texts]], by: str, loop: str) -> list[str]:
+    """Everything odd about the entries of a form, each text once."""
+    asked: list[str] = []
+    for kind, texts in found:
+        asked += [question.text for question in bench.questions(kind, {**texts, "by": by}, loop)]
+    return list(dict.fromkeys(asked))
+
+
+def _record(bench: Bench, entries: list[tuple[str, Texts]], loop: str) -> tuple[Any, int]:
+    return bench.record_all(entries, loop), bench.last_number()
+
+
+def saved_words(entries: Any) -> str:
+    """What was read back from the logbook, in one line."""
+    said = []
+    for entry in entries:
+        values = " ".join(f"{value.name} {value.text}" for value in entry.values[:4])
+        more = f" and {len(entry.values) - 4} more" if len(entry.values) > 4 else ""
+        said.append(f"{entry.number} {entry.kind} {values}{more}")
+    return "saved " + "; ".join(said)

@@ -1,0 +1,77 @@
+"""One question in the bottom line, answered by typing."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import ClassVar
+
+from textual import events
+from textual.binding import Binding
+
+from fertui.tui.ink import Line, Span, cells, line, literal
+from fertui.tui.page import Page
+from fertui.tui.typing_line import Typed
+
+
+class Prompt(Page, can_focus=True):
+    """Takes the place of the key line while it asks; Enter answers, Esc takes the question back."""
+
+    BINDINGS: ClassVar = [
+        Binding("enter", "answer", "take it", id="prompt.answer", tooltip="Answer with what is typed."),
+        Binding("escape", "drop", "leave it", id="prompt.drop", tooltip="Take the question back; nothing happens."),
+    ]
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.display = False
+        self._question = ""
+        self._typed = Typed()
+        self._then: Callable[[str], None] = str
+
+    def ask(self, question: str, then: Callable[[str], None], text: str = "") -> None:
+        """Put a question; ``then`` gets the answer."""
+        self._question, self._then, self._typed = question, then, Typed.at_end(text)
+        self.display = True
+        self.focus(scroll_visible=False)
+        self.redraw()
+
+    def redraw(self) -> None:
+        """The question and the answer so far."""
+        if self.size.width:
+            self.show([question_line(self._question, self._typed, self.size.width)])
+
+    def on_key(self, event: events.Key) -> None:
+        """Type and edit; no other key reaches the views while a question stands."""
+        if event.key in ("enter", "escape"):
+            return
+        event.stop()
+        event.prevent_default()
+        if event.is_printable and event.character:
+            self._typed = self._typed.insert(event.character)
+        else:
+            self._typed = self._typed.edit(event.key) or self._typed
+        self.redraw()
+
+    def on_paste(self, event: events.Paste) -> None:
+        """Pasted text counts as typed."""
+        event.stop()
+        self._typed = self._typed.insert(event.text)
+        self.redraw()
+
+    def action_answer(self) -> None:
+        """Hand over the answer."""
+        answer, then = self._typed.text.strip(), self._then
+        self.fertui.end_prompt()
+        then(answer)
+
+    def action_drop(self) -> None:
+        """Forget the question."""
+        self.fertui.end_prompt()
+
+
+def question_line(question: str, typed: Typed, width: int) -> Line:
+    """The question, the answer so far, and the two keys."""
+    keys = "  Enter takes it, Esc leaves it "
+    question = f" {literal(question)} "
+    room = max(8, width - cells(question) - len(keys))
+    return line(Span(question, "strong"), *typed.shown(room), Span(keys, "faint"))
