@@ -5,6 +5,7 @@ from __future__ import annotations
 import tomllib
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import cache
 from importlib import resources
 from typing import Any
 
@@ -84,6 +85,7 @@ class Recipe:
         return f"{self.source.shown}; unverified preset: {', '.join(self.unverified)}"
 
 
+@cache
 def table(name: str) -> dict[str, Any]:
-    """One TOML file of this room, read."""
+    """One TOML file of this room, read once; not to be changed."""
     return tomllib.loads(resources.files("fertui.catalogue").joinpath(f"{name}.toml").read_text(encoding="utf-8"))

@@ -94,7 +94,7 @@ class Table:
         value = self._take(key, {})
         if not isinstance(value, dict):
             raise self.refuse(key, f"a table is allowed here: [{key}] or {{ name = value }}.")
-        return Table(value, f"{self.place.rstrip(']')}.{key}]" if self.place.endswith("]") else f"[{key}]", self.file)
+        return Table(value, self._below(key), self.file)
 
     def tables(self, key: str) -> list[Table]:
         """The list of tables [[key]], empty where absent, each placed by its name or number."""
@@ -131,6 +131,12 @@ class Table:
         if key not in self.data and default is None:
             raise SiteError(f"{self.file}, {self.place}: {key} is missing{self._instead(key)}.")
         return self.data.get(key, default)
+
+    def _below(self, key: str) -> str:
+        """The place of a table below this one."""
+        if self.place.startswith("[["):
+            return f"{self.place}, {key}"
+        return f"{self.place.rstrip(']')}.{key}]" if self.place.startswith("[") else f"[{key}]"
 
     def _instead(self, key: str) -> str:
         """Names a key of this table that looks like a slip of the missing one."""

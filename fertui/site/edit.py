@@ -140,7 +140,7 @@ def _text(value: Any) -> str:
         return ", ".join(_text(each) for each in value)
     if isinstance(value, bool):
         return "true" if value else "false"
-    return f"{value:g}" if isinstance(value, float) else str(value)
+    return f"{value:.12g}" if isinstance(value, float) else str(value)
 
 
 def _is_texts(value: Any) -> bool:

@@ -41,7 +41,7 @@ COMMON_SALTS = (
 STOCK_TANKS = (("calcium", "A"), ("sulfate and phosphate", "B"))
 PURE_WATER = ("pure", "pure water", "rain", "rainwater")
 DRAIN_STORE_L_PER_M2 = 2.5
-STRENGTH = re.compile(r"(?P<name>.*\D)\s*\b(?P<pct>\d+(?:[.,]\d+)?)\s*%")
+STRENGTH = re.compile(r"(?P<name>.*\S)\s+(?P<pct>\d+(?:[.,]\d+)?)\s*%")
 
 
 def new_site(
@@ -110,7 +110,7 @@ amount_kg=None, price_per_kg=None, bag_kg=None)
     said = STRENGTH.fullmatch(text.strip())
     pct = float(said["pct"].replace(",", ".")) if said else None
     try:
-        found = substance(said["name"].strip() if said else text.strip())
+        found = substance(said["name"] if said else text.strip())
     except CatalogueError as trouble:
         raise SiteError(f"supplies: {trouble}") from trouble
     if isinstance(found, Acid):

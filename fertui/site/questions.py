@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from functools import partial
@@ -18,6 +19,9 @@ from fertui.site.new import COMMON_SALTS, machine_timezone, new_site, supply_fro
 
 UNKNOWN = ("", "?", "-", "unknown", "do not know", "don't know", "i do not know", "i don't know")
 """Answers that mean "I do not know"."""
+
+BETWEEN_SUPPLIES = re.compile(r",(?!\d+\s*%)")
+"""A comma, unless it is the decimal comma of a strength: nitric acid 59,5 %."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -236,7 +240,10 @@ def _stages(answers: Mapping[str, str]) -> int:
 
 
 def _has_medium(answers: Mapping[str, str]) -> bool:
-    return answers.get("medium", "").strip().lower() != "none"
+    try:
+        return medium(answers.get("medium", "")).name != "none"
+    except Refusal:
+        return True
 
 
 def _number(low: float, high: float, unit: str) -> Callable[[str], float]:
@@ -261,7 +268,7 @@ def _one_of(allowed: tuple[str, ...], text: str) -> str:
 
 
 def _supplies(text: str) -> tuple[str, ...]:
-    names = tuple(each.strip() for each in text.split(",") if each.strip())
+    names = tuple(each.strip() for each in BETWEEN_SUPPLIES.split(text) if each.strip())
     for each in names:
         supply_from(each)
     return names
