@@ -92,7 +92,7 @@ def speciate(
     """
     totals = composition(ions_mmol_per_l)
     if not np.isfinite(totals).all():
-        raise ValueError("a composition needs a finite number for every ion; one that was not analysed is left out or 0")
+        raise ValueError("a composition needs a finite number for every ion; leave out what was not analysed")
     shape = np.broadcast_shapes(totals.shape[:-1], np.shape(ph), np.shape(temperature_c))
     totals = 1e-3 * np.moveaxis(np.broadcast_to(totals, (*shape, len(IONS))), -1, 0)
     ph, temperature = np.array(ph, float, ndmin=len(shape)), np.array(temperature_c, float, ndmin=len(shape))

@@ -31,20 +31,6 @@ CRC_25 = [
     ({"Na": 10, "SO4": 5}, 1.1238, 0.025),
 ]
 
-# Single salts: McCleskey 2011, J. Chem. Eng. Data 56:317-327, as tabled in the package chemicals 1.5.2.
-# kappa [mS/cm] = m x factor x (L0 - A sqrt m / (1 + B sqrt m)), L0 and A parabolas in t; m in mol/kg.
-MCCLESKEY_2011 = {
-    "KCl": ({"K": 1, "Cl": 1}, (0.009385, 2.533, 81.17), (0.0139, 1.886, 44.11), 1.7, 1),
-    "NaCl": ({"Na": 1, "Cl": 1}, (0.008967, 2.196, 67.03), (0.00726, 1.762, 44.55), 1.3, 1),
-    "NH4Cl": ({"NH4": 1, "Cl": 1}, (0.006575, 2.684, 78.03), (0.006133, 1.423, 30.0), 0.7, 1),
-    "CaCl2": ({"Ca": 1, "Cl": 2}, (0.01124, 2.224, 72.36), (0.03918, 3.905, 137.7), 3.8, 2),
-    "MgCl2": ({"Mg": 1, "Cl": 2}, (0.009534, 2.247, 68.19), (0.02469, 4.374, 129.8), 3.1, 2),
-    "Na2SO4": ({"Na": 2, "SO4": 1}, (0.009501, 2.317, 66.58), (0.02388, 4.509, 135.5), 2.2, 2),
-    "K2SO4": ({"K": 2, "SO4": 1}, (0.008819, 2.872, 83.72), (0.03799, 9.784, 247.1), 5.3, 2),
-    "KHCO3": ({"K": 1, "HCO3": 1}, (0.007807, 2.04, 63.03), (0.00661, 1.577, 38.58), 0.9, 1),
-    "KNO3": ({"K": 1, "NO3": 1}, (0.009117, 2.309, 80.33), (0.00909, 1.099, 49.12), 0.7, 1),
-}
-
 # Reference runs of PHREEQC 3.8.6, Amm.dat, mmol/L, pH 5.8, no carbonate: uS/cm at 25 C and, where given, at 20 C.
 HOAGLAND_1 = {"K": 6, "Ca": 5, "Mg": 2, "NO3": 15, "SO4": 2, "H2PO4": 1}
 HOAGLAND_2 = {"K": 6, "Ca": 4, "Mg": 2, "NH4": 1, "NO3": 14, "SO4": 2, "H2PO4": 1}
@@ -87,27 +73,6 @@ def test_kcl_standards_within_2_percent(molal: float) -> None:
 @pytest.mark.parametrize(("ions", "measured", "bar"), CRC_25)
 def test_handbook_solutions(ions: dict[str, float], measured: float, bar: float) -> None:
     assert conductivity(ions, ph=7.0) == pytest.approx(measured, rel=bar)
-
-
-@pytest.mark.parametrize("salt", [salt for salt in MCCLESKEY_2011 if salt != "KCl"])
-@pytest.mark.parametrize("temperature", [5.0, 15.0, 25.0, 35.0])
-def test_single_salts_relative_to_kcl(salt: str, temperature: float) -> None:
-    """Each salt over KCl of the same source at the same ionic strength: the cell constant of the source drops out."""
-    ions = MCCLESKEY_2011[salt][0]
-    charge = {"Ca": 2, "Mg": 2, "SO4": 2}
-    strength_per_mol = 0.5 * sum(count * charge.get(ion, 1) ** 2 for ion, count in ions.items())
-    for strength in (0.003, 0.01, 0.03, 0.06):
-        molal = strength / strength_per_mol
-        published = _mccleskey(salt, molal, temperature) / _mccleskey("KCl", strength, temperature)
-        ours = conductivity({ion: 1e3 * molal * count for ion, count in ions.items()}, temperature, ph=8.3)
-        kcl = conductivity({"K": 1e3 * strength, "Cl": 1e3 * strength}, temperature, ph=7.0)
-        assert ours / kcl == pytest.approx(published, rel=0.03), f"{salt}, ionic strength {strength}"
-
-
-def _mccleskey(salt: str, molal: float, t: float) -> float:
-    _, limiting, decrease, b, factor = MCCLESKEY_2011[salt]
-    root = molal**0.5
-    return molal * factor * (np.polyval(limiting, t) - np.polyval(decrease, t) * root / (1 + b * root))
 
 
 @pytest.mark.parametrize(("ions", "temperature", "micro_s"), ORACLE)
