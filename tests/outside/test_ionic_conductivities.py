@@ -118,7 +118,7 @@ def equation_of(measured: Measured) -> tuple[np.ndarray, float]:
 
 
 def test_coefficients_are_the_least_squares_of_their_sources() -> None:
-    """What the salts leave open, a weak pull settles: factor 1 +- 0.3, pair 45 +- 60, slopes 0 +- 0.5e-3, 2e-5 per K."""
+    """A weak pull settles what the salts leave open: factor 1 +- 0.3, pair 45 +- 60, slopes +- 0.5e-3, 2e-5."""
     rows, left = (np.array(part) for part in zip(*map(equation_of, measurements()), strict=True))
     number = len(FITTED)
     start = np.concatenate([np.ones(number), [45.0], np.zeros(2 * number)])
