@@ -49,19 +49,16 @@ class Column:
 
 
 def columns_of(sheet: Sheet, kind: Kind, template: Template) -> tuple[Column, ...]:
-    """The meaning of every column; columns without a single cell are left out.
+    """The meaning of every column; unknown ones without a single cell are left out.
 
     Raises ``LogbookError`` that names every head it does not know, and for two columns of the same name.
     """
     columns, unknown = [], []
     for place, (head, unit) in enumerate(zip(sheet.heads, sheet.units, strict=True)):
         head = undefused(head)
-        if head in template.ignore or not any(row[place] for row in sheet.rows):
-            columns.append(Column(head, ""))
-            continue
-        column = _column(head, template.columns.get(head, head), unit, kind)
+        column = None if head in template.ignore else _column(head, template.columns.get(head, head), unit, kind)
         columns.append(column or Column(head, ""))
-        if column is None:
+        if column is None and head not in template.ignore and any(row[place] for row in sheet.rows):
             unknown.append(head)
     if unknown:
         raise _unknown(unknown, kind)

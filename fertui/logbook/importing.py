@@ -239,5 +239,5 @@ def _conversion(kind: Kind, value: Value) -> str:
     if value.number is None:
         return f"{value.name}: {value.text}"
     below = "below " if value.below else ""
-    species = f" {value.species}" if value.species else ""
+    species = f" {value.species}" if value.species and not value.text.endswith(value.species) else ""
     return f"{value.name}: {value.text}{species} = {below}{value.number:.4g} {unit_of(kind, value.name)}".rstrip()

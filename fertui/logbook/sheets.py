@@ -147,7 +147,7 @@ def _like_unit(cell: str) -> bool:
 def _upright(sheet: Sheet) -> Sheet:
     """A sheet with ions down its first column turned so that each sample is a row."""
     names = [row[0] for row in sheet.rows]
-    if sum(map(_is_measure, names)) < max(3, len(names) / 2) or any(map(_is_measure, sheet.heads)):
+    if sum(map(_is_measure, names)) < max(2, len(names) / 2) or any(map(_is_measure, sheet.heads)):
         return sheet
     columns = list(zip(sheet.heads, *sheet.rows, strict=True))
     units_at = next((place for place, column in enumerate(columns) if column[0].lower() in _UNIT_HEADS), None)
