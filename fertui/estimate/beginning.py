@@ -1,0 +1,107 @@
+"""From when an estimate runs, and what the members begin with."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from fertui.chemistry.ions import INDEX, IONS, Array
+from fertui.estimate.compositions import of_water
+from fertui.estimate.correction import ElectroMeter, corrected
+from fertui.estimate.drives import stock_proportions
+from fertui.estimate.ensemble import ALKALINITY_MEQ_L, Ensemble, compartment, unknowns
+from fertui.estimate.noise import normals
+from fertui.estimate.observations import Observation
+from fertui.estimate.record import HISTORY_DAYS, Record
+from fertui.estimate.setting import Setting
+from fertui.loop import ROOT, STORE, start
+
+LEAST_IONS = 3
+"""An analysis of fewer ions cannot begin an estimate."""
+UNSEEN_SD = 0.30
+"""Spread (log) of an ion, or of a vessel, that the first analysis did not show."""
+ANEW_EVERY_DAYS = 30
+SHORTEST = 1e-3
+
+
+@dataclass(frozen=True, slots=True)
+class Beginning:
+    """Time [d] of the start, and the analysis it starts from (None: from the feed alone)."""
+
+    time: float
+    analysis: Observation | None
+
+
+def beginning(record: Record, setting: Setting, usable: tuple[Observation, ...]) -> Beginning:
+    """Where an estimate of this record begins.
+
+    At the first analysis since the crop, the medium or the solution was last renewed, at most ``HISTORY_DAYS`` back.
+    A medium that exchanges begins with itself: its load matters more than the first analysis. Without any analysis the
+    estimate begins with the record, from the feed.
+    """
+    anew = max((time for time in record.anew if time <= record.end), default=-np.inf)
+    oldest = _oldest(record)
+    if setting.exchanges and record.new_medium is not None and max(record.new_medium, anew) >= oldest:
+        return Beginning(max(record.new_medium, anew), None)
+    shown = [
+        each
+        for each in usable
+        if each.time >= max(anew, oldest) and len(each.ions) >= LEAST_IONS and shows_a_vessel(setting, each)
+    ]
+    if shown:
+        return Beginning(shown[0].time, shown[0])
+    first = record.first if record.first is not None else record.end
+    return Beginning(float(min(max(anew, oldest, first), record.end - SHORTEST)), None)
+
+
+def shows_a_vessel(setting: Setting, seen: Observation) -> bool:
+    """Whether it is an analysis of a solution that the members carry."""
+    return seen.is_analysis and compartment(setting, seen.point) is not None
+
+
+def _oldest(record: Record) -> float:
+    """The earliest start, moved in steps so that one more day does not shift the whole estimate."""
+    day = (record.at.toordinal() - HISTORY_DAYS) // ANEW_EVERY_DAYS * ANEW_EVERY_DAYS
+    return record.end - (record.at.toordinal() - day)
+
+
+def first_members(record: Record, setting: Setting, begin: Beginning, members: int, seed: int) -> Ensemble:
+    """Members at the start: the first analysis with its error, or the feed, widely spread."""
+    drawn = normals(seed, setting.loop.name, "first", members, 2 * len(IONS) + 1)
+    vessels = np.stack([_vessel(record, setting, begin, drawn, where) for where in (STORE, ROOT)], axis=1)
+    unknown = unknowns(setting, seed, members)
+    medium = setting.medium(unknown["capacity"], unknown["selectivity"])
+    load = setting.growing.load() if begin.analysis is None and setting.exchanges else None
+    state = start(setting.circuit, medium, vessels[:, ROOT], vessels[:, STORE], members, load)
+    seen = begin.analysis
+    measured = seen.ions.get("HCO3", ALKALINITY_MEQ_L) if seen is not None else ALKALINITY_MEQ_L
+    ensemble = Ensemble(state, **unknown, alkalinity=measured)
+    if seen is None or seen.ec is None:
+        return ensemble
+    return corrected(ensemble, setting, replace(seen, ions={}), None, ElectroMeter(), seed)[0]
+
+
+def _vessel(record: Record, setting: Setting, begin: Beginning, drawn: Array, where: int) -> Array:
+    """Concentrations (M, 10) of one vessel at the start."""
+    middle = _unseen(record, setting, begin.time)
+    noise = UNSEEN_SD * drawn[:, : len(IONS)]
+    seen = begin.analysis
+    if seen is not None:
+        columns = seen.columns()
+        middle[columns] = [seen.ions[IONS[column]] for column in columns]
+        noise[:, columns] = drawn[:, : len(columns)] @ np.linalg.cholesky(seen.covariance()).T
+        if compartment(setting, seen.point) != where:
+            noise = noise + UNSEEN_SD * (drawn[:, len(IONS) : 2 * len(IONS)] + drawn[:, -1, None])
+    vessel = np.maximum(middle, 0.0) * np.exp(noise)
+    vessel[:, INDEX["HCO3"]] = ALKALINITY_MEQ_L if seen is None else seen.ions.get("HCO3", ALKALINITY_MEQ_L)
+    return vessel
+
+
+def _unseen(record: Record, setting: Setting, time: float) -> Array:
+    """What a vessel holds (10,) before anyone analysed it: its feed; a shared tank its source water."""
+    if setting.circuit.layout == "shared-tank":
+        return of_water(record.site, str(record.sources.at(time) or setting.loop.water))
+    if setting.circuit.layout == "known-feed" and record.feed:
+        return record.feed[0][1].copy()
+    return stock_proportions(record, time).copy()

@@ -1,0 +1,137 @@
+"""Members turned into what is shown of every point: medians, 80 % ranges, shares, bands."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+
+import numpy as np
+
+from fertui.chemistry.ions import INDEX, IONS, Array
+from fertui.estimate.correction import ElectroMeter
+from fertui.estimate.drives import Drives
+from fertui.estimate.ensemble import Ensemble
+from fertui.estimate.observations import Observation
+from fertui.estimate.points import Band, Estimated, IonState, PointState
+from fertui.estimate.ranges import HIGH, LOW, Spread, neutral, shares
+from fertui.estimate.setting import Setting
+from fertui.loop import ROOT, STORE, Drive, feed_composition
+from fertui.site.model import Loop, Site, Sourced
+from fertui.site.presets import bands_of, limits_of
+
+POINTS_OF = {
+    "shared-tank": ("tank", "root_zone"),
+    "drain-blend": ("feed", "root_zone", "drain", "drain_store"),
+    "known-feed": ("feed", "root_zone", "drain"),
+}
+"""Points of a layout, in the order they are shown."""
+SHARED = ("K", "Ca", "Mg")
+FEED_ERROR = 0.05
+PH_ERROR, PH_DRIFT = 0.1, 0.1
+"""pH is known to 0.1 where measured; its range widens by 0.1 times the square root of the days since (our own)."""
+PH_DAYS = 28.0
+SAME_WATER = {"root_zone": ("root_zone", "drain"), "drain": ("drain", "root_zone"), "feed": ("feed", "tank")}
+
+
+def managed(loop: Loop) -> str:
+    """The point a loop is managed by: the tank where there is no medium, else the root zone."""
+    return "tank" if loop.layout == "shared-tank" and loop.medium == "none" else "root_zone"
+
+
+def solutions(setting: Setting, ensemble: Ensemble, drive: Drive) -> dict[str, Array]:
+    """Compositions (M, 10) [mmol/L] of every point of the layout."""
+    state, found = ensemble.state, {}
+    for point in POINTS_OF[setting.circuit.layout]:
+        if point == "feed":
+            fed = feed_composition(setting.circuit, drive, state)
+            known = setting.circuit.layout == "known-feed"
+            found[point] = fed * np.exp(ensemble.stock) if known else fed
+        else:
+            store = point in ("tank", "drain_store") and not setting.circuit.mixed
+            found[point] = np.maximum(state.concentration(STORE if store else ROOT), 0.0)
+    return found
+
+
+def feed_drive(drives: Drives, span: int, ensemble: Ensemble) -> Drive:
+    """The drive in force at the end of a stretch."""
+    drive = drives.drive(span, ensemble.drain, ensemble.stock)
+    return drive.part(1.0, 1.0) if drive.feed_to is not None else drive
+
+
+def allowed(site: Site, loop: Loop, point: str) -> dict[str, Band]:
+    """Allowed range of everything at a point: its band, narrowed by its limit."""
+    found: dict[str, Band] = {}
+    for ranges in (limits_of(site, loop, point), bands_of(site, loop, point)):
+        for what, each in ranges.items():
+            found[what] = _narrower(found.get(what), each)
+    return found
+
+
+def _narrower(band: Band | None, other: Sourced) -> Band:
+    if band is None:
+        return (other.low, other.high)
+    lows = [low for low in (band[0], other.low) if low is not None]
+    highs = [high for high in (band[1], other.high) if high is not None]
+    return (max(lows) if lows else None, min(highs) if highs else None)
+
+
+def shown_members(members: Array, spread: Spread) -> Array:
+    """What the members say at a point (..., M, 10), charges closed and ranges at the scale the loop has shown."""
+    return spread.widened(neutral(members))
+
+
+class Panel:
+    """Quantiles of one point at many times: ``members`` (times, M, 10), already scaled; ``ec`` (times, M) log factors."""
+
+    def __init__(self, members: Array, ec: Array, bands: Mapping[str, Band]) -> None:
+        self.bands = bands
+        self.ions = np.quantile(members, (0.5, LOW, HIGH), axis=-2)
+        self.shares = np.quantile(shares(members), (0.5, LOW, HIGH), axis=-2)
+        meter = ElectroMeter()
+        logs = np.stack([meter(each) for each in members]) + ec
+        self.ec = np.quantile(np.exp(logs), (0.5, LOW, HIGH), axis=-1)
+
+    def state(self, time: int, ph: Estimated | None, micronutrients: Mapping[str, Estimated] | None = None) -> PointState:
+        """The point at one of the times."""
+        ions = {ion: self._ion(ion, time) for ion in IONS}
+        ions |= {name: IonState(value) for name, value in (micronutrients or {}).items()}
+        return PointState(self._estimated(self.ec[:, time], "EC"), ph, ions)
+
+    def _ion(self, ion: str, time: int) -> IonState:
+        share = None
+        if ion in SHARED:
+            share = self._estimated(self.shares[:, time, SHARED.index(ion)], f"{ion} share")
+        return IonState(self._estimated(self.ions[:, time, INDEX[ion]], ion), share)
+
+    def _estimated(self, triple: Array, what: str) -> Estimated:
+        middle, low, high = (float(value) for value in triple)
+        return Estimated(middle, low, high, self.bands.get(what))
+
+
+def ph_at(seen: Sequence[Observation], point: str, time: float, band: Band | None) -> Estimated | None:
+    """pH of a point from its last measurement up to a time; None where that is more than four weeks old."""
+    here = SAME_WATER.get(point, (point,))
+    given = [each for each in seen if each.ph is not None and each.point in here and each.time <= time + 1e-6]
+    given = [each for each in given if not each.doubtful and time - each.time < PH_DAYS]
+    if not given:
+        return None
+    last = given[-1]
+    assert last.ph is not None
+    width = PH_ERROR + PH_DRIFT * np.sqrt(max(time - last.time, 0.0))
+    return Estimated(last.ph, last.ph - float(width), last.ph + float(width), band)
+
+
+def micronutrients_at(
+    seen: Sequence[Observation], point: str, time: float, bands: Mapping[str, Band]
+) -> dict[str, Estimated]:
+    """Micronutrients [umol/L] of a point as last analysed, their ranges widening with age; they have no model."""
+    here = SAME_WATER.get(point, (point,))
+    given = [each for each in seen if each.micronutrients and each.point in here and each.time <= time + 1e-6]
+    given = [each for each in given if not each.doubtful]
+    if not given:
+        return {}
+    last = given[-1]
+    part = float(0.15 * np.sqrt(1.0 + max(time - last.time, 0.0) / 14.0))
+    return {
+        name: Estimated(value, value * (1.0 - part), value * (1.0 + part), bands.get(name))
+        for name, value in last.micronutrients.items()
+    }
