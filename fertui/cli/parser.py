@@ -9,8 +9,8 @@ from typing import NoReturn
 from fertui.refusals import Refusal
 
 ABOUT = """\
-Track the ions behind the EC of a recirculated nutrient solution, see when K : Ca : Mg, Na or NH4 leave their band,
-and plan what brings them back.
+Track the ions behind the EC of a recirculated nutrient solution, see when
+K : Ca : Mg, Na or NH4 leave their band, and plan what brings them back.
 
   fertui demo                              look around in an invented site
   fertui new north --crop tomato --medium coir --layout drain-blend --area 1200
@@ -19,7 +19,8 @@ and plan what brings them back.
   fertui north                             the terminal interface
 """
 CLOSING = """\
-exit codes: 0 fine, 1 the answer is no, 2 usage or input refused, 3 logbook or file trouble, 4 internal fault
+exit codes: 0 fine, 1 the answer is no, 2 usage or input refused,
+            3 logbook or file trouble, 4 internal fault
 fertui advises and you decide. It is no alarm system and no controller.
 """
 
