@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import os
-import tempfile
 import tomllib
 from datetime import datetime
 from pathlib import Path
@@ -81,6 +80,8 @@ def _keep(path: Path, now: datetime) -> None:
 
 def _replace(path: Path, raw: bytes) -> None:
     """Write to a temporary file beside the path, flush it to disk, rename it, flush the folder."""
+    import tempfile  # here: slow to import, and reading never needs it
+
     handle, temporary = tempfile.mkstemp(prefix=".site.", dir=path.parent)
     try:
         with os.fdopen(handle, "wb") as file:
