@@ -110,6 +110,8 @@ def batch(
     total, k = cations(total_mmol), cations(selectivity)
     water, capacity = np.asarray(water_l, dtype=float), np.asarray(capacity_meq, dtype=float)
     _refuse_impossible(total, water, capacity, k)
+    if start is not None and not np.isfinite(start).all():
+        raise ValueError("start holds a number that is not finite")
     shape = np.broadcast_shapes(total.shape[:-1], water.shape, capacity.shape, k.shape[:-1])
     solution, exchanged = _share_out(
         _rows(total, shape),

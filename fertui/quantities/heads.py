@@ -9,7 +9,7 @@ from typing import NamedTuple
 from fertui.quantities import units
 from fertui.quantities.concentration import factor
 from fertui.quantities.names import fold, named, qualified, unit_and_species
-from fertui.quantities.numbers import tidy
+from fertui.quantities.numbers import LONGEST, tidy
 from fertui.quantities.refusal import QuantityError
 
 MEASURES: dict[str, tuple[str, str]] = {
@@ -19,6 +19,8 @@ MEASURES: dict[str, tuple[str, str]] = {
     "radiation_sum": ("light_sum", "light"),
 }  # fmt: skip
 """What else a table of readings carries: canonical name and what it measures."""
+
+LONGEST_HEAD = 200
 
 
 class Head(NamedTuple):
@@ -42,17 +44,17 @@ def column(head: str) -> Head:
     >>> column("K_mmol_L")
     Head(name='K', unit='mmol/L', species='')
     """
-    name, unit = _parted(tidy(head))
+    name, unit = _parted(tidy(head, LONGEST_HEAD))
     if not name:
         raise QuantityError(
             "a column has no head", "a name, with its unit in brackets", "name it, for example K [mmol/L]"
         )
-    measure = _measures().get(fold(name))
+    measure = _measures().get(fold(name)) if len(name) <= LONGEST else None
     if measure is not None:
         if unit and measure[1] != "temperature":
             units.factor(unit, measure[1])
         return Head(measure[0], unit, "")
-    found = named(name)
+    found = named(name) if len(name) <= LONGEST else None
     if found is None:
         return Head(name, unit, "")
     unit, qualifier = unit_and_species(unit)
@@ -65,15 +67,16 @@ def column(head: str) -> Head:
 
 
 def _parted(head: str) -> tuple[str, str]:
-    """Name and unit of a head, the unit in brackets or behind underscores."""
+    """Name and unit of a head, the unit in brackets, behind a space or behind underscores."""
     bracketed = re.fullmatch(r"(.+?)\s*[\[(]\s*([^\[\]()]*?)\s*[\])]", head)
     if bracketed:
         return bracketed[1], bracketed[2]
-    parts = head.split("_")
-    for cut in range(1, len(parts)):
-        unit = "/".join(parts[cut:])
-        if units.is_unit(unit) and units.fold(unit) != "pct":
-            return "_".join(parts[:cut]), unit
+    for mark, between in ((" ", " "), ("_", "/")):
+        parts = head.split(mark)
+        for cut in range(1, len(parts)):
+            unit = between.join(parts[cut:])
+            if len(unit) < 20 and units.is_unit(unit) and units.fold(unit) != "pct":
+                return mark.join(parts[:cut]).rstrip(" ,:"), unit
     return head, ""
 
 

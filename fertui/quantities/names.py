@@ -29,6 +29,7 @@ WITHOUT_MASS: dict[str, str] = {
     "nitrate": "NO3", "ammonium": "NH4", "ammonia": "NH4", "sulfate": "SO4", "sulphate": "SO4", "phosphate": "H2PO4",
     "alkalinity": "HCO3", "total alkalinity": "HCO3", "alk": "HCO3", "acid capacity": "HCO3", "KS4.3": "HCO3",
     "acid capacity 4.3": "HCO3", "acid capacity to pH 4.3": "HCO3", "acid capacity to 4.3": "HCO3", "m-value": "HCO3",
+    "carbonate hardness": "HCO3", "KH": "HCO3",
 }  # fmt: skip
 """Names that say which ion is meant but not what its mg are the mg of: taken in mmol/L, meq/L and degrees only."""
 
@@ -39,6 +40,9 @@ _REFUSED = {
     "totalhardness": ("hardness is calcium and magnesium together", "Ca, Mg", "enter Ca and Mg apart"),
     "tds": ("TDS is made from EC by a factor that differs between meters", "EC", "enter the EC in mS/cm"),
 }
+
+
+_CHARGED = re.compile(r"(.*?)\s*\^?(\d?)[+-]+\d?")
 
 
 class Named(NamedTuple):
@@ -59,10 +63,11 @@ def named(text: str) -> Named | None:
     folded = fold(text)
     if folded in _REFUSED:
         raise QuantityError(*_REFUSED[folded])
-    for candidate in (folded, folded.rstrip("+"), re.sub(r"\d\+?$", "", folded)):
-        if candidate in _known():
-            return _known()[candidate]
-    return None
+    candidates = [folded]
+    charged = _CHARGED.fullmatch(tidy(text))
+    if charged:
+        candidates += [fold(charged[1] + charged[2]), fold(charged[1])]
+    return next((_known()[candidate] for candidate in candidates if candidate in _known()), None)
 
 
 def form(text: str) -> Named:

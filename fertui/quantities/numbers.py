@@ -13,6 +13,8 @@ LONGEST = 60
 
 LARGEST = 1e12
 
+_POWER = re.compile(r"\s*<?\s*[+-]?[\d.,]+[\u2070\u00b9\u00b2\u00b3\u2074-\u207b]")
+
 _NUMBER = re.compile(r"(<?)\s*([+-]?(?:\d[\d.,']*|[.,]\d+)(?:e[+-]?\d+)?)(.*)", re.IGNORECASE | re.DOTALL | re.ASCII)
 _PLAIN = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:e[+-]?\d+)?", re.IGNORECASE | re.ASCII)
 _GROUPED_BY_COMMA = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+(?:\.\d*)?")
@@ -52,10 +54,13 @@ def split(text: str | float, *, negative: bool = False) -> tuple[Number, str]:
     >>> split("120 ppm CaCO3")
     (Number(value=120.0, below=False), 'ppm CaCO3')
     """
-    plain = tidy(repr(float(text)) if isinstance(text, float) else str(text))
+    written = repr(float(text)) if isinstance(text, float) else str(text)
+    plain = tidy(written)
     found = _NUMBER.fullmatch(plain)
-    if not plain or found is None:
-        raise QuantityError(_why_none(plain), _ALLOWED, "write a number such as 7.2, or leave the field out")
+    if not plain or found is None or _POWER.match(written):
+        raise QuantityError(
+            _why_none(plain, found is not None), _ALLOWED, "write a number such as 7.2, or leave the field out"
+        )
     sign, digits, rest = found.groups()
     if _GROUPED_BY_SPACE.match(rest) or _GROUPED_BY_COMMA.fullmatch(digits) or "'" in digits:
         raise QuantityError(
@@ -66,17 +71,17 @@ def split(text: str | float, *, negative: bool = False) -> tuple[Number, str]:
     return Number(_value(digits, plain, negative), sign == "<"), rest.strip()
 
 
-def tidy(text: str) -> str:
+def tidy(text: str, longest: int = LONGEST) -> str:
     """Text with typographic variants (non-breaking space, minus sign, sub- and superscripts) made plain.
 
-    Raises ``QuantityError`` for a text that is too long for a quantity.
+    Raises ``QuantityError`` for a text that is too long.
 
     >>> tidy("NO\\u2083\\u207b")
     'NO3-'
     """
-    if len(text) > LONGEST:
+    if len(text) > longest:
         raise QuantityError(
-            f"{quoted(text)} is too long for a value", f"up to {LONGEST} characters", "write one number with its unit"
+            f"{quoted(text)} is too long", f"up to {longest} characters", "write one number with its unit, or one name"
         )
     plain = unicodedata.normalize("NFKC", text).replace("\u2212", "-").replace("\u2013", "-").replace("\u2019", "'")
     return plain.strip()
@@ -94,7 +99,7 @@ def _value(digits: str, plain: str, negative: bool) -> float:
     return value
 
 
-def _why_none(plain: str) -> str:
+def _why_none(plain: str, raised: bool) -> str:
     if not plain:
         return "the value is empty"
-    return f"{quoted(plain)} does not begin with a number"
+    return f"{quoted(plain)} " + ("is a power" if raised else "does not begin with a number")

@@ -30,8 +30,8 @@ ppm by mass is taken as mg/L, which it is within 1 % in any solution a crop coul
 
 FACTORS: Mapping[str, Mapping[str, float]] = {
     "EC": {
-        "mS/cm": 1, "dS/m": 1, "mmho/cm": 1, "mmhos/cm": 1, "uS/cm": 1e-3, "umho/cm": 1e-3, "umhos/cm": 1e-3,
-        "mS/m": 1e-2, "10^-5 S/cm": 1e-2, "1e-5 S/cm": 1e-2, "S/m": 10, "S/cm": 1e3,
+        "mS/cm": 1, "mS": 1, "dS/m": 1, "mmho/cm": 1, "mmhos/cm": 1, "uS/cm": 1e-3, "uS": 1e-3, "umho/cm": 1e-3,
+        "umhos/cm": 1e-3, "mS/m": 1e-2, "10^-5 S/cm": 1e-2, "1e-5 S/cm": 1e-2, "S/m": 10, "S/cm": 1e3,
     },
     "light": {"J/cm2": 1, "MJ/m2": 100, "kJ/m2": 0.1, "J/m2": 1e-4, "Wh/m2": 0.36, "kWh/m2": 360},
     "litres": {"L": 1, "mL": 1e-3, "dL": 0.1, "cL": 0.01, "hL": 100, "m3": 1e3, "dm3": 1, "cm3": 1e-3,
@@ -43,7 +43,8 @@ FACTORS: Mapping[str, Mapping[str, float]] = {
     "pH": {"": 1, "pH": 1},
     "number": {"": 1},
 }  # fmt: skip
-"""Worth of a unit in the canonical one. Gallon, pound, ounce: exact by definition (NIST Handbook 44, from memory)."""
+"""Worth of a unit in the canonical one. mS and uS alone are the trade's short for mS/cm and uS/cm.
+Gallon, pound, ounce: exact by definition (NIST Handbook 44, from memory)."""
 
 _TEMPERATURE = {"c": "C", "degc": "C", "celsius": "C", "f": "F", "degf": "F", "fahrenheit": "F"}
 _TRAPS = {

@@ -143,6 +143,11 @@ def test_where_the_search_starts_does_not_change_the_answer(off: float) -> None:
     np.testing.assert_allclose(solution[1], total[1] / 0.65, rtol=1e-15)
 
 
+def test_a_start_that_is_no_number_is_refused() -> None:
+    with pytest.raises(ValueError, match="start holds a number that is not finite"):
+        batch(np.full(5, 10.0), 1.0, 20.0, PHREEQC_SELECTIVITY, np.nan)
+
+
 def test_a_mapping_and_an_array_say_the_same() -> None:
     by_name = batch({"K": 30.0, "Ca": 20.0, "NO3": 99.0}, 0.6, 40.0, PHREEQC_SELECTIVITY)
     by_order = batch([30.0, 20.0, 0.0, 0.0, 0.0], 0.6, 40.0, PHREEQC_SELECTIVITY)

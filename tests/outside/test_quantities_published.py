@@ -119,7 +119,8 @@ def test_formula_masses_against_molmass(species) -> None:
 
 
 PINT_NAMES = {
-    "10^-5 S/cm": "1e-5 S/cm", "mmho/cm": "mS/cm", "mmhos/cm": "mS/cm", "umho/cm": "uS/cm", "umhos/cm": "uS/cm",
+    "10^-5 S/cm": "1e-5 S/cm", "mS": "mS/cm", "uS": "uS/cm", "mmho/cm": "mS/cm",
+    "mmhos/cm": "mS/cm", "umho/cm": "uS/cm", "umhos/cm": "uS/cm",
     "US gal": "gallon", "gal US": "gallon", "US fl oz": "fluid_ounce", "imp gal": "imperial_gallon",
     "US gal/d": "gallon/day", "L/d": "L/day", "m3/d": "m^3/day", "m3/day": "m^3/day", "L/h": "L/hour",
     "J/cm2": "J/cm^2", "MJ/m2": "MJ/m^2", "kJ/m2": "kJ/m^2", "J/m2": "J/m^2", "Wh/m2": "W*hour/m^2",

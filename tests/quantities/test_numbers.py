@@ -48,7 +48,9 @@ def test_taken(text, value: float, below: bool) -> None:
         ("7 x", "leave out everything but the number"),
         (">5", "does not begin with a number"),
         ("5%", "is not a number"),
-        ("7" * 10_000, "(10,000 characters) is too long for a value"),
+        ("7" * 10_000, "(10,000 characters) is too long"),
+        ("10\u2075", "is a power"),
+        ("2.6\u00b2 mS/cm", "is a power"),
         ("\u0667", "does not begin with a number"),
     ],
 )

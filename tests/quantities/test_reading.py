@@ -120,7 +120,7 @@ def test_units_as_people_write_them(text: str, same: str) -> None:
     "text",
     [
         "2600 uS/cm", "2600 \u00b5S/cm", "2.6 dS m-1", "2.6 mS cm\u207b\u00b9", "2,6 mmho/cm", "0.26 S/m", "260 mS/m",
-        "260 10^-5 S/cm", "260 x 10\u207b\u2075 S/cm", "260 1e-5 S/cm", "2.6",
+        "260 10^-5 S/cm", "260 x 10\u207b\u2075 S/cm", "260 1e-5 S/cm", "2.6", "2,6 mS",
     ],
 )  # fmt: skip
 def test_conductivity_as_people_write_it(text: str) -> None:
@@ -190,7 +190,10 @@ def test_a_value_keeps_what_was_written() -> None:
         ("light_sum [J/cm2]", ("light_sum", "J/cm2", "")), ("make_up [m3]", ("make_up", "m3", "")),
         ("drain_pct", ("drain_pct", "", "")), ("date", ("date", "", "")),
         ("Ca [mg/L CaCO3]", ("Ca", "mg/L", "Ca as CaCO3")),
-        ("temperature [F]", ("temperature", "F", "")), ("alkalinity [meq/L]", ("HCO3", "meq/L", "alkalinity")),
+        ("NO3-N mg/L", ("NO3", "mg/L", "NO3-N")), ("K, mmol/L", ("K", "mmol/L", "")), ("EC mS/cm", ("EC", "mS/cm", "")),
+        ("B1 [L]", ("B1", "L", "")), ("K2", ("K2", "", "")), ("Ca+2 [mmol/L]", ("Ca", "mmol/L", "")),
+        ("remark " * 20, (("remark " * 20).strip(), "", "")), ("temperature [F]", ("temperature", "F", "")),
+        ("alkalinity [meq/L]", ("HCO3", "meq/L", "alkalinity")),
     ],
 )  # fmt: skip
 def test_heads(head: str, parsed: tuple[str, str, str]) -> None:
@@ -198,7 +201,7 @@ def test_heads(head: str, parsed: tuple[str, str, str]) -> None:
 
 
 @pytest.mark.parametrize(
-    "head", ["alkalinity [mg/L]", "EC [ppm]", "K [furlong]", "N [mg/L]", "TDS [ppm]", "P [meq/L]", "K" * 80]
+    "head", ["alkalinity [mg/L]", "EC [ppm]", "K [furlong]", "N [mg/L]", "TDS [ppm]", "P [meq/L]", "K" * 300, ""]
 )
 def test_heads_that_do_not_say_enough_are_refused(head: str) -> None:
     with pytest.raises(QuantityError):
