@@ -40,6 +40,7 @@ from fertui.tui.view_line import ViewLine
 from fertui.tui.views import view_numbered
 
 if TYPE_CHECKING:
+    from fertui.logbook.entries import Entry
     from fertui.workbench import Bench
 
 LOOK_FOR_NEWS_EVERY = 2.0
@@ -188,7 +189,7 @@ class FertuiApp(App[int], inherit_bindings=False):
     def draw_frame(self) -> None:
         """Header, view names and keys."""
         now = self.snapshot
-        self.query_one(HeaderLine).say(self._where(), f"as of {self._local():%a %-d %b %H:%M}", now.initials)
+        self.query_one(HeaderLine).say(self._where(), f"as of {self.local(self.moment):%a %-d %b %H:%M}", now.initials)
         loops = f"loop {now.loops.index(now.loop) + 1}/{len(now.loops)}" if len(now.loops) > 1 else ""
         self.query_one(ViewLine).mark(VIEW_NAMES, self.open_view, loops)
         self.update_keys()
@@ -200,12 +201,13 @@ class FertuiApp(App[int], inherit_bindings=False):
         grown = ", ".join(word for word in (loop.crop, loop.stage, loop.medium) if word and word != "none")
         return f"{site.name}, {loop.name}: {grown}"
 
-    def _local(self) -> datetime:
+    def local(self, moment: datetime) -> datetime:
+        """A moment on the clock of the site."""
         if self.snapshot.site is None:
-            return self.moment.astimezone()
+            return moment.astimezone()
         from zoneinfo import ZoneInfo
 
-        return self.moment.astimezone(ZoneInfo(self.snapshot.site.timezone))
+        return moment.astimezone(ZoneInfo(self.snapshot.site.timezone))
 
     async def on_event(self, event: events.Event) -> None:
         """Every key keeps the initials in force and clears the notice."""
@@ -266,6 +268,35 @@ class FertuiApp(App[int], inherit_bindings=False):
         await self.open_page(
             Chooser("What has happened?", options, lambda kind: self.call_next(self.action_enter, kind))
         )
+
+    async def correct(self, entry: Entry) -> None:
+        """Open the form that corrects an entry."""
+        from fertui.tui.forms.correction import Correction
+
+        if entry.kind == "site":
+            self.say("A changed site is corrected in the Site view (9).", "watch")
+        else:
+            await self.open_page(Correction(entry))
+
+    def strike(self, entry: Entry) -> None:
+        """Ask why, and strike an entry."""
+
+        def because(why: str) -> None:
+            if not why:
+                self.say("Nothing was struck: a reason is needed.", "watch")
+                return
+            self.with_initials(lambda by: self.clerk(lambda bench: bench.void(entry.number or 0, why, by), self.wrote, "striking"))
+
+        self.ask(f"Why strike entry {entry.number}?", because)
+
+    def wrote(self, answer: Answer) -> None:
+        """An entry was written, or not: say so, and have everything worked out again."""
+        if answer.value is None:
+            self.say(answer.trouble, "act")
+            return
+        entries = answer.value if isinstance(answer.value, tuple) else (answer.value,)
+        self.changed(max(entry.number or 0 for entry in entries))
+        self.say("logged as " + ", ".join(str(entry.number) for entry in entries), "good")
 
     def keep_draft(self, kind: str, loop: str, texts: tuple[str, ...]) -> None:
         """Keep a half-filled form."""

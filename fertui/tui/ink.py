@@ -136,6 +136,11 @@ def line(*parts: str | Span) -> Line:
     return tuple(spans)
 
 
+def col(text: str, width: int, ink: str = "plain", right: bool = True) -> Span:
+    """A cell of a table: the text cut or padded to its column."""
+    return Span(fit(text, width, right), ink)
+
+
 def width_of(spans: Line) -> int:
     """Columns a line takes."""
     return sum(cells(span.text) for span in spans)

@@ -158,9 +158,10 @@ class Form(View):
     def action_close(self) -> None:
         """Leave; what was typed is kept."""
         self.keep_draft()
-        self._close()
+        self.finish()
 
-    def _close(self) -> None:
+    def finish(self) -> None:
+        """Take the form off the screen."""
         self._done = True
         self.fertui.close_page()
 
@@ -268,7 +269,7 @@ class Form(View):
             return
         written, last_number = answer.value
         self.fertui.drop_draft(self.spec.kind, self.loop)
-        self._close()
+        self.finish()
         self.fertui.changed(last_number)
         self.fertui.say(saved_words(written), "good")
         if self._saved is not None:

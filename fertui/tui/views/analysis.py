@@ -1,9 +1,128 @@
-from fertui.tui.ink import line
-from fertui.tui.view import View
+"""Analysis: the laboratory's report against target, with the one before it and the feed beside it."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+from fertui.tui.figures import MARKS, amount, number, point_name
+from fertui.tui.ink import BLANK, Line, Span, beside, col, fit, line, literal, wrap
+from fertui.tui.snapshot import Ask, Snapshot
+from fertui.tui.view import View, waiting
+
+if TYPE_CHECKING:
+    from fertui.workbench.analysis import AnalysisRow, AnalysisView as Report
+    from fertui.workbench.glance import Seen
+
+WORD_INKS = {"on target": "good", "a little low": "plain", "a little high": "plain"}
+"""Inks of the deviation in words; anything further off wants looking at."""
+WIDE = 112
 
 
 class AnalysisView(View):
-    TITLE = "Analysis"
+    """Thursday with the lab report."""
 
-    def draw(self, snapshot, width):
-        return [line(" to come")]
+    TITLE = "Analysis"
+    HELP = (
+        "The last analysis of the managed point beside the feed's. 'normalised' is the value brought to the reference EC, "
+        "so that a strong or weak solution is compared with the target fairly; Na, NH4 and HCO3 are never scaled. "
+        "'off' is how far the normalised value is from the target. Below: shares of K, Ca and Mg, what the last change of recipe "
+        "did, micronutrients, and whether the report holds together (charge balance, EC against the ions). "
+        "a logs a new report, p shows the recipe that follows from where the loop is now."
+    )
+
+    def asks(self, snapshot: Snapshot) -> tuple[Ask, ...]:
+        """The last report."""
+        return (Ask("analysis", snapshot.loop),)
+
+    def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
+        """The report, or how to log one."""
+        ask = Ask("analysis", snapshot.loop)
+        report: Report | None = snapshot.get(ask)
+        if report is None:
+            return waiting(snapshot, ask, "the last analysis", width)
+        if report.managed is None and report.feed is None:
+            return [BLANK, line(" ", Span("No analysis is logged for this loop.", "watch"), " a logs one.")]
+        table = [*_heading(report), *_rows(report.rows, snapshot.unit)]
+        below = [*_shares(report), *_said(report, width), BLANK, *_checks(report, width)]
+        micros = _micronutrients(report.micronutrients, snapshot.unit)
+        if width >= WIDE:
+            return beside([*table, BLANK, *below], micros, 80, 3)
+        return [*table, BLANK, *below, BLANK, *micros]
+
+
+def _heading(report: Report) -> list[Line]:
+    managed = point_name(report.managed_point)
+    method = f" ({literal(report.method.replace('_', ' '))})" if report.method else ""
+    feed = f"; drip of {_day(report.feed)}" if report.feed else "; no analysis of the drip"
+    reference = "" if report.ec_reference is None else f", normalised to EC {number(report.ec_reference)} mS/cm"
+    words = f"{managed} of {_day(report.managed)}{method}{feed}{reference}"
+    heads = ("drip", managed, "before", "normalised", "target", "off")
+    cells = [col(head, size, "faint") for head, size in zip(heads, (8, 11, 9, 11, 8, 7), strict=True)]
+    return [line(Span(" " + words, "title")), line(Span(fit("", 14)), *cells)]
+
+
+def _day(seen: Seen | None) -> str:
+    return "no date" if seen is None else f"{seen.at:%a %-d %b}"
+
+
+def _rows(rows: Sequence[AnalysisRow], unit: str) -> list[Line]:
+    return [_row(row, unit) for row in rows if row.feed is not None or row.managed is not None]
+
+
+def _row(row: AnalysisRow, unit: str) -> Line:
+    label, shown = _in_unit(row, unit)
+    off = "" if row.deviation_pct is None else f"{row.deviation_pct:+.0f} %"
+    ink = WORD_INKS.get(row.words, "watch" if row.words else "faint")
+    mark = MARKS["good" if ink == "good" else "watch"] if row.words and ink != "plain" else " "
+    feed, managed, before, normalised, target = shown
+    return line(
+        Span(f" {fit(label, 13)}"), col(feed, 8), col(managed, 11, "strong"), col(before, 9, "faint"), col(normalised, 11),
+        col(target, 8), col(off, 7, ink), Span(f"  {mark} {row.words}", ink),
+    )  # fmt: skip
+
+
+def _in_unit(row: AnalysisRow, unit: str) -> tuple[str, tuple[str, ...]]:
+    """Label with unit, and the five numbers of a row in it."""
+    from fertui.workbench.units import shown
+
+    label = shown(row.ion, 1.0, unit)[1]
+    species = label.removeprefix(unit).strip()
+    values = (row.feed, row.managed, row.previous, row.normalised, row.target)
+    texts = tuple("-" if value is None else amount(shown(row.ion, value, unit)[0]) for value in values)
+    return f"{species or row.ion} {label.removesuffix(species).strip()}", texts
+
+
+def _shares(report: Report) -> list[Line]:
+    parts: list[str | Span] = [Span(" share of K+Ca+Mg  ", "title")]
+    for ion, (now, before) in report.shares.items():
+        if now is not None:
+            was = "" if before is None else f" (was {before:.0f})"
+            parts += [f" {ion} ", Span(f"{now:.0f} %", "strong"), Span(was + " ", "faint")]
+    return [line(*parts)] if len(parts) > 1 else []
+
+
+def _said(report: Report, width: int) -> list[Line]:
+    words = literal(report.last_change) or "No recipe change lies between the last two analyses."
+    return [line(Span(f" {text}", "plain" if report.last_change else "faint")) for text in wrap(words, width - 2)]
+
+
+def _checks(report: Report, width: int) -> list[Line]:
+    rows: list[Line] = [line(Span(" does the report hold together", "title"))]
+    for point, checks in report.checks.items():
+        for check in checks:
+            ink = "good" if check.passed else "act"
+            mark = MARKS["good"] if check.passed else MARKS["act"]
+            unit = "" if check.unit == "-" else f" {check.unit}"
+            text = f"{point_name(point)}: {check.what} {check.value:.2g}{unit}, allowed {check.limit}; {check.remark}"
+            first, *more = wrap(literal(text), width - 5)
+            rows += [line(Span(f" {mark} ", ink), first), *(line("   ", text) for text in more)]
+    return rows if len(rows) > 1 else []
+
+
+def _micronutrients(rows: Sequence[AnalysisRow], unit: str) -> list[Line]:
+    given = [row for row in rows if row.feed is not None or row.managed is not None]
+    if not given:
+        return [line(Span(" micronutrients", "title"), Span("  none in this report", "faint"))]
+    heads = [col(head, size, "faint") for head, size in (("drip", 8), ("now", 11), ("before", 9), ("", 11), ("target", 8), ("off", 7))]
+    return [line(Span(fit(" micronutrients", 14), "title"), *heads), *_rows(given, unit)]

@@ -1,0 +1,181 @@
+"""Entries of the logbook in one line each, with what was struck and why; the base of Logbook and of drill-downs."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from datetime import date, datetime
+from typing import TYPE_CHECKING, ClassVar
+
+from textual.binding import Binding
+
+from fertui.tui.ink import BLANK, Line, Span, col, cut, inked, line, literal
+from fertui.tui.snapshot import Ask, Snapshot
+from fertui.tui.view import SCROLLING, View, waiting
+
+if TYPE_CHECKING:
+    from fertui.logbook.entries import Entry
+
+
+@dataclass(frozen=True, slots=True)
+class Wanted:
+    """Which entries to show; empty means all."""
+
+    loop: str = ""
+    kinds: tuple[str, ...] = ()
+    by: str = ""
+    text: str = ""
+    start: datetime | None = None
+    end: datetime | None = None
+
+    def takes(self, entry: Entry) -> bool:
+        """Whether an entry is wanted. Entries of no loop belong to every loop."""
+        return (
+            (not self.loop or entry.loop in ("", self.loop))
+            and (not self.kinds or entry.kind in self.kinds)
+            and (not self.by or entry.by.lower() == self.by.lower())
+            and (self.start is None or entry.at >= self.start)
+            and (self.end is None or entry.at <= self.end)
+            and (not self.text or self.text.lower() in " ".join((said(entry), entry.note, entry.why)).lower())
+        )
+
+
+class EntryList(View):
+    """Entries, newest first, with a bar to choose one."""
+
+    TITLE = "Entries"
+    HELP = (
+        "Entries of the logbook, newest first. Nothing is ever overwritten: what was corrected or struck stays, crossed out, "
+        "with who, when and why. Enter shows an entry whole, c corrects it, v strikes it."
+    )
+    BINDINGS: ClassVar = [
+        *SCROLLING,
+        Binding("enter", "open", "whole entry", id="entry.open", tooltip="The entry under the bar with all it holds."),
+        Binding("c", "correct", "correct", id="entry.correct", tooltip="Correct the entry: a new one supersedes it."),
+        Binding("v", "strike", "strike", id="entry.strike", tooltip="Strike the entry; it stays, crossed out."),
+        Binding("escape", "close", "back", id="page.close", tooltip="Back to where you were."),
+    ]
+
+    def __init__(
+        self, title: str, loop: str = "", kinds: tuple[str, ...] = (), start: datetime | None = None, end: datetime | None = None
+    ) -> None:
+        super().__init__()
+        self.heading = title
+        self.wanted = Wanted(loop, kinds, start=start, end=end)
+        self.row = 0
+
+    @classmethod
+    def of_day(cls, day: date, loop: str) -> EntryList:
+        """The entries of one local day."""
+        page = cls(f"{day:%a %-d %b}", loop)
+        page.day = day
+        return page
+
+    day: date | None = None
+
+    def asks(self, snapshot: Snapshot) -> tuple[Ask, ...]:
+        """The whole book: it is filtered here."""
+        return (Ask("history"),)
+
+    def entries(self, snapshot: Snapshot) -> list[Entry]:
+        """The entries wanted, newest first."""
+        found = [entry for entry in snapshot.get(Ask("history")) or () if self.wanted.takes(entry)]
+        if self.day is not None:
+            found = [entry for entry in found if self.fertui.local(entry.at).date() == self.day]
+        return sorted(found, key=lambda entry: (entry.at, entry.number or 0), reverse=True)
+
+    def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
+        """A heading and one line an entry; a struck one is followed by why."""
+        if snapshot.get(Ask("history")) is None:
+            return waiting(snapshot, Ask("history"), "the logbook", width)
+        entries, struck = self.entries(snapshot), struck_by(snapshot.get(Ask("history")))
+        self.row = max(0, min(self.row, len(entries) - 1))
+        rows = [line(Span(f" {literal(self.heading)}", "title"), Span(f"   {len(entries)} entries, newest first", "faint"))]
+        height = max(1, (self.size.height or self.fertui.stage_size.height) - 1)
+        first = max(0, min(self.row - height // 2, len(entries) - height))
+        self.first_shown = first
+        for index, entry in enumerate(entries[first : first + height], first):
+            rows.append(self._row(entry, struck.get(entry.number or 0), index == self.row, width))
+        return rows if entries else [*rows, BLANK, line(" ", Span("No entry fits.", "faint"))]
+
+    def _row(self, entry: Entry, by: Entry | None, chosen: bool, width: int) -> Line:
+        at = self.fertui.local(entry.at)
+        when = f"{at:%-d %b}" if entry.whole_day else f"{at:%-d %b %H:%M}"
+        mark = "×" if by is not None else "▸" if chosen else "!" if entry.doubtful else " "
+        row = line(
+            col(f"{mark}{entry.number}", 7), col(when, 13), Span("  "), col(entry.kind, 9, "strong", right=False),
+            col(literal(entry.by), 5, "faint", right=False), Span(cut(literal(said(entry, by)), width - 37)),
+        )  # fmt: skip
+        if chosen:
+            from fertui.tui.ink import filled
+
+            return inked(filled(row, width), "chosen")
+        return inked(row, "struck") if by is not None else row
+
+    def chosen(self) -> Entry | None:
+        """The entry under the bar."""
+        entries = self.entries(self.fertui.snapshot)
+        return entries[self.row] if entries else None
+
+    def _go(self, row: int) -> None:
+        self.row = max(0, row)
+        self.redraw()
+
+    def action_up(self) -> None:
+        """A newer entry."""
+        self._go(self.row - 1)
+
+    def action_down(self) -> None:
+        """An older entry."""
+        self._go(self.row + 1)
+
+    def action_leaf(self, leaves: int) -> None:
+        """A screenful on."""
+        self._go(self.row + leaves * (self.size.height - 2))
+
+    def action_top(self) -> None:
+        """The newest."""
+        self._go(0)
+
+    def action_bottom(self) -> None:
+        """The oldest."""
+        self._go(len(self.entries(self.fertui.snapshot)) - 1)
+
+    async def action_open(self) -> None:
+        """The entry under the bar, whole."""
+        from fertui.tui.entry_page import EntryPage
+
+        if (entry := self.chosen()) is not None:
+            await self.fertui.open_page(EntryPage(entry.number or 0))
+
+    async def action_correct(self) -> None:
+        """Correct the entry under the bar."""
+        if (entry := self.chosen()) is not None:
+            await self.fertui.correct(entry)
+
+    def action_strike(self) -> None:
+        """Strike the entry under the bar."""
+        if (entry := self.chosen()) is not None:
+            self.fertui.strike(entry)
+
+
+def struck_by(history: Sequence[Entry]) -> Mapping[int, Entry]:
+    """For every entry that was corrected or struck, the last entry that did it."""
+    return {entry.supersedes: entry for entry in history if entry.supersedes is not None}
+
+
+def said(entry: Entry, by: Entry | None = None) -> str:
+    """An entry in one line: point, values as written, note; for a struck one who did it and why."""
+    words = [entry.point.replace("_", " ")] if entry.point else []
+    if entry.kind == "site":
+        words.append("site.toml changed")
+    else:
+        words += [f"{value.name} {value.text}" for value in entry.values]
+    if entry.supersedes is not None:
+        words.insert(0, f"{'strikes' if entry.void else 'corrects'} {entry.supersedes} ({entry.why})")
+    if entry.note:
+        words.append(f"- {entry.note}")
+    if entry.doubtful:
+        words.append(f"doubtful: {entry.doubtful}")
+    text = ", ".join(words)
+    return f"{'struck' if by.void else 'corrected'} by {by.by} in {by.number}: {by.why}. {text}" if by is not None else text
