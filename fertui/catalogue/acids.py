@@ -125,8 +125,7 @@ def _key(name: str) -> str:
 
 def _acid(entry: Mapping[str, Any], sources: Mapping[str, Provenance]) -> Acid:
     densities = tuple((float(strength), float(density)) for strength, density in entry["density"].items())
-    computed = {float(strength) for strength in entry["computed"]}
-    origin = {True: sources[entry["computed_source"]], False: sources[entry["density_source"]]}
+    remembered = entry.get("remembered", {"strengths": [], "source": entry["density_source"]})
     return Acid(
         name=entry["name"],
         formula=entry["formula"],
@@ -136,5 +135,8 @@ def _acid(entry: Mapping[str, Any], sources: Mapping[str, Provenance]) -> Acid:
         aliases=tuple(entry["aliases"]),
         cautions=tuple(entry["cautions"]),
         note=entry.get("note", ""),
-        sources={strength: origin[strength in computed] for strength, _ in densities},
+        sources={
+            strength: sources[remembered["source"] if strength in remembered["strengths"] else entry["density_source"]]
+            for strength, _ in densities
+        },
     )
