@@ -72,7 +72,14 @@ def questions() -> tuple[Question, ...]:
     >>> [each.option for each in questions()][:4]
     ['crop', 'stage', 'area', 'layout']
     """
-    return (*_about_the_house(), *_about_water(), *_about_feeding(), *_about_names())
+    return (
+        *_about_the_crop(),
+        *_about_the_loop(),
+        *_about_tanks(),
+        *_about_the_root_zone(),
+        *_about_feeding(),
+        *_about_names(),
+    )
 
 
 def new_site_from(folder: Path | str, answers: Mapping[str, str | None]) -> Site:
@@ -89,7 +96,7 @@ def new_site_from(folder: Path | str, answers: Mapping[str, str | None]) -> Site
     return new_site(folder, **{each.key: each.read(given.get(each.option, "")) for each in asked})
 
 
-def _about_the_house() -> tuple[Question, ...]:
+def _about_the_crop() -> tuple[Question, ...]:
     return (
         Question(
             "crop",
@@ -111,6 +118,11 @@ def _about_the_house() -> tuple[Question, ...]:
         Question(
             "area_m2", "area", "How many m2 of crop does the loop feed?", "Cropped area.", _number(0.01, 1e7, "m2")
         ),
+    )
+
+
+def _about_the_loop() -> tuple[Question, ...]:
+    return (
         Question(
             "layout",
             "layout",
@@ -134,7 +146,7 @@ def _about_the_house() -> tuple[Question, ...]:
     )
 
 
-def _about_water() -> tuple[Question, ...]:
+def _about_tanks() -> tuple[Question, ...]:
     return (
         Question(
             "tank_l",
@@ -153,6 +165,11 @@ def _about_water() -> tuple[Question, ...]:
             may_skip=True,
             applies=lambda answers: answers.get("layout") == "drain-blend",
         ),
+    )
+
+
+def _about_the_root_zone() -> tuple[Question, ...]:
+    return (
         Question(
             "medium_volume_l_per_m2",
             "medium-volume",
@@ -176,6 +193,11 @@ def _about_water() -> tuple[Question, ...]:
             may_skip=True,
             applies=_has_medium,
         ),
+    )
+
+
+def _about_feeding() -> tuple[Question, ...]:
+    return (
         Question(
             "water",
             "water",
@@ -185,11 +207,6 @@ def _about_water() -> tuple[Question, ...]:
             (Preset("rain", "taken as water without ions"), Preset("well", "enter its analysis")),
             may_skip=True,
         ),
-    )
-
-
-def _about_feeding() -> tuple[Question, ...]:
-    return (
         Question(
             "target",
             "target",
