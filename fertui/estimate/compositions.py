@@ -11,6 +11,7 @@ from fertui.catalogue.figures import CatalogueError
 from fertui.catalogue.supplies import contents
 from fertui.chemistry.ions import INDEX, IONS, Array
 from fertui.logbook.entries import Entry
+from fertui.logbook.kinds import KINDS
 from fertui.site.model import Composition, Loop, Site, StockTank, Supply
 from fertui.site.presets import target_of
 
@@ -68,7 +69,7 @@ def batch_contents(site: Site, entry: Entry, before: Array) -> Array:
     """Ions (10,) [mmol per litre of stock] of a batch; old solution left in the tank counts with its share."""
     litres = entry.number_of("litres") or 0.0
     left = entry.number_of("left") or 0.0
-    salts = [value for value in entry.values if value.unit == "kg" and value.number]
+    salts = [value for value in entry.values if value.name not in KINDS["batch"].names and value.number]
     if not salts or litres <= 0:
         return before
     mixed = sum(value.number * per_kg(site, value.name) for value in salts if value.number is not None)
