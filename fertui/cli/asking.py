@@ -4,13 +4,17 @@ from __future__ import annotations
 
 import argparse
 import sys
-from collections.abc import Mapping
+import textwrap
+from collections.abc import Mapping, Sequence
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING
 
 from fertui.cli.main import FINE
 from fertui.cli.parser import NEW_OPTIONS
 from fertui.refusals import Refusal
+
+if TYPE_CHECKING:
+    from fertui.site.questions import Question
 
 NECESSARY = ("crop", "medium", "layout", "area")
 
@@ -28,33 +32,40 @@ def make_site(options: argparse.Namespace) -> int:
         answers = _ask(new_site_questions(), answers)
     folder, steps = make_new_site(Path(options.dir), answers)
     print(folder)
-    print("Log first:", *(f"  {step}" for step in steps), sep="\n", file=sys.stderr)
+    print("Log first:", *(line for step in steps for line in _folded(step, "- ")), sep="\n", file=sys.stderr)
     return FINE
 
 
-def _ask(questions: Any, known: Mapping[str, str]) -> dict[str, str]:
-    """Ask what is not known yet; Enter takes the default, ``?`` explains."""
+def _ask(questions: Sequence[Question], known: Mapping[str, str]) -> dict[str, str]:
+    """Ask what is not known yet. Enter takes the default, ``?`` explains, an answer that cannot be is asked again."""
+    print("Enter takes what stands in brackets, ? explains, Ctrl-C leaves without making anything.")
     answers = dict(known)
     for question in questions:
-        if question.key in answers or not question.applies(answers):
-            continue
-        print(f"\n{question.prompt}")
-        if question.presets:
-            print("  " + ", ".join(question.presets))
-        answer = _answer(question)
-        if answer:
-            answers[question.key] = answer
+        if question.option not in answers and question.applies(answers):
+            answers[question.option] = _answer(question)
     return answers
 
 
-def _answer(question: Any) -> str:
-    hint = f" [{question.default}]" if question.default else " [I do not know]" if question.optional else ""
+def _answer(question: Question) -> str:
+    print("", *_folded(question.prompt, ""), sep="\n")
+    for preset in question.presets:
+        print(
+            *_folded(f"{preset.value}: {preset.text}" + (f" ({preset.source})" if preset.source else ""), "  "),
+            sep="\n",
+        )
+    hint = f" [{question.default}]" if question.default else " [I do not know]" if question.may_skip else ""
     while True:
-        written = input(f"  {question.unit or 'answer'}{hint}: ").strip()
+        written = input(f"{question.option}{hint}: ").strip()
         if written == "?":
-            print(f"  {question.explanation}")
+            print(*_folded(question.explanation, "  "), sep="\n")
             continue
-        answer = written or question.default
-        if answer or question.optional:
-            return str(answer)
-        print("  This one is needed. '?' explains.")
+        try:
+            question.read(written)
+        except Refusal as refusal:
+            print(*_folded(str(refusal), "  "), sep="\n")
+            continue
+        return written
+
+
+def _folded(text: str, mark: str) -> list[str]:
+    return textwrap.wrap(text, 80, initial_indent=mark, subsequent_indent=" " * len(mark))

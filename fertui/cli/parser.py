@@ -102,6 +102,7 @@ NEW_OPTIONS = {
     "medium-volume": "medium [L per m2]",
     "root-zone-water": "water the medium holds [L per m2]",
     "target": "target by name: the crop's own, hoagland-1, hoagland-2, steiner",
+    "water": "source water by name, or pure",
     "supplies": "salts and acids on the shelf, separated by commas (default: the common salts)",
     "stage": "stage of the crop",
     "name": "name of the site (default: the folder's)",

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 from fertui.refusals import FileTrouble, Refusal
 
 if TYPE_CHECKING:
     from fertui.logbook.importing import ImportResult
-    from fertui.site.new import Question as SiteQuestion
+    from fertui.site.questions import Question
     from fertui.workbench.folder import SiteFolder
 
 
@@ -50,39 +50,21 @@ def write_new(path: Path, text: str) -> Path:
     return path
 
 
-NUMBERS = {
-    "area": "area_m2",
-    "tank": "tank_l",
-    "drain-store": "drain_store_l",
-    "medium-volume": "medium_volume_l_per_m2",
-    "root-zone-water": "root_zone_water_l_per_m2",
-}
-"""Options of a new site that are numbers, by the name of the field they fill."""
-
-
 def make_new_site(folder: Path, answers: Mapping[str, str]) -> tuple[Path, tuple[str, ...]]:
-    """Make a site folder with an empty logbook from texts; returns the folder and what to log first."""
+    """Make a site folder with an empty logbook from answers as texts; returns the folder and what to log first."""
     from fertui.logbook.store import Logbook
-    from fertui.quantities import parse_number
-    from fertui.site.new import first_steps, new_site
+    from fertui.site.new import first_steps
+    from fertui.site.questions import new_site_from
     from fertui.workbench.folder import LOGBOOK
 
-    wishes: dict[str, Any] = {}
-    for name, text in answers.items():
-        if name in NUMBERS:
-            wishes[NUMBERS[name]] = parse_number(text).value
-        elif name == "supplies":
-            wishes[name] = tuple(each.strip() for each in text.split(",") if each.strip())
-        else:
-            wishes[name] = text
-    site = new_site(folder, **wishes)
+    site = new_site_from(folder, answers)
     Logbook.create(folder / LOGBOOK).close()
     return folder, first_steps(site)
 
 
-def new_site_questions() -> tuple[SiteQuestion, ...]:
+def new_site_questions() -> tuple[Question, ...]:
     """What a new site is asked, in the order a grower knows the answers."""
-    from fertui.site.new import questions
+    from fertui.site.questions import questions
 
     return questions()
 

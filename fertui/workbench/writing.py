@@ -40,13 +40,13 @@ class Writing(Answers):
         """What a careful colleague would ask before this entry is written."""
         from fertui.logbook.questions import questions
 
-        return questions(self._read(kind, fields, loop), self.book, self.site)
+        return questions(self._read(kind, fields, loop, whole=False), self.book, self.site)
 
     def check_analysis(self, fields: Mapping[str, str], loop: str | None = None) -> tuple[Check, ...]:
         """Charge balance and EC check of an analysis before it is saved."""
         from fertui.workbench.entering import check_analysis
 
-        return check_analysis(self._read("analysis", fields, loop))
+        return check_analysis(self._read("analysis", fields, loop, whole=False))
 
     def record(self, kind: str, fields: Mapping[str, str], loop: str | None = None, asked: bool = True) -> Entry:
         """Append one entry, return it as read back; ``asked`` False: unanswered questions are kept with it as flags."""
@@ -56,6 +56,11 @@ class Writing(Answers):
         if not asked:
             entry = flagged(entry, questions(entry, self.book, self.site))
         return self._stored(self.book.append(entry))
+
+    def record_all(self, lines: Sequence[tuple[str, Mapping[str, str]]], loop: str | None = None) -> tuple[Entry, ...]:
+        """Append several entries of a loop in one transaction, all or none; kinds and texts as in ``record``."""
+        entries = [self._read(kind, fields, loop) for kind, fields in lines]
+        return tuple(self.book.entry(number) for number in self.book.append(entries))
 
     def supersede(self, number: int, fields: Mapping[str, str], why: str, by: str) -> Entry:
         """Correct an entry by a new one; the old one stays visible."""
@@ -91,7 +96,7 @@ class Writing(Answers):
         from fertui.site.edit import changed
         from fertui.site.files import write_site
 
-        site = changed(self.site, key, text)
+        site = changed(self.site, key, text, source=f"{by}, {now():%Y-%m-%d}")
         path = write_site(site, self.folder, datetime.now(UTC))
         self.__dict__.pop("site", None)
         return self.record("site", {"text": path.read_text(encoding="utf-8"), "by": by})
@@ -125,10 +130,13 @@ class Writing(Answers):
         """Strike an intended step that will not be carried out."""
         return self.void(number, why, by)
 
-    def _read(self, kind: str, fields: Mapping[str, str], loop: str | None) -> Entry:
+    def _read(self, kind: str, fields: Mapping[str, str], loop: str | None, whole: bool = True) -> Entry:
+        """The entry that texts describe; acid logged by any way says whether its cautions were acknowledged."""
         from fertui.logbook.parse import entry_from_text
 
-        return entry_from_text(kind, fields, self.site, self.loop(loop), datetime.now(UTC))
+        if kind == "acid":
+            fields = {"cautions": "not acknowledged", **fields}
+        return entry_from_text(kind, fields, self.site, self.loop(loop), datetime.now(UTC), whole=whole)
 
     def _stored(self, numbers: Sequence[int]) -> Entry:
         return self.book.entry(numbers[-1])

@@ -78,9 +78,7 @@ def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> s
 
 def aims_text(rows: Sequence[Row]) -> str:
     """Targets, bands, limits and settings with where each comes from."""
-    return "\n".join(
-        words.table([("key", "value", "from"), *((row.key, row.text, row.source) for row in rows)])
-    )
+    return "\n".join(words.table([("key", "value", "from"), *((row.key, row.text, row.source) for row in rows)]))
 
 
 def check_text(rows: Sequence[CheckRow]) -> str:
