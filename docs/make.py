@@ -6,6 +6,7 @@ import re
 from collections.abc import Callable, Mapping
 from pathlib import Path
 
+from fertui.catalogue.safety_page import safety_tables
 from fertui.cli.parser import build, commands_of
 from fertui.logbook.kinds import KINDS
 
@@ -40,8 +41,13 @@ def _kinds() -> list[str]:
     return lines
 
 
-PAGES: Mapping[str, Callable[[], str]] = {"command.md": command_reference}
-"""Pages made whole."""
+def safety_page() -> str:
+    """docs/safety.md with its tables made anew from the cautions of the catalogue."""
+    return replaced((DOCS / "safety.md").read_text(encoding="utf-8"), "safety", safety_tables())
+
+
+PAGES: Mapping[str, Callable[[], str]] = {"command.md": command_reference, "safety.md": safety_page}
+"""Pages made from the program, whole or in part."""
 
 
 def replaced(page: str, name: str, made: str) -> str:

@@ -1,21 +1,13 @@
-"""The generated part of docs/safety.md: every caution, hazard band and pair of the catalogue as tables.
-
-``python -m fertui.catalogue.safety_page docs/safety.md`` writes it between the two marks of that file.
-"""
+"""Every caution, hazard band and pair of the catalogue as tables, for docs/safety.md."""
 
 from __future__ import annotations
 
-import sys
 from collections.abc import Iterable, Mapping
-from pathlib import Path
 from typing import Any
 
 from fertui.catalogue.acids import acids
 from fertui.catalogue.figures import Provenance, table
 from fertui.catalogue.salts import salts
-
-BEGIN = "<!-- generated from the catalogue: begin -->"
-END = "<!-- generated from the catalogue: end -->"
 
 
 def safety_tables() -> str:
@@ -86,15 +78,3 @@ def _source(key: str, data: Mapping[str, Any]) -> str:
 def _table(head: tuple[str, ...], rows: Iterable[tuple[str, ...]]) -> str:
     lines = [head, ("---",) * len(head), *rows]
     return "\n".join(f"| {' | '.join(line)} |" for line in lines)
-
-
-def main(path: str) -> None:
-    """Write the generated part of a page between its marks."""
-    page = Path(path)
-    before, _, rest = page.read_text(encoding="utf-8").partition(BEGIN)
-    after = rest.partition(END)[2]
-    page.write_text(f"{before}{BEGIN}\n\n{safety_tables()}\n\n{END}{after}", encoding="utf-8")
-
-
-if __name__ == "__main__":
-    main(sys.argv[1])
