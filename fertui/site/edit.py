@@ -10,7 +10,7 @@ from typing import Any
 
 from fertui.site.checks import SiteError, nearest, shortened
 from fertui.site.model import Site
-from fertui.site.reading import site_from
+from fertui.site.reading import METHODS, site_from
 from fertui.site.writing import Tables, tables_of
 
 Step = str | int
@@ -94,7 +94,7 @@ def _steps(tables: Tables, key: str) -> list[Step]:
             steps.append(place)
             table = table[place]
             continue
-        name, _, rest = rest.partition(".")
+        name, rest = _key(table, rest)
         steps.append(name)
         table = table.get(name, {}) if isinstance(table, dict) else {}
     if not steps or isinstance(steps[-1], int):
@@ -102,6 +102,16 @@ def _steps(tables: Tables, key: str) -> list[Step]:
             f"{key[:100]!r} names no value of site.toml; such as loops.NAME.feed_EC or bands.root_zone.K_share.low."
         )
     return steps
+
+
+def _key(table: Any, rest: str) -> tuple[str, str]:
+    """The key that a dotted name begins with, and the rest; keys that are there, or are methods, may hold dots."""
+    known = (*table, *METHODS) if isinstance(table, dict) else METHODS
+    for key in sorted(known, key=len, reverse=True):
+        if rest == key or rest.startswith(f"{key}."):
+            return key, rest[len(key) + 1 :]
+    name, _, rest = rest.partition(".")
+    return name, rest
 
 
 def _place(tables: list[Tables], rest: str, key: str) -> tuple[int, str]:

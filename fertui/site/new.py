@@ -141,6 +141,8 @@ def first_steps(site: Site) -> tuple[str, ...]:
     if not site.waters[0].composition.ions:
         steps.append(f"The analysis of the water {site.waters[0].name!r} in site.toml: acid and salts depend on it.")
     steps.append("The daily round: EC, pH and litres of make-up water; two minutes, blank sheet with `fertui round`.")
+    if medium_preset(loop.medium).warning:
+        steps.append(f"About {loop.medium}: {medium_preset(loop.medium).warning}")
     unchecked = [key for key, source in loop.sources.items() if "unverified preset" in source]
     if unchecked:
         steps.append(f"Look over what is preset and unverified in site.toml: {', '.join(unchecked)}, bands and limits.")

@@ -44,6 +44,12 @@ def test_a_new_limit_can_be_set_for_the_whole_site(site: Site) -> None:
     assert changed(site, "limits.drain.Na.high", "7").limits["drain"]["Na"].high == 7
 
 
+def test_keys_may_hold_dots(site: Site) -> None:
+    factored = changed(site, "loops.north 1.2.extract_factors.extract_1_1.5", "2,5")
+    assert factored.loops[0].extract_factors == {"extract_1_1.5": 2.5}
+    assert changed(factored, "loops.north 1.2.extract_factors.extract_1_1.5", "3").loops[0].extract_factors
+
+
 def test_values_of_every_type(site: Site) -> None:
     assert changed(site, "loops.north 1.2.name", "12").loops[0].name == "12"
     assert changed(site, "site.staffed_days", "Mon, Tue").staffed_days == ("Mon", "Tue")

@@ -170,6 +170,11 @@ def test_first_steps_name_the_analysis_and_the_water(tmp_path: Path) -> None:
     assert "unverified" in steps
 
 
+def test_a_medium_that_needs_care_says_so(tmp_path: Path) -> None:
+    site = new_site(tmp_path, crop="tomato", medium="coir-new", layout="drain-blend", area_m2=1000)
+    assert any("coir-new" in each for each in first_steps(site))
+
+
 def test_the_machine_s_time_zone_is_one_a_site_may_have(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setenv("TZ", "Europe/Rome")
     assert machine_timezone() == "Europe/Rome"
