@@ -58,8 +58,7 @@ def restore(file: str | Path, folder: str | Path) -> Path:
     try:
         lines = _numbered(path)
         site_text = _head(path, lines)
-        make_private_folder(making)
-        _fill(making / FILE_NAME, lines, path)
+        _fill(making / FILE_NAME, _batches(path, lines))
         if site_text:
             write_whole(making / SITE_FILE, site_text)
         os.replace(making, into)
@@ -108,25 +107,36 @@ def _lines(entries: Iterable[Entry], site_text: str) -> Iterator[str]:
     yield f"{json.dumps({'entries': count, 'chain': chain})}\n"
 
 
-def _fill(making: Path, lines: Iterator[tuple[int, str]], path: Path) -> None:
+def _fill(making: Path, batches: Iterator[list[Entry]]) -> None:
+    """Write batches of entries into a new book; the first is read before the file is made."""
+    first = next(batches, [])
+    make_private_folder(making.parent)
     with Logbook.create(making) as book:
-        end: dict[str, Any] | None = None
-        batch: list[Entry] = []
-        for number, line in lines:
-            plain = _decoded(line, number, path)
-            if end is not None:
-                raise LogbookError(f"{path} goes on after its last line; it is not one backup.")
-            if plain.keys() == {"entries", "chain"}:
-                end = plain
-            else:
-                batch.append(_entry(plain, number, path))
-            if len(batch) == _CHUNK or end is not None:
-                book.append(batch)
-                batch = []
-        if end is None:
-            raise LogbookError(f"{path} is cut off: its last line is missing. Use another backup.")
-        if end != {"entries": book.last_number(), "chain": book.last_link()}:
-            raise LogbookError(f"{path} was changed or damaged: its entries do not match its last line.")
+        for batch in itertools.chain([first], batches):
+            book.append(batch)
+
+
+def _batches(path: Path, lines: Iterator[tuple[int, str]]) -> Iterator[list[Entry]]:
+    """Entries of a backup, held against its last line; raises ``LogbookError`` for a line that is none or misplaced."""
+    batch: list[Entry] = []
+    count, chain, end = 0, FIRST_HASH, None
+    for number, line in lines:
+        plain = _decoded(line, number, path)
+        if end is not None:
+            raise LogbookError(f"{path} goes on after its last line; it is not one backup.")
+        if plain.keys() == {"entries", "chain"}:
+            end = plain
+            continue
+        batch.append(_entry(plain, number, path))
+        count, chain = count + 1, link_of(chain, batch[-1])
+        if len(batch) == _CHUNK:
+            yield batch
+            batch = []
+    if end is None:
+        raise LogbookError(f"{path} is cut off: its last line is missing. Use another backup.")
+    if end != {"entries": count, "chain": chain}:
+        raise LogbookError(f"{path} was changed or damaged: its entries do not match its last line.")
+    yield batch
 
 
 def _entry(plain: dict[str, Any], number: int, path: Path) -> Entry:

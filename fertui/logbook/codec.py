@@ -67,10 +67,10 @@ def entry_of(plain: Mapping[str, Any]) -> Entry:
         times = {name: moment(plain[name]) for name in ("at", "entered")}
     except (TypeError, ValueError, OverflowError) as error:
         raise LogbookError(f"entry {plain['number']}: {error}.") from error
-    if plain["kind"] not in KINDS:
-        raise LogbookError(f"the kind {plain['kind']!r} is not known; was it written by a newer fertui?")
     entry = Entry(**{**plain, **times, "values": values})
     check_storable(entry)
+    if entry.kind not in KINDS:
+        raise LogbookError(f"the kind {entry.kind!r} is not known; was it written by a newer fertui?")
     return entry
 
 

@@ -109,7 +109,10 @@ Spoil = Callable[[bytes], bytes]
         (lambda raw: b"".join(raw.splitlines(True)[:-1]), "cut off"),
         (lambda raw: raw + raw, "goes on"),
         (lambda raw: raw.replace(b"17.5", b"18.5"), "changed or damaged"),
-        (lambda raw: b"".join(line for line in raw.splitlines(True) if b'"number": 401' not in line), "cannot follow"),
+        (
+            lambda raw: b"".join(line for line in raw.splitlines(True) if b'"number": 401' not in line),
+            "changed or damaged",
+        ),
         (lambda raw: raw.replace(b'"analysis"', b'"alchemy"', 1), "alchemy"),
         (lambda raw: raw.replace(b"fertui.backup/1", b"fertui.backup/9"), "not a backup this fertui knows"),
         (lambda raw: raw.replace(b"17.5", b"NaN", 1), "number"),
