@@ -7,10 +7,9 @@ import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from functools import cache
-from itertools import pairwise
 from typing import Any
 
-from fertui.catalogue.figures import CatalogueError, Provenance, table
+from fertui.catalogue.figures import STATUSES, CatalogueError, Provenance, interpolated, table
 from fertui.catalogue.formula import molar_mass
 
 
@@ -56,10 +55,7 @@ class Acid:
         1.367
         """
         self.check_strength(strength_pct)
-        for (thin, light), (strong, heavy) in pairwise(self.densities):
-            if strength_pct <= strong:
-                return (light + (strength_pct - thin) / (strong - thin) * (heavy - light)) / 1000.0
-        raise AssertionError("check_strength lets no strength beyond the table pass")
+        return interpolated(self.densities, strength_pct) / 1000.0
 
     def mol_per_l(self, strength_pct: float, density_kg_per_l: float | None = None) -> float:
         """Concentration [mol/L at 20 C] of that strength [mass %]; the label's density goes before the table's.
@@ -79,12 +75,9 @@ class Acid:
     def source(self, strength_pct: float) -> Provenance:
         """Where the density at that strength comes from: the less certain of the two tabulated neighbours."""
         self.check_strength(strength_pct)
-        for (thin, _), (strong, _) in pairwise(self.densities):
-            if strength_pct == strong:
-                return self.sources[strong]
-            if strength_pct < strong:
-                return max(self.sources[thin], self.sources[strong], key=lambda each: each.status == "from memory")
-        raise AssertionError("check_strength lets no strength beyond the table pass")
+        below = max(strength for strength in self.sources if strength <= strength_pct)
+        above = min(strength for strength in self.sources if strength >= strength_pct)
+        return max(self.sources[below], self.sources[above], key=lambda each: STATUSES.index(each.status))
 
     def check_strength(self, strength_pct: float) -> None:
         """Refuse a strength [mass %] that is no number, not above 0, or beyond the density table."""

@@ -123,8 +123,6 @@ def families(kind: str) -> frozenset[str]:
 
 
 def _acid_families(what: Acid) -> frozenset[str]:
-    if not what.is_acid:
-        return frozenset({"alkali"})
     precipitating = {"H2PO4", "SO4"} & set(what.gives)
     return frozenset({"acid", what.name} | ({"phosphoric or sulfuric acid"} if precipitating else set()))
 

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import tomllib
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cache
 from importlib import resources
+from itertools import pairwise
 from typing import Any
 
 from fertui.refusals import Refusal
@@ -83,6 +84,19 @@ class Recipe:
         if not self.unverified:
             return self.source.shown
         return f"{self.source.shown}; unverified preset: {', '.join(self.unverified)}"
+
+
+def interpolated(points: Sequence[tuple[float, float]], at: float) -> float:
+    """Linear between tabulated points (rising x, at least two), flat beyond them.
+
+    >>> interpolated(((0.0, 10.0), (10.0, 20.0)), 5.0)
+    15.0
+    """
+    at = min(max(at, points[0][0]), points[-1][0])
+    for (left, low), (right, high) in pairwise(points):
+        if at <= right:
+            break
+    return low + (at - left) / (right - left) * (high - low)
 
 
 @cache

@@ -6,10 +6,9 @@ import difflib
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from functools import cache
-from itertools import pairwise
 from typing import Any
 
-from fertui.catalogue.figures import CatalogueError, Provenance, table
+from fertui.catalogue.figures import CatalogueError, Provenance, interpolated, table
 from fertui.catalogue.formula import molar_mass
 from fertui.chemistry.names import CHARGES
 
@@ -71,13 +70,7 @@ class Salt:
         >>> round(salt("K2SO4").solubility(10))
         92
         """
-        if not self.dissolves:
-            return None
-        temperature = min(max(temperature_c, self.dissolves[0][0]), self.dissolves[-1][0])
-        for (cold, less), (warm, more) in pairwise(self.dissolves):
-            if temperature <= warm:
-                return less + (temperature - cold) / (warm - cold) * (more - less)
-        return self.dissolves[-1][1]
+        return interpolated(self.dissolves, temperature_c) if self.dissolves else None
 
 
 @cache

@@ -13,7 +13,7 @@ Band = tuple[float | None, float | None]
 
 @dataclass(frozen=True, slots=True)
 class Sourced:
-    """A band or limit with where it comes from ("own trial", "Eurofins 2016", "unverified preset")."""
+    """A band or limit with where it comes from ("own trial", "permit", "unverified preset")."""
 
     low: float | None
     high: float | None

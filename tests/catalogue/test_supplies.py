@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 
 from fertui.catalogue.acids import acids
 from fertui.catalogue.figures import CatalogueError
-from fertui.catalogue.salts import salts
+from fertui.catalogue.salts import salt, salts
 from fertui.catalogue.supplies import LABEL_SPECIES, contents, of_supply, substance
 from fertui.chemistry.names import CHARGES
 
@@ -24,6 +24,10 @@ def imbalance_pct(kind: str, amounts: dict[str, float]) -> float:
     found = of_supply(supply(kind))
     charges = [getattr(found, "charge_of", CHARGES.get)(ion) * mmol for ion, mmol in amounts.items()]
     return 100.0 * sum(charges) / sum(abs(each) for each in charges)
+
+
+def test_a_blend_has_no_formula_to_count_by() -> None:
+    assert salt("blend").mmol_per_kg == {}
 
 
 def test_without_a_label_the_formula_counts() -> None:
