@@ -93,9 +93,8 @@ def interpolated(points: Sequence[tuple[float, float]], at: float) -> float:
     15.0
     """
     at = min(max(at, points[0][0]), points[-1][0])
-    for (left, low), (right, high) in pairwise(points):
-        if at <= right:
-            break
+    around = next(pair for pair in pairwise(points) if at <= pair[1][0])
+    (left, low), (right, high) = around
     return low + (at - left) / (right - left) * (high - low)
 
 
