@@ -104,8 +104,9 @@ def acid_sheet(
     """Acid sheet for ``volume_l`` [L] of a water (default: the loop's tank, its make-up water, the first acid on the
     shelf).
 
-    A lye on the shelf serves where ``leave_meq_l`` [meq/L] lies above the alkalinity. Not feasible, with the reason,
-    where the alkalinity is not known. Raises ``PlanningError`` for no acid, no volume, or a target that is none.
+    A lye given as ``acid`` serves where ``leave_meq_l`` [meq/L] lies above the alkalinity. Not feasible, with the
+    reason, where the alkalinity is not known. Raises ``PlanningError`` for no acid, no volume, or a target that is
+    none.
     """
     water = water_of(site, loop) if water is None else water
     volume = volume_l if volume_l is not None else loop.tank_l
@@ -118,7 +119,9 @@ def acid_sheet(
             f"leave 0 to 5 meq/L (found {leave_meq_l:g}) and aim at pH {STOP_PH} to 8 (found {ph_target:g})."
         )
     alkalinity = water.ions.get("HCO3")
-    supply = acid or acid_on_shelf(site, lye=alkalinity is not None and alkalinity < leave_meq_l - 0.1)
+    if acid is None and alkalinity is not None and alkalinity <= leave_meq_l:
+        return _none_needed(volume, alkalinity, leave_meq_l, ph_target)
+    supply = acid or acid_on_shelf(site)
     start = ph_start or water.ph or PH_START
     if alkalinity is None:
         return _refused(supply, volume, leave_meq_l, ph_target)
@@ -127,23 +130,25 @@ def acid_sheet(
     return _sheet(supply, found, strength, volume, alkalinity, leave_meq_l, ph_target, start, demand)
 
 
+def source_water(site: Site, loop: Loop) -> Composition | None:
+    """Make-up water of the loop, None where the site describes none."""
+    return next((each.composition for each in site.waters if each.name == loop.water or not loop.water), None)
+
+
 def water_of(site: Site, loop: Loop) -> Composition:
     """Make-up water of the loop; raises ``PlanningError`` where the site describes none."""
-    for water in site.waters:
-        if water.name == loop.water or not loop.water:
-            return water.composition
-    raise PlanningError(f"loop {loop.name} names no make-up water of site.toml; add [[waters]] with its analysis.")
+    water = source_water(site, loop)
+    if water is None:
+        raise PlanningError(f"loop {loop.name} names no make-up water of site.toml; add [[waters]] with its analysis.")
+    return water
 
 
-def acid_on_shelf(site: Site, lye: bool = False) -> Supply:
-    """The first acid (or lye) among the supplies; raises ``PlanningError`` where there is none."""
+def acid_on_shelf(site: Site) -> Supply:
+    """The first acid among the supplies; raises ``PlanningError`` where there is none."""
     for supply in site.supplies:
-        if supply.strength_pct is not None and named_acid(supply.kind).is_acid is not lye:
+        if supply.strength_pct is not None and named_acid(supply.kind).is_acid:
             return supply
-    wanted = "lye" if lye else "acid"
-    raise PlanningError(
-        f"there is no {wanted} among the supplies; add one with its kind and the strength_pct on its label."
-    )
+    raise PlanningError("there is no acid among the supplies; add one with its kind and the strength_pct on its label.")
 
 
 def demanded(
@@ -188,6 +193,16 @@ def _refused(supply: Supply, volume: float, leave: float, ph_target: float) -> A
     return AcidSheet(
         False, MEASURE_IT, supply.name, strength, density, found.mol_per_l(strength, density), volume, None, leave,
         ph_target, 0.0, 0.0, 0.0, 0.0, 0.0, (), {}, {}, (), (), cautions_of([supply]),
+    )  # fmt: skip
+
+
+def _none_needed(volume: float, alkalinity: float, leave: float, ph_target: float) -> AcidSheet:
+    words = (
+        f"no acid needed: {alkalinity:.1f} meq/L of alkalinity is not above the {leave:.1f} that is left as buffer",
+    )
+    return AcidSheet(
+        True, None, "", 0.0, 0.0, 0.0, volume, alkalinity, leave, ph_target, 0.0, 0.0, 0.0, 0.0, 0.0, (), {}, {}, (),
+        words, (),
     )  # fmt: skip
 
 
@@ -262,7 +277,7 @@ def _words(
     demand: Demand,
 ) -> tuple[str, ...]:
     if not splits:
-        return ("Nothing to dose: the alkalinity is already at or beyond what is to be left.",)
+        return ("nothing to dose: the alkalinity is already at or beyond what is to be left",)
     each = splits[0].litres
     lines = [
         f"{litres:.2f} L of {supply.name} in all, in {len(splits)} portions of {each:.3f} L: fill the water first, "

@@ -7,7 +7,7 @@ that the full model has run, so every limit becomes a row: c(x) = now + slope (x
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -15,11 +15,18 @@ from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
 from fertui.chemistry.minerals import saturation
 from fertui.planning.goal import LIMITED, SHARED, Goal
+from fertui.planning.runs import Situation
 
 SHARED_AT = np.array([INDEX[ion] for ion in SHARED])
 LIMITED_AT = np.array([INDEX[ion] for ion in LIMITED])
 GYPSUM_MOST, BRUSHITE_MOST = 0.0, 0.3
 """Saturation a plan may reach; brushite stays up to there in the solutions of practice, or where it already is."""
+EXCESS = 0.25
+"""An ion over its aim by more than this part is in excess: the first step of the published rule (25 %)."""
+NUTRIENTS_THAT_STAY = ("Ca", "Mg", "SO4")
+"""Nutrients that a crop takes up slower than water, so that they gather (field practice)."""
+NO_SHARES = 1.5
+"""Equivalents of K + Ca + Mg [meq/L] up to which shares mean nothing and only the aim counts."""
 DRY_INDEX = -5.0
 """Saturation index taken where an ion of the mineral is missing."""
 STEP = 0.02
@@ -61,14 +68,16 @@ class Rows:
     units: tuple[str, ...]
     sources: tuple[str, ...]
 
-    def tightened(self, by: Array) -> Rows:
-        """The same rows with less room."""
-        return replace(self, high=self.high - by)
-
 
 def ec_of(checkpoint: Checkpoint, composition: Array) -> Array:
     """EC [mS/cm] as the loop's meter reads it, of compositions (..., 10)."""
     return checkpoint.ec_factor * conductivity(np.maximum(composition, 0.0), ph=checkpoint.ph)
+
+
+def ec_factor(situation: Situation, point: str) -> float:
+    """What the loop's meter reads over what the ions of a point make; 1 where there is hardly anything in it."""
+    made = float(conductivity(np.maximum(situation.composition(point), 0.0), ph=situation.ph(point)))
+    return situation.points[point].ec.value / made if made > 0.1 else 1.0
 
 
 def indices_of(checkpoint: Checkpoint, composition: Array) -> Array:
@@ -183,22 +192,31 @@ def violation_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array,
         now, slope = z * each.now[SHARED_AT], z[:, None] * each.slope[SHARED_AT]
         total, total_slope = now.sum(), slope.sum(axis=0)
         scale = max(float((z * each.base[SHARED_AT]).sum()), float(total), 1.0)
-        for sign, bound in ((1.0, each.goal.share_high), (-1.0, each.goal.share_low)):
+        shares = ((1.0, each.goal.share_high), (-1.0, each.goal.share_low)) if scale > NO_SHARES else ()
+        for sign, bound in shares:
             rows = sign * (slope - bound[:, None] * total_slope) / scale
             matrix.append(rows)
             high.append(rows @ x0 - sign * (now - bound * total) / scale)
             cost.append(np.full(3, 10.0 * each.weight))
-        over = [i for i in LIMITED_AT if each.base[i] > each.goal.most[i]]
-        if over:
-            matrix.append(each.slope[over] / each.goal.most[over, None])
-            high.append((each.goal.most[over] - each.now[over] + each.slope[over] @ x0) / each.goal.most[over])
-            cost.append(np.full(len(over), each.weight))
+        over, most = _too_much(each)
+        matrix.append(each.slope[over] / most[:, None])
+        high.append((most - each.now[over] + each.slope[over] @ x0) / most)
+        cost.append(np.full(len(over), each.weight))
     n = len(x0)
     return (
         np.vstack([*matrix, np.zeros((0, n))]),
         np.concatenate([*high, np.zeros(0)]),
         np.concatenate([*cost, np.zeros(0)]),
     )
+
+
+def _too_much(each: Checkpoint) -> tuple[list[int], Array]:
+    """Ions over a limit, or over what an aim bears, without the plan; and what they should come down to."""
+    aim = np.nan_to_num(each.goal.aim, nan=0.0)
+    bears = np.where(np.isin(IONS, NUTRIENTS_THAT_STAY) & (aim > 0.0), (1.0 + EXCESS) * aim, np.inf)
+    most = np.minimum(each.goal.most, bears)
+    over = [i for i in range(len(IONS)) if each.base[i] > most[i]]
+    return over, most[over]
 
 
 def violation(each: Checkpoint, composition: Array) -> float:

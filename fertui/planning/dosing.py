@@ -13,12 +13,18 @@ import numpy as np
 
 from fertui.chemistry.ions import Array
 from fertui.planning.checkpoints import Checkpoint, Rows, hard_rows, misfit_rows, violation_rows
-from fertui.planning.programme import Aim, Region, Solver, lexicographic
+from fertui.planning.programme import Aim, Region, Solver, Whole, lexicographic
 
 FIRST_TO_SECOND = 100.0
 """How much a unit of band violation outweighs a unit of misfit in the rounds that only look for where to be exact."""
 GIVE_MISFIT = 0.01
 """Misfit given away to weigh one salt less: 1 % of one ion."""
+TIE = 1e-3
+"""Weight of kilograms or money once the salts are chosen."""
+FINE = 100.0
+"""From so many scale steps on a weight is rounded after solving: half a step is then at most 0.5 % of it."""
+WEIGHING = 0.2
+"""What one weighing more counts beside one salt more."""
 LATER = 0.02
 """By how much a kilogram counts more with each later step: what can be done now is not put off."""
 
@@ -53,7 +59,8 @@ class Measures:
 
 @dataclass(frozen=True, slots=True)
 class Programme:
-    """Region and costs over x, slacks of the bands, over and under the aim, and switches of the materials."""
+    """Region and costs over x (n), slacks of the bands, under and over the aim, switches of weighings and of
+    materials."""
 
     region: Region
     violation: Array
@@ -61,60 +68,66 @@ class Programme:
     misfit: Array
     few: Array
     n: int
+    switches: int
+    """Where the switches of the weighings begin."""
 
 
-def assemble(
-    measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, whole: bool, less_room: Array | None = None
-) -> Programme:
-    """The program about the plan ``x0`` that was last run; ``whole`` asks for weighable amounts and switches."""
+def assemble(measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, whole: Whole | None) -> Programme:
+    """The program about the plan ``x0`` that was last run; ``whole`` marks whole units and asks for switches."""
     n, m = len(x0), measures.materials
     hard = hard_rows(checkpoints, x0)
-    hard = hard if less_room is None else hard.tightened(less_room)
     out, out_high, out_cost = violation_rows(checkpoints, x0)
     aim, aim_value, aim_cost = misfit_rows(checkpoints, x0)
     v, a = len(out), len(aim)
-    total = n + v + 2 * a + m
-    matrix, low, high = _rows(measures, hard, (out, out_high), (aim, aim_value), total)
-    most = np.concatenate([measures.most, np.full(v + 2 * a, np.inf), np.ones(m)])
-    integral = (
-        np.concatenate([np.ones(n), np.zeros(v + 2 * a), np.ones(m)]).astype(int) if whole else np.zeros(total, int)
-    )
+    between = v + 2 * a
+    matrix, low, high = _rows(measures, hard, (out, out_high), (aim, aim_value))
+    switched = int(whole is not None)
+    units = np.zeros(n, int) if whole is None else whole
     renewal = np.array([each < 0 for each in measures.material], dtype=float)
     spent = measures.cost * (1.0 + LATER * np.array(measures.step)) * (1.0 - renewal)
     spent = 0.5 * spent / max(float(spent @ np.minimum(measures.most, 1e6)), 1e-12)
+    zero = np.zeros
     return Programme(
-        Region(matrix, low, high, np.zeros(total), most, integral),
-        np.concatenate([np.zeros(n), out_cost, np.zeros(2 * a + m)]),
-        np.concatenate([renewal / np.maximum(measures.most, 1.0), np.zeros(v + 2 * a + m)]),
-        np.concatenate([np.zeros(n + v), aim_cost, aim_cost, np.zeros(m)]),
-        np.concatenate([spent, np.zeros(v + 2 * a), np.ones(m)]),
+        Region(
+            matrix, low, high, zero(len(matrix[0])),
+            np.concatenate([measures.most, np.full(between, np.inf), np.ones(n + m)]),
+            np.concatenate([units, zero(between, int), np.full(n + m, switched)]),
+        ),
+        np.concatenate([zero(n), out_cost, zero(2 * a + n + m)]),
+        np.concatenate([renewal / np.maximum(measures.most, 1.0), zero(between + n + m)]),
+        np.concatenate([zero(n + v), aim_cost, aim_cost, zero(n + m)]),
+        np.concatenate([spent, zero(between), WEIGHING * (1.0 - renewal), np.ones(m)]),
         n,
-    )
+        n + between,
+    )  # fmt: skip
 
 
 def _rows(
-    measures: Measures, hard: Rows, out: tuple[Array, Array], aim: tuple[Array, Array], total: int
+    measures: Measures, hard: Rows, out: tuple[Array, Array], aim: tuple[Array, Array]
 ) -> tuple[Array, Array, Array]:
-    """All rows over all variables: limits, bands, aim, supplies, switches, number of salts."""
+    """All rows over all variables: limits, bands, aim, switches, supplies, number of salts."""
     n, m, v, a = len(measures.unit), measures.materials, len(out[0]), len(aim[0])
+    starts = {"slack": n, "under": n + v, "over": n + v + a, "weighing": n + v + 2 * a, "salt": 2 * n + v + 2 * a}
 
     def wide(block: Array, **parts: Array) -> Array:
-        row = np.zeros((len(block), total))
+        row = np.zeros((len(block), 2 * n + v + 2 * a + m))
         row[:, :n] = block
         for place, part in parts.items():
-            start = {"slack": n, "under": n + v, "over": n + v + a, "switch": n + v + 2 * a}[place]
-            row[:, start : start + part.shape[1]] = part
+            row[:, starts[place] : starts[place] + part.shape[1]] = part
         return row
 
     of = np.array([[each == j for each in measures.material] for j in range(m)], dtype=float).reshape(m, n)
-    most = np.minimum(measures.supply, of @ np.where(np.isfinite(measures.most), measures.most, 1e9))
+    most = np.maximum(measures.most, 1.0)
     count = measures.salts_at_most if measures.salts_at_most is not None else m
+    free = np.full(n, -np.inf)
     blocks = [
         (wide(hard.matrix), np.full(len(hard.high), -np.inf), hard.high),
         (wide(out[0], slack=-np.eye(v)), np.full(v, -np.inf), out[1]),
         (wide(aim[0], under=np.eye(a), over=-np.eye(a)), aim[1], aim[1]),
-        (wide(of, switch=-np.diag(most)), np.full(m, -np.inf), np.zeros(m)),
-        (wide(np.zeros((1, n)), switch=np.ones((1, m))), np.zeros(1), np.array([float(count)])),
+        (wide(np.eye(n), weighing=-np.diag(most)), free, np.zeros(n)),
+        (wide(np.zeros((n, n)), weighing=np.eye(n), salt=-of.T), free, 1.0 - of.sum(axis=0)),
+        (wide(of), np.full(m, -np.inf), measures.supply),
+        (wide(np.zeros((1, n)), salt=np.ones((1, m))), np.zeros(1), np.array([float(count)])),
     ]
     matrix, low, high = (np.concatenate(parts) for parts in zip(*blocks, strict=True))
     scale = np.maximum(np.abs(matrix).max(axis=1, initial=0.0), 1e-12)
@@ -124,29 +137,48 @@ def _rows(
 def look(measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, solver: Solver) -> Array | None:
     """One rough solution in one call, to find where the model should be linearised; None where the limits leave no
     room."""
-    programme = assemble(measures, checkpoints, x0, whole=False)
+    programme = assemble(measures, checkpoints, x0, None)
     cost = FIRST_TO_SECOND * (programme.violation + programme.litres) + programme.misfit + 1e-3 * programme.few
     found = solver.minimise(cost, programme.region)
     return None if found is None else found[: programme.n]
 
 
+def coarse(measures: Measures, rough: Array) -> Whole:
+    """Measures whose weights are few scale steps, so that rounding matters and they must be solved for as whole
+    numbers."""
+    of = np.array(measures.material)
+    most = np.array([rough[of == j].max(initial=0.0) for j in range(measures.materials)])
+    return np.array([int(j < 0 or most[j] < FINE) for j in of], dtype=int)
+
+
 def settle(
-    measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, solver: Solver, less_room: Array | None = None
+    measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, solver: Solver, whole: Whole
 ) -> Array | None:
-    """The weighable plan, aim by aim; None where the limits leave no room. Three calls, four with a renewal."""
-    programme = assemble(measures, checkpoints, x0, whole=True, less_room=less_room)
-    aims = [Aim(programme.violation, 1e-6), Aim(programme.misfit, GIVE_MISFIT), Aim(programme.few)]
+    """The weighable plan, aim by aim; None where the limits leave no room. Four calls, five with a renewal.
+
+    ``whole`` (variables,): 1 where whole units are solved for; the rest is rounded, which moves it by less than 0.5 %.
+    """
+    programme = assemble(measures, checkpoints, x0, whole)
+    bands = Aim(programme.violation, 1e-6)
+    aims = [bands, Aim(programme.misfit, GIVE_MISFIT), Aim(programme.few)]
     if measures.renews:
         aims.insert(1, Aim(programme.litres, 1e-6))
     found = lexicographic(solver, programme.region, aims)
-    return None if found is None else np.round(found[: programme.n])
+    if found is None:
+        return None
+    unused = programme.switches + np.flatnonzero(found[programme.switches :] < 0.5)
+    region = programme.region.without(unused)
+    for aim in aims[:-2]:
+        region = region.with_row(aim.cost, float(aim.cost @ found) + aim.give)
+    last = solver.minimise(programme.misfit + TIE * programme.few, region)
+    return np.round((found if last is None else last)[: programme.n])
 
 
 def other(
     measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, solver: Solver, leave_out: int
 ) -> Array | None:
     """The next best plan, without one material: one call."""
-    programme = assemble(measures, checkpoints, x0, whole=True)
+    programme = assemble(measures, checkpoints, x0, np.zeros(len(x0), int))
     region = programme.region.without(
         np.array([i for i, each in enumerate(measures.material) if each == leave_out], dtype=int)
     )

@@ -7,7 +7,11 @@ unrounded.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import ctypes
+import os
+import sys
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -89,18 +93,37 @@ class Solver:
         from scipy.optimize import Bounds, LinearConstraint, milp
 
         self.calls += 1
-        result = milp(
-            cost,
-            integrality=region.whole,
-            bounds=Bounds(region.least, region.most),
-            constraints=LinearConstraint(region.matrix, region.low, region.high),
-            options={"mip_rel_gap": 1e-7, "node_limit": NODES, "presolve": False},
-        )
+        with _standard_output_kept_clean():
+            result = milp(
+                cost,
+                integrality=region.whole,
+                bounds=Bounds(region.least, region.most),
+                constraints=LinearConstraint(region.matrix, region.low, region.high),
+                options={"mip_rel_gap": 1e-7, "node_limit": NODES, "presolve": False},
+            )
         if result.x is None:
             return None
         x = np.where(region.whole > 0, np.round(result.x), result.x)
         x = np.clip(x, region.least, region.most)
         return x if region.holds(x, 1e-5) else None
+
+
+@contextmanager
+def _standard_output_kept_clean() -> Iterator[None]:
+    """Turns away what HiGHS prints on standard output from within the library, whatever its options say.
+
+    A line of it would stand in the middle of JSON. The terminal interface draws by way of standard error.
+    """
+    sys.stdout.flush()
+    kept, nowhere = os.dup(1), os.open(os.devnull, os.O_WRONLY)
+    os.dup2(nowhere, 1)
+    try:
+        yield
+    finally:
+        ctypes.CDLL(None).fflush(None)
+        os.dup2(kept, 1)
+        os.close(kept)
+        os.close(nowhere)
 
 
 def lexicographic(solver: Solver, region: Region, aims: Sequence[Aim]) -> Array | None:

@@ -2,16 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import datetime, timedelta
-from typing import Protocol
+from typing import TYPE_CHECKING, Protocol
 
 import numpy as np
 
-from fertui.chemistry.ions import IONS, Array
-from fertui.estimate.points import PointState
+from fertui.chemistry.conductivity import conductivity
+from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
+from fertui.estimate.assimilation import Estimate
+from fertui.estimate.points import Estimated, IonState, PointState
+from fertui.planning.goal import SHARED
 from fertui.site.model import Loop, Site
+
+if TYPE_CHECKING:
+    from fertui.estimate.forecast import Scenario
 
 JUST_AFTER = timedelta(minutes=1)
 """A dose is given just after a full day from now, so that the day's composition is the one before it."""
@@ -49,6 +55,14 @@ class Doing:
     additions: tuple[Addition, ...] = ()
     renewals: tuple[Exchange, ...] = ()
     feeds: tuple[Feed, ...] = ()
+
+    def alone(self) -> Doing:
+        """What the first of plans side by side does, without the member axis."""
+        return Doing(
+            tuple(Addition(each.day, each.mmol[0]) for each in self.additions),
+            tuple(Exchange(each.day, float(np.ravel(each.litres)[0]), each.refill) for each in self.renewals),
+            tuple(Feed(each.day, each.ions[0]) for each in self.feeds),
+        )
 
 
 @dataclass(frozen=True, slots=True)
@@ -104,7 +118,7 @@ class Situation:
 class ModelRuns:
     """``Runs`` of an estimate over a horizon of whole days."""
 
-    estimate: object
+    estimate: Estimate
     days: int
     count: int = field(default=0)
 
@@ -123,7 +137,7 @@ class ModelRuns:
         self.count += 1
         return forecast(self.estimate, self.days, self._scenario(doing)).days[-1].points
 
-    def _scenario(self, doing: Doing) -> object:
+    def _scenario(self, doing: Doing) -> Scenario:
         from fertui.estimate.forecast import Dose, FeedRecipe, Renewal, Scenario
 
         return Scenario(
@@ -134,6 +148,65 @@ class ModelRuns:
 
     def _at(self, day: float) -> datetime:
         return self.estimate.at + timedelta(days=day) + JUST_AFTER
+
+
+@dataclass(slots=True)
+class StillRuns:
+    """``Runs`` of a tank right after mixing: no uptake, no exchange, no time. It is arithmetic and counts no model
+    run."""
+
+    situation: Situation
+    tank: str
+    count: int = field(default=0)
+
+    def settled(self, doing: Doing, members: int) -> Course:
+        """The tank as it stands, before anything is done."""
+        now = np.broadcast_to(self.situation.composition(self.tank), (1, members, len(IONS)))
+        return Course({self.tank: now}, {self.tank: np.full((1, members), self.situation.volumes_l[self.tank])})
+
+    def shown(self, doing: Doing) -> Mapping[str, PointState]:
+        """The points with the tank as it is after the doses; a range moves along with its value."""
+        after = mixed(self.situation.composition(self.tank), doing, 0, self.situation.volumes_l[self.tank])
+        moved = shifted(self.situation.points[self.tank], after)
+        alike = [name for name, state in self.situation.points.items() if state is self.situation.points[self.tank]]
+        return {**self.situation.points, **dict.fromkeys((self.tank, *alike), moved)}
+
+
+def mixed(composition: Array, doing: Doing, day: float, volume_l: float | Array) -> Array:
+    """Tank (..., 10) [mmol/L] just after what is done to it on a day: renewal first, then the salts."""
+    volume = np.asarray(volume_l, dtype=float)[..., None]
+    for each in (renewal for renewal in doing.renewals if renewal.day == day):
+        part = np.minimum(np.asarray(each.litres, dtype=float)[..., None] / volume, 1.0)
+        composition = composition + part * (each.refill - composition)
+    return composition + sum((each.mmol / volume for each in doing.additions if each.day == day), np.zeros(len(IONS)))
+
+
+def shifted(state: PointState, composition: Array) -> PointState:
+    """A point moved to another composition (10,): ranges keep their width, EC follows the ions as the meter reads
+    them."""
+    before = np.array([state.ions[ion].mmol_l.value if ion in state.ions else 0.0 for ion in IONS])
+    ec = np.maximum(conductivity(np.maximum(np.stack([before, composition]), 0.0)), 1e-6)
+    factor = state.ec.value / ec[0] if ec[0] > 0.05 else 1.0
+    part = share_pct(composition)
+    ions = dict(state.ions)
+    for ion, value in zip(IONS, composition, strict=True):
+        known = state.ions.get(ion)
+        moved = _moved(known.mmol_l, value) if known else Estimated(float(value), float(value), float(value))
+        share = None if known is None or known.share_pct is None else _moved(known.share_pct, part[ion])
+        ions[ion] = IonState(moved, share)
+    return PointState(_moved(state.ec, float(factor * ec[1])), state.ph, ions)
+
+
+def share_pct(composition: Array) -> dict[str, float]:
+    """Shares of K, Ca and Mg [%] of a composition (10,); zero where there is none of them."""
+    equivalents = {ion: CHARGE[INDEX[ion]] * composition[INDEX[ion]] for ion in SHARED}
+    total = sum(equivalents.values())
+    return {ion: float(100.0 * each / total) if total > 0 else 0.0 for ion, each in equivalents.items()}
+
+
+def _moved(known: Estimated, value: float) -> Estimated:
+    low, high = value + known.low - known.value, value + known.high - known.value
+    return Estimated(float(value), float(max(low, min(value, 0.0))), float(high), known.band)
 
 
 def _by_ion(ions: Array) -> dict[str, Array | float]:
@@ -155,18 +228,3 @@ def staffed_days(situation: Situation, days: int, steps: int) -> tuple[int, ...]
         return tuple(early)
     wanted = [0.0, *np.linspace(1.0, len(early) - 1.0, max(steps - 1, 1))[: steps - 1]]
     return tuple(dict.fromkeys(early[round(index)] for index in wanted))
-
-
-def stacked(doings: Sequence[Doing]) -> Doing:
-    """Plans side by side on the member axis, for one run."""
-    additions = [
-        Addition(each.day, np.array([each.mmol if mine is doing else np.zeros(len(IONS)) for mine in doings]))
-        for doing in doings
-        for each in doing.additions
-    ]
-    renewals = [
-        Exchange(each.day, np.array([float(each.litres) if mine is doing else 0.0 for mine in doings]), each.refill)
-        for doing in doings
-        for each in doing.renewals
-    ]
-    return Doing(tuple(additions), tuple(renewals))

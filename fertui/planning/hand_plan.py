@@ -1,0 +1,248 @@
+"""The plan for a tank dosed by hand, from the request to what is shown."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+from datetime import timedelta
+
+from fertui.catalogue.crops import crop
+from fertui.chemistry.ions import INDEX, IONS, Array, vector
+from fertui.planning.acid import AcidSheet, acid_on_shelf, source_water
+from fertui.planning.acid_steps import acid_mmol, acid_steps, tank_acid
+from fertui.planning.checkpoints import ec_of, violation
+from fertui.planning.goal import SHARED, Goal
+from fertui.planning.hand_doses import REACHED_PCT, Dosed, Task, doing_of, dose, usable
+from fertui.planning.reasons import MAJOR, arithmetic, binding, rule_of_thumb, why_salts
+from fertui.planning.renewal import LEFT_N_MMOL, excess_of, renewal_of
+from fertui.planning.request import (
+    STEPS_BY_DEFAULT,
+    Request,
+    cautions_for,
+    out_of_band,
+    staffed_days,
+    vague,
+)
+from fertui.planning.runs import Doing, Situation, share_pct
+from fertui.planning.values import (
+    Outlook,
+    Plan,
+    Renewal,
+    RunnerUp,
+    Step,
+    WhatIf,
+)
+from fertui.site.model import Composition
+
+MISSED_PART = 0.10
+"""An ion of a named target missed by more than this part makes the plan one that does not reach it."""
+
+
+def hand_plan(request: Request) -> Plan:
+    """Hand doses for a shared tank; no doses and the reason where a sample comes first or salts cannot do it."""
+    empty = _empty(request, Outlook(request.runs.shown(Doing())))
+    why = vague(request.before, request)
+    if why is not None:
+        return request.counted(replace(empty, feasible=False, reason=why, sample_first=True))
+    course = request.runs.settled(Doing(), 1)
+    request = request.strengthened(course.ions[request.situation.managed][-1, 0])
+    sheet = tank_acid(request)
+    if not request.managed.named and sheet is None and _in_order(request, empty.after_without):
+        words = "nothing to weigh: the shares stay in their bands and no limit is passed up to the horizon"
+        return request.counted(replace(empty, notices=(words,)))
+    task = _task(request, sheet)
+    dosed = dose(task, request.runs, request.solver, course)
+    return _shown(request, task, dosed, empty, sheet)
+
+
+def _task(request: Request, sheet: AcidSheet | None) -> Task:
+    steps = 1 if request.wishes.days == 0 else request.wishes.steps or STEPS_BY_DEFAULT
+    days = (0,) if request.wishes.days == 0 else staffed_days(request.situation, request.wishes.days, steps)
+    return Task(
+        request.situation, request.goals, "tank", request.materials, days, request.wishes.days, refill_of(request),
+        acid_mmol(sheet), request.wishes.salts,
+    )  # fmt: skip
+
+
+def refill_of(request: Request) -> Array:
+    """What a renewal fills up with: the make-up water, pure where the site describes none."""
+    water = source_water(request.situation.site, request.situation.loop) or Composition()
+    return vector(dict(water.ions))
+
+
+def _empty(request: Request, without: Outlook) -> Plan:
+    situation = request.situation
+    return Plan(
+        feasible=True, reason=None, loop=situation.loop.name, layout=situation.loop.layout, at=situation.at,
+        horizon_days=request.wishes.days, point=situation.managed, recipe=None, steps=(), acid=(), acid_sheet=None,
+        renewal=None, before=Outlook(request.before), after=without, after_without=without, binding=(),
+        rule_of_thumb=(), cautions=(),
+    )  # fmt: skip
+
+
+def _in_order(request: Request, without: Outlook) -> bool:
+    """Whether the managed point is in its bands now and at the horizon without any plan."""
+    point = request.situation.managed
+    return not any(out_of_band(points[point], request.managed) for points in (request.before, without.points))
+
+
+def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, sheet: AcidSheet | None) -> Plan:
+    task = replace(task, materials=usable(task))
+    steps = _steps(task, dosed)
+    by_name = {each.name: each for each in task.materials}
+    used = [by_name[name] for name in dict.fromkeys(step.salt for step in steps)]
+    why = _why_not(request, dosed)
+    acid = [] if sheet is None else [acid_on_shelf(request.situation.site)]
+    found = replace(
+        empty,
+        feasible=why is None,
+        reason=why,
+        steps=steps,
+        renewal=_renewal(request, dosed),
+        after=Outlook(request.runs.shown(doing_of(task, dosed.measures, dosed.units).alone())),
+        binding=binding(dosed.checkpoints),
+        rule_of_thumb=rule_of_thumb(request.situation.composition(request.situation.managed), request.managed),
+        cautions=cautions_for([*(each.supply for each in used), *acid]),
+        reasons=why_salts(used, request.materials, dosed.end, request.managed),
+        arithmetic=arithmetic(steps, by_name, _before(request, dosed), request.situation.volumes_l[task.tank]),
+        runner_up=_runner_up(task, dosed, steps),
+        sensitivity=_sensitivity(dosed),
+        acid=acid_steps(sheet, request.situation.at, "tank:tank"),
+        acid_sheet=sheet,
+    )
+    return request.counted(found)
+
+
+def _steps(task: Task, dosed: Dosed, units: Array | None = None) -> tuple[Step, ...]:
+    """Every weighing of a plan, by day and material."""
+    kg = (dosed.units if units is None else units) * dosed.measures.unit
+    found = []
+    for place, (j, s) in enumerate(zip(dosed.measures.material, dosed.measures.step, strict=True)):
+        if j < 0 or kg[place] <= 0.0:
+            continue
+        each = task.materials[j]
+        weight = round(float(kg[place]), 9)
+        brought = {ion: float(mmol) for ion, mmol in zip(IONS, each.ions_mmol_per_kg * weight, strict=True) if mmol}
+        at = task.situation.at + timedelta(days=task.days[s])
+        found.append(Step(at, each.name, each.formula, weight, f"tank:{task.tank}", brought))
+    return tuple(found)
+
+
+def _before(request: Request, dosed: Dosed) -> dict[object, Array]:
+    """Composition of the tank just before the doses of each day, renewal done."""
+    litres = _litres(dosed)
+    part = litres / request.situation.volumes_l["tank"]
+    found: dict[object, Array] = {}
+    for each in dosed.checkpoints:
+        if each.name.startswith("tank before"):
+            first = each.day == dosed.checkpoints[0].day
+            renewed = each.now + part * (refill_of(request) - each.now) if first and litres else each.now
+            found[request.situation.at + timedelta(days=each.day)] = renewed
+    return found
+
+
+def _litres(dosed: Dosed) -> float:
+    return float(dosed.units[-1] * dosed.measures.unit[-1]) if dosed.measures.renews else 0.0
+
+
+def _why_not(request: Request, dosed: Dosed) -> str | None:
+    """Why salts alone do not reach what was asked; None where they do."""
+    parts = []
+    end, goal = dosed.end, request.managed
+    if dosed.broken:
+        passed = (f"{what} would be {value:.2f}, limit {limit:.2f}" for what, value, limit in dosed.broken[:3])
+        parts.append("; ".join(passed))
+    litres = _litres(dosed)
+    if litres > 0.0:
+        over = excess_of(request.situation.composition(request.situation.managed), goal)
+        named = ", ".join(f"{ion} by {amount:.1f} mmol/L" for ion, amount in over.items())
+        over_words = f"{named} over what is wanted, and salts only add"
+        words = over_words if named else "the limits leave salts too little room"
+        parts.append(f"salts cannot do it: {words}; renew {litres:.0f} L, with the weighings listed")
+    if dosed.missed_pct > REACHED_PCT:
+        parts.append(f"{_share_words(end)} at the end, outside the bands {_bands_words(goal)}; {_held_by(dosed)}")
+    missed = _missed_aims(end, goal)
+    if missed:
+        parts.append(f"with these salts {missed}")
+    return "; ".join(parts) or None
+
+
+def _missed_aims(end: Array, goal: Goal) -> str:
+    """Ions of a named target that are missed by more than ``MISSED_PART``."""
+    if not goal.named:
+        return ""
+    off = [
+        f"{ion} is {end[INDEX[ion]]:.2f} where {goal.aim[INDEX[ion]]:.2f} was asked"
+        for ion in MAJOR
+        if goal.wants[INDEX[ion]] and abs(end[INDEX[ion]] / goal.aim[INDEX[ion]] - 1.0) > MISSED_PART
+    ]
+    return ", ".join(off)
+
+
+def _share_words(composition: Array) -> str:
+    return ", ".join(f"{ion} share {part:.0f} %" for ion, part in share_pct(composition).items())
+
+
+def _bands_words(goal: Goal) -> str:
+    return ", ".join(
+        f"{ion} {100 * low:.0f}-{100 * high:.0f} %"
+        for ion, low, high in zip(SHARED, goal.share_low, goal.share_high, strict=True)
+    )
+
+
+def _held_by(dosed: Dosed) -> str:
+    held = binding(dosed.checkpoints)
+    if held:
+        return "held by " + ", ".join(each.limit for each in held)
+    return "no salt on the shelf brings what is missing"
+
+
+def _renewal(request: Request, dosed: Dosed) -> Renewal | None:
+    litres = _litres(dosed)
+    if litres <= 0.0:
+        return None
+    situation = request.situation
+    reaches = dosed.missed_pct <= REACHED_PCT
+    nitrogen = situation.composition("tank")[INDEX["NO3"]] + situation.composition("tank")[INDEX["NH4"]]
+    return renewal_of(
+        situation, "tank", litres, refill_of(request), request.managed, request.entries,
+        situation.composition(situation.managed), _days_to_drink(situation, float(nitrogen)), reaches,
+    )  # fmt: skip
+
+
+def _days_to_drink(situation: Situation, nitrogen: float) -> float | None:
+    """Days in which the crop takes the nitrogen of the loop down, at the uptake of its preset."""
+    uptake = crop(situation.loop.crop).uptake_at(situation.loop.stage if situation.loop.stage else "").ions
+    per_litre = uptake.get("NO3", 0.0) + uptake.get("NH4", 0.0)
+    per_day = per_litre * situation.crop_water_l_per_m2_d * situation.loop.area_m2
+    held = max(nitrogen - LEFT_N_MMOL, 0.0) * sum(situation.volumes_l.values())
+    return held / per_day if per_day > 0 else None
+
+
+def _runner_up(task: Task, dosed: Dosed, steps: Sequence[Step]) -> RunnerUp | None:
+    if dosed.runner_up is None:
+        return None
+    others = _steps(task, dosed, dosed.runner_up)
+    if {each.salt for each in others} == {each.salt for each in steps}:
+        return None
+    end = dosed.variants["runner-up"]
+    more = sum(each.kg for each in others) - sum(each.kg for each in steps)
+    left_out = ", ".join(sorted({each.salt for each in steps} - {each.salt for each in others}))
+    instead = ", ".join(sorted({each.salt for each in others} - {each.salt for each in steps})) or "nothing"
+    words = (
+        f"without {left_out}: {instead} instead, {more:+.2f} kg in all; "
+        f"{_share_words(end)} instead of {_share_words(dosed.end)}"
+    )
+    return RunnerUp(others, words)
+
+
+def _sensitivity(dosed: Dosed) -> tuple[WhatIf, ...]:
+    end = dosed.checkpoints[-1]
+    found = []
+    for case, composition in dosed.variants.items():
+        if case == "runner-up" or (case == "a day late" and end.day == 0):
+            continue
+        missed = violation(end, composition)
+        words = "still in the bands" if missed <= REACHED_PCT else f"{missed:.0f} points out of the bands"
+        found.append(WhatIf(case, share_pct(composition), float(ec_of(end, composition)), f"{case}: {words}"))
+    return tuple(found)

@@ -1,0 +1,61 @@
+"""The plan of a loop: hand doses for a shared tank, the next recipe for a loop fed through stock tanks."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+
+from fertui.estimate.assimilation import Estimate
+from fertui.logbook.entries import Entry
+from fertui.planning.hand_plan import hand_plan
+from fertui.planning.programme import Solver
+from fertui.planning.recipe_plan import recipe_plan
+from fertui.planning.request import Request, Wishes, goals_of, materials_of
+from fertui.planning.runs import ModelRuns, Runs, Situation, StillRuns
+from fertui.planning.shelf import PlanningError
+from fertui.planning.values import Plan
+
+
+def plan(
+    estimate: Estimate,
+    *,
+    days: int = 14,
+    target: str | None = None,
+    supplies: Iterable[str] | None = None,
+    without: Iterable[str] = (),
+    steps: int | None = None,
+    salts: int | None = None,
+    entries: Sequence[Entry] = (),
+) -> Plan:
+    """What brings the ions of a loop back within ``days``; what cannot be done is a plan with its reason.
+
+    ``days`` 0: one step into the dosed tank, as it stands right after mixing: no uptake, exchange or EC step.
+    ``target``: a target of the site or of the catalogue instead of the loop's own. ``supplies``: use these alone;
+    ``without``: leave these out; ``steps`` 1-4 weighing days; ``salts``: at most so many. ``entries``: effective
+    entries, for what the year has discharged. Raises ``PlanningError``, ``SiteError`` or ``CatalogueError`` for what
+    cannot be asked.
+    """
+    only = None if supplies is None else tuple(supplies)
+    wishes = Wishes(days, target, only, tuple(without), steps, salts).checked()
+    situation = situation_of(estimate)
+    runs: Runs = StillRuns(situation, "tank") if days == 0 else ModelRuns(estimate, days)
+    if situation.loop.layout != "shared-tank" and days == 0:
+        raise PlanningError(
+            f"loop {situation.loop.name} is fed through stock tanks: there is no tank to dose by hand; "
+            "ask for 1 day or more."
+        )
+    points = ("tank", situation.managed) if situation.loop.layout == "shared-tank" else ("feed", situation.managed)
+    request = Request(
+        situation, goals_of(situation, target, tuple(dict.fromkeys(points))), wishes, materials_of(situation, wishes),
+        runs, Solver(), entries, situation.points,
+    )  # fmt: skip
+    if situation.loop.layout == "shared-tank":
+        return hand_plan(request)
+    return recipe_plan(request, estimate)
+
+
+def situation_of(estimate: Estimate) -> Situation:
+    """The loop of an estimate as planning sees it."""
+    return Situation(
+        estimate.site, estimate.loop, estimate.at, estimate.managed, estimate.points(), estimate.volumes_l,
+        estimate.crop_water.value,
+    )  # fmt: skip

@@ -1,0 +1,155 @@
+"""Why a plan is as it is: the limits that bind, why this salt and not that one, and every sum for a pocket
+calculator."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+
+import numpy as np
+
+from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
+from fertui.planning.checkpoints import Checkpoint, ec_of, indices_of
+from fertui.planning.goal import LIMITED, SHARED, Goal
+from fertui.planning.shelf import Material
+from fertui.planning.values import Binding, Step
+
+NEAR = 0.02
+"""A limit binds where less than this part of it is left."""
+NEAR_INDEX = 0.05
+"""The same for a saturation index."""
+SPOKEN_MMOL = 0.005
+"""Change of an ion [mmol/L] from which the arithmetic speaks of it."""
+MAJOR = ("K", "Ca", "Mg", "NO3", "SO4", "H2PO4")
+
+
+def binding(points: Sequence[Checkpoint]) -> tuple[Binding, ...]:
+    """The limits a plan comes up against, each once, at the checkpoint where least is left."""
+    found: dict[str, tuple[float, Binding]] = {}
+    for each in points:
+        before = points[each.before].now if each.before >= 0 else None
+        for what, value, limit, unit, near in _reached(each, before):
+            room = limit - value
+            if room <= near and (what not in found or room < found[what][0]):
+                source = each.goal.sources.get(what, "common practice" if what == "EC step" else "")
+                found[what] = (room, Binding(f"{what}, {each.name}", limit, unit, value, source))
+    return tuple(each for _, each in found.values())
+
+
+def _reached(each: Checkpoint, before: Array | None) -> Iterable[tuple[str, float, float, str, float]]:
+    ec = float(ec_of(each, each.now))
+    if np.isfinite(each.goal.ec_most):
+        yield "EC", ec, each.goal.ec_most, "mS/cm", NEAR * each.goal.ec_most
+    if before is not None:
+        yield "EC step", ec - float(ec_of(each, before)), each.goal.ec_step, "mS/cm", 0.1 * each.goal.ec_step
+    for ion in LIMITED:
+        most = float(each.goal.most[INDEX[ion]])
+        if np.isfinite(most):
+            yield ion, float(each.now[INDEX[ion]]), most, "mmol/L", NEAR * most
+    if before is not None:
+        for name, index, most in zip(("gypsum", "brushite"), indices_of(each, each.now), (0.0, 0.3), strict=True):
+            yield name, float(index), most, "SI", NEAR_INDEX
+
+
+def why_salts(used: Iterable[Material], shelf: Sequence[Material], end: Array, goal: Goal) -> tuple[str, ...]:
+    """One line for each salt weighed in and one for each left standing."""
+    chosen = {each.name for each in used}
+    lines = [f"{each.name}: brings {_named(_short(each, end, goal)) or 'what the aim still asks for'}" for each in used]
+    for each in shelf:
+        if each.name not in chosen and each.use == "nutrient":
+            bad = _excess(each, end, goal)
+            why = f"brings {_named(bad)}, enough there already" if bad else "would be one salt more for nothing gained"
+            lines.append(f"not {each.name}: {why}")
+    return tuple(lines)
+
+
+def _short(each: Material, end: Array, goal: Goal) -> list[str]:
+    wanted = [ion for ion in MAJOR if each.brings(ion) and goal.wants[INDEX[ion]]]
+    return [f"{ion}" for ion in wanted]
+
+
+def _excess(each: Material, end: Array, goal: Goal) -> list[str]:
+    over = []
+    for ion in (*MAJOR, *LIMITED):
+        i = INDEX[ion]
+        aim = goal.aim[i] if not np.isnan(goal.aim[i]) else 0.0
+        if each.brings(ion) and end[i] > max(aim, 0.05) * 0.98:
+            over.append(f"{ion} ({end[i]:.1f} of {aim:.1f} mmol/L)")
+    return over
+
+
+def _named(words: Sequence[str]) -> str:
+    return " and ".join([", ".join(words[:-1]), words[-1]] if len(words) > 1 else words)
+
+
+def arithmetic(
+    steps: Sequence[Step], materials: Mapping[str, Material], before: Mapping[object, Array], volume_l: float
+) -> tuple[str, ...]:
+    """kg -> mmol -> mmol/L -> before + dose = after, one line an ion, for every step.
+
+    ``before``: composition of the tank (10,) just before the doses of a time.
+    """
+    lines: list[str] = []
+    for at in dict.fromkeys(each.at for each in steps):
+        total = np.zeros(len(IONS))
+        lines.append(f"{at:%a %d %b}: {volume_l:.0f} L")
+        for step in (each for each in steps if each.at == at):
+            material = materials[step.salt]
+            for ion, mmol in step.adds_mmol.items():
+                per_kg = material.ions_mmol_per_kg[INDEX[ion]]
+                lines.append(
+                    f"  {step.salt}: {step.kg:g} kg x {per_kg:.0f} mmol/kg {ion} = {mmol:.0f} mmol"
+                    f" / {volume_l:.0f} L = {mmol / volume_l:.2f} mmol/L"
+                )
+                total[INDEX[ion]] += mmol / volume_l
+        for ion, added, was in zip(IONS, total, before[at], strict=True):
+            if abs(added) > SPOKEN_MMOL:
+                lines.append(f"  {ion}: {was:.2f} before + {added:.2f} = {was + added:.2f} mmol/L after mixing")
+        lines.append(f"  {_share_line(before[at] + total)}")
+    return tuple(lines)
+
+
+def _share_line(composition: Array) -> str:
+    meq = [float(CHARGE[INDEX[ion]] * composition[INDEX[ion]]) for ion in SHARED]
+    total = sum(meq)
+    if total <= 0:
+        return "no K, Ca, Mg"
+    sums = " + ".join(f"{each:.2f}" for each in meq)
+    shares = ", ".join(f"{ion} {100 * each / total:.0f} %" for ion, each in zip(SHARED, meq, strict=True))
+    return f"K + 2 Ca + 2 Mg = {sums} = {total:.2f} meq/L: {shares}"
+
+
+def rule_of_thumb(now: Array, goal: Goal, change_pct: Mapping[str, float] | None = None) -> tuple[str, ...]:
+    """The published step for each ion that is off, beside what the plan does with the feed where it is a recipe.
+
+    Normalised analysis off by 25 %: change the feed by 10-15 %; by 50 %: 15-25 %; then wait 7-10 days (Nutrient
+    Solutions for Greenhouse Crops 2016, second-hand).
+    """
+    lines = []
+    for ion in MAJOR:
+        aim = goal.aim[INDEX[ion]]
+        if not goal.wants[INDEX[ion]]:
+            continue
+        off = 100.0 * (now[INDEX[ion]] / aim - 1.0)
+        if abs(off) < 25.0:
+            continue
+        low, high = (10, 15) if abs(off) < 50.0 else (15, 25)
+        side = "over" if off > 0 else "under"
+        words = f"{ion} is {abs(off):.0f} % {side} its target: practice changes the feed by {low}-{high} %"
+        lines.append(words + _beside(ion, -np.sign(off), low, high, change_pct))
+    if lines:
+        lines.append(
+            "then waits 7-10 days and samples again (Nutrient Solutions for Greenhouse Crops 2016, second-hand)"
+        )
+    return tuple(lines)
+
+
+def _beside(ion: str, sign: float, low: int, high: int, change_pct: Mapping[str, float] | None) -> str:
+    if change_pct is None:
+        return "; a tank takes its salts at once, so this plan weighs what is missing"
+    change = change_pct.get(ion, 0.0)
+    words = f", this plan by {change:+.0f} %"
+    if change * sign < low - 0.5:
+        return words + ": less, because uptake, drain and exchange bring it back part of the way, or a limit binds"
+    if change * sign > high + 0.5:
+        return words + ": more, because the horizon is short for what root zone and medium must take up"
+    return words

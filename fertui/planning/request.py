@@ -1,0 +1,158 @@
+"""What was asked for, checked, with all that answering it takes: loop, goals, salts, model, solver."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from datetime import timedelta
+from zoneinfo import ZoneInfo
+
+import numpy as np
+
+from fertui.catalogue.cautions import Caution, cautions_of, loop_cautions
+from fertui.chemistry.conductivity import conductivity
+from fertui.chemistry.ions import INDEX, IONS, Array
+from fertui.estimate.points import PointState
+from fertui.logbook.entries import Entry
+from fertui.planning.goal import SHARED, Goal, goal_of
+from fertui.planning.programme import Solver
+from fertui.planning.runs import Runs, Situation
+from fertui.planning.shelf import Material, PlanningError, shelf
+from fertui.planning.values import Plan
+from fertui.site.model import Supply
+
+LONGEST_DAYS = 60
+STRENGTH = (0.5, 1.5)
+"""How far an aim may be made weaker or stronger to stand at the EC the loop is run at."""
+STEPS_BY_DEFAULT = 3
+MOST_STEPS = 4
+
+
+@dataclass(frozen=True, slots=True)
+class Wishes:
+    """What the grower asked for: horizon [d], target by name, supplies to use only, to leave out, steps, number of
+    salts."""
+
+    days: int = 14
+    target: str | None = None
+    supplies: tuple[str, ...] | None = None
+    without: tuple[str, ...] = ()
+    steps: int | None = None
+    salts: int | None = None
+
+    def checked(self) -> Wishes:
+        """Itself; raises ``PlanningError`` for a number no plan can have."""
+        if not 0 <= self.days <= LONGEST_DAYS:
+            raise PlanningError(f"a plan looks 0 to {LONGEST_DAYS} days ahead, not {self.days}.")
+        if self.steps is not None and not 1 <= self.steps <= MOST_STEPS:
+            raise PlanningError(f"a plan has 1 to {MOST_STEPS} steps, not {self.steps}.")
+        if self.salts is not None and self.salts < 1:
+            raise PlanningError(f"a plan needs at least 1 salt, not {self.salts}.")
+        return self
+
+
+@dataclass(frozen=True, slots=True)
+class Request:
+    """One question to planning and the means to answer it."""
+
+    situation: Situation
+    goals: Mapping[str, Goal]
+    wishes: Wishes
+    materials: tuple[Material, ...]
+    runs: Runs
+    solver: Solver
+    entries: Sequence[Entry]
+    before: Mapping[str, PointState]
+
+    @property
+    def managed(self) -> Goal:
+        """Goal of the point the loop is steered by."""
+        return self.goals[self.situation.managed]
+
+    def counted(self, found: Plan) -> Plan:
+        """A plan with what it cost."""
+        return replace(found, model_runs=self.runs.count, solver_calls=self.solver.calls)
+
+    def strengthened(self, end: Array) -> Request:
+        """The same with its aims at the strength the loop is run at, ``end`` (10,) being the managed point at the
+        horizon.
+
+        An aim named for this plan, and one right after mixing, stands as it is.
+        """
+        if self.managed.named or self.wishes.days == 0:
+            return self
+        wanted = np.nan_to_num(self.managed.aim, nan=0.0)
+        made = float(conductivity(wanted)) - 0.1 * wanted[INDEX["Na"]]
+        held = float(conductivity(np.maximum(end, 0.0))) - 0.1 * float(end[INDEX["Na"]])
+        factor = float(np.clip(held / made, *STRENGTH)) if made > 0.1 else 1.0
+        point = self.situation.managed
+        alike = {name: goal.scaled(factor) for name, goal in self.goals.items() if name == point}
+        return replace(self, goals={**self.goals, **alike})
+
+
+def goals_of(situation: Situation, target: str | None, points: Sequence[str]) -> dict[str, Goal]:
+    """The goal at each point; raises ``SiteError`` for an unknown target."""
+    return {point: goal_of(situation.site, situation.loop, point, target) for point in points}
+
+
+def materials_of(situation: Situation, wishes: Wishes) -> tuple[Material, ...]:
+    """The salts of the shelf that may be weighed; raises ``PlanningError`` where none is left."""
+    found = shelf(situation.site.supplies, wishes.supplies, wishes.without)
+    salts = tuple(each for each in found if each.use == "nutrient")
+    if not salts:
+        raise PlanningError(
+            "there is no salt on the shelf to plan with; add [[supplies]] or name some with --supplies."
+        )
+    return salts
+
+
+def staffed_days(situation: Situation, days: int, steps: int) -> tuple[int, ...]:
+    """Days from now on which people are there, at most ``steps`` of them: now, the next one, the rest spread out.
+
+    The last step leaves a quarter of the horizon to act.
+    """
+    here = situation.at.astimezone(ZoneInfo(situation.site.timezone))
+    on = [d for d in range(max(days, 1)) if f"{here + timedelta(days=d):%a}" in situation.site.staffed_days]
+    early = [day for day in on if day <= 0.75 * days] or on[:1] or [0]
+    if len(early) <= steps:
+        return tuple(early)
+    if steps == 1:
+        return (early[0],)
+    places = np.linspace(1, len(early) - 1, steps - 1).round().astype(int)
+    return tuple(early[place] for place in dict.fromkeys([0, *places.tolist()]))
+
+
+def vague(before: Mapping[str, PointState], request: Request) -> str | None:
+    """Why a sample comes before any plan: a share whose range is wider than its band; None where the ranges serve."""
+    point = before.get(request.situation.managed)
+    if point is None or request.wishes.days == 0 or request.managed.named:
+        return None
+    for place, ion in enumerate(SHARED):
+        state = point.ions.get(ion)
+        low, high = 100 * request.managed.share_low[place], 100 * request.managed.share_high[place]
+        if state is None or state.share_pct is None or not 0 < high - low < 100:
+            continue
+        width = state.share_pct.high - state.share_pct.low
+        if width > high - low:
+            return (
+                f"take a sample first: the {ion} share is known to {state.share_pct.low:.0f}-"
+                f"{state.share_pct.high:.0f} %, a range wider than its band of {low:.0f}-{high:.0f} %; any dose "
+                "would be a guess"
+            )
+    return None
+
+
+def cautions_for(used: Sequence[Supply]) -> tuple[Caution, ...]:
+    """Cautions of what is weighed or poured, then those of every loop that is dosed; none twice."""
+    return tuple(dict.fromkeys((*cautions_of(used), *loop_cautions()))) if used else ()
+
+
+def out_of_band(state: PointState, goal: Goal) -> bool:
+    """Whether a share of a point is out of its band, or an ion over its limit."""
+    composition = np.array([state.ions[ion].mmol_l.value if ion in state.ions else 0.0 for ion in IONS])
+    shares = [state.ions[ion].share_pct for ion in SHARED if ion in state.ions]
+    out = any(
+        each is not None and not low - 1e-9 <= each.value / 100 <= high + 1e-9
+        for each, low, high in zip(shares, goal.share_low, goal.share_high, strict=False)
+    )
+    return out or bool((composition > goal.most + 1e-9).any())
