@@ -22,6 +22,11 @@ def array(ions: Mapping[str, float | Array]) -> Array:
     return np.stack(columns, axis=-1)
 
 
+def mapping_of(composition: Array) -> dict[str, float | Array]:
+    """Ion name -> number of a composition (10,)."""
+    return {ion: float(value) for ion, value in zip(IONS, composition, strict=True)}
+
+
 def entry_ions(entry: Entry) -> dict[str, float]:
     """The macro-ions of a recipe, plan or analysis entry [mmol/L]."""
     return {value.name: value.number for value in entry.values if value.name in INDEX and value.number is not None}

@@ -1,13 +1,14 @@
 """What one observation does to the members: an ensemble Kalman update on logarithms, clipped where it teaches uptake.
 
-The vessels follow the whole innovation. Ion i teaches only the uptake and stock of ion i; what is common (uptake, drain,
-EC factor, capacity) follows all ions. Everything but the vessels learns from an innovation that levels off at about one
-and a half predicted standard deviations: one odd analysis moves the estimate, but does not ruin what was learned.
+The vessels follow the whole innovation. Everything else (uptake, drain, EC factor, capacity) learns from an innovation
+that levels off at about one and a half predicted standard deviations: one odd analysis moves the estimate, but does not
+ruin what was learned. An EC teaches nothing about single ions.
 Evensen 1994, J. Geophys. Res. 99:10143 (ensemble Kalman filter; from memory); the clip is our own.
 """
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -23,11 +24,16 @@ from fertui.loop.values import State
 
 CLIP = 1.7
 EC_MODEL_ERROR = 0.02
-TRACE = 1e-3
+TRACE = 0.02
 """Concentrations [mmol/L] below this are taken as this where a logarithm is needed."""
 GROSS = 4.0
 """A reading so many predicted standard deviations off is set aside as a meter fault (analyses are not)."""
 EC_CHANGED = 0.15
+FARTHEST = 3.0
+"""A member that says something wild counts as this many predicted standard deviations off."""
+MOST_LEARNED = {"fast": 1.0, "slow": 1.8, "common": 1.0, "drain": 1.0, "stock": 0.5}
+"""Bounds (log) of what is learned: uptake between a sixth and six times the preset, and what a month brings."""
+TEACHABLE = ("fast", "slow", "stock", "common", "drain", "ec", "capacity")
 
 _HCO3 = INDEX["HCO3"]
 
@@ -68,32 +74,82 @@ def corrected(
 ) -> tuple[Ensemble, Innovation | None]:
     """The members after an observation, and how far off it was; unchanged where it shows nothing they could learn from.
 
-    ``drive``: the one in force, for a feed that is blended; None for a known feed.
+    Ions first, then EC: their errors are independent. ``drive``: the one in force, for a feed that is blended.
     """
     if seen.point == "feed" and setting.circuit.layout == "known-feed":
         return ensemble, None
-    shown = _shown(ensemble, setting, seen, drive)
-    columns = seen.columns()
-    predicted, measured, noise = _compared(seen, columns, shown, ensemble, meter)
-    if measured.size == 0:
+    after, found = ensemble, None
+    for look in (_Ions(setting, seen, drive), _EC(setting, seen, drive, meter)):
+        if not look.given:
+            continue
+        after, off, sd, expected = _updated(after, setting, seen, look, seed)
+        found = look.told(found, off, sd, expected)
+    if found is None:
         return ensemble, None
-    anomalies = predicted - predicted.mean(axis=0)
-    within = _covariance(anomalies, anomalies)
-    total = within + noise
-    difference = measured - predicted.mean(axis=0)
-    sd = np.sqrt(np.diag(total))
-    found = _innovation(columns, predicted, difference, sd)
-    if not seen.is_analysis and np.any(np.abs(difference) > GROSS * sd):
-        return ensemble, found
-    drawn = normals(seed, setting.loop.name, f"{seen.at.isoformat()} {seen.point} {seen.kind}", len(predicted), measured.size)
-    scatter = drawn @ np.linalg.cholesky(noise).T - anomalies
-    inverse = np.linalg.inv(total)
-    full = (difference + scatter) @ inverse
-    levelled = (CLIP * sd * np.tanh(difference / (CLIP * sd)) + scatter) @ inverse
-    learned = _learned(ensemble, columns, anomalies, levelled)
-    state = _moved(ensemble, anomalies, full)
-    after = replace(learned, state=state, alkalinity=seen.ions.get("HCO3", ensemble.alkalinity))
+    after = replace(after, alkalinity=seen.ions.get("HCO3", ensemble.alkalinity))
     return replace(after, state=after.state.reloaded(after.medium(setting))), found
+
+
+class _Ions:
+    """The ions of an observation: they teach everything."""
+
+    teaches = TEACHABLE
+
+    def __init__(self, setting: Setting, seen: Observation, drive: Drive | None) -> None:
+        self.setting, self.seen, self.drive = setting, seen, drive
+        self.columns = seen.columns()
+        self.given = bool(self.columns)
+        self.measured = np.log(seen.values()) if self.given else np.zeros(0)
+        self.noise = seen.covariance() if self.given else np.zeros((0, 0))
+
+    def predicted(self, ensemble: Ensemble) -> Array:
+        """Logarithms (M, n) of what every member says the sample holds."""
+        return np.log(np.maximum(_shown(ensemble, self.setting, self.seen, self.drive)[:, self.columns], TRACE))
+
+    def told(self, _: Innovation | None, off: Array, sd: Array, expected: Array) -> Innovation:
+        """The innovation as it is reported."""
+        return Innovation(tuple(self.columns), expected, off, sd)
+
+
+class _EC:
+    """The EC of an observation: it says how much there is, not of what."""
+
+    teaches = ("common", "drain", "ec", "capacity")
+
+    def __init__(self, setting: Setting, seen: Observation, drive: Drive | None, meter: ElectroMeter) -> None:
+        self.setting, self.seen, self.drive, self.meter = setting, seen, drive, meter
+        self.given = seen.ec is not None and seen.ec > 0
+        self.measured = np.log([seen.ec or 1.0])
+        self.noise = np.array([[EC_ERROR**2 + EC_MODEL_ERROR**2]])
+
+    def predicted(self, ensemble: Ensemble) -> Array:
+        """Logarithms (M, 1) of what every member says the meter shows."""
+        return (self.meter(_shown(ensemble, self.setting, self.seen, self.drive)) + ensemble.ec)[:, None]
+
+    def told(self, ions: Innovation | None, off: Array, sd: Array, _: Array) -> Innovation:
+        """The innovation as it is reported, beside that of the ions."""
+        known = ions or Innovation((), np.zeros(0), np.zeros(0), np.zeros(0))
+        return replace(known, ec_off=float(off[0]), ec_sd=float(sd[0]))
+
+
+def _updated(
+    ensemble: Ensemble, setting: Setting, seen: Observation, look: _Ions | _EC, seed: int
+) -> tuple[Ensemble, Array, Array, Array]:
+    """Members after one look, the innovation (n,), its standard deviation (n,), and the median expected (n,)."""
+    predicted = look.predicted(ensemble)
+    anomalies = predicted - predicted.mean(axis=0)
+    total = _covariance(anomalies, anomalies) + look.noise
+    off, sd = look.measured - predicted.mean(axis=0), np.sqrt(np.diag(total))
+    expected = np.median(predicted, axis=0)
+    if not seen.is_analysis and np.any(np.abs(off) > GROSS * sd):
+        return ensemble, off, sd, expected
+    key = f"{seen.at.isoformat()} {seen.point} {seen.kind} {len(off)}"
+    drawn = normals(seed, setting.loop.name, key, len(predicted), len(off))
+    scatter = np.clip(drawn @ np.linalg.cholesky(look.noise).T - anomalies, -FARTHEST * sd, FARTHEST * sd)
+    inverse = np.linalg.inv(total)
+    levelled = (CLIP * sd * np.tanh(off / (CLIP * sd)) + scatter) @ inverse
+    learned = _learned(ensemble, setting, look.teaches, anomalies, levelled)
+    return replace(learned, state=_moved(ensemble, anomalies, (off + scatter) @ inverse)), off, sd, expected
 
 
 def _shown(ensemble: Ensemble, setting: Setting, seen: Observation, drive: Drive | None) -> Array:
@@ -105,52 +161,24 @@ def _shown(ensemble: Ensemble, setting: Setting, seen: Observation, drive: Drive
     return ensemble.state.concentration(where)
 
 
-def _compared(
-    seen: Observation, columns: list[int], shown: Array, ensemble: Ensemble, meter: ElectroMeter
-) -> tuple[Array, Array, Array]:
-    """Predicted (M, n) and measured (n,) logarithms, and the covariance of the error (n, n): ions, then EC."""
-    predicted = np.log(np.maximum(shown[:, columns], TRACE))
-    measured = np.log(seen.values()) if columns else np.zeros(0)
-    noise = seen.covariance() if columns else np.zeros((0, 0))
-    if seen.ec is None:
-        return predicted, measured, noise
-    with_ec = np.column_stack([predicted, meter(shown) + ensemble.ec])
-    wider = np.zeros((len(measured) + 1,) * 2)
-    wider[:-1, :-1] = noise
-    wider[-1, -1] = EC_ERROR**2 + EC_MODEL_ERROR**2
-    return with_ec, np.append(measured, np.log(seen.ec)), wider
-
-
-def _innovation(columns: list[int], predicted: Array, difference: Array, sd: Array) -> Innovation:
-    count = len(columns)
-    off, off_sd = (float(difference[count]), float(sd[count])) if len(difference) > count else (None, None)
-    middle = np.median(predicted[:, :count], axis=0)
-    return Innovation(tuple(columns), middle, difference[:count], sd[:count], off, off_sd)
-
-
 def _covariance(left: Array, right: Array) -> Array:
     return left.T @ right / max(len(left) - 1, 1)
 
 
-def _learned(ensemble: Ensemble, columns: list[int], anomalies: Array, weights: Array) -> Ensemble:
-    """Unknowns after the update; ``weights`` (M, n): innovation over its covariance, levelled off."""
-
-    def own(values: Array) -> Array:
-        moved = values.copy()
-        chosen = values[:, columns]
-        covariance = ((chosen - chosen.mean(axis=0)) * anomalies[:, : len(columns)]).sum(axis=0) / max(len(values) - 1, 1)
-        moved[:, columns] += weights[:, : len(columns)] * covariance
-        return moved
-
-    def all_ions(values: Array) -> Array:
-        return values + weights @ _covariance(anomalies, (values - values.mean())[:, None])[:, 0]
-
-    return replace(
-        ensemble,
-        fast=own(ensemble.fast), slow=own(ensemble.slow), stock=own(ensemble.stock),
-        common=all_ions(ensemble.common), drain=all_ions(ensemble.drain), ec=all_ions(ensemble.ec),
-        capacity=all_ions(ensemble.capacity),
-    )  # fmt: skip
+def _learned(
+    ensemble: Ensemble, setting: Setting, names: Sequence[str], anomalies: Array, weights: Array
+) -> Ensemble:
+    """Unknowns after an update; ``weights`` (M, n): innovation, levelled off, over its covariance."""
+    moved = {}
+    for name in names:
+        values = getattr(ensemble, name)
+        if name == "stock" and setting.circuit.layout == "known-feed":
+            continue
+        flat = values.reshape(len(values), -1)
+        shifted = flat + weights @ _covariance(anomalies, flat - flat.mean(axis=0))
+        bound = MOST_LEARNED.get(name, np.inf)
+        moved[name] = np.clip(shifted, -bound, bound).reshape(values.shape)
+    return replace(ensemble, **moved)
 
 
 def _moved(ensemble: Ensemble, anomalies: Array, weights: Array) -> State:

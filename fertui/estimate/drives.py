@@ -46,7 +46,7 @@ class Drives:
             make_up_l_d=None if np.isnan(make_up) else float(make_up),
             condensate_l_d=float(water.condensate[span]),
             stock_mmol_d=self.stock_mmol_d[span] * np.exp(log_stock) if self.stock_mmol_d[span].any() else self.stock_mmol_d[span],
-            holds=tuple(_leaning(hold, log_stock) for hold in self.holds[span]),
+            holds=tuple(leaning(hold, log_stock) for hold in self.holds[span]),
             ec=self.ec,
             feed_from=self.feeds[span],
             feed_to=self.feeds[span + 1],
@@ -62,7 +62,8 @@ def crop_water(water: Waters, span: int, log_drain: Array) -> Array:
     return water.crop[span] * np.exp(share * log_drain)
 
 
-def _leaning(hold: Hold, log_stock: Array) -> Hold:
+def leaning(hold: Hold, log_stock: Array) -> Hold:
+    """A hold whose stock is off by factors (M, 10)."""
     return Hold(hold.cause, hold.proportions * np.exp(log_stock), hold.slope, hold.offset, hold.set_point)
 
 
@@ -73,7 +74,7 @@ def drives(record: Record, setting: Setting, grid: Array) -> Drives:
     sources = [str(record.sources.at(time) or setting.loop.water) for time in starts]
     known: Mapping[str, Array] = {name: compositions.of_water(record.site, name) for name in set(sources)}
     make_up = tuple(known[name] for name in sources)
-    holding = _Holding(record, setting)
+    holding = Holding(record, setting)
     covered = record.stock.covered(grid) >= LOGGED
     holds = tuple(
         () if logged else holding.holds(time, water) for logged, time, water in zip(covered, starts, make_up, strict=True)
@@ -118,7 +119,7 @@ def _held(record: Record, time: float) -> Iterator[tuple[StockTank, Array]]:
             yield tank, contents[-1]
 
 
-class _Holding:
+class Holding:
     """Stock dosed to hold EC: what it carries and the set point, each from its time on."""
 
     def __init__(self, record: Record, setting: Setting) -> None:
@@ -151,10 +152,17 @@ class _Holding:
         feed = self._feed(time)
         key = (set_point, feed.tobytes(), water.tobytes())
         if key not in self.made:
-            carried = np.maximum(feed - water, 0.0)
-            carried = carried if (carried @ self.ec.slope) > 0 else feed
-            self.made[key] = (hold_ec(set_point, carried, self.ec),)
+            self.made[key] = self.made_for(set_point, feed, water)
         return self.made[key]
+
+    def made_for(self, set_point: float, feed: Array, water: Array) -> tuple[Hold, ...]:
+        """Stock that makes a feed (10,) or (M, 10) of a water, dosed to an EC; what the water brings is not dosed."""
+        assert self.ec is not None
+        carried = np.maximum(feed - water, 0.0)
+        carried[..., _HCO3] = 0.0
+        if not np.all(carried @ self.ec.slope > 0):
+            carried = np.maximum(feed, 0.0)
+        return (hold_ec(set_point, carried, self.ec),)
 
 
 def _assumptions(record: Record, setting: Setting, holds: tuple[tuple[Hold, ...], ...]) -> tuple[str, ...]:

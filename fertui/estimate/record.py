@@ -101,7 +101,7 @@ def since_needed(at: datetime) -> datetime:
 
 def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime) -> Record:
     """The record of a loop from its effective entries; those of other loops and after ``at`` are left out."""
-    own = sorted((each for each in entries if each.loop == loop.name and each.at <= at), key=lambda each: each.at)
+    own = sorted((each for each in entries if each.loop == loop.name and _known(each, at)), key=lambda each: each.at)
     first = max(own[0].at, since_needed(at)) if own else at
     zone = ZoneInfo(site.timezone)
     zero = datetime.combine(first.astimezone(zone).date(), time(), zone).astimezone(UTC)
@@ -109,6 +109,11 @@ def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime) -> Reco
     for entry in own:
         by_kind.setdefault(entry.kind, []).append(entry)
     return _Reader(site, loop, zero, zone, by_kind).record(at)
+
+
+def _known(entry: Entry, at: datetime) -> bool:
+    """Whether an entry counts at a time: it has happened, or it is a plan for later that was already entered."""
+    return entry.at <= at or (entry.kind == "plan" and entry.entered <= at)
 
 
 class _Reader:
