@@ -108,7 +108,7 @@ def _north(light: Array, noise: np.random.Generator) -> list[str]:
     bled = Event(27.3, "bleed", litres=3000.0, point="drain_store", reason="filter back-flush")
     lines = _logged(bay, _run(bay, plants, light, (bled,)), light, noise)
     lines += [
-        '-60 08:10 "north bay" crop event="new medium" stage=standard by=MK',
+        '-60 08:10 "north bay" crop stage=standard by=MK',
         '-60 08:20 "north bay" setpoint EC=2.6 pH=5.5 by=MK',
         '-34 09:05 "north bay" crop stage=fruit-set by=RV note="fifth truss set"',
         '-33 14:55 "north bay" bleed litres=3000 from=drain_store reason="filter back-flush" by=RV',
@@ -156,7 +156,7 @@ def _lettuce(light: Array, noise: np.random.Generator) -> list[str]:
     lines = _logged(bay, _run(bay, {0: bay.plants}, light, (dosed,)), light, noise)
     return [
         *lines,
-        "-60 08:30 lettuce crop event=refilled stage=standard by=AN",
+        "-60 08:30 lettuce crop stage=standard by=AN",
         "-60 08:35 lettuce setpoint EC=1.8 pH=5.8 by=AN",
         '-21 09:40 lettuce dose salt="potassium nitrate" kg=1.0 by=AN note="after the analysis"',
     ]
