@@ -25,7 +25,8 @@ def text(ahead: Forecast, loop: str, managed: str, timezone: str, unit: str) -> 
         rows.append((words.local(day.at, timezone)[:10], *cells))
     lines = [f"{loop}, {len(ahead.days)} days ahead ({_inputs(ahead)}), 80 % ranges", "", *words.table(rows), ""]
     lines += ["Leaves its band"]
-    lines += [f"  {_leaves(each, len(ahead.days))}" for each in ahead.leaves_band] or ["  nothing within these days"]
+    shown = [each for each in ahead.leaves_band if not (managed == "tank" and each.point == "root_zone")]
+    lines += [f"  {_leaves(each, len(ahead.days))}" for each in shown] or ["  nothing within these days"]
     lines += ["", "Assumed"] + [f"  {each}" for each in ahead.assumed]
     return "\n".join(lines)
 
