@@ -50,6 +50,13 @@ class Table:
             raise self.refuse(key, f"allowed: {', '.join(among)}{nearest(value, among)}.")
         return value
 
+    def said(self, key: str) -> str:
+        """A line of text that may not be empty."""
+        value = self.text(key)
+        if not value.strip():
+            raise self.refuse(key, "say where it comes from, such as own trial.")
+        return value
+
     def name(self, key: str = "name") -> str:
         """A name people choose: not empty, at most 60 characters, no leading or trailing space."""
         value = self.text(key)

@@ -112,7 +112,7 @@ def _loop_sources(table: Table) -> dict[str, str]:
 
 def _water(table: Table) -> Water:
     name = table.name()
-    composition = _composition(table, "unanalysed")
+    composition = _composition(table, table.text("source", ""))
     table.close()
     return Water(name, composition)
 
@@ -122,13 +122,13 @@ def _target(table: Table) -> dict[str, Composition]:
     points = {}
     for point in table.data:
         inner = table.table(point)
-        points[point] = _composition(inner, None)
+        points[point] = _composition(inner, inner.said("source"))
         inner.close()
     return points
 
 
-def _composition(table: Table, source: str | None) -> Composition:
-    """Ions, micronutrients, EC, pH and source of a table, which the caller closes."""
+def _composition(table: Table, source: str) -> Composition:
+    """Ions, micronutrients, EC and pH of a table, which the caller closes."""
     positive = tuple(ion for ion in IONS if ion != "HCO3")
     ions = table.table("ions")
     ions.only(IONS)
@@ -137,7 +137,7 @@ def _composition(table: Table, source: str | None) -> Composition:
         micronutrients=table.numbers("micronutrients", MICRONUTRIENTS, 0, 1e5, "umol/L"),
         ec=table.maybe("EC", 0, 100, "mS/cm"),
         ph=table.maybe("pH", 0, 14),
-        source=table.text("source", source),
+        source=source,
     )
 
 
@@ -213,7 +213,7 @@ def _ranges_of_point(table: Table) -> dict[str, Sourced]:
 def _range(table: Table, what: str) -> Sourced:
     top = 100.0 if what in SHARES else 14.0 if what == "pH" else 1e5
     low, high = table.maybe("low", 0, top), table.maybe("high", 0, top)
-    source = table.text("source")
+    source = table.said("source")
     table.close()
     if low is None and high is None:
         raise SiteError(f"{table.file}, {table.place}: low, high or both are missing.")

@@ -121,6 +121,8 @@ def test_a_file_saved_with_a_byte_order_mark_is_read() -> None:
         ('timezone = "Europe/Rome"', "", ["[site]", "timezone is missing"]),
         ('layout = "drain-blend"', "", ["'north'", "layout is missing"]),
         (', source = "own trial" }', " }", ["[bands.root_zone.K_share]", "source is missing"]),
+        ('source = "permit"', 'source = " "', ["[limits.drain.Na]", "say where it comes from"]),
+        ('source = "own trial"', 'source = ""', ["[targets.mine.feed]", "say where it comes from"]),
         ("strength_pct = 60", "", ["'Acid'", "strength_pct", "mass % on its label"]),
         # references
         ('medium = "coco"', 'medium = "wool"', ["medium = 'wool'", "stone-wool"]),
