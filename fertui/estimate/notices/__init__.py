@@ -1,11 +1,11 @@
-"""What to look at: one rule a question a careful colleague would ask, ranked, each with its reason and the key to act."""
+"""What to look at, ranked: a rule for each thing a careful colleague would ask, with its reason and the key to act."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from fertui.estimate.notices import bands, feeding, missing, samples, trust, watering
+from fertui.estimate.notices import bands, explaining, feeding, missing, roots, samples, trust
 from fertui.estimate.notices.look import Look
 from fertui.estimate.notices.notice import SEVERITIES, Notice, Rule
 from fertui.estimate.notices.stocks import StockLeft, stock_days_left, stock_left
@@ -18,26 +18,25 @@ if TYPE_CHECKING:
 __all__ = ["RULES", "Notice", "StockLeft", "notices", "stock_days_left", "stock_left"]
 
 RULES: tuple[Rule, ...] = (
-    watering.acidity,
+    roots.acidity,
     feeding.off_set_point,
     feeding.unequal_draw,
-    feeding.unexplained,
+    explaining.unexplained,
     feeding.running_out,
     bands.shares,
     bands.limits,
-    watering.drain_strength,
+    roots.drain_strength,
     trust.meters,
     missing.readings,
     missing.amounts,
     trust.held_back,
     trust.surprises,
-    watering.zones,
-    watering.root_temperature,
-    watering.blossom_end_rot,
-    watering.new_medium,
+    roots.zones,
+    roots.root_temperature,
+    roots.blossom_end_rot,
+    roots.new_medium,
     samples.few,
     samples.age,
-    samples.best_day,
     samples.volatile,
 )
 """Asked in this order, which is also the order of notices of one severity."""

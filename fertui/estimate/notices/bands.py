@@ -99,7 +99,7 @@ def _limit(look: Look, stand: Standing) -> Notice:
 def _na_advice(look: Look, stand: Standing) -> str:
     """No salt takes sodium out; whose limit it is goes with it, for it is the grower's to set."""
     source = limits_of(look.site, look.loop, stand.point).get("Na")
-    whose = f" Limit: {source.source.split(';')[0].strip()}." if source is not None and source.source else ""
+    whose = f" Limit from: {source.source.split(';')[0].strip()}." if source is not None and source.source else ""
     return f"No salt takes it out, only better water or a bleed.{whose}"
 
 
@@ -124,7 +124,7 @@ def _same_water(look: Look, point: str) -> bool:
 
 
 def _is_meant(look: Look, point: str, what: str) -> bool:
-    """The managed point counts whole; of others a limit, or a band the grower wrote: presets there are aims of recipes."""
+    """The managed point counts whole; of others a limit, or a band the grower wrote: presets are a recipe's aims."""
     own = {**look.site.bands.get(point, {}), **look.loop.bands.get(point, {})}
     return point == look.estimate.managed or what in own or what in limits_of(look.site, look.loop, point)
 

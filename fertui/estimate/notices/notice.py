@@ -16,7 +16,7 @@ SEVERITIES = ("act", "watch", "note")
 ACT, WATCH, NOTE = SEVERITIES
 
 ACT_FROM, WATCH_FROM = 0.6, 0.35
-"""Probabilities of being out that make an alarm: chosen on measured houses, where alarms by finer rules did no better."""
+"""Probabilities of being out that make an alarm (chosen on measured houses; finer rules did no better there)."""
 
 KEYS = ("r", "a", "w", "d", "m", "p", *"123456789")
 """Entry keys and views a notice may point to."""

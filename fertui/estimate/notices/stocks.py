@@ -37,7 +37,7 @@ class StockLeft:
 
 
 def stock_days_left(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime) -> Mapping[str, float]:
-    """Days left in each stock tank of a loop by logged use; tanks whose filling or use was never logged are left out."""
+    """Days left in each stock tank of a loop by logged use, without tanks whose filling or use was never logged."""
     left = stock_left(site, loop, entries, at)
     return {name: days for name, each in left.items() if (days := each.days) is not None}
 
@@ -49,7 +49,9 @@ def stock_left(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime) -
     """
     known = [each for each in entries if each.at <= at and not each.void and not each.doubtful]
     zone = ZoneInfo(site.timezone)
-    found = {name: _left([each for each in known if each.text_of("tank") == name], at, zone) for name in loop.stock_tanks}
+    found = {
+        name: _left([each for each in known if each.text_of("tank") == name], at, zone) for name in loop.stock_tanks
+    }
     return {name: each for name, each in found.items() if each is not None}
 
 

@@ -1,0 +1,71 @@
+"""How much stands behind the estimate: analyses, their age, what another would tell, how often this loop needs them."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from datetime import datetime, timedelta
+
+from fertui.estimate.notices.look import Look
+from fertui.estimate.notices.notice import NOTE, WATCH, Notice
+
+FEW = 3
+"""Analyses before ranges are the loop's own."""
+OLD_DAYS = 14.0
+"""Samples go every one to two weeks (Blok et al., literature study on ion-specific methods; extension practice)."""
+WEEK_DAYS = 7.5
+AWAITED_DAYS = 14.0
+
+
+def few(look: Look) -> Iterator[Notice]:
+    """Fewer than three analyses: the ranges come from other growers' crops."""
+    count = look.estimate.analyses
+    if count == 0:
+        text = "No analysis yet: what is shown starts from feed or water and other growers' crops. Send a sample."
+        yield Notice("few_analyses", WATCH, text, "a")
+    elif count < FEW:
+        word = "analysis" if count == 1 else "analyses"
+        text = f"Only {count} {word} so far: ranges are not this loop's own before {FEW}."
+        yield Notice("few_analyses", NOTE, text, "a")
+
+
+def age(look: Look) -> Iterator[Notice]:
+    """The last analysis of the managed solution is old."""
+    last = last_analysis(look)
+    if last is None or look.age_days(last) <= OLD_DAYS:
+        return
+    sent = awaited(look, last)
+    days = f"The last analysis is {look.age_days(last):.0f} days old"
+    if sent is not None:
+        yield Notice("analysis_old", NOTE, f"{days}; a sample went out on {look.day(sent)}.", "a")
+    else:
+        yield Notice("analysis_old", WATCH, f"{days}. Ranges widen every day; send a sample.", "a")
+
+
+def volatile(look: Look) -> Iterator[Notice]:
+    """A loop that moves more than the model foresees: only samples help."""
+    if not look.estimate.spread.volatile or not _sampled_seldom(look):
+        return
+    text = "This loop moves faster than the model foresees, so ranges are wide. Sample every week."
+    yield Notice("volatile", WATCH, text, "a")
+
+
+def last_analysis(look: Look) -> datetime | None:
+    """When the managed solution was last analysed, in any of the points that hold it."""
+    points = (
+        {look.estimate.managed, "drain"} if look.estimate.managed == "root_zone" else {"tank", "root_zone", "drain"}
+    )
+    times = [when for point, when in look.estimate.last_analysis.items() if point in points]
+    return max(times, default=None)
+
+
+def awaited(look: Look, last: datetime | None) -> datetime | None:
+    """When a sample went out whose result has not come."""
+    gone = [each for each in look.of("sample", days=AWAITED_DAYS) if each.text_of("status") in ("sent", "awaited")]
+    open_ones = [each.at for each in gone if last is None or each.at > last + timedelta(days=1)]
+    return open_ones[-1] if open_ones else None
+
+
+def _sampled_seldom(look: Look) -> bool:
+    times = sorted({each.at for each in look.of("analysis", days=60.0) if look.point(each) != "source"})
+    gaps = [(later - earlier).total_seconds() / 86400.0 for earlier, later in zip(times, times[1:], strict=False)]
+    return not gaps or max(gaps[-2:]) > WEEK_DAYS or look.age_days(times[-1]) > WEEK_DAYS
