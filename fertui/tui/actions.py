@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from textual.binding import Binding
 
@@ -17,15 +17,22 @@ if TYPE_CHECKING:
 def all_bindings() -> Iterator[Binding]:
     """Bindings of the frame, of scrolling, of every view and of forms and lists, each id once."""
     from fertui.tui.chooser import Chooser
+    from fertui.tui.entry_list import EntryList
+    from fertui.tui.entry_page import EntryPage
     from fertui.tui.forms.form import Form
     from fertui.tui.help import HelpPage
     from fertui.tui.prompt import Prompt
+    from fertui.tui.record_page import RecordPage
+    from fertui.tui.text_page import TextPage
     from fertui.tui.views import view_numbered
 
     views = (view_numbered(n) for n in range(1, len(VIEW_NAMES) + 1))
-    pages = (*views, Form, Chooser, HelpPage, Prompt)
+    groups: list[list[Any]] = [GLOBAL_KEYS, SCROLLING, *(page.BINDINGS for page in views)]
+    groups += [page.BINDINGS for page in (Form, Chooser, EntryList, EntryPage, HelpPage, RecordPage, TextPage)] + [
+        Prompt.BINDINGS
+    ]
     seen: set[str | None] = set()
-    for group in (GLOBAL_KEYS, SCROLLING, *(page.BINDINGS for page in pages)):
+    for group in groups:
         for binding in group:
             if isinstance(binding, Binding) and binding.id not in seen:
                 seen.add(binding.id)

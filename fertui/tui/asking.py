@@ -27,6 +27,15 @@ def _balance(bench: Bench, ask: Ask, moment: datetime) -> Any:
     return bench.balance(ask.loop, moment - timedelta(days=dict(ask.options)["days"]), moment)
 
 
+def _forecast(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    from fertui.tui.supposing import scenario_of
+
+    options = dict(ask.options)
+    supposed = dict(options.get("scenario", ()))
+    scenario = scenario_of(supposed) if supposed else None
+    return bench.forecast(ask.loop, options["days"], at=moment, scenario=scenario)
+
+
 def _untimed(bench: Bench, ask: Ask, moment: datetime) -> Any:
     return getattr(bench, ask.use_case)(ask.loop, **dict(ask.options))
 
@@ -40,12 +49,26 @@ def _history(bench: Bench, ask: Ask, moment: datetime) -> Any:
 
 
 USE_CASES: dict[str, UseCase] = {
-    "overview": _overview, "balance": _balance, "stock": _untimed, "acid": _untimed, "aims": _untimed, "previous": _untimed,
-    "check": _whole, "history": _history,
+    "overview": _overview, "balance": _balance, "forecast": _forecast, "stock": _untimed, "acid": _untimed, "aims": _untimed, "previous": _untimed,
+    "check": _whole, "history": _history, "site_rows": _whole, "supplies_rows": _whole,
 }  # fmt: skip
 """Use cases that take other arguments than loop and time."""
 
-QUICK = frozenset({"glance", "previous", "history", "aims", "stock", "acid", "analysis"})
+QUICK = frozenset(
+    {
+        "glance",
+        "previous",
+        "history",
+        "aims",
+        "stock",
+        "acid",
+        "analysis",
+        "site_rows",
+        "supplies_rows",
+        "stock_rows",
+        "open_plans",
+    }
+)
 """Use cases that run no model: they go to the desk that must not wait."""
 
 

@@ -50,7 +50,10 @@ def draw_chart(curve: Curve, cursor: float, width: int, height: int) -> list[Lin
     _draw_values(cells, curve, low, high)
     _draw_measured(cells, curve, low, high)
     labels = _labels(low, high, plot_height)
-    rows = [line(Span(fit(labels[y], AXIS, right=True) + " ", "faint"), *(Span(c, ink) for c, ink in cells[y])) for y in range(plot_height)]
+    rows = [
+        line(Span(fit(labels[y], AXIS, right=True) + " ", "faint"), *(Span(c, ink) for c, ink in cells[y]))
+        for y in range(plot_height)
+    ]
     return [*rows, _marks(curve, plot_width), _axis(cursor, plot_width), _dates(curve, plot_width)]
 
 
@@ -62,7 +65,11 @@ def column_of(moment: datetime, curve: Curve, width: int) -> int:
 
 def _reach(curve: Curve) -> tuple[float, float]:
     """The axis: everything drawn and the band, with some room."""
-    every = [number for three in curve.values for number in three] + [value for _, value in curve.measured] + list(curve.other)
+    every = (
+        [number for three in curve.values for number in three]
+        + [value for _, value in curve.measured]
+        + list(curve.other)
+    )
     every += [edge for edge in curve.band if edge is not None]
     low, high = min(every), max(every)
     room = max((high - low) * 0.06, abs(high) * 0.01, 1e-6)
@@ -112,7 +119,9 @@ def _draw_measured(cells: list[list[tuple[str, str]]], curve: Curve, low: float,
 def _labels(low: float, high: float, height: int) -> list[str]:
     digits = digits_for(high - low) + 1 if high - low < 20 else 0
     marked = {0, height - 1, (height - 1) // 2}
-    return [number(high - (high - low) * y / (height - 1), min(digits, 2)) if y in marked else "" for y in range(height)]
+    return [
+        number(high - (high - low) * y / (height - 1), min(digits, 2)) if y in marked else "" for y in range(height)
+    ]
 
 
 def _marks(curve: Curve, width: int) -> Line:
@@ -133,7 +142,9 @@ def _dates(curve: Curve, width: int) -> Line:
     middle = start + (end - start) / 2
     texts = [f"{moment:%-d %b}" for moment in (start, middle, end)]
     gap = width - sum(map(len, texts))
-    return line(" " * (AXIS + 1), Span(texts[0] + " " * (gap // 2) + texts[1] + " " * (gap - gap // 2) + texts[2], "faint"))
+    return line(
+        " " * (AXIS + 1), Span(texts[0] + " " * (gap // 2) + texts[1] + " " * (gap - gap // 2) + texts[2], "faint")
+    )
 
 
 def nearest(times: Sequence[datetime], moment: datetime) -> int:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual import events
 from textual.binding import Binding
@@ -29,14 +29,16 @@ class Chooser(View):
 
     TITLE = "Choose"
     HELP = "Up and Down move the bar, Enter takes what is under it, typing narrows the list, Backspace widens it, Esc leaves."
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         *(binding for binding in SCROLLING if binding.key != "pagedown,space"),
         Binding("pagedown", "leaf(1)", "page down", show=False, id="page.pagedown", tooltip="A screenful down."),
         Binding("enter", "take", "take it", id="choose.take", tooltip="Take what is under the bar."),
         Binding("escape", "close", "leave", id="page.close", tooltip="Back to where you were."),
     ]
 
-    def __init__(self, title: str, options: Sequence[Option], then: Callable[[str], None], narrows: bool = True) -> None:
+    def __init__(
+        self, title: str, options: Sequence[Option], then: Callable[[str], None], narrows: bool = True
+    ) -> None:
         super().__init__()
         self._narrows = narrows
         self._title, self._options, self._then = title, tuple(options), then

@@ -30,6 +30,10 @@ class ThinLineDriver(LinuxDriver):
         if thin := self._slate.thin(data):
             super().write(thin)
 
+    def roll(self, top: int, bottom: int, lines: int) -> None:
+        """Have the terminal itself shift rows, so that a page scrolled by a line sends that line alone."""
+        super().write(self._slate.roll(top, bottom, lines))
+
     def forget_screen(self) -> None:
         """Send the next repaint whole: the size has changed, or something else wrote on the screen."""
         self._slate = Slate(*self._get_terminal_size())

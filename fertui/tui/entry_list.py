@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date, datetime
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
@@ -48,7 +48,7 @@ class EntryList(View):
         "Entries of the logbook, newest first. Nothing is ever overwritten: what was corrected or struck stays, crossed out, "
         "with who, when and why. Enter shows an entry whole, c corrects it, v strikes it."
     )
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         *SCROLLING,
         Binding("enter", "open", "whole entry", id="entry.open", tooltip="The entry under the bar with all it holds."),
         Binding("c", "correct", "correct", id="entry.correct", tooltip="Correct the entry: a new one supersedes it."),
@@ -57,7 +57,12 @@ class EntryList(View):
     ]
 
     def __init__(
-        self, title: str, loop: str = "", kinds: tuple[str, ...] = (), start: datetime | None = None, end: datetime | None = None
+        self,
+        title: str,
+        loop: str = "",
+        kinds: tuple[str, ...] = (),
+        start: datetime | None = None,
+        end: datetime | None = None,
     ) -> None:
         super().__init__()
         self.heading = title
@@ -90,7 +95,9 @@ class EntryList(View):
             return waiting(snapshot, Ask("history"), "the logbook", width)
         entries, struck = self.entries(snapshot), struck_by(snapshot.get(Ask("history")))
         self.row = max(0, min(self.row, len(entries) - 1))
-        rows = [line(Span(f" {literal(self.heading)}", "title"), Span(f"   {len(entries)} entries, newest first", "faint"))]
+        rows = [
+            line(Span(f" {literal(self.heading)}", "title"), Span(f"   {len(entries)} entries, newest first", "faint"))
+        ]
         height = max(1, (self.size.height or self.fertui.stage_size.height) - 1)
         first = max(0, min(self.row - height // 2, len(entries) - height))
         self.first_shown = first
@@ -178,4 +185,8 @@ def said(entry: Entry, by: Entry | None = None) -> str:
     if entry.doubtful:
         words.append(f"doubtful: {entry.doubtful}")
     text = ", ".join(words)
-    return f"{'struck' if by.void else 'corrected'} by {by.by} in {by.number}: {by.why}. {text}" if by is not None else text
+    return (
+        f"{'struck' if by.void else 'corrected'} by {by.by} in {by.number}: {by.why}. {text}"
+        if by is not None
+        else text
+    )

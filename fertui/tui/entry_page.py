@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
@@ -23,7 +23,7 @@ class EntryPage(View):
         "An entry as it stands in the logbook. The time of the event and the time it was written down are both kept. "
         "Each value is shown as written, then as understood in the program's own unit. c corrects it, v strikes it."
     )
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         *SCROLLING,
         Binding("c", "correct", "correct", id="entry.correct", tooltip="Correct the entry: a new one supersedes it."),
         Binding("v", "strike", "strike", id="entry.strike", tooltip="Strike the entry; it stays, crossed out."),
@@ -48,15 +48,29 @@ class EntryPage(View):
         if entry is None:
             return waiting(snapshot, Ask("history"), "the entry", width)
         by = struck_by(snapshot.get(Ask("history"))).get(self.number)
-        rows = [line(Span(f" Entry {entry.number}, {entry.kind}", "title"), Span(f"   {literal(entry.loop) or 'whole site'}", "faint")), BLANK]
+        rows = [
+            line(
+                Span(f" Entry {entry.number}, {entry.kind}", "title"),
+                Span(f"   {literal(entry.loop) or 'whole site'}", "faint"),
+            ),
+            BLANK,
+        ]
         if by is not None:
             how = "Struck" if by.void else "Corrected"
-            words = f"{how} by {by.by} on {self.fertui.local(by.entered):%a %-d %b %H:%M} in entry {by.number}: {by.why}"
-            rows += [line(Span(f" × {text}" if i == 0 else f"   {text}", "act")) for i, text in enumerate(wrap(literal(words), width - 4))]
+            words = (
+                f"{how} by {by.by} on {self.fertui.local(by.entered):%a %-d %b %H:%M} in entry {by.number}: {by.why}"
+            )
+            rows += [
+                line(Span(f" × {text}" if i == 0 else f"   {text}", "act"))
+                for i, text in enumerate(wrap(literal(words), width - 4))
+            ]
         for label, text in self._about(entry):
             if text:
                 first, *more = wrap(literal(text), width - 18)
-                rows += [line(Span(fit(f" {label}", 16), "faint"), first), *(line(" " * 16, more_text) for more_text in more)]
+                rows += [
+                    line(Span(fit(f" {label}", 16), "faint"), first),
+                    *(line(" " * 16, more_text) for more_text in more),
+                ]
         return [*rows, BLANK, *(row for value in entry.values for row in _value(value, width))]
 
     def _about(self, entry: Entry) -> list[tuple[str, str]]:
@@ -84,10 +98,15 @@ def _value(value: Value, width: int) -> list[Line]:
     """A value as written and, where it is a number, as understood."""
     if value.number is None:
         first, *more = wrap(literal(value.text), width - 18)
-        return [line(Span(fit(f" {literal(value.name)}", 16), "strong"), first), *(line(" " * 16, text) for text in more)]
+        return [
+            line(Span(fit(f" {literal(value.name)}", 16), "strong"), first),
+            *(line(" " * 16, text) for text in more),
+        ]
     unit = _unit(value.name)
     kept = f"= {'below ' if value.below else ''}{value.number:.4g} {unit}".rstrip()
-    written = f"{value.text} {value.unit}".strip() + (f" {value.species}" if value.species not in ("", value.name) else "")
+    written = f"{value.text} {value.unit}".strip() + (
+        f" {value.species}" if value.species not in ("", value.name) else ""
+    )
     return [line(Span(fit(f" {literal(value.name)}", 16), "strong"), fit(literal(written), 24), Span(kept, "faint"))]
 
 

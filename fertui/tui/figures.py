@@ -12,7 +12,6 @@ OUT, LEAVING, INSIDE = "act", "watch", "good"
 MARKS = {"act": "!", "watch": "▸", "good": "✓", "note": "·", "faint": "·"}
 """The sign that goes with each ink of a state, so that the state is never colour alone."""
 
-CHEMICAL_NAMES = {"H2PO4": "P"}
 POINT_NAMES = {
     "source": "water", "feed": "drip", "tank": "tank", "root_zone": "root zone", "drain": "drain", "drain_store": "drain store",
 }  # fmt: skip
@@ -27,12 +26,12 @@ def point_name(point: str, layout: str = "") -> str:
 def digits_for(spread: float) -> int:
     """Decimals a number deserves whose range is this wide: the last one shown still means something.
 
-    >>> digits_for(1.2), digits_for(0.04), digits_for(60)
+    >>> digits_for(1.2), digits_for(0.04), digits_for(4)
     (1, 2, 0)
     """
     if spread <= 0:
         return 1
-    return 0 if spread >= 10 else 1 if spread >= 0.2 else 2
+    return 0 if spread >= 3 else 1 if spread >= 0.2 else 2
 
 
 def number(value: float | None, decimals: int = 1) -> str:
@@ -45,6 +44,16 @@ def number(value: float | None, decimals: int = 1) -> str:
         return "-"
     text = f"{value:.{decimals}f}"
     return text.lstrip("-") if float(text) == 0 else text
+
+
+def unit_and_species(label: str, ion: str) -> tuple[str, str]:
+    """Unit and species of a label such as ``mg/L NO3-N``; the ion itself where the label names none.
+
+    >>> unit_and_species("mg/L NO3-N", "NO3"), unit_and_species("meq/L", "HCO3")
+    (('mg/L', 'NO3-N'), ('meq/L', 'HCO3'))
+    """
+    unit, _, species = label.partition(" ")
+    return unit, species or ion
 
 
 def amount(value: float | None) -> str:

@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Any, ClassVar, cast
 
 from textual import events
 from textual.app import App, ComposeResult
-from textual.geometry import Size
+from textual.geometry import Region, Size
 from textual.reactive import var
 from textual.screen import Screen
 
@@ -30,10 +30,12 @@ from fertui.tui.initials import Initials
 from fertui.tui.key_line import KeyLine, key_name
 from fertui.tui.keys import GLOBAL_KEYS, VIEW_NAMES
 from fertui.tui.prompt import Prompt
+from fertui.tui.releasing import release
 from fertui.tui.settings import Settings, write_settings
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.stage import Stage
 from fertui.tui.terminal import Terminal
+from fertui.tui.text_page import TextPage
 from fertui.tui.themes import NAMES, THEMES, usual_theme
 from fertui.tui.view import View
 from fertui.tui.view_line import ViewLine
@@ -41,8 +43,14 @@ from fertui.tui.views import view_numbered
 
 if TYPE_CHECKING:
     from fertui.logbook.entries import Entry
+    from fertui.site.model import Site
     from fertui.workbench import Bench
 
+PAPERS = {
+    "round_sheet": "blank round sheet with the last values", "handover": "one page for the next shift", "stock": "stock-tank sheet",
+    "acid": "acid sheet for the make-up water", "report": "report for consultant or inspector, last 14 days",
+}  # fmt: skip
+"""Sheets by the workbench's name for them."""
 LOOK_FOR_NEWS_EVERY = 2.0
 """Seconds between looks at the logbook for what other sessions wrote."""
 
@@ -72,7 +80,7 @@ class FertuiApp(App[int], inherit_bindings=False):
 
     CSS_PATH = "app.tcss"
     ENABLE_COMMAND_PALETTE = False
-    BINDINGS: ClassVar = GLOBAL_KEYS
+    BINDINGS: ClassVar[list[Any]] = GLOBAL_KEYS
 
     snapshot: var[Snapshot] = var(Snapshot, init=False)
 
@@ -92,6 +100,7 @@ class FertuiApp(App[int], inherit_bindings=False):
         self.fixed_at = at
         self.moment = at or datetime.now(UTC)
         self.fault: BaseException | None = None
+        self.acknowledged = False
         self.open_view = 1
         self._notice = ("", "faint")
         self._model = Desk("model", open_bench, self.post_message)
@@ -238,7 +247,7 @@ class FertuiApp(App[int], inherit_bindings=False):
         """Keys to show: those of the page first, each action once."""
         own = {binding.id for bindings in page._bindings.key_to_bindings.values() for binding in bindings}
         shown = {a.binding.id: a.binding for a in reversed(self.screen.active_bindings.values()) if a.binding.show}
-        ordered = sorted(reversed(shown.values()), key=lambda binding: binding.id not in own)
+        ordered = sorted((*shown.values(),), key=lambda binding: binding.id not in own)
         if self.query_one(Stage).piled:
             ordered = [binding for binding in ordered if binding.id in own]
         return [(key_name(binding.key), binding.description) for binding in ordered]
@@ -285,7 +294,9 @@ class FertuiApp(App[int], inherit_bindings=False):
             if not why:
                 self.say("Nothing was struck: a reason is needed.", "watch")
                 return
-            self.with_initials(lambda by: self.clerk(lambda bench: bench.void(entry.number or 0, why, by), self.wrote, "striking"))
+            self.with_initials(
+                lambda by: self.clerk(lambda bench: bench.void(entry.number or 0, why, by), self.wrote, "striking")
+            )
 
         self.ask(f"Why strike entry {entry.number}?", because)
 
@@ -323,6 +334,60 @@ class FertuiApp(App[int], inherit_bindings=False):
 
         self.ask("Your initials:", given)
 
+    # papers
+
+    async def action_papers(self) -> None:
+        """List the sheets that can be printed."""
+        from fertui.tui.chooser import Chooser, Option
+
+        options = [Option(name, about) for name, about in PAPERS.items()]
+        await self.open_page(Chooser("Which sheet?", options, lambda name: self.call_next(self.paper, name)))
+
+    async def paper(self, name: str) -> None:
+        """Have a sheet made and show it; one with acid only after its cautions and the label."""
+        loop, moment = self.snapshot.loop, self.moment
+        if name in ("stock", "acid"):
+            self.clerk(lambda bench: getattr(bench, name)(loop), partial(self._sheet_made, name), f"the {name} sheet")
+        elif name == "report":
+            self.clerk(lambda bench: bench.report(loop), lambda answer: self.show_paper(name, answer), "the report")
+        else:
+            self.clerk(
+                lambda bench: getattr(bench, name)(loop, moment), lambda answer: self.show_paper(name, answer), name
+            )
+
+    def _sheet_made(self, name: str, answer: Answer) -> None:
+        if answer.value is None:
+            self.say_at_length(f"No {name} sheet", answer.trouble)
+            return
+        sheet, loop = answer.value, self.snapshot.loop
+
+        def show(_: float = 0.0) -> None:
+            page = f"{name}_page"
+            self.clerk(lambda bench: getattr(bench, page)(sheet, loop), lambda page: self.show_paper(name, page), name)
+
+        if name == "acid":
+            self.call_next(release, self, sheet, sheet.cautions, show)
+        else:
+            show()
+
+    def show_paper(self, name: str, answer: Answer, file_name: str = "") -> None:
+        """Show a sheet as it will be printed."""
+        text = answer if answer.value is None else Answer(answer.value.text.splitlines())
+        self.show_text(name.replace("_", " "), text, file_name or f"{name}-{self.moment:%Y-%m-%d}.txt")
+
+    def show_text(self, title: str, answer: Answer, file_name: str = "") -> None:
+        """Show lines of text, or the sentence why there are none."""
+        lines = answer.value if answer.value is not None else [answer.trouble]
+        self.call_next(self.open_page, TextPage(title, lines, file_name))
+
+    def say_at_length(self, title: str, sentence: str) -> None:
+        """A sentence that may not fit the bottom line, on a page of its own."""
+        self.show_text(title, Answer(trouble=sentence))
+
+    def site_changed(self, site: Site) -> None:
+        """The site file is another now."""
+        self.snapshot = replace(self.snapshot, site=site)
+
     # pages and questions above a view
 
     @property
@@ -354,6 +419,11 @@ class FertuiApp(App[int], inherit_bindings=False):
         self.query_one(KeyLine).display = True
         if self.page is not None:
             self.page.focus(scroll_visible=False)
+
+    def roll(self, region: Region, lines: int) -> None:
+        """Have the terminal shift the rows of a page that takes the whole width."""
+        if isinstance(self._driver, ThinLineDriver):
+            self._driver.roll(region.y, region.bottom, lines)
 
     def forget_screen(self) -> None:
         """Have everything sent again with the next repaint."""

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual.binding import Binding
 
@@ -17,7 +17,7 @@ class HelpPage(View):
     """The words and keys of the page it was opened from."""
 
     TITLE = "Help"
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         Binding("escape,question_mark,f1,enter", "close", "back", id="help.close", tooltip="Back to where you were."),
     ]
 

@@ -21,6 +21,7 @@ GLOBAL_KEYS = [
     Binding("n", "loop(1)", "next loop", id="loop.next", tooltip="Show the next loop."),
     Binding("b", "loop(-1)", "loop before", show=False, id="loop.back", tooltip="Show the loop before."),
     Binding("u", "unit", "unit", show=False, id="unit.next", tooltip="mmol/L, meq/L and mg/L in turn, everywhere."),
+    Binding("o", "papers", "sheets", show=False, id="papers", tooltip="Sheets: round, handover, stock, acid, report."),
     Binding("t", "theme", "colours", show=False, id="theme.next", tooltip="The next of the four looks; it is remembered."),
     Binding("f5", "again", "work out again", show=False, id="again", tooltip="As of now, worked out again, drawn again."),
     Binding("q,ctrl+q", "leave", "leave", show=False, id="leave", tooltip="Leave. A half-filled form is kept."),

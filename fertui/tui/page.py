@@ -23,8 +23,8 @@ class Page(Widget):
 
     COMPONENT_CLASSES: ClassVar[set[str]] = {f"ink--{ink}" for ink in INKS}
 
-    def __init__(self, **options: str) -> None:
-        super().__init__(**options)
+    def __init__(self) -> None:
+        super().__init__()
         self._rows: list[Line] = []
 
     @property

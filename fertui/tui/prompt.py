@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual import events
 from textual.binding import Binding
@@ -16,7 +16,7 @@ from fertui.tui.typing_line import Typed
 class Prompt(Page, can_focus=True):
     """Takes the place of the key line while it asks; Enter answers, Esc takes the question back."""
 
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         Binding("enter", "answer", "take it", id="prompt.answer", tooltip="Answer with what is typed."),
         Binding("escape", "drop", "leave it", id="prompt.drop", tooltip="Take the question back; nothing happens."),
     ]
@@ -26,9 +26,9 @@ class Prompt(Page, can_focus=True):
         self.display = False
         self._question = ""
         self._typed = Typed()
-        self._then: Callable[[str], None] = str
+        self._then: Callable[[str], object] = str
 
-    def ask(self, question: str, then: Callable[[str], None], text: str = "") -> None:
+    def ask(self, question: str, then: Callable[[str], object], text: str = "") -> None:
         """Put a question; ``then`` gets the answer."""
         self._question, self._then, self._typed = question, then, Typed.at_end(text)
         self.display = True

@@ -49,6 +49,23 @@ class Slate:
         self._write(data[end:], out)
         return "".join(out)
 
+    def roll(self, top: int, bottom: int, lines: int) -> str:
+        """Shift the rows from ``top`` up to ``bottom`` by so many lines (up where positive), and the sequence for it.
+
+        Rows that come free are unknown until they are written.
+
+        >>> Slate(10, 5).roll(1, 4, 1).count('\\x1b')
+        5
+        """
+        columns, _ = self.size
+        free: list[list[Cell | None]] = [[None] * columns for _ in range(abs(lines))]
+        rows = self._cells[top:bottom]
+        self._cells[top:bottom] = rows[lines:] + free if lines > 0 else free + rows[:lines]
+        self._at = None
+        letter = "M" if lines > 0 else "L"
+        plain, self._pen = "\x1b[m", PLAIN
+        return f"{plain}\x1b[{top + 1};{bottom}r\x1b[{top + 1};1H\x1b[{abs(lines)}{letter}\x1b[r"
+
     def forget(self) -> None:
         """What the terminal shows is no longer known: a new size, a screen that was away."""
         columns, rows = self.size

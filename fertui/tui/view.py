@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual.binding import Binding
 from textual.geometry import Size
@@ -24,7 +24,7 @@ SCROLLING = [
 class View(Page, can_focus=True):
     """A scrolling page. A subclass draws; ``HELP`` says in plain words what it is for."""
 
-    BINDINGS: ClassVar = SCROLLING
+    BINDINGS: ClassVar[list[Any]] = SCROLLING
     TITLE: ClassVar[str] = ""
     HELP: ClassVar[str] = ""
 
@@ -74,7 +74,11 @@ class View(Page, can_focus=True):
         self.fertui.close_page()
 
     def _scroll(self, top: int) -> None:
-        self._top = max(0, min(top, self._total - self.size.height))
+        before, height = self._top, self.size.height
+        self._top = max(0, min(top, self._total - height))
+        moved = self._top - before
+        if 0 < abs(moved) < height // 2:
+            self.fertui.roll(self.region, moved)
         self.redraw()
 
     def action_up(self) -> None:

@@ -41,7 +41,9 @@ class Correction(Form):
                 return
             number = self.entry.number or 0
             self.fertui.with_initials(
-                lambda by: self.fertui.clerk(lambda bench: bench.supersede(number, changes, why, by), self._corrected, "correcting")
+                lambda by: self.fertui.clerk(
+                    lambda bench: bench.supersede(number, changes, why, by), self._corrected, "correcting"
+                )
             )
 
         self.fertui.ask(f"Why is entry {self.entry.number} corrected?", because)
@@ -68,7 +70,12 @@ def spec_of(entry: Entry) -> Spec:
         "Change what was wrong and save. The old entry stays, crossed out, with your initials, the time and the reason. "
         "An emptied field takes the value out. Leave 'when' empty to keep the time of the event."
     )
-    return Spec(f"Correct {entry.number}, {entry.kind}", (Part(entry.kind),), (Group("values", values), Group("about", (*about, when))), help=help_text)
+    return Spec(
+        f"Correct {entry.number}, {entry.kind}",
+        (Part(entry.kind),),
+        (Group("values", values), Group("about", (*about, when))),
+        help=help_text,
+    )
 
 
 def _asked(name: str, field: object, text: str) -> Asked:

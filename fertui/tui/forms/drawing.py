@@ -125,7 +125,9 @@ def last_of(last: Last, answers: Answers, each: Asked) -> tuple[str, datetime] |
     """The last value of a field; what belongs to the day and not to a point may have been logged with any."""
     place = place_of(answers, each)
     if each.name in ("light_sum", "drain_pct") and place not in last:
-        return next((found for (kind, _, name, _), found in last.items() if (kind, name) == (place[0], each.name)), None)
+        return next(
+            (found for (kind, _, name, _), found in last.items() if (kind, name) == (place[0], each.name)), None
+        )
     return last.get(place)
 
 

@@ -10,6 +10,7 @@ from textual import events
 from textual.binding import Binding
 
 from fertui.tui.desk import Answer
+from fertui.tui.figures import MARKS
 from fertui.tui.forms.answers import Answers
 from fertui.tui.forms.drawing import Last, draw_form, last_of, messages
 from fertui.tui.forms.spec import Spec, Texts, entries_of
@@ -20,6 +21,8 @@ from fertui.tui.view import View
 if TYPE_CHECKING:
     from fertui.workbench import Bench
 
+FEWEST_TO_CHECK = 8
+"""Texts of an analysis from which its charge balance is worth showing."""
 MESSAGE_ROWS = 4
 """Lines at the foot of a form for what is asked back and what does not fit together."""
 
@@ -28,7 +31,7 @@ class Form(View):
     """Asks the fields of a form, one after the other, and makes entries of them."""
 
     TITLE = "Entry"
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         Binding(
             "enter",
             "next",
@@ -55,6 +58,7 @@ class Form(View):
         self.answers = Answers.blank(spec)
         self._saved = saved
         self._words: list[tuple[str, str]] = []
+        self._checked: list[tuple[str, str]] = []
         self._held: list[events.Key] = []
         self._waiting = self._done = False
         self._doubted: dict[int, tuple[str, ...]] = {}
@@ -75,7 +79,7 @@ class Form(View):
         height = max(1, self.stage_height - 1 - self._foot)
         top = max(0, min(at - height + 2, len(rows) - height))
         shown = [*rows[top : top + height], *[BLANK] * (height - len(rows))]
-        return [title, *shown, *messages(self._words, width, self._foot)]
+        return [title, *shown, *messages([*self._checked, *self._words], width, self._foot)]
 
     @property
     def stage_height(self) -> int:
@@ -200,7 +204,25 @@ class Form(View):
                 self._words = []
                 go_on()
                 self.keep_draft()
+                self._check()
         self._release()
+
+    def _check(self) -> None:
+        """For an analysis: whether what is typed so far holds together."""
+        found = entries_of(self.spec, self.answers.texts)
+        if self.spec.kind != "analysis" or not found or len(found[0][1]) < FEWEST_TO_CHECK:
+            return
+        texts, loop = {**found[0][1], "by": "?"}, self.loop
+        self.fertui.clerk(lambda bench: bench.check_analysis(texts, loop), self._check_came, "the check")
+
+    def _check_came(self, answer: Answer) -> None:
+        rows = answer.value or ()
+        self._checked = [
+            (f"{MARKS['good' if row.passed else 'act']} {row.what}: {row.remark}", "good" if row.passed else "act")
+            for row in rows[:1] + tuple(row for row in rows[1:] if row.unit == "-" or not row.passed)
+        ]
+        if not self._done:
+            self.redraw()
 
     def _release(self) -> None:
         """Keys that came while the form waited, in their order."""

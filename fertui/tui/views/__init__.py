@@ -11,4 +11,4 @@ from fertui.tui.view import View
 def view_numbered(number: int) -> type[View]:
     """The class of a view by its number on the screen."""
     name = VIEW_NAMES[number - 1]
-    return getattr(import_module(f"fertui.tui.views.{name.lower()}"), f"{name}View")  # type: ignore[no-any-return]
+    return getattr(import_module(f"fertui.tui.views.{name.lower()}"), f"{name}View")

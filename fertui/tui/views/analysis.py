@@ -5,18 +5,24 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from fertui.tui.figures import MARKS, amount, number, point_name
+from fertui.tui.figures import MARKS, amount, number, point_name, unit_and_species
 from fertui.tui.ink import BLANK, Line, Span, beside, col, fit, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import View, waiting
 
 if TYPE_CHECKING:
-    from fertui.workbench.analysis import AnalysisRow, AnalysisView as Report
+    from fertui.workbench.analysis import AnalysisRow
+    from fertui.workbench.analysis import AnalysisView as Report
     from fertui.workbench.glance import Seen
 
 WORD_INKS = {"on target": "good", "a little low": "plain", "a little high": "plain"}
 """Inks of the deviation in words; anything further off wants looking at."""
 WIDE = 112
+WIDTHS, NUMBER_INKS = (8, 10, 8, 11, 8), ("plain", "strong", "faint", "plain", "plain")
+
+
+SHOWN_ALWAYS = ("charge balance", "EC calculated / EC measured")
+"""Checks that show even when they are passed."""
 
 
 class AnalysisView(View):
@@ -43,7 +49,7 @@ class AnalysisView(View):
             return waiting(snapshot, ask, "the last analysis", width)
         if report.managed is None and report.feed is None:
             return [BLANK, line(" ", Span("No analysis is logged for this loop.", "watch"), " a logs one.")]
-        table = [*_heading(report), *_rows(report.rows, snapshot.unit)]
+        table = [*_heading(report, snapshot.unit), *_rows(report.rows, snapshot.unit)]
         below = [*_shares(report), *_said(report, width), BLANK, *_checks(report, width)]
         micros = _micronutrients(report.micronutrients, snapshot.unit)
         if width >= WIDE:
@@ -51,15 +57,18 @@ class AnalysisView(View):
         return [*table, BLANK, *below, BLANK, *micros]
 
 
-def _heading(report: Report) -> list[Line]:
+def _heading(report: Report, unit: str) -> list[Line]:
     managed = point_name(report.managed_point)
     method = f" ({literal(report.method.replace('_', ' '))})" if report.method else ""
     feed = f"; drip of {_day(report.feed)}" if report.feed else "; no analysis of the drip"
     reference = "" if report.ec_reference is None else f", normalised to EC {number(report.ec_reference)} mS/cm"
     words = f"{managed} of {_day(report.managed)}{method}{feed}{reference}"
-    heads = ("drip", managed, "before", "normalised", "target", "off")
-    cells = [col(head, size, "faint") for head, size in zip(heads, (8, 11, 9, 11, 8, 7), strict=True)]
-    return [line(Span(" " + words, "title")), line(Span(fit("", 14)), *cells)]
+    return [line(Span(" " + words, "title")), _heads(unit, managed)]
+
+
+def _heads(first: str, managed: str, ink: str = "faint") -> Line:
+    heads = zip(("drip", managed, "before", "normalised", "target", "off"), (*WIDTHS, 7), strict=True)
+    return line(Span(f" {fit(first, 10)}", ink), *(col(head, size, "faint") for head, size in heads))
 
 
 def _day(seen: Seen | None) -> str:
@@ -75,22 +84,18 @@ def _row(row: AnalysisRow, unit: str) -> Line:
     off = "" if row.deviation_pct is None else f"{row.deviation_pct:+.0f} %"
     ink = WORD_INKS.get(row.words, "watch" if row.words else "faint")
     mark = MARKS["good" if ink == "good" else "watch"] if row.words and ink != "plain" else " "
-    feed, managed, before, normalised, target = shown
-    return line(
-        Span(f" {fit(label, 13)}"), col(feed, 8), col(managed, 11, "strong"), col(before, 9, "faint"), col(normalised, 11),
-        col(target, 8), col(off, 7, ink), Span(f"  {mark} {row.words}", ink),
-    )  # fmt: skip
+    cells = [col(text, size, ink) for text, size, ink in zip(shown, WIDTHS, NUMBER_INKS, strict=True)]
+    return line(Span(f" {fit(label, 10)}"), *cells, col(off, 7, ink), Span(f"  {mark} {row.words}", ink))
 
 
 def _in_unit(row: AnalysisRow, unit: str) -> tuple[str, tuple[str, ...]]:
-    """Label with unit, and the five numbers of a row in it."""
+    """Label (with its unit where that is not the one of the heading), and the five numbers of a row."""
     from fertui.workbench.units import shown
 
-    label = shown(row.ion, 1.0, unit)[1]
-    species = label.removeprefix(unit).strip()
+    own, species = unit_and_species(shown(row.ion, 1.0, unit)[1], row.ion)
     values = (row.feed, row.managed, row.previous, row.normalised, row.target)
     texts = tuple("-" if value is None else amount(shown(row.ion, value, unit)[0]) for value in values)
-    return f"{species or row.ion} {label.removesuffix(species).strip()}", texts
+    return species if own == unit or row.unit == "umol/L" else f"{species} {own}", texts
 
 
 def _shares(report: Report) -> list[Line]:
@@ -110,7 +115,7 @@ def _said(report: Report, width: int) -> list[Line]:
 def _checks(report: Report, width: int) -> list[Line]:
     rows: list[Line] = [line(Span(" does the report hold together", "title"))]
     for point, checks in report.checks.items():
-        for check in checks:
+        for check in (each for each in checks if not each.passed or each.what in SHOWN_ALWAYS):
             ink = "good" if check.passed else "act"
             mark = MARKS["good"] if check.passed else MARKS["act"]
             unit = "" if check.unit == "-" else f" {check.unit}"
@@ -124,5 +129,4 @@ def _micronutrients(rows: Sequence[AnalysisRow], unit: str) -> list[Line]:
     given = [row for row in rows if row.feed is not None or row.managed is not None]
     if not given:
         return [line(Span(" micronutrients", "title"), Span("  none in this report", "faint"))]
-    heads = [col(head, size, "faint") for head, size in (("drip", 8), ("now", 11), ("before", 9), ("", 11), ("target", 8), ("off", 7))]
-    return [line(Span(fit(" micronutrients", 14), "title"), *heads), *_rows(given, unit)]
+    return [_heads("umol/L" if unit != "mg/L" else unit, "now", "title"), *_rows(given, unit)]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from datetime import timedelta
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
@@ -17,7 +17,20 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Balance, BalanceRow
 
 PERIODS = (7, 14, 28, 90)
-CAUSES = ("start_mmol", "make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained", "end_mmol")
+CAUSES = (
+    "start_mmol",
+    "make_up",
+    "stock",
+    "dose",
+    "acid",
+    "feed",
+    "uptake",
+    "exchange",
+    "bleed",
+    "drain",
+    "unexplained",
+    "end_mmol",
+)
 HEADS = {"start_mmol": "start", "make_up": "water", "unexplained": "unexpl.", "exchange": "medium", "end_mmol": "end"}
 """Short heads of the columns; the others are their own."""
 WORDS = {
@@ -46,12 +59,14 @@ class BalanceView(View):
         "ion by size, Enter shows the entries the cell comes from, z changes the period, u changes mol, eq and g. "
         "'unexpl.' is what the last analysis found beyond everything logged: unlogged water or stock, a meter that is off, a wrong volume."
     )
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         Binding("up", "move(0,-1)", "ion", id="balance.up", tooltip="The ion above."),
         Binding("down", "move(0,1)", "ion below", show=False, id="balance.down", tooltip="The ion below."),
         Binding("left", "move(-1,0)", "cause", id="balance.left", tooltip="The cause before."),
         Binding("right", "move(1,0)", "next cause", show=False, id="balance.right", tooltip="The next cause."),
-        Binding("enter", "entries", "entries", id="balance.entries", tooltip="The entries the chosen number comes from."),
+        Binding(
+            "enter", "entries", "entries", id="balance.entries", tooltip="The entries the chosen number comes from."
+        ),
         Binding("z", "period", "period", id="balance.period", tooltip="7, 14, 28 or 90 days."),
     ]
 
@@ -83,7 +98,10 @@ class BalanceView(View):
             rows.append(line(col(f" {ion}", 6, "strong" if y == self.y else "plain", right=False), *cells))
         ion, cause = ions[self.y], causes[self.x]
         value = amount(_shown(ion, account.ions[ion], cause, snapshot.unit, factor))
-        rows += [BLANK, line(Span(f" {ion}: {value} {unit} {WORDS[cause]}", "strong"), Span("   Enter: its entries", "faint"))]
+        rows += [
+            BLANK,
+            line(Span(f" {ion}: {value} {unit} {WORDS[cause]}", "strong"), Span("   Enter: its entries", "faint")),
+        ]
         return [*rows, *bars(ion, account.ions[ion], snapshot.unit, factor, unit, width)]
 
     def action_move(self, x: int, y: int) -> None:
@@ -108,12 +126,15 @@ class BalanceView(View):
         cause, ion = used(account, self.size.width)[self.x], list(account.ions)[self.y]
         title = f"{ion}, {WORDS[cause]}"
         await self.fertui.open_page(
-            EntryList(title, self.fertui.snapshot.loop, KINDS_BEHIND[cause], account.start - timedelta(days=1), account.end)
+            EntryList(
+                title, self.fertui.snapshot.loop, KINDS_BEHIND[cause], account.start - timedelta(days=1), account.end
+            )
         )
 
 
 def used(account: Balance, width: int) -> list[str]:
     """The causes that moved anything; where they are too many for the width, the smallest are left to the bars."""
+
     def size(cause: str) -> float:
         return max((abs(getattr(row, cause)) for row in account.ions.values()), default=0.0)
 
@@ -145,5 +166,13 @@ def bars(ion: str, row: BalanceRow, unit: str, factor: float, name: str, width: 
         size = max(1, round(abs(value) / largest * half))
         left = Span(fit("█" * size, half, right=True) if value < 0 else " " * half, "watch")
         right = Span("█" * size if value > 0 else "", "good")
-        rows.append(line(col(f" {HEADS.get(cause, cause)}", 12, right=False), left, Span("│", "faint"), right, f" {amount(value)} {name}"))
+        rows.append(
+            line(
+                col(f" {HEADS.get(cause, cause)}", 12, right=False),
+                left,
+                Span("│", "faint"),
+                right,
+                f" {amount(value)} {name}",
+            )
+        )
     return rows

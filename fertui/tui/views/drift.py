@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from datetime import datetime, timedelta
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
@@ -28,13 +28,17 @@ class DriftView(View):
         "One quantity over time. The dots are the estimate, the shade its 80 % range, the diamonds what was measured, "
         "the dashed lines the band. Letters under the chart are what was done: A analysis, D dose, B batch, R recipe, "
         "S set point, L bleed (let go), H acid, C crop, X disinfection, * several. "
-        "Up and Down choose the quantity, Left and Right move the cursor (Home and End to its ends), z changes the period. "
+        "Tab chooses the quantity, Left and Right move the cursor by a day, Up and Down by a week, Home and End to its ends, z changes the period. "
         "The line under the chart reads the values where the cursor stands."
     )
-    BINDINGS: ClassVar = [
-        Binding("up", "up", "quantity", id="drift.up", tooltip="The quantity before."),
-        Binding("down", "down", "next quantity", show=False, id="drift.down", tooltip="The next quantity."),
-        Binding("left", "cursor(-1)", "cursor", id="drift.left", tooltip="The cursor a day back."),
+    BINDINGS: ClassVar[list[Any]] = [
+        Binding("tab", "choose(1)", "quantity", id="drift.next", tooltip="The next quantity."),
+        Binding(
+            "shift+tab", "choose(-1)", "quantity before", show=False, id="drift.before", tooltip="The quantity before."
+        ),
+        Binding("left", "cursor(-1)", "day back", id="drift.left", tooltip="The cursor a day back."),
+        Binding("up", "cursor(-7)", "week back", show=False, id="drift.up", tooltip="The cursor a week back."),
+        Binding("down", "cursor(7)", "week on", show=False, id="drift.down", tooltip="The cursor a week on."),
         Binding("right", "cursor(1)", "a day on", show=False, id="drift.right", tooltip="The cursor a day on."),
         Binding("z", "period", "period", id="drift.period", tooltip="14, 28 or 90 days."),
         Binding("enter", "entries", "entries", id="drift.entries", tooltip="The entries of the day under the cursor."),
@@ -59,7 +63,10 @@ class DriftView(View):
         if drift is None:
             return waiting(snapshot, self._ask(snapshot), "the days past", width)
         if not drift.series:
-            return [BLANK, line(" ", Span("Nothing is known of these days yet: log a reading (r) or an analysis (a).", "watch"))]
+            return [
+                BLANK,
+                line(" ", Span("Nothing is known of these days yet: log a reading (r) or an analysis (a).", "watch")),
+            ]
         self.chosen %= len(drift.series)
         series = in_unit(drift.series[self.chosen], snapshot.unit)
         moment = self.fertui.moment - timedelta(days=self.days_back)
@@ -76,15 +83,8 @@ class DriftView(View):
         ]  # fmt: skip
         return beside(chart, _table(drift, snapshot.unit, moment), left_width, 2) if width >= WIDE else chart
 
-    def action_up(self) -> None:
-        """The quantity before."""
-        self._choose(-1)
-
-    def action_down(self) -> None:
-        """The next quantity."""
-        self._choose(1)
-
-    def _choose(self, step: int) -> None:
+    def action_choose(self, step: int) -> None:
+        """Another quantity."""
         self.chosen += step
         self.redraw()
 
@@ -138,7 +138,9 @@ def _curve(series: Series, drift: Drift, now: datetime, days: int) -> Curve:
     marks = tuple((mark.at, MARK_LETTERS.get(mark.kind, "?")) for mark in drift.marks)
     values = tuple((v.value, v.low, v.high) for v in series.values)
     band = series.band or (None, None)
-    return Curve(series.unit, series.times, values, series.measured, band, marks, start=now - timedelta(days=days), end=now)
+    return Curve(
+        series.unit, series.times, values, series.measured, band, marks, start=now - timedelta(days=days), end=now
+    )
 
 
 def _names(drift: Drift, chosen: int, width: int) -> Line:
@@ -170,12 +172,25 @@ def _reading(series: Series, drift: Drift, moment: datetime, width: int) -> Line
 
 def _table(drift: Drift, unit: str, moment: datetime) -> list[Line]:
     """Every quantity on the day of the cursor."""
-    rows: list[Line] = [line(Span(f"{moment:%a %-d %b}", "title")), line(col("", 10), col("value", 8, "faint"), col("80 % range", 15, "faint"))]
+    rows: list[Line] = [
+        line(Span(f"{moment:%a %-d %b}", "title")),
+        line(col("", 10), col("value", 8, "faint"), col("80 % range", 15, "faint")),
+    ]
     for series in (in_unit(each, unit) for each in drift.series):
         if not series.times:
             continue
         value, reach = estimated(series.values[nearest(series.times, moment)])
-        rows.append(filled(line(col(series.what, 10, "plain", right=False), col(value, 8, "strong"), col(f"({reach})", 15, "faint"), f" {series.unit}"), 42))
+        rows.append(
+            filled(
+                line(
+                    col(series.what, 10, "plain", right=False),
+                    col(value, 8, "strong"),
+                    col(f"({reach})", 15, "faint"),
+                    f" {series.unit}",
+                ),
+                42,
+            )
+        )
     return rows
 
 

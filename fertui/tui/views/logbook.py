@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from pathlib import Path
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual.binding import Binding
 
@@ -13,7 +13,7 @@ from fertui.tui.entry_list import EntryList, Wanted
 from fertui.tui.snapshot import Ask
 
 
-class LogbookView(EntryList):
+class LogbookView(EntryList, inherit_bindings=False):
     """The whole book."""
 
     TITLE = "Logbook"
@@ -21,7 +21,7 @@ class LogbookView(EntryList):
         f"{EntryList.HELP} f shows one kind only, l one loop or all, i one person, / entries with a text in them, Backspace shows all again. "
         "o writes the book as tables (CSV, one file a kind), y keeps a backup of book and site in one file."
     )
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         *(binding for binding in EntryList.BINDINGS if isinstance(binding, Binding) and binding.id != "page.close"),
         Binding("f", "kind", "kind", id="logbook.kind", tooltip="Show one kind only."),
         Binding("l", "one_loop", "loop", show=False, id="logbook.loop", tooltip="Show this loop only, or all."),
@@ -37,7 +37,12 @@ class LogbookView(EntryList):
 
     def _filter(self, wanted: Wanted) -> None:
         self.wanted, self.row = wanted, 0
-        words = [*wanted.kinds, wanted.loop, f"by {wanted.by}" if wanted.by else "", f"with {wanted.text!r}" if wanted.text else ""]
+        words = [
+            *wanted.kinds,
+            wanted.loop,
+            f"by {wanted.by}" if wanted.by else "",
+            f"with {wanted.text!r}" if wanted.text else "",
+        ]
         self.heading = ", ".join(filter(None, words)) or "All entries"
         self.redraw()
 
@@ -48,7 +53,11 @@ class LogbookView(EntryList):
 
         options = [Option("all kinds", value="all kinds"), *(Option(kind.name, kind.about) for kind in KINDS.values())]
         await self.fertui.open_page(
-            Chooser("Show which kind?", options, lambda kind: self._filter(replace(self.wanted, kinds=() if kind == "all kinds" else (kind,))))
+            Chooser(
+                "Show which kind?",
+                options,
+                lambda kind: self._filter(replace(self.wanted, kinds=() if kind == "all kinds" else (kind,))),
+            )
         )
 
     def action_one_loop(self) -> None:
@@ -67,7 +76,9 @@ class LogbookView(EntryList):
 
     def action_text(self) -> None:
         """Ask for a text."""
-        self.fertui.ask("Entries with this in them:", lambda text: self._filter(replace(self.wanted, text=text)), self.wanted.text)
+        self.fertui.ask(
+            "Entries with this in them:", lambda text: self._filter(replace(self.wanted, text=text)), self.wanted.text
+        )
 
     def action_everything(self) -> None:
         """No filter."""
@@ -86,7 +97,9 @@ class LogbookView(EntryList):
         if answer.value is None:
             self.fertui.say(answer.trouble, "act")
         else:
-            self.fertui.say(f"wrote {len(answer.value)} tables, first {answer.value[0] if answer.value else 'none'}", "good")
+            self.fertui.say(
+                f"wrote {len(answer.value)} tables, first {answer.value[0] if answer.value else 'none'}", "good"
+            )
 
     def action_backup(self) -> None:
         """Ask where to, and keep everything."""

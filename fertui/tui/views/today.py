@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
 from fertui.tui import charts
-from fertui.tui.figures import MARKS, age, digits_for, estimated, number, point_name, span, standing
+from fertui.tui.figures import MARKS, age, digits_for, estimated, number, point_name, span, standing, unit_and_species
 from fertui.tui.ink import BLANK, Line, Span, beside, filled, fit, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import View, waiting
@@ -35,7 +35,7 @@ class TodayView(View):
         "'To look at' lists what wants doing, worst first, with the key that does it. "
         "With several loops v shows all of them on one screen, worst first."
     )
-    BINDINGS: ClassVar = [
+    BINDINGS: ClassVar[list[Any]] = [
         Binding("v", "all_loops", "all loops", id="today.all", tooltip="All loops on one screen, worst first."),
         Binding("enter", "open_loop", "open loop", show=False, id="today.open", tooltip="Open the loop under the bar."),
     ]
@@ -220,7 +220,7 @@ def _amounts(each: Gauge, point: PointState, unit: str) -> tuple[str, tuple[str,
     (value, label), (low, _), (high, _) = (shown(ion, amount, unit) for amount in (state.value, state.low, state.high))
     digits = digits_for(high - low)
     words = number(value, digits), span(low, high, digits)
-    species = label.removeprefix(unit).strip() or ion
+    species = unit_and_species(label, ion)[1]
     if each.what.endswith(" share"):
         return species, words, f"{number(each.now.value, 0)} %"
     limit = each.now.band[1] if each.now.band else None

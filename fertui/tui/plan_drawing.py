@@ -1,0 +1,189 @@
+"""How a plan looks: steps, the table of before, with and without, what binds, cautions, words."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Sequence
+from datetime import datetime
+from typing import TYPE_CHECKING
+
+from fertui.tui.figures import MARKS, amount, band_words, estimated, number, point_name, standing, unit_and_species
+from fertui.tui.ink import BLANK, Line, Span, col, cut, filled, fit, inked, line, literal, wrap
+from fertui.tui.snapshot import Snapshot
+
+if TYPE_CHECKING:
+    from fertui.planning.values import Plan
+    from fertui.workbench.carrying_out import PlanItem
+
+Local = Callable[[datetime], datetime]
+COMPARED = ("K share", "Ca share", "Mg share", "EC", "Na", "NH4", "NO3")
+
+
+def draw_accepted(items: Sequence[PlanItem], chosen: int, local: Local, width: int) -> list[Line]:
+    """Steps accepted before: what is to do, what is done."""
+    if not items:
+        return []
+    rows = [line(Span(" Accepted", "title"), Span("   counted only when marked done", "faint"))]
+    for index, item in enumerate(items):
+        how_much = "" if item.amount is None else f"{item.amount:g} {item.unit}"
+        where = f" into {item.target}" if item.target else ""
+        state = f"✓ done in {item.done_number}" if item.done_number is not None else "· to do"
+        words = f"{local(item.at):%a %-d %b}  {how_much} {item.what}{where}"
+        row = line(
+            Span(" ▸ " if index == chosen else "   ", "accent"),
+            fit(literal(words), width - 24),
+            Span(state, "good" if item.done_number else "watch"),
+        )
+        rows.append(inked(filled(row, width), "chosen") if index == chosen else row)
+    return rows
+
+
+def draw_plan(
+    plan: Plan, held: bool, wishes: Sequence[str], snapshot: Snapshot, local: Local, width: int
+) -> list[Line]:
+    """The plan from its head to its cautions."""
+    rows = [_head(plan, wishes, width)]
+    if not plan.feasible:
+        rows += _marked("act", f"No plan reaches it: {plan.reason}", width)
+    if plan.sample_first:
+        rows += _marked("watch", "The range is wider than the band: take a sample first, then plan.", width)
+    rows += [
+        *_recipe(plan, snapshot.unit, width),
+        *_doses(plan, local, width),
+        *_acid(plan, held, local),
+        *_renewal(plan, width),
+        BLANK,
+    ]
+    rows += _outcome(plan, snapshot.unit)
+    for binding in plan.binding:
+        source = f" ({literal(binding.source)})" if binding.source else ""
+        rows += _marked(
+            "watch",
+            f"binds: {binding.limit} {amount(binding.value)} {binding.unit}, reached {amount(binding.reached)}{source}",
+            width,
+        )
+    rows += _texts("rule of thumb", plan.rule_of_thumb, width)
+    if plan.runner_up is not None:
+        rows += _texts("next best", [plan.runner_up.difference], width)
+    rows += _texts("if done otherwise", [each.text for each in plan.sensitivity], width)
+    rows += _texts("notice", plan.notices, width)
+    for caution in plan.cautions:
+        rows += _marked({"act": "act", "watch": "watch"}.get(caution.severity, "faint"), caution.text, width)
+    return rows
+
+
+def _head(plan: Plan, wishes: Sequence[str], width: int) -> Line:
+    horizon = f"{plan.horizon_days} days" if plan.horizon_days else "right after mixing"
+    words = f" Plan, {horizon}, for the {point_name(plan.point, plan.layout)}"
+    return line(Span(words, "title"), Span(cut("  " + ", ".join(wishes), width - len(words)), "faint"))
+
+
+def _recipe(plan: Plan, unit: str, width: int) -> list[Line]:
+    """The next recipe with how far it departs from the running one, and the tanks that carry it."""
+    if plan.recipe is None:
+        return []
+    from fertui.workbench.units import shown
+
+    recipe = plan.recipe
+    rows = [
+        line(
+            Span(" next recipe", "strong"),
+            Span(f"  {unit}, EC {number(recipe.ec, 2)} mS/cm; change on the running one in %", "faint"),
+        )
+    ]
+    cells: list[str | Span] = []
+    for ion, value in recipe.ions_mmol_l.items():
+        shown_value, label = shown(ion, value, unit)
+        name = unit_and_species(label, ion)[1]
+        change = recipe.change_pct.get(ion)
+        moved = "" if change is None or abs(change) < 0.5 else f" {change:+.0f} %"
+        cells.append(Span(fit(f" {name} {amount(shown_value)}{moved}", 19), "strong" if moved else "plain"))
+    per_row = max(1, (width - 1) // 19)
+    rows += [line(*cells[start : start + per_row]) for start in range(0, len(cells), per_row)]
+    if recipe.sheet is not None:
+        for tank in recipe.sheet.tanks:
+            salts = ", ".join(f"{each.salt} {each.kg:g} kg" for each in tank.salts)
+            rows += _texts(f"{tank.name} {tank.letter} {tank.litres:g} L".replace("  ", " "), [salts], width)
+    return rows
+
+
+def _doses(plan: Plan, local: Local, width: int) -> list[Line]:
+    rows = []
+    for step in plan.steps:
+        words = f"{local(step.at):%a %-d %b}  {step.kg:g} kg {step.salt} ({step.formula}) into {step.target.removeprefix('tank:')}"
+        rows.append(line(Span(" weigh ", "accent"), Span(cut(literal(words), width - 8), "strong")))
+    return rows
+
+
+def _acid(plan: Plan, held: bool, local: Local) -> list[Line]:
+    if plan.acid and held:
+        return [
+            line(
+                Span(" ! ", "act"),
+                f"{len(plan.acid)} steps with acid are held back: ",
+                Span("k", "accent"),
+                " shows their cautions and asks for the label.",
+            )
+        ]
+    rows = []
+    for split in plan.acid:
+        words = f"{local(split.at):%a %-d %b}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, wait {split.wait_min:g} min, retest for pH {number(split.retest_ph)}, stop at {number(split.stop_ph)}"
+        rows.append(line(Span(" acid  ", "act"), Span(literal(words), "strong")))
+    return rows
+
+
+def _renewal(plan: Plan, width: int) -> list[Line]:
+    if plan.renewal is None:
+        return []
+    rows = _marked(
+        "watch",
+        f"renew {plan.renewal.litres:.0f} L: {amount(plan.renewal.kg_n)} kg N and {amount(plan.renewal.kg_p)} kg P go; the year comes to {amount(plan.renewal.year_kg_n)} kg N",
+        width,
+    )
+    return rows + _texts("or", [option.text for option in plan.renewal.options], width)
+
+
+def _outcome(plan: Plan, unit: str) -> list[Line]:
+    """Now, at the horizon with the plan, at the horizon without."""
+    from fertui.tui.views.forecast import _in_unit, _value
+
+    heads = (("now", 18), ("with the plan", 18), ("without", 18), ("band", 11))
+    rows = [line(col("", 14), *(col(head, size, "faint") for head, size in heads))]
+    for what in COMPARED:
+        cells, label, band = [], "", ""
+        for outlook in (plan.before, plan.after, plan.after_without):
+            state = outlook.points.get(plan.point)
+            value, name = _in_unit(None if state is None else _value(state, what), what, unit)
+            if value is None:
+                cells.append(col("-", 18))
+                continue
+            middle, reach = estimated(value)
+            ink = standing(value)
+            label, band = name, band_words(value.band)
+            cells.append(
+                Span(
+                    fit(f"{MARKS.get(ink, ' ')} {middle} ({reach})", 18, right=True),
+                    ink if ink in ("act", "watch") else "plain",
+                )
+            )
+        if label or what == "EC":
+            rows.append(
+                line(
+                    col(f" {what} {label}".replace("share %", "share, %"), 14, right=False),
+                    *cells,
+                    col(band, 11, "faint"),
+                )
+            )
+    return rows
+
+
+def _marked(ink: str, text: str, width: int) -> list[Line]:
+    first, *more = wrap(literal(text), width - 4)
+    return [line(Span(f" {MARKS.get(ink, '·')} ", ink), first), *(line("   ", words) for words in more)]
+
+
+def _texts(label: str, texts: Iterable[str], width: int) -> list[Line]:
+    rows: list[Line] = []
+    for text in texts:
+        first, *more = wrap(literal(f"{label}: {text}"), width - 2)
+        rows += [line(" ", first), *(line("   ", words) for words in more)]
+    return rows
