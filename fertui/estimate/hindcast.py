@@ -1,0 +1,207 @@
+"""The record: what was forecast right after each analysis, beside what the next one found.
+
+``logged``: feed analyses, recipe, water and doses as logged up to the next analysis; ``planned``: only what was logged or
+planned when the forecast was issued, which is what users saw.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, replace
+from datetime import datetime
+
+import numpy as np
+
+from fertui.chemistry.ions import INDEX, IONS, Array
+from fertui.estimate import compositions
+from fertui.estimate.assimilation import MEMBERS, SEED, Assimilation, Estimate, assimilate
+from fertui.estimate.baseline import last_uptake
+from fertui.estimate.beginning import shows_a_vessel
+from fertui.estimate.display import SHARED, feed_drive, managed, shown_members, solutions
+from fertui.estimate.ensemble import Ensemble
+from fertui.estimate.forecast import trajectories
+from fertui.estimate.noise import normals
+from fertui.estimate.observations import Observation
+from fertui.estimate.ranges import HIGH, LOW, Spread, shares
+from fertui.estimate.record import Record, read
+from fertui.estimate.scores import HindcastRow, Summary, crps, summary
+from fertui.estimate.walk import events_between, night, stretch
+from fertui.logbook.entries import Entry
+from fertui.site.model import Loop, Site
+
+INPUTS = ("logged", "planned")
+
+
+@dataclass(frozen=True, slots=True)
+class Hindcast:
+    """Rows of every forecast and the record in numbers."""
+
+    inputs: str
+    rows: tuple[HindcastRow, ...]
+    summary: Summary
+
+
+def hindcast(
+    site: Site,
+    loop: Loop,
+    entries: Iterable[Entry],
+    at: datetime,
+    inputs: str = "logged",
+    members: int = MEMBERS,
+    seed: int = SEED,
+) -> Hindcast:
+    """The record of a loop's forecasts from one analysis of its solution to the next, up to ``at``.
+
+    Raises ``ValueError`` for ``inputs`` other than "logged" or "planned".
+    """
+    if inputs not in INPUTS:
+        raise ValueError(f"inputs {inputs!r} is not one of {', '.join(INPUTS)}")
+    kept = list(entries)
+    run = Assimilation(read(site, loop, kept, at), members, seed)
+    run.run()
+    rows: list[HindcastRow] = []
+    for pair in _pairs(run):
+        ahead = _Logged(run) if inputs == "logged" else _Planned(site, loop, kept, members, seed)
+        rows += _rows(run, pair, ahead.members(pair))
+    return Hindcast(inputs, tuple(rows), summary(rows))
+
+
+@dataclass(frozen=True, slots=True)
+class _Pair:
+    """A target analysis, the one of the same point before it, and whether that or the one before was no good."""
+
+    target: Observation
+    origin: Observation
+    before: Observation | None
+    judged: bool
+
+    @property
+    def cold_start(self) -> bool:
+        """Whether the origin is the first analysis of its point."""
+        return self.before is None
+
+
+def _pairs(run: Assimilation) -> list[_Pair]:
+    """Every analysis of a vessel with the one before it at the same point, in order of time."""
+    found = []
+    begun = [each for each in run.record.observations if shows_a_vessel(run.setting, each) and each.time >= run.begin.time - 1e-6]
+    for point in dict.fromkeys(each.point for each in begun):
+        series = [each for each in begun if each.point == point]
+        for place, (origin, target) in enumerate(zip(series, series[1:], strict=False)):
+            before = series[place - 1] if place else None
+            clean = before is not None and not any(each.doubtful for each in (target, origin, before))
+            found.append(_Pair(target, origin, before, clean))
+    return sorted(found, key=lambda pair: pair.target.time)
+
+
+class _Logged:
+    """Members run on from right after an analysis under what was logged, without learning from anything later."""
+
+    def __init__(self, run: Assimilation) -> None:
+        self.run = run
+
+    def members(self, pair: _Pair) -> tuple[Array, Spread, Array]:
+        """What the members say at the target (M, 10), already widened; the scale; and the plain reactor's word (10,)."""
+        run = self.run
+        ensemble, spread, begin = self._issued(pair.origin)
+        ahead = ensemble
+        for span in range(begin, len(run.grid) - 1):
+            now, until = float(run.grid[span]), float(run.grid[span + 1])
+            if now >= pair.target.time - 1e-4:
+                break
+            if span > begin and any(abs(now - midnight) < 1e-4 for midnight in run.midnights):
+                ahead, _ = night(run.setting, ahead, run.seed, run.record.local_day(now), now)
+            events = events_between(run.record.events, now, until)
+            ahead = stretch(run.setting, run.drives, span, ahead, events).ensemble
+        said = solutions(run.setting, ahead, feed_drive(run.drives, 0, ahead))
+        return shown_members(said[_shown_at(run.record, pair.target.point, said)], spread), spread, ahead.ec
+
+    def _issued(self, origin: Observation) -> tuple[Ensemble, Spread, int]:
+        """Members right after the last analysis that was used, no later than the origin."""
+        used = [each for each in self.run.after if each[0].time <= origin.time + 1e-6]
+        _, ensemble, spread, span = used[-1]
+        if used[-1][0].time < origin.time - 1e-4:
+            return self._carried(ensemble, span, origin.time), spread, self._span(origin.time)
+        return ensemble, spread, span
+
+    def _carried(self, ensemble: Ensemble, span: int, until: float) -> Ensemble:
+        """Members carried on to an origin that itself was not used (doubtful, held back)."""
+        run = self.run
+        for place in range(span, self._span(until)):
+            now = float(run.grid[place])
+            if place > span and any(abs(now - midnight) < 1e-4 for midnight in run.midnights):
+                ensemble, _ = night(run.setting, ensemble, run.seed, run.record.local_day(now), now)
+            events = events_between(run.record.events, now, float(run.grid[place + 1]))
+            ensemble = stretch(run.setting, run.drives, place, ensemble, events).ensemble
+        return ensemble
+
+    def _span(self, time: float) -> int:
+        return min(int(np.searchsorted(self.run.grid, time - 1e-4)), len(self.run.grid) - 1)
+
+
+class _Planned:
+    """Forecasts as they were issued: nothing later than the origin but plans that were entered."""
+
+    def __init__(self, site: Site, loop: Loop, entries: Sequence[Entry], members: int, seed: int) -> None:
+        self.site, self.loop, self.entries, self.count, self.seed = site, loop, entries, members, seed
+
+    def members(self, pair: _Pair) -> tuple[Array, Spread, Array]:
+        """As ``_Logged.members``."""
+        estimate = assimilate(self.site, self.loop, self.entries, pair.origin.at, self.count, self.seed)
+        horizon = pair.target.time - pair.origin.time
+        days = max(int(np.ceil(horizon)), 1)
+        ran = trajectories(estimate, days)
+        point = _shown_at(estimate.record, pair.target.point, ran.ions)
+        shown = shown_members(ran.ions[point], estimate.spread)
+        part = horizon - np.floor(horizon) if horizon < days else 1.0
+        between = shown[days - 1] ** (1.0 - part) * shown[days] ** part if np.all(shown[days - 1 :, :, :9] > 0) else shown[days]
+        return between, estimate.spread, ran.log_ec[-1]
+
+
+def _shown_at(record: Record, point: str, said: object) -> str:
+    names = list(said)  # type: ignore[call-overload]
+    return point if point in names else managed(record.loop)
+
+
+def _rows(run: Assimilation, pair: _Pair, ahead: tuple[Array, Spread, Array]) -> list[HindcastRow]:
+    """One row per ion that both analyses measured."""
+    members, _, _ = ahead
+    sampled = _with_sampling_error(run, pair.target, members)
+    measured, before = compositions.array(pair.target.ions), compositions.array(pair.origin.ions)
+    both = [ion for ion in IONS if ion in pair.target.ions and ion in pair.origin.ions and ion != "HCO3"]
+    triples = np.quantile(sampled, (0.5, LOW, HIGH), axis=0)
+    found, now, then = shares(sampled), shares(measured), shares(before)
+    plain = shares(last_uptake(run, pair.before, pair.origin, pair.target)) if pair.judged and pair.before else then
+    share_triples = np.quantile(found, (0.5, LOW, HIGH), axis=0)
+    rows = []
+    for ion in both:
+        place = INDEX[ion]
+        middle, low, high = (float(value) for value in triples[:, place])
+        row = HindcastRow(
+            pair.target.at, pair.origin.at, pair.target.point, ion, float(measured[place]), middle, low, high,
+            float(before[place]), None, None, None, None, None, pair.cold_start, bool(pair.target.doubtful),
+            judged=pair.judged,
+        )  # fmt: skip
+        if ion in SHARED and all(each in both for each in SHARED):
+            column = SHARED.index(ion)
+            middle, low, high = (float(value) for value in share_triples[:, column])
+            row = replace(
+                row, measured_share_pct=float(now[column]), predicted_share_pct=middle, low_share_pct=low,
+                high_share_pct=high, no_change_share_pct=float(then[column]),
+                last_uptake_share_pct=float(plain[column]), crps_share=crps(found[:, column], float(now[column])),
+            )  # fmt: skip
+        rows.append(row)
+    return rows
+
+
+def _with_sampling_error(run: Assimilation, target: Observation, members: Array) -> Array:
+    """What an analysis of every member would show: its own error on top."""
+    columns = target.columns()
+    noise = target.covariance(np.median(members[:, columns], axis=0))
+    drawn = normals(run.seed, run.record.loop.name, f"sample {target.at.isoformat()} {target.point}", len(members), len(columns))
+    sampled = members.copy()
+    sampled[:, columns] = members[:, columns] * np.exp(drawn @ np.linalg.cholesky(noise).T)
+    return sampled
+
+
+__all__ = ["INPUTS", "Estimate", "Hindcast", "HindcastRow", "Summary", "hindcast"]
