@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from datetime import datetime, timedelta
 from typing import TYPE_CHECKING, Any
 
@@ -76,3 +76,19 @@ def call_for(ask: Ask, moment: datetime, then: Callable[[Ask, Answer], None]) ->
     """The call that works out one question as of ``moment``."""
     use_case = USE_CASES.get(ask.use_case, _plainly)
     return Call(lambda bench: use_case(bench, ask, moment), lambda answer: then(ask, answer), ask.use_case)
+
+
+WORDS = {
+    "overview": "all loops", "today": "where the ions are", "drift": "the days past", "balance": "the account",
+    "forecast": "the days ahead", "hindcast": "the record", "plan": "the plan", "glance": "last numbers", "history": "the logbook",
+}  # fmt: skip
+
+
+def progress(use_cases: Sequence[str]) -> str:
+    """What is being worked out, and a bar of what waits behind it.
+
+    >>> progress(["today", "plan"])
+    'working out where the ions are ░░'
+    """
+    first = WORDS.get(use_cases[0], use_cases[0].replace("_", " "))
+    return f"working out {first} {'░' * len(use_cases)}"

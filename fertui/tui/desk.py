@@ -62,12 +62,14 @@ class Desk:
                 self._thread.start()
             self._waiting.notify()
 
-    def instead(self, calls: list[Call]) -> None:
-        """Forget the calls not yet begun and take these."""
+    def instead(self, calls: list[Call]) -> list[Call]:
+        """Take these calls in place of those not yet begun, which are returned."""
         with self._waiting:
+            dropped = list(self._calls)
             self._calls.clear()
         for call in calls:
             self.put(call)
+        return dropped
 
     def _next(self) -> Call:
         with self._waiting:

@@ -23,15 +23,15 @@ def point_name(point: str, layout: str = "") -> str:
     return "inlet" if point == "feed" and layout == "shared-tank" else POINT_NAMES.get(point, point)
 
 
-def digits_for(spread: float) -> int:
+def digits_for(spread: float, unit: str = "") -> int:
     """Decimals a number deserves whose range is this wide: the last one shown still means something.
 
-    >>> digits_for(1.2), digits_for(0.04), digits_for(4)
-    (1, 2, 0)
+    >>> digits_for(1.2), digits_for(0.04), digits_for(40), digits_for(4, "%")
+    (1, 2, 0, 0)
     """
     if spread <= 0:
-        return 1
-    return 0 if spread >= 3 else 1 if spread >= 0.2 else 2
+        return 0 if unit == "%" else 1
+    return 0 if spread >= (1 if unit == "%" else 10) else 1 if spread >= 0.2 else 2
 
 
 def number(value: float | None, decimals: int = 1) -> str:
@@ -69,9 +69,9 @@ def amount(value: float | None) -> str:
     return number(value, decimals)
 
 
-def estimated(value: Estimated, decimals: int | None = None) -> tuple[str, str]:
+def estimated(value: Estimated, unit: str = "") -> tuple[str, str]:
     """The value and its 80 % range as texts."""
-    places = digits_for(value.high - value.low) if decimals is None else decimals
+    places = digits_for(value.high - value.low, unit)
     return number(value.value, places), span(value.low, value.high, places)
 
 

@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Any, ClassVar, cast
 
 from textual import events
 from textual.app import App, ComposeResult
+from textual.binding import Binding
 from textual.geometry import Region, Size
 from textual.reactive import var
 from textual.screen import Screen
@@ -18,7 +19,7 @@ from textual.screen import Screen
 from fertui.refusals import FileTrouble, Refusal
 from fertui.tui import leaving
 from fertui.tui.actions import action_list
-from fertui.tui.asking import QUICK, call_for
+from fertui.tui.asking import QUICK, call_for, progress
 from fertui.tui.desk import Answer, Call, Came, Desk
 from fertui.tui.drafts import Draft, Drafts
 from fertui.tui.driver import LineGone, ThinLineDriver
@@ -105,7 +106,7 @@ class FertuiApp(App[int], inherit_bindings=False):
         self._notice = ("", "faint")
         self._model = Desk("model", open_bench, self.post_message)
         self._clerk = Desk("clerk", open_bench, self.post_message)
-        self._under_way: set[Ask] = set()
+        self._under_way: dict[Ask, Call] = {}
         self._last_number = -1
         for theme in THEMES:
             self.register_theme(theme)
@@ -142,18 +143,31 @@ class FertuiApp(App[int], inherit_bindings=False):
         self.work_out()
 
     def work_out(self) -> None:
-        """Put to the desks what the open page needs and does not have."""
+        """Put to the desks what the open page needs and does not have; what no page needs any more is not begun."""
         if self.page is None or not self.snapshot.loop:
             return
-        for ask in self.page.asks(self.snapshot):
-            if self.snapshot.lacks(ask) and ask not in self._under_way:
-                self._under_way.add(ask)
-                desk = self._clerk if ask.use_case in QUICK else self._model
-                desk.put(call_for(ask, self.moment, partial(self._answered, self._last_number)))
+        missing = [ask for ask in self.page.asks(self.snapshot) if self.snapshot.lacks(ask)]
+        self._drop([ask for ask in self._under_way if ask not in missing])
+        for ask in missing:
+            if ask not in self._under_way:
+                call = call_for(ask, self.moment, partial(self._answered, self._last_number))
+                self._under_way[ask] = call
+                (self._clerk if ask.use_case in QUICK else self._model).put(call)
         self.update_keys()
 
+    def _drop(self, asks: list[Ask]) -> None:
+        """Take calls back that have not begun."""
+        unwanted = [self._under_way[ask] for ask in asks]
+        if unwanted:
+            waiting = self._model.instead([])
+            for call in waiting:
+                if call not in unwanted:
+                    self._model.put(call)
+            begun = {ask: call for ask, call in self._under_way.items() if not (call in waiting and call in unwanted)}
+            self._under_way = begun
+
     def _answered(self, known: int, ask: Ask, answer: Answer) -> None:
-        self._under_way.discard(ask)
+        self._under_way.pop(ask, None)
         fresh = self.snapshot.with_answer(ask, answer)
         self.snapshot = fresh if known == self._last_number else replace(fresh, stale=fresh.stale | {ask})
 
@@ -238,7 +252,7 @@ class FertuiApp(App[int], inherit_bindings=False):
             return
         notice, ink = self._notice
         if not notice and self._under_way:
-            notice = "working out " + ", ".join(sorted(ask.use_case for ask in self._under_way))
+            notice = progress([ask.use_case for ask in self._under_way])
         if not notice and page.below:
             notice = f"{page.below} more below"
         self.query_one(KeyLine).say(self._key_words(page), notice, ink)
@@ -246,8 +260,11 @@ class FertuiApp(App[int], inherit_bindings=False):
     def _key_words(self, page: View) -> list[tuple[str, str]]:
         """Keys to show: those of the page first, each action once."""
         own = {binding.id for bindings in page._bindings.key_to_bindings.values() for binding in bindings}
-        shown = {a.binding.id: a.binding for a in reversed(self.screen.active_bindings.values()) if a.binding.show}
-        ordered = sorted((*shown.values(),), key=lambda binding: binding.id not in own)
+        shown: dict[str | None, Binding] = {}
+        for active in self.screen.active_bindings.values():
+            if active.binding.show:
+                shown.setdefault(active.binding.id, active.binding)
+        ordered = sorted(shown.values(), key=lambda binding: binding.id not in own)
         if self.query_one(Stage).piled:
             ordered = [binding for binding in ordered if binding.id in own]
         return [(key_name(binding.key), binding.description) for binding in ordered]
@@ -359,13 +376,15 @@ class FertuiApp(App[int], inherit_bindings=False):
         if answer.value is None:
             self.say_at_length(f"No {name} sheet", answer.trouble)
             return
+        from fertui.workbench.carrying_out import acids_of
+
         sheet, loop = answer.value, self.snapshot.loop
 
         def show(_: float = 0.0) -> None:
             page = f"{name}_page"
             self.clerk(lambda bench: getattr(bench, page)(sheet, loop), lambda page: self.show_paper(name, page), name)
 
-        if name == "acid":
+        if acids_of(sheet):
             self.call_next(release, self, sheet, sheet.cautions, show)
         else:
             show()

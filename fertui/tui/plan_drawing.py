@@ -12,6 +12,7 @@ from fertui.tui.snapshot import Snapshot
 
 if TYPE_CHECKING:
     from fertui.planning.values import Plan
+    from fertui.planning.weighing import Weighing
     from fertui.workbench.carrying_out import PlanItem
 
 Local = Callable[[datetime], datetime]
@@ -46,14 +47,8 @@ def draw_plan(
         rows += _marked("act", f"No plan reaches it: {plan.reason}", width)
     if plan.sample_first:
         rows += _marked("watch", "The range is wider than the band: take a sample first, then plan.", width)
-    rows += [
-        *_recipe(plan, snapshot.unit, width),
-        *_doses(plan, local, width),
-        *_acid(plan, held, local),
-        *_renewal(plan, width),
-        BLANK,
-    ]
-    rows += _outcome(plan, snapshot.unit)
+    rows += [*_recipe(plan, snapshot.unit, width), *_doses(plan, local, width), *_acid(plan, held, local), BLANK]
+    rows += [*_outcome(plan, snapshot.unit), BLANK, *_tanks(plan, held, width), *_renewal(plan, width)]
     for binding in plan.binding:
         source = f" ({literal(binding.source)})" if binding.source else ""
         rows += _marked(
@@ -99,11 +94,32 @@ def _recipe(plan: Plan, unit: str, width: int) -> list[Line]:
         cells.append(Span(fit(f" {name} {amount(shown_value)}{moved}", 19), "strong" if moved else "plain"))
     per_row = max(1, (width - 1) // 19)
     rows += [line(*cells[start : start + per_row]) for start in range(0, len(cells), per_row)]
-    if recipe.sheet is not None:
-        for tank in recipe.sheet.tanks:
-            salts = ", ".join(f"{each.salt} {each.kg:g} kg" for each in tank.salts)
-            rows += _texts(f"{tank.name} {tank.letter} {tank.litres:g} L".replace("  ", " "), [salts], width)
     return rows
+
+
+def _tanks(plan: Plan, held: bool, width: int) -> list[Line]:
+    """What the stock tanks of the next recipe are mixed from; acids only once they are released."""
+    if plan.recipe is None or plan.recipe.sheet is None:
+        return []
+    from fertui.workbench.carrying_out import acids_of
+
+    acids = {name for name, _ in acids_of(plan)} if held else set()
+    rows: list[Line] = []
+    for tank in plan.recipe.sheet.tanks:
+        salts = [f"{each.salt} {'held back, k' if each.salt in acids else weighed(each)}" for each in tank.salts]
+        letter = f" ({tank.letter})" if tank.letter else ""
+        rows += _texts(f"{tank.name}{letter}, {tank.litres:g} L", [", ".join(salts)], width)
+    return rows
+
+
+def weighed(each: Weighing) -> str:
+    """What goes in, by the measure it is taken with: litres of a liquid, kg of a salt, to what can be measured.
+
+    >>> from types import SimpleNamespace
+    >>> weighed(SimpleNamespace(litres=None, kg=45.6))
+    '45.6 kg'
+    """
+    return f"{each.litres:.4g} L" if each.litres is not None else f"{each.kg:.5g} kg"
 
 
 def _doses(plan: Plan, local: Local, width: int) -> list[Line]:
@@ -115,11 +131,11 @@ def _doses(plan: Plan, local: Local, width: int) -> list[Line]:
 
 
 def _acid(plan: Plan, held: bool, local: Local) -> list[Line]:
-    if plan.acid and held:
+    if held:
         return [
             line(
                 Span(" ! ", "act"),
-                f"{len(plan.acid)} steps with acid are held back: ",
+                "What holds acid is held back: ",
                 Span("k", "accent"),
                 " shows their cautions and asks for the label.",
             )
@@ -139,7 +155,7 @@ def _renewal(plan: Plan, width: int) -> list[Line]:
         f"renew {plan.renewal.litres:.0f} L: {amount(plan.renewal.kg_n)} kg N and {amount(plan.renewal.kg_p)} kg P go; the year comes to {amount(plan.renewal.year_kg_n)} kg N",
         width,
     )
-    return rows + _texts("or", [option.text for option in plan.renewal.options], width)
+    return rows + [row for option in plan.renewal.options for row in _texts(option.name, [option.text], width)]
 
 
 def _outcome(plan: Plan, unit: str) -> list[Line]:
@@ -156,7 +172,7 @@ def _outcome(plan: Plan, unit: str) -> list[Line]:
             if value is None:
                 cells.append(col("-", 18))
                 continue
-            middle, reach = estimated(value)
+            middle, reach = estimated(value, name)
             ink = standing(value)
             label, band = name, band_words(value.band)
             cells.append(

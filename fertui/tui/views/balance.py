@@ -60,9 +60,9 @@ class BalanceView(View):
         "'unexpl.' is what the last analysis found beyond everything logged: unlogged water or stock, a meter that is off, a wrong volume."
     )
     BINDINGS: ClassVar[list[Any]] = [
-        Binding("up", "move(0,-1)", "ion", id="balance.up", tooltip="The ion above."),
+        Binding("up", "move(0,-1)", "ion above", show=False, id="balance.up", tooltip="The ion above."),
         Binding("down", "move(0,1)", "ion below", show=False, id="balance.down", tooltip="The ion below."),
-        Binding("left", "move(-1,0)", "cause", id="balance.left", tooltip="The cause before."),
+        Binding("left", "move(-1,0)", "cause before", show=False, id="balance.left", tooltip="The cause before."),
         Binding("right", "move(1,0)", "next cause", show=False, id="balance.right", tooltip="The next cause."),
         Binding(
             "enter", "entries", "entries", id="balance.entries", tooltip="The entries the chosen number comes from."

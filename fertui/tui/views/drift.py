@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from datetime import datetime, timedelta
 from typing import TYPE_CHECKING, Any, ClassVar
 
@@ -17,6 +18,8 @@ if TYPE_CHECKING:
     from fertui.workbench.drift import Drift, Series
 
 PERIODS = (14, 28, 90)
+ROUTINE_SHARE = 0.3
+"""Part of the days from which something done is routine and would hide the other letters under the chart."""
 WIDE = 112
 
 
@@ -27,7 +30,7 @@ class DriftView(View):
     HELP = (
         "One quantity over time. The dots are the estimate, the shade its 80 % range, the diamonds what was measured, "
         "the dashed lines the band. Letters under the chart are what was done: A analysis, D dose, B batch, R recipe, "
-        "S set point, L bleed (let go), H acid, C crop, X disinfection, * several. "
+        "S set point, L bleed (let go), H acid, C crop, X disinfection, * several; what is done every other day or more is left out. "
         "Tab chooses the quantity, Left and Right move the cursor by a day, Up and Down by a week, Home and End to its ends, z changes the period. "
         "The line under the chart reads the values where the cursor stands."
     )
@@ -135,7 +138,9 @@ def in_unit(series: Series, unit: str) -> Series:
 
 
 def _curve(series: Series, drift: Drift, now: datetime, days: int) -> Curve:
-    marks = tuple((mark.at, MARK_LETTERS.get(mark.kind, "?")) for mark in drift.marks)
+    counted = Counter(mark.kind for mark in drift.marks)
+    routine = {kind for kind, times in counted.items() if times > days * ROUTINE_SHARE}
+    marks = tuple((mark.at, MARK_LETTERS.get(mark.kind, "?")) for mark in drift.marks if mark.kind not in routine)
     values = tuple((v.value, v.low, v.high) for v in series.values)
     band = series.band or (None, None)
     return Curve(
@@ -158,7 +163,7 @@ def _reading(series: Series, drift: Drift, moment: datetime, width: int) -> Line
     words: list[str | Span] = [Span(f" {moment:%a %-d %b}  ", "strong")]
     if series.times:
         index = nearest(series.times, moment)
-        value, reach = estimated(series.values[index])
+        value, reach = estimated(series.values[index], series.unit)
         words += [Span(value, "strong"), f" ({reach}) {series.unit}"]
     close = [(at, value) for at, value in series.measured if abs(at - moment) <= timedelta(hours=18)]
     if close:
@@ -179,7 +184,7 @@ def _table(drift: Drift, unit: str, moment: datetime) -> list[Line]:
     for series in (in_unit(each, unit) for each in drift.series):
         if not series.times:
             continue
-        value, reach = estimated(series.values[nearest(series.times, moment)])
+        value, reach = estimated(series.values[nearest(series.times, moment)], series.unit)
         rows.append(
             filled(
                 line(

@@ -31,7 +31,7 @@ class ForecastView(View):
         "Every number has its 80 % range. 'leaves' is when a value leaves its band: middle and 80 % range of the forecasts; "
         "the percentage is how likely it is out at any time until the horizon. "
         "l c s f k o suppose other light, crop water, source water, feed EC, bleed or recipe: then old and new stand side by side, "
-        "and Backspace takes the supposition back. Up and Down choose a row, Enter shows it in the chart. "
+        "and Backspace takes the supposition back. Up and Down choose a row, Enter shows it in the chart, j changes the point. "
         "g shows the record: what past forecasts said and what the laboratory then found, beside 'no change'."
     )
     BINDINGS: ClassVar[list[Any]] = [
@@ -40,6 +40,9 @@ class ForecastView(View):
             "down", "down", "next row", show=False, id="forecast.down", tooltip="The row below, shown in the chart."
         ),
         Binding("z", "horizon", "horizon", id="forecast.horizon", tooltip="7, 14 or 28 days ahead."),
+        Binding(
+            "j", "point", "point", show=False, id="forecast.point", tooltip="The next point: root zone, drip, drain."
+        ),
         Binding("l", "suppose('light')", "light", id="forecast.light", tooltip="What if the light is ...?"),
         Binding("c", "suppose('crop')", "crop water", id="forecast.crop", tooltip="What if the crop takes ...?"),
         Binding(
@@ -71,6 +74,7 @@ class ForecastView(View):
     def __init__(self) -> None:
         super().__init__()
         self.horizon, self.row, self.charted = 14, 0, 0
+        self.point, self.point_number = "", 0
         self.supposed: dict[str, str] = {}
 
     def _ask(self, snapshot: Snapshot, supposed: bool = False) -> Ask:
@@ -89,7 +93,7 @@ class ForecastView(View):
         ahead: Forecast | None = snapshot.get(self._ask(snapshot))
         if ahead is None:
             return waiting(snapshot, self._ask(snapshot), "the days ahead", width)
-        rows = rows_of(ahead)
+        rows = self._of_point(ahead, snapshot)
         if not rows:
             return [BLANK, line(" ", Span("Nothing can be said of the days ahead yet: log an analysis (a).", "watch"))]
         self.row = max(0, min(self.row, len(rows) - 1))
@@ -104,17 +108,30 @@ class ForecastView(View):
         rest = [*self._supposed_words(), *_assumed(ahead, min(width, 80))]
         return beside([*table, BLANK, *rest], chart, 80, 1) if width >= WIDE else [*table, BLANK, *chart, *rest]
 
+    def _of_point(self, ahead: Forecast, snapshot: Snapshot) -> list[LeavesBand]:
+        """What may leave a band at the point shown, the managed point first."""
+        from fertui.workbench.glance import managed_point
+
+        points = list(dict.fromkeys(each.point for each in ahead.leaves_band))
+        managed = managed_point(snapshot.site.loop(snapshot.loop))
+        points.sort(key=lambda point: point != managed)
+        self.point = points[self.point_number % len(points)] if points else ""
+        return [each for each in ahead.leaves_band if each.point == self.point]
+
     def _title(self, ahead: Forecast, width: int) -> list[Line]:
         inputs = {"plan": "with the plan entered", "routine": "as logged lately"}.get(ahead.inputs, ahead.inputs)
         return [
-            line(Span(f" {self.horizon} days ahead, {inputs}", "title"), Span("   80 % range in brackets", "faint"))
+            line(
+                Span(f" {point_name(self.point)}, {self.horizon} days ahead, {inputs}", "title"),
+                Span("   80 % range in brackets", "faint"),
+            )
         ]
 
     def _table(
         self, rows: list[LeavesBand], ahead: Forecast, other: Forecast | None, unit: str, width: int
     ) -> list[Line]:
         heads = ("now", f"in {self.horizon} days") if other is None else (f"in {self.horizon} d, as is", "as supposed")
-        head = line(col("", 19), col(heads[0], 18, "faint"), col(heads[1], 19, "faint"), Span("  leaves band", "faint"))
+        head = line(col("", 15), col(heads[0], 17, "faint"), col(heads[1], 17, "faint"), Span("  leaves band", "faint"))
         table = [head]
         supposed = {} if other is None else {(each.point, each.what): each for each in other.leaves_band}
         for index, each in enumerate(rows):
@@ -172,6 +189,11 @@ class ForecastView(View):
         self.redraw()
         self.fertui.work_out()
 
+    def action_point(self) -> None:
+        """The next point."""
+        self.point_number += 1
+        self.redraw()
+
     async def action_suppose(self, name: str) -> None:
         """Ask for a supposition."""
         what = WHAT_IFS[name]
@@ -204,11 +226,6 @@ class ForecastView(View):
         await self.fertui.open_page(RecordPage())
 
 
-def rows_of(ahead: Forecast) -> list[LeavesBand]:
-    """What may leave a band at any point, those of the managed point first as the forecast orders them."""
-    return list(ahead.leaves_band)
-
-
 def _value(state: PointState, what: str) -> Estimated | None:
     from fertui.workbench.today import reading_of
 
@@ -234,10 +251,10 @@ def _in_unit(value: Estimated | None, what: str, unit: str) -> tuple[Estimated |
     return replace(value, band=band, **numbers), shown(what, 1.0, unit)[1]  # type: ignore[arg-type]
 
 
-def _words(value: Estimated | None) -> str:
+def _words(value: Estimated | None, unit: str) -> str:
     if value is None:
         return "-"
-    middle, reach = estimated(value)
+    middle, reach = estimated(value, unit)
     return f"{middle} ({reach})"
 
 
@@ -258,9 +275,9 @@ def _row(
     ink = OUT if out else LEAVING if probability >= 0.1 else "good"
     likely = "" if out or probability <= 0 else f" {100 * probability:.0f} %"
     label = f" {each.what} {name}".replace(" share %", " share, %")
-    words = in_words(leaving, days).replace("out since ", "since ")
+    words = in_words(leaving, days)
     return line(
-        col(label, 19, "chosen" if chosen else "strong", right=False), col(_words(left), 18), col(_words(right), 19),
+        col(label, 15, "chosen" if chosen else "strong", right=False), col(_words(left, name), 17), col(_words(right, name), 17),
         Span(f"  {MARKS[ink]} {words}{likely}", ink if ink != "good" else "plain"),
     )  # fmt: skip
 

@@ -71,6 +71,11 @@ class PlanView(View):
         found: Plan | None = self.fertui.snapshot.get(self._ask(self.fertui.snapshot))
         return found
 
+    def _holds_acid(self, plan: Plan) -> bool:
+        from fertui.workbench.carrying_out import acids_of
+
+        return bool(acids_of(plan))
+
     def items(self, snapshot: Snapshot) -> list[PlanItem]:
         """Accepted steps, those still to do first."""
         found = snapshot.get(Ask("open_plans", snapshot.loop)) or ()
@@ -84,7 +89,7 @@ class PlanView(View):
         plan, ask = self.plan(), self._ask(snapshot)
         if plan is None:
             return [*rows, *waiting(snapshot, ask, "the plan", width)]
-        held = bool(plan.acid) and self.released is not plan
+        held = self._holds_acid(plan) and self.released is not plan
         wishes = [f"without {', '.join(self.without)}"] if self.without else []
         wishes += [f"at most {SALTS[self.salts]} salts"] if self.salts else []
         wishes += [f"at most {STEPS[self.steps]} steps"] if self.steps else []
@@ -142,7 +147,7 @@ class PlanView(View):
     async def action_acknowledge(self) -> None:
         """Read the cautions of the acid steps."""
         plan = self.plan()
-        if plan is not None and plan.acid and self.released is not plan:
+        if plan is not None and self._holds_acid(plan) and self.released is not plan:
             await self._released(lambda: self.fertui.say("The acid steps are released.", "good"))
         elif plan is not None:
             await self.fertui.open_page(
@@ -154,7 +159,7 @@ class PlanView(View):
         plan = self.plan()
         if plan is None:
             return
-        if not plan.acid or self.released is plan:
+        if not self._holds_acid(plan) or self.released is plan:
             then()
             return
 

@@ -140,11 +140,15 @@ def _circumstances(state: Today) -> list[Line]:
         parts.append(line(f"drain {number(state.drain_pct, 0)} %"))
     if state.light_sum_j_per_cm2 is not None:
         parts.append(line(f"light {number(state.light_sum_j_per_cm2, 0)} J/cm2"))
-    if state.stock_days_left:
-        parts.append(line("stock left"))
+    words: list[str | Span] = []
     for tank, days in state.stock_days_left.items():
         ink = "act" if days < 1 else "watch" if days < 3 else "plain"
-        parts.append(line(literal(tank) + " ", Span(f"{number(days)} days", ink)))
+        words += [
+            ", " if words else "stock left: ",
+            literal(tank) + " ",
+            Span(f"{number(days, 0 if days >= 10 else 1)} days", ink),
+        ]
+    parts.append(line(*words))
     return parts
 
 
@@ -187,7 +191,7 @@ def gauges(state: Today, snapshot: Snapshot, width: int) -> list[Line]:
     ]
     for each in state.gauges:
         label, value, limits = _amounts(each, point, snapshot.unit)
-        ink = standing(each.now) or "faint"
+        ink = _gauge_ink(each)
         spark = (charts.course(each.course, each.today_index, course_width), " ") if course_width else ((), "")
         picture = charts.gauge(each.now, gauge_width, ink) if gauge_width else BLANK
         row = line(
@@ -199,6 +203,13 @@ def gauges(state: Today, snapshot: Snapshot, width: int) -> list[Line]:
         mark = Span(f"{MARKS[ink]} {each.leaves}", ink if ink != "good" else "plain")
         rows.append(line(*row, *picture, " " if gauge_width else "", *spark[0], spark[1], mark))
     return rows
+
+
+def _gauge_ink(each: Gauge) -> str:
+    """Out, inside, or on its way out within the days looked ahead."""
+    ink = standing(each.now) or "faint"
+    leaving = bool(each.leaves) and not each.leaves.startswith("not in")
+    return "watch" if ink == "good" and leaving else ink
 
 
 def _room(width: int) -> tuple[int, int]:
@@ -269,11 +280,12 @@ def _loop_block(name: str, snapshot: Snapshot, state: Today | None, chosen: bool
         return [*rows, line(" ", Span("Working out where the ions are.", "faint"))]
     cells: list[Line] = []
     for each in state.gauges:
-        ink = standing(each.now) or "faint"
-        digits = 0 if each.unit == "%" else None
+        ink = _gauge_ink(each)
         cells.append(
             line(
-                Span(f"{MARKS[ink]} ", ink), f"{each.what} ", Span(f"{estimated(each.now, digits)[0]} {each.unit}", ink)
+                Span(f"{MARKS[ink]} ", ink),
+                f"{each.what} ",
+                Span(f"{estimated(each.now, each.unit)[0]} {each.unit}", ink),
             )
         )
     rows += _flow(cells, width)
