@@ -17,7 +17,8 @@ from fertui.logbook.codec import check_storable, moment_text
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import LogbookError, StoreError
 from fertui.logbook.files import check_regular, check_whole, quoted
-from fertui.logbook.store import FIRST_HASH, Logbook, entry_of_row, link_of, select_entry, select_values, value_of_row
+from fertui.logbook.rows import entry_of_row, select_entry, select_values, value_of_row
+from fertui.logbook.store import FIRST_HASH, Logbook, link_of
 
 DAMAGED = "damaged in the file"
 """Mark of an entry that was lost, or that is not what its link in the chain says."""

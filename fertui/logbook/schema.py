@@ -35,6 +35,7 @@ CREATE TABLE entries (
 ) STRICT;
 CREATE UNIQUE INDEX entries_superseded ON entries(supersedes) WHERE supersedes IS NOT NULL;
 CREATE INDEX entries_by_time ON entries(at, number);
+CREATE INDEX entries_by_kind ON entries(kind, at, number);
 CREATE TABLE entry_values (
   entry    INTEGER NOT NULL REFERENCES entries(number),
   position INTEGER NOT NULL,

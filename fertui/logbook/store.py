@@ -6,36 +6,38 @@ import hashlib
 import os
 import sqlite3
 import threading
+import time
 from collections.abc import Iterable, Iterator, Sequence
 from contextlib import closing, contextmanager
 from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
-from typing import Any
 
 from fertui.logbook import schema
-from fertui.logbook.codec import VALUE_FIELDS, check_storable, line_of, moment, moment_text, settled
+from fertui.logbook.codec import VALUE_FIELDS, check_storable, line_of, moment_text, settled
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import DamageError, LogbookError, StoreError
 from fertui.logbook.files import check_regular, check_whole, create_private, publish, quoted
+from fertui.logbook.rows import (
+    COLUMNS,
+    INSERT_ENTRY,
+    INSERT_VALUE,
+    conditions,
+    entry_of_row,
+    select_entry,
+    select_values,
+    value_of_row,
+)
 
 FILE_NAME = "logbook.sqlite3"
 BUSY_SECONDS = 5.0
+RETRY_SECONDS = 0.001
 FIRST_HASH = "0" * 64
 
-_COLUMNS = (
-    "number", "kind", "loop", "at", "entered", "by", "point", "zone", "method", "instrument", "note", "doubtful",
-    "supersedes", "why", "void", "whole_day", "flags",
-)  # fmt: skip
-_SELECT = "SELECT " + ", ".join(f"e.{column}" for column in _COLUMNS)
-_SELECT_VALUES = "SELECT v.entry, " + ", ".join(f"v.{name}" for name in VALUE_FIELDS)
 _CHUNK = 1000
-_INSERT = f"INSERT INTO entries ({', '.join(_COLUMNS)}, hash) VALUES ({', '.join('?' * (len(_COLUMNS) + 1))})"
-_VALUE_COLUMNS = ("entry", "position", *VALUE_FIELDS)
-_INSERT_VALUE = (
-    f"INSERT INTO entry_values ({', '.join(_VALUE_COLUMNS)}) VALUES ({', '.join('?' * len(_VALUE_COLUMNS))})"
-)
+_AT_ONCE = 500
+_MOST_KEPT = 200_000
 
 
 class Logbook:
@@ -47,6 +49,7 @@ class Logbook:
         self.writable = writable
         self._connection = connection
         self._lock = threading.RLock()
+        self._seen: dict[int, Entry] = {}
 
     @classmethod
     def create(cls, path: str | Path) -> Logbook:
@@ -114,7 +117,7 @@ class Logbook:
         ``known``: as the book stood then: entries and corrections made later are hidden.
         """
         known_text = moment_text(known) if known is not None else "9"
-        where, given = _where(loop, kinds, since, at)
+        where, given = conditions(loop, kinds, since, at)
         where += (
             "e.void = 0",
             "e.entered <= ?",
@@ -131,7 +134,7 @@ class Logbook:
         known: datetime | None = None,
     ) -> tuple[Entry, ...]:
         """Every entry verbatim, superseded, struck and striking ones too, in the order of their numbers."""
-        where, given = _where(loop, kinds, since, at)
+        where, given = conditions(loop, kinds, since, at)
         if known is not None:
             where, given = (*where, "e.entered <= ?"), [*given, moment_text(known)]
         return self._read(where, given, "e.number")
@@ -147,7 +150,7 @@ class Logbook:
         self, kind: str, loop: str | None = None, before: datetime | None = None, point: str | None = None
     ) -> Entry | None:
         """The latest effective entry of a kind, of a point where one is given, before that time."""
-        where, given = _where(loop, (kind,), None, before)
+        where, given = conditions(loop, (kind,), None, before)
         where += ("e.void = 0", "NOT EXISTS (SELECT 1 FROM entries c WHERE c.supersedes = e.number)")
         if point is not None:
             where, given = (*where, "e.point = ?"), [*given, point]
@@ -166,7 +169,8 @@ class Logbook:
         """Every entry as written that is there at the start, one after the other, while the book may grow."""
         last = self.last_number()
         for first in range(1, last + 1, _CHUNK):
-            yield from self._read(("e.number BETWEEN ? AND ?",), [first, min(first + _CHUNK - 1, last)], "e.number")
+            numbers = ("e.number BETWEEN ? AND ?",), [first, min(first + _CHUNK - 1, last)]
+            yield from self._read(*numbers, "e.number")
 
     def linked(self) -> Iterator[tuple[Entry, str]]:
         """Every entry as written with the link of the chain that the file holds for it."""
@@ -241,14 +245,14 @@ class Logbook:
 
     def _insert(self, entry: Entry, chain: str) -> str:
         link = link_of(chain, entry)
-        row = [getattr(entry, column) for column in _COLUMNS]
+        row = [getattr(entry, column) for column in COLUMNS]
         row[3:5] = moment_text(entry.at), moment_text(entry.entered)
-        self._connection.execute(_INSERT, [*row, link])
+        self._connection.execute(INSERT_ENTRY, [*row, link])
         values = (
             [entry.number, position, *(getattr(value, name) for name in VALUE_FIELDS)]
             for position, value in enumerate(map(settled, entry.values))
         )
-        self._connection.executemany(_INSERT_VALUE, values)
+        self._connection.executemany(INSERT_VALUE, values)
         return link
 
     # the file
@@ -258,7 +262,7 @@ class Logbook:
         if not self.writable:
             raise StoreError(f"{self.path} cannot be written here (read-only file or folder); nothing was recorded.")
         with self._lock, _spoken(self.path):
-            self._connection.execute("BEGIN IMMEDIATE")
+            self._begin()
             try:
                 yield self._connection
                 self._connection.execute("COMMIT")
@@ -266,6 +270,22 @@ class Logbook:
                 if self._connection.in_transaction:
                     self._connection.execute("ROLLBACK")
                 raise
+
+    def _begin(self) -> None:
+        """Take the write lock. SQLite's own wait grows to 0.1 s a try, which starves a session beside busy ones."""
+        deadline = time.monotonic() + BUSY_SECONDS
+        self._connection.execute("PRAGMA busy_timeout = 0")
+        try:
+            while True:
+                try:
+                    self._connection.execute("BEGIN IMMEDIATE")
+                    return
+                except sqlite3.OperationalError as error:
+                    if not error.sqlite_errorname.startswith("SQLITE_BUSY") or time.monotonic() > deadline:
+                        raise
+                time.sleep(RETRY_SECONDS)
+        finally:
+            self._connection.execute(f"PRAGMA busy_timeout = {int(1000 * BUSY_SECONDS)}")
 
     def _migrate(self) -> None:
         with self._writing() as connection:
@@ -281,23 +301,28 @@ class Logbook:
         return None if row is None else row[0]
 
     def _read(self, where: Sequence[str], given: Sequence[object], order: str) -> tuple[Entry, ...]:
-        chosen = f"FROM entries e WHERE {' AND '.join(where) or '1'}"
-        picked = f"{_SELECT} {chosen} ORDER BY {order}"
-        values_of = (
-            f"{_SELECT_VALUES} FROM ({picked}) e JOIN entry_values v ON v.entry = e.number ORDER BY v.entry, v.position"
-        )
+        """Entries by condition. An entry never changes, so those read before are not read again."""
+        picked = f"SELECT e.number FROM entries e WHERE {' AND '.join(where) or '1'} ORDER BY {order}"
         with self._lock, _spoken(self.path):
-            self._connection.execute("BEGIN")
+            numbers = [row[0] for row in self._connection.execute(picked, given)]
+            missing = sorted(set(numbers) - self._seen.keys())
+            if len(self._seen) + len(missing) > _MOST_KEPT:
+                missing, self._seen = sorted(set(numbers)), {}
+            for first in range(0, len(missing), _AT_ONCE):
+                self._load(missing[first : first + _AT_ONCE])
             try:
-                rows = self._connection.execute(picked, given).fetchall()
-                value_rows = self._connection.execute(values_of, given).fetchall()
-            finally:
-                self._connection.execute("COMMIT")
+                return tuple(self._seen[number] for number in numbers)
+            except KeyError as lost:
+                raise DamageError(f"{self.path}: {_DAMAGED} (entry {lost} is not where its index says).") from lost
+
+    def _load(self, numbers: Sequence[int]) -> None:
+        among = f"IN ({', '.join('?' * len(numbers))})"
         values: dict[int, list[Value]] = {}
-        for row in value_rows:
+        for row in self._connection.execute(select_values(f"v.entry {among}"), numbers):
             values.setdefault(row[0], []).append(value_of_row(row))
         try:
-            return tuple(entry_of_row(row, tuple(values.get(row[0], ()))) for row in rows)
+            for row in self._connection.execute(select_entry(f"e.number {among}"), numbers):
+                self._seen[row[0]] = entry_of_row(row, tuple(values.get(row[0], ())))
         except (ValueError, TypeError) as error:
             raise DamageError(f"{self.path}: {_DAMAGED} ({error}).") from error
 
@@ -305,48 +330,6 @@ class Logbook:
 def link_of(chain: str, entry: Entry) -> str:
     """SHA-256 over the link before and the entry's line: a changed or lost entry breaks every link after it."""
     return hashlib.sha256(f"{chain}\n{line_of(entry)}".encode()).hexdigest()
-
-
-def select_entry(where: str) -> str:
-    """Query for the columns that ``entry_of_row`` takes."""
-    return f"{_SELECT} FROM entries e WHERE {where}"
-
-
-def select_values(where: str) -> str:
-    """Query for the values of an entry in their order: entry, then the fields of ``Value``."""
-    return f"{_SELECT_VALUES} FROM entry_values v WHERE {where} ORDER BY v.entry, v.position"
-
-
-def value_of_row(row: Sequence[Any]) -> Value:
-    """The value of one row of ``select_values``."""
-    _, name, text, number, unit, species, below = row
-    return Value(name, text, number, unit, species, bool(below))
-
-
-def entry_of_row(row: Sequence[Any], values: tuple[Value, ...]) -> Entry:
-    """The entry of one row of ``entries``."""
-    plain = dict(zip(_COLUMNS, row, strict=True))
-    plain |= {"at": moment(plain["at"]), "entered": moment(plain["entered"]), "values": values}
-    return Entry(**{**plain, "void": bool(plain["void"]), "whole_day": bool(plain["whole_day"])})
-
-
-def _where(
-    loop: str | None, kinds: Iterable[str] | None, since: datetime | None, at: datetime | None
-) -> tuple[tuple[str, ...], list[object]]:
-    where: list[str] = []
-    given: list[object] = []
-    if loop is not None:
-        where.append("e.loop IN (?, '')")
-        given.append(loop)
-    if kinds is not None:
-        wanted = tuple(kinds)
-        where.append(f"e.kind IN ({', '.join('?' * len(wanted))})")
-        given.extend(wanted)
-    for limit, condition in ((since, "e.at >= ?"), (at, "e.at <= ?")):
-        if limit is not None:
-            where.append(condition)
-            given.append(moment_text(limit))
-    return tuple(where), given
 
 
 def _connect(path: Path, address: str) -> sqlite3.Connection:
