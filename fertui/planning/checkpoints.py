@@ -117,14 +117,14 @@ def _slopes(each: Checkpoint) -> tuple[Array, Array, Array, Array]:
 def _ec_parts(each: Checkpoint, checkpoints: Sequence[Checkpoint], x0: Array) -> list[Part]:
     ec, _, slope, _ = _slopes(each)
     row = slope @ each.slope
-    most = max(each.goal.ec_most, float(ec_of(each, each.base)))
+    most = max(each.goal.ec_most - MARGIN["EC"], float(ec_of(each, each.base)))
     source = each.goal.sources.get("EC", "")
     parts: list[Part] = [(row, most - float(ec) + float(row @ x0), f"EC, {each.name}", most, "mS/cm", source)]
     if each.before >= 0:
         earlier = checkpoints[each.before]
         ec_before, _, slope_before, _ = _slopes(earlier)
         rise = row - slope_before @ earlier.slope
-        room = each.goal.ec_step - float(ec - ec_before) + float(rise @ x0)
+        room = each.goal.ec_step - MARGIN["EC"] - float(ec - ec_before) + float(rise @ x0)
         parts.append((rise, room, f"EC step, {each.name}", each.goal.ec_step, "mS/cm", "common practice"))
     return parts
 
@@ -145,7 +145,7 @@ def _ion_parts(each: Checkpoint, x0: Array) -> list[Part]:
 def _mineral_parts(each: Checkpoint, x0: Array) -> list[Part]:
     _, index, _, slope = _slopes(each)
     without = indices_of(each, each.base)
-    most = np.maximum([GYPSUM_MOST, BRUSHITE_MOST], without)
+    most = np.maximum(np.array([GYPSUM_MOST, BRUSHITE_MOST]) - MARGIN["SI"], without)
     parts: list[Part] = []
     for i, mineral in enumerate(("gypsum", "brushite")):
         row = slope[:, i] @ each.slope
@@ -175,8 +175,13 @@ def exceeded(each: Checkpoint, composition: Array, before: Array | None = None) 
     return [each for each in found if each[1] > each[2] + TOLERANCE[each[0]]]
 
 
-TOLERANCE = {"EC": 5e-3, "EC step": 5e-3, "gypsum": 1e-2, "brushite": 1e-2, "NH4": 1e-6, "Na": 1e-6, "Cl": 1e-6}
-"""How far the full model may pass a limit before the plan is taken back: half the last digit shown."""
+SHARE_WEIGHT = 5.0
+"""What a share off by its whole counts beside an ion off by its whole: a point of share about as much as 5 % of an
+ion."""
+MARGIN = {"EC": 4e-3, "SI": 1e-2}
+"""Room the program keeps from a limit that is not straight, so that the full model does not find it passed."""
+TOLERANCE = {"EC": 1e-3, "EC step": 1e-3, "gypsum": 2e-3, "brushite": 2e-3, "NH4": 2e-3, "Na": 1e-2, "Cl": 1e-2}
+"""How far the full model may pass a limit before the plan is taken back: well under the last digit shown."""
 
 
 def violation_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Array, Array]:
@@ -233,22 +238,47 @@ def violation(each: Checkpoint, composition: Array) -> float:
 def misfit_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Array, Array]:
     """Rows ``matrix x + under - over = value`` of the distance to the aim, and the cost of one unit off.
 
-    Ions the target does not name count a little where they would rise; sulfate, chloride and sodium count half.
+    K, Ca and Mg are counted by their shares, whatever the strength of the solution, unless the aim was named for this
+    plan; every other ion in parts of its aim, sulfate and chloride half. Ions the target does not name count a
+    little.
     """
-    matrix, value, cost = [], [], []
+    matrix, value, cost = [np.zeros((0, len(x0)))], [np.zeros(0)], [np.zeros(0)]
     for each in checkpoints:
         if each.aim_weight <= 0.0:
             continue
-        named = ~np.isnan(each.goal.aim)
-        aim = np.where(named, each.goal.aim, each.base)
-        weight = np.where(named, 1.0, 0.1) * np.where(np.isin(IONS, ("SO4", "Cl", "Na")), 0.5, 1.0)
-        weight[INDEX["HCO3"]] = 0.0
+        weight = each.aim_weight * _weights(each)
+        if _by_shares(each):
+            weight[SHARED_AT] = 0.0
+            rows, off = _share_rows(each)
+            matrix.append(rows)
+            value.append(rows @ x0 - off)
+            cost.append(np.full(len(rows), each.aim_weight * SHARE_WEIGHT))
         matrix.append(each.slope)
-        value.append(aim - each.now + each.slope @ x0)
-        cost.append(each.aim_weight * weight / np.maximum(aim, 1.0))
-    n = len(x0)
-    return (
-        np.vstack([*matrix, np.zeros((0, n))]),
-        np.concatenate([*value, np.zeros(0)]),
-        np.concatenate([*cost, np.zeros(0)]),
-    )
+        value.append(_aim_of(each) - each.now + each.slope @ x0)
+        cost.append(weight)
+    return np.vstack(matrix), np.concatenate(value), np.concatenate(cost)
+
+
+def _aim_of(each: Checkpoint) -> Array:
+    return np.where(np.isnan(each.goal.aim), each.base, each.goal.aim)
+
+
+def _weights(each: Checkpoint) -> Array:
+    """What one mmol/L off the aim costs, shape (10,)."""
+    weight = np.where(np.isnan(each.goal.aim), 0.1, 1.0) * np.where(np.isin(IONS, ("SO4", "Cl", "Na")), 0.5, 1.0)
+    weight[INDEX["HCO3"]] = 0.0
+    return weight / np.maximum(_aim_of(each), 1.0)
+
+
+def _by_shares(each: Checkpoint) -> bool:
+    aim, now = each.goal.aim[SHARED_AT], each.now[SHARED_AT] @ CHARGE[SHARED_AT]
+    return not each.goal.named and each.point != "feed" and bool((aim > 0.0).all()) and now > NO_SHARES
+
+
+def _share_rows(each: Checkpoint) -> tuple[Array, Array]:
+    """Slopes (3, variables) and distances (3,) of the shares of K, Ca, Mg from those of the aim."""
+    z = CHARGE[SHARED_AT]
+    now, slope = z * each.now[SHARED_AT], z[:, None] * each.slope[SHARED_AT]
+    wanted = z * each.goal.aim[SHARED_AT]
+    wanted = wanted / wanted.sum()
+    return (slope - wanted[:, None] * slope.sum(axis=0)) / now.sum(), (now - wanted * now.sum()) / now.sum()

@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from fertui.chemistry.ions import INDEX, IONS, Array
-from fertui.planning.checkpoints import Checkpoint, ec_factor, ec_of, exceeded, violation
+from fertui.planning.checkpoints import NUTRIENTS_THAT_STAY, Checkpoint, ec_factor, ec_of, exceeded, violation
 from fertui.planning.dosing import Measures, coarse, look, other, settle
 from fertui.planning.goal import NH4_STOP_PH, SHARED, Goal
 from fertui.planning.programme import Solver
@@ -171,17 +171,13 @@ def dose(task: Task, runs: Runs, solver: Solver, without: Course) -> Dosed:
 
 
 def _left_undone(end: Checkpoint, move: Array) -> bool:
-    """Whether a plan leaves the shares out of their bands, or what is in excess where it is, by the straight line."""
+    """Whether a plan leaves the shares out of their bands, or nutrients in excess, by the straight line.
+
+    An ion over its limit is no reason: none of it is added, and the renewal that lowers it is advice beside the plan.
+    """
     composition = end.now + end.slope @ move
-    return (
-        violation(end, composition) > REACHED_PCT
-        or len(excess_of(composition, end.goal)) > 1
-        or _over(end, composition)
-    )
-
-
-def _over(end: Checkpoint, composition: Array) -> bool:
-    return bool((composition > np.where(np.isfinite(end.goal.most), end.goal.most, np.inf) + 1e-6).any())
+    gathered = [ion for ion in excess_of(composition, end.goal) if ion in NUTRIENTS_THAT_STAY]
+    return violation(end, composition) > REACHED_PCT or len(gathered) > 1
 
 
 def _probe(task: Task) -> Checkpoint:

@@ -11,15 +11,23 @@ from fertui.chemistry.ions import INDEX, IONS, Array, vector
 from fertui.planning.acid import AcidSheet, acid_on_shelf, source_water
 from fertui.planning.acid_steps import acid_mmol, acid_steps, tank_acid
 from fertui.planning.checkpoints import ec_of, violation
-from fertui.planning.goal import SHARED, Goal
+from fertui.planning.goal import Goal
 from fertui.planning.hand_doses import REACHED_PCT, Dosed, Task, doing_of, dose, usable
-from fertui.planning.reasons import MAJOR, arithmetic, binding, rule_of_thumb, why_salts
+from fertui.planning.reasons import (
+    MAJOR,
+    arithmetic,
+    bands_words,
+    binding,
+    held_by,
+    rule_of_thumb,
+    share_words,
+    why_salts,
+)
 from fertui.planning.renewal import LEFT_N_MMOL, excess_of, renewal_of
 from fertui.planning.request import (
     STEPS_BY_DEFAULT,
     Request,
     cautions_for,
-    out_of_band,
     staffed_days,
     vague,
 )
@@ -40,14 +48,14 @@ MISSED_PART = 0.10
 
 def hand_plan(request: Request) -> Plan:
     """Hand doses for a shared tank; no doses and the reason where a sample comes first or salts cannot do it."""
-    empty = _empty(request, Outlook(request.runs.shown(Doing())))
-    why = vague(request.before, request)
+    empty = request.empty(Outlook(request.runs.shown(Doing())))
+    why = vague(request)
     if why is not None:
         return request.counted(replace(empty, feasible=False, reason=why, sample_first=True))
     course = request.runs.settled(Doing(), 1)
     request = request.strengthened(course.ions[request.situation.managed][-1, 0])
     sheet = tank_acid(request)
-    if not request.managed.named and sheet is None and _in_order(request, empty.after_without):
+    if not request.managed.named and sheet is None and request.in_order(empty.after_without):
         words = "nothing to weigh: the shares stay in their bands and no limit is passed up to the horizon"
         return request.counted(replace(empty, notices=(words,)))
     task = _task(request, sheet)
@@ -68,22 +76,6 @@ def refill_of(request: Request) -> Array:
     """What a renewal fills up with: the make-up water, pure where the site describes none."""
     water = source_water(request.situation.site, request.situation.loop) or Composition()
     return vector(dict(water.ions))
-
-
-def _empty(request: Request, without: Outlook) -> Plan:
-    situation = request.situation
-    return Plan(
-        feasible=True, reason=None, loop=situation.loop.name, layout=situation.loop.layout, at=situation.at,
-        horizon_days=request.wishes.days, point=situation.managed, recipe=None, steps=(), acid=(), acid_sheet=None,
-        renewal=None, before=Outlook(request.before), after=without, after_without=without, binding=(),
-        rule_of_thumb=(), cautions=(),
-    )  # fmt: skip
-
-
-def _in_order(request: Request, without: Outlook) -> bool:
-    """Whether the managed point is in its bands now and at the horizon without any plan."""
-    point = request.situation.managed
-    return not any(out_of_band(points[point], request.managed) for points in (request.before, without.points))
 
 
 def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, sheet: AcidSheet | None) -> Plan:
@@ -160,7 +152,10 @@ def _why_not(request: Request, dosed: Dosed) -> str | None:
         words = over_words if named else "the limits leave salts too little room"
         parts.append(f"salts cannot do it: {words}; renew {litres:.0f} L, with the weighings listed")
     if dosed.missed_pct > REACHED_PCT:
-        parts.append(f"{_share_words(end)} at the end, outside the bands {_bands_words(goal)}; {_held_by(dosed)}")
+        parts.append(
+            f"{share_words(end)} at the end, outside the bands {bands_words(goal)}; "
+            f"{held_by(binding(dosed.checkpoints))}"
+        )
     missed = _missed_aims(end, goal)
     if missed:
         parts.append(f"with these salts {missed}")
@@ -177,24 +172,6 @@ def _missed_aims(end: Array, goal: Goal) -> str:
         if goal.wants[INDEX[ion]] and abs(end[INDEX[ion]] / goal.aim[INDEX[ion]] - 1.0) > MISSED_PART
     ]
     return ", ".join(off)
-
-
-def _share_words(composition: Array) -> str:
-    return ", ".join(f"{ion} share {part:.0f} %" for ion, part in share_pct(composition).items())
-
-
-def _bands_words(goal: Goal) -> str:
-    return ", ".join(
-        f"{ion} {100 * low:.0f}-{100 * high:.0f} %"
-        for ion, low, high in zip(SHARED, goal.share_low, goal.share_high, strict=True)
-    )
-
-
-def _held_by(dosed: Dosed) -> str:
-    held = binding(dosed.checkpoints)
-    if held:
-        return "held by " + ", ".join(each.limit for each in held)
-    return "no salt on the shelf brings what is missing"
 
 
 def _renewal(request: Request, dosed: Dosed) -> Renewal | None:
@@ -231,7 +208,7 @@ def _runner_up(task: Task, dosed: Dosed, steps: Sequence[Step]) -> RunnerUp | No
     instead = ", ".join(sorted({each.salt for each in others} - {each.salt for each in steps})) or "nothing"
     words = (
         f"without {left_out}: {instead} instead, {more:+.2f} kg in all; "
-        f"{_share_words(end)} instead of {_share_words(dosed.end)}"
+        f"{share_words(end)} instead of {share_words(dosed.end)}"
     )
     return RunnerUp(others, words)
 

@@ -55,7 +55,9 @@ def plan(
 
 def situation_of(estimate: Estimate) -> Situation:
     """The loop of an estimate as planning sees it."""
+    last = estimate.last_analysis.get(estimate.managed)
+    age = None if last is None else (estimate.at - last).total_seconds() / 86400.0
     return Situation(
         estimate.site, estimate.loop, estimate.at, estimate.managed, estimate.points(), estimate.volumes_l,
-        estimate.crop_water.value,
+        estimate.crop_water.value, age,
     )  # fmt: skip

@@ -10,6 +10,7 @@ import numpy as np
 from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
 from fertui.planning.checkpoints import Checkpoint, ec_of, indices_of
 from fertui.planning.goal import LIMITED, SHARED, Goal
+from fertui.planning.runs import share_pct
 from fertui.planning.shelf import Material
 from fertui.planning.values import Binding, Step
 
@@ -17,6 +18,7 @@ NEAR = 0.02
 """A limit binds where less than this part of it is left."""
 NEAR_INDEX = 0.05
 """The same for a saturation index."""
+OVER = "already over, none added"
 SPOKEN_MMOL = 0.005
 """Change of an ion [mmol/L] from which the arithmetic speaks of it."""
 MAJOR = ("K", "Ca", "Mg", "NO3", "SO4", "H2PO4")
@@ -31,7 +33,8 @@ def binding(points: Sequence[Checkpoint]) -> tuple[Binding, ...]:
             room = limit - value
             if room <= near and (what not in found or room < found[what][0]):
                 source = each.goal.sources.get(what, "common practice" if what == "EC step" else "")
-                found[what] = (room, Binding(f"{what}, {each.name}", limit, unit, value, source))
+                words = OVER if room < -near else each.name
+                found[what] = (room, Binding(f"{what}, {words}", limit, unit, value, source))
     return tuple(each for _, each in found.values())
 
 
@@ -153,3 +156,38 @@ def _beside(ion: str, sign: float, low: int, high: int, change_pct: Mapping[str,
     if change * sign > high + 0.5:
         return words + ": more, because the horizon is short for what root zone and medium must take up"
     return words
+
+
+def over_limit_words(end: Array, goal: Goal) -> tuple[str, ...]:
+    """Ions over their limit at the end: salts and recipes add none, and take none out.
+
+    Na itself is seldom the limit: what counts is that K, Ca and Mg stay above their least and EC below the crop's
+    stress.
+    """
+    lines = []
+    for ion in LIMITED:
+        most = goal.most[INDEX[ion]]
+        if end[INDEX[ion]] > most + 1e-6:
+            source = goal.sources.get(ion, "")
+            lines.append(
+                f"{ion} {end[INDEX[ion]]:.1f} mmol/L is over its limit of {most:g} ({source}); none is added, only "
+                "renewal or better water lowers it"
+            )
+    return tuple(lines)
+
+
+def share_words(composition: Array) -> str:
+    """Shares of a composition (10,) in words."""
+    return ", ".join(f"{ion} share {part:.0f} %" for ion, part in share_pct(composition).items())
+
+
+def bands_words(goal: Goal) -> str:
+    """The bands of the shares in words."""
+    bands = zip(SHARED, goal.share_low, goal.share_high, strict=True)
+    return ", ".join(f"{ion} {100 * low:.0f}-{100 * high:.0f} %" for ion, low, high in bands)
+
+
+def held_by(limits: Sequence[Binding]) -> str:
+    """What keeps a plan from going further."""
+    held = [each.limit for each in limits if not each.limit.endswith(OVER)]
+    return "held by " + ", ".join(held) if held else "no salt on the shelf brings what is missing"

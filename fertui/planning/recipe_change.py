@@ -22,18 +22,24 @@ from fertui.planning.checkpoints import (
     violation,
     violation_rows,
 )
-from fertui.planning.goal import NH4_PART_OF_N, NH4_STOP_PH, Goal
+from fertui.planning.goal import LIMITED, NH4_PART_OF_N, NH4_STOP_PH, Goal
 from fertui.planning.programme import Aim, Region, Solver, lexicographic
 from fertui.planning.runs import Course, Doing, Feed, Runs, Situation
 from fertui.planning.shelf import Material
+from fertui.planning.values import Binding
 
 EC_HELD = 0.03
 """How far the recipe's EC may move from where it is [mS/cm]: the last digit of a meter, nearly."""
 MOVE = 0.5
 """How far each ion of the feed is moved to see what the model answers [mmol/L]."""
+RULE, MOST_CHANGE, LEAST_CHANGE = 0.25, 0.5, 0.25
+"""A quarter of an ion is the outer end of the published rule (15-25 % where the analysis is 50 % off): beyond it an
+ion goes only for the sake of the bands, and never by more than a half, or 0.25 mmol/L where there is little of it, in
+one step."""
+BEYOND = 5.0
+"""Weight of a change beyond the rule beside distance to the aim."""
 STAY = 0.1
 """Weight of a change of the feed beside distance to the aim in the root zone: no ion moves for nothing."""
-DAILY_WEIGHT = 0.3
 MOVED = tuple(i for i, ion in enumerate(IONS) if ion != "HCO3")
 """Ions of the feed that a recipe moves; its alkalinity belongs to the water and the acid."""
 
@@ -134,7 +140,7 @@ def _checkpoints(task: RecipeTask, course: Course, without: Course, stages: Arra
                 members[0],
                 slope,
                 task.situation.ph(point),
-                weight=1.0 if last else DAILY_WEIGHT / task.horizon,
+                weight=float(last),
                 aim_weight=float(last),
                 ec_factor=ec_factor(task.situation, point),
             )  # fmt: skip
@@ -168,15 +174,17 @@ def _solved(
     out, out_high, out_cost = violation_rows(checkpoints, x0)
     aim, value, aim_cost = misfit_rows(checkpoints, x0)
     ec, ec_low, ec_high = _held(task, checkpoints, stages)
+    most, most_high = _most_changed(task)
     step, step_high = _step(task)
-    v, a, s = len(out), len(aim), len(step)
+    v, a, s, b = len(out), len(aim), len(step), len(most)
     n = count * number
+    size = n + v + 2 * a + s + b
 
     def block(rows: Array, **parts: Array) -> Array:
-        wide = np.zeros((len(rows), n + v + 2 * a + s))
+        wide = np.zeros((len(rows), n + v + 2 * a + s + b))
         wide[:, :n] = rows @ salts
         for place, part in parts.items():
-            start = {"slack": n, "under": n + v, "over": n + v + a, "moved": n + v + 2 * a}[place]
+            start = {"slack": n, "under": n + v, "over": n + v + a, "moved": n + v + 2 * a, "beyond": size - b}[place]
             wide[:, start : start + part.shape[1]] = part
         return wide
 
@@ -185,19 +193,19 @@ def _solved(
         (block(out, slack=-np.eye(v)), np.full(v, -np.inf), out_high - out @ own),
         (block(aim, under=np.eye(a), over=-np.eye(a)), value - aim @ own, value - aim @ own),
         (block(ec), ec_low - ec @ own, ec_high - ec @ own),
+        (block(most, beyond=-np.eye(b)), np.full(b, -np.inf), most_high - most @ own),
         (block(step, moved=-np.eye(s)), np.full(s, -np.inf), step_high - step @ own),
-        (
-            np.hstack([np.zeros((count, n + v + 2 * a)), _per_stage(count, s)]),
-            np.zeros(count),
-            np.full(count, _room(task)),
-        ),
+        (block(np.zeros((count, count * m)), moved=_per_stage(count, s)), np.zeros(count), np.full(count, _room(task))),
         *_ammonium(task, block, own),
     ]
     matrix, low, high = (np.concatenate(each) for each in zip(*parts, strict=True))
-    size = n + v + 2 * a + s
-    region = Region(matrix, low, high, np.zeros(size), np.full(size, np.inf), np.zeros(size, int))
-    bands = np.concatenate([np.zeros(n), out_cost, np.zeros(2 * a + s)])
-    distance = np.concatenate([np.zeros(n + v), aim_cost, aim_cost, np.zeros(s)])
+    further = np.tile(_further(task), 2)
+    region = Region(
+        matrix, low, high, np.zeros(size), np.concatenate([np.full(size - b, np.inf), further]), np.zeros(size, int)
+    )
+    bands = np.concatenate([np.zeros(n), out_cost, np.zeros(size - n - v)])
+    beyond = BEYOND / np.maximum(np.tile(task.running[list(MOVED)], 2 * count), 1.0)
+    distance = np.concatenate([np.zeros(n + v), aim_cost, aim_cost, np.zeros(s), beyond])
     aims = [Aim(bands, 1e-6), Aim(distance)] if exact else [Aim(100.0 * bands + distance)]
     found = lexicographic(solver, region, aims)
     if found is None:
@@ -239,6 +247,40 @@ def _step(task: RecipeTask) -> tuple[Array, Array]:
             rows += [row, -row]
             high += [before, -before]
     return np.array(rows), np.array(high)
+
+
+def _most_changed(task: RecipeTask) -> tuple[Array, Array]:
+    """Rows ``+-(r - running) - beyond <= rule``: how far each ion of a stage goes beyond the published step."""
+    count, m = len(task.days), len(MOVED)
+    running = task.running[list(MOVED)]
+    room = np.concatenate([np.maximum(RULE * running, LEAST_CHANGE) * (s + 1) for s in range(count)])
+    here = np.tile(running, count)
+    eye = np.eye(count * m)
+    return np.vstack([eye, -eye]), np.concatenate([here + room, np.minimum(room - here, 0.0)])
+
+
+def step_limits(task: RecipeTask, recipe: Array) -> tuple[Binding, ...]:
+    """The limits of a single step that a recipe comes up against."""
+    moved = np.abs(recipe - task.running)
+    found = []
+    for i in MOVED:
+        most = max(MOST_CHANGE * float(task.running[i]), LEAST_CHANGE)
+        if moved[i] > 0.97 * most and most > LEAST_CHANGE and IONS[i] not in LIMITED:
+            what = f"change of {IONS[i]} in one step"
+            found.append(Binding(what, most, "mmol/L", float(moved[i]), "half of what runs"))
+    strength = float((CHARGE * moved)[CHARGE > 0].sum())
+    if strength > 0.97 * _room(task):
+        found.append(Binding("strength moved in one step", _room(task), "meq/L", strength, "common practice"))
+    return tuple(found)
+
+
+def _further(task: RecipeTask) -> Array:
+    """How far beyond the rule each ion of each stage may go at most (stages x ions,) [mmol/L]; NH4, Na, Cl as they
+    must."""
+    running = task.running[list(MOVED)]
+    step = np.maximum(MOST_CHANGE * running, LEAST_CHANGE) - np.maximum(RULE * running, LEAST_CHANGE)
+    step[[IONS[i] in LIMITED for i in MOVED]] = np.inf
+    return np.concatenate([step * (s + 1) for s in range(len(task.days))])
 
 
 def _per_stage(count: int, moved: int) -> Array:

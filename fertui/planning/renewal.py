@@ -90,7 +90,7 @@ def options(
     volume = situation.volumes_l[tank]
     rows = [("top-up with salts", 0.0, False, "nothing let go; what is in excess stays")]
     if litres is not None:
-        rows.append(("part renewal", litres, reaches, f"{100 * litres / volume:.0f} % of the tank"))
+        rows.append(("part renewal", litres, reaches, f"{100 * litres / volume:.0f} % of the water"))
     rows.append(("full renewal", volume, True, "everything let go and made anew"))
     found = [_option(situation, name, amount, composition, entries, fits, text) for name, amount, fits, text in rows]
     if days_to_drink_n is not None and litres is not None:

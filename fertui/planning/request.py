@@ -18,12 +18,16 @@ from fertui.planning.goal import SHARED, Goal, goal_of
 from fertui.planning.programme import Solver
 from fertui.planning.runs import Runs, Situation
 from fertui.planning.shelf import Material, PlanningError, shelf
-from fertui.planning.values import Plan
+from fertui.planning.values import Outlook, Plan
 from fertui.site.model import Supply
 
 LONGEST_DAYS = 60
 STRENGTH = (0.5, 1.5)
 """How far an aim may be made weaker or stronger to stand at the EC the loop is run at."""
+FRESH_DAYS = 3.0
+"""Age of an analysis [d] up to which another sample says nothing new (common practice, no source)."""
+FILLING = 0.3
+"""Part of the aim's EC below which a vessel is being filled, and its aim not scaled down to what is in it."""
 STEPS_BY_DEFAULT = 3
 MOST_STEPS = 4
 
@@ -73,21 +77,35 @@ class Request:
         """A plan with what it cost."""
         return replace(found, model_runs=self.runs.count, solver_calls=self.solver.calls)
 
+    def empty(self, without: Outlook) -> Plan:
+        """A plan that does nothing, with what then comes."""
+        situation = self.situation
+        return Plan(
+            feasible=True, reason=None, loop=situation.loop.name, layout=situation.loop.layout, at=situation.at,
+            horizon_days=self.wishes.days, point=situation.managed, recipe=None, steps=(), acid=(), acid_sheet=None,
+            renewal=None, before=Outlook(self.before), after=without, after_without=without, binding=(),
+            rule_of_thumb=(), cautions=(),
+        )  # fmt: skip
+
+    def in_order(self, without: Outlook) -> bool:
+        """Whether the managed point is in its bands now and at the horizon without any plan."""
+        point = self.situation.managed
+        return not any(out_of_band(points[point], self.managed) for points in (self.before, without.points))
+
     def strengthened(self, end: Array) -> Request:
-        """The same with its aims at the strength the loop is run at, ``end`` (10,) being the managed point at the
+        """The same with its aim at the strength the loop is run at, ``end`` (10,) being the managed point at the
         horizon.
 
-        An aim named for this plan, and one right after mixing, stands as it is.
+        An aim named for this plan stands as it is, and so does that of a vessel that is only being filled.
         """
-        if self.managed.named or self.wishes.days == 0:
-            return self
         wanted = np.nan_to_num(self.managed.aim, nan=0.0)
         made = float(conductivity(wanted)) - 0.1 * wanted[INDEX["Na"]]
         held = float(conductivity(np.maximum(end, 0.0))) - 0.1 * float(end[INDEX["Na"]])
-        factor = float(np.clip(held / made, *STRENGTH)) if made > 0.1 else 1.0
+        if self.managed.named or made <= 0.0 or held < FILLING * made:
+            return self
         point = self.situation.managed
-        alike = {name: goal.scaled(factor) for name, goal in self.goals.items() if name == point}
-        return replace(self, goals={**self.goals, **alike})
+        factor = float(np.clip(held / made, *STRENGTH))
+        return replace(self, goals={**self.goals, point: self.goals[point].scaled(factor)})
 
 
 def goals_of(situation: Situation, target: str | None, points: Sequence[str]) -> dict[str, Goal]:
@@ -122,24 +140,29 @@ def staffed_days(situation: Situation, days: int, steps: int) -> tuple[int, ...]
     return tuple(early[place] for place in dict.fromkeys([0, *places.tolist()]))
 
 
-def vague(before: Mapping[str, PointState], request: Request) -> str | None:
-    """Why a sample comes before any plan: a share whose range is wider than its band; None where the ranges serve."""
-    point = before.get(request.situation.managed)
-    if point is None or request.wishes.days == 0 or request.managed.named:
+def vague(request: Request) -> str | None:
+    """Why a sample comes before any plan; None where the ranges serve, or a sample would not narrow them.
+
+    A share known worse than its band makes any dose a guess, unless another share is out of its band for certain, or
+    the point was analysed within the last days: then the range is that of sampling itself.
+    """
+    point, days_old = request.before.get(request.situation.managed), request.situation.analysis_days_old
+    fresh = days_old is not None and days_old <= FRESH_DAYS
+    if point is None or request.wishes.days == 0 or request.managed.named or fresh:
         return None
-    for place, ion in enumerate(SHARED):
-        state = point.ions.get(ion)
-        low, high = 100 * request.managed.share_low[place], 100 * request.managed.share_high[place]
-        if state is None or state.share_pct is None or not 0 < high - low < 100:
+    wide = None
+    for ion, low, high in zip(SHARED, request.managed.share_low, request.managed.share_high, strict=True):
+        state = point.ions[ion].share_pct if ion in point.ions else None
+        if state is None or not 0.0 < high - low < 1.0:
             continue
-        width = state.share_pct.high - state.share_pct.low
-        if width > high - low:
-            return (
-                f"take a sample first: the {ion} share is known to {state.share_pct.low:.0f}-"
-                f"{state.share_pct.high:.0f} %, a range wider than its band of {low:.0f}-{high:.0f} %; any dose "
-                "would be a guess"
+        if state.low > 100 * high or state.high < 100 * low:
+            return None
+        if wide is None and state.high - state.low > 100 * (high - low):
+            wide = (
+                f"take a sample first: the {ion} share is known to {state.low:.0f}-{state.high:.0f} %, a range wider "
+                f"than its band of {100 * low:.0f}-{100 * high:.0f} %; any dose would be a guess"
             )
-    return None
+    return wide
 
 
 def cautions_for(used: Sequence[Supply]) -> tuple[Caution, ...]:

@@ -102,6 +102,8 @@ class Situation:
     points: Mapping[str, PointState]
     volumes_l: Mapping[str, float]
     crop_water_l_per_m2_d: float = 0.0
+    analysis_days_old: float | None = None
+    """Age of the last analysis of the managed point; None where there is none."""
 
     def composition(self, point: str) -> Array:
         """Mean composition of a point, shape (10,)."""

@@ -369,15 +369,24 @@ def _not_covered(composed: Composed, needed: _Needed) -> tuple[str, ...]:
     return tuple(name for name, bad, want in zip(SPECIES, short, needed.wanted, strict=True) if bad and want > 1e-6)
 
 
+def _not_on_shelf(composed: Composed, needed: _Needed) -> list[str]:
+    """One line for the micronutrients that no supply brings."""
+    names = [
+        name for name, want, got in zip(SPECIES, needed.wanted, composed.brought, strict=True)
+        if name in MICRONUTRIENTS and want > 1e-6 and got <= 0.0
+    ]  # fmt: skip
+    return [f"no supply brings {', '.join(names)}: add them to the shelf, or mix them as you do now"] if names else []
+
+
 def _misfits(composed: Composed, needed: _Needed) -> list[str]:
     parts = composed.misfit * importance(needed.asked)
-    notices = []
+    notices = _not_on_shelf(composed, needed)
     for name, part, off, own, ask in zip(SPECIES, parts, composed.misfit, needed.own, needed.asked, strict=True):
         if part > MISSED and own > ask:
             notices.append(
                 f"{name}: the water alone brings {own:.2f}, the recipe asks for {ask:.2f}; no salt takes it out"
             )
-        elif abs(part) > MISSED and name != "HCO3":
+        elif abs(part) > MISSED and name != "HCO3" and (name in IONS or composed.brought[SPECIES.index(name)] > 0):
             notices.append(f"{name}: {abs(off):.2f} {'too much' if off > 0 else 'missing'} with these supplies")
     return notices
 
