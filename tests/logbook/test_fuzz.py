@@ -17,7 +17,6 @@ from fertui.logbook.parse import entry_from_text
 from fertui.logbook.questions import flagged, questions
 from fertui.logbook.store import FILE_NAME, Logbook
 from fertui.refusals import FileTrouble, Refusal
-from fertui.site.files import parse_site
 from tests.logbook.conftest import NOW, SITE
 
 FEW, MANY = 1000, 20_000
@@ -171,27 +170,6 @@ def spoiled_backups(draw: st.DrawFn, sound: bytes) -> bytes:
     return b"".join(lines)
 
 
-toml_keys = st.sampled_from(
-    ["name", "timezone", "layout", "area_m2", "crop", "medium", "litres", "ions", "kind", "low", "tank_l"]
-)
-toml_values = st.one_of(
-    st.integers(-(2**63), 2**63 - 1).map(str),
-    st.floats().map(repr),
-    st.sampled_from(
-        ['"x"', '"bay"', '"known-feed"', "[]", "{}", "{ K = 1 }", '["a"]', "true", "2026-01-01", "nan", "inf"]
-    ),
-)
-toml_tables = st.sampled_from(
-    ["[site]", "[[loops]]", "[[waters]]", "[[supplies]]", "[bands.feed]", "[targets.x.feed]", "[site.x]", "[[site]]"]
-)
-sites = st.one_of(
-    st.binary(max_size=200),
-    st.lists(st.one_of(toml_tables, st.builds("{} = {}".format, toml_keys, toml_values)), max_size=12).map(
-        lambda lines: "\n".join(lines).encode()
-    ),
-)
-
-
 @attacked(FEW)
 @given(form=forms())
 def test_a_thousand_values(book: Logbook, form: tuple[str, dict[str, str]]) -> None:
@@ -208,12 +186,6 @@ def test_a_thousand_tables(book: Logbook, tmp_path: Path, kind: str, table: byte
 @given(data=st.data())
 def test_a_thousand_backups(tmp_path: Path, sound: bytes, data: st.DataObject) -> None:
     throw_backup(tmp_path, data.draw(spoiled_backups(sound)))
-
-
-@attacked(FEW)
-@given(raw=sites)
-def test_a_thousand_sites(raw: bytes) -> None:
-    in_words(lambda: parse_site(raw))
 
 
 @pytest.mark.long
@@ -235,10 +207,3 @@ def test_twenty_thousand_tables(book: Logbook, tmp_path: Path, kind: str, table:
 @given(data=st.data())
 def test_twenty_thousand_backups(tmp_path: Path, sound: bytes, data: st.DataObject) -> None:
     throw_backup(tmp_path, data.draw(spoiled_backups(sound)))
-
-
-@pytest.mark.long
-@attacked(MANY)
-@given(raw=sites)
-def test_twenty_thousand_sites(raw: bytes) -> None:
-    in_words(lambda: parse_site(raw))

@@ -19,7 +19,8 @@ def backwards(setting: Setting) -> Iterator[Question]:
     for field, value, number in setting.numbers:
         last = setting.last(field.name) if field.what == "meter" else None
         if last and number < last[1]:
-            rolled = _used_when_rolled_over(number, last[1])
+            digits = setting.instrument.digits if setting.instrument else None
+            rolled = _used_when_rolled_over(number, last[1], digits)
             text = f"{field.name} {value.text} is below the last position, {last[1]:.10g} L (entry {last[0].number}). "
             rest = f"Rolled over ({rolled:.6g} L used), replaced" if rolled is not None else "Was the meter replaced"
             suggestion = "meter=rolled over" if rolled is not None else "meter=replaced"
@@ -55,10 +56,10 @@ def against_amount(setting: Setting) -> Iterator[Question]:
             yield Question("meter_amount", f"{text} Which is right?", name, setting.entry.text_of(name), f"{moved:.6g}")
 
 
-def _used_when_rolled_over(number: float, last: float) -> float | None:
+def _used_when_rolled_over(number: float, last: float, digits: int | None) -> float | None:
     """Litres used if the meter passed its last digit; None when the last position was not near its end."""
-    full = 10.0 ** len(f"{last:.0f}")
-    return full - last + number if last >= 0.9 * full and number <= 0.1 * full else None
+    full = 10.0 ** (digits or len(f"{last:.0f}"))
+    return full - last + number if 0.9 * full <= last < full and number <= 0.1 * full else None
 
 
 def _litres_a_day(entries: Sequence[Entry], name: str) -> float | None:
