@@ -27,7 +27,7 @@ from fertui.loop import (
 SEED = 20
 DAYS = 60
 WATERS_OF = {
-    "north bay": ("well", {"Ca": 1.3, "Mg": 0.5, "Na": 0.8, "Cl": 0.7, "SO4": 0.4, "HCO3": 3.0, "K": 0.1, "NO3": 0.0}),
+    "north bay": ("well", {"Ca": 1.3, "Mg": 0.5, "Na": 0.5, "Cl": 0.5, "SO4": 0.4, "HCO3": 2.9, "K": 0.1, "NO3": 0.0}),
     "lettuce": ("rain", {"Ca": 0.2, "Mg": 0.05, "Na": 0.15, "Cl": 0.15, "SO4": 0.1, "HCO3": 0.3}),
 }
 MORNING = "07:40"
@@ -134,7 +134,7 @@ def _lettuce(light: Array, noise: np.random.Generator) -> list[str]:
         "lettuce",
         Circuit("shared-tank", area, 2000.0, mixed=True),
         Medium(),
-        _plants(preset, 1.7 * area, {"K": 1.03, "Ca": 0.9, "Mg": 0.9, "SO4": 0.8}),
+        _plants(preset, 1.7 * area, {"K": 1.1, "Ca": 0.92, "Mg": 0.95, "SO4": 0.9}),
         tank,
         tank,
         1.8,
@@ -148,7 +148,7 @@ def _lettuce(light: Array, noise: np.random.Generator) -> list[str]:
         100.0,
         (1.5, 1.9),
         0.0,
-        (-58, -38, -17),
+        (-58, -44, -30, -16, -9, -2),
         ("tank",),
     )  # fmt: skip
     potassium = np.asarray([salt("potassium nitrate").mmol_per_kg.get(ion, 0.0) for ion in IONS])
@@ -276,7 +276,7 @@ def _analyses(bay: Bay, days: list[Trajectory], noise: np.random.Generator) -> l
             error = np.exp(noise.normal(0.0, 0.03 if point == "feed" else 0.04, len(IONS)) + noise.normal(0.0, 0.03))
             found = dict(zip(IONS, true * error, strict=True))
             shown = " ".join(f"{ion}={_lab(value)}" for ion, value in found.items())
-            late = " entered=-19@10:20" if sampled == -23 else f" entered={sampled + 2}@11:15"
+            late = " entered=-19@10:20" if sampled == -23 else f" entered={sampled + 2}@{'11:15' if sampled < -2 else '07:50'}"
             lines.append(
                 f'{sampled} 08:50 "{bay.name}" analysis point={point} {shown} EC={_ec(true, noise):.1f} '
                 f"pH={5.4 if point == 'feed' else 5.8:.1f} lab=lab by=MK{late}"
