@@ -209,7 +209,7 @@ KINDS: Mapping[str, Kind] = {
         Kind(
             "recipe",
             "the feed composition that the stocks carry from now on",
-            (Field("name", "name", "name of the recipe"), EC, PH, *IONS, *MICRONUTRIENTS),
+            (Field("name", "name", "name of the recipe"), EC, PH, *IONS, *MICRONUTRIENTS, PLAN_NUMBER),
         ),
         Kind(
             "setpoint",

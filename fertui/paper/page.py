@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import textwrap
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
@@ -10,12 +11,21 @@ from typing import Any
 from zoneinfo import ZoneInfo
 
 WIDTH = 80
-ADVICE = "fertui advises and you decide; the safety data sheet, site procedure and local code come first."
+ADVICE = (
+    "fertui advises and you decide. The safety data sheet, site procedure, local code and licensed practice come first."
+)
+SIGN = "done [ ]  partly [ ] ________  not done [ ]   by ____ at ______"
+"""Under every step: a thing counts when it was done, not when it was printed."""
+
+UNITS = "%|mmol/L|umol/L|meq/L|mg/L|mS/cm|m3|kg|g|L|mL|C|days?|h|min|ppm"
+WITH_UNIT = re.compile(rf"(\d) ({UNITS})(?![\w/])")
+BOUND = "\u00b7"
+"""Stands for the space between a number and its unit while lines are broken; no text of ours holds it."""
 
 
 @dataclass(frozen=True, slots=True)
 class Page:
-    """One sheet: ``text`` to print, ``data`` for JSON, ``rows`` where it is a table for CSV."""
+    """One sheet: ``text`` to print, ``data`` for JSON, ``rows`` where it is a table for CSV (units in the heads)."""
 
     text: str
     data: Mapping[str, Any]
@@ -33,9 +43,23 @@ class Page:
         return out.getvalue()
 
 
-def heading(title: str, *under: str) -> list[str]:
-    """Title lines of a page."""
-    return [title, "=" * min(len(title), WIDTH), *under, ""]
+def page(
+    lines: Iterable[str], data: Mapping[str, Any], rows: Iterable[Sequence[str]] = (), advice: bool = False
+) -> Page:
+    """A page of lines; ``advice``: whose word counts stands under what somebody acts upon."""
+    foot = ["-" * WIDTH, *folded(ADVICE, "")] if advice else []
+    return Page("\n".join([*lines, *foot]).rstrip("\n"), data, tuple(tuple(row) for row in rows))
+
+
+def heading(title: str, site: str, *under: str) -> list[str]:
+    """What the page is, whose, and what it rests on.
+
+    >>> heading("Round", "Nursery")[0] == "ROUND" + " " * 68 + "Nursery"
+    True
+    """
+    room = WIDTH - len(title) - len(site)
+    first = f"{title.upper()}{' ' * room}{site}" if room > 1 else title.upper()
+    return [first[:WIDTH], "=" * WIDTH, *(line for each in under for line in folded(each, "")), ""]
 
 
 def section(title: str, lines: Iterable[str]) -> list[str]:
@@ -45,44 +69,74 @@ def section(title: str, lines: Iterable[str]) -> list[str]:
 
 
 def folded(text: str, mark: str = "  ") -> list[str]:
-    """One sentence folded to the width of the page, hanging under its mark.
+    """A text folded to the width of the page, hanging under its mark; a number is never torn from its unit.
 
-    >>> folded("short", "- ")
-    ['- short']
+    >>> folded("one two", "- "), folded("x" * 90, "")[0] == "x" * 80
+    (['- one two'], True)
+    >>> folded("y" * 76 + " 12 %", "")
+    ['yyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyy', '12 %']
     """
-    return textwrap.wrap(text, WIDTH, initial_indent=mark, subsequent_indent=" " * len(mark)) or [mark.rstrip()]
+    bound = WITH_UNIT.sub(f"\\1{BOUND}\\2", text)
+    lines = textwrap.wrap(bound, WIDTH, initial_indent=mark, subsequent_indent=" " * len(mark), break_on_hyphens=False)
+    return [line.replace(BOUND, " ") for line in lines] or [mark.rstrip()]
 
 
-def columns(rows: Sequence[Sequence[str]], right: Sequence[int] = ()) -> list[str]:
-    """Rows as aligned lines.
+def listed(texts: Iterable[str], mark: str = "- ") -> list[str]:
+    """Several texts, each folded under its mark."""
+    return [line for text in texts for line in folded(text, mark)]
+
+
+def columns(rows: Sequence[Sequence[str]], right: Iterable[int] = (), gap: str = "  ") -> list[str]:
+    """Rows as aligned lines; ``right`` names the columns set flush right.
 
     >>> columns([("salt", "kg"), ("potassium nitrate", "5.25")], right=(1,))
     ['salt                 kg', 'potassium nitrate  5.25']
     """
     if not rows:
         return []
+    flush = frozenset(right)
     widths = [max(len(row[place]) for row in rows) for place in range(len(rows[0]))]
     return [
-        "  ".join(
-            cell.rjust(width) if place in right else cell.ljust(width)
+        gap.join(
+            cell.rjust(width) if place in flush else cell.ljust(width)
             for place, (cell, width) in enumerate(zip(row, widths, strict=True))
         ).rstrip()
         for row in rows
     ]
 
 
+def day(at: datetime, timezone: str) -> str:
+    """A date on the site's clock, without the year."""
+    local = at.astimezone(ZoneInfo(timezone))
+    return f"{local:%a} {local.day} {local:%b}"
+
+
 def clock(at: datetime, timezone: str) -> str:
     """A time on the site's clock."""
-    return f"{at.astimezone(ZoneInfo(timezone)):%a %d %b %Y %H:%M}"
+    local = at.astimezone(ZoneInfo(timezone))
+    return f"{day(at, timezone)} {local:%Y %H:%M}"
 
 
 def amount(value: float | None) -> str:
     """A number with the digits it deserves.
 
-    >>> amount(4.56), amount(0.214), amount(None)
-    ('4.6', '0.21', '')
+    >>> amount(4.56), amount(0.214), amount(0.0), amount(None)
+    ('4.6', '0.21', '0', '')
     """
     if value is None:
         return ""
     size = abs(value)
-    return f"{value:.{0 if size >= 100 else 1 if size >= 1 else 2}f}"
+    written = f"{value:.{0 if size >= 100 else 1 if size >= 0.995 else 2}f}"
+    return "0" if float(written) == 0 else written
+
+
+def age(at: datetime, now: datetime) -> str:
+    """How long ago something was.
+
+    >>> from datetime import timedelta
+    >>> now = datetime(2026, 1, 9, 8)
+    >>> age(now - timedelta(hours=7), now), age(now - timedelta(days=9), now)
+    ('7 h', '9 d')
+    """
+    hours = (now - at).total_seconds() / 3600
+    return f"{hours:.0f} h" if hours < 72 else f"{hours / 24:.0f} d"

@@ -26,6 +26,7 @@ if TYPE_CHECKING:
 
 
 HORIZON_DAYS = 14
+A_CUBIC_METRE = 1000.0
 
 
 class Answers(SiteFolder):
@@ -150,10 +151,11 @@ class Answers(SiteFolder):
         return stock_sheet(self.site, chosen, recipe=running_recipe(self.site, chosen, self.entries()))
 
     def acid(self, loop: str | None = None) -> AcidSheet:
-        """The acid sheet of a loop's make-up water."""
+        """The acid sheet of a loop's make-up water: for its tank, or for a m3 where the water is treated on its way."""
         from fertui.planning import acid_sheet
 
-        return acid_sheet(self.site, self.loop(loop))
+        chosen = self.loop(loop)
+        return acid_sheet(self.site, chosen, volume_l=chosen.tank_l or A_CUBIC_METRE)
 
     def check(self) -> tuple[CheckRow, ...]:
         """Site file, logbook, watch list and this machine, as rows."""
@@ -169,12 +171,10 @@ class Answers(SiteFolder):
 
     def stock_rows(self, loop: str | None = None, at: datetime | None = None) -> tuple[StockRow, ...]:
         """Stock tanks of a loop with litres and days left."""
-        from fertui.estimate.notices import stock_days_left
         from fertui.workbench.shelf import stock_rows
 
-        chosen, at = self.loop(loop), at or now()
-        entries = self.entries(at)
-        return stock_rows(self.site, chosen, entries, stock_days_left(self.site, chosen, entries, at))
+        at = at or now()
+        return stock_rows(self.site, self.loop(loop), self.entries(at), at)
 
     def acid_cautions(self, acid: str, strength_pct: float | None = None) -> tuple[Caution, ...]:
         """Cautions of an acid or lye at the strength on its label."""

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, replace
 from datetime import datetime
 from typing import TYPE_CHECKING
 
@@ -19,7 +19,10 @@ Fields = dict[str, str]
 
 @dataclass(frozen=True, slots=True)
 class PlanItem:
-    """One intended step: what, how much, into what; ``done_number`` is the entry that carried it out."""
+    """One intended step: what, how much, into what; ``done_number`` is the last entry that carried it out.
+
+    ``done_amount``: how much was really weighed, poured or let go so far; None where nothing was.
+    """
 
     number: int
     at: datetime
@@ -28,6 +31,20 @@ class PlanItem:
     unit: str
     target: str
     done_number: int | None
+    done_amount: float | None = None
+
+    @property
+    def state(self) -> str:
+        """planned, partly done, or done: never taken for done before somebody said so."""
+        if self.done_number is None:
+            return "planned"
+        wanted, given = self.amount, self.done_amount
+        short = wanted is not None and given is not None and given < ENOUGH * wanted
+        return "partly done" if short else "done"
+
+
+ENOUGH = 0.97
+"""Weighed to within 3 % counts as done: what a scale step and a spilled spoon make (common practice, no source)."""
 
 
 def steps_of(plan: Plan, by: str) -> tuple[Fields, ...]:
@@ -42,7 +59,8 @@ def steps_of(plan: Plan, by: str) -> tuple[Fields, ...]:
         rows.append({"at": plan.at.isoformat(), "bleed": f"{plan.renewal.litres:.0f}"})
     if plan.recipe is not None:
         ions = {ion: f"{amount:.3f}" for ion, amount in plan.recipe.ions_mmol_l.items()}
-        rows.append({"at": plan.at.isoformat(), "EC": f"{plan.recipe.ec:.2f}", **ions})
+        named = {"recipe": f"planned {plan.at:%Y-%m-%d}", "EC": f"{plan.recipe.ec:.2f}"}
+        rows.append({"at": plan.at.isoformat(), **named, **ions})
     if not rows:
         raise Refusal("This plan asks for nothing, so there is nothing to accept.")
     return tuple({**row, "by": by} for row in rows)
@@ -53,16 +71,44 @@ def _tank(target: str) -> str:
 
 
 def open_plans(entries: Sequence[Entry]) -> tuple[PlanItem, ...]:
-    """Every intended step of a loop's effective entries, with what carried it out."""
-    done = {int(number): entry.number for entry in entries if (number := entry.number_of("plan")) is not None}
-    return tuple(_item(entry, done) for entry in entries if entry.kind == "plan")
+    """Every intended step of a loop's effective entries, with what was done of it."""
+    done: dict[int, list[Entry]] = {}
+    for entry in entries:
+        if entry.kind != "plan" and (number := entry.number_of("plan")) is not None:
+            done.setdefault(int(number), []).append(entry)
+    return tuple(_item(entry, done.get(entry.number or 0, [])) for entry in entries if _is_step(entry))
 
 
-def _item(entry: Entry, done: Mapping[int, int | None]) -> PlanItem:
-    what, name, unit = _subject(entry)
-    target = entry.text_of("tank") or ("feed" if what == "recipe" else "")
-    number = entry.number or 0
-    return PlanItem(number, entry.at, what, entry.number_of(name) if name else None, unit, target, done.get(number))
+def in_words(item: PlanItem, timezone: str) -> str:
+    """A step as it stands: when, how much, into what, and what was done of it."""
+    from zoneinfo import ZoneInfo
+
+    local = item.at.astimezone(ZoneInfo(timezone))
+    much = "" if item.amount is None else f"{item.amount:g} {item.unit} "
+    into = f" into {item.target}" if item.target else ""
+    partly = f"; partly done: {item.done_amount:g} {item.unit}" if item.state == "partly done" else ""
+    return f"{local:%a} {local.day} {local:%b} {much}{item.what}{into} (plan {item.number}){partly}"
+
+
+def _is_step(entry: Entry) -> bool:
+    """Whether a plan entry is a step to carry out; coming water, light or feed alone are expectations."""
+    named = any(entry.text_of(name) for name in ("salt", "acid", "recipe"))
+    return entry.kind == "plan" and (named or entry.number_of("bleed") is not None)
+
+
+def _item(planned: Entry, done: Sequence[Entry]) -> PlanItem:
+    what, name, unit = _subject(planned)
+    target = planned.text_of("tank") or ("feed" if what == "recipe" else "")
+    amounts = [amount for entry in done if (amount := entry.number_of(DONE_NAME.get(name, name))) is not None]
+    last = max((entry.number or 0 for entry in done), default=None)
+    amount = planned.number_of(name) if name else None
+    return PlanItem(
+        planned.number or 0, planned.at, what, amount, unit, target, last, sum(amounts) if amounts else None
+    )
+
+
+DONE_NAME = {"bleed": "litres"}
+"""What the amount of a plan entry is called in the entry that carries it out, where that differs."""
 
 
 def _subject(entry: Entry) -> tuple[str, str, str]:
@@ -94,8 +140,7 @@ def done_fields(planned: Entry, by: str, amount: str | None, strength_pct: float
         return "acid", {**fields, **strength, "acid": what, "litres": number}
     if name == "bleed":
         return "bleed", {**fields, "litres": number, "reason": "renewal"}
-    fields.pop("plan")
-    return "recipe", {**fields, **_ions(planned)}
+    return "recipe", {**fields, "name": planned.text_of("recipe"), **_ions(planned)}
 
 
 def _ions(planned: Entry) -> Fields:
@@ -135,7 +180,8 @@ def running_recipe(site: Site, loop: Loop, entries: Sequence[Entry]) -> Composit
 
     logged = [entry for entry in entries if entry.kind == "recipe" and entry.loop == loop.name]
     if not logged:
-        return target_of(site, loop)["feed"]
+        feed = target_of(site, loop)["feed"]
+        return replace(feed, source=f"the feed of target {loop.target or loop.crop} ({feed.source})")
     last = logged[-1]
     amounts = {value.name: value.number for value in last.values if value.number is not None}
     return Composition(

@@ -34,7 +34,7 @@ def import_table(
         path, kind, bench.book, bench.site, datetime.now(UTC), by=by or "", loop=loop, template=mapping, dry_run=dry_run
     )
     if save_template is not None:
-        templates.save_template(bench.folder, save_template, mapping or templates.Template())
+        templates.save_template(bench.folder, save_template, result.template)
     return result
 
 

@@ -18,25 +18,37 @@ class Papers(Answers):
     """Every paper of the workbench."""
 
     def round_sheet(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Page:
-        """Blank round sheet of a loop with its last values."""
-        from fertui.paper.rounds import round_sheet
+        """Blank round sheet of a loop with its last values and what is planned."""
+        from fertui.paper.round_sheet import round_sheet
+        from fertui.workbench.carrying_out import in_words, open_plans
 
         chosen, at = self.loop(loop), at or now()
-        return round_sheet(self.site, chosen, self.book.entries(loop=chosen.name, at=at, known=known), at)
+        entries = self.book.entries(loop=chosen.name, at=at, known=known)
+        steps = [in_words(each, self.site.timezone) for each in open_plans(entries) if each.state != "done"]
+        return round_sheet(self.site, chosen, entries, at, steps)
 
     def handover(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Page:
         """The shift handover: all loops, or the one named."""
-        from fertui.paper.rounds import handover
-        from fertui.workbench.carrying_out import open_plans
+        from fertui.paper.handover import LoopShift, handover
+        from fertui.workbench.carrying_out import in_words, open_plans
 
         at = at or now()
-        entries = self.entries(at, known)
-        states = [self.today(name, at, known) for name in (self.loops if loop is None else (self.loop(loop).name,))]
+        names = self.loops if loop is None else (self.loop(loop).name,)
+        entries = [entry for entry in self.entries(at, known) if entry.loop in (*names, "")]
+        states = [self.today(name, at, known) for name in names]
+        shifts = {
+            each.loop: LoopShift(
+                each.watch, each.stock_days_left, each.last_analysis.at if each.last_analysis else None, each.awaited
+            )
+            for each in states
+        }
         steps = [
-            f"{each.what} {each.amount or 0:g} {each.unit}" for each in open_plans(entries) if not each.done_number
+            f"{name}: {in_words(each, self.site.timezone)}"
+            for name in names
+            for each in open_plans([entry for entry in entries if entry.loop == name])
+            if each.state != "done"
         ]
-        watch = {state.loop: [notice.text for notice in state.watch] for state in states}
-        return handover(self.site, at, entries, watch, steps, [each for state in states for each in state.awaited])
+        return handover(self.site, at, entries, shifts, steps)
 
     def report(
         self,
@@ -46,35 +58,38 @@ class Papers(Answers):
         known: datetime | None = None,
     ) -> Page:
         """The report of a loop for consultant or inspector."""
-        from fertui.paper.report import report
-        from fertui.workbench.reporting import crop_water_l, discharges
+        from fertui.estimate.balance import crop_water_l, discharged
+        from fertui.paper.report import Reported, report
 
         chosen = self.loop(loop)
         account = self.balance(loop, start, end, known)
         estimate = self.estimate(loop, account.end, known)
         effective = self.book.entries(loop=chosen.name, at=account.end, known=known)
-        history = self.book.history(loop=chosen.name, at=account.end, known=known)
-        lost = discharges(estimate, account.start, account.end)
+        history = [entry for entry in self.book.history(loop=chosen.name) if known is None or entry.entered <= known]
+        lost = discharged(estimate, account.start, account.end)
         water = crop_water_l(estimate, account.start, account.end)
-        return report(self.site, chosen, history, effective, account, lost, water)
+        return report(Reported(self.site, chosen, history, effective, account, lost, water))
 
     def plan_page(self, plan: Plan) -> Page:
         """The sheet of a plan."""
-        from fertui.paper.sheets import dose_sheet
+        from fertui.paper.dose_sheet import dose_sheet
 
         return dose_sheet(plan, self.site.name, self.site.timezone)
 
     def stock_page(self, sheet: StockSheet, loop: str | None = None) -> Page:
         """The stock-tank sheet as a page."""
-        from fertui.paper.sheets import stock_page
+        from fertui.paper.tank_cards import stock_page
+        from fertui.workbench.carrying_out import running_recipe
 
-        return stock_page(sheet, self.loop(loop).name)
+        chosen = self.loop(loop)
+        carried = running_recipe(self.site, chosen, self.entries()).source
+        return stock_page(sheet, chosen.name, self.site.name, carried)
 
     def acid_page(self, sheet: AcidSheet, loop: str | None = None) -> Page:
         """The acid sheet as a page."""
-        from fertui.paper.sheets import acid_page
+        from fertui.paper.acid_page import acid_page
 
-        return acid_page(sheet, self.loop(loop).name)
+        return acid_page(sheet, self.loop(loop).name, self.site.name)
 
     def acknowledge(self, made: Plan | AcidSheet | StockSheet, strength_pct: float | None) -> None:
         """Refuse unless the strength read off the label is the one a plan or sheet with acid counts on."""

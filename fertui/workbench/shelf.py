@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import datetime
 from typing import TYPE_CHECKING
@@ -12,6 +12,7 @@ from fertui.site.model import Loop, Site, StockTank
 
 if TYPE_CHECKING:
     from fertui.catalogue.cautions import Caution
+    from fertui.estimate.notices import StockLeft
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,23 +66,21 @@ def supply_rows(site: Site) -> tuple[SupplyRow, ...]:
     return tuple(rows)
 
 
-def stock_rows(
-    site: Site, loop: Loop, entries: Sequence[Entry], days_left: Mapping[str, float]
-) -> tuple[StockRow, ...]:
-    """Stock tanks of a loop: litres left are the last batch less what was used since."""
-    return tuple(_stock_row(tank, entries, days_left) for tank in site.stock_tanks if tank.name in loop.stock_tanks)
+def stock_rows(site: Site, loop: Loop, entries: Sequence[Entry], at: datetime) -> tuple[StockRow, ...]:
+    """Stock tanks of a loop: what they carry since when, and what is left by the litres logged."""
+    from fertui.estimate.notices import stock_left
+
+    left = stock_left(site, loop, entries, at)
+    tanks = [tank for tank in site.stock_tanks if tank.name in loop.stock_tanks]
+    return tuple(_stock_row(tank, entries, left.get(tank.name)) for tank in tanks)
 
 
-def _stock_row(tank: StockTank, entries: Sequence[Entry], days_left: Mapping[str, float]) -> StockRow:
-    here = [entry for entry in entries if entry.text_of("tank") == tank.name]
-    batch = next((entry for entry in reversed(here) if entry.kind == "batch"), None)
-    left = None
-    if batch is not None:
-        used = sum(e.number_of("litres") or 0.0 for e in here if e.kind == "stock" and e.at >= batch.at)
-        left = max(0.0, (batch.number_of("litres") or 0.0) - used)
-    recipe = batch.text_of("recipe") if batch is not None else ""
-    mixed = None if batch is None else batch.at
-    return StockRow(tank.name, tank.letter, tank.litres, tank.dilution, mixed, recipe, left, days_left.get(tank.name))
+def _stock_row(tank: StockTank, entries: Sequence[Entry], left: StockLeft | None) -> StockRow:
+    batches = [entry for entry in entries if entry.kind == "batch" and entry.text_of("tank") == tank.name]
+    batch = batches[-1] if batches else None
+    recipe, mixed = (batch.text_of("recipe"), batch.at) if batch is not None else ("", None)
+    litres, days = (left.litres, left.days) if left is not None else (None, None)
+    return StockRow(tank.name, tank.letter, tank.litres, tank.dilution, mixed, recipe, litres, days)
 
 
 def acid_cautions(site: Site, acid: str, strength_pct: float | None) -> tuple[Caution, ...]:

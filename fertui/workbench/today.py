@@ -4,11 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from datetime import datetime
+from datetime import datetime, timedelta
 from typing import TYPE_CHECKING
+from zoneinfo import ZoneInfo
 
 from fertui.estimate.points import Estimated, PointState
 from fertui.logbook.entries import Entry
+from fertui.workbench.carrying_out import in_words as plan_in_words
+from fertui.workbench.carrying_out import open_plans
 from fertui.workbench.glance import Glance, Seen, glance
 
 if TYPE_CHECKING:
@@ -18,6 +21,8 @@ if TYPE_CHECKING:
 
 SHARES = ("K share", "Ca share", "Mg share")
 LIMITED = ("Na", "NH4", "Cl")
+AWAITED, TAKEN_BEFORE = timedelta(days=21), timedelta(days=2)
+"""A sample is waited for so long, and was taken at most so long before it was sent (common practice, no source)."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,8 +95,8 @@ def today(estimate: Estimate, entries: Sequence[Entry], ahead: Forecast) -> Toda
         gauges=gauges(estimate, ahead),
         watch=notices(estimate, entries, ahead),
         analyses_behind=estimate.analyses,
-        awaited=_awaited(own),
-        half_done=_half_done(own, at),
+        awaited=_awaited(own, at, estimate.site.timezone),
+        half_done=_half_done(own, at, estimate.site.timezone),
     )
 
 
@@ -102,13 +107,16 @@ def gauges(estimate: Estimate, ahead: Forecast) -> tuple[Gauge, ...]:
     now = estimate.points()[point]
     course = [*past, now, *(day.points[point] for day in ahead.days)]
     leaving = {each.what: each for each in ahead.leaves_band if each.point == point}
+    zone = estimate.site.timezone
     rows = []
     for what in (*SHARES, *LIMITED, "EC"):
         value = reading_of(now, what)
         if value is None or (what in LIMITED and value.band is None):
             continue
         numbers = tuple(each.value for state in course if (each := reading_of(state, what)) is not None)
-        rows.append(Gauge(what, unit_of(what), value, numbers, len(past), in_words(leaving.get(what), len(ahead.days))))
+        rows.append(
+            Gauge(what, unit_of(what), value, numbers, len(past), in_words(leaving.get(what), len(ahead.days), zone))
+        )
     return tuple(rows)
 
 
@@ -134,18 +142,22 @@ def unit_of(what: str) -> str:
     return "%" if what.endswith(" share") else "mmol/L"
 
 
-def in_words(leaving: LeavesBand | None, horizon: int) -> str:
-    """When something leaves its band, with its range, as an operator would say it."""
+def in_words(leaving: LeavesBand | None, horizon: int, timezone: str = "UTC") -> str:
+    """When something leaves its band, with its range, as an operator would say it; dates on the clock of the site."""
     if leaving is None:
         return ""
-    if leaving.days.value == 0:
-        return f"out since {leaving.since:%a %d %b}" if leaving.since is not None else "out"
-    low, high = leaving.days.low, leaving.days.high
-    if leaving.days.value is None:
+    low, middle, high = leaving.days.low, leaving.days.value, leaving.days.high
+    if middle == 0:
+        return f"out since {_day(leaving.since, timezone)}" if leaving.since is not None else "out"
+    latest = f"over {horizon}" if high is None else f"{high:.0f}"
+    if middle is None:
         return f"not in {horizon} days" if low is None else f"{low:.0f} to over {horizon} days"
-    return (
-        f"in {leaving.days.value:.0f} ({low or 0:.0f}-{'over ' + str(horizon) if high is None else f'{high:.0f}'}) days"
-    )
+    return f"in {middle:.0f} ({low or 0:.0f}-{latest}) days"
+
+
+def _day(at: datetime, timezone: str) -> str:
+    local = at.astimezone(ZoneInfo(timezone))
+    return f"{local:%a} {local.day} {local:%b}"
 
 
 def _newest(last: Glance) -> Seen | None:
@@ -157,23 +169,20 @@ def _latest_number(entries: Iterable[Entry], name: str) -> float | None:
     return found[-1] if found else None
 
 
-def _awaited(entries: Sequence[Entry]) -> tuple[str, ...]:
-    """Samples sent whose analysis has not come back."""
-    sent = [entry for entry in entries if entry.kind == "sample"]
+def _awaited(entries: Sequence[Entry], at: datetime, timezone: str) -> tuple[str, ...]:
+    """Samples sent lately whose analysis has not come; a sample is taken up to two days before it is sent."""
+    recent = [entry for entry in entries if entry.kind == "sample" and entry.at >= at - AWAITED]
+    sent = [entry for entry in recent if entry.text_of("status") in ("sent", "awaited")]
     came = [entry for entry in entries if entry.kind == "analysis"]
+    came += [entry for entry in recent if entry.text_of("status") in ("arrived", "lost")]
     return tuple(
-        f"sample of the {entry.point or 'loop'} sent {entry.at:%a %d %b}"
+        f"sample of the {(entry.point or 'loop').replace('_', ' ')}, sent {_day(entry.at, timezone)}"
         for entry in sent
-        if not any(result.point == entry.point and result.at >= entry.at for result in came)
+        if not any(result.point == entry.point and result.at >= entry.at - TAKEN_BEFORE for result in came)
     )
 
 
-def _half_done(entries: Sequence[Entry], at: datetime) -> tuple[str, ...]:
-    """Doses planned for a time that has passed and not logged as done since."""
-    planned = [entry for entry in entries if entry.kind == "plan" and entry.text_of("salt") and entry.at <= at]
-    done = [(entry.text_of("salt"), entry.at) for entry in entries if entry.kind == "dose"]
-    return tuple(
-        f"{entry.text_of('salt')} {entry.number_of('kg') or 0:g} kg planned for {entry.at:%a %d %b}, not logged as done"
-        for entry in planned
-        if not any(salt == entry.text_of("salt") and when >= entry.at for salt, when in done)
-    )
+def _half_done(entries: Sequence[Entry], at: datetime, timezone: str) -> tuple[str, ...]:
+    """Planned steps whose time has passed and that are not logged as done, or only partly."""
+    steps = [step for step in open_plans(entries) if step.at <= at and step.state != "done"]
+    return tuple(f"{step.state}: {plan_in_words(step, timezone)}" for step in steps)
