@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from fertui import quantities
 from fertui.logbook.errors import LogbookError
@@ -12,6 +12,8 @@ from fertui.logbook.kinds import WRITTEN_ABOUT_EVERY_ENTRY, Kind, nearest
 from fertui.logbook.readers import field_named
 from fertui.logbook.sheets import Sheet
 from fertui.logbook.templates import Template
+from fertui.quantities.names import unit_and_species
+from fertui.quantities.units import fold
 
 KEPT_BY_THE_BOOK = ("number", "entered", "supersedes", "why", "flags")
 """Columns an export writes and an import leaves alone: the book gives them itself."""
@@ -66,6 +68,19 @@ def columns_of(sheet: Sheet, kind: Kind, template: Template) -> tuple[Column, ..
     return tuple(columns)
 
 
+def learned(template: Template, sheet: Sheet, columns: Sequence[Column], dates: str) -> Template:
+    """The template with what this table showed: the meaning and unit of every head, delimiter, decimal mark, dates."""
+    meant = {column.head: f"{column.name} [{column.unit}]" if column.unit else column.name for column in columns}
+    return replace(
+        template,
+        columns={head: name for head, name in meant.items() if name},
+        ignore=tuple(head for head, name in meant.items() if not name),
+        dates=dates if dates != "ymd" else template.dates,
+        delimiter=sheet.delimiter,
+        decimal=sheet.decimal,
+    )
+
+
 def _column(head: str, meant: str, unit: str, kind: Kind) -> Column | None:
     plain = " ".join(meant.lower().replace("_", " ").split())
     about = HEADS.get(plain, plain.replace(" ", "_"))
@@ -76,6 +91,8 @@ def _column(head: str, meant: str, unit: str, kind: Kind) -> Column | None:
     if kind.field(about) is not None and not unit and "[" not in meant:
         return Column(head, about, "", about)
     found = quantities.column(meant)
+    if found.unit and unit and fold(found.unit) != fold(unit_and_species(unit)[0]):
+        raise LogbookError(f"column {head!r} is in {found.unit} by name or template, but in {unit} by its units row.")
     name = found.species or found.name
     field = field_named(kind, name)
     if field is not None:

@@ -8,7 +8,7 @@ from datetime import datetime, timedelta
 from pathlib import Path
 from zoneinfo import ZoneInfo
 
-from fertui.logbook.columns import Column, columns_of
+from fertui.logbook.columns import Column, columns_of, learned
 from fertui.logbook.dates import iso, order_of
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import LogbookError
@@ -30,7 +30,7 @@ POINT_WORDS: Mapping[str, str] = {
 }  # fmt: skip
 """Words tables use for points (common practice, no source)."""
 
-MOST_TROUBLES = 20
+MOST_TROUBLES, MOST_LINES = 20, 8
 
 Signature = tuple[str, str, str, str, str, tuple[tuple[str, str], ...]]
 """What makes two entries of a kind the same event."""
@@ -53,13 +53,17 @@ class ImportRow:
 
 @dataclass(frozen=True, slots=True)
 class ImportResult:
-    """What an import did, or with ``dry_run`` would do. ``written``: numbers of the new entries, empty on a dry run."""
+    """What an import did, or with ``dry_run`` would do. ``written``: numbers of the new entries, empty on a dry run.
+
+    ``template``: how the table was read, to be saved under the name of its laboratory for the next one.
+    """
 
     kind: str
     columns: tuple[Column, ...]
     rows: tuple[ImportRow, ...]
     written: tuple[int, ...]
     dry_run: bool
+    template: Template
 
     def count(self, state: str) -> int:
         """Rows in that state."""
@@ -100,17 +104,19 @@ def import_table(
 ) -> ImportResult:
     """Read a table of entries of one kind and append those that are new, all in one transaction.
 
-    ``by``, ``loop``: for rows that do not say. Rows already there (same time, place and values, corrected since or not)
-    are not added again. Raises a ``Refusal`` that lists every trouble with its line; nothing is written then.
+    ``by``, ``loop``: for rows that do not say; without either, an entry is by "import". Rows already there (same time,
+    place and values, corrected since or not) are not added again. Raises a ``Refusal`` that lists every trouble with its
+    lines; nothing is written then.
     """
     wanted = kind_named(kind)
-    source = _Source(wanted, template or Template(), site, now, by, loop)
+    source = _Source(wanted, template or Template(), site, now, by or "import", loop)
     sheet = read_sheet(path, source.template.delimiter, source.template.decimal)
     columns = columns_of(sheet, wanted, source.template)
-    rows = tuple(_judged(_entries(sheet, columns, source), book, zone(site.timezone)))
+    order = source.template.dates or order_of(_column_of(sheet, columns, "at"))
+    rows = tuple(_judged(_entries(sheet, columns, source, order), book, zone(site.timezone)))
     new = [flagged(row.entry, row.questions) for row in rows if row.state == "new"]
     written = book.append(new) if new and not dry_run else ()
-    return ImportResult(kind, columns, rows, written, dry_run)
+    return ImportResult(kind, columns, rows, written, dry_run, learned(source.template, sheet, columns, order))
 
 
 @dataclass(frozen=True, slots=True)
@@ -125,10 +131,14 @@ class _Source:
     loop: str | None
 
 
-def _entries(sheet: Sheet, columns: Sequence[Column], source: _Source) -> list[tuple[int, Entry]]:
-    at = next(place for place, column in enumerate(columns) if column.name == "at")
-    order = source.template.dates or order_of([row[at] for row in sheet.rows])
-    read, troubles = [], []
+def _column_of(sheet: Sheet, columns: Sequence[Column], name: str) -> list[str]:
+    place = next(place for place, column in enumerate(columns) if column.name == name)
+    return [row[place] for row in sheet.rows]
+
+
+def _entries(sheet: Sheet, columns: Sequence[Column], source: _Source, order: str) -> list[tuple[int, Entry]]:
+    read: list[tuple[int, Entry]] = []
+    troubles: dict[str, list[int]] = {}
     for line, row in zip(sheet.lines, sheet.rows, strict=True):
         texts = _texts(sheet, row, columns, source)
         if not any(texts.get(column.name) for column in columns if column.is_value):
@@ -136,13 +146,24 @@ def _entries(sheet: Sheet, columns: Sequence[Column], source: _Source) -> list[t
         try:
             read.append((line, _entry({**texts, "at": _moment(texts, order)}, source)))
         except Refusal as refusal:
-            troubles.append(f"line {line}: {refusal}")
+            troubles.setdefault(str(refusal), []).append(line)
     if troubles:
-        more = f"\n... and {len(troubles) - MOST_TROUBLES} more" if len(troubles) > MOST_TROUBLES else ""
-        raise LogbookError("nothing was imported:\n" + "\n".join(troubles[:MOST_TROUBLES]) + more)
+        raise _refused(troubles)
     if not read:
         raise LogbookError(f"no row has a value of {source.kind.name}; nothing was imported.")
     return read
+
+
+def _refused(troubles: Mapping[str, Sequence[int]]) -> LogbookError:
+    """Every trouble once, with the lines that have it."""
+    told = []
+    for words, lines in list(troubles.items())[:MOST_TROUBLES]:
+        listed = ", ".join(map(str, lines[:MOST_LINES]))
+        more = f" and {len(lines) - MOST_LINES} more" if len(lines) > MOST_LINES else ""
+        told.append(f"line {listed}{more}: {words}")
+    rest = len(troubles) - len(told)
+    told += [f"... and {rest} more troubles"] if rest else []
+    return LogbookError("\n".join(["nothing was imported:", *told]))
 
 
 def _texts(sheet: Sheet, row: Sequence[str], columns: Sequence[Column], source: _Source) -> dict[str, str]:

@@ -276,3 +276,23 @@ def test_the_measured_houses_go_in_by_new_heads_alone(houses: Path, take: Import
     assert len(result.written) == 20
     assert numbers(result)["Si"] == pytest.approx(90.0)
     assert sum(bool(row.entry.doubtful) for row in result.rows) == sum(bool(row[-1]) for row in house)
+
+
+def test_how_a_table_was_read_can_be_kept_as_a_template(take: Import, book: Logbook, tmp_path: Path) -> None:
+    first = take(LAB_SHEET, dry_run=True)
+    save_template(tmp_path, "lab", first.template)
+    kept = read_template(tmp_path, "lab")
+    assert (kept.columns["P2O5"], kept.dates, kept.decimal, kept.delimiter) == ("P2O5 [mg/L]", "dmy", ",", ";")
+    again = take(LAB_SHEET, template=kept, dry_run=True)
+    assert [measured(row.entry) for row in again.rows] == [measured(row.entry) for row in first.rows]
+    with pytest.raises(LogbookError, match="by its units row"):
+        take(LAB_SHEET.replace("mg/L;mg/L CaCO3", "mmol/L;mg/L CaCO3"), template=kept)
+
+
+def test_the_same_trouble_on_many_lines_is_told_once(take: Import) -> None:
+    with pytest.raises(LogbookError, match=r"line 2, 3, 4, 5, 6, 7, 8, 9 and 12 more: point = 'moon'"):
+        take("date,point,K\n" + "2026-06-20,moon,8\n" * 20)
+
+
+def test_a_table_that_names_nobody_is_by_the_import(take: Import) -> None:
+    assert take("date,point,K\n2026-06-20,drain,8\n", by="").rows[0].entry.by == "import"
