@@ -50,7 +50,7 @@ def _history(bench: Bench, ask: Ask, moment: datetime) -> Any:
 
 USE_CASES: dict[str, UseCase] = {
     "overview": _overview, "balance": _balance, "forecast": _forecast, "stock": _untimed, "acid": _untimed, "aims": _untimed, "previous": _untimed,
-    "check": _whole, "history": _history, "site_rows": _whole, "supplies_rows": _whole,
+    "check": _whole, "history": _history, "open_plans": _untimed, "site_rows": _whole, "supplies_rows": _whole,
 }  # fmt: skip
 """Use cases that take other arguments than loop and time."""
 

@@ -18,6 +18,10 @@ class LineGone(Message):
     """The terminal hung up."""
 
 
+class Resumed(Message):
+    """The program was suspended and goes on: the terminal shows something else."""
+
+
 class ThinLineDriver(LinuxDriver):
     """The toolkit's terminal driver with a thinner output and an input that survives any bytes and a closed line."""
 
@@ -42,6 +46,11 @@ class ThinLineDriver(LinuxDriver):
         """Take the terminal."""
         self._slate = Slate(*self._get_terminal_size())
         super().start_application_mode()
+
+    def resume_application_mode(self) -> None:
+        """Take the terminal again after a pause."""
+        super().resume_application_mode()
+        self.send_message(Resumed())
 
     def stop_application_mode(self) -> None:
         """Give the terminal back in its own style."""

@@ -22,7 +22,7 @@ from fertui.tui.actions import action_list
 from fertui.tui.asking import QUICK, call_for, progress
 from fertui.tui.desk import Answer, Call, Came, Desk
 from fertui.tui.drafts import Draft, Drafts
-from fertui.tui.driver import LineGone, ThinLineDriver
+from fertui.tui.driver import LineGone, Resumed, ThinLineDriver
 from fertui.tui.faults import fault_sentence
 from fertui.tui.forms.offer import offer
 from fertui.tui.header_line import HeaderLine
@@ -35,7 +35,7 @@ from fertui.tui.releasing import release
 from fertui.tui.settings import Settings, write_settings
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.stage import Stage
-from fertui.tui.terminal import Terminal
+from fertui.tui.terminal import FLOOR, Terminal
 from fertui.tui.text_page import TextPage
 from fertui.tui.themes import NAMES, THEMES, usual_theme
 from fertui.tui.view import View
@@ -203,6 +203,11 @@ class FertuiApp(App[int], inherit_bindings=False):
         self.snapshot = self.snapshot.outdated()
 
     # the frame
+
+    @property
+    def too_small(self) -> bool:
+        """Whether the screen is below the floor for which views are made."""
+        return self.size.width < FLOOR[0] or self.size.height < FLOOR[1]
 
     @property
     def page(self) -> View | None:
@@ -504,12 +509,20 @@ class FertuiApp(App[int], inherit_bindings=False):
 
     def action_leave(self) -> None:
         """Leave with exit code 0."""
+        self.query_one(Stage).keep()
         leaving.leave_soon(0)
         self.exit(0, return_code=0)
+
+    def on_resumed(self, _: Resumed) -> None:
+        """Draw everything again."""
+        self.forget_screen()
+        self.refresh()
 
     # ends
 
     def _leave_at_once(self, code: int) -> None:
+        for stage in self.query(Stage):
+            stage.keep()
         leaving.leave_soon(code)
         self.exit(code, return_code=code)
 

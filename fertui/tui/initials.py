@@ -43,8 +43,7 @@ class Initials:
 
     def give(self, text: str) -> str:
         """Someone says who they are."""
-        self._given = checked(text)
-        self.touch()
+        self._given, self._seen = checked(text), self._clock()
         return self._given
 
     def touch(self) -> None:

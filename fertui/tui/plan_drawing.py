@@ -137,7 +137,7 @@ def _acid(plan: Plan, held: bool, local: Local) -> list[Line]:
                 Span(" ! ", "act"),
                 "What holds acid is held back: ",
                 Span("k", "accent"),
-                " shows their cautions and asks for the label.",
+                " shows the cautions and asks for the label.",
             )
         ]
     rows = []

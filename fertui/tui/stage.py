@@ -31,6 +31,11 @@ class Stage(Widget):
         """Pages above the view."""
         return len(self._pile)
 
+    def keep(self) -> None:
+        """Have every page keep what must not be lost."""
+        for page in (*self._views.values(), *self._pile):
+            page.keep()
+
     async def open_view(self, number: int, make: type[View]) -> None:
         """Show a view and drop what was piled above the one before."""
         hidden = self.top

@@ -10,6 +10,7 @@ from textual.geometry import Size
 from fertui.tui.ink import Line, Span, line, wrap
 from fertui.tui.page import Page
 from fertui.tui.snapshot import Ask, Snapshot
+from fertui.tui.terminal import FLOOR
 
 SCROLLING = [
     Binding("up", "up", "up", show=False, id="page.up", tooltip="One line up, or the row above."),
@@ -57,10 +58,16 @@ class View(Page, can_focus=True):
         self.place(self._visible(size, snapshot), size)
 
     def _visible(self, size: Size, snapshot: Snapshot | None = None) -> list[Line]:
-        lines = self.draw(snapshot or self.fertui.snapshot, size.width)
+        if self.fertui.too_small:
+            lines = [line(f" fertui needs {FLOOR[0]} columns and {FLOOR[1]} rows."), line(" Make the window larger.")]
+        else:
+            lines = self.draw(snapshot or self.fertui.snapshot, size.width)
         self._total = len(lines)
         self._top = max(0, min(self._top, self._total - size.height))
         return lines[self._top : self._top + size.height]
+
+    def keep(self) -> None:
+        """Keep what must not be lost when the program ends; most pages have nothing."""
 
     def reveal(self, row: int) -> None:
         """Scroll just so far that a line is in sight."""

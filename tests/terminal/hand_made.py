@@ -19,8 +19,10 @@ def est(value, spread, band=None):
 
 def point(k=4.6, ca=11.2, mg=5.0, na=6.2):
     total = k + 2 * ca + 2 * mg
+
     def share(amount, charge, band):
         return est(100 * amount * charge / total, 2.0, band)
+
     return PointState(
         est(3.6, 0.2), None,
         {
@@ -42,8 +44,10 @@ class HandMade(Bench):
         slabs = loop != "lettuce"
         where = "root_zone" if slabs else "tank"
         state = point() if slabs else point(6.0, 4.0, 1.6, 3.0)
+
         def gauge(what, now, unit, course, leaves):
             return Gauge(what, unit, now, tuple(course), 14, leaves)
+
         ions = state.ions
         g = (
             gauge("K share", ions["K"].share_pct, "%", [25 - i * 0.9 for i in range(29)], "out since Fri 27 Nov"),
@@ -55,13 +59,43 @@ class HandMade(Bench):
         )
         N = lambda *a: SimpleNamespace(**dict(zip(("code", "severity", "text", "key"), a)))
         watch = (
-            N("share_out", "act", "K share in the root zone is 12 %, band 18-28 %. EC is on set point, so EC did not show it.", "p"),
-            N("analysis_old", "watch", "Analysis is 9 days old; a sample today would halve the range.", "e"),
-            N("log_missing", "note", "Drain of yesterday is not logged.", "w"),
-        ) if slabs else (N("x", "note", "No reading since yesterday 11:42.", "r"),)
+            (
+                N(
+                    "share_out",
+                    "act",
+                    "K share in the root zone is 12 %, band 18-28 %. EC is on set point, so EC did not show it.",
+                    "p",
+                ),
+                N("analysis_old", "watch", "Analysis is 9 days old; a sample today would halve the range.", "e"),
+                N("log_missing", "note", "Drain of yesterday is not logged.", "w"),
+            )
+            if slabs
+            else (N("x", "note", "No reading since yesterday 11:42.", "r"),)
+        )
         glance = self.glance(loop, at)
-        return Today(loop, glance.layout, glance.crop, glance.stage, glance.medium, at, where, {where: state}, glance.last_analysis, None,
-                     glance.readings, 2.6, 5.6, 31.0, 640.0, {"calcium": 4.1, "sulfate": 2.9}, g, watch, 5, ("sample of the drain sent Mon 30 Nov",), ())
+        return Today(
+            loop,
+            glance.layout,
+            glance.crop,
+            glance.stage,
+            glance.medium,
+            at,
+            where,
+            {where: state},
+            glance.last_analysis,
+            None,
+            glance.readings,
+            2.6,
+            5.6,
+            31.0,
+            640.0,
+            {"calcium": 4.1, "sulfate": 2.9},
+            g,
+            watch,
+            5,
+            ("sample of the drain sent Mon 30 Nov",),
+            (),
+        )
 
     def overview(self, at=None, known=None):
         return tuple(self.today(name, at) for name in self.loops)
@@ -70,10 +104,12 @@ class HandMade(Bench):
         from fertui.workbench.drift import Drift, Mark, Series
 
         times = tuple(at - timedelta(days=days - d) for d in range(days + 1))
+
         def series(what, unit, start, slope, spread, band, every=9):
             values = tuple(est(start + slope * d, spread * (0.3 + (d % every) / every), band) for d in range(days + 1))
             measured = tuple((times[d], start + slope * d + 0.3 * spread) for d in range(0, days, every))
             return Series(what, unit, band, times, values, measured)
+
         return Drift(
             loop, "root_zone",
             (series("K share", "%", 25, -0.45, 2.5, (18.0, 28.0)), series("Ca share", "%", 50, 0.35, 2.5, (45.0, 62.0)),
@@ -82,7 +118,28 @@ class HandMade(Bench):
         )  # fmt: skip
 
     def balance(self, loop=None, start=None, end=None, known=None):
-        row = lambda **v: SimpleNamespace(**{**dict.fromkeys(("start_mmol", "make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained", "end_mmol"), 0.0), **v})
+        row = lambda **v: SimpleNamespace(
+            **{
+                **dict.fromkeys(
+                    (
+                        "start_mmol",
+                        "make_up",
+                        "stock",
+                        "dose",
+                        "acid",
+                        "feed",
+                        "uptake",
+                        "exchange",
+                        "bleed",
+                        "drain",
+                        "unexplained",
+                        "end_mmol",
+                    ),
+                    0.0,
+                ),
+                **v,
+            }
+        )
         ions = {
             "K": row(start_mmol=61000.0, make_up=5000.0, stock=348000.0, uptake=-377000.0, exchange=4200.0, bleed=-1200.0, unexplained=-300.0, end_mmol=39700.0),
             "Ca": row(start_mmol=81000.0, make_up=66000.0, stock=190000.0, uptake=-240000.0, exchange=-2100.0, bleed=-2300.0, unexplained=900.0, end_mmol=93500.0),
@@ -93,9 +150,14 @@ class HandMade(Bench):
     def forecast(self, loop=None, days=14, at=None, known=None, scenario=None):
         where = "root_zone" if loop != "lettuce" else "tank"
         lift = 0.0 if scenario is None else 0.08
-        day = lambda d: SimpleNamespace(at=at + timedelta(days=d), points={where: point(4.6 - (0.12 - lift) * d, 11.2 + 0.05 * d, 5.0, 6.2 + 0.1 * d)})
+        day = lambda d: SimpleNamespace(
+            at=at + timedelta(days=d),
+            points={where: point(4.6 - (0.12 - lift) * d, 11.2 + 0.05 * d, 5.0, 6.2 + 0.1 * d)},
+        )
         D = lambda v, lo, hi: SimpleNamespace(value=v, low=lo, high=hi)
-        L = lambda what, days, p, since=None: SimpleNamespace(point=where, what=what, at=None, days=days, since=since, probability=p)
+        L = lambda what, days, p, since=None: SimpleNamespace(
+            point=where, what=what, at=None, days=days, since=since, probability=p
+        )
         leaves = (
             L("K share", D(0.0, 0.0, 0.0), 1.0, at - timedelta(days=4)), L("Ca share", D(4.0, 2.0, 9.0), 0.84),
             L("Mg share", D(None, None, None), 0.03), L("Na", D(None, 8.0, None), 0.22), L("EC", D(None, None, None), 0.0),
@@ -108,8 +170,18 @@ class HandMade(Bench):
             at=at - timedelta(days=d), point="root_zone", ion=ion, measured_share_pct=found, predicted_share_pct=said, low_share_pct=low,
             high_share_pct=high, no_change_share_pct=none, cold_start=d > 40, doubtful=False,
         )  # fmt: skip
-        rows = tuple(row(d, ion, f, f + 0.8, f - 1.5, f + 2.2, f + 3) for d in (44, 30, 16) for ion, f in (("K", 22.0), ("Ca", 53.0), ("Mg", 25.0)))
-        return SimpleNamespace(inputs=inputs, rows=rows, summary=SimpleNamespace(words="3 forecasts judged: error of shares 0.8 points, 'no change' 3.0; 80 % of what was found lay in the 80 % range."))
+        rows = tuple(
+            row(d, ion, f, f + 0.8, f - 1.5, f + 2.2, f + 3)
+            for d in (44, 30, 16)
+            for ion, f in (("K", 22.0), ("Ca", 53.0), ("Mg", 25.0))
+        )
+        return SimpleNamespace(
+            inputs=inputs,
+            rows=rows,
+            summary=SimpleNamespace(
+                words="3 forecasts judged: error of shares 0.8 points, 'no change' 3.0; 80 % of what was found lay in the 80 % range."
+            ),
+        )
 
     def plan(self, loop=None, days=14, at=None, known=None, **wishes):
         from fertui.planning import values as v
@@ -119,10 +191,16 @@ class HandMade(Bench):
         outlook = lambda k, ca: v.Outlook({where: point(k, ca)})
         caution = lambda s, t: SimpleNamespace(code="c", severity=s, text=t, source="invented")
         recipe = v.RecipeChange(
-            {"K": 9.4, "Ca": 5.1, "Mg": 2.2, "NH4": 0.6, "NO3": 15.9, "SO4": 3.4, "H2PO4": 1.2}, {"K": 18.0, "Ca": -9.0, "Mg": -8.0}, 2.6, (), None
+            {"K": 9.4, "Ca": 5.1, "Mg": 2.2, "NH4": 0.6, "NO3": 15.9, "SO4": 3.4, "H2PO4": 1.2},
+            {"K": 18.0, "Ca": -9.0, "Mg": -8.0},
+            2.6,
+            (),
+            None,
         )
-        steps = (v.Step(at + timedelta(days=1), "potassium nitrate", "KNO3", 0.65, "tank:tank", {"K": 6400.0}),
-                 v.Step(at + timedelta(days=3), "potassium nitrate", "KNO3", 0.6, "tank:tank", {"K": 5900.0}))
+        steps = (
+            v.Step(at + timedelta(days=1), "potassium nitrate", "KNO3", 0.65, "tank:tank", {"K": 6400.0}),
+            v.Step(at + timedelta(days=3), "potassium nitrate", "KNO3", 0.6, "tank:tank", {"K": 5900.0}),
+        )
         acid = (v.AcidStep(at, "nitric acid 38", 38.0, 1.23, 0.42, "tank:tank", 30.0, 6.2, 5.5),)
         return v.Plan(
             True, None, loop, "drain-blend" if slabs else "shared-tank", at, days, where, recipe if slabs else None, () if slabs else steps,
@@ -135,7 +213,14 @@ class HandMade(Bench):
 
 
 if __name__ == "__main__":
+    from fertui.refusals import Refusal
     from fertui.tui.app import run_on
 
     here = Path(sys.argv[1])
-    sys.exit(run_on(lambda: HandMade(here), here))
+    try:
+        sys.exit(
+            run_on(lambda: HandMade(here), here, datetime.fromisoformat(sys.argv[2]) if len(sys.argv) > 2 else None)
+        )
+    except Refusal as no:
+        print(no)
+        sys.exit(2)

@@ -11,6 +11,7 @@ import struct
 import termios
 import time
 from collections.abc import Callable, Mapping, Sequence
+from pathlib import Path
 
 import pyte
 
@@ -28,18 +29,24 @@ class PseudoTerminal:
     """One run of a program in a terminal of its own."""
 
     def __init__(
-        self, command: Sequence[str], size: tuple[int, int] = (80, 24), environment: Mapping[str, str] | None = None
+        self,
+        command: Sequence[str],
+        size: tuple[int, int] = (80, 24),
+        environment: Mapping[str, str] | None = None,
+        folder: Path | None = None,
     ) -> None:
         self.screen = pyte.Screen(*size)
         self._stream = pyte.ByteStream(self.screen)
         self.sent = bytearray()
         self.exit_code: int | None = None
+        self.hung_up = False
         everything = {**os.environ, "TERM": "xterm-256color", "LANG": "C.UTF-8", **(environment or {})}
         for name in ("COLORTERM", "LC_ALL", "LC_CTYPE", "NO_COLOR"):
             if name not in (environment or {}):
                 everything.pop(name, None)
         self.pid, self.line = pty.fork()
         if self.pid == 0:
+            os.chdir(folder or ".")
             fcntl.ioctl(0, termios.TIOCSWINSZ, struct.pack("HHHH", size[1], size[0], 0, 0))
             os.execvpe(command[0], list(command), everything)
         fcntl.ioctl(self.line, termios.TIOCSWINSZ, struct.pack("HHHH", size[1], size[0], 0, 0))
@@ -81,7 +88,7 @@ class PseudoTerminal:
         """Read until the screen shows a text."""
         return self.until(lambda shown: text in shown)
 
-    def settle(self, quiet: float = 0.3) -> int:
+    def settle(self, quiet: float = 0.15) -> int:
         """Read until nothing has come for ``quiet`` seconds; returns the bytes since the call."""
         before = len(self.sent)
         while self.read(quiet):
@@ -113,6 +120,7 @@ class PseudoTerminal:
     def hang_up(self) -> None:
         """Close our end of the line."""
         os.close(self.line)
+        self.hung_up = True
 
     def wait(self, deadline: float = DEADLINE) -> int:
         """Wait for the end of the program; returns its exit code (negative: the signal that ended it)."""
@@ -122,7 +130,10 @@ class PseudoTerminal:
             if pid:
                 self.exit_code = os.waitstatus_to_exitcode(status)
                 return self.exit_code
-            self.read(0.02)
+            if self.hung_up:
+                os.sched_yield()
+            else:
+                self.read(0.02)
         raise AssertionError(f"the program has not ended after {deadline} s")
 
     @property

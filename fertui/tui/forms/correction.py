@@ -23,7 +23,7 @@ class Correction(Form):
         self.entry = entry
         self.answers = Answers.blank(self.spec)
 
-    def keep_draft(self) -> None:
+    def keep(self) -> None:
         """A correction half typed is not kept: it belongs to this entry as it stood."""
 
     def action_save(self) -> None:

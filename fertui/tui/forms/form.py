@@ -161,7 +161,7 @@ class Form(View):
 
     def action_close(self) -> None:
         """Leave; what was typed is kept."""
-        self.keep_draft()
+        self.keep()
         self.finish()
 
     def finish(self) -> None:
@@ -203,7 +203,7 @@ class Form(View):
             else:
                 self._words = []
                 go_on()
-                self.keep_draft()
+                self.keep()
                 self._check()
         self._release()
 
@@ -286,7 +286,7 @@ class Form(View):
         self._waiting = False
         if answer.value is None:
             self.say((answer.trouble, "act"), ("Nothing was saved; the form is kept.", "faint"))
-            self.keep_draft()
+            self.keep()
             self._release()
             return
         written, last_number = answer.value
@@ -300,7 +300,7 @@ class Form(View):
 
     # drafts
 
-    def keep_draft(self) -> None:
+    def keep(self) -> None:
         """Keep what is typed so far."""
         if self.answers.changed and not self._done:
             self.fertui.keep_draft(self.spec.kind, self.loop, self.answers.with_typed_kept().texts)

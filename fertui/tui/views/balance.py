@@ -55,8 +55,8 @@ class BalanceView(View):
     TITLE = "Balance"
     HELP = (
         "Where every ion came from and went to in the period, in the water of the whole loop (what the medium holds is not counted). "
-        "Gains are positive, losses negative; start and all flows make the end. The arrows choose a cell, the bars below show the chosen "
-        "ion by size, Enter shows the entries the cell comes from, z changes the period, u changes mol, eq and g. "
+        "Gains are positive, losses negative; start and all flows make the end. The arrows choose a cell, g shows its ion "
+        "in the bars below, Enter shows the entries the cell comes from, z changes the period, u changes mol, eq and g. "
         "'unexpl.' is what the last analysis found beyond everything logged: unlogged water or stock, a meter that is off, a wrong volume."
     )
     BINDINGS: ClassVar[list[Any]] = [
@@ -67,12 +67,13 @@ class BalanceView(View):
         Binding(
             "enter", "entries", "entries", id="balance.entries", tooltip="The entries the chosen number comes from."
         ),
+        Binding("g", "bars", "bars", id="balance.bars", tooltip="Show the chosen ion in the bars."),
         Binding("z", "period", "period", id="balance.period", tooltip="7, 14, 28 or 90 days."),
     ]
 
     def __init__(self) -> None:
         super().__init__()
-        self.period, self.x, self.y = 14, 0, 0
+        self.period, self.x, self.y, self.barred = 14, 0, 0, 0
 
     def _ask(self, snapshot: Snapshot) -> Ask:
         return Ask("balance", snapshot.loop, (("days", self.period),))
@@ -98,11 +99,15 @@ class BalanceView(View):
             rows.append(line(col(f" {ion}", 6, "strong" if y == self.y else "plain", right=False), *cells))
         ion, cause = ions[self.y], causes[self.x]
         value = amount(_shown(ion, account.ions[ion], cause, snapshot.unit, factor))
-        rows += [
-            BLANK,
-            line(Span(f" {ion}: {value} {unit} {WORDS[cause]}", "strong"), Span("   Enter: its entries", "faint")),
-        ]
-        return [*rows, *bars(ion, account.ions[ion], snapshot.unit, factor, unit, width)]
+        words = line(Span(f" {ion}: {value} {unit} {WORDS[cause]}", "strong"), Span("   Enter: its entries", "faint"))
+        barred = ions[min(self.barred, len(ions) - 1)]
+        shown = bars(barred, account.ions[barred], snapshot.unit, factor, unit, width)
+        return [*rows, BLANK, words, BLANK, line(Span(f" {barred} by size", "title")), *shown]
+
+    def action_bars(self) -> None:
+        """Show the chosen ion in the bars."""
+        self.barred = self.y
+        self.redraw()
 
     def action_move(self, x: int, y: int) -> None:
         """Choose another cell."""

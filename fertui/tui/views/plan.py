@@ -158,6 +158,7 @@ class PlanView(View):
         """Go on with the plan, after cautions and label where it holds acid."""
         plan = self.plan()
         if plan is None:
+            self.fertui.say("The plan is still being worked out.", "watch")
             return
         if not self._holds_acid(plan) or self.released is plan:
             then()

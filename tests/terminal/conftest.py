@@ -1,0 +1,60 @@
+"""A demo site of a fixed day, and a terminal on it with results made by hand (so that screens are the same every day)."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Callable, Iterator
+from datetime import UTC, datetime
+from pathlib import Path
+
+import pytest
+
+HERE = Path(__file__).parent
+sys.path.insert(0, str(HERE))  # the driver and the hand-made workbench lie beside the tests
+
+from pseudo_terminal import PseudoTerminal  # noqa: E402
+
+AT = datetime(2026, 6, 1, 7, 0, tzinfo=UTC)
+"""The morning the demo site of the tests ends on."""
+
+Opened = Callable[..., PseudoTerminal]
+
+
+@pytest.fixture
+def site(tmp_path: Path) -> Path:
+    """A demo site that ends on the morning of ``AT``."""
+    from fertui.workbench.demo import build_demo
+
+    return build_demo(tmp_path / "nursery", AT)
+
+
+@pytest.fixture
+def open_terminal(tmp_path: Path) -> Iterator[Opened]:
+    """Opens a site in a terminal of its own; every terminal is closed at the end of the test."""
+    opened: list[PseudoTerminal] = []
+
+    def start(
+        site: Path, *, fixed: bool = False, size: tuple[int, int] = (80, 24), **environment: str
+    ) -> PseudoTerminal:
+        command = [sys.executable, str(HERE / "hand_made.py"), str(site), *([AT.isoformat()] if fixed else [])]
+        own = {
+            "HOME": str(tmp_path),
+            "XDG_CONFIG_HOME": str(tmp_path / "config"),
+            "XDG_STATE_HOME": str(tmp_path / "state"),
+        }
+        terminal = PseudoTerminal(command, size, {**own, **environment}, tmp_path)
+        opened.append(terminal)
+        return terminal
+
+    yield start
+    for terminal in opened:
+        terminal.__exit__()
+
+
+@pytest.fixture
+def terminal(site: Path, open_terminal: Opened) -> PseudoTerminal:
+    """The site open at Today with all its numbers."""
+    shown = open_terminal(site)
+    shown.until_text("more to look at")
+    shown.settle()
+    return shown
