@@ -124,8 +124,7 @@ class Holding:
 
     def __init__(self, record: Record, setting: Setting) -> None:
         self.record, self.setting = record, setting
-        dosed = setting.loop.layout != "known-feed" and (setting.loop.stock_tanks or record.recipes.times)
-        self.ec = linearise(self._feed(0.0)) if dosed else None
+        self.ec = linearise(self._feed(0.0)) if _is_dosed(record, setting) else None
         self.made: dict[tuple[float, bytes, bytes], tuple[Hold, ...]] = {}
 
     def _feed(self, time: float) -> Array:
@@ -163,6 +162,14 @@ class Holding:
         if not np.all(carried @ self.ec.slope > 0):
             carried = np.maximum(feed, 0.0)
         return (hold_ec(set_point, carried, self.ec),)
+
+
+def _is_dosed(record: Record, setting: Setting) -> bool:
+    """Whether stock is dosed by set point: always where stocks make the feed, in a shared tank only once anyone said so."""
+    if setting.loop.layout == "known-feed" or not (setting.loop.stock_tanks or record.recipes.times):
+        return False
+    said = len(record.stock.start) or record.recipes.times or record.setpoints.times
+    return setting.loop.layout == "drain-blend" or bool(said)
 
 
 def _assumptions(record: Record, setting: Setting, holds: tuple[tuple[Hold, ...], ...]) -> tuple[str, ...]:
