@@ -57,7 +57,7 @@ def _label(sheet: AcidSheet) -> list[str]:
     )
     return section(
         "THE BOTTLE",
-        [*folded(counted), "  read off the label: ______ %   the same [ ]   not the same: stop, plan again [ ]",
+        [*folded(counted), "  read off the label: ______ %   the same [ ]   not: stop and plan again [ ]",
          "  second person who knows: __________   eyewash, shower tried [ ]   gear on [ ]"],
     )  # fmt: skip
 

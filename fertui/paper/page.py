@@ -19,7 +19,7 @@ SIGN = "done [ ]  partly [ ] ________  not done [ ]   by ____ at ______"
 
 UNITS = "%|mmol/L|umol/L|meq/L|mg/L|mS/cm|m3|kg|g|L|mL|C|days?|h|min|ppm"
 WITH_UNIT = re.compile(rf"(\d) ({UNITS})(?![\w/])")
-BOUND = "\u00b7"
+BOUND = "\ue000"
 """Stands for the space between a number and its unit while lines are broken; no text of ours holds it."""
 
 

@@ -7,8 +7,12 @@ from typing import Any
 
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
+from fertui.paper.page import folded
 from fertui.workbench.analysis import AnalysisRow, AnalysisView
-from fertui.workbench.drift import Drift
+from fertui.workbench.drift import Drift, Series
+
+FOLLOWED = ("K share", "Ca share", "Mg share", "Na", "EC")
+"""Columns of the days past, as many as 80 columns hold; ``--json`` holds all."""
 
 
 def text(view: AnalysisView, timezone: str, unit: str) -> str:
@@ -29,14 +33,16 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
         lines += ["", *words.table(_rows(view.micronutrients, view.managed_point, "umol/L"), right=range(1, 7))]
     for point, checks in view.checks.items():
         lines += ["", f"Checks of the {POINT_WORDS[point]} analysis"]
-        lines += [f"  {'ok ' if check.passed else '!  '}{check.what}: {_check(check)}" for check in checks]
-    return "\n".join([*lines, "", view.last_change] if view.last_change else lines)
+        for check in checks:
+            lines += folded(f"{check.what}: {_check(check)}", f"  {'ok' if check.passed else '! '} ")
+    return "\n".join([*lines, "", *folded(view.last_change, "")] if view.last_change else lines)
 
 
 def _check(check: Any) -> str:
-    limit = f", limit {check.limit}" if check.limit else ""
-    remark = f" {check.remark}" if check.remark else ""
-    return f"{words.number(check.value)} {check.unit}{limit}{remark} ({check.source})"
+    unit = f" {check.unit}" if check.unit.strip("-") else ""
+    limit = f", allowed {check.limit}{unit}" if check.limit else ""
+    remark = f": {check.remark}" if check.remark else ""
+    return f"{words.number(check.value)}{unit}{limit}{remark} ({check.source})"
 
 
 def _rows(rows: Sequence[AnalysisRow], managed: str, unit: str) -> list[tuple[str, ...]]:
@@ -63,17 +69,22 @@ def document(view: AnalysisView) -> dict[str, Any]:
 
 def drift_text(course: Drift, timezone: str) -> str:
     """The past days of the managed point as a table of daily values, then what was done and measured."""
-    shown = [each for each in course.series if each.what in ("K share", "Ca share", "Mg share", "Na", "NH4", "EC")]
+    shown = [each for each in course.series if each.what in FOLLOWED]
     rows: list[tuple[str, ...]] = [
         (POINT_WORDS[course.point], *(f"{each.what} {each.unit}".rstrip() for each in shown))
     ]
     times = shown[0].times if shown else ()
     for index, at in enumerate(times):
-        cells = [words.ranged(each.values[index]) if index < len(each.values) else words.ABSENT for each in shown]
+        cells = [_value_of(each, index) for each in shown]
         rows.append((words.local(at, timezone)[:10], *cells))
     lines = [f"{course.loop}: the past days", "", *words.table(rows), "", "Done and measured"]
-    lines += [f"  {words.local(mark.at, timezone)} {mark.kind}: {mark.text}" for mark in course.marks]
+    for mark in course.marks:
+        lines += folded(f"{words.local(mark.at, timezone)} {mark.kind}: {mark.text}", "  ")
     return "\n".join(lines)
+
+
+def _value_of(series: Series, index: int) -> str:
+    return words.ranged(series.values[index], unit=series.unit) if index < len(series.values) else words.ABSENT
 
 
 def drift_document(course: Drift) -> dict[str, Any]:

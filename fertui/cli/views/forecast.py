@@ -8,9 +8,11 @@ from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
 from fertui.estimate.forecast import Forecast, LeavesBand
 from fertui.estimate.hindcast import Hindcast
+from fertui.paper.page import folded
 from fertui.workbench.today import in_words, reading_of, unit_of
 
-SHOWN = ("K share", "Ca share", "Mg share", "Na", "NH4", "EC")
+SHOWN = ("K share", "Ca share", "Mg share", "Na", "EC")
+"""Columns of the days ahead, as many as 80 columns hold; the rest speaks under "leaves its band"."""
 
 
 def text(ahead: Forecast, loop: str, managed: str, timezone: str, unit: str) -> str:
@@ -21,13 +23,13 @@ def text(ahead: Forecast, loop: str, managed: str, timezone: str, unit: str) -> 
         for what in SHOWN:
             value = reading_of(day.points[managed], what)
             scale = words.factor(what, unit) if unit_of(what) == "mmol/L" else 1.0
-            cells.append(words.ABSENT if value is None else words.ranged(value, scale))
+            cells.append(words.ABSENT if value is None else words.ranged(value, scale, unit_of(what)))
         rows.append((words.local(day.at, timezone)[:10], *cells))
     lines = [f"{loop}, {len(ahead.days)} days ahead ({_inputs(ahead)}), 80 % ranges", "", *words.table(rows), ""]
     lines += ["Leaves its band"]
     shown = [each for each in ahead.leaves_band if not (managed == "tank" and each.point == "root_zone")]
-    lines += [f"  {_leaves(each, len(ahead.days))}" for each in shown] or ["  nothing within these days"]
-    lines += ["", "Assumed"] + [f"  {each}" for each in ahead.assumed]
+    lines += [f"  {_leaves(each, len(ahead.days), timezone)}" for each in shown] or ["  nothing within these days"]
+    lines += ["", "Assumed", *(line for each in ahead.assumed for line in folded(each, "  "))]
     return "\n".join(lines)
 
 
@@ -39,9 +41,9 @@ def _inputs(ahead: Forecast) -> str:
     return {"plan": "as planned", "routine": "routine carried on", "what-if": "what if"}[ahead.inputs]
 
 
-def _leaves(each: LeavesBand, horizon: int) -> str:
+def _leaves(each: LeavesBand, horizon: int, timezone: str) -> str:
     chance = "" if each.days.value == 0 else f", chance {100 * each.probability:.0f} %"
-    return f"{POINT_WORDS[each.point]} {each.what}: {in_words(each, horizon)}{chance}"
+    return f"{POINT_WORDS[each.point]} {each.what}: {in_words(each, horizon, timezone)}{chance}"
 
 
 def document(ahead: Forecast, loop: str) -> dict[str, Any]:

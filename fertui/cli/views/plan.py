@@ -6,16 +6,19 @@ from typing import Any
 
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
+from fertui.paper.cautions import read_first
+from fertui.paper.page import folded
 from fertui.planning.values import Outlook, Plan
-from fertui.workbench.today import reading_of
+from fertui.workbench.today import reading_of, unit_of
 
 
 def text(plan: Plan, timezone: str, unit: str) -> str:
     """The plan: the answer first, then what to do, before and after, limits, reasons, cautions."""
     lines = [f"{plan.loop}: plan over {plan.horizon_days} days, for the {POINT_WORDS[plan.point]}"]
     if not plan.feasible:
-        lines.append(f"No: {plan.reason}")
-    lines += [f"! {each}" for each in plan.notices]
+        lines += folded(f"No: {plan.reason}", "")
+    lines += [line for each in plan.notices for line in folded(each, "! ")]
+    lines += ["", *read_first(plan.cautions)] if plan.acid or plan.steps or plan.recipe else []
     lines += _recipe(plan, timezone, unit) + _steps(plan, timezone) + _acid(plan, timezone) + _renewal(plan)
     lines += ["", *_outcome(plan)]
     lines += _section("Limits that bind", [_binding(each) for each in plan.binding])
@@ -25,14 +28,11 @@ def text(plan: Plan, timezone: str, unit: str) -> str:
     if plan.runner_up is not None:
         lines += _section("Next best", [plan.runner_up.difference])
     lines += _section("Step by step", plan.arithmetic)
-    lines += _section(
-        "Cautions", [f"{words.SIGNS.get(each.severity, '- ')}{each.text} ({each.source})" for each in plan.cautions]
-    )
     return "\n".join(lines)
 
 
 def _section(title: str, rows: Any) -> list[str]:
-    return ["", title, *(f"  {row}" for row in rows)] if rows else []
+    return ["", title, *(line for row in rows for line in folded(row, "  "))] if rows else []
 
 
 def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
@@ -55,7 +55,7 @@ def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
     if recipe.sheet is not None:
         for tank in recipe.sheet.tanks:
             lines += ["", f"{tank.name} ({tank.content}), {tank.litres:.0f} L, 1:{tank.dilution:.0f}"]
-            lines += [f"  {each.salt}: {each.words}" for each in tank.salts]
+            lines += [line for each in tank.salts for line in folded(f"{each.salt}: {each.words}", "  ")]
     return lines
 
 
@@ -71,24 +71,25 @@ def _steps(plan: Plan, timezone: str) -> list[str]:
 
 
 def _acid(plan: Plan, timezone: str) -> list[str]:
-    return [
-        f"{words.local(each.at, timezone)}: {each.litres:.2f} L {each.acid} {each.strength_pct:g} % "
-        f"({each.density_kg_per_l:.3f} kg/L) into {each.target.removeprefix('tank:')}; wait {each.wait_min:.0f} min, "
-        f"retest, go on only above pH {each.retest_ph:.1f}; stop at pH {each.stop_ph:.1f}"
-        for each in plan.acid
-    ]
+    lines = []
+    for each in plan.acid:
+        into = f"into {each.target.removeprefix('tank:')}"
+        strength = f"{each.strength_pct:g} % ({each.density_kg_per_l:.3f} kg/L)"
+        lines += folded(
+            f"{words.local(each.at, timezone)}: {each.litres:.3f} L {each.acid} {strength} {into}; wait "
+            f"{each.wait_min:.0f} min, retest, go on only above pH {each.retest_ph:.1f}; stop at pH {each.stop_ph:.1f}",
+            "  ",
+        )
+    return ["", "Acid, acid into water, with a second person", *lines] if lines else []
 
 
 def _renewal(plan: Plan) -> list[str]:
     if plan.renewal is None:
         return []
     renewal = plan.renewal
-    lines = [
-        "",
-        f"Renew {renewal.litres:.0f} L: {renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P leave with it; "
-        f"the year comes to {renewal.year_kg_n:.1f} kg N",
-    ]
-    return lines + [f"  {option.text}" for option in renewal.options]
+    lost = f"{renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P leave with it"
+    head = f"Renew {renewal.litres:.0f} L: {lost}; the year comes to {renewal.year_kg_n:.1f} kg N"
+    return ["", *folded(head, ""), *(line for each in renewal.options for line in folded(each.text, "  "))]
 
 
 def _outcome(plan: Plan) -> list[str]:
@@ -102,12 +103,13 @@ def _outcome(plan: Plan) -> list[str]:
 def _cell(outlook: Outlook, point: str, what: str) -> str:
     state = outlook.points.get(point)
     value = None if state is None else reading_of(state, what)
-    return words.ABSENT if value is None else words.ranged(value)
+    return words.ABSENT if value is None else words.ranged(value, unit=unit_of(what))
 
 
 def _binding(each: Any) -> str:
     source = f" ({each.source})" if each.source else ""
-    return f"{each.limit}: {words.number(each.value)} {each.unit}, reached {words.number(each.reached)}{source}"
+    reached = f"reached {words.number(each.reached)} {each.unit}"
+    return f"{each.limit}: {words.number(each.value)} {each.unit}, {reached}{source}"
 
 
 def document(plan: Plan) -> dict[str, Any]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 from fertui.cli.views import as_json, words
+from fertui.paper.page import folded
 from fertui.workbench.glance import Seen
 from fertui.workbench.today import Today
 
@@ -24,8 +25,10 @@ def text(state: Today, timezone: str, unit: str) -> str:
     lines += _readings(state)
     lines += ["", *_gauges(state, unit), "", *_concentrations(state, unit), ""]
     lines += ["To look at"]
-    lines += [f" {words.SIGNS[each.severity]} {each.text}" for each in state.watch] or ["    nothing"]
-    lines += [f" -  awaited: {each}" for each in state.awaited] + [f" -  {each}" for each in state.half_done]
+    lines += [line for each in state.watch for line in folded(each.text, f" {words.SIGNS[each.severity]} ")]
+    lines += [line for each in state.half_done for line in folded(each, " !  ")]
+    lines += [line for each in state.awaited for line in folded(f"awaited: {each}", " -  ")]
+    lines += [] if state.watch or state.half_done or state.awaited else ["    nothing"]
     return "\n".join(lines)
 
 
@@ -58,7 +61,7 @@ def _gauges(state: Today, unit: str) -> list[str]:
     rows = [(where, "now, 80 % range", "band", "leaves its band")]
     for gauge in state.gauges:
         scale, shown = (1.0, gauge.unit) if gauge.unit != "mmol/L" else (words.factor(gauge.what, unit), unit)
-        now = f"{words.ranged(gauge.now, scale)} {shown}"
+        now = f"{words.ranged(gauge.now, scale, gauge.unit)} {shown}"
         rows.append((gauge.what, now, words.band(gauge.now.band, scale), gauge.leaves))
     return words.table(rows)
 

@@ -47,13 +47,14 @@ def number(value: float | None, digits: int | None = None) -> str:
     return written.removeprefix("-") if float(written) == 0 else written
 
 
-def ranged(value: Estimated, scale: float = 1.0) -> str:
-    """A value with its 80 % range.
+def ranged(value: Estimated, scale: float = 1.0, unit: str = "") -> str:
+    """A value with its 80 % range; shares in whole per cent.
 
-    >>> ranged(Estimated(4.6, 4.0, 5.2))
-    '4.6 (4.0-5.2)'
+    >>> ranged(Estimated(4.6, 4.0, 5.2)), ranged(Estimated(12.1, 7.2, 17.1), unit="%")
+    ('4.6 (4.0-5.2)', '12 (7-17)')
     """
-    middle, low, high = (number(each * scale) for each in (value.value, value.low, value.high))
+    digits = 0 if unit == "%" else None
+    middle, low, high = (number(each * scale, digits) for each in (value.value, value.low, value.high))
     return middle if low == high else f"{middle} ({low}-{high})"
 
 
