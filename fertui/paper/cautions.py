@@ -4,15 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
-from fertui.catalogue.cautions import Caution
+from fertui.catalogue.cautions import SEVERITIES, Caution
 from fertui.paper.page import folded, section
 
 SIGNS = {"danger": "!! ", "warning": "!  ", "note": "-  "}
 
 
 def read_first(found: Iterable[Caution]) -> list[str]:
-    """A block of cautions in the order they come, those about several supplies in the same words put together."""
-    lines = [line for each in merged(found) for line in folded(each.text, SIGNS.get(each.severity, "-  "))]
+    """A block of cautions: the first as it comes, the others worst first, same words about several supplies once."""
+    kept = merged(found)
+    ranked = [*kept[:1], *sorted(kept[1:], key=lambda each: SEVERITIES.index(each.severity))]
+    lines = [line for each in ranked for line in folded(each.text, SIGNS[each.severity])]
     return section("READ BEFORE YOU START   (!! danger   ! warning)", lines)
 
 

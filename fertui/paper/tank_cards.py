@@ -69,7 +69,12 @@ def reached(sheet: StockSheet) -> list[str]:
 def _weighing(position: int, each: Weighing) -> list[str]:
     """One line to tick: what, how much in all; under it how it is weighed."""
     head = f"  [ ] {position}. {each.salt} "
-    return [f"{head:.<60} {_quantity(each):>12}", *folded(f"{each.formula}: {each.words}", "         ")]
+    lines = [f"{head:.<60} {_quantity(each):>12}", *folded(f"{each.formula}: {each.words}", "         ")]
+    if each.strength_pct is not None:
+        lines.append(
+            f"         counted on {each.strength_pct:g} %; read off the label ______ %; not the same: stop [ ]"
+        )
+    return lines
 
 
 def _quantity(each: Weighing) -> str:

@@ -41,7 +41,10 @@ class PreSolution:
 
 @dataclass(frozen=True, slots=True)
 class Weighing:
-    """One line of a sheet: what goes in, rounded to what the site can measure. ``kg`` is what then really goes in."""
+    """One line of a sheet: what goes in, rounded to what the site can measure. ``kg`` is what then really goes in.
+
+    ``strength_pct``: mass % of an acid or lye, None for salts.
+    """
 
     salt: str
     kind: str
@@ -56,6 +59,7 @@ class Weighing:
     step_kg: float
     pre_solution: PreSolution | None
     words: str
+    strength_pct: float | None = None
 
     @property
     def share_error_pct(self) -> float:
@@ -157,5 +161,5 @@ def _line(
 ) -> Weighing:  # fmt: skip
     return Weighing(
         material.name, material.kind, material.formula, kg, exact, litres, bags, material.supply.bag_kg, rest,
-        scale.name, scale.step_kg, pre, words,
+        scale.name, scale.step_kg, pre, words, material.supply.strength_pct,
     )  # fmt: skip

@@ -148,11 +148,22 @@ def _ions(planned: Entry) -> Fields:
 
 
 def acids_of(made: Plan | AcidSheet | StockSheet) -> tuple[tuple[str, float], ...]:
-    """Acids of a plan or sheet with the strength each was counted at."""
-    splits = getattr(made, "acid", ())
-    if isinstance(splits, str):
-        return ((splits, made.strength_pct),) if made.splits else ()  # type: ignore[union-attr]
-    return tuple({(split.acid, split.strength_pct) for split in splits})
+    """Acids and lyes of a plan or sheet, those in its stock tanks included, with the strength each was counted at."""
+    from fertui.planning.acid import AcidSheet
+    from fertui.planning.stock import StockSheet
+
+    if isinstance(made, AcidSheet):
+        return ((made.acid, made.strength_pct),) if made.splits else ()
+    if isinstance(made, StockSheet):
+        return _in_tanks(made)
+    sheet = made.recipe.sheet if made.recipe is not None else None
+    dosed = [(each.acid, each.strength_pct) for each in made.acid]
+    return tuple(dict.fromkeys([*dosed, *(_in_tanks(sheet) if sheet is not None else ())]))
+
+
+def _in_tanks(sheet: StockSheet) -> tuple[tuple[str, float], ...]:
+    weighed = [each for tank in sheet.tanks for each in tank.salts]
+    return tuple(dict.fromkeys((each.salt, each.strength_pct) for each in weighed if each.strength_pct is not None))
 
 
 def check_strength(acids: Iterable[tuple[str, float]], strength_pct: float | None) -> None:
