@@ -96,6 +96,10 @@ def _news(site: Site, at: datetime, entries: Sequence[Entry]) -> Iterator[str]:
             yield f"{day(each.at, site.timezone)} {each.loop} {each.kind}: {each.note} ({each.by})"
 
 
+SPEAKING = ("salt", "acid", "kg", "litres", "text", "event")
+"""Values that need no name in front of them."""
+
+
 def said(entry: Entry) -> str:
     """An entry in one line: its values as written with their units, and its note."""
     from fertui.logbook.kinds import KINDS, unit_of
@@ -104,5 +108,6 @@ def said(entry: Entry) -> str:
     parts = []
     for value in entry.values:
         unit = "" if value.number is None or value.unit else unit_of(kind, value.name)
-        parts.append(f"{value.name} {value.written}{f' {unit}' if unit else ''}")
+        name = "" if value.name in SPEAKING or value.name == value.text else f"{value.name} "
+        parts.append(f"{name}{value.written}{f' {unit}' if unit else ''}")
     return ", ".join([*parts, *([entry.note] if entry.note else [])])
