@@ -1,7 +1,7 @@
 """What one observation does to the members: an ensemble Kalman update on logarithms, clipped where it teaches uptake.
 
 The vessels follow the whole innovation. Everything else (uptake, drain, EC factor, capacity) learns from an innovation
-that levels off at about one and a half predicted standard deviations: one odd analysis moves the estimate, but does not
+that levels off at about two predicted standard deviations: one odd analysis moves the estimate, but does not
 ruin what was learned. An EC teaches nothing about single ions.
 Evensen 1994, J. Geophys. Res. 99:10143 (ensemble Kalman filter; from memory); the clip is our own.
 """
@@ -22,7 +22,7 @@ from fertui.estimate.setting import Setting
 from fertui.loop import Drive, feed_composition
 from fertui.loop.values import State
 
-CLIP = 1.7
+CLIP = 2.0
 EC_MODEL_ERROR = 0.02
 TRACE = 0.02
 """Concentrations [mmol/L] below this are taken as this where a logarithm is needed."""

@@ -1,0 +1,117 @@
+"""The account of a period: what the solution held, what moved it by which cause, what no cause explains.
+
+Start + flows = end for every ion, always: both are cut from the same lines. Between the times at which the members
+stood still amounts are taken to move evenly.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, replace
+from datetime import datetime
+
+import numpy as np
+
+from fertui.chemistry.ions import IONS, Array
+from fertui.estimate.assimilation import Estimate
+from fertui.loop import CAUSES, WATERS, Discharge
+from fertui.loop import discharged as discharged_by
+from fertui.loop.account import Account, Booking, summed
+
+AT_ONCE = 1e-9
+
+
+@dataclass(frozen=True, slots=True)
+class BalanceRow:
+    """One ion of the account [mmol] in the solution of tank, stores and root zone; gains positive."""
+
+    start_mmol: float
+    make_up: float
+    stock: float
+    dose: float
+    acid: float
+    feed: float
+    uptake: float
+    exchange: float
+    bleed: float
+    drain: float
+    unexplained: float
+    end_mmol: float
+
+
+@dataclass(frozen=True, slots=True)
+class Balance:
+    """The account of a period by ion, and the numbers of the entries behind a cell, by (ion, column)."""
+
+    start: datetime
+    end: datetime
+    ions: Mapping[str, BalanceRow]
+    entries: Mapping[tuple[str, str], tuple[int, ...]]
+
+
+def balance(estimate: Estimate, start: datetime, end: datetime) -> Balance:
+    """The account of a period, ensemble means. It is cut to what the estimate covers; ``start``, ``end`` say to what.
+
+    Raises ``ValueError`` for an end before the start, or a period before the estimate began.
+    """
+    account, begin, until = _account(estimate, start, end)
+    rows = {ion: BalanceRow(**account.row(ion)) for ion in IONS}
+    entries = {(ion, cause): account.entries(ion, cause) for ion in IONS for cause in CAUSES}
+    moments = estimate.record.moment(begin), estimate.record.moment(until)
+    return Balance(*moments, rows, {cell: numbers for cell, numbers in entries.items() if numbers})
+
+
+def discharged(estimate: Estimate, start: datetime, end: datetime) -> tuple[Discharge, ...]:
+    """Nitrogen and phosphorus that left the loop in a period, by reason."""
+    account, _, _ = _account(estimate, start, end)
+    return discharged_by(account.lines, estimate.loop.area_m2)
+
+
+def crop_water_l(estimate: Estimate, start: datetime, end: datetime) -> float | None:
+    """Litres of water the crop took in a period; None where the estimate does not reach into it."""
+    if _clipped(estimate, start, end) is None:
+        return None
+    account, _, _ = _account(estimate, start, end)
+    return float(sum(line.litres[WATERS.index("crop")] for line in account.lines))
+
+
+def _clipped(estimate: Estimate, start: datetime, end: datetime) -> tuple[float, float] | None:
+    """The period in days from the record's zero, cut to the estimate; None where they do not meet."""
+    first, last = float(estimate.drives.grid[0]), float(estimate.drives.grid[-1])
+    begin, until = max(estimate.record.time(start), first), min(estimate.record.time(end), last)
+    return (begin, until) if until >= begin else None
+
+
+def _account(estimate: Estimate, start: datetime, end: datetime) -> tuple[Account, float, float]:
+    if end < start:
+        raise ValueError(f"the account ends ({end:%Y-%m-%d %H:%M}) before it begins ({start:%Y-%m-%d %H:%M})")
+    period = _clipped(estimate, start, end)
+    if period is None:
+        raise ValueError(
+            f"no account from {start:%Y-%m-%d} to {end:%Y-%m-%d}: the estimate runs from {estimate.since:%Y-%m-%d} "
+            f"to {estimate.at:%Y-%m-%d}; ask for days within it"
+        )
+    begin, until = period
+    first = float(estimate.drives.grid[0])
+    origin = estimate.held_mmol[0] + _flows(_cut(estimate.lines, first, begin, from_start=True)).sum(axis=0)
+    lines = tuple(_cut(estimate.lines, begin, until, from_start=begin <= first))
+    flows = _flows(lines)
+    return summed(begin, until, origin, origin + flows.sum(axis=0), lines), begin, until
+
+
+def _flows(lines: Iterator[Booking] | tuple[Booking, ...]) -> Array:
+    return sum((line.by_cause for line in lines), np.zeros((len(CAUSES), len(IONS))))
+
+
+def _cut(lines: tuple[Booking, ...], begin: float, until: float, from_start: bool) -> Iterator[Booking]:
+    """Lines within (begin, until], those that reach across an end with their part; ``from_start``: [begin, until]."""
+    for line in lines:
+        if line.end - line.begin < AT_ONCE:
+            if begin < line.begin <= until or (from_start and line.begin == begin):
+                yield line
+            continue
+        part = (min(line.end, until) - max(line.begin, begin)) / (line.end - line.begin)
+        if part > 0:
+            yield line if part >= 1.0 else replace(
+                line, by_cause=part * line.by_cause, overflow=part * line.overflow, litres=part * line.litres
+            )
