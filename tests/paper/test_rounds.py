@@ -138,7 +138,7 @@ def test_what_was_written_since_yesterday_is_told_in_its_units_and_the_round_is_
     text = handed_over().text
     news = text[text.index("WRITTEN DOWN SINCE YESTERDAY") :]
     assert "drippers of row 4 cleaned (MK)" in news
-    assert "dose: MKP, 0.4 kg, tank (MK)" in news
+    assert "dose: MKP, 0.4 kg (MK)" in news
     assert "acid, 1 entry: 1.2 L" in news
     assert "irrigation" not in news
 
