@@ -225,7 +225,8 @@ class Assimilation:
         self.grid = grid_of(self.begin.time, record.end, self.midnights, moments, events, self._changes())
         self.drives = drives(record, self.setting, self.grid)
         self.ensemble = first_members(record, self.setting, self.begin, members, seed)
-        self.spread, self.meter = Spread(), ElectroMeter()
+        self.spread = Spread()
+        self.meters: dict[str, ElectroMeter] = {}
         self.analyses = int(self.begin.analysis is not None)
         self.surprises: list[Surprise] = []
         self.lines: list[Booking] = []
@@ -285,8 +286,9 @@ class Assimilation:
 
     def _observe(self, seen: Observation, span: int) -> None:
         before = self.ensemble
+        meter = self.meters.setdefault(seen.point, ElectroMeter())
         drive = feed_drive(self.drives, max(span - 1, 0), before)
-        self.ensemble, found = corrected(before, self.setting, seen, drive, self.meter, self.seed)
+        self.ensemble, found = corrected(before, self.setting, seen, drive, meter, self.seed)
         if found is None:
             return
         now = self._at(span)
@@ -307,6 +309,8 @@ class Assimilation:
         self.spread = self.spread.learned(found.columns, logs - logs.mean(axis=0), seen.covariance(), off)
 
     def _flag(self, seen: Observation, found: Innovation) -> None:
+        if not self.analyses:
+            return
         odd = found.surprising(SURPRISE if seen.is_analysis else SURPRISE + 1.0)
         if odd:
             words = [self._words(ion, found) for ion in odd]

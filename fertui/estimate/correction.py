@@ -33,6 +33,7 @@ FARTHEST = 3.0
 """A member that says something wild counts as this many predicted standard deviations off."""
 MOST_LEARNED = {"fast": 1.0, "slow": 1.8, "common": 1.0, "drain": 1.0, "stock": 0.5}
 """Bounds (log) of what is learned: uptake between a sixth and six times the preset, and what a month brings."""
+MOST_UNSEEN = 0.3
 TEACHABLE = ("fast", "slow", "stock", "common", "drain", "ec", "capacity")
 
 _HCO3 = INDEX["HCO3"]
@@ -56,14 +57,14 @@ class Innovation:
 
 
 class ElectroMeter:
-    """EC of many compositions by a straight line about their mean, drawn anew when the mean has moved."""
+    """EC of many compositions by a straight line about their median, drawn anew when that has moved."""
 
     def __init__(self) -> None:
         self.line: Linearised | None = None
 
     def __call__(self, mmol_l: Array) -> Array:
         """log EC (M,) [mS/cm] of compositions (M, 10)."""
-        middle = mmol_l.mean(axis=0)
+        middle = np.median(mmol_l, axis=0)
         if self.line is None or np.any(np.abs(middle - self.line.at) > EC_CHANGED * self.line.at + 0.3):
             self.line = linearise(middle)
         return np.log(np.maximum(self.line(mmol_l), 0.01))
@@ -76,11 +77,12 @@ def corrected(
 
     Ions first, then EC: their errors are independent. ``drive``: the one in force, for a feed that is blended.
     """
-    if seen.point == "feed" and setting.circuit.layout == "known-feed":
+    blended = compartment(setting, seen.point) is None
+    if blended and (setting.circuit.layout == "known-feed" or not seen.is_analysis):
         return ensemble, None
     after, found = ensemble, None
     for look in (_Ions(setting, seen, drive), _EC(setting, seen, drive, meter)):
-        if not look.given:
+        if not look.given or (blended and isinstance(look, _EC)):
             continue
         after, off, sd, expected = _updated(after, setting, seen, look, seed)
         found = look.told(found, off, sd, expected)
@@ -91,12 +93,11 @@ def corrected(
 
 
 class _Ions:
-    """The ions of an observation: they teach everything."""
-
-    teaches = TEACHABLE
+    """The ions of an observation: they teach everything; those of a blended feed teach what the stocks carry."""
 
     def __init__(self, setting: Setting, seen: Observation, drive: Drive | None) -> None:
         self.setting, self.seen, self.drive = setting, seen, drive
+        self.teaches = ("stock",) if compartment(setting, seen.point) is None else TEACHABLE
         self.columns = seen.columns()
         self.given = bool(self.columns)
         self.measured = np.log(seen.values()) if self.given else np.zeros(0)
@@ -149,7 +150,10 @@ def _updated(
     inverse = np.linalg.inv(total)
     levelled = (CLIP * sd * np.tanh(off / (CLIP * sd)) + scatter) @ inverse
     learned = _learned(ensemble, setting, look.teaches, anomalies, levelled)
-    return replace(learned, state=_moved(ensemble, anomalies, (off + scatter) @ inverse)), off, sd, expected
+    where = compartment(setting, seen.point)
+    if where is not None:
+        learned = replace(learned, state=_moved(ensemble, anomalies, (off + scatter) @ inverse, where))
+    return learned, off, sd, expected
 
 
 def _shown(ensemble: Ensemble, setting: Setting, seen: Observation, drive: Drive | None) -> Array:
@@ -158,7 +162,7 @@ def _shown(ensemble: Ensemble, setting: Setting, seen: Observation, drive: Drive
     if where is None:
         assert drive is not None
         return np.maximum(feed_composition(setting.circuit, drive, ensemble.state), 0.0)
-    return ensemble.state.concentration(where)
+    return ensemble.holds(setting, where)
 
 
 def _covariance(left: Array, right: Array) -> Array:
@@ -181,14 +185,17 @@ def _learned(
     return replace(ensemble, **moved)
 
 
-def _moved(ensemble: Ensemble, anomalies: Array, weights: Array) -> State:
-    """Vessels after the update: the logarithm of every concentration follows in the measure it goes with the sample."""
+def _moved(ensemble: Ensemble, anomalies: Array, weights: Array, where: int) -> State:
+    """Vessels after the update: the logarithm of every concentration follows in the measure it goes with the sample.
+
+    A vessel that was not sampled follows by ``MOST_UNSEEN`` at most: what links the two is only a model.
+    """
     state = ensemble.state
     amounts = np.maximum(state.ions_mmol[:, :, :_HCO3], 0.0)
     water = np.maximum(state.water_l, 1e-9)[:, :, None]
     logs = np.log(np.maximum(amounts / water, TRACE)).reshape(len(amounts), -1)
-    shift = weights @ _covariance(anomalies, logs - logs.mean(axis=0))
+    shift = (weights @ _covariance(anomalies, logs - logs.mean(axis=0))).reshape(amounts.shape)
+    shift[:, 1 - where] = np.clip(shift[:, 1 - where], -MOST_UNSEEN, MOST_UNSEEN)
     ions = state.ions_mmol.copy()
-    moved = np.exp(logs + shift).reshape(amounts.shape) * water
-    ions[:, :, :_HCO3] = np.where(state.water_l[:, :, None] > 0, moved, 0.0)
+    ions[:, :, :_HCO3] = np.where(amounts > 0, amounts * np.exp(shift), 0.0)
     return replace(state, ions_mmol=ions)

@@ -47,7 +47,7 @@ def solutions(setting: Setting, ensemble: Ensemble, drive: Drive) -> dict[str, A
             found[point] = fed * np.exp(ensemble.stock) if known else fed
         else:
             store = point in ("tank", "drain_store") and not setting.circuit.mixed
-            found[point] = np.maximum(state.concentration(STORE if store else ROOT), 0.0)
+            found[point] = np.maximum(ensemble.holds(setting, STORE if store else ROOT), 0.0)
     return found
 
 

@@ -77,7 +77,7 @@ def drives(record: Record, setting: Setting, grid: Array) -> Drives:
     holding = Holding(record, setting)
     covered = record.stock.covered(grid) >= LOGGED
     holds = tuple(
-        () if logged else holding.holds(time, water) for logged, time, water in zip(covered, starts, make_up, strict=True)
+        () if logged else holding.holds(time) for logged, time in zip(covered, starts, strict=True)
     )
     return Drives(
         setting, grid, waters(record, setting, grid), make_up, record.stock.over(grid) / days[:, None],
@@ -99,14 +99,29 @@ def _feeds(record: Record, setting: Setting, grid: Array) -> Array:
 
 
 def stock_proportions(record: Record, time: float) -> Array:
-    """What the stocks carry at a time, as a feed (10,) [mmol/L]: recipe, else what was mixed, else the target's feed."""
-    recipe = record.recipes.at(time)
-    if recipe is not None:
-        return np.asarray(recipe)
-    mixed = sum(
-        (tank_held / tank.dilution for tank, tank_held in _held(record, time)), np.zeros(len(INDEX))
-    )
-    return mixed if mixed.any() else compositions.array(compositions.target_feed(record.site, record.loop).ions)
+    """The feed (10,) [mmol/L] that the stocks make at a time: recipe, else what was mixed and the water, else the target's."""
+    return carried(record, time) + _water_at(record, time)
+
+
+def carried(record: Record, time: float) -> Array:
+    """What the stocks themselves bring into that feed (10,) [mmol/L]: a recipe or target less what the water brings."""
+    recipe, water = record.recipes.at(time), _water_at(record, time)
+    mixed = sum((held / tank.dilution for tank, held in _held(record, time)), np.zeros(len(INDEX)))
+    if recipe is None and mixed.any():
+        return mixed
+    feed = compositions.array(compositions.target_feed(record.site, record.loop).ions)
+    return beyond(np.asarray(recipe) if recipe is not None else feed, water)
+
+
+def beyond(feed: Array, water: Array) -> Array:
+    """A feed (10,) or (M, 10) less what the water brings; the feed itself where nothing would be left."""
+    left = np.maximum(feed - water, 0.0)
+    left[..., _HCO3] = 0.0
+    return left if left.any() else np.maximum(feed, 0.0)
+
+
+def _water_at(record: Record, time: float) -> Array:
+    return compositions.of_water(record.site, str(record.sources.at(time) or record.loop.water))
 
 
 def _held(record: Record, time: float) -> Iterator[tuple[StockTank, Array]]:
@@ -125,7 +140,7 @@ class Holding:
     def __init__(self, record: Record, setting: Setting) -> None:
         self.record, self.setting = record, setting
         self.ec = linearise(self._feed(0.0)) if _is_dosed(record, setting) else None
-        self.made: dict[tuple[float, bytes, bytes], tuple[Hold, ...]] = {}
+        self.made: dict[tuple[float, bytes], tuple[Hold, ...]] = {}
 
     def _feed(self, time: float) -> Array:
         feed = stock_proportions(self.record, time).copy()
@@ -143,25 +158,21 @@ class Holding:
         own = stated.get("EC") or self.setting.loop.feed_ec
         return own or compositions.target_feed(self.record.site, self.record.loop).ec
 
-    def holds(self, time: float, water: Array) -> tuple[Hold, ...]:
+    def holds(self, time: float) -> tuple[Hold, ...]:
         """The one hold of a time, or none."""
         set_point = self.set_point(time)
         if self.ec is None or set_point is None:
             return ()
-        feed = self._feed(time)
-        key = (set_point, feed.tobytes(), water.tobytes())
+        stock = carried(self.record, time)
+        key = (set_point, stock.tobytes())
         if key not in self.made:
-            self.made[key] = self.made_for(set_point, feed, water)
+            self.made[key] = self.made_for(set_point, stock)
         return self.made[key]
 
-    def made_for(self, set_point: float, feed: Array, water: Array) -> tuple[Hold, ...]:
-        """Stock that makes a feed (10,) or (M, 10) of a water, dosed to an EC; what the water brings is not dosed."""
+    def made_for(self, set_point: float, stock: Array) -> tuple[Hold, ...]:
+        """Stock in these proportions (10,) or (M, 10), dosed to an EC; none where it would not raise the EC."""
         assert self.ec is not None
-        carried = np.maximum(feed - water, 0.0)
-        carried[..., _HCO3] = 0.0
-        if not np.all(carried @ self.ec.slope > 0):
-            carried = np.maximum(feed, 0.0)
-        return (hold_ec(set_point, carried, self.ec),)
+        return (hold_ec(set_point, stock, self.ec),) if np.all(stock @ self.ec.slope > 0) else ()
 
 
 def _is_dosed(record: Record, setting: Setting) -> bool:

@@ -30,6 +30,9 @@ STATE_SD, STATE_COMMON_SD = 0.05, 0.04
 ALKALINITY_DAYS, ALKALINITY_MEQ_L = 3.0, 0.5
 """Alkalinity is not estimated: it goes back to what was last measured (0.5 meq/L, common practice) within days."""
 
+DRY = 0.02
+"""Below this part of its level a store holds too little to speak of."""
+
 _HCO3 = INDEX["HCO3"]
 _IONS = slice(0, _HCO3)
 
@@ -66,6 +69,15 @@ class Ensemble:
     def plants(self, setting: Setting, reference_l_d: float) -> Plants:
         """The crop of every member."""
         return setting.plants(self.multiplier, reference_l_d)
+
+    def holds(self, setting: Setting, where: int) -> Array:
+        """What a vessel holds (M, 10) [mmol/L], nothing negative but alkalinity; a store gone dry shows what runs in."""
+        found = self.state.concentration(where)
+        if where == STORE:
+            dry = self.state.water_l[:, STORE] < DRY * max(setting.circuit.store_l, 1.0)
+            if dry.any():
+                found = np.where(dry[:, None], self.state.concentration(ROOT), found)
+        return found
 
     def chosen(self, members: Array) -> Ensemble:
         """The members of these positions, repeated where repeated."""

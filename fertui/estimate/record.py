@@ -198,7 +198,8 @@ class _Reader:
         for name, contents in held.items():
             used = [entry for entry in self._certain("stock") if entry.text_of("tank") == name]
             for entry, span in self._spans(used):
-                strength = [each for batch, each in contents if batch is None or batch.at <= entry.at][-1]
+                used_up = self.zero + timedelta(days=span[1])
+                strength = [each for batch, each in contents if batch is None or batch.at <= used_up][-1]
                 if not np.any(strength):
                     self._assume(f"what stock tank {name} holds is not known; its litres could not be counted")
                     continue

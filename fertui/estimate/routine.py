@@ -12,7 +12,7 @@ from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, Array
 from fertui.estimate import compositions
 from fertui.estimate.assimilation import Estimate
-from fertui.estimate.drives import Holding, leaning, stock_proportions
+from fertui.estimate.drives import Holding, beyond, carried, leaning
 from fertui.estimate.noise import normals
 from fertui.estimate.scenario import Scenario
 from fertui.estimate.walk import grid_of
@@ -232,8 +232,8 @@ class _Builder:
         if set_point is None:
             return (), self._usual_stock()
         self._assume(f"stock is dosed to hold EC {set_point:.2g}")
-        carried = stock_proportions(self.record, self.now) if recipe is None else compositions.array(recipe)
-        return self.holding.made_for(set_point, carried, water), nothing
+        stock = carried(self.record, self.now) if recipe is None else beyond(compositions.array(recipe), water)
+        return self.holding.made_for(set_point, stock), nothing
 
     def _usual_stock(self) -> Array:
         grid, rates = self.estimate.drives.grid, self.estimate.drives.stock_mmol_d

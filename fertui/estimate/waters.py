@@ -23,7 +23,8 @@ DRAINED, BALANCED, ASSUMED = 0, 1, 2
 
 @dataclass(frozen=True, slots=True)
 class Waters:
-    """Rates [L/d] of the whole loop in every stretch (n,) of a grid. ``make_up`` is nan where it is automatic.
+    """Rates [L/d] of the whole loop in every stretch (n,) of a grid. ``make_up`` is nan where it is automatic:
+    not logged, or without levels to say whether it filled the tank; the tank then stands at its level.
 
     ``drain`` goes with ``irrigation``; ``origin`` (n,): DRAINED, BALANCED or ASSUMED; ``reference``: season mean of
     crop water up to each stretch.
@@ -51,7 +52,8 @@ def waters(record: Record, setting: Setting, grid: Array) -> Waters:
     origin = np.select(choices, [BALANCED, DRAINED, BALANCED], ASSUMED)
     crop = _filled(known, days, setting.crop_water_l_per_m2_d * setting.loop.area_m2)
     irrigation = np.where(logged["irrigation"], rate["irrigation"], crop / (1.0 - drain_part))
-    make_up = np.where(logged["make_up"], rate["make_up"], np.nan)
+    steered = logged["make_up"] & (len(record.levels) > 1)
+    make_up = np.where(steered, rate["make_up"], np.nan)
     floor = 0.1 * setting.loop.area_m2
     reference = np.maximum(np.cumsum(crop * days) / np.cumsum(days), floor)
     return Waters(irrigation, np.minimum(drain, irrigation), crop, make_up, rate["condensate"], origin, reference)
