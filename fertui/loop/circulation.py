@@ -28,7 +28,8 @@ WATERS = ("make_up", "feed", "irrigation", "crop", "drain", "bleed")
 TOLERANCE = 0.003
 """Relative error estimate that one step may have; keeps 28 days within 0.5 % of a stiff solver on all layouts."""
 LONGEST_STEP_D = 1.0
-SHORTEST_STEP_D = 1.0 / 256.0
+SHORTEST_STEP_D = 1.0 / 24.0
+"""An hour: uptake is coupled to the water of the day, so that shorter steps would say nothing more."""
 _LITTLE_L = 1e-6
 _FLOOR_MMOL_L = 0.05
 _NH4, _NO3, _ALK = INDEX["NH4"], INDEX["NO3"], INDEX["HCO3"]
@@ -84,7 +85,7 @@ def advance(
         state, fluxes, stretch = step
         total = fluxes if total is None else total + fluxes
         done += length
-        length = min(length * stretch, LONGEST_STEP_D)
+        length = min(max(length * stretch, SHORTEST_STEP_D), LONGEST_STEP_D)
     return state, total or no_fluxes(state.members)
 
 
@@ -130,7 +131,7 @@ def _step(
         water = flows(circuit, drive, state.water_l, days, _store_share(circuit, drive, store))
     late = _rates(circuit, plants, wanted, drive, water, middle_l, store, root, retardation, feed)
     error = _error(early, late, y[1], middle_l[:, ROOT], days)
-    if error > TOLERANCE and days > SHORTEST_STEP_D:
+    if error > TOLERANCE and days > SHORTEST_STEP_D * (1.0 + 1e-6):
         return max(0.1, 0.9 * np.sqrt(TOLERANCE / error))
     end, fluxes = _closed(circuit, medium, drive, state, x, water, late, retardation, middle_l, days)
     return end, fluxes, min(4.0, 0.9 * np.sqrt(TOLERANCE / max(error, 1e-9)))
@@ -325,7 +326,7 @@ def _closed(
     book[:, CAUSE["uptake"]] = (end[0] - x[0]) + (end[1] - x[1]) - entered + from_store + from_root
     book[:, CAUSE["bleed"]] = -from_store
     book[:, CAUSE["drain" if circuit.layout == "known-feed" else "bleed"]] -= from_root
-    held = _exchange(medium, state, end[1], water_l[:, ROOT], book)
+    held = _exchange(medium, state, end[1], water_l[:, ROOT], retardation, book)
     _book_water(water, days, from_store + from_root, fluxes)
     return State(water_l, np.stack(end, axis=1), held), fluxes
 
@@ -350,11 +351,13 @@ def _return(move: Transfer, end: Pair, stay: Pair, ion: int, rate: Array) -> Non
         amounts[1][:, ion] += response.f11[:, ion] * rate
 
 
-def _exchange(medium: Medium, state: State, end1: Array, root_l: Array, book: Array) -> Array:
+def _exchange(
+    medium: Medium, state: State, end1: Array, root_l: Array, retardation: _Retardation, book: Array
+) -> Array:
     """Equilibrium at the end of a step: splits ``end1`` into water (in place) and sites (returned) [meq]."""
     if medium.inert:
         return state.exchanged_meq
-    in_water, held = equilibrated(medium, np.maximum(end1[:, :5], 0.0), root_l)
+    in_water, held = equilibrated(medium, np.maximum(end1[:, :5], 0.0), root_l, retardation.log_s)
     released = (state.exchanged_meq - held) / CATION_CHARGE
     hydrogen = (released @ CATION_CHARGE)[:, None]
     end1[:, :5] = in_water
