@@ -105,8 +105,8 @@ def import_table(
     """Read a table of entries of one kind and append those that are new, all in one transaction.
 
     ``by``, ``loop``: for rows that do not say; without either, an entry is by "import". Rows already there (same time,
-    place and values, corrected since or not) are not added again. Raises a ``Refusal`` that lists every trouble with its
-    lines; nothing is written then.
+    place and values, corrected since or not) are not added again. Raises a ``Refusal`` that lists every trouble with
+    its lines; nothing is written then.
     """
     wanted = kind_named(kind)
     source = _Source(wanted, template or Template(), site, now, by or "import", loop)

@@ -51,6 +51,10 @@ def entry_of_row(row: Sequence[Any], values: tuple[Value, ...]) -> Entry:
 def conditions(
     loop: str | None, kinds: Iterable[str] | None, since: datetime | None, at: datetime | None
 ) -> tuple[tuple[str, ...], list[object]]:
+    """Conditions on ``entries e`` and what they are given: of a loop and the site, of kinds, of a time.
+
+    A plan made by ``at`` for days after it is not a later event: it was known then.
+    """
     where: list[str] = []
     given: list[object] = []
     if loop is not None:
@@ -60,8 +64,10 @@ def conditions(
         wanted = tuple(kinds)
         where.append(f"e.kind IN ({', '.join('?' * len(wanted))})")
         given.extend(wanted)
-    for limit, condition in ((since, "e.at >= ?"), (at, "e.at <= ?")):
-        if limit is not None:
-            where.append(condition)
-            given.append(moment_text(limit))
+    if since is not None:
+        where.append("e.at >= ?")
+        given.append(moment_text(since))
+    if at is not None:
+        where.append("(e.at <= ? OR (e.kind = 'plan' AND e.entered <= ?))")
+        given.extend((moment_text(at), moment_text(at)))
     return tuple(where), given

@@ -113,7 +113,8 @@ class Logbook:
     ) -> tuple[Entry, ...]:
         """Effective entries (superseded and struck ones left out), ordered by time of the event and number.
 
-        ``loop``: of that loop and of the site as a whole. ``since`` .. ``at``: time of the event, both included.
+        ``loop``: of that loop and of the site as a whole. ``since`` .. ``at``: time of the event, both included;
+        a plan made by ``at`` counts, whatever days it is for.
         ``known``: as the book stood then: entries and corrections made later are hidden.
         """
         known_text = moment_text(known) if known is not None else "9"

@@ -60,6 +60,21 @@ def test_at_hides_later_events_and_known_hides_later_knowledge(book: Logbook) ->
     assert numbers(book.history(known=NOW + 2 * day)) == [1, 3]
 
 
+def test_a_plan_is_known_from_when_it_was_made(book: Logbook) -> None:
+    day = timedelta(days=1)
+    book.append([replace(reading(7, NOW + 5 * day, NOW), kind="plan"), reading(8, NOW + 5 * day, NOW)])
+    assert numbers(book.entries(at=NOW)) == [1]
+    assert numbers(book.entries(at=NOW - day)) == []
+    assert numbers(book.entries(at=NOW, known=NOW - day)) == []
+
+
+def test_words_are_never_read_as_sql(book: Logbook) -> None:
+    book.append(reading(8))
+    attack = "bay' OR '1'='1"
+    assert book.entries(loop=attack) == book.history(kinds=(attack,)) == ()
+    assert book.last("reading", point=attack) is None
+
+
 def test_a_loop_sees_its_own_and_the_sites_entries(book: Logbook) -> None:
     book.append([reading(8), replace(reading(9), loop="gutters"), replace(reading(1), kind="note", loop="")])
     assert numbers(book.entries(loop="bay")) == [1, 3]
