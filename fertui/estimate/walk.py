@@ -15,6 +15,9 @@ from fertui.loop import Drive, Event, advance, apply, corrected
 from fertui.loop.account import Booking, booking
 
 INSTANT = 1e-6
+TOLERANCE = 0.03
+"""Error estimate of one step of the engine; on the measured houses the ions then end within 0.1 % of steps a hundred times finer,
+where one night of noise moves a member by 2 %."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,7 +39,7 @@ def stretch(setting: Setting, drives: Drives, span: int, ensemble: Ensemble, eve
         state, moved = apply(setting.circuit, medium, state, event)
         lines.append(booking(begin, begin, moved, event))
     plants = ensemble.plants(setting, float(drives.water.reference[span]))
-    state, moved = advance(setting.circuit, medium, plants, state, drive, end - begin)
+    state, moved = advance(setting.circuit, medium, plants, state, drive, end - begin, TOLERANCE)
     lines.append(booking(begin, end, moved))
     return Step(replace(ensemble, state=state), drive, tuple(lines))
 

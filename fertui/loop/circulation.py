@@ -16,7 +16,7 @@ from fertui.chemistry.ions import CATION_CHARGE, CHARGE, INDEX, Array
 from fertui.loop.exchanger import capacity_of, equilibrated, intensity, nudged, retained
 from fertui.loop.transfer import Pair, Response, Transfer, half_implicit, transfer
 from fertui.loop.uptake import Plants, conductance, demand
-from fertui.loop.values import ROOT, STORE, Circuit, Drive, Hold, Medium, State
+from fertui.loop.values import DRY_L, ROOT, STORE, Circuit, Drive, Hold, Medium, State
 from fertui.loop.water import Flows, flows
 
 CAUSES = ("make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained")
@@ -30,7 +30,6 @@ TOLERANCE = 0.003
 LONGEST_STEP_D = 1.0
 SHORTEST_STEP_D = 1.0 / 24.0
 """An hour: uptake is coupled to the water of the day, so that shorter steps would say nothing more."""
-_LITTLE_L = 1e-6
 _FLOOR_MMOL_L = 0.05
 _NH4, _NO3, _ALK = INDEX["NH4"], INDEX["NO3"], INDEX["HCO3"]
 
@@ -61,9 +60,17 @@ def no_fluxes(members: int) -> Fluxes:
 
 
 def advance(
-    circuit: Circuit, medium: Medium, plants: Plants, state: State, drive: Drive, days: float
+    circuit: Circuit,
+    medium: Medium,
+    plants: Plants,
+    state: State,
+    drive: Drive,
+    days: float,
+    tolerance: float = TOLERANCE,
 ) -> tuple[State, Fluxes]:
     """The loop after ``days`` [d] under one drive, and what moved meanwhile.
+
+    ``tolerance``: relative error a step may have; an ensemble whose noise is far larger may ask for less than the default.
 
     start + sum of fluxes = end for every member and ion to rounding; no amount but alkalinity becomes negative.
 
@@ -78,7 +85,7 @@ def advance(
     done, length = 0.0, min(days, LONGEST_STEP_D)
     while done < days * (1.0 - 1e-12):
         length = (days - done) / np.ceil((days - done) / length - 1e-9)
-        step = _step(circuit, medium, plants, drive, state, length, (done + 0.5 * length) / days)
+        step = _step(circuit, medium, plants, drive, state, length, (done + 0.5 * length) / days, tolerance)
         if isinstance(step, float):
             length = max(length * step, SHORTEST_STEP_D)
             continue
@@ -111,7 +118,14 @@ class _Rates:
 
 
 def _step(
-    circuit: Circuit, medium: Medium, plants: Plants, drive: Drive, state: State, days: float, when: float
+    circuit: Circuit,
+    medium: Medium,
+    plants: Plants,
+    drive: Drive,
+    state: State,
+    days: float,
+    when: float,
+    tolerance: float,
 ) -> tuple[State, Fluxes, float] | float:
     """One step, or the factor by which it must be shorter.
 
@@ -119,7 +133,7 @@ def _step(
     """
     store, root = state.concentration(STORE), state.concentration(ROOT)
     water = flows(circuit, drive, state.water_l, days, _store_share(circuit, drive, store))
-    middle_l = np.maximum(state.water_l + 0.5 * days * water.change, _LITTLE_L)
+    middle_l = np.maximum(state.water_l + 0.5 * days * water.change, DRY_L)
     retardation = _Retardation.of(medium, root, middle_l[:, ROOT])
     x, feed = (state.ions_mmol[:, STORE], _with_sites(medium, state)), drive.feed_at(when)
     wanted = demand(plants, water.crop, drive.light, drive.excursion_c)
@@ -131,10 +145,10 @@ def _step(
         water = flows(circuit, drive, state.water_l, days, _store_share(circuit, drive, store))
     late = _rates(circuit, plants, wanted, drive, water, middle_l, store, root, retardation, feed)
     error = _error(early, late, y[1], middle_l[:, ROOT], days)
-    if error > TOLERANCE and days > SHORTEST_STEP_D * (1.0 + 1e-6):
-        return max(0.1, 0.9 * np.sqrt(TOLERANCE / error))
+    if error > tolerance and days > SHORTEST_STEP_D * (1.0 + 1e-6):
+        return max(0.1, 0.9 * np.sqrt(tolerance / error))
     end, fluxes = _closed(circuit, medium, drive, state, x, water, late, retardation, middle_l, days)
-    return end, fluxes, min(4.0, 0.9 * np.sqrt(TOLERANCE / max(error, 1e-9)))
+    return end, fluxes, min(4.0, 0.9 * np.sqrt(tolerance / max(error, 1e-9)))
 
 
 def _half_way(
@@ -217,7 +231,7 @@ def _entering(circuit: Circuit, drive: Drive, water: Flows, store: Array, feed: 
     fresh = (water.fresh_store + water.fresh_root)[:, None] * drive.make_up
     entering = {"make_up": fresh, "stock": np.broadcast_to(drive.stock_mmol_d, fresh.shape)}
     if circuit.layout == "drain-blend" and drive.holds:
-        litres = np.maximum(water.to_root + water.fresh_root, _LITTLE_L)[:, None]
+        litres = np.maximum(water.to_root + water.fresh_root, DRY_L)[:, None]
         blend = (water.to_root[:, None] * store + fresh + entering["stock"]) / litres
         for cause, per_litre in _doses(drive.holds, blend).items():
             entering[cause] = entering.get(cause, 0.0) + per_litre * litres
@@ -389,6 +403,6 @@ def feed_composition(circuit: Circuit, drive: Drive, state: State, when: float =
     if circuit.layout == "shared-tank":
         return store
     water = flows(circuit, drive, state.water_l, LONGEST_STEP_D, _store_share(circuit, drive, store))
-    litres = np.maximum(water.to_root + water.fresh_root, _LITTLE_L)[:, None]
+    litres = np.maximum(water.to_root + water.fresh_root, DRY_L)[:, None]
     entering = _entering(circuit, drive, water, store, drive.feed_from)
     return (water.to_root[:, None] * store + sum(entering.values())) / litres
