@@ -13,7 +13,7 @@ from fertui.chemistry.ions import INDEX, IONS, Array, composition
 # Columns: a2, a1, a0 of the limiting conductivity lambda0(t) [S cm2/mol]; a2, a1, a0 of A(t); B.
 #
 # Form, and rows CO3, HSO4, H, OH: McCleskey, Nordstrom, Ryan & Ball 2012, Geochim. Cosmochim. Acta 77:369-382, read
-# in an open transcription that had lost signs; with the pairs used here it reads MgCl2 7 % high and Na2SO4 30 % low. So
+# in an open copy that had lost signs; with the pairs used here it reads MgCl2 7 % high and Na2SO4 30 % low. So
 # the other rows keep its B and the course of A, but lambda0 at 25 degrees C is that of the CRC Handbook, and the course
 # of lambda0 and the size of A were laid by least squares through the single-salt equations of McCleskey 2011, J. Chem.
 # Eng. Data 56:317-327 (NaCl, NH4Cl, CaCl2, MgCl2, Na2SO4, K2SO4, KNO3, CaSO4, KHCO3; 5-35 degrees C, ionic strength to

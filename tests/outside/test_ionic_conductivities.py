@@ -37,7 +37,7 @@ LIMITING = {
     "HCO3": 44.5,
 }  # fmt: skip
 
-# McCleskey et al. 2012, Geochim. Cosmochim. Acta 77:369, open transcription with its signs set again: lambda0, A, B.
+# McCleskey et al. 2012, Geochim. Cosmochim. Acta 77:369, open copy with its signs set again: lambda0, A, B.
 START = {
     "K": (0.003046, 1.261, 40.70, 0.00535, 0.9316, 22.59, 1.5),
     "Ca": (0.009645, 1.984, 62.28, 0.03174, 2.334, 132.3, 2.8),
