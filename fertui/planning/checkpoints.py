@@ -71,12 +71,12 @@ class Rows:
 
 def ec_of(checkpoint: Checkpoint, composition: Array) -> Array:
     """EC [mS/cm] as the loop's meter reads it, of compositions (..., 10)."""
-    return checkpoint.ec_factor * conductivity(np.maximum(composition, 0.0), ph=checkpoint.ph)
+    return checkpoint.ec_factor * conductivity(np.maximum(composition, 0.0))
 
 
 def ec_factor(situation: Situation, point: str) -> float:
     """What the loop's meter reads over what the ions of a point make; 1 where there is hardly anything in it."""
-    made = float(conductivity(np.maximum(situation.composition(point), 0.0), ph=situation.ph(point)))
+    made = float(conductivity(np.maximum(situation.composition(point), 0.0)))
     return situation.points[point].ec.value / made if made > 0.1 else 1.0
 
 
@@ -196,8 +196,9 @@ def violation_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array,
             continue
         now, slope = z * each.now[SHARED_AT], z[:, None] * each.slope[SHARED_AT]
         total, total_slope = now.sum(), slope.sum(axis=0)
-        scale = max(float((z * each.base[SHARED_AT]).sum()), float(total), 1.0)
-        shares = ((1.0, each.goal.share_high), (-1.0, each.goal.share_low)) if scale > NO_SHARES else ()
+        held = float((z * each.base[SHARED_AT]).sum())
+        scale = max(held, float(total), 1.0)
+        shares = ((1.0, each.goal.share_high), (-1.0, each.goal.share_low)) if held > NO_SHARES else ()
         for sign, bound in shares:
             rows = sign * (slope - bound[:, None] * total_slope) / scale
             matrix.append(rows)
@@ -271,8 +272,8 @@ def _weights(each: Checkpoint) -> Array:
 
 
 def _by_shares(each: Checkpoint) -> bool:
-    aim, now = each.goal.aim[SHARED_AT], each.now[SHARED_AT] @ CHARGE[SHARED_AT]
-    return not each.goal.named and each.point != "feed" and bool((aim > 0.0).all()) and now > NO_SHARES
+    aim, held = each.goal.aim[SHARED_AT], each.base[SHARED_AT] @ CHARGE[SHARED_AT]
+    return not each.goal.named and each.point != "feed" and bool((aim > 0.0).all()) and held > NO_SHARES
 
 
 def _share_rows(each: Checkpoint) -> tuple[Array, Array]:

@@ -171,13 +171,13 @@ def dose(task: Task, runs: Runs, solver: Solver, without: Course) -> Dosed:
 
 
 def _left_undone(end: Checkpoint, move: Array) -> bool:
-    """Whether a plan leaves the shares out of their bands, or nutrients in excess, by the straight line.
+    """Whether a plan leaves the shares out of their bands, or Ca, Mg and SO4 all in excess, by the straight line.
 
     An ion over its limit is no reason: none of it is added, and the renewal that lowers it is advice beside the plan.
     """
     composition = end.now + end.slope @ move
-    gathered = [ion for ion in excess_of(composition, end.goal) if ion in NUTRIENTS_THAT_STAY]
-    return violation(end, composition) > REACHED_PCT or len(gathered) > 1
+    gathered = set(NUTRIENTS_THAT_STAY) <= set(excess_of(composition, end.goal))
+    return violation(end, composition) > REACHED_PCT or gathered
 
 
 def _probe(task: Task) -> Checkpoint:

@@ -90,7 +90,10 @@ class Request:
     def in_order(self, without: Outlook) -> bool:
         """Whether the managed point is in its bands now and at the horizon without any plan."""
         point = self.situation.managed
-        return not any(out_of_band(points[point], self.managed) for points in (self.before, without.points))
+        filling = self.before[point].ec.value < FILLING * _ec_of_aim(self.managed)
+        return not filling and not any(
+            out_of_band(points[point], self.managed) for points in (self.before, without.points)
+        )
 
     def strengthened(self, end: Array) -> Request:
         """The same with its aim at the strength the loop is run at, ``end`` (10,) being the managed point at the
@@ -98,14 +101,19 @@ class Request:
 
         An aim named for this plan stands as it is, and so does that of a vessel that is only being filled.
         """
-        wanted = np.nan_to_num(self.managed.aim, nan=0.0)
-        made = float(conductivity(wanted)) - 0.1 * wanted[INDEX["Na"]]
+        made = _ec_of_aim(self.managed)
         held = float(conductivity(np.maximum(end, 0.0))) - 0.1 * float(end[INDEX["Na"]])
         if self.managed.named or made <= 0.0 or held < FILLING * made:
             return self
         point = self.situation.managed
         factor = float(np.clip(held / made, *STRENGTH))
         return replace(self, goals={**self.goals, point: self.goals[point].scaled(factor)})
+
+
+def _ec_of_aim(goal: Goal) -> float:
+    """Nutrient EC [mS/cm] of an aim: EC less 0.1 a mmol/L of Na."""
+    wanted = np.nan_to_num(goal.aim, nan=0.0)
+    return float(conductivity(wanted)) - 0.1 * float(wanted[INDEX["Na"]])
 
 
 def goals_of(situation: Situation, target: str | None, points: Sequence[str]) -> dict[str, Goal]:
