@@ -59,7 +59,7 @@ def corrected(old: Entry, changes: Mapping[str, str], site: Site, now: datetime,
         raise LogbookError(f"the correction of entry {old.number} changes nothing; name what was wrong, e.g. K=5.1.")
     chosen = site.loop(old.loop) if old.loop in {each.name for each in site.loops} else site.loops[0]
     entered = now.astimezone(UTC)
-    base = replace(old, number=None, entered=entered, by="", supersedes=old.number, why=why.strip())
+    base = replace(old, number=None, entered=entered, by="", supersedes=old.number, why=why.strip(), flags="")
     return _complete(_with_texts(base, {"by": by, **changes}, site, chosen, now), site, chosen)
 
 

@@ -59,9 +59,10 @@ def tank_names(site: Site, loop: Loop | None) -> tuple[str, ...]:
 def _number(field: Field, name: str, written: str, site: Site, now: datetime) -> Value:
     if field.what == "time":
         return Value(field.name, written, read_moment(written, site.timezone, now)[0].timestamp())
-    what = name if field.what in ("ion", "micronutrient") else _MEASURED_AS.get(field.what, field.what)
-    if field.what in ("ion", "micronutrient") and name.lower() == field.name.lower():
-        what = field.name
+    if field.what in ("ion", "micronutrient"):
+        what = field.name if name.lower() == field.name.lower() else name
+    else:
+        what = _MEASURED_AS.get(field.what, field.what)
     quantity = quantities.read(written, what)
     return Value(field.name, written, quantity.number, quantity.unit, quantity.species, quantity.below)
 
@@ -114,19 +115,15 @@ def _check_possible(field: Field, value: Value) -> None:
     unit = f" {field.unit}" if field.unit else ""
     raise LogbookError(
         f"{field.name} = {value.text!r} is {number:g}{unit}, which cannot be ({field.low:g} to {field.high:g}{unit})."
-        + _perhaps(field, number)
+        + _perhaps(field, value, number)
     )
 
 
-def _perhaps(field: Field, number: float) -> str:
-    ten = (
-        f" Out by ten? {number / 10:g}."
-        if field.high is not None and field.high / 10 < number / 10 <= field.high
-        else ""
-    )
+def _perhaps(field: Field, value: Value, number: float) -> str:
+    ten = f" Out by ten? {number / 10:g}." if field.high is not None and number / 10 <= field.high else ""
+    if value.unit:
+        return ten
     if field.what == "EC":
         unit, factor = ("uS/cm", 1000) if number >= 500 else ("10^-5 S/cm", 100)
-        return f" Was it {unit} ({number / factor:g} mS/cm)? Write the unit behind it." + ten
-    if field.what == "ion":
-        return " Was it mg/L? Write the unit behind it." + ten
-    return ten
+        return f" Was it {unit} ({number / factor:g} mS/cm)? Write the unit behind it."
+    return " Was it mg/L? Write the unit behind it." + ten if field.what == "ion" else ten

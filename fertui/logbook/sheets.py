@@ -15,6 +15,7 @@ from fertui.quantities.refusal import QuantityError
 from fertui.quantities.units import is_unit
 
 LARGEST_BYTES = 20_000_000
+MOST_TITLE_LINES = 20
 DELIMITERS = ("\t", ";", "|", ",")
 
 _COMMA_DECIMAL = re.compile(r"<?\s*-?(\d+,\d{1,2}|0,\d+|\d+,\d{4,}|\d{1,3}(\.\d{3})+,\d+)")
@@ -75,7 +76,7 @@ def sheet_of(text: str, name: str, delimiter: str = "", decimal: str = "") -> Sh
         numbered = [(reader.line_num, [cell.strip() for cell in row]) for row in reader]
     except csv.Error as error:
         raise LogbookError(f"{name} is not a table: {error}.") from error
-    filled = [(line, row) for line, row in numbered if any(row)]
+    filled = _below_title([(line, row) for line, row in numbered if any(row)])
     if len(filled) < 2:
         raise LogbookError(f"{name} has no rows below its heads.")
     (_, heads), *body = filled
@@ -125,6 +126,13 @@ def _decimal(rows: Sequence[Sequence[str]]) -> str:
     return "" if comma == point else "," if comma else "."
 
 
+def _below_title(rows: list[tuple[int, list[str]]]) -> list[tuple[int, list[str]]]:
+    """The rows from the heads on: lines of a title or address above them have far fewer cells."""
+    cells = [sum(map(bool, row)) for _, row in rows]
+    heads = next((place for place, count in enumerate(cells[:MOST_TITLE_LINES]) if count >= 0.6 * max(cells)), 0)
+    return rows[heads:]
+
+
 def _padded(row: Sequence[str], width: int) -> tuple[str, ...]:
     return (*row, *("",) * (width - len(row)))
 
@@ -140,8 +148,7 @@ def _with_units_row(sheet: Sheet) -> Sheet:
 
 
 def _like_unit(cell: str) -> bool:
-    first = cell.split(" ")[0]
-    return not cell[:1].isdigit() and (is_unit(cell) or is_unit(first)) or is_unit(cell)
+    return is_unit(cell) or is_unit(cell.split(" ")[0])
 
 
 def _upright(sheet: Sheet) -> Sheet:

@@ -124,6 +124,7 @@ SHAPES = {
     "quoted commas": 'date,point,K [mg/L],pH\n2026-06-20,drain,"280,0","5,6"\n',
     "thousands": "date;point;K [ug/L];pH\n2026-06-20;drain;280.000,0;5,6\n",
     "units below": "date,point,K,pH\n,,mg/L,\n2026-06-20,drain,280,5.6\n",
+    "title above": "Test laboratory\n\nClient,12\ndate,point,K [mg/L],pH\n2026-06-20,drain,280,5.6\n",
     "units behind": "date,point,K_mg_L,pH\n2026-06-20,drain,280,5.6\n",
     "byte-order mark": "\ufeffdate,point,potassium [mg/L],pH\n2026-06-20,drain,280,5.6\n",
     "samples across": "date;unit;2026-06-20\nK;mg/L;280\npH;;5,6\npoint;;drain\n",
