@@ -20,6 +20,8 @@ from fertui.chemistry.ions import CATION_CHARGE, IONS, Array
 LAYOUTS = ("shared-tank", "drain-blend", "known-feed")
 STORE, ROOT = 0, 1
 NOTHING: Array = np.zeros(len(IONS))
+DRY_L = 1e-6
+"""A vessel with less water than this is dry: it has no concentration, what it holds is salt."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -113,9 +115,9 @@ class State:
         return int(self.water_l.shape[0])
 
     def concentration(self, compartment: int) -> Array:
-        """Concentrations [mmol/L] (M, 10) of one compartment; zero where it holds no water."""
+        """Concentrations [mmol/L] (M, 10) of one compartment; zero where it is dry."""
         water = self.water_l[:, compartment, None]
-        return np.where(water > 0, self.ions_mmol[:, compartment] / np.where(water > 0, water, 1.0), 0.0)
+        return self.ions_mmol[:, compartment] * (water > DRY_L) / np.maximum(water, DRY_L)
 
     def with_concentration(self, compartment: int, mmol_l: Array) -> State:
         """The same water with other concentrations (10,) or (M, 10) [mmol/L]; the exchanger is left as it is."""

@@ -87,7 +87,7 @@ def solution(state: State) -> Array:
     return state.ions_mmol.sum(axis=1)
 
 
-@settings(max_examples=120, deadline=None)
+@settings(max_examples=60, deadline=None)
 @given(circuits(), drives(), st.sampled_from([0.0, 300.0]), st.sampled_from([0.02, 1.0]), EVENTS)
 def test_account_closes_and_nothing_is_negative(
     circuit: Circuit, drive: Drive, capacity: float, strength: float, events: list[Event]
@@ -118,7 +118,7 @@ def test_charge_and_exchanger_balance(circuit: Circuit, drive: Drive, capacity: 
     np.testing.assert_allclose(trajectory.fluxes.cause("exchange")[:, :5], lost, atol=1e-9)
 
 
-@settings(max_examples=40, deadline=None)
+@settings(max_examples=25, deadline=None)
 @given(circuits(), drives(), EVENTS)
 def test_periods_add_up(circuit: Circuit, drive: Drive, events: list[Event]) -> None:
     trajectory = run(circuit, drive, 200.0, 1.0, events)
@@ -129,7 +129,7 @@ def test_periods_add_up(circuit: Circuit, drive: Drive, events: list[Event]) -> 
     assert set(whole.row("K")) == {"start_mmol", *CAUSES, "end_mmol"}
 
 
-@settings(max_examples=40, deadline=None)
+@settings(max_examples=25, deadline=None)
 @given(st.sampled_from([0.0, 300.0]), st.floats(0.2, 8.0), st.floats(0.001, 1.0))
 def test_uptake_alone_takes_no_ion_below_its_minimum(capacity: float, crop: float, strength: float) -> None:
     """A beaker with roots and nothing else: no water comes, none leaves but what the crop drinks."""
