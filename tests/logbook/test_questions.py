@@ -118,6 +118,10 @@ def test_batches_doses_and_acids_are_asked_about(book: Logbook, say: Say) -> Non
     acid = asked(say("acid", "gutters", acid="nitric 38", litres="1", strength="60 %"), book)
     assert set(acid) == {"acid_cautions", "acid_strength"}
     assert asked(say("acid", "gutters", acid="nitric 38", litres="1", cautions="acknowledged"), book) == {}
+    assert asked(say("acid", "gutters", acid="nitric 38", litres="1", at="yesterday"), book) == {}
+    assert set(asked(say("acid", "gutters", acid="nitric 38", litres="1", at="2026-06-29", tank="tank"), book)) == {
+        "acid_cautions"
+    }
 
 
 def test_whether_a_meter_compensates_is_asked_with_the_number_it_would_be(book: Logbook, say: Say) -> None:

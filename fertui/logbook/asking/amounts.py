@@ -64,11 +64,15 @@ def shelf(setting: Setting) -> Iterator[Question]:
 
 
 def acid(setting: Setting) -> Iterator[Question]:
-    """Acid whose cautions were not acknowledged, or whose strength is not the one of the supply."""
+    """Acid added by hand without its cautions acknowledged, or of another strength than the supply.
+
+    Litres of a whole day without a tank are what the doser drew: nobody handled them.
+    """
     entry = setting.entry
     if entry.kind != "acid":
         return
-    if entry.text_of("cautions") != "acknowledged":
+    by_hand = not entry.whole_day or entry.text_of("tank") or entry.number_of("plan")
+    if by_hand and entry.text_of("cautions") != "acknowledged":
         text = "The cautions of this acid were not acknowledged. Read them on the acid sheet and the safety data sheet."
         yield Question("acid_cautions", text, "cautions", entry.text_of("cautions"), "acknowledged")
     supply, strength = setting.supply(entry.text_of("acid")), entry.number_of("strength")
