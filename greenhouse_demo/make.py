@@ -94,17 +94,17 @@ def _north(light: Array, noise: np.random.Generator) -> list[str]:
         {
             "calcium": {"calcium nitrate double salt": 62, "potassium nitrate": 36, "iron DTPA": 1.4},
             "sulfate": {
-                "potassium nitrate": 31, "potassium sulfate": 27, "monopotassium phosphate": 20,
-                "magnesium sulfate heptahydrate": 36, "monoammonium phosphate": 3,
+                "potassium nitrate": 33, "potassium sulfate": 28, "monopotassium phosphate": 20,
+                "magnesium sulfate heptahydrate": 27, "monoammonium phosphate": 3,
             },
         },
         1000.0,
         (2.3, 3.6),
         0.36,
-        (-59, -47, -35, -23, -9),
+        (-59, -47, -35, -23, -13, -4),
         ("feed", "root_zone"),
     )  # fmt: skip
-    plants = {0: bay.plants, 26: _plants(preset, 3.0 * area, {"K": 1.4, "Ca": 0.92, "Mg": 0.9})}
+    plants = {0: bay.plants, 26: _plants(preset, 3.0 * area, {"K": 1.4, "Ca": 0.95, "Mg": 1.0})}
     bled = Event(27.3, "bleed", litres=3000.0, point="drain_store", reason="filter back-flush")
     lines = _logged(bay, _run(bay, plants, light, (bled,)), light, noise)
     lines += [
@@ -113,7 +113,7 @@ def _north(light: Array, noise: np.random.Generator) -> list[str]:
         '-34 09:05 "north bay" crop stage=fruit-set by=RV note="fifth truss set"',
         '-33 14:55 "north bay" bleed litres=3000 from=drain_store reason="filter back-flush" by=RV',
         '-20 10:15 "north bay" calibration instrument="EC pen" quantity=EC standard=1.413 reading=1.43 result=good by=RV',
-        '-9 09:30 "north bay" sample status=sent point=root_zone by=MK',
+        '-4 09:30 "north bay" sample status=sent point=root_zone by=MK',
     ]
     return [line for line in lines if not _is_yesterdays_drain(line)]
 

@@ -13,14 +13,14 @@ from fertui.workbench.today import reading_of, unit_of
 
 
 def text(plan: Plan, timezone: str, unit: str) -> str:
-    """The plan: the answer first, then what to do, before and after, limits, reasons, cautions."""
+    """The plan: the answer first, what to do, before and after, cautions, then limits, reasons and sums."""
     lines = [f"{plan.loop}: plan over {plan.horizon_days} days, for the {POINT_WORDS[plan.point]}"]
     if not plan.feasible:
         lines += folded(f"No: {plan.reason}", "")
     lines += [line for each in plan.notices for line in folded(each, "! ")]
-    lines += ["", *read_first(plan.cautions)] if plan.acid or plan.steps or plan.recipe else []
     lines += _recipe(plan, timezone, unit) + _steps(plan, timezone) + _acid(plan, timezone) + _renewal(plan)
-    lines += ["", *_outcome(plan)]
+    lines += ["", *_outcome(plan), ""]
+    lines += read_first(plan.cautions) if plan.acid or plan.steps or plan.recipe else []
     lines += _section("Limits that bind", [_binding(each) for each in plan.binding])
     lines += _section("Rule of thumb beside it", plan.rule_of_thumb)
     lines += _section("Why", plan.reasons)
