@@ -9,17 +9,18 @@ from zoneinfo import ZoneInfo
 
 import numpy as np
 
-from fertui.chemistry.ions import IONS
+from fertui.chemistry.ions import IONS, Array
 from fertui.estimate.assimilation import FEW_ANALYSES, Estimate
 from fertui.estimate.correction import ElectroMeter, corrected
-from fertui.estimate.display import SHARED
+from fertui.estimate.display import SHARED, feed_drive, shown_members, solutions
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.forecast import Forecast, forecast
 from fertui.estimate.observations import Observation
 from fertui.estimate.points import Estimated, PointState
+from fertui.estimate.ranges import HIGH, LOW, shares
 
 USUAL_DAYS, OFTEN_DAYS = 14.0, 7.0
-"""A sample every two weeks; every week where the loop is volatile, exchanges, or has too few analyses (field practice)."""
+"""A sample every two weeks; every week where the loop is volatile, exchanges, or is little known (field practice)."""
 WEEKDAYS = ("Mon", "Tue", "Wed", "Thu", "Fri", "Sat", "Sun")
 
 
@@ -39,7 +40,7 @@ class SampleAdvice:
 
 def next_sample(estimate: Estimate, ahead: Forecast) -> SampleAdvice:
     """The best day for the next sample of the managed point: early enough to act before a band is left."""
-    due, why = _due(estimate)
+    due, why = due_in(estimate)
     leaving = _first_leaving(estimate, ahead)
     turnaround = estimate.site.lab_turnaround_d
     if leaving is not None and leaving[0] - turnaround < due:
@@ -50,8 +51,8 @@ def next_sample(estimate: Estimate, ahead: Forecast) -> SampleAdvice:
     return SampleAdvice(take, result, why, narrowed(estimate, ahead))
 
 
-def _due(estimate: Estimate) -> tuple[float, str]:
-    """Days until a sample is due by habit, and the reason."""
+def due_in(estimate: Estimate) -> tuple[float, str]:
+    """Days until a sample is due by habit (negative: overdue), and the reason."""
     last = estimate.last_analysis.get(estimate.managed) or estimate.last_analysis.get("drain")
     if last is None:
         return 0.0, "nothing has been analysed yet"
@@ -67,7 +68,9 @@ def _due(estimate: Estimate) -> tuple[float, str]:
 
 def _first_leaving(estimate: Estimate, ahead: Forecast) -> tuple[float, str] | None:
     """The earliest likely day that something at the managed point leaves its band, unless it is out already."""
-    rows = [row for row in ahead.leaves_band if row.point == estimate.managed and row.days.low and row.days.value != 0.0]
+    rows = [
+        row for row in ahead.leaves_band if row.point == estimate.managed and row.days.low and row.days.value != 0.0
+    ]
     first = min(rows, key=lambda row: row.days.low or np.inf, default=None)
     return None if first is None or first.days.low is None else (first.days.low, first.what)
 
@@ -92,6 +95,25 @@ def narrowed(estimate: Estimate, ahead: Forecast) -> dict[tuple[str, str], float
         if wide.high > wide.low:
             found[estimate.managed, what] = 100.0 * (1.0 - (narrow.high - narrow.low) / (wide.high - wide.low))
     return found
+
+
+def narrows_now(estimate: Estimate) -> dict[str, float]:
+    """By how many percent the 80 % range of each share gets narrower at once if the managed point were analysed now.
+
+    Much cheaper than ``narrowed``: no day ahead is run.
+    """
+    wide, narrow = (_share_widths(estimate, each) for each in (estimate.ensemble, _analysed(estimate)))
+    return {
+        f"{ion} share": 100.0 * (1.0 - after / before) for ion, before, after in zip(SHARED, wide, narrow, strict=True)
+    }
+
+
+def _share_widths(estimate: Estimate, ensemble: Ensemble) -> Array:
+    """Widths (3,) of the 80 % ranges of the shares at the managed point, as they would be shown."""
+    drive = feed_drive(estimate.drives, len(estimate.drives.grid) - 2, ensemble)
+    members = shown_members(solutions(estimate.setting, ensemble, drive)[estimate.managed], estimate.spread)
+    low, high = np.quantile(shares(members), (LOW, HIGH), axis=0)
+    return np.maximum(high - low, 1e-9)
 
 
 def _analysed(estimate: Estimate) -> Ensemble:

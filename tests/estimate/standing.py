@@ -11,6 +11,7 @@ from fertui.estimate.assimilation import HeldBack, Surprise, TrailDay
 from fertui.estimate.points import Band, Estimated, IonState, PointState
 from fertui.estimate.ranges import Spread
 from fertui.estimate.record import Record, read
+from fertui.estimate.setting import Setting, setting
 from fertui.logbook.entries import Entry
 from fertui.logbook.parse import entry_from_text
 from fertui.site.model import Composition, Loop, Site, StockTank, Water
@@ -65,6 +66,11 @@ class Standing:
     held_back: tuple[HeldBack, ...] = ()
     spread: Spread = field(default_factory=Spread)
     trail: tuple[TrailDay, ...] = ()
+
+    @property
+    def setting(self) -> Setting:
+        """The loop as the engine sees it."""
+        return setting(self.loop)
 
     @property
     def record(self) -> Record:

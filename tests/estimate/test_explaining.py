@@ -45,3 +45,15 @@ def test_the_same_ec_from_much_less_or_more_stock_is_said(demo_once: Path, loop:
     (found,) = explained(demo_once, loop, factor)
     assert found.severity == "watch"
     assert "heck" in found.text
+
+
+def test_what_a_sample_would_narrow_is_computed_for_the_invented_site(demo_once: Path) -> None:
+    site = read_site(demo_once)
+    with Logbook.open(demo_once / FILE_NAME) as book:
+        entries = book.entries(at=DEMO_MORNING)
+    later = max(each.at for each in entries if each.kind == "analysis" and each.point == "root_zone") + timedelta(
+        days=9
+    )
+    found = notices(assimilate(site, site.loop("north bay"), entries, later, members=100), entries)
+    (due,) = [each for each in found if each.code == "sample_now"]
+    assert "% narrower" in due.text

@@ -337,16 +337,36 @@ def test_a_reading_whose_question_nobody_answered_is_doubtful() -> None:
     assert "Entry 12 (reading, Wed 1 Jul) was never settled: out by ten?" in found.text
 
 
-def test_an_old_analysis_is_said_unless_a_sample_is_on_its_way() -> None:
+@pytest.fixture
+def halved(monkeypatch: pytest.MonkeyPatch) -> None:
+    """An analysis would halve the range of the K share."""
+    monkeypatch.setattr("fertui.estimate.notices.samples.narrows_now", lambda _: {"K share": 50.0, "Ca share": 20.0})
+
+
+@pytest.mark.usefixtures("halved")
+def test_an_old_analysis_is_said_with_what_one_today_would_narrow() -> None:
     # Samples go every one to two weeks: common practice of extension services.
-    old = Standing(last_analysis={"root_zone": NOW - timedelta(days=17)})
-    (found,) = only("analysis_old", old)
+    (found,) = only("analysis_old", Standing(last_analysis={"root_zone": NOW - timedelta(days=17)}))
     assert (found.severity, found.key) == ("watch", "a")
+    assert found.text == ("The last analysis is 17 days old. One today would make the range of K share 50 % narrower.")
+    assert only("analysis_old", Standing(last_analysis={"root_zone": NOW - timedelta(days=13)})) == []
+
+
+@pytest.mark.usefixtures("halved")
+def test_a_sample_on_its_way_is_waited_for() -> None:
     sent = said("sample", "2026-06-30 10:00", point="root_zone", status="sent")
-    (found,) = only("analysis_old", old, [sent])
+    (found,) = only("analysis_old", Standing(last_analysis={"root_zone": NOW - timedelta(days=17)}), [sent])
     assert found.severity == "note"
     assert "a sample went out on Tue 30 Jun" in found.text
-    assert only("analysis_old", Standing(last_analysis={"root_zone": NOW - timedelta(days=13)})) == []
+    assert only("sample_now", Standing(last_analysis={"root_zone": NOW - timedelta(days=9)}), [sent]) == []
+
+
+@pytest.mark.usefixtures("halved")
+def test_a_sample_is_due_every_week_on_coir_and_every_two_weeks_on_stone_wool() -> None:
+    nine = {"root_zone": NOW - timedelta(days=9)}
+    (found,) = only("sample_now", Standing(last_analysis=nine))
+    assert found.text.startswith("A sample is due (the medium exchanges: every week).")
+    assert only("sample_now", Standing(loop=replace(SLABS, medium="stone-wool"), last_analysis=nine)) == []
 
 
 @pytest.mark.parametrize(("count", "severity"), [(0, "watch"), (1, "note"), (2, "note"), (3, None)])
@@ -429,7 +449,8 @@ def test_every_rule_is_asked_once() -> None:
 
 
 def test_a_shared_tank_is_looked_at_in_the_tank() -> None:
-    standing = Standing(loop=GUTTERS, managed="tank", state=point({"K": known(28.0, (30, 45))}))
+    tank = point({"K": known(28.0, (30, 45))})
+    standing = Standing(loop=GUTTERS, managed="tank", state=tank, last_analysis={"tank": NOW})
     (found,) = only("share_out", standing, [said("reading", MORNING, GUTTERS, EC="1.85")])
     assert found.text.startswith("K share in the tank is 28 %")
     assert found.text.endswith("EC is on set point.")

@@ -72,14 +72,22 @@ class Look:
         known = [each for each in self.entries if each.at <= self.at and not each.void and not each.doubtful]
         return tuple(sorted(known, key=lambda each: each.at))
 
+    @cached_property
+    def _own(self) -> dict[str, list[Entry]]:
+        """This loop's entries by kind, oldest first."""
+        found: dict[str, list[Entry]] = {}
+        for each in self.past:
+            if each.loop == self.loop.name:
+                found.setdefault(each.kind, []).append(each)
+        return found
+
     def of(self, *kinds: str, days: float | None = None) -> list[Entry]:
         """Entries of this loop of some kinds, of the last so many days, oldest first."""
-        since = None if days is None else self.at - timedelta(days=days)
-        return [
-            each
-            for each in self.past
-            if each.kind in kinds and each.loop == self.loop.name and (since is None or each.at >= since)
-        ]
+        found = [each for kind in kinds for each in self._own.get(kind, ())]
+        if days is not None:
+            since = self.at - timedelta(days=days)
+            found = [each for each in found if each.at >= since]
+        return found if len(kinds) == 1 else sorted(found, key=lambda each: each.at)
 
     def measured(self, name: str, points: Sequence[str], days: float) -> list[Measured]:
         """Readings of a number at any of some points within the last days, oldest first."""

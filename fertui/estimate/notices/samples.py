@@ -7,6 +7,7 @@ from datetime import datetime, timedelta
 
 from fertui.estimate.notices.look import Look
 from fertui.estimate.notices.notice import NOTE, WATCH, Notice
+from fertui.estimate.sampling import due_in, narrows_now
 
 FEW = 3
 """Analyses before ranges are the loop's own."""
@@ -14,6 +15,8 @@ OLD_DAYS = 14.0
 """Samples go every one to two weeks (Blok et al., literature study on ion-specific methods; extension practice)."""
 WEEK_DAYS = 7.5
 AWAITED_DAYS = 14.0
+WORTH_PCT = 10.0
+"""A range narrowed by less is not worth the words."""
 
 
 def few(look: Look) -> Iterator[Notice]:
@@ -29,16 +32,29 @@ def few(look: Look) -> Iterator[Notice]:
 
 
 def age(look: Look) -> Iterator[Notice]:
-    """The last analysis of the managed solution is old."""
+    """The last analysis of the managed solution is old, or the next is due: with what one today would narrow."""
     last = last_analysis(look)
-    if last is None or look.age_days(last) <= OLD_DAYS:
+    if last is None:
         return
-    sent = awaited(look, last)
-    days = f"The last analysis is {look.age_days(last):.0f} days old"
-    if sent is not None:
-        yield Notice("analysis_old", NOTE, f"{days}; a sample went out on {look.day(sent)}.", "a")
-    else:
-        yield Notice("analysis_old", WATCH, f"{days}. Ranges widen every day; send a sample.", "a")
+    days, sent = look.age_days(last), awaited(look, last)
+    if days > OLD_DAYS and sent is not None:
+        text = f"The last analysis is {days:.0f} days old; a sample went out on {look.day(sent)}."
+        yield Notice("analysis_old", NOTE, text, "a")
+    elif days > OLD_DAYS:
+        yield Notice("analysis_old", WATCH, f"The last analysis is {days:.0f} days old.{_narrows(look)}", "a")
+    elif sent is None:
+        due, why = due_in(look.estimate)
+        if due <= 0.0:
+            yield Notice("sample_now", NOTE, f"A sample is due ({why}).{_narrows(look)}", "a")
+
+
+def _narrows(look: Look) -> str:
+    """What an analysis today would tell, computed."""
+    found = narrows_now(look.estimate)
+    what = max(found, key=lambda each: found[each])
+    if found[what] < WORTH_PCT:
+        return " Send a sample."
+    return f" One today would make the range of {what} {found[what]:.0f} % narrower."
 
 
 def volatile(look: Look) -> Iterator[Notice]:
