@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import difflib
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 
@@ -356,6 +355,8 @@ def nearest(name: str, known: Iterable[str]) -> str:
     >>> nearest("redaing", ["reading", "water"])
     "; did you mean 'reading'"
     """
+    import difflib
+
     by_lower = {each.lower(): each for each in known}
     found = difflib.get_close_matches(name.lower(), by_lower, n=1, cutoff=0.6)
     return f"; did you mean {by_lower[found[0]]!r}" if found else ""

@@ -18,6 +18,7 @@ ASKERS: tuple[Asker, ...] = (
     values.out_by_ten,
     values.other_unit,
     values.unusual,
+    values.stage,
     times.twice,
     times.long_past,
     times.clock,

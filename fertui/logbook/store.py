@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
 import os
 import sqlite3
 import threading
@@ -330,6 +329,8 @@ class Logbook:
 
 def link_of(chain: str, entry: Entry) -> str:
     """SHA-256 over the link before and the entry's line: a changed or lost entry breaks every link after it."""
+    import hashlib
+
     return hashlib.sha256(f"{chain}\n{line_of(entry)}".encode()).hexdigest()
 
 

@@ -124,6 +124,12 @@ def test_batches_doses_and_acids_are_asked_about(book: Logbook, say: Say) -> Non
     }
 
 
+def test_a_stage_the_catalogue_does_not_know_is_asked_about(book: Logbook, say: Say) -> None:
+    assert "Known: " in asked(say("crop", stage="fruitset"), book)["stage"].text
+    known = asked(say("crop", stage="fruitset"), book)["stage"].text.split("Known: ")[1].split(",")[0].rstrip(".")
+    assert asked(say("crop", stage=known), book) == {}
+
+
 def test_whether_a_meter_compensates_is_asked_with_the_number_it_would_be(book: Logbook, say: Say) -> None:
     found = asked(say("reading", point="feed", EC="2.60", temperature="15", instrument="white pen"), book)
     # 2.60 x 1.256 (ISO 7888:1985, factor at 15 C)

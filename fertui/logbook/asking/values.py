@@ -7,7 +7,8 @@ from collections.abc import Iterator
 from fertui import quantities
 from fertui.logbook.asking.question import Question, Setting
 from fertui.logbook.entries import Value
-from fertui.logbook.kinds import Field
+from fertui.logbook.kinds import Field, nearest
+from fertui.refusals import Refusal
 
 TEN = (7.0, 14.0)
 """A number this many times the last one, or as much smaller, looks out by ten (common practice, no source)."""
@@ -60,6 +61,22 @@ def other_unit(setting: Setting) -> Iterator[Question]:
                 text = f"{field.name} {value.text}? The last was {last[1]:.3g}. Was this {mass}?"
                 yield Question("other_unit", text, field.name, value.text, f"{form}={value.text} mg/L")
                 break
+
+
+def stage(setting: Setting) -> Iterator[Question]:
+    """A stage the catalogue does not know for the loop's crop: allowed, but no uptake goes with it."""
+    written = setting.entry.text_of("stage")
+    if setting.entry.kind != "crop" or not written or setting.loop is None:
+        return
+    from fertui.catalogue.crops import crop
+
+    try:
+        known = tuple(crop(setting.entry.text_of("crop") or setting.loop.crop).stages)
+    except Refusal:
+        return
+    if known and written not in known:
+        text = f"{written!r} is no stage of the catalogue{nearest(written, known)}. Known: {', '.join(known)}."
+        yield Question("stage", f"{text} With another name the uptake of the whole season is used.", "stage", written)
 
 
 def usual_range_only(field: Field, value: Value, number: float) -> Iterator[Question]:
