@@ -49,6 +49,7 @@ class Logbook:
         self._connection = connection
         self._lock = threading.RLock()
         self._seen: dict[int, Entry] = {}
+        self._file = _identity(path)
 
     @classmethod
     def create(cls, path: str | Path) -> Logbook:
@@ -261,6 +262,9 @@ class Logbook:
     def _writing(self) -> Iterator[sqlite3.Connection]:
         if not self.writable:
             raise StoreError(f"{self.path} cannot be written here (read-only file or folder); nothing was recorded.")
+        if _identity(self.path) != self._file:
+            words = "was moved, deleted or replaced while it was open; nothing was recorded"
+            raise StoreError(f"{self.path} {words}. Leave and open the site again.")
         with self._lock, _spoken(self.path):
             self._begin()
             try:
@@ -332,6 +336,15 @@ def link_of(chain: str, entry: Entry) -> str:
     import hashlib
 
     return hashlib.sha256(f"{chain}\n{line_of(entry)}".encode()).hexdigest()
+
+
+def _identity(path: Path) -> tuple[int, int] | None:
+    """Which file stands under a name; None where there is none."""
+    try:
+        found = path.stat()
+    except OSError:
+        return None
+    return found.st_dev, found.st_ino
 
 
 def _connect(path: Path, address: str) -> sqlite3.Connection:

@@ -204,3 +204,17 @@ def test_a_read_only_folder_can_be_read_and_says_that_it_cannot_be_written() -> 
         os.chmod(folder, 0o755)
         (folder / FILE_NAME).unlink()
         folder.rmdir()
+
+
+def test_a_logbook_that_was_moved_or_replaced_while_open_takes_nothing(tmp_path: Path) -> None:
+    path = tmp_path / FILE_NAME
+    with Logbook.create(path) as book:
+        book.append(entry(1))
+        path.rename(tmp_path / "elsewhere.sqlite3")
+        with pytest.raises(StoreError, match="moved, deleted or replaced"):
+            book.append(entry(2))
+        Logbook.create(path).close()
+        with pytest.raises(StoreError, match="moved, deleted or replaced"):
+            book.append(entry(2))
+    with Logbook.open(path) as new:
+        assert new.last_number() == 0
