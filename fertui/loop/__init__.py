@@ -1,6 +1,6 @@
 """Physics of one recirculating loop on arrays: uptake, circulation, simulation, account. Knows chemistry alone."""
 
-from fertui.loop.account import Account, Booking, Discharge, discharged
+from fertui.loop.account import Account, Booking, Discharge, discharged, running
 from fertui.loop.circulation import CAUSE, CAUSES, WATERS, Fluxes, advance, feed_composition, no_fluxes
 from fertui.loop.simulation import Perturb, Timeline, Trajectory, apply, corrected, simulate
 from fertui.loop.uptake import UPTAKE_TABLE, Kinetics, Parameter, Plants, temperature_notice, uptake
@@ -23,6 +23,6 @@ __all__ = [
     "CAUSE", "CAUSES", "INERT", "ROOT", "STORE", "UPTAKE_TABLE", "WATERS",
     "Account", "Booking", "Circuit", "Discharge", "Drive", "Event", "Fluxes", "Hold", "Kinetics", "Medium",
     "Parameter", "Perturb", "Plants", "State", "Timeline", "Trajectory",
-    "advance", "apply", "corrected", "discharged", "feed_composition", "hold_ec", "hold_ph", "no_fluxes", "simulate",
+    "advance", "apply", "corrected", "discharged", "feed_composition", "hold_ec", "hold_ph", "no_fluxes", "running", "simulate",
     "start", "temperature_notice", "uptake",
 ]  # fmt: skip

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fertui.chemistry.ions import ATOMIC_WEIGHT, INDEX, IONS, Array
-from fertui.loop.circulation import CAUSE, CAUSES, Fluxes
+from fertui.loop.circulation import CAUSE, CAUSES, WATERS, Fluxes
 from fertui.loop.values import Event
 
 
@@ -90,25 +90,39 @@ def discharged(lines: Iterable[Booking], area_m2: float) -> tuple[Discharge, ...
     N counts NH4 and NO3, P total phosphate; ``area_m2`` of the loop. Bleed by rate has the reason "continuous",
     what ran over "overflow", the drain of a known-feed loop "drain".
     """
-    ions: dict[str, Array] = {}
-    litres: dict[str, float] = {}
+    amounts: dict[str, Array] = {}
     for line in lines:
-        bleed = -line.by_cause[CAUSE["bleed"]] + line.overflow
-        parts = {
-            line.reason or "continuous": bleed,
-            "overflow": -line.overflow,
-            "drain": -line.by_cause[CAUSE["drain"]],
-        }
-        for reason, amount in parts.items():
-            if np.any(amount > 0):
-                ions[reason] = ions.get(reason, np.zeros(len(IONS))) + amount
-        reason = next((name for name in parts if name in ions), "continuous")
-        litres[reason] = litres.get(reason, 0.0) + float(line.litres[-1])
-    rows = [_discharge(reason, litres.get(reason, 0.0), amount, area_m2) for reason, amount in ions.items()]
+        for reason, amount in _left(line).items():
+            amounts[reason] = amounts.get(reason, 0.0) + amount
+    rows = [_discharge(reason, amount, area_m2) for reason, amount in amounts.items() if amount[0] > 0]
     return tuple(sorted(rows, key=lambda row: -row.kg_n))
 
 
-def _discharge(reason: str, litres: float, ions_mmol: Array, area_m2: float) -> Discharge:
+def running(lines: Iterable[Booking], area_m2: float) -> tuple[tuple[float, float, float], ...]:
+    """Running total of discharge: (time [d], kg N per ha, kg P per ha) after every line, for a year's budget.
+
+    >>> running([], 1000.0)
+    ()
+    """
+    total, rows = np.zeros(len(IONS) + 1), []
+    for line in lines:
+        total = total + sum(_left(line).values())
+        row = _discharge("", total, area_m2)
+        rows.append((line.end, row.kg_n_per_ha, row.kg_p_per_ha))
+    return tuple(rows)
+
+
+def _left(line: Booking) -> dict[str, Array]:
+    """What left the loop for good in one line, by reason: litres, then ions [mmol] (11,)."""
+    litres = {name: line.litres[WATERS.index(name)] for name in ("bleed", "overflow", "drain", "feed")}
+    overflow = np.append(litres["overflow"], -line.overflow)
+    bleed = np.append(litres["bleed"], -line.by_cause[CAUSE["bleed"]]) - overflow
+    lost = np.append(litres["drain"] if litres["feed"] > 0 else 0.0, -line.by_cause[CAUSE["drain"]])
+    return {line.reason or "continuous": bleed, "overflow": overflow, "drain": lost}
+
+
+def _discharge(reason: str, left: Array, area_m2: float) -> Discharge:
+    litres, ions_mmol = float(left[0]), left[1:]
     kg_n = float(ions_mmol[INDEX["NH4"]] + ions_mmol[INDEX["NO3"]]) * ATOMIC_WEIGHT["N"] * 1e-6
     kg_p = float(ions_mmol[INDEX["H2PO4"]]) * ATOMIC_WEIGHT["P"] * 1e-6
     hectares = area_m2 / 10_000.0

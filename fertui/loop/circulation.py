@@ -22,8 +22,8 @@ from fertui.loop.water import Flows, flows
 CAUSES = ("make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained")
 """Order of the cause axis of every account."""
 CAUSE = {cause: position for position, cause in enumerate(CAUSES)}
-WATERS = ("make_up", "feed", "irrigation", "crop", "drain", "bleed")
-"""Order of the water axis of ``Fluxes.litres``."""
+WATERS = ("make_up", "feed", "irrigation", "crop", "drain", "bleed", "overflow")
+"""Order of the water axis of ``Fluxes.litres``; ``overflow`` is a part of ``bleed``."""
 
 TOLERANCE = 0.003
 """Relative error estimate that one step may have; keeps 28 days within 0.5 % of a stiff solver on all layouts."""
@@ -389,7 +389,8 @@ def _book_water(water: Flows, days: float, lost: Array, fluxes: Fluxes) -> None:
     drained = water.back + np.where(water.feed > 0, water.lost_root, 0.0)
     bled = np.where(water.feed > 0, 0.0, leaving)
     fresh = water.fresh_store + water.fresh_root
-    fluxes.litres[:] = days * np.stack([fresh, water.feed, into_root, water.crop, drained, bled], axis=1)
+    rows = (fresh, water.feed, into_root, water.crop, drained, bled, water.overflow)
+    fluxes.litres[:] = days * np.stack(rows, axis=1)
 
 
 def feed_composition(circuit: Circuit, drive: Drive, state: State, when: float = 0.0) -> Array:

@@ -10,7 +10,7 @@ import numpy as np
 
 from fertui.chemistry.ions import Array
 from fertui.loop.account import Account, Booking, booking, summed
-from fertui.loop.circulation import CAUSE, Fluxes, advance, feed_composition, no_fluxes
+from fertui.loop.circulation import CAUSE, WATERS, Fluxes, advance, feed_composition, no_fluxes
 from fertui.loop.uptake import Plants
 from fertui.loop.values import ROOT, STORE, Circuit, Drive, Event, Medium, State
 
@@ -112,7 +112,7 @@ def _added(circuit: Circuit, state: State, event: Event, where: int) -> tuple[St
     water[:, where] += event.litres
     fluxes.by_cause[:, CAUSE[event.cause]] = event.ions_mmol
     if event.cause == "make_up":
-        fluxes.litres[:, 0] = event.litres
+        fluxes.litres[:, WATERS.index("make_up")] = event.litres
     return _spilled(circuit, replace(state, water_l=water, ions_mmol=ions), where, fluxes), fluxes
 
 
@@ -125,6 +125,7 @@ def _spilled(circuit: Circuit, state: State, where: int, fluxes: Fluxes) -> Stat
     ended, out = _bled(state, Event(0.0, "bleed", litres=np.maximum(surplus, 0.0)), where)
     fluxes.by_cause[:] += out.by_cause
     fluxes.litres[:] += out.litres
+    fluxes.litres[:, WATERS.index("overflow")] += out.litres[:, WATERS.index("bleed")]
     fluxes.overflow[:] += out.cause("bleed")
     return ended
 
@@ -139,7 +140,7 @@ def _bled(state: State, event: Event, where: int) -> tuple[State, Fluxes]:
     ions[:, where] -= out
     fluxes = no_fluxes(state.members)
     fluxes.by_cause[:, CAUSE["bleed"]] = -out
-    fluxes.litres[:, -1] = litres
+    fluxes.litres[:, WATERS.index("bleed")] = litres
     return replace(state, water_l=water, ions_mmol=ions), fluxes
 
 

@@ -1,0 +1,56 @@
+"""What the engine costs, as ratios within one run; the figures stand in docs/model.md chapter 12.
+
+Run by hand: ``pytest tests/benchmarks/test_loop_cost.py -m long -s``.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+
+import numpy as np
+import pytest
+
+from fertui.loop import Timeline, simulate
+from tests.loop.invented_sites import SITES, engine, plain_start
+from tests.loop.plain_model import Site, solve
+
+pytestmark = pytest.mark.long
+DAYS = 60.0
+COIR = tuple(site for site in SITES if site.capacity_meq)
+
+
+def seconds(work: Callable[[], object], repeat: int = 3) -> float:
+    """Best processor time of a few runs: other work on the machine adds to wall time, not to this."""
+    times = []
+    for _ in range(repeat):
+        begin = time.process_time()
+        work()
+        times.append(time.process_time() - begin)
+    return min(times)
+
+
+def ensemble(site: Site, members: int, days: float) -> None:
+    circuit, medium, plants, state, drive = engine(site, members)
+    spread = np.exp(np.random.default_rng(1).normal(0.0, 0.1, (members, 10)))
+    plants = type(plants)(plants.uptake_concentration * spread, plants.reference, plants.reference_l_d)
+    simulate(circuit, medium, plants, state, Timeline(((0.0, drive),)), [days])
+
+
+@pytest.mark.parametrize("site", COIR, ids=lambda site: site.name)
+def test_256_members_cost_no_more_than_two_members_of_the_stiff_solver(site: Site) -> None:
+    """Outside judge: scipy.integrate.solve_ivp, BDF, rtol 1e-6, vectorised, over the same 60 days, twice one member."""
+    ours = seconds(lambda: ensemble(site, 256, DAYS))
+    theirs = 2 * seconds(lambda: solve(site, plain_start(site), DAYS))
+    print(f"\n{site.name}: 256 members {ours:.3f} s, two members of the solver {theirs:.3f} s, ratio {ours / theirs:.2f}")
+    assert ours <= theirs
+
+
+def test_cost_grows_no_faster_than_members_and_days() -> None:
+    site = COIR[0]
+    by_members = {members: seconds(lambda m=members: ensemble(site, m, 14.0)) for members in (64, 256, 1024, 4096)}
+    by_days = {days: seconds(lambda d=days: ensemble(site, 256, d)) for days in (14.0, 60.0, 180.0, 365.0)}
+    print("\nmembers, 14 days:", {key: f"{value:.3f} s" for key, value in by_members.items()})
+    print("days, 256 members:", {key: f"{value:.3f} s" for key, value in by_days.items()})
+    assert by_members[4096] <= 64 * 1.3 * by_members[64]
+    assert by_days[365.0] <= 365 / 14 * 1.5 * by_days[14.0]
