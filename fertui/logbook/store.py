@@ -58,6 +58,9 @@ class Logbook:
         Raises ``StoreError`` when the file is there already or cannot be made.
         """
         path = Path(path)
+        log = path.with_name(path.name + "-wal")
+        if log.exists():
+            raise StoreError(f"{log} is the log of another logbook that is not here; move it away first.")
         making = path.with_name(f".{path.name}.{os.getpid()}")
         create_private(making)
         try:

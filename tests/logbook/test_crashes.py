@@ -213,8 +213,10 @@ def test_a_logbook_that_was_moved_or_replaced_while_open_takes_nothing(tmp_path:
         path.rename(tmp_path / "elsewhere.sqlite3")
         with pytest.raises(StoreError, match="moved, deleted or replaced"):
             book.append(entry(2))
-        Logbook.create(path).close()
+        # SQLite would take the log of the lost file for one of the new file's own.
+        with pytest.raises(StoreError, match="log of another logbook"):
+            Logbook.create(path)
+        Logbook.create(tmp_path / "other.sqlite3").close()
+        (tmp_path / "other.sqlite3").rename(path)
         with pytest.raises(StoreError, match="moved, deleted or replaced"):
             book.append(entry(2))
-    with Logbook.open(path) as new:
-        assert new.last_number() == 0
