@@ -24,11 +24,11 @@ def dose_sheet(plan: Plan, site: str, timezone: str) -> Page:
     """The sheet of a plan. It is no record: doses count when they are logged as done."""
     lines = heading(f"Dose sheet: {plan.loop}", site, _rests_on(plan, timezone))
     if not plan.feasible:
-        lines += section("NO PLAN", folded(plan.reason or "", "!! "))
+        lines += section("THE ANSWER IS NO", folded(plan.reason or "", "!! "))
     lines += section("FIRST", _first(plan)) + read_first(plan.cautions)
+    lines += _renewal(plan.renewal) if plan.renewal is not None else []
     lines += _weighings(plan.steps, timezone) + _acid(plan.acid, timezone)
     lines += _recipe(plan.recipe, timezone) if plan.recipe is not None else []
-    lines += _renewal(plan.renewal) if plan.renewal is not None else []
     lines += section(f"WHAT COMES OF IT ({plan.point.replace('_', ' ')}, 80 % ranges)", _outcome(plan))
     lines += section("IF IT GOES OTHERWISE", listed(f"{each.case}: {each.text}" for each in plan.sensitivity))
     lines += section("LIMITS THAT BIND", listed(_binding(plan)))

@@ -77,7 +77,9 @@ def folded(text: str, mark: str = "  ") -> list[str]:
     ['yyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyyy', '12 %']
     """
     bound = WITH_UNIT.sub(f"\\1{BOUND}\\2", text)
-    lines = textwrap.wrap(bound, WIDTH, initial_indent=mark, subsequent_indent=" " * len(mark), break_on_hyphens=False)
+    inset = len(text) - len(text.lstrip())
+    hang = " " * (len(mark) + (inset + 2 if inset else 0))
+    lines = textwrap.wrap(bound, WIDTH, initial_indent=mark, subsequent_indent=hang, break_on_hyphens=False)
     return [line.replace(BOUND, " ") for line in lines] or [mark.rstrip()]
 
 

@@ -57,7 +57,7 @@ class AnalysisView:
 
 def analysis(site: Site, loop: Loop, entries: Sequence[Entry], at: datetime) -> AnalysisView:
     """The last analysis of the managed point (drain where the root zone itself was never sampled) beside the feed's."""
-    own = [entry for entry in entries if entry.loop == loop.name and entry.kind == "analysis"]
+    own = [_as_solution(entry, loop) for entry in entries if entry.loop == loop.name and entry.kind == "analysis"]
     point = _measured_point(loop, own)
     there = [entry for entry in own if entry.point == point]
     feed = _last([entry for entry in own if entry.point == "feed"])
@@ -81,6 +81,13 @@ def analysis(site: Site, loop: Loop, entries: Sequence[Entry], at: datetime) -> 
         checks={entry.point: check_analysis(entry) for entry in (feed, managed) if entry is not None},
         last_change=_last_change(loop, entries, previous, managed),
     )
+
+
+def _as_solution(entry: Entry, loop: Loop) -> Entry:
+    """An extract by the site's factor as the pore water it stands for; without a factor (doubtful) as it is."""
+    from fertui.logbook.sampling import as_pore_water
+
+    return as_pore_water(entry, loop) if entry.method in loop.extract_factors else entry
 
 
 def _measured_point(loop: Loop, analyses: Sequence[Entry]) -> str:

@@ -111,7 +111,7 @@ def test_cautions_come_worst_first_and_the_same_words_only_once() -> None:
 
 def test_a_plan_that_is_none_says_so_first_and_asks_nothing_to_be_weighed() -> None:
     text = dose_sheet(hand_plan(feasible=False, reason="Na is over its limit", steps=()), SITE.name, ZONE).text
-    assert text.splitlines()[5:7] == ["NO PLAN", "!! Na is over its limit"]
+    assert text.splitlines()[5:7] == ["THE ANSWER IS NO", "!! Na is over its limit"]
     assert "INTO" not in text
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from datetime import UTC, datetime
 
 import pytest
@@ -87,6 +88,15 @@ def test_feed_previous_and_last_stand_side_by_side_with_their_shares() -> None:
 
 def test_the_drain_stands_in_where_the_root_zone_was_never_sampled() -> None:
     assert view(said("analysis", "2026-06-25 09:00", point="drain", K="6.0")).managed_point == "drain"
+
+
+def test_an_extract_is_shown_as_the_pore_water_it_stands_for() -> None:
+    # Factor of the site for its own paste extracts: its setting, here 2.0.
+    loop = replace(SLABS, extract_factors={"paste": 2.0})
+    texts = {"by": "MK", "at": "2026-06-25 09:00", "point": "root_zone", "method": "paste", "K": "3.0", "EC": "2.0"}
+    entry = entry_from_text("analysis", texts, replace(SITE, loops=(loop,)), loop, NOW)
+    found = analysis(SITE, loop, [entry], NOW)
+    assert (found.method, found.rows[0].managed) == ("paste", 6.0)
 
 
 def test_micronutrients_are_compared_but_not_scaled() -> None:

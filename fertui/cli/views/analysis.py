@@ -26,6 +26,8 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
         if seen is not None:
             numbers = "  ".join(f"{key} {words.number(seen.values[key])}" for key in ("EC", "pH") if key in seen.values)
             lines.append(f"  {name}, {words.local(seen.at, timezone)}, entry {seen.number}: {numbers}")
+    if view.method not in ("", "pore"):
+        lines.append(f"  sampled by {view.method}; shown as the pore water it stands for, by the site's factor")
     if view.ec_reference is not None:
         lines.append(f"  normalised to a nutrient EC of {view.ec_reference:.1f} mS/cm; Na, NH4, HCO3 not scaled")
     lines += ["", *words.table(_rows(view.rows, view.managed_point, unit), right=range(1, 7))]

@@ -19,8 +19,8 @@ def text(plan: Plan, timezone: str, unit: str) -> str:
         lines += folded(f"No: {plan.reason}", "")
     lines += [line for each in plan.notices for line in folded(each, "! ")]
     lines += _recipe(plan, timezone, unit) + _steps(plan, timezone) + _acid(plan, timezone) + _renewal(plan)
-    lines += ["", *_outcome(plan), ""]
-    lines += read_first(plan.cautions) if plan.acid or plan.steps or plan.recipe else []
+    lines += ["", *_outcome(plan)]
+    lines += ["", *read_first(plan.cautions)[:-1]] if plan.acid or plan.steps or plan.recipe else []
     lines += _section("Limits that bind", [_binding(each) for each in plan.binding])
     lines += _section("Rule of thumb beside it", plan.rule_of_thumb)
     lines += _section("Why", plan.reasons)
