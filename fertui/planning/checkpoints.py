@@ -26,7 +26,11 @@ EXCESS = 0.25
 NUTRIENTS_THAT_STAY = ("Ca", "Mg", "SO4")
 """Nutrients that a crop takes up slower than water, so that they gather (field practice)."""
 NO_SHARES = 1.5
-"""Equivalents of K + Ca + Mg [meq/L] up to which shares mean nothing and only the aim counts."""
+"""Equivalents of K + Ca + Mg [meq/L] up to which a vessel is being filled: its aim is counted ion by ion, not by
+shares."""
+FAR_BELOW = -1.0
+"""Saturation index below which no row is made of it: a logarithm is no straight line so far off; the full model
+judges."""
 DRY_INDEX = -5.0
 """Saturation index taken where an ion of the mineral is missing."""
 STEP = 0.02
@@ -149,7 +153,7 @@ def _mineral_parts(each: Checkpoint, x0: Array) -> list[Part]:
     parts: list[Part] = []
     for i, mineral in enumerate(("gypsum", "brushite")):
         row = slope[:, i] @ each.slope
-        if index[i] > DRY_INDEX:
+        if index[i] > FAR_BELOW:
             parts.append(
                 (row, float(most[i] - index[i] + row @ x0), f"{mineral}, {each.name}", float(most[i]), "SI", "")
             )
@@ -178,6 +182,9 @@ def exceeded(each: Checkpoint, composition: Array, before: Array | None = None) 
 SHARE_WEIGHT = 5.0
 """What a share off by its whole counts beside an ion off by its whole: a point of share about as much as 5 % of an
 ion."""
+FAR_COST = 3.0
+NEAR_SHARE = 0.05
+"""Distance of a share over its aim from which it counts as far."""
 MARGIN = {"EC": 4e-3, "SI": 1e-2}
 """Room the program keeps from a limit that is not straight, so that the full model does not find it passed."""
 TOLERANCE = {"EC": 1e-3, "EC step": 1e-3, "gypsum": 2e-3, "brushite": 2e-3, "NH4": 2e-3, "Na": 1e-2, "Cl": 1e-2}
@@ -196,10 +203,8 @@ def violation_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array,
             continue
         now, slope = z * each.now[SHARED_AT], z[:, None] * each.slope[SHARED_AT]
         total, total_slope = now.sum(), slope.sum(axis=0)
-        held = float((z * each.base[SHARED_AT]).sum())
-        scale = max(held, float(total), 1.0)
-        shares = ((1.0, each.goal.share_high), (-1.0, each.goal.share_low)) if held > NO_SHARES else ()
-        for sign, bound in shares:
+        scale = max(float((z * each.base[SHARED_AT]).sum()), float(total), 1.0)
+        for sign, bound in ((1.0, each.goal.share_high), (-1.0, each.goal.share_low)):
             rows = sign * (slope - bound[:, None] * total_slope) / scale
             matrix.append(rows)
             high.append(rows @ x0 - sign * (now - bound * total) / scale)
@@ -236,14 +241,18 @@ def violation(each: Checkpoint, composition: Array) -> float:
     return 100.0 * float(out.sum())
 
 
-def misfit_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Array, Array]:
-    """Rows ``matrix x + under - over = value`` of the distance to the aim, and the cost of one unit off.
+def misfit_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Array, Array, Array]:
+    """Rows ``matrix x + under - over - far = value`` of the distance to the aim, the cost of one unit off, and the
+    most of ``over``.
+
+    What lies over the aim by more than a quarter (``far``) costs ``FAR_COST`` times as much: many small misfits
+    before a large one.
 
     K, Ca and Mg are counted by their shares, whatever the strength of the solution, unless the aim was named for this
     plan; every other ion in parts of its aim, sulfate and chloride half. Ions the target does not name count a
     little.
     """
-    matrix, value, cost = [np.zeros((0, len(x0)))], [np.zeros(0)], [np.zeros(0)]
+    matrix, value, cost, near = [np.zeros((0, len(x0)))], [np.zeros(0)], [np.zeros(0)], [np.zeros(0)]
     for each in checkpoints:
         if each.aim_weight <= 0.0:
             continue
@@ -254,10 +263,12 @@ def misfit_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Ar
             matrix.append(rows)
             value.append(rows @ x0 - off)
             cost.append(np.full(len(rows), each.aim_weight * SHARE_WEIGHT))
+            near.append(np.full(len(rows), NEAR_SHARE))
         matrix.append(each.slope)
         value.append(_aim_of(each) - each.now + each.slope @ x0)
         cost.append(weight)
-    return np.vstack(matrix), np.concatenate(value), np.concatenate(cost)
+        near.append(EXCESS * np.maximum(_aim_of(each), 1.0))
+    return np.vstack(matrix), np.concatenate(value), np.concatenate(cost), np.concatenate(near)
 
 
 def _aim_of(each: Checkpoint) -> Array:

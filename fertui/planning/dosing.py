@@ -12,13 +12,16 @@ from dataclasses import dataclass
 import numpy as np
 
 from fertui.chemistry.ions import Array
-from fertui.planning.checkpoints import Checkpoint, Rows, hard_rows, misfit_rows, violation_rows
+from fertui.planning.checkpoints import FAR_COST, Checkpoint, Rows, hard_rows, misfit_rows, violation_rows
 from fertui.planning.programme import Aim, Region, Solver, Whole, lexicographic
 
 FIRST_TO_SECOND = 100.0
 """How much a unit of band violation outweighs a unit of misfit in the rounds that only look for where to be exact."""
 GIVE_MISFIT = 0.01
 """Misfit given away to weigh one salt less: 1 % of one ion."""
+SMALL_SHELF = 4
+LITRES_ROUNDED = 1.0
+"""One unit of renewal that rounding may add."""
 TIE = 1e-3
 """Weight of kilograms or money once the salts are chosen."""
 FINE = 100.0
@@ -59,7 +62,7 @@ class Measures:
 
 @dataclass(frozen=True, slots=True)
 class Programme:
-    """Region and costs over x (n), slacks of the bands, under and over the aim, switches of weighings and of
+    """Region and costs over x (n), slacks of the bands, under, over and far over the aim, switches of weighings and of
     materials."""
 
     region: Region
@@ -77,9 +80,9 @@ def assemble(measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, w
     n, m = len(x0), measures.materials
     hard = hard_rows(checkpoints, x0)
     out, out_high, out_cost = violation_rows(checkpoints, x0)
-    aim, aim_value, aim_cost = misfit_rows(checkpoints, x0)
+    aim, aim_value, aim_cost, near = misfit_rows(checkpoints, x0)
     v, a = len(out), len(aim)
-    between = v + 2 * a
+    between = v + 3 * a
     matrix, low, high = _rows(measures, hard, (out, out_high), (aim, aim_value))
     switched = int(whole is not None)
     units = np.zeros(n, int) if whole is None else whole
@@ -90,12 +93,12 @@ def assemble(measures: Measures, checkpoints: Sequence[Checkpoint], x0: Array, w
     return Programme(
         Region(
             matrix, low, high, zero(len(matrix[0])),
-            np.concatenate([measures.most, np.full(between, np.inf), np.ones(n + m)]),
+            np.concatenate([measures.most, np.full(v + a, np.inf), near, np.full(a, np.inf), np.ones(n + m)]),
             np.concatenate([units, zero(between, int), np.full(n + m, switched)]),
         ),
-        np.concatenate([zero(n), out_cost, zero(2 * a + n + m)]),
+        np.concatenate([zero(n), out_cost, zero(3 * a + n + m)]),
         np.concatenate([renewal / np.maximum(measures.most, 1.0), zero(between + n + m)]),
-        np.concatenate([zero(n + v), aim_cost, aim_cost, zero(n + m)]),
+        np.concatenate([zero(n + v), aim_cost, aim_cost, FAR_COST * aim_cost, zero(n + m)]),
         np.concatenate([spent, zero(between), WEIGHING * (1.0 - renewal), np.ones(m)]),
         n,
         n + between,
@@ -107,10 +110,11 @@ def _rows(
 ) -> tuple[Array, Array, Array]:
     """All rows over all variables: limits, bands, aim, switches, supplies, number of salts."""
     n, m, v, a = len(measures.unit), measures.materials, len(out[0]), len(aim[0])
-    starts = {"slack": n, "under": n + v, "over": n + v + a, "weighing": n + v + 2 * a, "salt": 2 * n + v + 2 * a}
+    starts = {"slack": n, "under": n + v, "over": n + v + a, "far": n + v + 2 * a}
+    starts |= {"weighing": n + v + 3 * a, "salt": 2 * n + v + 3 * a}
 
     def wide(block: Array, **parts: Array) -> Array:
-        row = np.zeros((len(block), 2 * n + v + 2 * a + m))
+        row = np.zeros((len(block), 2 * n + v + 3 * a + m))
         row[:, :n] = block
         for place, part in parts.items():
             row[:, starts[place] : starts[place] + part.shape[1]] = part
@@ -123,7 +127,7 @@ def _rows(
     blocks = [
         (wide(hard.matrix), np.full(len(hard.high), -np.inf), hard.high),
         (wide(out[0], slack=-np.eye(v)), np.full(v, -np.inf), out[1]),
-        (wide(aim[0], under=np.eye(a), over=-np.eye(a)), aim[1], aim[1]),
+        (wide(aim[0], under=np.eye(a), over=-np.eye(a), far=-np.eye(a)), aim[1], aim[1]),
         (wide(np.eye(n), weighing=-np.diag(most)), free, np.zeros(n)),
         (wide(np.zeros((n, n)), weighing=np.eye(n), salt=-of.T), free, 1.0 - of.sum(axis=0)),
         (wide(of), np.full(m, -np.inf), measures.supply),
@@ -157,20 +161,22 @@ def settle(
     """The weighable plan, aim by aim; None where the limits leave no room. Four calls, five with a renewal.
 
     ``whole`` (variables,): 1 where whole units are solved for; the rest is rounded, which moves it by less than 0.5 %.
+    With more than ``SMALL_SHELF`` salts the set of salts is chosen on exact amounts: else a coarse scale would have
+    salts taken in for the sake of rounding alone.
     """
-    programme = assemble(measures, checkpoints, x0, whole)
-    bands = Aim(programme.violation, 1e-6)
-    aims = [bands, Aim(programme.misfit, GIVE_MISFIT), Aim(programme.few)]
+    few_salts = measures.materials <= SMALL_SHELF
+    programme = assemble(measures, checkpoints, x0, whole if few_salts else np.zeros(len(x0), int))
+    aims = [Aim(programme.violation, 1e-6), Aim(programme.misfit, GIVE_MISFIT), Aim(programme.few)]
     if measures.renews:
         aims.insert(1, Aim(programme.litres, 1e-6))
     found = lexicographic(solver, programme.region, aims)
     if found is None:
         return None
     unused = programme.switches + np.flatnonzero(found[programme.switches :] < 0.5)
-    region = programme.region.without(unused)
-    for aim in aims[:-2]:
-        region = region.with_row(aim.cost, float(aim.cost @ found) + aim.give)
-    last = solver.minimise(programme.misfit + TIE * programme.few, region)
+    final = assemble(measures, checkpoints, x0, whole).region.without(unused)
+    litres = float(programme.litres @ found) + 1e-6 + LITRES_ROUNDED / max(float(measures.most[-1]), 1.0)
+    final = final.with_row(programme.litres, litres) if measures.renews else final
+    last = solver.minimise(FIRST_TO_SECOND * programme.violation + programme.misfit + TIE * programme.few, final)
     return np.round((found if last is None else last)[: programme.n])
 
 

@@ -19,6 +19,7 @@ from fertui.planning.reasons import (
     bands_words,
     binding,
     held_by,
+    over_limit_words,
     rule_of_thumb,
     share_words,
     why_salts,
@@ -40,6 +41,7 @@ from fertui.planning.values import (
     Step,
     WhatIf,
 )
+from fertui.planning.weighing import scales_of
 from fertui.site.model import Composition
 
 MISSED_PART = 0.10
@@ -83,11 +85,11 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, sheet: AcidS
     steps = _steps(task, dosed)
     by_name = {each.name: each for each in task.materials}
     used = [by_name[name] for name in dict.fromkeys(step.salt for step in steps)]
-    why = _why_not(request, dosed)
+    feasible, why = _verdict(request, dosed)
     acid = [] if sheet is None else [acid_on_shelf(request.situation.site)]
     found = replace(
         empty,
-        feasible=why is None,
+        feasible=feasible,
         reason=why,
         steps=steps,
         renewal=_renewal(request, dosed),
@@ -99,6 +101,7 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, sheet: AcidS
         arithmetic=arithmetic(steps, by_name, _before(request, dosed), request.situation.volumes_l[task.tank]),
         runner_up=_runner_up(task, dosed, steps),
         sensitivity=_sensitivity(dosed),
+        notices=over_limit_words(dosed.end, request.managed),
         acid=acid_steps(sheet, request.situation.at, "tank:tank"),
         acid_sheet=sheet,
     )
@@ -137,41 +140,48 @@ def _litres(dosed: Dosed) -> float:
     return float(dosed.units[-1] * dosed.measures.unit[-1]) if dosed.measures.renews else 0.0
 
 
-def _why_not(request: Request, dosed: Dosed) -> str | None:
-    """Why salts alone do not reach what was asked; None where they do."""
+def _verdict(request: Request, dosed: Dosed) -> tuple[bool, str | None]:
+    """Whether the plan reaches what was asked, and what has to be said about it: why not, or that salts alone do
+    not."""
     parts = []
     end, goal = dosed.end, request.managed
-    if dosed.broken:
-        passed = (f"{what} would be {value:.2f}, limit {limit:.2f}" for what, value, limit in dosed.broken[:3])
-        parts.append("; ".join(passed))
     litres = _litres(dosed)
     if litres > 0.0:
         over = excess_of(request.situation.composition(request.situation.managed), goal)
         named = ", ".join(f"{ion} by {amount:.1f} mmol/L" for ion, amount in over.items())
-        over_words = f"{named} over what is wanted, and salts only add"
-        words = over_words if named else "the limits leave salts too little room"
-        parts.append(f"salts cannot do it: {words}; renew {litres:.0f} L, with the weighings listed")
+        words = f"{named} over what is wanted, and salts only add" if named else "the limits leave them too little room"
+        parts.append(f"salts alone cannot do it: {words}; renew {litres:.0f} L, with the weighings listed")
+    reached = not dosed.broken and dosed.missed_pct <= REACHED_PCT
+    for what, value, limit in dosed.broken[:3]:
+        parts.append(f"{what} would be {value:.2f}, limit {limit:.2f}")
     if dosed.missed_pct > REACHED_PCT:
-        parts.append(
-            f"{share_words(end)} at the end, outside the bands {bands_words(goal)}; "
-            f"{held_by(binding(dosed.checkpoints))}"
-        )
-    missed = _missed_aims(end, goal)
+        held = held_by(binding(dosed.checkpoints))
+        parts.append(f"{share_words(end)} at the end, outside the bands {bands_words(goal)}; {held}")
+    missed = _missed_aims(request, end, goal)
     if missed:
         parts.append(f"with these salts {missed}")
-    return "; ".join(parts) or None
+    return reached and not missed, "; ".join(parts) or None
 
 
-def _missed_aims(end: Array, goal: Goal) -> str:
-    """Ions of a named target that are missed by more than ``MISSED_PART``."""
+def _missed_aims(request: Request, end: Array, goal: Goal) -> str:
+    """Ions of a named target that are missed by more than ``MISSED_PART`` and more than rounding to the scale
+    explains."""
     if not goal.named:
         return ""
     off = [
         f"{ion} is {end[INDEX[ion]]:.2f} where {goal.aim[INDEX[ion]]:.2f} was asked"
         for ion in MAJOR
-        if goal.wants[INDEX[ion]] and abs(end[INDEX[ion]] / goal.aim[INDEX[ion]] - 1.0) > MISSED_PART
+        if goal.wants[INDEX[ion]]
+        and abs(end[INDEX[ion]] - goal.aim[INDEX[ion]])
+        > max(MISSED_PART * goal.aim[INDEX[ion]], _step_mmol(request, ion))
     ]
     return ", ".join(off)
+
+
+def _step_mmol(request: Request, ion: str) -> float:
+    """What one scale step of the strongest salt of an ion makes in the tank [mmol/L]."""
+    strongest = max((float(each.ions_mmol_per_kg[INDEX[ion]]) for each in request.materials), default=0.0)
+    return scales_of(request.situation.site)[0].step_kg * strongest / request.situation.volumes_l["tank"]
 
 
 def _renewal(request: Request, dosed: Dosed) -> Renewal | None:

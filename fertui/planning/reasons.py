@@ -18,6 +18,8 @@ NEAR = 0.02
 """A limit binds where less than this part of it is left."""
 NEAR_INDEX = 0.05
 """The same for a saturation index."""
+ENOUGH = 1.1
+"""An ion over its aim by more than a tenth is said to be there already."""
 OVER = "already over, none added"
 SPOKEN_MMOL = 0.005
 """Change of an ion [mmol/L] from which the arithmetic speaks of it."""
@@ -75,7 +77,7 @@ def _excess(each: Material, end: Array, goal: Goal) -> list[str]:
     for ion in (*MAJOR, *LIMITED):
         i = INDEX[ion]
         aim = goal.aim[i] if not np.isnan(goal.aim[i]) else 0.0
-        if each.brings(ion) and end[i] > max(aim, 0.05) * 0.98:
+        if each.brings(ion) and end[i] > max(aim, 0.05) * ENOUGH:
             over.append(f"{ion} ({end[i]:.1f} of {aim:.1f} mmol/L)")
     return over
 

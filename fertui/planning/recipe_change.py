@@ -13,6 +13,7 @@ import numpy as np
 
 from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
 from fertui.planning.checkpoints import (
+    FAR_COST,
     Checkpoint,
     ec_factor,
     ec_of,
@@ -172,26 +173,33 @@ def _solved(
     x0 = stages[:, MOVED].ravel()
     hard = hard_rows(checkpoints, x0)
     out, out_high, out_cost = violation_rows(checkpoints, x0)
-    aim, value, aim_cost = misfit_rows(checkpoints, x0)
+    aim, value, aim_cost, near = misfit_rows(checkpoints, x0)
     ec, ec_low, ec_high = _held(task, checkpoints, stages)
     most, most_high = _most_changed(task)
     step, step_high = _step(task)
     v, a, s, b = len(out), len(aim), len(step), len(most)
     n = count * number
-    size = n + v + 2 * a + s + b
+    size = n + v + 3 * a + s + b
 
     def block(rows: Array, **parts: Array) -> Array:
-        wide = np.zeros((len(rows), n + v + 2 * a + s + b))
+        wide = np.zeros((len(rows), size))
         wide[:, :n] = rows @ salts
         for place, part in parts.items():
-            start = {"slack": n, "under": n + v, "over": n + v + a, "moved": n + v + 2 * a, "beyond": size - b}[place]
+            start = {
+                "slack": n,
+                "under": n + v,
+                "over": n + v + a,
+                "far": n + v + 2 * a,
+                "moved": size - b - s,
+                "beyond": size - b,
+            }[place]
             wide[:, start : start + part.shape[1]] = part
         return wide
 
     parts = [
         (block(hard.matrix), np.full(len(hard.high), -np.inf), hard.high - hard.matrix @ own),
         (block(out, slack=-np.eye(v)), np.full(v, -np.inf), out_high - out @ own),
-        (block(aim, under=np.eye(a), over=-np.eye(a)), value - aim @ own, value - aim @ own),
+        (block(aim, under=np.eye(a), over=-np.eye(a), far=-np.eye(a)), value - aim @ own, value - aim @ own),
         (block(ec), ec_low - ec @ own, ec_high - ec @ own),
         (block(most, beyond=-np.eye(b)), np.full(b, -np.inf), most_high - most @ own),
         (block(step, moved=-np.eye(s)), np.full(s, -np.inf), step_high - step @ own),
@@ -201,11 +209,16 @@ def _solved(
     matrix, low, high = (np.concatenate(each) for each in zip(*parts, strict=True))
     further = np.tile(_further(task), 2)
     region = Region(
-        matrix, low, high, np.zeros(size), np.concatenate([np.full(size - b, np.inf), further]), np.zeros(size, int)
+        matrix,
+        low,
+        high,
+        np.zeros(size),
+        np.concatenate([np.full(n + v + a, np.inf), near, np.full(a + s, np.inf), further]),
+        np.zeros(size, int),
     )
     bands = np.concatenate([np.zeros(n), out_cost, np.zeros(size - n - v)])
     beyond = BEYOND / np.maximum(np.tile(task.running[list(MOVED)], 2 * count), 1.0)
-    distance = np.concatenate([np.zeros(n + v), aim_cost, aim_cost, np.zeros(s), beyond])
+    distance = np.concatenate([np.zeros(n + v), aim_cost, aim_cost, FAR_COST * aim_cost, np.zeros(s), beyond])
     aims = [Aim(bands, 1e-6), Aim(distance)] if exact else [Aim(100.0 * bands + distance)]
     found = lexicographic(solver, region, aims)
     if found is None:

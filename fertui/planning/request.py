@@ -28,7 +28,7 @@ FRESH_DAYS = 3.0
 """Age of an analysis [d] up to which another sample says nothing new (common practice, no source)."""
 FILLING = 0.3
 """Part of the aim's EC below which a vessel is being filled, and its aim not scaled down to what is in it."""
-STEPS_BY_DEFAULT = 3
+STEPS_BY_DEFAULT = 4
 MOST_STEPS = 4
 
 
