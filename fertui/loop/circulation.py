@@ -14,7 +14,7 @@ import numpy as np
 
 from fertui.chemistry.ions import CATION_CHARGE, CHARGE, INDEX, Array
 from fertui.loop.exchanger import capacity_of, equilibrated, intensity, nudged, retained
-from fertui.loop.transfer import Pair, Response, Transfer, half_implicit, transfer
+from fertui.loop.transfer import Pair, Response, Transfer, alone, half_implicit, implicit_alone, transfer
 from fertui.loop.uptake import Plants, conductance, demand
 from fertui.loop.values import DRY_L, ROOT, STORE, Circuit, Drive, Hold, Medium, State
 from fertui.loop.water import Flows, flows
@@ -155,7 +155,10 @@ def _half_way(
     circuit: Circuit, drive: Drive, rates: _Rates, x: Pair, middle_l: Array, days: float
 ) -> Pair:
     """Amounts half a step ahead, by an implicit step, with the doses that a held tank takes meanwhile."""
-    response = half_implicit(rates.p, rates.q, rates.r, rates.w, days)
+    if circuit.fed == ROOT:
+        response = implicit_alone(rates.w, days)
+    else:
+        response = half_implicit(rates.p, rates.q, rates.r, rates.w, days)
     y = response((x[0] + days * rates.s0, x[1] + days * rates.s1))
     for _, rate in _tank_doses(circuit, drive, y, response, middle_l):
         y = _added(y, _dosed(circuit, response, rate))
@@ -327,7 +330,8 @@ def _closed(
     for cause, rate in rates.entering.items():
         book[:, CAUSE[cause]] = rate * days
     water_l = np.maximum(state.water_l + days * water.change, 0.0)
-    move = transfer(rates.p, rates.q, rates.r, rates.w, days)
+    one_volume = circuit.fed == ROOT
+    move = alone(rates.w, days) if one_volume else transfer(rates.p, rates.q, rates.r, rates.w, days)
     end, stay = move.end(x, (rates.s0, rates.s1)), move.integral(x, (rates.s0, rates.s1))
     for cause, rate in _tank_doses(circuit, drive, end, move.gained, water_l):
         book[:, CAUSE[cause]] += rate * days

@@ -18,6 +18,7 @@ from fertui.chemistry.ions import Array
 _SMALL = 0.02
 _TWIN = 1e-7
 _TINY = 1e-30
+_NONE: Array = np.zeros((1, 10))
 
 Pair = tuple[Array, Array]
 
@@ -30,8 +31,12 @@ class Response:
     f01: Array
     f10: Array
     f11: Array
+    alone: bool = False
+    """There is no store: only ``f11`` acts."""
 
     def __call__(self, x: Pair) -> Pair:
+        if self.alone:
+            return x[0], self.f11 * x[1]
         return self.f00 * x[0] + self.f01 * x[1], self.f10 * x[0] + self.f11 * x[1]
 
 
@@ -78,11 +83,27 @@ def transfer(p: Array, q: Array, r: Array, w: Array, days: float) -> Transfer:
     return Transfer(days, kept, gained, ramp)
 
 
+def alone(w: Array, days: float) -> Transfer:
+    """Exact transfer where all water is one volume: losses at rates ``w`` (M, ions) [1/d] over ``days`` [d]."""
+    z = -w * days
+    mean = _phi1(z)
+    return Transfer(days, _single(np.exp(z)), _single(days * mean), _single(days * days * _phi2(z, mean)))
+
+
 def half_implicit(p: Array, q: Array, r: Array, w: Array, days: float) -> Response:
     """Implicit Euler step: first order, positive, cheap; end = response(x + days s)."""
     a, b = 1.0 + days * p, 1.0 + days * w
     scale = 1.0 / (a * b - days * days * q * r)
     return Response(b * scale, days * q * scale, days * r * scale, a * scale)
+
+
+def implicit_alone(w: Array, days: float) -> Response:
+    """``half_implicit`` where all water is one volume."""
+    return _single(1.0 / (1.0 + days * w))
+
+
+def _single(f11: Array) -> Response:
+    return Response(_NONE, _NONE, _NONE, f11, alone=True)
 
 
 def _response(at_slow: Array, at_fast: Array, weight: Array, apart: Array, q: Array, r: Array) -> Response:
