@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from datetime import datetime
 
 import numpy as np
 
@@ -23,8 +24,8 @@ class HindcastRow:
     ``issued``: the analysis it was issued after; ``cold_start``: that was the first. Ranges hold the analysis' own error.
     """
 
-    at: object
-    issued: object
+    at: datetime
+    issued: datetime
     point: str
     ion: str
     measured_mmol_l: float
