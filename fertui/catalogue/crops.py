@@ -79,7 +79,8 @@ def crop(name: str) -> Crop:
     by_name = {_key(each): entry for entry in crops() for each in (entry.name, *entry.aliases)}
     if _key(name) not in by_name:
         near = difflib.get_close_matches(_key(name)[:60], by_name, n=2)
-        hint = f"nearest: {', '.join(by_name[each].name for each in near)}; " if near else ""
+        names = dict.fromkeys(by_name[each].name for each in near)
+        hint = f"nearest: {', '.join(names)}; " if near else ""
         known = ", ".join(entry.name for entry in crops())
         raise CatalogueError(f"no crop {name[:60]!r}; {hint}known: {known} ('other' for one that is not listed).")
     return by_name[_key(name)]

@@ -70,8 +70,7 @@ def new_site(
     Raises ``SiteError``: a site there already, or a value that site.toml would refuse.
     """
     path = Path(folder)
-    if (path / NAME).exists():
-        raise SiteError(f"{path}: there is a {NAME} already; nothing was changed. Add a loop to it with an editor.")
+    refuse_site_there(path)
     first = Loop(
         name=loop or _canonical_crop(crop),
         layout=layout,
@@ -96,6 +95,12 @@ def new_site(
     _make(path)
     write_site(site, path, datetime.now(UTC))
     return site
+
+
+def refuse_site_there(folder: Path) -> None:
+    """Raises ``SiteError`` where the folder holds a site already."""
+    if (folder / NAME).exists():
+        raise SiteError(f"{folder}: there is a {NAME} already; nothing was changed. Add a loop to it with an editor.")
 
 
 def supply_from(text: str) -> Supply:
@@ -137,10 +142,12 @@ def first_steps(site: Site) -> tuple[str, ...]:
     """What to enter first at a new site, most useful first."""
     loop = site.loops[0]
     where = "the tank" if loop.layout == "shared-tank" else "feed and drain (or root zone)"
-    steps = [f"An analysis of {where}: without one the program knows no ion of yours."]
+    steps = [f"An analysis of {where} (key a, or `fertui import`): without one no ion of yours is known."]
     if not site.waters[0].composition.ions:
         steps.append(f"The analysis of the water {site.waters[0].name!r} in site.toml: acid and salts depend on it.")
-    steps.append("The daily round: EC, pH and litres of make-up water; two minutes, blank sheet with `fertui round`.")
+    steps.append(
+        "The daily round (key r): EC, pH and litres of make-up water; two minutes, blank sheet with `fertui round`."
+    )
     if medium_preset(loop.medium).warning:
         steps.append(f"About {loop.medium}: {medium_preset(loop.medium).warning}")
     unchecked = [key for key, source in loop.sources.items() if "unverified preset" in source]

@@ -37,7 +37,8 @@ class Preset:
 class Question:
     """One question. ``option`` is its name on the command line, ``key`` the argument of ``new_site``.
 
-    ``default`` is what an empty answer means ("" for none); ``may_skip`` whether "I do not know" is an answer.
+    ``default`` is what an empty answer means ("" for none); ``may_skip`` whether "I do not know" is an answer, and
+    ``instead`` what is taken then. ``presets`` are the answers on offer after the answers so far (option -> text).
     """
 
     key: str
@@ -45,9 +46,10 @@ class Question:
     prompt: str
     explanation: str
     convert: Callable[[str], Any]
-    presets: tuple[Preset, ...] = ()
+    presets: Callable[[Mapping[str, str]], tuple[Preset, ...]] = lambda answers: ()
     default: str = ""
     may_skip: bool = False
+    instead: str = ""
     applies: Callable[[Mapping[str, str]], bool] = lambda answers: True
 
     def read(self, text: str) -> Any:
@@ -104,19 +106,27 @@ def _about_the_crop() -> tuple[Question, ...]:
             "Which crop?",
             "Sets uptake, targets, bands and limits to start from; all of them can be changed later.",
             lambda text: crop(text).name,
-            tuple(Preset(each.name, _about_crop(each.name)) for each in crops()),
+            lambda answers: tuple(
+                Preset(each.name, f"feed EC {each.feed.ec:g}", each.feed.shown_source) for each in crops()
+            ),
         ),
         Question(
             "stage",
             "stage",
             "Which stage is it in?",
             "Shifts feed and uptake, such as more K at fruit set; log the next stage when it comes.",
-            str,
+            _stage,
+            lambda answers: tuple(Preset(each, "") for each in _stages(answers)),
             may_skip=True,
-            applies=lambda answers: _stages(answers) > 1,
+            instead="the crop's usual feed",
+            applies=lambda answers: len(_stages(answers)) > 1,
         ),
         Question(
-            "area_m2", "area", "How many m2 of crop does the loop feed?", "Cropped area.", _number(0.01, 1e7, "m2")
+            "area_m2",
+            "area",
+            "How many m2 of crop does the loop feed?",
+            "The floor under this crop with the paths between its rows: crop water and uptake count per m2 of it.",
+            _number(0.01, 1e7, "m2"),
         ),
     )
 
@@ -129,7 +139,7 @@ def _about_the_loop() -> tuple[Question, ...]:
             "What happens to the drain?",
             "Decides whether hand doses into a tank or recipe changes in the stock correct the loop.",
             partial(_one_of, LAYOUTS),
-            (
+            lambda answers: (
                 Preset("shared-tank", "runs back into the tank that feeds: NFT, raft, ebb and flood"),
                 Preset("drain-blend", "is collected, blended with fresh water, dosed from stock tanks: drip on slabs"),
                 Preset("known-feed", "is not tracked back: run to waste, research, or only feed analyses"),
@@ -141,7 +151,7 @@ def _about_the_loop() -> tuple[Question, ...]:
             "What do the roots grow in?",
             "Coir and peat trade K, Ca, Mg and Na with the solution; stone wool does not.",
             lambda text: medium(text).name,
-            tuple(Preset(each.name, each.about) for each in media()),
+            lambda answers: tuple(Preset(each.name, each.about) for each in media()),
         ),
     )
 
@@ -160,9 +170,10 @@ def _about_tanks() -> tuple[Question, ...]:
             "drain_store_l",
             "drain-store",
             "How many litres does the drain store hold in use?",
-            "What is in it comes back with a delay. Not known: 2.5 L per m2 is taken.",
+            "What is in it comes back with a delay.",
             _number(0.1, 1e8, "L"),
             may_skip=True,
+            instead="2.5 L per m2",
             applies=lambda answers: answers.get("layout") == "drain-blend",
         ),
     )
@@ -174,23 +185,21 @@ def _about_the_root_zone() -> tuple[Question, ...]:
             "medium_volume_l_per_m2",
             "medium-volume",
             "How many litres of slab or pot stand on a m2?",
-            "Length x width x height of the slabs on a m2. Not known: what is usual for the medium is taken.",
+            "Length x width x height of all slabs or pots on a m2, in dm: litres.",
             _number(0.1, 1000, "L per m2"),
-            tuple(
-                Preset(f"{each.volume_l_per_m2.mean:g}", f"usual for {each.name}", each.volume_l_per_m2.source.shown)
-                for each in media()
-                if each.volume_l_per_m2.mean
-            ),
+            _usual_volume,
             may_skip=True,
+            instead="the usual",
             applies=_has_medium,
         ),
         Question(
             "root_zone_water_l_per_m2",
             "root-zone-water",
             "How many litres of water do the roots stand in, per m2?",
-            "Not known: the volume of medium times the water it holds is taken.",
+            "The water a slab or pot holds after it has drained, all of them on a m2 together. Hardly anyone knows it.",
             _number(0, 1000, "L per m2"),
             may_skip=True,
+            instead="the volume times the water the medium holds",
             applies=_has_medium,
         ),
     )
@@ -202,19 +211,26 @@ def _about_feeding() -> tuple[Question, ...]:
             "water",
             "water",
             "What do you call the fresh water?",
-            "Its analysis (Na, Cl, Ca, Mg, HCO3) goes into site.toml later; acid and salts depend on it.",
+            "A name of your own. Its analysis (Na, Cl, Ca, Mg, HCO3) comes later; acid and salts depend on it.",
             str,
-            (Preset("rain", "taken as water without ions"), Preset("well", "enter its analysis")),
+            lambda answers: (
+                Preset("rain", "no ions in it"),
+                Preset("well", "or tap, river ...: its analysis is asked for"),
+            ),
             may_skip=True,
+            instead="make-up water, not analysed",
         ),
         Question(
             "target",
             "target",
             "Which solution do you aim for?",
-            "Not known: the preset of the crop.",
+            "The crop's own, that of another crop by its name, or a published solution. Your own goes into site.toml.",
             partial(_one_of, (*published_targets(), *(each.name for each in crops()))),
-            tuple(Preset(name, "published solution", each.shown_source) for name, each in published_targets().items()),
+            lambda answers: tuple(
+                Preset(name, "published solution", each.shown_source) for name, each in published_targets().items()
+            ),
             may_skip=True,
+            instead="the crop's own",
         ),
         Question(
             "supplies",
@@ -222,16 +238,33 @@ def _about_feeding() -> tuple[Question, ...]:
             "Which salts and acids are on the shelf?",
             "Names or formulas with commas between; acids with the strength on the label: nitric acid 60 %.",
             _supplies,
-            (Preset(", ".join(COMMON_SALTS), "the common salts", "common practice, no source"),),
+            lambda answers: (Preset(", ".join(COMMON_SALTS), "the common salts", "common practice, no source"),),
             may_skip=True,
+            instead="the common salts, no acid",
         ),
     )
 
 
 def _about_names() -> tuple[Question, ...]:
     return (
-        Question("loop", "loop", "What do you call this loop?", "Such as north or house 2.", str, may_skip=True),
-        Question("name", "name", "What do you call the site?", "Not said: the folder's name.", str, may_skip=True),
+        Question(
+            "loop",
+            "loop",
+            "What do you call this loop?",
+            "Such as north or house 2.",
+            str,
+            may_skip=True,
+            instead="the crop's name",
+        ),
+        Question(
+            "name",
+            "name",
+            "What do you call the site?",
+            "It stands on every sheet.",
+            str,
+            may_skip=True,
+            instead="the folder's name",
+        ),
         Question(
             "timezone",
             "timezone",
@@ -244,16 +277,24 @@ def _about_names() -> tuple[Question, ...]:
     )
 
 
-def _about_crop(name: str) -> str:
-    feed = crop(name).feed
-    return f"feed EC {feed.ec:g}; {feed.shown_source}"
-
-
-def _stages(answers: Mapping[str, str]) -> int:
+def _stages(answers: Mapping[str, str]) -> tuple[str, ...]:
     try:
-        return len(crop(answers.get("crop", "")).stages)
+        return tuple(crop(answers.get("crop", "")).stages)
     except Refusal:
-        return 0
+        return ()
+
+
+def _stage(text: str) -> str:
+    known = tuple(dict.fromkeys(stage for each in crops() for stage in each.stages))
+    return _one_of(known, text)
+
+
+def _usual_volume(answers: Mapping[str, str]) -> tuple[Preset, ...]:
+    try:
+        usual = medium(answers.get("medium", "")).volume_l_per_m2
+    except Refusal:
+        return ()
+    return (Preset(f"{usual.mean:g}", "usual", usual.source.shown),) if usual.mean else ()
 
 
 def _has_medium(answers: Mapping[str, str]) -> bool:

@@ -62,6 +62,13 @@ def make_new_site(folder: Path, answers: Mapping[str, str]) -> tuple[Path, tuple
     return folder, first_steps(site)
 
 
+def refuse_site_there(folder: Path) -> None:
+    """Raises ``SiteError`` where the folder holds a site already, so that nobody answers questions for nothing."""
+    from fertui.site.new import refuse_site_there as refuse
+
+    refuse(folder)
+
+
 def new_site_questions() -> tuple[Question, ...]:
     """What a new site is asked, in the order a grower knows the answers."""
     from fertui.site.questions import questions

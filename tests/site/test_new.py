@@ -157,9 +157,16 @@ def test_i_do_not_know_is_an_answer_where_the_model_can_live_with_it(tmp_path: P
 
 
 def test_presets_of_questions_are_accepted_answers() -> None:
+    answers = {"crop": "tomato", "medium": "coir"}
     for each in questions():
-        for preset in each.presets:
+        for preset in each.presets(answers):
             each.read(preset.value)
+
+
+def test_what_is_on_offer_follows_the_answers_before() -> None:
+    by_option = {each.option: each for each in questions()}
+    assert "fruit-set" in [each.value for each in by_option["stage"].presets({"crop": "tomato"})]
+    assert [each.text for each in by_option["medium-volume"].presets({"medium": "peat"})] == ["usual"]
 
 
 def test_first_steps_name_the_analysis_and_the_water(tmp_path: Path) -> None:
