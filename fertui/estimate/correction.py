@@ -23,7 +23,8 @@ from fertui.loop import Drive, feed_composition
 from fertui.loop.values import State
 
 CLIP = 2.0
-EC_MODEL_ERROR = 0.02
+EC_MODEL_ERROR = 0.04
+"""Error of EC from ions beyond the loop's own factor (0.23 mS/cm on the measured houses)."""
 TRACE = 0.02
 """Concentrations [mmol/L] below this are taken as this where a logarithm is needed."""
 GROSS = 4.0
@@ -34,6 +35,7 @@ FARTHEST = 3.0
 MOST_LEARNED = {"fast": 1.0, "slow": 1.8, "common": 1.0, "drain": 1.0, "stock": 0.5}
 """Bounds (log) of what is learned: uptake between a sixth and six times the preset, and what a month brings."""
 MOST_UNSEEN = 0.3
+ENOUGH_IONS = 5
 TEACHABLE = ("fast", "slow", "stock", "common", "drain", "ec", "capacity")
 
 _HCO3 = INDEX["HCO3"]
@@ -113,12 +115,12 @@ class _Ions:
 
 
 class _EC:
-    """The EC of an observation: it says how much there is, not of what."""
-
-    teaches = ("common", "drain", "ec", "capacity")
+    """The EC of an observation: it says how much there is, not of what. Beside measured ions it teaches its own factor."""
 
     def __init__(self, setting: Setting, seen: Observation, drive: Drive | None, meter: ElectroMeter) -> None:
         self.setting, self.seen, self.drive, self.meter = setting, seen, drive, meter
+        self.beside_ions = len(seen.columns()) >= ENOUGH_IONS
+        self.teaches = ("ec",) if self.beside_ions else ("common", "drain", "ec", "capacity")
         self.given = seen.ec is not None and seen.ec > 0
         self.measured = np.log([seen.ec or 1.0])
         self.noise = np.array([[EC_ERROR**2 + EC_MODEL_ERROR**2]])
@@ -151,7 +153,7 @@ def _updated(
     levelled = (CLIP * sd * np.tanh(off / (CLIP * sd)) + scatter) @ inverse
     learned = _learned(ensemble, setting, look.teaches, anomalies, levelled)
     where = compartment(setting, seen.point)
-    if where is not None:
+    if where is not None and not (isinstance(look, _EC) and look.beside_ions):
         learned = replace(learned, state=_moved(ensemble, anomalies, (off + scatter) @ inverse, where))
     return learned, off, sd, expected
 

@@ -71,8 +71,13 @@ class Ensemble:
         return setting.plants(self.multiplier, reference_l_d)
 
     def holds(self, setting: Setting, where: int) -> Array:
-        """What a vessel holds (M, 10) [mmol/L], nothing negative but alkalinity; a store gone dry shows what runs in."""
+        """What a vessel holds (M, 10) [mmol/L], nothing negative but alkalinity; a store gone dry shows what runs in.
+
+        Alkalinity of a root zone is what was last measured: roots give off more of it than stays, and pH is steered.
+        """
         found = self.state.concentration(where)
+        if setting.circuit.layout != "shared-tank":
+            found[:, _HCO3] = self.alkalinity * np.exp(self.slow[:, _HCO3])
         if where == STORE:
             dry = self.state.water_l[:, STORE] < DRY * max(setting.circuit.store_l, 1.0)
             if dry.any():
