@@ -95,7 +95,7 @@ def _salvaged(source: Path, path: Path) -> str:
     entries = tuple(readable(source / FILE_NAME))
     write_whole(path, _lines(entries, _site_text(source)))
     damaged = sum(DAMAGED in entry.doubtful for entry in entries)
-    return f"{len(entries)} entries, {damaged} of them lost or in doubt,"
+    return f"entries 1 to {len(entries)}, {damaged} of them lost or in doubt (any later ones are lost),"
 
 
 def _lines(entries: Iterable[Entry], site_text: str) -> Iterator[str]:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import ast
 import subprocess
 import sys
-from collections.abc import Iterator
+from functools import cache
 from pathlib import Path
 
 import fertui
@@ -19,10 +19,11 @@ LOADERS = {"pickle", "shelve", "marshal", "dill", "cloudpickle", "yaml"}
 RUNNERS = {"eval", "exec", "compile", "__import__"}
 
 
-def trees() -> Iterator[tuple[str, ast.AST]]:
+@cache
+def trees() -> tuple[tuple[str, ast.AST], ...]:
     """Every module of the program, parsed."""
-    for path in sorted(PACKAGE.rglob("*.py")):
-        yield str(path.relative_to(PACKAGE)), ast.parse(path.read_text(encoding="utf-8"))
+    paths = sorted(PACKAGE.rglob("*.py"))
+    return tuple((str(path.relative_to(PACKAGE)), ast.parse(path.read_text(encoding="utf-8"))) for path in paths)
 
 
 def imported(tree: ast.AST) -> set[str]:
@@ -39,7 +40,7 @@ def imported(tree: ast.AST) -> set[str]:
 def test_no_module_imports_a_network_library_or_a_loader_of_code() -> None:
     found = {where: names for where, tree in trees() if (names := imported(tree) & (NETWORK | LOADERS))}
     assert found == {}
-    assert len(list(trees())) > 50
+    assert len(trees()) > 50
 
 
 def test_nothing_is_evaluated() -> None:
