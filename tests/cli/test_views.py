@@ -1,0 +1,57 @@
+"""What the commands print on the invented site keeps to 80 columns, and a sheet is written only when it may be."""
+
+from __future__ import annotations
+
+import csv
+import io
+from pathlib import Path
+
+import pytest
+
+from fertui.cli.main import run_command
+from tests.conftest import DEMO_MORNING
+
+AT = DEMO_MORNING.isoformat()
+
+
+def printed(capsys: pytest.CaptureFixture[str], *words: str) -> tuple[int, str, str]:
+    code = run_command([str(word) for word in words])
+    out, err = capsys.readouterr()
+    return code, out, err
+
+
+@pytest.mark.parametrize("command", ["today", "analysis", "forecast", "drift", "balance", "plan", "handover", "round"])
+@pytest.mark.parametrize("loop", ["north bay", "lettuce"])
+def test_no_line_is_wider_than_80_columns(
+    capsys: pytest.CaptureFixture[str], demo_once: Path, command: str, loop: str
+) -> None:
+    when = ("--to", AT) if command == "balance" else ("--at", AT)
+    code, out, _ = printed(capsys, command, str(demo_once), "--loop", loop, *when)
+    assert code in (0, 1)
+    assert out.strip()
+    assert [line for line in out.splitlines() if len(line) > 80] == []
+
+
+def test_the_report_holds_its_sections(capsys: pytest.CaptureFixture[str], demo_once: Path) -> None:
+    words = ("report", str(demo_once), "--loop", "north bay", "--from", "2026-05-10", "--to", "2026-05-31")
+    code, out, _ = printed(capsys, *words)
+    assert code == 0
+    for title in ("ANALYSES", "UPTAKE BY THE ACCOUNT", "WATER, STOCK AND ACID USED", "DISCHARGES BY REASON"):
+        assert title in out
+    assert [line for line in out.splitlines() if len(line) > 80] == []
+
+
+def test_an_acid_sheet_is_released_by_cautions_read_and_the_strength_on_the_label_alone(
+    capsys: pytest.CaptureFixture[str], demo: Path, tmp_path: Path
+) -> None:
+    sheet = tmp_path / "acid.csv"
+    asked = ("acid", str(demo), "--loop", "north bay", "--sheet", str(sheet))
+    for wrong in ((), ("--cautions-read",), ("--label-strength", "38"), ("--cautions-read", "--label-strength", "60")):
+        code, _, err = printed(capsys, *asked, *wrong)
+        assert (code, sheet.exists()) == (2, False)
+        assert "label" in err
+    code, _, _ = printed(capsys, *asked, "--cautions-read", "--label-strength", "38")
+    assert code == 0
+    head, *rows = csv.reader(io.StringIO(sheet.read_text()))
+    assert head[:4] == ["split", "acid", "strength [%]", "litres [L]"]
+    assert len(rows) >= 3
