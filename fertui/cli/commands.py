@@ -96,7 +96,6 @@ def void(options: Options) -> int:
 def import_table(options: Options) -> int:
     """``import``: a table of one kind; a dry run writes nothing."""
     from fertui.cli.views import as_json
-    from fertui.cli.views.tables import import_text
 
     bench = open_site(options.site)
     result = bench.import_table(
@@ -104,12 +103,13 @@ def import_table(options: Options) -> int:
         options.kind,
         options.loop,
         dry_run=options.dry_run,
-        by=options.by,
+        by=options.by or os.environ.get("FERTUI_OPERATOR"),
         template=options.template,
         save_template=options.save_template,
     )
-    print(as_json.dump({"schema": "fertui.import/1", **as_json.plain(result)}) if options.json else import_text(result))
-    return FINE
+    return _show(
+        options, lambda: {"schema": "fertui.import/1", **as_json.plain(result)}, lambda: "\n".join(result.words())
+    )
 
 
 def export(options: Options) -> int:

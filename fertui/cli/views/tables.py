@@ -9,7 +9,6 @@ from fertui.cli.views import as_json, words
 from fertui.logbook.entries import Entry, Value
 
 if TYPE_CHECKING:
-    from fertui.logbook.importing import ImportResult
     from fertui.site.edit import Row
     from fertui.workbench.checks import CheckRow
     from fertui.workbench.shelf import StockRow, SupplyRow
@@ -45,19 +44,6 @@ def entries_text(entries: Sequence[Entry], timezone: str) -> str:
 def entries_document(entries: Sequence[Entry]) -> dict[str, Any]:
     """``logbook --json``."""
     return {"schema": "fertui.logbook/1", "entries": [as_json.plain(entry) for entry in entries]}
-
-
-def import_text(result: ImportResult) -> str:
-    """What an import understood, asks about and wrote."""
-    lines = []
-    for row in result.rows:
-        state = row.state if row.existing is None else f"{row.state} (entry {row.existing})"
-        lines.append(f"line {row.line}: {row.entry.kind} {row.entry.point} {row.entry.at:%Y-%m-%d %H:%M} {state}")
-        if result.dry_run:
-            lines += [f"    {each}" for each in row.conversions]
-        lines += [f"  ? {each.text}" for each in row.questions]
-    done = "nothing was written (dry run)" if result.dry_run else f"{len(result.written)} entries written"
-    return "\n".join([*lines, f"{len(result.rows)} rows read; {done}."])
 
 
 def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> str:
