@@ -25,6 +25,7 @@ from fertui.estimate.points import Estimated, PointState
 from fertui.estimate.ranges import Spread, estimated
 from fertui.estimate.record import Record, read
 from fertui.estimate.setting import Setting, setting
+from fertui.estimate.waters import lately
 from fertui.estimate.walk import events_between, grid_of, night, stretch
 from fertui.logbook.entries import Entry
 from fertui.loop import corrected as booked_as_unexplained
@@ -140,10 +141,7 @@ class Estimate:
     @property
     def crop_water(self) -> Estimated:
         """Crop water of the last seven days [L/m2/d]."""
-        ends = self.drives.grid[1:]
-        days = np.diff(self.drives.grid)
-        week = ends > ends[-1] - 7.0
-        mean = float(np.average(self.drives.water.crop[week], weights=days[week])) / self.loop.area_m2
+        mean = float(lately(self.record, self.setting, 7).crop.mean()) / self.loop.area_m2
         return estimated(mean * np.exp(self.ensemble.drain * 0.5))
 
     @property

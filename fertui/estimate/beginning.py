@@ -13,7 +13,7 @@ from fertui.estimate.drives import stock_proportions
 from fertui.estimate.ensemble import ALKALINITY_MEQ_L, Ensemble, compartment, unknowns
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
-from fertui.estimate.record import HISTORY_DAYS, Record
+from fertui.estimate.record import Record
 from fertui.estimate.setting import Setting
 from fertui.loop import ROOT, STORE, start
 
@@ -36,7 +36,7 @@ class Beginning:
 def beginning(record: Record, setting: Setting, usable: tuple[Observation, ...]) -> Beginning:
     """Where an estimate of this record begins.
 
-    At the first analysis since the crop, the medium or the solution was last renewed, at most ``HISTORY_DAYS`` back.
+    At the first analysis since the crop, the medium or the solution was last renewed, at most ``history_days`` back.
     A medium that exchanges begins with itself: its load matters more than the first analysis. Without any analysis the
     estimate begins with the record, from the feed.
     """
@@ -62,7 +62,7 @@ def shows_a_vessel(setting: Setting, seen: Observation) -> bool:
 
 def _oldest(record: Record) -> float:
     """The earliest start, moved in steps so that one more day does not shift the whole estimate."""
-    day = (record.at.toordinal() - HISTORY_DAYS) // ANEW_EVERY_DAYS * ANEW_EVERY_DAYS
+    day = (record.at.toordinal() - record.history_days) // ANEW_EVERY_DAYS * ANEW_EVERY_DAYS
     return record.end - (record.at.toordinal() - day)
 
 

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
-from datetime import datetime
+from datetime import datetime, timedelta
 
 import numpy as np
 
@@ -23,13 +23,15 @@ from fertui.estimate.forecast import trajectories
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
 from fertui.estimate.ranges import HIGH, LOW, Spread, shares
-from fertui.estimate.record import Record, read
+from fertui.estimate.record import ANEW, Record, read
 from fertui.estimate.scores import HindcastRow, Summary, crps, summary
 from fertui.estimate.walk import events_between, night, stretch
 from fertui.logbook.entries import Entry
 from fertui.site.model import Loop, Site
 
 INPUTS = ("logged", "planned")
+HISTORY_DAYS = 730
+"""The record goes two years back."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -56,14 +58,25 @@ def hindcast(
     """
     if inputs not in INPUTS:
         raise ValueError(f"inputs {inputs!r} is not one of {', '.join(INPUTS)}")
-    kept = list(entries)
-    run = Assimilation(read(site, loop, kept, at), members, seed)
-    run.run()
+    kept = [entry for entry in entries if entry.loop == loop.name and entry.at <= at]
     rows: list[HindcastRow] = []
-    for pair in _pairs(run):
+    for end in _epochs(kept):
+        run = Assimilation(read(site, loop, kept, end, HISTORY_DAYS), members, seed)
+        run.run()
         ahead = _Logged(run) if inputs == "logged" else _Planned(site, loop, kept, members, seed)
-        rows += _rows(run, pair, ahead.members(pair))
+        for pair in _pairs(run):
+            rows += _rows(run, pair, ahead.members(pair))
     return Hindcast(inputs, tuple(rows), summary(rows))
+
+
+def _epochs(entries: Sequence[Entry]) -> list[datetime]:
+    """The last analysis before every new start of crop, medium or solution, and the last of all."""
+    analyses = sorted(entry.at for entry in entries if entry.kind == "analysis" and entry.point != "source")
+    starts = [entry.at for entry in entries if entry.kind == "crop" and entry.text_of("event") in ANEW]
+    ends = [max((when for when in analyses if when < start), default=None) for start in starts]
+    last = analyses[-1:] if analyses else []
+    oldest = last[0] - timedelta(days=HISTORY_DAYS) if last else None
+    return sorted({when for when in [*ends, *last] if when is not None and oldest is not None and when > oldest})
 
 
 @dataclass(frozen=True, slots=True)

@@ -38,6 +38,7 @@ POINT_OF_BLEED = {"tank": "tank", "drain": "drain", "drain_store": "drain_store"
 class Record:
     """One loop's entries up to ``at``, as the engine needs them.
 
+    ``history_days``: how far back an estimate may begin.
     ``first``: time of the first entry, None without any.
     ``water``: litres by name, spread over their time; ``bleed`` stands among ``events``. ``stock``: mmol (n, 10);
     ``stock_held``: what each stock tank held from which batch on [mmol/L].
@@ -47,6 +48,7 @@ class Record:
     site: Site
     loop: Loop
     at: datetime
+    history_days: int
     zero: datetime
     end: float
     first: float | None
@@ -99,16 +101,18 @@ def since_needed(at: datetime) -> datetime:
     return at - timedelta(days=HISTORY_DAYS + 31)
 
 
-def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime) -> Record:
+def read(
+    site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, history_days: int = HISTORY_DAYS
+) -> Record:
     """The record of a loop from its effective entries; those of other loops and after ``at`` are left out."""
     own = sorted((each for each in entries if each.loop == loop.name and _known(each, at)), key=lambda each: each.at)
-    first = max(own[0].at, since_needed(at)) if own else at
+    first = max(own[0].at, at - timedelta(days=history_days + 31)) if own else at
     zone = ZoneInfo(site.timezone)
     zero = datetime.combine(first.astimezone(zone).date(), time(), zone).astimezone(UTC)
     by_kind: dict[str, list[Entry]] = {}
     for entry in own:
         by_kind.setdefault(entry.kind, []).append(entry)
-    return _Reader(site, loop, zero, zone, by_kind).record(at)
+    return _Reader(site, loop, zero, zone, by_kind).record(at, history_days)
 
 
 def _known(entry: Entry, at: datetime) -> bool:
@@ -125,12 +129,12 @@ class _Reader:
         self.site, self.loop, self.zero, self.zone, self.by_kind = site, loop, zero, zone, by_kind
         self.assumed: list[str] = []
 
-    def record(self, at: datetime) -> Record:
+    def record(self, at: datetime, history_days: int) -> Record:
         """The whole record, piece by piece."""
         seen = self._observations()
         held = compositions.stock_by_tank(self.site, self.loop, self._certain("batch"))
         return Record(
-            site=self.site, loop=self.loop, at=at, zero=self.zero, end=self.days(at), first=self._first(), water=self._water(),
+            site=self.site, loop=self.loop, at=at, history_days=history_days, zero=self.zero, end=self.days(at), first=self._first(), water=self._water(),
             levels=self._levels(), stock=self._stock(held), stock_held=held, events=self._events(), feed=self._feed(seen),
             recipes=self._recipes(), sources=self._sources(), setpoints=self._steps("setpoint"),
             stages=self._steps("crop"), light=self._light(), drain_pct=self._drain_pct(), observations=seen,

@@ -16,11 +16,11 @@ from fertui.estimate.drives import Holding, beyond, carried, leaning
 from fertui.estimate.noise import normals
 from fertui.estimate.scenario import Scenario
 from fertui.estimate.walk import grid_of
-from fertui.estimate.waters import DRAINED
+from fertui.estimate.waters import DRAINED, lately
 from fertui.logbook.entries import Entry
 from fertui.loop import Drive, Event, Hold
 
-WEEK = 7.0
+WEEK = 7
 BLEED_DAYS = 14.0
 WATER_SD, PLANNED_WATER_SD = (0.08, 0.35), 0.08
 """Bounds of the spread (log) of coming crop water, learned from the last fortnight; of planned water."""
@@ -78,6 +78,7 @@ class _Builder:
         self.plans = [_Planned(entry, self.record.time(entry.at), self._until(entry)) for entry in self.record.plans]
         self.assumed: list[str] = []
         self.holding = Holding(self.record, self.setting)
+        self.past = lately(self.record, self.setting)
         self.draw = normals(estimate.seed, self.loop.name, f"ahead {estimate.at.date()}", estimate.members, 12)
         if settled:
             self.draw = np.zeros_like(self.draw)
@@ -119,16 +120,9 @@ class _Builder:
             ec=self.holding.ec, feed_from=feed_from, feed_to=feed_to, bleed_l_d=self._bleed(),
         )  # fmt: skip
 
-    def _usual(self, values: Array) -> float:
-        """Mean of the last week."""
-        grid = self.estimate.drives.grid
-        days, week = np.diff(grid), grid[1:] > grid[-1] - WEEK
-        return float(np.average(values[week], weights=days[week]))
-
     def _water(self, time: float) -> tuple[Array, Array]:
         """Crop water and irrigation (M,) [L/d]: what-if, else plan, else light, else the last week's mean."""
-        past = self.estimate.drives.water
-        usual_crop, usual_irrigation = self._usual(past.crop), self._usual(past.irrigation)
+        usual_crop, usual_irrigation = (float(each[-WEEK:].mean()) for each in (self.past.crop, self.past.irrigation))
         area = self.loop.area_m2
         irrigation, drain = self._planned("irrigation", time), self._planned("drain", time)
         planned = self._planned("crop", time)
@@ -151,14 +145,13 @@ class _Builder:
     def _drain_factor(self, crop: float, irrigation: float) -> Array:
         """What an error of the drain means for crop water (M,), as in the record."""
         drain = max(irrigation - crop, 0.0)
-        if self.estimate.drives.water.origin[-1] != DRAINED or crop <= 0:
+        if self.past.origin[-1] != DRAINED or crop <= 0:
             return np.exp(0.5 * self.estimate.ensemble.drain)
         wrong = np.minimum(drain * np.exp(self.estimate.ensemble.drain), 0.97 * irrigation)
         return np.maximum(irrigation - wrong, 0.0) / crop
 
     def _water_sd(self) -> float:
-        water, grid = self.estimate.drives.water, self.estimate.drives.grid
-        recent = water.crop[grid[1:] > grid[-1] - 2 * WEEK]
+        recent = self.past.crop
         recent = recent[recent > 0]
         spread = float(np.std(np.log(recent))) / np.sqrt(3.0) if len(recent) > 3 else 0.15
         return float(np.clip(spread, *WATER_SD))
@@ -236,9 +229,7 @@ class _Builder:
         return self.holding.made_for(set_point, stock), nothing
 
     def _usual_stock(self) -> Array:
-        grid, rates = self.estimate.drives.grid, self.estimate.drives.stock_mmol_d
-        days, week = np.diff(grid), grid[1:] > grid[-1] - WEEK
-        return np.average(rates[week], axis=0, weights=days[week])
+        return self.record.stock.over(np.array([self.now - WEEK, self.now]))[0] / WEEK
 
     def _bleed(self) -> float:
         """Bleed [L/d]: what-if, else the mean of the last fortnight where it is a habit (two or more)."""

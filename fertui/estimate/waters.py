@@ -59,6 +59,13 @@ def waters(record: Record, setting: Setting, grid: Array) -> Waters:
     return Waters(irrigation, np.minimum(drain, irrigation), crop, make_up, rate["condensate"], origin, reference)
 
 
+def lately(record: Record, setting: Setting, days: int = 14) -> Waters:
+    """Water of each of the last so many days up to the end of the record, also of those before an estimate began."""
+    first = record.first if record.first is not None else record.end
+    count = int(np.clip(np.floor(record.end - first), 1, days))
+    return waters(record, setting, record.end - np.arange(count, -1, -1.0))
+
+
 def _drain_part(record: Record, setting: Setting, grid: Array) -> Array:
     """Drain as a fraction of irrigation in every stretch: the last one read, else what the site says."""
     found = [record.drain_pct.at(time) for time in grid[1:]]

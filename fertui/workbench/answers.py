@@ -126,7 +126,8 @@ class Answers(SiteFolder):
 
         chosen, at = self.loop(loop), at or now()
         chance = {} if seed is None else {"seed": seed}
-        return hindcast(self.site, chosen, self.entries(at, known), at, inputs, **chance)
+        whole_record = self.book.entries(loop=chosen.name, at=at, known=known)
+        return hindcast(self.site, chosen, whole_record, at, inputs, **chance)
 
     def plan(
         self,
