@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
 
 LOGBOOK = "logbook.sqlite3"
+COUNTED_BY_YEAR = ("bleed",)
 
 
 class SiteFolder:
@@ -53,8 +54,17 @@ class SiteFolder:
             raise Refusal(str(unknown.args[0])) from None
 
     def entries(self, at: datetime | None = None, known: datetime | None = None) -> tuple[Entry, ...]:
-        """Effective entries of all loops up to ``at``, as they were known at ``known``."""
-        return self.book.entries(at=at or now(), known=known)
+        """Effective entries of all loops that still matter at ``at``, as they were known at ``known``.
+
+        Of what has left every solution long ago only kinds that stay in force, or count for a year, are read: a book of
+        many years answers like a new one.
+        """
+        from fertui.estimate.record import LASTING, since_needed
+
+        at = at or now()
+        since = since_needed(at)
+        old = self.book.entries(kinds=(*LASTING, *COUNTED_BY_YEAR), at=since, known=known)
+        return (*(entry for entry in old if entry.at < since), *self.book.entries(since=since, at=at, known=known))
 
     def time(self, written: str) -> datetime:
         """A time as people write it, on the clock of the site."""

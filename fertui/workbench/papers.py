@@ -65,7 +65,7 @@ class Papers(Answers):
         account = self.balance(loop, start, end, known)
         estimate = self.estimate(loop, account.end, known)
         effective = self.book.entries(loop=chosen.name, at=account.end, known=known)
-        history = [entry for entry in self.book.history(loop=chosen.name) if known is None or entry.entered <= known]
+        history = self.book.history(loop=chosen.name, known=known)
         lost = discharged(estimate, account.start, account.end)
         water = crop_water_l(estimate, account.start, account.end)
         return report(Reported(self.site, chosen, history, effective, account, lost, water))
