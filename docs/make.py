@@ -1,16 +1,22 @@
-"""Writes what the docs take from the program itself: ``python docs/make.py``. The suite fails when they have drifted."""
+"""Writes what the docs take from the program: ``python docs/make.py``. The suite fails when they have drifted."""
 
 from __future__ import annotations
 
 import re
+import tempfile
 from collections.abc import Callable, Mapping
+from datetime import UTC, datetime
 from pathlib import Path
 
 from fertui.catalogue.safety_page import safety_tables
 from fertui.cli.parser import build, commands_of
 from fertui.logbook.kinds import KINDS
+from fertui.workbench import open_site
+from fertui.workbench.demo import build_demo
 
 DOCS = Path(__file__).parent
+README = DOCS.parent / "README.md"
+DEMO_MORNING = datetime(2026, 6, 1, 6, 30, tzinfo=UTC)
 
 
 def command_reference() -> str:
@@ -30,7 +36,14 @@ def _kinds() -> list[str]:
     lines = ["## Kinds of entry", "", "Values of `fertui record SITE KIND name=value ...`; every kind also takes"]
     lines += ["`at=`, `by=`, `point=`, `zone=`, `method=`, `instrument=`, `note=` and `doubtful=`.", ""]
     for kind in KINDS.values():
-        lines += [f"### {kind.name}", "", kind.about.capitalize() + ".", "", "| value | unit | about |", "|---|---|---|"]
+        lines += [
+            f"### {kind.name}",
+            "",
+            kind.about.capitalize() + ".",
+            "",
+            "| value | unit | about |",
+            "|---|---|---|",
+        ]
         for field in kind.fields:
             words = " or ".join(field.words)
             about = "; ".join(part for part in (field.about, words, "needed" if field.required else "") if part)
@@ -46,7 +59,31 @@ def safety_page() -> str:
     return replaced((DOCS / "safety.md").read_text(encoding="utf-8"), "safety", safety_tables())
 
 
-PAGES: Mapping[str, Callable[[], str]] = {"command.md": command_reference, "safety.md": safety_page}
+def readme_page() -> str:
+    """README.md with today and a plan as the demo gives them on a fixed morning."""
+    from fertui.cli.views import plan, today
+
+    with tempfile.TemporaryDirectory() as folder:
+        bench = open_site(build_demo(Path(folder) / "demo", now=DEMO_MORNING))
+        state = bench.today("north bay", DEMO_MORNING)
+        made = bench.plan("north bay", at=DEMO_MORNING)
+        shown = today.text(state, bench.site.timezone, "mmol/L")
+        planned = plan.text(made, bench.site.timezone, "mmol/L")
+    page = README.read_text(encoding="utf-8")
+    page = replaced(page, "today", "\n".join(_block(shown)))
+    return replaced(page, "plan", "\n".join(_block(_beginning(planned))))
+
+
+def _beginning(planned: str) -> str:
+    """The answer of a plan without its cautions and sums, which the README does not need whole."""
+    return planned.split("\nLimits that bind")[0] + "\n..."
+
+
+PAGES: Mapping[Path, Callable[[], str]] = {
+    DOCS / "command.md": command_reference,
+    DOCS / "safety.md": safety_page,
+    README: readme_page,
+}
 """Pages made from the program, whole or in part."""
 
 
@@ -57,5 +94,5 @@ def replaced(page: str, name: str, made: str) -> str:
 
 
 if __name__ == "__main__":
-    for file_name, page in PAGES.items():
-        (DOCS / file_name).write_text(page(), encoding="utf-8")
+    for path, page in PAGES.items():
+        path.write_text(page(), encoding="utf-8")

@@ -2,8 +2,8 @@
 
     python greenhouse_demo/make.py
 
-The crop of the north bay is given a habit the model does not know of (it takes a third more K than the preset from the
-stage change on); every number is then blurred as meters, dip sticks and laboratories blur it. Nothing here was measured.
+The crop of the north bay is given a habit the site file does not know of: it takes more K than the preset from the
+stage change on. Every number is then blurred as meters, dip sticks and laboratories do. Nothing here was measured.
 """
 
 from __future__ import annotations
@@ -21,8 +21,20 @@ from fertui.catalogue.salts import salt
 from fertui.chemistry.conductivity import conductivity, linearise
 from fertui.chemistry.ions import INDEX, IONS, Array, vector
 from fertui.loop import (
-    ROOT, WATERS, Circuit, Drive, Event, Medium, Plants, Timeline, Trajectory, hold_ec, hold_ph, simulate, start,
-)  # fmt: skip
+    ROOT,
+    WATERS,
+    Circuit,
+    Drive,
+    Event,
+    Medium,
+    Plants,
+    Timeline,
+    Trajectory,
+    hold_ec,
+    hold_ph,
+    simulate,
+    start,
+)
 
 SEED = 20
 DAYS = 60
@@ -82,7 +94,20 @@ def _north(light: Array, noise: np.random.Generator) -> list[str]:
     preset, coir = crop("tomato"), medium("coir")
     area, slab = 1200.0, 10.0
     capacity = 40.0 * slab * area
-    root = vector({"K": 7.6, "Ca": 9.4, "Mg": 4.2, "Na": 3.2, "NH4": 0.1, "NO3": 20.5, "Cl": 3.0, "SO4": 6.0, "H2PO4": 1.1, "HCO3": 0.3})
+    root = vector(
+        {
+            "K": 7.6,
+            "Ca": 9.4,
+            "Mg": 4.2,
+            "Na": 3.2,
+            "NH4": 0.1,
+            "NO3": 20.5,
+            "Cl": 3.0,
+            "SO4": 6.0,
+            "H2PO4": 1.1,
+            "HCO3": 0.3,
+        }
+    )
     bay = Bay(
         "north bay",
         Circuit("drain-blend", area, 6.5 * area, store_l=6000.0, store_max_l=10000.0),
@@ -94,8 +119,11 @@ def _north(light: Array, noise: np.random.Generator) -> list[str]:
         {
             "calcium": {"calcium nitrate double salt": 62, "potassium nitrate": 36, "iron DTPA": 1.4},
             "sulfate": {
-                "potassium nitrate": 33, "potassium sulfate": 28, "monopotassium phosphate": 20,
-                "magnesium sulfate heptahydrate": 27, "monoammonium phosphate": 3,
+                "potassium nitrate": 33,
+                "potassium sulfate": 28,
+                "monopotassium phosphate": 20,
+                "magnesium sulfate heptahydrate": 27,
+                "monoammonium phosphate": 3,
             },
         },
         1000.0,
@@ -103,7 +131,7 @@ def _north(light: Array, noise: np.random.Generator) -> list[str]:
         0.36,
         (-59, -47, -35, -23, -13, -4),
         ("feed", "root_zone"),
-    )  # fmt: skip
+    )
     plants = {0: bay.plants, 26: _plants(preset, 3.0 * area, {"K": 1.4, "Ca": 0.95, "Mg": 1.0})}
     bled = Event(27.3, "bleed", litres=3000.0, point="drain_store", reason="filter back-flush")
     lines = _logged(bay, _run(bay, plants, light, (bled,)), light, noise)
@@ -112,7 +140,8 @@ def _north(light: Array, noise: np.random.Generator) -> list[str]:
         '-60 08:20 "north bay" setpoint EC=2.6 pH=5.5 by=MK',
         '-34 09:05 "north bay" crop stage=fruit-set by=RV note="fifth truss set"',
         '-33 14:55 "north bay" bleed litres=3000 from=drain_store reason="filter back-flush" by=RV',
-        '-20 10:15 "north bay" calibration instrument="EC pen" quantity=EC standard=1.413 reading=1.43 result=good by=RV',
+        '-20 10:15 "north bay" calibration instrument="EC pen" quantity=EC standard=1.413 reading=1.43 '
+        "result=good by=RV",
         '-4 09:30 "north bay" sample status=sent point=root_zone by=MK',
     ]
     return [line for line in lines if not _is_yesterdays_drain(line)]
@@ -129,7 +158,20 @@ def _is_yesterdays_drain(line: str) -> bool:
 def _lettuce(light: Array, noise: np.random.Generator) -> list[str]:
     preset = crop("lettuce")
     area = 260.0
-    tank = vector({"K": 7.4, "Ca": 3.4, "Mg": 0.9, "Na": 1.6, "NH4": 0.3, "NO3": 12.6, "Cl": 1.4, "SO4": 1.1, "H2PO4": 1.3, "HCO3": 0.4})
+    tank = vector(
+        {
+            "K": 7.4,
+            "Ca": 3.4,
+            "Mg": 0.9,
+            "Na": 1.6,
+            "NH4": 0.3,
+            "NO3": 12.6,
+            "Cl": 1.4,
+            "SO4": 1.1,
+            "H2PO4": 1.3,
+            "HCO3": 0.4,
+        }
+    )
     bay = Bay(
         "lettuce",
         Circuit("shared-tank", area, 2000.0, mixed=True),
@@ -141,7 +183,9 @@ def _lettuce(light: Array, noise: np.random.Generator) -> list[str]:
         {
             "lettuce calcium": {"calcium nitrate double salt": 8.6, "potassium nitrate": 5.2, "iron DTPA": 0.7},
             "lettuce sulfate": {
-                "potassium nitrate": 5.6, "monopotassium phosphate": 3.2, "magnesium sulfate heptahydrate": 3.0,
+                "potassium nitrate": 5.6,
+                "monopotassium phosphate": 3.2,
+                "magnesium sulfate heptahydrate": 3.0,
                 "potassium sulfate": 0.6,
             },
         },
@@ -150,7 +194,7 @@ def _lettuce(light: Array, noise: np.random.Generator) -> list[str]:
         0.0,
         (-58, -44, -30, -16, -9, -2),
         ("tank",),
-    )  # fmt: skip
+    )
     potassium = np.asarray([salt("potassium nitrate").mmol_per_kg.get(ion, 0.0) for ion in IONS])
     dosed = Event(39.4, "dose", ions_mmol=1.0 * potassium)
     lines = _logged(bay, _run(bay, {0: bay.plants}, light, (dosed,)), light, noise)
@@ -200,11 +244,17 @@ def _run(bay: Bay, plants: Mapping[int, Plants], light: Array, events: tuple[Eve
             holds=(hold_ph(0.4, nitric), hold_ec(bay.set_ec, _strength(bay), ec)),
             ec=ec,
         )
-        today = tuple(Event(e.at - day, e.cause, e.ions_mmol, e.litres, e.point) for e in events if day <= e.at < day + 1)
+        today = tuple(
+            Event(e.at - day, e.cause, e.ions_mmol, e.litres, e.point) for e in events if day <= e.at < day + 1
+        )
         run = simulate(
-            bay.circuit, bay.medium, plants[max(each for each in plants if each <= day)], state,
-            Timeline(((0.0, drive),), today), [1.0],
-        )  # fmt: skip
+            bay.circuit,
+            bay.medium,
+            plants[max(each for each in plants if each <= day)],
+            state,
+            Timeline(((0.0, drive),), today),
+            [1.0],
+        )
         days.append(run)
         state = run.end
     return days
@@ -238,29 +288,41 @@ def _batch_line(bay: Bay, tank: str, day: int) -> str:
 
 def _round(bay: Bay, run: Trajectory, day: int, light: float, stock_l: float, noise: np.random.Generator) -> list[str]:
     """What the morning round of the day after shows, and what the day took."""
-    who = ("MK", "RV", "MK", "AN")[day % 4] if bay.name != "lettuce" else "AN"
+    who = "AN" if bay.name == "lettuce" else ("MK", "RV", "MK", "AN")[day % 4]
     litres = dict(zip(WATERS, run.fluxes.litres[0], strict=True))
-    blur = lambda value, share: value * float(np.exp(noise.normal(0.0, share)))  # noqa: E731
-    acid_l = float(run.fluxes.cause("acid")[0, INDEX["NO3"]] / 1000.0 / acid("nitric acid").mol_per_l(38.0))
-    water = WATERS_OF[bay.name][0]
-    head = f'{day + 1} {MORNING} "{bay.name}"'
-    used = f'{day} "{bay.name}"'
-    feed = run.feeds[-1][0] if bay.circuit.layout == "drain-blend" else run.end.concentration(ROOT)[0]
-    drain = run.end.concentration(ROOT)[0]
-    lines = []
+    used = {"make_up": _blur(litres["make_up"], 0.01, noise)}
     if bay.circuit.layout == "drain-blend":
-        lines.append(f"{head} reading point=feed EC={_ec(feed, noise):.2f} pH={5.5 + noise.normal(0, 0.08):.1f} temperature={18.5 + noise.normal(0, 1):.1f} by={who}")
-        share = 100 * litres["drain"] / litres["irrigation"]
-        lines.append(f"{head} reading point=drain EC={_ec(drain, noise):.2f} pH={5.9 + noise.normal(0, 0.1):.1f} drain_pct={share:.0f} light_sum={light:.0f} by={who}")
-        lines.append(f"{used} water irrigation={blur(litres['irrigation'], 0.01):.0f} drain={blur(litres['drain'], 0.03):.0f} make_up={blur(litres['make_up'], 0.01):.0f} source={water} by={who}")
+        drained = 100 * litres["drain"] / litres["irrigation"]
+        used |= {
+            "irrigation": _blur(litres["irrigation"], 0.01, noise),
+            "drain": _blur(litres["drain"], 0.03, noise),
+        }
+        readings = [
+            f"point=feed {_meters(run.feeds[-1][0], 5.5, 18.5, noise)}",
+            f"point=drain {_meters(run.end.concentration(ROOT)[0], 5.9, None, noise)} drain_pct={drained:.0f}",
+        ]
     else:
-        lines.append(f"{head} reading point=tank EC={_ec(drain, noise):.2f} pH={5.9 + noise.normal(0, 0.1):.1f} temperature={19.5 + noise.normal(0, 0.8):.1f} light_sum={light:.0f} by={who}")
-        lines.append(f"{used} water make_up={blur(litres['make_up'], 0.01):.0f} source={water} by={who}")
+        readings = [f"point=tank {_meters(run.end.concentration(ROOT)[0], 5.9, 19.5, noise)}"]
+    readings[-1] += f" light_sum={light:.0f}"
+    water = " ".join(f"{name}={amount:.0f}" for name, amount in used.items())
+    said = [f"water {water} source={WATERS_OF[bay.name][0]}"]
     if stock_l > 0.05:
-        lines += [f'{used} stock "tank={tank}" litres={blur(stock_l, 0.012):.1f} by={who}' for tank in bay.batches]
+        said += [f'stock "tank={tank}" litres={_blur(stock_l, 0.012, noise):.1f}' for tank in bay.batches]
+    acid_l = float(run.fluxes.cause("acid")[0, INDEX["NO3"]] / 1000.0 / acid("nitric acid").mol_per_l(38.0))
     if acid_l > 0.005:
-        lines.append(f'{used} acid "acid=nitric acid 38" litres={acid_l:.2f} by={who}')
-    return [line.replace(f'{day} "', f'{day} day "', 1) if line.startswith(used) else line for line in lines]
+        said.append(f'acid "acid=nitric acid 38" litres={acid_l:.2f}')
+    morning = [f'{day + 1} {MORNING} "{bay.name}" reading {each} by={who}' for each in readings]
+    return morning + [f'{day} day "{bay.name}" {each} by={who}' for each in said]
+
+
+def _blur(value: float, share: float, noise: np.random.Generator) -> float:
+    return value * float(np.exp(noise.normal(0.0, share)))
+
+
+def _meters(mmol_l: Array, ph: float, temperature_c: float | None, noise: np.random.Generator) -> str:
+    """EC, pH and temperature as a hand meter shows them."""
+    shown = f"EC={_ec(mmol_l, noise):.2f} pH={ph + noise.normal(0.0, 0.09):.1f}"
+    return shown if temperature_c is None else f"{shown} temperature={temperature_c + noise.normal(0.0, 0.9):.1f}"
 
 
 def _ec(mmol_l: Array, noise: np.random.Generator) -> float:
@@ -276,7 +338,11 @@ def _analyses(bay: Bay, days: list[Trajectory], noise: np.random.Generator) -> l
             error = np.exp(noise.normal(0.0, 0.03 if point == "feed" else 0.04, len(IONS)) + noise.normal(0.0, 0.03))
             found = dict(zip(IONS, true * error, strict=True))
             shown = " ".join(f"{ion}={_lab(value)}" for ion, value in found.items())
-            late = " entered=-19@10:20" if sampled == -23 else f" entered={sampled + 2}@{'11:15' if sampled < -2 else '07:50'}"
+            late = (
+                " entered=-19@10:20"
+                if sampled == -23
+                else f" entered={sampled + 2}@{'11:15' if sampled < -2 else '07:50'}"
+            )
             lines.append(
                 f'{sampled} 08:50 "{bay.name}" analysis point={point} {shown} EC={_ec(true, noise):.1f} '
                 f"pH={5.4 if point == 'feed' else 5.8:.1f} lab=lab by=MK{late}"

@@ -1,4 +1,4 @@
-"""What several rooms' tests share: the demo site at a fixed morning, and the measured houses where they are to be had."""
+"""What several rooms' tests share: the demo site at a fixed morning, and the measured houses where they are."""
 
 from __future__ import annotations
 

@@ -63,7 +63,9 @@ def test_what_cannot_be_taken_is_refused_in_words_and_changes_nothing(
 
 
 def test_a_recorded_entry_is_printed_as_read_back(demo: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    code, out, _ = run(capsys, "record", demo, "reading", "point=drain", "EC=4,1", "pH=5.7", "by=MK", "--loop", "north bay")
+    code, out, _ = run(
+        capsys, "record", demo, "reading", "point=drain", "EC=4,1", "pH=5.7", "by=MK", "--loop", "north bay"
+    )
     assert code == 0
     assert "EC=4,1" in out
     assert "by MK" in out
@@ -100,7 +102,9 @@ def test_new_without_a_necessary_value_and_without_a_terminal_names_what_is_miss
 
 
 @pytest.mark.parametrize("loop", ["north bay", "lettuce"])
-def test_today_answers_in_the_shape_of_the_contract(demo_once: Path, capsys: pytest.CaptureFixture[str], loop: str) -> None:
+def test_today_answers_in_the_shape_of_the_contract(
+    demo_once: Path, capsys: pytest.CaptureFixture[str], loop: str
+) -> None:
     code, out, _ = run(capsys, "today", demo_once, "--loop", loop, "--at", NOON, "--json")
     state = json.loads(out)
     assert code == 0
@@ -115,7 +119,9 @@ def test_today_answers_in_the_shape_of_the_contract(demo_once: Path, capsys: pyt
 
 
 @pytest.mark.parametrize("loop", ["north bay", "lettuce"])
-def test_the_account_of_the_demo_closes_for_every_ion(demo_once: Path, capsys: pytest.CaptureFixture[str], loop: str) -> None:
+def test_the_account_of_the_demo_closes_for_every_ion(
+    demo_once: Path, capsys: pytest.CaptureFixture[str], loop: str
+) -> None:
     words = ("balance", demo_once, "--loop", loop, "--from", "2026-04-15", "--to", NOON, "--at", NOON, "--json")
     code, out, _ = run(capsys, *words)
     assert code == 0
