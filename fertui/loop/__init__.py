@@ -1,7 +1,9 @@
 """Physics of one recirculating loop on arrays: uptake, circulation, simulation, account. Knows chemistry alone."""
 
 from fertui.loop.account import Account, Booking, Discharge, discharged, running
+from fertui.loop.alkalinity import Drift, Tendency, tendency
 from fertui.loop.circulation import CAUSE, CAUSES, WATERS, Fluxes, advance, feed_composition, no_fluxes
+from fertui.loop.sharing import Sharer, pooled, simulate_together
 from fertui.loop.simulation import Perturb, Timeline, Trajectory, apply, corrected, simulate
 from fertui.loop.uptake import UPTAKE_TABLE, Kinetics, Parameter, Plants, temperature_notice, uptake
 from fertui.loop.values import (
@@ -21,8 +23,8 @@ from fertui.loop.values import (
 
 __all__ = [
     "CAUSE", "CAUSES", "INERT", "ROOT", "STORE", "UPTAKE_TABLE", "WATERS",
-    "Account", "Booking", "Circuit", "Discharge", "Drive", "Event", "Fluxes", "Hold", "Kinetics", "Medium",
-    "Parameter", "Perturb", "Plants", "State", "Timeline", "Trajectory",
-    "advance", "apply", "corrected", "discharged", "feed_composition", "hold_ec", "hold_ph", "no_fluxes", "running", "simulate",
-    "start", "temperature_notice", "uptake",
+    "Account", "Booking", "Circuit", "Discharge", "Drift", "Drive", "Event", "Fluxes", "Hold", "Kinetics", "Medium",
+    "Parameter", "Perturb", "Plants", "Sharer", "State", "Tendency", "Timeline", "Trajectory",
+    "advance", "apply", "corrected", "discharged", "feed_composition", "hold_ec", "hold_ph", "no_fluxes", "pooled",
+    "running", "simulate", "simulate_together", "start", "temperature_notice", "tendency", "uptake",
 ]  # fmt: skip

@@ -19,7 +19,8 @@ from fertui.loop.values import Event
 class Booking:
     """What moved between two times [d], as ensemble means: ``by_cause`` (causes, 10) [mmol], ``litres`` (waters,) [L].
 
-    ``reason`` of a bleed; ``overflow`` (10,) [mmol] is the part of the bleed that ran over. ``entry``: number in the book.
+    ``reason`` of a bleed; ``overflow`` (10,) [mmol] is the part of the bleed that ran over. ``entry``: its number in
+    the logbook.
     """
 
     begin: float

@@ -70,7 +70,8 @@ def advance(
 ) -> tuple[State, Fluxes]:
     """The loop after ``days`` [d] under one drive, and what moved meanwhile.
 
-    ``tolerance``: relative error a step may have; an ensemble whose noise is far larger may ask for less than the default.
+    ``tolerance``: relative error a step may have; an ensemble whose noise is far larger may
+    ask for less than the default.
 
     start + sum of fluxes = end for every member and ion to rounding; no amount but alkalinity becomes negative.
 
@@ -151,9 +152,7 @@ def _step(
     return end, fluxes, min(4.0, 0.9 * np.sqrt(tolerance / max(error, 1e-9)))
 
 
-def _half_way(
-    circuit: Circuit, drive: Drive, rates: _Rates, x: Pair, middle_l: Array, days: float
-) -> Pair:
+def _half_way(circuit: Circuit, drive: Drive, rates: _Rates, x: Pair, middle_l: Array, days: float) -> Pair:
     """Amounts half a step ahead, by an implicit step, with the doses that a held tank takes meanwhile."""
     if circuit.fed == ROOT:
         response = implicit_alone(rates.w, days)
@@ -242,7 +241,7 @@ def _entering(circuit: Circuit, drive: Drive, water: Flows, store: Array, feed: 
 
 
 def _doses(holds: tuple[Hold, ...], mmol_l: Array) -> dict[str, Array]:
-    """Doses per litre [mmol/L] (M, 10) by cause that bring compositions (M, 10) to their set points, one after another."""
+    """Doses per litre [mmol/L] (M, 10) by cause that bring compositions to their set points, one after another."""
     doses: dict[str, Array] = {}
     for hold in holds:
         added = hold.needed(mmol_l)[:, None] * hold.proportions

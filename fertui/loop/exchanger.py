@@ -45,9 +45,7 @@ def nudged(log_s: Array, total_mmol: Array, water_l: Array, capacity_meq: Array,
     return log_s - np.clip(excess / np.maximum(slope, _TRACE), -1.0, 1.0)
 
 
-def equilibrated(
-    medium: Medium, total_mmol: Array, water_l: Array, log_s: Array | None = None
-) -> tuple[Array, Array]:
+def equilibrated(medium: Medium, total_mmol: Array, water_l: Array, log_s: Array | None = None) -> tuple[Array, Array]:
     """Cations in water [mmol] and charge on sites [meq], both (M, 5), from the amounts of both together [mmol].
 
     ``log_s`` (M,): that of a state nearby, which saves time and changes nothing else.

@@ -167,7 +167,7 @@ def simulate(
     perturb: Perturb | None = None,
     begin: float = 0.0,
 ) -> Trajectory:
-    """Run a loop from ``begin`` [d] to the last of ``report_at`` [d]; states are given at each of those, events included.
+    """Run a loop from ``begin`` [d] to the last of ``report_at`` [d]; a state is given at each, events included.
 
     Events happen at their own times, in the order given where times are equal. A period of the account begins and
     ends at times of ``report_at`` (or ``begin``). No step crosses a whole day, so that the answer does not depend on
@@ -184,7 +184,7 @@ def simulate(
     reports = sorted({float(time) for time in report_at if time > begin} | {begin})
     horizon = reports[-1]
     events = sorted((each for each in timeline.events if begin <= each.at <= horizon), key=lambda each: each.at)
-    record = _Record(no_fluxes(state.members))
+    record = Record(no_fluxes(state.members))
     stops = _stops(timeline, events, reports)
     for now, until in zip(stops, [*stops[1:], horizon], strict=True):
         for event in (each for each in events if each.at == now):
@@ -213,7 +213,7 @@ def _stops(timeline: Timeline, events: Sequence[Event], reports: Sequence[float]
 
 
 @dataclass(slots=True)
-class _Record:
+class Record:
     """What a run leaves behind while it goes on."""
 
     fluxes: Fluxes
@@ -226,6 +226,11 @@ class _Record:
     def book(self, begin: float, end: float, moved: Fluxes, event: Event | None = None) -> None:
         self.fluxes = self.fluxes + moved
         self.bookings.append(booking(begin, end, moved, event))
+
+    def take(self, run: Trajectory) -> None:
+        """Book all that moved in another run of the same loop, which began where this record ends."""
+        self.fluxes = self.fluxes + run.fluxes
+        self.bookings.extend(run.bookings)
 
     def report(self, now: float, state: State, feed: Array) -> None:
         self.times.append(now)

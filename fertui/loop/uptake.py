@@ -6,8 +6,8 @@ Per loop and day, ion i:
     phi(c) = (c - Cmin)+ / (Km + (c - Cmin)+)         Tq_i = T^q_i T_ref^(1 - q_i)
 
 T crop water [L/d], UC uptake concentration [mmol/L] at the reference composition, m the multiplier learned from the
-grower's own data, r antagonism. Carriers saturate (Michaelis-Menten with Cmin: Claassen & Barber 1976, Agron. J. 68:961,
-from memory); the exponent carries channels and mass flow.
+grower's own data, r antagonism. Carriers saturate (Michaelis-Menten with Cmin: Claassen & Barber 1976,
+Agron. J. 68:961, from memory); the exponent carries channels and mass flow.
 """
 
 from __future__ import annotations
@@ -123,8 +123,8 @@ class Plants:
     """A crop in its stage, on its loop.
 
     ``uptake_concentration`` (10,) or (M, 10) [mmol per L of crop water] at the ``reference`` composition (10,) [mmol/L]
-    of the root zone; ``reference_l_d`` [L/d]: the loop's own season mean of crop water; ``multiplier`` (10,) or (M, 10);
-    ``light_share`` (10,): fraction of the drive that follows light instead of water (0: none).
+    of the root zone; ``reference_l_d`` [L/d]: the loop's own season mean of crop water; ``multiplier`` (10,) or
+    (M, 10); ``light_share`` (10,): fraction of the drive that follows light instead of water (0: none).
     Raises ``ValueError`` for an ion taken up whose reference is not above its Cmin.
     """
 
@@ -146,9 +146,7 @@ class Plants:
             )
 
 
-def demand(
-    plants: Plants, crop_l_d: npt.ArrayLike, light: npt.ArrayLike = 1.0, excursion_c: float = 0.0
-) -> Array:
+def demand(plants: Plants, crop_l_d: npt.ArrayLike, light: npt.ArrayLike = 1.0, excursion_c: float = 0.0) -> Array:
     """What does not depend on the solution (M, 10) or (1, 10): Tq UC m and the factors that are 1 at the reference.
 
     ``crop_l_d`` scalar or (M,) [L/d]; ``light`` relative to the usual; ``excursion_c`` of the root temperature [C].
@@ -202,7 +200,7 @@ def _drive(plants: Plants, crop_l_d: npt.ArrayLike, light: npt.ArrayLike) -> Arr
 
 
 def _oppose(plants: Plants, mmol_l: Array, k: Array) -> None:
-    """Antagonism, in place: K and NH4 on Ca and Mg, one way and within 0.5-2; Na (as NaCl) on NO3; 1 at the reference."""
+    """Antagonism, in place: K and NH4 on Ca and Mg, one way, within 0.5-2; NaCl on NO3; 1 at the reference."""
     kin, reference = plants.kinetics, plants.reference
     rivals = reference[_K] + reference[_NH4]
     if kin.antagonism and rivals > 0:
@@ -229,8 +227,8 @@ def excursion_factor(excursion_c: float, q10: float = 2.0) -> Array:
 def temperature_notice(root_c: float) -> str:
     """What to say about a root temperature [C]; '' within 15-26 C (common practice, no source).
 
-    >>> temperature_notice(12.0)
-    'Root temperature 12.0 C is below 15 C: phosphate and nitrate uptake slow down; the forecast does not know by how much.'
+    >>> temperature_notice(12.0)[:62]
+    'Root temperature 12.0 C is below 15 C: phosphate and nitrate u'
     """
     if root_c < COOL_ROOTS_C:
         return (

@@ -1,4 +1,4 @@
-"""What the engine is told and what it answers: circuit, medium, state, drive, event. Immutable; members lead every array.
+"""What the engine is told and what it answers: circuit, medium, state, drive, event. Members lead every array.
 
 Axes: M members; 2 compartments (``STORE``: shared tank or drain store, ``ROOT``: water of the root zone);
 10 ions in the order of ``fertui.chemistry.ions.IONS`` (HCO3 stands for alkalinity and may be negative);
@@ -223,7 +223,7 @@ def hold_ph(alkalinity_meq_l: float, acid: Array) -> Hold:
 
 @dataclass(frozen=True, slots=True)
 class Drive:
-    """Rates that hold over a stretch of time, all of the whole loop [L/d]; scalar or (M,), compositions (10,) or (M, 10).
+    """Rates over a stretch of time, all of the whole loop [L/d]; scalar or (M,), compositions (10,) or (M, 10).
 
     ``make_up_l_d`` None: automatic, replaces crop water, bleed and losses so that the store stays at its level.
     ``make_up`` [mmol/L]: the water that fills up (any source water, or a dated blend). ``condensate_l_d``: pure water
@@ -264,7 +264,8 @@ class Event:
     Additions (``dose``, ``acid``, ``stock``, ``make_up``, ``feed``): ``ions_mmol`` (10,) or (M, 10) and ``litres``.
     ``bleed``: ``litres`` of the solution at ``point`` go out (at most what is there); ``np.inf`` empties it.
     ``level``: the vessel at ``point`` is found to hold ``litres``; amounts stay, nothing is booked.
-    ``point``: "tank", "drain_store" (the store), "drain", "root_zone" (the root zone). ``entry``: its number in the book.
+    ``point``: "tank", "drain_store" (the store), "drain", "root_zone" (the root zone). ``entry``: its number in the
+    logbook.
     """
 
     at: float

@@ -42,7 +42,9 @@ def test_256_members_cost_no_more_than_two_members_of_the_stiff_solver(site: Sit
     """Outside judge: scipy.integrate.solve_ivp, BDF, rtol 1e-6, vectorised, over the same 60 days, twice one member."""
     ours = seconds(lambda: ensemble(site, 256, DAYS))
     theirs = 2 * seconds(lambda: solve(site, plain_start(site), DAYS))
-    print(f"\n{site.name}: 256 members {ours:.3f} s, two members of the solver {theirs:.3f} s, ratio {ours / theirs:.2f}")
+    print(
+        f"\n{site.name}: 256 members {ours:.3f} s, two members of the solver {theirs:.3f} s, ratio {ours / theirs:.2f}"
+    )
     assert ours <= theirs
 
 

@@ -27,7 +27,10 @@ CROP = {"uptake_concentration": UPTAKE, "reference": ROOT, "reference_l_d": 3.0}
 ORGANIC = PHREEQC_SELECTIVITY * np.array([0.5, 1.0, 1.0, 1.0, 0.6])
 
 SITES = (
-    Site("known-feed on stone wool", "known-feed", 8.0, ROOT, **CROP, crop_l_d=3.5, irrigation_l_d=5.0, feed=(FEED, FEED)),
+    Site(
+        "known-feed on stone wool", "known-feed", 8.0, ROOT, **CROP, crop_l_d=3.5, irrigation_l_d=5.0,
+        feed=(FEED, FEED),
+    ),
     Site(
         "known-feed on coir, feed turning richer in K", "known-feed", 8.0, ROOT, **CROP, crop_l_d=3.0,
         irrigation_l_d=4.5, capacity_meq=350.0, selectivity=ORGANIC, feed=(FEED, RICH_IN_K),

@@ -1,4 +1,4 @@
-"""The loop as an ordinary differential equation, written out plainly: the second opinion that the engine is held against.
+"""The loop as an ordinary differential equation, written out plainly: the second opinion on the engine.
 
 Nothing here comes from ``fertui.loop`` but the description of the ten invented sites. Stock and acid are dosed by a
 very fast proportional controller instead of a set point; water is constant in every vessel.
@@ -26,7 +26,7 @@ CONTROLLER_PER_D = 20000.0
 
 @dataclass(frozen=True)
 class Site:
-    """An invented loop, per m2 of crop [L/m2, mmol/m2, meq/m2]; the same numbers go to the engine and to the equations."""
+    """An invented loop, per m2 of crop [L/m2, mmol/m2, meq/m2]; the same numbers for engine and equations."""
 
     name: str
     layout: str

@@ -50,7 +50,9 @@ def circuits(draw: st.DrawFn) -> Circuit:
 
 @st.composite
 def drives(draw: st.DrawFn, seed: int = 7) -> Drive:
-    holds = draw(st.sampled_from([(), (hold_ec(2.5, TOP_UP, LINE),), (hold_ph(0.5, NITRIC), hold_ec(2.5, TOP_UP, LINE))]))
+    holds = draw(
+        st.sampled_from([(), (hold_ec(2.5, TOP_UP, LINE),), (hold_ph(0.5, NITRIC), hold_ec(2.5, TOP_UP, LINE))])
+    )
     return Drive(
         irrigation_l_d=draw(st.sampled_from([0.0, 0.5, 4.0, 60.0])) * spread(seed, MEMBERS),
         crop_l_d=draw(st.sampled_from([0.0, 1.0, 3.0, 9.0])) * spread(seed + 1, MEMBERS),

@@ -39,7 +39,14 @@ def test_worked_day_by_hand_and_by_the_engine() -> None:
     k_middle = uptake / (middle - 0.03)
     w = k_middle / 10.0
     end = 60.0 * exp(-w) + 0.03 * k_middle * (1.0 - exp(-w)) / w
-    for digits in (f"{k_start:.4f}", f"{half:.2f}", f"{uptake:.2f}", f"{k_middle:.4f}", f"{end:.2f}", f"{60 - end:.2f}"):
+    for digits in (
+        f"{k_start:.4f}",
+        f"{half:.2f}",
+        f"{uptake:.2f}",
+        f"{k_middle:.4f}",
+        f"{end:.2f}",
+        f"{60 - end:.2f}",
+    ):
         assert digits in worked_day(), digits
 
     circuit = Circuit("shared-tank", 1.0, 10.0, mixed=True)

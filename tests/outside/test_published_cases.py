@@ -1,7 +1,8 @@
 """Consistency with published closed loops: signs, order and rough size.
 
 The sources give few inputs (volumes, water use, areas are mostly missing), so each test states its own; what is
-compared is what the source reports. This is consistency, not validation: docs/model.md chapter 5 says what does not fit.
+compared is what the source reports. This is consistency, not validation: docs/model.md chapter 4 says what does not
+fit.
 """
 
 from __future__ import annotations
@@ -44,8 +45,8 @@ def test_ec_is_held_while_potassium_goes_and_calcium_magnesium_sulfate_stay() ->
     """Closed sweet pepper, EC held for four weeks: K share fell most, SO4, Cl and Na rose.
 
     Source: closed against open paprika 'Fiesta', rockwool, EC 2.5, 4 weeks (Korean abstract); that Ca and Mg pile up
-    beside K: common practice, no source. Inputs stated here: EC 2.4, one mixed volume of 12 L/m2, crop water 2.5 L/m2/d,
-    well water with Na 0.8, Cl 0.8, Ca 1.0, Mg 0.4, SO4 1.4 mmol/L, stock in the proportions of the open recipe.
+    beside K: common practice, no source. Inputs stated here: EC 2.4, one mixed volume of 12 L/m2, crop water 2.5
+    L/m2/d, well water with Na 0.8, Cl 0.8, Ca 1.0, Mg 0.4, SO4 1.4 mmol/L, stock in the proportions of the open recipe.
     """
     water = ions(Na=0.8, Cl=0.8, Ca=1.0, Mg=0.4, SO4=1.4)
     circuit, begin = Circuit("shared-tank", 1.0, 12.0, mixed=True), 0.95 * PEPPER_FEED + water
@@ -114,7 +115,7 @@ FLUSH = ions(K=6, Ca=5, Mg=2, Na=3, NO3=15, Cl=3, SO4=2.5)
 def test_new_coir_wetted_once_matches_the_batch_table() -> None:
     """50 meq/L, 0.6 L water per L, K .60 Na .30 Ca .06 Mg .04, one void volume of K 6 Ca 5 Mg 2 Na 3.
 
-    Expected: K 8.837, Ca 0.171, Mg 0.131, Na 13.560 mmol/L, first row of a flush table made with IPhreeqc (phreeqc.dat).
+    Expected: K 8.837, Ca 0.171, Mg 0.131, Na 13.560 mmol/L, first row of a flush table by IPhreeqc (phreeqc.dat).
     """
     circuit, medium = Circuit("known-feed", 1.0, 0.6), Medium(50.0, PHREEQC_SELECTIVITY)
     state = start(circuit, medium, FLUSH, held=NEW_COIR)
