@@ -114,13 +114,13 @@ def _renewal(renewal: Renewal) -> list[str]:
 
 def _outcome(plan: Plan) -> list[str]:
     outlooks = (plan.before, plan.after, plan.after_without)
-    rows: list[tuple[str, ...]] = [("", "unit", "now", "with the plan", "without it", "band")]
+    rows: list[tuple[str, ...]] = [("", "now", "with the plan", "without it", "band")]
     for what in OUTCOME:
         found = [_number(outlook, plan.point, what) for outlook in outlooks]
         if found[0] is not None:
             unit = "%" if what.endswith(" share") else UNIT.get(what, "mmol/L")
-            rows.append((what, unit, *(_ranged(each, unit) for each in found), _band(found[0])))
-    return [*columns(rows, (2, 3, 4)), "pH is not foretold: measure it after every step."] if len(rows) > 1 else []
+            rows.append((f"{what} {unit}", *(_ranged(each, unit) for each in found), _band(found[0])))
+    return [*columns(rows, (1, 2, 3)), "pH is not foretold: measure it after every step."] if len(rows) > 1 else []
 
 
 def _number(outlook: Outlook, point: str, what: str) -> Estimated | None:

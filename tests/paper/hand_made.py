@@ -54,7 +54,8 @@ def point(k_share: float) -> PointState:
     """A tank in which only the K share matters."""
     known = Estimated(1.0, 0.9, 1.1)
     shares = {"K": Estimated(k_share, k_share - 4, k_share + 4, (30.0, 45.0)), "Ca": known, "Mg": known}
-    ions = {ion: IonState(known, shares.get(ion)) for ion in ("K", "Ca", "Mg", "Na", "NH4")}
+    ions = {ion: IonState(known, shares.get(ion)) for ion in ("K", "Ca", "Mg", "Na")}
+    ions["NH4"] = IonState(Estimated(0.08, 0.05, 0.12, (None, 0.5)))
     return PointState(Estimated(2.6, 2.5, 2.7, (2.0, 3.0)), None, ions)
 
 
