@@ -21,6 +21,7 @@ mmol/L."""
 def excess_of(composition: Array, goal: Goal) -> dict[str, float]:
     """Ions in excess [mmol/L over aim or limit]: Ca, Mg, SO4 against the aim, Na, Cl, NH4 against their limits.
 
+    >>> import numpy as np
     >>> from fertui.planning.goal import Goal
     >>> aim = np.full(10, np.nan); aim[1] = 4.0
     >>> goal = Goal("tank", "", aim, np.zeros(3), np.ones(3), np.full(10, np.inf), np.inf, 0.3, {}, False)
@@ -39,6 +40,7 @@ def excess_of(composition: Array, goal: Goal) -> dict[str, float]:
 def lost_kg(composition: Array, litres: float) -> tuple[float, float]:
     """kg N and kg P in litres of a solution (10,) [mmol/L].
 
+    >>> import numpy as np
     >>> [round(each, 2) for each in lost_kg(np.array([0, 0, 0, 0, 0, 12.0, 0, 0, 0, 0]), 2500.0)]
     [0.42, 0.0]
     """
@@ -60,6 +62,7 @@ def smallest_fraction(composition: Array, refill: Array, goal: Goal) -> float | 
 
     Na: c (1 - f) + f w = limit gives f = (c - limit)/(c - w).
 
+    >>> import numpy as np
     >>> from fertui.planning.goal import Goal
     >>> most = np.full(10, np.inf); most[3] = 6.0
     >>> goal = Goal("tank", "", np.full(10, np.nan), np.zeros(3), np.ones(3), most, np.inf, 0.3, {}, False)

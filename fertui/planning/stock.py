@@ -345,7 +345,7 @@ def _sheet(
         ec=float(conductivity(np.maximum(ions, 0.0))),
         not_covered=_not_covered(composed, needed),
         notices=(*needed.notices, *_misfits(composed, needed)),
-        arithmetic=_arithmetic(needed, composed, used),
+        arithmetic=(*_arithmetic(needed), *_weighed_out(sheets, placed)),
         cautions=cautions_of([each.supply for each in used]),
         solver_calls=solver.calls,
     )
@@ -391,7 +391,8 @@ def _misfits(composed: Composed, needed: _Needed) -> list[str]:
     return notices
 
 
-def _arithmetic(needed: _Needed, composed: Composed, used: Sequence[Material]) -> tuple[str, ...]:
+def _arithmetic(needed: _Needed) -> tuple[str, ...]:
+    """Recipe less water, acid and silicate, ion by ion."""
     lines = []
     for i, name in enumerate(SPECIES):
         if needed.asked[i] > 1e-9 and name != "HCO3":
@@ -402,10 +403,20 @@ def _arithmetic(needed: _Needed, composed: Composed, used: Sequence[Material]) -
                 f"{name}: recipe {needed.asked[i]:.3f} - water {needed.own[i]:.3f}{less_acid} = "
                 f"{needed.wanted[i]:.3f} {unit} from salts"
             )
-    for each in used:
-        brings = ", ".join(
-            f"{mmol:.0f} {ion}" for ion, mmol in zip(IONS, each.ions_mmol_per_kg, strict=True) if abs(mmol) > 1.0
-        )
-        if brings:
-            lines.append(f"{each.name} ({each.formula}): 1 kg brings mmol {brings}")
     return tuple(lines)
+
+
+def _weighed_out(sheets: Sequence[TankSheet], placed: Mapping[str, Mapping[Material, float]]) -> list[str]:
+    """kg x mmol/kg / litres of stock / dilution = mmol/L at the dripper, for every line and ion."""
+    lines = []
+    for sheet in sheets:
+        by_name = {each.name: each for each in placed[sheet.name]}
+        for line in sheet.salts:
+            for ion, per_kg in zip(IONS, by_name[line.salt].ions_mmol_per_kg, strict=True):
+                if abs(per_kg) > 1.0:
+                    at_dripper = line.kg * per_kg / sheet.litres / sheet.dilution
+                    lines.append(
+                        f"{sheet.name}, {line.salt}: {line.kg:.3f} kg x {per_kg:.0f} mmol/kg {ion} / {sheet.litres:g} L "
+                        f"/ {sheet.dilution:g} = {at_dripper:.3f} mmol/L at the dripper"
+                    )
+    return lines
