@@ -16,7 +16,7 @@ from fertui.chemistry.ions import CATION_CHARGE, CHARGE, INDEX, Array
 from fertui.loop.exchanger import capacity_of, equilibrated, intensity, nudged, retained
 from fertui.loop.transfer import Pair, Response, Transfer, alone, half_implicit, implicit_alone, transfer
 from fertui.loop.uptake import Plants, conductance, demand
-from fertui.loop.values import DRY_L, ROOT, STORE, Circuit, Drive, Hold, Medium, State
+from fertui.loop.values import DRY_L, ROOT, STORE, Circuit, Drive, Hold, Medium, State, by_ion
 from fertui.loop.water import Flows, flows
 
 CAUSES = ("make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained")
@@ -31,6 +31,7 @@ LONGEST_STEP_D = 1.0
 SHORTEST_STEP_D = 1.0 / 24.0
 """An hour: uptake is coupled to the water of the day, so that shorter steps would say nothing more."""
 _FLOOR_MMOL_L = 0.05
+_EVERY_ION: Array = np.ones(10)
 _NH4, _NO3, _ALK = INDEX["NH4"], INDEX["NO3"], INDEX["HCO3"]
 
 
@@ -184,7 +185,7 @@ class _Retardation:
 
     @classmethod
     def _at(cls, medium: Medium, log_s: Array | None, water_l: Array) -> _Retardation:
-        volume = np.repeat(water_l[:, None], 10, axis=1)
+        volume = by_ion(water_l, _EVERY_ION)
         if log_s is not None:
             capacity = capacity_of(medium, water_l.size)
             volume[:, :5] *= 1.0 + retained(log_s, water_l, capacity, medium.selectivity)
@@ -229,8 +230,8 @@ def _rates(
 def _entering(circuit: Circuit, drive: Drive, water: Flows, store: Array, feed: Array) -> dict[str, Array]:
     """What enters the loop [mmol/d] (M, 10) by cause at given store concentrations (M, 10)."""
     if circuit.layout == "known-feed":
-        return {"feed": water.feed[:, None] * feed}
-    fresh = (water.fresh_store + water.fresh_root)[:, None] * drive.make_up
+        return {"feed": by_ion(water.feed, feed)}
+    fresh = by_ion(water.fresh_store + water.fresh_root, drive.make_up)
     entering = {"make_up": fresh, "stock": np.broadcast_to(drive.stock_mmol_d, fresh.shape)}
     if circuit.layout == "drain-blend" and drive.holds:
         litres = np.maximum(water.to_root + water.fresh_root, DRY_L)[:, None]
@@ -244,7 +245,7 @@ def _doses(holds: tuple[Hold, ...], mmol_l: Array) -> dict[str, Array]:
     """Doses per litre [mmol/L] (M, 10) by cause that bring compositions to their set points, one after another."""
     doses: dict[str, Array] = {}
     for hold in holds:
-        added = hold.needed(mmol_l)[:, None] * hold.proportions
+        added = by_ion(hold.needed(mmol_l), hold.proportions)
         doses[hold.cause] = doses.get(hold.cause, 0.0) + added
         mmol_l = mmol_l + added
     return doses
@@ -263,7 +264,7 @@ def _tank_doses(
     held, litres = end[circuit.fed], water_l[:, circuit.fed]
     for hold in drive.holds:
         lacking = hold.lacking(held, litres)
-        rate = (lacking / ((own * hold.proportions) @ hold.slope))[:, None] * hold.proportions
+        rate = by_ion(lacking / ((own * hold.proportions) @ hold.slope), hold.proportions)
         held = held + own * rate
         yield hold.cause, rate
 

@@ -14,7 +14,6 @@ from fertui.chemistry.ions import CATION_CHARGE, Array
 from fertui.loop.values import Medium
 
 _TRACE = 1e-12
-_DIVALENT = CATION_CHARGE == 2.0
 
 
 def intensity(mmol_l: Array, selectivity: Array) -> Array:
@@ -27,8 +26,8 @@ def intensity(mmol_l: Array, selectivity: Array) -> Array:
 
 def retained(log_s: Array, water_l: Array, capacity_meq: Array, selectivity: Array) -> Array:
     """Amount held per amount in water, h (M, 5)."""
-    s = np.exp(log_s)[:, None]
-    return (capacity_meq / water_l)[:, None] * selectivity * np.where(_DIVALENT, s * s, s) / CATION_CHARGE
+    s_to_charge = np.exp(np.multiply.outer(CATION_CHARGE, log_s).T)
+    return s_to_charge * (capacity_meq / water_l)[:, None] * (selectivity / CATION_CHARGE)
 
 
 def nudged(log_s: Array, total_mmol: Array, water_l: Array, capacity_meq: Array, selectivity: Array) -> Array:

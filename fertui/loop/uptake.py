@@ -191,8 +191,8 @@ def uptake(
 
 def _drive(plants: Plants, crop_l_d: npt.ArrayLike, light: npt.ArrayLike) -> Array:
     """Tq [L/d] (M, 10) or (1, 10): water to the power q about the season mean, part of it by light where asked."""
-    relative = np.maximum(np.atleast_1d(np.asarray(crop_l_d, dtype=float)) / plants.reference_l_d, _TRACE)[:, None]
-    by_water = relative**plants.kinetics.q if relative.size == 1 else np.exp(np.log(relative) * plants.kinetics.q)
+    relative = np.maximum(np.atleast_1d(np.asarray(crop_l_d, dtype=float)) / plants.reference_l_d, _TRACE)
+    by_water = np.exp(np.multiply.outer(plants.kinetics.q, np.log(relative)).T)
     if np.any(np.asarray(plants.light_share) > 0):
         by_light = np.atleast_1d(np.asarray(light, dtype=float))[:, None]
         by_water = by_water + plants.light_share * (by_light - by_water)

@@ -277,5 +277,12 @@ class Event:
     entry: int | None = None
 
 
+def by_ion(rate: Array, composition: Array) -> Array:
+    """Rate (M,) times composition (10,) or (M, 10), laid out with members side by side."""
+    if composition.ndim == 1:
+        return np.multiply.outer(composition, rate).T
+    return rate[:, None] * np.asfortranarray(composition)
+
+
 def _members(values: Array, members: int, width: int) -> Array:
     return np.asfortranarray(np.broadcast_to(values, (members, width)), dtype=float)
