@@ -30,7 +30,7 @@ def demo(demo_once: Path, tmp_path: Path) -> Path:
 
 
 @pytest.fixture(scope="session")
-def houses() -> Path:
+def house_folder() -> Path:
     """Folder with the measured houses; skips where it is absent."""
     named = os.environ.get("FERTUI_CASES")
     folder = Path(named) if named else Path(__file__).parent.parent.parent / "shared" / "cases"

@@ -193,7 +193,7 @@ def assimilate(
 
 
 def thin(estimate: Estimate, members: int) -> Estimate:
-    """The same estimate with fewer members, evenly chosen; one member is the mean."""
+    """The same estimate with fewer members, evenly chosen; one member stands in the middle."""
     if members >= estimate.members:
         return estimate
     if members == 1:
@@ -203,8 +203,8 @@ def thin(estimate: Estimate, members: int) -> Estimate:
 
 
 def copies(estimate: Estimate, members: int) -> Estimate:
-    """The ensemble mean so many times: what a planner perturbs."""
-    return replace(estimate, ensemble=estimate.ensemble.mean().chosen(np.zeros(members, dtype=int)))
+    """The middle of the ensemble so many times: what a planner perturbs."""
+    return replace(estimate, ensemble=estimate.ensemble.middle(estimate.setting).chosen(np.zeros(members, dtype=int)))
 
 
 class Assimilation:

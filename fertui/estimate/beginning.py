@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from fertui.chemistry.ions import INDEX, IONS, Array
-from fertui.estimate.compositions import of_water
+from fertui.estimate.compositions import array, of_water, target_feed
 from fertui.estimate.correction import ElectroMeter, corrected
 from fertui.estimate.drives import stock_proportions
 from fertui.estimate.ensemble import ALKALINITY_MEQ_L, Ensemble, compartment, unknowns
@@ -19,6 +19,8 @@ from fertui.loop import ROOT, STORE, start
 
 LEAST_IONS = 3
 """An analysis of fewer ions cannot begin an estimate."""
+NOT_ANALYSED = 0.3
+"""What may be in a solution that nobody analysed: most likely nothing more, else some part of the feed."""
 UNSEEN_SD = 0.30
 """Spread (log) of an ion, or of a vessel, that the first analysis did not show."""
 ANEW_EVERY_DAYS = 30
@@ -94,6 +96,9 @@ def _vessel(record: Record, setting: Setting, begin: Beginning, drawn: Array, wh
         if compartment(setting, seen.point) != where:
             noise = noise + UNSEEN_SD * (drawn[:, len(IONS) : 2 * len(IONS)] + drawn[:, -1, None])
     vessel = np.maximum(middle, 0.0) * np.exp(noise)
+    if seen is None:
+        feed = array(target_feed(record.site, record.loop).ions)
+        vessel += np.maximum(NOT_ANALYSED * drawn[:, -1, None] - 0.1, 0.0) * feed
     vessel[:, INDEX["HCO3"]] = ALKALINITY_MEQ_L if seen is None else seen.ions.get("HCO3", ALKALINITY_MEQ_L)
     return vessel
 

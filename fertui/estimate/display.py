@@ -12,7 +12,7 @@ from fertui.estimate.drives import Drives
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.observations import Observation
 from fertui.estimate.points import Band, Estimated, IonState, PointState
-from fertui.estimate.ranges import HIGH, LOW, Spread, neutral, shares
+from fertui.estimate.ranges import HIGH, LOW, Spread, neutral, shared_meq, shares
 from fertui.estimate.setting import Setting
 from fertui.loop import ROOT, STORE, Drive, feed_composition
 from fertui.site.model import Loop, Site, Sourced
@@ -25,6 +25,8 @@ POINTS_OF = {
 }
 """Points of a layout, in the order they are shown."""
 SHARED = ("K", "Ca", "Mg")
+LEAST_SHARED_MEQ = 0.5
+"""Below this sum of K, Ca and Mg [meq/L] shares say nothing: nearly pure water."""
 FEED_ERROR = 0.05
 PH_ERROR, PH_DRIFT = 0.1, 0.1
 """pH is known to 0.1 where measured; its range widens by 0.1 times the square root of the days since (our own)."""
@@ -86,6 +88,7 @@ class Panel:
         self.bands = bands
         self.ions = np.quantile(members, (0.5, LOW, HIGH), axis=-2)
         self.shares = np.quantile(shares(members), (0.5, LOW, HIGH), axis=-2)
+        self.enough = np.median(shared_meq(members), axis=-1) >= LEAST_SHARED_MEQ
         meter = ElectroMeter()
         logs = np.stack([meter(each) for each in members]) + ec
         self.ec = np.quantile(np.exp(logs), (0.5, LOW, HIGH), axis=-1)
@@ -98,7 +101,7 @@ class Panel:
 
     def _ion(self, ion: str, time: int) -> IonState:
         share = None
-        if ion in SHARED:
+        if ion in SHARED and self.enough[time]:
             share = self._estimated(self.shares[:, time, SHARED.index(ion)], f"{ion} share")
         return IonState(self._estimated(self.ions[:, time, INDEX[ion]], ion), share)
 

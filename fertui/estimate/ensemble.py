@@ -90,11 +90,12 @@ class Ensemble:
         names = ("fast", "slow", "stock", "common", "drain", "ec", "capacity", "selectivity")
         return replace(self, state=state, **{name: getattr(self, name)[members] for name in names})
 
-    def mean(self) -> Ensemble:
-        """One member that stands in the middle: means of amounts, medians of logarithms."""
-        state = State(*(getattr(self.state, name).mean(0)[None] for name in ("water_l", "ions_mmol", "exchanged_meq")))
+    def middle(self, setting: Setting) -> Ensemble:
+        """One member that stands in the middle: median of every amount and unknown, the exchanger loaded to match."""
         names = ("fast", "slow", "stock", "common", "drain", "ec", "capacity", "selectivity")
-        return replace(self, state=state, **{name: getattr(self, name).mean(0)[None] for name in names})
+        state = State(*(np.median(each, axis=0)[None] for each in (self.state.water_l, self.state.ions_mmol, self.state.exchanged_meq)))
+        found = replace(self, state=state, **{name: np.median(getattr(self, name), axis=0)[None] for name in names})
+        return replace(found, state=state.reloaded(found.medium(setting)))
 
 
 def unknowns(setting: Setting, seed: int, members: int) -> dict[str, Array]:

@@ -9,9 +9,9 @@ from datetime import datetime, timedelta
 import numpy as np
 
 from fertui.chemistry.ions import INDEX, IONS, Array
-from fertui.estimate.display import SHARED
+from fertui.estimate.display import LEAST_SHARED_MEQ, SHARED
 from fertui.estimate.points import Band
-from fertui.estimate.ranges import HIGH, LOW, shares
+from fertui.estimate.ranges import HIGH, LOW, shared_meq, shares
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,6 +42,8 @@ def quantities(members: Array, ec: Array) -> dict[str, Array]:
     """Everything a band can be set for, (times, M) each, from compositions (times, M, 10) and EC (times, M)."""
     by_share = shares(members)
     found = {f"{ion} share": by_share[..., place] for place, ion in enumerate(SHARED)}
+    if np.median(shared_meq(members[0])) < LEAST_SHARED_MEQ:
+        found = {}
     return {**found, "EC": ec, **{ion: members[..., INDEX[ion]] for ion in IONS}}
 
 

@@ -108,6 +108,11 @@ def shares(mmol_l: Array) -> Array:
     return 100.0 * equivalents / np.where(total > 0, total, np.nan)
 
 
+def shared_meq(mmol_l: Array) -> Array:
+    """Sum of K, Ca and Mg [meq/L] (...)."""
+    return (mmol_l[..., _SHARED] * CHARGE[_SHARED]).sum(axis=-1)
+
+
 def estimated(values: Array, band: Band | None = None) -> Estimated:
     """Median and 80 % range of members' values (M,)."""
     low, middle, high = np.quantile(values, (LOW, 0.5, HIGH))

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import csv
-import os
 from collections.abc import Callable
 from pathlib import Path
 
@@ -11,8 +10,6 @@ import numpy as np
 import pytest
 
 Columns = dict[str, np.ndarray]
-HOUSES = "rockwool_tomato_analyses.csv"
-HOUSES_SOURCE = "Hemming et al. 2020, 4TU.ResearchData, doi:10.4121/uuid:88d22c60-21b3-4ea8-90db-20249a5be2a7"
 
 
 @pytest.fixture(scope="session")
@@ -36,11 +33,7 @@ def phreeqc() -> Callable[[str, str], Columns]:
 
 
 @pytest.fixture(scope="session")
-def houses() -> list[dict[str, str]]:
+def houses(house_folder: Path) -> list[dict[str, str]]:
     """Feed and drain analyses of two stone-wool tomato houses, as text by column; the file itself stays out of here."""
-    beside = Path(__file__).parents[2].parent / "shared" / "cases"
-    file = Path(os.environ.get("FERTUI_CASES", beside)) / HOUSES
-    if not file.exists():
-        pytest.skip(f"measured houses not found: put {HOUSES} ({HOUSES_SOURCE}) in the folder that FERTUI_CASES names")
-    with file.open(newline="") as lines:
+    with (house_folder / "rockwool_tomato_analyses.csv").open(newline="") as lines:
         return list(csv.DictReader(lines))
