@@ -2,7 +2,8 @@
 
 from fertui.loop.account import Account, Booking, Discharge, discharged, running
 from fertui.loop.alkalinity import Drift, Tendency, tendency
-from fertui.loop.circulation import CAUSE, CAUSES, WATERS, Fluxes, advance, feed_composition, no_fluxes
+from fertui.loop.circulation import advance, feed_composition
+from fertui.loop.fluxes import CAUSE, CAUSES, WATERS, Fluxes, no_fluxes
 from fertui.loop.sharing import Sharer, pooled, simulate_together
 from fertui.loop.simulation import Perturb, Timeline, Trajectory, apply, corrected, simulate
 from fertui.loop.uptake import UPTAKE_TABLE, Kinetics, Parameter, Plants, temperature_notice, uptake

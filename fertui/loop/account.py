@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fertui.chemistry.ions import ATOMIC_WEIGHT, INDEX, IONS, Array
-from fertui.loop.circulation import CAUSE, CAUSES, WATERS, Fluxes
+from fertui.loop.fluxes import CAUSE, CAUSES, WATERS, Fluxes
 from fertui.loop.values import Event
 
 

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fertui.chemistry.ions import CHARGE, INDEX, Array
-from fertui.loop.circulation import Fluxes
+from fertui.loop.fluxes import Fluxes
 
 LOW, HIGH = 0.1, 0.9
 """Ends of the 80 % range over the members."""
@@ -46,7 +46,7 @@ def tendency(fluxes: Fluxes, litres: float | Array, days: float) -> Tendency:
 
     Drivers are sorted by size; those below a hundredth of ``STEADY_MEQ_L_D`` are left out.
 
-    >>> from fertui.loop.circulation import no_fluxes
+    >>> from fertui.loop.fluxes import no_fluxes
     >>> moved = no_fluxes(1)
     >>> moved.by_cause[:, 5, [5, 9]] = [-40.0, 40.0]
     >>> tendency(moved, 100.0, 2.0).direction, tendency(moved, 100.0, 2.0).drivers[0].what

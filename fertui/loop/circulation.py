@@ -14,16 +14,11 @@ import numpy as np
 
 from fertui.chemistry.ions import CATION_CHARGE, CHARGE, INDEX, Array
 from fertui.loop.exchanger import capacity_of, equilibrated, intensity, nudged, retained
+from fertui.loop.fluxes import CAUSE, Fluxes, no_fluxes
 from fertui.loop.transfer import Pair, Response, Transfer, alone, half_implicit, implicit_alone, transfer
 from fertui.loop.uptake import Plants, conductance, demand
 from fertui.loop.values import DRY_L, ROOT, STORE, Circuit, Drive, Hold, Medium, State, by_ion
 from fertui.loop.water import Flows, flows
-
-CAUSES = ("make_up", "stock", "dose", "acid", "feed", "uptake", "exchange", "bleed", "drain", "unexplained")
-"""Order of the cause axis of every account."""
-CAUSE = {cause: position for position, cause in enumerate(CAUSES)}
-WATERS = ("make_up", "feed", "irrigation", "crop", "drain", "bleed", "overflow")
-"""Order of the water axis of ``Fluxes.litres``; ``overflow`` is a part of ``bleed``."""
 
 TOLERANCE = 0.003
 """Relative error estimate that one step may have; keeps 28 days within 0.5 % of a stiff solver on all layouts."""
@@ -33,31 +28,6 @@ SHORTEST_STEP_D = 1.0 / 24.0
 _FLOOR_MMOL_L = 0.05
 _EVERY_ION: Array = np.ones(10)
 _NH4, _NO3, _ALK = INDEX["NH4"], INDEX["NO3"], INDEX["HCO3"]
-
-
-@dataclass(frozen=True, slots=True)
-class Fluxes:
-    """What moved over a stretch: ``by_cause`` (M, causes, 10) [mmol], gains of the solution positive;
-
-    ``overflow`` (M, 10) [mmol]: the part of ``bleed`` that ran over; ``litres`` (M, waters) [L].
-    """
-
-    by_cause: Array
-    overflow: Array
-    litres: Array
-
-    def cause(self, name: str) -> Array:
-        """Flux of one cause (M, 10) [mmol]."""
-        return self.by_cause[:, CAUSE[name]]
-
-    def __add__(self, other: Fluxes) -> Fluxes:
-        return Fluxes(self.by_cause + other.by_cause, self.overflow + other.overflow, self.litres + other.litres)
-
-
-def no_fluxes(members: int) -> Fluxes:
-    """An account with nothing in it."""
-    shapes = ((members, len(CAUSES), 10), (members, 10), (members, len(WATERS)))
-    return Fluxes(*(np.zeros(shape, order="F") for shape in shapes))
 
 
 def advance(

@@ -11,7 +11,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from fertui.chemistry.ions import Array
-from fertui.loop.circulation import CAUSE, Fluxes, feed_composition, no_fluxes
+from fertui.loop.circulation import feed_composition
+from fertui.loop.fluxes import CAUSE, Fluxes, no_fluxes
 from fertui.loop.simulation import Record, Timeline, Trajectory, simulate
 from fertui.loop.uptake import Plants
 from fertui.loop.values import ROOT, STORE, Circuit, Medium, State

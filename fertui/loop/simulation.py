@@ -10,7 +10,8 @@ import numpy as np
 
 from fertui.chemistry.ions import Array
 from fertui.loop.account import Account, Booking, booking, summed
-from fertui.loop.circulation import CAUSE, WATERS, Fluxes, advance, feed_composition, no_fluxes
+from fertui.loop.circulation import TOLERANCE, advance, feed_composition
+from fertui.loop.fluxes import CAUSE, WATERS, Fluxes, no_fluxes
 from fertui.loop.uptake import Plants
 from fertui.loop.values import ROOT, STORE, Circuit, Drive, Event, Medium, State
 
@@ -166,12 +167,13 @@ def simulate(
     report_at: Sequence[float],
     perturb: Perturb | None = None,
     begin: float = 0.0,
+    tolerance: float = TOLERANCE,
 ) -> Trajectory:
     """Run a loop from ``begin`` [d] to the last of ``report_at`` [d]; a state is given at each, events included.
 
     Events happen at their own times, in the order given where times are equal. A period of the account begins and
     ends at times of ``report_at`` (or ``begin``). No step crosses a whole day, so that the answer does not depend on
-    where a run was cut.
+    where a run was cut. ``tolerance``: see ``advance``.
 
     >>> circuit, medium = Circuit("known-feed", 1.0, 8.0), Medium()
     >>> plants = Plants(np.full(10, 1.0), np.full(10, 2.0), 3.0)
@@ -199,7 +201,7 @@ def simulate(
             before = state
             state, plants, drive = perturb(now, until, state, plants, drive)
             record.book(now, now, corrected(before, state))
-        state, moved = advance(circuit, medium, plants, state, drive, until - now)
+        state, moved = advance(circuit, medium, plants, state, drive, until - now, tolerance)
         record.book(now, until, moved)
     return record.trajectory()
 
