@@ -6,7 +6,10 @@ from collections.abc import Sequence
 from dataclasses import replace
 from datetime import timedelta
 
+import numpy as np
+
 from fertui.catalogue.crops import crop
+from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array, vector
 from fertui.planning.acid import AcidSheet, acid_on_shelf, source_water
 from fertui.planning.acid_steps import acid_mmol, acid_steps, tank_acid
@@ -32,7 +35,7 @@ from fertui.planning.request import (
     staffed_days,
     vague,
 )
-from fertui.planning.runs import Doing, Situation, share_pct
+from fertui.planning.runs import Course, Doing, Situation, share_pct
 from fertui.planning.values import (
     Outlook,
     Plan,
@@ -44,6 +47,8 @@ from fertui.planning.values import (
 from fertui.planning.weighing import scales_of
 from fertui.site.model import Composition
 
+FED_EC, STARVED = 0.5, 0.5
+"""A tank of at least the first [mS/cm] whose EC falls below the second part of itself is one that nothing feeds."""
 MISSED_PART = 0.10
 """An ion of a named target missed by more than this part makes the plan one that does not reach it."""
 
@@ -56,6 +61,9 @@ def hand_plan(request: Request) -> Plan:
         return request.counted(replace(empty, feasible=False, reason=why, sample_first=True))
     course = request.runs.settled(Doing(), 1)
     request = request.strengthened(course.ions[request.situation.managed][-1, 0])
+    drained = _drained(request, course)
+    if drained is not None:
+        return request.counted(replace(empty, feasible=False, reason=drained))
     sheet = tank_acid(request)
     if not request.managed.named and sheet is None and request.in_order(empty.after_without):
         words = "nothing to weigh: the shares stay in their bands and no limit is passed up to the horizon"
@@ -63,6 +71,21 @@ def hand_plan(request: Request) -> Plan:
     task = _task(request, sheet)
     dosed = dose(task, request.runs, request.solver, course)
     return _shown(request, task, dosed, empty, sheet)
+
+
+def _drained(request: Request, course: Course) -> str | None:
+    """Why a horizon is too long for hand doses: the crop empties the tank of salts meanwhile; None where it does
+    not."""
+    ec = np.maximum(conductivity(np.maximum(course.ions["tank"][:, 0], 0.0)), 0.0)
+    if ec[0] < FED_EC or ec[-1] >= STARVED * ec[0]:
+        return None
+    days = max(int(np.argmax(ec < 0.75 * ec[0])), 1)
+    litres = request.situation.crop_water_l_per_m2_d * request.situation.loop.area_m2
+    return (
+        f"{request.wishes.days} days is too long for this tank: the crop drinks {litres:.0f} L a day of its "
+        f"{request.situation.volumes_l['tank']:.0f} L and EC would fall from {ec[0]:.1f} to {ec[-1]:.1f}, as nothing "
+        f"feeds it; log the stock or recipe that tops it up, or plan {days} day{'s' if days > 1 else ''} ahead"
+    )
 
 
 def _task(request: Request, sheet: AcidSheet | None) -> Task:

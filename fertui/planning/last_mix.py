@@ -35,7 +35,7 @@ def last_mix(
     """
     if min(days_left, feed_l_per_d, left_l, stop_days_before) < 0 or left_l > tank.litres:
         raise PlanningError(
-            f"{tank.name}: days, litres a day and litres left cannot be negative, and at most {tank.litres:g} L be left."
+            f"{tank.name}: days, litres a day and litres left are not negative, and at most {tank.litres:g} L are left."
         )
     needed = feed_l_per_d * max(days_left - stop_days_before, 0.0) / tank.dilution
     mix = max(needed - left_l, 0.0)

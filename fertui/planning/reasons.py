@@ -192,4 +192,4 @@ def bands_words(goal: Goal) -> str:
 def held_by(limits: Sequence[Binding]) -> str:
     """What keeps a plan from going further."""
     held = [each.limit for each in limits if not each.limit.endswith(OVER)]
-    return "held by " + ", ".join(held) if held else "no salt on the shelf brings what is missing"
+    return "held by " + ", ".join(held) if held else "no single limit holds it: it takes more steps or more days"

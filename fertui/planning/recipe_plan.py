@@ -27,6 +27,8 @@ from fertui.site.model import Composition, Supply
 from fertui.site.presets import target_of
 
 LITRES = 10.0
+GAINED_PCT = 0.3
+"""Points of share a recipe must gain on doing nothing to be worth changing."""
 SECOND_STAGE_AFTER = 7
 """Days after which a recipe may be changed again: practice waits 7-10 (Nutrient Solutions for Greenhouse Crops
 2016)."""
@@ -67,11 +69,29 @@ def running_recipe(estimate: Estimate, water: Array) -> Array:
 
 def _task(request: Request, estimate: Estimate) -> RecipeTask:
     own = _own(request)
-    running = np.maximum(running_recipe(estimate, own), 0.0)
+    running = np.maximum(running_recipe(estimate, own), own)
+    if estimate.loop.layout == "drain-blend":
+        running = _at_set_point(running, own, estimate.loop.feed_ec)
+    running[INDEX["HCO3"]] = own[INDEX["HCO3"]]
     stages = 2 if (request.wishes.steps or 1) > 1 and request.wishes.days > SECOND_STAGE_AFTER else 1
     days = (0, SECOND_STAGE_AFTER)[:stages]
     situation, materials = request.situation, request.materials
     return RecipeTask(situation, request.goals, materials, running, own, request.wishes.days, days)
+
+
+def _at_set_point(running: Array, own: Array, ec: float | None) -> Array:
+    """A recipe whose stock part is thinned or thickened until its EC is the set point, as the injector does.
+
+    Bisection on the strength of the stock between none and twice.
+    """
+    if ec is None or float(conductivity(np.maximum(own, 0.0))) >= ec:
+        return running
+    weak, strong = 0.0, 2.0
+    for _ in range(30):
+        middle = 0.5 * (weak + strong)
+        made = float(conductivity(np.maximum(own + middle * (running - own), 0.0)))
+        weak, strong = (middle, strong) if made < ec else (weak, middle)
+    return own + 0.5 * (weak + strong) * (running - own)
 
 
 def _own(request: Request) -> Array:
@@ -92,12 +112,12 @@ def _shown(request: Request, task: RecipeTask, recipe: Recipe, empty: Plan) -> P
     sheet = _sheet(request, recipe)
     first = recipe.stages[0]
     changed = _change_pct(task.running, first)
-    why = _why_not(request, task, recipe)
+    feasible, why, notice = _verdict(request, task, recipe)
     doing = feeds(task, recipe.stages[None]).alone()
     used = _used(request, sheet)
     found = replace(
         empty,
-        feasible=why is None,
+        feasible=feasible,
         reason=why,
         recipe=RecipeChange(
             _named(first), changed, float(conductivity(np.maximum(first, 0.0))),
@@ -111,7 +131,7 @@ def _shown(request: Request, task: RecipeTask, recipe: Recipe, empty: Plan) -> P
         reasons=_reasons(task, recipe),
         arithmetic=(*_arithmetic(request, task, recipe), *sheet.arithmetic),
         sensitivity=_sensitivity(recipe),
-        notices=(*over_limit_words(recipe.end, request.managed), *sheet.notices),
+        notices=(*notice, *over_limit_words(recipe.end, request.managed), *sheet.notices),
     )  # fmt: skip
     return request.counted(found)
 
@@ -121,11 +141,11 @@ def _named(composition: Array) -> dict[str, float]:
 
 
 def _change_pct(running: Array, recipe: Array) -> dict[str, float]:
-    """Change of every ion that stands in either recipe [% of the running one]."""
+    """Change of every ion that a recipe sets [% of the running one]; Na, Cl and HCO3 come with water, acid and lots."""
     return {
         ion: float(100.0 * (new / old - 1.0))
         for ion, old, new in zip(IONS, running, recipe, strict=True)
-        if old > 0.05 and ion != "HCO3"
+        if old > 0.05 and ion not in ("HCO3", "Na", "Cl")
     }
 
 
@@ -154,7 +174,9 @@ def _stock_acid(request: Request) -> Supply | None:
     alkalinity = (source_water(site, loop) or Composition()).ions.get("HCO3", 0.0)
     if alkalinity <= LEAVE_MEQ_PER_L:
         return None
-    return next((each for each in site.supplies if each.strength_pct is not None and "acid" in each.kind.lower()), None)
+    return next(
+        (each for each in site.supplies if each.strength_pct is not None and named_acid(each.kind).is_acid), None
+    )
 
 
 def _used(request: Request, sheet: StockSheet) -> list[Supply]:
@@ -162,14 +184,28 @@ def _used(request: Request, sheet: StockSheet) -> list[Supply]:
     return [each for each in request.situation.site.supplies if each.name in names]
 
 
-def _why_not(request: Request, task: RecipeTask, recipe: Recipe) -> str | None:
-    """Why no recipe reaches the bands; None where this one does."""
-    parts = [f"{what} would be {value:.2f}, limit {limit:.2f}" for what, value, limit in recipe.broken[:3]]
-    if recipe.missed_pct > NEARLY_PCT:
-        words = f"{share_words(recipe.end)} after {request.wishes.days} days"
-        held = held_by((*binding(recipe.checkpoints), *step_limits(task, recipe.stages[0])))
-        parts.append(f"{words}, outside the bands {bands_words(request.managed)}; {held}")
-    return "; ".join(parts) or None
+def _verdict(request: Request, task: RecipeTask, recipe: Recipe) -> tuple[bool, str | None, tuple[str, ...]]:
+    """Whether the recipe serves, why not, and when it will have served.
+
+    It serves where it reaches the bands, or moves towards them as fast as the steps of a recipe allow.
+    """
+    broken = [f"{what} would be {value:.2f}, limit {limit:.2f}" for what, value, limit in recipe.broken[:3]]
+    if broken:
+        return False, "; ".join(broken), ()
+    if recipe.missed_pct <= NEARLY_PCT:
+        return True, None, ()
+    end = recipe.checkpoints[-1]
+    gained = violation(end, end.base) - recipe.missed_pct
+    held = held_by((*binding(recipe.checkpoints), *step_limits(task, recipe.stages[0])))
+    days = request.wishes.days
+    words = f"{share_words(recipe.end)} after {days} days, outside the bands {bands_words(request.managed)}; {held}"
+    if gained < GAINED_PCT:
+        return False, words, ()
+    return (
+        True,
+        None,
+        (f"the bands are not reached within {days} days: {words}; go on from there after the next analysis",),
+    )
 
 
 def _renewal(request: Request, recipe: Recipe) -> Renewal | None:

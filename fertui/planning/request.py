@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import timedelta
+from math import erf, sqrt
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -12,7 +13,7 @@ import numpy as np
 from fertui.catalogue.cautions import Caution, cautions_of, loop_cautions
 from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array
-from fertui.estimate.points import PointState
+from fertui.estimate.points import Estimated, PointState
 from fertui.logbook.entries import Entry
 from fertui.planning.goal import SHARED, Goal, goal_of
 from fertui.planning.programme import Solver
@@ -24,6 +25,7 @@ from fertui.site.model import Supply
 LONGEST_DAYS = 60
 STRENGTH = (0.5, 1.5)
 """How far an aim may be made weaker or stronger to stand at the EC the loop is run at."""
+CERTAIN = 0.8
 FRESH_DAYS = 3.0
 """Age of an analysis [d] up to which another sample says nothing new (common practice, no source)."""
 FILLING = 0.3
@@ -163,7 +165,7 @@ def vague(request: Request) -> str | None:
         state = point.ions[ion].share_pct if ion in point.ions else None
         if state is None or not 0.0 < high - low < 1.0:
             continue
-        if state.low > 100 * high or state.high < 100 * low:
+        if _out_for_certain(state, 100 * low, 100 * high):
             return None
         if wide is None and state.high - state.low > 100 * (high - low):
             wide = (
@@ -171,6 +173,14 @@ def vague(request: Request) -> str | None:
                 f"than its band of {100 * low:.0f}-{100 * high:.0f} %; any dose would be a guess"
             )
     return wide
+
+
+def _out_for_certain(state: Estimated, low: float, high: float) -> bool:
+    """Whether a value lies out of its band with a probability of 0.8 or more, its 80 % range taken as that of a
+    normal."""
+    spread = max((state.high - state.low) / 2.56, 1e-9)
+    inside = erf((high - state.value) / spread / sqrt(2.0)) - erf((low - state.value) / spread / sqrt(2.0))
+    return 1.0 - 0.5 * inside >= CERTAIN
 
 
 def cautions_for(used: Sequence[Supply]) -> tuple[Caution, ...]:

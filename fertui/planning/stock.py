@@ -416,7 +416,7 @@ def _weighed_out(sheets: Sequence[TankSheet], placed: Mapping[str, Mapping[Mater
                 if abs(per_kg) > 1.0:
                     at_dripper = line.kg * per_kg / sheet.litres / sheet.dilution
                     lines.append(
-                        f"{sheet.name}, {line.salt}: {line.kg:.3f} kg x {per_kg:.0f} mmol/kg {ion} / {sheet.litres:g} L "
-                        f"/ {sheet.dilution:g} = {at_dripper:.3f} mmol/L at the dripper"
+                        f"{sheet.name}, {line.salt}: {line.kg:.3f} kg x {per_kg:.0f} mmol/kg {ion} / "
+                        f"{sheet.litres:g} L / {sheet.dilution:g} = {at_dripper:.3f} mmol/L at the dripper"
                     )
     return lines
