@@ -63,23 +63,19 @@ class Chooser(View):
             else [*rows, line(" ", Span("Nothing has that in it; Backspace widens the list.", "faint"))]
         )
 
-    def on_key(self, event: events.Key) -> None:
+    def take_key(self, event: events.Key) -> bool:
         """Typing narrows the list, where it may."""
         if not self._narrows:
-            if event.is_printable:
-                event.stop()
-                event.prevent_default()
-            return
+            return event.is_printable
         if event.is_printable and event.character:
             self._typed += event.character
         elif event.key == "backspace":
             self._typed = self._typed[:-1]
         else:
-            return
-        event.stop()
-        event.prevent_default()
+            return False
         self._row = 0
         self.redraw()
+        return True
 
     def _move(self, row: int) -> None:
         self._row = max(0, min(row, len(self._left) - 1))

@@ -27,11 +27,15 @@ class Answer:
 
 @dataclass(frozen=True, slots=True)
 class Call:
-    """A piece of work on the open site and what to do with its answer back in the app's own thread."""
+    """A piece of work on the open site and what to do with its answer back in the app's own thread.
+
+    ``holds``: keys wait for it, as its answer decides what they mean.
+    """
 
     work: Callable[[Bench], Any]
     then: Callable[[Answer], None]
     name: str = ""
+    holds: bool = False
 
 
 class Came(Message):
@@ -62,14 +66,13 @@ class Desk:
                 self._thread.start()
             self._waiting.notify()
 
-    def instead(self, calls: list[Call]) -> list[Call]:
-        """Take these calls in place of those not yet begun, which are returned."""
+    def take_back(self, unwanted: list[Call]) -> list[Call]:
+        """Forget calls that have not begun; returns those that could still be taken back."""
         with self._waiting:
-            dropped = list(self._calls)
-            self._calls.clear()
-        for call in calls:
-            self.put(call)
-        return dropped
+            taken = [call for call in self._calls if call in unwanted]
+            for call in taken:
+                self._calls.remove(call)
+        return taken
 
     def _next(self) -> Call:
         with self._waiting:

@@ -109,7 +109,7 @@ def wrap(text: str, width: int) -> list[str]:
     ['one two', 'three']
     """
     if text.isascii():
-        return wrap_words(text, max(width, 1)) or [""]
+        return wrap_words(text, max(width, 1), break_on_hyphens=False) or [""]
     lines: list[str] = [""]
     for word in text.split():
         while cells(word) > width:

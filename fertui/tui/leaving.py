@@ -12,6 +12,10 @@ LEAVE_WITHIN = 1.5
 """Seconds after which a program that could not leave tidily (a terminal that takes no more bytes) leaves anyway."""
 
 
+HUNG_UP = 128 + signal.SIGHUP
+"""Exit code after the line was cut."""
+
+
 def exit_code(number: int) -> int:
     """What a shell expects of a program that a signal ended."""
     return 128 + number

@@ -55,6 +55,10 @@ class Page(Widget):
         """A new size: draw for it."""
         self.redraw()
 
+    def take_key(self, event: events.Key) -> bool:
+        """Whether a key was typed into the page; if not, it is looked up among the bindings."""
+        return False
+
     def render_line(self, y: int) -> Strip:
         """One row as the toolkit wants it."""
         row = self._rows[y] if y < len(self._rows) else BLANK

@@ -32,7 +32,7 @@ class Prompt(Page, can_focus=True):
         """Put a question; ``then`` gets the answer."""
         self._question, self._then, self._typed = question, then, Typed.at_end(text)
         self.display = True
-        self.focus(scroll_visible=False)
+        self.screen.set_focus(self, scroll_visible=False)
         self.redraw()
 
     def redraw(self) -> None:
@@ -40,22 +40,20 @@ class Prompt(Page, can_focus=True):
         if self.size.width:
             self.show([question_line(self._question, self._typed, self.size.width)])
 
-    def on_key(self, event: events.Key) -> None:
+    def take_key(self, event: events.Key) -> bool:
         """Type and edit; no other key reaches the views while a question stands."""
         if event.key in ("enter", "escape"):
-            return
-        event.stop()
-        event.prevent_default()
+            return False
         if event.is_printable and event.character:
             self._typed = self._typed.insert(event.character)
         else:
             self._typed = self._typed.edit(event.key) or self._typed
         self.redraw()
+        return True
 
-    def on_paste(self, event: events.Paste) -> None:
+    def take_paste(self, text: str) -> None:
         """Pasted text counts as typed."""
-        event.stop()
-        self._typed = self._typed.insert(event.text)
+        self._typed = self._typed.insert(text)
         self.redraw()
 
     def action_answer(self) -> None:

@@ -29,6 +29,14 @@ def site(tmp_path: Path) -> Path:
 
 
 @pytest.fixture
+def todays_site(tmp_path: Path) -> Path:
+    """A demo site that ends on the last morning there was: for what depends on entries being of now."""
+    from fertui.workbench.demo import build_demo
+
+    return build_demo(tmp_path / "nursery")
+
+
+@pytest.fixture
 def open_terminal(tmp_path: Path) -> Iterator[Opened]:
     """Opens a site in a terminal of its own; every terminal is closed at the end of the test."""
     opened: list[PseudoTerminal] = []

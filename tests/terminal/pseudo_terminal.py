@@ -21,7 +21,7 @@ KEYS = {
     "delete": "\x1b[3~", "shift+tab": "\x1b[Z", "f1": "\x1bOP", "f2": "\x1bOQ", "f5": "\x1b[15~", "ctrl+d": "\x04",
     "ctrl+q": "\x11", "ctrl+z": "\x1a", "ctrl+c": "\x03", "ctrl+o": "\x0f", "ctrl+r": "\x12", "ctrl+x": "\x18",
 }  # fmt: skip
-DEADLINE = 30.0
+DEADLINE = 15.0
 """Seconds after which a screen that does not come is a failure."""
 
 

@@ -28,7 +28,8 @@ class Answers:
     @classmethod
     def blank(cls, spec: Spec) -> Answers:
         """Nothing typed yet, defaults in their fields."""
-        return cls(spec, tuple(each.default for each in spec.fields)).moved(0)
+        texts = tuple(each.default for each in spec.fields)
+        return cls(spec, texts, 0, Typed.at_end(texts[0]))
 
     @property
     def current(self) -> Asked:
@@ -51,7 +52,7 @@ class Answers:
 
     def moved(self, to: int) -> Answers:
         """The cursor in another field, what was typed kept."""
-        kept = self.with_typed_kept() if self.texts else self
+        kept = self.with_typed_kept()
         to = max(0, min(to, len(self.spec.fields) - 1))
         return replace(kept, at=to, typed=Typed.at_end(kept.texts[to]))
 

@@ -48,7 +48,7 @@ class Form(View):
         Binding(
             "escape", "close", "leave", id="form.leave", tooltip="Leave; what was typed is kept and offered again."
         ),
-        Binding("f1,question_mark", "help", "help", id="help", tooltip="What this form is for."),
+        Binding("f1,question_mark", "app.help", "help", id="help", tooltip="What this form is for."),
     ]
 
     def __init__(self, spec: Spec, loop: str, saved: Callable[[], None] | None = None) -> None:
@@ -59,8 +59,7 @@ class Form(View):
         self._saved = saved
         self._words: list[tuple[str, str]] = []
         self._checked: list[tuple[str, str]] = []
-        self._held: list[events.Key] = []
-        self._waiting = self._done = False
+        self._done = False
         self._doubted: dict[int, tuple[str, ...]] = {}
         self._confirmed: frozenset[str] = frozenset()
 
@@ -97,18 +96,8 @@ class Form(View):
 
     # keys
 
-    def on_key(self, event: events.Key) -> None:
-        """Typing goes into the field; what is no text is left to the keys of the form."""
-        if self._waiting:
-            self._held.append(event)
-            event.stop()
-            event.prevent_default()
-        elif self._take(event):
-            event.stop()
-            event.prevent_default()
-
-    def _take(self, event: events.Key) -> bool:
-        """Whether the key was text or an editing key; then it is in the field."""
+    def take_key(self, event: events.Key) -> bool:
+        """Text and editing keys go into the field; anything else is left to the keys of the form."""
         current = self.answers.current
         if event.is_printable and event.character:
             if current.is_number and event.character in "+*?":
@@ -121,11 +110,10 @@ class Form(View):
         self._set(edited)
         return True
 
-    def on_paste(self, event: events.Paste) -> None:
+    def take_paste(self, text: str) -> None:
         """Pasted text counts as typed."""
-        event.stop()
         if not self.answers.current.choices:
-            self._set(self.answers.type(event.text))
+            self._set(self.answers.type(text))
 
     def _set(self, answers: Answers) -> None:
         self.answers = answers
@@ -187,11 +175,9 @@ class Form(View):
         def look(bench: Bench) -> tuple[str, tuple[str, ...]]:
             return bench.echo(kind, each.name, texts[each.name], loop), _doubt(bench, kind, texts, each.name, loop)
 
-        self._waiting = True
         self.fertui.clerk(look, lambda answer: self._heard(number, answer, go_on), "a field")
 
     def _heard(self, number: int, answer: Answer, go_on: Callable[[], None]) -> None:
-        self._waiting = False
         if answer.value is None:
             self.say((answer.trouble, "act"))
         else:
@@ -205,7 +191,6 @@ class Form(View):
                 go_on()
                 self.keep()
                 self._check()
-        self._release()
 
     def _check(self) -> None:
         """For an analysis: whether what is typed so far holds together."""
@@ -213,7 +198,7 @@ class Form(View):
         if self.spec.kind != "analysis" or not found or len(found[0][1]) < FEWEST_TO_CHECK:
             return
         texts, loop = {**found[0][1], "by": "?"}, self.loop
-        self.fertui.clerk(lambda bench: bench.check_analysis(texts, loop), self._check_came, "the check")
+        self.fertui.quietly(lambda bench: bench.check_analysis(texts, loop), self._check_came, "the check")
 
     def _check_came(self, answer: Answer) -> None:
         rows = answer.value or ()
@@ -223,18 +208,6 @@ class Form(View):
         ]
         if not self._done:
             self.redraw()
-
-    def _release(self) -> None:
-        """Keys that came while the form waited, in their order."""
-        while self._held and not self._waiting:
-            event = self._held.pop(0)
-            if self._done or not self._take(event):
-                self.app.post_message(events.Key(event.key, event.character))
-                break
-        for event in self._held if not self._waiting else ():
-            self.app.post_message(events.Key(event.key, event.character))
-        if not self._waiting:
-            self._held.clear()
 
     def _entry_with(self, number: int) -> tuple[str, Texts]:
         """Kind and texts of the entry a field belongs to, as far as it is filled in."""
@@ -257,14 +230,11 @@ class Form(View):
             self.say(("Nothing is filled in yet. Esc leaves the form.", "watch"))
             return
         by, loop = self.fertui.snapshot.initials or "?", self.loop
-        self._waiting = True
         self.fertui.clerk(lambda bench: _look(bench, found, by, loop), self._looked, "the form")
 
     def _looked(self, answer: Answer) -> None:
-        self._waiting = False
         if answer.value is None:
             self.say((answer.trouble, "act"))
-            self._release()
             return
         open_questions = [text for text in answer.value if text not in self._confirmed]
         if open_questions:
@@ -272,22 +242,18 @@ class Form(View):
             self.say(
                 *((text, "watch") for text in open_questions), ("Save again (+ or F2) to keep it as it is.", "faint")
             )
-            self._release()
             return
         self.fertui.with_initials(self._write)
 
     def _write(self, initials: str) -> None:
         entries = [(kind, {**texts, "by": initials}) for kind, texts in entries_of(self.spec, self.answers.texts)]
         loop = self.loop
-        self._waiting = True
         self.fertui.clerk(lambda bench: _record(bench, entries, loop), self._written, "saving")
 
     def _written(self, answer: Answer) -> None:
-        self._waiting = False
         if answer.value is None:
-            self.say((answer.trouble, "act"), ("Nothing was saved; the form is kept.", "faint"))
+            self.say(("Nothing was saved; the form is kept.", "watch"), (answer.trouble, "act"))
             self.keep()
-            self._release()
             return
         written, last_number = answer.value
         self.fertui.drop_draft(self.spec.kind, self.loop)
@@ -296,7 +262,6 @@ class Form(View):
         self.fertui.say(saved_words(written), "good")
         if self._saved is not None:
             self._saved()
-        self._release()
 
     # drafts
 

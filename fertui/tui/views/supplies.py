@@ -127,13 +127,13 @@ class SuppliesView(View):
                 TextPage(f"{supply.name} ({supply.formula})", [*facts, "", *(f"- {each}" for each in text)])
             )
 
-    async def action_stock_sheet(self) -> None:
+    def action_stock_sheet(self) -> None:
         """The stock-tank sheet."""
-        await self.fertui.paper("stock")
+        self.fertui.paper("stock")
 
-    async def action_acid_sheet(self) -> None:
+    def action_acid_sheet(self) -> None:
         """The acid sheet."""
-        await self.fertui.paper("acid")
+        self.fertui.paper("acid")
 
 
 def _shelf_head(width: int) -> Line:

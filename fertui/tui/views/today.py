@@ -74,6 +74,8 @@ class TodayView(View):
         if self._shows_all(snapshot):
             self.all_loops = False
             self.fertui.choose_loop(_order(snapshot)[self.row])
+            self.redraw()
+            self.fertui.work_out()
 
     def action_up(self) -> None:
         """The loop above, or a line up."""

@@ -1,0 +1,268 @@
+"""Forms driven key by key: what an entry costs, what is asked back, that what was typed is in the logbook afterwards.
+
+Key budgets are the project's own: a reading of seven numbers its characters and 9 keys, an analysis of twelve ions its
+characters and 16, both without the initials.
+"""
+
+from __future__ import annotations
+
+import re
+import sqlite3
+from pathlib import Path
+
+import pytest
+from conftest import Opened
+from pseudo_terminal import PseudoTerminal
+
+from fertui.logbook.entries import Entry
+from fertui.logbook.kinds import KINDS
+from fertui.workbench import open_site
+
+
+class Counted:
+    """Presses keys one by one and counts them: characters of values apart from the other keys."""
+
+    def __init__(self, terminal: PseudoTerminal) -> None:
+        self.terminal, self.characters, self.keys = terminal, 0, 0
+
+    def key(self, *names: str) -> None:
+        for name in names:
+            self.terminal.press(name)
+            self.keys += 1
+
+    def value(self, text: str) -> None:
+        for character in text:
+            self.terminal.press(character)
+            self.characters += 1
+
+
+@pytest.fixture
+def site(todays_site: Path) -> Path:
+    return todays_site
+
+
+def fresh(site: Path, kind: str) -> list[Entry]:
+    """Entries of a kind that were written since the demo was built."""
+    first = int((site.parent / "first_number").read_text())
+    return [entry for entry in open_site(site).history(kind=kind) if (entry.number or 0) > first]
+
+
+@pytest.fixture
+def counting(site: Path, open_terminal: Opened) -> Counted:
+    (site.parent / "first_number").write_text(str(open_site(site).last_number()))
+    shown = open_terminal(site)
+    shown.until_text("more to look at")
+    shown.settle()
+    return Counted(shown)
+
+
+def give_initials(terminal: PseudoTerminal) -> None:
+    terminal.until_text("Your initials:")
+    terminal.press("M", "K", "enter")
+
+
+def test_a_reading_of_seven_numbers(site: Path, counting: Counted) -> None:
+    counting.key("r")
+    for text in ("2.62", "5.5", "18.6", "2900", "21.5", "21.0"):
+        counting.value(text)
+        counting.key("enter")
+    counting.value("1,1")
+    counting.key("+", "+")  # the first one asks about the cautions of the acid
+    give_initials(counting.terminal)
+    counting.terminal.until_text("saved")
+    assert counting.keys <= 9
+    [reading] = fresh(site, "reading")
+    assert (reading.point, reading.by) == ("feed", "MK")
+    assert [reading.number_of(name) for name in ("EC", "pH", "temperature")] == [2.62, 5.5, 18.6]
+    assert [entry.number_of("make_up") for entry in fresh(site, "water")] == [2900.0]
+    assert {entry.text_of("tank"): entry.number_of("litres") for entry in fresh(site, "stock")} == {
+        "calcium": 21.5,
+        "sulfate": 21.0,
+    }
+    [acid] = fresh(site, "acid")
+    assert (acid.number_of("litres"), acid.text_of("cautions")) == (1.1, "not acknowledged")
+
+
+ANALYSIS = {
+    "K": "7.8", "Ca": "5.6", "Mg": "2.5", "Na": "1.6", "NH4": "0.4", "NO3": "14.7", "Cl": "1.4", "SO4": "3.7", "H2PO4": "1.1",
+    "HCO3": "0.4", "Fe": "25", "Mn": "10",
+}  # fmt: skip
+"""An invented analysis whose charges close."""
+
+
+def test_an_analysis_of_twelve_ions(site: Path, counting: Counted) -> None:
+    counting.key("a", "f", "enter")  # f: the drip, called feed
+    counting.key("enter")  # sampled now
+    *first, last = ANALYSIS.values()
+    for text in first:
+        counting.value(text)
+        counting.key("enter")
+    counting.value(last)
+    assert "charge balance" in counting.terminal.text
+    counting.key("+")
+    give_initials(counting.terminal)
+    counting.terminal.until_text("saved")
+    assert counting.keys <= 16
+    [analysis] = fresh(site, "analysis")
+    assert analysis.point == "feed"
+    assert {value.name: value.number for value in analysis.values} == {
+        ion: float(text) for ion, text in ANALYSIS.items()
+    }
+
+
+def test_plan_accepted_and_a_step_marked_done(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("n")
+    counting.key("p")
+    terminal.until_text("with the plan")
+    counting.key("y")
+    terminal.until_text("Before any acid is handled")
+    counting.key("enter")
+    counting.value("38")
+    counting.key("enter")
+    give_initials(terminal)
+    terminal.until_text("Accepted")
+    counting.key("enter")
+    counting.key("enter")
+    terminal.until_text("done in")
+    assert counting.keys <= 8
+    assert len(fresh(site, "plan")) == 3
+    [acid] = fresh(site, "acid")
+    assert (acid.number_of("litres"), acid.text_of("cautions")) == (0.42, "acknowledged")
+
+
+def test_a_plan_with_acid_is_held_back_until_the_label_fits(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("n", "p")
+    assert "0.42 L" not in terminal.until_text("What holds acid is held back")
+    terminal.press("y")
+    terminal.until_text("Before any acid is handled")
+    terminal.press("enter", "6", "0", "enter")
+    assert "nothing is released" in terminal.until_text("Not released")
+    terminal.press("esc")
+    terminal.until_text("What holds acid is held back")
+    assert fresh(site, "plan") == []
+
+
+@pytest.mark.parametrize(
+    ("typed", "asked"),
+    [("280", "280"), ("26", "26"), ("-1", "-1"), ("nan", "nan"), ("2.6 mS/m2", "mS/m2"), ("59", "59")],
+)
+def test_a_value_that_cannot_be_or_is_out_by_ten_is_asked_about_at_once(
+    counting: Counted, typed: str, asked: str
+) -> None:
+    terminal = counting.terminal
+    terminal.press("r", typed, "enter")
+    terminal.settle()
+    rows = terminal.text.splitlines()
+    assert any(asked in row for row in rows[-6:]), terminal.text
+    assert "▸ EC" in terminal.text  # the cursor has not left the field
+
+
+def test_a_comma_is_a_decimal_mark_and_the_value_is_echoed_with_its_unit(counting: Counted) -> None:
+    counting.terminal.press("r", "2,6", "enter")
+    counting.terminal.until_text("= 2.6 mS/cm")
+
+
+def test_keys_typed_ahead_of_a_slow_line_land_in_their_fields(counting: Counted) -> None:
+    counting.terminal.type(b"r2.61\r5.4\r18.2\r")
+    text = counting.terminal.until_text("= 18.2 C")
+    assert "2.61______" in text
+    assert "5.4_______" in text
+
+
+def test_star_takes_the_last_value(counting: Counted) -> None:
+    counting.terminal.press("r")
+    text = counting.terminal.until(lambda shown: re.search(r"EC .* last [\d.]+", shown) is not None)
+    last = re.search(r"EC .* last ([\d.]+)", text)
+    assert last is not None
+    counting.terminal.press("*", "enter")
+    counting.terminal.until_text(f"= {float(last[1]):g} mS/cm")
+
+
+@pytest.mark.parametrize("kind", [kind for kind in KINDS if kind not in ("plan", "site")])
+def test_every_kind_has_a_form_that_opens_and_asks_for_every_field(counting: Counted, kind: str) -> None:
+    direct = {"reading": "r", "analysis": "a", "water": "w", "dose": "d", "batch": "m"}
+    terminal = counting.terminal
+    if kind in direct:
+        terminal.press(direct[kind])
+    else:
+        terminal.press("e", kind, "enter")
+    terminal.until_text(", north bay")
+    before = terminal.text
+    for _ in range(40):
+        terminal.type(b"\x1b[B")
+    terminal.settle()
+    assert "▸" in terminal.text
+    terminal.press("f1")
+    terminal.until_text("Keys here")
+    terminal.press("esc", "esc")
+    terminal.until_text("All loops, worst first")
+    assert before != terminal.text
+
+
+def test_what_another_session_logs_appears_by_itself_and_leaves_the_form_alone(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("7")
+    terminal.until_text("newest first")
+    open_site(site).record("note", {"text": "filter changed", "by": "RV"})
+    terminal.until_text("filter changed")
+    terminal.press("r", "2.6")
+    open_site(site).record("note", {"text": "door open", "by": "RV"})
+    terminal.read(3.0)
+    assert "2.6_" in terminal.text
+    assert "Reading" in terminal.text
+
+
+def test_a_correction_asks_for_the_reason_and_both_entries_stay_visible(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    number = open_site(site).record("reading", {"EC": "2.444", "by": "MK"}).number
+    terminal.press("7")
+    terminal.until_text("EC 2.444")
+    terminal.press("c")
+    terminal.until_text(f"Correct {number}")
+    terminal.press("backspace", "7", "+")
+    terminal.until_text("corrected?")
+    terminal.press("misread", "enter")
+    give_initials(terminal)
+    terminal.until_text("logged as")
+    terminal.until_text("×")
+    old, new = fresh(site, "reading")[-2:]
+    assert (old.number_of("EC"), new.number_of("EC"), new.supersedes, new.why) == (2.444, 2.447, number, "misread")
+
+
+def test_a_correction_without_a_reason_changes_nothing(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    open_site(site).record("reading", {"EC": "2.444", "by": "MK"})
+    terminal.press("7")
+    terminal.until_text("EC 2.444")
+    terminal.press("c", "backspace", "7", "+")
+    terminal.until_text("corrected?")
+    terminal.press("enter")
+    terminal.until_text("a reason is needed")
+    assert len(fresh(site, "reading")) == 1
+
+
+def test_a_vanished_logbook_becomes_a_sentence(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("r", "2.6", "enter")
+    terminal.until_text("= 2.6")
+    for path in site.glob("logbook.sqlite3*"):
+        path.unlink()
+    terminal.press("+")
+    give_initials(terminal)
+    terminal.until_text("Nothing was saved; the form is kept.")
+
+
+def test_a_locked_logbook_becomes_a_sentence_and_the_form_is_kept(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("r", "2.6", "enter", "+")
+    terminal.until_text("Your initials:")
+    with sqlite3.connect(site / "logbook.sqlite3", isolation_level=None) as other:
+        other.execute("BEGIN EXCLUSIVE")
+        terminal.press("M", "K", "enter")
+        terminal.until_text("Nothing was saved; the form is kept.")
+        other.execute("ROLLBACK")
+    terminal.press("+")
+    terminal.until_text("saved")
+    assert [entry.number_of("EC") for entry in fresh(site, "reading")] == [2.6]
