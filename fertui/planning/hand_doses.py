@@ -22,9 +22,8 @@ from fertui.planning.runs import Addition, Course, Doing, Exchange, Runs, Situat
 from fertui.planning.shelf import Material
 from fertui.planning.weighing import scales_of
 
-REACHED_PCT = 0.5
-"""By how many points of share a plan may miss its bands and still be called one that reaches them: half a digit
-shown."""
+REACHED_PCT = 1.0
+"""By how many points of share a plan may miss its bands and still be called one that reaches them: the last digit."""
 DAILY_WEIGHT = 0.3
 """Weight of the days on the way beside that of the horizon."""
 LITRES = 10.0

@@ -73,6 +73,13 @@ def hand_plan(request: Request) -> Plan:
     return _shown(request, task, dosed, empty, sheet)
 
 
+def _unseen(request: Request) -> tuple[str, ...]:
+    """A word where nobody has analysed the tank yet."""
+    if request.situation.analysis_days_old is not None:
+        return ()
+    return ("no analysis of the tank yet: planned as if it held its source water; log one and plan again",)
+
+
 def _drained(request: Request, course: Course) -> str | None:
     """Why a horizon is too long for hand doses: the crop empties the tank of salts meanwhile; None where it does
     not."""
@@ -124,7 +131,7 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, sheet: AcidS
         arithmetic=arithmetic(steps, by_name, _before(request, dosed), request.situation.volumes_l[task.tank]),
         runner_up=_runner_up(task, dosed, steps),
         sensitivity=_sensitivity(dosed),
-        notices=over_limit_words(dosed.end, request.managed),
+        notices=(*_unseen(request), *over_limit_words(dosed.end, request.managed)),
         acid=acid_steps(sheet, request.situation.at, "tank:tank"),
         acid_sheet=sheet,
     )
@@ -179,7 +186,8 @@ def _verdict(request: Request, dosed: Dosed) -> tuple[bool, str | None]:
         parts.append(f"{what} would be {value:.2f}, limit {limit:.2f}")
     if dosed.missed_pct > REACHED_PCT:
         held = held_by(binding(dosed.checkpoints))
-        parts.append(f"{share_words(end)} at the end, outside the bands {bands_words(goal)}; {held}")
+        when = f"not within {request.wishes.days} days: " if request.wishes.days else ""
+        parts.append(f"{when}{share_words(end)} at the end, outside the bands {bands_words(goal)}; {held}")
     missed = _missed_aims(request, end, goal)
     if missed:
         parts.append(f"with these salts {missed}")

@@ -180,7 +180,7 @@ def over_limit_words(end: Array, goal: Goal) -> tuple[str, ...]:
 
 def share_words(composition: Array) -> str:
     """Shares of a composition (10,) in words."""
-    return ", ".join(f"{ion} share {part:.0f} %" for ion, part in share_pct(composition).items())
+    return ", ".join(f"{ion} share {part:.1f} %" for ion, part in share_pct(composition).items())
 
 
 def bands_words(goal: Goal) -> str:

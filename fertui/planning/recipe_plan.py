@@ -32,9 +32,6 @@ GAINED_PCT = 0.3
 SECOND_STAGE_AFTER = 7
 """Days after which a recipe may be changed again: practice waits 7-10 (Nutrient Solutions for Greenhouse Crops
 2016)."""
-NEARLY_PCT = 1.0
-"""Points of share a recipe may miss its bands by at the horizon: it goes on working after it (a tank's dose does
-not)."""
 
 
 def recipe_plan(request: Request, estimate: Estimate) -> Plan:
@@ -192,7 +189,7 @@ def _verdict(request: Request, task: RecipeTask, recipe: Recipe) -> tuple[bool, 
     broken = [f"{what} would be {value:.2f}, limit {limit:.2f}" for what, value, limit in recipe.broken[:3]]
     if broken:
         return False, "; ".join(broken), ()
-    if recipe.missed_pct <= NEARLY_PCT:
+    if recipe.missed_pct <= REACHED_PCT:
         return True, None, ()
     end = recipe.checkpoints[-1]
     gained = violation(end, end.base) - recipe.missed_pct

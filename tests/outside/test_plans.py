@@ -108,7 +108,7 @@ def test_no_single_shot_of_potassium_nitrate_in_the_nft_tank(days: int) -> None:
         now = now - (UPTAKE - FED) / volume
     share = 100 * now[0] / (now[0] + 2 * now[1] + 2 * now[2])
     assert share == pytest.approx(plan.after.points["tank"].ions["K"].share_pct.value, abs=0.1)
-    assert share >= 34.5  # the band: 5 points around the aim's 40; half a point off still counts as reached
+    assert share >= 34.0  # the band: 5 points around the aim's 40; a point off still counts as reached
 
 
 def test_what_all_exceeds_is_renewed_and_never_promised_by_salts() -> None:
@@ -251,7 +251,7 @@ def keeps_its_limits(start: dict, ceiling: float, days: int, step_kg: float, ph:
         out = np.maximum(meq / meq.sum() - asked.managed.share_high, 0) + np.maximum(
             asked.managed.share_low - meq / meq.sum(), 0
         )
-        assert 100 * out.sum() <= 0.51
+        assert 100 * out.sum() <= 1.01
     if not plan.feasible:
         assert plan.reason
 
