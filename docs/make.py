@@ -8,6 +8,8 @@ from collections.abc import Callable, Mapping
 from datetime import UTC, datetime
 from pathlib import Path
 
+from pictures import answers, screens
+
 from fertui.catalogue.safety_page import safety_tables
 from fertui.cli.parser import build, commands_of
 from fertui.logbook.kinds import KINDS
@@ -79,12 +81,43 @@ def _beginning(planned: str) -> str:
     return planned.split("\nLimits that bind")[0] + "\n..."
 
 
+def guide_with_answers() -> str:
+    """docs/guide.md with what its commands print made anew."""
+    return _guide(answers())
+
+
+def guide_with_screens() -> str:
+    """docs/guide.md with its screens made anew."""
+    with tempfile.TemporaryDirectory() as folder:
+        return _guide(screens(Path(folder))[0])
+
+
+def today_drawn() -> str:
+    """docs/today.svg: Today of the demo's slab loop."""
+    with tempfile.TemporaryDirectory() as folder:
+        return screens(Path(folder), last="today")[1]
+
+
+def _guide(pictures: Mapping[str, str]) -> str:
+    page = (DOCS / "guide.md").read_text(encoding="utf-8")
+    for name, picture in pictures.items():
+        page = replaced(page, name, f"```\n{picture}\n```")
+    return page
+
+
 PAGES: Mapping[Path, Callable[[], str]] = {
     DOCS / "command.md": command_reference,
     DOCS / "safety.md": safety_page,
     README: readme_page,
+    DOCS / "guide.md": guide_with_answers,
 }
 """Pages made from the program, whole or in part."""
+
+DRAWN: Mapping[Path, Callable[[], str]] = {
+    DOCS / "guide.md": guide_with_screens,
+    DOCS / "today.svg": today_drawn,
+}
+"""What is taken from the screens, which takes longer."""
 
 
 def replaced(page: str, name: str, made: str) -> str:
@@ -94,5 +127,5 @@ def replaced(page: str, name: str, made: str) -> str:
 
 
 if __name__ == "__main__":
-    for path, page in PAGES.items():
+    for path, page in (*PAGES.items(), *DRAWN.items()):
         path.write_text(page(), encoding="utf-8")

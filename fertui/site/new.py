@@ -146,7 +146,7 @@ def first_steps(site: Site) -> tuple[str, ...]:
     if not site.waters[0].composition.ions:
         steps.append(f"The analysis of the water {site.waters[0].name!r} in site.toml: acid and salts depend on it.")
     steps.append(
-        "The daily round (key r): EC, pH and litres of make-up water; two minutes, blank sheet with `fertui round`."
+        "The daily round (key r): EC, pH, litres of make-up water and stock; two minutes, blank sheet: `fertui round`."
     )
     if medium_preset(loop.medium).warning:
         steps.append(f"About {loop.medium}: {medium_preset(loop.medium).warning}")
