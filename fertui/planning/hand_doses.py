@@ -7,7 +7,7 @@ agree.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -26,6 +26,9 @@ REACHED_PCT = 1.0
 """By how many points of share a plan may miss its bands and still be called one that reaches them: the last digit."""
 DAILY_WEIGHT = 0.3
 """Weight of the days on the way beside that of the horizon."""
+LIGHTER, TAKEN_BACK = 4, (0.85, 0.6, 0.0)
+"""A plan that passes a limit when the model runs it is made lighter by single scale steps, then by parts, down to
+nothing."""
 LITRES = 10.0
 """Renewal is counted in tens of litres."""
 UNLIMITED_EC = 6.0
@@ -240,33 +243,43 @@ def _replaceable(task: Task, measures: Measures, units: Array) -> int | None:
 
 
 def _verified(task: Task, measures: Measures, units: Array, second: Array | None, runs: Runs, without: Course) -> Dosed:
-    """The plan as the model finds it, taken back in parts while any limit is passed; with its variants in the same
-    run."""
-    for plan in _taken_back(units):
+    """The plan as the model finds it, made lighter while any limit is passed; with its variants in the same run."""
+    plan = units
+    for attempt in range(LIGHTER + len(TAKEN_BACK) + 1):
         cases = {
             "plan": plan, "half of each weight": 0.5 * plan, "a day late": plan, "10 % more": 1.1 * plan,
             "10 % less": 0.9 * plan, "runner-up": plan if second is None else second,
         }  # fmt: skip
         late = np.array([float(each == "a day late" and task.horizon > 0) for each in cases])
         doing = doing_of(task, measures, np.array(list(cases.values())), late)
-        course = runs.settled(doing, len(cases))
-        points = _checkpoints(task, doing, course, without, np.ones(len(cases) - 1))
-        broken = tuple(one for each in points for one in _broken(each, points))
-        if not broken:
+        points = _checkpoints(task, doing, runs.settled(doing, len(cases)), without, np.ones(len(cases) - 1))
+        broken = tuple((each.day, one) for each in points for one in _broken(each, points))
+        if not broken or attempt == LIGHTER + len(TAKEN_BACK):
             break
+        if attempt < LIGHTER:
+            plan = _lighter(task, measures, plan, {day for day, _ in broken})
+        else:
+            plan = np.floor(units * TAKEN_BACK[attempt - LIGHTER] + 1e-6)
     end = points[-1]
     members = np.vstack([end.now, end.now + end.slope.T])
     variants = {case: member for case, member in zip(cases, members, strict=True) if case != "plan"}
-    missed = violation(end, end.now)
-    return Dosed(plan, measures, points, missed, broken, end.now, variants, second)
+    passed = tuple(one for _, one in broken)
+    return Dosed(plan, measures, points, violation(end, end.now), passed, end.now, variants, second)
 
 
-def _taken_back(units: Array) -> Iterator[Array]:
-    """A plan, then less and less of it, down to nothing: each is checked by one run of the model."""
-    yield units
-    yield np.maximum(units - 1.0, 0.0)
-    for part in (0.95, 0.85, 0.6, 0.0):
-        yield np.floor(units * part + 1e-6)
+def _lighter(task: Task, measures: Measures, units: Array, days: set[float]) -> Array:
+    """A plan with one scale step less of the heaviest weighing at, or last before, each day on which a limit is
+    passed."""
+    plan = units.copy()
+    for day in days:
+        steps = [s for s, at in enumerate(task.days) if at <= day] or [0]
+        weighed = np.where(
+            np.isin(measures.step, steps) & (np.array(measures.material) >= 0), plan * measures.unit, 0.0
+        )
+        latest = max((s for s in steps if weighed[np.array(measures.step) == s].any()), default=steps[-1])
+        heaviest = int(np.argmax(np.where(np.array(measures.step) == latest, weighed, 0.0)))
+        plan[heaviest] = max(plan[heaviest] - 1.0, 0.0)
+    return plan
 
 
 def _broken(each: Checkpoint, points: Sequence[Checkpoint]) -> list[tuple[str, float, float]]:
