@@ -77,8 +77,7 @@ def first_members(record: Record, setting: Setting, begin: Beginning, members: i
     load = setting.growing.load() if begin.analysis is None and setting.exchanges else None
     state = start(setting.circuit, medium, vessels[:, ROOT], vessels[:, STORE], members, load)
     seen = begin.analysis
-    measured = seen.ions.get("HCO3", ALKALINITY_MEQ_L) if seen is not None else ALKALINITY_MEQ_L
-    ensemble = Ensemble(state, **unknown, alkalinity=measured)
+    ensemble = Ensemble(state, **unknown, alkalinity=_alkalinity(record, setting, begin))
     if seen is None or seen.ec is None:
         return ensemble
     return corrected(ensemble, setting, replace(seen, ions={}), None, ElectroMeter(), seed)[0]
@@ -99,8 +98,17 @@ def _vessel(record: Record, setting: Setting, begin: Beginning, drawn: Array, wh
     if seen is None:
         feed = array(target_feed(record.site, record.loop).ions)
         vessel += np.maximum(NOT_ANALYSED * drawn[:, -1, None] - 0.1, 0.0) * feed
-    vessel[:, INDEX["HCO3"]] = ALKALINITY_MEQ_L if seen is None else seen.ions.get("HCO3", ALKALINITY_MEQ_L)
+    vessel[:, INDEX["HCO3"]] = _alkalinity(record, setting, begin)
     return vessel
+
+
+def _alkalinity(record: Record, setting: Setting, begin: Beginning) -> float:
+    """Alkalinity [meq/L] at the start: as measured, that of the source water in a tank, else the usual."""
+    if begin.analysis is not None:
+        return begin.analysis.ions.get("HCO3", ALKALINITY_MEQ_L)
+    if setting.circuit.layout == "shared-tank":
+        return float(_unseen(record, setting, begin.time)[INDEX["HCO3"]])
+    return ALKALINITY_MEQ_L
 
 
 def _unseen(record: Record, setting: Setting, time: float) -> Array:

@@ -16,7 +16,7 @@ from fertui.estimate.noise import normals
 from fertui.estimate.setting import Setting
 from fertui.loop import ROOT, STORE, Medium, Plants, State
 
-SPREAD = {"fast": 0.10, "common": 0.15, "drain": 0.20, "stock": 0.05, "ec": 0.05}
+SPREAD = {"fast": 0.10, "common": 0.15, "drain": 0.15, "stock": 0.05, "ec": 0.05}
 """Spread (log) at the start; the slow part of uptake starts with the spread of the crop's preset."""
 
 DAILY = 1.0 / 14.0
@@ -24,7 +24,7 @@ DAILY = 1.0 / 14.0
 FAST_SD, FAST_DAYS = 0.25, 30.0
 SLOW_SD = 0.07
 COMMON_SD, COMMON_DAYS = 0.10, 30.0
-DRAIN_SD, DRAIN_DAYS = 0.20, 60.0
+DRAIN_SD, DRAIN_DAYS = 0.15, 60.0
 STOCK_SD, EC_SD = 0.03, 0.02
 STATE_SD, STATE_COMMON_SD = 0.05, 0.04
 ALKALINITY_DAYS, ALKALINITY_MEQ_L = 3.0, 0.5

@@ -25,6 +25,8 @@ VOLATILE = 2.0
 """A specific scale above this (in standard deviations) makes a loop volatile: weekly samples are the remedy."""
 LOW, HIGH = 0.10, 0.90
 LARGEST_PROJECTION = 0.5
+MOST_ALKALINITY = 6.0
+"""Alkalinity [meq/L] above this is no water of a greenhouse; it is not let into the charge balance."""
 
 _HCO3, _NH4 = INDEX["HCO3"], INDEX["NH4"]
 _SHARED = [INDEX["K"], INDEX["Ca"], INDEX["Mg"]]
@@ -95,7 +97,7 @@ def neutral(mmol_l: Array) -> Array:
     True
     """
     charges = mmol_l[..., :_HCO3] * CHARGE[:_HCO3]
-    imbalance = charges.sum(axis=-1, keepdims=True) - np.clip(mmol_l[..., _HCO3:], 0.0, 2.0)
+    imbalance = charges.sum(axis=-1, keepdims=True) - np.clip(mmol_l[..., _HCO3:], 0.0, MOST_ALKALINITY)
     weight = np.maximum((charges**2).sum(axis=-1, keepdims=True), TRACE)
     shift = np.clip(-imbalance * charges / weight, -LARGEST_PROJECTION, LARGEST_PROJECTION)
     return np.concatenate([mmol_l[..., :_HCO3] * np.exp(shift), mmol_l[..., _HCO3:]], axis=-1)

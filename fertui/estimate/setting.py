@@ -20,9 +20,9 @@ STORE_L_PER_M2 = 3.0
 CIRCULATING_L_PER_M2 = 5.0
 """Water of a loop without medium whose tank is not given: NFT 1-5 L/m2 in gullies and tank (common practice)."""
 
-PRESET_SD = 0.4
+PRESET_SD = 0.5
 """Spread (log) of uptake about the preset of a crop: presets come from other growers' crops."""
-UNVERIFIED_SD = 0.6
+UNVERIFIED_SD = 0.7
 """The same for ions whose preset is unverified."""
 
 
