@@ -1,0 +1,103 @@
+"""The account of a period closes, whatever period is asked for."""
+
+from __future__ import annotations
+
+from dataclasses import astuple, replace
+from functools import cache
+
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from fertui.estimate.assimilation import Estimate, assimilate
+from fertui.estimate.balance import BalanceRow, balance, crop_water_l, discharged
+from fertui.logbook.entries import Entry
+from tests.estimate.logs import DRAIN, FEED, SALAD, SITE, SLAB, TANK, daily_water, entry, fed, moment
+
+
+@cache
+def _slab(medium: str = "stone-wool") -> Estimate:
+    analyses = [entry("analysis", 0.5 + 7.0 * turn, point="drain", **DRAIN) for turn in range(3)]
+    log: list[Entry] = [*daily_water(20), *fed(20.0), *analyses]
+    return assimilate(SITE, replace(SLAB, medium=medium), log, moment(19.3), members=60)
+
+
+@cache
+def _tank() -> Estimate:
+    log = [
+        entry("analysis", 0.5, "tank", "tank", **SALAD),
+        entry("dose", 4.25, "tank", number=44, salt="potassium nitrate", kg=0.5),
+        entry("bleed", 6.5, "tank", number=45, litres=400.0, reason="sodium", **{"from": "tank"}),
+        entry("analysis", 7.5, "tank", "tank", **SALAD),
+    ]
+    return assimilate(SITE, TANK, log, moment(9.0), members=60)
+
+
+def _gap(row: BalanceRow) -> float:
+    start, *flows, end = astuple(row)
+    return abs(start + sum(flows) - end) / max(abs(start), abs(end), *map(abs, flows), 1e-9)
+
+
+@given(st.floats(0.0, 19.0), st.floats(0.0, 19.0))
+@settings(max_examples=40, deadline=None)
+def test_start_and_flows_make_the_end_for_every_period(one: float, other: float) -> None:
+    first, last = sorted((one, other))
+    for estimate in (_slab(), _slab("coir")):
+        if last <= 0.5:
+            continue
+        for row in balance(estimate, moment(first), moment(last)).ions.values():
+            assert _gap(row) < 1e-9
+
+
+def test_two_halves_make_the_whole() -> None:
+    whole, one, two = (balance(_tank(), moment(a), moment(b)) for a, b in ((1.0, 8.0), (1.0, 5.3), (5.3, 8.0)))
+    for ion, row in whole.ions.items():
+        assert one.ions[ion].end_mmol == pytest.approx(two.ions[ion].start_mmol, rel=1e-9, abs=1e-9)
+        assert one.ions[ion].uptake + two.ions[ion].uptake == pytest.approx(row.uptake, rel=1e-9, abs=1e-9)
+
+
+def test_a_dose_stands_in_its_cell_with_its_entry() -> None:
+    account = balance(_tank(), moment(4.0), moment(5.0))
+    assert account.ions["K"].dose == pytest.approx(0.5 * 9891.0, rel=1e-3)  # KNO3, 101.10 g/mol
+    assert account.entries["K", "dose"] == (44,)
+    assert balance(_tank(), moment(5.0), moment(6.0)).ions["K"].dose == 0.0
+
+
+def test_signs_are_those_of_the_solution() -> None:
+    slab, tank = balance(_slab(), moment(1.0), moment(19.0)), balance(_tank(), moment(1.0), moment(9.0))
+    for row in slab.ions.values():
+        assert row.make_up == row.stock == 0.0
+    assert slab.ions["K"].feed > 0 > slab.ions["K"].uptake
+    assert slab.ions["K"].drain < 0
+    assert tank.ions["K"].feed == tank.ions["K"].drain == 0.0
+    assert tank.ions["K"].bleed < 0
+    assert tank.ions["Na"].make_up > 0
+
+
+def test_what_an_analysis_corrected_is_unexplained() -> None:
+    quiet, corrected = (balance(_slab(), moment(a), moment(b)).ions["K"].unexplained for a, b in ((8.1, 8.9), (7.1, 7.9)))
+    assert abs(corrected) > 5.0 * abs(quiet)
+
+
+def test_coir_gives_and_takes_and_stone_wool_does_not() -> None:
+    coir, wool = (balance(_slab(medium), moment(1.0), moment(19.0)) for medium in ("coir", "stone-wool"))
+    assert abs(coir.ions["K"].exchange) > 1.0
+    assert wool.ions["K"].exchange == 0.0
+
+
+def test_a_period_is_cut_to_the_estimate_and_refused_where_it_does_not_meet_it() -> None:
+    account = balance(_slab(), moment(-30.0), moment(5.0))
+    assert account.start == moment(0.5)
+    with pytest.raises(ValueError, match="the estimate runs from"):
+        balance(_slab(), moment(-30.0), moment(-20.0))
+    with pytest.raises(ValueError, match="before it begins"):
+        balance(_slab(), moment(9.0), moment(5.0))
+
+
+def test_nitrogen_discharged_is_the_bleed_times_what_the_tank_held() -> None:
+    lost = discharged(_tank(), moment(6.0), moment(7.0))
+    assert [each.reason for each in lost] == ["sodium"]
+    held = 20.25 * 400.0 * 14.007e-6  # kg: 20.25 mmol/L N of the lettuce feed, less what a week of crop took
+    assert 0.3 * held < lost[0].kg_n < held
+    assert crop_water_l(_slab(), moment(2.0), moment(4.0)) == pytest.approx(6000.0, rel=0.05)
+    assert set(FEED) <= set(balance(_slab(), moment(2.0), moment(4.0)).ions)
