@@ -14,6 +14,9 @@ from fertui.chemistry.ions import ATOMIC_WEIGHT, INDEX, IONS, Array
 from fertui.loop.fluxes import CAUSE, CAUSES, WATERS, Fluxes
 from fertui.loop.values import Event
 
+MICROMOLE = 1e-3
+"""[mmol] Below this an amount is rounding of what the medium holds."""
+
 
 @dataclass(frozen=True, slots=True)
 class Booking:
@@ -61,9 +64,9 @@ class Account:
         return tuple(line.entry for line in self.lines if line.entry is not None and line.by_cause[cell] != 0.0)
 
     def gap(self) -> Array:
-        """start + flows - end (10,), relative to the largest number of the ion's row: what must be rounding."""
+        """start + flows - end (10,), relative to the largest number of the ion's row or a micromole: only rounding."""
         scale = np.abs(np.vstack([self.start_mmol, self.flows_mmol, self.end_mmol])).max(axis=0)
-        return np.abs(self.start_mmol + self.flows_mmol.sum(axis=0) - self.end_mmol) / np.maximum(scale, 1e-12)
+        return np.abs(self.start_mmol + self.flows_mmol.sum(axis=0) - self.end_mmol) / np.maximum(scale, MICROMOLE)
 
 
 def summed(begin: float, end: float, start_mmol: Array, end_mmol: Array, lines: Iterable[Booking]) -> Account:
