@@ -27,7 +27,8 @@ def text(ahead: Forecast, loop: str, managed: str, timezone: str, unit: str) -> 
         rows.append((words.local(day.at, timezone)[:10], *cells))
     lines = [f"{loop}, {len(ahead.days)} days ahead ({_inputs(ahead)}), 80 % ranges", "", *words.table(rows), ""]
     lines += ["Leaves its band"]
-    shown = [each for each in ahead.leaves_band if not (managed == "tank" and each.point == "root_zone")]
+    same = {"root_zone"} if managed == "tank" else {"drain"}
+    shown = [each for each in ahead.leaves_band if each.point not in same]
     lines += [f"  {_leaves(each, len(ahead.days), timezone)}" for each in shown] or ["  nothing within these days"]
     lines += ["", "Assumed", *(line for each in ahead.assumed for line in folded(each, "  "))]
     return "\n".join(lines)
