@@ -14,8 +14,8 @@ from fertui.chemistry.ions import INDEX, IONS, Array, vector
 from fertui.planning.acid import AcidSheet, acid_on_shelf, source_water
 from fertui.planning.acid_steps import acid_mmol, acid_steps, tank_acid
 from fertui.planning.checkpoints import ec_of, violation
-from fertui.planning.goal import Goal
-from fertui.planning.hand_doses import REACHED_PCT, Dosed, Task, doing_of, dose, usable
+from fertui.planning.goal import LIMITED, Goal
+from fertui.planning.hand_doses import LITRES, REACHED_PCT, Dosed, Task, doing_of, dose, usable
 from fertui.planning.reasons import (
     MAJOR,
     arithmetic,
@@ -27,7 +27,7 @@ from fertui.planning.reasons import (
     share_words,
     why_salts,
 )
-from fertui.planning.renewal import LEFT_N_MMOL, excess_of, renewal_of
+from fertui.planning.renewal import LEFT_N_MMOL, excess_of, renewal_of, smallest_fraction
 from fertui.planning.request import (
     STEPS_BY_DEFAULT,
     Request,
@@ -216,14 +216,19 @@ def _step_mmol(request: Request, ion: str) -> float:
 
 
 def _renewal(request: Request, dosed: Dosed) -> Renewal | None:
+    """The renewal of the plan, or advice beside it where Na, Cl or NH4 is over its limit and the water is better."""
+    situation, goal = request.situation, request.managed
     litres = _litres(dosed)
-    if litres <= 0.0:
-        return None
-    situation = request.situation
     reaches = dosed.missed_pct <= REACHED_PCT
+    if litres <= 0.0:
+        part = smallest_fraction(dosed.end, refill_of(request), goal)
+        over = set(excess_of(dosed.end, goal)) & set(LIMITED)
+        if not over or part is None:
+            return None
+        litres = LITRES * float(np.ceil(part * situation.volumes_l["tank"] / LITRES))
     nitrogen = situation.composition("tank")[INDEX["NO3"]] + situation.composition("tank")[INDEX["NH4"]]
     return renewal_of(
-        situation, "tank", litres, refill_of(request), request.managed, request.entries,
+        situation, "tank", litres, refill_of(request), goal, request.entries,
         situation.composition(situation.managed), _days_to_drink(situation, float(nitrogen)), reaches,
     )  # fmt: skip
 

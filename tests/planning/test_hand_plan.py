@@ -1,0 +1,148 @@
+"""Hand doses: what is asked of them besides the chemistry."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import pytest
+
+from fertui.chemistry.ions import vector
+from fertui.planning.hand_plan import hand_plan
+from fertui.planning.request import Wishes, staffed_days
+from fertui.planning.shelf import PlanningError
+from fertui.site.model import Composition, Sourced, Supply
+from tests.planning.loops import MixingTank, request, shelf_of, situation
+
+SALTS = (
+    "potassium nitrate", "calcium nitrate tetrahydrate", "monopotassium phosphate", "magnesium sulfate heptahydrate",
+    "potassium sulfate", "ammonium nitrate", "potassium chloride",
+)  # fmt: skip
+LOW_K = {"K": 4.0, "Ca": 4.5, "Mg": 1.0, "NO3": 12.0, "SO4": 1.0, "H2PO4": 1.2, "NH4": 0.2, "Na": 1.0, "Cl": 1.0}
+
+
+def place_of(start=LOW_K, **more):
+    return situation(start, supplies=more.pop("supplies", shelf_of(*SALTS)), litres=2000.0, **more)
+
+
+def test_a_sample_comes_first_where_the_range_is_wider_than_the_band() -> None:
+    # K share 26 +- 11 %, in a band 10 points wide, and nothing else out for certain
+    start = {**LOW_K, "K": 9.0, "Ca": 4.4, "Mg": 0.9}
+    place = place_of(start, spread=0.25)
+    plan = hand_plan(request(place, MixingTank(place, 7), days=7))
+    assert plan.sample_first
+    assert not plan.feasible
+    assert plan.steps == ()
+    assert "take a sample first" in plan.reason
+    fresh = replace(place, analysis_days_old=1.0)
+    assert not hand_plan(request(fresh, MixingTank(fresh, 7), days=7)).sample_first
+
+
+def test_nothing_is_weighed_where_all_is_in_order() -> None:
+    place = place_of(
+        {"K": 10.0, "Ca": 4.6, "Mg": 0.95, "NO3": 18.0, "SO4": 1.1, "H2PO4": 1.9, "NH4": 0.5, "Na": 1, "Cl": 1}
+    )
+    plan = hand_plan(request(place, MixingTank(place, 7), days=7))
+    assert plan.feasible
+    assert plan.steps == ()
+    assert plan.notices
+
+
+def test_what_is_over_its_limit_is_not_added_and_does_not_forbid_the_rest() -> None:
+    over = {**LOW_K, "Cl": 7.0, "Na": 7.0}
+    limits = {"Cl": Sourced(None, 5.0, "test"), "Na": Sourced(None, 5.0, "test")}
+    place = place_of(over, limits=limits, water=Composition({"Na": 0.5, "Cl": 0.5}))
+    plan = hand_plan(request(place, days=0))
+    assert plan.steps
+    assert not any("Cl" in step.adds_mmol or "Na" in step.adds_mmol for step in plan.steps)
+    assert plan.renewal is not None
+    assert plan.renewal.litres == pytest.approx(2000 * (7.0 - 5.0) / (7.0 - 0.5), abs=10)  # c (1 - f) + f w = limit
+    said = " ".join([plan.reason or "", *plan.notices])
+    assert "Na" in said
+    assert "Cl" in said
+
+
+def test_no_ammonium_into_acid_roots() -> None:
+    place = place_of({**LOW_K, "NH4": 0.0}, ph=5.0)
+    plan = hand_plan(request(place, days=0, target="hoagland-2"))
+    assert not any("NH4" in step.adds_mmol for step in plan.steps)
+
+
+def test_supplies_salts_and_what_is_left_out_are_obeyed() -> None:
+    few = tuple(Supply(name, name, amount_kg=0.2) for name in SALTS)
+    plan = hand_plan(request(place_of(supplies=few), days=0, target="steiner"))
+    for name in SALTS:
+        assert sum(step.kg for step in plan.steps if step.salt == name) <= 0.2 + 1e-9
+    one = hand_plan(request(place_of(), days=0, target="steiner", salts=1))
+    assert len({step.salt for step in one.steps}) <= 1
+    without = hand_plan(request(place_of(), days=0, target="steiner", without=("KNO3",)))
+    assert not any(step.formula == "KNO3" for step in without.steps)
+    only = hand_plan(request(place_of(), days=0, target="steiner", supplies=("potassium sulfate",)))
+    assert {step.salt for step in only.steps} <= {"potassium sulfate"}
+
+
+@pytest.mark.parametrize("wrong", [{"days": -1}, {"days": 400}, {"steps": 5}, {"steps": 0}, {"salts": 0}])
+def test_what_no_plan_can_be(wrong: dict) -> None:
+    with pytest.raises(PlanningError):
+        Wishes(**wrong).checked()
+
+
+def test_steps_fall_on_staffed_days() -> None:
+    place = place_of(staffed_days=("Mon", "Thu"))
+    days = staffed_days(place, 14, 4)  # the loop stands at a Monday
+    assert set(days) <= {0, 3, 7, 10}
+    assert days[0] == 0
+
+
+def test_half_late_and_ten_percent_off_are_said() -> None:
+    place = place_of()
+    uptake = 80.0 * vector({"K": 5, "Ca": 1.5, "Mg": 0.4, "NO3": 6, "H2PO4": 0.8})
+    plan = hand_plan(request(place, MixingTank(place, 7, uptake), days=7))
+    assert {each.case for each in plan.sensitivity} == {"half of each weight", "a day late", "10 % more", "10 % less"}
+
+
+def test_every_sum_of_the_arithmetic_adds_up() -> None:
+    plan = hand_plan(request(place_of(), days=0, target="steiner"))
+    for line in plan.arithmetic:
+        if " mmol/kg " in line:
+            kg, per_kg = float(line.split(": ")[1].split(" kg")[0]), float(line.split(" x ")[1].split(" mmol/kg")[0])
+            mmol = float(line.split("= ")[1].split(" mmol")[0])
+            assert mmol == pytest.approx(kg * per_kg, rel=2e-3, abs=1.0)
+        if " before + " in line:
+            before, rest = line.split(": ")[1].split(" before + ")
+            added, after = rest.split(" = ")
+            assert float(before) + float(added) == pytest.approx(float(after.split(" mmol")[0]), abs=0.011)
+
+
+def test_why_this_salt_and_not_that_one() -> None:
+    plan = hand_plan(request(place_of(), days=0, target="steiner"))
+    used = {step.salt for step in plan.steps}
+    for name in SALTS:
+        assert any(line.startswith(f"{name}:" if name in used else f"not {name}:") for line in plan.reasons), name
+
+
+def test_alkalinity_of_the_tank_is_met_with_acid_whose_nitrate_is_counted() -> None:
+    acid = Supply("nitric acid", "nitric acid", strength_pct=38.0)
+    start = {**LOW_K, "HCO3": 3.0, "NO3": 9.0}
+    place = place_of(start, supplies=(*shelf_of(*SALTS), acid), ph=7.2)
+    plan = hand_plan(request(place, days=0, target="steiner"))
+    assert plan.acid
+    mmol = 1e3 * sum(each.litres for each in plan.acid) * 7.435 / 2000.0  # 38 %: 7.435 mol/L at 20 degrees C
+    assert mmol == pytest.approx(2.5, rel=0.01)
+    salts = sum(step.adds_mmol.get("NO3", 0.0) for step in plan.steps) / 2000.0
+    assert plan.after.points["tank"].ions["NO3"].mmol_l.value == pytest.approx(9.0 + salts + 2.5, abs=0.03)
+    assert plan.after.points["tank"].ions["HCO3"].mmol_l.value == pytest.approx(0.5, abs=0.02)
+    assert plan.cautions[0].code == "sds-first"
+
+
+def test_no_acid_where_nobody_measured_the_alkalinity() -> None:
+    acid = Supply("nitric acid", "nitric acid", strength_pct=38.0)
+    place = place_of(LOW_K, supplies=(*shelf_of(*SALTS), acid), ph=7.8)
+    assert hand_plan(request(place, days=0, target="steiner")).acid == ()
+
+
+def test_a_tank_that_nothing_feeds_is_not_planned_far_ahead() -> None:
+    place = place_of()
+    uptake = 400.0 * vector({"K": 5, "Ca": 3, "Mg": 0.8, "NO3": 11, "H2PO4": 0.8, "SO4": 0.5})
+    plan = hand_plan(request(place, MixingTank(place, 14, uptake), days=14))
+    assert not plan.feasible
+    assert "too long for this tank" in plan.reason
