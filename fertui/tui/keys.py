@@ -24,7 +24,8 @@ GLOBAL_KEYS = [
     Binding("o", "papers", "sheets", show=False, id="papers", tooltip="Sheets: round, handover, stock, acid, report."),
     Binding("t", "theme", "colours", show=False, id="theme.next", tooltip="The next of the four looks; it is remembered."),
     Binding("f5", "again", "work out again", show=False, id="again", tooltip="As of now, worked out again, drawn again."),
-    Binding("q,ctrl+q", "leave", "leave", show=False, id="leave", tooltip="Leave. A half-filled form is kept."),
+    Binding("q", "leave", "leave", show=False, id="leave", tooltip="Leave. A half-filled form is kept."),
+    Binding("ctrl+q", "leave", "leave at once", show=False, id="leave.at_once", tooltip="Leave from anywhere, a form too."),
     Binding("x", "actions", "actions", id="actions", tooltip="Every action, with its key."),
     Binding("question_mark,f1", "help", "help", id="help", tooltip="What this place is for and how to use it."),
 ]  # fmt: skip

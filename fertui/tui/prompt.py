@@ -42,7 +42,7 @@ class Prompt(Page, can_focus=True):
 
     def take_key(self, event: events.Key) -> bool:
         """Type and edit; no other key reaches the views while a question stands."""
-        if event.key in ("enter", "escape"):
+        if event.key in ("enter", "escape", "ctrl+q"):
             return False
         if event.is_printable and event.character:
             self._typed = self._typed.insert(event.character)

@@ -23,7 +23,7 @@ from fertui.tui.key_line import KeyLine, key_name
 from fertui.tui.keys import VIEW_NAMES
 from fertui.tui.prompt import Prompt
 from fertui.tui.settings import Settings
-from fertui.tui.snapshot import Snapshot
+from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.stage import Stage
 from fertui.tui.terminal import FLOOR, Terminal
 from fertui.tui.themes import THEMES, usual_theme
@@ -62,7 +62,8 @@ class Shell(App[int], inherit_bindings=False):
     def __init__(
         self, folder: Path, at: datetime | None, settings: Settings, terminal: Terminal, operator: str = ""
     ) -> None:
-        super().__init__(driver_class=ThinLineDriver)
+        no_colour = terminal.colours == 0
+        super().__init__(driver_class=ThinLineDriver, ansi_color=True if no_colour else None)
         self.folder, self.settings, self.terminal = folder, settings, terminal
         self.fixed_at = at
         self.moment = at or datetime.now(UTC)
@@ -74,7 +75,7 @@ class Shell(App[int], inherit_bindings=False):
         self._held: deque[events.Key | events.Paste] = deque()
         for theme in THEMES:
             self.register_theme(theme)
-        self.theme = settings.theme or usual_theme(terminal.colours)
+        self.theme = usual_theme(0) if no_colour else settings.theme or usual_theme(terminal.colours)
         self.animation_level = "none"
         self.set_keymap(dict(settings.keys))
 
@@ -116,7 +117,9 @@ class Shell(App[int], inherit_bindings=False):
         if self.snapshot.site is None:
             return self.folder.name
         site, loop = self.snapshot.site, self.snapshot.site.loop(self.snapshot.loop)
-        grown = ", ".join(word for word in (loop.crop, loop.stage, loop.medium) if word and word != "none")
+        glance = self.snapshot.get(Ask("glance", loop.name))
+        stage = glance.stage if glance is not None else loop.stage
+        grown = ", ".join(word for word in (loop.crop, stage, loop.medium) if word and word != "none")
         return f"{site.name}, {loop.name}: {grown}"
 
     def local(self, moment: datetime) -> datetime:

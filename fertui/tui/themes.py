@@ -17,6 +17,8 @@ INK_VARIABLES = (
 
 def _theme(name: str, dark: bool, ansi: bool, **variables: str) -> Theme:
     inks = {key.replace("_", "-"): value for key, value in variables.items()}
+    # The toolkit's own style sheets name these two wherever a theme uses the terminal's palette.
+    inks |= {"ansi-background": variables["paper"], "ansi-foreground": variables["ink"]}
     return Theme(
         name=name, primary=variables["accent"], foreground=variables["ink"], background=variables["paper"],
         surface=variables["paper"], panel=variables["paper"], boost=variables["paper"], dark=dark, ansi=ansi, variables=inks,

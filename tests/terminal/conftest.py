@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shutil
 import sys
 from collections.abc import Callable, Iterator
 from datetime import UTC, datetime
@@ -20,20 +21,25 @@ AT = datetime(2026, 6, 1, 7, 0, tzinfo=UTC)
 Opened = Callable[..., PseudoTerminal]
 
 
+@pytest.fixture(scope="session")
+def built(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Path]:
+    """Two demo sites: one that ends on the morning of ``AT``, one on the last morning there was."""
+    from fertui.workbench.demo import build_demo
+
+    folder = tmp_path_factory.mktemp("built")
+    return {"fixed": build_demo(folder / "fixed", AT), "today": build_demo(folder / "today")}
+
+
 @pytest.fixture
-def site(tmp_path: Path) -> Path:
+def site(built: dict[str, Path], tmp_path: Path) -> Path:
     """A demo site that ends on the morning of ``AT``."""
-    from fertui.workbench.demo import build_demo
-
-    return build_demo(tmp_path / "nursery", AT)
+    return shutil.copytree(built["fixed"], tmp_path / "nursery")
 
 
 @pytest.fixture
-def todays_site(tmp_path: Path) -> Path:
+def todays_site(built: dict[str, Path], tmp_path: Path) -> Path:
     """A demo site that ends on the last morning there was: for what depends on entries being of now."""
-    from fertui.workbench.demo import build_demo
-
-    return build_demo(tmp_path / "nursery")
+    return shutil.copytree(built["today"], tmp_path / "nursery")
 
 
 @pytest.fixture

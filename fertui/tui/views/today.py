@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any, ClassVar
 
@@ -21,6 +22,9 @@ if TYPE_CHECKING:
 WIDE = 110
 """Columns from which the watch list stands beside the gauges."""
 SEVERITY_INK = {"act": "act", "watch": "watch", "note": "faint"}
+
+
+UNKNOWN = "Where the ions are is not known: no analysis is logged yet. Send a sample (e), log its report (a)."
 
 
 class TodayView(View):
@@ -101,6 +105,8 @@ def draw_today(snapshot: Snapshot, width: int) -> list[Line]:
     top = [*measured(glance, state, width), BLANK]
     if state is None:
         return [*top, *waiting(snapshot, Ask("today", snapshot.loop), "where the ions are", width)[1:]]
+    if glance.last_analysis is None:
+        return [*top, line(" ", Span(UNKNOWN, "watch")), BLANK, *watch_list(state, width)]
     if width >= WIDE:
         left = gauges(state, snapshot, 80)
         return [*top, *beside(left, watch_list(state, width - 84), 80, 3)]
@@ -202,9 +208,18 @@ def gauges(state: Today, snapshot: Snapshot, width: int) -> list[Line]:
             Span(f"{f'({value[1]})':>12}", "faint"),
             f" {limits:>7}  ",
         )
-        mark = Span(f"{MARKS[ink]} {each.leaves}", ink if ink != "good" else "plain")
+        mark = Span(f"{MARKS[ink]} {short_leaving(each.leaves)}", ink if ink != "good" else "plain")
         rows.append(line(*row, *picture, " " if gauge_width else "", *spark[0], spark[1], mark))
     return rows
+
+
+def short_leaving(words: str) -> str:
+    """When a value leaves its band, in the room of a gauge row.
+
+    >>> short_leaving("in 6 (0-over 14) days"), short_leaving("in 4 (2-9) days")
+    ('in 6 (0-14+) days', 'in 4 (2-9) days')
+    """
+    return re.sub(r"over (\d+)\)", r"\1+)", words)
 
 
 def _gauge_ink(each: Gauge) -> str:
@@ -263,7 +278,7 @@ def draw_overview(snapshot: Snapshot, chosen: int, width: int) -> list[Line]:
     """One block a loop, worst first: what it is, how its shares stand, the first thing to look at."""
     states = {state.loop: state for state in snapshot.get(Ask("overview")) or ()}
     rows: list[Line] = [
-        line(Span(fit(" All loops, worst first", width - 22), "title"), Span("Enter opens, v one loop", "faint"))
+        line(Span(fit(" All loops, worst first", width - 25), "title"), Span("Enter opens, v one loop", "faint"))
     ]
     for index, name in enumerate(_order(snapshot)):
         rows += [BLANK, *_loop_block(name, snapshot, states.get(name), index == chosen, width)]

@@ -1,0 +1,119 @@
+"""Every view of the demo site at 80x24, word for word. FERTUI_GOLDEN=write keeps what is shown now as the new text.
+
+The results under the screens are made by hand (hand_made.py): these tests are about what is drawn, not about the model.
+"""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+
+import pytest
+from conftest import HERE, Opened
+from pseudo_terminal import PseudoTerminal
+
+GOLDEN = HERE / "golden"
+SCREENS = {
+    "loops": (), "today": ("v",), "today lettuce": ("v", "n"), "today in mg": ("v", "u", "u"), "analysis": ("2",),
+    "drift": ("3", "left", "left"), "balance": ("4", "down", "right"), "forecast": ("5",), "record": ("5", "g"),
+    "plan recipe": ("6",), "plan doses": ("n", "6"), "logbook": ("7", "down"), "entry": ("7", "enter"), "supplies": ("8", "down"),
+    "site": ("9", "down"), "help": ("2", "?"), "actions": ("x",), "reading": ("r",), "analysis form": ("a",), "entries": ("e",),
+}  # fmt: skip
+"""Screens by name with the keys that lead there."""
+
+
+def show(terminal: PseudoTerminal, keys: tuple[str, ...]) -> str:
+    terminal.until_text("look at")
+    for key in keys:
+        terminal.press(key)
+        terminal.until(lambda text: "orking out" not in text and "Opening" not in text)
+    terminal.settle()
+    return terminal.text
+
+
+def golden(name: str, shown: str) -> None:
+    path: Path = GOLDEN / f"{name.replace(' ', '_')}.txt"
+    if os.environ.get("FERTUI_GOLDEN") == "write":
+        path.parent.mkdir(exist_ok=True)
+        path.write_text(shown + "\n", encoding="utf-8")
+    assert shown + "\n" == path.read_text(encoding="utf-8")
+
+
+@pytest.mark.parametrize("name", SCREENS)
+def test_a_screen_word_for_word(site: Path, open_terminal: Opened, name: str) -> None:
+    golden(name, show(open_terminal(site, fixed=True), SCREENS[name]))
+
+
+@pytest.mark.parametrize("name", ["today", "drift", "balance"])
+def test_wide_terminals_use_their_width(site: Path, open_terminal: Opened, name: str) -> None:
+    shown = show(open_terminal(site, fixed=True, size=(120, 40)), SCREENS[name])
+    golden(f"{name} wide", shown)
+    assert max(map(len, shown.splitlines())) > 84
+
+
+def test_without_utf8_every_mark_has_an_ascii_stand_in(site: Path, open_terminal: Opened) -> None:
+    for name in ("today", "drift", "balance", "plan doses"):
+        terminal = open_terminal(site, fixed=True, LANG="C")
+        shown = show(terminal, SCREENS[name])
+        assert shown.isascii(), shown
+        assert bytes(terminal.sent).isascii()
+
+
+def test_without_colour_none_is_sent_and_states_are_still_told_apart(site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True, NO_COLOR="1")
+    shown = show(terminal, SCREENS["today"])
+    assert not any(
+        code in bytes(terminal.sent) for code in (b"38;5", b"48;5", b"[31m", b"[32m", b"[33m", b"[36m", b";3")
+    )
+    assert all(mark in shown for mark in "!▸✓")
+
+
+def test_an_empty_no_color_asks_for_nothing(site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True, NO_COLOR="")
+    show(terminal, ())
+    assert b"38;5" in bytes(terminal.sent)
+
+
+def test_in_sixteen_colours_the_palette_of_the_terminal_is_used(site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True, TERM="linux")
+    assert "K share" in show(terminal, ())
+    assert b"38;5" not in bytes(terminal.sent)
+    assert b"\x1b[38;2" not in bytes(terminal.sent)
+
+
+@pytest.mark.parametrize("theme", ["dark", "light", "contrast", "terminal"])
+def test_each_theme_shows_the_same_words(site: Path, tmp_path: Path, open_terminal: Opened, theme: str) -> None:
+    folder = tmp_path / "config" / "fertui"
+    folder.mkdir(parents=True)
+    (folder / "settings.toml").write_text(f'theme = "{theme}"\n', encoding="utf-8")
+    golden("today", show(open_terminal(site, fixed=True), SCREENS["today"]))
+
+
+def test_the_theme_chosen_is_remembered(site: Path, tmp_path: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True)
+    show(terminal, ("t",))
+    terminal.until_text("colours: light")
+    assert 'theme = "light"' in (tmp_path / "config" / "fertui" / "settings.toml").read_text(encoding="utf-8")
+
+
+@pytest.mark.parametrize("size", [(60, 20), (61, 21), (79, 23), (81, 25), (100, 30), (200, 60)])
+def test_no_line_is_wider_than_the_screen(site: Path, open_terminal: Opened, size: tuple[int, int]) -> None:
+    terminal = open_terminal(site, fixed=True, size=size)
+    terminal.until_text("look at")
+    for key in "v23456789":
+        terminal.press(key)
+        terminal.until(lambda text: "orking out" not in text)
+        assert all(len(row) <= size[0] for row in terminal.text.splitlines())
+        assert terminal.text.splitlines()[0].rstrip().endswith("09:00"), terminal.text
+
+
+def test_below_the_floor_it_says_so_and_comes_back(site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True)
+    terminal.until_text("look at")
+    for columns, rows in ((40, 10), (3, 2), (20, 50), (200, 5)):
+        terminal.resize(columns, rows)
+        terminal.settle()
+    terminal.resize(50, 15)
+    terminal.until_text("fertui needs 60 columns and 20 rows")
+    terminal.resize(80, 24)
+    terminal.until_text("All loops, worst first")
