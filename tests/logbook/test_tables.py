@@ -263,14 +263,14 @@ def test_no_exported_cell_is_run_by_a_spreadsheet(book: Logbook, say: Say, tmp_p
     assert [cell for cell in cells if cell[:1] in tuple("=+-@\t\r")] == []
 
 
-def test_the_measured_houses_go_in_by_new_heads_alone(houses: Path, take: Import) -> None:
+def test_the_measured_houses_go_in_by_new_heads_alone(house_folder: Path, take: Import) -> None:
     def head(name: str) -> str:
         for ending, unit in (("_mmol_L", "mmol/L"), ("_umol_L", "umol/L"), ("_mS_cm", "mS/cm")):
             if name.endswith(ending):
                 return f"{name.removesuffix(ending)} [{unit}]"
         return {"date": "at"}.get(name, name)
 
-    with (houses / "rockwool_tomato_analyses.csv").open(newline="") as file:
+    with (house_folder / "rockwool_tomato_analyses.csv").open(newline="") as file:
         rows = list(csv.reader(file))
     house = [row for row in rows[1:] if row[0] == "1"]
     result = take("\n".join(",".join(row[1:]) for row in ([head(name) for name in rows[0]], *house)))
