@@ -17,16 +17,26 @@ from fertui.chemistry.ions import IONS, Array
 from fertui.estimate.beginning import Beginning, beginning, first_members, shows_a_vessel
 from fertui.estimate.checks import failed
 from fertui.estimate.correction import TRACE, ElectroMeter, Innovation, corrected
-from fertui.estimate.display import Panel, allowed, feed_drive, managed, micronutrients_at, ph_at, shown_members, solutions
+from fertui.estimate.display import (
+    Panel,
+    allowed,
+    feed_drive,
+    managed,
+    micronutrients_at,
+    ph_at,
+    shown_members,
+    solutions,
+)
 from fertui.estimate.drives import Drives, drives
 from fertui.estimate.ensemble import Ensemble
+from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation, pooled
 from fertui.estimate.points import Estimated, PointState
 from fertui.estimate.ranges import Spread, estimated
 from fertui.estimate.record import Record, read
 from fertui.estimate.setting import Setting, setting
-from fertui.estimate.waters import lately
 from fertui.estimate.walk import events_between, grid_of, night, stretch
+from fertui.estimate.waters import lately
 from fertui.logbook.entries import Entry
 from fertui.loop import corrected as booked_as_unexplained
 from fertui.loop.account import Booking, booking
@@ -313,10 +323,9 @@ class Assimilation:
         if odd:
             words = [self._words(ion, found) for ion in odd]
             self.surprises.append(Surprise(seen.entry, seen.at, seen.point, odd, "; ".join(words)))
-        elif not seen.is_analysis and found.ec_off is not None and found.ec_sd is not None:
-            if abs(found.ec_off) > (SURPRISE + 1.0) * found.ec_sd:
-                text = f"EC {100.0 * np.expm1(found.ec_off):+.0f} % from what the ions make: reading not used"
-                self.surprises.append(Surprise(seen.entry, seen.at, seen.point, ("EC",), text))
+        elif not seen.is_analysis and found.meter_is_off(SURPRISE + 1.0):
+            text = f"EC {100.0 * np.expm1(found.ec_off or 0.0):+.0f} % from what the ions make: reading not used"
+            self.surprises.append(Surprise(seen.entry, seen.at, seen.point, ("EC",), text))
 
     def _words(self, ion: str, found: Innovation) -> str:
         place = [IONS[column] for column in found.columns].index(ion)
@@ -325,11 +334,11 @@ class Assimilation:
 
     def _stage_changed(self, now: float) -> None:
         """A new stage: the crop's preset of that stage, and less known about it."""
-        from fertui.estimate.noise import normals
-
         stage = _stage(self.record, now)
         self.setting = setting(self.record.loop, stage)
-        draw = normals(self.seed, self.record.loop.name, f"stage {stage} {self.record.local_day(now)}", self.members, 10)
+        draw = normals(
+            self.seed, self.record.loop.name, f"stage {stage} {self.record.local_day(now)}", self.members, 10
+        )
         self.ensemble = replace(self.ensemble, slow=self.ensemble.slow + STAGE_SD * draw)
 
     def _go(self, span: int) -> None:

@@ -112,6 +112,10 @@ def _cut(lines: tuple[Booking, ...], begin: float, until: float, from_start: boo
             continue
         part = (min(line.end, until) - max(line.begin, begin)) / (line.end - line.begin)
         if part > 0:
-            yield line if part >= 1.0 else replace(
-                line, by_cause=part * line.by_cause, overflow=part * line.overflow, litres=part * line.litres
+            yield (
+                line
+                if part >= 1.0
+                else replace(
+                    line, by_cause=part * line.by_cause, overflow=part * line.overflow, litres=part * line.litres
+                )
             )

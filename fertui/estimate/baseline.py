@@ -1,4 +1,4 @@
-"""The plain alternative a forecast must beat: the loop as a reactor with the uptake concentration of the last interval."""
+"""The plain alternative a forecast must beat: the loop as a reactor with the last interval's uptake concentration."""
 
 from __future__ import annotations
 

@@ -93,9 +93,7 @@ def stock_tanks_of(site: Site, loop: Loop) -> tuple[StockTank, ...]:
     return tuple(tank for tank in site.stock_tanks if tank.name in loop.stock_tanks)
 
 
-def stock_by_tank(
-    site: Site, loop: Loop, batches: Sequence[Entry]
-) -> dict[str, list[tuple[Entry | None, Array]]]:
+def stock_by_tank(site: Site, loop: Loop, batches: Sequence[Entry]) -> dict[str, list[tuple[Entry | None, Array]]]:
     """For each stock tank of the loop what it held from each batch on [mmol/L]; the first is the site file's word."""
     held: dict[str, list[tuple[Entry | None, Array]]] = {}
     for tank in stock_tanks_of(site, loop):

@@ -57,6 +57,10 @@ class Innovation:
         far = np.abs(self.difference) > deviations * self.sd
         return tuple(IONS[column] for column, odd in zip(self.columns, far, strict=True) if odd)
 
+    def meter_is_off(self, deviations: float) -> bool:
+        """Whether the EC is more than so many standard deviations off."""
+        return self.ec_off is not None and self.ec_sd is not None and abs(self.ec_off) > deviations * self.ec_sd
+
 
 class ElectroMeter:
     """EC of many compositions by a straight line about their median, drawn anew when that has moved."""
@@ -115,7 +119,7 @@ class _Ions:
 
 
 class _EC:
-    """The EC of an observation: it says how much there is, not of what. Beside measured ions it teaches its own factor."""
+    """The EC of an observation: how much there is, not of what. Beside measured ions it teaches its own factor."""
 
     def __init__(self, setting: Setting, seen: Observation, drive: Drive | None, meter: ElectroMeter) -> None:
         self.setting, self.seen, self.drive, self.meter = setting, seen, drive, meter
@@ -171,9 +175,7 @@ def _covariance(left: Array, right: Array) -> Array:
     return left.T @ right / max(len(left) - 1, 1)
 
 
-def _learned(
-    ensemble: Ensemble, setting: Setting, names: Sequence[str], anomalies: Array, weights: Array
-) -> Ensemble:
+def _learned(ensemble: Ensemble, setting: Setting, names: Sequence[str], anomalies: Array, weights: Array) -> Ensemble:
     """Unknowns after an update; ``weights`` (M, n): innovation, levelled off, over its covariance."""
     moved = {}
     for name in names:

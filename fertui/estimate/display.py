@@ -82,7 +82,7 @@ def shown_members(members: Array, spread: Spread) -> Array:
 
 
 class Panel:
-    """Quantiles of one point at many times: ``members`` (times, M, 10), already scaled; ``ec`` (times, M) log factors."""
+    """Quantiles of one point at many times: ``members`` (times, M, 10), already scaled; ``ec`` (times, M), logs."""
 
     def __init__(self, members: Array, ec: Array, bands: Mapping[str, Band]) -> None:
         self.bands = bands
@@ -93,7 +93,9 @@ class Panel:
         logs = np.stack([meter(each) for each in members]) + ec
         self.ec = np.quantile(np.exp(logs), (0.5, LOW, HIGH), axis=-1)
 
-    def state(self, time: int, ph: Estimated | None, micronutrients: Mapping[str, Estimated] | None = None) -> PointState:
+    def state(
+        self, time: int, ph: Estimated | None, micronutrients: Mapping[str, Estimated] | None = None
+    ) -> PointState:
         """The point at one of the times."""
         ions = {ion: self._ion(ion, time) for ion in IONS}
         ions |= {name: IonState(value) for name, value in (micronutrients or {}).items()}

@@ -36,7 +36,7 @@ class Drives:
     assumed: tuple[str, ...]
 
     def drive(self, span: int, log_drain: Array, log_stock: Array) -> Drive:
-        """The drive of one stretch for members with drain (M,) and stock composition (M, 10) off by these log factors."""
+        """The drive of one stretch for members whose drain (M,) and stock (M, 10) are off by these log factors."""
         water = self.water
         make_up = water.make_up[span]
         return Drive(
@@ -45,7 +45,9 @@ class Drives:
             make_up=self.make_up[span],
             make_up_l_d=None if np.isnan(make_up) else float(make_up),
             condensate_l_d=float(water.condensate[span]),
-            stock_mmol_d=self.stock_mmol_d[span] * np.exp(log_stock) if self.stock_mmol_d[span].any() else self.stock_mmol_d[span],
+            stock_mmol_d=self.stock_mmol_d[span] * np.exp(log_stock)
+            if self.stock_mmol_d[span].any()
+            else self.stock_mmol_d[span],
             holds=tuple(leaning(hold, log_stock) for hold in self.holds[span]),
             ec=self.ec,
             feed_from=self.feeds[span],
@@ -76,9 +78,7 @@ def drives(record: Record, setting: Setting, grid: Array) -> Drives:
     make_up = tuple(known[name] for name in sources)
     holding = Holding(record, setting)
     covered = record.stock.covered(grid) >= LOGGED
-    holds = tuple(
-        () if logged else holding.holds(time) for logged, time in zip(covered, starts, strict=True)
-    )
+    holds = tuple(() if logged else holding.holds(time) for logged, time in zip(covered, starts, strict=True))
     return Drives(
         setting, grid, waters(record, setting, grid), make_up, record.stock.over(grid) / days[:, None],
         _feeds(record, setting, grid), holds, holding.ec, _assumptions(record, setting, holds),
@@ -99,7 +99,7 @@ def _feeds(record: Record, setting: Setting, grid: Array) -> Array:
 
 
 def stock_proportions(record: Record, time: float) -> Array:
-    """The feed (10,) [mmol/L] that the stocks make at a time: recipe, else what was mixed and the water, else the target's."""
+    """The feed (10,) [mmol/L] that the stocks make: recipe, else what was mixed and the water, else the target's."""
     return carried(record, time) + _water_at(record, time)
 
 
@@ -176,7 +176,7 @@ class Holding:
 
 
 def _is_dosed(record: Record, setting: Setting) -> bool:
-    """Whether stock is dosed by set point: always where stocks make the feed, in a shared tank only once anyone said so."""
+    """Whether stock is dosed by set point: always where stocks make the feed, in a tank only once anyone said so."""
     if setting.loop.layout == "known-feed" or not (setting.loop.stock_tanks or record.recipes.times):
         return False
     said = len(record.stock.start) or record.recipes.times or record.setpoints.times

@@ -1,8 +1,8 @@
 """The members: where each thinks the loop is, and what each thinks drives it.
 
-Per member: the engine's state; logarithms of what is not known well: uptake of every ion (a fast part that reverts within
-a month, a slow part that wanders), uptake common to all ions, drain, stock composition, the EC factor of the loop,
-exchange capacity and selectivity. A multiplier trades off against water and volume: none of them is plant physiology.
+Per member: the engine's state; logarithms of what is not known well: uptake of every ion (a fast part that reverts
+within a month, a slow part that wanders), uptake common to all ions, drain, stock composition, the EC factor of the
+loop, exchange capacity and selectivity. A multiplier trades off against water and volume: it is no plant physiology.
 """
 
 from __future__ import annotations
@@ -93,7 +93,12 @@ class Ensemble:
     def middle(self, setting: Setting) -> Ensemble:
         """One member that stands in the middle: median of every amount and unknown, the exchanger loaded to match."""
         names = ("fast", "slow", "stock", "common", "drain", "ec", "capacity", "selectivity")
-        state = State(*(np.median(each, axis=0)[None] for each in (self.state.water_l, self.state.ions_mmol, self.state.exchanged_meq)))
+        state = State(
+            *(
+                np.median(each, axis=0)[None]
+                for each in (self.state.water_l, self.state.ions_mmol, self.state.exchanged_meq)
+            )
+        )
         found = replace(self, state=state, **{name: np.median(getattr(self, name), axis=0)[None] for name in names})
         return replace(found, state=state.reloaded(found.medium(setting)))
 
@@ -133,12 +138,10 @@ def wandered(ensemble: Ensemble, setting: Setting, seed: int, day: int) -> Ensem
 
 
 def _shaken(state: State, noise: Array, alkalinity: float) -> State:
-    """Amounts of all ions off by noise (M, 9) that is the same in every vessel; alkalinity drawn to where it was seen."""
+    """Amounts off by noise (M, 9) that is the same in every vessel; alkalinity drawn to where it was seen."""
     ions = state.ions_mmol.copy()
     ions[:, :, _IONS] *= np.exp(noise)[:, None, :]
-    ions[:, :, _HCO3] += (1.0 - np.exp(-1.0 / ALKALINITY_DAYS)) * (
-        alkalinity * state.water_l - ions[:, :, _HCO3]
-    )
+    ions[:, :, _HCO3] += (1.0 - np.exp(-1.0 / ALKALINITY_DAYS)) * (alkalinity * state.water_l - ions[:, :, _HCO3])
     return replace(state, ions_mmol=ions)
 
 

@@ -1,4 +1,4 @@
-"""The coming days: members run ahead under the routine, the plan entered, or a what-if, and when they leave their bands.
+"""The coming days: members run ahead under routine, plan or what-if, and when they leave their bands.
 
 Members are copies; nothing here changes an estimate. Noise enters day by day; the scale the loop has shown widens whole
 trajectories; charges are closed in what is shown; shares are computed last.
@@ -16,11 +16,12 @@ from fertui.chemistry.ions import Array
 from fertui.estimate.assimilation import Estimate, copies, thin
 from fertui.estimate.correction import ElectroMeter
 from fertui.estimate.display import Panel, allowed, ph_at, shown_members, solutions
+from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.passage import Days, LeavesBand, banded, leaves_band, out_since, passages, quantities
 from fertui.estimate.points import PointState
 from fertui.estimate.routine import Routine, routine
 from fertui.estimate.scenario import ROUTINE, Dose, FeedRecipe, Renewal, Scenario
-from fertui.estimate.walk import events_between, night, stretch
+from fertui.estimate.walk import CLOSE, Way, nights_of
 from fertui.loop import ROOT, STORE
 
 __all__ = [
@@ -41,7 +42,7 @@ class ForecastDay:
 class Trajectories:
     """Members at now and every coming day at this hour: compositions (days + 1, M, 10) [mmol/L], litres, log EC factor.
 
-    ``at_zero`` of the axis is now. ``ions`` by point; ``volumes_l`` (days + 1, M) by vessel.
+    The first of the axis is now. ``ions`` by point; ``volumes_l`` (days + 1, M) by vessel.
     """
 
     at: tuple[datetime, ...]
@@ -67,9 +68,7 @@ class Forecast:
     scenario: Scenario = field(default=ROUTINE, repr=False)
 
 
-def trajectories(
-    estimate: Estimate, days: int, scenario: Scenario = ROUTINE, settled: bool = False
-) -> Trajectories:
+def trajectories(estimate: Estimate, days: int, scenario: Scenario = ROUTINE, settled: bool = False) -> Trajectories:
     """Raw members of the coming days, as the planner needs them: neither widened nor projected.
 
     Random numbers are the same whatever the scenario, so differences between two runs are exact responses.
@@ -78,38 +77,37 @@ def trajectories(
     if days < 1:
         raise ValueError(f"a forecast looks at least one day ahead; days is {days}")
     coming = routine(estimate, days, scenario, settled)
-    marks = [(float(coming.grid[0]), estimate.ensemble)] + list(_run(estimate, coming, days, settled))
-    points = [
-        solutions(estimate.setting, ensemble, coming.drive(min(_span(coming, time), len(coming.drives) - 1), ensemble.drain, ensemble.stock))
-        for time, ensemble in marks
-    ]
-    litres = np.stack([ensemble.state.water_l for _, ensemble in marks])
+    course = _days_ahead(estimate, coming, days, settled)
+    said = [_said(estimate, coming, day, ensemble) for day, ensemble in enumerate(course)]
+    litres = np.stack([ensemble.state.water_l for ensemble in course])
+    mixed = estimate.setting.circuit.mixed
     return Trajectories(
         at=tuple(estimate.at + timedelta(days=day) for day in range(days + 1)),
-        ions={point: np.stack([each[point] for each in points]) for point in points[0]},
-        volumes_l={name: litres[:, :, ROOT if name == "root_zone" or estimate.setting.circuit.mixed else STORE] for name in estimate.volumes_l},
-        log_ec=np.stack([ensemble.ec for _, ensemble in marks]),
+        ions={point: np.stack([each[point] for each in said]) for point in said[0]},
+        volumes_l={name: litres[:, :, ROOT if name == "root_zone" or mixed else STORE] for name in estimate.volumes_l},
+        log_ec=np.stack([ensemble.ec for ensemble in course]),
         assumed=coming.assumed,
         inputs=coming.inputs,
-    )  # fmt: skip
+    )
 
 
-def _run(estimate: Estimate, coming: Routine, days: int, settled: bool):  # type: ignore[no-untyped-def]
-    """Members at every whole day from now, one after the other."""
-    ensemble, setting, record = estimate.ensemble, estimate.setting, estimate.record
-    midnights = record.midnights(float(coming.grid[0]), float(coming.grid[-1]))
-    wanted = [float(coming.grid[0]) + day for day in range(1, days + 1)]
-    for span in range(len(coming.drives)):
-        begin, end = float(coming.grid[span]), float(coming.grid[span + 1])
-        if not settled and any(abs(begin - midnight) < 1e-4 for midnight in midnights):
-            ensemble, _ = night(setting, ensemble, estimate.seed, record.local_day(begin), begin)
-        ensemble = stretch(setting, coming, span, ensemble, events_between(coming.events, begin, end)).ensemble
-        if any(abs(end - day) < 1e-4 for day in wanted):
-            yield end, ensemble
+def _said(estimate: Estimate, coming: Routine, day: int, ensemble: Ensemble) -> dict[str, Array]:
+    """What members say of every point at a day."""
+    time = float(coming.grid[0]) + day
+    span = int(np.searchsorted(coming.grid, time + CLOSE, side="right")) - 1
+    drive = coming.drive(min(max(span, 0), len(coming.drives) - 1), ensemble.drain, ensemble.stock)
+    return solutions(estimate.setting, ensemble, drive)
 
 
-def _span(coming: Routine, time: float) -> int:
-    return max(int(np.searchsorted(coming.grid, time + 1e-4, side="right")) - 1, 0)
+def _days_ahead(estimate: Estimate, coming: Routine, days: int, settled: bool) -> list[Ensemble]:
+    """Members now and at every whole day from now."""
+    now = float(coming.grid[0])
+    nights = nights_of(estimate.record, now, now + days)
+    way = Way(estimate.setting, coming, coming.events, nights, estimate.seed)
+    wanted = [now + day for day in range(1, days + 1)]
+    course = way.led(estimate.ensemble, 0, now + days, noisy=not settled)
+    found = [ensemble for end, ensemble in course if any(abs(end - day) < CLOSE for day in wanted)]
+    return [estimate.ensemble, *found]
 
 
 def forecast(estimate: Estimate, days: int, scenario: Scenario = ROUTINE) -> Forecast:

@@ -1,12 +1,12 @@
 """The record: what was forecast right after each analysis, beside what the next one found.
 
-``logged``: feed analyses, recipe, water and doses as logged up to the next analysis; ``planned``: only what was logged or
-planned when the forecast was issued, which is what users saw.
+``logged``: feed analyses, recipe, water and doses as logged up to the next analysis; ``planned``: only what was logged
+or planned when the forecast was issued, which is what users saw.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
 
@@ -18,14 +18,13 @@ from fertui.estimate.assimilation import MEMBERS, SEED, Assimilation, Estimate, 
 from fertui.estimate.baseline import last_uptake
 from fertui.estimate.beginning import shows_a_vessel
 from fertui.estimate.display import SHARED, feed_drive, managed, shown_members, solutions
-from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.forecast import trajectories
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
 from fertui.estimate.ranges import HIGH, LOW, Spread, shares
 from fertui.estimate.record import ANEW, Record, read
 from fertui.estimate.scores import HindcastRow, Summary, crps, summary
-from fertui.estimate.walk import events_between, night, stretch
+from fertui.estimate.walk import CLOSE, Way, nights_of
 from fertui.logbook.entries import Entry
 from fertui.site.model import Loop, Site
 
@@ -97,7 +96,11 @@ class _Pair:
 def _pairs(run: Assimilation) -> list[_Pair]:
     """Every analysis of a vessel with the one before it at the same point, in order of time."""
     found = []
-    begun = [each for each in run.record.observations if shows_a_vessel(run.setting, each) and each.time >= run.begin.time - 1e-6]
+    begun = [
+        each
+        for each in run.record.observations
+        if shows_a_vessel(run.setting, each) and each.time >= run.begin.time - 1e-6
+    ]
     for point in dict.fromkeys(each.point for each in begun):
         series = [each for each in begun if each.point == point]
         for place, (origin, target) in enumerate(zip(series, series[1:], strict=False)):
@@ -108,48 +111,21 @@ def _pairs(run: Assimilation) -> list[_Pair]:
 
 
 class _Logged:
-    """Members run on from right after an analysis under what was logged, without learning from anything later."""
+    """Members led on from right after an analysis under what was logged, without learning from anything later."""
 
     def __init__(self, run: Assimilation) -> None:
         self.run = run
+        nights = nights_of(run.record, run.begin.time, run.record.end)
+        self.way = Way(run.setting, run.drives, run.record.events, nights, run.seed)
 
-    def members(self, pair: _Pair) -> tuple[Array, Spread, Array]:
-        """What the members say at the target (M, 10), already widened; the scale; and the plain reactor's word (10,)."""
+    def members(self, pair: _Pair) -> tuple[Array, Spread]:
+        """What members say at the target (M, 10), widened by the scale that was known, and that scale."""
         run = self.run
-        ensemble, spread, begin = self._issued(pair.origin)
-        ahead = ensemble
-        for span in range(begin, len(run.grid) - 1):
-            now, until = float(run.grid[span]), float(run.grid[span + 1])
-            if now >= pair.target.time - 1e-4:
-                break
-            if span > begin and any(abs(now - midnight) < 1e-4 for midnight in run.midnights):
-                ahead, _ = night(run.setting, ahead, run.seed, run.record.local_day(now), now)
-            events = events_between(run.record.events, now, until)
-            ahead = stretch(run.setting, run.drives, span, ahead, events).ensemble
-        said = solutions(run.setting, ahead, feed_drive(run.drives, 0, ahead))
-        return shown_members(said[_shown_at(run.record, pair.target.point, said)], spread), spread, ahead.ec
-
-    def _issued(self, origin: Observation) -> tuple[Ensemble, Spread, int]:
-        """Members right after the last analysis that was used, no later than the origin."""
-        used = [each for each in self.run.after if each[0].time <= origin.time + 1e-6]
-        _, ensemble, spread, span = used[-1]
-        if used[-1][0].time < origin.time - 1e-4:
-            return self._carried(ensemble, span, origin.time), spread, self._span(origin.time)
-        return ensemble, spread, span
-
-    def _carried(self, ensemble: Ensemble, span: int, until: float) -> Ensemble:
-        """Members carried on to an origin that itself was not used (doubtful, held back)."""
-        run = self.run
-        for place in range(span, self._span(until)):
-            now = float(run.grid[place])
-            if place > span and any(abs(now - midnight) < 1e-4 for midnight in run.midnights):
-                ensemble, _ = night(run.setting, ensemble, run.seed, run.record.local_day(now), now)
-            events = events_between(run.record.events, now, float(run.grid[place + 1]))
-            ensemble = stretch(run.setting, run.drives, place, ensemble, events).ensemble
-        return ensemble
-
-    def _span(self, time: float) -> int:
-        return min(int(np.searchsorted(self.run.grid, time - 1e-4)), len(self.run.grid) - 1)
+        _, ensemble, spread, first = [each for each in run.after if each[0].time <= pair.origin.time + CLOSE][-1]
+        for _, ahead in self.way.led(ensemble, first, pair.target.time):
+            ensemble = ahead
+        said = solutions(run.setting, ensemble, feed_drive(run.drives, 0, ensemble))
+        return shown_members(said[_shown_at(run.record, pair.target.point, said)], spread), spread
 
 
 class _Planned:
@@ -158,7 +134,7 @@ class _Planned:
     def __init__(self, site: Site, loop: Loop, entries: Sequence[Entry], members: int, seed: int) -> None:
         self.site, self.loop, self.entries, self.count, self.seed = site, loop, entries, members, seed
 
-    def members(self, pair: _Pair) -> tuple[Array, Spread, Array]:
+    def members(self, pair: _Pair) -> tuple[Array, Spread]:
         """As ``_Logged.members``."""
         estimate = assimilate(self.site, self.loop, self.entries, pair.origin.at, self.count, self.seed)
         horizon = pair.target.time - pair.origin.time
@@ -166,19 +142,17 @@ class _Planned:
         ran = trajectories(estimate, days)
         point = _shown_at(estimate.record, pair.target.point, ran.ions)
         shown = shown_members(ran.ions[point], estimate.spread)
-        part = horizon - np.floor(horizon) if horizon < days else 1.0
-        between = shown[days - 1] ** (1.0 - part) * shown[days] ** part if np.all(shown[days - 1 :, :, :9] > 0) else shown[days]
-        return between, estimate.spread, ran.log_ec[-1]
+        part = horizon - (days - 1)
+        return shown[days - 1] + part * (shown[days] - shown[days - 1]), estimate.spread
 
 
-def _shown_at(record: Record, point: str, said: object) -> str:
-    names = list(said)  # type: ignore[call-overload]
-    return point if point in names else managed(record.loop)
+def _shown_at(record: Record, point: str, said: Mapping[str, Array]) -> str:
+    return point if point in said else managed(record.loop)
 
 
-def _rows(run: Assimilation, pair: _Pair, ahead: tuple[Array, Spread, Array]) -> list[HindcastRow]:
+def _rows(run: Assimilation, pair: _Pair, ahead: tuple[Array, Spread]) -> list[HindcastRow]:
     """One row per ion that both analyses measured."""
-    members, _, _ = ahead
+    members, _ = ahead
     sampled = _with_sampling_error(run, pair.target, members)
     measured, before = compositions.array(pair.target.ions), compositions.array(pair.origin.ions)
     both = [ion for ion in IONS if ion in pair.target.ions and ion in pair.origin.ions and ion != "HCO3"]
@@ -211,7 +185,9 @@ def _with_sampling_error(run: Assimilation, target: Observation, members: Array)
     """What an analysis of every member would show: its own error on top."""
     columns = target.columns()
     noise = target.covariance(np.median(members[:, columns], axis=0))
-    drawn = normals(run.seed, run.record.loop.name, f"sample {target.at.isoformat()} {target.point}", len(members), len(columns))
+    drawn = normals(
+        run.seed, run.record.loop.name, f"sample {target.at.isoformat()} {target.point}", len(members), len(columns)
+    )
     sampled = members.copy()
     sampled[:, columns] = members[:, columns] * np.exp(drawn @ np.linalg.cholesky(noise).T)
     return sampled

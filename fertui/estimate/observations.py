@@ -148,7 +148,9 @@ def pooled(seen: Iterable[Observation]) -> tuple[Observation, ...]:
         if not each.doubtful:
             quarter = -1 - place if each.is_analysis else int(each.time * 4.0)
             groups.setdefault((each.kind, each.point, quarter), []).append(each)
-    return tuple(sorted((_mean(group) for group in groups.values()), key=lambda each: (each.time, not each.is_analysis)))
+    return tuple(
+        sorted((_mean(group) for group in groups.values()), key=lambda each: (each.time, not each.is_analysis))
+    )
 
 
 def _mean(group: list[Observation]) -> Observation:

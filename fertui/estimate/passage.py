@@ -16,7 +16,7 @@ from fertui.estimate.ranges import HIGH, LOW, shared_meq, shares
 
 @dataclass(frozen=True, slots=True)
 class Days:
-    """Days until a band is left: median and 80 % range over all members; None: not within the horizon, 0: out already."""
+    """Days until a band is left: median and 80 % range of all members; None: not within the horizon, 0: out already."""
 
     value: float | None
     low: float | None
@@ -85,8 +85,10 @@ def _finite(days: float) -> float | None:
 def out_since(times: tuple[datetime, ...], values: Array, band: Band) -> datetime | None:
     """From when on a course (times,) has been outside its band without a break; None where it is inside now."""
     low, high = band
-    out = ((values < low) if low is not None else False) | ((values > high) if high is not None else False)
-    if not np.any(out) or not out[-1]:
+    out = np.zeros(len(values), dtype=bool)
+    out |= values < (-np.inf if low is None else low)
+    out |= values > (np.inf if high is None else high)
+    if not out[-1]:
         return None
     inside = np.flatnonzero(~out)
     return times[int(inside[-1]) + 1 if len(inside) else 0]

@@ -1,8 +1,8 @@
 """How wide the ranges are: a scale the loop sets from its own innovations, charge closed, shares computed last.
 
-Errors of a forecast are of two kinds: common to all ions (water, EC) and specific to each. Both scales are learned from
-the squares of the loop's own standardised innovations, older ones forgotten, single ones capped: a calm loop gets narrow
-ranges, a volatile one wide ranges, and one odd analysis does not blow them up for good.
+Errors of a forecast are of two kinds: common to all ions (water, EC) and specific to each. Both scales are learned
+from the squares of the loop's own standardised innovations, older ones forgotten, single ones capped: a calm loop gets
+narrow ranges, a volatile one wide ranges, and one odd analysis does not blow them up for good.
 """
 
 from __future__ import annotations

@@ -1,7 +1,7 @@
 """What the entries of one loop say, in the form the loop engine takes: water, stock, events, feed, observations.
 
-Times are days from ``zero``, a local midnight. Amounts without a time of day cover that local day; others the time since
-the previous entry of their kind. Doubtful entries are kept among the observations, marked, and never used.
+Times are days from ``zero``, a local midnight. Amounts without a time of day cover that local day; others the time
+since the previous entry of their kind. Doubtful entries are kept among the observations, marked, and never used.
 """
 
 from __future__ import annotations
@@ -82,7 +82,7 @@ class Record:
         """Local midnights within (begin, end) [d]."""
         zone = ZoneInfo(self.site.timezone)
         day = self.moment(begin).astimezone(zone).date()
-        found = []
+        found: list[float] = []
         while True:
             day += timedelta(days=1)
             here = self.time(datetime.combine(day, time(), zone).astimezone(UTC))
@@ -101,9 +101,7 @@ def since_needed(at: datetime) -> datetime:
     return at - timedelta(days=HISTORY_DAYS + 31)
 
 
-def read(
-    site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, history_days: int = HISTORY_DAYS
-) -> Record:
+def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, history_days: int = HISTORY_DAYS) -> Record:
     """The record of a loop from its effective entries; those of other loops and after ``at`` are left out."""
     own = sorted((each for each in entries if each.loop == loop.name and _known(each, at)), key=lambda each: each.at)
     first = max(own[0].at, at - timedelta(days=history_days + 31)) if own else at
@@ -134,8 +132,9 @@ class _Reader:
         seen = self._observations()
         held = compositions.stock_by_tank(self.site, self.loop, self._certain("batch"))
         return Record(
-            site=self.site, loop=self.loop, at=at, history_days=history_days, zero=self.zero, end=self.days(at), first=self._first(), water=self._water(),
-            levels=self._levels(), stock=self._stock(held), stock_held=held, events=self._events(), feed=self._feed(seen),
+            site=self.site, loop=self.loop, at=at, history_days=history_days, zero=self.zero, end=self.days(at),
+            first=self._first(), water=self._water(), levels=self._levels(), stock=self._stock(held), stock_held=held,
+            events=self._events(), feed=self._feed(seen),
             recipes=self._recipes(), sources=self._sources(), setpoints=self._steps("setpoint"),
             stages=self._steps("crop"), light=self._light(), drain_pct=self._drain_pct(), observations=seen,
             anew=self._anew(ANEW), new_medium=max(self._anew(("planted", "replanted", "new medium")), default=None),
@@ -282,7 +281,10 @@ class _Reader:
         times, values = [], []
         merged: dict[str, object] = {}
         for entry in self._certain(kind):
-            merged = {**merged, **{each.name: each.text if each.number is None else each.number for each in entry.values}}
+            merged = {
+                **merged,
+                **{each.name: each.text if each.number is None else each.number for each in entry.values},
+            }
             times.append(self.days(entry.at))
             values.append(merged)
         return Steps(tuple(times), tuple(values))

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
-from datetime import timedelta
+from dataclasses import dataclass, replace
+from datetime import datetime
 
 import numpy as np
 
@@ -54,12 +54,12 @@ class Routine:
 
 
 def _with_stock(drive: Drive, log_stock: Array) -> Drive:
-    from dataclasses import replace
-
     if not drive.holds and not np.any(drive.stock_mmol_d):
         return drive
     return replace(
-        drive, holds=tuple(leaning(hold, log_stock) for hold in drive.holds), stock_mmol_d=drive.stock_mmol_d * np.exp(log_stock)
+        drive,
+        holds=tuple(leaning(hold, log_stock) for hold in drive.holds),
+        stock_mmol_d=drive.stock_mmol_d * np.exp(log_stock),
     )
 
 
@@ -90,7 +90,9 @@ class _Builder:
         steps += [self.record.time(each.at) for each in self.scenario.recipes]
         marks = [self.now + day for day in range(1, int(round(self.end - self.now)))]
         midnights = self.record.midnights(self.now, self.end)
-        grid = grid_of(self.now, self.end, marks, midnights, [event.at for event in events], [s for s in steps if np.isfinite(s)])
+        grid = grid_of(
+            self.now, self.end, marks, midnights, [event.at for event in events], [s for s in steps if np.isfinite(s)]
+        )
         reference = np.full(len(grid) - 1, self.estimate.drives.water.reference[-1])
         made = tuple(self._drive(float(begin), float(end)) for begin, end in zip(grid, grid[1:], strict=False))
         inputs = "what-if" if self.scenario != Scenario() else "plan" if self.plans else "routine"
@@ -140,7 +142,9 @@ class _Builder:
             self._assume(f"crop water as in the last week: {usual_crop / area:.2g} L/m2 a day")
         running = irrigation if irrigation is not None else crop * max(usual_irrigation / max(usual_crop, 1e-9), 1.0)
         members = crop * np.exp(sd * self.draw[:, 0]) * self._drain_factor(crop, running)
-        return np.minimum(members, max(running, crop) if self.loop.layout != "shared-tank" else np.inf), running * np.exp(sd * self.draw[:, 0])
+        return np.minimum(
+            members, max(running, crop) if self.loop.layout != "shared-tank" else np.inf
+        ), running * np.exp(sd * self.draw[:, 0])
 
     def _drain_factor(self, crop: float, irrigation: float) -> Array:
         """What an error of the drain means for crop water (M,), as in the record."""
@@ -261,11 +265,17 @@ class _Builder:
         if entry.text_of("salt") and entry.number_of("kg"):
             found.append(self._dosed(entry.at, entry.text_of("salt"), entry.number_of("kg") or 0.0, None))
         if entry.number_of("bleed"):
-            found.append(Event(self._soon(plan.begin), "bleed", litres=entry.number_of("bleed") or 0.0, reason="planned"))
+            found.append(
+                Event(self._soon(plan.begin), "bleed", litres=entry.number_of("bleed") or 0.0, reason="planned")
+            )
         return found
 
-    def _dosed(self, at, salt: str, kg: float | Array, adds: Array | None) -> Event:  # type: ignore[no-untyped-def]
-        ions = adds if adds is not None else np.asarray(kg, dtype=float)[..., None] * compositions.per_kg(self.record.site, salt)
+    def _dosed(self, at: datetime, salt: str, kg: float | Array, adds: Array | None) -> Event:
+        ions = (
+            adds
+            if adds is not None
+            else np.asarray(kg, dtype=float)[..., None] * compositions.per_kg(self.record.site, salt)
+        )
         return Event(self._soon(self.record.time(at)), "dose", np.asarray(ions))
 
     def _soon(self, time: float) -> float:
@@ -281,13 +291,3 @@ class _Planned:
     entry: Entry
     begin: float
     end: float
-
-
-def horizon(estimate: Estimate, days: int) -> tuple[float, ...]:
-    """Times [d] of now and of every coming day at this hour."""
-    return tuple(estimate.record.end + day for day in range(days + 1))
-
-
-def moments(estimate: Estimate, days: int) -> tuple:  # type: ignore[type-arg]
-    """The same as moments."""
-    return tuple(estimate.at + timedelta(days=day) for day in range(days + 1))

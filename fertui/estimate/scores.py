@@ -21,7 +21,7 @@ SKILL_PCT = 5.0
 class HindcastRow:
     """One ion of one past forecast beside what the laboratory found; shares only of K, Ca and Mg.
 
-    ``issued``: the analysis it was issued after; ``cold_start``: that was the first. Ranges hold the analysis' own error.
+    ``issued``: the analysis it was issued after; ``cold_start``: that was the first. Ranges hold the analysis' error.
     """
 
     at: datetime
@@ -53,16 +53,16 @@ class Summary:
     """
 
     forecasts: int
-    share_error_pct: Mapping[str, float] | None
-    no_change_share_error_pct: Mapping[str, float] | None
-    last_uptake_share_error_pct: Mapping[str, float] | None
-    skill_pct: Mapping[str, float] | None
-    coverage_ions_pct: float | None
-    coverage_shares_pct: float | None
-    crps_share: Mapping[str, float] | None
-    rmse_mmol_l: Mapping[str, float] | None
-    no_change_rmse_mmol_l: Mapping[str, float] | None
-    words: str
+    share_error_pct: Mapping[str, float] | None = None
+    no_change_share_error_pct: Mapping[str, float] | None = None
+    last_uptake_share_error_pct: Mapping[str, float] | None = None
+    skill_pct: Mapping[str, float] | None = None
+    coverage_ions_pct: float | None = None
+    coverage_shares_pct: float | None = None
+    crps_share: Mapping[str, float] | None = None
+    rmse_mmol_l: Mapping[str, float] | None = None
+    no_change_rmse_mmol_l: Mapping[str, float] | None = None
+    words: str = ""
 
 
 def crps(members: Array, measured: float) -> float:
@@ -84,31 +84,34 @@ def summary(rows: Sequence[HindcastRow]) -> Summary:
     forecasts = len({(row.at, row.point) for row in judged})
     if not share_rows:
         words = "No record yet: a forecast is judged from the third analysis on."
-        return Summary(forecasts, *([None] * 9), words)
+        return Summary(forecasts, words=words)
     error = _by_ion(share_rows, "predicted_share_pct")
     no_change = _by_ion(share_rows, "no_change_share_pct")
     skill = {ion: 100.0 * (1.0 - error[ion] / max(no_change[ion], 1e-9)) for ion in error}
     scored = [row for row in judged if row.ion in SCORED]
     covered = 100.0 * float(np.mean([row.low <= row.measured_mmol_l <= row.high for row in scored]))
     inside = [_share_inside(row) for row in share_rows]
+    scores = {ion: _mean([row.crps_share for row in share_rows if row.ion == ion]) for ion in error}
     return Summary(
         forecasts, error, no_change, _by_ion(share_rows, "last_uptake_share_pct"), skill, covered,
-        100.0 * float(np.mean(inside)), {ion: _mean([r.crps_share for r in share_rows if r.ion == ion]) for ion in error},
-        _rmse(scored, "predicted_mmol_l"), _rmse(scored, "no_change_mmol_l"), _words(forecasts, error, no_change, skill),
+        100.0 * float(np.mean(inside)), scores, _rmse(scored, "predicted_mmol_l"), _rmse(scored, "no_change_mmol_l"),
+        _words(forecasts, error, no_change, skill),
     )  # fmt: skip
 
 
 def _share_inside(row: HindcastRow) -> bool:
-    assert row.low_share_pct is not None and row.high_share_pct is not None and row.measured_share_pct is not None
-    return row.low_share_pct <= row.measured_share_pct <= row.high_share_pct
+    low, measured, high = row.low_share_pct, row.measured_share_pct, row.high_share_pct
+    return low is not None and measured is not None and high is not None and low <= measured <= high
 
 
 def _by_ion(rows: Sequence[HindcastRow], name: str) -> dict[str, float]:
     """Mean absolute error of the shares by ion, of one way to forecast."""
-    return {
-        ion: _mean([abs(getattr(row, name) - row.measured_share_pct) for row in rows if row.ion == ion])  # type: ignore[operator]
-        for ion in SHARED
-    }
+    return {ion: _mean([_miss(row, name) for row in rows if row.ion == ion]) for ion in SHARED}
+
+
+def _miss(row: HindcastRow, name: str) -> float | None:
+    said, found = getattr(row, name), row.measured_share_pct
+    return None if said is None or found is None else float(abs(said - found))
 
 
 def _rmse(rows: Sequence[HindcastRow], name: str) -> dict[str, float]:

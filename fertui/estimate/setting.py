@@ -98,8 +98,10 @@ def _circuit(loop: Loop) -> tuple[Circuit, tuple[str, ...]]:
     if loop.layout == "drain-blend":
         store = loop.drain_store_l or STORE_L_PER_M2 * loop.area_m2
         words = () if loop.drain_store_l else (f"drain store of {store:.0f} L ({STORE_L_PER_M2:g} L/m2)",)
-        blend = {"drain_share": loop.drain_share, "premix_ec": loop.premix_ec}
-        return Circuit("drain-blend", loop.area_m2, root, store, **blend), words
+        blended = Circuit(
+            "drain-blend", loop.area_m2, root, store, drain_share=loop.drain_share, premix_ec=loop.premix_ec
+        )
+        return blended, words
     tank = loop.tank_l or CIRCULATING_L_PER_M2 * loop.area_m2
     words = () if loop.tank_l else (f"tank of {tank:.0f} L ({CIRCULATING_L_PER_M2:g} L/m2)",)
     if root <= 0:

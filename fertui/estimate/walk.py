@@ -2,22 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
+from typing import Protocol
 
 import numpy as np
 
 from fertui.chemistry.ions import Array
-from fertui.estimate.drives import Drives
 from fertui.estimate.ensemble import Ensemble, wandered
+from fertui.estimate.record import Record
 from fertui.estimate.setting import Setting
 from fertui.loop import Drive, Event, advance, apply, corrected
 from fertui.loop.account import Booking, booking
 
-INSTANT = 1e-6
+INSTANT, CLOSE = 1e-6, 1e-4
 TOLERANCE = 0.03
-"""Error estimate of one step of the engine; on the measured houses the ions then end within 0.1 % of steps a hundred times finer,
-where one night of noise moves a member by 2 %."""
+"""Error estimate of one step of the engine. On the measured houses ions then end within 0.1 % of steps a hundred times
+finer, where one night of noise moves a member by 2 %."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,7 +30,54 @@ class Step:
     lines: tuple[Booking, ...]
 
 
-def stretch(setting: Setting, drives: Drives, span: int, ensemble: Ensemble, events: Sequence[Event]) -> Step:
+class Referenced(Protocol):
+    """What is looked at of water beside the drives: the season mean of crop water [L/d] in every stretch."""
+
+    @property
+    def reference(self) -> Array: ...
+
+
+class Driven(Protocol):
+    """Drives of neighbouring stretches: of a record, or of the days to come."""
+
+    @property
+    def grid(self) -> Array: ...
+    @property
+    def water(self) -> Referenced: ...
+    def drive(self, span: int, log_drain: Array, log_stock: Array) -> Drive: ...
+
+
+@dataclass(frozen=True, slots=True)
+class Way:
+    """Where members are led: loop, drives, events, local midnights [d] with the day their noise is keyed by."""
+
+    setting: Setting
+    drives: Driven
+    events: tuple[Event, ...]
+    nights: tuple[tuple[float, int], ...]
+    seed: int
+
+    def led(self, ensemble: Ensemble, first: int, until: float, noisy: bool = True) -> Iterator[tuple[float, Ensemble]]:
+        """Members at the end of every stretch from the ``first`` on, up to a time; no night before the first."""
+        nights = dict(self.nights)
+        for span in range(first, len(self.drives.grid) - 1):
+            begin, end = float(self.drives.grid[span]), float(self.drives.grid[span + 1])
+            if begin >= until - CLOSE:
+                return
+            day = next((nights[each] for each in nights if abs(each - begin) < CLOSE), None)
+            if noisy and span > first and day is not None:
+                ensemble, _ = night(self.setting, ensemble, self.seed, day, begin)
+            events = events_between(self.events, begin, end)
+            ensemble = stretch(self.setting, self.drives, span, ensemble, events).ensemble
+            yield end, ensemble
+
+
+def nights_of(record: Record, begin: float, end: float) -> tuple[tuple[float, int], ...]:
+    """Local midnights within (begin, end) [d] and the local day that begins with each."""
+    return tuple((time, record.local_day(time)) for time in record.midnights(begin, end))
+
+
+def stretch(setting: Setting, drives: Driven, span: int, ensemble: Ensemble, events: Sequence[Event]) -> Step:
     """Events at the beginning of a stretch, then the stretch itself."""
     begin, end = float(drives.grid[span]), float(drives.grid[span + 1])
     medium = ensemble.medium(setting)

@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
+import numpy.typing as npt
 
 from fertui.chemistry.ions import Array
 from fertui.estimate.record import Record
 from fertui.estimate.setting import Setting
 from fertui.estimate.spreads import spread
+
+Flags = npt.NDArray[np.bool_]
 
 LOGGED = 0.5
 """An amount counts for a stretch when it was logged for at least this part of it."""
@@ -47,9 +51,11 @@ def waters(record: Record, setting: Setting, grid: Array) -> Waters:
     drain_part = _drain_part(record, setting, grid)
     drain = np.where(logged["drain"], rate["drain"], rate["irrigation"] * drain_part)
     balance, balanced = _balance(record, grid, rate, logged)
-    choices = [logged["crop"], logged["irrigation"], balanced]
-    known = np.select(choices, [rate["crop"], np.maximum(rate["irrigation"] - drain, 0.0), balance], np.nan)
-    origin = np.select(choices, [BALANCED, DRAINED, BALANCED], ASSUMED)
+    known = np.where(balanced, balance, np.nan)
+    known = np.where(logged["irrigation"], np.maximum(rate["irrigation"] - drain, 0.0), known)
+    known = np.where(logged["crop"], rate["crop"], known)
+    origin = np.where(balanced | logged["crop"], BALANCED, ASSUMED)
+    origin = np.where(logged["irrigation"] & ~logged["crop"], DRAINED, origin)
     crop = _filled(known, days, setting.crop_water_l_per_m2_d * setting.loop.area_m2)
     irrigation = np.where(logged["irrigation"], rate["irrigation"], crop / (1.0 - drain_part))
     steered = logged["make_up"] & (len(record.levels) > 1)
@@ -74,8 +80,8 @@ def _drain_part(record: Record, setting: Setting, grid: Array) -> Array:
 
 
 def _balance(
-    record: Record, grid: Array, rate: dict[str, Array], logged: dict[str, Array]
-) -> tuple[Array, Array]:
+    record: Record, grid: Array, rate: Mapping[str, Array], logged: Mapping[str, Flags]
+) -> tuple[Array, Flags]:
     """Crop water from make-up + condensate - bleed - change of level, and where make-up was logged."""
     days = np.maximum(np.diff(grid), 1e-9)
     bleeds = [(event.at, float(np.max(event.litres))) for event in record.events if event.cause == "bleed"]

@@ -14,7 +14,7 @@ SITE = Site("Testing house", "UTC", (SLAB, TANK), waters=(Water("rain", Composit
 
 FEED = {"NH4": 1.2, "K": 9.5, "Ca": 5.4, "Mg": 2.4, "Na": 1.1, "NO3": 15.0, "Cl": 2.1, "SO4": 4.4, "H2PO4": 1.5}
 DRAIN = {"K": 8.0, "Ca": 10.0, "Mg": 4.5, "Na": 3.0, "NH4": 0.1, "NO3": 22.0, "Cl": 4.0, "SO4": 6.8, "H2PO4": 1.0}
-"""Tomato, dripper and root zone: Nutrient Solutions for Greenhouse Crops, 2016 (second-hand); Na and Cl are invented."""
+"""Tomato, dripper and root zone: Nutrient Solutions for Greenhouse Crops, 2016 (second-hand); Na, Cl are invented."""
 SALAD = {"K": 11.0, "Ca": 4.5, "Mg": 1.0, "NH4": 1.25, "NO3": 19.0, "SO4": 1.125, "H2PO4": 2.0}
 """Lettuce in NFT: Sonneveld & Straver 1994 (from memory)."""
 
@@ -25,8 +25,8 @@ def moment(days: float) -> datetime:
 
 
 def entry(
-    kind: str, when: float, loop: str = "slab", point: str = "", entered: float | None = None, number: int | None = None,
-    doubtful: str = "", whole_day: bool = False, **values: float | str,
+    kind: str, when: float, loop: str = "slab", point: str = "", entered: float | None = None,
+    number: int | None = None, doubtful: str = "", whole_day: bool = False, **values: float | str,
 ) -> Entry:  # fmt: skip
     """An entry of a kind at so many days."""
     made = tuple(
@@ -35,7 +35,16 @@ def entry(
     )
     noted = moment(when if entered is None else entered)
     return Entry(
-        kind, loop, moment(when), noted, "TEST", made, number=number, point=point, doubtful=doubtful, whole_day=whole_day
+        kind,
+        loop,
+        moment(when),
+        noted,
+        "TEST",
+        made,
+        number=number,
+        point=point,
+        doubtful=doubtful,
+        whole_day=whole_day,
     )
 
 

@@ -75,7 +75,9 @@ def test_signs_are_those_of_the_solution() -> None:
 
 
 def test_what_an_analysis_corrected_is_unexplained() -> None:
-    quiet, corrected = (balance(_slab(), moment(a), moment(b)).ions["K"].unexplained for a, b in ((8.1, 8.9), (7.1, 7.9)))
+    quiet, corrected = (
+        balance(_slab(), moment(a), moment(b)).ions["K"].unexplained for a, b in ((8.1, 8.9), (7.1, 7.9))
+    )
     assert abs(corrected) > 5.0 * abs(quiet)
 
 

@@ -116,7 +116,9 @@ def test_a_dose_arrives_whole_in_the_tank_and_only_once() -> None:
 
 def test_the_planner_may_ask_for_another_amount_in_every_member() -> None:
     kg = np.array([0.0, 1.0, 2.0])
-    ran = trajectories(copies(_tank(), 3), 1, Scenario(doses=(Dose(moment(8.5), "potassium nitrate", kg),)), settled=True)
+    ran = trajectories(
+        copies(_tank(), 3), 1, Scenario(doses=(Dose(moment(8.5), "potassium nitrate", kg),)), settled=True
+    )
     risen = ran.ions["tank"][1, :, K] - ran.ions["tank"][1, 0, K]
     assert risen[2] == pytest.approx(2.0 * risen[1], rel=0.02)
 

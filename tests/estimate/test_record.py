@@ -66,7 +66,10 @@ def test_crop_water_is_irrigation_less_drain() -> None:
 
 def test_crop_water_balances_make_up_condensate_bleed_and_levels() -> None:
     log = [entry("water", float(day), "tank", whole_day=True, make_up=500.0, condensate=20.0) for day in range(7)]
-    levels = [entry("level", 0.0, "tank", tank="tank", litres=2000.0), entry("level", 7.0, "tank", tank="tank", litres=1930.0)]
+    levels = [
+        entry("level", 0.0, "tank", tank="tank", litres=2000.0),
+        entry("level", 7.0, "tank", tank="tank", litres=1930.0),
+    ]
     bleed = entry("bleed", 3.5, "tank", litres=210.0, reason="sodium", **{"from": "tank"})
     found = waters(_record([*log, *levels, bleed], TANK), setting(TANK), GRID)
     assert found.crop.sum() == pytest.approx(7 * 520.0 + 70.0 - 210.0)

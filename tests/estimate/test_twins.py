@@ -27,7 +27,9 @@ MAIN = ("K", "Ca", "Mg", "Na", "NO3", "Cl", "SO4", "H2PO4")
 @pytest.mark.parametrize("medium", ["stone-wool", "coir"])
 def test_ranges_hold_the_truth_in_a_few_twins(medium: str) -> None:
     held = _held(medium, 16, 7)
-    assert all(0.65 <= np.mean(each) <= 0.95 for each in held.values()), {name: np.mean(each) for name, each in held.items()}
+    assert all(0.65 <= np.mean(each) <= 0.95 for each in held.values()), {
+        name: np.mean(each) for name, each in held.items()
+    }
 
 
 @pytest.mark.long
@@ -81,5 +83,3 @@ def _passed(estimate: Estimate, middle: Array) -> list[Array]:
     found = shares(shown_members(ran.ions["root_zone"], estimate.spread))
     days = np.arange(AHEAD + 1.0)
     return [passages(days, found[..., place], (middle[place] - WIDE, middle[place] + WIDE)) for place in range(3)]
-
-

@@ -64,7 +64,12 @@ def twins(medium: str, count: int, seed: int) -> Iterator[Twin]:
     water = _water(chance)
     record = read(site, loop, water, ZERO + timedelta(days=NOW + AHEAD))
     where = setting(loop)
-    grid = grid_of(0.5, float(NOW + AHEAD) + 0.5, [float(day) for day in range(1, NOW + AHEAD + 1)], np.arange(0.5, NOW + AHEAD, 1.0).tolist())
+    grid = grid_of(
+        0.5,
+        float(NOW + AHEAD) + 0.5,
+        [float(day) for day in range(1, NOW + AHEAD + 1)],
+        np.arange(0.5, NOW + AHEAD, 1.0).tolist(),
+    )
     ensemble = _first(loop, count, chance, seed)
     course = {0.5: ensemble}
     driven = drives(record, where, grid)
@@ -114,19 +119,30 @@ def _analysed(when: float, solution: Array, chance: np.random.Generator) -> Entr
     ions = {ion: float(value) for ion, value in zip(IONS, solution, strict=True) if ion != "HCO3"}
     exact = Observation(when, ZERO, "analysis", "drain", None, ions, frozenset(), None, None, None)
     noise = chance.multivariate_normal(np.zeros(len(ions)), exact.covariance())
-    return _entry("analysis", when, "drain", **{ion: value * float(np.exp(off)) for (ion, value), off in zip(ions.items(), noise, strict=True)})
+    return _entry(
+        "analysis",
+        when,
+        "drain",
+        **{ion: value * float(np.exp(off)) for (ion, value), off in zip(ions.items(), noise, strict=True)},
+    )
 
 
 def _planned(coming: list[Entry]) -> list[Entry]:
     """The coming water and feed as a plan entered now."""
-    days = [(entry.number_of("irrigation") or 0.0, entry.number_of("drain") or 0.0) for entry in coming if entry.kind == "water"]
+    days = [
+        (entry.number_of("irrigation") or 0.0, entry.number_of("drain") or 0.0)
+        for entry in coming
+        if entry.kind == "water"
+    ]
     return [
         _entry("plan", float(NOW + day), entered=NOW, irrigation=irrigation, drain=drain, **FEED)
         for day, (irrigation, drain) in enumerate(days)
     ]
 
 
-def _entry(kind: str, when: float, point: str = "", whole_day: bool = False, entered: float | None = None, **values: float) -> Entry:
+def _entry(
+    kind: str, when: float, point: str = "", whole_day: bool = False, entered: float | None = None, **values: float
+) -> Entry:
     at = ZERO + timedelta(days=when)
     noted = at if entered is None else ZERO + timedelta(days=entered)
     return Entry(

@@ -25,7 +25,8 @@ SCORED = ("K", "Ca", "Mg", "Na", "NO3", "SO4", "Cl", "H2PO4")
 BARS = {"K": 1.8, "Ca": 1.4, "Mg": 1.3}
 NO_CHANGE = {"K": 2.82, "Ca": 1.20, "Mg": 2.37}
 HEADS = {
-    "EC_mS_cm": "EC [mS/cm]", "pH": "pH", "K_mmol_L": "K [mmol/L]", "Ca_mmol_L": "Ca [mmol/L]", "Mg_mmol_L": "Mg [mmol/L]",
+    "EC_mS_cm": "EC [mS/cm]", "pH": "pH", "K_mmol_L": "K [mmol/L]", "Ca_mmol_L": "Ca [mmol/L]",
+    "Mg_mmol_L": "Mg [mmol/L]",
     "Na_mmol_L": "Na [mmol/L]", "NH4_mmol_L": "NH4 [mmol/L]", "NO3_mmol_L": "NO3 [mmol/L]", "Cl_mmol_L": "Cl [mmol/L]",
     "SO4_mmol_L": "SO4 [mmol/L]", "HCO3_mmol_L": "HCO3 [mmol/L]", "PO4_mmol_L": "H2PO4 [mmol/L]",
 }  # fmt: skip
@@ -51,9 +52,7 @@ def _entered(houses: Path, folder: Path, house: str) -> Path:
     table = [{"at": r["date"], "point": r["point"], "doubtful": r["doubtful"], **_named(r)} for r in analyses]
     _done(["import", str(site), str(_written(folder / "analyses.csv", table)), "--as", "analysis"])
     water = [row for row in _rows(houses / "rockwool_tomato_water.csv") if row["house"] == house]
-    litres = [
-        {"at": r["date"], "irrigation [L]": r["irrigation_L_m2"], "drain [L]": r["drain_L_m2"]} for r in water
-    ]
+    litres = [{"at": r["date"], "irrigation [L]": r["irrigation_L_m2"], "drain [L]": r["drain_L_m2"]} for r in water]
     _done(["import", str(site), str(_written(folder / "water.csv", litres)), "--as", "water"])
     return site
 
@@ -91,8 +90,7 @@ def _record(sites: list[Path], capsys: pytest.CaptureFixture[str], *options: str
         kept += [
             row
             for row in rows
-            if not row["cold_start"]
-            and not doubtful & {row["at"], row["issued"], before.get(row["issued"])}
+            if not row["cold_start"] and not doubtful & {row["at"], row["issued"], before.get(row["issued"])}
         ]
     return kept
 
@@ -109,9 +107,7 @@ def _covered(rows: list[Row], name: str, low: str, high: str) -> float:
 
 
 @pytest.mark.parametrize("seed", ["1", "2", "3"])
-def test_shares_are_forecast_within_the_bars(
-    sites: list[Path], capsys: pytest.CaptureFixture[str], seed: str
-) -> None:
+def test_shares_are_forecast_within_the_bars(sites: list[Path], capsys: pytest.CaptureFixture[str], seed: str) -> None:
     rows = _record(sites, capsys, "--seed", seed)
     assert len({(row["at"], row["no_change_mmol_L"]) for row in rows if row["ion"] == "K"}) == 12
     error = _error(rows, "predicted_share_pct")
@@ -142,16 +138,18 @@ def test_no_ion_is_forecast_worse_than_no_change(sites: list[Path], capsys: pyte
         assert ours <= none, ion
 
 
-def test_as_issued_the_record_claims_no_skill_it_lacks(
-    sites: list[Path], capsys: pytest.CaptureFixture[str]
-) -> None:
+def test_as_issued_the_record_claims_no_skill_it_lacks(sites: list[Path], capsys: pytest.CaptureFixture[str]) -> None:
     rows = _record(sites, capsys, "--inputs", "planned")
     planned, none = (_error(rows, f"{name}_share_pct") for name in ("predicted", "no_change"))
     capsys.readouterr()
     _done(["hindcast", str(sites[1]), "--inputs", "planned"])
     told = capsys.readouterr().out
-    second = [row for row in _record(sites[1:], capsys, "--inputs", "planned")]
-    worse = [ion for ion in SHARED if _error(second, "predicted_share_pct")[ion] > 1.05 * _error(second, "no_change_share_pct")[ion]]
+    second = _record(sites[1:], capsys, "--inputs", "planned")
+    worse = [
+        ion
+        for ion in SHARED
+        if _error(second, "predicted_share_pct")[ion] > 1.05 * _error(second, "no_change_share_pct")[ion]
+    ]
     assert all(ion in told.split("worse for", 1)[-1] for ion in worse), (planned, none)
     shares = [row for row in rows if row["ion"] in SHARED]
     assert _covered(shares, "measured_share_pct", "low_share_pct", "high_share_pct") >= 0.7
