@@ -10,7 +10,7 @@ from fertui.chemistry.names import ATOMIC_WEIGHT
 from fertui.chemistry.verdicts import guesses, trusted, verdicts
 
 # Published compositions [mmol/L], sum of charges [meq/L] on either side and shares K : Ca : Mg [% of equivalents].
-# Hoagland & Arnon 1950, Circular 347; Eurofins Agro et al. 2016, Nutrient Solutions for Greenhouse Crops (second-hand).
+# Hoagland & Arnon 1950, Circular 347; Dutch booklet 2016, Nutrient Solutions for Greenhouse Crops (second-hand).
 CLOSES = {
     "Hoagland 1": ({"K": 6, "Ca": 5, "Mg": 2, "NO3": 15, "H2PO4": 1, "SO4": 2}, 20.0, (30, 50, 20)),
     "Hoagland 2": ({"NH4": 1, "K": 6, "Ca": 4, "Mg": 2, "NO3": 14, "H2PO4": 1, "SO4": 2}, 19.0, (33, 44, 22)),
