@@ -17,7 +17,9 @@ from fertui.planning.checkpoints import ec_of, violation
 from fertui.planning.goal import LIMITED
 from fertui.planning.hand_doses import REACHED_PCT
 from fertui.planning.reasons import MAJOR, bands_words, binding, held_by, over_limit_words, rule_of_thumb, share_words
-from fertui.planning.recipe_change import Recipe, RecipeTask, change, feeds, step_limits, usable_in_stock
+from fertui.planning.recipe_change import Recipe, change, feeds, usable_in_stock
+from fertui.planning.recipe_programme import step_limits
+from fertui.planning.recipe_task import RecipeTask
 from fertui.planning.renewal import excess_of, renewal_of, smallest_fraction
 from fertui.planning.request import Request, cautions_for, vague
 from fertui.planning.runs import Doing, share_pct
