@@ -128,19 +128,31 @@ def concentrations(kg: Mapping[Material, float], litres: float) -> Array:
 def conflicts(kg: Mapping[Material, float], litres: float, tank: str) -> tuple[Refused, ...]:
     """Pairs in one tank that precipitate, gas or fall apart, each with the solid it can drop [kg]."""
     c = concentrations(kg, litres)
-    found = []
-    calcium = c[INDEX["Ca"]]
+    found: list[Refused] = []
     if _gypsum(c):
-        solid = min(calcium, c[INDEX["SO4"]]) * litres * GYPSUM_KG_PER_MOL / 1000.0
-        found.append(_pair(kg, "Ca", "SO4", tank, f"gypsum falls out, up to {solid:.1f} kg in {litres:.0f} L", solid))
+        found += _precipitates(kg, litres, tank, "SO4", "gypsum", GYPSUM_KG_PER_MOL)
     if _brushite(c):
-        solid = min(calcium, c[INDEX["H2PO4"]]) * litres * BRUSHITE_KG_PER_MOL / 1000.0
-        found.append(
-            _pair(
-                kg, "Ca", "H2PO4", tank, f"calcium phosphate falls out, up to {solid:.1f} kg in {litres:.0f} L", solid
-            )
-        )
+        found += _precipitates(kg, litres, tank, "H2PO4", "calcium phosphate", BRUSHITE_KG_PER_MOL)
     return (*found, *_alkali_conflicts(kg, tank), *_acid_conflicts(kg, tank))
+
+
+def _precipitates(
+    kg: Mapping[Material, float], litres: float, tank: str, anion: str, solid: str, kg_per_mol: float
+) -> list[Refused]:
+    """The main calcium salt with every source of an anion that calcium takes down, and how much of it can fall out."""
+    calcium = float(concentrations(kg, litres)[INDEX["Ca"]])
+    source = max(kg, key=lambda each: each.ions_mmol_per_kg[INDEX["Ca"]] * kg[each])
+    found = []
+    for other, mass in kg.items():
+        brought = float(other.ions_mmol_per_kg[INDEX[anion]] * mass / litres)
+        if other is not source and brought >= 0.5 * TRACE:
+            weight = min(calcium, brought) * litres * kg_per_mol / 1000.0
+            why = (
+                f"{solid} falls out, up to {weight:.1f} kg in {litres:.0f} L; keep them in two stock tanks "
+                "(in the dilute feed they stay dissolved)"
+            )
+            found.append(Refused((source.name, other.name), why, tank, weight))
+    return found
 
 
 def _gypsum(c: Array) -> bool:
@@ -183,17 +195,6 @@ def _acid_conflicts(kg: Mapping[Material, float], tank: str) -> list[Refused]:
                     Refused((acid.name, other.name), "never phosphoric or sulfuric acid in the calcium tank", tank)
                 )
     return found
-
-
-def _pair(kg: Mapping[Material, float], one: str, other: str, tank: str, why: str, solid_kg: float) -> Refused:
-    pair = (_most(kg, one), _most(kg, other))
-    return Refused(
-        pair, f"{why}; keep them in two stock tanks (in the dilute feed they stay dissolved)", tank, solid_kg
-    )
-
-
-def _most(kg: Mapping[Material, float], ion: str) -> str:
-    return max(kg, key=lambda each: each.ions_mmol_per_kg[INDEX[ion]] * kg[each]).name
 
 
 def fullest(kg: Mapping[Material, float], litres: float, temperature_c: float) -> Fullest | None:
