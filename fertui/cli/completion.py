@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from fertui.cli.parser import build, commands_of
+from fertui.logbook.kinds import KINDS
 
 
 def script(shell: str) -> str:
@@ -15,7 +16,7 @@ def script(shell: str) -> str:
     for name, parser in commands_of(build()).items():
         options = sorted(option for option in parser._option_string_actions if option.startswith("--"))
         cases.append(f'    {name}) words="{" ".join(options)}" ;;')
-    body = _BODY.format(commands=" ".join(commands_of(build())), cases="\n".join(cases))
+    body = _BODY.format(commands=" ".join(commands_of(build())), kinds=" ".join(KINDS), cases="\n".join(cases))
     return body if shell == "bash" else f"autoload -U +X bashcompinit && bashcompinit\n{body}"
 
 
@@ -23,6 +24,10 @@ _BODY = """\
 _fertui() {{
   local word="${{COMP_WORDS[COMP_CWORD]}}" words=""
   if [ "$COMP_CWORD" -eq 1 ]; then words="{commands}"; fi
+  if [ "${{COMP_WORDS[1]}}" = record ] && [ "$COMP_CWORD" -eq 3 ]; then
+    COMPREPLY=( $(compgen -W "{kinds}" -- "$word") )
+    return
+  fi
   case "${{COMP_WORDS[1]}}" in
 {cases}
   esac

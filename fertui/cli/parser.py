@@ -15,7 +15,7 @@ K : Ca : Mg, Na or NH4 leave their band, and plan what brings them back.
   fertui demo                              look around in an invented site
   fertui new north --crop tomato --medium coir --layout drain-blend --area 1200
   fertui record north reading point=drain EC=4.1 pH=5.7 by=MK
-  fertui today north                       state and what to look at, as plain text
+  fertui today north                       state and what to look at, as text
   fertui north                             the terminal interface
 """
 CLOSING = """\
@@ -26,7 +26,9 @@ fertui advises and you decide. It is no alarm system and no controller.
 
 
 class Parser(argparse.ArgumentParser):
-    """An argument parser that leaves exit codes to the entry point."""
+    """An argument parser that leaves exit codes to the entry point. ``about`` says in a few words what it is for."""
+
+    about = ""
 
     def error(self, message: str) -> NoReturn:
         raise Refusal(f"{message}. See '{self.prog} --help'.")
@@ -46,15 +48,38 @@ COMMANDS = frozenset(
 def build() -> Parser:
     """The whole command tree."""
     parser = Parser(
-        prog="fertui", description=ABOUT, epilog=CLOSING, formatter_class=argparse.RawDescriptionHelpFormatter
+        prog="fertui",
+        usage="fertui SITE\n       fertui COMMAND ...",
+        epilog=CLOSING,
+        formatter_class=argparse.RawDescriptionHelpFormatter,
     )
     parser.add_argument("--version", action="store_true", help="print the version")
-    commands = parser.add_subparsers(dest="command", metavar="COMMAND", parser_class=Parser)
+    commands = parser.add_subparsers(
+        dest="command", metavar="COMMAND", prog="fertui", parser_class=Parser, help=argparse.SUPPRESS
+    )
     _site_commands(commands)
     _write_commands(commands)
     _read_commands(commands)
     _paper_commands(commands)
+    parser.description = f"{ABOUT}\n{_listed(commands_of(parser))}"
     return parser
+
+
+GROUPS = {
+    "a site": ("demo", "new", "open", "check", "site", "supplies", "backup", "restore", "completion"),
+    "what happened": ("record", "import", "supersede", "void", "logbook", "export"),
+    "where the loop is": ("today", "analysis", "drift", "balance"),
+    "what comes": ("forecast", "plan", "hindcast"),
+    "paper": ("round", "handover", "stock", "acid", "report"),
+}
+"""The commands as the help lists them, by what they are for."""
+
+
+def _listed(parsers: Mapping[str, Parser]) -> str:
+    lines = []
+    for group, names in GROUPS.items():
+        lines += [f"{group}:", *(f"  {name:12}{parsers[name].about}" for name in names), ""]
+    return "\n".join([*lines, "'fertui COMMAND --help' has an example of each."])
 
 
 def commands_of(parser: Parser) -> Mapping[str, Parser]:
@@ -65,15 +90,40 @@ def commands_of(parser: Parser) -> Mapping[str, Parser]:
     return {}
 
 
-def _add(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:
-    return commands.add_parser(
-        name, help=about, description=f"  {example}\n\n{about}", formatter_class=argparse.RawDescriptionHelpFormatter
+def _add(commands: argparse._SubParsersAction, name: str, about: str, example: str, more: str = "") -> Parser:
+    parser: Parser = commands.add_parser(
+        name,
+        description=f"  {example}\n\n{about[0].upper()}{about[1:]}.",
+        epilog=more or None,
+        formatter_class=argparse.RawDescriptionHelpFormatter,
     )
+    parser.about = about
+    return parser
+
+
+SITE = "folder of the site"
+INPUTS = "forecasts from what was logged since (default), or only from what was known or planned when issued"
+LOOP = "a loop by name (default: the first)"
+ENTRY = """\
+kinds: reading, analysis, water, level, dose, stock, batch, recipe, setpoint,
+       acid, bleed, plan, crop, disinfection, calibration, sample, note
+
+  fertui record north reading point=feed EC=2.6 pH=5.5 temperature=20 by=MK
+  fertui record north water make_up=2400 irrigation=3400 drain=1000 by=MK
+  fertui record north stock tank=calcium litres=24 by=MK
+  fertui record north analysis point=root_zone K=5.1 Ca="400 mg/L" EC=3.9 by=MK
+  fertui record north bleed litres=800 from=drain reason=sodium by=MK
+
+Every kind takes at= (default: now), by= (default: FERTUI_OPERATOR), point=,
+note= and doubtful=. A value may carry its unit: NO3-N="200 mg/L". All values of
+all kinds stand in docs/command.md; an unknown one is answered with those of its
+kind.
+"""
 
 
 def _site_commands(commands: argparse._SubParsersAction) -> None:
     opened = _add(commands, "open", "open the terminal interface", "fertui open north")
-    opened.add_argument("site", metavar="SITE")
+    opened.add_argument("site", metavar="SITE", help=SITE)
     opened.add_argument("--at", metavar="TIME", help="show the site as of that time")
     demo = _add(commands, "demo", "build an invented site and open it", "fertui demo --into demo-site")
     demo.add_argument("--into", metavar="DIR", help="where to build it (default: a fresh temporary folder)")
@@ -84,11 +134,11 @@ def _site_commands(commands: argparse._SubParsersAction) -> None:
         "make a site folder from options, or by asking",
         "fertui new north --crop tomato --medium coir --layout drain-blend --area 1200",
     )
-    new.add_argument("dir", metavar="DIR")
+    new.add_argument("dir", metavar="DIR", help="a new folder; without options the rest is asked")
     for option, about in NEW_OPTIONS.items():
         new.add_argument(f"--{option}", metavar=option.upper().replace("-", "_"), help=about)
     _add(commands, "completion", "print a completion script for bash or zsh", "fertui completion bash").add_argument(
-        "shell", choices=["bash", "zsh"]
+        "shell", choices=["bash", "zsh"], help="then: source <(fertui completion bash)"
     )
 
 
@@ -117,49 +167,52 @@ def _write_commands(commands: argparse._SubParsersAction) -> None:
         "record",
         "append one entry to the logbook",
         "fertui record north reading point=drain EC=4.1 pH=5.7 by=MK",
+        ENTRY,
     )
-    record.add_argument("site", metavar="SITE")
-    record.add_argument("kind", metavar="KIND")
-    record.add_argument("values", nargs="*", metavar="name=value")
-    record.add_argument("--loop", metavar="NAME")
+    record.add_argument("site", metavar="SITE", help=SITE)
+    record.add_argument("kind", metavar="KIND", help="what happened, see below")
+    record.add_argument("values", nargs="*", metavar="name=value", help="values of the kind")
+    record.add_argument("--loop", metavar="NAME", help=LOOP)
     correct = _add(
         commands,
         "supersede",
         "correct an entry; the old one stays visible",
         'fertui supersede north 41 Ca=5.1 why="misread the report" by=MK',
     )
-    correct.add_argument("site", metavar="SITE")
-    correct.add_argument("number", metavar="NUMBER")
-    correct.add_argument("values", nargs="+", metavar="name=value")
+    correct.add_argument("site", metavar="SITE", help=SITE)
+    correct.add_argument("number", metavar="NUMBER", help="number of the entry, as the logbook shows it")
+    correct.add_argument("values", nargs="+", metavar="name=value", help='what is different, why="..." and by=')
     strike = _add(commands, "void", "strike an entry; it stays visible", 'fertui void north 41 why="wrong loop" by=MK')
-    strike.add_argument("site", metavar="SITE")
-    strike.add_argument("number", metavar="NUMBER")
-    strike.add_argument("values", nargs="+", metavar="name=value")
+    strike.add_argument("site", metavar="SITE", help=SITE)
+    strike.add_argument("number", metavar="NUMBER", help="number of the entry, as the logbook shows it")
+    strike.add_argument("values", nargs="+", metavar="name=value", help='why="..." and by=')
     load = _add(commands, "import", "take in a table", "fertui import north lab.csv --as analysis --dry-run")
-    load.add_argument("site", metavar="SITE")
-    load.add_argument("file", metavar="FILE")
-    load.add_argument("--as", dest="kind", required=True, metavar="KIND")
+    load.add_argument("site", metavar="SITE", help=SITE)
+    load.add_argument("file", metavar="FILE", help="CSV; the unit of a column stands in its head: K [mmol/L]")
+    load.add_argument(
+        "--as", dest="kind", required=True, metavar="KIND", help="kind of entry: analysis, reading, water ..."
+    )
     load.add_argument("--dry-run", action="store_true", help="show each conversion and check, write nothing")
-    load.add_argument("--loop", metavar="NAME")
+    load.add_argument("--loop", metavar="NAME", help=LOOP)
     load.add_argument("--by", metavar="INITIALS", help="who, where the table has no column 'by'")
     load.add_argument("--template", metavar="NAME", help="column mapping saved for a laboratory")
     load.add_argument("--save-template", metavar="NAME", help="save the column mapping under this name")
-    load.add_argument("--json", action="store_true")
+    load.add_argument("--json", action="store_true", help="JSON instead of text")
     export = _add(commands, "export", "write the logbook as tables, one a kind", "fertui export north --into tables")
-    export.add_argument("site", metavar="SITE")
-    export.add_argument("--into", required=True, metavar="DIR")
+    export.add_argument("site", metavar="SITE", help=SITE)
+    export.add_argument("--into", required=True, metavar="DIR", help="folder for the tables")
     backup = _add(commands, "backup", "write the whole book verbatim", "fertui backup north north.jsonl")
-    backup.add_argument("site", metavar="SITE")
-    backup.add_argument("file", metavar="FILE")
+    backup.add_argument("site", metavar="SITE", help=SITE)
+    backup.add_argument("file", metavar="FILE", help="where to write it (JSON lines)")
     restore = _add(commands, "restore", "make a site folder from a backup", "fertui restore north.jsonl north-again")
-    restore.add_argument("file", metavar="FILE")
-    restore.add_argument("dir", metavar="DIR")
+    restore.add_argument("file", metavar="FILE", help="a backup")
+    restore.add_argument("dir", metavar="DIR", help="a new folder")
 
 
 def _reading(commands: argparse._SubParsersAction, name: str, about: str, example: str) -> Parser:
     parser = _add(commands, name, about, example)
-    parser.add_argument("site", metavar="SITE")
-    parser.add_argument("--loop", metavar="NAME", help="a loop by name (default: the first)")
+    parser.add_argument("site", metavar="SITE", help=SITE)
+    parser.add_argument("--loop", metavar="NAME", help=LOOP)
     parser.add_argument("--at", metavar="TIME", help="hide events later than TIME (default: now)")
     parser.add_argument("--known", metavar="TIME", help="also hide entries and corrections made after TIME")
     parser.add_argument("--unit", choices=["mmol/L", "meq/L", "mg/L"], help="unit shown (default: the site's)")
@@ -176,16 +229,18 @@ def _read_commands(commands: argparse._SubParsersAction) -> None:
     _reading(commands, "today", "state and what to look at", "fertui today north")
     _reading(commands, "analysis", "last analysis against target", "fertui analysis north")
     drift = _reading(commands, "drift", "shares, ions, EC, pH over time", "fertui drift north --days 28")
-    drift.add_argument("--days", default="28", metavar="N")
+    drift.add_argument("--days", default="28", metavar="N", help="days back (default: 28)")
     _period(_reading(commands, "balance", "account of each ion by cause", "fertui balance north --from 2026-05-01"))
     forecast = _reading(commands, "forecast", "the days ahead", "fertui forecast north --days 14")
-    forecast.add_argument("--days", default="14", metavar="N")
+    forecast.add_argument("--days", default="14", metavar="N", help="days ahead (default: 14)")
     hindcast = _reading(commands, "hindcast", "the record of past forecasts", "fertui hindcast north --inputs planned")
-    hindcast.add_argument("--inputs", choices=["logged", "planned"], default="logged")
+    hindcast.add_argument("--inputs", choices=["logged", "planned"], default="logged", help=INPUTS)
     hindcast.add_argument("--seed", metavar="N", help="another seed for the ensemble")
     plan = _reading(commands, "plan", "what brings the ions back; records nothing", "fertui plan north --days 14")
-    plan.add_argument("--days", default="14", metavar="N", help="horizon; 0: right after mixing, the dosed tank only")
-    plan.add_argument("--target", metavar="NAME")
+    plan.add_argument(
+        "--days", default="14", metavar="N", help="days ahead (default: 14); 0: right after mixing, the dosed tank only"
+    )
+    plan.add_argument("--target", metavar="NAME", help="aim for another target (default: the loop's)")
     plan.add_argument("--supplies", metavar="A,B,...", help="only these, by name or formula")
     plan.add_argument("--without", metavar="SALT", action="append", default=[], help="leave a salt out (repeatable)")
     plan.add_argument("--steps", metavar="N", help="at most so many dosing steps (1-4)")
@@ -205,7 +260,7 @@ def _paper_commands(commands: argparse._SubParsersAction) -> None:
     _reading(commands, "handover", "one-page shift handover", "fertui handover north")
     _period(_reading(commands, "report", "report for consultant or auditor", "fertui report north --from 2026-05-01"))
     _reading(commands, "logbook", "every entry, struck ones too", "fertui logbook north").add_argument(
-        "--kind", metavar="KIND"
+        "--kind", metavar="KIND", help="entries of one kind only"
     )
     _reading(commands, "supplies", "salts, acids, stock tanks", "fertui supplies north")
     _reading(commands, "site", "targets, bands and limits, and where each comes from", "fertui site north")
