@@ -40,6 +40,8 @@ def styled(style: Style, codes: str) -> Style:
             colour = ";".join((word, *words[:length]))
             del words[:length]
             style = replace(style, ink=colour) if word == "38" else replace(style, paper=colour)
+        elif word in _OFF.values():
+            style = replace(style, on=frozenset(code for code in style.on if _OFF[code] != word))
         elif word in _OFF:
             style = replace(style, on=style.on | {word})
         elif word in ("39", "49"):

@@ -106,7 +106,8 @@ def draw_today(snapshot: Snapshot, width: int) -> list[Line]:
     if state is None:
         return [*top, *waiting(snapshot, Ask("today", snapshot.loop), "where the ions are", width)[1:]]
     if glance.last_analysis is None:
-        return [*top, line(" ", Span(UNKNOWN, "watch")), BLANK, *watch_list(state, width)]
+        words = [line(" ", Span(text, "watch")) for text in wrap(UNKNOWN, width - 2)]
+        return [*top, *words, BLANK, *watch_list(state, width)]
     if width >= WIDE:
         left = gauges(state, snapshot, 80)
         return [*top, *beside(left, watch_list(state, width - 84), 80, 3)]
