@@ -37,6 +37,7 @@ from fertui.site.model import Composition, Loop, Site, StockTank, Supply
 ASSUMED_TANKS = (StockTank("calcium", 1000.0), StockTank("sulfate and phosphate", 1000.0))
 """Taken where a loop names no stock tanks, and said so."""
 
+ASSUMED_WORDS = "no stock tanks in site.toml: two of 1000 L at 100 times are assumed; add [[stock_tanks]]"
 MISSED = 0.05
 """Misfit of one ion, in parts of what is asked, from which the sheet speaks of it."""
 
@@ -129,6 +130,8 @@ def stock_sheet(
         )
         sheets.append(sheet)
         refused += bad
+    if not loop.stock_tanks:
+        needed = replace(needed, notices=(*needed.notices, ASSUMED_WORDS))
     return _sheet(tuple(sheets), tuple(refused), needed, composed, placed, solver)
 
 
