@@ -26,7 +26,7 @@ REACHED_PCT = 1.0
 """By how many points of share a plan may miss its bands and still be called one that reaches them: the last digit."""
 DAILY_WEIGHT = 0.3
 """Weight of the days on the way beside that of the horizon."""
-LIGHTER, TAKEN_BACK = 4, (0.85, 0.6, 0.0)
+LIGHTER, TAKEN_BACK = 3, (0.85, 0.6, 0.0)
 """A plan that passes a limit when the model runs it is made lighter by single scale steps, then by parts, down to
 nothing."""
 LITRES = 10.0
