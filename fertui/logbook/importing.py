@@ -189,9 +189,16 @@ def _entry(texts: Mapping[str, str], source: _Source) -> Entry:
     given = {"by": source.by, **own, **texts}
     loop = given.pop("loop", None) or source.loop or source.template.values.get("loop")
     given.pop("time", None)
+    if "point" not in given and _names_a_point(given.get("sample", ""), source):
+        given["point"] = given.pop("sample")
     if "point" in given:
         given |= _placed(given["point"], source)
     return entry_from_text(source.kind.name, given, source.site, loop, source.now)
+
+
+def _names_a_point(sample: str, source: _Source) -> bool:
+    """Whether a sample is called exactly like a point, as laboratories print what stood on the bottle."""
+    return bool(sample) and (sample in source.template.points or _placed(sample, source)["point"] in POINTS)
 
 
 def _placed(written: str, source: _Source) -> dict[str, str]:
@@ -200,7 +207,8 @@ def _placed(written: str, source: _Source) -> dict[str, str]:
     waters = {water.name.lower(): water.name for water in source.site.waters}
     if point.lower() in waters and point not in POINTS:
         return {"point": "source", "source": waters[point.lower()]}
-    return {"point": POINT_WORDS.get(point.lower().replace("_", " "), point)}
+    plain = point.lower().replace("_", " ")
+    return {"point": POINT_WORDS.get(plain) or {each.replace("_", " "): each for each in POINTS}.get(plain, point)}
 
 
 def _judged(read: Sequence[tuple[int, Entry]], book: Logbook, here: ZoneInfo) -> Iterator[ImportRow]:

@@ -139,7 +139,8 @@ def _complete(entry: Entry, site: Site, loop: Loop) -> Entry:
         raise LogbookError(f"{kind.name} has no value; give at least one of {', '.join(kind.names)}.")
     if kind.name == "analysis" and not entry.point:
         allowed = ", ".join(POINTS_BY_LAYOUT[loop.layout])
-        raise LogbookError(f"analysis needs its point: where was the sample taken? One of {allowed}.")
+        where = f"where was the sample taken? Give point= (in a table, a column point): {allowed}"
+        raise LogbookError(f"analysis needs its point: {where}.")
     check_method(entry, loop)
     until = entry.number_of("until")
     if until is not None and until <= entry.at.timestamp():

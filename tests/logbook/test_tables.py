@@ -297,3 +297,10 @@ def test_the_same_trouble_on_many_lines_is_told_once(take: Import) -> None:
 
 def test_a_table_that_names_nobody_is_by_the_import(take: Import) -> None:
     assert take("date,point,K\n2026-06-20,drain,8\n", by="").rows[0].entry.by == "import"
+
+
+def test_a_sample_called_like_a_point_was_taken_there(take: Import) -> None:
+    rows = take("date,sample,K\n2026-06-20,Root zone,8\n2026-06-20,drip,7\n").rows
+    assert [(row.entry.point, row.entry.text_of("sample")) for row in rows] == [("root_zone", ""), ("feed", "")]
+    with pytest.raises(LogbookError, match="a column point"):
+        take("date,sample,K\n2026-06-20,4711,8\n")
