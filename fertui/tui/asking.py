@@ -49,7 +49,8 @@ def _history(bench: Bench, ask: Ask, moment: datetime) -> Any:
 
 
 USE_CASES: dict[str, UseCase] = {
-    "overview": _overview, "balance": _balance, "forecast": _forecast, "stock": _untimed, "acid": _untimed, "aims": _untimed, "previous": _untimed,
+    "overview": _overview, "balance": _balance, "forecast": _forecast, "stock": _untimed, "acid": _untimed,
+    "aims": _untimed, "previous": _untimed,
     "check": _whole, "history": _history, "open_plans": _untimed, "site_rows": _whole, "supplies_rows": _whole,
 }  # fmt: skip
 """Use cases that take other arguments than loop and time."""
@@ -80,7 +81,8 @@ def call_for(ask: Ask, moment: datetime, then: Callable[[Ask, Answer], None]) ->
 
 WORDS = {
     "overview": "all loops", "today": "where the ions are", "drift": "the days past", "balance": "the account",
-    "forecast": "the days ahead", "hindcast": "the record", "plan": "the plan", "glance": "last numbers", "history": "the logbook",
+    "forecast": "the days ahead", "hindcast": "the record", "plan": "the plan", "glance": "last numbers",
+    "history": "the logbook",
 }  # fmt: skip
 
 

@@ -28,7 +28,10 @@ class Chooser(View):
     """Shows options, narrows them by what is typed, hands the chosen value over."""
 
     TITLE = "Choose"
-    HELP = "Up and Down move the bar, Enter takes what is under it, typing narrows the list, Backspace widens it, Esc leaves."
+    HELP = (
+        "Up and Down move the bar, Enter takes what is under it; "
+        "typing narrows the list, Backspace widens it, Esc leaves."
+    )
     BINDINGS: ClassVar[list[Any]] = [
         *(binding for binding in SCROLLING if binding.key != "pagedown,space"),
         Binding("pagedown", "leaf(1)", "page down", show=False, id="page.pagedown", tooltip="A screenful down."),

@@ -1,4 +1,5 @@
-"""Where work is done that would keep the screen waiting: one thread with its own open site, one call after the other."""
+"""Where work is done that would keep the screen waiting: one thread with its own open site, one call after the
+other."""
 
 from __future__ import annotations
 
@@ -18,7 +19,8 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class Answer:
-    """What a call came to: a value, or the sentence that says why there is none (``fault``: an error of the program)."""
+    """What a call came to: a value, or the sentence that says why there is none (``fault``: an error of the
+    program)."""
 
     value: Any = None
     trouble: str = ""

@@ -45,7 +45,8 @@ class EntryList(View):
 
     TITLE = "Entries"
     HELP = (
-        "Entries of the logbook, newest first. Nothing is ever overwritten: what was corrected or struck stays, crossed out, "
+        "Entries of the logbook, newest first. Nothing is ever overwritten: what was corrected or struck stays, "
+        "crossed out, "
         "with who, when and why. Enter shows an entry whole, c corrects it, v strikes it."
     )
     BINDINGS: ClassVar[list[Any]] = [

@@ -1,4 +1,5 @@
-"""One entry with all it holds: times of event and of entry, every value as written and as understood, its corrections."""
+"""One entry with all it holds: times of event and of entry, every value as written and as understood, its
+corrections."""
 
 from __future__ import annotations
 
@@ -77,8 +78,10 @@ class EntryPage(View):
         at, entered = self.fertui.local(entry.at), self.fertui.local(entry.entered)
         return [
             ("happened", f"{at:%a %-d %b %Y}, the whole day" if entry.whole_day else f"{at:%a %-d %b %Y %H:%M}"),
-            ("written down", f"{entered:%a %-d %b %Y %H:%M} by {entry.by}"), ("point", entry.point.replace("_", " ")), ("zone", entry.zone),
-            ("method", entry.method.replace("_", " ")), ("instrument", entry.instrument), ("note", entry.note), ("doubtful", entry.doubtful),
+            ("written down", f"{entered:%a %-d %b %Y %H:%M} by {entry.by}"), ("point", entry.point.replace("_",
+            " ")), ("zone", entry.zone),
+            ("method", entry.method.replace("_", " ")), ("instrument", entry.instrument), ("note", entry.note),
+            ("doubtful", entry.doubtful),
             ("not answered", getattr(entry, "flags", "").replace("_", " ")),
             ("supersedes", f"{entry.supersedes}: {entry.why}" if entry.supersedes is not None else ""),
         ]  # fmt: skip

@@ -13,7 +13,8 @@ MARKS = {"act": "!", "watch": "▸", "good": "✓", "note": "·", "faint": "·"}
 """The sign that goes with each ink of a state, so that the state is never colour alone."""
 
 POINT_NAMES = {
-    "source": "water", "feed": "drip", "tank": "tank", "root_zone": "root zone", "drain": "drain", "drain_store": "drain store",
+    "source": "water", "feed": "drip", "tank": "tank", "root_zone": "root zone", "drain": "drain",
+    "drain_store": "drain store",
 }  # fmt: skip
 """Points as the screen names them."""
 

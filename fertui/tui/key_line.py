@@ -7,8 +7,10 @@ from collections.abc import Sequence
 from fertui.tui.ink import Line, Span, cells, fit, line, literal, width_of
 from fertui.tui.page import Page
 
-SHORT = {"question_mark": "?", "escape": "Esc", "enter": "Enter", "slash": "/", "plus": "+", "asterisk": "*", "up": "Up", "down": "Down", "left": "Left",
-         "right": "Right", "tab": "Tab", "pagedown": "PgDn", "backspace": "Bksp", "space": "Space", "delete": "Del"}  # fmt: skip
+SHORT = {"question_mark": "?", "escape": "Esc", "enter": "Enter", "slash": "/", "plus": "+", "asterisk": "*",
+"up": "Up", "down": "Down", "left": "Left",
+         "right": "Right", "tab": "Tab", "pagedown": "PgDn", "backspace": "Bksp", "space": "Space",
+         "delete": "Del"}  # fmt: skip
 
 
 def key_name(key: str) -> str:

@@ -125,7 +125,8 @@ def weighed(each: Weighing) -> str:
 def _doses(plan: Plan, local: Local, width: int) -> list[Line]:
     rows = []
     for step in plan.steps:
-        words = f"{local(step.at):%a %-d %b}  {step.kg:g} kg {step.salt} ({step.formula}) into {step.target.removeprefix('tank:')}"
+        where = step.target.removeprefix("tank:")
+        words = f"{local(step.at):%a %-d %b}  {step.kg:g} kg {step.salt} ({step.formula}) into {where}"
         rows.append(line(Span(" weigh ", "accent"), Span(cut(literal(words), width - 8), "strong")))
     return rows
 
@@ -142,7 +143,10 @@ def _acid(plan: Plan, held: bool, local: Local) -> list[Line]:
         ]
     rows = []
     for split in plan.acid:
-        words = f"{local(split.at):%a %-d %b}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, wait {split.wait_min:g} min, retest for pH {number(split.retest_ph)}, stop at {number(split.stop_ph)}"
+        words = (
+            f"{local(split.at):%a %-d %b}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, wait "
+            f"{split.wait_min:g} min, retest for pH {number(split.retest_ph)}, stop at {number(split.stop_ph)}"
+        )
         rows.append(line(Span(" acid  ", "act"), Span(literal(words), "strong")))
     return rows
 
@@ -152,7 +156,8 @@ def _renewal(plan: Plan, width: int) -> list[Line]:
         return []
     rows = _marked(
         "watch",
-        f"renew {plan.renewal.litres:.0f} L: {amount(plan.renewal.kg_n)} kg N and {amount(plan.renewal.kg_p)} kg P go; the year comes to {amount(plan.renewal.year_kg_n)} kg N",
+        f"renew {plan.renewal.litres:.0f} L: {amount(plan.renewal.kg_n)} kg N and {amount(plan.renewal.kg_p)} kg "
+        f"P go; the year comes to {amount(plan.renewal.year_kg_n)} kg N",
         width,
     )
     return rows + [row for option in plan.renewal.options for row in _texts(option.name, [option.text], width)]

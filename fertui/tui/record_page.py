@@ -20,7 +20,8 @@ class RecordPage(View):
 
     TITLE = "Record"
     HELP = (
-        "Each line is an analysis: what the forecast issued right after the one before had said, what the laboratory found, and what "
+        "Each line is an analysis: what the forecast issued right after the one before had said, what the "
+        "laboratory found, and what "
         "'no change' would have said. ✓ means found within the 80 % range; about eight in ten should be. "
         "i changes between the inputs as logged later and as they were planned when the forecast was made."
     )

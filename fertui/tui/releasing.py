@@ -1,4 +1,5 @@
-"""Plans and sheets with acid are released once their cautions were read and the strength on the label is the right one."""
+"""Plans and sheets with acid are released once their cautions were read and the strength on the label is the right
+one."""
 
 from __future__ import annotations
 

@@ -33,7 +33,8 @@ class Settings:
 
 
 ALLOWED: Mapping[str, tuple[type, tuple[Any, ...]]] = {
-    "theme": (str, NAMES), "unit": (str, UNITS), "ascii": (bool, ()), "mouse": (bool, ()), "initials_minutes": (int, ()),
+    "theme": (str, NAMES), "unit": (str, UNITS), "ascii": (bool, ()), "mouse": (bool, ()), "initials_minutes": (int,
+    ()),
     "keys": (dict, ()),
 }  # fmt: skip
 

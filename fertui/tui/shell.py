@@ -189,7 +189,8 @@ class Shell(App[int], inherit_bindings=False):
     # keys
 
     async def on_event(self, event: events.Event) -> None:
-        """Keys are taken one after the other, each done with before the next: what is typed ahead lands where it is meant."""
+        """Keys are taken one after the other, each done with before the next: what is typed ahead lands where it
+        is meant."""
         if isinstance(event, events.Key | events.Paste) and not event.is_forwarded:
             self._held.append(event)
             await self.release_keys()

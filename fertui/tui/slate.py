@@ -22,7 +22,8 @@ Cell = tuple[str, Style]
 
 
 class Slate:
-    """The terminal's screen as far as it is known. ``thin`` takes what the toolkit sends and returns what must travel."""
+    """The terminal's screen as far as it is known. ``thin`` takes what the toolkit sends and returns what must
+    travel."""
 
     def __init__(self, columns: int, rows: int) -> None:
         self.size = (columns, rows)

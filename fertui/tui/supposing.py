@@ -20,7 +20,8 @@ class WhatIf:
 
 
 WHAT_IFS = {
-    "light": WhatIf("light_j_per_cm2_d", "light", "J/cm2 a day"), "crop": WhatIf("crop_water_l_per_m2_d", "crop water", "L/m2 a day"),
+    "light": WhatIf("light_j_per_cm2_d", "light", "J/cm2 a day"), "crop": WhatIf("crop_water_l_per_m2_d",
+    "crop water", "L/m2 a day"),
     "source": WhatIf("source", "source water", ""), "feed": WhatIf("feed_ec", "feed EC", "mS/cm"),
     "bleed": WhatIf("bleed_l_per_d", "bleed", "L a day"), "recipe": WhatIf("recipe", "recipe", "mmol/L"),
 }  # fmt: skip

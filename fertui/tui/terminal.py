@@ -14,7 +14,8 @@ FLOOR = (60, 20)
 
 @dataclass(frozen=True, slots=True)
 class Terminal:
-    """What can be shown: ``ascii`` when nothing beyond ASCII, ``colours`` 0, 16 or 256 and more, ``remote`` over SSH."""
+    """What can be shown: ``ascii`` when nothing beyond ASCII, ``colours`` 0, 16 or 256 and more, ``remote`` over
+    SSH."""
 
     ascii: bool = False
     colours: int = 256

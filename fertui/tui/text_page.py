@@ -15,7 +15,8 @@ from fertui.tui.view import SCROLLING, View
 
 
 class TextPage(View):
-    """Lines as they are: too long ones are wrapped. ``go_on``: what Enter does, where the page asks to be read first."""
+    """Lines as they are: too long ones are wrapped. ``go_on``: what Enter does, where the page asks to be read
+    first."""
 
     TITLE = "Text"
     HELP = "A page of text. o writes it to a file, y copies it to the clipboard of your terminal, Esc goes back."

@@ -26,7 +26,8 @@ LOOK_FOR_NEWS_EVERY = 2.0
 
 
 class Working(Shell):
-    """The model's desk runs what takes time; the clerk's desk what must not wait for it: logging, last numbers, news."""
+    """The model's desk runs what takes time; the clerk's desk what must not wait for it: logging, last numbers,
+    news."""
 
     def __init__(
         self,

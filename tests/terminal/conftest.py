@@ -1,4 +1,5 @@
-"""A demo site of a fixed day, and a terminal on it with results made by hand (so that screens are the same every day)."""
+"""A demo site of a fixed day, and a terminal on it with results made by hand (so that screens are the same every
+day)."""
 
 from __future__ import annotations
 

@@ -57,7 +57,10 @@ class HandMade(Bench):
             gauge("NH4", ions["NH4"].mmol_l, "mmol/L", [0.2] * 29, "not in 14 days"),
             gauge("EC", state.ec, "mS/cm", [3.2] * 29, ""),
         )
-        N = lambda *a: SimpleNamespace(**dict(zip(("code", "severity", "text", "key"), a)))
+
+        def N(*a):
+            return SimpleNamespace(**dict(zip(("code", "severity", "text", "key"), a, strict=False)))
+
         watch = (
             (
                 N(
@@ -114,35 +117,40 @@ class HandMade(Bench):
             loop, "root_zone",
             (series("K share", "%", 25, -0.45, 2.5, (18.0, 28.0)), series("Ca share", "%", 50, 0.35, 2.5, (45.0, 62.0)),
              series("Na", "mmol/L", 4, 0.08, 0.5, (None, 8.0)), series("EC", "mS/cm", 3.4, 0.005, 0.2, None)),
-            (Mark(times[9], "analysis", "K 7.1 Ca 9.0 Mg 4.1", 12), Mark(times[12], "batch", "tank calcium", 15), Mark(times[20], "bleed", "litres 3000", 21)),
+            (Mark(times[9], "analysis", "K 7.1 Ca 9.0 Mg 4.1", 12), Mark(times[12], "batch", "tank calcium", 15),
+            Mark(times[20], "bleed", "litres 3000", 21)),
         )  # fmt: skip
 
     def balance(self, loop=None, start=None, end=None, known=None):
-        row = lambda **v: SimpleNamespace(
-            **{
-                **dict.fromkeys(
-                    (
-                        "start_mmol",
-                        "make_up",
-                        "stock",
-                        "dose",
-                        "acid",
-                        "feed",
-                        "uptake",
-                        "exchange",
-                        "bleed",
-                        "drain",
-                        "unexplained",
-                        "end_mmol",
+        def row(**v):
+            return SimpleNamespace(
+                **{
+                    **dict.fromkeys(
+                        (
+                            "start_mmol",
+                            "make_up",
+                            "stock",
+                            "dose",
+                            "acid",
+                            "feed",
+                            "uptake",
+                            "exchange",
+                            "bleed",
+                            "drain",
+                            "unexplained",
+                            "end_mmol",
+                        ),
+                        0.0,
                     ),
-                    0.0,
-                ),
-                **v,
-            }
-        )
+                    **v,
+                }
+            )
+
         ions = {
-            "K": row(start_mmol=61000.0, make_up=5000.0, stock=348000.0, uptake=-377000.0, exchange=4200.0, bleed=-1200.0, unexplained=-300.0, end_mmol=39700.0),
-            "Ca": row(start_mmol=81000.0, make_up=66000.0, stock=190000.0, uptake=-240000.0, exchange=-2100.0, bleed=-2300.0, unexplained=900.0, end_mmol=93500.0),
+            "K": row(start_mmol=61000.0, make_up=5000.0, stock=348000.0, uptake=-377000.0, exchange=4200.0,
+            bleed=-1200.0, unexplained=-300.0, end_mmol=39700.0),
+            "Ca": row(start_mmol=81000.0, make_up=66000.0, stock=190000.0, uptake=-240000.0, exchange=-2100.0,
+            bleed=-2300.0, unexplained=900.0, end_mmol=93500.0),
             "Na": row(start_mmol=31000.0, make_up=41000.0, uptake=-22000.0, bleed=-800.0, end_mmol=49200.0),
         }  # fmt: skip
         return SimpleNamespace(start=start, end=end, ions=ions)
@@ -150,26 +158,36 @@ class HandMade(Bench):
     def forecast(self, loop=None, days=14, at=None, known=None, scenario=None):
         where = "root_zone" if loop != "lettuce" else "tank"
         lift = 0.0 if scenario is None else 0.08
-        day = lambda d: SimpleNamespace(
-            at=at + timedelta(days=d),
-            points={where: point(4.6 - (0.12 - lift) * d, 11.2 + 0.05 * d, 5.0, 6.2 + 0.1 * d)},
-        )
-        D = lambda v, lo, hi: SimpleNamespace(value=v, low=lo, high=hi)
-        L = lambda what, days, p, since=None: SimpleNamespace(
-            point=where, what=what, at=None, days=days, since=since, probability=p
-        )
+
+        def day(d):
+            return SimpleNamespace(
+                at=at + timedelta(days=d),
+                points={where: point(4.6 - (0.12 - lift) * d, 11.2 + 0.05 * d, 5.0, 6.2 + 0.1 * d)},
+            )
+
+        def D(v, lo, hi):
+            return SimpleNamespace(value=v, low=lo, high=hi)
+
+        def L(what, days, p, since=None):
+            return SimpleNamespace(point=where, what=what, at=None, days=days, since=since, probability=p)
+
         leaves = (
             L("K share", D(0.0, 0.0, 0.0), 1.0, at - timedelta(days=4)), L("Ca share", D(4.0, 2.0, 9.0), 0.84),
-            L("Mg share", D(None, None, None), 0.03), L("Na", D(None, 8.0, None), 0.22), L("EC", D(None, None, None), 0.0),
+            L("Mg share", D(None, None, None), 0.03), L("Na", D(None, 8.0, None), 0.22), L("EC", D(None, None, None),
+            0.0),
         )  # fmt: skip
         return SimpleNamespace(at=at, days=tuple(day(d) for d in range(days + 1)), leaves_band=leaves, inputs="routine",
-                               assumed=("light as in the last 7 days, 1413 J/cm2 a day", "crop water 3.1 (2.8-3.4) L/m2 a day"))  # fmt: skip
+                               assumed=("light as in the last 7 days, 1413 J/cm2 a day",
+                               "crop water 3.1 (2.8-3.4) L/m2 a day"))  # fmt: skip
 
     def hindcast(self, loop=None, at=None, known=None, inputs="logged"):
-        row = lambda d, ion, found, said, low, high, none: SimpleNamespace(
-            at=at - timedelta(days=d), point="root_zone", ion=ion, measured_share_pct=found, predicted_share_pct=said, low_share_pct=low,
-            high_share_pct=high, no_change_share_pct=none, cold_start=d > 40, doubtful=False,
-        )  # fmt: skip
+        def row(d, ion, found, said, low, high, none):
+            return SimpleNamespace(
+                    at=at - timedelta(days=d), point="root_zone", ion=ion, measured_share_pct=found,
+                    predicted_share_pct=said, low_share_pct=low,
+                    high_share_pct=high, no_change_share_pct=none, cold_start=d > 40, doubtful=False,
+                )  # fmt: skip
+
         rows = tuple(
             row(d, ion, f, f + 0.8, f - 1.5, f + 2.2, f + 3)
             for d in (44, 30, 16)
@@ -179,7 +197,8 @@ class HandMade(Bench):
             inputs=inputs,
             rows=rows,
             summary=SimpleNamespace(
-                words="3 forecasts judged: error of shares 0.8 points, 'no change' 3.0; 80 % of what was found lay in the 80 % range."
+                words="3 forecasts judged: error of shares 0.8 points, 'no change' 3.0; "
+                "80 % of what was found lay in the 80 % range."
             ),
         )
 
@@ -188,8 +207,13 @@ class HandMade(Bench):
 
         slabs = loop != "lettuce"
         where = "root_zone" if slabs else "tank"
-        outlook = lambda k, ca: v.Outlook({where: point(k, ca)})
-        caution = lambda s, t: SimpleNamespace(code="c", severity=s, text=t, source="invented")
+
+        def outlook(k, ca):
+            return v.Outlook({where: point(k, ca)})
+
+        def caution(s, t):
+            return SimpleNamespace(code="c", severity=s, text=t, source="invented")
+
         recipe = v.RecipeChange(
             {"K": 9.4, "Ca": 5.1, "Mg": 2.2, "NH4": 0.6, "NO3": 15.9, "SO4": 3.4, "H2PO4": 1.2},
             {"K": 18.0, "Ca": -9.0, "Mg": -8.0},
@@ -203,12 +227,15 @@ class HandMade(Bench):
         )
         acid = (v.AcidStep(at, "nitric acid 38", 38.0, 1.23, 0.42, "tank:tank", 30.0, 6.2, 5.5),)
         return v.Plan(
-            True, None, loop, "drain-blend" if slabs else "shared-tank", at, days, where, recipe if slabs else None, () if slabs else steps,
+            True, None, loop, "drain-blend" if slabs else "shared-tank", at, days, where, recipe if slabs else None,
+            () if slabs else steps,
             () if slabs else acid, None, None, outlook(4.6, 11.2), outlook(8.0, 10.0), outlook(3.9, 11.9),
-            (v.Binding("EC", 2.6, "mS/cm", 2.6, "own setting"),), ("K 12 % below 18 %: one step of +25 % K, then look again.",),
+            (v.Binding("EC", 2.6, "mS/cm", 2.6, "own setting"),),
+            ("K 12 % below 18 %: one step of +25 % K, then look again.",),
             (caution("note", "The safety data sheet, site procedure, local code and licensed practice come first."),
              caution("watch", "Potassium nitrate is an oxidiser: keep it from combustibles.")),
-            ("KNO3 and not K2SO4: SO4 is above its target already.",), ("0.65 kg KNO3 / 0.1011 kg/mol = 6.43 mol K", "6.43 mol / 2000 L = 3.2 mmol/L"),
+            ("KNO3 and not K2SO4: SO4 is above its target already.",), ("0.65 kg KNO3 / 0.1011 kg/mol = 6.43 mol K",
+            "6.43 mol / 2000 L = 3.2 mmol/L"),
         )  # fmt: skip
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import fcntl
 import os
 import pty
@@ -58,10 +59,8 @@ class PseudoTerminal:
         if self.exit_code is None:
             os.kill(self.pid, signal.SIGKILL)
             os.waitpid(self.pid, 0)
-        try:
+        with contextlib.suppress(OSError):
             os.close(self.line)
-        except OSError:
-            pass
 
     def read(self, timeout: float) -> bool:
         """Take in what the program sends within ``timeout`` seconds; False when nothing came or it has ended."""

@@ -84,7 +84,8 @@ def test_a_reading_of_seven_numbers(site: Path, counting: Counted) -> None:
 
 
 ANALYSIS = {
-    "K": "7.8", "Ca": "5.6", "Mg": "2.5", "Na": "1.6", "NH4": "0.4", "NO3": "14.7", "Cl": "1.4", "SO4": "3.7", "H2PO4": "1.1",
+    "K": "7.8", "Ca": "5.6", "Mg": "2.5", "Na": "1.6", "NH4": "0.4", "NO3": "14.7", "Cl": "1.4", "SO4": "3.7",
+    "H2PO4": "1.1",
     "HCO3": "0.4", "Fe": "25", "Mn": "10",
 }  # fmt: skip
 """An invented analysis whose charges close."""

@@ -1,4 +1,5 @@
-"""Every binding has a name, a help line and a key that gets through; every one can be pressed; settings can move them."""
+"""Every binding has a name, a help line and a key that gets through; every one can be pressed; settings can move
+them."""
 
 from __future__ import annotations
 

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
-from conftest import HERE, AT
+from conftest import AT, HERE
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from pseudo_terminal import KEYS, PseudoTerminal

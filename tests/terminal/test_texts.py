@@ -16,7 +16,8 @@ from fertui.workbench import open_site
 
 NASTY = {
     "markup": "[red]not red[/red] [@click=app.bell]x[/]", "wide": "日本語のメモ 温室",
-    "combining": "e\u0301 a\u0300\u0316 z\u0335", "bidi": "abc \u202eevil\u202c", "long": "x" * 10_000, "lines": "one\ntwo\r\nthree",
+    "combining": "e\u0301 a\u0300\u0316 z\u0335", "bidi": "abc \u202eevil\u202c", "long": "x" * 10_000,
+    "lines": "one\ntwo\r\nthree",
     "emoji": "👩‍🌾 ok ☀️",
 }  # fmt: skip
 
@@ -61,7 +62,8 @@ def test_a_change_of_style_reaches_the_style_wanted(first: list[str], second: li
 
 
 DRAWING = st.lists(
-    st.tuples(st.integers(1, 6), st.integers(1, 20), st.sampled_from(["", "31", "1;32", "44", "7"]), st.text("ab é日", max_size=12)),
+    st.tuples(st.integers(1, 6), st.integers(1, 20), st.sampled_from(["", "31", "1;32", "44", "7"]), st.text("ab é日",
+    max_size=12)),
     min_size=1, max_size=12,
 )  # fmt: skip
 

@@ -17,8 +17,10 @@ GOLDEN = HERE / "golden"
 SCREENS = {
     "loops": (), "today": ("v",), "today lettuce": ("v", "n"), "today in mg": ("v", "u", "u"), "analysis": ("2",),
     "drift": ("3", "left", "left"), "balance": ("4", "down", "right"), "forecast": ("5",), "record": ("5", "g"),
-    "plan recipe": ("6",), "plan doses": ("n", "6"), "logbook": ("7", "down"), "entry": ("7", "enter"), "supplies": ("8", "down"),
-    "site": ("9", "down"), "help": ("2", "?"), "actions": ("x",), "reading": ("r",), "analysis form": ("a",), "entries": ("e",),
+    "plan recipe": ("6",), "plan doses": ("n", "6"), "logbook": ("7", "down"), "entry": ("7", "enter"),
+    "supplies": ("8", "down"),
+    "site": ("9", "down"), "help": ("2", "?"), "actions": ("x",), "reading": ("r",), "analysis form": ("a",),
+    "entries": ("e",),
 }  # fmt: skip
 """Screens by name with the keys that lead there."""
 

@@ -67,7 +67,8 @@ def spec_of(entry: Entry) -> Spec:
     about = tuple(Asked(name, name, words=True, default=getattr(entry, name)) for name in ABOUT)
     when = Asked("at", "when", words=True)
     help_text = (
-        "Change what was wrong and save. The old entry stays, crossed out, with your initials, the time and the reason. "
+        "Change what was wrong and save. The old entry stays, crossed out, with your initials, the time and the "
+        "reason. "
         "An emptied field takes the value out. Leave 'when' empty to keep the time of the event."
     )
     return Spec(

@@ -91,7 +91,8 @@ def reading(site: Site, loop: Loop, unit: str) -> Spec:
 ROUND_HELP = (
     "The morning round in its order. Type a number and press Enter; the last value stands beside each field. "
     "Empty means not measured. + saves from any field, * takes the last value again, Tab goes to the next group. "
-    "Both . and , are decimal marks; a unit may follow the number. Litres without a time cover the time since the last entry."
+    "Both . and , are decimal marks; a unit may follow the number. Litres without a time cover the time since the "
+    "last entry."
 )
 
 
@@ -126,7 +127,8 @@ def analysis(site: Site, loop: Loop, unit: str) -> Spec:
         Asked("at", "sampled", words=True),
     )
     rest = (
-        Asked("EC", "EC", "mS/cm"), Asked("pH", "pH"), Asked("lab", "lab", words=True), Asked("sample", "number", words=True),
+        Asked("EC", "EC", "mS/cm"), Asked("pH", "pH"), Asked("lab", "lab", words=True), Asked("sample", "number",
+        words=True),
         Asked("method", "method", choices=("", *METHODS)), Asked("doubtful", "doubtful", words=True), NOTE,
     )  # fmt: skip
     groups = (
@@ -139,10 +141,14 @@ def analysis(site: Site, loop: Loop, unit: str) -> Spec:
 
 
 ANALYSIS_HELP = (
-    "The laboratory's report. Give when the sample was taken, not when the report came: the estimate uses it at its own time. "
-    "The unit beside a field is what a bare number is taken in; u changes it for the whole form before anything is typed, "
-    "and a number may carry its own (120 mg/L). In mg/L nitrogen, phosphorus and sulphur are meant as elements, as the field says. "
-    "<0.1 means below what the laboratory can see. Charge balance and EC check show below and are looked at before saving."
+    "The laboratory's report. Give when the sample was taken, not when the report came: the estimate uses it at "
+    "its own time. "
+    "The unit beside a field is what a bare number is taken in; u changes it for the whole form before anything "
+    "is typed, "
+    "and a number may carry its own (120 mg/L). In mg/L nitrogen, phosphorus and sulphur are meant as elements, "
+    "as the field says. "
+    "<0.1 means below what the laboratory can see. Charge balance and EC check show below and are looked at "
+    "before saving."
 )
 
 
@@ -159,8 +165,12 @@ def water(site: Site, loop: Loop, unit: str) -> Spec:
         Asked("drain_meter", "drain meter", "L"), Asked("meter", "meter was", choices=("", "replaced", "rolled over")),
     )  # fmt: skip
     return Spec(
-        "Water", (Part("water"),), (Group("litres of the whole loop", fields), Group("or meter positions", positions), Group("", (TIME, NOTE))),
-        help="Litres since the last entry, of the whole loop, never per m2; or what the meters show. A date without a time means that whole day.",
+        "Water", (Part("water"),), (Group("litres of the whole loop", fields), Group("or meter positions",
+        positions), Group("", (TIME, NOTE))),
+        help=(
+            "Litres since the last entry, of the whole loop, never per m2; or what the meters show. "
+            "A date without a time means that whole day."
+        ),
     )  # fmt: skip
 
 
@@ -174,7 +184,10 @@ def dose(site: Site, loop: Loop, unit: str) -> Spec:
         "Dose done",
         (Part("dose"),),
         (Group("dose", fields), Group("", (TIME, NOTE))),
-        help="What was weighed in by hand. A planned dose is better marked done in the plan (6): it keeps plan and dose together.",
+        help=(
+            "What was weighed in by hand. "
+            "A planned dose is better marked done in the plan (6): it keeps plan and dose together."
+        ),
     )
 
 
@@ -182,7 +195,8 @@ def batch(site: Site, loop: Loop, unit: str) -> Spec:
     """A stock tank mixed."""
     about = (
         Asked("tank", "tank", choices=tanks_of(site, loop), default=(tanks_of(site, loop) or ("",))[0], required=True),
-        Asked("litres", "mixed to", "L", required=True), Asked("left", "old solution left", "L"), Asked("recipe", "recipe", words=True),
+        Asked("litres", "mixed to", "L", required=True), Asked("left", "old solution left", "L"), Asked("recipe",
+        "recipe", words=True),
     )  # fmt: skip
     salts = tuple(Asked(name, name, "kg") for name in salts_of(site))
     return Spec(
@@ -219,7 +233,10 @@ def acid(site: Site, loop: Loop, unit: str) -> Spec:
         "Acid or lye used",
         (Part("acid"),),
         (Group("acid", fields), Group("", (TIME, NOTE))),
-        help="What was used. Logging always works; it is marked if the cautions were not acknowledged. Safety data sheet, site procedure, local code and licensed practice come first.",
+        help=(
+            "What was used. Logging always works; it is marked if the cautions were not acknowledged. "
+            "Safety data sheet, site procedure, local code and licensed practice come first."
+        ),
     )
 
 
@@ -235,7 +252,10 @@ def bleed(site: Site, loop: Loop, unit: str) -> Spec:
         "Bleed",
         (Part("bleed"),),
         (Group("discharged", fields), Group("", (TIME, NOTE))),
-        help="Solution let go, with the reason: renewal, sodium, filter back-flush, leak, disinfection. The report counts its nitrogen and phosphorus.",
+        help=(
+            "Solution let go, with the reason: renewal, sodium, filter back-flush, leak, disinfection. "
+            "The report counts its nitrogen and phosphorus."
+        ),
     )
 
 
@@ -254,8 +274,10 @@ def level(site: Site, loop: Loop, unit: str) -> Spec:
 def crop(site: Site, loop: Loop, unit: str) -> Spec:
     """A new start or a stage."""
     fields = (
-        Asked("event", "what happened", choices=("", "planted", "replanted", "new medium", "emptied", "refilled", "removed")),
-        Asked("stage", "stage reached", words=True), Asked("crop", "crop, if new", words=True), Asked("medium", "medium, if new", words=True),
+        Asked("event", "what happened", choices=("", "planted", "replanted", "new medium", "emptied", "refilled",
+        "removed")),
+        Asked("stage", "stage reached", words=True), Asked("crop", "crop, if new", words=True), Asked("medium",
+        "medium, if new", words=True),
     )  # fmt: skip
     return Spec(
         "Crop",
@@ -274,8 +296,10 @@ def calibration(site: Site, loop: Loop, unit: str) -> Spec:
         else Asked("instrument", "instrument", words=True)
     )
     fields = (
-        which, Asked("quantity", "quantity", choices=("EC", "pH", "NO3", "K", "Ca", "Na", "kg"), default="EC", required=True),
-        Asked("standard", "standard", required=True), Asked("reading", "it showed", required=True), Asked("temperature", "temperature", "C"),
+        which, Asked("quantity", "quantity", choices=("EC", "pH", "NO3", "K", "Ca", "Na", "kg"), default="EC",
+        required=True),
+        Asked("standard", "standard", required=True), Asked("reading", "it showed", required=True),
+        Asked("temperature", "temperature", "C"),
         Asked("result", "result", choices=("", "good", "adjusted", "off", "replaced")),
     )  # fmt: skip
     return Spec(
@@ -291,7 +315,8 @@ def sample(site: Site, loop: Loop, unit: str) -> Spec:
     fields = (
         Asked("point", "point", choices=points_of(loop), default=points_of(loop)[1]),
         Asked("status", "status", choices=("sent", "awaited", "arrived", "lost"), default="sent", required=True),
-        Asked("lab", "lab", words=True), Asked("sample", "number", words=True), Asked("expected", "report expected", words=True),
+        Asked("lab", "lab", words=True), Asked("sample", "number", words=True), Asked("expected", "report expected",
+        words=True),
         Asked("method", "method", choices=("", *METHODS)),
     )  # fmt: skip
     return Spec(
@@ -315,7 +340,8 @@ def note(site: Site, loop: Loop, unit: str) -> Spec:
 def setpoint(site: Site, loop: Loop, unit: str) -> Spec:
     """Set points."""
     fields = (
-        Asked("EC", "EC", "mS/cm"), Asked("pH", "pH"), Asked("drain_share", "drain share", ""), Asked("premix_ec", "pre-mix EC", "mS/cm"),
+        Asked("EC", "EC", "mS/cm"), Asked("pH", "pH"), Asked("drain_share", "drain share", ""), Asked("premix_ec",
+        "pre-mix EC", "mS/cm"),
     )  # fmt: skip
     light = (
         Asked("EC_dull", "EC, dull day", "mS/cm"), Asked("light_dull", "dull up to", "J/cm2"),
@@ -365,6 +391,7 @@ def disinfection(site: Site, loop: Loop, unit: str) -> Spec:
 
 FORMS: Mapping[str, Callable[[Site, Loop, str], Spec]] = {
     each.__name__: each
-    for each in (reading, analysis, water, dose, batch, stock, acid, bleed, level, crop, calibration, sample, note, setpoint, recipe, disinfection)
+    for each in (reading, analysis, water, dose, batch, stock, acid, bleed, level, crop, calibration, sample, note,
+    setpoint, recipe, disinfection)
 }  # fmt: skip
 """Forms by kind. A plan comes from the Plan view and a changed site from the Site view, not from a form."""

@@ -30,9 +30,11 @@ class AnalysisView(View):
 
     TITLE = "Analysis"
     HELP = (
-        "The last analysis of the managed point beside the feed's. 'normalised' is the value brought to the reference EC, "
+        "The last analysis of the managed point beside the feed's. 'normalised' is the value brought to the "
+        "reference EC, "
         "so that a strong or weak solution is compared with the target fairly; Na, NH4 and HCO3 are never scaled. "
-        "'off' is how far the normalised value is from the target. Below: shares of K, Ca and Mg, what the last change of recipe "
+        "'off' is how far the normalised value is from the target. Below: shares of K, Ca and Mg, what the last "
+        "change of recipe "
         "did, micronutrients, and whether the report holds together (charge balance, EC against the ions). "
         "a logs a new report, p shows the recipe that follows from where the loop is now."
     )

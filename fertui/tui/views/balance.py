@@ -34,14 +34,18 @@ CAUSES = (
 HEADS = {"start_mmol": "start", "make_up": "water", "unexplained": "unexpl.", "exchange": "medium", "end_mmol": "end"}
 """Short heads of the columns; the others are their own."""
 WORDS = {
-    "start_mmol": "in the water of the loop at the start", "make_up": "brought by make-up water", "stock": "brought by stock solution",
-    "dose": "weighed in by hand", "acid": "brought by acid", "feed": "brought by the feed", "uptake": "taken up by the crop",
+    "start_mmol": "in the water of the loop at the start", "make_up": "brought by make-up water",
+    "stock": "brought by stock solution",
+    "dose": "weighed in by hand", "acid": "brought by acid", "feed": "brought by the feed",
+    "uptake": "taken up by the crop",
     "exchange": "released (+) or held (-) by the medium", "bleed": "lost with bleeds", "drain": "lost with drain",
     "unexplained": "not explained by anything logged", "end_mmol": "in the water of the loop at the end",
 }  # fmt: skip
 KINDS_BEHIND = {
-    "start_mmol": ("analysis",), "make_up": ("water",), "stock": ("stock", "batch", "recipe"), "dose": ("dose",), "acid": ("acid",),
-    "feed": ("analysis", "recipe", "water"), "uptake": ("water", "analysis"), "exchange": ("analysis", "crop"), "bleed": ("bleed",),
+    "start_mmol": ("analysis",), "make_up": ("water",), "stock": ("stock", "batch", "recipe"), "dose": ("dose",),
+    "acid": ("acid",),
+    "feed": ("analysis", "recipe", "water"), "uptake": ("water", "analysis"), "exchange": ("analysis", "crop"),
+    "bleed": ("bleed",),
     "drain": ("water",), "unexplained": ("analysis",), "end_mmol": ("analysis", "reading"),
 }  # fmt: skip
 """Kinds of entry a column comes from: what Enter shows."""
@@ -54,10 +58,14 @@ class BalanceView(View):
 
     TITLE = "Balance"
     HELP = (
-        "Where every ion came from and went to in the period, in the water of the whole loop (what the medium holds is not counted). "
-        "Gains are positive, losses negative; start and all flows make the end. The arrows choose a cell, g shows its ion "
-        "in the bars below, Enter shows the entries the cell comes from, z changes the period, u changes mol, eq and g. "
-        "'unexpl.' is what the last analysis found beyond everything logged: unlogged water or stock, a meter that is off, a wrong volume."
+        "Where every ion came from and went to in the period, in the water of the whole loop (what the medium "
+        "holds is not counted). "
+        "Gains are positive, losses negative; start and all flows make the end. The arrows choose a cell, g shows "
+        "its ion "
+        "in the bars below, Enter shows the entries the cell comes from, z changes the period, u changes mol, eq "
+        "and g. "
+        "'unexpl.' is what the last analysis found beyond everything logged: unlogged water or stock, a meter "
+        "that is off, a wrong volume."
     )
     BINDINGS: ClassVar[list[Any]] = [
         Binding("up", "move(0,-1)", "ion above", show=False, id="balance.up", tooltip="The ion above."),

@@ -30,8 +30,10 @@ class DriftView(View):
     HELP = (
         "One quantity over time. The dots are the estimate, the shade its 80 % range, the diamonds what was measured, "
         "the dashed lines the band. Letters under the chart are what was done: A analysis, D dose, B batch, R recipe, "
-        "S set point, L bleed (let go), H acid, C crop, X disinfection, * several; what is done every other day or more is left out. "
-        "Tab chooses the quantity, Left and Right move the cursor by a day, Up and Down by a week, Home and End to its ends, z changes the period. "
+        "S set point, L bleed (let go), H acid, C crop, X disinfection, * several; what is done every other day "
+        "or more is left out. "
+        "Tab chooses the quantity, Left and Right move the cursor by a day, Up and Down by a week, Home and End "
+        "to its ends, z changes the period. "
         "The line under the chart reads the values where the cursor stands."
     )
     BINDINGS: ClassVar[list[Any]] = [
@@ -78,9 +80,11 @@ class DriftView(View):
         curve = _curve(series, drift, self.fertui.moment, self.period)
         start, end = curve.span
         fraction = max(0.0, min(1.0, (moment - start) / (end - start)))
+        where, band = point_name(drift.point), band_words(series.band) or "none"
+        about = f" in the {where}, {series.unit or 'units'}  band {band}  last {self.period} days"
         chart = [
             _names(drift, self.chosen, left_width),
-            line(Span(f" {series.what}", "strong"), Span(f" in the {point_name(drift.point)}, {series.unit or 'units'}  band {band_words(series.band) or 'none'}  last {self.period} days", "faint")),
+            line(Span(f" {series.what}", "strong"), Span(about, "faint")),
             *draw_chart(curve, fraction, left_width, height),
             _reading(series, drift, moment, left_width),
         ]  # fmt: skip
@@ -134,7 +138,8 @@ def in_unit(series: Series, unit: str) -> Series:
         None if series.band[0] is None else to(series.band[0]), None if series.band[1] is None else to(series.band[1])
     )  # fmt: skip
     values = tuple(Estimated(to(v.value), to(v.low), to(v.high), band) for v in series.values)
-    return replace(series, unit=shown(series.what, 1.0, unit)[1], band=band, values=values, measured=tuple((at, to(v)) for at, v in series.measured))  # fmt: skip
+    return replace(series, unit=shown(series.what, 1.0, unit)[1], band=band, values=values, measured=tuple((at,
+    to(v)) for at, v in series.measured))  # fmt: skip
 
 
 def _curve(series: Series, drift: Drift, now: datetime, days: int) -> Curve:

@@ -27,11 +27,15 @@ class ForecastView(View):
 
     TITLE = "Forecast"
     HELP = (
-        "What the ions of the managed point do in the days ahead if all goes on as logged, or as planned where a plan is entered. "
-        "Every number has its 80 % range. 'leaves' is when a value leaves its band: middle and 80 % range of the forecasts; "
+        "What the ions of the managed point do in the days ahead if all goes on as logged, or as planned where a "
+        "plan is entered. "
+        "Every number has its 80 % range. 'leaves' is when a value leaves its band: middle and 80 % range of the "
+        "forecasts; "
         "the percentage is how likely it is out at any time until the horizon. "
-        "l c s f k o suppose other light, crop water, source water, feed EC, bleed or recipe: then old and new stand side by side, "
-        "and Backspace takes the supposition back. Up and Down choose a row, Enter shows it in the chart, j changes the point. "
+        "l c s f k o suppose other light, crop water, source water, feed EC, bleed or recipe: then old and new "
+        "stand side by side, "
+        "and Backspace takes the supposition back. Up and Down choose a row, Enter shows it in the chart, j "
+        "changes the point. "
         "g shows the record: what past forecasts said and what the laboratory then found, beside 'no change'."
     )
     BINDINGS: ClassVar[list[Any]] = [
@@ -277,7 +281,8 @@ def _row(
     label = f" {each.what} {name}".replace(" share %", " share, %")
     words = in_words(leaving, days)
     return line(
-        col(label, 15, "chosen" if chosen else "strong", right=False), col(_words(left, name), 17), col(_words(right, name), 17),
+        col(label, 15, "chosen" if chosen else "strong", right=False), col(_words(left, name), 17), col(_words(right,
+        name), 17),
         Span(f"  {MARKS[ink]} {words}{likely}", ink if ink != "good" else "plain"),
     )  # fmt: skip
 

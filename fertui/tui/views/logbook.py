@@ -18,7 +18,8 @@ class LogbookView(EntryList, inherit_bindings=False):
 
     TITLE = "Logbook"
     HELP = (
-        f"{EntryList.HELP} f shows one kind only, l one loop or all, i one person, / entries with a text in them, Backspace shows all again. "
+        f"{EntryList.HELP} f shows one kind only, l one loop or all, i one person, / entries with a text in them, "
+        f"Backspace shows all again. "
         "o writes the book as tables (CSV, one file a kind), y keeps a backup of book and site in one file."
     )
     BINDINGS: ClassVar[list[Any]] = [

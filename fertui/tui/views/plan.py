@@ -28,16 +28,21 @@ class PlanView(View):
 
     TITLE = "Plan"
     HELP = (
-        "What brings K : Ca : Mg back without breaking EC, NH4, Na, Cl or solubility limits: the next recipe for a loop fed from stock "
-        "tanks, hand doses for a tank. It advises, you decide. y accepts it: its steps then stand on top, and count only once marked "
+        "What brings K : Ca : Mg back without breaking EC, NH4, Na, Cl or solubility limits: the next recipe for "
+        "a loop fed from stock "
+        "tanks, hand doses for a tank. It advises, you decide. y accepts it: its steps then stand on top, and "
+        "count only once marked "
         "done. Enter marks the chosen step done and asks what was really weighed; v says it was not done. "
-        "l leaves a salt out, h sets the horizon (0: right after mixing), g the number of steps, s the number of salts. "
-        "i shows the arithmetic for a pocket calculator, o the sheet. Steps with acid are held back until k: read the cautions and give "
+        "l leaves a salt out, h sets the horizon (0: right after mixing), g the number of steps, s the number of "
+        "salts. "
+        "i shows the arithmetic for a pocket calculator, o the sheet. Steps with acid are held back until k: read "
+        "the cautions and give "
         "the strength on the label."
     )
     BINDINGS: ClassVar[list[Any]] = [
         Binding("y", "accept", "accept", id="plan.accept", tooltip="Accept the plan: log its steps as intended."),
-        Binding("enter", "done", "done", id="plan.done", tooltip="Mark the chosen step done; asks for the real amount."),
+        Binding("enter", "done", "done", id="plan.done",
+        tooltip="Mark the chosen step done; asks for the real amount."),
         Binding("v", "not_done", "not done", id="plan.not_done", tooltip="The chosen step was not done; asks why."),
         Binding("up", "up", "step above", show=False, id="plan.up", tooltip="The accepted step above."),
         Binding("down", "down", "step below", show=False, id="plan.down", tooltip="The accepted step below."),
@@ -46,7 +51,8 @@ class PlanView(View):
         Binding("s", "salts", "salts", show=False, id="plan.salts", tooltip="At most so many different salts."),
         Binding("g", "steps", "steps", show=False, id="plan.steps", tooltip="At most so many dosing steps."),
         Binding("i", "arithmetic", "sums", id="plan.arithmetic", tooltip="The arithmetic, step by step."),
-        Binding("k", "acknowledge", "cautions", show=False, id="plan.cautions", tooltip="Read the cautions of the acid steps."),
+        Binding("k", "acknowledge", "cautions", show=False, id="plan.cautions",
+        tooltip="Read the cautions of the acid steps."),
         Binding("o", "sheet", "sheet", id="plan.sheet", tooltip="The sheet to weigh and mix from."),
     ]  # fmt: skip
 

@@ -20,7 +20,8 @@ class SiteView(View):
 
     TITLE = "Site"
     HELP = (
-        "Everything the site file says: loops, waters, supplies, stock tanks, targets, bands and limits per point, instruments. "
+        "Everything the site file says: loops, waters, supplies, stock tanks, targets, bands and limits per "
+        "point, instruments. "
         "On the right stands where a value comes from; 'unverified preset' means nobody has checked it for your crop. "
         "Enter changes the value under the bar: it is checked as a whole, the old file is kept beside the new one, "
         "and the change is logged with your initials. / shows only rows with a text in them."

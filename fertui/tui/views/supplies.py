@@ -24,8 +24,10 @@ class SuppliesView(View):
 
     TITLE = "Supplies"
     HELP = (
-        "Salts, acids and lyes on the shelf: the label's own analysis wins over the formula. Days left come from what was logged as used. "
-        "Stock tanks are named by content; the letter is what is painted on them. Enter shows the hazards of the chosen supply. "
+        "Salts, acids and lyes on the shelf: the label's own analysis wins over the formula. Days left come from "
+        "what was logged as used. "
+        "Stock tanks are named by content; the letter is what is painted on them. Enter shows the hazards of the "
+        "chosen supply. "
         "s is the stock-tank sheet, one card a tank in the order of dissolving, h the acid sheet for the make-up water."
     )
     BINDINGS: ClassVar[list[Any]] = [
@@ -156,6 +158,7 @@ def _supply(supply: SupplyRow, chosen: bool, width: int) -> Line:
     mark = "!" if len(supply.hazards) > 1 else " "
     row = line(
         Span(f"▸{mark}" if chosen else f" {mark}", "watch"), col(literal(supply.name), 30, "strong", right=False),
-        col(literal(supply.formula), 24, right=False), col(left, 9), *dear, Span("  " + cut(literal(supply.label + density), width - 67)),
+        col(literal(supply.formula), 24, right=False), col(left, 9), *dear,
+        Span("  " + cut(literal(supply.label + density), width - 67)),
     )  # fmt: skip
     return inked(filled(row, width), "chosen") if chosen else row
