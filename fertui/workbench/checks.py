@@ -35,7 +35,8 @@ def check(bench: Answers) -> tuple[CheckRow, ...]:
 
 def _site(bench: Answers) -> Iterator[CheckRow]:
     site = bench.site
-    yield CheckRow("site", "site.toml", f"{len(site.loops)} loops, {len(site.supplies)} supplies", True)
+    loops = ", ".join(loop.name for loop in site.loops)
+    yield CheckRow("site", "site.toml", f"loops {loops}; {len(site.supplies)} supplies", True)
     for loop in site.loops:
         if loop.layout != "known-feed" and not loop.water:
             yield CheckRow("site", f"water of {loop.name}", "not named", False, "name its source water and analysis")

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import groupby
+from textwrap import wrap
 from typing import TYPE_CHECKING, Any
 
 from fertui.cli.views import as_json, words
@@ -68,9 +70,14 @@ def aims_text(rows: Sequence[Row]) -> str:
 
 
 def check_text(rows: Sequence[CheckRow]) -> str:
-    """What was looked at; only what is not all right carries its remark."""
-    lines = []
-    for row in rows:
-        remark = f" -> {row.remark}" if row.remark and not row.passed else ""
-        lines.append(f"{'ok' if row.passed else '! '} {row.group}: {row.what}: {row.found}{remark}")
+    """What was looked at, group by group; only what is not all right carries its remark."""
+    lines: list[str] = []
+    for group, members in groupby(rows, key=lambda row: row.group):
+        lines += [*([""] if lines else []), group]
+        for row in members:
+            watched = group.startswith("watch")
+            mark = "!" if not row.passed else "-" if watched else "ok"
+            text = row.found if watched else f"{row.what}: {row.found}"
+            remark = f" -> {row.remark}" if row.remark and not row.passed else ""
+            lines += wrap(f"{text}{remark}", 80, initial_indent=f"  {mark:3}", subsequent_indent="     ")
     return "\n".join(lines)

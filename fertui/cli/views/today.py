@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
+from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.cli.views import as_json, words
 from fertui.paper.page import folded
 from fertui.workbench.glance import Seen
@@ -67,14 +68,27 @@ def _gauges(state: Today, unit: str) -> list[str]:
 
 
 def _concentrations(state: Today, unit: str) -> list[str]:
+    """Macro-ions and EC at every point; micronutrients below where an analysis brought them."""
     names = list(state.points)
-    rows = [(unit, *(POINT_WORDS[name] for name in names))]
-    for ion in state.points[state.managed_point].ions:
-        scale = words.factor(ion, unit)
-        cells = [words.ranged(state.points[name].ions[ion].mmol_l, scale) for name in names]
-        rows.append((words.label(ion, unit), *cells))
+    heads = [POINT_WORDS[name] for name in names]
+    rows = [(unit, *heads), *(_row(state, ion, unit) for ion in IONS)]
     rows.append(("EC mS/cm", *(words.ranged(state.points[name].ec) for name in names)))
-    return words.table(rows)
+    traces = [ion for ion in MICRONUTRIENTS if any(ion in point.ions for point in state.points.values())]
+    if not traces:
+        return words.table(rows)
+    trace_unit = unit if unit == "mg/L" else "umol/L"
+    return [
+        *words.table(rows),
+        "",
+        *words.table([(trace_unit, *heads), *(_row(state, ion, unit) for ion in traces)]),
+    ]
+
+
+def _row(state: Today, ion: str, unit: str) -> tuple[str, ...]:
+    scale = words.factor(ion, unit)
+    found = [point.ions.get(ion) for point in state.points.values()]
+    cells = (words.ABSENT if each is None else words.ranged(each.mmol_l, scale) for each in found)
+    return words.label(ion, unit), *cells
 
 
 def document(state: Today) -> dict[str, Any]:
