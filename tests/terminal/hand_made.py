@@ -58,22 +58,22 @@ class HandMade(Bench):
             gauge("EC", state.ec, "mS/cm", [3.2] * 29, ""),
         )
 
-        def N(*a):
+        def noticed(*a):
             return SimpleNamespace(**dict(zip(("code", "severity", "text", "key"), a, strict=False)))
 
         watch = (
             (
-                N(
+                noticed(
                     "share_out",
                     "act",
                     "K share in the root zone is 12 %, band 18-28 %. EC is on set point, so EC did not show it.",
                     "p",
                 ),
-                N("analysis_old", "watch", "Analysis is 9 days old; a sample today would halve the range.", "e"),
-                N("log_missing", "note", "Drain of yesterday is not logged.", "w"),
+                noticed("analysis_old", "watch", "Analysis is 9 days old; a sample today would halve the range.", "e"),
+                noticed("log_missing", "note", "Drain of yesterday is not logged.", "w"),
             )
             if slabs
-            else (N("x", "note", "No reading since yesterday 11:42.", "r"),)
+            else (noticed("x", "note", "No reading since yesterday 11:42.", "r"),)
         )
         glance = self.glance(loop, at)
         return Today(
@@ -165,15 +165,17 @@ class HandMade(Bench):
                 points={where: point(4.6 - (0.12 - lift) * d, 11.2 + 0.05 * d, 5.0, 6.2 + 0.1 * d)},
             )
 
-        def D(v, lo, hi):
+        def days_left(v, lo, hi):
             return SimpleNamespace(value=v, low=lo, high=hi)
 
-        def L(what, days, p, since=None):
+        def leaving(what, days, p, since=None):
             return SimpleNamespace(point=where, what=what, at=None, days=days, since=since, probability=p)
 
         leaves = (
-            L("K share", D(0.0, 0.0, 0.0), 1.0, at - timedelta(days=4)), L("Ca share", D(4.0, 2.0, 9.0), 0.84),
-            L("Mg share", D(None, None, None), 0.03), L("Na", D(None, 8.0, None), 0.22), L("EC", D(None, None, None),
+            leaving("K share", days_left(0.0, 0.0, 0.0), 1.0, at - timedelta(days=4)), leaving("Ca share",
+            days_left(4.0, 2.0, 9.0), 0.84),
+            leaving("Mg share", days_left(None, None, None), 0.03), leaving("Na", days_left(None, 8.0, None), 0.22),
+            leaving("EC", days_left(None, None, None),
             0.0),
         )  # fmt: skip
         return SimpleNamespace(at=at, days=tuple(day(d) for d in range(days + 1)), leaves_band=leaves, inputs="routine",

@@ -181,7 +181,12 @@ def test_star_takes_the_last_value(counting: Counted) -> None:
     counting.terminal.until_text(f"= {float(last[1]):g} mS/cm")
 
 
-@pytest.mark.parametrize("kind", [kind for kind in KINDS if kind not in ("plan", "site")])
+OFTEN = ("reading", "analysis", "batch", "acid", "sample", "note")
+"""Forms opened in every run; the others behind ``long``."""
+FORMS = [pytest.param(k, marks=() if k in OFTEN else pytest.mark.long) for k in KINDS if k not in ("plan", "site")]
+
+
+@pytest.mark.parametrize("kind", FORMS)
 def test_every_kind_has_a_form_that_opens_and_asks_for_every_field(counting: Counted, kind: str) -> None:
     direct = {"reading": "r", "analysis": "a", "water": "w", "dose": "d", "batch": "m"}
     terminal = counting.terminal

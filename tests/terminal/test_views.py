@@ -100,7 +100,10 @@ def test_the_theme_chosen_is_remembered(site: Path, tmp_path: Path, open_termina
     assert 'theme = "light"' in (tmp_path / "config" / "fertui" / "settings.toml").read_text(encoding="utf-8")
 
 
-@pytest.mark.parametrize("size", [(60, 20), (61, 21), (79, 23), (81, 25), (100, 30), (200, 60)])
+MORE_SIZES = [pytest.param(size, marks=pytest.mark.long) for size in ((61, 21), (79, 23), (81, 25), (200, 60))]
+
+
+@pytest.mark.parametrize("size", [(60, 20), (100, 30), *MORE_SIZES])
 def test_no_line_is_wider_than_the_screen(site: Path, open_terminal: Opened, size: tuple[int, int]) -> None:
     terminal = open_terminal(site, fixed=True, size=size)
     terminal.until_text("look at")
