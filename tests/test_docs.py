@@ -37,7 +37,6 @@ def test_a_page_made_from_the_program_has_not_drifted(page: Path, monkeypatch: p
     assert words_of(page.read_text(encoding="utf-8")) == words_of(maker().PAGES[page]()), "run python docs/make.py"
 
 
-@pytest.mark.long
 @pytest.mark.parametrize("page", sorted(maker().DRAWN), ids=lambda path: path.name)
 def test_a_screen_shown_in_the_docs_is_the_program_s(page: Path) -> None:
     assert words_of(page.read_text(encoding="utf-8")) == words_of(maker().DRAWN[page]()), "run python docs/make.py"
