@@ -142,7 +142,7 @@ def answers() -> dict[str, str]:
         shown["first day"] = "\n".join(days[: 2 + ENTRIES_A_DAY])
         Path("lab.csv").write_text(LAB_REPORT, encoding="utf-8")
         shown["first analysis"] = _printed("fertui import home lab.csv --as analysis --by MK")
-        shown["first plan"] = _printed("fertui plan home --days 7 --at 2026-06-01T08:30", lines=20)
+        shown["first plan"] = _printed("fertui plan home --days 7 --salts 2 --at 2026-06-01T08:30", lines=17)
     return shown
 
 
