@@ -7,8 +7,8 @@ from collections.abc import Iterable
 from pathlib import Path
 
 from fertui.logbook.errors import DamageError, StoreError
+from fertui.site.files import FILE_MODE, file_mode
 
-FILE_MODE = 0o660
 FOLDER_MODE = 0o770
 """Owner and group; the umask may take more away, others never get any."""
 
@@ -104,7 +104,7 @@ def write_whole(path: Path, text: str | Iterable[str]) -> None:
                 file.writelines((text,) if isinstance(text, str) else text)
                 file.flush()
                 os.fsync(file.fileno())
-            os.chmod(name, FILE_MODE & ~_umask())
+            os.chmod(name, file_mode())
             os.replace(name, path)
         except BaseException:
             os.unlink(name)
@@ -120,9 +120,3 @@ def _sync_folder(folder: Path) -> None:
         os.fsync(descriptor)
     finally:
         os.close(descriptor)
-
-
-def _umask() -> int:
-    current = os.umask(0)
-    os.umask(current)
-    return current

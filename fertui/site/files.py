@@ -17,6 +17,8 @@ from fertui.site.writing import tables_of
 NAME = "site.toml"
 LARGEST = 2_000_000
 """Bytes a site.toml may have: a hundred loops fit many times over."""
+FILE_MODE = 0o660
+"""Owner and group read and write a site, nobody else; the umask takes away more."""
 
 
 def read_site(folder: Path | str) -> Site:
@@ -78,6 +80,13 @@ def _keep(path: Path, now: datetime) -> None:
     _replace(kept, path.read_bytes())
 
 
+def file_mode() -> int:
+    """Rights of a new file: owner and group, less what the umask takes; it can only be read by setting it."""
+    mask = os.umask(0o077)
+    os.umask(mask)
+    return FILE_MODE & ~mask
+
+
 def _replace(path: Path, raw: bytes) -> None:
     """Write to a temporary file beside the path, flush it to disk, rename it, flush the folder."""
     import tempfile  # here: slow to import, and reading never needs it
@@ -88,7 +97,7 @@ def _replace(path: Path, raw: bytes) -> None:
             file.write(raw)
             file.flush()
             os.fsync(file.fileno())
-        os.chmod(temporary, 0o644)
+        os.chmod(temporary, file_mode())
         os.replace(temporary, path)
     except OSError:
         Path(temporary).unlink(missing_ok=True)

@@ -233,6 +233,6 @@ def _canonical_medium(name: str) -> str:
 
 def _make(folder: Path) -> None:
     try:
-        folder.mkdir(parents=True, exist_ok=True)
+        folder.mkdir(mode=0o770, parents=True, exist_ok=True)
     except OSError as trouble:
         raise SiteError(f"{folder} cannot be made a site folder: {trouble.strerror}.") from trouble
