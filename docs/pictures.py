@@ -30,7 +30,7 @@ PATIENCE = 120.0
 
 SCREENS: Mapping[str, tuple[str, ...]] = {
     "all loops": (),
-    "today": ("down", "enter"),
+    "today": ("v",),
     "round": ("r", *"2.6", "enter", *"5.5", "enter", *"20", "enter", *"38", "enter", *"4.0", "enter"),
     "analysis": ("escape", "2"),
     "plan": ("6",),
