@@ -18,20 +18,23 @@ from fertui.estimate.beginning import Beginning, beginning, first_members, shows
 from fertui.estimate.checks import failed
 from fertui.estimate.correction import TRACE, ElectroMeter, Innovation, corrected
 from fertui.estimate.display import (
+    Course,
     Panel,
     allowed,
     feed_drive,
     managed,
     micronutrients_at,
     ph_at,
+    same_solution,
     shown_members,
     solutions,
+    stacked,
 )
 from fertui.estimate.drives import Drives, drives
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation, pooled
-from fertui.estimate.points import Estimated, PointState
+from fertui.estimate.points import Estimated, IonState, PointState
 from fertui.estimate.ranges import Spread, estimated
 from fertui.estimate.record import Record, read
 from fertui.estimate.setting import Setting, setting
@@ -78,6 +81,14 @@ class TrailDay:
 
     at: datetime
     points: Mapping[str, PointState]
+
+
+@dataclass(frozen=True, slots=True)
+class PointAt:
+    """One point at one time."""
+
+    at: datetime
+    state: PointState
 
 
 @dataclass(frozen=True)
@@ -170,25 +181,38 @@ class Estimate:
 
     @cached_property
     def _now(self) -> Mapping[str, PointState]:
-        return self._panels(slice(len(self.times) - 1, None), with_micronutrients=True)[0].points
+        found = {}
+        for point in self.path:
+            bands, end = allowed(self.site, self.loop, point), self.times[-1]
+            state = self.course(point, 1)[0].state
+            micronutrients = micronutrients_at(self.record.observations, point, end, bands)
+            found[point] = replace(
+                state, ions={**state.ions, **{name: IonState(each) for name, each in micronutrients.items()}}
+            )
+        return found
+
+    def course(self, point: str, last: int | None = None) -> tuple[PointAt, ...]:
+        """One point at the ``last`` so many local midnights (all: None), and now; without micronutrients."""
+        which = slice(0 if last is None else max(len(self.times) - last, 0), None)
+        bands, seen = allowed(self.site, self.loop, point), self.record.observations
+        panel = Panel(self._quantiles(same_solution(self.setting, point), which), bands)
+        return tuple(
+            PointAt(self.record.moment(time), panel.state(place, ph_at(seen, point, time, bands.get("pH"))))
+            for place, time in enumerate(self.times[which])
+        )
+
+    def _quantiles(self, point: str, which: slice) -> Course:
+        return Course(shown_members(self.path[point][which], self.spread), self.path_ec[which])
 
     @cached_property
     def trail(self) -> tuple[TrailDay, ...]:
-        """Every local midnight since the estimate began, and now."""
-        return self._panels(slice(0, None), with_micronutrients=False)
-
-    def _panels(self, which: slice, with_micronutrients: bool) -> tuple[TrailDay, ...]:
-        times = self.times[which]
-        seen = self.record.observations
-        days: list[dict[str, PointState]] = [{} for _ in times]
-        for point, members in self.path.items():
-            bands = allowed(self.site, self.loop, point)
-            panel = Panel(shown_members(members[which], self.spread), self.path_ec[which], bands)
-            for place, time in enumerate(times):
-                ph = ph_at(seen, point, time, bands.get("pH"))
-                micronutrients = micronutrients_at(seen, point, time, bands) if with_micronutrients else None
-                days[place][point] = panel.state(place, ph, micronutrients)
-        return tuple(TrailDay(self.record.moment(time), day) for time, day in zip(times, days, strict=True))
+        """Every point at every local midnight since the estimate began, and now."""
+        by_point = {point: self.course(point) for point in self.path}
+        moments = [self.record.moment(time) for time in self.times]
+        return tuple(
+            TrailDay(at, {point: course[place].state for point, course in by_point.items()})
+            for place, at in enumerate(moments)
+        )
 
 
 def assimilate(
@@ -359,7 +383,7 @@ class Assimilation:
 
     def _estimate(self) -> Estimate:
         record = self.record
-        path = {point: np.stack([mark[1][point] for mark in self.marks]) for point in self.marks[-1][1]}
+        path = stacked(self.setting, [mark[1] for mark in self.marks])
         return Estimate(
             site=record.site, loop=record.loop, at=record.at, seed=self.seed, record=record, setting=self.setting,
             drives=self.drives, ensemble=self.ensemble, spread=self.spread, begin=self.begin, analyses=self.analyses,

@@ -6,8 +6,8 @@ from collections.abc import Mapping, Sequence
 
 import numpy as np
 
+from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array
-from fertui.estimate.correction import ElectroMeter
 from fertui.estimate.drives import Drives
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.observations import Observation
@@ -27,7 +27,7 @@ POINTS_OF = {
 SHARED = ("K", "Ca", "Mg")
 LEAST_SHARED_MEQ = 0.5
 """Below this sum of K, Ca and Mg [meq/L] shares say nothing: nearly pure water."""
-FEED_ERROR = 0.05
+LEAST_EC, EC_STEP = 0.01, 0.05
 PH_ERROR, PH_DRIFT = 0.1, 0.1
 """pH is known to 0.1 where measured; its range widens by 0.1 times the square root of the days since (our own)."""
 PH_DAYS = 28.0
@@ -43,6 +43,9 @@ def solutions(setting: Setting, ensemble: Ensemble, drive: Drive) -> dict[str, A
     """Compositions (M, 10) [mmol/L] of every point of the layout."""
     state, found = ensemble.state, {}
     for point in POINTS_OF[setting.circuit.layout]:
+        if same_solution(setting, point) in found:
+            found[point] = found[same_solution(setting, point)]
+            continue
         if point == "feed":
             fed = feed_composition(setting.circuit, drive, state)
             known = setting.circuit.layout == "known-feed"
@@ -50,6 +53,22 @@ def solutions(setting: Setting, ensemble: Ensemble, drive: Drive) -> dict[str, A
         else:
             store = point in ("tank", "drain_store") and not setting.circuit.mixed
             found[point] = np.maximum(ensemble.holds(setting, STORE if store else ROOT), 0.0)
+    return found
+
+
+def same_solution(setting: Setting, point: str) -> str:
+    """The point that shows the same solution: drain is the root zone's, and without a medium all is the tank."""
+    if point == "drain":
+        return "root_zone"
+    return "tank" if setting.circuit.mixed and point == "root_zone" else point
+
+
+def stacked(setting: Setting, said: Sequence[Mapping[str, Array]]) -> dict[str, Array]:
+    """Compositions (times, M, 10) of every point from those of each time; the same solution is kept once."""
+    found: dict[str, Array] = {}
+    for point in said[0]:
+        alike = same_solution(setting, point)
+        found[point] = found[alike] if alike in found else np.stack([each[point] for each in said])
     return found
 
 
@@ -81,31 +100,52 @@ def shown_members(members: Array, spread: Spread) -> Array:
     return spread.widened(neutral(members))
 
 
-class Panel:
-    """Quantiles of one point at many times: ``members`` (times, M, 10), already scaled; ``ec`` (times, M), logs."""
+def log_ec(members: Array, middle: Array) -> Array:
+    """log EC (times, M) [mS/cm] of compositions (times, M, 10): exact at ``middle`` (times, 10), linear about it."""
+    steps = EC_STEP * np.vstack([np.zeros(len(IONS)), np.eye(len(IONS))])
+    around = conductivity(middle[:, None] + steps)
+    slope = (around[:, 1:] - around[:, :1]) / EC_STEP
+    apart = members - middle[:, None]
+    return np.log(np.maximum(around[:, :1] + np.einsum("tmi,ti->tm", apart, slope), LEAST_EC))
 
-    def __init__(self, members: Array, ec: Array, bands: Mapping[str, Band]) -> None:
-        self.bands = bands
+
+class Course:
+    """Quantiles of one solution at many times: ``members`` (times, M, 10), already scaled; ``ec`` (times, M), logs."""
+
+    def __init__(self, members: Array, ec: Array) -> None:
+        self.members = members
         self.ions = np.quantile(members, (0.5, LOW, HIGH), axis=-2)
+        self.ec_members = np.exp(log_ec(members, self.ions[0]) + ec)
         self.shares = np.quantile(shares(members), (0.5, LOW, HIGH), axis=-2)
-        self.enough = np.median(shared_meq(members), axis=-1) >= LEAST_SHARED_MEQ
-        meter = ElectroMeter()
-        logs = np.stack([meter(each) for each in members]) + ec
-        self.ec = np.quantile(np.exp(logs), (0.5, LOW, HIGH), axis=-1)
+        self.enough = shared_meq(self.ions[0]) >= LEAST_SHARED_MEQ
+        self.ec = np.quantile(self.ec_members, (0.5, LOW, HIGH), axis=-1)
 
-    def state(
-        self, time: int, ph: Estimated | None, micronutrients: Mapping[str, Estimated] | None = None
-    ) -> PointState:
+
+def courses(solutions: Mapping[str, Array], ec: Array, spread: Spread) -> dict[str, Course]:
+    """Course of every point; points that hold the same solution share one."""
+    found: dict[str, Course] = {}
+    for point, members in solutions.items():
+        alike = next((other for other in found if solutions[other] is members), None)
+        found[point] = found[alike] if alike else Course(shown_members(members, spread), ec)
+    return found
+
+
+class Panel:
+    """A course beside the bands of a point."""
+
+    def __init__(self, course: Course, bands: Mapping[str, Band]) -> None:
+        self.course, self.bands = course, bands
+
+    def state(self, time: int, ph: Estimated | None) -> PointState:
         """The point at one of the times."""
         ions = {ion: self._ion(ion, time) for ion in IONS}
-        ions |= {name: IonState(value) for name, value in (micronutrients or {}).items()}
-        return PointState(self._estimated(self.ec[:, time], "EC"), ph, ions)
+        return PointState(self._estimated(self.course.ec[:, time], "EC"), ph, ions)
 
     def _ion(self, ion: str, time: int) -> IonState:
         share = None
-        if ion in SHARED and self.enough[time]:
-            share = self._estimated(self.shares[:, time, SHARED.index(ion)], f"{ion} share")
-        return IonState(self._estimated(self.ions[:, time, INDEX[ion]], ion), share)
+        if ion in SHARED and self.course.enough[time]:
+            share = self._estimated(self.course.shares[:, time, SHARED.index(ion)], f"{ion} share")
+        return IonState(self._estimated(self.course.ions[:, time, INDEX[ion]], ion), share)
 
     def _estimated(self, triple: Array, what: str) -> Estimated:
         middle, low, high = (float(value) for value in triple)

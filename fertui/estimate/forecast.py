@@ -14,14 +14,13 @@ import numpy as np
 
 from fertui.chemistry.ions import Array
 from fertui.estimate.assimilation import Estimate, copies, thin
-from fertui.estimate.correction import ElectroMeter
-from fertui.estimate.display import Panel, allowed, ph_at, shown_members, solutions
+from fertui.estimate.display import Course, Panel, allowed, courses, log_ec, ph_at, solutions, stacked
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.passage import Days, LeavesBand, banded, leaves_band, out_since, passages, quantities
-from fertui.estimate.points import PointState
+from fertui.estimate.points import Band, PointState
 from fertui.estimate.routine import Routine, routine
 from fertui.estimate.scenario import ROUTINE, Dose, FeedRecipe, Renewal, Scenario
-from fertui.estimate.walk import CLOSE, Way, nights_of
+from fertui.estimate.walk import CLOSE, Way, night
 from fertui.loop import ROOT, STORE
 
 __all__ = [
@@ -83,7 +82,7 @@ def trajectories(estimate: Estimate, days: int, scenario: Scenario = ROUTINE, se
     mixed = estimate.setting.circuit.mixed
     return Trajectories(
         at=tuple(estimate.at + timedelta(days=day) for day in range(days + 1)),
-        ions={point: np.stack([each[point] for each in said]) for point in said[0]},
+        ions=stacked(estimate.setting, said),
         volumes_l={name: litres[:, :, ROOT if name == "root_zone" or mixed else STORE] for name in estimate.volumes_l},
         log_ec=np.stack([ensemble.ec for ensemble in course]),
         assumed=coming.assumed,
@@ -100,13 +99,16 @@ def _said(estimate: Estimate, coming: Routine, day: int, ensemble: Ensemble) -> 
 
 
 def _days_ahead(estimate: Estimate, coming: Routine, days: int, settled: bool) -> list[Ensemble]:
-    """Members now and at every whole day from now."""
-    now = float(coming.grid[0])
-    nights = nights_of(estimate.record, now, now + days)
+    """Members now and at every whole day from now; the noise of a day falls at its beginning, at this hour."""
+    now, record = float(coming.grid[0]), estimate.record
+    nights = tuple((now + day, record.local_day(now + day + 1.0)) for day in range(days))
     way = Way(estimate.setting, coming, coming.events, nights, estimate.seed)
-    wanted = [now + day for day in range(1, days + 1)]
-    course = way.led(estimate.ensemble, 0, now + days, noisy=not settled)
-    found = [ensemble for end, ensemble in course if any(abs(end - day) < CLOSE for day in wanted)]
+    begun = estimate.ensemble
+    if not settled:
+        begun, _ = night(estimate.setting, begun, estimate.seed, nights[0][1], now)
+    course = way.led(begun, 0, now + days, noisy=not settled)
+    marks = [now + day for day in range(1, days + 1)]
+    found = [ensemble for end, ensemble in course if any(abs(end - mark) < CLOSE for mark in marks)]
     return [estimate.ensemble, *found]
 
 
@@ -115,39 +117,34 @@ def forecast(estimate: Estimate, days: int, scenario: Scenario = ROUTINE) -> For
     ran = trajectories(estimate, days, scenario)
     coming: list[dict[str, PointState]] = [{} for _ in range(days)]
     leaving: list[LeavesBand] = []
-    for point, raw in ran.ions.items():
+    for point, course in courses(ran.ions, ran.log_ec, estimate.spread).items():
         bands = allowed(estimate.site, estimate.loop, point)
-        members = shown_members(raw, estimate.spread)
-        panel = Panel(members, ran.log_ec, bands)
+        panel = Panel(course, bands)
         for day in range(1, days + 1):
             time = estimate.record.end + day
             ph = ph_at(estimate.record.observations, point, time, bands.get("pH"))
             coming[day - 1][point] = panel.state(day, ph)
-        leaving += _leaving(estimate, point, members, ran.log_ec)
+        leaving += _leaving(estimate, point, course, bands)
     ahead = tuple(ForecastDay(at, points) for at, points in zip(ran.at[1:], coming, strict=True))
     return Forecast(estimate.at, ahead, tuple(leaving), ran.assumed, ran.inputs, scenario)
 
 
-def _leaving(estimate: Estimate, point: str, members: Array, log_ec: Array) -> list[LeavesBand]:
+def _leaving(estimate: Estimate, point: str, course: Course, bands: Mapping[str, Band]) -> list[LeavesBand]:
     """First passages of everything that has a band at a point."""
-    meter = ElectroMeter()
-    ec = np.exp(np.stack([meter(each) for each in members]) + log_ec)
-    found = quantities(members, ec)
-    past = _past(estimate, point)
-    days = np.arange(len(members), dtype=float)
+    found = quantities(course.members, course.ec_members)
+    days = np.arange(len(course.members), dtype=float)
     rows = []
-    for what, band in banded(allowed(estimate.site, estimate.loop, point), found):
+    for what, band in banded(bands, found):
         passed = passages(days, found[what], band)
-        since = out_since(past[0], past[1][what], band) if what in past[1] else None
+        since = _since(estimate, point, what, band) if np.median(passed) == 0.0 else None
         rows.append(leaves_band(point, what, estimate.at, passed, since))
     return rows
 
 
-def _past(estimate: Estimate, point: str) -> tuple[tuple[datetime, ...], dict[str, Array]]:
-    """Medians of the trail of a point, for "out since"."""
-    members = estimate.path[point]
+def _since(estimate: Estimate, point: str, what: str, band: Band) -> datetime | None:
+    """Since when the middle of the members has been out."""
+    middle = np.median(estimate.path[point], axis=1)[:, None]
+    ec = np.exp(log_ec(middle, middle[:, 0]) + np.median(estimate.path_ec, axis=1)[:, None])
+    values = quantities(middle, ec).get(what)
     times = tuple(estimate.record.moment(time) for time in estimate.times)
-    middle = np.median(members, axis=1)[:, None]
-    meter = ElectroMeter()
-    ec = np.exp(np.stack([meter(each) for each in middle]) + np.median(estimate.path_ec, axis=1)[:, None])
-    return times, {what: values[:, 0] for what, values in quantities(middle, ec).items()}
+    return None if values is None else out_since(times, values[:, 0], band)

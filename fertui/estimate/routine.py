@@ -89,10 +89,7 @@ class _Builder:
         steps = [each.begin for each in self.plans] + [each.end for each in self.plans]
         steps += [self.record.time(each.at) for each in self.scenario.recipes]
         marks = [self.now + day for day in range(1, int(round(self.end - self.now)))]
-        midnights = self.record.midnights(self.now, self.end)
-        grid = grid_of(
-            self.now, self.end, marks, midnights, [event.at for event in events], [s for s in steps if np.isfinite(s)]
-        )
+        grid = grid_of(self.now, self.end, marks, [event.at for event in events], [s for s in steps if np.isfinite(s)])
         reference = np.full(len(grid) - 1, self.estimate.drives.water.reference[-1])
         made = tuple(self._drive(float(begin), float(end)) for begin, end in zip(grid, grid[1:], strict=False))
         inputs = "what-if" if self.scenario != Scenario() else "plan" if self.plans else "routine"

@@ -54,7 +54,7 @@ def drift(estimate: Estimate, entries: Sequence[Entry], days: int) -> Drift:
     """Courses of the managed point over the last ``days`` days, with band, measurements and marks."""
     start, point = estimate.at - timedelta(days=days), estimate.managed
     own = [entry for entry in entries if entry.loop == estimate.loop.name and entry.at >= start]
-    trail = [(day.at, day.points[point]) for day in estimate.trail if day.at >= start and point in day.points]
+    trail = [(day.at, day.state) for day in estimate.course(point, days + 2) if day.at >= start]
     series = []
     for what in FOLLOWED:
         course = [(at, value) for at, state in trail if (value := reading_of(state, what)) is not None]

@@ -100,10 +100,13 @@ def today(estimate: Estimate, entries: Sequence[Entry], ahead: Forecast) -> Toda
     )
 
 
+PAST_DAYS = 14
+
+
 def gauges(estimate: Estimate, ahead: Forecast) -> tuple[Gauge, ...]:
     """Shares and limited ions of the managed point: 14 days back, the days ahead, and when each leaves its band."""
     point = estimate.managed
-    past = [day.points[point] for day in estimate.trail if point in day.points][-15:-1]
+    past = [day.state for day in estimate.course(point, PAST_DAYS + 1)][:-1]
     now = estimate.points()[point]
     course = [*past, now, *(day.points[point] for day in ahead.days)]
     leaving = {each.what: each for each in ahead.leaves_band if each.point == point}

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 from datetime import UTC, datetime
 
 from fertui.chemistry.names import IONS
-from fertui.estimate.assimilation import HeldBack, Surprise, TrailDay
+from fertui.estimate.assimilation import HeldBack, PointAt, Surprise
 from fertui.estimate.points import Band, Estimated, IonState, PointState
 from fertui.estimate.ranges import Spread
 from fertui.estimate.record import Record, read
@@ -65,7 +65,7 @@ class Standing:
     surprises: tuple[Surprise, ...] = ()
     held_back: tuple[HeldBack, ...] = ()
     spread: Spread = field(default_factory=Spread)
-    trail: tuple[TrailDay, ...] = ()
+    trail: tuple[PointAt, ...] = ()
 
     @property
     def setting(self) -> Setting:
@@ -76,6 +76,10 @@ class Standing:
     def record(self) -> Record:
         """A record without a log: nothing is known of the stock used."""
         return read(self.site, self.loop, (), self.at)
+
+    def course(self, point: str, last: int | None = None) -> tuple[PointAt, ...]:
+        """The trail, whatever the point."""
+        return self.trail if last is None else self.trail[-last:]
 
     def points(self) -> dict[str, PointState]:
         """The managed point alone."""

@@ -93,9 +93,9 @@ def test_a_plan_ends_when_it_says() -> None:
     assert _share(short, 13) < _share(long, 13) - 1.0
 
 
-def test_more_crop_water_concentrates_what_is_left_behind() -> None:
-    thirsty, calm = (forecast(_slab(), 7, Scenario(crop_water_l_per_m2_d=water)) for water in (5.0, 2.0))
-    sodium = [each.days[-1].points["root_zone"].ions["Na"].mmol_l.value for each in (thirsty, calm)]
+def test_more_crop_water_gathers_the_salt_of_the_make_up_water() -> None:
+    thirsty, calm = (forecast(_tank(), 7, Scenario(crop_water_l_per_m2_d=water)) for water in (5.0, 2.0))
+    sodium = [each.days[-1].points["tank"].ions["Na"].mmol_l.value for each in (thirsty, calm)]
     assert sodium[0] > sodium[1]
 
 

@@ -70,7 +70,7 @@ def _made_of_days(look: Look) -> Array:
 
 def _drain_of_days(look: Look) -> Array:
     """What the drain store held (days, 10) [mmol/L] on every past day, as estimated; nan before the estimate began."""
-    by_day = {look.local(each.at).date(): each.points["drain_store"] for each in look.estimate.trail}
+    by_day = {look.local(each.at).date(): each.state for each in look.estimate.course("drain_store", PAST_DAYS + 2)}
     return np.array(
         [
             [by_day[day].ions[ion].mmol_l.value for ion in IONS] if day in by_day else _UNKNOWN
