@@ -13,6 +13,9 @@ import pytest
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.store import FILE_NAME, Logbook
 
+pytestmark = pytest.mark.long
+
+Ratio = Callable[[str, float, str], None]
 MANY = 100_000
 A_DAY = 28
 NOW = datetime(2026, 7, 1, tzinfo=UTC)
@@ -57,19 +60,19 @@ def ratio(costly: Callable[[], object], cheap: Callable[[], object], times: int)
     return statistics.median(costs["costly"]) / statistics.median(costs["cheap"])
 
 
-def test_appending_to_a_large_book_costs_little_more(large: Path, tmp_path: Path) -> None:
+def test_appending_to_a_large_book_costs_little_more(large: Path, tmp_path: Path, says_ratio: Ratio) -> None:
     with Logbook.open(large) as full, Logbook.create(tmp_path / FILE_NAME) as empty:
         found = ratio(lambda: full.append(reading(0)), lambda: empty.append(reading(0)), 300)
-    print(f"append, {MANY:,} entries against none: {found:.2f}")
+    says_ratio(f"append, book of {MANY:,} entries / empty book", found, "at most 2")
     assert found <= DEARER_TO_APPEND
 
 
-def test_opening_sixty_days_of_a_large_book_costs_little_more(large: Path, small: Path) -> None:
+def test_opening_sixty_days_of_a_large_book_costs_little_more(large: Path, small: Path, says_ratio: Ratio) -> None:
     def window(path: Path) -> int:
         with Logbook.open(path) as book:
             return len(book.entries("bay", since=NOW - timedelta(days=59), at=NOW - timedelta(minutes=1)))
 
     assert window(large) == window(small) > 1600
     found = ratio(lambda: window(large), lambda: window(small), 25)
-    print(f"open 60 days, {MANY:,} entries against {60 * A_DAY:,}: {found:.2f}")
+    says_ratio(f"open 60 days, book of {MANY:,} entries / {60 * A_DAY:,}", found, "at most 1.3")
     assert found <= DEARER_TO_OPEN

@@ -1,6 +1,6 @@
 """What the engine costs, as ratios within one run; the figures stand in docs/model.md chapter 12.
 
-Run by hand: ``pytest tests/benchmarks/test_loop_cost.py -m long -s``.
+See conftest.py for how to run it.
 """
 
 from __future__ import annotations
@@ -16,6 +16,7 @@ from tests.loop.invented_sites import SITES, engine, plain_start
 from tests.loop.plain_model import Site, solve
 
 pytestmark = pytest.mark.long
+Ratio = Callable[[str, float, str], None]
 DAYS = 60.0
 
 
@@ -36,7 +37,7 @@ def ensemble(site: Site, members: int, days: float) -> None:
     simulate(circuit, medium, plants, state, Timeline(((0.0, drive),)), [days])
 
 
-def test_256_members_cost_no_more_than_two_members_of_the_stiff_solver() -> None:
+def test_256_members_cost_no_more_than_two_members_of_the_stiff_solver(says_ratio: Ratio) -> None:
     """Outside judge: scipy.integrate.solve_ivp, BDF, rtol 1e-6, vectorised, over the same 60 days, twice one member.
 
     Judged over the ten loops together; a loop without exchange or holds is nearly linear and costs the solver little.
@@ -46,20 +47,19 @@ def test_256_members_cost_no_more_than_two_members_of_the_stiff_solver() -> None
         ours = seconds(lambda site=site: ensemble(site, 256, DAYS))
         theirs = 2 * seconds(lambda site=site: solve(site, plain_start(site), DAYS))
         rows.append((ours, theirs))
-        print(
-            f"\n{site.name}: 256 members {ours:.3f} s, two of the solver {theirs:.3f} s, ratio {ours / theirs:.2f}",
-            end="",
-        )
+        says_ratio(f"{site.name}: 256 members / two of the stiff solver, 60 days", ours / theirs, "judged together")
     ours, theirs = np.sum(rows, axis=0)
-    print(f"\nall ten: {ours:.2f} s, {theirs:.2f} s, ratio {ours / theirs:.2f}")
+    says_ratio("all ten loops: 256 members / two of the stiff solver, 60 days", ours / theirs, "at most 1")
     assert ours <= theirs
 
 
-def test_cost_grows_no_faster_than_members_and_days() -> None:
+def test_cost_grows_no_faster_than_members_and_days(says_ratio: Ratio) -> None:
     site = next(site for site in SITES if site.capacity_meq)
     by_members = {members: seconds(lambda m=members: ensemble(site, m, 14.0)) for members in (64, 256, 1024, 4096)}
     by_days = {days: seconds(lambda d=days: ensemble(site, 256, d)) for days in (14.0, 60.0, 180.0, 365.0)}
-    print("\nmembers, 14 days:", {key: f"{value:.3f} s" for key, value in by_members.items()})
-    print("days, 256 members:", {key: f"{value:.3f} s" for key, value in by_days.items()})
+    for members, cost in by_members.items():
+        says_ratio(f"{members} members / 64, 14 days", cost / by_members[64], f"linear: {members / 64:g}")
+    for days, cost in by_days.items():
+        says_ratio(f"{days:g} days / 14, 256 members", cost / by_days[14.0], f"linear: {days / 14:.1f}")
     assert by_members[4096] <= 64 * 1.3 * by_members[64]
     assert by_days[365.0] <= 365 / 14 * 1.5 * by_days[14.0]
