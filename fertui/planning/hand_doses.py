@@ -51,7 +51,7 @@ class Task:
     horizon: int
     refill: Array
     fixed_mmol: Array
-    """What goes in on the first day whatever is weighed (acid), shape (10,)."""
+    """What goes in at each step whatever is weighed (acid), shape (steps, 10)."""
     salts_at_most: int | None = None
 
     @property
@@ -127,7 +127,7 @@ def doing_of(task: Task, measures: Measures, units: Array, late: Array | float =
     salts = measures.materials * len(task.days)
     for s, day in enumerate(task.days):
         own = slice(s * measures.materials, (s + 1) * measures.materials)
-        mmol = (plans[:, own] * measures.unit[own]) @ content + task.fixed_mmol * (s == 0)
+        mmol = (plans[:, own] * measures.unit[own]) @ content + task.fixed_mmol[s]
         for delay in np.unique(late):
             additions.append(Addition(float(day + delay), np.where((late == delay)[:, None], mmol, 0.0)))
     if measures.renews:

@@ -11,8 +11,8 @@ import numpy as np
 from fertui.catalogue.crops import crop
 from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array, vector
-from fertui.planning.acid import AcidSheet, acid_on_shelf, source_water
-from fertui.planning.acid_steps import acid_mmol, acid_steps, tank_acid
+from fertui.planning.acid import acid_on_shelf, source_water
+from fertui.planning.acid_steps import TankAcid, acid_steps, heated_words, tank_acid
 from fertui.planning.checkpoints import ec_of, violation
 from fertui.planning.goal import LIMITED, Goal
 from fertui.planning.hand_doses import LITRES, REACHED_PCT, Dosed, Task, doing_of, dose, usable
@@ -64,13 +64,14 @@ def hand_plan(request: Request) -> Plan:
     drained = _drained(request, course)
     if drained is not None:
         return request.counted(replace(empty, feasible=False, reason=drained))
-    sheet = tank_acid(request)
-    if not request.managed.named and sheet is None and request.in_order(empty.after_without):
+    days = _days(request)
+    acid = tank_acid(request, days, course)
+    if not request.managed.named and acid.first is None and request.in_order(empty.after_without):
         words = "nothing to weigh: the shares stay in their bands and no limit is passed up to the horizon"
         return request.counted(replace(empty, notices=(words,)))
-    task = _task(request, sheet)
+    task = _task(request, days, acid)
     dosed = dose(task, request.runs, request.solver, course)
-    return _shown(request, task, dosed, empty, sheet)
+    return _shown(request, task, dosed, empty, acid)
 
 
 def _unseen(request: Request) -> tuple[str, ...]:
@@ -95,12 +96,16 @@ def _drained(request: Request, course: Course) -> str | None:
     )
 
 
-def _task(request: Request, sheet: AcidSheet | None) -> Task:
-    steps = 1 if request.wishes.days == 0 else request.wishes.steps or STEPS_BY_DEFAULT
-    days = (0,) if request.wishes.days == 0 else staffed_days(request.situation, request.wishes.days, steps)
+def _days(request: Request) -> tuple[int, ...]:
+    if request.wishes.days == 0:
+        return (0,)
+    return staffed_days(request.situation, request.wishes.days, request.wishes.steps or STEPS_BY_DEFAULT)
+
+
+def _task(request: Request, days: tuple[int, ...], acid: TankAcid) -> Task:
     return Task(
         request.situation, request.goals, "tank", request.materials, days, request.wishes.days, refill_of(request),
-        acid_mmol(sheet), request.wishes.salts,
+        acid.mmol, request.wishes.salts,
     )  # fmt: skip
 
 
@@ -110,13 +115,13 @@ def refill_of(request: Request) -> Array:
     return vector(dict(water.ions))
 
 
-def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, sheet: AcidSheet | None) -> Plan:
+def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, acid: TankAcid) -> Plan:
     task = replace(task, materials=usable(task))
     steps = _steps(task, dosed)
     by_name = {each.name: each for each in task.materials}
     used = [by_name[name] for name in dict.fromkeys(step.salt for step in steps)]
     feasible, why = _verdict(request, dosed)
-    acid = [] if sheet is None else [acid_on_shelf(request.situation.site)]
+    poured = [] if acid.first is None else [acid_on_shelf(request.situation.site)]
     found = replace(
         empty,
         feasible=feasible,
@@ -126,14 +131,21 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, sheet: AcidS
         after=Outlook(request.runs.shown(doing_of(task, dosed.measures, dosed.units).alone())),
         binding=binding(dosed.checkpoints),
         rule_of_thumb=rule_of_thumb(request.situation.composition(request.situation.managed), request.managed),
-        cautions=cautions_for([*(each.supply for each in used), *acid]),
+        cautions=cautions_for([*(each.supply for each in used), *poured]),
         reasons=why_salts(used, request.materials, dosed.end, request.managed),
-        arithmetic=arithmetic(steps, by_name, _before(request, dosed), request.situation.volumes_l[task.tank]),
+        arithmetic=(
+            *arithmetic(steps, by_name, _before(request, dosed), request.situation.volumes_l[task.tank]),
+            *acid.arithmetic,
+        ),
         runner_up=_runner_up(task, dosed, steps),
         sensitivity=_sensitivity(dosed),
-        notices=(*_unseen(request), *over_limit_words(dosed.end, request.managed)),
-        acid=acid_steps(sheet, request.situation.at, "tank:tank"),
-        acid_sheet=sheet,
+        notices=(
+            *_unseen(request),
+            *over_limit_words(dosed.end, request.managed),
+            *heated_words(request.situation, request.entries),
+        ),
+        acid=acid_steps(acid, request.situation, task.days, "tank:tank"),
+        acid_sheet=acid.first,
     )
     return request.counted(found)
 

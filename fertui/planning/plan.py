@@ -4,8 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 
+import numpy as np
+
+from fertui.chemistry.ions import IONS
 from fertui.estimate.assimilation import Estimate
 from fertui.logbook.entries import Entry
+from fertui.planning.acid_steps import usual_acid
 from fertui.planning.hand_plan import hand_plan
 from fertui.planning.programme import Solver
 from fertui.planning.recipe_plan import recipe_plan
@@ -36,8 +40,8 @@ def plan(
     """
     only = None if supplies is None else tuple(supplies)
     wishes = Wishes(days, target, only, tuple(without), steps, salts).checked()
-    situation = situation_of(estimate)
-    runs: Runs = StillRuns(situation, "tank") if days == 0 else ModelRuns(estimate, days)
+    situation = situation_of(estimate, entries)
+    runs: Runs = StillRuns(situation, "tank") if days == 0 else ModelRuns(estimate, days, situation.usual_acid_mmol_d)
     if situation.loop.layout != "shared-tank" and days == 0:
         raise PlanningError(
             f"loop {situation.loop.name} is fed through stock tanks: there is no tank to dose by hand; "
@@ -53,11 +57,12 @@ def plan(
     return recipe_plan(request, estimate)
 
 
-def situation_of(estimate: Estimate) -> Situation:
-    """The loop of an estimate as planning sees it."""
+def situation_of(estimate: Estimate, entries: Sequence[Entry] = ()) -> Situation:
+    """The loop of an estimate as planning sees it; acid by habit belongs to a tank dosed by hand."""
     last = estimate.last_analysis.get(estimate.managed)
     age = None if last is None else (estimate.at - last).total_seconds() / 86400.0
     return Situation(
         estimate.site, estimate.loop, estimate.at, estimate.managed, estimate.points(), estimate.volumes_l,
         estimate.crop_water.value, age,
+        usual_acid(estimate, entries) if estimate.loop.layout == "shared-tank" else np.zeros(len(IONS)),
     )  # fmt: skip

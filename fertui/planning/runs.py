@@ -104,6 +104,8 @@ class Situation:
     crop_water_l_per_m2_d: float = 0.0
     analysis_days_old: float | None = None
     """Age of the last analysis of the managed point; None where there is none."""
+    usual_acid_mmol_d: Array = field(default_factory=lambda: np.zeros(len(IONS)))
+    """What acid dosed by habit brings a day [mmol], shape (10,); every run of the model counts it as going on."""
 
     def composition(self, point: str) -> Array:
         """Mean composition of a point, shape (10,)."""
@@ -118,10 +120,11 @@ class Situation:
 
 @dataclass(slots=True)
 class ModelRuns:
-    """``Runs`` of an estimate over a horizon of whole days."""
+    """``Runs`` of an estimate over a horizon of whole days; ``usual_mmol_d`` (10,) goes in half-way through each."""
 
     estimate: Estimate
     days: int
+    usual_mmol_d: Array = field(default_factory=lambda: np.zeros(len(IONS)))
     count: int = field(default=0)
 
     def settled(self, doing: Doing, members: int) -> Course:
@@ -142,8 +145,9 @@ class ModelRuns:
     def _scenario(self, doing: Doing) -> Scenario:
         from fertui.estimate.forecast import Dose, FeedRecipe, Renewal, Scenario
 
+        usual = [Addition(day + 0.5, self.usual_mmol_d) for day in range(self.days) if self.usual_mmol_d.any()]
         return Scenario(
-            doses=tuple(Dose(self._at(each.day), adds_mmol=each.mmol) for each in doing.additions),
+            doses=tuple(Dose(self._at(each.day), adds_mmol=each.mmol) for each in (*doing.additions, *usual)),
             renewals=tuple(Renewal(self._at(each.day), each.litres, _by_ion(each.refill)) for each in doing.renewals),
             recipes=tuple(FeedRecipe(self._at(each.day), _by_ion(each.ions)) for each in doing.feeds),
         )

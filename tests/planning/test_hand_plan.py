@@ -7,6 +7,7 @@ from dataclasses import replace
 import pytest
 
 from fertui.chemistry.ions import vector
+from fertui.logbook.entries import Entry, Value
 from fertui.planning.hand_plan import hand_plan
 from fertui.planning.request import Wishes, staffed_days
 from fertui.planning.shelf import PlanningError
@@ -146,3 +147,51 @@ def test_a_tank_that_nothing_feeds_is_not_planned_far_ahead() -> None:
     plan = hand_plan(request(place, MixingTank(place, 14, uptake), days=14))
     assert not plan.feasible
     assert "too long for this tank" in plan.reason
+
+
+def with_make_up(litres_a_day: float, alkalinity: float, **more):
+    """A tank in order whose make-up brings alkalinity, 38 % nitric acid on the shelf, and its model."""
+    acid = Supply("nitric acid", "nitric acid", strength_pct=38.0)
+    water = Composition({"HCO3": alkalinity}, ph=7.6)
+    start = {**LOW_K, "HCO3": 0.5}
+    place = replace(
+        place_of(start, supplies=(*shelf_of(*SALTS), acid), water=water, **more),
+        crop_water_l_per_m2_d=litres_a_day / 500.0,
+    )
+    return place, MixingTank(place, 12, -litres_a_day * vector({"HCO3": alkalinity - 0.5}))
+
+
+def test_the_alkalinity_of_the_coming_make_up_is_met_step_by_step() -> None:
+    place, tank = with_make_up(500.0, 3.5)
+    plan = hand_plan(request(place, tank, days=12))
+    days = sorted({(each.at - place.at).days for each in plan.acid})
+    assert days[0] > 0  # today's 0.5 meq/L asks for nothing
+    # make-up 500 L/d x (3.5 - 0.5) meq/L = 1.5 mol a day; 38 % nitric acid holds 7.435 mol/L at 20 degrees C
+    mol = 7.435 * sum(each.litres for each in plan.acid)
+    assert mol == pytest.approx(1.5 * days[-1], rel=0.01)
+    assert any("500 L x (3.50 - 0.50 left) meq/L = 1500 meq a day" in line for line in plan.arithmetic)
+    for day in days:
+        portions = [each.litres for each in plan.acid if (each.at - place.at).days == day]
+        assert max(portions) <= sum(portions) / 3 + 1e-9
+
+
+def test_no_more_acid_than_the_model_finds_alkalinity() -> None:
+    # roots that take up cations beyond anions use up what the make-up brings: no acid on top of that
+    place, tank = with_make_up(500.0, 3.5)
+    tank.uptake_mmol_d = 0.0 * tank.uptake_mmol_d
+    assert hand_plan(request(place, tank, days=12)).acid == ()
+
+
+def test_acid_before_heating_the_drain_is_taken_off_and_said() -> None:
+    place, tank = with_make_up(500.0, 3.5)
+    # pH 4.5 before 95 C takes the alkalinity (Grower 101: water disinfection): here two thirds of what comes
+    habit = replace(place, usual_acid_mmol_d=vector({"NO3": 1000.0, "HCO3": -1000.0}))
+    heated = Entry("disinfection", "nft", place.at, place.at, "T", (Value("treatment", "heat"),))
+    asked = replace(request(habit, tank, days=12), entries=(heated,))
+    plan = hand_plan(asked)
+    mol = 7.435 * sum(each.litres for each in plan.acid)
+    days = max((each.at - place.at).days for each in plan.acid)
+    assert mol == pytest.approx(0.5 * days, rel=0.01)
+    assert any("heat disinfection included: 1000 meq" in line for line in plan.notices)
+    forgotten = replace(request(place, tank, days=12), entries=(heated,))
+    assert any("log the acid it takes" in line for line in hand_plan(forgotten).notices)
