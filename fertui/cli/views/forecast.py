@@ -112,4 +112,4 @@ def record_text(record: Hindcast, loop: str, timezone: str) -> str:
                 share,
             )
         )
-    return "\n".join([*lines, *words.table(rows), "", record.summary.words])
+    return "\n".join([*lines, *words.table(rows), "", *folded(record.summary.words, "")])
