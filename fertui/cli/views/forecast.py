@@ -91,15 +91,15 @@ def record_document(record: Hindcast, loop: str) -> dict[str, Any]:
 
 def record_text(record: Hindcast, loop: str, timezone: str) -> str:
     """The record: what was forecast, what was found, and whether it beat 'no change'."""
-    lines = [f"{loop}: past forecasts, inputs as {record.inputs}", ""]
-    rows = [("found", "point", "ion", "found", "forecast, 80 % range", "no change", "share found", "share forecast")]
+    lines = [f"{loop}: past forecasts, inputs as {record.inputs}; same: no change since the analysis before", ""]
+    rows = [("taken", "point", "ion", "found", "forecast, 80 %", "same", "share", "foreseen")]
     for row in record.rows:
         if row.ion not in ("K", "Ca", "Mg", "Na", "NO3") or row.cold_start:
             continue
         share = "" if row.predicted_share_pct is None else f"{row.predicted_share_pct:.0f} %"
         found = "" if row.measured_share_pct is None else f"{row.measured_share_pct:.0f} %"
         forecast = f"{words.number(row.predicted_mmol_l)} ({words.number(row.low)}-{words.number(row.high)})"
-        mark = " doubtful" if row.doubtful else ""
+        mark = "?" if row.doubtful else ""
         rows.append(
             (
                 words.local(row.at, timezone)[:10] + mark,
