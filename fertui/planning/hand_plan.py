@@ -240,7 +240,7 @@ def _renewal(request: Request, dosed: Dosed) -> Renewal | None:
         litres = LITRES * float(np.ceil(part * situation.volumes_l["tank"] / LITRES))
     nitrogen = situation.composition("tank")[INDEX["NO3"]] + situation.composition("tank")[INDEX["NH4"]]
     return renewal_of(
-        situation, "tank", litres, refill_of(request), goal, request.entries,
+        situation, "tank", litres, refill_of(request), goal, request.year_so_far_kg_n,
         situation.composition(situation.managed), _days_to_drink(situation, float(nitrogen)), reaches,
     )  # fmt: skip
 

@@ -13,6 +13,7 @@ from fertui.planning.acid_steps import usual_acid
 from fertui.planning.hand_plan import hand_plan
 from fertui.planning.programme import Solver
 from fertui.planning.recipe_plan import recipe_plan
+from fertui.planning.renewal import year_kg_n
 from fertui.planning.request import Request, Wishes, goals_of, materials_of
 from fertui.planning.runs import ModelRuns, Runs, Situation, StillRuns
 from fertui.planning.shelf import PlanningError
@@ -50,7 +51,7 @@ def plan(
     points = ("tank", situation.managed) if situation.loop.layout == "shared-tank" else ("feed", situation.managed)
     request = Request(
         situation, goals_of(situation, target, tuple(dict.fromkeys(points))), wishes, materials_of(situation, wishes),
-        runs, Solver(), entries, situation.points,
+        runs, Solver(), entries, situation.points, year_kg_n(estimate, entries),
     )  # fmt: skip
     if situation.loop.layout == "shared-tank":
         return hand_plan(request)

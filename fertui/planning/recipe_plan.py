@@ -221,7 +221,7 @@ def _renewal(request: Request, recipe: Recipe) -> Renewal | None:
         return None
     litres = LITRES * np.ceil(fraction * sum(situation.volumes_l.values()) / LITRES)
     return renewal_of(
-        situation, situation.managed, float(litres), refill, request.managed, request.entries, end, None, True
+        situation, situation.managed, float(litres), refill, request.managed, request.year_so_far_kg_n, end, None, True
     )
 
 

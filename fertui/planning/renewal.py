@@ -3,10 +3,13 @@ account."""
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Mapping
 from datetime import datetime
+from zoneinfo import ZoneInfo
 
 from fertui.chemistry.ions import ATOMIC_WEIGHT, INDEX, IONS, Array
+from fertui.estimate.assimilation import Estimate
+from fertui.estimate.balance import discharged
 from fertui.logbook.entries import Entry
 from fertui.planning.checkpoints import EXCESS, NUTRIENTS_THAT_STAY
 from fertui.planning.goal import LIMITED, Goal
@@ -49,11 +52,23 @@ def lost_kg(composition: Array, litres: float) -> tuple[float, float]:
     return float(nitrogen), float(phosphorus)
 
 
-def year_kg_n(entries: Iterable[Entry], loop: str, at: datetime, nitrogen: float) -> float:
-    """kg N discharged this calendar year by the logged bleeds, at today's nitrogen [mmol/L] where none was analysed."""
-    bleeds = (each for each in entries if each.kind == "bleed" and each.loop == loop and each.at.year == at.year)
-    litres = sum(each.number_of("litres") or 0.0 for each in bleeds if each.at <= at)
-    return litres * nitrogen * ATOMIC_WEIGHT["N"] * 1e-6
+def year_kg_n(estimate: Estimate, entries: Iterable[Entry]) -> float:
+    """kg N the loop has discharged this calendar year: what the estimate booked, each litre with the nitrogen it held
+    then.
+
+    A bleed of this year from before the estimate began counts with today's nitrogen of the managed point.
+    """
+    zone = ZoneInfo(estimate.site.timezone)
+    year = datetime(estimate.at.astimezone(zone).year, 1, 1, tzinfo=zone)
+    booked = sum(each.kg_n for each in discharged(estimate, max(year, estimate.since), estimate.at))
+    ions = estimate.points()[estimate.managed].ions
+    nitrogen = sum(ions[ion].mmol_l.value for ion in ("NO3", "NH4") if ion in ions)
+    earlier = sum(
+        each.number_of("litres") or 0.0
+        for each in entries
+        if each.kind == "bleed" and each.loop == estimate.loop.name and year <= each.at < estimate.since
+    )
+    return float(booked + earlier * nitrogen * ATOMIC_WEIGHT["N"] * 1e-6)
 
 
 def smallest_fraction(composition: Array, refill: Array, goal: Goal) -> float | None:
@@ -84,7 +99,7 @@ def options(
     situation: Situation,
     tank: str,
     litres: float | None,
-    entries: Sequence[Entry],
+    year_so_far_kg_n: float,
     days_to_drink_n: float | None,
     reaches: bool,
 ) -> tuple[RenewalOption, ...]:
@@ -95,7 +110,9 @@ def options(
     if litres is not None:
         rows.append(("part renewal", litres, reaches, f"{100 * litres / volume:.0f} % of the water"))
     rows.append(("full renewal", volume, True, "everything let go and made anew"))
-    found = [_option(situation, name, amount, composition, entries, fits, text) for name, amount, fits, text in rows]
+    found = [
+        _option(situation, name, amount, composition, year_so_far_kg_n, fits, text) for name, amount, fits, text in rows
+    ]
     if days_to_drink_n is not None and litres is not None:
         left = composition.copy()
         left[INDEX["NO3"]] = min(left[INDEX["NO3"]], LEFT_N_MMOL)
@@ -105,7 +122,7 @@ def options(
             "days, "
             "then let go (Massa et al. 2010); watch the crop: it starves by the end"
         )
-        found.append(_option(situation, "drink the N down first", litres, left, entries, reaches, words))
+        found.append(_option(situation, "drink the N down first", litres, left, year_so_far_kg_n, reaches, words))
     return tuple(found)
 
 
@@ -114,27 +131,26 @@ def _option(
     name: str,
     litres: float,
     composition: Array,
-    entries: Sequence[Entry],
+    year_so_far_kg_n: float,
     reaches: bool,
     text: str,
 ) -> RenewalOption:
-    nitrogen = float(composition[INDEX["NO3"]] + composition[INDEX["NH4"]])
     kg_n, kg_p = lost_kg(composition, litres)
-    before = year_kg_n(entries, situation.loop.name, situation.at, nitrogen)
+    year = year_so_far_kg_n + kg_n
     per_ha = 1e4 / situation.loop.area_m2
     budget = situation.site.budget_n_kg_per_ha
-    words = f"{text}; {kg_n:.2f} kg N, {kg_p:.2f} kg P; the year comes to {(before + kg_n) * per_ha:.0f} kg N/ha"
+    words = f"{text}; {kg_n:.2f} kg N, {kg_p:.2f} kg P; the year comes to {year * per_ha:.0f} kg N/ha"
     if budget is not None:
         words += f" of {budget:g}"
-    return RenewalOption(name, litres, kg_n, kg_p, before + kg_n, (before + kg_n) * per_ha, budget, reaches, words)
+    return RenewalOption(name, litres, kg_n, kg_p, year, year * per_ha, budget, reaches, words)
 
 
 def renewal_of(
-    situation: Situation, tank: str, litres: float, refill: Array, goal: Goal, entries: Sequence[Entry], end: Array,
+    situation: Situation, tank: str, litres: float, refill: Array, goal: Goal, year_so_far_kg_n: float, end: Array,
     days_to_drink_n: float | None, reaches: bool,
 ) -> Renewal:  # fmt: skip
     """A renewal of so many litres with its losses and the options beside it; ``end``: the point without any renewal."""
-    found = options(situation, tank, litres, entries, days_to_drink_n, reaches)
+    found = options(situation, tank, litres, year_so_far_kg_n, days_to_drink_n, reaches)
     part = next(each for each in found if each.name == "part renewal")
     carries: Mapping[str, float] = {ion: float(value) for ion, value in zip(IONS, refill, strict=True)}
     return Renewal(litres, carries, part.kg_n, part.kg_p, part.year_kg_n, excess_of(end, goal), found)

@@ -69,6 +69,8 @@ class Request:
     solver: Solver
     entries: Sequence[Entry]
     before: Mapping[str, PointState]
+    year_so_far_kg_n: float = 0.0
+    """What the loop has discharged this calendar year [kg N]."""
 
     @property
     def managed(self) -> Goal:
