@@ -6,8 +6,8 @@ import tomllib
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cache
-from importlib import resources
 from itertools import pairwise
+from pathlib import Path
 from typing import Any
 
 from fertui.refusals import Refusal
@@ -101,4 +101,4 @@ def interpolated(points: Sequence[tuple[float, float]], at: float) -> float:
 @cache
 def table(name: str) -> dict[str, Any]:
     """One TOML file of this room, read once; not to be changed."""
-    return tomllib.loads(resources.files("fertui.catalogue").joinpath(f"{name}.toml").read_text(encoding="utf-8"))
+    return tomllib.loads(Path(__file__).with_name(f"{name}.toml").read_text(encoding="utf-8"))

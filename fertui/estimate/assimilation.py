@@ -337,7 +337,7 @@ class Assimilation:
         where = solutions(self.setting, before, feed_drive(self.drives, 0, before))
         name = seen.point if seen.point in where else managed(self.record.loop)
         logs = np.log(np.maximum(where[name][:, columns], TRACE))
-        off = np.log(seen.values()) - np.median(logs, axis=0)
+        off = np.log(seen.values()) - np.quantile(logs, 0.5, axis=0)
         self.spread = self.spread.learned(found.columns, logs - logs.mean(axis=0), seen.covariance(), off)
 
     def _flag(self, seen: Observation, found: Innovation) -> None:

@@ -70,7 +70,7 @@ def _oldest(record: Record) -> float:
 
 def first_members(record: Record, setting: Setting, begin: Beginning, members: int, seed: int) -> Ensemble:
     """Members at the start: the first analysis with its error, or the feed, widely spread."""
-    drawn = normals(seed, setting.loop.name, "first", members, 2 * len(IONS) + 1)
+    drawn = normals(seed, setting.loop.name, "first", members, 2 * len(IONS) + 1, apart=True)
     vessels = np.stack([_vessel(record, setting, begin, drawn, where) for where in (STORE, ROOT)], axis=1)
     unknown = unknowns(setting, seed, members)
     medium = setting.medium(unknown["capacity"], unknown["selectivity"])

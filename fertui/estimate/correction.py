@@ -70,7 +70,7 @@ class ElectroMeter:
 
     def __call__(self, mmol_l: Array) -> Array:
         """log EC (M,) [mS/cm] of compositions (M, 10)."""
-        middle = np.median(mmol_l, axis=0)
+        middle = np.quantile(mmol_l, 0.5, axis=0)
         if self.line is None or np.any(np.abs(middle - self.line.at) > EC_CHANGED * self.line.at + 0.3):
             self.line = linearise(middle)
         return np.log(np.maximum(self.line(mmol_l), 0.01))
@@ -147,11 +147,11 @@ def _updated(
     anomalies = predicted - predicted.mean(axis=0)
     total = _covariance(anomalies, anomalies) + look.noise
     off, sd = look.measured - predicted.mean(axis=0), np.sqrt(np.diag(total))
-    expected = np.median(predicted, axis=0)
+    expected = np.quantile(predicted, 0.5, axis=0)
     if not seen.is_analysis and np.any(np.abs(off) > GROSS * sd):
         return ensemble, off, sd, expected
     key = f"{seen.at.isoformat()} {seen.point} {seen.kind} {len(off)}"
-    drawn = normals(seed, setting.loop.name, key, len(predicted), len(off))
+    drawn = normals(seed, setting.loop.name, key, len(predicted), len(off), apart=True)
     scatter = np.clip(drawn @ np.linalg.cholesky(look.noise).T - anomalies, -FARTHEST * sd, FARTHEST * sd)
     inverse = np.linalg.inv(total)
     levelled = (CLIP * sd * np.tanh(off / (CLIP * sd)) + scatter) @ inverse

@@ -41,7 +41,8 @@ def managed(loop: Loop) -> str:
 
 def solutions(setting: Setting, ensemble: Ensemble, drive: Drive) -> dict[str, Array]:
     """Compositions (M, 10) [mmol/L] of every point of the layout."""
-    state, found = ensemble.state, {}
+    state = ensemble.state
+    found: dict[str, Array] = {}
     for point in POINTS_OF[setting.circuit.layout]:
         if same_solution(setting, point) in found:
             found[point] = found[same_solution(setting, point)]

@@ -19,6 +19,8 @@ from fertui.loop import ROOT, STORE, Medium, Plants, State
 SPREAD = {"fast": 0.10, "common": 0.15, "drain": 0.15, "stock": 0.05, "ec": 0.05}
 """Spread (log) at the start; the slow part of uptake starts with the spread of the crop's preset."""
 
+UNKNOWNS = ("fast", "slow", "stock", "common", "drain", "ec", "capacity", "selectivity")
+
 DAILY = 1.0 / 14.0
 """Noise below is per fortnight; a day's variance is this part of it."""
 FAST_SD, FAST_DAYS = 0.25, 30.0
@@ -87,25 +89,20 @@ class Ensemble:
     def chosen(self, members: Array) -> Ensemble:
         """The members of these positions, repeated where repeated."""
         state = State(*(getattr(self.state, name)[members] for name in ("water_l", "ions_mmol", "exchanged_meq")))
-        names = ("fast", "slow", "stock", "common", "drain", "ec", "capacity", "selectivity")
-        return replace(self, state=state, **{name: getattr(self, name)[members] for name in names})
+        return replace(self, state=state, **{name: getattr(self, name)[members] for name in UNKNOWNS})
 
     def middle(self, setting: Setting) -> Ensemble:
         """One member that stands in the middle: median of every amount and unknown, the exchanger loaded to match."""
-        names = ("fast", "slow", "stock", "common", "drain", "ec", "capacity", "selectivity")
-        state = State(
-            *(
-                np.median(each, axis=0)[None]
-                for each in (self.state.water_l, self.state.ions_mmol, self.state.exchanged_meq)
-            )
-        )
-        found = replace(self, state=state, **{name: np.median(getattr(self, name), axis=0)[None] for name in names})
+        amounts = (self.state.water_l, self.state.ions_mmol, self.state.exchanged_meq)
+        state = State(*(np.quantile(each, 0.5, axis=0)[None] for each in amounts))
+        unknown = {name: np.quantile(getattr(self, name), 0.5, axis=0)[None] for name in UNKNOWNS}
+        found = replace(self, state=state, **unknown)
         return replace(found, state=state.reloaded(found.medium(setting)))
 
 
 def unknowns(setting: Setting, seed: int, members: int) -> dict[str, Array]:
     """Starting values of everything but the state, by name."""
-    draw = normals(seed, setting.loop.name, "start", members, 40)
+    draw = normals(seed, setting.loop.name, "start", members, 40, apart=True)
     selectivity, selectivity_sd = setting.growing.selectivity()
     return {
         "fast": SPREAD["fast"] * draw[:, 0:10],
@@ -121,20 +118,29 @@ def unknowns(setting: Setting, seed: int, members: int) -> dict[str, Array]:
 
 def wandered(ensemble: Ensemble, setting: Setting, seed: int, day: int) -> Ensemble:
     """The members after one more local day of noise; ``day`` keys the random numbers."""
-    draw = normals(seed, setting.loop.name, day, ensemble.members, 43)
+    blended = setting.circuit.layout != "known-feed"
+    draw = normals(seed, setting.loop.name, day, ensemble.members, 43 if blended else 33)
     root = np.sqrt(DAILY)
     drain_keep = np.exp(-1.0 / DRAIN_DAYS)
-    noise = root * (STATE_SD * draw[:, 33:42] + STATE_COMMON_SD * draw[:, 42, None])
+    noise = root * (STATE_SD * draw[:, 23:32] + STATE_COMMON_SD * draw[:, 32, None])
     return replace(
         ensemble,
         fast=np.exp(-1.0 / FAST_DAYS) * ensemble.fast + FAST_SD * root * draw[:, 0:10],
         slow=ensemble.slow + SLOW_SD * root * draw[:, 10:20],
-        stock=ensemble.stock + STOCK_SD * root * draw[:, 20:30],
-        common=np.exp(-1.0 / COMMON_DAYS) * ensemble.common + COMMON_SD * root * draw[:, 30],
-        drain=drain_keep * ensemble.drain + DRAIN_SD * np.sqrt(1.0 - drain_keep**2) * draw[:, 31],
-        ec=ensemble.ec + EC_SD * root * draw[:, 32],
+        stock=ensemble.stock + STOCK_SD * root * draw[:, 33:43] if blended else ensemble.stock,
+        common=np.exp(-1.0 / COMMON_DAYS) * ensemble.common + COMMON_SD * root * draw[:, 20],
+        drain=drain_keep * ensemble.drain + DRAIN_SD * np.sqrt(1.0 - drain_keep**2) * draw[:, 21],
+        ec=ensemble.ec + EC_SD * root * draw[:, 22],
         state=_shaken(ensemble.state, noise, ensemble.alkalinity),
+        alkalinity=_steered(setting, ensemble.alkalinity),
     )
+
+
+def _steered(setting: Setting, alkalinity: float) -> float:
+    """Alkalinity a day later: growers steer the pH of a root zone, so what was found there goes back to the usual."""
+    if setting.circuit.layout == "shared-tank":
+        return alkalinity
+    return ALKALINITY_MEQ_L + (alkalinity - ALKALINITY_MEQ_L) * float(np.exp(-1.0 / ALKALINITY_DAYS))
 
 
 def _shaken(state: State, noise: Array, alkalinity: float) -> State:

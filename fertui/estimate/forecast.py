@@ -136,15 +136,15 @@ def _leaving(estimate: Estimate, point: str, course: Course, bands: Mapping[str,
     rows = []
     for what, band in banded(bands, found):
         passed = passages(days, found[what], band)
-        since = _since(estimate, point, what, band) if np.median(passed) == 0.0 else None
+        since = _since(estimate, point, what, band) if np.quantile(passed, 0.5, method="nearest") == 0.0 else None
         rows.append(leaves_band(point, what, estimate.at, passed, since))
     return rows
 
 
 def _since(estimate: Estimate, point: str, what: str, band: Band) -> datetime | None:
     """Since when the middle of the members has been out."""
-    middle = np.median(estimate.path[point], axis=1)[:, None]
-    ec = np.exp(log_ec(middle, middle[:, 0]) + np.median(estimate.path_ec, axis=1)[:, None])
+    middle = np.quantile(estimate.path[point], 0.5, axis=1)[:, None]
+    ec = np.exp(log_ec(middle, middle[:, 0]) + np.quantile(estimate.path_ec, 0.5, axis=1)[:, None])
     values = quantities(middle, ec).get(what)
     times = tuple(estimate.record.moment(time) for time in estimate.times)
     return None if values is None else out_since(times, values[:, 0], band)

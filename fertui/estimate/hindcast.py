@@ -29,6 +29,7 @@ from fertui.logbook.entries import Entry
 from fertui.site.model import Loop, Site
 
 INPUTS = ("logged", "planned")
+MEMBERS_OF_RECORD = 2 * MEMBERS
 HISTORY_DAYS = 730
 """The record goes two years back."""
 
@@ -48,21 +49,25 @@ def hindcast(
     entries: Iterable[Entry],
     at: datetime,
     inputs: str = "logged",
-    members: int = MEMBERS,
+    members: int | None = None,
     seed: int = SEED,
 ) -> Hindcast:
     """The record of a loop's forecasts from one analysis of its solution to the next, up to ``at``.
+
+    ``members``: by default twice those of an estimate, so that chance moves an error of shares by 0.05 points only;
+    forecasts as they were issued had the members they had.
 
     Raises ``ValueError`` for ``inputs`` other than "logged" or "planned".
     """
     if inputs not in INPUTS:
         raise ValueError(f"inputs {inputs!r} is not one of {', '.join(INPUTS)}")
+    count = members or (MEMBERS_OF_RECORD if inputs == "logged" else MEMBERS)
     kept = [entry for entry in entries if entry.loop == loop.name and entry.at <= at]
     rows: list[HindcastRow] = []
     for end in _epochs(kept):
-        run = Assimilation(read(site, loop, kept, end, HISTORY_DAYS), members, seed)
+        run = Assimilation(read(site, loop, kept, end, HISTORY_DAYS), count, seed)
         run.run()
-        ahead = _Logged(run) if inputs == "logged" else _Planned(site, loop, kept, members, seed)
+        ahead = _Logged(run) if inputs == "logged" else _Planned(site, loop, kept, count, seed)
         for pair in _pairs(run):
             rows += _rows(run, pair, ahead.members(pair))
     return Hindcast(inputs, tuple(rows), summary(rows))
@@ -184,7 +189,7 @@ def _rows(run: Assimilation, pair: _Pair, ahead: tuple[Array, Spread]) -> list[H
 def _with_sampling_error(run: Assimilation, target: Observation, members: Array) -> Array:
     """What an analysis of every member would show: its own error on top."""
     columns = target.columns()
-    noise = target.covariance(np.median(members[:, columns], axis=0))
+    noise = target.covariance(np.quantile(members[:, columns], 0.5, axis=0))
     drawn = normals(
         run.seed, run.record.loop.name, f"sample {target.at.isoformat()} {target.point}", len(members), len(columns)
     )

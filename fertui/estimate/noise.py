@@ -19,8 +19,10 @@ _SHIFTS = (np.uint64(30), np.uint64(27), np.uint64(31))
 _TO_UNIT = 2.0**-32
 
 
-def normals(seed: int, loop: str, key: int | str, members: int, columns: int) -> Array:
+def normals(seed: int, loop: str, key: int | str, members: int, columns: int, apart: bool = False) -> Array:
     """Standard normal numbers (members, columns) whose mean over the members is zero; zeros for a single member.
+
+    ``apart``: columns are made uncorrelated and of variance one to rounding, where there are members enough.
 
     Box-Muller on hashed counters (splitmix64: Steele, Lea & Flood 2014, OOPSLA, from memory).
 
@@ -33,7 +35,11 @@ def normals(seed: int, loop: str, key: int | str, members: int, columns: int) ->
     radius, angle = np.sqrt(-2.0 * np.log(high)), (2.0 * np.pi) * low
     drawn = np.concatenate([radius * np.cos(angle), radius * np.sin(angle)])[: members * columns]
     drawn = drawn.reshape(members, columns)
-    return drawn - drawn.mean(axis=0)
+    drawn = drawn - drawn.mean(axis=0)
+    if not apart or members <= 2 * columns:
+        return drawn
+    root = np.linalg.cholesky(drawn.T @ drawn / members)
+    return np.linalg.solve(root, drawn.T).T
 
 
 def _hashed(words: str, count: int) -> tuple[Array, Array]:

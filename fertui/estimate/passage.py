@@ -42,7 +42,7 @@ def quantities(members: Array, ec: Array) -> dict[str, Array]:
     """Everything a band can be set for, (times, M) each, from compositions (times, M, 10) and EC (times, M)."""
     by_share = shares(members)
     found = {f"{ion} share": by_share[..., place] for place, ion in enumerate(SHARED)}
-    if np.median(shared_meq(members[0])) < LEAST_SHARED_MEQ:
+    if np.quantile(shared_meq(members[0]), 0.5) < LEAST_SHARED_MEQ:
         found = {}
     return {**found, "EC": ec, **{ion: members[..., INDEX[ion]] for ion in IONS}}
 

@@ -81,7 +81,7 @@ class Spread:
     def widened(self, mmol_l: Array) -> Array:
         """Concentrations (..., M, 10) with their deviations from the median scaled: common and specific apart."""
         logs = np.log(np.maximum(mmol_l[..., :_HCO3], TRACE))
-        middle = np.median(logs, axis=-2, keepdims=True)
+        middle = np.quantile(logs, 0.5, axis=-2, keepdims=True)
         common = (logs - middle).mean(axis=-1, keepdims=True)
         scaled = middle + self.common * common + self.specific * (logs - middle - common)
         return np.concatenate([np.exp(scaled), mmol_l[..., _HCO3:]], axis=-1)
