@@ -91,7 +91,7 @@ def record_document(record: Hindcast, loop: str) -> dict[str, Any]:
 
 def record_text(record: Hindcast, loop: str, timezone: str) -> str:
     """The record: what was forecast, what was found, and whether it beat 'no change'."""
-    lines = [f"{loop}: past forecasts, inputs as {record.inputs}; same: no change since the analysis before", ""]
+    lines = [f"{loop}: past forecasts, inputs as {record.inputs}", "same: what no change at all would have said", ""]
     rows = [("taken", "point", "ion", "found", "forecast, 80 %", "same", "share", "foreseen")]
     for row in record.rows:
         if row.ion not in ("K", "Ca", "Mg", "Na", "NO3") or row.cold_start:
