@@ -77,8 +77,10 @@ def readme_page() -> str:
 
 
 def _beginning(planned: str) -> str:
-    """The answer of a plan without its cautions and sums, which the README does not need whole."""
-    return planned.split("\nLimits that bind")[0] + "\n..."
+    """The answer of a plan up to its first caution; the sums and reasons after it the README does not need whole."""
+    answer, mark, rest = planned.partition("READ BEFORE YOU START")
+    first = rest.split("\n!!")
+    return f"{answer}{mark}{first[0]}\n!!{first[1]}\n..."
 
 
 def guide_with_answers() -> str:
