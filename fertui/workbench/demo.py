@@ -7,7 +7,7 @@ import shutil
 import tempfile
 from collections.abc import Iterator
 from dataclasses import replace
-from datetime import UTC, date, datetime, time, timedelta
+from datetime import UTC, date, datetime, time, timedelta, tzinfo
 from pathlib import Path
 
 from fertui.logbook.entries import Entry
@@ -69,11 +69,11 @@ def _entries(path: Path, site: Site, now: datetime) -> Iterator[Entry]:
         yield replace(entry, entered=min(entered + timedelta(minutes=3), now).astimezone(UTC))
 
 
-def _moment(last: date, day: int, clock: str, here: object) -> datetime:
+def _moment(last: date, day: int, clock: str, here: tzinfo) -> datetime:
     hour = time(0, 0) if clock == "day" else time.fromisoformat(clock)
-    return datetime.combine(last + timedelta(days=day), hour, here)  # type: ignore[arg-type]
+    return datetime.combine(last + timedelta(days=day), hour, here)
 
 
-def _entered(last: date, written: str, here: object) -> datetime:
+def _entered(last: date, written: str, here: tzinfo) -> datetime:
     day, _, clock = written.partition("@")
     return _moment(last, int(day), clock, here)
