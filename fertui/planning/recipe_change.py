@@ -6,7 +6,7 @@ it is: what one ion gains the others give.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -18,7 +18,7 @@ from fertui.planning.checkpoints import (
     exceeded,
     violation,
 )
-from fertui.planning.goal import NH4_STOP_PH
+from fertui.planning.goal import NH4_STOP_PH, SHARED
 from fertui.planning.programme import Solver
 from fertui.planning.recipe_programme import solved
 from fertui.planning.recipe_task import MOVED, RecipeTask
@@ -29,6 +29,8 @@ MOVE = 0.5
 """How far each ion of the feed is moved to see what the model answers [mmol/L]."""
 STAY = 0.1
 """Weight of a change of the feed beside distance to the aim in the root zone: no ion moves for nothing."""
+LEAST_GRAMS = 1e-4
+"""A salt of less [g/L] is not in a recipe."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -41,6 +43,16 @@ class Recipe:
     broken: tuple[tuple[str, float, float], ...]
     end: Array
     variants: Mapping[str, Array]
+    runner_up: RunnerUpRecipe | None
+
+
+@dataclass(frozen=True, slots=True)
+class RunnerUpRecipe:
+    """The next best recipes (stages, 10) [mmol/L], without one salt, and the managed point at the horizon (10,)."""
+
+    without: str
+    stages: Array
+    end: Array
 
 
 def usable_in_stock(task: RecipeTask) -> tuple[Material, ...]:
@@ -59,23 +71,51 @@ def usable_in_stock(task: RecipeTask) -> tuple[Material, ...]:
 def change(task: RecipeTask, runs: Runs, solver: Solver, without: Course) -> Recipe | None:
     """The recipe for a task, None where no mix of these salts keeps the limits.
 
-    Two looks, each about a run of the model; then the exact program: bands, then distance to the aim with as little
-    change of the feed as that takes. Four solver calls, four model runs at most.
+    Two looks, each about a run of the model, then the next best without one salt. Three solver calls and three model
+    runs.
     """
     task = replace(task, materials=usable_in_stock(task))
     stages = np.tile(task.running, (len(task.days), 1))
     checkpoints = _about(task, stages, runs, without)
-    found = solved(task, checkpoints, stages, solver, exact=False)
+    found = solved(task, checkpoints, stages, solver)
     if found is None:
         return None
-    checkpoints = _about(task, found, runs, without)
-    best = solved(task, checkpoints, found, solver, exact=True)
-    return _verified(task, found if best is None else best, runs, without)
+    checkpoints = _about(task, found.stages, runs, without)
+    best = solved(task, checkpoints, found.stages, solver) or found
+    left_out = _replaceable(task.materials, best.salts)
+    other = None
+    if left_out is not None:
+        fewer = tuple(each for each in task.materials if each is not left_out)
+        other = solved(replace(task, materials=fewer), checkpoints, found.stages, solver)
+    second = None if other is None or left_out is None else (left_out.name, other.stages)
+    return _verified(task, best.stages, second, runs, without)
 
 
-def feeds(task: RecipeTask, stages: Array) -> Doing:
-    """Recipes (members, stages, 10) as what the model is to do."""
-    return Doing(feeds=tuple(Feed(float(day), stages[:, s]) for s, day in enumerate(task.days)))
+def _replaceable(materials: Sequence[Material], grams: Array) -> Material | None:
+    """The salt weighed most among those for whose K, Ca or Mg another salt stands, unused if there is such a one."""
+
+    def stands_in(each: Material, others: Sequence[Material]) -> bool:
+        return any(other is not each and other.brings(ion) for other in others for ion in SHARED if each.brings(ion))
+
+    heaviest_first = [materials[j] for j in np.argsort(-grams) if grams[j] > LEAST_GRAMS]
+    unused = [each for each in materials if each not in heaviest_first]
+    for others in (unused, materials):
+        found = next((each for each in heaviest_first if stands_in(each, others)), None)
+        if found is not None:
+            return found
+    return None
+
+
+def feeds(task: RecipeTask, stages: Array, late: Array | None = None) -> Doing:
+    """Recipes (members, stages, 10) as what the model is to do; members marked ``late`` follow a day behind."""
+    if late is None or not late.any():
+        return Doing(feeds=tuple(Feed(float(day), stages[:, s]) for s, day in enumerate(task.days)))
+    found = []
+    for s, day in enumerate(task.days):
+        before = stages[:, s - 1] if s > 0 else np.broadcast_to(task.running, stages[:, s].shape)
+        found.append(Feed(float(day), np.where(late[:, None], before, stages[:, s])))
+        found.append(Feed(float(day + 1), stages[:, s]))
+    return Doing(feeds=tuple(found))
 
 
 def _about(task: RecipeTask, stages: Array, runs: Runs, without: Course) -> tuple[Checkpoint, ...]:
@@ -130,20 +170,26 @@ def _feed_checkpoint(task: RecipeTask, stage: int, recipe: Array) -> Checkpoint:
     )  # fmt: skip
 
 
-def _verified(task: RecipeTask, stages: Array, runs: Runs, without: Course) -> Recipe:
-    """The recipe as the model finds it, and carried out by half, late and with 10 % more or less of the change."""
+def _verified(task: RecipeTask, stages: Array, second: tuple[str, Array] | None, runs: Runs, without: Course) -> Recipe:
+    """The recipe as the model finds it, carried out otherwise, and the next best, in one run."""
     stages = np.round(stages, 2)
     part = stages - task.running
     cases = {
-        "plan": stages, "half of the change": task.running + 0.5 * part, "10 % more": task.running + 1.1 * part,
-        "10 % less": task.running + 0.9 * part, "unchanged": np.tile(task.running, (len(stages), 1)),
+        "plan": stages, "half of the change": task.running + 0.5 * part, "a day late": stages,
+        "10 % more": task.running + 1.1 * part, "10 % less": task.running + 0.9 * part,
+        "unchanged": np.tile(task.running, (len(stages), 1)),
+        "runner-up": stages if second is None else np.round(second[1], 2),
     }  # fmt: skip
-    course = runs.settled(feeds(task, np.array(list(cases.values()))), len(cases))
+    late = np.array([case == "a day late" for case in cases])
+    course = runs.settled(feeds(task, np.array(list(cases.values())), late), len(cases))
     checkpoints = _checkpoints(task, course, without, stages)
-    end = course.ions[task.situation.managed][task.horizon]
+    end = dict(zip(cases, course.ions[task.situation.managed][task.horizon], strict=True))
     broken = tuple(one for each in checkpoints for one in _broken(each))
-    variants = {case: member for case, member in zip(cases, end, strict=True) if case not in ("plan", "unchanged")}
-    return Recipe(stages, checkpoints, violation(checkpoints[-1], end[0]), broken, end[0], variants)
+    variants = {case: end[case] for case in cases if case not in ("plan", "unchanged", "runner-up")}
+    if task.horizon < 2:
+        del variants["a day late"]
+    other = None if second is None else RunnerUpRecipe(second[0], cases["runner-up"], end["runner-up"])
+    return Recipe(stages, checkpoints, violation(checkpoints[-1], end["plan"]), broken, end["plan"], variants, other)
 
 
 def _broken(each: Checkpoint) -> list[tuple[str, float, float]]:

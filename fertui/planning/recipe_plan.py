@@ -24,13 +24,15 @@ from fertui.planning.renewal import excess_of, renewal_of, smallest_fraction
 from fertui.planning.request import Request, cautions_for, vague
 from fertui.planning.runs import Doing, share_pct
 from fertui.planning.stock import StockSheet, stock_sheet
-from fertui.planning.values import Outlook, Plan, RecipeChange, RecipeStage, Renewal, WhatIf
+from fertui.planning.values import Outlook, Plan, RecipeChange, RecipeStage, Renewal, RunnerUp, WhatIf
 from fertui.site.model import Composition, Supply
 from fertui.site.presets import target_of
 
 LITRES = 10.0
 GAINED_PCT = 0.3
 """Points of share a recipe must gain on doing nothing to be worth changing."""
+TOLD_MMOL_L = 0.05
+"""Difference of an ion between two recipes that is worth a word: the last digit a grower reads."""
 SECOND_STAGE_AFTER = 7
 """Days after which a recipe may be changed again: practice waits 7-10 (Nutrient Solutions for Greenhouse Crops
 2016)."""
@@ -129,6 +131,7 @@ def _shown(request: Request, task: RecipeTask, recipe: Recipe, empty: Plan) -> P
         cautions=cautions_for(used),
         reasons=_reasons(task, recipe),
         arithmetic=(*_arithmetic(request, task, recipe), *sheet.arithmetic),
+        runner_up=_runner_up(recipe),
         sensitivity=_sensitivity(recipe),
         notices=(*notice, *over_limit_words(recipe.end, request.managed), *sheet.notices),
     )  # fmt: skip
@@ -266,3 +269,21 @@ def _sensitivity(recipe: Recipe) -> tuple[WhatIf, ...]:
         words = "still in the bands" if missed <= REACHED_PCT else f"{missed:.0f} points out of the bands"
         found.append(WhatIf(case, share_pct(composition), float(ec_of(end, composition)), f"{case}: {words}"))
     return tuple(found)
+
+
+def _runner_up(recipe: Recipe) -> RunnerUp | None:
+    """The next best recipe in words: what its feed has of each ion instead, and what comes of it."""
+    second = recipe.runner_up
+    if second is None:
+        return None
+    moved = [
+        f"{ion} {other:.2f} instead of {best:.2f}"
+        for ion, best, other in zip(IONS, recipe.stages[0], second.stages[0], strict=True)
+        if ion != "HCO3" and abs(other - best) >= TOLD_MMOL_L
+    ]
+    if not moved:
+        return RunnerUp((), f"without {second.without}: the other salts make the same feed")
+    shares = f"{share_words(second.end)} instead of {share_words(recipe.end)}"
+    missed = violation(recipe.checkpoints[-1], second.end) - recipe.missed_pct
+    further = f", {missed:.1f} points further from the bands" if missed > GAINED_PCT else ""
+    return RunnerUp((), f"without {second.without}: {', '.join(moved)} mmol/L in the feed; {shares}{further}")

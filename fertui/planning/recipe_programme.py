@@ -12,8 +12,9 @@ import numpy as np
 
 from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
 from fertui.planning.checkpoints import FAR_COST, Checkpoint, ec_of, hard_rows, misfit_rows, violation_rows
+from fertui.planning.dosing import FIRST_TO_SECOND
 from fertui.planning.goal import LIMITED, NH4_PART_OF_N
-from fertui.planning.programme import Aim, Region, Solver, lexicographic
+from fertui.planning.programme import Region, Solver
 from fertui.planning.recipe_task import MOVED, RecipeTask
 from fertui.planning.values import Binding
 
@@ -67,10 +68,16 @@ class Places:
         return wide, np.full(len(ions), -np.inf) if low is None else low - shift, high - shift
 
 
-def solved(
-    task: RecipeTask, checkpoints: Sequence[Checkpoint], stages: Array, solver: Solver, exact: bool
-) -> Array | None:
-    """Recipes (stages, 10) that solve the program about ``stages``; None where there is none."""
+@dataclass(frozen=True, slots=True)
+class Solved:
+    """Recipes (stages, 10) [mmol/L] and the salts of the first stage, in the order of the materials [g/L]."""
+
+    stages: Array
+    salts: Array
+
+
+def solved(task: RecipeTask, checkpoints: Sequence[Checkpoint], stages: Array, solver: Solver) -> Solved | None:
+    """The recipes that solve the program about ``stages`` in one call; None where there are none."""
     x0 = stages[:, MOVED].ravel()
     bands, aim, step = violation_rows(checkpoints, x0), misfit_rows(checkpoints, x0), _step(task)
     count, ions = len(task.days), len(MOVED)
@@ -83,12 +90,12 @@ def solved(
         *_soft(places, bands[:2], aim[:2]),
         *_feed_rows(task, places, checkpoints, stages, step),
     ]
-    found = lexicographic(solver, _region(task, places, blocks, aim[3]), _aims(task, places, bands[2], aim[2], exact))
+    found = solver.minimise(_cost(task, places, bands[2], aim[2]), _region(task, places, blocks, aim[3]))
     if found is None:
         return None
     recipes = stages.copy()
     recipes[:, MOVED] = (own + places.content @ found[: places.salts]).reshape(count, ions)
-    return recipes
+    return Solved(recipes, found[: len(task.materials)])
 
 
 def _soft(places: Places, bands: tuple[Array, Array], aim: tuple[Array, Array]) -> list[Block]:
@@ -127,14 +134,11 @@ def _region(task: RecipeTask, places: Places, blocks: Sequence[Block], near: Arr
     return Region(matrix, low, high, np.zeros(places.size), most, np.zeros(places.size, int))
 
 
-def _aims(task: RecipeTask, places: Places, bands: Array, aim: Array, exact: bool) -> list[Aim]:
-    """Bands, then distance with what goes beyond the rule; in one where only a first look is wanted."""
-    rest = places.size - places.salts - places.slacks
-    first = np.concatenate([np.zeros(places.salts), bands, np.zeros(rest)])
+def _cost(task: RecipeTask, places: Places, bands: Array, aim: Array) -> Array:
+    """Bands far before distance and what goes beyond the rule."""
     beyond = BEYOND / np.maximum(np.tile(task.running[list(MOVED)], 2 * len(task.days)), 1.0)
-    before = np.zeros(places.salts + places.slacks)
-    second = np.concatenate([before, aim, aim, FAR_COST * aim, np.zeros(places.moved), beyond])
-    return [Aim(first, 1e-6), Aim(second)] if exact else [Aim(100.0 * first + second)]
+    salts = np.zeros(places.salts)
+    return np.concatenate([salts, FIRST_TO_SECOND * bands, aim, aim, FAR_COST * aim, np.zeros(places.moved), beyond])
 
 
 def _held(task: RecipeTask, checkpoints: Sequence[Checkpoint], stages: Array) -> tuple[Array, Array, Array]:

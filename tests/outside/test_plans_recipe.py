@@ -117,3 +117,33 @@ def test_the_arithmetic_names_what_is_missing_per_m2(stone_wool: Estimate) -> No
     now = float(line.split(" - ")[1].split(" now")[0])
     missing = float(line.split("= ")[1].split(" mmol/m2")[0])
     assert missing == pytest.approx((aim - now) * WATER_L, abs=0.1)
+
+
+def test_a_recipe_half_late_and_ten_percent_off(stone_wool: Estimate) -> None:
+    found = plan(stone_wool, days=14)
+    by_case = {each.case: each.shares_pct["K"] for each in found.sensitivity}
+    assert set(by_case) == {"half of the change", "a day late", "10 % more", "10 % less"}
+    assert found.recipe is not None
+    # carried out a day late by the model itself: the running feed for one day, then the recipe
+    late = Scenario(recipes=(FeedRecipe(AT + timedelta(days=1, minutes=1), found.recipe.ions_mmol_l),))
+    end = trajectories(copies(stone_wool, 1), 14, late, settled=True).ions["root_zone"][14, 0]
+    assert by_case["a day late"] == pytest.approx(share_of_k(end), abs=0.1)
+    on_time = share_of_k(end_of(stone_wool, found.recipe.ions_mmol_l, 14))
+    assert by_case["half of the change"] < by_case["a day late"] < on_time
+
+
+def test_the_next_best_recipe_and_what_it_costs(stone_wool: Estimate) -> None:
+    found = plan(stone_wool, days=14)
+    assert found.runner_up is not None
+    left_out, words = found.runner_up.difference.removeprefix("without ").split(": ", 1)
+    assert left_out in SALTS
+    assert "instead of" in words or words == "the other salts make the same feed"
+    assert found.model_runs <= 12
+    assert found.solver_calls <= 6
+    # few salts: without potassium sulfate or nitrate the potassium has to come with the other's anion
+    few = ("potassium nitrate", "calcium nitrate double salt", "magnesium sulfate heptahydrate", "potassium sulfate",
+           "monopotassium phosphate")  # fmt: skip
+    other = plan(stone_wool, days=14, supplies=few).runner_up
+    assert other is not None
+    assert "mmol/L in the feed" in other.difference
+    assert "K share" in other.difference
