@@ -65,6 +65,7 @@ class Prompt(Page, can_focus=True):
     def action_drop(self) -> None:
         """Forget the question."""
         self.fertui.end_prompt()
+        self.fertui.say("Left unanswered; nothing was saved or changed.", "watch")
 
 
 def question_line(question: str, typed: Typed, width: int) -> Line:

@@ -201,6 +201,12 @@ class Shell(App[int], inherit_bindings=False):
         """Keep keys back while something is under way that decides what they mean."""
         self._holding += 1
 
+    def drop_held_keys(self) -> int:
+        """Leave out keys that were typed before a question showed; returns how many."""
+        dropped = len(self._held)
+        self._held.clear()
+        return dropped
+
     async def release_keys(self, done: int = 0) -> None:
         """Take the keys that were kept back, unless something else is under way."""
         self._holding -= done

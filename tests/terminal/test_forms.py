@@ -147,7 +147,7 @@ def test_a_plan_with_acid_is_held_back_until_the_label_fits(site: Path, counting
 
 @pytest.mark.parametrize(
     ("typed", "asked"),
-    [("280", "280"), ("26", "26"), ("-1", "-1"), ("nan", "nan"), ("2.6 mS/m2", "mS/m2"), ("59", "59")],
+    [("280", "280"), ("26", "26"), ("-1", "-1"), ("nan", "A number goes here"), ("2.6 mS/m2", "mS/m2"), ("59", "59")],
 )
 def test_a_value_that_cannot_be_or_is_out_by_ten_is_asked_about_at_once(
     counting: Counted, typed: str, asked: str
@@ -170,6 +170,56 @@ def test_keys_typed_ahead_of_a_slow_line_land_in_their_fields(counting: Counted)
     text = counting.terminal.until_text("= 18.2 C")
     assert "2.61______" in text
     assert "5.4_______" in text
+
+
+def test_a_newcomer_who_types_initials_into_a_number_is_told_how_to_save(
+    tmp_path: Path, open_terminal: Opened
+) -> None:
+    """On a fresh site, where there is no last value to compare with."""
+    from fertui.workbench.keeping import make_new_site
+
+    answers = {"crop": "tomato", "medium": "coir", "layout": "drain-blend", "area": "1200", "drain-store": "5000"}
+    folder, _ = make_new_site(tmp_path / "fresh", answers)
+    terminal = open_terminal(folder)
+    terminal.until_text("No reading logged yet")
+    terminal.press("r")
+    assert "+ saves, then asks your initials" in terminal.text
+    for text in ("2.6", "5.6", "21", "2900"):
+        terminal.press(text, "enter")
+    terminal.press("MK", "enter")
+    assert "A number goes here. + saves, then asks your initials." in terminal.text
+    assert "MK" not in terminal.text
+    terminal.press("21", "enter", "20.5", "enter", "4.1", "+")
+    give_initials(terminal)
+    terminal.until_text("saved")
+    terminal.press("7")
+    assert "EC 2.6, pH 5.6, temperature 21" in terminal.until_text("newest first")
+    assert {entry.by for entry in open_site(folder).history(kind="reading")} == {"MK"}
+
+
+def test_after_a_question_the_value_typed_anew_takes_the_place_of_the_old_one(counting: Counted) -> None:
+    counting.terminal.press("r", "26", "enter")
+    counting.terminal.until_text("type it again")
+    counting.terminal.press("2.6", "enter")
+    counting.terminal.until_text("= 2.6 mS/cm")
+
+
+def test_keys_typed_before_a_question_was_seen_do_not_answer_it(site: Path, counting: Counted) -> None:
+    counting.terminal.type(b"r26\r\r5.4\r")
+    text = counting.terminal.until_text("keys typed ahead were left out")
+    assert "26________" in text
+    assert "5.4" not in next(row for row in text.splitlines() if row.startswith(" ▸"))
+
+
+def test_initials_refused_or_left_save_nothing_and_say_so(site: Path, counting: Counted) -> None:
+    counting.terminal.press("r", "2.6", "+")
+    counting.terminal.until_text("Your initials:")
+    counting.terminal.press("esc")
+    counting.terminal.until_text("nothing was saved")
+    assert fresh(site, "reading") == []
+    counting.terminal.press("+")
+    give_initials(counting.terminal)
+    counting.terminal.until_text("saved")
 
 
 def test_star_takes_the_last_value(counting: Counted) -> None:

@@ -65,6 +65,10 @@ class Answers:
         own = max(index for index, start in enumerate(starts) if start <= self.at)
         return self.moved(starts[(own + step) % len(starts)])
 
+    def emptied(self) -> Answers:
+        """The field under the cursor ready to be typed anew."""
+        return self if self.current.choices else replace(self, typed=Typed())
+
     def type(self, characters: str) -> Answers:
         """Characters typed: into the text, or to pick a choice by its beginning."""
         if self.current.choices:

@@ -60,6 +60,8 @@ class Form(View):
         self._words: list[tuple[str, str]] = []
         self._checked: list[tuple[str, str]] = []
         self._done = False
+        self._asked_back = False
+        self._stray = False
         self._doubted: dict[int, tuple[str, ...]] = {}
         self._confirmed: frozenset[str] = frozenset()
 
@@ -73,8 +75,11 @@ class Form(View):
         """Title, fields, and at the foot what is said back."""
         last: Last = snapshot.get(Ask("previous", self.loop)) or {}
         rows, at = draw_form(self.answers, last, self.fertui.moment, width)
-        unit = f"bare numbers of ions are {self.spec.unit}" if self.spec.unit else "empty: not measured"
-        title = line(Span(f" {self.spec.title}, {literal(self.loop)}", "title"), Span(f"   {unit}", "faint"))
+        unit = f"bare ions: {self.spec.unit}" if self.spec.unit else "empty: not measured"
+        title = line(
+            Span(f" {self.spec.title}, {literal(self.loop)}", "title"),
+            Span(f"   {unit}; {how_to_save(snapshot.initials)}", "faint"),
+        )
         height = max(1, self.stage_height - 1 - self._foot)
         top = max(0, min(at - height + 2, len(rows) - height))
         shown = [*rows[top : top + height], *[BLANK] * (height - len(rows))]
@@ -98,22 +103,34 @@ class Form(View):
 
     def take_key(self, event: events.Key) -> bool:
         """Text and editing keys go into the field; anything else is left to the keys of the form."""
-        current = self.answers.current
-        if event.is_printable and event.character:
-            if current.is_number and event.character in "+*?":
+        current, character = self.answers.current, event.character
+        if event.is_printable and character:
+            if current.is_number and character in "+*?":
                 return False
-            self._set(self.answers.type(event.character))
+            self._type(character)
             return True
         edited = self.answers.edit(event.key)
         if edited is None:
             return False
+        self._asked_back = self._stray = False
         self._set(edited)
         return True
 
     def take_paste(self, text: str) -> None:
         """Pasted text counts as typed."""
-        if not self.answers.current.choices:
-            self._set(self.answers.type(text))
+        if text and not self.answers.current.choices:
+            self._type(text)
+
+    def _type(self, characters: str) -> None:
+        """Put characters into the field: after a question in place of what was asked about; no letter begins a
+        number."""
+        answers = self.answers.emptied() if self._asked_back else self.answers
+        self._stray = answers.current.is_number and not answers.typed.text and characters[0].isalpha()
+        if self._stray:
+            self.say((f"A number goes here. {how_to_save(self.fertui.snapshot.initials)}.", "watch"))
+            return
+        self._asked_back = False
+        self._set(answers.type(characters))
 
     def _set(self, answers: Answers) -> None:
         self.answers = answers
@@ -129,6 +146,9 @@ class Form(View):
 
     def action_next(self) -> None:
         """The next field; after the last one, save."""
+        if self._stray:  # the Enter that ends letters typed where a number goes
+            self._stray = False
+            return
         at = self.answers.at
         if at in self.answers.doubts and self.answers.typed.text == self.answers.texts[at]:
             self._confirmed |= set(self._doubted.get(at, ()))
@@ -161,6 +181,7 @@ class Form(View):
 
     def _leave_field(self, go_on: Callable[[], None]) -> None:
         """Have the field understood before the cursor leaves it; a refusal or a doubt keeps it there."""
+        self._asked_back = self._stray = False
         self.answers = self.answers.with_typed_kept()
         number, text = self.answers.at, self.answers.texts[self.answers.at]
         each = self.answers.current
@@ -179,18 +200,24 @@ class Form(View):
 
     def _heard(self, number: int, answer: Answer, go_on: Callable[[], None]) -> None:
         if answer.value is None:
-            self.say((answer.trouble, "act"))
+            self._ask_back((answer.trouble, "act"))
         else:
             echo, self._doubted[number] = answer.value
             doubts = self._doubted[number]
             self.answers = self.answers.heard(number, echo, " ".join(doubts))
             if doubts:
-                self.say(*((doubt, "watch") for doubt in doubts), ("Enter keeps it; or type it again.", "faint"))
+                self._ask_back(*((doubt, "watch") for doubt in doubts), ("Enter keeps it; or type it again.", "faint"))
             else:
                 self._words = []
                 go_on()
                 self.keep()
                 self._check()
+
+    def _ask_back(self, *words: tuple[str, str]) -> None:
+        """Ask about the field; keys typed before the question was seen answer nothing and are left out."""
+        self._asked_back = True
+        left_out = self.fertui.drop_held_keys()
+        self.say(*words, *([(f"{left_out} keys typed ahead were left out.", "watch")] if left_out else []))
 
     def _check(self) -> None:
         """For an analysis: whether what is typed so far holds together."""
@@ -279,6 +306,15 @@ class Form(View):
                     first_empty
                 )
             )
+
+
+def how_to_save(initials: str) -> str:
+    """The key that saves, and under whose initials.
+
+    >>> how_to_save(""), how_to_save("MK")
+    ('+ saves, then asks your initials', '+ saves as MK')
+    """
+    return f"+ saves as {literal(initials)}" if initials else "+ saves, then asks your initials"
 
 
 def _doubt(bench: Bench, kind: str, texts: Texts, name: str, loop: str) -> tuple[str, ...]:
