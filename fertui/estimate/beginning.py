@@ -13,7 +13,7 @@ from fertui.estimate.drives import stock_proportions
 from fertui.estimate.ensemble import ALKALINITY_MEQ_L, Ensemble, compartment, unknowns
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
-from fertui.estimate.record import Record
+from fertui.estimate.record import HISTORY_DAYS, WHOLE_DAYS, Record, start_among
 from fertui.estimate.setting import Setting
 from fertui.loop import ROOT, STORE, start
 
@@ -23,7 +23,8 @@ NOT_ANALYSED = 0.3
 """What may be in a solution that nobody analysed: most likely nothing more, else some part of the feed."""
 UNSEEN_SD = 0.30
 """Spread (log) of an ion, or of a vessel, that the first analysis did not show."""
-ANEW_EVERY_DAYS = 30
+NEW_MEDIUM_DAYS = 28.0
+"""A new medium gives and takes for about a month; later its load is that of the solution."""
 SHORTEST = 1e-3
 
 
@@ -38,34 +39,30 @@ class Beginning:
 def beginning(record: Record, setting: Setting, usable: tuple[Observation, ...]) -> Beginning:
     """Where an estimate of this record begins.
 
-    At the first analysis since the crop, the medium or the solution was last renewed, at most ``history_days`` back.
-    A medium that exchanges begins with itself: its load matters more than the first analysis. Without any analysis the
-    estimate begins with the record, from the feed.
+    At an analysis since the crop, the medium or the solution was last renewed: the first one for the whole record, else
+    the one that ``start_among`` names. A medium that exchanges and was new after that begins with itself: its load
+    matters more than the first analysis. Without any analysis the estimate begins with the record, from the feed.
     """
     anew = max((time for time in record.anew if time <= record.end), default=-np.inf)
-    oldest = _oldest(record)
-    if setting.exchanges and record.new_medium is not None and max(record.new_medium, anew) >= oldest:
-        return Beginning(max(record.new_medium, anew), None)
+    oldest = record.end - (WHOLE_DAYS if record.whole else HISTORY_DAYS)
     shown = [
         each
         for each in usable
         if each.time >= max(anew, oldest) and len(each.ions) >= LEAST_IONS and shows_a_vessel(setting, each)
     ]
+    times = [each.time for each in shown]
+    begin = (times or [oldest])[0] if record.whole else start_among(times, record.end)
+    if setting.exchanges and record.new_medium is not None and record.new_medium >= begin - NEW_MEDIUM_DAYS:
+        return Beginning(max(record.new_medium, anew), None)
     if shown:
-        return Beginning(shown[0].time, shown[0])
+        return next(Beginning(each.time, each) for each in shown if each.time >= begin)
     first = record.first if record.first is not None else record.end
-    return Beginning(float(min(max(anew, oldest, first), record.end - SHORTEST)), None)
+    return Beginning(float(min(max(anew, begin, first), record.end - SHORTEST)), None)
 
 
 def shows_a_vessel(setting: Setting, seen: Observation) -> bool:
     """Whether it is an analysis of a solution that the members carry."""
     return seen.is_analysis and compartment(setting, seen.point) is not None
-
-
-def _oldest(record: Record) -> float:
-    """The earliest start, moved in steps so that one more day does not shift the whole estimate."""
-    day = (record.at.toordinal() - record.history_days) // ANEW_EVERY_DAYS * ANEW_EVERY_DAYS
-    return record.end - (record.at.toordinal() - day)
 
 
 def first_members(record: Record, setting: Setting, begin: Beginning, members: int, seed: int) -> Ensemble:

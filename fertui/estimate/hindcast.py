@@ -22,7 +22,7 @@ from fertui.estimate.forecast import trajectories
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
 from fertui.estimate.ranges import HIGH, LOW, Spread, shares
-from fertui.estimate.record import ANEW, Record, read
+from fertui.estimate.record import ANEW, WHOLE_DAYS, Record, read
 from fertui.estimate.scores import HindcastRow, Summary, crps, summary
 from fertui.estimate.walk import CLOSE, Way, nights_of
 from fertui.logbook.entries import Entry
@@ -30,8 +30,6 @@ from fertui.site.model import Loop, Site
 
 INPUTS = ("logged", "planned")
 MEMBERS_OF_RECORD = 2 * MEMBERS
-HISTORY_DAYS = 730
-"""The record goes two years back."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,7 +63,7 @@ def hindcast(
     kept = [entry for entry in entries if entry.loop == loop.name and entry.at <= at]
     rows: list[HindcastRow] = []
     for end in _epochs(kept):
-        run = Assimilation(read(site, loop, kept, end, HISTORY_DAYS), count, seed)
+        run = Assimilation(read(site, loop, kept, end, whole=True), count, seed)
         run.run()
         ahead = _Logged(run) if inputs == "logged" else _Planned(site, loop, kept, count, seed)
         for pair in _pairs(run):
@@ -79,7 +77,7 @@ def _epochs(entries: Sequence[Entry]) -> list[datetime]:
     starts = [entry.at for entry in entries if entry.kind == "crop" and entry.text_of("event") in ANEW]
     ends = [max((when for when in analyses if when < start), default=None) for start in starts]
     last = analyses[-1:] if analyses else []
-    oldest = last[0] - timedelta(days=HISTORY_DAYS) if last else None
+    oldest = last[0] - timedelta(days=WHOLE_DAYS) if last else None
     return sorted({when for when in [*ends, *last] if when is not None and oldest is not None and when > oldest})
 
 

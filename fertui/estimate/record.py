@@ -22,8 +22,11 @@ from fertui.logbook.entries import Entry
 from fertui.loop.values import Event
 from fertui.site.model import Loop, Site
 
-HISTORY_DAYS = 180
-"""An estimate begins at most so far back: what happened earlier has left the solution long ago."""
+HISTORY_DAYS, WHOLE_DAYS = 180, 730
+"""An estimate begins at most so far back: what happened earlier has left the solution long ago. The record of past
+forecasts goes two years back."""
+LEAST_DAYS, KEPT_ANALYSES, SHIFT = 60, 6, 3
+"""It begins at least 60 days back and at least six analyses back, and moves on by three analyses at a time."""
 
 LASTING = ("recipe", "setpoint", "batch", "crop", "plan")
 """Kinds whose entries stay in force until the next one, however old they are."""
@@ -38,7 +41,7 @@ POINT_OF_BLEED = {"tank": "tank", "drain": "drain", "drain_store": "drain_store"
 class Record:
     """One loop's entries up to ``at``, as the engine needs them.
 
-    ``history_days``: how far back an estimate may begin.
+    ``whole``: whether it goes back as far as there is any.
     ``first``: time of the first entry, None without any.
     ``water``: litres by name, spread over their time; ``bleed`` stands among ``events``. ``stock``: mmol (n, 10);
     ``stock_held``: what each stock tank held from which batch on [mmol/L].
@@ -48,7 +51,7 @@ class Record:
     site: Site
     loop: Loop
     at: datetime
-    history_days: int
+    whole: bool
     zero: datetime
     end: float
     first: float | None
@@ -96,21 +99,44 @@ class Record:
         return self.moment(days + 1e-6).astimezone(ZoneInfo(self.site.timezone)).toordinal()
 
 
-def since_needed(at: datetime) -> datetime:
-    """The earliest time whose entries an estimate at ``at`` looks at, ``LASTING`` kinds aside."""
-    return at - timedelta(days=HISTORY_DAYS + 31)
+def start_among(times: Sequence[float], end: float, kept: int = KEPT_ANALYSES) -> float:
+    """When an estimate up to ``end`` begins, from the times [d] of its analyses in order.
+
+    >>> start_among([0.0, 10.0, 20.0, 30.0, 40.0, 50.0, 60.0, 70.0, 80.0, 90.0, 100.0], 101.0)
+    30.0
+    """
+    if not times:
+        return end - LEAST_DAYS
+    place = max((len(times) - kept) // SHIFT * SHIFT, 0)
+    early = [time for time in times if time <= end - LEAST_DAYS]
+    return min(times[place], early[-1] if early else times[0])
 
 
-def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, history_days: int = HISTORY_DAYS) -> Record:
+def since_needed(at: datetime, analyses: Iterable[Entry] = ()) -> datetime:
+    """The earliest time whose entries an estimate at ``at`` looks at, ``LASTING`` kinds aside.
+
+    ``analyses``: analysis entries of all loops of the last ``HISTORY_DAYS``; without any it is that far back.
+    """
+    oldest = at - timedelta(days=HISTORY_DAYS + 7)
+    by_loop: dict[str, list[float]] = {}
+    for entry in sorted(analyses, key=lambda each: each.at):
+        if oldest <= entry.at <= at and entry.point not in ("source", "feed") and not entry.doubtful:
+            by_loop.setdefault(entry.loop, []).append((entry.at - oldest).total_seconds() / 86400.0)
+    end = HISTORY_DAYS + 7.0
+    starts = [start_among(times, end, KEPT_ANALYSES + SHIFT) for times in by_loop.values()]
+    return max(oldest + timedelta(days=min(starts) - 1.0), oldest) if starts else oldest
+
+
+def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, whole: bool = False) -> Record:
     """The record of a loop from its effective entries; those of other loops and after ``at`` are left out."""
     own = sorted((each for each in entries if each.loop == loop.name and _known(each, at)), key=lambda each: each.at)
-    first = max(own[0].at, at - timedelta(days=history_days + 31)) if own else at
+    first = max(own[0].at, at - timedelta(days=WHOLE_DAYS if whole else HISTORY_DAYS + 7)) if own else at
     zone = ZoneInfo(site.timezone)
     zero = datetime.combine(first.astimezone(zone).date(), time(), zone).astimezone(UTC)
     by_kind: dict[str, list[Entry]] = {}
     for entry in own:
         by_kind.setdefault(entry.kind, []).append(entry)
-    return _Reader(site, loop, zero, zone, by_kind).record(at, history_days)
+    return _Reader(site, loop, zero, zone, by_kind).record(at, whole)
 
 
 def _known(entry: Entry, at: datetime) -> bool:
@@ -127,12 +153,12 @@ class _Reader:
         self.site, self.loop, self.zero, self.zone, self.by_kind = site, loop, zero, zone, by_kind
         self.assumed: list[str] = []
 
-    def record(self, at: datetime, history_days: int) -> Record:
+    def record(self, at: datetime, whole: bool) -> Record:
         """The whole record, piece by piece."""
         seen = self._observations()
         held = compositions.stock_by_tank(self.site, self.loop, self._certain("batch"))
         return Record(
-            site=self.site, loop=self.loop, at=at, history_days=history_days, zero=self.zero, end=self.days(at),
+            site=self.site, loop=self.loop, at=at, whole=whole, zero=self.zero, end=self.days(at),
             first=self._first(), water=self._water(), levels=self._levels(), stock=self._stock(held), stock_held=held,
             events=self._events(), feed=self._feed(seen),
             recipes=self._recipes(), sources=self._sources(), setpoints=self._steps("setpoint"),

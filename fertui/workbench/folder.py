@@ -62,7 +62,8 @@ class SiteFolder:
         from fertui.estimate.record import LASTING, since_needed
 
         at = at or now()
-        since = since_needed(at)
+        analyses = self.book.entries(kinds=("analysis",), since=since_needed(at), at=at, known=known)
+        since = since_needed(at, analyses)
         old = self.book.entries(kinds=(*LASTING, *COUNTED_BY_YEAR), at=since, known=known)
         return (*(entry for entry in old if entry.at < since), *self.book.entries(since=since, at=at, known=known))
 
