@@ -43,7 +43,7 @@ class Checkpoint:
 
     ``base`` and ``now`` (10,) [mmol/L]: without the plan, and with the plan that was last run. ``slope`` (10,
     variables). ``ec_factor``: what the loop's meter reads over what the ions make. ``before``: index of the
-    checkpoint just before a dose, whose EC the step is counted from; -1 where there is none.
+    checkpoint whose EC the step is counted from, just before a dose or, in a root zone, a day earlier; -1: none.
     """
 
     name: str
@@ -59,6 +59,21 @@ class Checkpoint:
     weight: float = 0.0
     aim_weight: float = 0.0
     before: int = -1
+
+
+def before_of(each: Checkpoint, checkpoints: Sequence[Checkpoint]) -> Checkpoint | None:
+    """The checkpoint whose EC the step of another is counted from; None where it has no step."""
+    return checkpoints[each.before] if each.before >= 0 else None
+
+
+def step_name(each: Checkpoint, before: Checkpoint) -> str:
+    """What the step is called: that of a dose, or that of a day."""
+    return "EC step" if each.day == before.day else "EC step of a day"
+
+
+def step_most(each: Checkpoint, before: Checkpoint) -> float:
+    """Most that EC may rise between two checkpoints [mS/cm]: the limit, or what it rises without the plan."""
+    return max(each.goal.ec_step, float(ec_of(each, each.base) - ec_of(before, before.base)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -124,12 +139,14 @@ def _ec_parts(each: Checkpoint, checkpoints: Sequence[Checkpoint], x0: Array) ->
     most = max(each.goal.ec_most - MARGIN["EC"], float(ec_of(each, each.base)))
     source = each.goal.sources.get("EC", "")
     parts: list[Part] = [(row, most - float(ec) + float(row @ x0), f"EC, {each.name}", most, "mS/cm", source)]
-    if each.before >= 0:
-        earlier = checkpoints[each.before]
+    earlier = before_of(each, checkpoints)
+    if earlier is not None:
         ec_before, _, slope_before, _ = _slopes(earlier)
         rise = row - slope_before @ earlier.slope
-        room = each.goal.ec_step - MARGIN["EC"] - float(ec - ec_before) + float(rise @ x0)
-        parts.append((rise, room, f"EC step, {each.name}", each.goal.ec_step, "mS/cm", "common practice"))
+        highest = step_most(each, earlier)
+        room = highest - MARGIN["EC"] - float(ec - ec_before) + float(rise @ x0)
+        words = f"{step_name(each, earlier)}, {each.name}"
+        parts.append((rise, room, words, highest, "mS/cm", "common practice"))
     return parts
 
 
@@ -160,7 +177,7 @@ def _mineral_parts(each: Checkpoint, x0: Array) -> list[Part]:
     return parts
 
 
-def exceeded(each: Checkpoint, composition: Array, before: Array | None = None) -> list[tuple[str, float, float]]:
+def exceeded(each: Checkpoint, composition: Array, before: Checkpoint | None = None) -> list[tuple[str, float, float]]:
     """Hard limits that a composition (10,) passes at a checkpoint: (what, value, limit), with the full chemistry."""
     found = [
         ("EC", float(ec_of(each, composition)), max(each.goal.ec_most, float(ec_of(each, each.base)))),
@@ -175,7 +192,8 @@ def exceeded(each: Checkpoint, composition: Array, before: Array | None = None) 
         for name, i, m in zip(("gypsum", "brushite"), indices_of(each, composition), most, strict=True)
     ]
     if before is not None:
-        found.append(("EC step", float(ec_of(each, composition) - ec_of(each, before)), each.goal.ec_step))
+        rise = float(ec_of(each, composition) - ec_of(before, before.now))
+        found.append((step_name(each, before), rise, step_most(each, before)))
     return [each for each in found if each[1] > each[2] + TOLERANCE[each[0]]]
 
 
@@ -187,7 +205,10 @@ NEAR_SHARE = 0.05
 """Distance of a share over its aim from which it counts as far."""
 MARGIN = {"EC": 4e-3, "SI": 1e-2}
 """Room the program keeps from a limit that is not straight, so that the full model does not find it passed."""
-TOLERANCE = {"EC": 1e-3, "EC step": 1e-3, "gypsum": 2e-3, "brushite": 2e-3, "NH4": 2e-3, "Na": 1e-2, "Cl": 1e-2}
+TOLERANCE = {
+    "EC": 1e-3, "EC step": 1e-3, "EC step of a day": 1e-3, "gypsum": 2e-3, "brushite": 2e-3, "NH4": 2e-3, "Na": 1e-2,
+    "Cl": 1e-2,
+}  # fmt: skip
 """How far the full model may pass a limit before the plan is taken back: well under the last digit shown."""
 
 

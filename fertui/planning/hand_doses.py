@@ -13,7 +13,15 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from fertui.chemistry.ions import INDEX, IONS, Array
-from fertui.planning.checkpoints import NUTRIENTS_THAT_STAY, Checkpoint, ec_factor, ec_of, exceeded, violation
+from fertui.planning.checkpoints import (
+    NUTRIENTS_THAT_STAY,
+    Checkpoint,
+    before_of,
+    ec_factor,
+    ec_of,
+    exceeded,
+    violation,
+)
 from fertui.planning.dosing import Measures, coarse, look, other, settle
 from fertui.planning.goal import NH4_STOP_PH, SHARED, Goal
 from fertui.planning.programme import Solver
@@ -197,7 +205,7 @@ def _about(task: Task, measures: Measures, x0: Array, runs: Runs, without: Cours
 
 
 def _checkpoints(task: Task, doing: Doing, course: Course, without: Course, move: Array) -> tuple[Checkpoint, ...]:
-    """Tank before and after each step, then tank and managed point on every day to the horizon."""
+    """Tank before and after each step, then every day to the horizon."""
     found: list[Checkpoint] = []
     for day in task.days:
         before = course.ions[task.tank][day]
@@ -208,15 +216,26 @@ def _checkpoints(task: Task, doing: Doing, course: Course, without: Course, move
         point = _checkpoint(task, f"tank after the dose of day {day}", task.tank, day, base, after, move)
         step = -1 if last else len(found) - 1
         found.append(replace(point, before=step, weight=float(last), aim_weight=float(last)))
-    for day in range(1, task.horizon + 1):
-        for name in dict.fromkeys((task.tank, task.situation.managed)):
-            managed, last = name == task.situation.managed, day == task.horizon
-            weight = (1.0 if last else DAILY_WEIGHT / task.horizon) if managed else 0.0
+    return (*found, *_daily(task, course, without, move, len(found)))
+
+
+def _daily(task: Task, course: Course, without: Course, move: Array, first: int) -> list[Checkpoint]:
+    """Tank and managed point on every day; a root zone of its own is counted against the day before, from now on.
+
+    ``first``: how many checkpoints stand before these.
+    """
+    managed, found = task.situation.managed, list[Checkpoint]()
+    rooted = managed != task.tank
+    for day in range(0 if rooted and task.horizon else 1, task.horizon + 1):
+        for name in (task.tank, managed) if rooted and day else (managed,):
+            steered, last = name == managed, day == task.horizon
+            weight = (1.0 if last else DAILY_WEIGHT / task.horizon) if steered and day else 0.0
             point = _checkpoint(
                 task, f"{name} on day {day}", name, day, without.ions[name][day, 0], course.ions[name][day], move
             )
-            found.append(replace(point, weight=weight, aim_weight=float(managed and last)))
-    return tuple(found)
+            yesterday = first + len(found) - 2 if rooted and steered and day else -1
+            found.append(replace(point, weight=weight, aim_weight=float(steered and last), before=yesterday))
+    return found
 
 
 def _checkpoint(task: Task, name: str, point: str, day: float, base: Array, members: Array, move: Array) -> Checkpoint:
@@ -283,5 +302,5 @@ def _lighter(task: Task, measures: Measures, units: Array, days: set[float]) -> 
 
 
 def _broken(each: Checkpoint, points: Sequence[Checkpoint]) -> list[tuple[str, float, float]]:
-    before = points[each.before].now if each.before >= 0 else None
-    return [(f"{what}, {each.name}", value, limit) for what, value, limit in exceeded(each, each.now, before)]
+    passed = exceeded(each, each.now, before_of(each, points))
+    return [(f"{what}, {each.name}", value, limit) for what, value, limit in passed]

@@ -8,7 +8,7 @@ from collections.abc import Iterable, Mapping, Sequence
 import numpy as np
 
 from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
-from fertui.planning.checkpoints import Checkpoint, ec_of, indices_of
+from fertui.planning.checkpoints import Checkpoint, before_of, ec_of, indices_of, step_most, step_name
 from fertui.planning.goal import LIMITED, SHARED, Goal
 from fertui.planning.runs import share_pct
 from fertui.planning.shelf import Material
@@ -30,27 +30,28 @@ def binding(points: Sequence[Checkpoint]) -> tuple[Binding, ...]:
     """The limits a plan comes up against, each once, at the checkpoint where least is left."""
     found: dict[str, tuple[float, Binding]] = {}
     for each in points:
-        before = points[each.before].now if each.before >= 0 else None
+        before = before_of(each, points)
         for what, value, limit, unit, near in _reached(each, before):
             room = limit - value
             if room <= near and (what not in found or room < found[what][0]):
-                source = each.goal.sources.get(what, "common practice" if what == "EC step" else "")
+                source = each.goal.sources.get(what, "common practice" if what.startswith("EC step") else "")
                 words = OVER if room < -near else each.name
                 found[what] = (room, Binding(f"{what}, {words}", limit, unit, value, source))
     return tuple(each for _, each in found.values())
 
 
-def _reached(each: Checkpoint, before: Array | None) -> Iterable[tuple[str, float, float, str, float]]:
+def _reached(each: Checkpoint, before: Checkpoint | None) -> Iterable[tuple[str, float, float, str, float]]:
     ec = float(ec_of(each, each.now))
     if np.isfinite(each.goal.ec_most):
         yield "EC", ec, each.goal.ec_most, "mS/cm", NEAR * each.goal.ec_most
     if before is not None:
-        yield "EC step", ec - float(ec_of(each, before)), each.goal.ec_step, "mS/cm", 0.1 * each.goal.ec_step
+        rise, most = ec - float(ec_of(before, before.now)), step_most(each, before)
+        yield step_name(each, before), rise, most, "mS/cm", 0.1 * most
     for ion in LIMITED:
         most = float(each.goal.most[INDEX[ion]])
         if np.isfinite(most):
             yield ion, float(each.now[INDEX[ion]]), most, "mmol/L", NEAR * most
-    if before is not None:
+    if before is not None and before.day == each.day:
         for name, index, most in zip(("gypsum", "brushite"), indices_of(each, each.now), (0.0, 0.3), strict=True):
             yield name, float(index), most, "SI", NEAR_INDEX
 

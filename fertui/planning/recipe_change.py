@@ -14,6 +14,7 @@ import numpy as np
 from fertui.chemistry.ions import INDEX, IONS, Array
 from fertui.planning.checkpoints import (
     Checkpoint,
+    before_of,
     ec_factor,
     exceeded,
     violation,
@@ -135,7 +136,7 @@ def _checkpoints(task: RecipeTask, course: Course, without: Course, stages: Arra
     found: list[Checkpoint] = []
     for s, recipe in enumerate(stages):
         found.append(_feed_checkpoint(task, s, recipe))
-    for day in range(1, task.horizon + 1):
+    for day in range(task.horizon + 1):
         members = course.ions[point][day]
         slope = ((members[1:] - members[0]) / MOVE).T
         last = day == task.horizon
@@ -152,6 +153,7 @@ def _checkpoints(task: RecipeTask, course: Course, without: Course, stages: Arra
                 weight=float(last),
                 aim_weight=float(last),
                 ec_factor=ec_factor(task.situation, point),
+                before=len(found) - 1 if day > 0 else -1,
             )  # fmt: skip
         )
     return tuple(found)
@@ -184,7 +186,7 @@ def _verified(task: RecipeTask, stages: Array, second: tuple[str, Array] | None,
     course = runs.settled(feeds(task, np.array(list(cases.values())), late), len(cases))
     checkpoints = _checkpoints(task, course, without, stages)
     end = dict(zip(cases, course.ions[task.situation.managed][task.horizon], strict=True))
-    broken = tuple(one for each in checkpoints for one in _broken(each))
+    broken = tuple(one for each in checkpoints for one in _broken(each, checkpoints))
     variants = {case: end[case] for case in cases if case not in ("plan", "unchanged", "runner-up")}
     if task.horizon < 2:
         del variants["a day late"]
@@ -192,5 +194,6 @@ def _verified(task: RecipeTask, stages: Array, second: tuple[str, Array] | None,
     return Recipe(stages, checkpoints, violation(checkpoints[-1], end["plan"]), broken, end["plan"], variants, other)
 
 
-def _broken(each: Checkpoint) -> list[tuple[str, float, float]]:
-    return [(f"{what}, {each.name}", value, limit) for what, value, limit in exceeded(each, each.now)]
+def _broken(each: Checkpoint, points: Sequence[Checkpoint]) -> list[tuple[str, float, float]]:
+    passed = exceeded(each, each.now, before_of(each, points))
+    return [(f"{what}, {each.name}", value, limit) for what, value, limit in passed]

@@ -4,15 +4,18 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+import numpy as np
 import pytest
 
+from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import vector
 from fertui.logbook.entries import Entry, Value
 from fertui.planning.hand_plan import hand_plan
-from fertui.planning.request import Wishes, staffed_days
+from fertui.planning.request import Wishes, goals_of, staffed_days
+from fertui.planning.runs import Addition, Doing, Exchange
 from fertui.planning.shelf import PlanningError
 from fertui.site.model import Composition, Sourced, Supply
-from tests.planning.loops import MixingTank, request, shelf_of, situation
+from tests.planning.loops import MixingTank, point_of, request, shelf_of, situation
 
 SALTS = (
     "potassium nitrate", "calcium nitrate tetrahydrate", "monopotassium phosphate", "magnesium sulfate heptahydrate",
@@ -195,3 +198,48 @@ def test_acid_before_heating_the_drain_is_taken_off_and_said() -> None:
     assert any("heat disinfection included: 1000 meq" in line for line in plan.notices)
     forgotten = replace(request(place, tank, days=12), entries=(heated,))
     assert any("log the acid it takes" in line for line in hand_plan(forgotten).notices)
+
+
+class RootedTank(MixingTank):
+    """A tank that a root zone of its own follows, by so much of the distance a day."""
+
+    follows = 0.9
+
+    def settled(self, doing, members):
+        course = super().settled(doing, members)
+        tank = course.ions["tank"]
+        root = [np.tile(self.situation.composition("root_zone"), (members, 1))]
+        for day in range(1, len(tank)):
+            root.append(root[-1] + self.follows * (tank[day] - root[-1]))
+        return replace(course, ions={"tank": tank, "root_zone": np.array(root)})
+
+    def shown(self, doing):
+        self.count += 1
+        course = self.settled(doing, 1)
+        self.count -= 1
+        return {point: point_of(course.ions[point][-1, 0]) for point in ("tank", "root_zone")}
+
+
+def rooted_plan(step: float | None):
+    place = place_of({**LOW_K, "K": 2.0, "NO3": 10.0}, limits={"EC step": Sourced(None, 2.0, "test")})
+    own = {} if step is None else {"root_zone": {"EC step": Sourced(None, step, "own trial")}}
+    loop = replace(place.loop, medium="perlite", limits={**place.loop.limits, **own})
+    place = replace(place, loop=loop, site=replace(place.site, loops=(loop,)), managed="root_zone")
+    tank = RootedTank(place, 7)
+    goals = goals_of(place, "hoagland-1", ("tank", "root_zone"))
+    asked = replace(request(place, tank, days=7, target="hoagland-1"), goals=goals)
+    return place, tank, hand_plan(asked)
+
+
+@pytest.mark.parametrize(("step", "most"), [(None, 0.5), (0.2, 0.2)])
+def test_the_root_zone_never_climbs_by_more_than_its_step_a_day(step: float | None, most: float) -> None:
+    # 0.5 mS/cm a day by default (common practice, no source)
+    place, tank, plan = rooted_plan(step)
+    assert plan.steps
+    doses = tuple(Addition((each.at - place.at).days, vector(each.adds_mmol)) for each in plan.steps)
+    renewals = () if plan.renewal is None else (Exchange(0.0, plan.renewal.litres, np.zeros(10)),)
+    course = tank.settled(Doing(doses, renewals), 1).ions["root_zone"][:, 0]
+    rise = np.diff(conductivity(np.maximum(course, 0.0)))
+    assert rise.max() <= most + 2e-3
+    assert rise.max() > 0.8 * most
+    assert any(each.limit.startswith("EC step of a day, root_zone on day") for each in plan.binding)
