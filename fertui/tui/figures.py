@@ -58,15 +58,15 @@ def unit_and_species(label: str, ion: str) -> tuple[str, str]:
 
 
 def amount(value: float | None) -> str:
-    """A number with three significant digits, at most three decimals.
+    """A number with two or three significant digits, at most two decimals from 0.1 on and three below it.
 
-    >>> amount(1234.5), amount(12.34), amount(0.1234)
-    ('1234', '12.3', '0.123')
+    >>> amount(1234.5), amount(12.34), amount(0.39), amount(0.1), amount(0.0123)
+    ('1234', '12.3', '0.39', '0.10', '0.012')
     """
     if value is None:
         return "-"
     size = abs(value)
-    decimals = 0 if size >= 100 else 1 if size >= 10 else 2 if size >= 1 else 3
+    decimals = 0 if size >= 100 else 1 if size >= 10 else 2 if size >= 0.1 else 3
     return number(value, decimals)
 
 

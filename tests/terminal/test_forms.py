@@ -172,9 +172,7 @@ def test_keys_typed_ahead_of_a_slow_line_land_in_their_fields(counting: Counted)
     assert "5.4_______" in text
 
 
-def test_a_newcomer_who_types_initials_into_a_number_is_told_how_to_save(
-    tmp_path: Path, open_terminal: Opened
-) -> None:
+def test_a_newcomer_who_types_initials_into_a_number_is_told_how_to_save(tmp_path: Path, open_terminal: Opened) -> None:
     """On a fresh site, where there is no last value to compare with."""
     from fertui.workbench.keeping import make_new_site
 

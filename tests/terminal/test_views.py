@@ -26,7 +26,7 @@ SCREENS = {
 
 
 def show(terminal: PseudoTerminal, keys: tuple[str, ...]) -> str:
-    terminal.until_text("look at")
+    terminal.until(lambda text: "look at" in text or "HCO3" in text)
     for key in keys:
         terminal.press(key)
         terminal.until(lambda text: "orking out" not in text and "Opening" not in text)
@@ -98,6 +98,19 @@ def test_the_theme_chosen_is_remembered(site: Path, tmp_path: Path, open_termina
     show(terminal, ("t",))
     terminal.until_text("colours: light")
     assert 'theme = "light"' in (tmp_path / "config" / "fertui" / "settings.toml").read_text(encoding="utf-8")
+
+
+@pytest.mark.parametrize("size", [(60, 20), (80, 24)])
+def test_no_word_of_an_analysis_is_cut_in_any_unit(site: Path, open_terminal: Opened, size: tuple[int, int]) -> None:
+    terminal = open_terminal(site, fixed=True, size=size)
+    for keys in (("2",), ("u",), ("u",)):
+        rows = show(terminal, keys).splitlines()[2:-1]
+        assert any(row.endswith("a little high") for row in rows)
+        assert any(row.endswith("on target") for row in rows)
+        assert not any("~" in row for row in rows), "\n".join(rows)
+        assert "HCO3 " in terminal.text
+        assert not re.search(r"HCO3 +m\S+/L", terminal.text)
+        assert not re.search(r"\d\.\d{3}", "\n".join(row for row in rows if row.startswith((" K ", " NH4", " HCO3"))))
 
 
 MORE_SIZES = [pytest.param(size, marks=pytest.mark.long) for size in ((61, 21), (79, 23), (81, 25), (200, 60))]

@@ -18,7 +18,9 @@ if TYPE_CHECKING:
 WORD_INKS = {"on target": "good", "a little low": "plain", "a little high": "plain"}
 """Inks of the deviation in words; anything further off wants looking at."""
 WIDE = 112
-WIDTHS, NUMBER_INKS = (8, 10, 8, 11, 8), ("plain", "strong", "faint", "plain", "plain")
+USUAL = 77
+"""Columns from which every number of a row has room beside its words; below, the report before and the % give way."""
+NUMBER_INKS = ("plain", "strong", "faint", "plain", "plain", "plain")
 
 
 SHOWN_ALWAYS = ("charge balance", "EC calculated / EC measured")
@@ -51,60 +53,66 @@ class AnalysisView(View):
             return waiting(snapshot, ask, "the last analysis", width)
         if report.managed is None and report.feed is None:
             return [BLANK, line(" ", Span("No analysis is logged for this loop.", "watch"), " a logs one.")]
-        table = [*_heading(report, snapshot.unit), *_rows(report.rows, snapshot.unit)]
-        below = [*_shares(report), *_said(report, width), BLANK, *_checks(report, width)]
-        micros = _micronutrients(report.micronutrients, snapshot.unit)
+        room = min(width, 80)
+        table = [*_heading(report, snapshot.unit, room), *_rows(report.rows, snapshot.unit, room)]
+        below = [*_shares(report, room), *_said(report, width), BLANK, *_checks(report, width)]
+        micros = _micronutrients(report.micronutrients, snapshot.unit, room)
         if width >= WIDE:
             return beside([*table, BLANK, *below], micros, 80, 3)
         return [*table, BLANK, *below, BLANK, *micros]
 
 
-def _heading(report: Report, unit: str) -> list[Line]:
+def _widths(room: int) -> tuple[int, ...]:
+    """Columns of the five numbers and of what is off target; 0 leaves one out."""
+    return (7, 10, 8, 11, 8, 8) if room >= USUAL else (7, 10, 0, 11, 7, 0)
+
+
+def _heading(report: Report, unit: str, room: int) -> list[Line]:
     managed = point_name(report.managed_point)
     method = f" ({literal(report.method.replace('_', ' '))})" if report.method else ""
     feed = f"; drip of {_day(report.feed)}" if report.feed else "; no analysis of the drip"
     reference = "" if report.ec_reference is None else f", normalised to EC {number(report.ec_reference)} mS/cm"
     words = f"{managed} of {_day(report.managed)}{method}{feed}{reference}"
-    return [line(Span(" " + words, "title")), _heads(unit, managed)]
+    return [*(line(Span(f" {text}", "title")) for text in wrap(words, room - 2)), _heads(unit, managed, room)]
 
 
-def _heads(first: str, managed: str, ink: str = "faint") -> Line:
-    heads = zip(("drip", managed, "before", "normalised", "target", "off"), (*WIDTHS, 7), strict=True)
-    return line(Span(f" {fit(first, 10)}", ink), *(col(head, size, "faint") for head, size in heads))
+def _heads(first: str, managed: str, room: int, ink: str = "faint") -> Line:
+    heads = zip(("drip", managed, "before", "normalised", "target", "off"), _widths(room), strict=True)
+    return line(Span(f" {fit(first, 8)}", ink), *(col(head, size, "faint") for head, size in heads if size))
 
 
 def _day(seen: Seen | None) -> str:
     return "no date" if seen is None else f"{seen.at:%a %-d %b}"
 
 
-def _rows(rows: Sequence[AnalysisRow], unit: str) -> list[Line]:
-    return [_row(row, unit) for row in rows if row.feed is not None or row.managed is not None]
+def _rows(rows: Sequence[AnalysisRow], unit: str, room: int) -> list[Line]:
+    return [_row(row, unit, room) for row in rows if row.feed is not None or row.managed is not None]
 
 
-def _row(row: AnalysisRow, unit: str) -> Line:
-    label, shown = _in_unit(row, unit)
+def _row(row: AnalysisRow, unit: str, room: int) -> Line:
+    species, shown = _in_unit(row, unit)
     off = "" if row.deviation_pct is None else f"{row.deviation_pct:+.0f} %"
     ink = WORD_INKS.get(row.words, "watch" if row.words else "faint")
     mark = MARKS["good" if ink == "good" else "watch"] if row.words and ink != "plain" else " "
-    cells = [col(text, size, ink) for text, size, ink in zip(shown, WIDTHS, NUMBER_INKS, strict=True)]
-    return line(Span(f" {fit(label, 10)}"), *cells, col(off, 7, ink), Span(f"  {mark} {row.words}", ink))
+    inks = (*NUMBER_INKS[:-1], ink)
+    cells = [col(text, size, its) for text, size, its in zip((*shown, off), _widths(room), inks, strict=True) if size]
+    return line(Span(f" {fit(species, 8)}"), *cells, Span(f" {mark} {row.words}", ink))
 
 
 def _in_unit(row: AnalysisRow, unit: str) -> tuple[str, tuple[str, ...]]:
-    """Label (with its unit where that is not the one of the heading), and the five numbers of a row."""
+    """Species and the five numbers of a row. HCO3, alkalinity, holds one charge: its mmol/L and meq/L are one."""
     from fertui.workbench.units import shown
 
-    own, species = unit_and_species(shown(row.ion, 1.0, unit)[1], row.ion)
+    species = unit_and_species(shown(row.ion, 1.0, unit)[1], row.ion)[1]
     values = (row.feed, row.managed, row.previous, row.normalised, row.target)
-    texts = tuple("-" if value is None else amount(shown(row.ion, value, unit)[0]) for value in values)
-    return species if own == unit or row.unit == "umol/L" else f"{species} {own}", texts
+    return species, tuple("-" if value is None else amount(shown(row.ion, value, unit)[0]) for value in values)
 
 
-def _shares(report: Report) -> list[Line]:
+def _shares(report: Report, room: int) -> list[Line]:
     parts: list[str | Span] = [Span(" share of K+Ca+Mg  ", "title")]
     for ion, (now, before) in report.shares.items():
         if now is not None:
-            was = "" if before is None else f" (was {before:.0f})"
+            was = "" if before is None or room < USUAL else f" (was {before:.0f})"
             parts += [f" {ion} ", Span(f"{now:.0f} %", "strong"), Span(was + " ", "faint")]
     return [line(*parts)] if len(parts) > 1 else []
 
@@ -121,14 +129,16 @@ def _checks(report: Report, width: int) -> list[Line]:
             ink = "good" if check.passed else "act"
             mark = MARKS["good"] if check.passed else MARKS["act"]
             unit = "" if check.unit == "-" else f" {check.unit}"
-            text = f"{point_name(point)}: {check.what} {check.value:.2g}{unit}, allowed {check.limit}; {check.remark}"
+            text = (
+                f"{point_name(point)}: {check.what} {amount(check.value)}{unit}, allowed {check.limit}; {check.remark}"
+            )
             first, *more = wrap(literal(text), width - 5)
             rows += [line(Span(f" {mark} ", ink), first), *(line("   ", text) for text in more)]
     return rows if len(rows) > 1 else []
 
 
-def _micronutrients(rows: Sequence[AnalysisRow], unit: str) -> list[Line]:
+def _micronutrients(rows: Sequence[AnalysisRow], unit: str, room: int) -> list[Line]:
     given = [row for row in rows if row.feed is not None or row.managed is not None]
     if not given:
         return [line(Span(" micronutrients", "title"), Span("  none in this report", "faint"))]
-    return [_heads("umol/L" if unit != "mg/L" else unit, "now", "title"), *_rows(given, unit)]
+    return [_heads("umol/L" if unit != "mg/L" else unit, "now", room, "title"), *_rows(given, unit, room)]
