@@ -291,13 +291,15 @@ def supplies(options: Options) -> int:
 
 
 def site(options: Options) -> int:
-    """``site``: aims of a loop, each with where it comes from."""
+    """``site``: every value of the site file, and what is in force for a loop, each with where it comes from."""
     from fertui.cli.views import as_json
-    from fertui.cli.views.tables import aims_text
+    from fertui.cli.views.tables import aims_text, site_text
 
-    bench, _ = _reading(options)
-    rows = bench.site_rows()
-    return _show(options, lambda: {"schema": "fertui.site/1", "rows": as_json.plain(rows)}, lambda: aims_text(rows))
+    bench, view = _reading(options)
+    rows, loop = bench.site_rows(), bench.loop(view["loop"]).name
+    aims = bench.aims(loop)
+    document = {"schema": "fertui.site/1", "rows": as_json.plain(rows), "loop": loop, "aims": as_json.plain(aims)}
+    return _show(options, lambda: document, lambda: f"{site_text(rows)}\n\n{aims_text(aims, loop)}")
 
 
 def check(options: Options) -> int:

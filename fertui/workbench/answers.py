@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from fertui.estimate.hindcast import Hindcast
     from fertui.planning.values import AcidSheet, Plan, StockSheet
     from fertui.site.edit import Row as SiteRow
+    from fertui.workbench.aims import Aim
     from fertui.workbench.analysis import AnalysisView
     from fertui.workbench.checks import CheckRow
     from fertui.workbench.drift import Drift
@@ -188,3 +189,9 @@ class Answers(SiteFolder):
         from fertui.site.edit import rows
 
         return rows(self.site)
+
+    def aims(self, loop: str | None = None) -> tuple[Aim, ...]:
+        """Bands and limits in force for a loop, each with where it comes from."""
+        from fertui.workbench.aims import aims
+
+        return aims(self.site, self.loop(loop))

@@ -19,7 +19,8 @@ SCREENS = {
     "drift": ("3", "left", "left"), "balance": ("4", "down", "right"), "forecast": ("5",), "record": ("5", "g"),
     "plan recipe": ("6",), "plan doses": ("n", "6"), "logbook": ("7", "down"), "entry": ("7", "enter"),
     "supplies": ("8", "down"),
-    "site": ("9", "down"), "help": ("2", "?"), "actions": ("x",), "reading": ("r",), "analysis form": ("a",),
+    "site": ("9", "down"),
+    "in force": ("9", "i", "down"), "help": ("2", "?"), "actions": ("x",), "reading": ("r",), "analysis form": ("a",),
     "entries": ("e",),
 }  # fmt: skip
 """Screens by name with the keys that lead there."""
@@ -111,6 +112,20 @@ def test_no_word_of_an_analysis_is_cut_in_any_unit(site: Path, open_terminal: Op
         assert "HCO3 " in terminal.text
         assert not re.search(r"HCO3 +m\S+/L", terminal.text)
         assert not re.search(r"\d\.\d{3}", "\n".join(row for row in rows if row.startswith((" K ", " NH4", " HCO3"))))
+
+
+def test_site_shows_what_is_in_force_and_where_it_comes_from(site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True)
+    terminal.until_text("look at")
+    terminal.press("9")
+    terminal.until_text("rows of")
+    terminal.press("i")
+    shown = terminal.until_text("in force: feed K share band")
+    assert re.search(r"root zone Na limit +at most 8 mmol/L", shown)
+    terminal.press("down", "enter")
+    terminal.until_text("It comes from: unverified preset")
+    terminal.press("esc", "backspace")
+    terminal.until_text("site.timezone")
 
 
 MORE_SIZES = [pytest.param(size, marks=pytest.mark.long) for size in ((61, 21), (79, 23), (81, 25), (200, 60))]

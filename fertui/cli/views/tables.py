@@ -12,6 +12,7 @@ from fertui.logbook.entries import Entry, Value
 
 if TYPE_CHECKING:
     from fertui.site.edit import Row
+    from fertui.workbench.aims import Aim
     from fertui.workbench.checks import CheckRow
     from fertui.workbench.shelf import StockRow, SupplyRow
 
@@ -64,8 +65,14 @@ def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> s
     return "\n".join([*lines, "", *words.table(stock, right=(2, 3, 4))])
 
 
-def aims_text(rows: Sequence[Row]) -> str:
-    """Targets, bands, limits and settings with where each comes from."""
+def aims_text(aims: Sequence[Aim], loop: str) -> str:
+    """Bands and limits in force for a loop with where each comes from."""
+    rows = [(each.point.replace("_", " "), f"{each.what} {each.kind}", each.words, each.source) for each in aims]
+    return "\n".join([f"In force for {loop}:", *words.table([("point", "what", "value", "from"), *rows])])
+
+
+def site_text(rows: Sequence[Row]) -> str:
+    """Every value of the site file with where it comes from."""
     return "\n".join(words.table([("key", "value", "from"), *((row.key, row.text, row.source) for row in rows)]))
 
 

@@ -2,17 +2,37 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
 from fertui.tui.desk import Answer
-from fertui.tui.ink import BLANK, Line, Span, col, cut, filled, inked, line, literal
+from fertui.tui.ink import BLANK, Line, Span, cells, col, cut, filled, inked, line, literal
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import SCROLLING, View, waiting
 
 if TYPE_CHECKING:
     from fertui.workbench import Bench
+    from fertui.workbench.aims import Aim
+
+
+IN_FORCE = "in force:"
+"""How the name of a row begins that is not of the file."""
+HOW_TO_SET = (
+    "To set your own, write it under bands or limits of the loop or of the site in site.toml, with its source; "
+    "docs/files.md shows how."
+)
+
+
+@dataclass(frozen=True, slots=True)
+class InForce:
+    """A band or limit in force: its name, its range in words, where it comes from."""
+
+    key: str
+    text: str
+    source: str
 
 
 class SiteView(View):
@@ -24,12 +44,14 @@ class SiteView(View):
         "point, instruments. "
         "On the right stands where a value comes from; 'unverified preset' means nobody has checked it for your crop. "
         "Enter changes the value under the bar: it is checked as a whole, the old file is kept beside the new one, "
-        "and the change is logged with your initials. / shows only rows with a text in them."
+        "and the change is logged with your initials. Below the values of the file stand the bands and limits in force "
+        "for this loop, wherever they come from; i shows these alone. / shows only rows with a text in them."
     )
     BINDINGS: ClassVar[list[Any]] = [
         *SCROLLING,
         Binding("enter", "edit", "change", id="site.edit", tooltip="Change the value under the bar."),
         Binding("slash", "text", "search", id="site.text", tooltip="Show rows with a text in them."),
+        Binding("i", "in_force", "in force", id="site.aims", tooltip="Show the bands and limits in force, alone."),
         Binding("backspace", "everything", "all", show=False, id="site.all", tooltip="Show every row again."),
         Binding("c", "check", "check", id="site.check", tooltip="Check site file, logbook and this machine."),
     ]
@@ -39,12 +61,13 @@ class SiteView(View):
         self.row, self.text = 0, ""
 
     def asks(self, snapshot: Snapshot) -> tuple[Ask, ...]:
-        """The rows."""
-        return (Ask("site_rows"),)
+        """The rows of the file, and what is in force for the loop."""
+        return Ask("site_rows"), Ask("aims", snapshot.loop)
 
-    def rows(self, snapshot: Snapshot) -> list[object]:
-        """Rows with the wanted text in them."""
-        found = snapshot.get(Ask("site_rows")) or ()
+    def rows(self, snapshot: Snapshot) -> list[Any]:
+        """Rows of the file, then what is in force, with the wanted text in them."""
+        aims = snapshot.get(Ask("aims", snapshot.loop)) or ()
+        found = [*(snapshot.get(Ask("site_rows")) or ()), *(in_force(aim) for aim in aims)]
         return [row for row in found if self.text.lower() in f"{row.key} {row.text} {row.source}".lower()]
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
@@ -55,12 +78,15 @@ class SiteView(View):
         rows = self.rows(snapshot)
         self.row = max(0, min(self.row, len(rows) - 1))
         narrowed = f", with {self.text!r}" if self.text else ""
-        heading = f" {len(rows)} values of {self.fertui.folder.name}/site.toml{literal(narrowed)}"
+        place = f"{self.fertui.folder.name}/site.toml and in force for {snapshot.loop}"
+        heading = f" {len(rows)} rows of {literal(place)}{literal(narrowed)}"
         height = max(1, (self.size.height or self.fertui.stage_size.height) - 1)
         first = max(0, min(self.row - height // 2, len(rows) - height))
         lines = [line(Span(heading, "title"))]
+        columns = columns_of(rows, width)
         lines += [
-            site_row(row, index == self.row, width) for index, row in enumerate(rows[first : first + height], first)
+            site_row(row, index == self.row, columns, width)
+            for index, row in enumerate(rows[first : first + height], first)
         ]
         return (
             lines if rows else [*lines, BLANK, line(" ", Span("No row has that in it; Backspace shows all.", "faint"))]
@@ -99,6 +125,11 @@ class SiteView(View):
 
         self.fertui.ask("Rows with this in them:", only, self.text)
 
+    def action_in_force(self) -> None:
+        """Bands and limits in force alone."""
+        self.text, self.row = IN_FORCE, 0
+        self.redraw()
+
     def action_everything(self) -> None:
         """Every row."""
         self.text = ""
@@ -110,17 +141,20 @@ class SiteView(View):
         if not rows:
             return
         row = rows[self.row]
-        key: str = row.key  # type: ignore[attr-defined]
+        key: str = row.key
+        if isinstance(row, InForce):
+            self.fertui.say_at_length(key, f"{row.text}. It comes from: {row.source}. {HOW_TO_SET}")
+            return
 
         def change(text: str) -> None:
-            if text != row.text:  # type: ignore[attr-defined]
+            if text != row.text:
                 self.fertui.with_initials(
                     lambda by: self.fertui.clerk(
                         lambda bench: _change(bench, key, text, by), self._changed, "changing the site"
                     )
                 )
 
-        self.fertui.ask(f"{cut(key, 40)} =", change, row.text)  # type: ignore[attr-defined]
+        self.fertui.ask(f"{cut(key, 40)} =", change, row.text)
 
     def _changed(self, answer: Answer) -> None:
         if answer.value is None:
@@ -148,11 +182,22 @@ def _change(bench: Bench, key: str, text: str, by: str) -> tuple[object, object]
     return bench.change_site(key, text, by), bench.site
 
 
-def site_row(row: object, chosen: bool, width: int) -> Line:
+def in_force(aim: Aim) -> InForce:
+    """A band or limit as a row."""
+    return InForce(f"{IN_FORCE} {aim.point.replace('_', ' ')} {aim.what} {aim.kind}", aim.words, aim.source)
+
+
+def columns_of(rows: Sequence[Any], width: int) -> tuple[int, int]:
+    """Columns of name and value: no more than they need, so that the source has the rest."""
+    key_width = min(max((cells(literal(row.key)) for row in rows), default=0), 40, width // 2)
+    most = max(12, (width - key_width - 4) * 3 // 5)
+    return key_width, min(max((cells(literal(row.text)) for row in rows), default=0), most)
+
+
+def site_row(row: Any, chosen: bool, columns: tuple[int, int], width: int) -> Line:
     """Name, value, source."""
-    key, text, source = literal(row.key), literal(row.text), literal(row.source)  # type: ignore[attr-defined]
-    key_width = min(40, width // 2)
-    text_width = max(12, (width - key_width - 4) * 3 // 5)
+    key, text, source = literal(row.key), literal(row.text), literal(row.source)
+    key_width, text_width = columns
     shown = line(
         Span("▸ " if chosen else "  ", "accent"),
         col(key, key_width, right=False),

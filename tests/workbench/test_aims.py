@@ -1,0 +1,25 @@
+"""Bands and limits in force: the loop's own go before the crop's presets, and each says where it comes from."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from pathlib import Path
+
+from fertui.site.model import Sourced
+from fertui.workbench import open_site
+from fertui.workbench.aims import aims
+from fertui.workbench.demo import build_demo
+
+
+def test_every_aim_has_a_unit_and_a_source_and_the_loops_own_goes_first(tmp_path: Path) -> None:
+    bench = open_site(build_demo(tmp_path / "demo"))
+    found = bench.aims("north bay")
+    assert all(each.source for each in found)
+    assert all(each.unit or each.what == "pH" for each in found)
+    assert {each.point for each in found} == {"feed", "root_zone"}
+
+    loop = bench.loop("north bay")
+    own = replace(loop, limits={"root_zone": {"Na": Sourced(None, 5.0, "own trial")}, "drain": {}})
+    [sodium] = [each for each in aims(bench.site, own) if (each.point, each.what) == ("root_zone", "Na")]
+    assert (sodium.words, sodium.source) == ("at most 5 mmol/L", "own trial")
+    assert "drain" in {each.point for each in aims(bench.site, own)}
