@@ -38,7 +38,7 @@ from fertui.estimate.points import Estimated, IonState, PointState
 from fertui.estimate.ranges import Spread, estimated
 from fertui.estimate.record import Record, read
 from fertui.estimate.setting import Setting, setting
-from fertui.estimate.walk import events_between, grid_of, night, stretch
+from fertui.estimate.walk import events_between, grid_of, night, nights_of, spans_of, stretch
 from fertui.estimate.waters import lately
 from fertui.logbook.entries import Entry
 from fertui.loop import corrected as booked_as_unexplained
@@ -192,7 +192,7 @@ class Estimate:
         return found
 
     def course(self, point: str, last: int | None = None) -> tuple[PointAt, ...]:
-        """One point at the ``last`` so many local midnights (all: None), and now; without micronutrients."""
+        """One point once a local day, the ``last`` so many (all: None), and now; without micronutrients."""
         which = slice(0 if last is None else max(len(self.times) - last, 0), None)
         bands, seen = allowed(self.site, self.loop, point), self.record.observations
         panel = Panel(self._quantiles(same_solution(self.setting, point), which), bands)
@@ -206,7 +206,7 @@ class Estimate:
 
     @cached_property
     def trail(self) -> tuple[TrailDay, ...]:
-        """Every point at every local midnight since the estimate began, and now."""
+        """Every point once a local day since the estimate began, and now."""
         by_point = {point: self.course(point) for point in self.path}
         moments = [self.record.moment(time) for time in self.times]
         return tuple(
@@ -251,10 +251,11 @@ class Assimilation:
         self.usable = self._usable()
         self.begin = beginning(record, self.setting, self.usable)
         self.observed = [each for each in self.usable if self._taken_in(each)]
-        self.midnights = record.midnights(self.begin.time, record.end)
         moments = [each.time for each in self.observed]
-        events = [event.at for event in record.events]
-        self.grid = grid_of(self.begin.time, record.end, self.midnights, moments, events, self._changes())
+        self.nights = nights_of(record, self.begin.time, record.end, moments)
+        events, falling = [event.at for event in record.events], [time for time, _ in self.nights]
+        self.grid = grid_of(self.begin.time, record.end, falling, moments, events, self._changes())
+        self.night_of = spans_of(self.grid, self.nights)
         self.drives = drives(record, self.setting, self.grid)
         self.ensemble = first_members(record, self.setting, self.begin, members, seed)
         self.spread = Spread()
@@ -304,9 +305,8 @@ class Assimilation:
     def _arrive(self, span: int) -> None:
         """At the beginning of a stretch: the noise of the night, then what was observed."""
         now = self._at(span)
-        if span and any(abs(now - midnight) < 1e-4 for midnight in self.midnights):
-            day = self.record.local_day(now)
-            self.ensemble, line = night(self.setting, self.ensemble, self.seed, day, now)
+        if span in self.night_of:
+            self.ensemble, line = night(self.setting, self.ensemble, self.seed, self.night_of[span], now)
             self.lines.append(line)
         if any(abs(now - change) < 1e-4 for change in self.record.stages.times) and span:
             self._stage_changed(now)
@@ -374,7 +374,7 @@ class Assimilation:
     def _mark(self, span: int, last: bool = False) -> None:
         """Keep what the members say, once a day and at the end."""
         now = self._at(span)
-        if last or not self.marks or any(abs(now - midnight) < 1e-4 for midnight in self.midnights):
+        if last or not self.marks or span in self.night_of:
             drive = feed_drive(self.drives, max(span - 1, 0), self.ensemble)
             self.marks.append((now, solutions(self.setting, self.ensemble, drive), self.ensemble.ec))
 

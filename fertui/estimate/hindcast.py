@@ -24,7 +24,7 @@ from fertui.estimate.observations import Observation
 from fertui.estimate.ranges import HIGH, LOW, Spread, shares
 from fertui.estimate.record import ANEW, WHOLE_DAYS, Record, read
 from fertui.estimate.scores import HindcastRow, Summary, crps, summary
-from fertui.estimate.walk import CLOSE, Way, nights_of
+from fertui.estimate.walk import CLOSE, Way
 from fertui.logbook.entries import Entry
 from fertui.site.model import Loop, Site
 
@@ -118,8 +118,7 @@ class _Logged:
 
     def __init__(self, run: Assimilation) -> None:
         self.run = run
-        nights = nights_of(run.record, run.begin.time, run.record.end)
-        self.way = Way(run.setting, run.drives, run.record.events, nights, run.seed)
+        self.way = Way(run.setting, run.drives, run.record.events, run.nights, run.seed)
 
     def members(self, pair: _Pair) -> tuple[Array, Spread]:
         """What members say at the target (M, 10), widened by the scale that was known, and that scale."""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
+from itertools import pairwise
 from typing import Protocol
 
 import numpy as np
@@ -49,7 +50,7 @@ class Driven(Protocol):
 
 @dataclass(frozen=True, slots=True)
 class Way:
-    """Where members are led: loop, drives, events, local midnights [d] with the day their noise is keyed by."""
+    """Where members are led: loop, drives, events, times [d] of the noise of each day with the day that keys it."""
 
     setting: Setting
     drives: Driven
@@ -59,22 +60,36 @@ class Way:
 
     def led(self, ensemble: Ensemble, first: int, until: float, noisy: bool = True) -> Iterator[tuple[float, Ensemble]]:
         """Members at the end of every stretch from the ``first`` on, up to a time; no night before the first."""
-        nights = dict(self.nights)
+        nights = spans_of(self.drives.grid, self.nights)
         for span in range(first, len(self.drives.grid) - 1):
             begin, end = float(self.drives.grid[span]), float(self.drives.grid[span + 1])
             if begin >= until - CLOSE:
                 return
-            day = next((nights[each] for each in nights if abs(each - begin) < CLOSE), None)
-            if noisy and span > first and day is not None:
-                ensemble, _ = night(self.setting, ensemble, self.seed, day, begin)
+            if noisy and span > first and span in nights:
+                ensemble, _ = night(self.setting, ensemble, self.seed, nights[span], begin)
             events = events_between(self.events, begin, end)
             ensemble = stretch(self.setting, self.drives, span, ensemble, events).ensemble
             yield end, ensemble
 
 
-def nights_of(record: Record, begin: float, end: float) -> tuple[tuple[float, int], ...]:
-    """Local midnights within (begin, end) [d] and the local day that begins with each."""
-    return tuple((time, record.local_day(time)) for time in record.midnights(begin, end))
+def spans_of(grid: Array, nights: Sequence[tuple[float, int]]) -> dict[int, int]:
+    """Day by the number of the stretch that begins with its noise."""
+    places = np.searchsorted(grid, [time - CLOSE for time, _ in nights])
+    return {int(place): day for place, (_, day) in zip(places, nights, strict=True)}
+
+
+def nights_of(record: Record, begin: float, end: float, seen: Sequence[float] = ()) -> tuple[tuple[float, int], ...]:
+    """When the noise of each local day falls within (begin, end) [d], and the day that keys it.
+
+    At the first observation of the day, where there is one in ``seen``, else at its midnight: one stretch a day less.
+    """
+    midnights = [*record.midnights(begin, end), end]
+    ordered, found = np.sort(np.asarray(seen, dtype=float)), []
+    for midnight, next_one in pairwise(midnights):
+        place = int(np.searchsorted(ordered, midnight))
+        first = ordered[place] if place < len(ordered) and ordered[place] < next_one - CLOSE else midnight
+        found.append((float(first), record.local_day(midnight)))
+    return tuple(found)
 
 
 def stretch(setting: Setting, drives: Driven, span: int, ensemble: Ensemble, events: Sequence[Event]) -> Step:
