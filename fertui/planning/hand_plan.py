@@ -45,6 +45,7 @@ from fertui.planning.values import (
     WhatIf,
 )
 from fertui.planning.weighing import scales_of
+from fertui.planning.with_fresh_water import holding_words, spread_words
 from fertui.site.model import Composition
 
 FED_EC, STARVED = 0.5, 0.5
@@ -63,7 +64,8 @@ def hand_plan(request: Request) -> Plan:
     request = request.strengthened(course.ions[request.situation.managed][-1, 0])
     drained = _drained(request, course)
     if drained is not None:
-        return request.counted(replace(empty, feasible=False, reason=drained))
+        hold = holding_words(request, usable(_task(request, (0,), TankAcid((None,)))), course)
+        return request.counted(replace(empty, feasible=False, reason=drained, notices=hold))
     days = _days(request)
     acid = tank_acid(request, days, course)
     if not request.managed.named and acid.first is None and request.in_order(empty.after_without):
@@ -143,6 +145,7 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, acid: TankAc
             *_unseen(request),
             *over_limit_words(dosed.end, request.managed),
             *heated_words(request.situation, request.entries),
+            *spread_words(request, steps),
         ),
         acid=acid_steps(acid, request.situation, task.days, "tank:tank"),
         acid_sheet=acid.first,
