@@ -11,14 +11,14 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from fertui.catalogue.acids import Acid
 from fertui.catalogue.cautions import Caution, cautions_of
 from fertui.chemistry.conductivity import conductivity
-from fertui.chemistry.ions import INDEX, IONS, MICRONUTRIENTS, Array, vector
-from fertui.planning.acid import LEAVE_MEQ_PER_L, MEASURE_IT, PH_START, PH_TARGET, demanded, water_of
-from fertui.planning.composing import SPECIES, Composed, compose, importance
+from fertui.chemistry.ions import IONS, MICRONUTRIENTS, Array
+from fertui.planning.acid import LEAVE_MEQ_PER_L, water_of
+from fertui.planning.composing import SPECIES, Composed, compose
 from fertui.planning.programme import Solver
 from fertui.planning.shelf import Material, PlanningError, material, salts_of, shelf
+from fertui.planning.stock_needs import Needed, asked, misfits, needed_of, not_covered, per_kg, subtraction
 from fertui.planning.tanks import (
     STRONGEST,
     Fullest,
@@ -38,8 +38,6 @@ ASSUMED_TANKS = (StockTank("calcium", 1000.0), StockTank("sulfate and phosphate"
 """Taken where a loop names no stock tanks, and said so."""
 
 ASSUMED_WORDS = "no stock tanks in site.toml: two of 1000 L at 100 times are assumed; add [[stock_tanks]]"
-MISSED = 0.05
-"""Misfit of one ion, in parts of what is asked, from which the sheet speaks of it."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -77,21 +75,6 @@ class StockSheet:
     solver_calls: int
 
 
-@dataclass(frozen=True, slots=True)
-class _Needed:
-    """What salts must bring (17,), what comes without them, and the fixed kg/m3 of acid and silicate."""
-
-    asked: Array
-    own: Array
-    fixed: Mapping[Material, float]
-    notices: tuple[str, ...]
-
-    @property
-    def wanted(self) -> Array:
-        brought = [1.0 * kg * _per_kg(each) / 1000.0 for each, kg in self.fixed.items()]
-        return self.asked - self.own - sum(brought, np.zeros(len(SPECIES)))
-
-
 def stock_sheet(
     site: Site,
     loop: Loop,
@@ -116,7 +99,7 @@ def stock_sheet(
     water = water_of(site, loop) if water is None else water
     materials = shelf(site.supplies, supplies, without)
     tanks = tanks_of(site, loop)
-    needed = _needed(recipe, water, acid, materials, leave_meq_l)
+    needed = needed_of(recipe, water, acid, materials, leave_meq_l)
     salts = salts_of([each for each in materials if not each.brings("Si")])
     composed = compose(salts, needed.wanted, solver)
     per_m3 = dict(needed.fixed) | {
@@ -151,56 +134,16 @@ def delivered(
 ) -> Array:
     """What the dripper gets from kg in full tanks and the water, shape (17,) [mmol/L, umol/L]: kg / litres / dilution.
 
+    >>> from fertui.chemistry.ions import INDEX
     >>> mkp = material(Supply("MKP", "monopotassium phosphate"))
     >>> round(float(delivered([(StockTank("B", 1000.0), {mkp: 13.608})])[INDEX["K"]]), 2)
     1.0
     """
     own = np.zeros(len(SPECIES)) if water is None else asked(water)
     parts = [
-        kg / (tank.litres * tank.dilution) * _per_kg(each) for tank, amounts in per_tank for each, kg in amounts.items()
+        kg / (tank.litres * tank.dilution) * per_kg(each) for tank, amounts in per_tank for each, kg in amounts.items()
     ]
     return own + sum(parts, np.zeros(len(SPECIES)))
-
-
-def asked(composition: Composition) -> Array:
-    """A composition as one vector, ions then micronutrients, shape (17,); what it does not name is zero."""
-    micros = [composition.micronutrients.get(name, 0.0) for name in MICRONUTRIENTS]
-    return np.concatenate([vector(dict(composition.ions)), np.array(micros, dtype=float)])
-
-
-def _per_kg(each: Material) -> Array:
-    return np.concatenate([each.ions_mmol_per_kg, each.micros_umol_per_kg])
-
-
-def _needed(
-    recipe: Composition, water: Composition, acid: Supply | None, materials: Sequence[Material], leave: float
-) -> _Needed:
-    """Silicate first, as its alkalinity adds to what the acid has to take; then the acid; the salts bring the rest."""
-    want, own = asked(recipe), asked(water)
-    fixed: dict[Material, float] = {}
-    notices: list[str] = []
-    silicon = SPECIES.index("Si")
-    source = next((each for each in materials if each.brings("Si")), None)
-    if want[silicon] > own[silicon] and source is not None:
-        fixed[source] = 1000.0 * float(want[silicon] - own[silicon]) / float(source.micros_umol_per_kg[-1])
-    alkalinity = water.ions.get("HCO3")
-    if acid is not None and alkalinity is None:
-        notices.append(MEASURE_IT)
-    elif acid is not None and alkalinity is not None:
-        brought = sum(kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items())
-        fixed |= _fixed_acid(material(acid), replace(water, ions={**water.ions, "HCO3": alkalinity + brought}), leave)
-    left = own[INDEX["HCO3"]] + sum(
-        kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items()
-    )
-    want[INDEX["HCO3"]] = max(left, 0.0)
-    return _Needed(want, own, fixed, tuple(notices))
-
-
-def _fixed_acid(acid: Material, water: Composition, leave: float) -> dict[Material, float]:
-    assert isinstance(acid.found, Acid)
-    assert acid.supply.strength_pct is not None
-    mmol = demanded(acid.found, water, leave, PH_TARGET, water.ph or PH_START).to_leave
-    return {acid: mmol * acid.found.molar_mass / 1000.0 / (acid.supply.strength_pct / 100.0)} if mmol > 0.0 else {}
 
 
 def placed_in(per_m3: Mapping[Material, float], tanks: Sequence[StockTank]) -> dict[str, dict[Material, float]]:
@@ -331,7 +274,7 @@ def ratio(tank: StockTank, tanks: int) -> str:
 
 
 def _sheet(
-    sheets: tuple[TankSheet, ...], refused: tuple[Refused, ...], needed: _Needed, composed: Composed,
+    sheets: tuple[TankSheet, ...], refused: tuple[Refused, ...], needed: Needed, composed: Composed,
     placed: Mapping[str, Mapping[Material, float]], solver: Solver,
 ) -> StockSheet:  # fmt: skip
     reached = needed.own + sum((_given(sheet, placed[sheet.name]) for sheet in sheets), np.zeros(len(SPECIES)))
@@ -346,9 +289,9 @@ def _sheet(
         ions_mmol_l=_named(IONS, ions),
         micros_umol_l=_named(MICRONUTRIENTS, micros),
         ec=float(conductivity(np.maximum(ions, 0.0))),
-        not_covered=_not_covered(composed, needed),
-        notices=(*needed.notices, *_misfits(composed, needed)),
-        arithmetic=(*_arithmetic(needed), *_weighed_out(sheets, placed)),
+        not_covered=not_covered(composed, needed),
+        notices=(*needed.notices, *misfits(composed, needed)),
+        arithmetic=(*subtraction(needed), *_weighed_out(sheets, placed)),
         cautions=cautions_of([each.supply for each in used]),
         solver_calls=solver.calls,
     )
@@ -359,54 +302,12 @@ def _given(sheet: TankSheet, amounts: Mapping[Material, float]) -> Array:
     weighed = {line.salt: line.kg - line.exact_kg for line in sheet.salts}
     kg = {each: exact + weighed.get(each.name, 0.0) for each, exact in amounts.items()}
     return sum(
-        (mass / (sheet.litres * sheet.dilution) * _per_kg(each) for each, mass in kg.items()), np.zeros(len(SPECIES))
+        (mass / (sheet.litres * sheet.dilution) * per_kg(each) for each, mass in kg.items()), np.zeros(len(SPECIES))
     )
 
 
 def _named(names: Sequence[str], values: Array) -> dict[str, float]:
     return {name: float(value) for name, value in zip(names, values, strict=False)}
-
-
-def _not_covered(composed: Composed, needed: _Needed) -> tuple[str, ...]:
-    short = composed.misfit < -0.5 * np.maximum(needed.wanted, 1e-9)
-    return tuple(name for name, bad, want in zip(SPECIES, short, needed.wanted, strict=True) if bad and want > 1e-6)
-
-
-def _not_on_shelf(composed: Composed, needed: _Needed) -> list[str]:
-    """One line for the micronutrients that no supply brings."""
-    names = [
-        name for name, want, got in zip(SPECIES, needed.wanted, composed.brought, strict=True)
-        if name in MICRONUTRIENTS and want > 1e-6 and got <= 0.0
-    ]  # fmt: skip
-    return [f"no supply brings {', '.join(names)}: add them to the shelf, or mix them as you do now"] if names else []
-
-
-def _misfits(composed: Composed, needed: _Needed) -> list[str]:
-    parts = composed.misfit * importance(needed.asked)
-    notices = _not_on_shelf(composed, needed)
-    for name, part, off, own, ask in zip(SPECIES, parts, composed.misfit, needed.own, needed.asked, strict=True):
-        if part > MISSED and own > ask:
-            notices.append(
-                f"{name}: the water alone brings {own:.2f}, the recipe asks for {ask:.2f}; no salt takes it out"
-            )
-        elif abs(part) > MISSED and name != "HCO3" and (name in IONS or composed.brought[SPECIES.index(name)] > 0):
-            notices.append(f"{name}: {abs(off):.2f} {'too much' if off > 0 else 'missing'} with these supplies")
-    return notices
-
-
-def _arithmetic(needed: _Needed) -> tuple[str, ...]:
-    """Recipe less water, acid and silicate, ion by ion."""
-    lines = []
-    for i, name in enumerate(SPECIES):
-        if needed.asked[i] > 1e-9 and name != "HCO3":
-            by_acid = needed.asked[i] - needed.own[i] - needed.wanted[i]
-            less_acid = f" - {by_acid:.3f} acid and silicate" if abs(by_acid) > 1e-9 else ""
-            unit = "mmol/L" if name in IONS else "umol/L"
-            lines.append(
-                f"{name}: recipe {needed.asked[i]:.3f} - water {needed.own[i]:.3f}{less_acid} = "
-                f"{needed.wanted[i]:.3f} {unit} from salts"
-            )
-    return tuple(lines)
 
 
 def _weighed_out(sheets: Sequence[TankSheet], placed: Mapping[str, Mapping[Material, float]]) -> list[str]:
@@ -415,11 +316,11 @@ def _weighed_out(sheets: Sequence[TankSheet], placed: Mapping[str, Mapping[Mater
     for sheet in sheets:
         by_name = {each.name: each for each in placed[sheet.name]}
         for line in sheet.salts:
-            for ion, per_kg in zip(IONS, by_name[line.salt].ions_mmol_per_kg, strict=True):
-                if abs(per_kg) > 1.0:
-                    at_dripper = line.kg * per_kg / sheet.litres / sheet.dilution
+            for ion, content in zip(IONS, by_name[line.salt].ions_mmol_per_kg, strict=True):
+                if abs(content) > 1.0:
+                    at_dripper = line.kg * content / sheet.litres / sheet.dilution
                     lines.append(
-                        f"{sheet.name}, {line.salt}: {line.kg:.3f} kg x {per_kg:.0f} mmol/kg {ion} / "
+                        f"{sheet.name}, {line.salt}: {line.kg:.3f} kg x {content:.0f} mmol/kg {ion} / "
                         f"{sheet.litres:g} L / {sheet.dilution:g} = {at_dripper:.3f} mmol/L at the dripper"
                     )
     return lines

@@ -10,7 +10,8 @@ from fertui.chemistry.ions import ATOMIC_WEIGHT, INDEX, IONS
 from fertui.planning.composing import SPECIES, compose
 from fertui.planning.programme import Solver
 from fertui.planning.shelf import material
-from fertui.planning.stock import StockSheet, asked, delivered, stock_sheet
+from fertui.planning.stock import StockSheet, delivered, stock_sheet
+from fertui.planning.stock_needs import asked
 from fertui.site.model import Composition, Loop, Site, StockTank, Supply
 
 HOAGLAND_SALTS = (

@@ -1,0 +1,121 @@
+"""What the salts of a stock must bring: the recipe less what the water, the acid and the silicate bring; and what they
+then miss."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from fertui.catalogue.acids import Acid
+from fertui.chemistry.ions import INDEX, IONS, MICRONUTRIENTS, Array, vector
+from fertui.planning.acid import MEASURE_IT, PH_START, PH_TARGET, demanded
+from fertui.planning.composing import SPECIES, Composed, importance
+from fertui.planning.shelf import Material, material
+from fertui.site.model import Composition, Supply
+
+MISSED = 0.05
+"""Misfit of one ion, in parts of what is asked, from which the sheet speaks of it."""
+
+
+@dataclass(frozen=True, slots=True)
+class Needed:
+    """What salts must bring (17,), what comes without them, and the fixed kg/m3 of acid and silicate."""
+
+    asked: Array
+    own: Array
+    fixed: Mapping[Material, float]
+    notices: tuple[str, ...]
+
+    @property
+    def wanted(self) -> Array:
+        """What is left for the salts, shape (17,) [mmol/L, umol/L]; below zero where there is too much without them."""
+        brought = [1.0 * kg * per_kg(each) / 1000.0 for each, kg in self.fixed.items()]
+        return self.asked - self.own - sum(brought, np.zeros(len(SPECIES)))
+
+
+def asked(composition: Composition) -> Array:
+    """A composition as one vector, ions then micronutrients, shape (17,); what it does not name is zero."""
+    micros = [composition.micronutrients.get(name, 0.0) for name in MICRONUTRIENTS]
+    return np.concatenate([vector(dict(composition.ions)), np.array(micros, dtype=float)])
+
+
+def per_kg(each: Material) -> Array:
+    """What a kilogram of a material brings, shape (17,) [mmol, umol]."""
+    return np.concatenate([each.ions_mmol_per_kg, each.micros_umol_per_kg])
+
+
+def needed_of(
+    recipe: Composition, water: Composition, acid: Supply | None, materials: Sequence[Material], leave: float
+) -> Needed:
+    """Silicate first, as its alkalinity adds to what the acid has to take; then the acid; the salts bring the rest."""
+    want, own = asked(recipe), asked(water)
+    fixed: dict[Material, float] = {}
+    notices: list[str] = []
+    silicon = SPECIES.index("Si")
+    source = next((each for each in materials if each.brings("Si")), None)
+    if want[silicon] > own[silicon] and source is not None:
+        fixed[source] = 1000.0 * float(want[silicon] - own[silicon]) / float(source.micros_umol_per_kg[-1])
+    alkalinity = water.ions.get("HCO3")
+    if acid is not None and alkalinity is None:
+        notices.append(MEASURE_IT)
+    elif acid is not None and alkalinity is not None:
+        brought = sum(kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items())
+        fixed |= _fixed_acid(material(acid), replace(water, ions={**water.ions, "HCO3": alkalinity + brought}), leave)
+    left = own[INDEX["HCO3"]] + sum(
+        kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items()
+    )
+    want[INDEX["HCO3"]] = max(left, 0.0)
+    return Needed(want, own, fixed, tuple(notices))
+
+
+def _fixed_acid(acid: Material, water: Composition, leave: float) -> dict[Material, float]:
+    assert isinstance(acid.found, Acid)
+    assert acid.supply.strength_pct is not None
+    mmol = demanded(acid.found, water, leave, PH_TARGET, water.ph or PH_START).to_leave
+    return {acid: mmol * acid.found.molar_mass / 1000.0 / (acid.supply.strength_pct / 100.0)} if mmol > 0.0 else {}
+
+
+def not_covered(composed: Composed, needed: Needed) -> tuple[str, ...]:
+    """Ions and micronutrients of which less than half of what is wanted is there."""
+    short = composed.misfit < -0.5 * np.maximum(needed.wanted, 1e-9)
+    return tuple(name for name, bad, want in zip(SPECIES, short, needed.wanted, strict=True) if bad and want > 1e-6)
+
+
+def _not_on_shelf(composed: Composed, needed: Needed) -> list[str]:
+    """One line for the micronutrients that no supply brings."""
+    names = [
+        name for name, want, got in zip(SPECIES, needed.wanted, composed.brought, strict=True)
+        if name in MICRONUTRIENTS and want > 1e-6 and got <= 0.0
+    ]  # fmt: skip
+    return [f"no supply brings {', '.join(names)}: add them to the shelf, or mix them as you do now"] if names else []
+
+
+def misfits(composed: Composed, needed: Needed) -> list[str]:
+    """What is missing or too much with these supplies, in words."""
+    parts = composed.misfit * importance(needed.asked)
+    notices = _not_on_shelf(composed, needed)
+    for name, part, off, own, ask in zip(SPECIES, parts, composed.misfit, needed.own, needed.asked, strict=True):
+        if part > MISSED and own > ask:
+            notices.append(
+                f"{name}: the water alone brings {own:.2f}, the recipe asks for {ask:.2f}; no salt takes it out"
+            )
+        elif abs(part) > MISSED and name != "HCO3" and (name in IONS or composed.brought[SPECIES.index(name)] > 0):
+            notices.append(f"{name}: {abs(off):.2f} {'too much' if off > 0 else 'missing'} with these supplies")
+    return notices
+
+
+def subtraction(needed: Needed) -> tuple[str, ...]:
+    """Recipe less water, acid and silicate, ion by ion."""
+    lines = []
+    for i, name in enumerate(SPECIES):
+        if needed.asked[i] > 1e-9 and name != "HCO3":
+            by_acid = needed.asked[i] - needed.own[i] - needed.wanted[i]
+            less_acid = f" - {by_acid:.3f} acid and silicate" if abs(by_acid) > 1e-9 else ""
+            unit = "mmol/L" if name in IONS else "umol/L"
+            lines.append(
+                f"{name}: recipe {needed.asked[i]:.3f} - water {needed.own[i]:.3f}{less_acid} = "
+                f"{needed.wanted[i]:.3f} {unit} from salts"
+            )
+    return tuple(lines)
