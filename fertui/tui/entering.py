@@ -85,9 +85,9 @@ class Entering(Working):
         self.changed(max(entry.number or 0 for entry in entries))
         self.say("logged as " + ", ".join(str(entry.number) for entry in entries), "good")
 
-    def keep_draft(self, kind: str, loop: str, texts: tuple[str, ...]) -> None:
-        """Keep a half-filled form."""
-        self.drafts.keep(kind, loop, Draft(self.initials.now, datetime.now(UTC), texts))
+    def keep_draft(self, kind: str, loop: str, texts: tuple[str, ...]) -> bool:
+        """Keep a half-filled form; False where the folder takes no file."""
+        return self.drafts.keep(kind, loop, Draft(self.initials.now, datetime.now(UTC), texts))
 
     def drop_draft(self, kind: str, loop: str) -> None:
         """The form was saved or is not wanted."""

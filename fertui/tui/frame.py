@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
-from typing import TYPE_CHECKING, Any, ClassVar
+from typing import Any, ClassVar
 
 from fertui.refusals import FileTrouble
 from fertui.tui.keys import GLOBAL_KEYS
@@ -12,9 +12,6 @@ from fertui.tui.settings import Settings, write_settings
 from fertui.tui.stage import Stage
 from fertui.tui.themes import NAMES
 from fertui.tui.views import view_numbered
-
-if TYPE_CHECKING:
-    from fertui.site.model import Site
 
 
 class FertuiApp(Papers):
@@ -46,12 +43,6 @@ class FertuiApp(Papers):
     def choose_loop(self, name: str) -> None:
         """Show a loop by name."""
         self.snapshot = replace(self.snapshot, loop=name)
-
-    def site_changed(self, site: Site) -> None:
-        """The site file is another now."""
-        loops = tuple(loop.name for loop in site.loops)
-        loop = self.snapshot.loop if self.snapshot.loop in loops else loops[0]
-        self.snapshot = replace(self.snapshot, site=site, loops=loops, loop=loop)
 
     def action_unit(self) -> None:
         """Show amounts in the next unit."""

@@ -66,8 +66,9 @@ class View(Page, can_focus=True):
         self._top = max(0, min(self._top, self._total - size.height))
         return lines[self._top : self._top + size.height]
 
-    def keep(self) -> None:
-        """Keep what must not be lost when the program ends; most pages have nothing."""
+    def keep(self) -> bool:
+        """Keep what must not be lost when the program ends; False where that failed. Most pages have nothing."""
+        return True
 
     def reveal(self, row: int) -> None:
         """Scroll just so far that a line is in sight."""

@@ -19,10 +19,12 @@ from fertui.tui.terminal import Terminal
 from fertui.tui.view import View
 
 if TYPE_CHECKING:
+    from fertui.site.model import Site
     from fertui.workbench import Bench
 
 LOOK_FOR_NEWS_EVERY = 2.0
-"""Seconds between looks at the logbook for what other sessions wrote."""
+"""Seconds between looks at the logbook and the site file for what other sessions wrote."""
+UNREADABLE = "The program goes on with the site as it was; a repaired file is taken up by itself."
 
 
 class Working(Shell):
@@ -43,18 +45,24 @@ class Working(Shell):
         self._clerk = Desk("clerk", open_bench, self.post_message)
         self._under_way: dict[Ask, Call] = {}
         self._last_number = -1
+        self._site_stamp = 0
+        self._last_trouble = ""
 
     async def begin(self) -> None:
         """Open the site; the frame is on the screen already."""
         await super().begin()
         self.set_interval(LOOK_FOR_NEWS_EVERY, self._look_for_news)
-        self.quietly(lambda bench: (bench.site, bench.loops, bench.last_number()), self._opened, "opening the site")
+        self.quietly(
+            lambda bench: (bench.site, bench.loops, bench.last_number(), bench.site_stamp()),
+            self._opened,
+            "opening the site",
+        )
 
     def _opened(self, answer: Answer) -> None:
         if answer.value is None:
             self.say_at_length("The site cannot be opened", answer.trouble)
             return
-        site, loops, self._last_number = answer.value
+        site, loops, self._last_number, self._site_stamp = answer.value
         unit = self.settings.unit or site.units
         self.snapshot = replace(self.snapshot, site=site, loops=loops, loop=loops[0], unit=unit)
 
@@ -134,13 +142,34 @@ class Working(Shell):
         if self.initials.now != self.snapshot.initials:
             self.snapshot = replace(self.snapshot, initials=self.initials.now)
         if self.snapshot.loop:
-            self.quietly(lambda bench: bench.last_number(), self._news)
+            self.quietly(lambda bench: (bench.last_number(), bench.site_stamp()), self._news)
 
     def _news(self, answer: Answer) -> None:
-        if answer.value is not None and answer.value != self._last_number:
-            self.changed(answer.value)
-        elif answer.trouble:
-            self.say(answer.trouble, "act")
+        if answer.trouble != self._last_trouble:
+            self._last_trouble = answer.trouble
+            self.say(answer.trouble or "The logbook can be read again.", "act" if answer.trouble else "good")
+        if answer.value is None:
+            return
+        number, stamp = answer.value
+        if stamp != self._site_stamp:
+            self._site_stamp = stamp
+            self.quietly(lambda bench: bench.read_site_again(), self._site_read, "reading the site file")
+        elif number != self._last_number:
+            self.changed(number)
+
+    def _site_read(self, answer: Answer) -> None:
+        """The site file was written by someone: take it up, or say what is wrong with it and go on without."""
+        if answer.value is None:
+            self.say_at_length("site.toml cannot be read now", f"{answer.trouble} {UNREADABLE}")
+            return
+        self._model.put(Call(lambda bench: bench.read_site_again(), lambda _: self.changed(self._last_number)))
+        self.site_changed(answer.value)
+
+    def site_changed(self, site: Site) -> None:
+        """The site is another now: loops may have come or gone."""
+        loops = tuple(loop.name for loop in site.loops)
+        loop = self.snapshot.loop if self.snapshot.loop in loops else loops[0]
+        self.snapshot = replace(self.snapshot, site=site, loops=loops, loop=loop)
 
     def changed(self, last_number: int) -> None:
         """The logbook has new entries: what is shown stays until better answers come."""
@@ -149,3 +178,7 @@ class Working(Shell):
         self._take_back(list(self._under_way.values()))
         self._under_way.clear()
         self.snapshot = self.snapshot.outdated()
+
+
+def _all_at_first(bench: Bench) -> tuple[Site, tuple[str, ...], int, int]:
+    return bench.site, bench.loops, bench.last_number(), bench.site_stamp()

@@ -32,6 +32,23 @@ class SiteFolder:
 
         return read_site(self.folder)
 
+    def site_stamp(self) -> int:
+        """A number that changes when the site file does; 0 while there is none."""
+        from fertui.site.files import NAME
+
+        try:
+            return (self.folder / NAME).stat().st_mtime_ns
+        except OSError:
+            return 0
+
+    def read_site_again(self) -> Site:
+        """Take up what the site file says now; raises ``SiteError`` where it cannot be read and keeps the old one."""
+        from fertui.site.files import read_site
+
+        site = read_site(self.folder)
+        self.__dict__["site"] = site  # where cached_property keeps it
+        return site
+
     @cached_property
     def book(self) -> Logbook:
         """The logbook, opened once."""

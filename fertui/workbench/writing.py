@@ -92,11 +92,11 @@ class Writing(Answers):
         return backup(self.folder, path)
 
     def change_site(self, key: str, text: str, by: str) -> Entry:
-        """Change one value of the site file, keep the old file, and log the new one whole."""
+        """Change one value of the site file as it is now, keep the old file, and log the new one whole."""
         from fertui.site.edit import changed
         from fertui.site.files import write_site
 
-        site = changed(self.site, key, text, source=f"{by}, {now():%Y-%m-%d}")
+        site = changed(self.read_site_again(), key, text, source=f"{by}, {now():%Y-%m-%d}")
         path = write_site(site, self.folder, datetime.now(UTC))
         self.__dict__.pop("site", None)
         return self.record("site", {"text": path.read_text(encoding="utf-8"), "by": by})

@@ -7,7 +7,6 @@ characters and 16, both without the initials.
 from __future__ import annotations
 
 import re
-import sqlite3
 from pathlib import Path
 
 import pytest
@@ -295,28 +294,3 @@ def test_a_correction_without_a_reason_changes_nothing(site: Path, counting: Cou
     terminal.press("enter")
     terminal.until_text("a reason is needed")
     assert len(fresh(site, "reading")) == 1
-
-
-def test_a_vanished_logbook_becomes_a_sentence(site: Path, counting: Counted) -> None:
-    terminal = counting.terminal
-    terminal.press("r", "2.6", "enter")
-    terminal.until_text("= 2.6")
-    for path in site.glob("logbook.sqlite3*"):
-        path.unlink()
-    terminal.press("+")
-    give_initials(terminal)
-    terminal.until_text("Nothing was saved; the form is kept.")
-
-
-def test_a_locked_logbook_becomes_a_sentence_and_the_form_is_kept(site: Path, counting: Counted) -> None:
-    terminal = counting.terminal
-    terminal.press("r", "2.6", "enter", "+")
-    terminal.until_text("Your initials:")
-    with sqlite3.connect(site / "logbook.sqlite3", isolation_level=None) as other:
-        other.execute("BEGIN EXCLUSIVE")
-        terminal.press("M", "K", "enter")
-        terminal.until_text("Nothing was saved; the form is kept.")
-        other.execute("ROLLBACK")
-    terminal.press("+")
-    terminal.until_text("saved")
-    assert [entry.number_of("EC") for entry in fresh(site, "reading")] == [2.6]

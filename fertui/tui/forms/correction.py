@@ -23,8 +23,9 @@ class Correction(Form):
         self.entry = entry
         self.answers = Answers.blank(self.spec)
 
-    def keep(self) -> None:
+    def keep(self) -> bool:
         """A correction half typed is not kept: it belongs to this entry as it stood."""
+        return True
 
     def action_save(self) -> None:
         """Ask for the reason where none is given, then write."""

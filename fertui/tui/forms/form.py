@@ -279,8 +279,8 @@ class Form(View):
 
     def _written(self, answer: Answer) -> None:
         if answer.value is None:
-            self.say(("Nothing was saved; the form is kept.", "watch"), (answer.trouble, "act"))
-            self.keep()
+            kept = "the form is kept" if self.keep() else "no draft can be kept either: leave the form open or copy it"
+            self.say((f"Nothing was saved; {kept}.", "watch"), (answer.trouble, "act"))
             return
         written, last_number = answer.value
         self.fertui.drop_draft(self.spec.kind, self.loop)
@@ -292,10 +292,11 @@ class Form(View):
 
     # drafts
 
-    def keep(self) -> None:
-        """Keep what is typed so far."""
-        if self.answers.changed and not self._done:
-            self.fertui.keep_draft(self.spec.kind, self.loop, self.answers.with_typed_kept().texts)
+    def keep(self) -> bool:
+        """Keep what is typed so far; False where that cannot be done."""
+        if not self.answers.changed or self._done:
+            return True
+        return self.fertui.keep_draft(self.spec.kind, self.loop, self.answers.with_typed_kept().texts)
 
     def take_up(self, texts: tuple[str, ...]) -> None:
         """Go on with a draft of this form."""
