@@ -19,6 +19,8 @@ from fertui.site.model import Composition, Supply
 
 FROM_MEQ_PER_L = 1.0
 """Alkalinity of a tank from which a plan doses acid: the upper end of what is left as buffer (ARSIA 5/2004, p. 179)."""
+TOLD_MEQ_PER_L = 0.2
+"""Difference between what the make-up brings and what the model finds that is worth a word: what a test kit shows."""
 FORTNIGHT = 14.0
 HABIT = 2
 """Acids logged within a fortnight from which they are a habit that goes on (common practice, no source)."""
@@ -31,6 +33,7 @@ class TankAcid:
 
     sheets: tuple[AcidSheet | None, ...]
     arithmetic: tuple[str, ...] = ()
+    notices: tuple[str, ...] = ()
 
     @property
     def first(self) -> AcidSheet | None:
@@ -57,18 +60,19 @@ def tank_acid(request: Request, days: Sequence[int], course: Course) -> TankAcid
     if acid is None or held is None:
         return TankAcid((None,) * len(days))
     volume, daily = situation.volumes_l["tank"], _daily(situation)
-    stands, taken, sheets, lines = held.mmol_l.value, 0.0, [], []
+    stands, taken, sheets, lines, withheld = held.mmol_l.value, 0.0, [], [], False
     for before, day in zip((0, *days), days, strict=False):
         stands += daily * (day - before) / volume
         found = float(course.ions["tank"][day, 0, _HCO3]) - taken
         there = min(stands, found) if day > 0 else stands
         dosed = there > FROM_MEQ_PER_L
+        withheld |= stands > FROM_MEQ_PER_L and stands - there > TOLD_MEQ_PER_L
         sheets.append(_sheet(situation, acid, there, day == 0) if dosed else None)
         if dosed and day > 0:
             lines.append(_sum(situation, day, there))
         taken += there - LEAVE_MEQ_PER_L if dosed else 0.0
         stands = LEAVE_MEQ_PER_L if dosed else stands
-    return TankAcid(tuple(sheets), tuple(lines))
+    return TankAcid(tuple(sheets), tuple(lines), (_withheld(situation),) if withheld else ())
 
 
 def _daily(situation: Situation) -> float:
@@ -92,6 +96,14 @@ def _sheet(situation: Situation, acid: Supply, alkalinity: float, now: bool) -> 
     ph = situation.points["tank"].ph if now else None
     water = Composition({"HCO3": alkalinity}, ph=None if ph is None else ph.value)
     return acid_sheet(situation.site, situation.loop, water=water, acid=acid, volume_l=situation.volumes_l["tank"])
+
+
+def _withheld(situation: Situation) -> str:
+    return (
+        f"the make-up brings {_daily(situation):.0f} meq of alkalinity a day beyond the {LEAVE_MEQ_PER_L:g} meq/L that "
+        "is left; by the model roots use up part or all of it, and so much less acid is planned: measure alkalinity "
+        "and pH of the tank before each step, and dose what is found by the acid sheet"
+    )
 
 
 def _sum(situation: Situation, day: int, alkalinity: float) -> str:

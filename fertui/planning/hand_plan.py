@@ -70,7 +70,7 @@ def hand_plan(request: Request) -> Plan:
     acid = tank_acid(request, days, course)
     if not request.managed.named and acid.first is None and request.in_order(empty.after_without):
         words = "nothing to weigh: the shares stay in their bands and no limit is passed up to the horizon"
-        return request.counted(replace(empty, notices=(words,)))
+        return request.counted(replace(empty, notices=(words, *acid.notices)))
     task = _task(request, days, acid)
     dosed = dose(task, request.runs, request.solver, course)
     return _shown(request, task, dosed, empty, acid)
@@ -144,6 +144,7 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, acid: TankAc
         notices=(
             *_unseen(request),
             *over_limit_words(dosed.end, request.managed),
+            *acid.notices,
             *heated_words(request.situation, request.entries),
             *spread_words(request, steps),
         ),

@@ -210,6 +210,7 @@ def test_the_alkalinity_of_the_coming_make_up_is_met_step_by_step() -> None:
     mol = 7.435 * sum(each.litres for each in plan.acid)
     assert mol == pytest.approx(1.5 * days[-1], rel=0.01)
     assert any("500 L x (3.50 - 0.50 left) meq/L = 1500 meq a day" in line for line in plan.arithmetic)
+    assert not any("by the model roots use up" in line for line in plan.notices)
     for day in days:
         portions = [each.litres for each in plan.acid if (each.at - place.at).days == day]
         assert max(portions) <= sum(portions) / 3 + 1e-9
@@ -219,7 +220,9 @@ def test_no_more_acid_than_the_model_finds_alkalinity() -> None:
     # roots that take up cations beyond anions use up what the make-up brings: no acid on top of that
     place, tank = with_make_up(500.0, 3.5)
     tank.uptake_mmol_d = 0.0 * tank.uptake_mmol_d
-    assert hand_plan(request(place, tank, days=12)).acid == ()
+    plan = hand_plan(request(place, tank, days=12))
+    assert plan.acid == ()
+    assert any("the make-up brings 1500 meq" in line and "measure" in line for line in plan.notices)
 
 
 def test_acid_before_heating_the_drain_is_taken_off_and_said() -> None:
