@@ -52,12 +52,14 @@ USE_CASES: dict[str, UseCase] = {
     "overview": _overview, "balance": _balance, "forecast": _forecast, "stock": _untimed, "acid": _untimed,
     "aims": _untimed, "previous": _untimed,
     "check": _whole, "history": _history, "open_plans": _untimed, "site_rows": _whole, "supplies_rows": _whole,
+    "news": _whole,
 }  # fmt: skip
 """Use cases that take other arguments than loop and time."""
 
 QUICK = frozenset(
     {
         "glance",
+        "news",
         "previous",
         "history",
         "aims",

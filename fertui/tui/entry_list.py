@@ -27,11 +27,13 @@ class Wanted:
     text: str = ""
     start: datetime | None = None
     end: datetime | None = None
+    numbers: tuple[int, ...] = ()
 
     def takes(self, entry: Entry) -> bool:
         """Whether an entry is wanted. Entries of no loop belong to every loop."""
         return (
             (not self.loop or entry.loop in ("", self.loop))
+            and (not self.numbers or entry.number in self.numbers)
             and (not self.kinds or entry.kind in self.kinds)
             and (not self.by or entry.by.lower() == self.by.lower())
             and (self.start is None or entry.at >= self.start)

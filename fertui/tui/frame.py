@@ -34,6 +34,19 @@ class FertuiApp(Papers):
             self.page.redraw()
         self.work_out()
 
+    async def action_news(self) -> None:
+        """Open the logbook at what others wrote since the person at the keyboard last looked."""
+        from fertui.tui.views.logbook import LogbookView
+
+        entries = self.snapshot.get(self.snapshot.news) or ()
+        if not entries:
+            self.say("Nobody else has written since you looked.")
+            return
+        await self.action_view(7)
+        if isinstance(self.page, LogbookView):
+            self.page.show_news(tuple(entry.number or 0 for entry in entries))
+        self.snapshot = replace(self.snapshot, looked=self._last_number)
+
     def action_loop(self, step: int) -> None:
         """Show another loop."""
         if len(self.snapshot.loops) < 2:

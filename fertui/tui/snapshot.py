@@ -22,7 +22,10 @@ class Ask:
 
 @dataclass(frozen=True, slots=True)
 class Snapshot:
-    """Answers so far, the loop and unit chosen, who is at the keyboard, what is still being worked out."""
+    """Answers so far, the loop and unit chosen, who is at the keyboard, what is still being worked out.
+
+    ``looked``: number of the last entry the person at the keyboard has seen, 0 when not known.
+    """
 
     loops: tuple[str, ...] = ()
     loop: str = ""
@@ -32,6 +35,7 @@ class Snapshot:
     answers: Mapping[Ask, Answer] = field(default_factory=dict)
     stale: frozenset[Ask] = frozenset()
     waiting: tuple[str, ...] = ()
+    looked: int = 0
 
     def get(self, ask: Ask) -> Any:
         """The value of an answer, or None while there is none."""
@@ -42,6 +46,11 @@ class Snapshot:
         """Why an answer could not be had, or ''."""
         answer = self.answers.get(ask)
         return "" if answer is None else answer.trouble
+
+    @property
+    def news(self) -> Ask:
+        """The question what others wrote since the person at the keyboard last wrote or looked."""
+        return Ask("news", None, (("by", self.initials), ("after", self.looked)))
 
     def lacks(self, ask: Ask) -> bool:
         """Whether this has to be worked out: never asked, or the logbook has changed since."""

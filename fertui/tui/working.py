@@ -64,7 +64,10 @@ class Working(Shell):
             return
         site, loops, self._last_number, self._site_stamp = answer.value
         unit = self.settings.unit or site.units
-        self.snapshot = replace(self.snapshot, site=site, loops=loops, loop=loops[0], unit=unit)
+        looked = 0 if self.initials.now else self._last_number  # who is not known has seen nothing and missed nothing
+        self.snapshot = replace(
+            self.snapshot, site=site, loops=loops, loop=loops[0], unit=unit, looked=looked, initials=self.initials.now
+        )
 
     def say_at_length(self, title: str, sentence: str) -> None:
         """A sentence that may not fit the bottom line, on a page of its own."""

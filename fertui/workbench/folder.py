@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from datetime import datetime
+from datetime import datetime, timedelta
 from functools import cached_property
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -17,6 +17,8 @@ if TYPE_CHECKING:
 
 LOGBOOK = "logbook.sqlite3"
 COUNTED_BY_YEAR = ("bleed",)
+NEWS_LASTS = timedelta(days=14)
+"""Older entries are no news to anyone, however long he was away."""
 
 
 class SiteFolder:
@@ -98,6 +100,16 @@ class SiteFolder:
 
         kinds = None if kind is None else (kind_named(kind).name,)
         return self.book.history(loop=None if loop is None else self.loop(loop).name, kinds=kinds, at=at)
+
+    def news(self, by: str = "", after: int = 0) -> tuple[Entry, ...]:
+        """What others wrote after the last entry of ``by``, and after a number, newest first; at most 14 days back."""
+        oldest, found = now() - NEWS_LASTS, []
+        for number in range(self.last_number(), after, -1):
+            entry = self.book.entry(number)
+            if entry.entered < oldest or (by and entry.by.lower() == by.lower()):
+                break
+            found.append(entry)
+        return tuple(found)
 
     def last_number(self) -> int:
         """Number of the last entry: what another session wrote shows here."""

@@ -294,3 +294,26 @@ def test_a_correction_without_a_reason_changes_nothing(site: Path, counting: Cou
     terminal.press("enter")
     terminal.until_text("a reason is needed")
     assert len(fresh(site, "reading")) == 1
+
+
+def test_today_tells_what_others_wrote_since_this_operator_wrote_or_looked(site: Path, open_terminal: Opened) -> None:
+    bench = open_site(site)
+    bench.record("note", {"text": "mine", "by": "MK"})
+    for text in ("filter cleaned", "door open", "pump swapped"):
+        bench.record("note", {"text": text, "by": "RV"})
+    terminal = open_terminal(site, FERTUI_OPERATOR="MK")
+    terminal.until_text("since you looked: 3 entries by RV")
+    terminal.press("l")
+    shown = terminal.until_text("since you looked   3 entries")
+    assert "pump swapped" in shown
+    assert "mine" not in shown
+    terminal.press("1")
+    terminal.until(lambda text: "worst first" in text and "since you looked" not in text)
+    bench.record("note", {"text": "lamp out", "by": "JA"})
+    terminal.until_text("since you looked: 1 entry by JA")
+
+
+def test_without_initials_news_is_what_came_since_the_session_began(site: Path, counting: Counted) -> None:
+    assert "since you looked" not in counting.terminal.text
+    open_site(site).record("note", {"text": "lamp out", "by": "JA"})
+    counting.terminal.until_text("since you looked: 1 entry by JA")

@@ -39,6 +39,7 @@ class LogbookView(EntryList, inherit_bindings=False):
     def _filter(self, wanted: Wanted) -> None:
         self.wanted, self.row = wanted, 0
         words = [
+            "since you looked" if wanted.numbers else "",
             *wanted.kinds,
             wanted.loop,
             f"by {wanted.by}" if wanted.by else "",
@@ -46,6 +47,10 @@ class LogbookView(EntryList, inherit_bindings=False):
         ]
         self.heading = ", ".join(filter(None, words)) or "All entries"
         self.redraw()
+
+    def show_news(self, numbers: tuple[int, ...]) -> None:
+        """Show these entries alone, of every loop."""
+        self._filter(Wanted(numbers=numbers))
 
     async def action_kind(self) -> None:
         """Choose a kind."""

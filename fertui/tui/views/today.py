@@ -37,10 +37,12 @@ class TodayView(View):
         "The bars are 14 days back and, in the other colour, 14 days ahead. "
         "'in 4 (2-9) days' is when the value leaves its band: the middle of the forecast and its 80 % range. "
         "'To look at' lists what wants doing, worst first, with the key that does it. "
+        "'since you looked' counts what others wrote since your last entry or look; l shows it. "
         "With several loops v shows all of them on one screen, worst first."
     )
     BINDINGS: ClassVar[list[Any]] = [
         Binding("v", "all_loops", "all loops", id="today.all", tooltip="All loops on one screen, worst first."),
+        Binding("l", "app.news", "news", show=False, id="today.news", tooltip="What others wrote since you looked."),
         Binding("enter", "open_loop", "open loop", show=False, id="today.open", tooltip="Open the loop under the bar."),
     ]
 
@@ -55,16 +57,16 @@ class TodayView(View):
     def asks(self, snapshot: Snapshot) -> tuple[Ask, ...]:
         """Last known numbers first, then the estimate."""
         if self._shows_all(snapshot):
-            return (*(Ask("glance", loop) for loop in snapshot.loops), Ask("overview"))
-        return Ask("glance", snapshot.loop), Ask("today", snapshot.loop)
+            return (*(Ask("glance", loop) for loop in snapshot.loops), snapshot.news, Ask("overview"))
+        return Ask("glance", snapshot.loop), snapshot.news, Ask("today", snapshot.loop)
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """All loops, or the one chosen."""
         if not snapshot.loop:
             return [BLANK, line(" ", Span("Opening the logbook.", "faint"))]
         if self._shows_all(snapshot):
-            return draw_overview(snapshot, self.row, width)
-        return draw_today(snapshot, width)
+            return [*came_in(snapshot, width), *draw_overview(snapshot, self.row, width)]
+        return [*came_in(snapshot, width), *draw_today(snapshot, width)]
 
     def action_all_loops(self) -> None:
         """Between all loops and one."""
@@ -95,6 +97,17 @@ class TodayView(View):
             self.redraw()
         else:
             self._scroll(self._top + step)
+
+
+def came_in(snapshot: Snapshot, width: int) -> list[Line]:
+    """What others wrote since the person at the keyboard last wrote or looked, in one line; nothing when nobody did."""
+    entries = snapshot.get(snapshot.news) or ()
+    if not entries:
+        return []
+    people = list(dict.fromkeys(literal(entry.by) for entry in reversed(entries)))
+    who = ", ".join(people[:3]) + (f" and {len(people) - 3} more" if len(people) > 3 else "")
+    words = f"since you looked: {len(entries)} {'entry' if len(entries) == 1 else 'entries'} by {who}"
+    return [line(Span(" " + fit(words, width - 12), "accent"), Span("l shows it", "faint"))]
 
 
 def draw_today(snapshot: Snapshot, width: int) -> list[Line]:
