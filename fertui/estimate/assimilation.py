@@ -6,40 +6,28 @@ and because random numbers are keyed by day the days before it come out as they 
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field, replace
+from collections.abc import Iterable
+from dataclasses import replace
 from datetime import datetime
-from functools import cached_property
+from typing import Any
 
 import numpy as np
 
 from fertui.chemistry.ions import IONS, Array
-from fertui.estimate.beginning import Beginning, beginning, first_members, shows_a_vessel
+from fertui.estimate.beginning import beginning, first_members, shows_a_vessel
 from fertui.estimate.checks import failed
 from fertui.estimate.correction import TRACE, ElectroMeter, Innovation, corrected
-from fertui.estimate.display import (
-    Course,
-    Panel,
-    allowed,
-    feed_drive,
-    managed,
-    micronutrients_at,
-    ph_at,
-    same_solution,
-    shown_members,
-    solutions,
-    stacked,
-)
-from fertui.estimate.drives import Drives, drives
-from fertui.estimate.ensemble import Ensemble
+from fertui.estimate.display import feed_drive, managed, solutions, stacked
+from fertui.estimate.drives import drives
+from fertui.estimate.ensemble import Ensemble, compartment
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation, pooled
-from fertui.estimate.points import Estimated, IonState, PointState
-from fertui.estimate.ranges import Spread, estimated
+from fertui.estimate.ranges import Spread
 from fertui.estimate.record import Record, read
-from fertui.estimate.setting import Setting, setting
+from fertui.estimate.resuming import Stop, spans_alike
+from fertui.estimate.setting import setting
+from fertui.estimate.standing import Estimate, HeldBack, PointAt, Surprise, TrailDay, copies, thin
 from fertui.estimate.walk import events_between, grid_of, night, nights_of, spans_of, stretch
-from fertui.estimate.waters import lately
 from fertui.logbook.entries import Entry
 from fertui.loop import corrected as booked_as_unexplained
 from fertui.loop.account import Booking, booking
@@ -50,195 +38,33 @@ MEMBERS = 300
 SURPRISE = 3.0
 """An ion of an analysis so many predicted standard deviations off is flagged (and still used)."""
 FEW_ANALYSES = 3
+RECENT_STOPS, OLD_STOPS = 14, 7
+"""A run can be gone on with from each of its last nights, and from every seventh before: older changes are rare."""
 STAGE_SD = 0.15
 """A change of stage widens what is known of uptake by this much (log)."""
 
 
-@dataclass(frozen=True, slots=True)
-class Surprise:
-    """An observation that was used but far from what was expected; of a reading: set aside as a meter fault."""
-
-    entry: int | None
-    at: datetime
-    point: str
-    ions: tuple[str, ...]
-    text: str
-
-
-@dataclass(frozen=True, slots=True)
-class HeldBack:
-    """An analysis that failed its own charge or EC check: not used, to be asked about."""
-
-    entry: int | None
-    at: datetime
-    point: str
-    why: str
-
-
-@dataclass(frozen=True, slots=True)
-class TrailDay:
-    """What was known at one time."""
-
-    at: datetime
-    points: Mapping[str, PointState]
-
-
-@dataclass(frozen=True, slots=True)
-class PointAt:
-    """One point at one time."""
-
-    at: datetime
-    state: PointState
-
-
-@dataclass(frozen=True)
-class Estimate:
-    """Where one loop is at a time, with everything a forecast, a plan, an account or a notice needs.
-
-    ``times`` [d from ``record.zero``] of the trail, with ``ensembles`` at each; ``lines`` and ``held_mmol`` (spans + 1,
-    10) are the account: ensemble means of what moved, and of what the solution held at every time of ``drives.grid``.
-    """
-
-    site: Site
-    loop: Loop
-    at: datetime
-    seed: int
-    record: Record
-    setting: Setting
-    drives: Drives
-    ensemble: Ensemble
-    spread: Spread
-    begin: Beginning
-    analyses: int
-    surprises: tuple[Surprise, ...]
-    held_back: tuple[HeldBack, ...]
-    times: tuple[float, ...] = field(repr=False)
-    path: Mapping[str, Array] = field(repr=False)
-    path_ec: Array = field(repr=False)
-    lines: tuple[Booking, ...] = field(repr=False)
-    held_mmol: Array = field(repr=False)
-
-    @property
-    def members(self) -> int:
-        """Number of members."""
-        return self.ensemble.members
-
-    @property
-    def since(self) -> datetime:
-        """From when the estimate runs."""
-        return self.record.moment(self.begin.time)
-
-    @property
-    def managed(self) -> str:
-        """The point the loop is managed by."""
-        return managed(self.loop)
-
-    @property
-    def assumed(self) -> tuple[str, ...]:
-        """What the record did not say and what was taken instead."""
-        words = (*self.record.assumed, *self.setting.assumed, *self.drives.assumed)
-        if self.begin.analysis is not None:
-            return words
-        start = "its source water" if self.loop.layout == "shared-tank" else "its feed"
-        return (*words, f"no analysis to begin with: the loop begins as {start}")
-
-    @property
-    def last_analysis(self) -> Mapping[str, datetime]:
-        """Time of the last analysis that was used, by point."""
-        used = [each for each in self.record.observations if each.is_analysis and not each.doubtful]
-        held = {each.at for each in self.held_back}
-        return {each.point: each.at for each in used if each.at not in held}
-
-    @property
-    def ec_factor(self) -> Estimated:
-        """EC the meters of this loop show over EC of the ions."""
-        return estimated(np.exp(self.ensemble.ec))
-
-    @property
-    def multipliers(self) -> Mapping[str, Estimated]:
-        """Uptake of every ion over the preset's: trades off against water and volume, no plant physiology."""
-        return {ion: estimated(self.ensemble.multiplier[:, place]) for place, ion in enumerate(IONS[:-1])}
-
-    @property
-    def crop_water(self) -> Estimated:
-        """Crop water of the last seven days [L/m2/d]."""
-        mean = float(lately(self.record, self.setting, 7).crop.mean()) / self.loop.area_m2
-        return estimated(mean * np.exp(self.ensemble.drain * 0.5))
-
-    @property
-    def volumes_l(self) -> Mapping[str, float]:
-        """Litres held now, by vessel."""
-        store, root = self.ensemble.state.water_l.mean(axis=0)
-        if self.setting.circuit.mixed:
-            return {"tank": float(root)}
-        names = {"shared-tank": "tank", "drain-blend": "drain_store"}
-        found = {"root_zone": float(root)}
-        return {names[self.loop.layout]: float(store), **found} if self.loop.layout in names else found
-
-    def points(self) -> Mapping[str, PointState]:
-        """Every point of the layout as it is now."""
-        return self._now
-
-    @cached_property
-    def _now(self) -> Mapping[str, PointState]:
-        found = {}
-        for point in self.path:
-            bands, end = allowed(self.site, self.loop, point), self.times[-1]
-            state = self.course(point, 1)[0].state
-            micronutrients = micronutrients_at(self.record.observations, point, end, bands)
-            found[point] = replace(
-                state, ions={**state.ions, **{name: IonState(each) for name, each in micronutrients.items()}}
-            )
-        return found
-
-    def course(self, point: str, last: int | None = None) -> tuple[PointAt, ...]:
-        """One point once a local day, the ``last`` so many (all: None), and now; without micronutrients."""
-        which = slice(0 if last is None else max(len(self.times) - last, 0), None)
-        bands, seen = allowed(self.site, self.loop, point), self.record.observations
-        panel = Panel(self._quantiles(same_solution(self.setting, point), which), bands)
-        return tuple(
-            PointAt(self.record.moment(time), panel.state(place, ph_at(seen, point, time, bands.get("pH"))))
-            for place, time in enumerate(self.times[which])
-        )
-
-    def _quantiles(self, point: str, which: slice) -> Course:
-        return Course(shown_members(self.path[point][which], self.spread), self.path_ec[which])
-
-    @cached_property
-    def trail(self) -> tuple[TrailDay, ...]:
-        """Every point once a local day since the estimate began, and now."""
-        by_point = {point: self.course(point) for point in self.path}
-        moments = [self.record.moment(time) for time in self.times]
-        return tuple(
-            TrailDay(at, {point: course[place].state for point, course in by_point.items()})
-            for place, at in enumerate(moments)
-        )
+__all__ = [
+    "MEMBERS", "SEED", "Assimilation", "Estimate", "HeldBack", "PointAt", "Surprise", "TrailDay", "assimilate",
+    "copies", "thin",
+]  # fmt: skip
 
 
 def assimilate(
-    site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, members: int = MEMBERS, seed: int = SEED
+    site: Site,
+    loop: Loop,
+    entries: Iterable[Entry],
+    at: datetime,
+    members: int = MEMBERS,
+    seed: int = SEED,
+    before: Estimate | None = None,
 ) -> Estimate:
     """Where a loop is at a time, from its effective entries (those after ``at`` are left out).
 
-    The same entries give the same answer, whatever was computed before. Raises ``CatalogueError`` for a crop or medium
-    the catalogue does not know.
+    ``before``: an earlier estimate of the same loop; only what has changed since is run again. The same entries give
+    the same answer with it or without. Raises ``CatalogueError`` for a crop or medium the catalogue does not know.
     """
-    return Assimilation(read(site, loop, entries, at), members, seed).run()
-
-
-def thin(estimate: Estimate, members: int) -> Estimate:
-    """The same estimate with fewer members, evenly chosen; one member stands in the middle."""
-    if members >= estimate.members:
-        return estimate
-    if members == 1:
-        return copies(estimate, 1)
-    chosen = np.linspace(0, estimate.members - 1, members).round().astype(int)
-    return replace(estimate, ensemble=estimate.ensemble.chosen(chosen))
-
-
-def copies(estimate: Estimate, members: int) -> Estimate:
-    """The middle of the ensemble so many times: what a planner perturbs."""
-    return replace(estimate, ensemble=estimate.ensemble.middle(estimate.setting).chosen(np.zeros(members, dtype=int)))
+    return Assimilation(read(site, loop, entries, at), members, seed).run(before.run if before else None)
 
 
 class Assimilation:
@@ -246,10 +72,10 @@ class Assimilation:
 
     def __init__(self, record: Record, members: int, seed: int) -> None:
         self.record, self.members, self.seed = record, members, seed
-        self.setting = setting(record.loop, _stage(record, record.end))
         self.held_back: list[HeldBack] = []
         self.usable = self._usable()
-        self.begin = beginning(record, self.setting, self.usable)
+        self.begin = beginning(record, setting(record.loop), self.usable)
+        self.setting = setting(record.loop, _stage(record, self.begin.time))
         self.observed = [each for each in self.usable if self._taken_in(each)]
         moments = [each.time for each in self.observed]
         self.nights = nights_of(record, self.begin.time, record.end, moments)
@@ -266,18 +92,53 @@ class Assimilation:
         self.held = [self._in_solution()]
         self.marks: list[tuple[float, dict[str, Array], Array]] = []
         self.after: list[tuple[Observation, Ensemble, Spread, int]] = []
+        self.stops: list[Stop] = []
 
-    def run(self) -> Estimate:
-        """Through all stretches to the end of the record."""
+    def run(self, before: Assimilation | None = None) -> Estimate:
+        """Through all stretches to the end of the record, or through those that differ from an earlier run."""
         if self.begin.analysis is not None:
             self.after.append((self.begin.analysis, self.ensemble, self.spread, 0))
-        for span in range(len(self.grid) - 1):
+        first = self._resumed(before) if before is not None else 0
+        for span in range(first, len(self.grid) - 1):
+            if span in self.night_of:
+                self.stops.append(self._stop(span))
             self._arrive(span)
             self._mark(span)
             self._go(span)
         self._arrive(len(self.grid) - 1)
         self._mark(len(self.grid) - 1, last=True)
+        recent = len(self.stops) - RECENT_STOPS
+        self.stops = [stop for place, stop in enumerate(self.stops) if place >= recent or place % OLD_STOPS == 0]
         return self._estimate()
+
+    def _stop(self, span: int) -> Stop:
+        """All that the rest of the run depends on, right before a stretch."""
+        lines = {point: meter.line for point, meter in self.meters.items()}
+        counts = tuple(len(each) for each in self._grown())
+        return Stop(span, self.setting, self.ensemble, self.spread, self.analyses, lines, counts)
+
+    def _grown(self) -> tuple[list[Any], ...]:
+        """What grows while the run goes on."""
+        return self.surprises, self.lines, self.held, self.marks, self.after
+
+    def _resumed(self, before: Assimilation) -> int:
+        """The stretch to go on from, all taken over that came out the same in an earlier run; 0: from the start."""
+        same = spans_alike(before, self)
+        stops = [stop for stop in before.stops if stop.span <= same]
+        if not stops:
+            return 0
+        stop = stops[-1]
+        self.setting, self.ensemble, self.spread, self.analyses = (
+            stop.setting,
+            stop.ensemble,
+            stop.spread,
+            stop.analyses,
+        )
+        self.meters = {point: ElectroMeter(line) for point, line in stop.meters.items()}
+        for own, old, count in zip(self._grown(), before._grown(), stop.counts, strict=True):
+            own[:] = old[:count]
+        self.stops = stops[:-1]
+        return stop.span
 
     def _usable(self) -> tuple[Observation, ...]:
         """Observations that may be used; analyses that fail their own checks are held back."""
@@ -319,7 +180,8 @@ class Assimilation:
     def _observe(self, seen: Observation, span: int) -> None:
         before = self.ensemble
         meter = self.meters.setdefault(seen.point, ElectroMeter())
-        drive = feed_drive(self.drives, max(span - 1, 0), before)
+        blended = compartment(self.setting, seen.point) is None
+        drive = feed_drive(self.drives, max(span - 1, 0), before) if blended else None
         self.ensemble, found = corrected(before, self.setting, seen, drive, meter, self.seed)
         if found is None:
             return
@@ -389,7 +251,7 @@ class Assimilation:
             drives=self.drives, ensemble=self.ensemble, spread=self.spread, begin=self.begin, analyses=self.analyses,
             surprises=tuple(self.surprises), held_back=tuple(self.held_back),
             times=tuple(mark[0] for mark in self.marks), path=path, path_ec=np.stack([mark[2] for mark in self.marks]),
-            lines=tuple(self.lines), held_mmol=np.array(self.held),
+            lines=tuple(self.lines), held_mmol=np.array(self.held), run=self,
         )  # fmt: skip
 
 

@@ -65,12 +65,12 @@ class Innovation:
 class ElectroMeter:
     """EC of many compositions by a straight line about their median, drawn anew when that has moved."""
 
-    def __init__(self) -> None:
-        self.line: Linearised | None = None
+    def __init__(self, line: Linearised | None = None) -> None:
+        self.line = line
 
     def __call__(self, mmol_l: Array) -> Array:
         """log EC (M,) [mS/cm] of compositions (M, 10)."""
-        middle = np.quantile(mmol_l, 0.5, axis=0)
+        middle = np.partition(mmol_l, len(mmol_l) // 2, axis=0)[len(mmol_l) // 2]
         if self.line is None or np.any(np.abs(middle - self.line.at) > EC_CHANGED * self.line.at + 0.3):
             self.line = linearise(middle)
         return np.log(np.maximum(self.line(mmol_l), 0.01))
@@ -142,12 +142,12 @@ class _EC:
 def _updated(
     ensemble: Ensemble, setting: Setting, seen: Observation, look: _Ions | _EC, seed: int
 ) -> tuple[Ensemble, Array, Array, Array]:
-    """Members after one look, the innovation (n,), its standard deviation (n,), and the median expected (n,)."""
+    """Members after one look, the innovation (n,), its standard deviation (n,), and the mean expected (n,)."""
     predicted = look.predicted(ensemble)
     anomalies = predicted - predicted.mean(axis=0)
     total = _covariance(anomalies, anomalies) + look.noise
     off, sd = look.measured - predicted.mean(axis=0), np.sqrt(np.diag(total))
-    expected = np.quantile(predicted, 0.5, axis=0)
+    expected = predicted.mean(axis=0)
     if not seen.is_analysis and np.any(np.abs(off) > GROSS * sd):
         return ensemble, off, sd, expected
     key = f"{seen.at.isoformat()} {seen.point} {seen.kind} {len(off)}"
@@ -172,6 +172,7 @@ def _shown(ensemble: Ensemble, setting: Setting, seen: Observation, drive: Drive
 
 
 def _covariance(left: Array, right: Array) -> Array:
+    """Covariance of columns; ``left`` has mean zero, so that ``right`` need not."""
     return left.T @ right / max(len(left) - 1, 1)
 
 
@@ -183,7 +184,7 @@ def _learned(ensemble: Ensemble, setting: Setting, names: Sequence[str], anomali
         if name == "stock" and setting.circuit.layout == "known-feed":
             continue
         flat = values.reshape(len(values), -1)
-        shifted = flat + weights @ _covariance(anomalies, flat - flat.mean(axis=0))
+        shifted = flat + weights @ _covariance(anomalies, flat)
         bound = MOST_LEARNED.get(name, np.inf)
         moved[name] = np.clip(shifted, -bound, bound).reshape(values.shape)
     return replace(ensemble, **moved)
@@ -198,7 +199,7 @@ def _moved(ensemble: Ensemble, anomalies: Array, weights: Array, where: int) -> 
     amounts = np.maximum(state.ions_mmol[:, :, :_HCO3], 0.0)
     water = np.maximum(state.water_l, 1e-9)[:, :, None]
     logs = np.log(np.maximum(amounts / water, TRACE)).reshape(len(amounts), -1)
-    shift = (weights @ _covariance(anomalies, logs - logs.mean(axis=0))).reshape(amounts.shape)
+    shift = (weights @ _covariance(anomalies, logs)).reshape(amounts.shape)
     shift[:, 1 - where] = np.clip(shift[:, 1 - where], -MOST_UNSEEN, MOST_UNSEEN)
     ions = state.ions_mmol.copy()
     ions[:, :, :_HCO3] = np.where(amounts > 0, amounts * np.exp(shift), 0.0)

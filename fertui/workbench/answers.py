@@ -36,6 +36,7 @@ class Answers(SiteFolder):
     def __init__(self, folder: Path) -> None:
         super().__init__(folder)
         self._estimates: dict[tuple[Any, ...], Estimate] = {}
+        self._latest: dict[str, Estimate] = {}
 
     def glance(self, loop: str | None = None, at: datetime | None = None) -> Glance:
         """Last known numbers of a loop, without running the model."""
@@ -52,7 +53,9 @@ class Answers(SiteFolder):
         if key not in self._estimates:
             if len(self._estimates) > 8:
                 self._estimates.clear()
-            self._estimates[key] = assimilate(self.site, chosen, self.entries(at, known), at)
+            before = self._latest.get(chosen.name)
+            found = assimilate(self.site, chosen, self.entries(at, known), at, before=before)
+            self._estimates[key] = self._latest[chosen.name] = found
         return self._estimates[key]
 
     def today(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Today:
