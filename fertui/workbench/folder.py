@@ -17,6 +17,8 @@ if TYPE_CHECKING:
 
 LOGBOOK = "logbook.sqlite3"
 COUNTED_BY_YEAR = ("bleed",)
+RECENT = timedelta(days=92)
+"""Views look back three months, however little of it an estimate needs."""
 NEWS_LASTS = timedelta(days=14)
 """Older entries are no news to anyone, however long he was away."""
 
@@ -82,7 +84,7 @@ class SiteFolder:
 
         at = at or now()
         analyses = self.book.entries(kinds=("analysis",), since=since_needed(at), at=at, known=known)
-        since = since_needed(at, analyses)
+        since = min(since_needed(at, analyses), at - RECENT)
         old = self.book.entries(kinds=(*LASTING, *COUNTED_BY_YEAR), at=since, known=known)
         return (*(entry for entry in old if entry.at < since), *self.book.entries(since=since, at=at, known=known))
 
