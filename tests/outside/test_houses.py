@@ -161,3 +161,16 @@ def test_as_issued_the_record_claims_no_skill_it_lacks(sites: list[Path], capsys
     assert all(ion in told.split("worse for", 1)[-1] for ion in worse), (planned, none)
     shares = [row for row in rows if row["ion"] in SHARED]
     assert _covered(shares, "measured_share_pct", "low_share_pct", "high_share_pct") >= 0.7
+
+
+def test_today_and_forecast_answer_for_the_houses(sites: list[Path], capsys: pytest.CaptureFixture[str]) -> None:
+    """What went in through ``new`` and ``import`` alone is enough for an answer in the midst of the season."""
+    for site in sites:
+        for command in ("today", "forecast"):
+            capsys.readouterr()
+            _done([command, str(site), "--at", "2020-04-20", "--json"])
+            told = json.loads(capsys.readouterr().out)
+            points = told["points"] if command == "today" else told["days"][-1]["points"]
+            assert set(points) == {"feed", "root_zone", "drain"}
+            share = points["root_zone"]["ions"]["K"]["share_pct"]
+            assert 0.0 < share["low"] < share["value"] < share["high"] < 100.0
