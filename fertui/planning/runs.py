@@ -217,20 +217,3 @@ def _moved(known: Estimated, value: float) -> Estimated:
 
 def _by_ion(ions: Array) -> dict[str, Array | float]:
     return {ion: ions[..., i] for i, ion in enumerate(IONS)}
-
-
-def staffed_days(situation: Situation, days: int, steps: int) -> tuple[int, ...]:
-    """Days from now on which people are there, for at most so many steps: two as soon as can be, the rest spread out.
-
-    The last step leaves a quarter of the horizon to act.
-    """
-    from zoneinfo import ZoneInfo
-
-    here = situation.at.astimezone(ZoneInfo(situation.site.timezone))
-    staffed = [day for day in range(max(days, 1)) if f"{here + timedelta(days=day):%a}" in situation.site.staffed_days]
-    last = max((day for day in staffed if day <= 0.75 * days), default=staffed[0] if staffed else 0)
-    early = [day for day in staffed if day <= last] or [0]
-    if len(early) <= steps:
-        return tuple(early)
-    wanted = [0.0, *np.linspace(1.0, len(early) - 1.0, max(steps - 1, 1))[: steps - 1]]
-    return tuple(dict.fromkeys(early[round(index)] for index in wanted))
