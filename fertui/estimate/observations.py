@@ -9,7 +9,7 @@ was cold or warm (nitrate electrode: +50 % at 5 C, +31 % at 10 C, least at 17-20
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import datetime
 
 import numpy as np
@@ -141,16 +141,21 @@ def _micronutrients(entry: Entry, factor: float) -> dict[str, float]:
 def pooled(seen: Iterable[Observation]) -> tuple[Observation, ...]:
     """What the filter takes in: analyses as they are; readings of one point within a quarter of a day as their mean.
 
-    A round at the loop is one observation, however many times a meter was read on it. Doubtful ones are left out.
+    A round at the loop is one moment, its last, however many points and meters it touched. Doubtful ones are left out.
     """
-    groups: dict[tuple[str, str, int], list[Observation]] = {}
-    for place, each in enumerate(seen):
-        if not each.doubtful:
-            quarter = -1 - place if each.is_analysis else int(each.time * 4.0)
-            groups.setdefault((each.kind, each.point, quarter), []).append(each)
-    return tuple(
-        sorted((_mean(group) for group in groups.values()), key=lambda each: (each.time, not each.is_analysis))
-    )
+    certain = [each for each in seen if not each.doubtful]
+    rounds: dict[int, Observation] = {}
+    groups: dict[tuple[str, int], list[Observation]] = {}
+    for each in sorted((each for each in certain if not each.is_analysis), key=lambda each: each.time):
+        quarter = int(each.time * 4.0)
+        rounds[quarter] = each
+        groups.setdefault((each.point, quarter), []).append(each)
+    readings = [
+        replace(_mean(group), time=rounds[quarter].time, at=rounds[quarter].at)
+        for (_, quarter), group in groups.items()
+    ]
+    analyses = [each for each in certain if each.is_analysis]
+    return tuple(sorted([*analyses, *readings], key=lambda each: (each.time, not each.is_analysis, each.point)))
 
 
 def _mean(group: list[Observation]) -> Observation:
