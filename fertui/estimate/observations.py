@@ -138,6 +138,11 @@ def _micronutrients(entry: Entry, factor: float) -> dict[str, float]:
     return {value.name: value.number * factor for value in given if value.number is not None}
 
 
+def quarter_of(time: float) -> int:
+    """The quarter of a day a time [d] falls into: what a round is told by."""
+    return int(time * 4.0)
+
+
 def pooled(seen: Iterable[Observation]) -> tuple[Observation, ...]:
     """What the filter takes in: analyses as they are; readings of one point within a quarter of a day as their mean.
 
@@ -147,7 +152,7 @@ def pooled(seen: Iterable[Observation]) -> tuple[Observation, ...]:
     rounds: dict[int, Observation] = {}
     groups: dict[tuple[str, int], list[Observation]] = {}
     for each in sorted((each for each in certain if not each.is_analysis), key=lambda each: each.time):
-        quarter = int(each.time * 4.0)
+        quarter = quarter_of(each.time)
         rounds[quarter] = each
         groups.setdefault((each.point, quarter), []).append(each)
     readings = [

@@ -7,7 +7,7 @@ since the previous entry of their kind. Doubtful entries are kept among the obse
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import UTC, datetime, time, timedelta
 from zoneinfo import ZoneInfo
 
@@ -160,7 +160,7 @@ class _Reader:
         return Record(
             site=self.site, loop=self.loop, at=at, whole=whole, zero=self.zero, end=self.days(at),
             first=self._first(), water=self._water(), levels=self._levels(), stock=self._stock(held), stock_held=held,
-            events=self._events(), feed=self._feed(seen),
+            events=self._events(seen), feed=self._feed(seen),
             recipes=self._recipes(), sources=self._sources(), setpoints=self._steps("setpoint"),
             stages=self._steps("crop"), light=self._light(), drain_pct=self._drain_pct(), observations=seen,
             anew=self._anew(ANEW), new_medium=max(self._anew(("planted", "replanted", "new medium")), default=None),
@@ -235,8 +235,8 @@ class _Reader:
                 rows.append((*span, strength * (entry.number_of("litres") or 0.0)))
         return spread(rows, (len(IONS),))
 
-    def _events(self) -> tuple[Event, ...]:
-        found = [*self._doses(), *self._acids(), *self._bleeds()]
+    def _events(self, seen: Sequence[Observation]) -> tuple[Event, ...]:
+        found = [*self._doses(), *self._injected(self._acids(), seen), *self._bleeds()]
         vessel = "drain_store" if self.loop.layout == "drain-blend" else "tank"
         found += [Event(when, "level", litres=litres, point=vessel) for when, litres in self._levels()]
         return tuple(sorted(found, key=lambda event: event.at))
@@ -262,6 +262,13 @@ class _Reader:
                 continue
             found.append(Event(self._moment(entry), "acid", ions, entry=entry.number))
         return found
+
+    def _injected(self, acids: Sequence[Event], seen: Sequence[Observation]) -> list[Event]:
+        """Acid that an injector used over a day, at that day's round; a split into a tank stays at its moment."""
+        if self.loop.layout == "shared-tank":
+            return list(acids)
+        rounds = {int(each.time): each.time for each in seen if not each.is_analysis and not each.doubtful}
+        return [replace(acid, at=rounds.get(int(acid.at), acid.at)) for acid in acids]
 
     def _bleeds(self) -> list[Event]:
         return [
