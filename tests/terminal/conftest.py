@@ -73,3 +73,20 @@ def terminal(site: Path, open_terminal: Opened) -> PseudoTerminal:
     shown.until_text("more to look at")
     shown.settle()
     return shown
+
+
+@pytest.fixture(scope="module")
+def shared_site(built: dict[str, Path], tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A demo site for all tests of a file that leave it fit for the next one."""
+    return shutil.copytree(built["fixed"], tmp_path_factory.mktemp("shared") / "nursery")
+
+
+@pytest.fixture(scope="module")
+def shared_terminal(shared_site: Path) -> Iterator[PseudoTerminal]:
+    """One terminal for those tests: a start costs more than all they press."""
+    home = shared_site.parent
+    own = {"HOME": str(home), "XDG_CONFIG_HOME": str(home), "XDG_STATE_HOME": str(home)}
+    with PseudoTerminal([sys.executable, str(HERE / "hand_made.py"), str(shared_site)], (80, 24), own, home) as shown:
+        shown.until_text("more to look at")
+        shown.settle()
+        yield shown

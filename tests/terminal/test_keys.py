@@ -39,7 +39,8 @@ def test_no_key_of_a_view_is_bound_twice(number: int) -> None:
 
 
 @pytest.mark.parametrize("number", range(1, 10))
-def test_every_key_of_a_view_can_be_pressed(terminal: PseudoTerminal, number: int) -> None:
+def test_every_key_of_a_view_can_be_pressed(shared_terminal: PseudoTerminal, number: int) -> None:
+    terminal = shared_terminal
     own = [key for binding in view_numbered(number).BINDINGS for key in binding.key.split(",")]
     everywhere = [
         key for binding in GLOBAL_KEYS for key in binding.key.split(",") if binding.id not in ("leave", "leave.at_once")

@@ -76,10 +76,13 @@ def test_suspended_and_resumed_it_draws_itself_again(terminal: PseudoTerminal) -
     "code",
     [b"\x1b[M !!", b"\x1b[M\x20\xe0\x80", b"\x1b[M#\xff\xfe", b"\xff\xfe\x80", b"\x1b[<0;3;3M", b"\x1b[200~\xc3"],
 )
-def test_odd_bytes_do_not_end_it(terminal: PseudoTerminal, code: bytes) -> None:
+def test_odd_bytes_do_not_end_it(shared_terminal: PseudoTerminal, code: bytes) -> None:
+    terminal = shared_terminal
     terminal.type(code + b"\x1b[201~")
     terminal.settle()
     terminal.press("esc", "esc")
+    terminal.press("1")
+    terminal.until_text("worst first")
     terminal.press("7")
     terminal.until_text("newest first")
 

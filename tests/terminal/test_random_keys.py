@@ -2,32 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from pathlib import Path
-
 import pytest
-from conftest import AT, HERE
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from pseudo_terminal import KEYS, PseudoTerminal
 
 PRESSED = [*"123456789rawdmepnbuvxzlcfshgik?+*/ 0.,-tMjo", *(name for name in KEYS if name not in ("ctrl+q", "ctrl+z"))]
 """Everything but the keys that leave; q is left out for the same reason."""
-
-
-@pytest.fixture(scope="module")
-def cat(built: dict[str, Path], tmp_path_factory: pytest.TempPathFactory) -> Iterator[PseudoTerminal]:
-    import shutil
-    import sys
-
-    home = tmp_path_factory.mktemp("home")
-    site = shutil.copytree(built["fixed"], home / "nursery")
-    own = {"HOME": str(home), "XDG_CONFIG_HOME": str(home), "XDG_STATE_HOME": str(home)}
-    with PseudoTerminal(
-        [sys.executable, str(HERE / "hand_made.py"), str(site), AT.isoformat()], (80, 24), own, home
-    ) as shown:
-        shown.until_text("look at")
-        yield shown
 
 
 def _walk(cat: PseudoTerminal, keys: list[str]) -> None:
@@ -37,14 +18,21 @@ def _walk(cat: PseudoTerminal, keys: list[str]) -> None:
     assert "Traceback" not in cat.text
 
 
+@settings(max_examples=40, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@given(keys=st.lists(st.sampled_from(PRESSED), min_size=1, max_size=12))
+def test_no_sequence_of_keys_ends_it(shared_terminal: PseudoTerminal, keys: list[str]) -> None:
+    _walk(shared_terminal, keys)
+
+
+@pytest.mark.long
 @settings(max_examples=200, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(keys=st.lists(st.sampled_from(PRESSED), min_size=1, max_size=12))
-def test_no_sequence_of_keys_ends_it(cat: PseudoTerminal, keys: list[str]) -> None:
-    _walk(cat, keys)
+def test_no_sequence_of_two_hundred_ends_it(shared_terminal: PseudoTerminal, keys: list[str]) -> None:
+    _walk(shared_terminal, keys)
 
 
 @pytest.mark.long
 @settings(max_examples=3000, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(keys=st.lists(st.sampled_from(PRESSED), min_size=1, max_size=40))
-def test_no_long_sequence_of_keys_ends_it(cat: PseudoTerminal, keys: list[str]) -> None:
-    _walk(cat, keys)
+def test_no_long_sequence_of_keys_ends_it(shared_terminal: PseudoTerminal, keys: list[str]) -> None:
+    _walk(shared_terminal, keys)

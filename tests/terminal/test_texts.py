@@ -5,9 +5,9 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
-from conftest import Opened
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from pseudo_terminal import PseudoTerminal
 
 from fertui.tui.ink import cells, cut, filled, fit, line, literal, wrap
 from fertui.tui.pen import PLAIN, change, styled
@@ -23,12 +23,13 @@ NASTY = {
 
 
 @pytest.mark.parametrize("name", NASTY)
-def test_a_note_is_shown_literally_and_the_frame_stands(site: Path, open_terminal: Opened, name: str) -> None:
-    open_site(site).record("note", {"text": NASTY[name], "by": "MK"})
-    terminal = open_terminal(site)
-    terminal.until_text("look at")
+def test_a_note_is_shown_literally_and_the_frame_stands(
+    shared_site: Path, shared_terminal: PseudoTerminal, name: str
+) -> None:
+    terminal = shared_terminal
+    number = open_site(shared_site).record("note", {"text": NASTY[name], "by": "MK"}).number
     terminal.press("7")
-    terminal.until_text("note")
+    terminal.until_text(f"▸{number}")
     terminal.press("enter")
     rows = terminal.until_text("written down").splitlines()
     assert rows[0].startswith(" Demo nursery")

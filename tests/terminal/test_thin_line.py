@@ -23,7 +23,8 @@ def test_a_full_repaint_stays_within_its_bytes(terminal: PseudoTerminal) -> None
 
 
 @pytest.mark.parametrize("view", "23456789")
-def test_opening_a_view_costs_at_most_a_repaint(terminal: PseudoTerminal, view: str) -> None:
+def test_opening_a_view_costs_at_most_a_repaint(shared_terminal: PseudoTerminal, view: str) -> None:
+    terminal = shared_terminal
     terminal.press(view)
     terminal.until(lambda text: "orking out" not in text)
     terminal.settle()
@@ -37,7 +38,8 @@ def test_opening_a_view_costs_at_most_a_repaint(terminal: PseudoTerminal, view: 
      ("4", ("down", "right", "up", "left")), ("5", ("down", "up")), ("6", ("down", "up")), ("7", ("down", "up")),
      ("8", ("down", "up")), ("9", ("down", "up"))],
 )  # fmt: skip
-def test_a_cursor_key_stays_within_its_bytes(terminal: PseudoTerminal, view: str, keys: tuple[str, ...]) -> None:
+def test_a_cursor_key_stays_within_its_bytes(shared_terminal: PseudoTerminal, view: str, keys: tuple[str, ...]) -> None:
+    terminal = shared_terminal
     terminal.press(view)
     terminal.until(lambda text: "orking out" not in text)
     terminal.settle()
@@ -45,7 +47,8 @@ def test_a_cursor_key_stays_within_its_bytes(terminal: PseudoTerminal, view: str
     assert max(costs.values()) <= CURSOR, costs
 
 
-def test_typing_in_a_form_stays_within_its_bytes(terminal: PseudoTerminal) -> None:
+def test_typing_in_a_form_stays_within_its_bytes(shared_terminal: PseudoTerminal) -> None:
+    terminal = shared_terminal
     terminal.press("r")
     assert max(terminal.press(key) for key in ("2", ",", "6", "backspace", "6")) <= CURSOR
     assert terminal.press("enter") <= CURSOR

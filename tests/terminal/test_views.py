@@ -86,7 +86,11 @@ def test_in_sixteen_colours_the_palette_of_the_terminal_is_used(site: Path, open
     assert b"\x1b[38;2" not in bytes(terminal.sent)
 
 
-@pytest.mark.parametrize("theme", ["dark", "light", "contrast", "terminal"])
+OFTEN_USED = ["light", "terminal"]
+THEMES = [*OFTEN_USED, *(pytest.param(theme, marks=pytest.mark.long) for theme in ("dark", "contrast"))]
+
+
+@pytest.mark.parametrize("theme", THEMES)
 def test_each_theme_shows_the_same_words(site: Path, tmp_path: Path, open_terminal: Opened, theme: str) -> None:
     folder = tmp_path / "config" / "fertui"
     folder.mkdir(parents=True)
