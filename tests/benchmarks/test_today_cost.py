@@ -24,7 +24,7 @@ Ratio = Callable[[str, float, str], None]
 NOW = datetime(2026, 7, 1, 6, 0, tzinfo=UTC)
 DAYS, OLDER = 60, 100_000
 BARE_STARTS, DEARER, PART_OF_ASSIMILATION = 5.0, 1.3, 0.35
-"""The first two as asked of the program. A tenth was asked of the forecast; 14 days are a quarter of 60 to begin with."""
+"""The first two as asked of the program. A tenth was asked of the forecast; 14 days are a quarter of 60 alone."""
 DRAIN = {
     "K": 8, "Ca": 10, "Mg": 4.5, "Na": 3, "NH4": 0.1, "NO3": 22, "Cl": 4, "SO4": 6.8, "H2PO4": 1, "EC": 4.0,
 }  # fmt: skip
