@@ -8,8 +8,14 @@ from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
+from hypothesis import settings
 
 from fertui.workbench.demo import build_demo
+
+settings.register_profile("steady", derandomize=True, deadline=None)
+settings.register_profile("searching", deadline=None)
+settings.load_profile(os.environ.get("HYPOTHESIS_PROFILE", "steady"))
+# The suite says the same twice; ``HYPOTHESIS_PROFILE=searching`` looks for new examples. Slow machines are no failure.
 
 DEMO_MORNING = datetime(2026, 6, 1, 6, 30, tzinfo=UTC)
 """The morning the demo of the tests ends on: 08:30 on its own clock."""

@@ -70,7 +70,7 @@ def test_closed_line_77_percent_open_tank_100_percent() -> None:
 
 
 # Fluid ounces of trade acid per 100 US gallons that neutralise 50 ppm of alkalinity as CaCO3, and the ppm of nutrient
-# that dose brings: training page of a growing-media maker, "Acid choices", table 1. Densities at 20 C [kg/m3]: Laliberte 2009.
+# that dose brings: a growing-media maker, "Acid choices", table 1. Densities at 20 C [kg/m3]: Laliberte 2009.
 TABLE = [
     ("nitric", 67, 1399.3, 0.87, ("N", 14.007, 14.3)),
     ("sulfuric", 35, 1260.9, 1.42, ("S", 32.06, 16.1)),
