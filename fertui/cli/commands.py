@@ -218,10 +218,17 @@ def _wishes(options: Options) -> dict[str, Any]:
 
 
 def stock(options: Options) -> int:
-    """``stock``: exit code 1 where a pair of salts is refused."""
-    from fertui.cli.views.sheets import stock_document
+    """``stock``: exit code 1 where a pair of salts is refused; ``--crop-ends`` asks for the last mix alone."""
+    from fertui.cli.views.sheets import last_mix_text, stock_document
 
     bench, view = _reading(options)
+    if options.crop_ends is not None:
+        from fertui.cli.views import as_json
+
+        days, plain = _whole(options.crop_ends, "--crop-ends"), _whole(options.plain_water, "--plain-water")
+        mixes = bench.last_mixes(days, view["loop"], plain, view["at"])
+        document = {"schema": "fertui.last_mix/1", "tanks": as_json.plain(mixes)}
+        return _show(options, lambda: document, lambda: last_mix_text(mixes))
     sheet = bench.stock(view["loop"])
     page = bench.stock_page(sheet, view["loop"])
     _release(bench, sheet, page, options)

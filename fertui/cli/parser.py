@@ -256,6 +256,11 @@ def _paper_commands(commands: argparse._SubParsersAction) -> None:
         sheet.add_argument("--sheet", metavar="FILE", help="write it to a file")
         sheet.add_argument("--cautions-read", action="store_true", help="the cautions have been read")
         sheet.add_argument("--label-strength", metavar="PERCENT", help="strength read off the acid's label")
+        if name == "stock":
+            sheet.add_argument(
+                "--crop-ends", metavar="DAYS", help="only the last mix of a crop that ends in so many days"
+            )
+            sheet.add_argument("--plain-water", metavar="DAYS", default="0", help="days of plain water before the end")
     _reading(commands, "round", "blank round sheet with last values", "fertui round north")
     _reading(commands, "handover", "one-page shift handover", "fertui handover north")
     _period(_reading(commands, "report", "report for consultant or auditor", "fertui report north --from 2026-05-01"))

@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Balance
     from fertui.estimate.forecast import Forecast, Scenario
     from fertui.estimate.hindcast import Hindcast
+    from fertui.planning.last_mix import LastMix
     from fertui.planning.values import AcidSheet, Plan, StockSheet
     from fertui.site.edit import Row as SiteRow
     from fertui.workbench.aims import Aim
@@ -180,6 +181,15 @@ class Answers(SiteFolder):
 
         at = at or now()
         return stock_rows(self.site, self.loop(loop), self.entries(at), at)
+
+    def last_mixes(
+        self, days_left: float, loop: str | None = None, stop_days_before: float = 0.0, at: datetime | None = None
+    ) -> tuple[LastMix, ...]:
+        """What to mix of each stock tank until the crop ends in ``days_left``, at the use of the last days."""
+        from fertui.workbench.shelf import last_mixes
+
+        rows = self.stock_rows(loop, at)
+        return last_mixes(self.site, rows, days_left, stop_days_before)
 
     def acid_cautions(self, acid: str, strength_pct: float | None = None) -> tuple[Caution, ...]:
         """Cautions of an acid or lye at the strength on its label."""

@@ -13,6 +13,7 @@ from fertui.site.model import Loop, Site, StockTank
 if TYPE_CHECKING:
     from fertui.catalogue.cautions import Caution
     from fertui.estimate.notices import StockLeft
+    from fertui.planning.last_mix import LastMix
 
 
 @dataclass(frozen=True, slots=True)
@@ -81,6 +82,27 @@ def _stock_row(tank: StockTank, entries: Sequence[Entry], left: StockLeft | None
     recipe, mixed = (batch.text_of("recipe"), batch.at) if batch is not None else ("", None)
     litres, days = (left.litres, left.days) if left is not None else (None, None)
     return StockRow(tank.name, tank.letter, tank.litres, tank.dilution, mixed, recipe, litres, days)
+
+
+def last_mixes(site: Site, rows: Sequence[StockRow], days_left: float, stop_days_before: float) -> tuple[LastMix, ...]:
+    """What to mix of each stock tank until the crop's end; tanks whose use is not logged are left out."""
+    from fertui.planning.last_mix import last_mix
+
+    tanks = {tank.name: tank for tank in site.stock_tanks}
+    found = []
+    for row in rows:
+        if row.litres_left is not None and row.days_left:
+            feed = row.litres_left / row.days_left * row.dilution
+            found.append(
+                last_mix(
+                    tanks[row.name],
+                    days_left=days_left,
+                    feed_l_per_d=feed,
+                    left_l=row.litres_left,
+                    stop_days_before=stop_days_before,
+                )
+            )
+    return tuple(found)
 
 
 def acid_cautions(site: Site, acid: str, strength_pct: float | None) -> tuple[Caution, ...]:

@@ -138,3 +138,24 @@ def test_the_demo_prints_state_forecast_and_plan(capsys: pytest.CaptureFixture[s
     assert "Next recipe" in out
     assert "Weigh and dissolve" in out
     assert "EC is on set point" in " ".join(out.split())
+
+
+def test_the_last_mix_of_a_crop_is_a_sum_to_check_by_hand(demo_once: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    words = (
+        "stock",
+        demo_once,
+        "--loop",
+        "north bay",
+        "--at",
+        NOON,
+        "--crop-ends",
+        "40",
+        "--plain-water",
+        "4",
+        "--json",
+    )
+    code, out, _ = run(capsys, *words)
+    assert code == 0
+    for tank in json.loads(out)["tanks"]:
+        assert tank["mix_l"] == pytest.approx(max(tank["needed_l"] - tank["left_l"], 0.0))
+        assert f"{tank['mix_l']:.0f} L to mix" in tank["words"]

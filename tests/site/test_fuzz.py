@@ -6,6 +6,7 @@ import tomllib
 from collections.abc import Callable
 from typing import Any
 
+import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
@@ -77,13 +78,13 @@ def answered(raw: bytes) -> None:
 
 
 @given(st.binary(max_size=300))
-@settings(max_examples=100)
+@settings(max_examples=200)
 def test_any_bytes(raw: bytes) -> None:
     answered(raw)
 
 
 @given(st.integers(0, len(VALID) - 1), st.integers(0, 40), st.binary(max_size=8))
-@settings(max_examples=300)
+@settings(max_examples=400)
 def test_a_valid_file_damaged_anywhere(start: int, cut: int, put: bytes) -> None:
     answered(VALID[:start] + put + VALID[start + cut :])
 
@@ -107,7 +108,7 @@ def with_one_odd_value(draw: st.DrawFn) -> dict[str, Any]:
 
 
 @given(with_one_odd_value())
-@settings(max_examples=300, suppress_health_check=[HealthCheck.too_slow])
+@settings(max_examples=400, suppress_health_check=[HealthCheck.too_slow])
 def test_any_value_anywhere(data: dict[str, Any]) -> None:
     """Read, and where it is accepted written and read back to the same site."""
     said = refusal(lambda: site_from(data))
@@ -116,6 +117,16 @@ def test_any_value_anywhere(data: dict[str, Any]) -> None:
         assert parse_site(toml_of(tables_of(site)).encode()) == site
     else:
         assert said.startswith("site.toml")
+
+
+@pytest.mark.long
+@given(with_one_odd_value(), st.integers(0, len(VALID) - 1), st.integers(0, 40), st.binary(max_size=8))
+@settings(max_examples=10_000, suppress_health_check=[HealthCheck.too_slow])
+def test_twenty_thousand(data: dict[str, Any], start: int, cut: int, put: bytes) -> None:
+    """An odd value and a damaged file, ten thousand of each."""
+    said = refusal(lambda: site_from(data))
+    assert said is None or said.startswith("site.toml")
+    answered(VALID[:start] + put + VALID[start + cut :])
 
 
 def test_the_valid_file_is_valid() -> None:

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from fertui.cli.views import as_json
 from fertui.cli.views.plan import tanks
 
 if TYPE_CHECKING:
+    from fertui.planning.last_mix import LastMix
     from fertui.planning.values import AcidSheet, StockSheet
 
 
@@ -25,6 +27,17 @@ def stock_document(sheet: StockSheet) -> dict[str, Any]:
         "notices": list(sheet.notices),
         "cautions": [as_json.plain(each) for each in sheet.cautions],
     }
+
+
+def last_mix_text(mixes: Sequence[LastMix]) -> str:
+    """The last mix of every stock tank as a sum to check by hand."""
+    from fertui.paper.page import folded
+
+    if not mixes:
+        return (
+            "No stock use is logged, so the last mix cannot be reckoned: log stock with 'fertui record SITE stock ...'."
+        )
+    return "\n".join(line for each in mixes for line in folded(f"{each.tank}: {each.words}", ""))
 
 
 def acid_document(sheet: AcidSheet) -> dict[str, Any]:
