@@ -42,7 +42,7 @@ class PseudoTerminal:
         self.exit_code: int | None = None
         self.hung_up = False
         everything = {**os.environ, "TERM": "xterm-256color", "LANG": "C.UTF-8", **(environment or {})}
-        for name in ("COLORTERM", "LC_ALL", "LC_CTYPE", "NO_COLOR"):
+        for name in ("COLORTERM", "LC_ALL", "LC_CTYPE", "NO_COLOR", "COLUMNS", "LINES"):
             if name not in (environment or {}):
                 everything.pop(name, None)
         self.pid, self.line = pty.fork()

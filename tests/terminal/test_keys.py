@@ -16,6 +16,8 @@ from fertui.tui.settings import Settings, read_settings, write_settings
 from fertui.tui.view import View
 from fertui.tui.views import view_numbered
 
+pytestmark = pytest.mark.long  # every key and random walks: minutes of waiting for screens
+
 TAKEN_BY_TERMINALS = {"ctrl+a", "ctrl+b", "ctrl+s", "ctrl+i", "ctrl+j", "ctrl+m", "ctrl+z", "ctrl+c"}
 """Keys that tmux, screen and terminals take for themselves, or that are Tab and Enter (common practice, no source)."""
 NAMES = {"question_mark": "?", "slash": "/", "escape": "esc", "plus": "+", "asterisk": "*"}

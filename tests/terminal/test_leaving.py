@@ -61,7 +61,10 @@ def test_killed_it_keeps_the_fields_that_were_entered(
     assert "2.6___" in again.until_text("Reading, north bay")
 
 
-def test_suspended_and_resumed_it_draws_itself_again(terminal: PseudoTerminal) -> None:
+def test_suspended_and_resumed_it_draws_itself_again(todays_site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(todays_site)
+    terminal.until_text("more to look at")
+    terminal.settle()
     terminal.signal(signal.SIGTSTP)
     terminal.settle()
     assert given_back(terminal)

@@ -7,6 +7,8 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from pseudo_terminal import KEYS, PseudoTerminal
 
+pytestmark = pytest.mark.long  # every key and random walks: minutes of waiting for screens
+
 PRESSED = [*"123456789rawdmepnbuvxzlcfshgik?+*/ 0.,-tMjo", *(name for name in KEYS if name not in ("ctrl+q", "ctrl+z"))]
 """Everything but the keys that leave; q is left out for the same reason."""
 

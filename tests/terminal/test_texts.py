@@ -14,6 +14,8 @@ from fertui.tui.pen import PLAIN, change, styled
 from fertui.tui.slate import Slate
 from fertui.workbench import open_site
 
+pytestmark = pytest.mark.long  # every key and random walks: minutes of waiting for screens
+
 NASTY = {
     "markup": "[red]not red[/red] [@click=app.bell]x[/]", "wide": "日本語のメモ 温室",
     "combining": "e\u0301 a\u0300\u0316 z\u0335", "bidi": "abc \u202eevil\u202c", "long": "x" * 10_000,
