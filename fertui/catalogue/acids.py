@@ -5,16 +5,14 @@ from __future__ import annotations
 import difflib
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
 from functools import cache
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.catalogue.figures import STATUSES, CatalogueError, Provenance, interpolated, table
 from fertui.catalogue.formula import molar_mass
 
 
-@dataclass(frozen=True, slots=True)
-class Acid:
+class Acid(NamedTuple):
     """An acid or a liquid alkali.
 
     ``gives``: mol of each ion per mol (HCO3: alkalinity, negative for an acid). ``protons``: equivalents of alkalinity
@@ -29,7 +27,7 @@ class Acid:
     aliases: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
     note: str = ""
-    sources: Mapping[float, Provenance] = field(default_factory=dict)
+    sources: Mapping[float, Provenance] = {}
 
     @property
     def molar_mass(self) -> float:

@@ -3,10 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 from functools import cache
 from itertools import combinations
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.catalogue.acids import Acid
 from fertui.catalogue.figures import Provenance, table
@@ -17,8 +16,7 @@ SEVERITIES = ("danger", "warning", "note")
 """Worst first, after the signal words of hazard labels."""
 
 
-@dataclass(frozen=True, slots=True)
-class Caution:
+class Caution(NamedTuple):
     """One caution: a stable code, its severity, what it says, and where that comes from."""
 
     code: str

@@ -4,9 +4,8 @@ from __future__ import annotations
 
 import difflib
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
 from functools import cache
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.catalogue.figures import CatalogueError, Figure, Provenance, Range, Recipe, table
 from fertui.chemistry.names import CATIONS, CHARGES
@@ -18,8 +17,7 @@ SHARED = ("K", "Ca", "Mg")
 """The ions whose share of K + Ca + Mg, in equivalents, is managed."""
 
 
-@dataclass(frozen=True, slots=True)
-class Crop:
+class Crop(NamedTuple):
     """A crop preset. ``uptake`` [mmol per L of water] holds at the ``reference`` composition [mmol/L].
 
     ``feed``: at the dripper, drain not re-used; ``closed_feed``: top-up of a closed loop; ``stages``: changes of the
@@ -54,7 +52,7 @@ class Crop:
         change = self._change(stage)
         part = _cations(self.uptake.ions) / _cations(self.feed.ions)
         changed = _changed(self.uptake, {ion: part * amount for ion, amount in change.items()})
-        return replace(changed, unverified=tuple({*self.uptake.unverified, *change}))
+        return changed._replace(unverified=tuple({*self.uptake.unverified, *change}))
 
     def _change(self, stage: str) -> Mapping[str, float]:
         if stage and stage not in self.stages:
@@ -175,7 +173,7 @@ def _changed(recipe: Recipe, change: Mapping[str, float]) -> Recipe:
     opened = sum(CHARGES[ion] * (ions[ion] - recipe.ions.get(ion, 0.0)) for ion in ions)
     if change:
         ions["NO3"] = max(ions["NO3"] + opened, 0.0)
-    return replace(recipe, ions=ions)
+    return recipe._replace(ions=ions)
 
 
 def _cations(ions: Mapping[str, float]) -> float:

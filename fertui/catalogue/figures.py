@@ -4,11 +4,10 @@ from __future__ import annotations
 
 import tomllib
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
 from functools import cache
 from itertools import pairwise
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.refusals import Refusal
 
@@ -24,8 +23,7 @@ class CatalogueError(Refusal):
     """A salt, acid, crop or label analysis that the catalogue cannot accept; the message says why and what to do."""
 
 
-@dataclass(frozen=True, slots=True)
-class Provenance:
+class Provenance(NamedTuple):
     """Where a number comes from (``text``) and how it is known (one of ``STATUSES``)."""
 
     text: str
@@ -47,8 +45,7 @@ class Provenance:
         return self.text if self.status == "seen" else f"{self.text} ({self.status})"
 
 
-@dataclass(frozen=True, slots=True)
-class Range:
+class Range(NamedTuple):
     """A band or limit; a side that is None is open."""
 
     low: float | None
@@ -56,24 +53,22 @@ class Range:
     source: Provenance
 
 
-@dataclass(frozen=True, slots=True)
-class Figure:
+class Figure(NamedTuple):
     """One number with its source."""
 
     value: float
     source: Provenance
 
 
-@dataclass(frozen=True, slots=True)
-class Recipe:
+class Recipe(NamedTuple):
     """Ions [mmol/L], micronutrients [umol/L], EC [mS/cm at 25 C] and pH of a published solution or target.
 
     ``unverified`` names the entries whose number does not come from ``source`` but is our own guess.
     """
 
     source: Provenance
-    ions: Mapping[str, float] = field(default_factory=dict)
-    micronutrients: Mapping[str, float] = field(default_factory=dict)
+    ions: Mapping[str, float] = {}
+    micronutrients: Mapping[str, float] = {}
     ec: float | None = None
     ph: float | None = None
     unverified: tuple[str, ...] = ()

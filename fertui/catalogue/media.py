@@ -4,9 +4,8 @@ from __future__ import annotations
 
 import difflib
 from collections.abc import Mapping
-from dataclasses import dataclass
 from functools import cache
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 from fertui.catalogue.figures import CatalogueError, Provenance, table
 from fertui.chemistry.names import CATIONS
@@ -15,8 +14,7 @@ if TYPE_CHECKING:
     from fertui.chemistry.ions import Array
 
 
-@dataclass(frozen=True, slots=True)
-class Figure:
+class Figure(NamedTuple):
     """A number with its spread (standard deviation between lots) and its source."""
 
     mean: float
@@ -24,8 +22,7 @@ class Figure:
     source: Provenance
 
 
-@dataclass(frozen=True, slots=True)
-class Medium:
+class Medium(NamedTuple):
     """One growing medium.
 
     ``capacity_meq_per_l`` of medium at working pH; ``log10_selectivity`` by cation in ``convention``;

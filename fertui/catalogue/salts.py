@@ -4,9 +4,8 @@ from __future__ import annotations
 
 import difflib
 from collections.abc import Mapping
-from dataclasses import dataclass, field
 from functools import cache
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.catalogue.figures import CatalogueError, Provenance, interpolated, table
 from fertui.catalogue.formula import molar_mass
@@ -16,8 +15,7 @@ MICRONUTRIENT_CHARGE = {"Fe": 3, "Mn": 2, "Zn": 2, "B": 0, "Cu": 2, "Mo": -2, "S
 """Charge of each micronutrient in solution where it is not chelated: boric and silicic acid, molybdate."""
 
 
-@dataclass(frozen=True, slots=True)
-class Salt:
+class Salt(NamedTuple):
     """One salt of the catalogue.
 
     ``gives``: mol of each ion per mol of formula (HCO3: alkalinity). ``use``: nutrient, micronutrient, alkali or
@@ -32,13 +30,13 @@ class Salt:
     use: str = "nutrient"
     aliases: tuple[str, ...] = ()
     complex_charge: int | None = None
-    label_pct: Mapping[str, float] = field(default_factory=dict)
+    label_pct: Mapping[str, float] = {}
     needs_label: bool = False
     dissolves: tuple[tuple[float, float], ...] = ()
     stable_ph: tuple[float, float] | None = None
     cautions: tuple[str, ...] = ()
     note: str = ""
-    sources: Mapping[str, Provenance] = field(default_factory=dict)
+    sources: Mapping[str, Provenance] = {}
 
     @property
     def molar_mass(self) -> float:

@@ -10,7 +10,7 @@ form. Since alkalinity is linear in the amount of every buffer, each dose below 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -24,8 +24,7 @@ AIR_CO2_PPM = 420.0
 """Carbon dioxide of outside air [ppm by volume], about 2023 (from memory)."""
 
 
-@dataclass(frozen=True, slots=True)
-class Water:
+class Water(NamedTuple):
     """What decides the pH of a water beside alkalinity and carbonate; amounts in mmol/L, any shapes that broadcast."""
 
     temperature_c: float | Array = 20.0
@@ -83,8 +82,7 @@ class Water:
         )
 
 
-@dataclass(frozen=True, slots=True)
-class Buffer:
+class Buffer(NamedTuple):
     """An acid that gives off protons one by one: constants by name, charge of its most acid form, pairs by form."""
 
     steps: tuple[str, ...]
@@ -126,8 +124,7 @@ SULFATE = Buffer(("hydrogen_sulfate",), charge=-1)
 CITRATE = Buffer(("citric_1", "citric_2", "citric_3"))
 
 
-@dataclass(frozen=True, slots=True)
-class Acid:
+class Acid(NamedTuple):
     """An acid to dose: protons it always gives, and the buffer that gives the rest."""
 
     formula: str
@@ -154,8 +151,7 @@ ACIDS = {
 """Acids by name."""
 
 
-@dataclass(frozen=True, slots=True)
-class Base:
+class Base(NamedTuple):
     """A base to dose: alkalinity [eq] and carbonate [mol] that one mole brings."""
 
     name: str

@@ -7,7 +7,7 @@ over all leading axes at once. mmol/L is taken as mmol per kg of water, which di
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -32,8 +32,7 @@ _TRACE = 1e-12
 _LN10 = float(np.log(10.0))
 
 
-@dataclass(frozen=True, slots=True)
-class Speciation:
+class Speciation(NamedTuple):
     """Free ions of a composition. ``free`` is (..., 15) [mmol/L] in the order of ``FREE_IONS``."""
 
     free: Array
@@ -111,8 +110,7 @@ def _refuse_outside(what: str, value: Array, low: float, high: float) -> None:
         raise ValueError(f"{what} must lie between {low:g} and {high:g}; found {np.min(value):g} to {np.max(value):g}")
 
 
-@dataclass(frozen=True, slots=True)
-class _Amounts:
+class _Amounts(NamedTuple):
     """What stays fixed while the free ions are sought: totals [mol/L], ions first, and the constants at hand.
 
     Single stands for K, Na, NH4; double for Ca, Mg; inert for NO3, Cl, which form no pairs here.
@@ -162,8 +160,7 @@ class _Amounts:
         )
 
 
-@dataclass(frozen=True, slots=True)
-class _State:
+class _State(NamedTuple):
     """One round of the fixed point: free ions [mol/L] and the strength and gamma that they make."""
 
     single: Array

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -141,8 +141,7 @@ def _f25(temperature_c: float | Array) -> Array:
     return np.interp(temperature, np.arange(last + 1), F25)
 
 
-@dataclass(frozen=True, slots=True)
-class Linearised:
+class Linearised(NamedTuple):
     """EC as a straight line in the ions about one composition: EC = ec + (c - at) . slope."""
 
     at: Array

@@ -6,7 +6,7 @@ values that PHREEQC 3.8.6 evaluates from Amm.dat at 5, 10 ... 35 degrees C; it d
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -19,8 +19,7 @@ AMM = "PHREEQC 3.8.6, Amm.dat of May 2024"
 MINTEQ = "PHREEQC 3.8.6, minteq.v4.dat; value at 25 C used throughout"
 
 
-@dataclass(frozen=True, slots=True)
-class Equilibrium:
+class Equilibrium(NamedTuple):
     """One reaction and its log10 K, activities in mol/L, with the place its numbers come from."""
 
     reaction: str

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -12,8 +12,7 @@ from fertui.chemistry.equilibria import EQUILIBRIA
 from fertui.chemistry.ions import Array
 
 
-@dataclass(frozen=True, slots=True)
-class Mineral:
+class Mineral(NamedTuple):
     """A solid: what it gives off when one formula unit dissolves, and what its saturation is worth as a warning."""
 
     formula: str

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -16,16 +16,14 @@ _CALCIUM = CATIONS.index("Ca")
 _OTHERS = [position for position in range(len(CATIONS)) if position != _CALCIUM]
 
 
-@dataclass(frozen=True, slots=True)
-class Prior:
+class Prior(NamedTuple):
     """What is held of log10 k before the pairs: ``mean`` (5,) and standard deviation ``sd`` (5,)."""
 
     mean: Array
     sd: Array
 
 
-@dataclass(frozen=True, slots=True)
-class Fit:
+class Fit(NamedTuple):
     """Constants fitted to pairs, in the convention of ``fertui.chemistry.exchange``.
 
     ``log10_k`` and ``sd`` (5,); ``covariance`` (5, 5) of log10 k, zero for calcium; ``residuals`` (pairs, 5) in log10,

@@ -7,14 +7,13 @@ and "-N" are ways of counting; nothing else is meant to be in the water.
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
 from functools import cache
+from typing import NamedTuple
 
 from fertui.chemistry.names import ATOMIC_WEIGHT, MICRONUTRIENTS
 
 
-@dataclass(frozen=True, slots=True)
-class Species:
+class Species(NamedTuple):
     """One way of writing an ion.
 
     ``formula`` is what the mass is the mass of; ``per_formula`` how many mol of the ion (for HCO3: equivalents of

@@ -6,7 +6,7 @@ A guess is offered, never applied: each stands for one way of reading the analys
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, Array, charges, composition, imbalance_pct
@@ -20,8 +20,7 @@ DOUBT_PCT = 10.0
 EC_RATIO = (0.9, 1.1)
 
 
-@dataclass(frozen=True, slots=True)
-class Check:
+class Check(NamedTuple):
     """One row of a verdict: what was looked at, its value, its limit, whether it holds."""
 
     what: str
@@ -33,8 +32,7 @@ class Check:
     source: str
 
 
-@dataclass(frozen=True, slots=True)
-class Guess:
+class Guess(NamedTuple):
     """A way of reading the analysis that would close its charges; offered, never applied."""
 
     what: str

@@ -7,7 +7,6 @@ and because random numbers are keyed by day the days before it come out as they 
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import replace
 from datetime import datetime
 from typing import Any
 
@@ -225,7 +224,7 @@ class Assimilation:
         draw = normals(
             self.seed, self.record.loop.name, f"stage {stage} {self.record.local_day(now)}", self.members, 10
         )
-        self.ensemble = replace(self.ensemble, slow=self.ensemble.slow + STAGE_SD * draw)
+        self.ensemble = self.ensemble._replace(slow=self.ensemble.slow + STAGE_SD * draw)
 
     def _go(self, span: int) -> None:
         events = events_between(self.record.events, self._at(span), self._at(span + 1))

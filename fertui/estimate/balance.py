@@ -7,8 +7,8 @@ stood still amounts are taken to move evenly.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass, replace
 from datetime import datetime
+from typing import NamedTuple
 
 import numpy as np
 
@@ -21,8 +21,7 @@ from fertui.loop.account import Account, Booking, summed
 AT_ONCE = 1e-9
 
 
-@dataclass(frozen=True, slots=True)
-class BalanceRow:
+class BalanceRow(NamedTuple):
     """One ion of the account [mmol] in the solution of tank, stores and root zone; gains positive."""
 
     start_mmol: float
@@ -39,8 +38,7 @@ class BalanceRow:
     end_mmol: float
 
 
-@dataclass(frozen=True, slots=True)
-class Balance:
+class Balance(NamedTuple):
     """The account of a period by ion, and the numbers of the entries behind a cell, by (ion, column)."""
 
     start: datetime
@@ -115,7 +113,7 @@ def _cut(lines: tuple[Booking, ...], begin: float, until: float, from_start: boo
             yield (
                 line
                 if part >= 1.0
-                else replace(
-                    line, by_cause=part * line.by_cause, overflow=part * line.overflow, litres=part * line.litres
+                else line._replace(
+                    by_cause=part * line.by_cause, overflow=part * line.overflow, litres=part * line.litres
                 )
             )

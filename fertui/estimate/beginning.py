@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -28,8 +28,7 @@ NEW_MEDIUM_DAYS = 28.0
 SHORTEST = 1e-3
 
 
-@dataclass(frozen=True, slots=True)
-class Beginning:
+class Beginning(NamedTuple):
     """Time [d] of the start, and the analysis it starts from (None: from the feed alone)."""
 
     time: float
@@ -77,7 +76,7 @@ def first_members(record: Record, setting: Setting, begin: Beginning, members: i
     ensemble = Ensemble(state, **unknown, alkalinity=_alkalinity(record, setting, begin))
     if seen is None or seen.ec is None:
         return ensemble
-    return corrected(ensemble, setting, replace(seen, ions={}), None, ElectroMeter(), seed)[0]
+    return corrected(ensemble, setting, seen._replace(ions={}), None, ElectroMeter(), seed)[0]
 
 
 def _vessel(record: Record, setting: Setting, begin: Beginning, drawn: Array, where: int) -> Array:

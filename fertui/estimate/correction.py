@@ -9,7 +9,7 @@ Evensen 1994, J. Geophys. Res. 99:10143 (ensemble Kalman filter; from memory); t
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -41,8 +41,7 @@ TEACHABLE = ("fast", "slow", "stock", "common", "drain", "ec", "capacity")
 _HCO3 = INDEX["HCO3"]
 
 
-@dataclass(frozen=True, slots=True)
-class Innovation:
+class Innovation(NamedTuple):
     """What an observation was against what was expected, as logarithms (n,), in standard deviations, and by ion."""
 
     columns: tuple[int, ...]
@@ -94,8 +93,8 @@ def corrected(
         found = look.told(found, off, sd, expected)
     if found is None:
         return ensemble, None
-    after = replace(after, alkalinity=seen.ions.get("HCO3", ensemble.alkalinity))
-    return replace(after, state=after.state.reloaded(after.medium(setting))), found
+    after = after._replace(alkalinity=seen.ions.get("HCO3", ensemble.alkalinity))
+    return after._replace(state=after.state.reloaded(after.medium(setting))), found
 
 
 class _Ions:
@@ -136,7 +135,7 @@ class _EC:
     def told(self, ions: Innovation | None, off: Array, sd: Array, _: Array) -> Innovation:
         """The innovation as it is reported, beside that of the ions."""
         known = ions or Innovation((), np.zeros(0), np.zeros(0), np.zeros(0))
-        return replace(known, ec_off=float(off[0]), ec_sd=float(sd[0]))
+        return known._replace(ec_off=float(off[0]), ec_sd=float(sd[0]))
 
 
 def _updated(
@@ -158,7 +157,7 @@ def _updated(
     learned = _learned(ensemble, setting, look.teaches, anomalies, levelled)
     where = compartment(setting, seen.point)
     if where is not None and not (isinstance(look, _EC) and look.beside_ions):
-        learned = replace(learned, state=_moved(ensemble, anomalies, (off + scatter) @ inverse, where))
+        learned = learned._replace(state=_moved(ensemble, anomalies, (off + scatter) @ inverse, where))
     return learned, off, sd, expected
 
 
@@ -187,7 +186,7 @@ def _learned(ensemble: Ensemble, setting: Setting, names: Sequence[str], anomali
         shifted = flat + weights @ _covariance(anomalies, flat)
         bound = MOST_LEARNED.get(name, np.inf)
         moved[name] = np.clip(shifted, -bound, bound).reshape(values.shape)
-    return replace(ensemble, **moved)
+    return ensemble._replace(**moved)
 
 
 def _moved(ensemble: Ensemble, anomalies: Array, weights: Array, where: int) -> State:
@@ -203,4 +202,4 @@ def _moved(ensemble: Ensemble, anomalies: Array, weights: Array, where: int) -> 
     shift[:, 1 - where] = np.clip(shift[:, 1 - where], -MOST_UNSEEN, MOST_UNSEEN)
     ions = state.ions_mmol.copy()
     ions[:, :, :_HCO3] = np.where(amounts > 0, amounts * np.exp(shift), 0.0)
-    return replace(state, ions_mmol=ions)
+    return state._replace(ions_mmol=ions)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -21,8 +21,7 @@ BALANCED_SHARE, ASSUMED_SHARE = 0.5, 1.0
 """How much of the log water factor moves crop water that was balanced, or assumed, instead of drained."""
 
 
-@dataclass(frozen=True, slots=True)
-class Drives:
+class Drives(NamedTuple):
     """Rates of every stretch of ``grid`` [d]; ``drive`` puts one together for an ensemble."""
 
     setting: Setting

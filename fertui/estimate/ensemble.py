@@ -7,7 +7,7 @@ loop, exchange capacity and selectivity. A multiplier trades off against water a
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -39,8 +39,7 @@ _HCO3 = INDEX["HCO3"]
 _IONS = slice(0, _HCO3)
 
 
-@dataclass(frozen=True, slots=True)
-class Ensemble:
+class Ensemble(NamedTuple):
     """State and unknowns of M members. ``alkalinity`` [meq/L]: last measured, the value the state reverts to."""
 
     state: State
@@ -89,15 +88,15 @@ class Ensemble:
     def chosen(self, members: Array) -> Ensemble:
         """The members of these positions, repeated where repeated."""
         state = State(*(getattr(self.state, name)[members] for name in ("water_l", "ions_mmol", "exchanged_meq")))
-        return replace(self, state=state, **{name: getattr(self, name)[members] for name in UNKNOWNS})
+        return self._replace(state=state, **{name: getattr(self, name)[members] for name in UNKNOWNS})
 
     def middle(self, setting: Setting) -> Ensemble:
         """One member that stands in the middle: median of every amount and unknown, the exchanger loaded to match."""
         amounts = (self.state.water_l, self.state.ions_mmol, self.state.exchanged_meq)
         state = State(*(np.quantile(each, 0.5, axis=0)[None] for each in amounts))
         unknown = {name: np.quantile(getattr(self, name), 0.5, axis=0)[None] for name in UNKNOWNS}
-        found = replace(self, state=state, **unknown)
-        return replace(found, state=state.reloaded(found.medium(setting)))
+        found = self._replace(state=state, **unknown)
+        return found._replace(state=state.reloaded(found.medium(setting)))
 
 
 def unknowns(setting: Setting, seed: int, members: int) -> dict[str, Array]:
@@ -123,8 +122,7 @@ def wandered(ensemble: Ensemble, setting: Setting, seed: int, day: int) -> Ensem
     root = np.sqrt(DAILY)
     drain_keep = np.exp(-1.0 / DRAIN_DAYS)
     noise = root * (STATE_SD * draw[:, 23:32] + STATE_COMMON_SD * draw[:, 32, None])
-    return replace(
-        ensemble,
+    return ensemble._replace(
         fast=np.exp(-1.0 / FAST_DAYS) * ensemble.fast + FAST_SD * root * draw[:, 0:10],
         slow=ensemble.slow + SLOW_SD * root * draw[:, 10:20],
         stock=ensemble.stock + STOCK_SD * root * draw[:, 33:43] if blended else ensemble.stock,
@@ -148,7 +146,7 @@ def _shaken(state: State, noise: Array, alkalinity: float) -> State:
     ions = state.ions_mmol.copy()
     ions[:, :, _IONS] *= np.exp(noise)[:, None, :]
     ions[:, :, _HCO3] += (1.0 - np.exp(-1.0 / ALKALINITY_DAYS)) * (alkalinity * state.water_l - ions[:, :, _HCO3])
-    return replace(state, ions_mmol=ions)
+    return state._replace(ions_mmol=ions)
 
 
 def compartment(setting: Setting, point: str) -> int | None:

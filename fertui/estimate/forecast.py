@@ -7,8 +7,8 @@ trajectories; charges are closed in what is shown; shares are computed last.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
 from datetime import datetime, timedelta
+from typing import NamedTuple
 
 import numpy as np
 
@@ -29,16 +29,14 @@ __all__ = [
 ]  # fmt: skip
 
 
-@dataclass(frozen=True, slots=True)
-class ForecastDay:
+class ForecastDay(NamedTuple):
     """What is expected at one time to come."""
 
     at: datetime
     points: Mapping[str, PointState]
 
 
-@dataclass(frozen=True, slots=True)
-class Trajectories:
+class Trajectories(NamedTuple):
     """Members at now and every coming day at this hour: compositions (days + 1, M, 10) [mmol/L], litres, log EC factor.
 
     The first of the axis is now. ``ions`` by point; ``volumes_l`` (days + 1, M) by vessel.
@@ -52,8 +50,7 @@ class Trajectories:
     inputs: str
 
 
-@dataclass(frozen=True, slots=True)
-class Forecast:
+class Forecast(NamedTuple):
     """The coming days (the first is one day from now), when what leaves its band, and which inputs were assumed.
 
     ``inputs``: "plan" where one was entered, "what-if" for a scenario, else "routine".
@@ -64,7 +61,7 @@ class Forecast:
     leaves_band: tuple[LeavesBand, ...]
     assumed: tuple[str, ...]
     inputs: str
-    scenario: Scenario = field(default=ROUTINE, repr=False)
+    scenario: Scenario = ROUTINE
 
 
 def trajectories(estimate: Estimate, days: int, scenario: Scenario = ROUTINE, settled: bool = False) -> Trajectories:

@@ -7,8 +7,8 @@ or planned when the forecast was issued, which is what users saw.
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
+from typing import NamedTuple
 
 import numpy as np
 
@@ -32,8 +32,7 @@ INPUTS = ("logged", "planned")
 MEMBERS_OF_RECORD = 2 * MEMBERS
 
 
-@dataclass(frozen=True, slots=True)
-class Hindcast:
+class Hindcast(NamedTuple):
     """Rows of every forecast and the record in numbers."""
 
     inputs: str
@@ -81,8 +80,7 @@ def _epochs(entries: Sequence[Entry]) -> list[datetime]:
     return sorted({when for when in [*ends, *last] if when is not None and oldest is not None and when > oldest})
 
 
-@dataclass(frozen=True, slots=True)
-class _Pair:
+class _Pair(NamedTuple):
     """A target analysis, the one of the same point before it, and whether that or the one before was no good."""
 
     target: Observation
@@ -174,8 +172,7 @@ def _rows(run: Assimilation, pair: _Pair, ahead: tuple[Array, Spread]) -> list[H
         if ion in SHARED and all(each in both for each in SHARED):
             column = SHARED.index(ion)
             middle, low, high = (float(value) for value in share_triples[:, column])
-            row = replace(
-                row, measured_share_pct=float(now[column]), predicted_share_pct=middle, low_share_pct=low,
+            row = row._replace(measured_share_pct=float(now[column]), predicted_share_pct=middle, low_share_pct=low,
                 high_share_pct=high, no_change_share_pct=float(then[column]),
                 last_uptake_share_pct=float(plain[column]), crps_share=crps(found[:, column], float(now[column])),
             )  # fmt: skip

@@ -9,8 +9,8 @@ was cold or warm (nitrate electrode: +50 % at 5 C, +31 % at 10 C, least at 17-20
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field, replace
 from datetime import datetime
+from typing import NamedTuple
 
 import numpy as np
 
@@ -32,8 +32,7 @@ _NITRATE_BIAS_C = (5.0, 10.0, 17.0, 20.0, 25.0)
 _NITRATE_BIAS = (0.50, 0.31, 0.03, 0.03, 0.24)
 
 
-@dataclass(frozen=True, slots=True)
-class Observation:
+class Observation(NamedTuple):
     """One entry that measured something at a point: ions [mmol/L], EC [mS/cm at 25 C], pH.
 
     ``time`` [d from the start of the record]. ``below``: ions reported below their detection limit;
@@ -52,7 +51,7 @@ class Observation:
     temperature_c: float | None
     doubtful: str = ""
     zone: str = ""
-    micronutrients: Mapping[str, float] = field(default_factory=dict)
+    micronutrients: Mapping[str, float] = {}
 
     @property
     def is_analysis(self) -> bool:
@@ -156,7 +155,7 @@ def pooled(seen: Iterable[Observation]) -> tuple[Observation, ...]:
         rounds[quarter] = each
         groups.setdefault((each.point, quarter), []).append(each)
     readings = [
-        replace(_mean(group), time=rounds[quarter].time, at=rounds[quarter].at)
+        _mean(group)._replace(time=rounds[quarter].time, at=rounds[quarter].at)
         for (_, quarter), group in groups.items()
     ]
     analyses = [each for each in certain if each.is_analysis]

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from datetime import datetime, timedelta
+from typing import NamedTuple
 
 import numpy as np
 
@@ -14,8 +14,7 @@ from fertui.estimate.points import Band
 from fertui.estimate.ranges import HIGH, LOW, shared_meq, shares
 
 
-@dataclass(frozen=True, slots=True)
-class Days:
+class Days(NamedTuple):
     """Days until a band is left: median and 80 % range of all members; None: not within the horizon, 0: out already."""
 
     value: float | None
@@ -23,8 +22,7 @@ class Days:
     high: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class LeavesBand:
+class LeavesBand(NamedTuple):
     """When something leaves its band at a point. ``probability``: out at any time within the horizon.
 
     ``what``: "K share", "Ca share", "Mg share", "EC" or an ion; ``at``: median time; ``since``: out since.

@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 Band = tuple[float | None, float | None]
 """Allowed range; one side may be open."""
 
 
-@dataclass(frozen=True, slots=True)
-class Estimated:
+class Estimated(NamedTuple):
     """A number with its 80 % range (``low`` to ``high``) and the band it should stay in, where there is one."""
 
     value: float
@@ -19,16 +18,14 @@ class Estimated:
     band: Band | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class IonState:
+class IonState(NamedTuple):
     """One ion at a point: concentration [mmol/L; umol/L for micronutrients] and, for K, Ca and Mg, its share [%]."""
 
     mmol_l: Estimated
     share_pct: Estimated | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class PointState:
+class PointState(NamedTuple):
     """One point of a loop: EC [mS/cm at 25 C], pH where known, ions by name."""
 
     ec: Estimated

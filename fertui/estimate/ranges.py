@@ -7,7 +7,7 @@ narrow ranges, a volatile one wide ranges, and one odd analysis does not blow th
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -32,8 +32,7 @@ _HCO3, _NH4 = INDEX["HCO3"], INDEX["NH4"]
 _SHARED = [INDEX["K"], INDEX["Ca"], INDEX["Mg"]]
 
 
-@dataclass(frozen=True, slots=True)
-class Spread:
+class Spread(NamedTuple):
     """Learned variance scales and the weight behind each; ``judged``: innovations they were learned from."""
 
     common_variance: float = START_COMMON

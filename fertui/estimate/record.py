@@ -7,8 +7,8 @@ since the previous entry of their kind. Doubtful entries are kept among the obse
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, replace
 from datetime import UTC, datetime, time, timedelta
+from typing import NamedTuple
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -28,17 +28,13 @@ forecasts goes two years back."""
 LEAST_DAYS, KEPT_ANALYSES, SHIFT = 60, 6, 3
 """It begins at least 60 days back and at least six analyses back, and moves on by three analyses at a time."""
 
-LASTING = ("recipe", "setpoint", "batch", "crop", "plan")
-"""Kinds whose entries stay in force until the next one, however old they are."""
-
 ANEW = ("planted", "replanted", "new medium", "emptied", "refilled")
 WATER_AMOUNTS = ("make_up", "irrigation", "drain", "condensate", "crop")
 METERED = ("make_up", "irrigation", "drain")
 POINT_OF_BLEED = {"tank": "tank", "drain": "drain", "drain_store": "drain_store"}
 
 
-@dataclass(frozen=True, slots=True)
-class Record:
+class Record(NamedTuple):
     """One loop's entries up to ``at``, as the engine needs them.
 
     ``whole``: whether it goes back as far as there is any.
@@ -113,7 +109,7 @@ def start_among(times: Sequence[float], end: float, kept: int = KEPT_ANALYSES) -
 
 
 def since_needed(at: datetime, analyses: Iterable[Entry] = ()) -> datetime:
-    """The earliest time whose entries an estimate at ``at`` looks at, ``LASTING`` kinds aside.
+    """The earliest time whose entries an estimate at ``at`` looks at, those that stay in force aside.
 
     ``analyses``: analysis entries of all loops of the last ``HISTORY_DAYS``; without any it is that far back.
     """
@@ -268,7 +264,7 @@ class _Reader:
         if self.loop.layout == "shared-tank":
             return list(acids)
         rounds = {int(each.time): each.time for each in seen if not each.is_analysis and not each.doubtful}
-        return [replace(acid, at=rounds.get(int(acid.at), acid.at)) for acid in acids]
+        return [acid._replace(at=rounds.get(int(acid.at), acid.at)) for acid in acids]
 
     def _bleeds(self) -> list[Event]:
         return [

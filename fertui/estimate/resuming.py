@@ -7,8 +7,7 @@ the one before it (litres since the last reading, a feed analysis), and then the
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
@@ -24,8 +23,7 @@ if TYPE_CHECKING:
     from fertui.estimate.assimilation import Assimilation
 
 
-@dataclass(frozen=True, slots=True)
-class Stop:
+class Stop(NamedTuple):
     """The state of a run right before a stretch; ``counts``: how long each of its growing lists was."""
 
     span: int

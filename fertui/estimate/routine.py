@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
 from datetime import datetime
+from typing import NamedTuple
 
 import numpy as np
 
@@ -31,13 +31,11 @@ WATER_PER_LIGHT = 0.0025
 _HCO3 = INDEX["HCO3"]
 
 
-@dataclass(frozen=True, slots=True)
-class _Water:
+class _Water(NamedTuple):
     reference: Array
 
 
-@dataclass(frozen=True, slots=True)
-class Routine:
+class Routine(NamedTuple):
     """Drives of the coming stretches: ``grid`` [d from the record's zero], one drive for each, and the events."""
 
     grid: Array
@@ -56,8 +54,7 @@ class Routine:
 def _with_stock(drive: Drive, log_stock: Array) -> Drive:
     if not drive.holds and not np.any(drive.stock_mmol_d):
         return drive
-    return replace(
-        drive,
+    return drive._replace(
         holds=tuple(leaning(hold, log_stock) for hold in drive.holds),
         stock_mmol_d=drive.stock_mmol_d * np.exp(log_stock),
     )
@@ -283,8 +280,7 @@ class _Builder:
         self.assumed.append(text)
 
 
-@dataclass(frozen=True, slots=True)
-class _Planned:
+class _Planned(NamedTuple):
     entry: Entry
     begin: float
     end: float

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from datetime import datetime, timedelta
+from typing import NamedTuple
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -24,8 +25,7 @@ USUAL_DAYS, OFTEN_DAYS = 14.0, 7.0
 WEEKDAYS = ("Mon", "Tue", "Wed", "Thu", "Fri", "Sat", "Sun")
 
 
-@dataclass(frozen=True, slots=True)
-class SampleAdvice:
+class SampleAdvice(NamedTuple):
     """When to take the next sample and when its result can be there, counting the laboratory and closed days.
 
     ``narrows_pct``: by how many percent an analysis now would narrow the 80 % range at the end of the horizon, by

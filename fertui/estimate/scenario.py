@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from datetime import datetime
+from typing import NamedTuple
 
 from fertui.chemistry.ions import Array
 
@@ -12,8 +12,7 @@ Number = float | Array
 """One number for all members, or one per member (M,)."""
 
 
-@dataclass(frozen=True, slots=True)
-class Dose:
+class Dose(NamedTuple):
     """Salt weighed in at a time: kg of a supply or salt, or ``adds_mmol`` (10,) or (M, 10), which goes before it."""
 
     at: datetime
@@ -22,8 +21,7 @@ class Dose:
     adds_mmol: Array | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Renewal:
+class Renewal(NamedTuple):
     """Solution discharged and replaced: litres, and the composition [mmol/L] of what fills up."""
 
     at: datetime
@@ -31,16 +29,14 @@ class Renewal:
     refill: Mapping[str, Number]
 
 
-@dataclass(frozen=True, slots=True)
-class FeedRecipe:
+class FeedRecipe(NamedTuple):
     """A feed composition [mmol/L] that holds from a time on; proportions where stock is dosed to an EC."""
 
     at: datetime
     ions: Mapping[str, Number]
 
 
-@dataclass(frozen=True, slots=True)
-class Scenario:
+class Scenario(NamedTuple):
     """What differs from the routine; None: as logged. Light [J/cm2 a day], crop water [L/m2/d], bleed [L/d]."""
 
     light_j_per_cm2_d: float | None = None

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 from datetime import datetime
+from typing import NamedTuple
 
 import numpy as np
 
@@ -17,8 +17,7 @@ SKILL_PCT = 5.0
 """A skill within so many percent of none is none."""
 
 
-@dataclass(frozen=True, slots=True)
-class HindcastRow:
+class HindcastRow(NamedTuple):
     """One ion of one past forecast beside what the laboratory found; shares only of K, Ca and Mg.
 
     ``issued``: the analysis it was issued after; ``cold_start``: that was the first. Ranges hold the analysis' error.
@@ -45,8 +44,7 @@ class HindcastRow:
     judged: bool = True
 
 
-@dataclass(frozen=True, slots=True)
-class Summary:
+class Summary(NamedTuple):
     """The record in numbers; None where there is nothing to judge yet.
 
     Errors of shares are mean absolute errors in points; ``skill_pct``: how much smaller than "no change".

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -30,8 +30,7 @@ REFERENCE_FLOOR = 0.1
 """Least reference concentration [mmol/L]; keeps the rate law away from Cmin."""
 
 
-@dataclass(frozen=True, slots=True)
-class Setting:
+class Setting(NamedTuple):
     """Circuit, exchange and uptake prior of one loop. ``prior_sd`` (10,): spread (log) of each ion's uptake."""
 
     loop: Loop

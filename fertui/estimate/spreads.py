@@ -6,7 +6,7 @@ Times are days from the start of a record.
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -15,8 +15,7 @@ from fertui.chemistry.ions import Array
 SHORTEST_DAYS = 1.0 / 1440.0
 
 
-@dataclass(frozen=True, slots=True)
-class Spread:
+class Spread(NamedTuple):
     """Amounts (n, ...) each spread evenly from ``start`` (n,) to ``end`` (n,) [d]."""
 
     start: Array
@@ -51,8 +50,7 @@ def spread(items: Iterable[tuple[float, float, float | Array]], width: tuple[int
     return Spread(starts, ends, amounts)
 
 
-@dataclass(frozen=True, slots=True)
-class Steps:
+class Steps(NamedTuple):
     """Values that hold from their time on: set points, recipes, waters, stages."""
 
     times: tuple[float, ...]

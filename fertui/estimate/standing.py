@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 from datetime import datetime
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
@@ -36,8 +36,7 @@ if TYPE_CHECKING:
     from fertui.estimate.assimilation import Assimilation
 
 
-@dataclass(frozen=True, slots=True)
-class Surprise:
+class Surprise(NamedTuple):
     """An observation that was used but far from what was expected; of a reading: set aside as a meter fault."""
 
     entry: int | None
@@ -47,8 +46,7 @@ class Surprise:
     text: str
 
 
-@dataclass(frozen=True, slots=True)
-class HeldBack:
+class HeldBack(NamedTuple):
     """An analysis that failed its own charge or EC check: not used, to be asked about."""
 
     entry: int | None
@@ -57,16 +55,14 @@ class HeldBack:
     why: str
 
 
-@dataclass(frozen=True, slots=True)
-class TrailDay:
+class TrailDay(NamedTuple):
     """What was known at one time."""
 
     at: datetime
     points: Mapping[str, PointState]
 
 
-@dataclass(frozen=True, slots=True)
-class PointAt:
+class PointAt(NamedTuple):
     """One point at one time."""
 
     at: datetime
@@ -169,8 +165,8 @@ class Estimate:
             bands, end = allowed(self.site, self.loop, point), self.times[-1]
             state = self.course(point, 1)[0].state
             micronutrients = micronutrients_at(self.record.observations, point, end, bands)
-            found[point] = replace(
-                state, ions={**state.ions, **{name: IonState(each) for name, each in micronutrients.items()}}
+            found[point] = state._replace(
+                ions={**state.ions, **{name: IonState(each) for name, each in micronutrients.items()}}
             )
         return found
 

@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass, replace
 from itertools import pairwise
-from typing import Protocol
+from typing import NamedTuple, Protocol
 
 import numpy as np
 
@@ -22,8 +21,7 @@ TOLERANCE = 0.03
 finer, where one night of noise moves a member by 2 %."""
 
 
-@dataclass(frozen=True, slots=True)
-class Step:
+class Step(NamedTuple):
     """Members at the end of a stretch, the drive they went under, and the lines of the account."""
 
     ensemble: Ensemble
@@ -48,8 +46,7 @@ class Driven(Protocol):
     def drive(self, span: int, log_drain: Array, log_stock: Array) -> Drive: ...
 
 
-@dataclass(frozen=True, slots=True)
-class Way:
+class Way(NamedTuple):
     """Where members are led: loop, drives, events, times [d] of the noise of each day with the day that keys it."""
 
     setting: Setting
@@ -104,7 +101,7 @@ def stretch(setting: Setting, drives: Driven, span: int, ensemble: Ensemble, eve
     plants = ensemble.plants(setting, float(drives.water.reference[span]))
     state, moved = advance(setting.circuit, medium, plants, state, drive, end - begin, TOLERANCE)
     lines.append(booking(begin, end, moved))
-    return Step(replace(ensemble, state=state), drive, tuple(lines))
+    return Step(ensemble._replace(state=state), drive, tuple(lines))
 
 
 def night(setting: Setting, ensemble: Ensemble, seed: int, day: int, now: float) -> tuple[Ensemble, Booking]:

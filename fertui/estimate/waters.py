@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -25,8 +25,7 @@ DRAINED, BALANCED, ASSUMED = 0, 1, 2
 """Where crop water comes from: irrigation less drain; logged or balanced; nothing logged."""
 
 
-@dataclass(frozen=True, slots=True)
-class Waters:
+class Waters(NamedTuple):
     """Rates [L/d] of the whole loop in every stretch (n,) of a grid. ``make_up`` is nan where it is automatic:
     not logged, or without levels to say whether it filled the tank; the tank then stands at its level.
 

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from datetime import datetime
+from typing import NamedTuple
 
 from fertui.logbook.entries import Entry
 from fertui.logbook.store import Logbook
@@ -17,8 +17,7 @@ PH_GOOD = 0.05
 _GOOD = ("good", "adjusted", "replaced")
 
 
-@dataclass(frozen=True, slots=True)
-class Doubted:
+class Doubted(NamedTuple):
     """A reading made between the last good check of its meter and the one that found it off.
 
     ``corrected`` is what the reading would be if the meter had been off by then as it was when found: an offer only.

@@ -5,7 +5,6 @@ from __future__ import annotations
 import json
 import re
 from collections.abc import Mapping
-from dataclasses import fields, replace
 from datetime import UTC, datetime
 from typing import Any
 
@@ -13,8 +12,8 @@ from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import LogbookError
 from fertui.logbook.kinds import KINDS
 
-ENTRY_FIELDS = tuple(field.name for field in fields(Entry))
-VALUE_FIELDS = tuple(field.name for field in fields(Value))
+ENTRY_FIELDS = Entry._fields
+VALUE_FIELDS = Value._fields
 LONGEST_TEXT = 1_000_000
 LARGEST_NUMBER = 1e15
 
@@ -54,7 +53,7 @@ def line_of(entry: Entry) -> str:
 
 def settled(value: Value) -> Value:
     """The value as the file gives it back: numbers as floats, no negative zero."""
-    return value if value.number is None else replace(value, number=float(value.number) + 0.0)
+    return value if value.number is None else value._replace(number=float(value.number) + 0.0)
 
 
 def entry_of(plain: Mapping[str, Any]) -> Entry:

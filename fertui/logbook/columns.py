@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 from fertui import quantities
 from fertui.logbook.errors import LogbookError
@@ -27,8 +27,7 @@ HEADS: Mapping[str, str] = {
 """Other heads met on tables (common practice, no source)."""
 
 
-@dataclass(frozen=True, slots=True)
-class Column:
+class Column(NamedTuple):
     """A column by its head: the name it delivers (``at``, ``NO3-N`` ...; '' when left out), its unit and its field."""
 
     head: str
@@ -71,8 +70,7 @@ def columns_of(sheet: Sheet, kind: Kind, template: Template) -> tuple[Column, ..
 def learned(template: Template, sheet: Sheet, columns: Sequence[Column], dates: str) -> Template:
     """The template with what this table showed: the meaning and unit of every head, delimiter, decimal mark, dates."""
     meant = {column.head: f"{column.name} [{column.unit}]" if column.unit else column.name for column in columns}
-    return replace(
-        template,
+    return template._replace(
         columns={head: name for head, name in meant.items() if name},
         ignore=tuple(head for head, name in meant.items() if not name),
         dates=dates if dates != "ymd" else template.dates,

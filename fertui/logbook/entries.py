@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from datetime import datetime
+from typing import NamedTuple
 
 
-@dataclass(frozen=True, slots=True)
-class Value:
+class Value(NamedTuple):
     """One value of an entry: as written, with unit and species, and the canonical number.
 
     Canonical units: mmol/L for ions, umol/L for micronutrients, meq/L for HCO3, mS/cm at 25 C, L, kg, degrees C,
@@ -33,8 +32,7 @@ class Value:
         return self.text if not self.unit or self.text.endswith(self.unit) else f"{self.text} {self.unit}"
 
 
-@dataclass(frozen=True, slots=True)
-class Entry:
+class Entry(NamedTuple):
     """One line of the logbook. Times are aware and in UTC. ``number`` is None until the store gave it one.
 
     ``whole_day``: written without a time of day. An amount then covers that local day and ``at`` is its midnight; what

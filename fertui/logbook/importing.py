@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
 from datetime import datetime, timedelta
 from pathlib import Path
+from typing import NamedTuple
 from zoneinfo import ZoneInfo
 
 from fertui.logbook.columns import Column, columns_of, learned
@@ -36,8 +36,7 @@ Signature = tuple[str, str, str, str, str, tuple[tuple[str, str], ...]]
 """What makes two entries of a kind the same event."""
 
 
-@dataclass(frozen=True, slots=True)
-class ImportRow:
+class ImportRow(NamedTuple):
     """One row: its entry, and whether it is ``new``, ``there`` already, or ``differs`` from the book (not written).
 
     ``conversions`` says for each value what was written and what it became; ``questions`` what a careful reader asks.
@@ -51,8 +50,7 @@ class ImportRow:
     questions: tuple[Question, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class ImportResult:
+class ImportResult(NamedTuple):
     """What an import did, or with ``dry_run`` would do. ``written``: numbers of the new entries, empty on a dry run.
 
     ``template``: how the table was read, to be saved under the name of its laboratory for the next one.
@@ -119,8 +117,7 @@ def import_table(
     return ImportResult(kind, columns, rows, written, dry_run, learned(source.template, sheet, columns, order))
 
 
-@dataclass(frozen=True, slots=True)
-class _Source:
+class _Source(NamedTuple):
     """What holds for every row of one table."""
 
     kind: Kind

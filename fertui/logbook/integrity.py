@@ -8,9 +8,9 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Iterator
 from contextlib import closing, suppress
-from dataclasses import dataclass, replace
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
+from typing import NamedTuple
 
 from fertui.logbook import schema
 from fertui.logbook.codec import check_storable, moment_text
@@ -27,8 +27,7 @@ MOST_IN_A_ROW_LOST = 2000
 """So many numbers in a row without a readable entry are taken as the end of the book."""
 
 
-@dataclass(frozen=True, slots=True)
-class Row:
+class Row(NamedTuple):
     """One thing looked at: what, what was found, whether it is all right, and what to do where it is not."""
 
     what: str
@@ -148,7 +147,7 @@ def _one(connection: sqlite3.Connection, number: int) -> Entry | None:
         return None
     before = FIRST_HASH if number == 1 else links.get(number - 1)
     if before is not None and link_of(before, entry) != links.get(number):
-        return replace(entry, doubtful=f"{entry.doubtful} {DAMAGED}".strip())
+        return entry._replace(doubtful=f"{entry.doubtful} {DAMAGED}".strip())
     return entry
 
 

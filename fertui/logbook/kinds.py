@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.logbook.errors import LogbookError
 
@@ -14,8 +14,7 @@ METHODS = ("pore", "extract_1_1.5", "paste", "pour_through")
 """How a root-zone sample was taken; everything but ``pore`` needs the site's factor before it is compared."""
 
 
-@dataclass(frozen=True, slots=True)
-class Field:
+class Field(NamedTuple):
     """One value of a kind.
 
     ``what`` is one of the keys of ``UNITS``; the canonical number is in that unit. Outside ``low`` .. ``high`` a number
@@ -44,8 +43,7 @@ class Field:
         return self.what not in WORDLIKE
 
 
-@dataclass(frozen=True, slots=True)
-class Kind:
+class Kind(NamedTuple):
     """A kind of entry. ``salts``: further values named by supply or salt, in kg. ``sampled``: it belongs to a point.
 
     ``spans``: its amounts cover a time; without a time of day, the whole local day.

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
 from datetime import UTC, date, datetime, time, timedelta
+from typing import NamedTuple
 
 from fertui.logbook.entries import Entry
 from fertui.logbook.kinds import KINDS
@@ -15,8 +15,7 @@ LONGEST_SPAN = timedelta(days=3)
 """An amount without a day of its own reaches back to the entry before it, but no further than this."""
 
 
-@dataclass(frozen=True, slots=True)
-class Mix:
+class Mix(NamedTuple):
     """What a stock tank held from a batch on: kg of each salt per litre, and which entries say so.
 
     ``blended``: old solution was left and counted in. ``assumed_empty``: the batch does not say what was left.
@@ -31,8 +30,7 @@ class Mix:
     assumed_empty: bool
 
 
-@dataclass(frozen=True, slots=True)
-class Given:
+class Given(NamedTuple):
     """What one loop was given on one local day: litres of each stock, kg of each salt, mmol of each ion.
 
     ``ions_mmol`` (micronutrients in it too, in mmol) leaves out what the catalogue does not know; ``unknown`` names it.
@@ -45,7 +43,7 @@ class Given:
     acid_l: Mapping[str, float]
     ions_mmol: Mapping[str, float]
     unknown: tuple[str, ...] = ()
-    entries: tuple[int, ...] = field(default=())
+    entries: tuple[int, ...] = ()
 
 
 def recipe_at(entries: Sequence[Entry], loop: str, at: datetime) -> Entry | None:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import replace
 from datetime import UTC, datetime
 from typing import Any
 
@@ -59,7 +58,7 @@ def corrected(old: Entry, changes: Mapping[str, str], site: Site, now: datetime,
         raise LogbookError(f"the correction of entry {old.number} changes nothing; name what was wrong, e.g. K=5.1.")
     chosen = site.loop(old.loop) if old.loop in {each.name for each in site.loops} else site.loops[0]
     entered = now.astimezone(UTC)
-    base = replace(old, number=None, entered=entered, by="", supersedes=old.number, why=why.strip(), flags="")
+    base = old._replace(number=None, entered=entered, by="", supersedes=old.number, why=why.strip(), flags="")
     return _complete(_with_texts(base, {"by": by, **changes}, site, chosen, now), site, chosen)
 
 
@@ -70,7 +69,7 @@ def _with_texts(base: Entry, texts: Mapping[str, str], site: Site, loop: Loop, n
     if kind.name == "note" and about.get("note") and "text" not in given:
         given["text"] = about.pop("note")
     values = _merged(base.values, _values(kind, given, site, loop, now))
-    entry = at_25(replace(base, values=values, **_about(kind, base, about, site, loop, now)), site)
+    entry = at_25(base._replace(values=values, **_about(kind, base, about, site, loop, now)), site)
     check_storable(entry)
     return entry
 
@@ -106,7 +105,7 @@ def _named_value(kind: Kind, name: str, text: str, site: Site, loop: Loop, now: 
     if not kind.salts:
         raise unknown_name(kind, name, WRITTEN_ABOUT_EVERY_ENTRY)
     salt = supply_named(name, site)
-    return salt, read_value(replace(KILOGRAMS, name=salt), salt, text, site, loop, now) if text else None
+    return salt, read_value(KILOGRAMS._replace(name=salt), salt, text, site, loop, now) if text else None
 
 
 def _merged(old: Sequence[Value], new: Mapping[str, Value | None]) -> tuple[Value, ...]:
@@ -150,9 +149,9 @@ def _complete(entry: Entry, site: Site, loop: Loop) -> Entry:
 
 def _filled_in(entry: Entry, site: Site, loop: Loop) -> Entry:
     if entry.kind == "bleed" and entry.value("from") is None:
-        return replace(entry, values=(*entry.values, Value("from", _BLEED_FROM[loop.layout])))
+        return entry._replace(values=(*entry.values, Value("from", _BLEED_FROM[loop.layout])))
     if entry.kind == "acid" and entry.value("strength") is None:
-        return replace(entry, values=(*entry.values, _strength(entry.values, site)))
+        return entry._replace(values=(*entry.values, _strength(entry.values, site)))
     return entry
 
 

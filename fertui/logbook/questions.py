@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import replace
 
 from fertui.logbook.asking import amounts, analyses, instruments, meters, times, values
 from fertui.logbook.asking.question import Asker, Question, Setting
@@ -60,7 +59,7 @@ def questions_of_values(entry: Entry) -> tuple[Question, ...]:
 
 def flagged(entry: Entry, unanswered: Iterable[Question]) -> Entry:
     """The entry with the codes of the questions nobody answered."""
-    return replace(entry, flags=" ".join(dict.fromkeys(question.code for question in unanswered)))
+    return entry._replace(flags=" ".join(dict.fromkeys(question.code for question in unanswered)))
 
 
 def _once(asked: Iterable[Question]) -> tuple[Question, ...]:

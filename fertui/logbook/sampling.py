@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 from fertui import quantities
 from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.logbook.entries import Entry, Value
@@ -32,8 +30,8 @@ def at_25(entry: Entry, site: Site) -> Entry:
     from fertui.chemistry.conductivity import to_reference
 
     number = float(to_reference(quantities.read(ec.text, "EC").number, temperature))
-    told = replace(ec, number=number, unit=f"{ec.unit.split(' at ')[0] or 'mS/cm'} at {temperature:g} C")
-    return replace(entry, values=tuple(told if value.name == "EC" else value for value in entry.values))
+    told = ec._replace(number=number, unit=f"{ec.unit.split(' at ')[0] or 'mS/cm'} at {temperature:g} C")
+    return entry._replace(values=tuple(told if value.name == "EC" else value for value in entry.values))
 
 
 def check_method(entry: Entry, loop: Loop) -> None:
@@ -60,6 +58,6 @@ def as_pore_water(entry: Entry, loop: Loop) -> Entry:
 
     def scaled(value: Value) -> Value:
         of_solution = value.name in (*IONS, *MICRONUTRIENTS, "EC")
-        return replace(value, number=value.number * factor) if of_solution and value.number is not None else value
+        return value._replace(number=value.number * factor) if of_solution and value.number is not None else value
 
-    return replace(entry, values=tuple(map(scaled, entry.values)))
+    return entry._replace(values=tuple(map(scaled, entry.values)))

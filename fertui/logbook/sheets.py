@@ -6,8 +6,8 @@ import csv
 import io
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
 from pathlib import Path
+from typing import NamedTuple
 
 from fertui.logbook.errors import LogbookError
 from fertui.quantities.names import named
@@ -26,8 +26,7 @@ _RESULT_HEADS = ("result", "value")
 _UNIT_HEADS = ("unit", "units")
 
 
-@dataclass(frozen=True, slots=True)
-class Sheet:
+class Sheet(NamedTuple):
     """Heads, units (from a row of their own, '' where none) and rows of a table; ``lines``: the rows' line numbers."""
 
     heads: tuple[str, ...]
@@ -89,7 +88,7 @@ def sheet_of(text: str, name: str, delimiter: str = "", decimal: str = "") -> Sh
         delimiter=delimiter,
     )
     sheet = _wide(_upright(_with_units_row(sheet)))
-    return replace(sheet, decimal=decimal or _decimal(sheet.rows))
+    return sheet._replace(decimal=decimal or _decimal(sheet.rows))
 
 
 def _decoded(raw: bytes, name: str) -> str:
@@ -144,7 +143,7 @@ def _with_units_row(sheet: Sheet) -> Sheet:
     if len(sheet.rows) < 2 or not written or not all(_like_unit(cell) for cell in written):
         return sheet
     units = tuple(cell if _like_unit(cell) else "" for cell in second)
-    return replace(sheet, units=units, rows=sheet.rows[1:], lines=sheet.lines[1:])
+    return sheet._replace(units=units, rows=sheet.rows[1:], lines=sheet.lines[1:])
 
 
 def _like_unit(cell: str) -> bool:

@@ -8,7 +8,6 @@ import threading
 import time
 from collections.abc import Iterable, Iterator, Sequence
 from contextlib import closing, contextmanager
-from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
@@ -120,14 +119,9 @@ class Logbook:
         a plan made by ``at`` counts, whatever days it is for.
         ``known``: as the book stood then: entries and corrections made later are hidden.
         """
-        known_text = moment_text(known) if known is not None else "9"
         where, given = conditions(loop, kinds, since, at)
-        where += (
-            "e.void = 0",
-            "e.entered <= ?",
-            "NOT EXISTS (SELECT 1 FROM entries c WHERE c.supersedes = e.number AND c.entered <= ?)",
-        )
-        return self._read(where, [*given, known_text, known_text], "e.at, e.number")
+        effective, known_given = _effective(known)
+        return self._read((*where, *effective), [*given, *known_given], "e.at, e.number")
 
     def history(
         self,
@@ -160,6 +154,26 @@ class Logbook:
             where, given = (*where, "e.point = ?"), [*given, point]
         found = self._read(where, given, "e.at DESC, e.number DESC LIMIT 1")
         return found[0] if found else None
+
+    def last_of_each(
+        self, kinds: Iterable[str], before: datetime, known: datetime | None = None, by: Iterable[str] = ()
+    ) -> tuple[Entry, ...]:
+        """The latest effective entry before a time of every kind, loop, point and instrument, ordered by time.
+
+        ``by``: names of values that tell apart what an entry is about, such as the tank or the source water.
+        """
+        where, given = conditions(None, kinds, None, before)
+        effective, known_given = _effective(known)
+        named, told = tuple(by), "''"
+        if named:
+            among = ", ".join("?" * len(named))
+            told = f"(SELECT v.text FROM entry_values v WHERE v.entry = e.number AND v.name IN ({among}))"
+        latest = (
+            f"SELECT e.number, max(e.at || printf('%012d', e.number)) FROM entries e "
+            f"WHERE {' AND '.join((*where, *effective))} GROUP BY e.kind, e.loop, e.point, e.instrument, {told}"
+        )
+        found = f"e.number IN (SELECT number FROM ({latest}))"
+        return self._read((found,), [*given, *known_given, *named], "e.at, e.number")
 
     def superseded_by(self, number: int) -> int | None:
         """Number of the entry that corrects or strikes this one, or None."""
@@ -219,15 +233,14 @@ class Logbook:
                 if entry.number not in (None, number):
                     raise LogbookError(f"entry {entry.number} cannot follow entry {number - 1}.")
                 self._check_supersedes(entry, number)
-                chain = self._insert(replace(entry, number=number), chain)
+                chain = self._insert(entry._replace(number=number), chain)
                 numbers.append(number)
         return tuple(numbers)
 
     def void(self, number: int, why: str, by: str, now: datetime | None = None) -> int:
         """Strike an entry: a new entry says who, when and why; the old one stays. Returns the new number."""
         old = self.entry(number)
-        striking = replace(
-            old, entered=now or datetime.now(UTC), by=by, values=(), number=None, note="", doubtful="",
+        striking = old._replace(entered=now or datetime.now(UTC), by=by, values=(), number=None, note="", doubtful="",
             supersedes=number, why=why, void=True,
         )  # fmt: skip
         return self.append(striking)[0]
@@ -332,6 +345,17 @@ class Logbook:
                 self._seen[row[0]] = entry_of_row(row, tuple(values.get(row[0], ())))
         except (ValueError, TypeError) as error:
             raise DamageError(f"{self.path}: {_DAMAGED} ({error}).") from error
+
+
+def _effective(known: datetime | None) -> tuple[tuple[str, ...], list[object]]:
+    """Conditions on ``entries e`` that hold for what counted as the book stood at ``known`` (None: now)."""
+    known_text = moment_text(known) if known is not None else "9"
+    where = (
+        "e.void = 0",
+        "e.entered <= ?",
+        "NOT EXISTS (SELECT 1 FROM entries c WHERE c.supersedes = e.number AND c.entered <= ?)",
+    )
+    return where, [known_text, known_text]
 
 
 def link_of(chain: str, entry: Entry) -> str:

@@ -5,8 +5,8 @@ from __future__ import annotations
 import re
 import tomllib
 from collections.abc import Mapping
-from dataclasses import asdict, dataclass, field, fields
 from pathlib import Path
+from typing import NamedTuple
 
 from fertui.logbook.dates import ORDERS
 from fertui.logbook.errors import LogbookError
@@ -17,8 +17,7 @@ FOLDER = "templates"
 _NAME = re.compile(r"[A-Za-z0-9][A-Za-z0-9 _.-]{0,59}")
 
 
-@dataclass(frozen=True, slots=True)
-class Template:
+class Template(NamedTuple):
     """What is said once about the tables of one source.
 
     ``columns``: head -> name with unit (``"Nitraat" = "NO3 [mg/L]"``); ``points``: words of the table -> points;
@@ -26,14 +25,14 @@ class Template:
     ``delimiter``, ``decimal``: sniffed where empty; ``values``: names every row gets (lab, method, point, by).
     """
 
-    columns: Mapping[str, str] = field(default_factory=dict)
-    points: Mapping[str, str] = field(default_factory=dict)
+    columns: Mapping[str, str] = {}
+    points: Mapping[str, str] = {}
     ignore: tuple[str, ...] = ()
     blank: tuple[str, ...] = ()
     dates: str = ""
     delimiter: str = ""
     decimal: str = ""
-    values: Mapping[str, str] = field(default_factory=dict)
+    values: Mapping[str, str] = {}
 
 
 def read_template(site_folder: Path, name: str) -> Template:
@@ -58,9 +57,9 @@ def save_template(site_folder: Path, name: str, template: Template) -> Path:
     import tomli_w
 
     path = _path(site_folder, name)
-    _checked(asdict(template), name)
+    _checked(template._asdict(), name)
     make_private_folder(path.parent)
-    write_whole(path, tomli_w.dumps({key: value for key, value in asdict(template).items() if value}))
+    write_whole(path, tomli_w.dumps({key: value for key, value in template._asdict().items() if value}))
     return path
 
 
@@ -71,7 +70,7 @@ def _path(site_folder: Path, name: str) -> Path:
 
 
 def _checked(table: Mapping[str, object], where: str) -> Template:
-    known = {each.name: each for each in fields(Template)}
+    known = Template._fields
     for key, value in table.items():
         if key not in known:
             raise LogbookError(

@@ -6,7 +6,7 @@ It always closes: start + flows = end, for the ensemble mean and for every membe
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -18,8 +18,7 @@ MICROMOLE = 1e-3
 """[mmol] Below this an amount is rounding of what the medium holds."""
 
 
-@dataclass(frozen=True, slots=True)
-class Booking:
+class Booking(NamedTuple):
     """What moved between two times [d], as ensemble means: ``by_cause`` (causes, 10) [mmol], ``litres`` (waters,) [L].
 
     ``reason`` of a bleed; ``overflow`` (10,) [mmol] is the part of the bleed that ran over. ``entry``: its number in
@@ -41,8 +40,7 @@ def booking(begin: float, end: float, fluxes: Fluxes, event: Event | None = None
     return Booking(begin, end, *means, event.reason if event else "", event.entry if event else None)
 
 
-@dataclass(frozen=True, slots=True)
-class Account:
+class Account(NamedTuple):
     """Amounts in solution [mmol] (10,) at both ends, flows (causes, 10), and the lines they came from."""
 
     begin: float
@@ -76,8 +74,7 @@ def summed(begin: float, end: float, start_mmol: Array, end_mmol: Array, lines: 
     return Account(begin, end, start_mmol, flows, end_mmol, kept)
 
 
-@dataclass(frozen=True, slots=True)
-class Discharge:
+class Discharge(NamedTuple):
     """Nitrogen and phosphorus discharged for one reason [kg of the loop, kg per hectare], and litres."""
 
     reason: str

@@ -8,7 +8,7 @@ sum z (amount gained) over the other ions.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -22,8 +22,7 @@ STEADY_MEQ_L_D = 0.02
 _ALK, _NH4, _NO3 = INDEX["HCO3"], INDEX["NH4"], INDEX["NO3"]
 
 
-@dataclass(frozen=True, slots=True)
-class Drift:
+class Drift(NamedTuple):
     """A rate of change of alkalinity [meq/L per day] with its 80 % range; positive raises pH."""
 
     what: str
@@ -32,8 +31,7 @@ class Drift:
     high: float
 
 
-@dataclass(frozen=True, slots=True)
-class Tendency:
+class Tendency(NamedTuple):
     """``direction`` of pH ("up", "down", "steady", "not told": the range spans both), the whole drift, its drivers."""
 
     direction: str

@@ -8,7 +8,7 @@ as the error it leaves allows.
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -68,8 +68,7 @@ def advance(
     return state, total or no_fluxes(state.members)
 
 
-@dataclass(frozen=True, slots=True)
-class _Rates:
+class _Rates(NamedTuple):
     """Linear coefficients of a step; see ``transfer``. ``entering`` by cause (M, 10) [mmol/d].
 
     ``lost_store``, ``lost_root``, ``nitrified``: rates [1/d] at which amounts leave the loop or turn into nitrate;
@@ -135,8 +134,7 @@ def _half_way(circuit: Circuit, drive: Drive, rates: _Rates, x: Pair, middle_l: 
     return y
 
 
-@dataclass(frozen=True, slots=True)
-class _Retardation:
+class _Retardation(NamedTuple):
     """``volume`` (M, 10) [L]: water that would hold a cation's whole amount, sites included, at its concentration."""
 
     log_s: Array | None
@@ -260,7 +258,7 @@ def _hold_vessel(circuit: Circuit, drive: Drive, state: State) -> tuple[State, F
         amount = per_litre * state.water_l[:, circuit.fed, None]
         ions[:, circuit.fed] += amount
         fluxes.by_cause[:, CAUSE[cause]] = amount
-    return replace(state, ions_mmol=ions), fluxes
+    return state._replace(ions_mmol=ions), fluxes
 
 
 def _store_share(circuit: Circuit, drive: Drive, store: Array) -> Array | None:

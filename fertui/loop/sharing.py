@@ -6,7 +6,7 @@ What a loop gains or loses by the mixing stands under ``drain``: it is drain wat
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -18,8 +18,7 @@ from fertui.loop.uptake import Plants
 from fertui.loop.values import ROOT, STORE, Circuit, Medium, State
 
 
-@dataclass(frozen=True, slots=True)
-class Sharer:
+class Sharer(NamedTuple):
     """One of the loops that share a vessel; ``circuit.store_l`` (``root_zone_l`` where mixed) is its part of it."""
 
     circuit: Circuit
@@ -61,7 +60,7 @@ def _given(sharer: Sharer, water_l: Array, ions_mmol: Array) -> tuple[State, Flu
     water, ions = state.water_l.copy(order="K"), state.ions_mmol.copy(order="K")
     fluxes.by_cause[:, CAUSE["drain"]] = ions_mmol - ions[:, sharer.vessel]
     water[:, sharer.vessel], ions[:, sharer.vessel] = water_l, ions_mmol
-    return replace(state, water_l=water, ions_mmol=ions), fluxes
+    return state._replace(water_l=water, ions_mmol=ions), fluxes
 
 
 def simulate_together(
@@ -90,11 +89,11 @@ def _together(sharers: dict[str, Sharer], records: Mapping[str, Record], now: fl
     for name, each in sharers.items():
         run = simulate(each.circuit, each.medium, each.plants, each.state, each.timeline, [until], begin=now)
         records[name].take(run)
-        moved_on[name] = replace(each, state=run.end)
+        moved_on[name] = each._replace(state=run.end)
     states, fluxes = pooled(tuple(moved_on.values()))
     for (name, each), state, moved in zip(list(moved_on.items()), states, fluxes, strict=True):
         records[name].book(until, until, moved)
-        moved_on[name] = replace(each, state=state)
+        moved_on[name] = each._replace(state=state)
     return moved_on
 
 

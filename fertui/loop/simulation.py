@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from bisect import bisect_right
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
+from typing import NamedTuple
 
 import numpy as np
 
@@ -49,8 +50,7 @@ class Timeline:
         return drive.part((now - begin) / length, (until - begin) / length) if length > 0 else drive
 
 
-@dataclass(frozen=True, slots=True)
-class Trajectory:
+class Trajectory(NamedTuple):
     """``times`` [d] in order, the state and the feed [mmol/L] (M, 10) at each, and the account of all that moved.
 
     ``fluxes``: totals per member over the whole run; ``bookings``: ensemble means piece by piece, in order;
@@ -61,8 +61,8 @@ class Trajectory:
     states: tuple[State, ...]
     feeds: tuple[Array, ...]
     fluxes: Fluxes
-    bookings: tuple[Booking, ...] = field(repr=False)
-    marks: tuple[int, ...] = field(repr=False)
+    bookings: tuple[Booking, ...]
+    marks: tuple[int, ...]
 
     @property
     def end(self) -> State:
@@ -114,7 +114,7 @@ def _added(circuit: Circuit, state: State, event: Event, where: int) -> tuple[St
     fluxes.by_cause[:, CAUSE[event.cause]] = event.ions_mmol
     if event.cause == "make_up":
         fluxes.litres[:, WATERS.index("make_up")] = event.litres
-    return _spilled(circuit, replace(state, water_l=water, ions_mmol=ions), where, fluxes), fluxes
+    return _spilled(circuit, state._replace(water_l=water, ions_mmol=ions), where, fluxes), fluxes
 
 
 def _spilled(circuit: Circuit, state: State, where: int, fluxes: Fluxes) -> State:
@@ -142,13 +142,13 @@ def _bled(state: State, event: Event, where: int) -> tuple[State, Fluxes]:
     fluxes = no_fluxes(state.members)
     fluxes.by_cause[:, CAUSE["bleed"]] = -out
     fluxes.litres[:, WATERS.index("bleed")] = litres
-    return replace(state, water_l=water, ions_mmol=ions), fluxes
+    return state._replace(water_l=water, ions_mmol=ions), fluxes
 
 
 def _levelled(state: State, event: Event, where: int) -> State:
     water = state.water_l.copy(order="K")
     water[:, where] = event.litres
-    return replace(state, water_l=water)
+    return state._replace(water_l=water)
 
 
 def corrected(before: State, after: State) -> Fluxes:

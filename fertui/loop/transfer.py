@@ -9,7 +9,7 @@ and sources no amount can become negative.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -23,8 +23,7 @@ _NONE: Array = np.zeros((1, 10))
 Pair = tuple[Array, Array]
 
 
-@dataclass(frozen=True, slots=True)
-class Response:
+class Response(NamedTuple):
     """A function of the matrix: what store and root zone gain (first index) from store and root zone (second)."""
 
     f00: Array
@@ -40,8 +39,7 @@ class Response:
         return self.f00 * x[0] + self.f01 * x[1], self.f10 * x[0] + self.f11 * x[1]
 
 
-@dataclass(frozen=True, slots=True)
-class Transfer:
+class Transfer(NamedTuple):
     """A stretch of time: ``kept`` of amounts at its start [-], ``gained`` per source rate [d], ``ramp`` [d2].
 
     Amounts at the end are kept(x) + gained(s); their integrals over the stretch [mmol d] gained(x) + ramp(s).

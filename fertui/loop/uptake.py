@@ -12,7 +12,8 @@ Agron. J. 68:961, from memory); the exponent carries channels and mass flow.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -24,8 +25,7 @@ _TRACE = 1e-12
 COOL_ROOTS_C, WARM_ROOTS_C = 15.0, 26.0
 
 
-@dataclass(frozen=True, slots=True)
-class Parameter:
+class Parameter(NamedTuple):
     """One constant: its value, the range it may lie in, unit, source and status ("read", "derived", "assumed")."""
 
     name: str
@@ -105,17 +105,16 @@ def _single(name: str) -> float:
     return next(row.value for row in UPTAKE_TABLE if row.name == name)
 
 
-@dataclass(frozen=True, slots=True)
-class Kinetics:
+class Kinetics(NamedTuple):
     """The constants of the rate law as arrays (10,) in ion order; HCO3 is not taken up but follows from charge."""
 
-    b: Array = field(default_factory=lambda: _column("b", 0.0))
-    q: Array = field(default_factory=lambda: _column("q", 1.0))
-    km: Array = field(default_factory=lambda: _column("Km", 1.0))
-    c_min: Array = field(default_factory=lambda: _column("Cmin", 0.0))
-    antagonism: float = field(default_factory=lambda: _single("a"))
-    salt_half: float = field(default_factory=lambda: _single("Ki"))
-    q10: float = field(default_factory=lambda: _single("Q10"))
+    b: Array = _column("b", 0.0)
+    q: Array = _column("q", 1.0)
+    km: Array = _column("Km", 1.0)
+    c_min: Array = _column("Cmin", 0.0)
+    antagonism: float = _single("a")
+    salt_half: float = _single("Ki")
+    q10: float = _single("Q10")
 
 
 @dataclass(frozen=True, slots=True)
@@ -133,7 +132,7 @@ class Plants:
     reference_l_d: float
     multiplier: Array | float = 1.0
     light_share: Array | float = 0.0
-    kinetics: Kinetics = field(default_factory=Kinetics)
+    kinetics: Kinetics = Kinetics()
 
     def __post_init__(self) -> None:
         wanted = np.asarray(self.uptake_concentration)

@@ -8,7 +8,8 @@ In memory the members lie side by side (Fortran order), which makes arithmetic o
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -73,15 +74,14 @@ class Circuit:
         return self.store_l / drain_l_d if drain_l_d > 0 else np.inf
 
 
-@dataclass(frozen=True, slots=True)
-class Medium:
+class Medium(NamedTuple):
     """What the root zone exchanges: ``capacity_meq`` [meq] of the whole loop, scalar or (M,), root free space included;
 
     ``selectivity`` (5,) or (M, 5), Gaines-Thomas on concentrations, calcium 1, monovalents in (mmol/L)^-1/2.
     """
 
     capacity_meq: float | Array = 0.0
-    selectivity: Array = field(default_factory=lambda: PHREEQC_SELECTIVITY)
+    selectivity: Array = PHREEQC_SELECTIVITY
 
     @property
     def inert(self) -> bool:
@@ -101,8 +101,7 @@ class Medium:
 INERT = Medium()
 
 
-@dataclass(frozen=True, slots=True)
-class State:
+class State(NamedTuple):
     """Water [L] (M, 2), ions in solution [mmol] (M, 2, 10) and charge on the exchanger [meq] (M, 5) of every member."""
 
     water_l: Array
@@ -123,13 +122,13 @@ class State:
         """The same water with other concentrations (10,) or (M, 10) [mmol/L]; the exchanger is left as it is."""
         ions = self.ions_mmol.copy(order="K")
         ions[:, compartment] = self.water_l[:, compartment, None] * mmol_l
-        return replace(self, ions_mmol=ions)
+        return self._replace(ions_mmol=ions)
 
     def reloaded(self, medium: Medium) -> State:
         """The same solution with the exchanger in equilibrium with it: what follows an analysis."""
         if medium.inert:
             return self
-        return replace(self, exchanged_meq=_members(medium.load(self.concentration(ROOT)), self.members, 5))
+        return self._replace(exchanged_meq=_members(medium.load(self.concentration(ROOT)), self.members, 5))
 
     def laid_out(self) -> State:
         """The same state with members side by side in memory."""
@@ -167,7 +166,7 @@ def start(
         return state.reloaded(medium)
     fractions = np.asarray(held, dtype=float)
     charge = np.asarray(medium.capacity_meq, dtype=float)[..., None] * fractions / fractions.sum(-1, keepdims=True)
-    return replace(state, exchanged_meq=_members(charge, members, 5))
+    return state._replace(exchanged_meq=_members(charge, members, 5))
 
 
 @dataclass(frozen=True, slots=True)
@@ -221,8 +220,7 @@ def hold_ph(alkalinity_meq_l: float, acid: Array) -> Hold:
     return Hold("acid", np.asarray(acid, dtype=float), slope, 0.0, -alkalinity_meq_l)
 
 
-@dataclass(frozen=True, slots=True)
-class Drive:
+class Drive(NamedTuple):
     """Rates over a stretch of time, all of the whole loop [L/d]; scalar or (M,), compositions (10,) or (M, 10).
 
     ``make_up_l_d`` None: automatic, replaces crop water, bleed and losses so that the store stays at its level.
@@ -235,13 +233,13 @@ class Drive:
 
     irrigation_l_d: float | Array = 0.0
     crop_l_d: float | Array = 0.0
-    make_up: Array = field(default_factory=lambda: NOTHING)
+    make_up: Array = NOTHING
     make_up_l_d: float | Array | None = None
     condensate_l_d: float | Array = 0.0
-    stock_mmol_d: Array = field(default_factory=lambda: NOTHING)
+    stock_mmol_d: Array = NOTHING
     holds: tuple[Hold, ...] = ()
     ec: Linearised | None = None
-    feed_from: Array = field(default_factory=lambda: NOTHING)
+    feed_from: Array = NOTHING
     feed_to: Array | None = None
     bleed_l_d: float | Array = 0.0
     light: float | Array = 1.0
@@ -254,11 +252,10 @@ class Drive:
 
     def part(self, first: float, last: float) -> Drive:
         """The drive of a part of the stretch, from place ``first`` to ``last`` (0-1)."""
-        return replace(self, feed_from=self.feed_at(first), feed_to=self.feed_at(last))
+        return self._replace(feed_from=self.feed_at(first), feed_to=self.feed_at(last))
 
 
-@dataclass(frozen=True, slots=True)
-class Event:
+class Event(NamedTuple):
     """Something that happens at one time: ``at`` [d from the start], booked under ``cause``.
 
     Additions (``dose``, ``acid``, ``stock``, ``make_up``, ``feed``): ``ions_mmol`` (10,) or (M, 10) and ``litres``.
@@ -270,7 +267,7 @@ class Event:
 
     at: float
     cause: str
-    ions_mmol: Array = field(default_factory=lambda: NOTHING)
+    ions_mmol: Array = NOTHING
     litres: float | Array = 0.0
     point: str = "tank"
     reason: str = ""

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -11,8 +11,7 @@ from fertui.chemistry.ions import Array
 from fertui.loop.values import ROOT, STORE, Circuit, Drive
 
 
-@dataclass(frozen=True, slots=True)
-class Flows:
+class Flows(NamedTuple):
     """Mean flows over a step [L/d], each (M,).
 
     ``to_root``: store into root zone; ``back``: drain into the store; ``lost_root``: out of the root zone and the loop

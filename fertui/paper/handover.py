@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
 from datetime import datetime, timedelta
+from typing import NamedTuple
 
 from fertui.estimate.notices.notice import Notice
 from fertui.logbook.entries import Entry
@@ -19,12 +19,11 @@ ROUTINE = ("reading", "water", "stock", "level", "plan", "site")
 """Kinds of the daily round: their numbers stand above, or in the logbook."""
 
 
-@dataclass(frozen=True, slots=True)
-class LoopShift:
+class LoopShift(NamedTuple):
     """What one loop hands over: what to look at, days left in its stock tanks, last analysis, samples on their way."""
 
     watch: Sequence[Notice] = ()
-    stock_days_left: Mapping[str, float] = field(default_factory=dict)
+    stock_days_left: Mapping[str, float] = {}
     last_analysis: datetime | None = None
     awaited: Sequence[str] = ()
 

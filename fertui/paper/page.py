@@ -5,9 +5,8 @@ from __future__ import annotations
 import re
 import textwrap
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, field
 from datetime import datetime
-from typing import Any
+from typing import Any, NamedTuple
 from zoneinfo import ZoneInfo
 
 WIDTH = 80
@@ -23,13 +22,12 @@ BOUND = "\ue000"
 """Stands for the space between a number and its unit while lines are broken; no text of ours holds it."""
 
 
-@dataclass(frozen=True, slots=True)
-class Page:
+class Page(NamedTuple):
     """One sheet: ``text`` to print, ``data`` for JSON, ``rows`` where it is a table for CSV (units in the heads)."""
 
     text: str
     data: Mapping[str, Any]
-    rows: tuple[tuple[str, ...], ...] = field(default=())
+    rows: tuple[tuple[str, ...], ...] = ()
 
     def csv(self) -> str:
         """The table as CSV text; cells that a spreadsheet would run are defused."""

@@ -6,9 +6,8 @@ Every table says its unit; concentrations stand in mmol/L and in mg/L; corrected
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
 from datetime import datetime
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.logbook.entries import Entry
@@ -29,8 +28,7 @@ ACTS = ("recipe", "setpoint", "batch", "dose", "disinfection", "crop")
 Row = tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Reported:
+class Reported(NamedTuple):
     """A loop over a period: ``history`` is verbatim, ``effective`` leaves out what was corrected or struck.
 
     ``crop_water_l`` [L] as the account has it, None where it is not known.

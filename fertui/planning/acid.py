@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.catalogue.acids import Acid
 from fertui.catalogue.acids import acid as named_acid
@@ -38,8 +38,7 @@ MEASURE_IT = (
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Split:
+class Split(NamedTuple):
     """One portion [L]: mix, wait [min], retest; go on only above ``retest_ph``, stop everything at ``stop_ph``."""
 
     number: int
@@ -49,8 +48,7 @@ class Split:
     stop_ph: float
 
 
-@dataclass(frozen=True, slots=True)
-class AcidSheet:
+class AcidSheet(NamedTuple):
     """What to dose into one volume of water, in which portions, and what it brings.
 
     ``litres_total`` leaves ``leave_meq_l`` of alkalinity once the CO2 has gone: only the running sum after retests.
@@ -80,8 +78,7 @@ class AcidSheet:
     cautions: tuple[Caution, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Demand:
+class Demand(NamedTuple):
     """Acid per litre of water [mmol/L]: to leave the buffer, to the target pH closed, to the target pH open to air."""
 
     to_leave: float

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from datetime import timedelta
+from typing import NamedTuple
 
 import numpy as np
 
@@ -27,8 +27,7 @@ HABIT = 2
 _HCO3 = INDEX["HCO3"]
 
 
-@dataclass(frozen=True, slots=True)
-class TankAcid:
+class TankAcid(NamedTuple):
     """The acid sheet of each step of a plan, None where a step needs none, and the sums behind them."""
 
     sheets: tuple[AcidSheet | None, ...]

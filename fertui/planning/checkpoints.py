@@ -7,7 +7,7 @@ that the full model has run, so every limit becomes a row: c(x) = now + slope (x
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -37,8 +37,7 @@ STEP = 0.02
 """Half width of the numerical slopes of EC and saturation [mmol/L]."""
 
 
-@dataclass(frozen=True, slots=True)
-class Checkpoint:
+class Checkpoint(NamedTuple):
     """One point at one time; the share of its violations in the first aim is ``weight``, of its misfit ``aim_weight``.
 
     ``base`` and ``now`` (10,) [mmol/L]: without the plan, and with the plan that was last run. ``slope`` (10,
@@ -76,8 +75,7 @@ def step_most(each: Checkpoint, before: Checkpoint) -> float:
     return max(each.goal.ec_step, float(ec_of(each, each.base) - ec_of(before, before.base)))
 
 
-@dataclass(frozen=True, slots=True)
-class Rows:
+class Rows(NamedTuple):
     """``matrix x <= high`` with what each row limits, its limit in its own unit, and what a unit of it is."""
 
     matrix: Array

@@ -7,7 +7,7 @@ money). Every vector here has ``IONS`` first and ``MICRONUTRIENTS`` after them, 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -29,8 +29,7 @@ TIE = 1e-5
 """Weight of the kilograms once the salts are chosen: it decides between equals alone."""
 
 
-@dataclass(frozen=True, slots=True)
-class Composed:
+class Composed(NamedTuple):
     """Grams of each material per litre, what they bring, and what is then missing (-) or too much (+)."""
 
     grams_per_l: Array

@@ -7,7 +7,7 @@ bands, litres renewed, distance to the aim, number of salts, kilograms or money.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -32,8 +32,7 @@ LATER = 0.02
 """By how much a kilogram counts more with each later step: what can be done now is not put off."""
 
 
-@dataclass(frozen=True, slots=True)
-class Measures:
+class Measures(NamedTuple):
     """The variables of a plan: steps by materials, then the renewal where there is one.
 
     ``most`` (variables,): the physical maximum in units; ``unit`` (variables,): kg or litres of one unit; ``cost``:
@@ -60,8 +59,7 @@ class Measures:
         return -1 in self.material
 
 
-@dataclass(frozen=True, slots=True)
-class Programme:
+class Programme(NamedTuple):
     """Region and costs over x (n), slacks of the bands, under, over and far over the aim, switches of weighings and of
     materials."""
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -22,8 +22,7 @@ NH4_STOP_PH = 5.2
 LIMITED = ("NH4", "Na", "Cl")
 
 
-@dataclass(frozen=True, slots=True)
-class Goal:
+class Goal(NamedTuple):
     """Aim, bands and limits at one point.
 
     ``aim`` (10,) [mmol/L] with NaN where the target names no number; ``share_low`` and ``share_high`` (3,) as
@@ -49,7 +48,7 @@ class Goal:
 
     def scaled(self, factor: float) -> Goal:
         """The same goal with its aim at another strength."""
-        return replace(self, aim=self.aim * factor)
+        return self._replace(aim=self.aim * factor)
 
 
 def goal_of(site: Site, loop: Loop, point: str, target: str | None) -> Goal:
@@ -59,8 +58,8 @@ def goal_of(site: Site, loop: Loop, point: str, target: str | None) -> Goal:
     """
     aim = _aim(target_of(site, loop, target), point)
     if target is not None and target != (loop.target or loop.crop):
-        free = replace(loop, target=target, bands={})
-        bands = {**bands_of(site, loop, point), **_shares_and_ec(bands_of(replace(site, bands={}), free, point))}
+        free = loop._replace(target=target, bands={})
+        bands = {**bands_of(site, loop, point), **_shares_and_ec(bands_of(site._replace(bands={}), free, point))}
     else:
         bands = bands_of(site, loop, point)
     limits = limits_of(site, loop, point)

@@ -8,7 +8,7 @@ agree.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -47,8 +47,7 @@ LEAST_ROOM = 0.2
 """Room up to the EC ceiling that the physical maximum always counts with [mS/cm]."""
 
 
-@dataclass(frozen=True, slots=True)
-class Task:
+class Task(NamedTuple):
     """What a dosing plan has to do with: the loop, its goals by point, materials, days of the steps, the refill."""
 
     situation: Situation
@@ -68,8 +67,7 @@ class Task:
         return self.goals[self.situation.managed]
 
 
-@dataclass(frozen=True, slots=True)
-class Dosed:
+class Dosed(NamedTuple):
     """A weighable plan: units of each measure, what the model makes of it, and what it leaves undone.
 
     ``missed_pct``: points of share outside the bands at the horizon. ``broken``: limits the model finds passed (none
@@ -160,7 +158,7 @@ def dose(task: Task, runs: Runs, solver: Solver, without: Course) -> Dosed:
     look shows that salts cannot do it, the plan is made anew with a renewal among its measures. At most six solver
     calls.
     """
-    task = replace(task, materials=usable(task))
+    task = task._replace(materials=usable(task))
     lowest = float(ec_of(_probe(task), without.ions[task.tank][:, 0]).min())
     measures = measures_of(task, False, lowest)
     x0 = np.zeros(len(measures.unit))
@@ -215,7 +213,7 @@ def _checkpoints(task: Task, doing: Doing, course: Course, without: Course, move
         last = task.horizon == 0
         point = _checkpoint(task, f"tank after the dose of day {day}", task.tank, day, base, after, move)
         step = -1 if last else len(found) - 1
-        found.append(replace(point, before=step, weight=float(last), aim_weight=float(last)))
+        found.append(point._replace(before=step, weight=float(last), aim_weight=float(last)))
     return (*found, *_daily(task, course, without, move, len(found)))
 
 
@@ -234,7 +232,7 @@ def _daily(task: Task, course: Course, without: Course, move: Array, first: int)
                 task, f"{name} on day {day}", name, day, without.ions[name][day, 0], course.ions[name][day], move
             )
             yesterday = first + len(found) - 2 if rooted and steered and day else -1
-            found.append(replace(point, weight=weight, aim_weight=float(steered and last), before=yesterday))
+            found.append(point._replace(weight=weight, aim_weight=float(steered and last), before=yesterday))
     return found
 
 
@@ -242,7 +240,7 @@ def _checkpoint(task: Task, name: str, point: str, day: float, base: Array, memb
     slope = ((members[1:] - members[0]) / move[: len(members) - 1, None]).T
     goal = task.goals[point]
     if "before" in name:
-        goal = replace(goal, ec_most=np.inf, most=np.full(len(IONS), np.inf))
+        goal = goal._replace(ec_most=np.inf, most=np.full(len(IONS), np.inf))
     ph, factor = task.situation.ph(point), ec_factor(task.situation, point)
     return Checkpoint(name, point, day, goal, base, members[0], slope, ph, ec_factor=factor)
 

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import replace
 from datetime import timedelta
 
 import numpy as np
@@ -59,18 +58,18 @@ def hand_plan(request: Request) -> Plan:
     empty = request.empty(Outlook(request.runs.shown(Doing())))
     why = vague(request)
     if why is not None:
-        return request.counted(replace(empty, feasible=False, reason=why, sample_first=True))
+        return request.counted(empty._replace(feasible=False, reason=why, sample_first=True))
     course = request.runs.settled(Doing(), 1)
     request = request.strengthened(course.ions[request.situation.managed][-1, 0])
     drained = _drained(request, course)
     if drained is not None:
         hold = holding_words(request, usable(_task(request, (0,), TankAcid((None,)))), course)
-        return request.counted(replace(empty, feasible=False, reason=drained, notices=hold))
+        return request.counted(empty._replace(feasible=False, reason=drained, notices=hold))
     days = _days(request)
     acid = tank_acid(request, days, course)
     if not request.managed.named and acid.first is None and request.in_order(empty.after_without):
         words = "nothing to weigh: the shares stay in their bands and no limit is passed up to the horizon"
-        return request.counted(replace(empty, notices=(words, *acid.notices)))
+        return request.counted(empty._replace(notices=(words, *acid.notices)))
     task = _task(request, days, acid)
     dosed = dose(task, request.runs, request.solver, course)
     return _shown(request, task, dosed, empty, acid)
@@ -118,14 +117,13 @@ def refill_of(request: Request) -> Array:
 
 
 def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, acid: TankAcid) -> Plan:
-    task = replace(task, materials=usable(task))
+    task = task._replace(materials=usable(task))
     steps = _steps(task, dosed)
     by_name = {each.name: each for each in task.materials}
     used = [by_name[name] for name in dict.fromkeys(step.salt for step in steps)]
     feasible, why = _verdict(request, dosed)
     poured = [] if acid.first is None else [acid_on_shelf(request.situation.site)]
-    found = replace(
-        empty,
+    found = empty._replace(
         feasible=feasible,
         reason=why,
         steps=steps,

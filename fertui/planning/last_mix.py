@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.planning.shelf import PlanningError
 from fertui.site.model import StockTank
 
 
-@dataclass(frozen=True, slots=True)
-class LastMix:
+class LastMix(NamedTuple):
     """One stock tank until the end: litres it will still give, litres in it, litres to mix, and that in words."""
 
     tank: str

@@ -13,6 +13,7 @@ import sys
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -25,8 +26,7 @@ NODES = 20_000
 """Branch-and-bound nodes after which the best found stands: a bound by count gives the same answer on every machine."""
 
 
-@dataclass(frozen=True, slots=True)
-class Region:
+class Region(NamedTuple):
     """What is allowed: ``low <= matrix x <= high`` row by row and ``least <= x <= most``; ``whole`` marks whole
     numbers.
 
@@ -66,8 +66,7 @@ class Region:
         return Region(self.matrix, self.low, self.high, least, most, self.whole)
 
 
-@dataclass(frozen=True, slots=True)
-class Aim:
+class Aim(NamedTuple):
     """Something to make small: ``cost`` per variable, scaled to order 1, and how much of it later aims may give
     away."""
 

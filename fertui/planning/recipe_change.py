@@ -7,7 +7,7 @@ it is: what one ion gains the others give.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -34,8 +34,7 @@ LEAST_GRAMS = 1e-4
 """A salt of less [g/L] is not in a recipe."""
 
 
-@dataclass(frozen=True, slots=True)
-class Recipe:
+class Recipe(NamedTuple):
     """Recipes by stage (stages, 10) [mmol/L], and what the model makes of them."""
 
     stages: Array
@@ -47,8 +46,7 @@ class Recipe:
     runner_up: RunnerUpRecipe | None
 
 
-@dataclass(frozen=True, slots=True)
-class RunnerUpRecipe:
+class RunnerUpRecipe(NamedTuple):
     """The next best recipes (stages, 10) [mmol/L], without one salt, and the managed point at the horizon (10,)."""
 
     without: str
@@ -75,7 +73,7 @@ def change(task: RecipeTask, runs: Runs, solver: Solver, without: Course) -> Rec
     Two looks, each about a run of the model, then the next best without one salt. Three solver calls and three model
     runs.
     """
-    task = replace(task, materials=usable_in_stock(task))
+    task = task._replace(materials=usable_in_stock(task))
     stages = np.tile(task.running, (len(task.days), 1))
     checkpoints = _about(task, stages, runs, without)
     found = solved(task, checkpoints, stages, solver)
@@ -87,7 +85,7 @@ def change(task: RecipeTask, runs: Runs, solver: Solver, without: Course) -> Rec
     other = None
     if left_out is not None:
         fewer = tuple(each for each in task.materials if each is not left_out)
-        other = solved(replace(task, materials=fewer), checkpoints, found.stages, solver)
+        other = solved(task._replace(materials=fewer), checkpoints, found.stages, solver)
     second = None if other is None or left_out is None else (left_out.name, other.stages)
     return _verified(task, best.stages, second, runs, without)
 
@@ -165,7 +163,7 @@ def _feed_checkpoint(task: RecipeTask, stage: int, recipe: Array) -> Checkpoint:
     for column, i in enumerate(MOVED):
         slope[i, stage * len(MOVED) + column] = 1.0
     most = np.where(np.isin(IONS, ("Na", "Cl")), np.inf, task.goals["feed"].most)
-    goal = replace(task.goals["feed"], aim=task.running, ec_most=np.inf, most=most)
+    goal = task.goals["feed"]._replace(aim=task.running, ec_most=np.inf, most=most)
     return Checkpoint(
         f"feed of stage {stage + 1}", "feed", task.days[stage], goal, task.running, recipe, slope,
         task.situation.ph("feed"), aim_weight=STAY,

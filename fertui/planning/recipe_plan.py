@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from datetime import timedelta
 
 import numpy as np
@@ -43,17 +42,17 @@ def recipe_plan(request: Request, estimate: Estimate) -> Plan:
     empty = request.empty(Outlook(request.runs.shown(Doing())))
     why = vague(request)
     if why is not None:
-        return request.counted(replace(empty, feasible=False, reason=why, sample_first=True))
+        return request.counted(empty._replace(feasible=False, reason=why, sample_first=True))
     course = request.runs.settled(Doing(), 1)
     request = request.strengthened(course.ions[request.situation.managed][-1, 0])
     if not request.managed.named and request.in_order(empty.after_without):
         words = "no change: the shares stay in their bands and no limit is passed up to the horizon"
-        return request.counted(replace(empty, notices=(words,)))
+        return request.counted(empty._replace(notices=(words,)))
     task = _task(request, estimate)
     recipe = change(task, request.runs, request.solver, course)
     if recipe is None:
         reason = "no mix of these salts keeps EC, NH4 and solubility within their limits"
-        return request.counted(replace(empty, feasible=False, reason=reason))
+        return request.counted(empty._replace(feasible=False, reason=reason))
     return _shown(request, task, recipe, empty)
 
 
@@ -116,8 +115,7 @@ def _shown(request: Request, task: RecipeTask, recipe: Recipe, empty: Plan) -> P
     feasible, why, notice = _verdict(request, task, recipe)
     doing = feeds(task, recipe.stages[None]).alone()
     used = _used(request, sheet)
-    found = replace(
-        empty,
+    found = empty._replace(
         feasible=feasible,
         reason=why,
         recipe=RecipeChange(

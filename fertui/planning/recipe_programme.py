@@ -6,7 +6,7 @@ Every row about ions of the feed is written in the ions and carried over to the 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -31,8 +31,7 @@ Block = tuple[Array, Array, Array]
 """Rows over all variables, their low and high."""
 
 
-@dataclass(frozen=True, slots=True)
-class Places:
+class Places(NamedTuple):
     """Where the variables stand: salts, slacks of the bands, under, over and far over the aim, moved, beyond the rule.
 
     ``content`` (ions of all stages, salts); ``own`` (ions of all stages,) [mmol/L].
@@ -68,8 +67,7 @@ class Places:
         return wide, np.full(len(ions), -np.inf) if low is None else low - shift, high - shift
 
 
-@dataclass(frozen=True, slots=True)
-class Solved:
+class Solved(NamedTuple):
     """Recipes (stages, 10) [mmol/L] and the salts of the first stage, in the order of the materials [g/L]."""
 
     stages: Array

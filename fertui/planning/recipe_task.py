@@ -4,7 +4,7 @@ brings."""
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.chemistry.ions import IONS, Array
 from fertui.planning.goal import Goal
@@ -15,8 +15,7 @@ MOVED = tuple(i for i, ion in enumerate(IONS) if ion != "HCO3")
 """Ions of the feed that a recipe moves; its alkalinity belongs to the water and the acid."""
 
 
-@dataclass(frozen=True, slots=True)
-class RecipeTask:
+class RecipeTask(NamedTuple):
     """The loop, the goals by point, the stock's salts, the running recipe and what the water brings of it (10,)."""
 
     situation: Situation

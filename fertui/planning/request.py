@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
 from datetime import timedelta
 from math import erf, sqrt
+from typing import NamedTuple
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -34,8 +34,7 @@ STEPS_BY_DEFAULT = 4
 MOST_STEPS = 4
 
 
-@dataclass(frozen=True, slots=True)
-class Wishes:
+class Wishes(NamedTuple):
     """What the grower asked for: horizon [d], target by name, supplies to use only, to leave out, steps, number of
     salts."""
 
@@ -57,8 +56,7 @@ class Wishes:
         return self
 
 
-@dataclass(frozen=True, slots=True)
-class Request:
+class Request(NamedTuple):
     """One question to planning and the means to answer it."""
 
     situation: Situation
@@ -79,7 +77,7 @@ class Request:
 
     def counted(self, found: Plan) -> Plan:
         """A plan with what it cost."""
-        return replace(found, model_runs=self.runs.count, solver_calls=self.solver.calls)
+        return found._replace(model_runs=self.runs.count, solver_calls=self.solver.calls)
 
     def empty(self, without: Outlook) -> Plan:
         """A plan that does nothing, with what then comes."""
@@ -111,7 +109,7 @@ class Request:
             return self
         point = self.situation.managed
         factor = float(np.clip(held / made, *STRENGTH))
-        return replace(self, goals={**self.goals, point: self.goals[point].scaled(factor)})
+        return self._replace(goals={**self.goals, point: self.goals[point].scaled(factor)})
 
 
 def _ec_of_aim(goal: Goal) -> float:

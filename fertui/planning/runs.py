@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import datetime, timedelta
-from typing import TYPE_CHECKING, Protocol
+from typing import TYPE_CHECKING, NamedTuple, Protocol
 
 import numpy as np
 
@@ -23,16 +23,14 @@ JUST_AFTER = timedelta(minutes=1)
 """A dose is given just after a full day from now, so that the day's composition is the one before it."""
 
 
-@dataclass(frozen=True, slots=True)
-class Addition:
+class Addition(NamedTuple):
     """What goes into the dosed tank on one day [mmol], shape (10,) or (members, 10)."""
 
     day: float
     mmol: Array
 
 
-@dataclass(frozen=True, slots=True)
-class Exchange:
+class Exchange(NamedTuple):
     """Litres let go and refilled on one day, a number or (members,), with what the refill carries (10,) [mmol/L]."""
 
     day: float
@@ -40,16 +38,14 @@ class Exchange:
     refill: Array
 
 
-@dataclass(frozen=True, slots=True)
-class Feed:
+class Feed(NamedTuple):
     """The feed from one day on: ions (10,) or (members, 10) [mmol/L]."""
 
     day: float
     ions: Array
 
 
-@dataclass(frozen=True, slots=True)
-class Doing:
+class Doing(NamedTuple):
     """What a plan does: additions to the tank, renewals, feeds."""
 
     additions: tuple[Addition, ...] = ()
@@ -65,8 +61,7 @@ class Doing:
         )
 
 
-@dataclass(frozen=True, slots=True)
-class Course:
+class Course(NamedTuple):
     """Compositions by point, (days + 1, members, 10) [mmol/L], and litres by point (days + 1, members); day 0 is
     now."""
 
@@ -91,8 +86,7 @@ class Runs(Protocol):
         ...
 
 
-@dataclass(frozen=True, slots=True)
-class Situation:
+class Situation(NamedTuple):
     """A loop now: its points, mean compositions [mmol/L] and litres; ``managed`` is the point it is steered by."""
 
     site: Site
@@ -104,7 +98,7 @@ class Situation:
     crop_water_l_per_m2_d: float = 0.0
     analysis_days_old: float | None = None
     """Age of the last analysis of the managed point; None where there is none."""
-    usual_acid_mmol_d: Array = field(default_factory=lambda: np.zeros(len(IONS)))
+    usual_acid_mmol_d: Array = np.zeros(len(IONS))
     """What acid dosed by habit brings a day [mmol], shape (10,); every run of the model counts it as going on."""
 
     def composition(self, point: str) -> Array:

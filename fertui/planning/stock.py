@@ -7,7 +7,7 @@ amounts then really deliver at the dripper.
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -40,8 +40,7 @@ ASSUMED_TANKS = (StockTank("calcium", 1000.0), StockTank("sulfate and phosphate"
 ASSUMED_WORDS = "no stock tanks in site.toml: two of 1000 L at 100 times are assumed; add [[stock_tanks]]"
 
 
-@dataclass(frozen=True, slots=True)
-class TankSheet:
+class TankSheet(NamedTuple):
     """One stock tank: its lines in the order of dissolving, whether it all dissolves, how it is injected."""
 
     name: str
@@ -56,8 +55,7 @@ class TankSheet:
     notices: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class StockSheet:
+class StockSheet(NamedTuple):
     """What to weigh for each tank and what then comes out of the dripper; refused pairs make it not feasible."""
 
     feasible: bool
@@ -114,7 +112,7 @@ def stock_sheet(
         sheets.append(sheet)
         refused += bad
     if not loop.stock_tanks:
-        needed = replace(needed, notices=(*needed.notices, ASSUMED_WORDS))
+        needed = needed._replace(notices=(*needed.notices, ASSUMED_WORDS))
     return _sheet(tuple(sheets), tuple(refused), needed, composed, placed, solver)
 
 

@@ -4,7 +4,7 @@ then miss."""
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -19,8 +19,7 @@ MISSED = 0.05
 """Misfit of one ion, in parts of what is asked, from which the sheet speaks of it."""
 
 
-@dataclass(frozen=True, slots=True)
-class Needed:
+class Needed(NamedTuple):
     """What salts must bring (17,), what comes without them, and the fixed kg/m3 of acid and silicate."""
 
     asked: Array
@@ -62,7 +61,7 @@ def needed_of(
         notices.append(MEASURE_IT)
     elif acid is not None and alkalinity is not None:
         brought = sum(kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items())
-        fixed |= _fixed_acid(material(acid), replace(water, ions={**water.ions, "HCO3": alkalinity + brought}), leave)
+        fixed |= _fixed_acid(material(acid), water._replace(ions={**water.ions, "HCO3": alkalinity + brought}), leave)
     left = own[INDEX["HCO3"]] + sum(
         kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items()
     )

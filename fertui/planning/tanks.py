@@ -7,7 +7,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -43,8 +43,7 @@ WORDS = {
 }  # fmt: skip
 
 
-@dataclass(frozen=True, slots=True)
-class Refused:
+class Refused(NamedTuple):
     """Two things that must not share a tank, and why."""
 
     pair: tuple[str, str]
@@ -53,8 +52,7 @@ class Refused:
     solid_kg: float | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Fullest:
+class Fullest(NamedTuple):
     """The solid nearest to crystallising: its concentration product over that of its saturated solution, per ion."""
 
     salt: str

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
 from datetime import datetime
+from typing import NamedTuple
 
 from fertui.catalogue.cautions import Caution
 from fertui.estimate.points import PointState
@@ -12,8 +12,7 @@ from fertui.planning.acid import AcidSheet
 from fertui.planning.stock import StockSheet
 
 
-@dataclass(frozen=True, slots=True)
-class Step:
+class Step(NamedTuple):
     """One weighing of a plan: ``kg`` of a salt into ``target`` ("tank:NAME"); ``adds_mmol`` is what it brings
     [mmol]."""
 
@@ -25,8 +24,7 @@ class Step:
     adds_mmol: Mapping[str, float]
 
 
-@dataclass(frozen=True, slots=True)
-class AcidStep:
+class AcidStep(NamedTuple):
     """One split of acid [L] with its wait [min], the pH to retest for and the pH at which everything stops."""
 
     at: datetime
@@ -40,8 +38,7 @@ class AcidStep:
     stop_ph: float
 
 
-@dataclass(frozen=True, slots=True)
-class RecipeStage:
+class RecipeStage(NamedTuple):
     """A recipe of the coming feed [mmol/L], from ``at`` until the next stage."""
 
     at: datetime
@@ -49,8 +46,7 @@ class RecipeStage:
     ec: float
 
 
-@dataclass(frozen=True, slots=True)
-class RecipeChange:
+class RecipeChange(NamedTuple):
     """The next recipe, how far it departs from the running one [%], its stages and the stock tanks that carry it."""
 
     ions_mmol_l: Mapping[str, float]
@@ -60,8 +56,7 @@ class RecipeChange:
     sheet: StockSheet | None
 
 
-@dataclass(frozen=True, slots=True)
-class RenewalOption:
+class RenewalOption(NamedTuple):
     """One way to renew: litres let go, kg N and P lost with them, what the year comes to [kg/ha], whether it reaches
     the band."""
 
@@ -76,8 +71,7 @@ class RenewalOption:
     text: str
 
 
-@dataclass(frozen=True, slots=True)
-class Renewal:
+class Renewal(NamedTuple):
     """The smallest bleed-and-refill that brings the point back, beside the other options; ``excess`` [mmol/L] over
     target."""
 
@@ -90,8 +84,7 @@ class Renewal:
     options: tuple[RenewalOption, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Binding:
+class Binding(NamedTuple):
     """A limit that decides: its value, how far the plan comes, and the room left, all in ``unit``."""
 
     limit: str
@@ -101,8 +94,7 @@ class Binding:
     source: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class WhatIf:
+class WhatIf(NamedTuple):
     """A plan carried out otherwise (half done, a day late, 10 % off): the managed point at the horizon."""
 
     case: str
@@ -111,23 +103,20 @@ class WhatIf:
     text: str
 
 
-@dataclass(frozen=True, slots=True)
-class RunnerUp:
+class RunnerUp(NamedTuple):
     """The next best plan with another set of salts, and what it costs."""
 
     steps: tuple[Step, ...]
     difference: str
 
 
-@dataclass(frozen=True, slots=True)
-class Outlook:
+class Outlook(NamedTuple):
     """The points of the loop at one time."""
 
     points: Mapping[str, PointState]
 
 
-@dataclass(frozen=True, slots=True)
-class Plan:
+class Plan(NamedTuple):
     """What to do, why, what comes of it.
 
     ``model_runs`` and ``solver_calls`` count what the plan cost. ``reasons`` say why this salt and not that one,
@@ -158,6 +147,6 @@ class Plan:
     runner_up: RunnerUp | None = None
     sensitivity: tuple[WhatIf, ...] = ()
     sample_first: bool = False
-    notices: tuple[str, ...] = field(default_factory=tuple)
+    notices: tuple[str, ...] = ()
     model_runs: int = 0
     solver_calls: int = 0

@@ -5,7 +5,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.planning.shelf import Material
 from fertui.site.model import Site
@@ -19,8 +19,7 @@ LITRE_STEP = 0.01
 """Liquids are measured to 10 mL (common practice)."""
 
 
-@dataclass(frozen=True, slots=True)
-class Scale:
+class Scale(NamedTuple):
     """A scale of the site: its step and the most it carries [kg]."""
 
     name: str
@@ -28,8 +27,7 @@ class Scale:
     capacity_kg: float = math.inf
 
 
-@dataclass(frozen=True, slots=True)
-class PreSolution:
+class PreSolution(NamedTuple):
     """Weigh ``weigh_kg`` into ``water_l`` of solution, use ``use_l`` of it for one tank; keeps for ``batches``
     tanks."""
 
@@ -39,8 +37,7 @@ class PreSolution:
     batches: int
 
 
-@dataclass(frozen=True, slots=True)
-class Weighing:
+class Weighing(NamedTuple):
     """One line of a sheet: what goes in, rounded to what the site can measure. ``kg`` is what then really goes in.
 
     ``strength_pct``: mass % of an acid or lye, None for salts.

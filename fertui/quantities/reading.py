@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.quantities import units
 from fertui.quantities.concentration import factor
@@ -11,8 +11,7 @@ from fertui.quantities.numbers import split
 from fertui.quantities.refusal import QuantityError
 
 
-@dataclass(frozen=True, slots=True)
-class Quantity:
+class Quantity(NamedTuple):
     """One value read: canonical name and number; text, unit and species as written; ``below``: written with '<'."""
 
     name: str

@@ -5,8 +5,7 @@ from __future__ import annotations
 import tomllib
 from collections.abc import Iterator
 from copy import deepcopy
-from dataclasses import dataclass
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.site.checks import SiteError, nearest, shortened
 from fertui.site.model import Site
@@ -18,8 +17,7 @@ SOURCED = ("bands", "limits")
 """Tables whose every entry names its source."""
 
 
-@dataclass(frozen=True, slots=True)
-class Row:
+class Row(NamedTuple):
     """A value of site.toml: its dotted name, its text as TOML would have it, and where it comes from ("": not said)."""
 
     key: str

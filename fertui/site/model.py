@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from typing import NamedTuple
 
 LAYOUTS = ("shared-tank", "drain-blend", "known-feed")
 POINTS = ("source", "feed", "tank", "root_zone", "drain", "drain_store")
@@ -11,8 +11,7 @@ POINTS = ("source", "feed", "tank", "root_zone", "drain", "drain_store")
 Band = tuple[float | None, float | None]
 
 
-@dataclass(frozen=True, slots=True)
-class Sourced:
+class Sourced(NamedTuple):
     """A band or limit with where it comes from ("own trial", "permit", "unverified preset")."""
 
     low: float | None
@@ -20,54 +19,49 @@ class Sourced:
     source: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Composition:
+class Composition(NamedTuple):
     """Ions [mmol/L], micronutrients [umol/L], EC [mS/cm at 25 C] and pH of a water, recipe or target; None: unknown."""
 
-    ions: Mapping[str, float] = field(default_factory=dict)
-    micronutrients: Mapping[str, float] = field(default_factory=dict)
+    ions: Mapping[str, float] = {}
+    micronutrients: Mapping[str, float] = {}
     ec: float | None = None
     ph: float | None = None
     source: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Water:
+class Water(NamedTuple):
     """A source water by name, with its analysis (HCO3 [meq/L] stands for alkalinity; absent means unknown)."""
 
     name: str
     composition: Composition
 
 
-@dataclass(frozen=True, slots=True)
-class Supply:
+class Supply(NamedTuple):
     """A salt, acid or lye on the shelf. ``kind`` is the catalogue name; a label analysis overrides the formula."""
 
     name: str
     kind: str
     strength_pct: float | None = None
     density_kg_per_l: float | None = None
-    label_pct: Mapping[str, float] = field(default_factory=dict)
+    label_pct: Mapping[str, float] = {}
     amount_kg: float | None = None
     price_per_kg: float | None = None
     bag_kg: float | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class StockTank:
+class StockTank(NamedTuple):
     """A stock tank named by content; ``letter`` is what the site paints on it; ``dilution`` is 100 for a 100x stock."""
 
     name: str
     litres: float
     dilution: float = 100.0
     letter: str = ""
-    salts_kg: Mapping[str, float] = field(default_factory=dict)
+    salts_kg: Mapping[str, float] = {}
     storage_temperature_c: float = 10.0
     source: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Loop:
+class Loop(NamedTuple):
     """One recirculating circuit with one root zone; ``sources`` says where a number of it comes from, by field name."""
 
     name: str
@@ -91,14 +85,13 @@ class Loop:
     premix_ec: float | None = None
     drain_fraction: float = 0.3
     crop_water_l_per_m2_d: float | None = None
-    extract_factors: Mapping[str, float] = field(default_factory=dict)
-    bands: Mapping[str, Mapping[str, Sourced]] = field(default_factory=dict)
-    limits: Mapping[str, Mapping[str, Sourced]] = field(default_factory=dict)
-    sources: Mapping[str, str] = field(default_factory=dict)
+    extract_factors: Mapping[str, float] = {}
+    bands: Mapping[str, Mapping[str, Sourced]] = {}
+    limits: Mapping[str, Mapping[str, Sourced]] = {}
+    sources: Mapping[str, str] = {}
 
 
-@dataclass(frozen=True, slots=True)
-class Instrument:
+class Instrument(NamedTuple):
     """A meter or scale of the site; ``compensated``: whether an EC meter already reads at 25 C (None: not asked)."""
 
     name: str
@@ -109,8 +102,7 @@ class Instrument:
     digits: int | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Site:
+class Site(NamedTuple):
     """Everything ``site.toml`` says, checked."""
 
     name: str
@@ -120,9 +112,9 @@ class Site:
     waters: tuple[Water, ...] = ()
     supplies: tuple[Supply, ...] = ()
     stock_tanks: tuple[StockTank, ...] = ()
-    targets: Mapping[str, Mapping[str, Composition]] = field(default_factory=dict)
-    bands: Mapping[str, Mapping[str, Sourced]] = field(default_factory=dict)
-    limits: Mapping[str, Mapping[str, Sourced]] = field(default_factory=dict)
+    targets: Mapping[str, Mapping[str, Composition]] = {}
+    bands: Mapping[str, Mapping[str, Sourced]] = {}
+    limits: Mapping[str, Mapping[str, Sourced]] = {}
     scale_step_kg: float = 0.05
     instruments: tuple[Instrument, ...] = ()
     budget_n_kg_per_ha: float | None = None

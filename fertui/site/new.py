@@ -5,7 +5,6 @@ from __future__ import annotations
 import os
 import re
 from collections.abc import Sequence
-from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 
@@ -159,29 +158,28 @@ def first_steps(site: Site) -> tuple[str, ...]:
 def _with_defaults(site: Site) -> Site:
     """The site with what its grower did not say filled in, each default with its source."""
     tanks = _stock_tanks(site.loops[0])
-    site = replace(site, stock_tanks=tanks)
-    loop = replace(site.loops[0], water=site.waters[0].name, stock_tanks=tuple(each.name for each in tanks))
+    site = site._replace(stock_tanks=tanks)
+    loop = site.loops[0]._replace(water=site.waters[0].name, stock_tanks=tuple(each.name for each in tanks))
     loop = _with_volumes(loop)
     loop = _with_routine(site, loop)
     points = _own_points(loop)
-    loop = replace(
-        loop,
+    loop = loop._replace(
         bands={point: bands_of(site, loop, point) for point in points},
         limits={point: limits_of(site, loop, point) for point in points},
     )
-    return replace(site, loops=(loop,))
+    return site._replace(loops=(loop,))
 
 
 def _with_volumes(loop: Loop) -> Loop:
     sources = dict(loop.sources)
     if loop.root_zone_water_l_per_m2 is None:
         litres, why = root_zone_water(loop)
-        loop = replace(loop, root_zone_water_l_per_m2=round(litres, 2))
+        loop = loop._replace(root_zone_water_l_per_m2=round(litres, 2))
         sources["root_zone_water_l_per_m2"] = why
     if loop.layout == "drain-blend" and loop.drain_store_l is None:
-        loop = replace(loop, drain_store_l=round(DRAIN_STORE_L_PER_M2 * loop.area_m2, 1))
+        loop = loop._replace(drain_store_l=round(DRAIN_STORE_L_PER_M2 * loop.area_m2, 1))
         sources["drain_store_l"] = "unverified preset: 20-30 m3 per ha (storage table of Flanders, 10 Oct 2008)"
-    return replace(loop, sources=sources)
+    return loop._replace(sources=sources)
 
 
 def _with_routine(site: Site, loop: Loop) -> Loop:
@@ -192,7 +190,7 @@ def _with_routine(site: Site, loop: Loop) -> Loop:
     sources = {**loop.sources, "feed_EC": aim.source, "crop_water_l_per_m2_d": water.source.shown}
     if loop.layout != "shared-tank":
         sources["drain_fraction"] = "the classic checkpoint of slabs, 30 % (Greenhouse Canada, rootzone series 2013)"
-    return replace(loop, feed_ec=aim.ec, feed_ph=aim.ph, crop_water_l_per_m2_d=water.value, sources=sources)
+    return loop._replace(feed_ec=aim.ec, feed_ph=aim.ph, crop_water_l_per_m2_d=water.value, sources=sources)
 
 
 def _own_points(loop: Loop) -> tuple[str, ...]:

@@ -4,10 +4,9 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 from functools import partial
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.catalogue.crops import crop, crops
 from fertui.catalogue.crops import targets as published_targets
@@ -24,8 +23,7 @@ BETWEEN_SUPPLIES = re.compile(r",(?!\d+\s*%)")
 """A comma, unless it is the decimal comma of a strength: nitric acid 59,5 %."""
 
 
-@dataclass(frozen=True, slots=True)
-class Preset:
+class Preset(NamedTuple):
     """An answer on offer, what it means, and where its number comes from ("" where there is none)."""
 
     value: str
@@ -33,8 +31,7 @@ class Preset:
     source: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Question:
+class Question(NamedTuple):
     """One question. ``option`` is its name on the command line, ``key`` the argument of ``new_site``.
 
     ``default`` is what an empty answer means ("" for none); ``may_skip`` whether "I do not know" is an answer, and

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass, field
 from datetime import datetime, timedelta
+from typing import NamedTuple
 
 from fertui.tui.figures import digits_for, number
 from fertui.tui.ink import Line, Span, fit, line
@@ -18,8 +18,7 @@ MARK_LETTERS = {
 """Letters of what was done, under the chart: L is a bleed (let go), H is acid."""
 
 
-@dataclass(frozen=True, slots=True)
-class Curve:
+class Curve(NamedTuple):
     """What a chart draws: days with value, low and high; what was measured; a band; letters at times."""
 
     unit: str
@@ -31,7 +30,7 @@ class Curve:
     other: tuple[float, ...] = ()
     start: datetime | None = None
     end: datetime | None = None
-    now: datetime | None = field(default=None)
+    now: datetime | None = None
 
     @property
     def span(self) -> tuple[datetime, datetime]:

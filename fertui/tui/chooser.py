@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
-from typing import Any, ClassVar
+from typing import Any, ClassVar, NamedTuple
 
 from textual import events
 from textual.binding import Binding
@@ -14,8 +13,7 @@ from fertui.tui.snapshot import Snapshot
 from fertui.tui.view import SCROLLING, View
 
 
-@dataclass(frozen=True, slots=True)
-class Option:
+class Option(NamedTuple):
     """Something to choose: what it is called, what it means, the key that does the same from outside, its value."""
 
     name: str

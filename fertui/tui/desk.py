@@ -5,9 +5,8 @@ from __future__ import annotations
 
 from collections import deque
 from collections.abc import Callable
-from dataclasses import dataclass
 from threading import Condition, Thread
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 from textual.message import Message
 
@@ -17,8 +16,7 @@ if TYPE_CHECKING:
     from fertui.workbench import Bench
 
 
-@dataclass(frozen=True, slots=True)
-class Answer:
+class Answer(NamedTuple):
     """What a call came to: a value, or the sentence that says why there is none (``fault``: an error of the
     program)."""
 
@@ -27,8 +25,7 @@ class Answer:
     fault: BaseException | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Call:
+class Call(NamedTuple):
     """A piece of work on the open site and what to do with its answer back in the app's own thread.
 
     ``holds``: keys wait for it, as its answer decides what they mean.

@@ -8,15 +8,14 @@ from __future__ import annotations
 import json
 import os
 from collections.abc import Mapping
-from dataclasses import dataclass
 from datetime import datetime
 from pathlib import Path
+from typing import NamedTuple
 
 FILE = "drafts.json"
 
 
-@dataclass(frozen=True, slots=True)
-class Draft:
+class Draft(NamedTuple):
     """The texts of a half-filled form, who typed them and when; ``by`` may be '' where nobody has said."""
 
     by: str

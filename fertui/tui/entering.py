@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
 from datetime import UTC, datetime
 from functools import cached_property
 from typing import TYPE_CHECKING
@@ -81,7 +80,7 @@ class Entering(Working):
         if answer.value is None:
             self.say_at_length("Nothing was logged", answer.trouble)
             return
-        entries = answer.value if isinstance(answer.value, tuple) else (answer.value,)
+        entries = (answer.value,) if isinstance(answer.value, Entry) else answer.value
         self.changed(max(entry.number or 0 for entry in entries))
         self.say("logged as " + ", ".join(str(entry.number) for entry in entries), "good")
 
@@ -105,7 +104,7 @@ class Entering(Working):
             except Refusal as no:
                 self.ask(str(no), given)
                 return
-            self.snapshot = replace(self.snapshot, initials=initials)
+            self.snapshot = self.snapshot._replace(initials=initials)
             then(initials)
 
         self.ask("Your initials:", given)

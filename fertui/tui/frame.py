@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from typing import Any, ClassVar
 
 from fertui.refusals import FileTrouble
@@ -45,7 +44,7 @@ class FertuiApp(Papers):
         await self.action_view(7)
         if isinstance(self.page, LogbookView):
             self.page.show_news(tuple(entry.number or 0 for entry in entries))
-        self.snapshot = replace(self.snapshot, looked=self._last_number)
+        self.snapshot = self.snapshot._replace(looked=self._last_number)
 
     def action_loop(self, step: int) -> None:
         """Show another loop."""
@@ -55,7 +54,7 @@ class FertuiApp(Papers):
 
     def choose_loop(self, name: str) -> None:
         """Show a loop by name."""
-        self.snapshot = replace(self.snapshot, loop=name)
+        self.snapshot = self.snapshot._replace(loop=name)
 
     def action_unit(self) -> None:
         """Show amounts in the next unit."""
@@ -65,7 +64,7 @@ class FertuiApp(Papers):
     def action_theme(self) -> None:
         """The next look."""
         self.theme = NAMES[(NAMES.index(self.theme) + 1) % len(NAMES)]
-        self.keep_settings(replace(self.settings, theme=self.theme))
+        self.keep_settings(self.settings._replace(theme=self.theme))
         self.say(f"colours: {self.theme}")
 
     def keep_settings(self, settings: Settings) -> None:

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import unicodedata
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
 from functools import lru_cache
 from textwrap import wrap as wrap_words
+from typing import NamedTuple
 
 INKS = (
     "plain",
@@ -26,8 +26,7 @@ INKS = (
 """Names of the inks; the style sheets give each its colour and weight."""
 
 
-@dataclass(frozen=True, slots=True)
-class Span:
+class Span(NamedTuple):
     """A piece of text in one ink."""
 
     text: str

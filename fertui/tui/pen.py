@@ -5,14 +5,13 @@ The toolkit wraps each piece of text in a full style and a reset. Over a thin li
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
 from functools import lru_cache
+from typing import NamedTuple
 
 _OFF = {"1": "22", "2": "22", "3": "23", "4": "24", "5": "25", "7": "27", "8": "28", "9": "29"}
 
 
-@dataclass(frozen=True, slots=True)
-class Style:
+class Style(NamedTuple):
     """What the terminal was told: attributes that are on, and colours as written in the sequence ('' for its own)."""
 
     on: frozenset[str] = frozenset()
@@ -39,17 +38,17 @@ def styled(style: Style, codes: str) -> Style:
             length = 2 if words[:1] == ["5"] else 4
             colour = ";".join((word, *words[:length]))
             del words[:length]
-            style = replace(style, ink=colour) if word == "38" else replace(style, paper=colour)
+            style = style._replace(ink=colour) if word == "38" else style._replace(paper=colour)
         elif word in _OFF.values():
-            style = replace(style, on=frozenset(code for code in style.on if _OFF[code] != word))
+            style = style._replace(on=frozenset(code for code in style.on if _OFF[code] != word))
         elif word in _OFF:
-            style = replace(style, on=style.on | {word})
+            style = style._replace(on=style.on | {word})
         elif word in ("39", "49"):
-            style = replace(style, ink="") if word == "39" else replace(style, paper="")
+            style = style._replace(ink="") if word == "39" else style._replace(paper="")
         elif word[0] in "39" and word != "3":
-            style = replace(style, ink=word)
+            style = style._replace(ink=word)
         elif word[0] in "41":
-            style = replace(style, paper=word)
+            style = style._replace(paper=word)
     return style
 
 

@@ -9,9 +9,8 @@ import difflib
 import os
 import sys
 from collections.abc import Callable, Iterable, Mapping
-from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.refusals import FileTrouble, Refusal
 from fertui.tui.snapshot import UNITS
@@ -20,8 +19,7 @@ from fertui.tui.themes import NAMES
 FILE = "settings.toml"
 
 
-@dataclass(frozen=True, slots=True)
-class Settings:
+class Settings(NamedTuple):
     """``theme``, ``unit``, ``ascii``: None where the program is to decide by itself. ``keys``: binding id to key."""
 
     theme: str | None = None
@@ -29,7 +27,7 @@ class Settings:
     ascii: bool | None = None
     mouse: bool = False
     initials_minutes: int = 15
-    keys: Mapping[str, str] = field(default_factory=dict)
+    keys: Mapping[str, str] = {}
 
 
 ALLOWED: Mapping[str, tuple[type, tuple[Any, ...]]] = {

@@ -3,16 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field, replace
-from typing import Any
+from typing import Any, NamedTuple
 
 from fertui.tui.desk import Answer
 
 UNITS = ("mmol/L", "meq/L", "mg/L")
 
 
-@dataclass(frozen=True, slots=True)
-class Ask:
+class Ask(NamedTuple):
     """A use case of the workbench with its arguments; what an answer is filed under."""
 
     use_case: str
@@ -20,8 +18,7 @@ class Ask:
     options: tuple[tuple[str, Any], ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
-class Snapshot:
+class Snapshot(NamedTuple):
     """Answers so far, the loop and unit chosen, who is at the keyboard, what is still being worked out.
 
     ``looked``: number of the last entry the person at the keyboard has seen, 0 when not known.
@@ -32,7 +29,7 @@ class Snapshot:
     site: Any = None
     unit: str = "mmol/L"
     initials: str = ""
-    answers: Mapping[Ask, Answer] = field(default_factory=dict)
+    answers: Mapping[Ask, Answer] = {}
     stale: frozenset[Ask] = frozenset()
     waiting: tuple[str, ...] = ()
     looked: int = 0
@@ -58,18 +55,18 @@ class Snapshot:
 
     def with_answer(self, ask: Ask, answer: Answer) -> Snapshot:
         """The snapshot with one more answer."""
-        return replace(self, answers={**self.answers, ask: answer}, stale=self.stale - {ask})
+        return self._replace(answers={**self.answers, ask: answer}, stale=self.stale - {ask})
 
     def outdated(self) -> Snapshot:
         """The snapshot after the logbook changed: answers stay on screen until better ones come."""
-        return replace(self, stale=frozenset(self.answers))
+        return self._replace(stale=frozenset(self.answers))
 
     def next_unit(self) -> Snapshot:
         """The same in the next unit."""
-        return replace(self, unit=UNITS[(UNITS.index(self.unit) + 1) % len(UNITS)])
+        return self._replace(unit=UNITS[(UNITS.index(self.unit) + 1) % len(UNITS)])
 
     def next_loop(self, step: int) -> Snapshot:
         """The same of another loop."""
         if len(self.loops) < 2:
             return self
-        return replace(self, loop=self.loops[(self.loops.index(self.loop) + step) % len(self.loops)])
+        return self._replace(loop=self.loops[(self.loops.index(self.loop) + step) % len(self.loops)])

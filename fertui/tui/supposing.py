@@ -3,15 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 if TYPE_CHECKING:
     from fertui.estimate.forecast import Scenario
 
 
-@dataclass(frozen=True, slots=True)
-class WhatIf:
+class WhatIf(NamedTuple):
     """One thing that can be supposed: its name in a scenario, how it is asked for, its unit."""
 
     name: str

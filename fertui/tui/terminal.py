@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.tui.ink import ascii_only
 
@@ -12,8 +12,7 @@ FLOOR = (60, 20)
 """Columns and rows below which a plain message takes the place of the views."""
 
 
-@dataclass(frozen=True, slots=True)
-class Terminal:
+class Terminal(NamedTuple):
     """What can be shown: ``ascii`` when nothing beyond ASCII, ``colours`` 0, 16 or 256 and more, ``remote`` over
     SSH."""
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.tui.ink import Line, Span, cells, cut, line
 
@@ -10,8 +10,7 @@ LONGEST = 20_000
 """Characters a field takes; a note of ten thousand is more than anyone has typed."""
 
 
-@dataclass(frozen=True, slots=True)
-class Typed:
+class Typed(NamedTuple):
     """A text and the cursor in it, 0 before its first character."""
 
     text: str = ""

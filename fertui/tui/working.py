@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
 from datetime import UTC, datetime
 from functools import partial
 from pathlib import Path
@@ -65,8 +64,8 @@ class Working(Shell):
         site, loops, self._last_number, self._site_stamp = answer.value
         unit = self.settings.unit or site.units
         looked = 0 if self.initials.now else self._last_number  # who is not known has seen nothing and missed nothing
-        self.snapshot = replace(
-            self.snapshot, site=site, loops=loops, loop=loops[0], unit=unit, looked=looked, initials=self.initials.now
+        self.snapshot = self.snapshot._replace(
+            site=site, loops=loops, loop=loops[0], unit=unit, looked=looked, initials=self.initials.now
         )
 
     def say_at_length(self, title: str, sentence: str) -> None:
@@ -104,7 +103,7 @@ class Working(Shell):
     def _answered(self, known: int, ask: Ask, answer: Answer) -> None:
         self._under_way.pop(ask, None)
         fresh = self.snapshot.with_answer(ask, answer)
-        self.snapshot = fresh if known == self._last_number else replace(fresh, stale=fresh.stale | {ask})
+        self.snapshot = fresh if known == self._last_number else fresh._replace(stale=fresh.stale | {ask})
 
     def what_is_going_on(self) -> str:
         """What the desks are at."""
@@ -143,7 +142,7 @@ class Working(Shell):
 
     def _look_for_news(self) -> None:
         if self.initials.now != self.snapshot.initials:
-            self.snapshot = replace(self.snapshot, initials=self.initials.now)
+            self.snapshot = self.snapshot._replace(initials=self.initials.now)
         if self.snapshot.loop:
             self.quietly(lambda bench: (bench.last_number(), bench.site_stamp()), self._news)
 
@@ -172,7 +171,7 @@ class Working(Shell):
         """The site is another now: loops may have come or gone."""
         loops = tuple(loop.name for loop in site.loops)
         loop = self.snapshot.loop if self.snapshot.loop in loops else loops[0]
-        self.snapshot = replace(self.snapshot, site=site, loops=loops, loop=loop)
+        self.snapshot = self.snapshot._replace(site=site, loops=loops, loop=loop)
 
     def changed(self, last_number: int) -> None:
         """The logbook has new entries: what is shown stays until better answers come."""

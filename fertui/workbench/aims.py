@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from fertui.chemistry.names import MICRONUTRIENTS
 from fertui.site.model import Loop, Site, Sourced
@@ -11,8 +11,7 @@ from fertui.site.presets import bands_of, limits_of
 from fertui.workbench.glance import managed_point
 
 
-@dataclass(frozen=True, slots=True)
-class Aim:
+class Aim(NamedTuple):
     """A band or a limit of one quantity at one point, in its unit; None: that side is open."""
 
     point: str

@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 from datetime import datetime
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.chemistry.names import CHARGES, IONS, MICRONUTRIENTS
 from fertui.logbook.entries import Entry
@@ -21,8 +20,7 @@ REFERENCE_EC_BELOW_TARGET = 0.3
 """EC_ref = target EC - 0.3 mS/cm, the Na part of a target EC (Dutch booklet 2016, second-hand)."""
 
 
-@dataclass(frozen=True, slots=True)
-class AnalysisRow:
+class AnalysisRow(NamedTuple):
     """One ion: feed, managed point, previous analysis, normalised value, target, deviation of the normalised [%]."""
 
     ion: str
@@ -36,8 +34,7 @@ class AnalysisRow:
     words: str
 
 
-@dataclass(frozen=True, slots=True)
-class AnalysisView:
+class AnalysisView(NamedTuple):
     """The last analysis of a loop, side by side."""
 
     loop: str

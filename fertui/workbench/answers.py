@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from fertui.workbench.clock import now
-from fertui.workbench.folder import SiteFolder
+from fertui.workbench.folder import RECENT, SiteFolder
 from fertui.workbench.glance import Glance, glance
 
 if TYPE_CHECKING:
@@ -28,6 +28,8 @@ if TYPE_CHECKING:
 
 
 HORIZON_DAYS = 14
+GLANCED = timedelta(days=60)
+"""So far back every entry is looked at for last numbers."""
 A_CUBIC_METRE = 1000.0
 
 
@@ -42,8 +44,10 @@ class Answers(SiteFolder):
     def glance(self, loop: str | None = None, at: datetime | None = None) -> Glance:
         """Last known numbers of a loop, without running the model."""
         chosen, at = self.loop(loop), at or now()
-        recent = self.book.entries(loop=chosen.name, since=at - timedelta(days=60), at=at)
-        return glance(chosen, recent, at)
+        since = at - GLANCED
+        recent = self.book.entries(loop=chosen.name, since=since, at=at)
+        old = (entry for entry in self._in_force(recent, since) if entry.loop == chosen.name)
+        return glance(chosen, (*old, *recent), at)
 
     def estimate(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> Estimate:
         """Where the loop is; kept until the logbook or the minute changes."""
@@ -81,7 +85,11 @@ class Answers(SiteFolder):
         from fertui.workbench.analysis import analysis
 
         chosen, at = self.loop(loop), at or now()
-        return analysis(self.site, chosen, self.entries(at, known), at)
+        entries = self.entries(at, known)
+        last = max((each.at for each in entries if each.loop == chosen.name and each.kind == "analysis"), default=at)
+        if last < at - RECENT:  # the one before it is older still
+            entries = self.entries(last, known)
+        return analysis(self.site, chosen, entries, at)
 
     def drift(
         self, loop: str | None = None, days: int = 28, at: datetime | None = None, known: datetime | None = None

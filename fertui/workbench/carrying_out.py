@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass, replace
 from datetime import datetime
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.logbook.entries import Entry
 from fertui.refusals import Refusal
@@ -17,8 +16,7 @@ if TYPE_CHECKING:
 Fields = dict[str, str]
 
 
-@dataclass(frozen=True, slots=True)
-class PlanItem:
+class PlanItem(NamedTuple):
     """One intended step: what, how much, into what; ``done_number`` is the last entry that carried it out.
 
     ``done_amount``: how much was really weighed, poured or let go so far; None where nothing was.
@@ -192,7 +190,7 @@ def running_recipe(site: Site, loop: Loop, entries: Sequence[Entry]) -> Composit
     logged = [entry for entry in entries if entry.kind == "recipe" and entry.loop == loop.name]
     if not logged:
         feed = target_of(site, loop)["feed"]
-        return replace(feed, source=f"the feed of target {loop.target or loop.crop} ({feed.source})")
+        return feed._replace(source=f"the feed of target {loop.target or loop.crop} ({feed.source})")
     last = logged[-1]
     amounts = {value.name: value.number for value in last.values if value.number is not None}
     return Composition(

@@ -8,8 +8,7 @@ import shutil
 import sqlite3
 import sys
 from collections.abc import Iterator
-from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 if TYPE_CHECKING:
     from fertui.workbench.answers import Answers
@@ -17,8 +16,7 @@ if TYPE_CHECKING:
 LEAST_FREE_MB = 100
 
 
-@dataclass(frozen=True, slots=True)
-class CheckRow:
+class CheckRow(NamedTuple):
     """One thing looked at: what, what was found, whether it is all right, and what to do where it is not."""
 
     group: str

@@ -6,7 +6,6 @@ import shlex
 import shutil
 import tempfile
 from collections.abc import Iterator
-from dataclasses import replace
 from datetime import UTC, date, datetime, time, timedelta, tzinfo
 from pathlib import Path
 
@@ -66,7 +65,7 @@ def _entries(path: Path, site: Site, now: datetime) -> Iterator[Entry]:
         entered = _entered(last, written, here) if written else at + timedelta(days=1, hours=8) if whole_day else at
         fields["at"] = f"{(last + timedelta(days=int(day))).isoformat()}{'' if whole_day else ' ' + clock}"
         entry = entry_from_text(kind, fields, site, loop, max(now, entered))
-        yield replace(entry, entered=min(entered + timedelta(minutes=3), now).astimezone(UTC))
+        yield entry._replace(entered=min(entered + timedelta(minutes=3), now).astimezone(UTC))
 
 
 def _moment(last: date, day: int, clock: str, here: tzinfo) -> datetime:

@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from datetime import datetime, timedelta
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.estimate.points import Band, Estimated
 from fertui.logbook.entries import Entry
@@ -18,8 +17,7 @@ FOLLOWED = ("K share", "Ca share", "Mg share", "K", "Ca", "Mg", "Na", "NH4", "NO
 MARKED = ("dose", "bleed", "batch", "recipe", "setpoint", "acid", "analysis", "crop", "disinfection")
 
 
-@dataclass(frozen=True, slots=True)
-class Series:
+class Series(NamedTuple):
     """One quantity over time: estimate with its 80 % range a day, and what was measured when."""
 
     what: str
@@ -30,8 +28,7 @@ class Series:
     measured: tuple[tuple[datetime, float], ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Mark:
+class Mark(NamedTuple):
     """Something done or measured, by its entry number."""
 
     at: datetime
@@ -40,8 +37,7 @@ class Mark:
     number: int
 
 
-@dataclass(frozen=True, slots=True)
-class Drift:
+class Drift(NamedTuple):
     """The managed point of a loop over the days past."""
 
     loop: str

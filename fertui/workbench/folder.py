@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from datetime import datetime, timedelta
 from functools import cached_property
 from pathlib import Path
@@ -16,7 +17,6 @@ if TYPE_CHECKING:
 
 
 LOGBOOK = "logbook.sqlite3"
-COUNTED_BY_YEAR = ("bleed",)
 RECENT = timedelta(days=92)
 """Views look back three months, however little of it an estimate needs."""
 NEWS_LASTS = timedelta(days=14)
@@ -77,16 +77,24 @@ class SiteFolder:
     def entries(self, at: datetime | None = None, known: datetime | None = None) -> tuple[Entry, ...]:
         """Effective entries of all loops that still matter at ``at``, as they were known at ``known``.
 
-        Of what has left every solution long ago only kinds that stay in force, or count for a year, are read: a book of
+        Of what has left every solution long ago only what stays in force, or counts for a year, is read: a book of
         many years answers like a new one.
         """
-        from fertui.estimate.record import LASTING, since_needed
+        from fertui.estimate.record import since_needed
 
         at = at or now()
         analyses = self.book.entries(kinds=("analysis",), since=since_needed(at), at=at, known=known)
         since = min(since_needed(at, analyses), at - RECENT)
-        old = self.book.entries(kinds=(*LASTING, *COUNTED_BY_YEAR), at=since, known=known)
-        return (*(entry for entry in old if entry.at < since), *self.book.entries(since=since, at=at, known=known))
+        recent = self.book.entries(since=since, at=at, known=known)
+        return (*self._in_force(recent, since, known), *recent)
+
+    def _in_force(self, recent: Sequence[Entry], before: datetime, known: datetime | None = None) -> tuple[Entry, ...]:
+        """What was logged before the recent entries and still counts; readings where a loop has none since."""
+        from fertui.workbench.in_force import LAST_STANDS, in_force
+
+        read = {entry.loop for entry in recent if entry.kind == "reading"}
+        last = LAST_STANDS if read >= set(self.loops) else (*LAST_STANDS, "reading")
+        return in_force(self.book, last, {tank.name for tank in self.site.stock_tanks}, before, known)
 
     def time(self, written: str) -> datetime:
         """A time as people write it, on the clock of the site."""

@@ -3,15 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 from datetime import datetime
+from typing import NamedTuple
 
 from fertui.logbook.entries import Entry
 from fertui.site.model import Loop
 
 
-@dataclass(frozen=True, slots=True)
-class Seen:
+class Seen(NamedTuple):
     """A reading or analysis as logged: its number, when, where, by whom, and its canonical numbers by name."""
 
     number: int
@@ -21,8 +20,7 @@ class Seen:
     values: Mapping[str, float]
 
 
-@dataclass(frozen=True, slots=True)
-class Glance:
+class Glance(NamedTuple):
     """The last known numbers of one loop."""
 
     loop: str
@@ -51,7 +49,7 @@ def glance(loop: Loop, entries: Iterable[Entry], at: datetime) -> Glance:
     for entry in entries:
         if entry.kind == "reading":
             readings[entry.point or managed_point(loop)] = seen(entry)
-        elif entry.kind == "analysis":
+        elif entry.kind == "analysis" and entry.point != "source":
             analysis = seen(entry)
         elif entry.kind == "setpoint":
             set_ec = _later(entry.number_of("EC"), set_ec)

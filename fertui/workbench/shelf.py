@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from datetime import datetime
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.logbook.entries import Entry
 from fertui.site.model import Loop, Site, StockTank
@@ -16,8 +15,7 @@ if TYPE_CHECKING:
     from fertui.planning.last_mix import LastMix
 
 
-@dataclass(frozen=True, slots=True)
-class SupplyRow:
+class SupplyRow(NamedTuple):
     """One supply; ``label`` is its own analysis or strength where it differs from the formula."""
 
     name: str
@@ -30,8 +28,7 @@ class SupplyRow:
     hazards: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class StockRow:
+class StockRow(NamedTuple):
     """One stock tank of a loop: since when, how many litres and days are left [None: not known]."""
 
     name: str
@@ -46,6 +43,7 @@ class StockRow:
 
 def supply_rows(site: Site) -> tuple[SupplyRow, ...]:
     """Every supply of a site with the cautions of its strength."""
+    from fertui.catalogue.acids import Acid
     from fertui.catalogue.cautions import cautions_of
     from fertui.catalogue.supplies import of_supply
 
@@ -56,7 +54,7 @@ def supply_rows(site: Site) -> tuple[SupplyRow, ...]:
         if supply.strength_pct is not None:
             label = f"{supply.strength_pct:g} %" + (f", {label}" if label else "")
         density = supply.density_kg_per_l
-        if density is None and supply.strength_pct is not None and hasattr(found, "density"):
+        if density is None and supply.strength_pct is not None and isinstance(found, Acid):
             density = found.density(supply.strength_pct)
         hazards = tuple(each.text for each in cautions_of([supply]))
         rows.append(
@@ -107,11 +105,10 @@ def last_mixes(site: Site, rows: Sequence[StockRow], days_left: float, stop_days
 
 def acid_cautions(site: Site, acid: str, strength_pct: float | None) -> tuple[Caution, ...]:
     """Cautions of an acid or lye at the strength read off its label."""
-    from dataclasses import replace
 
     from fertui.catalogue.cautions import cautions_of
     from fertui.site.model import Supply
 
     shelved = next((supply for supply in site.supplies if supply.name == acid), None)
     supply = shelved or Supply(acid, acid, strength_pct)
-    return cautions_of([supply if strength_pct is None else replace(supply, strength_pct=strength_pct)])
+    return cautions_of([supply if strength_pct is None else supply._replace(strength_pct=strength_pct)])

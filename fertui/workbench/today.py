@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
 from datetime import datetime, timedelta
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 from zoneinfo import ZoneInfo
 
 from fertui.estimate.points import Estimated, PointState
@@ -25,8 +24,7 @@ AWAITED, TAKEN_BEFORE = timedelta(days=21), timedelta(days=2)
 """A sample is waited for so long, and was taken at most so long before it was sent (common practice, no source)."""
 
 
-@dataclass(frozen=True, slots=True)
-class Gauge:
+class Gauge(NamedTuple):
     """One row of the managed point: its course of daily values and when it leaves its band.
 
     ``what`` is ``K share``, ``Ca share``, ``Mg share``, an ion with a limit (``Na``, ``NH4``, ``Cl``) or ``EC``.
@@ -41,8 +39,7 @@ class Gauge:
     leaves: str
 
 
-@dataclass(frozen=True, slots=True)
-class Today:
+class Today(NamedTuple):
     """State of one loop at a time."""
 
     loop: str

@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from datetime import UTC, datetime, timedelta
+from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from fertui.logbook.entries import Entry
-from fertui.workbench.answers import Answers
+from fertui.workbench.answers import GLANCED, Answers
 from fertui.workbench.clock import now
 
 if TYPE_CHECKING:
@@ -33,8 +33,10 @@ class Writing(Answers):
         """The last value as written for every place a form asks for."""
         from fertui.workbench.entering import previous
 
-        recent = self.book.entries(loop=self.loop(loop).name, since=now() - timedelta(days=60))
-        return previous(recent)
+        chosen, since = self.loop(loop).name, now() - GLANCED
+        recent = self.book.entries(loop=chosen, since=since)
+        old = (entry for entry in self._in_force(recent, since) if entry.loop == chosen)
+        return previous((*old, *recent))
 
     def questions(self, kind: str, fields: Mapping[str, str], loop: str | None = None) -> tuple[Question, ...]:
         """What a careful colleague would ask before this entry is written."""

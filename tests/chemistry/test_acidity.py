@@ -28,8 +28,7 @@ targets = st.floats(4.5, 6.5)
 def _dosed(water: Water, acid: str, dose: float) -> Water:
     """The water with the acid's own buffer in it."""
     extra = {"phosphoric": "phosphate", "sulfuric": "sulfate"}.get(acid)
-    fields = {name: getattr(water, name) for name in Water.__slots__}
-    return Water(**(fields | ({extra: fields[extra] + dose} if extra else {})))
+    return water._replace(**{extra: getattr(water, extra) + dose}) if extra else water
 
 
 @pytest.mark.parametrize("acid", [name for name in ACIDS if name != "citric"])

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
 
@@ -131,8 +129,8 @@ def test_the_miss_of_the_forecast_is_reported_for_a_late_result() -> None:
 def test_a_superseded_value_re_runs_from_its_time() -> None:
     entries = _weekly(4)
     right = [each for each in entries if each.number == 102][0]
-    wrong = replace(
-        right, values=tuple(replace(each, number=8.0) if each.name == "Ca" else each for each in right.values)
+    wrong = right._replace(
+        values=tuple(each._replace(number=8.0) if each.name == "Ca" else each for each in right.values)
     )
     with_slip = [wrong if each.number == 102 else each for each in entries]
     assert _middle(_estimate(with_slip, 15.0), "Ca") < _middle(_estimate(entries, 15.0), "Ca") - 0.7
@@ -188,7 +186,7 @@ def test_new_medium_begins_with_itself_and_a_renewed_crop_starts_anew() -> None:
     planted = entry("crop", 20.0, event="planted")
     estimate = _estimate([*_weekly(5), planted], 30.0)
     assert estimate.since == moment(21.5)
-    coir = replace(SLAB, medium="coir")
+    coir = SLAB._replace(medium="coir")
     assert assimilate(SITE, coir, [*_weekly(5), planted], moment(30.0), members=30).since == moment(20.0)
 
 
@@ -213,7 +211,7 @@ def test_an_analysis_of_a_few_ions_is_not_judged_by_its_charges() -> None:
 
 
 def test_hard_water_of_a_tank_is_what_it_is_filled_with() -> None:
-    hard = replace(SITE, waters=(Water("rain", Composition({"Ca": 2.0, "HCO3": 4.0})),))
+    hard = SITE._replace(waters=(Water("rain", Composition({"Ca": 2.0, "HCO3": 4.0})),))
     assert assimilate(hard, TANK, [], moment(1.0)).points()["tank"].ions["Ca"].mmol_l.value == pytest.approx(
         2.0, rel=0.1
     )

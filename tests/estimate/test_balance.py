@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import astuple, replace
 from functools import cache
 
 import pytest
@@ -19,7 +18,7 @@ from tests.estimate.logs import DRAIN, FEED, SALAD, SITE, SLAB, TANK, daily_wate
 def _slab(medium: str = "stone-wool") -> Estimate:
     analyses = [entry("analysis", 0.5 + 7.0 * turn, point="drain", **DRAIN) for turn in range(3)]
     log: list[Entry] = [*daily_water(20), *fed(20.0), *analyses]
-    return assimilate(SITE, replace(SLAB, medium=medium), log, moment(19.3), members=60)
+    return assimilate(SITE, SLAB._replace(medium=medium), log, moment(19.3), members=60)
 
 
 @cache
@@ -34,7 +33,7 @@ def _tank() -> Estimate:
 
 
 def _gap(row: BalanceRow) -> float:
-    start, *flows, end = astuple(row)
+    start, *flows, end = row
     return abs(start + sum(flows) - end) / max(abs(start), abs(end), *map(abs, flows), 1e-9)
 
 

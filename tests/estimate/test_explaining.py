@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from datetime import timedelta
 from pathlib import Path
 
@@ -28,8 +27,8 @@ def explained(site_folder: Path, loop: str, factor: float) -> list[Notice]:
 def _scaled(entry: Entry, factor: float) -> Entry:
     if entry.kind != "stock" or entry.at < DEMO_MORNING - timedelta(days=5):
         return entry
-    values = tuple(replace(v, number=v.number * factor) if v.number is not None else v for v in entry.values)
-    return replace(entry, values=values)
+    values = tuple(v._replace(number=v.number * factor) if v.number is not None else v for v in entry.values)
+    return entry._replace(values=values)
 
 
 @pytest.mark.parametrize("loop", ["north bay", "lettuce"])

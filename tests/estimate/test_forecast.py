@@ -28,7 +28,7 @@ def _entries(*others: Entry) -> list[Entry]:
 
 @cache
 def _slab() -> Estimate:
-    return assimilate(SITE, replace(SLAB, bands=BANDS), _entries(), moment(23.5), members=150)
+    return assimilate(SITE, SLAB._replace(bands=BANDS), _entries(), moment(23.5), members=150)
 
 
 @cache
@@ -177,7 +177,7 @@ def test_everything_with_a_band_gets_a_row_and_days_lie_in_order() -> None:
 
 def test_the_next_sample_is_on_a_staffed_day_and_its_result_counts_the_laboratory() -> None:
     weekdays = ("Mon", "Tue", "Wed", "Thu", "Fri")
-    estimate = replace(_slab(), site=replace(SITE, staffed_days=weekdays, lab_turnaround_d=3))
+    estimate = replace(_slab(), site=SITE._replace(staffed_days=weekdays, lab_turnaround_d=3))
     advice = next_sample(estimate, forecast(estimate, 14))
     assert advice.take_at.strftime("%a") in weekdays
     assert advice.result_at.strftime("%a") in weekdays

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from datetime import datetime, timedelta
 
 import pytest
@@ -92,7 +92,7 @@ def test_since_when_a_share_is_out_is_said_on_the_clock_of_the_site() -> None:
 
 
 def test_sodium_over_its_limit_offers_no_salt_and_says_whose_limit_it_is() -> None:
-    site = replace(SITE, limits={"root_zone": {"Na": Sourced(None, 8.0, "own trial 2024")}})
+    site = SITE._replace(limits={"root_zone": {"Na": Sourced(None, 8.0, "own trial 2024")}})
     standing = Standing(site=site, state=point(Na=Estimated(8.6, 7.6, 9.7, (None, 8.0))))
     (found,) = only("sodium", standing)
     assert found.severity == "act"
@@ -179,8 +179,8 @@ def test_a_single_day_of_unequal_draw_is_looked_at_but_stops_nothing() -> None:
 
 
 def test_tanks_of_unequal_strength_are_compared_by_what_they_carry() -> None:
-    tanks = (replace(SITE.stock_tanks[0], dilution=200.0), SITE.stock_tanks[1])
-    standing = Standing(site=replace(SITE, stock_tanks=tanks))
+    tanks = (SITE.stock_tanks[0]._replace(dilution=200.0), SITE.stock_tanks[1])
+    standing = Standing(site=SITE._replace(stock_tanks=tanks))
     assert only("unequal_draw", standing, drawn([("12.5", "25.0")] * 5)) == []
 
 
@@ -271,7 +271,7 @@ def test_new_coir_is_buffering_and_no_reason_to_cut_the_feed() -> None:
     (found,) = only("coir_new", entries=[laid])
     assert found.severity == "watch"
     assert "Do not cut the feed: more Ca and Mg, less K" in found.text
-    assert only("coir_new", Standing(loop=replace(SLABS, medium="stone-wool")), [laid]) == []
+    assert only("coir_new", Standing(loop=SLABS._replace(medium="stone-wool")), [laid]) == []
 
 
 @pytest.mark.parametrize("words", ["first blossom-end rot in row 4", "some BER", "blossom end rot"])
@@ -320,9 +320,9 @@ def calibrated(at: str, reading: str, **texts: str) -> Entry:
 
 def test_a_meter_found_off_puts_its_readings_since_the_last_good_check_in_doubt() -> None:
     # EC meters over 5 % off: clean or replace (Owen 2022, e-GRO blog 179); 3.05 on 2.76 is 10.5 % off.
-    standing = Standing(site=replace(SITE, instruments=(Instrument("EC pen", "EC meter", compensated=True),)))
+    standing = Standing(site=SITE._replace(instruments=(Instrument("EC pen", "EC meter", compensated=True),)))
     log = [calibrated("2026-06-20 09:00", "2.75"), calibrated("2026-06-30 09:00", "3.05", result="off")]
-    log += [replace(read(f"2026-06-{day} 08:00", EC="2.6"), instrument="EC pen") for day in (18, 22, 25)]
+    log += [read(f"2026-06-{day} 08:00", EC="2.6")._replace(instrument="EC pen") for day in (18, 22, 25)]
     (found,) = only("meter_doubt", standing, log)
     assert found.text == (
         "EC pen read EC +11 % off on Tue 30 Jun: 2 readings since the last good check on Sat 20 Jun are in doubt. "
@@ -332,7 +332,7 @@ def test_a_meter_found_off_puts_its_readings_since_the_last_good_check_in_doubt(
 
 
 def test_a_reading_whose_question_nobody_answered_is_doubtful() -> None:
-    slip = replace(read(EC="2.6"), flags="out_by_ten", number=12)
+    slip = read(EC="2.6")._replace(flags="out_by_ten", number=12)
     (found,) = only("meter_doubt", entries=[slip])
     assert "Entry 12 (reading, Wed 1 Jul) was never settled: out by ten?" in found.text
 
@@ -366,7 +366,7 @@ def test_a_sample_is_due_every_week_on_coir_and_every_two_weeks_on_stone_wool() 
     nine = {"root_zone": NOW - timedelta(days=9)}
     (found,) = only("sample_now", Standing(last_analysis=nine))
     assert found.text.startswith("A sample is due (the medium exchanges: every week).")
-    assert only("sample_now", Standing(loop=replace(SLABS, medium="stone-wool"), last_analysis=nine)) == []
+    assert only("sample_now", Standing(loop=SLABS._replace(medium="stone-wool"), last_analysis=nine)) == []
 
 
 @pytest.mark.parametrize(("count", "severity"), [(0, "watch"), (1, "note"), (2, "note"), (3, None)])
@@ -438,7 +438,7 @@ def test_whatever_is_logged_each_notice_has_a_reason_a_unit_and_a_key(
 def test_doubtful_struck_and_future_entries_are_looked_at_by_no_rule() -> None:
     low = read(pH="3.0")
     later = said("reading", "2026-07-01 09:00", now=NOW + timedelta(hours=2), point="feed", pH="3.0")
-    for entry in (replace(low, doubtful="probe dry"), replace(low, void=True), later, replace(low, loop="gutters")):
+    for entry in (low._replace(doubtful="probe dry"), low._replace(void=True), later, low._replace(loop="gutters")):
         assert only("ph_emergency", entries=[entry]) == []
 
 

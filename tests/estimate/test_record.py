@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -97,8 +95,8 @@ def test_a_recipe_holds_from_its_time_on() -> None:
 
 
 def test_stock_counts_by_what_its_batch_held() -> None:
-    loop = replace(TANK, stock_tanks=("potash",))
-    site = replace(SITE, loops=(loop,), stock_tanks=(StockTank("potash", 100.0),))
+    loop = TANK._replace(stock_tanks=("potash",))
+    site = SITE._replace(loops=(loop,), stock_tanks=(StockTank("potash", 100.0),))
     batch = entry("batch", 1.0, "tank", tank="potash", litres=100.0, **{"potassium nitrate": 10.0})
     used = [entry("stock", day, "tank", tank="potash", litres=2.0) for day in (0.5, 2.0, 3.0)]
     record = read(site, loop, [batch, *used], moment(4.0))
@@ -109,8 +107,8 @@ def test_stock_counts_by_what_its_batch_held() -> None:
 
 
 def test_a_recipe_is_the_whole_feed_and_a_batch_the_stocks_part_of_it() -> None:
-    loop = replace(SLAB, layout="drain-blend", stock_tanks=("potash",), water="rain")
-    site = replace(SITE, loops=(loop,), stock_tanks=(StockTank("potash", 100.0),))
+    loop = SLAB._replace(layout="drain-blend", stock_tanks=("potash",), water="rain")
+    site = SITE._replace(loops=(loop,), stock_tanks=(StockTank("potash", 100.0),))
     recipe = read(site, loop, [entry("recipe", 0.0, K=8.0, Na=0.5, NO3=8.5)], moment(1.0))
     assert carried(recipe, 1.0)[INDEX["Na"]] == pytest.approx(0.4)
     batch = entry("batch", 0.0, tank="potash", litres=100.0, **{"potassium nitrate": 10.0})
@@ -120,9 +118,9 @@ def test_a_recipe_is_the_whole_feed_and_a_batch_the_stocks_part_of_it() -> None:
 
 
 def test_an_extract_counts_only_with_the_factor_of_the_site() -> None:
-    extract = replace(entry("analysis", 1.0, point="root_zone", **DRAIN), method="extract_1_1.5")
+    extract = entry("analysis", 1.0, point="root_zone", **DRAIN)._replace(method="extract_1_1.5")
     assert not _record([extract]).observations
-    known = _record([extract], replace(SLAB, extract_factors={"extract_1_1.5": 3.0}))
+    known = _record([extract], SLAB._replace(extract_factors={"extract_1_1.5": 3.0}))
     assert known.observations[0].ions["K"] == 24.0
 
 
@@ -135,7 +133,7 @@ def test_other_loops_later_entries_and_plans_made_later_are_left_out() -> None:
 
 
 def test_midnights_follow_the_clock_of_the_site_through_a_change_of_clocks() -> None:
-    site = replace(SITE, timezone="Europe/Amsterdam")
+    site = SITE._replace(timezone="Europe/Amsterdam")
     record = read(site, SLAB, [entry("water", 26.0, irrigation=1.0)], moment(30.0))
     nights = np.array(record.midnights(0.0, record.end))
     assert sorted(set(np.round(np.diff(nights) * 24.0))) == [23.0, 24.0]  # 29 March 2026, EU rule

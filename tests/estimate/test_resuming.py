@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
 
@@ -50,7 +48,7 @@ CHANGES = {
 @pytest.mark.parametrize("change", CHANGES)
 @pytest.mark.parametrize("medium", ["stone-wool", "coir"])
 def test_an_earlier_estimate_changes_no_answer(change: str, medium: str) -> None:
-    loop = replace(SLAB, medium=medium)
+    loop = SLAB._replace(medium=medium)
     before = assimilate(SITE, loop, _log(), moment(29.8), members=MEMBERS)
     entries, day = CHANGES[change]
     resumed = assimilate(SITE, loop, entries, moment(day), members=MEMBERS, before=before)

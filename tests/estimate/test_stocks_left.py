@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from datetime import timedelta
 
 import pytest
@@ -54,7 +53,7 @@ def test_nothing_is_said_of_a_tank_whose_filling_or_use_was_never_logged() -> No
 
 
 def test_loops_that_share_a_tank_draw_it_down_together() -> None:
-    other = [replace(each, loop=GUTTERS.name) for each in used(5.0, range(1, 11))]
+    other = [each._replace(loop=GUTTERS.name) for each in used(5.0, range(1, 11))]
     log = [batch("2026-06-21 00:00"), *used(25.0, range(1, 11)), *other]
     assert stock_left(SITE, SLABS, log, NOW)["calcium"].litres_a_day == pytest.approx(30.0)
 

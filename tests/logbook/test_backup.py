@@ -6,7 +6,6 @@ import sqlite3
 import threading
 from collections.abc import Callable
 from contextlib import closing
-from dataclasses import replace
 from datetime import timedelta
 from pathlib import Path
 
@@ -38,7 +37,7 @@ def folder(tmp_path: Path) -> Path:
     (made / SITE_FILE).write_bytes(SITE_TEXT.encode())
     with Logbook.create(made / FILE_NAME) as book:
         book.append([entry(number) for number in range(400)])
-        book.append(replace(entry(9), supersedes=7, why="other sample"))
+        book.append(entry(9)._replace(supersedes=7, why="other sample"))
         book.void(8, "twice", "AB")
     return made
 

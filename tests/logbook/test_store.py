@@ -6,7 +6,6 @@ import os
 import sqlite3
 import stat
 from contextlib import closing
-from dataclasses import replace
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 
@@ -36,12 +35,12 @@ def test_what_is_read_is_what_was_written(book: Logbook) -> None:
         note="two\nlines", doubtful="odd", whole_day=True, flags="unusual",
     )  # fmt: skip
     (number,) = book.append(full)
-    assert book.entry(number) == replace(full, number=number)
+    assert book.entry(number) == full._replace(number=number)
 
 
 def test_a_correction_replaces_and_a_strike_removes_but_both_stay_in_history(book: Logbook) -> None:
     book.append([reading(8), reading(9), reading(10)])
-    book.append(replace(reading(8.5), supersedes=1, why="typo"))
+    book.append(reading(8.5)._replace(supersedes=1, why="typo"))
     book.void(2, "twice", "AB")
     assert numbers(book.entries()) == [3, 4]
     assert numbers(book.history()) == [1, 2, 3, 4, 5]
@@ -52,7 +51,7 @@ def test_a_correction_replaces_and_a_strike_removes_but_both_stay_in_history(boo
 def test_at_hides_later_events_and_known_hides_later_knowledge(book: Logbook) -> None:
     day = timedelta(days=1)
     book.append([reading(8, NOW, NOW), reading(9, NOW + day, NOW + 3 * day)])
-    book.append(replace(reading(7, NOW, NOW + 2 * day), supersedes=1, why="lab sent a correction"))
+    book.append(reading(7, NOW, NOW + 2 * day)._replace(supersedes=1, why="lab sent a correction"))
     assert numbers(book.entries(at=NOW)) == [3]
     assert numbers(book.entries(known=NOW + day)) == [1]
     assert numbers(book.entries(known=NOW + 2 * day)) == [3]
@@ -62,7 +61,7 @@ def test_at_hides_later_events_and_known_hides_later_knowledge(book: Logbook) ->
 
 def test_a_plan_is_known_from_when_it_was_made(book: Logbook) -> None:
     day = timedelta(days=1)
-    book.append([replace(reading(7, NOW + 5 * day, NOW), kind="plan"), reading(8, NOW + 5 * day, NOW)])
+    book.append([reading(7, NOW + 5 * day, NOW)._replace(kind="plan"), reading(8, NOW + 5 * day, NOW)])
     assert numbers(book.entries(at=NOW)) == [1]
     assert numbers(book.entries(at=NOW - day)) == []
     assert numbers(book.entries(at=NOW, known=NOW - day)) == []
@@ -76,7 +75,7 @@ def test_words_are_never_read_as_sql(book: Logbook) -> None:
 
 
 def test_a_loop_sees_its_own_and_the_sites_entries(book: Logbook) -> None:
-    book.append([reading(8), replace(reading(9), loop="gutters"), replace(reading(1), kind="note", loop="")])
+    book.append([reading(8), reading(9)._replace(loop="gutters"), reading(1)._replace(kind="note", loop="")])
     assert numbers(book.entries(loop="bay")) == [1, 3]
     assert numbers(book.entries(kinds=("note", "site"))) == [3]
     assert book.entries(kinds=()) == ()
@@ -85,21 +84,21 @@ def test_a_loop_sees_its_own_and_the_sites_entries(book: Logbook) -> None:
 @pytest.mark.parametrize(
     ("entry", "says"),
     [
-        (replace(reading(1), supersedes=1), "needs its reason"),
-        (replace(reading(1), supersedes=99, why="x"), "no entry 99"),
-        (replace(reading(1), supersedes=2, why="x"), "already corrected by entry 3"),
-        (replace(reading(1), supersedes=4, why="x"), "strikes another"),
-        (replace(reading(1), number=77), "cannot follow"),
-        (replace(reading(1), values=(Value("K", "x", float("nan")),)), "not a number"),
-        (replace(reading(1), values=(Value("K", "1", 1.0), Value("K", "2", 2.0))), "twice"),
-        (replace(reading(1), note="\ud800"), "not text"),
-        (replace(reading(1), at=datetime(2026, 1, 1)), "no zone"),  # noqa: DTZ001
-        (replace(reading(1), by=None), "cannot be None"),  # type: ignore[arg-type]
+        (reading(1)._replace(supersedes=1), "needs its reason"),
+        (reading(1)._replace(supersedes=99, why="x"), "no entry 99"),
+        (reading(1)._replace(supersedes=2, why="x"), "already corrected by entry 3"),
+        (reading(1)._replace(supersedes=4, why="x"), "strikes another"),
+        (reading(1)._replace(number=77), "cannot follow"),
+        (reading(1)._replace(values=(Value("K", "x", float("nan")),)), "not a number"),
+        (reading(1)._replace(values=(Value("K", "1", 1.0), Value("K", "2", 2.0))), "twice"),
+        (reading(1)._replace(note="\ud800"), "not text"),
+        (reading(1)._replace(at=datetime(2026, 1, 1)), "no zone"),  # noqa: DTZ001
+        (reading(1)._replace(by=None), "cannot be None"),  # type: ignore[arg-type]
     ],
 )
 def test_an_entry_that_cannot_be_kept_leaves_its_whole_batch_out(book: Logbook, entry: Entry, says: str) -> None:
     book.append([reading(1), reading(2)])
-    book.append(replace(reading(3), supersedes=2, why="x"))
+    book.append(reading(3)._replace(supersedes=2, why="x"))
     book.void(1, "x", "MK")
     before = book.history()
     with pytest.raises(LogbookError, match=says):

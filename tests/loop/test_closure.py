@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -73,7 +71,7 @@ EVENTS = st.lists(
         litres=st.sampled_from([0.0, 3.0, np.inf]),
         point=st.sampled_from(["tank", "drain_store", "drain", "root_zone"]),
         entry=st.integers(1, 9),
-    ).map(lambda event: event if event.cause == "bleed" or event.litres < np.inf else replace(event, litres=1.0)),
+    ).map(lambda event: event if event.cause == "bleed" or event.litres < np.inf else event._replace(litres=1.0)),
     max_size=3,
 )
 

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
 
@@ -60,7 +58,7 @@ def test_a_shared_store_is_one_solution_and_every_account_closes() -> None:
 
 def test_a_known_feed_loop_shares_nothing() -> None:
     one = sharer(200.0, 300.0)
-    other = replace(one, circuit=Circuit("known-feed", 100.0, 800.0))
+    other = one._replace(circuit=Circuit("known-feed", 100.0, 800.0))
     with pytest.raises(ValueError, match="shared-tank or drain-blend"):
         pooled([one, other])
 

@@ -43,7 +43,7 @@ def test_reference_composition_returns_the_uptake_concentration() -> None:
 @pytest.mark.parametrize("ion", IONS[:-1])
 def test_carriers_are_half_full_at_cmin_plus_km(ion: str) -> None:
     """Michaelis-Menten with Cmin (Claassen & Barber 1976, from memory): half the maximum at Cmin + Km, none at Cmin."""
-    plain = replace(Kinetics(), b=np.zeros(10), antagonism=0.0, salt_half=1e12)
+    plain = Kinetics()._replace(b=np.zeros(10), antagonism=0.0, salt_half=1e12)
     plants, column = replace(PLANTS, kinetics=plain), INDEX[ion]
     full, half, none = (REFERENCE.copy() for _ in range(3))
     full[column], half[column] = 1e6, plain.c_min[column] + plain.km[column]
@@ -162,7 +162,7 @@ def test_a_hold_that_cannot_reach_its_set_point_is_refused() -> None:
 def test_capacity_beyond_all_cations_leaves_sites_to_hydrogen() -> None:
     """Fewer cations than sites: the medium takes what there is, alkalinity carries the hydrogen it gives for it."""
     circuit, medium = Circuit("known-feed", 1.0, 8.0), Medium(5000.0)
-    state = replace(start(circuit, INERT, REFERENCE), exchanged_meq=np.zeros((1, 5)))
+    state = start(circuit, INERT, REFERENCE)._replace(exchanged_meq=np.zeros((1, 5)))
     run = simulate(circuit, medium, PLANTS, state, Timeline(((0.0, Drive()),)), [1.0])
     np.testing.assert_allclose(run.end.ions_mmol[0, ROOT, :5], 0.0, atol=1e-6)
     assert run.account().gap().max() < 1e-9

@@ -103,7 +103,7 @@ def test_coir_needs_more_potassium_than_stone_wool_for_the_same_shortfall() -> N
     simulated = end_of(coir, planned.recipe.ions_mmol_l, days)
     assert share_of_k(simulated) >= 17.5
     # a plan that ignores exchange: made for the same loop on an inert medium, carried out on coir
-    inert = plan(replace(coir, setting=replace(coir.setting, medium_l=0.0)), days=days)
+    inert = plan(replace(coir, setting=coir.setting._replace(medium_l=0.0)), days=days)
     assert inert.recipe is not None
     short = share_of_k(simulated) - share_of_k(end_of(coir, inert.recipe.ions_mmol_l, days))
     assert planned.recipe.ions_mmol_l["K"] > inert.recipe.ions_mmol_l["K"]

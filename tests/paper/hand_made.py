@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from datetime import UTC, datetime
 
 from fertui.catalogue.cautions import cautions_of
@@ -21,7 +20,7 @@ GUTTERS = Loop(
     name="gutters", layout="shared-tank", area_m2=260.0, crop="lettuce", medium="none", tank_l=5000.0,
     stock_tanks=("calcium", "sulfate"), water="well",
 )  # fmt: skip
-SLABS = replace(GUTTERS, name="slabs", layout="drain-blend", crop="tomato", medium="stone-wool", tank_l=None)
+SLABS = GUTTERS._replace(name="slabs", layout="drain-blend", crop="tomato", medium="stone-wool", tank_l=None)
 SITE = Site(
     name="Testing house",
     timezone="Europe/Amsterdam",
@@ -80,7 +79,7 @@ def hand_plan(**changes: object) -> Plan:
         arithmetic=("1.75 kg x 9891 mmol/kg / 5000 L = 3.46 mmol/L K",),
         sensitivity=(WhatIf("half done", {"K": 32.0}, 2.6, "K share 32 % at the end, inside its band"),),
     )  # fmt: skip
-    return replace(plan, **changes)  # type: ignore[arg-type]
+    return plan._replace(**changes)  # type: ignore[arg-type]
 
 
 def acid_step() -> AcidStep:

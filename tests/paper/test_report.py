@@ -5,7 +5,6 @@ from __future__ import annotations
 import csv
 import io
 import re
-from dataclasses import replace
 from datetime import UTC, datetime
 from types import SimpleNamespace
 
@@ -23,12 +22,12 @@ START = datetime(2026, 6, 16, 22, 0, tzinfo=UTC)
 
 def said(number: int, kind: str, at: str, by: str = "MK", **texts: str) -> Entry:
     entry = entry_from_text(kind, {"by": by, "at": at, **texts}, SITE, None if kind == "calibration" else "slabs", NOW)
-    return replace(entry, number=number)
+    return entry._replace(number=number)
 
 
 ANALYSIS = said(1, "analysis", "2026-06-18 08:50", point="root_zone", K="8.0", Ca="6.1", NO3="15", H2PO4="1.0",
                 HCO3="0.5", NH4="<0.1", Fe="15", EC="4.0", pH="5.8")  # fmt: skip
-CORRECTED = replace(corrected(ANALYSIS, {"Ca": "5.1"}, SITE, NOW, why="read the wrong line", by="RV"), number=9)
+CORRECTED = corrected(ANALYSIS, {"Ca": "5.1"}, SITE, NOW, why="read the wrong line", by="RV")._replace(number=9)
 LOG = [
     said(2, "water", "2026-06-19", make_up="3500", source="well", irrigation="5000", drain="1500"),
     said(3, "water", "2026-06-20", make_up="3300", source="well", irrigation="4800", drain="1500"),
@@ -38,7 +37,7 @@ LOG = [
     said(7, "dose", "2026-06-21 10:00", salt="MKP", kg="0.4"),
     said(8, "bleed", "2026-06-22 10:00", litres="2500", reason="sodium"),
 ]
-SITE_WITH_BUDGET = replace(SITE, budget_n_kg_per_ha=50.0)
+SITE_WITH_BUDGET = SITE._replace(budget_n_kg_per_ha=50.0)
 
 
 def reported(**changes: object) -> Reported:
@@ -49,8 +48,8 @@ def reported(**changes: object) -> Reported:
     history = [ANALYSIS, *LOG, CORRECTED]
     effective = [CORRECTED, *LOG]
     lost = (Discharge("sodium", 2500.0, 0.42, 0.08, 16.2, 3.1),)
-    it = Reported(SITE_WITH_BUDGET, replace(SLABS, area_m2=260.0), history, effective, account, lost, 104_000.0)  # type: ignore[arg-type]
-    return replace(it, **changes)  # type: ignore[arg-type]
+    it = Reported(SITE_WITH_BUDGET, SLABS._replace(area_m2=260.0), history, effective, account, lost, 104_000.0)  # type: ignore[arg-type]
+    return it._replace(**changes)  # type: ignore[arg-type]
 
 
 @pytest.fixture

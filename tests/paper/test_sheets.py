@@ -6,7 +6,6 @@ import csv
 import io
 import re
 from collections.abc import Callable, Mapping
-from dataclasses import replace
 
 import pytest
 
@@ -160,8 +159,8 @@ def test_what_reaches_the_dripper_stands_beside_what_the_recipe_asks() -> None:
 
 def test_a_refused_pair_is_told_before_any_card() -> None:
     together = (Supply("one", "calcium nitrate double salt"), Supply("other", "magnesium sulfate heptahydrate"))
-    site = replace(SITE, supplies=together, stock_tanks=SITE.stock_tanks[:1])
-    sheet = stock_sheet(site, replace(SLABS, stock_tanks=("calcium",)), recipe=RECIPE)
+    site = SITE._replace(supplies=together, stock_tanks=SITE.stock_tanks[:1])
+    sheet = stock_sheet(site, SLABS._replace(stock_tanks=("calcium",)), recipe=RECIPE)
     text = stock_page(sheet, "slabs", site.name).text
     assert not sheet.feasible
     assert text.index("REFUSED") < text.index("\nTANK ")
@@ -197,7 +196,7 @@ def test_portions_sum_to_the_dose_and_each_has_a_line_to_sign() -> None:
 
 
 def test_water_of_unknown_alkalinity_gets_no_dose_but_the_reason() -> None:
-    site = replace(SITE, waters=(Water("well", Composition()),))
+    site = SITE._replace(waters=(Water("well", Composition()),))
     page = acid_page(acid_sheet(site, GUTTERS), "gutters", SITE.name)
     assert "NO DOSE" in page.text
     assert "pH alone never tells the acid" in " ".join(page.text.split())

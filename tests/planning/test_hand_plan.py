@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -39,7 +38,7 @@ def test_a_sample_comes_first_where_the_range_is_wider_than_the_band() -> None:
     assert not plan.feasible
     assert plan.steps == ()
     assert "take a sample first" in plan.reason
-    fresh = replace(place, analysis_days_old=1.0)
+    fresh = place._replace(analysis_days_old=1.0)
     assert not hand_plan(request(fresh, MixingTank(fresh, 7), days=7)).sample_first
 
 
@@ -154,7 +153,7 @@ UPTAKE = {"K": 10.2, "Ca": 3.13, "Mg": 0.86, "NO3": 13.4, "H2PO4": 1.72, "SO4": 
 def drunk_tank(litres_a_day: float, lost: Mapping[str, float]):
     """2000 L of which a crop of 500 m2 drinks so much a day; ``lost``: what stocks do not put back [mmol/L of it]."""
     start = {"K": 7.0, "Ca": 4.5, "Mg": 1.0, "NO3": 14.0, "SO4": 1.0, "H2PO4": 1.5, "NH4": 0.2, "Na": 1.0, "Cl": 1.0}
-    place = replace(place_of(start), crop_water_l_per_m2_d=litres_a_day / 500.0)
+    place = place_of(start)._replace(crop_water_l_per_m2_d=litres_a_day / 500.0)
     return place, MixingTank(place, 14, litres_a_day * vector(dict(lost)))
 
 
@@ -185,7 +184,7 @@ def test_later_weighings_may_go_in_with_the_fresh_water() -> None:
     day = (first.at - place.at).days
     until = [*days, 14][days.index(day) + 1]
     assert f"{1000 * first.kg / (400.0 * (until - day)) * 100:.0f} g {first.salt}" in words
-    slow = replace(place, crop_water_l_per_m2_d=0.2)
+    slow = place._replace(crop_water_l_per_m2_d=0.2)
     assert not any("with the fresh water" in each for each in hand_plan(request(slow, tank, days=14)).notices)
 
 
@@ -194,8 +193,7 @@ def with_make_up(litres_a_day: float, alkalinity: float, **more):
     acid = Supply("nitric acid", "nitric acid", strength_pct=38.0)
     water = Composition({"HCO3": alkalinity}, ph=7.6)
     start = {**LOW_K, "HCO3": 0.5}
-    place = replace(
-        place_of(start, supplies=(*shelf_of(*SALTS), acid), water=water, **more),
+    place = place_of(start, supplies=(*shelf_of(*SALTS), acid), water=water, **more)._replace(
         crop_water_l_per_m2_d=litres_a_day / 500.0,
     )
     return place, MixingTank(place, 12, -litres_a_day * vector({"HCO3": alkalinity - 0.5}))
@@ -228,15 +226,15 @@ def test_no_more_acid_than_the_model_finds_alkalinity() -> None:
 def test_acid_before_heating_the_drain_is_taken_off_and_said() -> None:
     place, tank = with_make_up(500.0, 3.5)
     # pH 4.5 before 95 C takes the alkalinity (Grower 101: water disinfection): here two thirds of what comes
-    habit = replace(place, usual_acid_mmol_d=vector({"NO3": 1000.0, "HCO3": -1000.0}))
+    habit = place._replace(usual_acid_mmol_d=vector({"NO3": 1000.0, "HCO3": -1000.0}))
     heated = Entry("disinfection", "nft", place.at, place.at, "T", (Value("treatment", "heat"),))
-    asked = replace(request(habit, tank, days=12), entries=(heated,))
+    asked = request(habit, tank, days=12)._replace(entries=(heated,))
     plan = hand_plan(asked)
     mol = 7.435 * sum(each.litres for each in plan.acid)
     days = max((each.at - place.at).days for each in plan.acid)
     assert mol == pytest.approx(0.5 * days, rel=0.01)
     assert any("heat disinfection included: 1000 meq" in line for line in plan.notices)
-    forgotten = replace(request(place, tank, days=12), entries=(heated,))
+    forgotten = request(place, tank, days=12)._replace(entries=(heated,))
     assert any("log the acid it takes" in line for line in hand_plan(forgotten).notices)
 
 
@@ -251,7 +249,7 @@ class RootedTank(MixingTank):
         root = [np.tile(self.situation.composition("root_zone"), (members, 1))]
         for day in range(1, len(tank)):
             root.append(root[-1] + self.follows * (tank[day] - root[-1]))
-        return replace(course, ions={"tank": tank, "root_zone": np.array(root)})
+        return course._replace(ions={"tank": tank, "root_zone": np.array(root)})
 
     def shown(self, doing):
         self.count += 1
@@ -263,11 +261,11 @@ class RootedTank(MixingTank):
 def rooted_plan(step: float | None):
     place = place_of({**LOW_K, "K": 2.0, "NO3": 10.0}, limits={"EC step": Sourced(None, 2.0, "test")})
     own = {} if step is None else {"root_zone": {"EC step": Sourced(None, step, "own trial")}}
-    loop = replace(place.loop, medium="perlite", limits={**place.loop.limits, **own})
-    place = replace(place, loop=loop, site=replace(place.site, loops=(loop,)), managed="root_zone")
+    loop = place.loop._replace(medium="perlite", limits={**place.loop.limits, **own})
+    place = place._replace(loop=loop, site=place.site._replace(loops=(loop,)), managed="root_zone")
     tank = RootedTank(place, 7)
     goals = goals_of(place, "hoagland-1", ("tank", "root_zone"))
-    asked = replace(request(place, tank, days=7, target="hoagland-1"), goals=goals)
+    asked = request(place, tank, days=7, target="hoagland-1")._replace(goals=goals)
     return place, tank, hand_plan(asked)
 
 

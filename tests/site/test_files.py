@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import os
-from dataclasses import replace
 from datetime import datetime
 from pathlib import Path
 
@@ -30,9 +29,9 @@ def test_the_old_file_stays_with_its_comments(tmp_path: Path) -> None:
     path = tmp_path / "site.toml"
     commented = b"# the north house leaks\n" + path.read_bytes()
     path.write_bytes(commented)
-    write_site(replace(SITE, name="Elm Lane 2"), tmp_path, NOW)
+    write_site(SITE._replace(name="Elm Lane 2"), tmp_path, NOW)
     assert (tmp_path / "site.2026-03-01.toml").read_bytes() == commented
-    write_site(replace(SITE, name="Elm Lane 3"), tmp_path, NOW)
+    write_site(SITE._replace(name="Elm Lane 3"), tmp_path, NOW)
     assert b"Elm Lane 2" in (tmp_path / "site.2026-03-01.2.toml").read_bytes()
     assert read_site(tmp_path).name == "Elm Lane 3"
     assert (tmp_path / "site.2026-03-01.toml").read_bytes() == commented
@@ -42,7 +41,7 @@ def test_a_site_that_would_be_refused_is_not_written(tmp_path: Path) -> None:
     write_site(SITE, tmp_path, NOW)
     before = (tmp_path / "site.toml").read_bytes()
     with pytest.raises(SiteError, match="area_m2"):
-        write_site(replace(SITE, loops=(replace(SITE.loops[0], area_m2=-1.0),)), tmp_path, NOW)
+        write_site(SITE._replace(loops=(SITE.loops[0]._replace(area_m2=-1.0),)), tmp_path, NOW)
     assert (tmp_path / "site.toml").read_bytes() == before
     assert len(list(tmp_path.iterdir())) == 1
 
@@ -57,7 +56,7 @@ def test_a_disk_that_fails_leaves_the_old_file(tmp_path: Path, monkeypatch: pyte
 
     monkeypatch.setattr(files.os, step, fails)
     with pytest.raises(FileTrouble, match="No space left"):
-        write_site(replace(SITE, name="other"), tmp_path, NOW)
+        write_site(SITE._replace(name="other"), tmp_path, NOW)
     monkeypatch.undo()
     assert (tmp_path / "site.toml").read_bytes() == before
     assert not [each for each in tmp_path.iterdir() if each.name.startswith(".site")]

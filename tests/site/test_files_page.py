@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import dataclasses
 import re
 from pathlib import Path
 
@@ -32,6 +31,6 @@ def test_the_example_is_written_and_edited_without_loss() -> None:
 
 def test_every_key_is_in_the_example() -> None:
     for model in (Loop, Supply, StockTank, Instrument):
-        for field in dataclasses.fields(model):
-            key = SPELLED.get(field.name, field.name)
+        for name in model._fields:
+            key = SPELLED.get(name, name)
             assert re.search(rf"\b{re.escape(key)}\b", EXAMPLE), f"{model.__name__}.{key}"

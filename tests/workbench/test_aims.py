@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from pathlib import Path
 
 from fertui.site.model import Sourced
@@ -19,7 +18,7 @@ def test_every_aim_has_a_unit_and_a_source_and_the_loops_own_goes_first(tmp_path
     assert {each.point for each in found} == {"feed", "root_zone"}
 
     loop = bench.loop("north bay")
-    own = replace(loop, limits={"root_zone": {"Na": Sourced(None, 5.0, "own trial")}, "drain": {}})
+    own = loop._replace(limits={"root_zone": {"Na": Sourced(None, 5.0, "own trial")}, "drain": {}})
     [sodium] = [each for each in aims(bench.site, own) if (each.point, each.what) == ("root_zone", "Na")]
     assert (sodium.words, sodium.source) == ("at most 5 mmol/L", "own trial")
     assert "drain" in {each.point for each in aims(bench.site, own)}

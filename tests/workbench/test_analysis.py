@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from datetime import UTC, datetime
 
 import pytest
@@ -92,9 +91,9 @@ def test_the_drain_stands_in_where_the_root_zone_was_never_sampled() -> None:
 
 def test_an_extract_is_shown_as_the_pore_water_it_stands_for() -> None:
     # Factor of the site for its own paste extracts: its setting, here 2.0.
-    loop = replace(SLABS, extract_factors={"paste": 2.0})
+    loop = SLABS._replace(extract_factors={"paste": 2.0})
     texts = {"by": "MK", "at": "2026-06-25 09:00", "point": "root_zone", "method": "paste", "K": "3.0", "EC": "2.0"}
-    entry = entry_from_text("analysis", texts, replace(SITE, loops=(loop,)), loop, NOW)
+    entry = entry_from_text("analysis", texts, SITE._replace(loops=(loop,)), loop, NOW)
     found = analysis(SITE, loop, [entry], NOW)
     assert (found.method, found.rows[0].managed) == ("paste", 6.0)
 

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 
@@ -106,7 +105,7 @@ def test_a_recipe_marked_done_is_the_recipe_that_runs_from_then_on(bench: Bench)
 @pytest.mark.parametrize("read", [True, False])
 def test_acid_marked_done_says_whether_its_cautions_were_acknowledged(bench: Bench, read: bool) -> None:
     # Logging what happened always works, and carries "cautions not acknowledged" where they were not.
-    split = replace(acid_step(), acid="nitric acid 38", strength_pct=38.0, density_kg_per_l=1.233, litres=0.3)
+    split = acid_step()._replace(acid="nitric acid 38", strength_pct=38.0, density_kg_per_l=1.233, litres=0.3)
     item = next(each for each in accepted(bench, acid=(split,)) if each.what == split.acid)
     done = bench.mark_done(item.number, "AN", strength_pct=38.0, read=read)
     assert (done.kind, done.number_of("litres"), done.number_of("strength")) == ("acid", 0.3, 38.0)
@@ -129,8 +128,8 @@ def test_expected_water_and_light_are_no_steps(bench: Bench) -> None:
 def test_a_step_is_not_done_while_more_than_a_spoonful_is_missing(amount: float, part: float) -> None:
     item = PlanItem(1, datetime(2026, 7, 1, tzinfo=UTC), "MKP", amount, "kg", "tank", 2, amount * part)
     assert item.state == "partly done"
-    assert replace(item, done_amount=amount).state == "done"
-    assert replace(item, done_number=None, done_amount=None).state == "planned"
+    assert item._replace(done_amount=amount).state == "done"
+    assert item._replace(done_number=None, done_amount=None).state == "planned"
 
 
 # Release of sheets with acid -----------------------------------------------------------------------------------------

@@ -33,3 +33,56 @@ def test_a_plan_for_days_to_come_is_read_once(demo: Path) -> None:
     bench = open_site(demo)
     planned = bench.record("plan", {"crop": "600", "at": "2027-06-09 08:00", "by": "RV"}, "lettuce")
     assert [entry.number for entry in bench.entries()].count(planned.number) == 1
+
+
+def a_year_ago(days: int = 0) -> str:
+    return (DEMO_MORNING - timedelta(days=365 + days)).strftime("%Y-%m-%d %H:%M")
+
+
+def test_the_last_report_stands_however_old_it_is_with_the_one_before(demo: Path) -> None:
+    bench = open_site(demo)
+    point = {"point": "root_zone", "by": "MK"}
+    for days, k in ((200, "5.0"), (100, "6.0"), (0, "7.0")):
+        bench.record("analysis", {"K": k, "Ca": "9", "Mg": "4", "at": a_year_ago(days), **point}, "north bay")
+    at = DEMO_MORNING - timedelta(days=365 - 250)
+    found = bench.analysis("north bay", at)
+    assert found.managed is not None
+    assert found.previous is not None
+    assert (found.managed.values["K"], found.previous.values["K"]) == (7.0, 6.0)
+    assert [entry.number_of("K") for entry in bench.entries(at) if entry.kind == "analysis"] == [7.0]
+    glance = bench.glance("north bay", at)
+    assert glance.last_analysis is not None
+    assert glance.last_analysis.values["K"] == 7.0
+    assert bench.today("north bay", at).last_analysis == glance.last_analysis
+
+
+def test_a_report_struck_later_stands_only_as_the_book_was_known_then(demo: Path) -> None:
+    bench = open_site(demo)
+    texts = {"point": "root_zone", "by": "MK", "K": "7.0", "at": a_year_ago()}
+    at = DEMO_MORNING - timedelta(days=200)
+    struck = bench.record("analysis", texts, "north bay")
+    before = struck.entered
+    bench.void(struck.number or 0, "another grower's", "MK")
+    assert bench.analysis("north bay", at).managed is None
+    assert bench.analysis("north bay", at, before).managed is not None
+
+
+def test_set_points_readings_checks_and_stock_drawn_do_not_vanish_with_the_months(demo: Path) -> None:
+    bench = open_site(demo)
+    tank = bench.site.loop("north bay").stock_tanks[0]
+    logged = (
+        ("batch", {"tank": tank, "litres": "1000"}, 30),
+        ("stock", {"tank": tank, "litres": "400"}, 20),
+        ("setpoint", {"EC": "2.2"}, 10),
+        ("calibration", {"quantity": "EC", "standard": "1.41", "reading": "1.60", "instrument": "EC pen"}, 8),
+        ("reading", {"point": "feed", "EC": "2.1"}, 5),
+    )
+    for kind, texts, days in logged:
+        bench.record(kind, {**texts, "at": a_year_ago(days), "by": "MK"}, "north bay")
+    at = DEMO_MORNING - timedelta(days=200)
+    glance = bench.glance("north bay", at)
+    assert glance.set_ec == 2.2
+    assert glance.readings["feed"].values["EC"] == 2.1
+    assert {row.name: row.litres_left for row in bench.stock_rows("north bay", at)}[tank] == 600.0
+    kinds = [entry.kind for entry in bench.entries(at)]
+    assert [kinds.count(kind) for kind in ("calibration", "reading", "stock")] == [1, 1, 1]

@@ -5,7 +5,6 @@ from __future__ import annotations
 import json
 import math
 from collections.abc import Iterable, Mapping
-from dataclasses import fields, is_dataclass
 from datetime import date, datetime
 from enum import Enum
 from typing import Any
@@ -25,15 +24,16 @@ def dump(document: Mapping[str, Any]) -> str:
 
 
 def plain(value: Any) -> Any:
-    """Any result as JSON-able values: dataclasses by field, times in ISO 8601, not-finite numbers as null."""
+    """Any result as JSON-able values: records by field, times in ISO 8601, not-finite numbers as null."""
     if isinstance(value, float):
         return value if math.isfinite(value) else None
     if isinstance(value, (datetime, date)):
         return value.isoformat()
     if isinstance(value, Enum):
         return value.value
-    if is_dataclass(value) and not isinstance(value, type):
-        return {field.name: plain(getattr(value, field.name)) for field in fields(value)}
+    names = getattr(value, "_fields", None)
+    if names:
+        return {name: plain(getattr(value, name)) for name in names}
     if isinstance(value, Mapping):
         return {str(key): plain(each) for key, each in value.items()}
     if isinstance(value, str) or value is None or isinstance(value, (bool, int)):

@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
 from datetime import datetime
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.chemistry.names import MICRONUTRIENTS
 from fertui.estimate.notices.feeding import near_set_point
@@ -22,8 +21,7 @@ TIDY_FROM = 0.05
 """Shortest time ahead that is worth a number [d]."""
 
 
-@dataclass(frozen=True, slots=True)
-class Standing:
+class Standing(NamedTuple):
     """One number against its band: out now, or with what probability out within the days ahead."""
 
     what: str

@@ -4,8 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.estimate.points import Band, Estimated
 
@@ -28,8 +27,7 @@ POINT_WORDS = {"feed": "at the drip", "tank": "in the tank", "root_zone": "in th
                "drain_store": "in the drain store"}  # fmt: skip
 
 
-@dataclass(frozen=True, slots=True)
-class Notice:
+class Notice(NamedTuple):
     """One thing to look at: ``severity`` act, watch or note; ``key`` of the form or view where it is acted upon."""
 
     code: str

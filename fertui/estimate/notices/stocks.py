@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
 from datetime import datetime, time, timedelta
+from typing import NamedTuple
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -23,8 +23,7 @@ LONGEST_GAP = 5.0
 USUAL_SPAN = timedelta(days=1)
 
 
-@dataclass(frozen=True, slots=True)
-class StockLeft:
+class StockLeft(NamedTuple):
     """One stock tank now: litres left, litres a day as used lately (None: not known)."""
 
     litres: float

@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from datetime import timedelta
 from functools import cached_property
+from typing import NamedTuple
 
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.kinds import KINDS, Field
@@ -16,8 +17,7 @@ LOOK_BACK = timedelta(days=35)
 """How far back the last value of a kind is looked for (common practice, no source)."""
 
 
-@dataclass(frozen=True, slots=True)
-class Question:
+class Question(NamedTuple):
     """Something odd about an entry: asked where somebody can answer, kept as a flag of the entry otherwise.
 
     ``value``: the suspicious value as written; ``suggestion``: a text to put in its place, '' where there is none.

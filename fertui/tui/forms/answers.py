@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field, replace
+from typing import NamedTuple
 
 from fertui.tui.forms.spec import Asked, Spec
 from fertui.tui.typing_line import Typed
 
 
-@dataclass(frozen=True, slots=True)
-class Answers:
+class Answers(NamedTuple):
     """The state of a form being filled in.
 
     ``texts``: one a field. ``typed``: the field under the cursor as it is being typed. ``understood``: echo a field.
@@ -20,9 +19,9 @@ class Answers:
     spec: Spec
     texts: tuple[str, ...]
     at: int = 0
-    typed: Typed = field(default_factory=Typed)
-    understood: Mapping[int, str] = field(default_factory=dict)
-    doubts: Mapping[int, str] = field(default_factory=dict)
+    typed: Typed = Typed()
+    understood: Mapping[int, str] = {}
+    doubts: Mapping[int, str] = {}
     settled: frozenset[tuple[int, str]] = frozenset()
 
     @classmethod
@@ -48,13 +47,13 @@ class Answers:
             return self
         texts = (*self.texts[: self.at], text, *self.texts[self.at + 1 :])
         without = {number: echo for number, echo in self.understood.items() if number != self.at}
-        return replace(self, texts=texts, understood=without)
+        return self._replace(texts=texts, understood=without)
 
     def moved(self, to: int) -> Answers:
         """The cursor in another field, what was typed kept."""
         kept = self.with_typed_kept()
         to = max(0, min(to, len(self.spec.fields) - 1))
-        return replace(kept, at=to, typed=Typed.at_end(kept.texts[to]))
+        return kept._replace(at=to, typed=Typed.at_end(kept.texts[to]))
 
     def next_group(self, step: int = 1) -> Answers:
         """The cursor in the first field of the next group, round about."""
@@ -67,13 +66,13 @@ class Answers:
 
     def emptied(self) -> Answers:
         """The field under the cursor ready to be typed anew."""
-        return self if self.current.choices else replace(self, typed=Typed())
+        return self if self.current.choices else self._replace(typed=Typed())
 
     def type(self, characters: str) -> Answers:
         """Characters typed: into the text, or to pick a choice by its beginning."""
         if self.current.choices:
             return self._picked(characters)
-        return replace(self, typed=self.typed.insert(characters))
+        return self._replace(typed=self.typed.insert(characters))
 
     def edit(self, key: str) -> Answers | None:
         """An editing key, None when it is none here."""
@@ -81,32 +80,32 @@ class Answers:
             step = {"left": -1, "right": 1, "space": 1}.get(key)
             return None if step is None else self._stepped(step)
         typed = self.typed.edit(key)
-        return None if typed is None else replace(self, typed=typed)
+        return None if typed is None else self._replace(typed=typed)
 
     def _picked(self, characters: str) -> Answers:
         """The next choice that begins with the character typed; a digit counts them from one."""
         choices, character = self.current.choices, characters[:1].lower()
         if character.isdigit() and 1 <= int(character) <= len(choices):
-            return replace(self, typed=Typed.at_end(choices[int(character) - 1]))
+            return self._replace(typed=Typed.at_end(choices[int(character) - 1]))
         if character == " ":
             return self._stepped(1)
         here = choices.index(self.typed.text) if self.typed.text in choices else -1
         for choice in (*choices[here + 1 :], *choices[: here + 1]):
             if choice.lower().startswith(character):
-                return replace(self, typed=Typed.at_end(choice))
+                return self._replace(typed=Typed.at_end(choice))
         return self
 
     def _stepped(self, step: int) -> Answers:
         choices = self.current.choices
         here = choices.index(self.typed.text) if self.typed.text in choices else -1 if step > 0 else 0
-        return replace(self, typed=Typed.at_end(choices[(here + step) % len(choices)]))
+        return self._replace(typed=Typed.at_end(choices[(here + step) % len(choices)]))
 
     def heard(self, number: int, echo: str, doubt: str) -> Answers:
         """What was understood of a field, and what is odd about it."""
         doubts = {**self.doubts, number: doubt} if doubt else {n: d for n, d in self.doubts.items() if n != number}
-        return replace(self, understood={**self.understood, number: echo}, doubts=doubts)
+        return self._replace(understood={**self.understood, number: echo}, doubts=doubts)
 
     def settle(self, number: int) -> Answers:
         """The doubt about a field is answered: its value stays."""
         doubts = {n: d for n, d in self.doubts.items() if n != number}
-        return replace(self, doubts=doubts, settled=self.settled | {(number, self.texts[number])})
+        return self._replace(doubts=doubts, settled=self.settled | {(number, self.texts[number])})

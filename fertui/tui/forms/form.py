@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
 from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual import events
@@ -165,7 +164,7 @@ class Form(View):
         if before is None:
             self.say(("There is no last value of this in the logbook.", "watch"))
         else:
-            self._set(replace(self.answers, typed=type(self.answers.typed).at_end(before[0])))
+            self._set(self.answers._replace(typed=type(self.answers.typed).at_end(before[0])))
 
     def action_close(self) -> None:
         """Leave; what was typed is kept."""
@@ -303,7 +302,7 @@ class Form(View):
         if len(texts) == len(self.spec.fields):
             first_empty = next((i for i, text in enumerate(texts) if not text), 0)
             self._set(
-                replace(self.answers, texts=texts, typed=type(self.answers.typed).at_end(texts[0]), at=0).moved(
+                self.answers._replace(texts=texts, typed=type(self.answers.typed).at_end(texts[0]), at=0).moved(
                     first_empty
                 )
             )

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from typing import NamedTuple
 
 EVERY = -1
 """Number in place of an entry's for a field that belongs to all entries of a form, such as the time."""
@@ -11,8 +11,7 @@ EVERY = -1
 Texts = dict[str, str]
 
 
-@dataclass(frozen=True, slots=True)
-class Asked:
+class Asked(NamedTuple):
     """One field: which entry it goes into and under what name, how it is labelled, what may be typed.
 
     ``choices``: one of these, else anything; ``words``: letters are text, not units. ``default`` stands in the field
@@ -34,24 +33,21 @@ class Asked:
         return not self.choices and not self.words
 
 
-@dataclass(frozen=True, slots=True)
-class Group:
+class Group(NamedTuple):
     """Fields that are walked together; Tab goes from group to group."""
 
     title: str
     fields: tuple[Asked, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Part:
+class Part(NamedTuple):
     """An entry that may come of a form: its kind and what is fixed in it."""
 
     kind: str
-    fixed: Mapping[str, str] = field(default_factory=dict)
+    fixed: Mapping[str, str] = {}
 
 
-@dataclass(frozen=True, slots=True)
-class Spec:
+class Spec(NamedTuple):
     """A form: title, the entries it makes, its groups, columns of fields on a screen of 80, words of help."""
 
     title: str

@@ -126,7 +126,6 @@ def in_unit(series: Series, unit: str) -> Series:
     """An ion's course in the unit chosen; shares, EC and pH stay as they are."""
     if series.unit != "mmol/L":
         return series
-    from dataclasses import replace
 
     from fertui.estimate.points import Estimated
     from fertui.workbench.units import shown
@@ -138,7 +137,7 @@ def in_unit(series: Series, unit: str) -> Series:
         None if series.band[0] is None else to(series.band[0]), None if series.band[1] is None else to(series.band[1])
     )  # fmt: skip
     values = tuple(Estimated(to(v.value), to(v.low), to(v.high), band) for v in series.values)
-    return replace(series, unit=shown(series.what, 1.0, unit)[1], band=band, values=values, measured=tuple((at,
+    return series._replace(unit=shown(series.what, 1.0, unit)[1], band=band, values=values, measured=tuple((at,
     to(v)) for at, v in series.measured))  # fmt: skip
 
 

@@ -238,7 +238,6 @@ def _value(state: PointState, what: str) -> Estimated | None:
 
 def _in_unit(value: Estimated | None, what: str, unit: str) -> tuple[Estimated | None, str]:
     """A value in the unit chosen, with that unit."""
-    from dataclasses import replace
 
     from fertui.workbench.today import unit_of
     from fertui.workbench.units import shown
@@ -252,7 +251,7 @@ def _in_unit(value: Estimated | None, what: str, unit: str) -> tuple[Estimated |
         else tuple(None if edge is None else shown(what, edge, unit)[0] for edge in value.band)
     )
     numbers = {name: shown(what, getattr(value, name), unit)[0] for name in ("value", "low", "high")}
-    return replace(value, band=band, **numbers), shown(what, 1.0, unit)[1]  # type: ignore[arg-type]
+    return value._replace(band=band, **numbers), shown(what, 1.0, unit)[1]  # type: ignore[arg-type]
 
 
 def _words(value: Estimated | None, unit: str) -> str:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from pathlib import Path
 from typing import Any, ClassVar
 
@@ -62,13 +61,13 @@ class LogbookView(EntryList, inherit_bindings=False):
             Chooser(
                 "Show which kind?",
                 options,
-                lambda kind: self._filter(replace(self.wanted, kinds=() if kind == "all kinds" else (kind,))),
+                lambda kind: self._filter(self.wanted._replace(kinds=() if kind == "all kinds" else (kind,))),
             )
         )
 
     def action_one_loop(self) -> None:
         """This loop, or all."""
-        self._filter(replace(self.wanted, loop="" if self.wanted.loop else self.fertui.snapshot.loop))
+        self._filter(self.wanted._replace(loop="" if self.wanted.loop else self.fertui.snapshot.loop))
 
     async def action_person(self) -> None:
         """Choose a person."""
@@ -77,13 +76,13 @@ class LogbookView(EntryList, inherit_bindings=False):
         people = sorted({entry.by for entry in self.fertui.snapshot.get(Ask("history")) or ()})
         options = [Option("everybody", value=" "), *(Option(person) for person in people)]
         await self.fertui.open_page(
-            Chooser("Whose entries?", options, lambda person: self._filter(replace(self.wanted, by=person.strip())))
+            Chooser("Whose entries?", options, lambda person: self._filter(self.wanted._replace(by=person.strip())))
         )
 
     def action_text(self) -> None:
         """Ask for a text."""
         self.fertui.ask(
-            "Entries with this in them:", lambda text: self._filter(replace(self.wanted, text=text)), self.wanted.text
+            "Entries with this in them:", lambda text: self._filter(self.wanted._replace(text=text)), self.wanted.text
         )
 
     def action_everything(self) -> None:
