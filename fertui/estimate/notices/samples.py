@@ -23,7 +23,8 @@ def few(look: Look) -> Iterator[Notice]:
     """Fewer than three analyses: the ranges come from other growers' crops."""
     count = look.estimate.analyses
     if count == 0:
-        text = "No analysis yet: what is shown starts from feed or water and other growers' crops. Send a sample."
+        known = "No analysis yet" if last_analysis(look) is None else "No analysis to begin from"
+        text = f"{known}: what is shown starts from feed or water and other growers' crops. Send a sample."
         yield Notice("few_analyses", WATCH, text, "a")
     elif count < FEW:
         word = "analysis" if count == 1 else "analyses"
