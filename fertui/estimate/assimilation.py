@@ -21,6 +21,7 @@ from fertui.estimate.drives import drives
 from fertui.estimate.ensemble import Ensemble, compartment
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation, pooled
+from fertui.estimate.quantiles import median
 from fertui.estimate.ranges import Spread
 from fertui.estimate.record import Record, read
 from fertui.estimate.resuming import Stop, spans_alike
@@ -155,9 +156,10 @@ class Assimilation:
         return seen is not self.begin.analysis and seen.time >= self.begin.time
 
     def _changes(self) -> list[float]:
-        """Times at which set points, recipes or stages change."""
+        """Times at which set points, recipes, stages or source waters change."""
         record = self.record
-        return [*record.recipes.times, *record.setpoints.times, *record.stages.times]
+        waters = (time for water in record.waters.values() for time in water.times[1:])
+        return [*record.recipes.times, *record.setpoints.times, *record.stages.times, *waters]
 
     def _at(self, span: int) -> float:
         return float(self.grid[span])
@@ -198,7 +200,7 @@ class Assimilation:
         where = solutions(self.setting, before, feed_drive(self.drives, 0, before))
         name = seen.point if seen.point in where else managed(self.record.loop)
         logs = np.log(np.maximum(where[name][:, columns], TRACE))
-        off = np.log(seen.values()) - np.quantile(logs, 0.5, axis=0)
+        off = np.log(seen.values()) - median(logs)
         self.spread = self.spread.learned(found.columns, logs - logs.mean(axis=0), seen.covariance(), off)
 
     def _flag(self, seen: Observation, found: Innovation) -> None:
@@ -246,7 +248,7 @@ class Assimilation:
         record = self.record
         path = stacked(self.setting, [mark[1] for mark in self.marks])
         return Estimate(
-            site=record.site, loop=record.loop, at=record.at, seed=self.seed, record=record, setting=self.setting,
+            site=record.site_now, loop=record.loop, at=record.at, seed=self.seed, record=record, setting=self.setting,
             drives=self.drives, ensemble=self.ensemble, spread=self.spread, begin=self.begin, analyses=self.analyses,
             surprises=tuple(self.surprises), held_back=tuple(self.held_back),
             times=tuple(mark[0] for mark in self.marks), path=path, path_ec=np.stack([mark[2] for mark in self.marks]),

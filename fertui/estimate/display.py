@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+from bisect import bisect_right
 from collections.abc import Mapping, Sequence
+from math import sqrt
 
 import numpy as np
 
@@ -12,7 +14,8 @@ from fertui.estimate.drives import Drives
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.observations import Observation
 from fertui.estimate.points import Band, Estimated, IonState, PointState
-from fertui.estimate.ranges import HIGH, LOW, Spread, neutral, shared_meq, shares
+from fertui.estimate.quantiles import quantiles
+from fertui.estimate.ranges import Spread, neutral, shared_meq, shares
 from fertui.estimate.setting import Setting
 from fertui.loop import ROOT, STORE, Drive, feed_composition
 from fertui.site.model import Loop, Site, Sourced
@@ -115,11 +118,11 @@ class Course:
 
     def __init__(self, members: Array, ec: Array) -> None:
         self.members = members
-        self.ions = np.quantile(members, (0.5, LOW, HIGH), axis=-2)
+        self.ions = quantiles(members, axis=-2)
         self.ec_members = np.exp(log_ec(members, self.ions[0]) + ec)
-        self.shares = np.quantile(shares(members), (0.5, LOW, HIGH), axis=-2)
+        self.shares = quantiles(shares(members), axis=-2)
         self.enough = shared_meq(self.ions[0]) >= LEAST_SHARED_MEQ
-        self.ec = np.quantile(self.ec_members, (0.5, LOW, HIGH), axis=-1)
+        self.ec = quantiles(self.ec_members, axis=-1)
 
 
 def courses(solutions: Mapping[str, Array], ec: Array, spread: Spread) -> dict[str, Course]:
@@ -153,17 +156,21 @@ class Panel:
         return Estimated(middle, low, high, self.bands.get(what))
 
 
-def ph_at(seen: Sequence[Observation], point: str, time: float, band: Band | None) -> Estimated | None:
-    """pH of a point from its last measurement up to a time; None where that is more than four weeks old."""
-    here = SAME_WATER.get(point, (point,))
-    given = [each for each in seen if each.ph is not None and each.point in here and each.time <= time + 1e-6]
-    given = [each for each in given if not each.doubtful and time - each.time < PH_DAYS]
-    if not given:
-        return None
-    last = given[-1]
-    assert last.ph is not None
-    width = PH_ERROR + PH_DRIFT * np.sqrt(max(time - last.time, 0.0))
-    return Estimated(last.ph, last.ph - float(width), last.ph + float(width), band)
+class Acidity:
+    """pH of one point as it was measured; it has no model."""
+
+    def __init__(self, seen: Sequence[Observation], point: str) -> None:
+        here = SAME_WATER.get(point, (point,))
+        given = [each for each in seen if each.ph is not None and each.point in here and not each.doubtful]
+        self.times, self.values = [each.time for each in given], [each.ph or 0.0 for each in given]
+
+    def at(self, time: float, band: Band | None) -> Estimated | None:
+        """The last measurement up to a time, wider with age; None where it is more than four weeks old."""
+        place = bisect_right(self.times, time + 1e-6) - 1
+        if place < 0 or time - self.times[place] >= PH_DAYS:
+            return None
+        ph, width = self.values[place], PH_ERROR + PH_DRIFT * sqrt(max(time - self.times[place], 0.0))
+        return Estimated(ph, ph - width, ph + width, band)
 
 
 def micronutrients_at(

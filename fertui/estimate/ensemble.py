@@ -7,12 +7,13 @@ loop, exchange capacity and selectivity. A multiplier trades off against water a
 
 from __future__ import annotations
 
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 
 from fertui.chemistry.ions import INDEX, Array
 from fertui.estimate.noise import normals
+from fertui.estimate.quantiles import median
 from fertui.estimate.setting import Setting
 from fertui.loop import ROOT, STORE, Medium, Plants, State
 
@@ -93,8 +94,8 @@ class Ensemble(NamedTuple):
     def middle(self, setting: Setting) -> Ensemble:
         """One member that stands in the middle: median of every amount and unknown, the exchanger loaded to match."""
         amounts = (self.state.water_l, self.state.ions_mmol, self.state.exchanged_meq)
-        state = State(*(np.quantile(each, 0.5, axis=0)[None] for each in amounts))
-        unknown = {name: np.quantile(getattr(self, name), 0.5, axis=0)[None] for name in UNKNOWNS}
+        state = State(*(median(each)[None] for each in amounts))
+        unknown: dict[str, Any] = {name: median(getattr(self, name))[None] for name in UNKNOWNS}
         found = self._replace(state=state, **unknown)
         return found._replace(state=state.reloaded(found.medium(setting)))
 

@@ -14,10 +14,11 @@ import numpy as np
 
 from fertui.chemistry.ions import Array
 from fertui.estimate.assimilation import Estimate, copies, thin
-from fertui.estimate.display import Course, Panel, allowed, courses, log_ec, ph_at, solutions, stacked
+from fertui.estimate.display import Acidity, Course, Panel, allowed, courses, log_ec, solutions, stacked
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.passage import Days, LeavesBand, banded, leaves_band, out_since, passages, quantities
 from fertui.estimate.points import Band, PointState
+from fertui.estimate.quantiles import median, ranked
 from fertui.estimate.routine import Routine, routine
 from fertui.estimate.scenario import ROUTINE, Dose, FeedRecipe, Renewal, Scenario
 from fertui.estimate.walk import CLOSE, Way, night
@@ -116,11 +117,9 @@ def forecast(estimate: Estimate, days: int, scenario: Scenario = ROUTINE) -> For
     leaving: list[LeavesBand] = []
     for point, course in courses(ran.ions, ran.log_ec, estimate.spread).items():
         bands = allowed(estimate.site, estimate.loop, point)
-        panel = Panel(course, bands)
+        panel, acidity = Panel(course, bands), Acidity(estimate.record.observations, point)
         for day in range(1, days + 1):
-            time = estimate.record.end + day
-            ph = ph_at(estimate.record.observations, point, time, bands.get("pH"))
-            coming[day - 1][point] = panel.state(day, ph)
+            coming[day - 1][point] = panel.state(day, acidity.at(estimate.record.end + day, bands.get("pH")))
         leaving += _leaving(estimate, point, course, bands)
     ahead = tuple(ForecastDay(at, points) for at, points in zip(ran.at[1:], coming, strict=True))
     return Forecast(estimate.at, ahead, tuple(leaving), ran.assumed, ran.inputs, scenario)
@@ -133,15 +132,15 @@ def _leaving(estimate: Estimate, point: str, course: Course, bands: Mapping[str,
     rows = []
     for what, band in banded(bands, found):
         passed = passages(days, found[what], band)
-        since = _since(estimate, point, what, band) if np.quantile(passed, 0.5, method="nearest") == 0.0 else None
+        since = _since(estimate, point, what, band) if ranked(passed)[0] == 0.0 else None
         rows.append(leaves_band(point, what, estimate.at, passed, since))
     return rows
 
 
 def _since(estimate: Estimate, point: str, what: str, band: Band) -> datetime | None:
     """Since when the middle of the members has been out."""
-    middle = np.quantile(estimate.path[point], 0.5, axis=1)[:, None]
-    ec = np.exp(log_ec(middle, middle[:, 0]) + np.quantile(estimate.path_ec, 0.5, axis=1)[:, None])
+    middle = median(estimate.path[point], axis=1)[:, None]
+    ec = np.exp(log_ec(middle, middle[:, 0]) + median(estimate.path_ec, axis=1)[:, None])
     values = quantities(middle, ec).get(what)
     times = tuple(estimate.record.moment(time) for time in estimate.times)
     return None if values is None else out_since(times, values[:, 0], band)

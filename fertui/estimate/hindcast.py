@@ -21,9 +21,11 @@ from fertui.estimate.display import SHARED, feed_drive, managed, shown_members, 
 from fertui.estimate.forecast import trajectories
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
-from fertui.estimate.ranges import HIGH, LOW, Spread, shares
+from fertui.estimate.quantiles import median, quantiles
+from fertui.estimate.ranges import Spread, shares
 from fertui.estimate.record import ANEW, WHOLE_DAYS, Record, read
 from fertui.estimate.scores import HindcastRow, Summary, crps, summary
+from fertui.estimate.source_waters import is_of_water
 from fertui.estimate.walk import CLOSE, Way
 from fertui.logbook.entries import Entry
 from fertui.site.model import Loop, Site
@@ -59,7 +61,8 @@ def hindcast(
     if inputs not in INPUTS:
         raise ValueError(f"inputs {inputs!r} is not one of {', '.join(INPUTS)}")
     count = members or (MEMBERS_OF_RECORD if inputs == "logged" else MEMBERS)
-    kept = [entry for entry in entries if entry.loop == loop.name and entry.at <= at]
+    past = (entry for entry in entries if entry.at <= at)
+    kept = [entry for entry in past if entry.loop == loop.name or is_of_water(entry)]
     rows: list[HindcastRow] = []
     for end in _epochs(kept):
         run = Assimilation(read(site, loop, kept, end, whole=True), count, seed)
@@ -156,10 +159,10 @@ def _rows(run: Assimilation, pair: _Pair, ahead: tuple[Array, Spread]) -> list[H
     sampled = _with_sampling_error(run, pair.target, members)
     measured, before = compositions.array(pair.target.ions), compositions.array(pair.origin.ions)
     both = [ion for ion in IONS if ion in pair.target.ions and ion in pair.origin.ions and ion != "HCO3"]
-    triples = np.quantile(sampled, (0.5, LOW, HIGH), axis=0)
+    triples = quantiles(sampled)
     found, now, then = shares(sampled), shares(measured), shares(before)
     plain = shares(last_uptake(run, pair.before, pair.origin, pair.target)) if pair.judged and pair.before else then
-    share_triples = np.quantile(found, (0.5, LOW, HIGH), axis=0)
+    share_triples = quantiles(found)
     rows = []
     for ion in both:
         place = INDEX[ion]
@@ -183,7 +186,7 @@ def _rows(run: Assimilation, pair: _Pair, ahead: tuple[Array, Spread]) -> list[H
 def _with_sampling_error(run: Assimilation, target: Observation, members: Array) -> Array:
     """What an analysis of every member would show: its own error on top."""
     columns = target.columns()
-    noise = target.covariance(np.quantile(members[:, columns], 0.5, axis=0))
+    noise = target.covariance(median(members[:, columns]))
     drawn = normals(
         run.seed, run.record.loop.name, f"sample {target.at.isoformat()} {target.point}", len(members), len(columns)
     )

@@ -11,7 +11,8 @@ import numpy as np
 from fertui.chemistry.ions import INDEX, IONS, Array
 from fertui.estimate.display import LEAST_SHARED_MEQ, SHARED
 from fertui.estimate.points import Band
-from fertui.estimate.ranges import HIGH, LOW, shared_meq, shares
+from fertui.estimate.quantiles import median, ranked
+from fertui.estimate.ranges import shared_meq, shares
 
 
 class Days(NamedTuple):
@@ -40,7 +41,7 @@ def quantities(members: Array, ec: Array) -> dict[str, Array]:
     """Everything a band can be set for, (times, M) each, from compositions (times, M, 10) and EC (times, M)."""
     by_share = shares(members)
     found = {f"{ion} share": by_share[..., place] for place, ion in enumerate(SHARED)}
-    if np.quantile(shared_meq(members[0]), 0.5) < LEAST_SHARED_MEQ:
+    if median(shared_meq(members[0])) < LEAST_SHARED_MEQ:
         found = {}
     return {**found, "EC": ec, **{ion: members[..., INDEX[ion]] for ion in IONS}}
 
@@ -70,7 +71,7 @@ def passages(days: Array, values: Array, band: Band) -> Array:
 
 def leaves_band(point: str, what: str, now: datetime, passed: Array, since: datetime | None) -> LeavesBand:
     """What first passages (M,) [d] say."""
-    middle, low, high = (_finite(np.quantile(passed, part, method="nearest")) for part in (0.5, LOW, HIGH))
+    middle, low, high = (_finite(days) for days in ranked(passed))
     at = None if middle is None else now + timedelta(days=middle)
     probability = float(np.isfinite(passed).mean())
     return LeavesBand(point, what, at, Days(middle, low, high), since if middle == 0.0 else None, probability)

@@ -14,6 +14,7 @@ import numpy as np
 from fertui.chemistry.ions import CHARGE, INDEX, Array
 from fertui.estimate.correction import TRACE
 from fertui.estimate.points import Band, Estimated
+from fertui.estimate.quantiles import median, quantiles
 
 FORGETTING = 0.9
 PRIOR_WEIGHT = 4.0
@@ -23,7 +24,6 @@ MOST = 9.0
 """Largest squared standardised innovation that counts."""
 VOLATILE = 2.0
 """A specific scale above this (in standard deviations) makes a loop volatile: weekly samples are the remedy."""
-LOW, HIGH = 0.10, 0.90
 LARGEST_PROJECTION = 0.5
 MOST_ALKALINITY = 6.0
 """Alkalinity [meq/L] above this is no water of a greenhouse; it is not let into the charge balance."""
@@ -80,7 +80,7 @@ class Spread(NamedTuple):
     def widened(self, mmol_l: Array) -> Array:
         """Concentrations (..., M, 10) with their deviations from the median scaled: common and specific apart."""
         logs = np.log(np.maximum(mmol_l[..., :_HCO3], TRACE))
-        middle = np.quantile(logs, 0.5, axis=-2, keepdims=True)
+        middle = median(logs, axis=-2)[..., None, :]
         common = (logs - middle).mean(axis=-1, keepdims=True)
         scaled = middle + self.common * common + self.specific * (logs - middle - common)
         return np.concatenate([np.exp(scaled), mmol_l[..., _HCO3:]], axis=-1)
@@ -116,5 +116,5 @@ def shared_meq(mmol_l: Array) -> Array:
 
 def estimated(values: Array, band: Band | None = None) -> Estimated:
     """Median and 80 % range of members' values (M,)."""
-    low, middle, high = np.quantile(values, (LOW, 0.5, HIGH))
-    return Estimated(float(middle), float(low), float(high), band)
+    middle, low, high = (float(value) for value in quantiles(values))
+    return Estimated(middle, low, high, band)

@@ -18,7 +18,8 @@ from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.forecast import Forecast, forecast
 from fertui.estimate.observations import Observation
 from fertui.estimate.points import Estimated, PointState
-from fertui.estimate.ranges import HIGH, LOW, shares
+from fertui.estimate.quantiles import HIGH, LOW, quantiles
+from fertui.estimate.ranges import shares
 
 USUAL_DAYS, OFTEN_DAYS = 14.0, 7.0
 """A sample every two weeks; every week where the loop is volatile, exchanges, or is little known (field practice)."""
@@ -112,7 +113,7 @@ def _share_widths(estimate: Estimate, ensemble: Ensemble) -> Array:
     """Widths (3,) of the 80 % ranges of the shares at the managed point, as they would be shown."""
     drive = feed_drive(estimate.drives, len(estimate.drives.grid) - 2, ensemble)
     members = shown_members(solutions(estimate.setting, ensemble, drive)[estimate.managed], estimate.spread)
-    low, high = np.quantile(shares(members), (LOW, HIGH), axis=0)
+    low, high = quantiles(shares(members), (LOW, HIGH))
     return np.maximum(high - low, 1e-9)
 
 

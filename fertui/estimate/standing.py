@@ -13,12 +13,12 @@ import numpy as np
 from fertui.chemistry.ions import IONS, Array
 from fertui.estimate.beginning import Beginning
 from fertui.estimate.display import (
+    Acidity,
     Course,
     Panel,
     allowed,
     managed,
     micronutrients_at,
-    ph_at,
     same_solution,
     shown_members,
 )
@@ -173,10 +173,10 @@ class Estimate:
     def course(self, point: str, last: int | None = None) -> tuple[PointAt, ...]:
         """One point once a local day, the ``last`` so many (all: None), and now; without micronutrients."""
         which = slice(0 if last is None else max(len(self.times) - last, 0), None)
-        bands, seen = allowed(self.site, self.loop, point), self.record.observations
+        bands, acidity = allowed(self.site, self.loop, point), Acidity(self.record.observations, point)
         panel = Panel(self._quantiles(same_solution(self.setting, point), which), bands)
         return tuple(
-            PointAt(self.record.moment(time), panel.state(place, ph_at(seen, point, time, bands.get("pH"))))
+            PointAt(self.record.moment(time), panel.state(place, acidity.at(time, bands.get("pH"))))
             for place, time in enumerate(self.times[which])
         )
 

@@ -61,7 +61,10 @@ class Entry(NamedTuple):
 
     def value(self, name: str) -> Value | None:
         """The value of that name, or None."""
-        return next((value for value in self.values if value.name == name), None)
+        for value in self.values:
+            if value.name == name:
+                return value
+        return None
 
     def number_of(self, name: str) -> float | None:
         """Canonical number of the value of that name, or None."""

@@ -90,8 +90,9 @@ def in_words(item: PlanItem, timezone: str) -> str:
 
 def _is_step(entry: Entry) -> bool:
     """Whether a plan entry is a step to carry out; coming water, light or feed alone are expectations."""
-    named = any(entry.text_of(name) for name in ("salt", "acid", "recipe"))
-    return entry.kind == "plan" and (named or entry.number_of("bleed") is not None)
+    if entry.kind != "plan":
+        return False
+    return any(entry.text_of(name) for name in ("salt", "acid", "recipe")) or entry.number_of("bleed") is not None
 
 
 def _item(planned: Entry, done: Sequence[Entry]) -> PlanItem:
