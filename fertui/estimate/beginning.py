@@ -7,7 +7,7 @@ from typing import NamedTuple
 import numpy as np
 
 from fertui.chemistry.ions import INDEX, IONS, Array
-from fertui.estimate.compositions import array, of_water, target_feed
+from fertui.estimate.compositions import array, target_feed
 from fertui.estimate.correction import ElectroMeter, corrected
 from fertui.estimate.drives import stock_proportions
 from fertui.estimate.ensemble import ALKALINITY_MEQ_L, Ensemble, compartment, unknowns
@@ -110,7 +110,7 @@ def _alkalinity(record: Record, setting: Setting, begin: Beginning) -> float:
 def _unseen(record: Record, setting: Setting, time: float) -> Array:
     """What a vessel holds (10,) before anyone analysed it: its feed; a shared tank its source water."""
     if setting.circuit.layout == "shared-tank":
-        return of_water(record.site, str(record.sources.at(time) or setting.loop.water))
+        return record.make_up_at(time).copy()
     if setting.circuit.layout == "known-feed" and record.feed:
         return record.feed[0][1].copy()
     return stock_proportions(record, time).copy()

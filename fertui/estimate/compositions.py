@@ -56,14 +56,6 @@ def of_acid(site: Site, entry: Entry) -> Array:
     return array(found.mmol_per_kg(pct)) * found.density(pct) * (entry.number_of("litres") or 0.0)
 
 
-def of_water(site: Site, name: str) -> Array:
-    """Composition (10,) of a source water by name; pure water where the site does not know it."""
-    for water in site.waters:
-        if water.name.lower() == name.lower():
-            return array(water.composition.ions)
-    return np.zeros(len(IONS))
-
-
 def target_feed(site: Site, loop: Loop) -> Composition:
     """The feed the loop aims at: the aim of its target at the dripper, else in the tank."""
     aims = target_of(site, loop)

@@ -72,9 +72,7 @@ def drives(record: Record, setting: Setting, grid: Array) -> Drives:
     """The drives of a record over the stretches of a grid [d]."""
     days = np.maximum(np.diff(grid), 1e-9)
     starts = grid[:-1]
-    sources = [str(record.sources.at(time) or setting.loop.water) for time in starts]
-    known: Mapping[str, Array] = {name: compositions.of_water(record.site, name) for name in set(sources)}
-    make_up = tuple(known[name] for name in sources)
+    make_up = tuple(record.make_up_at(time) for time in starts)
     holding = Holding(record, setting)
     covered = record.stock.covered(grid) >= LOGGED
     holds = tuple(() if logged else holding.holds(time) for logged, time in zip(covered, starts, strict=True))
@@ -99,12 +97,12 @@ def _feeds(record: Record, setting: Setting, grid: Array) -> Array:
 
 def stock_proportions(record: Record, time: float) -> Array:
     """The feed (10,) [mmol/L] that the stocks make: recipe, else what was mixed and the water, else the target's."""
-    return carried(record, time) + _water_at(record, time)
+    return carried(record, time) + record.make_up_at(time)
 
 
 def carried(record: Record, time: float) -> Array:
     """What the stocks themselves bring into that feed (10,) [mmol/L]: a recipe or target less what the water brings."""
-    recipe, water = record.recipes.at(time), _water_at(record, time)
+    recipe, water = record.recipes.at(time), record.make_up_at(time)
     mixed = sum((held / tank.dilution for tank, held in _held(record, time)), np.zeros(len(INDEX)))
     if recipe is None and mixed.any():
         return mixed
@@ -117,10 +115,6 @@ def beyond(feed: Array, water: Array) -> Array:
     left = np.maximum(feed - water, 0.0)
     left[..., _HCO3] = 0.0
     return left if left.any() else np.maximum(feed, 0.0)
-
-
-def _water_at(record: Record, time: float) -> Array:
-    return compositions.of_water(record.site, str(record.sources.at(time) or record.loop.water))
 
 
 def _held(record: Record, time: float) -> Iterator[tuple[StockTank, Array]]:

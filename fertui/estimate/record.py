@@ -17,6 +17,7 @@ from fertui.catalogue.figures import CatalogueError
 from fertui.chemistry.ions import IONS, Array
 from fertui.estimate import compositions
 from fertui.estimate.observations import Observation, observations
+from fertui.estimate.source_waters import as_analysed, water_analyses
 from fertui.estimate.spreads import Spread, Steps, spread
 from fertui.logbook.entries import Entry
 from fertui.loop.values import Event
@@ -41,6 +42,8 @@ class Record(NamedTuple):
     ``first``: time of the first entry, None without any.
     ``water``: litres by name, spread over their time; ``bleed`` stands among ``events``. ``stock``: mmol (n, 10);
     ``stock_held``: what each stock tank held from which batch on [mmol/L].
+    ``waters``: what each source water of the site holds (10,) [mmol/L], by its name in lower case: as the site file
+    says, and from each analysis on. ``site_now``: the site with its waters as last analysed.
     ``feed``: knots (time, composition) of a known feed. ``anew``: times at which the estimate must start afresh.
     """
 
@@ -59,6 +62,8 @@ class Record(NamedTuple):
     feed: tuple[tuple[float, Array], ...]
     recipes: Steps
     sources: Steps
+    waters: Mapping[str, Steps]
+    site_now: Site
     setpoints: Steps
     stages: Steps
     light: Mapping[int, float]
@@ -72,6 +77,15 @@ class Record(NamedTuple):
     def time(self, moment: datetime) -> float:
         """Days from ``zero`` to a moment."""
         return (moment - self.zero).total_seconds() / 86400.0
+
+    def water_at(self, name: str, time: float) -> Array:
+        """What a source water holds (10,) [mmol/L] at a time; nothing where the site does not know it."""
+        known = self.waters.get(name.lower())
+        return np.zeros(len(IONS)) if known is None else np.asarray(known.at(time))
+
+    def make_up_at(self, time: float) -> Array:
+        """What the water that tops up the loop at a time holds (10,) [mmol/L]."""
+        return self.water_at(str(self.sources.at(time) or self.loop.water), time)
 
     def moment(self, days: float) -> datetime:
         """The moment so many days after ``zero``, in UTC."""
@@ -125,14 +139,15 @@ def since_needed(at: datetime, analyses: Iterable[Entry] = ()) -> datetime:
 
 def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, whole: bool = False) -> Record:
     """The record of a loop from its effective entries; those of other loops and after ``at`` are left out."""
-    own = sorted((each for each in entries if each.loop == loop.name and _known(each, at)), key=lambda each: each.at)
+    known = [each for each in entries if _known(each, at)]
+    own = sorted((each for each in known if each.loop == loop.name), key=lambda each: each.at)
     first = max(own[0].at, at - timedelta(days=WHOLE_DAYS if whole else HISTORY_DAYS + 7)) if own else at
     zone = ZoneInfo(site.timezone)
     zero = datetime.combine(first.astimezone(zone).date(), time(), zone).astimezone(UTC)
     by_kind: dict[str, list[Entry]] = {}
     for entry in own:
         by_kind.setdefault(entry.kind, []).append(entry)
-    return _Reader(site, loop, zero, zone, by_kind).record(at, whole)
+    return _Reader(site, loop, zero, zone, by_kind, known).record(at, whole)
 
 
 def _known(entry: Entry, at: datetime) -> bool:
@@ -144,9 +159,16 @@ class _Reader:
     """Builds a record; holds what its steps share."""
 
     def __init__(
-        self, site: Site, loop: Loop, zero: datetime, zone: ZoneInfo, by_kind: Mapping[str, list[Entry]]
+        self,
+        site: Site,
+        loop: Loop,
+        zero: datetime,
+        zone: ZoneInfo,
+        by_kind: Mapping[str, list[Entry]],
+        of_all_loops: Sequence[Entry],
     ) -> None:
         self.site, self.loop, self.zero, self.zone, self.by_kind = site, loop, zero, zone, by_kind
+        self.of_all_loops = of_all_loops
         self.assumed: list[str] = []
 
     def record(self, at: datetime, whole: bool) -> Record:
@@ -157,7 +179,8 @@ class _Reader:
             site=self.site, loop=self.loop, at=at, whole=whole, zero=self.zero, end=self.days(at),
             first=self._first(), water=self._water(), levels=self._levels(), stock=self._stock(held), stock_held=held,
             events=self._events(seen), feed=self._feed(seen),
-            recipes=self._recipes(), sources=self._sources(), setpoints=self._steps("setpoint"),
+            recipes=self._recipes(), sources=self._sources(), waters=self._waters(),
+            site_now=as_analysed(self.site, self.of_all_loops, at), setpoints=self._steps("setpoint"),
             stages=self._steps("crop"), light=self._light(), drain_pct=self._drain_pct(), observations=seen,
             anew=self._anew(ANEW), new_medium=max(self._anew(("planted", "replanted", "new medium")), default=None),
             plans=tuple(self._of("plan")), assumed=tuple(self.assumed),
@@ -304,6 +327,16 @@ class _Reader:
     def _sources(self) -> Steps:
         given = [entry for entry in self._certain("water") if entry.text_of("source")]
         return Steps(tuple(self.days(each.at) - 1.0 for each in given), tuple(each.text_of("source") for each in given))
+
+    def _waters(self) -> dict[str, Steps]:
+        analyses = water_analyses(self.site, self.of_all_loops)
+        found = {}
+        for water in self.site.waters:
+            later = analyses.get(water.name.lower(), ())
+            held = [water.composition, *(composition for _, composition in later)]
+            times = (-np.inf, *(self.days(when) for when, _ in later))
+            found[water.name.lower()] = Steps(times, tuple(compositions.array(each.ions) for each in held))
+        return found
 
     def _steps(self, kind: str) -> Steps:
         """Entries of a kind; later ones keep what they do not name from earlier ones."""

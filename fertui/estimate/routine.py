@@ -167,7 +167,7 @@ class _Builder:
         planned = [each.entry.text_of("source") for each in self.plans if each.begin <= time < each.end]
         named = self.scenario.source or next((name for name in reversed(planned) if name), "")
         logged = str(self.record.sources.at(self.now) or self.loop.water)
-        return compositions.of_water(self.record.site, named or logged)
+        return self.record.water_at(named or logged, self.now)
 
     def _recipe(self, time: float) -> tuple[Mapping[str, float | Array] | None, bool]:
         """The recipe a what-if or a plan sets at a time, if any, and whether it was a what-if."""

@@ -7,6 +7,7 @@ from datetime import datetime
 from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.chemistry.names import CHARGES, IONS, MICRONUTRIENTS
+from fertui.estimate.source_waters import is_of_water, make_up_of, water_of
 from fertui.logbook.entries import Entry
 from fertui.site.model import Composition, Loop, Site
 from fertui.workbench.entering import check_analysis
@@ -35,7 +36,7 @@ class AnalysisRow(NamedTuple):
 
 
 class AnalysisView(NamedTuple):
-    """The last analysis of a loop, side by side."""
+    """The last analysis of a loop, side by side; ``water``: that of its make-up water, where the logbook has one."""
 
     loop: str
     at: datetime
@@ -50,6 +51,8 @@ class AnalysisView(NamedTuple):
     shares: Mapping[str, tuple[float | None, float | None]]
     checks: Mapping[str, tuple[Check, ...]]
     last_change: str
+    water: Seen | None = None
+    water_name: str = ""
 
 
 def analysis(site: Site, loop: Loop, entries: Sequence[Entry], at: datetime) -> AnalysisView:
@@ -59,6 +62,7 @@ def analysis(site: Site, loop: Loop, entries: Sequence[Entry], at: datetime) -> 
     there = [entry for entry in own if entry.point == point]
     feed = _last([entry for entry in own if entry.point == "feed"])
     managed, previous = _last(there), _last(there[:-1])
+    water = _last([entry for entry in entries if _is_make_up(site, loop, entry)])
     target = _target(site, loop, point)
     reference = _reference_ec(target)
     return AnalysisView(
@@ -77,7 +81,15 @@ def analysis(site: Site, loop: Loop, entries: Sequence[Entry], at: datetime) -> 
         shares={ion: (share_of(managed, ion), share_of(previous, ion)) for ion in ("K", "Ca", "Mg")},
         checks={entry.point: check_analysis(entry) for entry in (feed, managed) if entry is not None},
         last_change=_last_change(loop, entries, previous, managed),
+        water=None if water is None else seen(water),
+        water_name=make_up_of(site, loop),
     )
+
+
+def _is_make_up(site: Site, loop: Loop, entry: Entry) -> bool:
+    """Whether it is an analysis, in use, of the water that tops up the loop."""
+    used = is_of_water(entry) and not entry.doubtful
+    return used and water_of(site, entry).lower() == make_up_of(site, loop).lower()
 
 
 def _as_solution(entry: Entry, loop: Loop) -> Entry:

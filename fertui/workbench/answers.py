@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from datetime import datetime, timedelta
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -16,9 +17,11 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Balance
     from fertui.estimate.forecast import Forecast, Scenario
     from fertui.estimate.hindcast import Hindcast
+    from fertui.logbook.entries import Entry
     from fertui.planning.last_mix import LastMix
     from fertui.planning.values import AcidSheet, Plan, StockSheet
     from fertui.site.edit import Row as SiteRow
+    from fertui.site.model import Site
     from fertui.workbench.aims import Aim
     from fertui.workbench.analysis import AnalysisView
     from fertui.workbench.checks import CheckRow
@@ -139,8 +142,10 @@ class Answers(SiteFolder):
 
         chosen, at = self.loop(loop), at or now()
         chance = {} if seed is None else {"seed": seed}
-        whole_record = self.book.entries(loop=chosen.name, at=at, known=known)
-        return hindcast(self.site, chosen, whole_record, at, inputs, **chance)
+        own = self.book.entries(loop=chosen.name, at=at, known=known)
+        analyses = self.book.entries(kinds=("analysis",), at=at, known=known)
+        waters = (each for each in analyses if each.point == "source" and each.loop not in (chosen.name, ""))
+        return hindcast(self.site, chosen, (*own, *waters), at, inputs, **chance)
 
     def plan(
         self,
@@ -161,15 +166,23 @@ class Answers(SiteFolder):
         from fertui.planning import stock_sheet
         from fertui.workbench.carrying_out import running_recipe
 
-        chosen = self.loop(loop)
-        return stock_sheet(self.site, chosen, recipe=running_recipe(self.site, chosen, self.entries()))
+        chosen, entries = self.loop(loop), self.entries()
+        site = self.site_as_analysed(entries)
+        return stock_sheet(site, chosen, recipe=running_recipe(site, chosen, entries))
 
     def acid(self, loop: str | None = None) -> AcidSheet:
         """The acid sheet of a loop's make-up water: for its tank, or for a m3 where the water is treated on its way."""
         from fertui.planning import acid_sheet
 
         chosen = self.loop(loop)
-        return acid_sheet(self.site, chosen, volume_l=chosen.tank_l or A_CUBIC_METRE)
+        site = self.site_as_analysed(self.entries())
+        return acid_sheet(site, chosen, volume_l=chosen.tank_l or A_CUBIC_METRE)
+
+    def site_as_analysed(self, entries: Sequence[Entry], at: datetime | None = None) -> Site:
+        """The site with its source waters as the logbook's last analyses of them say."""
+        from fertui.estimate.source_waters import as_analysed
+
+        return as_analysed(self.site, entries, at or now())
 
     def check(self) -> tuple[CheckRow, ...]:
         """Site file, logbook, watch list and this machine, as rows."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
+from fertui.chemistry.names import IONS
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
 from fertui.paper.page import folded
@@ -17,9 +18,11 @@ FOLLOWED = ("K share", "Ca share", "Mg share", "Na", "EC")
 
 def text(view: AnalysisView, timezone: str, unit: str) -> str:
     """The report side by side: drip, managed point, previous, normalised, target, deviation."""
+    water = _water(view, timezone, unit)
     if view.managed is None and view.feed is None:
-        return (
-            f"{view.loop}: no analysis logged yet. Take one with 'fertui record SITE analysis point=... K=... Ca=...'."
+        none = f"{view.loop}: no analysis of its solution is logged yet. "
+        return "\n".join(
+            [*folded(f"{none}Take one with 'fertui record SITE analysis point=... K=... Ca=...'.", ""), *water]
         )
     lines = [f"{view.loop}: last analysis"]
     for name, seen in (("drip", view.feed), (POINT_WORDS[view.managed_point], view.managed)):
@@ -37,7 +40,23 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
         lines += ["", f"Checks of the {POINT_WORDS[point]} analysis"]
         for check in checks:
             lines += folded(f"{check.what}: {_check(check)}", f"  {'ok' if check.passed else '! '} ")
+    lines += water
     return "\n".join([*lines, "", *folded(view.last_change, "")] if view.last_change else lines)
+
+
+def _water(view: AnalysisView, timezone: str, unit: str) -> list[str]:
+    """The make-up water as last analysed."""
+    if view.water is None:
+        return []
+    seen = view.water
+    numbers = [f"{name} {words.number(seen.values[name])}" for name in ("EC", "pH") if name in seen.values]
+    numbers += [
+        f"{words.label(ion, unit)} {words.number(seen.values[ion] * words.factor(ion, unit))}"
+        for ion in IONS
+        if ion in seen.values
+    ]
+    head = f"Make-up water {view.water_name}, {words.local(seen.at, timezone)}, entry {seen.number}, used from then on"
+    return ["", *folded(f"{head}: {'  '.join(numbers)}  ({unit})", "")]
 
 
 def _check(check: Any) -> str:

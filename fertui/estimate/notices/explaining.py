@@ -9,7 +9,6 @@ import numpy as np
 
 from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import IONS, Array
-from fertui.estimate import compositions
 from fertui.estimate.notices.look import Look
 from fertui.estimate.notices.notice import WATCH, Notice
 from fertui.estimate.notices.stocks import amounts, day_grid
@@ -62,7 +61,7 @@ def _made_of_days(look: Look) -> Array:
     covered = np.minimum.reduce([irrigation.covered(grid), make_up.covered(grid), stock.covered(by_record)])
     litres = np.where(covered > WHOLE_DAY, irrigation.over(grid), np.nan)[:, None]
     fresh = np.clip(make_up.over(grid)[:, None] / litres, 0.0, 1.0)
-    source = compositions.of_water(look.site, look.loop.water)
+    source = look.estimate.record.make_up_at(look.estimate.record.end)
     blend = (1.0 - fresh) * _drain_of_days(look) + fresh * source + stock.over(by_record) / litres
     made = np.asarray(conductivity(np.nan_to_num(blend)))
     return np.where(np.isnan(blend).any(axis=1), np.nan, made)

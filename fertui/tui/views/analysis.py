@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
+from fertui.chemistry.names import IONS
 from fertui.tui.figures import MARKS, amount, number, point_name, unit_and_species
 from fertui.tui.ink import BLANK, Line, Span, beside, col, fit, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
@@ -52,10 +53,12 @@ class AnalysisView(View):
         if report is None:
             return waiting(snapshot, ask, "the last analysis", width)
         if report.managed is None and report.feed is None:
-            return [BLANK, line(" ", Span("No analysis is logged for this loop.", "watch"), " a logs one.")]
+            none = [BLANK, line(" ", Span("No analysis of this loop's solution is logged.", "watch"), " a logs one.")]
+            return [*none, BLANK, *_water(report, snapshot.unit, width)]
         room = min(width, 80)
         table = [*_heading(report, snapshot.unit, room), *_rows(report.rows, snapshot.unit, room)]
         below = [*_shares(report, room), *_said(report, width), BLANK, *_checks(report, width)]
+        below += [line(), *water] if (water := _water(report, snapshot.unit, width)) else []
         micros = _micronutrients(report.micronutrients, snapshot.unit, room)
         if width >= WIDE:
             return beside([*table, BLANK, *below], micros, 80, 3)
@@ -135,6 +138,22 @@ def _checks(report: Report, width: int) -> list[Line]:
             first, *more = wrap(literal(text), width - 5)
             rows += [line(Span(f" {mark} ", ink), first), *(line("   ", text) for text in more)]
     return rows if len(rows) > 1 else []
+
+
+def _water(report: Report, unit: str, width: int) -> list[Line]:
+    """The make-up water as last analysed: what the model, the plan and the acid count with from then on."""
+    if report.water is None:
+        return []
+    from fertui.workbench.units import shown
+
+    values = report.water.values
+    numbers = [f"EC {number(values['EC'], 2)} mS/cm"] if "EC" in values else []
+    numbers += [f"pH {number(values['pH'])}"] if "pH" in values else []
+    for ion in (each for each in IONS if each in values):
+        value, label = shown(ion, values[ion], unit)
+        numbers.append(f"{unit_and_species(label, ion)[1]} {amount(value)}")
+    title = f" make-up water {literal(report.water_name)} of {_day(report.water)}, {unit}, used from then on"
+    return [line(Span(title, "title")), *(line(f" {text}") for text in wrap(", ".join(numbers), width - 2))]
 
 
 def _micronutrients(rows: Sequence[AnalysisRow], unit: str, room: int) -> list[Line]:
