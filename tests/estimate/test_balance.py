@@ -9,9 +9,13 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from fertui.estimate.assimilation import Estimate, assimilate
-from fertui.estimate.balance import BalanceRow, balance, crop_water_l, discharged
+from fertui.estimate.balance import Balance, BalanceRow, balance, crop_water_l, discharged
+from fertui.estimate.forecast import forecast
 from fertui.logbook.entries import Entry
 from tests.estimate.logs import DRAIN, FEED, SALAD, SITE, SLAB, TANK, daily_water, entry, fed, moment
+
+
+LAST_WEEK = entry("analysis", 6.0, "tank", "source", source="rain", Na=2.0)
 
 
 @cache
@@ -102,3 +106,39 @@ def test_nitrogen_discharged_is_the_bleed_times_what_the_tank_held() -> None:
     assert 0.3 * held < lost[0].kg_n < held
     assert crop_water_l(_slab(), moment(2.0), moment(4.0)) == pytest.approx(6000.0, rel=0.05)
     assert set(FEED) <= set(balance(_slab(), moment(2.0), moment(4.0)).ions)
+
+
+def _topped_up(*analyses: Entry) -> Estimate:
+    """A tank from its first analysis on, 200 L of rain a day, the rain analysed now and then."""
+    water = [entry("water", float(day), "tank", whole_day=True, make_up=200.0) for day in range(12)]
+    log = [entry("analysis", 0.5, "tank", "tank", **SALAD), *water, *analyses]
+    return assimilate(SITE, TANK, log, moment(11.0), members=30)
+
+
+def _sodium_per_chloride(account: Balance) -> float:
+    """Of make-up water: chloride stays at the 0.1 mmol/L of the site file, whatever litres the members take up."""
+    return account.ions["Na"].make_up / account.ions["Cl"].make_up
+
+
+def test_a_source_water_brings_what_its_analysis_says_from_its_time_on() -> None:
+    # By hand: Na and Cl are 0.1 mmol/L each as the site file says; from day 6 on Na is 2.0 as analysed, for all loops.
+    found = _topped_up(entry("analysis", 6.0, "slab", "source", source="rain", Na=2.0))
+    assert _sodium_per_chloride(balance(found, moment(2.0), moment(6.0))) == pytest.approx(1.0, rel=1e-6)
+    assert _sodium_per_chloride(balance(found, moment(6.0), moment(10.0))) == pytest.approx(20.0, rel=1e-6)
+
+
+def test_an_analysis_that_names_no_water_is_of_the_one_the_loop_is_topped_up_with() -> None:
+    found = _topped_up(entry("analysis", 6.0, "tank", "source", Na=2.0))
+    assert _sodium_per_chloride(balance(found, moment(6.0), moment(10.0))) == pytest.approx(20.0, rel=1e-6)
+
+
+def test_a_doubtful_analysis_of_a_source_water_changes_nothing() -> None:
+    doubted = entry("analysis", 6.0, "tank", "source", source="rain", doubtful="wrong bottle", Na=2.0)
+    found = _topped_up(doubted)
+    assert _sodium_per_chloride(balance(found, moment(6.0), moment(10.0))) == pytest.approx(1.0, rel=1e-6)
+
+
+def test_the_days_ahead_are_topped_up_with_the_water_as_last_analysed() -> None:
+    plain, analysed = (forecast(_topped_up(*given), 5) for given in ((), (LAST_WEEK,)))
+    sodium = [each.days[-1].points["tank"].ions["Na"].mmol_l.value for each in (plain, analysed)]
+    assert sodium[1] > sodium[0] + 0.5  # 400 L a day of 2.0 mmol/L into 2000 L, lettuce leaves most of it

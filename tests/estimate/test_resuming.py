@@ -55,6 +55,15 @@ def test_an_earlier_estimate_changes_no_answer(change: str, medium: str) -> None
     assert _same(resumed, assimilate(SITE, loop, entries, moment(day), members=MEMBERS))
 
 
+def test_an_analysis_of_the_source_water_is_run_again_from_its_time_on() -> None:
+    log = [entry("analysis", 0.5, "tank", "tank", **SALAD)]
+    before = assimilate(SITE, TANK, log, moment(12.0), members=MEMBERS)
+    entries = [*log, entry("analysis", 6.0, "tank", "source", source="rain", Na=2.0)]
+    resumed = assimilate(SITE, TANK, entries, moment(12.0), members=MEMBERS, before=before)
+    assert _same(resumed, assimilate(SITE, TANK, entries, moment(12.0), members=MEMBERS))
+    assert not _same(resumed, before)
+
+
 @pytest.mark.parametrize(
     ("change", "most"), [("nothing", 2), ("a day on", 4), ("a reading", 3), ("a late analysis", 16)]
 )

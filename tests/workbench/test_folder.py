@@ -86,3 +86,21 @@ def test_set_points_readings_checks_and_stock_drawn_do_not_vanish_with_the_month
     assert {row.name: row.litres_left for row in bench.stock_rows("north bay", at)}[tank] == 600.0
     kinds = [entry.kind for entry in bench.entries(at)]
     assert [kinds.count(kind) for kind in ("calibration", "reading", "stock")] == [1, 1, 1]
+
+
+def test_acid_plan_and_stock_sheet_count_with_the_water_as_last_analysed(demo: Path) -> None:
+    bench = open_site(demo)
+    before, sheet = bench.acid("lettuce"), bench.stock("north bay")
+    report = {"point": "source", "at": (DEMO_MORNING - timedelta(days=3)).strftime("%Y-%m-%d %H:%M"), "by": "MK"}
+    bench.record("analysis", {**report, "source": "rain", "HCO3": "3.3"}, "north bay")
+    bench.record("analysis", {**report, "source": "well", "Ca": "2.6"}, "north bay")
+    after = bench.acid("lettuce")
+    assert (before.alkalinity_meq_l, after.alkalinity_meq_l) == (0.3, 3.3)
+    calcium = [
+        sum(each.kg for tank in made.tanks for each in tank.salts if "calcium" in each.salt)
+        for made in (sheet, bench.stock("north bay"))
+    ]
+    assert calcium[1] < calcium[0]
+    assert [water.composition.source for water in bench.site.waters] == ["invented analysis"] * 2
+    estimate = bench.estimate("lettuce", DEMO_MORNING)
+    assert [water.composition.ions["HCO3"] for water in estimate.site.waters] == [2.9, 3.3]
