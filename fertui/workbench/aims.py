@@ -1,4 +1,4 @@
-"""Bands and limits in force: what a loop is steered by at each point, and where each comes from."""
+"""What is in force for a loop and where it comes from: bands and limits at each point, waters as last analysed."""
 
 from __future__ import annotations
 
@@ -12,7 +12,10 @@ from fertui.workbench.glance import managed_point
 
 
 class Aim(NamedTuple):
-    """A band or a limit of one quantity at one point, in its unit; None: that side is open."""
+    """A band or a limit of one quantity at one point, in its unit; None: that side is open.
+
+    Of kind ``analysed``: what a source water holds, both sides the same.
+    """
 
     point: str
     what: str
@@ -30,10 +33,14 @@ class Aim(NamedTuple):
         '18 to 28 %'
         >>> Aim("tank", "Na", "limit", None, 8.0, "mmol/L", "").words
         'at most 8 mmol/L'
+        >>> Aim("water well", "Ca", "analysed", 1.3, 1.3, "mmol/L", "analysis 45").words
+        '1.3 mmol/L'
         """
         if self.low is None and self.high is None:
             return "none"
-        if self.low is None:
+        if self.low == self.high:
+            text = f"{self.low:.3g}"
+        elif self.low is None:
             text = f"at most {self.high:.3g}"
         elif self.high is None:
             text = f"at least {self.low:.3g}"
@@ -49,6 +56,21 @@ def aims(site: Site, loop: Loop) -> tuple[Aim, ...]:
     for point in dict.fromkeys(("feed", managed_point(loop), *named)):
         found += _of("band", point, bands_of(site, loop, point))
         found += _of("limit", point, limits_of(site, loop, point))
+    return tuple(found)
+
+
+def analysed_waters(site: Site, as_analysed: Site) -> tuple[Aim, ...]:
+    """What the logbook's analyses say of the source waters where that takes the place of the site file's numbers."""
+    found = []
+    for file_water, water in zip(site.waters, as_analysed.waters, strict=True):
+        if water != file_water:
+            each = water.composition
+            numbers = {"EC": each.ec, "pH": each.ph, **each.ions, **each.micronutrients}
+            found += [
+                Aim(f"water {water.name}", what, "analysed", value, value, unit_of(what), each.source)
+                for what, value in numbers.items()
+                if value is not None
+            ]
     return tuple(found)
 
 

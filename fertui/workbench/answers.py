@@ -225,7 +225,8 @@ class Answers(SiteFolder):
         return rows(self.site)
 
     def aims(self, loop: str | None = None) -> tuple[Aim, ...]:
-        """Bands and limits in force for a loop, each with where it comes from."""
-        from fertui.workbench.aims import aims
+        """Bands and limits in force for a loop and waters as last analysed, each with where it comes from."""
+        from fertui.workbench.aims import aims, analysed_waters
 
-        return aims(self.site, self.loop(loop))
+        waters = analysed_waters(self.site, self.site_as_analysed(self.entries()))
+        return (*aims(self.site, self.loop(loop)), *waters)

@@ -22,3 +22,13 @@ def test_every_aim_has_a_unit_and_a_source_and_the_loops_own_goes_first(tmp_path
     [sodium] = [each for each in aims(bench.site, own) if (each.point, each.what) == ("root_zone", "Na")]
     assert (sodium.words, sodium.source) == ("at most 5 mmol/L", "own trial")
     assert "drain" in {each.point for each in aims(bench.site, own)}
+
+
+def test_a_water_as_last_analysed_is_in_force_with_its_entry(demo: Path) -> None:
+    bench = open_site(demo)
+    report = {"point": "source", "source": "well", "at": "2026-05-20 09:00", "by": "MK"}
+    entry = bench.record("analysis", {**report, "Ca": "2.6", "pH": "7.9"}, "north bay")
+    rows = {aim.what: aim for aim in bench.aims("north bay") if aim.kind == "analysed"}
+    assert {aim.point for aim in rows.values()} == {"water well"}
+    assert (rows["Ca"].words, rows["pH"].words, rows["Mg"].words) == ("2.6 mmol/L", "7.9", "0.5 mmol/L")
+    assert rows["Ca"].source == f"analysis {entry.number} of 20 May 2026"

@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 
 IN_FORCE = "in force:"
 """How the name of a row begins that is not of the file."""
+HOW_TO_ANALYSE = "It counts from that report on. Log the next one with a; strike a wrong one in the Logbook (7)."
 HOW_TO_SET = (
     "To set your own, write it under bands or limits of the loop or of the site in site.toml, with its source; "
     "docs/files.md shows how."
@@ -26,7 +27,7 @@ HOW_TO_SET = (
 
 
 class InForce(NamedTuple):
-    """A band or limit in force: its name, its range in words, where it comes from."""
+    """A band, limit or analysed water in force: its name, its range in words, where it comes from."""
 
     key: str
     text: str
@@ -43,13 +44,13 @@ class SiteView(View):
         "On the right stands where a value comes from; 'unverified preset' means nobody has checked it for your crop. "
         "Enter changes the value under the bar: it is checked as a whole, the old file is kept beside the new one, "
         "and the change is logged with your initials. Below the values of the file stand the bands and limits in force "
-        "for this loop, wherever they come from; i shows these alone. / shows only rows with a text in them."
+        "for this loop, wherever they come from, and waters as last analysed; i shows these alone. / shows only rows with a text in them."
     )
     BINDINGS: ClassVar[list[Any]] = [
         *SCROLLING,
         Binding("enter", "edit", "change", id="site.edit", tooltip="Change the value under the bar."),
         Binding("slash", "text", "search", id="site.text", tooltip="Show rows with a text in them."),
-        Binding("i", "in_force", "in force", id="site.aims", tooltip="Show the bands and limits in force, alone."),
+        Binding("i", "in_force", "in force", id="site.aims", tooltip="Show bands, limits and analysed waters in force, alone."),
         Binding("backspace", "everything", "all", show=False, id="site.all", tooltip="Show every row again."),
         Binding("c", "check", "check", id="site.check", tooltip="Check site file, logbook and this machine."),
     ]
@@ -141,7 +142,8 @@ class SiteView(View):
         row = rows[self.row]
         key: str = row.key
         if isinstance(row, InForce):
-            self.fertui.say_at_length(key, f"{row.text}. It comes from: {row.source}. {HOW_TO_SET}")
+            how = HOW_TO_ANALYSE if key.endswith(" analysed") else HOW_TO_SET
+            self.fertui.say_at_length(key, f"{row.text}. It comes from: {row.source}. {how}")
             return
 
         def change(text: str) -> None:
