@@ -9,7 +9,7 @@ from functools import cache
 from typing import Any, NamedTuple
 
 from fertui.catalogue.figures import STATUSES, CatalogueError, Provenance, interpolated, table
-from fertui.catalogue.formula import molar_mass
+from fertui.chemistry.formula import molar_mass
 
 
 class Acid(NamedTuple):

@@ -8,7 +8,7 @@ from functools import cache
 from typing import Any, NamedTuple
 
 from fertui.catalogue.figures import CatalogueError, Provenance, interpolated, table
-from fertui.catalogue.formula import molar_mass
+from fertui.chemistry.formula import molar_mass
 from fertui.chemistry.names import CHARGES
 
 MICRONUTRIENT_CHARGE = {"Fe": 3, "Mn": 2, "Zn": 2, "B": 0, "Cu": 2, "Mo": -2, "Si": 0}

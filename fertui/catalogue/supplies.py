@@ -8,8 +8,8 @@ from typing import Protocol
 
 from fertui.catalogue.acids import Acid, acid, acids
 from fertui.catalogue.figures import CatalogueError
-from fertui.catalogue.formula import molar_mass
 from fertui.catalogue.salts import Salt, salt
+from fertui.chemistry.formula import molar_mass
 
 NEUTRAL_WITHIN_PCT = 5.0
 """Largest 100 (cations - anions)/(cations + anions) [%] a label may show. Labels round to whole percents and guarantee

@@ -16,8 +16,8 @@ import numpy as np
 
 from fertui.chemistry.activity import davies, speciate
 from fertui.chemistry.equilibria import constant
+from fertui.chemistry.formula import molar_mass
 from fertui.chemistry.ions import INDEX, Array, composition
-from fertui.chemistry.species import molar_mass
 from fertui.refusals import Refusal
 
 AIR_CO2_PPM = 420.0

@@ -6,11 +6,10 @@ and "-N" are ways of counting; nothing else is meant to be in the water.
 
 from __future__ import annotations
 
-import re
-from functools import cache
 from typing import NamedTuple
 
-from fertui.chemistry.names import ATOMIC_WEIGHT, MICRONUTRIENTS
+from fertui.chemistry.formula import molar_mass
+from fertui.chemistry.names import MICRONUTRIENTS
 
 
 class Species(NamedTuple):
@@ -40,16 +39,6 @@ class Species(NamedTuple):
     def is_micronutrient(self) -> bool:
         """Whether the canonical unit is umol/L."""
         return self.ion in MICRONUTRIENTS
-
-
-@cache
-def molar_mass(formula: str) -> float:
-    """Molar mass [g/mol] of a formula without brackets, from the atomic weights of ``ions``.
-
-    >>> round(molar_mass("CaCO3"), 2)
-    100.09
-    """
-    return sum(ATOMIC_WEIGHT[atom] * int(count or 1) for atom, count in re.findall(r"([A-Z][a-z]?)(\d*)", formula))
 
 
 _FORMS: tuple[tuple[str, str, str, float, int], ...] = (

@@ -5,8 +5,8 @@ from __future__ import annotations
 import pytest
 
 from fertui.catalogue.figures import STATUSES, CatalogueError
-from fertui.catalogue.formula import atoms
 from fertui.catalogue.salts import Salt, question, salt, salts
+from fertui.chemistry.formula import atoms
 from fertui.chemistry.names import ATOMIC_WEIGHT, CHARGES, MICRONUTRIENTS
 
 NAMES = [each.name for each in salts()]

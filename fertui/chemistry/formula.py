@@ -6,8 +6,8 @@ import re
 from collections import Counter
 from functools import cache
 
-from fertui.catalogue.figures import CatalogueError
 from fertui.chemistry.names import ATOMIC_WEIGHT
+from fertui.refusals import Refusal
 
 TOKEN = re.compile(r"([A-Z][a-z]?)(\d*)|(\()|\)(\d*)")
 
@@ -16,7 +16,7 @@ TOKEN = re.compile(r"([A-Z][a-z]?)(\d*)|(\()|\)(\d*)")
 def atoms(formula: str) -> dict[str, int]:
     """Number of each atom in one formula unit; a dot separates parts, each with a leading count.
 
-    Raises ``CatalogueError`` for a text that is not a formula.
+    Raises ``Refusal`` for a text that is not a formula.
 
     >>> atoms("5Ca(NO3)2.NH4NO3.10H2O")["Ca"]
     5
@@ -36,7 +36,7 @@ def _part(text: str, formula: str) -> Counter[str]:
     while position < len(text):
         token = TOKEN.match(text, position)
         if token is None:
-            raise CatalogueError(f"{formula!r} is not a chemical formula: stopped at {text[position:]!r}")
+            raise Refusal(f"{formula!r} is not a chemical formula: stopped at {text[position:]!r}")
         position = token.end()
         if token.group(1):
             open_groups[-1][token.group(1)] += int(token.group(2) or 1)
@@ -46,9 +46,9 @@ def _part(text: str, formula: str) -> Counter[str]:
             for element, number in open_groups.pop().items():
                 open_groups[-1][element] += number * int(token.group(4) or 1)
         else:
-            raise CatalogueError(f"{formula!r} is not a chemical formula: a bracket closes that was not opened")
+            raise Refusal(f"{formula!r} is not a chemical formula: a bracket closes that was not opened")
     if len(open_groups) > 1 or not open_groups[0]:
-        raise CatalogueError(f"{formula!r} is not a chemical formula: empty, or a bracket stays open")
+        raise Refusal(f"{formula!r} is not a chemical formula: empty, or a bracket stays open")
     return open_groups[0]
 
 
@@ -56,12 +56,12 @@ def _part(text: str, formula: str) -> Counter[str]:
 def molar_mass(formula: str) -> float:
     """Molar mass [g/mol] from the atomic weights of ``fertui.chemistry.names``.
 
-    Raises ``CatalogueError`` for an element that the catalogue does not know.
+    Raises ``Refusal`` for an element without an atomic weight there.
 
     >>> round(molar_mass("KNO3"), 2)
     101.1
     """
     unknown = [element for element in atoms(formula) if element not in ATOMIC_WEIGHT]
     if unknown:
-        raise CatalogueError(f"{formula!r}: no atomic weight for {', '.join(unknown)}")
+        raise Refusal(f"{formula!r}: no atomic weight for {', '.join(unknown)}")
     return sum(number * ATOMIC_WEIGHT[element] for element, number in atoms(formula).items())
