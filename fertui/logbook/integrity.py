@@ -16,7 +16,7 @@ from fertui.logbook import schema
 from fertui.logbook.codec import check_storable, moment_text
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import LogbookError, StoreError
-from fertui.logbook.files import check_regular, check_whole, quoted
+from fertui.logbook.files import check_regular, quoted
 from fertui.logbook.rows import entry_of_row, select_entry, select_values, value_of_row
 from fertui.logbook.store import FIRST_HASH, Logbook, link_of
 
@@ -41,8 +41,6 @@ def check_book(path: str | Path) -> tuple[Row, ...]:
     path = Path(path)
     rows: list[Row] = []
     try:
-        check_regular(path)
-        check_whole(path)
         with Logbook.open(path) as book:
             for look in (_rights, _database, _chain, _clock, _flags):
                 rows.extend(look(book))

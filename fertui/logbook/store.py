@@ -11,6 +11,7 @@ from contextlib import closing, contextmanager
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
+from weakref import WeakSet
 
 from fertui.logbook import schema
 from fertui.logbook.codec import VALUE_FIELDS, check_storable, line_of, moment_text, settled
@@ -36,6 +37,12 @@ FIRST_HASH = "0" * 64
 _CHUNK = 1000
 _AT_ONCE = 500
 _MOST_KEPT = 200_000
+
+
+_OPENING = threading.Lock()
+_OPEN: WeakSet[Logbook] = WeakSet()
+"""Books this process has open. Their files are never looked into past SQLite: closing a file drops every lock that the
+process holds on it, another session then takes the book for left, and what is written here afterwards is lost."""
 
 
 class Logbook:
@@ -80,11 +87,14 @@ class Logbook:
         """
         path = Path(path)
         check_regular(path)
-        check_whole(path)
-        schema.check_head(path)
         writable = os.access(path, os.W_OK) and os.access(path.parent, os.W_OK)
-        with _spoken(path):
-            book = cls(path, _connect(path, _address(path, writable)), writable)
+        with _OPENING:
+            if not any(book._file == _identity(path) for book in _OPEN):
+                check_whole(path)
+                schema.check_head(path)
+            with _spoken(path):
+                book = cls(path, _connect(path, _address(path, writable)), writable)
+            _OPEN.add(book)
         try:
             if book._version() < schema.VERSION and writable:
                 book._migrate()
@@ -96,6 +106,7 @@ class Logbook:
     def close(self) -> None:
         """Close the file; nothing depends on it being closed."""
         self._connection.close()
+        _OPEN.discard(self)
 
     def __enter__(self) -> Logbook:
         return self

@@ -6,6 +6,8 @@ import os
 import random
 import resource
 import signal
+import subprocess
+import sys
 import tempfile
 import time
 from collections.abc import Callable
@@ -220,3 +222,28 @@ def test_a_logbook_that_was_moved_or_replaced_while_open_takes_nothing(tmp_path:
         (tmp_path / "other.sqlite3").rename(path)
         with pytest.raises(StoreError, match="moved, deleted or replaced"):
             book.append(entry(2))
+
+
+def last_number_in_another_session(path: Path) -> int:
+    """What a process of its own reads, which then closes the book."""
+    code = f"from fertui.logbook.store import Logbook as B\nwith B.open({str(path)!r}) as book: print(book.last_number())"
+    return int(subprocess.run([sys.executable, "-c", code], check=True, capture_output=True, text=True).stdout)
+
+
+def test_a_book_that_stays_open_keeps_what_it_writes_while_others_come_and_go(tmp_path: Path) -> None:
+    """A session that ends checkpoints the log and removes it, unless it sees the locks of those still at work.
+
+    Every way this program has to look at a book that it already holds open must leave those locks alone.
+    """
+    path = tmp_path / FILE_NAME
+    Logbook.create(path).close()
+    kept = Logbook.open(path)
+    for look in (lambda: Logbook.open(path).close(), lambda: check_book(path)):
+        look()
+        seen = kept.last_number()
+        assert last_number_in_another_session(path) == seen
+        (number,) = kept.append(entry(seen + 1))
+        assert last_number_in_another_session(path) == number == seen + 1
+    kept.close()
+    with Logbook.open(path) as book:
+        assert book.last_number() == 2
