@@ -15,7 +15,8 @@ from fertui.estimate.assimilation import Estimate, assimilate
 from fertui.estimate.display import shown_members
 from fertui.estimate.forecast import trajectories
 from fertui.estimate.passage import passages
-from fertui.estimate.ranges import HIGH, LOW, neutral, shares
+from fertui.estimate.quantiles import HIGH, LOW
+from fertui.estimate.ranges import neutral, shares
 from fertui.site.model import Loop, Site
 from tests.estimate.twins import AHEAD, NOW, ZERO, Truth, Twin, loop_on, twins
 

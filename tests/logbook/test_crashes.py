@@ -227,7 +227,7 @@ def test_a_logbook_that_was_moved_or_replaced_while_open_takes_nothing(tmp_path:
 def last_number_in_another_session(path: Path) -> int:
     """What a process of its own reads, which then closes the book."""
     code = "import sys\nfrom fertui.logbook.store import Logbook\nprint(Logbook.open(sys.argv[1]).last_number())"
-    return int(subprocess.run([sys.executable, "-c", code, str(path)], check=True, capture_output=True, text=True).stdout)
+    return int(subprocess.check_output([sys.executable, "-c", code, str(path)], text=True))
 
 
 def test_a_book_that_stays_open_keeps_what_it_writes_while_others_come_and_go(tmp_path: Path) -> None:
