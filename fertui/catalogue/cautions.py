@@ -58,20 +58,6 @@ def cautions_for(kind: str, strength_pct: float | None = None) -> tuple[Caution,
     return (first(), *dict.fromkeys(_of_one(_title(what, strength_pct), what, strength_pct)))
 
 
-def hazard_statements(kind: str, strength_pct: float | None = None) -> tuple[str, ...]:
-    """Hazard statements of a substance at a strength [mass %; None: as sold], code and text; () where none is known.
-
-    >>> hazard_statements("nitric acid", 38)[1]
-    'H331 toxic if inhaled'
-    """
-    wordings = _data()["statements"]
-    return tuple(
-        f"{code} {wordings[code]}"
-        for hazard, _ in _hazards(substance(kind), strength_pct)
-        for code in hazard["statements"]
-    )
-
-
 def incompatibilities(kinds: Iterable[str], where: str = "shelf") -> tuple[Caution, ...]:
     """What must not meet among these substances: ``where`` "shelf" (as sold) or "stock" (in one stock tank).
 

@@ -47,15 +47,6 @@ class Medium(NamedTuple):
         """Whether exchange is worth computing."""
         return self.capacity_meq_per_l.mean > 0.0
 
-    @property
-    def water_l_per_m2(self) -> float:
-        """Root-zone water [L/m2] in the default volume of medium.
-
-        >>> round(medium("coir").water_l_per_m2, 2)
-        5.85
-        """
-        return self.volume_l_per_m2.mean * self.water_fraction.mean
-
     def selectivity(self) -> tuple[Array, Array]:
         """log10 k and its standard deviation, both (5,) in the order K, Ca, Mg, Na, NH4.
 

@@ -64,17 +64,6 @@ def verdicts(
     return tuple(rows)
 
 
-def trusted(rows: tuple[Check, ...]) -> bool:
-    """Whether an analysis may be used without asking: no row that marks it doubtful has failed.
-
-    Standard Methods' tighter limits alone do not hold an analysis back; they ask for a second look.
-
-    >>> trusted(verdicts({"K": 8, "Ca": 5, "Mg": 2.4, "NH4": 1, "NO3": 16, "SO4": 4, "H2PO4": 1.5}))
-    True
-    """
-    return all(row.passed for row in rows if row.source != STANDARD_METHODS)
-
-
 def allowed_imbalance_pct(cations_meq: float, anions_meq: float) -> float:
     """Charge imbalance [%] that Standard Methods 1030E accepts (from memory).
 

@@ -32,23 +32,23 @@ def entry_ions(entry: Entry) -> dict[str, float]:
     return {value.name: value.number for value in entry.values if value.name in INDEX and value.number is not None}
 
 
-def shelf(site: Site, name: str, strength_pct: float | None = None) -> Supply:
+def shelf(site: Site, name: str) -> Supply:
     """The supply of that name on the shelf, else the bare salt or acid of the catalogue."""
     for supply in site.supplies:
         if name.lower() in (supply.name.lower(), supply.kind.lower()):
             return supply
-    return Supply(name=name, kind=name, strength_pct=strength_pct)
+    return Supply(name=name, kind=name)
 
 
-def per_kg(site: Site, name: str, strength_pct: float | None = None) -> Array:
+def per_kg(site: Site, name: str) -> Array:
     """Ions (10,) [mmol/kg] of a supply or salt; raises ``CatalogueError`` for an unknown one."""
-    return array(contents(shelf(site, name, strength_pct)))
+    return array(contents(shelf(site, name)))
 
 
 def of_acid(site: Site, entry: Entry) -> Array:
     """Ions (10,) [mmol] that an acid entry brought: litres, density and strength as entered."""
     name, strength = entry.text_of("acid"), entry.number_of("strength")
-    supply = shelf(site, name, strength)
+    supply = shelf(site, name)
     pct = strength if strength is not None else supply.strength_pct
     if pct is None:
         return np.zeros(len(IONS))

@@ -208,12 +208,6 @@ class Logbook:
                 row = self._connection.execute("SELECT hash FROM entries WHERE number = ?", (entry.number,)).fetchone()
             yield entry, row[0]
 
-    def last_link(self) -> str:
-        """The last link of the chain."""
-        with self._lock, _spoken(self.path):
-            row = self._connection.execute("SELECT hash FROM entries ORDER BY number DESC LIMIT 1").fetchone()
-        return FIRST_HASH if row is None else row[0]
-
     def sqlite_check(self) -> str:
         """What SQLite's integrity check says: ``ok``, or its first complaint."""
         with self._lock, _spoken(self.path):

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from bisect import bisect_right
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import NamedTuple
 
@@ -17,11 +17,6 @@ from fertui.loop.uptake import Plants
 from fertui.loop.values import ROOT, STORE, Circuit, Drive, Event, Medium, State
 
 _POINTS = {"tank": STORE, "drain_store": STORE, "drain": ROOT, "root_zone": ROOT}
-
-Perturb = Callable[[float, float, State, Plants, Drive], tuple[State, Plants, Drive]]
-"""``perturb(now, until, state, plants, drive)`` is called before every stretch of time (whole days, cut at events and
-reports). State and drive it returns hold for the stretch, plants from then on; what it changes in solution is booked
-under ``unexplained``."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -165,7 +160,6 @@ def simulate(
     state: State,
     timeline: Timeline,
     report_at: Sequence[float],
-    perturb: Perturb | None = None,
     begin: float = 0.0,
     tolerance: float = TOLERANCE,
 ) -> Trajectory:
@@ -197,10 +191,6 @@ def simulate(
             record.report(now, state, feed_composition(circuit, drive, state))
         if until == now:
             break
-        if perturb is not None:
-            before = state
-            state, plants, drive = perturb(now, until, state, plants, drive)
-            record.book(now, now, corrected(before, state))
         state, moved = advance(circuit, medium, plants, state, drive, until - now, tolerance)
         record.book(now, until, moved)
     return record.trajectory()

@@ -65,14 +65,6 @@ class Circuit:
         """The compartment that make-up water and hand doses go into."""
         return ROOT if self.mixed or self.layout == "known-feed" else STORE
 
-    def residence_days(self, drain_l_d: float) -> float:
-        """Mean time [d] that drain spends in the store: the lag of a drain-blend loop.
-
-        >>> Circuit("drain-blend", 1000, 8000, store_l=6000).residence_days(2000)
-        3.0
-        """
-        return self.store_l / drain_l_d if drain_l_d > 0 else np.inf
-
 
 class Medium(NamedTuple):
     """What the root zone exchanges: ``capacity_meq`` [meq] of the whole loop, scalar or (M,), root free space included;
@@ -117,12 +109,6 @@ class State(NamedTuple):
         """Concentrations [mmol/L] (M, 10) of one compartment; zero where it is dry."""
         water = self.water_l[:, compartment, None]
         return self.ions_mmol[:, compartment] * (water > DRY_L) / np.maximum(water, DRY_L)
-
-    def with_concentration(self, compartment: int, mmol_l: Array) -> State:
-        """The same water with other concentrations (10,) or (M, 10) [mmol/L]; the exchanger is left as it is."""
-        ions = self.ions_mmol.copy(order="K")
-        ions[:, compartment] = self.water_l[:, compartment, None] * mmol_l
-        return self._replace(ions_mmol=ions)
 
     def reloaded(self, medium: Medium) -> State:
         """The same solution with the exchanger in equilibrium with it: what follows an analysis."""

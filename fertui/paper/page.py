@@ -86,7 +86,7 @@ def listed(texts: Iterable[str], mark: str = "- ") -> list[str]:
     return [line for text in texts for line in folded(text, mark)]
 
 
-def columns(rows: Sequence[Sequence[str]], right: Iterable[int] = (), gap: str = "  ") -> list[str]:
+def columns(rows: Sequence[Sequence[str]], right: Iterable[int] = ()) -> list[str]:
     """Rows as aligned lines; ``right`` names the columns set flush right.
 
     >>> columns([("salt", "kg"), ("potassium nitrate", "5.25")], right=(1,))
@@ -97,7 +97,7 @@ def columns(rows: Sequence[Sequence[str]], right: Iterable[int] = (), gap: str =
     flush = frozenset(right)
     widths = [max(len(row[place]) for row in rows) for place in range(len(rows[0]))]
     return [
-        gap.join(
+        "  ".join(
             cell.rjust(width) if place in flush else cell.ljust(width)
             for place, (cell, width) in enumerate(zip(row, widths, strict=True))
         ).rstrip()

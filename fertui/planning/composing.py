@@ -52,16 +52,16 @@ def contents(materials: Sequence[Material]) -> Array:
     return np.array(columns).T.reshape(len(SPECIES), len(materials))
 
 
-def compose(materials: Sequence[Material], wanted: Array, solver: Solver, at_most: int | None = None) -> Composed:
+def compose(materials: Sequence[Material], wanted: Array, solver: Solver) -> Composed:
     """Grams per litre of each material that come nearest to ``wanted`` (17,), with as few materials as that takes.
 
-    ``at_most`` limits the number of materials. A wanted amount below zero (the water has more than the recipe) counts
-    as nothing wanted: no salt can take an ion out.
+    A wanted amount below zero (the water has more than the recipe) counts as nothing wanted: no salt can take an ion
+    out.
     """
     content = contents(materials)
     weight = importance(wanted)
     enough = _enough(content, np.maximum(wanted, 0.0))
-    region = _region(content * enough, wanted, at_most)
+    region = _region(content * enough, wanted)
     misfit, few = _aims(materials, enough, weight)
     solution = lexicographic(solver, region, [misfit, few])
     if solution is not None:
@@ -79,17 +79,16 @@ def _enough(content: Array, wanted: Array) -> Array:
     return np.maximum(grams.max(axis=0, initial=0.0), 1e-9)
 
 
-def _region(content: Array, wanted: Array, at_most: int | None) -> Region:
+def _region(content: Array, wanted: Array) -> Region:
     """Variables: parts of enough (n), too much (17), too little (17), switches (n)."""
     species, n = content.shape
     eye = np.eye(species)
     balance = np.hstack([content, -eye, eye, np.zeros((species, n))])
     switched = np.hstack([np.eye(n), np.zeros((n, 2 * species)), -np.eye(n)])
-    count = np.concatenate([np.zeros(n + 2 * species), np.ones(n)])
     return Region(
-        np.vstack([balance, switched, count]),
-        np.concatenate([wanted, np.full(n, -np.inf), [0.0]]),
-        np.concatenate([wanted, np.zeros(n), [float(n if at_most is None else at_most)]]),
+        np.vstack([balance, switched]),
+        np.concatenate([wanted, np.full(n, -np.inf)]),
+        np.concatenate([wanted, np.zeros(n)]),
         np.zeros(2 * (n + species)),
         np.concatenate([np.ones(n), np.full(2 * species, np.inf), np.ones(n)]),
         np.concatenate([np.zeros(n + 2 * species, int), np.ones(n, int)]),

@@ -72,10 +72,6 @@ class Material:
             return bool(self.ions_mmol_per_kg[INDEX[ion]] > TRACE_MMOL_PER_KG)
         return bool(self.micros_umol_per_kg[MICRONUTRIENTS.index(ion)] > 0.0)
 
-    def kg_of(self, mol: float) -> float:
-        """Mass [kg] of that many mol of formula units; a label does not change it."""
-        return mol * self.found.molar_mass / 1000.0
-
 
 def material(supply: Supply) -> Material:
     """A supply of the site as a material; its label goes before the formula.

@@ -18,7 +18,7 @@ from fertui.planning.acid import LEAVE_MEQ_PER_L, water_of
 from fertui.planning.composing import SPECIES, Composed, compose
 from fertui.planning.programme import Solver
 from fertui.planning.shelf import Material, PlanningError, material, salts_of, shelf
-from fertui.planning.stock_needs import Needed, asked, misfits, needed_of, not_covered, per_kg, subtraction
+from fertui.planning.stock_needs import Needed, misfits, needed_of, not_covered, per_kg, subtraction
 from fertui.planning.tanks import (
     STRONGEST,
     Fullest,
@@ -125,23 +125,6 @@ def tanks_of(site: Site, loop: Loop) -> tuple[StockTank, ...]:
                 f"loop {loop.name}: stock tank {name!r} is not among [[stock_tanks]] ({', '.join(known) or 'none'})."
             )
     return tuple(known[name] for name in loop.stock_tanks) or ASSUMED_TANKS
-
-
-def delivered(
-    per_tank: Iterable[tuple[StockTank, Mapping[Material, float]]], water: Composition | None = None
-) -> Array:
-    """What the dripper gets from kg in full tanks and the water, shape (17,) [mmol/L, umol/L]: kg / litres / dilution.
-
-    >>> from fertui.chemistry.ions import INDEX
-    >>> mkp = material(Supply("MKP", "monopotassium phosphate"))
-    >>> round(float(delivered([(StockTank("B", 1000.0), {mkp: 13.608})])[INDEX["K"]]), 2)
-    1.0
-    """
-    own = np.zeros(len(SPECIES)) if water is None else asked(water)
-    parts = [
-        kg / (tank.litres * tank.dilution) * per_kg(each) for tank, amounts in per_tank for each, kg in amounts.items()
-    ]
-    return own + sum(parts, np.zeros(len(SPECIES)))
 
 
 def placed_in(per_m3: Mapping[Material, float], tanks: Sequence[StockTank]) -> dict[str, dict[Material, float]]:

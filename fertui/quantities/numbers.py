@@ -29,18 +29,18 @@ class Number(NamedTuple):
     below: bool
 
 
-def parse_number(text: str | float, *, negative: bool = False) -> Number:
+def parse_number(text: str | float) -> Number:
     """The number of a text that holds nothing else.
 
-    Raises ``QuantityError`` for an empty text, words, NaN, infinity, a negative number (unless ``negative``), and for
-    thousands marks: "1,234" is 1.234 to one reader and 1234 to the next.
+    Raises ``QuantityError`` for an empty text, words, NaN, infinity, a negative number, and for thousands marks:
+    "1,234" is 1.234 to one reader and 1234 to the next.
 
     >>> parse_number("2,6")
     Number(value=2.6, below=False)
     >>> parse_number("<0.1")
     Number(value=0.1, below=True)
     """
-    number, rest = split(text, negative=negative)
+    number, rest = split(text)
     if rest:
         raise QuantityError(f"{quoted(str(text))} is not a number", _ALLOWED, "leave out everything but the number")
     return number

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from types import SimpleNamespace
 from typing import Any
 
@@ -14,7 +15,6 @@ from fertui.catalogue.cautions import (
     cautions_of,
     families,
     first,
-    hazard_statements,
     incompatibilities,
     loop_cautions,
 )
@@ -34,7 +34,8 @@ def codes(cautions: Any) -> set[str]:
 
 
 def statement_codes(kind: str, strength: float | None = None) -> set[str]:
-    return {each.split()[0] for each in hazard_statements(kind, strength)}
+    labels = (each.text for each in cautions_for(kind, strength) if each.code.startswith("label-"))
+    return {code for text in labels for code in re.findall(r"\b(?:EU)?H\d{3}\b", text)}
 
 
 @pytest.mark.parametrize("kind", KINDS)

@@ -14,7 +14,6 @@ from fertui.estimate.forecast import forecast
 from fertui.logbook.entries import Entry
 from tests.estimate.logs import DRAIN, FEED, SALAD, SITE, SLAB, TANK, daily_water, entry, fed, moment
 
-
 LAST_WEEK = entry("analysis", 6.0, "tank", "source", source="rain", Na=2.0)
 
 

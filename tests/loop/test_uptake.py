@@ -146,9 +146,8 @@ def test_irrigation_that_stops_lets_the_slab_dry_to_its_last_water() -> None:
     assert run.end.water_l[0, ROOT] == pytest.approx(8.0)
 
 
-def test_drain_share_and_lag_of_a_blended_loop() -> None:
+def test_drain_share_of_a_blended_loop() -> None:
     circuit = Circuit("drain-blend", 1.0, 8.0, store_l=3.0, store_max_l=3.0, drain_share=0.5)
-    assert circuit.residence_days(1.5) == 2.0
     drive = Drive(irrigation_l_d=4.0, crop_l_d=2.0, make_up=WELL)
     run = simulate(circuit, INERT, PLANTS, start(circuit, INERT, REFERENCE), Timeline(((0.0, drive),)), [1.0])
     np.testing.assert_allclose(run.feeds[0][0], 0.5 * REFERENCE + 0.5 * WELL)

@@ -10,8 +10,8 @@ from fertui.chemistry.ions import ATOMIC_WEIGHT, INDEX, IONS
 from fertui.planning.composing import SPECIES, compose
 from fertui.planning.programme import Solver
 from fertui.planning.shelf import material
-from fertui.planning.stock import StockSheet, delivered, stock_sheet
-from fertui.planning.stock_needs import asked
+from fertui.planning.stock import StockSheet, stock_sheet
+from fertui.planning.stock_needs import asked, per_kg
 from fertui.site.model import Composition, Loop, Site, StockTank, Supply
 
 HOAGLAND_SALTS = (
@@ -150,7 +150,9 @@ def dutch_tanks() -> list[tuple[StockTank, dict]]:
 
 
 def test_the_dutch_tomato_tanks_reproduce_their_recipe() -> None:
-    carried = dict(zip(SPECIES, delivered(dutch_tanks()), strict=True))
+    amounts = [(tank, each, kg) for tank, held in dutch_tanks() for each, kg in held.items()]
+    brought = sum(kg / (tank.litres * tank.dilution) * per_kg(each) for tank, each, kg in amounts)
+    carried = dict(zip(SPECIES, brought, strict=True))
     for species, value in DUTCH_RECIPE.items():
         assert carried[species] == pytest.approx(value, rel=DUTCH_WITHIN.get(species, 0.015)), species
 

@@ -54,7 +54,7 @@ def tomato_times(times: float) -> dict:
         "calcium nitrate tetrahydrate": 5.4, "magnesium sulfate heptahydrate": 2.4, "monopotassium phosphate": 0.3,
         "monoammonium phosphate": 1.2, "potassium nitrate": 5.2, "potassium sulfate": 2.0,
     }  # fmt: skip
-    return {(each := on_shelf(name)): each.kg_of(value * times) for name, value in mmol.items()}
+    return {(each := on_shelf(name)): value * times * each.found.molar_mass / 1000.0 for name, value in mmol.items()}
 
 
 @pytest.mark.parametrize(("times", "pair"), [(1, None), (3, None), (10, "gypsum"), (100, "gypsum")])

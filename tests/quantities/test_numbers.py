@@ -7,6 +7,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from fertui.quantities import Number, QuantityError, parse_number
+from fertui.quantities.numbers import split
 from fertui.refusals import Refusal
 
 
@@ -74,7 +75,7 @@ def test_a_refusal_is_the_programs_refusal_and_cannot_be_changed() -> None:
 
 
 def test_negative_only_where_asked_for() -> None:
-    assert parse_number("-3,5", negative=True).value == -3.5
+    assert split("-3,5", negative=True)[0].value == -3.5
 
 
 @given(st.floats(0, 1e12, allow_nan=False))
