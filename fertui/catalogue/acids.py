@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-import difflib
 import math
 from collections.abc import Mapping
 from functools import cache
 from typing import Any, NamedTuple
 
-from fertui.catalogue.figures import STATUSES, CatalogueError, Provenance, interpolated, table
+from fertui.catalogue.figures import STATUSES, CatalogueError, Provenance, interpolated, nearest, table
 from fertui.chemistry.formula import molar_mass
 
 
@@ -104,8 +103,8 @@ def acid(name: str) -> Acid:
     """
     by_name = {_key(each): entry for entry in acids() for each in (entry.name, entry.formula, *entry.aliases)}
     if _key(name) not in by_name:
-        near = difflib.get_close_matches(_key(name)[:60], by_name, n=2)
-        known = [by_name[each].name for each in near] or [entry.name for entry in acids()]
+        near = nearest(_key(name), {key: entry.name for key, entry in by_name.items()})
+        known = near or [entry.name for entry in acids()]
         raise CatalogueError(f"{name[:60]!r} is not an acid or lye of the catalogue; known: {', '.join(known)}.")
     return by_name[_key(name)]
 

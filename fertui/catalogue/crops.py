@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-import difflib
 from collections.abc import Mapping
 from functools import cache
 from typing import Any, NamedTuple
 
-from fertui.catalogue.figures import CatalogueError, Figure, Provenance, Range, Recipe, table
+from fertui.catalogue.figures import CatalogueError, Figure, Provenance, Range, Recipe, nearest, table
 from fertui.chemistry.names import CATIONS, CHARGES
 
 Ranges = Mapping[str, Mapping[str, Range]]
@@ -76,9 +75,8 @@ def crop(name: str) -> Crop:
     """
     by_name = {_key(each): entry for entry in crops() for each in (entry.name, *entry.aliases)}
     if _key(name) not in by_name:
-        near = difflib.get_close_matches(_key(name)[:60], by_name, n=2)
-        names = dict.fromkeys(by_name[each].name for each in near)
-        hint = f"nearest: {', '.join(names)}; " if near else ""
+        near = nearest(_key(name), {key: entry.name for key, entry in by_name.items()})
+        hint = f"nearest: {', '.join(near)}; " if near else ""
         known = ", ".join(entry.name for entry in crops())
         raise CatalogueError(f"no crop {name[:60]!r}; {hint}known: {known} ('other' for one that is not listed).")
     return by_name[_key(name)]

@@ -93,6 +93,19 @@ def interpolated(points: Sequence[tuple[float, float]], at: float) -> float:
     return low + (at - left) / (right - left) * (high - low)
 
 
+def nearest(word: str, known: Mapping[str, str], most: int = 4) -> tuple[str, ...]:
+    """Names, each once, whose spellings begin with a word, else those much like it; ``known``: spelling -> name.
+
+    >>> nearest("peat", {"peat moss": "peat", "peat": "peat", "perlite": "perlite"})
+    ('peat',)
+    """
+    import difflib
+
+    begin = [spelling for spelling in known if len(word) > 1 and spelling.startswith(word)]
+    near = begin or difflib.get_close_matches(word[:60], known, n=3)
+    return tuple(dict.fromkeys(known[spelling] for spelling in near))[:most]
+
+
 @cache
 def table(name: str) -> dict[str, Any]:
     """One TOML file of this room, read once; not to be changed."""

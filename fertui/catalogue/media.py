@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-import difflib
 from collections.abc import Mapping
 from functools import cache
 from typing import TYPE_CHECKING, Any, NamedTuple
 
-from fertui.catalogue.figures import CatalogueError, Provenance, table
+from fertui.catalogue.figures import CatalogueError, Provenance, nearest, table
 from fertui.chemistry.names import CATIONS
 
 if TYPE_CHECKING:
@@ -94,9 +93,9 @@ def medium(name: str) -> Medium:
     for spelling in (wanted, wanted.replace("-", " "), wanted.replace(" ", "-")):
         if spelling in known:
             return known[spelling]
-    near = difflib.get_close_matches(wanted, known, n=1)
-    meant = f"; did you mean {known[near[0]].name!r}?" if near else "."
-    raise CatalogueError(f"{name!r} is not a medium{meant} Media: {', '.join(each.name for each in _media())}.")
+    near = nearest(wanted, {spelling: each.name for spelling, each in known.items()})
+    meant = f"; nearest: {', '.join(near)}." if near else "."
+    raise CatalogueError(f"{name[:60]!r} is not a medium{meant} Media: {', '.join(each.name for each in _media())}.")
 
 
 @cache

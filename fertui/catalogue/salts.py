@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-import difflib
 from collections.abc import Mapping
 from functools import cache
 from typing import Any, NamedTuple
 
-from fertui.catalogue.figures import CatalogueError, Provenance, interpolated, table
+from fertui.catalogue.figures import CatalogueError, Provenance, interpolated, nearest, table
 from fertui.chemistry.formula import molar_mass
 from fertui.chemistry.names import CHARGES
 
@@ -93,27 +92,32 @@ def salt(name: str) -> Salt:
 def question(name: str) -> tuple[str, tuple[str, ...]] | None:
     """Why that name alone does not say which salt it is, and the salts it may be; None for a name that does."""
     for entry in table("salts")["ambiguous"]:
-        if _key(name) in {_key(each) for each in entry["names"]}:
+        if spelling(name) in {spelling(each) for each in entry["names"]}:
             return entry["why"], tuple(entry["options"])
     return None
 
 
 def _found(name: str, among: tuple[Salt, ...]) -> Salt:
-    by_name = {_key(each): entry for entry in among for each in (entry.name, entry.formula, *entry.aliases) if each}
-    found = by_name.get(_key(name))
-    if found is not None and _key(name) == _key(found.name):
+    by_name = {spelling(each): entry for entry in among for each in (entry.name, entry.formula, *entry.aliases) if each}
+    found = by_name.get(spelling(name))
+    if found is not None and spelling(name) == spelling(found.name):
         return found
     asked = question(name)
     if asked is not None:
         raise CatalogueError(f"{name!r}: which one? {' or '.join(repr(each) for each in asked[1])}; {asked[0]}.")
     if found is None:
-        near = difflib.get_close_matches(_key(name)[:60], by_name, n=3)
-        hint = f"; nearest: {', '.join(repr(by_name[each].name) for each in near)}" if near else ""
+        near = nearest(spelling(name), {key: entry.name for key, entry in by_name.items()})
+        hint = f"; nearest: {', '.join(map(repr, near))}" if near else ""
         raise CatalogueError(f"{name[:60]!r} is not a salt of the catalogue{hint}.")
     return found
 
 
-def _key(name: str) -> str:
+def spelling(name: str) -> str:
+    """One spelling for the many a name or formula has: case, spaces, sulph, the sign before the water.
+
+    >>> spelling("Sulphate of Potash") == spelling("sulfate of potash")
+    True
+    """
     return "".join(name.lower().replace("·", ".").replace("*", ".").replace("sulph", "sulf").split())
 
 

@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
+from functools import cache
 from typing import Protocol
 
 from fertui.catalogue.acids import Acid, acid, acids
-from fertui.catalogue.figures import CatalogueError
-from fertui.catalogue.salts import Salt, salt
+from fertui.catalogue.figures import CatalogueError, nearest
+from fertui.catalogue.salts import Salt, question, salt, salts, spelling
 from fertui.chemistry.formula import molar_mass
 
 NEUTRAL_WITHIN_PCT = 5.0
@@ -48,9 +49,12 @@ def substance(kind: str) -> Salt | Acid:
     >>> substance("nitric acid").formula
     'HNO3'
     """
-    if _is_acid(kind):
-        return acid(kind)
-    return salt(kind)
+    known = _known()
+    if spelling(kind) not in known and question(kind) is None:
+        near = nearest(spelling(kind), known)
+        which = f"nearest: {', '.join(near)}" if near else f"it has {', '.join(dict.fromkeys(known.values()))}"
+        raise CatalogueError(f"{kind[:60]!r} is no salt or acid of the catalogue; {which}.")
+    return acid(kind) if _is_acid(kind) else salt(kind)
 
 
 def of_supply(supply: Shelved) -> Salt | Acid:
@@ -94,10 +98,18 @@ def contents(supply: Shelved) -> dict[str, float]:
     return found.mmol_per_kg
 
 
+@cache
+def _known() -> Mapping[str, str]:
+    """Spelling -> name of every salt and acid."""
+    entries: list[Salt | Acid] = [*salts(), *acids()]
+    return {
+        spelling(each): entry.name for entry in entries for each in (entry.name, entry.formula, *entry.aliases) if each
+    }
+
+
 def _is_acid(kind: str) -> bool:
-    wanted = "".join(kind.lower().split())
     names = (each for entry in acids() if entry.is_acid for each in (entry.name, entry.formula, *entry.aliases))
-    return wanted in {"".join(each.lower().split()) for each in names}
+    return spelling(kind) in map(spelling, names)
 
 
 def _labelled(name: str, found: Salt, label: Mapping[str, float]) -> dict[str, float]:

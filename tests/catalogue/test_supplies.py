@@ -152,3 +152,18 @@ def test_a_blend_may_name_every_species(species: str) -> None:
     ion = LABEL_SPECIES[species][0]
     base = {"Na": 38.0, "Cl": 58.6} if ion in ("K", "NO3") else {"K": 37.9, "NO3-N": 13.57}
     assert contents(supply("blend", {**base, species: 0.3}))[ion] > 0
+
+
+@pytest.mark.parametrize(
+    ("written", "near"),
+    [
+        ("ca", "calcium nitrate double salt, calcium nitrate tetrahydrate"),
+        ("phosphoric acd", "phosphoric acid"),
+        ("calcium nitrat", "calcium nitrate double salt, calcium nitrate tetrahydrate"),
+        ("unobtainium", "calcium nitrate double salt, calcium nitrate tetrahydrate, potassium nitrate"),
+    ],
+)
+def test_an_unknown_name_is_answered_with_names_of_the_catalogue_each_once(written: str, near: str) -> None:
+    with pytest.raises(CatalogueError, match=f"{written}.*{near}") as refused:
+        substance(written)
+    assert str(refused.value).count("double salt") <= 1
