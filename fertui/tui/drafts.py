@@ -16,11 +16,15 @@ FILE = "drafts.json"
 
 
 class Draft(NamedTuple):
-    """The texts of a half-filled form, who typed them and when; ``by`` may be '' where nobody has said."""
+    """The texts of a half-filled form, who typed them and when; ``by`` may be '' where nobody has said.
+
+    ``unit``: what its bare numbers for ions mean; '' where it was not kept.
+    """
 
     by: str
     at: datetime
     texts: tuple[str, ...]
+    unit: str = ""
 
 
 class Drafts:
@@ -36,13 +40,13 @@ class Drafts:
             return None
         try:
             texts = tuple(str(text) for text in kept["texts"])
-            return Draft(str(kept["by"]), datetime.fromisoformat(str(kept["at"])), texts)
+            return Draft(str(kept["by"]), datetime.fromisoformat(str(kept["at"])), texts, str(kept.get("unit", "")))
         except (KeyError, TypeError, ValueError):
             return None
 
     def keep(self, kind: str, loop: str, draft: Draft) -> bool:
         """Keep a draft in place of the one before; False where that cannot be done."""
-        kept = {"by": draft.by, "at": draft.at.isoformat(), "texts": list(draft.texts)}
+        kept = {"by": draft.by, "at": draft.at.isoformat(), "texts": list(draft.texts), "unit": draft.unit}
         return self._write({**self._all(), _key(kind, loop): kept})
 
     def drop(self, kind: str, loop: str) -> None:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from datetime import UTC, datetime
-from functools import cached_property
+from functools import cached_property, partial
 from typing import TYPE_CHECKING
 
 from fertui.refusals import Refusal
@@ -36,7 +36,7 @@ class Entering(Working):
         from fertui.tui.forms.offer import offer
 
         site, loop = self.snapshot.site, self.snapshot.loop
-        form = Form(form_for(kind, site, site.loop(loop), self.snapshot.unit), loop)
+        form = Form(partial(form_for, kind, site, site.loop(loop)), self.snapshot.unit, loop)
         draft = self.drafts.find(form.spec.kind, loop)
         await self.open_page(form)
         if draft is not None:
@@ -80,13 +80,15 @@ class Entering(Working):
         if answer.value is None:
             self.say_at_length("Nothing was logged", answer.trouble)
             return
+        from fertui.logbook.entries import Entry
+
         entries = (answer.value,) if isinstance(answer.value, Entry) else answer.value
         self.changed(max(entry.number or 0 for entry in entries))
         self.say("logged as " + ", ".join(str(entry.number) for entry in entries), "good")
 
     def keep_draft(self, kind: str, loop: str, texts: tuple[str, ...]) -> bool:
         """Keep a half-filled form; False where the folder takes no file."""
-        return self.drafts.keep(kind, loop, Draft(self.initials.now, datetime.now(UTC), texts))
+        return self.drafts.keep(kind, loop, Draft(self.initials.now, datetime.now(UTC), texts, self.snapshot.unit))
 
     def drop_draft(self, kind: str, loop: str) -> None:
         """The form was saved or is not wanted."""

@@ -56,6 +56,10 @@ class FertuiApp(Papers):
         """Show a loop by name."""
         self.snapshot = self.snapshot._replace(loop=name)
 
+    def choose_unit(self, unit: str) -> None:
+        """Show amounts in a unit, and take bare numbers in it."""
+        self.snapshot = self.snapshot._replace(unit=unit)
+
     def action_unit(self) -> None:
         """Show amounts in the next unit."""
         self.snapshot = self.snapshot.next_unit()

@@ -20,7 +20,8 @@ def key_name(key: str) -> str:
     '?'
     """
     first = key.split(",")[0]
-    return SHORT.get(first, first.replace("ctrl+", "Ctrl-"))
+    named = SHORT.get(first, first.replace("ctrl+", "Ctrl-"))
+    return named.upper() if named[:1] == "f" and named[1:].isdigit() else named
 
 
 class KeyLine(Page):

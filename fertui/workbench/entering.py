@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from datetime import UTC, datetime
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.logbook.entries import Entry, Value
 from fertui.site.model import Loop, Site
@@ -14,6 +14,15 @@ if TYPE_CHECKING:
 
 Place = tuple[str, str, str, str]
 """Kind, point, field and tank: where a value belongs."""
+
+
+class LastValue(NamedTuple):
+    """A value as written and when; its canonical number, None for words; whether that is a limit of detection."""
+
+    written: str
+    at: datetime
+    number: float | None = None
+    below: bool = False
 
 
 def echo(kind: str, name: str, text: str, site: Site, loop: Loop) -> str:
@@ -38,13 +47,14 @@ def said(value: Value, unit: str) -> str:
     return kept + as_ion
 
 
-def previous(entries: Iterable[Entry]) -> Mapping[Place, tuple[str, datetime]]:
-    """The last value as written for every place a form asks for, from effective entries in order of time."""
-    last: dict[Place, tuple[str, datetime]] = {}
+def previous(entries: Iterable[Entry]) -> Mapping[Place, LastValue]:
+    """The last value for every place a form asks for, from effective entries in order of time."""
+    last: dict[Place, LastValue] = {}
     for entry in entries:
         tank = entry.text_of("tank")
         for value in entry.values:
-            last[(entry.kind, entry.point, value.name, tank)] = (value.written, entry.at)
+            place = (entry.kind, entry.point, value.name, tank)
+            last[place] = LastValue(value.written, entry.at, value.number, value.below)
     return last
 
 

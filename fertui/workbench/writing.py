@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from fertui.logbook.questions import Question
     from fertui.planning.values import Plan
     from fertui.workbench.carrying_out import PlanItem
-    from fertui.workbench.entering import Place
+    from fertui.workbench.entering import LastValue, Place
 
 
 class Writing(Answers):
@@ -29,8 +29,8 @@ class Writing(Answers):
 
         return echo(kind, name, text, self.site, self.loop(loop))
 
-    def previous(self, loop: str | None = None) -> Mapping[Place, tuple[str, datetime]]:
-        """The last value as written for every place a form asks for."""
+    def previous(self, loop: str | None = None) -> Mapping[Place, LastValue]:
+        """The last value for every place a form asks for."""
         from fertui.workbench.entering import previous
 
         chosen, since = self.loop(loop).name, now() - GLANCED

@@ -121,10 +121,11 @@ def test_plan_accepted_and_a_step_marked_done(site: Path, counting: Counted) -> 
     counting.value("38")
     counting.key("enter")
     give_initials(terminal)
-    terminal.until_text("Accepted")
+    terminal.until_text("logged as")
     counting.key("enter")
+    terminal.until_text("done with how much")
     counting.key("enter")
-    terminal.until_text("done in")
+    terminal.until_text("logged as")
     assert counting.keys <= 8
     assert len(fresh(site, "plan")) == 3
     [acid] = fresh(site, "acid")
@@ -317,3 +318,55 @@ def test_without_initials_news_is_what_came_since_the_session_began(site: Path, 
     assert "since you looked" not in counting.terminal.text
     open_site(site).record("note", {"text": "lamp out", "by": "JA"})
     counting.terminal.until_text("since you looked: 1 entry by JA")
+
+
+def test_the_unit_of_bare_numbers_changes_everywhere_and_the_last_values_with_it(site: Path, counting: Counted) -> None:
+    # K 1 mmol/L is 39.1 mg/L (IUPAC atomic weight 39.0983): 5.4 mmol/L were found last time, 211 mg/L.
+    terminal = counting.terminal
+    terminal.press("a", "enter", "enter", "1", "2", "0", "enter")
+    terminal.until_text("which cannot be")
+    terminal.press("u", "u")  # meq/L, mg/L: what was typed stays and is read again
+    terminal.until_text("Bare numbers are mg/L now")
+    terminal.press("enter")
+    terminal.until_text("K: 3.069 mmol/L")
+    terminal.press("1", "9", "0", "\x1bOS")  # F4, as the field has text in it
+    terminal.until_text("in mmol/L")
+    terminal.press("u", "u", "backspace", "backspace", "backspace")
+    terminal.press("esc")
+    terminal.until_text("more to look at")
+    assert fresh(site, "analysis") == []
+
+
+def test_a_draft_is_taken_up_in_the_unit_it_was_typed_in(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("u", "u", "a", "enter", "enter", "1", "5", "0", "enter")
+    terminal.until_text("K: 3.837 mmol/L")
+    terminal.press("esc", "u", "a")
+    terminal.until_text("A half-filled form")
+    terminal.press("enter")
+    terminal.until_text("in mg/L")
+    terminal.press("f2")
+    give_initials(terminal)
+    terminal.until_text("saved")
+    [analysis] = fresh(site, "analysis")
+    assert analysis.number_of("K") == pytest.approx(150 / 39.0983, rel=1e-4)
+
+
+def test_the_last_value_again_is_taken_in_the_unit_of_the_form(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    before = [entry for entry in open_site(site).history(kind="analysis") if entry.point == "root_zone"][-1]
+    terminal.press("u", "u", "a", "enter", "enter", "*", "+")
+    give_initials(terminal)
+    terminal.until_text("saved")
+    [analysis] = fresh(site, "analysis")
+    assert analysis.number_of("K") == pytest.approx(before.number_of("K"), rel=0.005)  # shown to three digits
+
+
+def test_a_report_of_a_source_water_names_the_water(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("a", "s", "tab", "tab", "tab", "enter", "enter", "enter", "enter", "r")
+    terminal.press("shift+tab", "shift+tab", "down", "2", "+")
+    give_initials(terminal)
+    terminal.until_text("saved")
+    [analysis] = fresh(site, "analysis")
+    assert (analysis.point, analysis.text_of("source")) == ("source", "rain")

@@ -49,6 +49,16 @@ class Answers(NamedTuple):
         without = {number: echo for number, echo in self.understood.items() if number != self.at}
         return self._replace(texts=texts, understood=without)
 
+    def in_form(self, spec: Spec) -> Answers:
+        """The same texts in the form of another unit: what was understood or asked of the old one counts no more."""
+        same = {number for number, each in enumerate(spec.fields) if each.unit == self.spec.fields[number].unit}
+        return self._replace(
+            spec=spec,
+            understood={number: echo for number, echo in self.understood.items() if number in same},
+            doubts={number: doubt for number, doubt in self.doubts.items() if number in same},
+            settled=frozenset((number, text) for number, text in self.settled if number in same),
+        )
+
     def moved(self, to: int) -> Answers:
         """The cursor in another field, what was typed kept."""
         kept = self.with_typed_kept()

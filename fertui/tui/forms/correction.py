@@ -19,7 +19,7 @@ class Correction(Form):
     """The form of one entry. What is changed goes into a new entry that supersedes the old one; the old one stays."""
 
     def __init__(self, entry: Entry) -> None:
-        super().__init__(spec_of(entry), entry.loop)
+        super().__init__(lambda _: spec_of(entry), "", entry.loop)
         self.entry = entry
         self.answers = Answers.blank(self.spec)
 

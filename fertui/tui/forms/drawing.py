@@ -4,13 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from datetime import datetime
+from typing import TYPE_CHECKING
 
 from fertui.tui.figures import age
 from fertui.tui.forms.answers import Answers
 from fertui.tui.forms.spec import EVERY, Asked, Group
 from fertui.tui.ink import BLANK, Line, Span, cut, filled, fit, line, literal, wrap
 
-Last = Mapping[tuple[str, str, str, str], tuple[str, datetime]]
+if TYPE_CHECKING:
+    from fertui.workbench.entering import LastValue
+
+Last = Mapping[tuple[str, str, str, str], "LastValue"]
+BESIDE = 34
+"""Column of the last value in a form of two columns."""
 NARROW = 76
 """Columns below which a form of two columns becomes one of one."""
 
@@ -44,7 +50,7 @@ def _row(answers: Answers, number: int, last: Last, now: datetime, width: int) -
     if each.words or each.choices:
         return row
     before = last_of(last, answers, each)
-    said = f"last {_short(before[0])} ({age(before[1], now)})" if before else ""
+    said = f"last {_short(in_unit(before, each))} ({age(before.at, now)})" if before else ""
     row = line(*row, Span(f" {fit(each.unit, 7)}", "faint"), Span(f" {fit(said, 24)}", "faint"))
     echo = answers.understood.get(number, "")
     return line(*row, Span(cut(f"= {echo}", max(width - 68, 10)), "good")) if echo else row
@@ -74,7 +80,8 @@ def _block(answers: Answers, groups: Sequence[Group], number: int, last: Last, w
     at = 0
     for group in groups:
         if group.title:
-            rows.append(line(Span(f" {group.title}", "title")))
+            last_head = "last" if any(each.is_number for each in group.fields) else ""
+            rows.append(line(Span(fit(f" {group.title}", BESIDE), "title"), Span(last_head, "faint")))
         for each in group.fields:
             at = len(rows) if number == answers.at else at
             rows.append(_cell(answers, each, number, last, width))
@@ -85,13 +92,13 @@ def _block(answers: Answers, groups: Sequence[Group], number: int, last: Last, w
 def _cell(answers: Answers, each: Asked, number: int, last: Last, width: int) -> Line:
     here = number == answers.at
     wide = each.words or bool(each.choices)
-    row = line(*_label(each, here, 15), *_field(answers, number, width - 18 if wide else 9))
+    row = line(*_label(each, here, 14), *_field(answers, number, width - 17 if wide else 9))
     if wide:
         return row
-    echo = answers.understood.get(number, "")
     before = last_of(last, answers, each)
-    said = Span(f"= {echo}", "good") if echo else Span(f"last {_short(before[0])}" if before else "", "faint")
-    return line(*row, Span(f" {fit(each.unit, 7)}", "faint"), Span(cut(said.text, width - 34), said.ink))
+    mark = Span("✓" if number in answers.understood else " ", "good")
+    said = Span(cut(_short(in_unit(before, each)) if before else "", width - BESIDE), "faint")
+    return line(*row, Span(f" {fit(each.unit, 6)}", "faint"), mark, said)
 
 
 def _label(each: Asked, here: bool, width: int) -> Line:
@@ -118,10 +125,10 @@ def place_of(answers: Answers, each: Asked) -> tuple[str, str, str, str]:
     part = answers.spec.parts[0 if each.entry == EVERY else each.entry]
     chosen = dict(zip((f.name for f in answers.spec.fields if f.entry == each.entry), answers.texts, strict=False))
     point = part.fixed.get("point") or chosen.get("point", "")
-    return part.kind, point, each.name, part.fixed.get("tank", chosen.get("tank", ""))
+    return part.kind, point, each.ion or each.name, part.fixed.get("tank", chosen.get("tank", ""))
 
 
-def last_of(last: Last, answers: Answers, each: Asked) -> tuple[str, datetime] | None:
+def last_of(last: Last, answers: Answers, each: Asked) -> LastValue | None:
     """The last value of a field; what belongs to the day and not to a point may have been logged with any."""
     place = place_of(answers, each)
     if each.name in ("light_sum", "drain_pct") and place not in last:
@@ -129,6 +136,15 @@ def last_of(last: Last, answers: Answers, each: Asked) -> tuple[str, datetime] |
             (found for (kind, _, name, _), found in last.items() if (kind, name) == (place[0], each.name)), None
         )
     return last.get(place)
+
+
+def in_unit(last: LastValue, each: Asked) -> str:
+    """A last value as it would be written into a field: a concentration in the unit of the field."""
+    if not each.ion or last.number is None:
+        return last.written
+    from fertui.workbench.units import shown
+
+    return f"{'<' if last.below else ''}{shown(each.ion, last.number, each.unit)[0]:.3g}"
 
 
 def _short(text: str) -> str:

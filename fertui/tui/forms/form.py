@@ -11,13 +11,14 @@ from textual.binding import Binding
 from fertui.tui.desk import Answer
 from fertui.tui.figures import MARKS
 from fertui.tui.forms.answers import Answers
-from fertui.tui.forms.drawing import Last, draw_form, last_of, messages
+from fertui.tui.forms.drawing import Last, draw_form, in_unit, last_of, messages
 from fertui.tui.forms.spec import Spec, Texts, entries_of
 from fertui.tui.ink import BLANK, Line, Span, line, literal
-from fertui.tui.snapshot import Ask, Snapshot
+from fertui.tui.snapshot import UNITS, Ask, Snapshot
 from fertui.tui.view import View
 
 if TYPE_CHECKING:
+    from fertui.tui.drafts import Draft
     from fertui.workbench import Bench
 
 FEWEST_TO_CHECK = 8
@@ -43,6 +44,14 @@ class Form(View):
         Binding("tab", "group(1)", "group", id="form.group", tooltip="The first field of the next group."),
         Binding("shift+tab", "group(-1)", "group before", show=False, id="form.back", tooltip="The group before."),
         Binding("plus,f2", "save", "save", id="form.save", tooltip="Save (in a text field F2, as + is text there)."),
+        Binding(
+            "f4,u",
+            "app.unit",
+            "unit",
+            show=False,
+            id="form.unit",
+            tooltip="Another unit for bare numbers (F4 from any field, u in an empty one).",
+        ),
         Binding("asterisk,f3", "same", "last value", id="form.same", tooltip="Take the last value again."),
         Binding(
             "escape", "close", "leave", id="form.leave", tooltip="Leave; what was typed is kept and offered again."
@@ -50,12 +59,11 @@ class Form(View):
         Binding("f1,question_mark", "app.help", "help", id="help", tooltip="What this form is for."),
     ]
 
-    def __init__(self, spec: Spec, loop: str, saved: Callable[[], None] | None = None) -> None:
+    def __init__(self, spec_in: Callable[[str], Spec], unit: str, loop: str) -> None:
         super().__init__()
-        self.TITLE, self.HELP = spec.title, spec.help  # type: ignore[misc]
-        self.spec, self.loop = spec, loop
-        self.answers = Answers.blank(spec)
-        self._saved = saved
+        self.spec_in, self.spec, self.loop = spec_in, spec_in(unit), loop
+        self.TITLE, self.HELP = self.spec.title, self.spec.help  # type: ignore[misc]
+        self.answers = Answers.blank(self.spec)
         self._words: list[tuple[str, str]] = []
         self._checked: list[tuple[str, str]] = []
         self._done = False
@@ -66,6 +74,15 @@ class Form(View):
 
     # drawing
 
+    def redraw(self) -> None:
+        """Draw again, in the unit that is chosen now."""
+        unit = self.fertui.snapshot.unit
+        if self.spec.unit and self.spec.unit != unit:
+            self.spec = self.spec_in(unit)
+            self.answers = self.answers.in_form(self.spec)
+            self._words, self._checked = [(f"Bare numbers are {unit} now, those already typed too.", "watch")], []
+        super().redraw()
+
     def asks(self, snapshot: Snapshot) -> tuple[Ask, ...]:
         """The last values."""
         return (Ask("previous", self.loop),)
@@ -74,7 +91,7 @@ class Form(View):
         """Title, fields, and at the foot what is said back."""
         last: Last = snapshot.get(Ask("previous", self.loop)) or {}
         rows, at = draw_form(self.answers, last, self.fertui.moment, width)
-        unit = f"bare ions: {self.spec.unit}" if self.spec.unit else "empty: not measured"
+        unit = f"in {self.spec.unit} (u)" if self.spec.unit else "empty: not measured"
         title = line(
             Span(f" {self.spec.title}, {literal(self.loop)}", "title"),
             Span(f"   {unit}; {how_to_save(snapshot.initials)}", "faint"),
@@ -104,7 +121,7 @@ class Form(View):
         """Text and editing keys go into the field; anything else is left to the keys of the form."""
         current, character = self.answers.current, event.character
         if event.is_printable and character:
-            if current.is_number and character in "+*?":
+            if (current.is_number and character in "+*?") or (character == "u" and self._free_for_unit):
                 return False
             self._type(character)
             return True
@@ -114,6 +131,13 @@ class Form(View):
         self._asked_back = self._stray = False
         self._set(edited)
         return True
+
+    @property
+    def _free_for_unit(self) -> bool:
+        """Whether u is the key of the unit: in an empty or doubted number field, or where no choice begins with it."""
+        current, text = self.answers.current, self.answers.typed.text
+        unheard = bool(current.choices) and not any(choice.startswith("u") for choice in current.choices)
+        return bool(self.spec.unit) and (unheard or (current.is_number and (not text or self._asked_back)))
 
     def take_paste(self, text: str) -> None:
         """Pasted text counts as typed."""
@@ -164,7 +188,9 @@ class Form(View):
         if before is None:
             self.say(("There is no last value of this in the logbook.", "watch"))
         else:
-            self._set(self.answers._replace(typed=type(self.answers.typed).at_end(before[0])))
+            self._set(
+                self.answers._replace(typed=type(self.answers.typed).at_end(in_unit(before, self.answers.current)))
+            )
 
     def action_close(self) -> None:
         """Leave; what was typed is kept."""
@@ -199,18 +225,31 @@ class Form(View):
 
     def _heard(self, number: int, answer: Answer, go_on: Callable[[], None]) -> None:
         if answer.value is None:
-            self._ask_back((answer.trouble, "act"))
+            self._ask_back((answer.trouble, "act"), *self._unit_hint(number))
         else:
             echo, self._doubted[number] = answer.value
             doubts = self._doubted[number]
             self.answers = self.answers.heard(number, echo, " ".join(doubts))
             if doubts:
-                self._ask_back(*((doubt, "watch") for doubt in doubts), ("Enter keeps it; or type it again.", "faint"))
+                self._ask_back(
+                    *((doubt, "watch") for doubt in doubts),
+                    ("Enter keeps it; or type it again.", "faint"),
+                    *self._unit_hint(number),
+                )
             else:
-                self._words = []
+                label = self.spec.fields[number].label
+                self._words = [(f"{label}: {echo}", "good")] if self.spec.columns > 1 else []
                 go_on()
                 self.keep()
                 self._check()
+
+    def _unit_hint(self, number: int) -> tuple[tuple[str, str], ...]:
+        """The way out where a bare number may have been meant in another unit."""
+        each = self.spec.fields[number]
+        bare = self.answers.texts[number][-1:].isdigit()
+        return (
+            ((f"If the whole report is not in {each.unit}, u changes the unit.", "faint"),) if each.ion and bare else ()
+        )
 
     def _ask_back(self, *words: tuple[str, str]) -> None:
         """Ask about the field; keys typed before the question was seen answer nothing and are left out."""
@@ -286,8 +325,6 @@ class Form(View):
         self.finish()
         self.fertui.changed(last_number)
         self.fertui.say(saved_words(written), "good")
-        if self._saved is not None:
-            self._saved()
 
     # drafts
 
@@ -297,8 +334,11 @@ class Form(View):
             return True
         return self.fertui.keep_draft(self.spec.kind, self.loop, self.answers.with_typed_kept().texts)
 
-    def take_up(self, texts: tuple[str, ...]) -> None:
-        """Go on with a draft of this form."""
+    def take_up(self, draft: Draft) -> None:
+        """Go on with a draft of this form, in the unit it was typed in."""
+        texts = draft.texts
+        if self.spec.unit and draft.unit in UNITS:
+            self.fertui.choose_unit(draft.unit)
         if len(texts) == len(self.spec.fields):
             first_empty = next((i for i, text in enumerate(texts) if not text), 0)
             self._set(

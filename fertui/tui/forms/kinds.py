@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING
 
-from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.tui.figures import point_name
-from fertui.tui.forms.spec import EVERY, Asked, Group, Part, Spec
+from fertui.tui.forms.choices import METHODS, NOTE, TIME, acids_of, containers_of, points_of, salts_of, tanks_of
+from fertui.tui.forms.compositions import analysis, recipe
+from fertui.tui.forms.spec import Asked, Group, Part, Spec
 
 if TYPE_CHECKING:
     from fertui.site.model import Loop, Site
@@ -21,42 +22,10 @@ OTHER_KINDS = {
 }  # fmt: skip
 """Kinds without a key of their own, as the list of entries names them."""
 
-NOTE = Asked("note", "note", words=True, entry=EVERY)
-TIME = Asked("at", "when", entry=EVERY, words=True)
-METHODS = ("pore", "extract_1_1.5", "paste", "pour_through")
-
 
 def form_for(kind: str, site: Site, loop: Loop, unit: str) -> Spec:
     """The form of a kind for a loop; ``unit`` is what a bare number for an ion is taken in."""
     return FORMS[kind](site, loop, unit)
-
-
-def points_of(loop: Loop) -> tuple[str, ...]:
-    """Points of a loop that can be sampled, the first the usual one."""
-    from fertui.logbook.parse import POINTS_BY_LAYOUT
-
-    return POINTS_BY_LAYOUT[loop.layout]
-
-
-def tanks_of(site: Site, loop: Loop) -> tuple[str, ...]:
-    """Stock tanks of a loop, of the site where the loop names none."""
-    return loop.stock_tanks or tuple(tank.name for tank in site.stock_tanks)
-
-
-def containers_of(site: Site, loop: Loop) -> tuple[str, ...]:
-    """What can hold litres in a loop: its tank or drain store, then its stock tanks."""
-    own = ("tank",) if loop.layout == "shared-tank" else ("drain_store",) if loop.layout == "drain-blend" else ()
-    return (*own, *tanks_of(site, loop))
-
-
-def acids_of(site: Site) -> tuple[str, ...]:
-    """Supplies with a strength: acids and lyes."""
-    return tuple(supply.name for supply in site.supplies if supply.strength_pct is not None)
-
-
-def salts_of(site: Site) -> tuple[str, ...]:
-    """Supplies that are weighed."""
-    return tuple(supply.name for supply in site.supplies if supply.strength_pct is None)
 
 
 def meters(point: str, entry: int, layout: str, temperature: bool = True) -> Group:
@@ -102,62 +71,6 @@ ROUND_HELP = (
     "Empty means not measured. + saves from any field, * takes the last value again, Tab goes to the next group. "
     "Both . and , are decimal marks; a unit may follow the number. Litres without a time cover the time since the "
     "last entry."
-)
-
-
-def ions(unit: str, entry: int = 0) -> tuple[Asked, ...]:
-    """One field an ion, named by the species that its unit means: mg/L of nitrogen for nitrate and ammonium."""
-    return tuple(_ion(ion, unit, entry) for ion in IONS)
-
-
-def _ion(ion: str, unit: str, entry: int) -> Asked:
-    if unit != "mg/L":
-        return Asked(
-            ion,
-            "HCO3 (alkal.)" if ion == "HCO3" else "P (H2PO4)" if ion == "H2PO4" else ion,
-            "meq/L" if ion == "HCO3" else unit,
-            entry,
-        )
-    from fertui.quantities import shown_in
-
-    written, species = shown_in(ion, unit)
-    return Asked(species or ion, species or ion, written, entry)
-
-
-def micronutrients(entry: int = 0) -> tuple[Asked, ...]:
-    """One field a micronutrient."""
-    return tuple(Asked(name, name, "umol/L", entry) for name in MICRONUTRIENTS)
-
-
-def analysis(site: Site, loop: Loop, unit: str) -> Spec:
-    """A laboratory's report."""
-    about = (
-        Asked("point", "point", choices=points_of(loop), default=points_of(loop)[1], required=True),
-        Asked("at", "sampled", words=True),
-    )
-    rest = (
-        Asked("EC", "EC", "mS/cm"), Asked("pH", "pH"), Asked("lab", "lab", words=True), Asked("sample", "number",
-        words=True),
-        Asked("method", "method", choices=("", *METHODS)), Asked("doubtful", "doubtful", words=True), NOTE,
-    )  # fmt: skip
-    groups = (
-        Group("sample", about),
-        Group("ions", ions(unit)),
-        Group("micronutrients", micronutrients()),
-        Group("report", rest),
-    )
-    return Spec("Analysis", (Part("analysis"),), groups, columns=2, help=ANALYSIS_HELP, unit=unit)
-
-
-ANALYSIS_HELP = (
-    "The laboratory's report. Give when the sample was taken, not when the report came: the estimate uses it at "
-    "its own time. "
-    "The unit beside a field is what a bare number is taken in; u changes it for the whole form before anything "
-    "is typed, "
-    "and a number may carry its own (120 mg/L). In mg/L nitrogen, phosphorus and sulphur are meant as elements, "
-    "as the field says. "
-    "<0.1 means below what the laboratory can see. Charge balance and EC check show below and are looked at "
-    "before saving."
 )
 
 
@@ -326,7 +239,7 @@ def sample(site: Site, loop: Loop, unit: str) -> Spec:
         Asked("status", "status", choices=("sent", "awaited", "arrived", "lost"), default="sent", required=True),
         Asked("lab", "lab", words=True), Asked("sample", "number", words=True), Asked("expected", "report expected",
         words=True),
-        Asked("method", "method", choices=("", *METHODS)),
+        Asked("method", "method", choices=METHODS),
     )  # fmt: skip
     return Spec(
         "Sample",
@@ -361,26 +274,6 @@ def setpoint(site: Site, loop: Loop, unit: str) -> Spec:
         (Part("setpoint"),),
         (Group("from now on", fields), Group("by light", light), Group("", (TIME, NOTE))),
         help="Set points from now on.",
-    )
-
-
-def recipe(site: Site, loop: Loop, unit: str) -> Spec:
-    """A feed composition."""
-    about = (Asked("name", "name", words=True), TIME)
-    rest = (Asked("EC", "EC", "mS/cm"), Asked("pH", "pH"), NOTE)
-    groups = (
-        Group("recipe", about),
-        Group("ions", ions(unit)),
-        Group("micronutrients", micronutrients()),
-        Group("feed", rest),
-    )
-    return Spec(
-        "Recipe",
-        (Part("recipe"),),
-        groups,
-        columns=2,
-        help="The feed composition that the stocks carry from now on.",
-        unit=unit,
     )
 
 

@@ -26,7 +26,7 @@ def offer(draft: Draft, form: Form, now: datetime) -> Chooser:
 
     def chosen(value: str) -> None:
         if value == "take":
-            form.take_up(draft.texts)
+            form.take_up(draft)
         else:
             form.fertui.drop_draft(form.spec.kind, form.loop)
 

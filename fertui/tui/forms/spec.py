@@ -14,6 +14,7 @@ Texts = dict[str, str]
 class Asked(NamedTuple):
     """One field: which entry it goes into and under what name, how it is labelled, what may be typed.
 
+    ``ion``: what a concentration is of, so that one written in another unit can be shown in the unit of the field.
     ``choices``: one of these, else anything; ``words``: letters are text, not units. ``default`` stands in the field
     from the start and alone makes no entry. ``unit`` is the unit a bare number is taken in.
     """
@@ -26,6 +27,7 @@ class Asked(NamedTuple):
     words: bool = False
     default: str = ""
     required: bool = False
+    ion: str = ""
 
     @property
     def is_number(self) -> bool:

@@ -44,13 +44,14 @@ class SiteView(View):
         "On the right stands where a value comes from; 'unverified preset' means nobody has checked it for your crop. "
         "Enter changes the value under the bar: it is checked as a whole, the old file is kept beside the new one, "
         "and the change is logged with your initials. Below the values of the file stand the bands and limits in force "
-        "for this loop, wherever they come from, and waters as last analysed; i shows these alone. / shows only rows with a text in them."
+        "for this loop, wherever they come from, and waters as last analysed; i shows these alone."
+        " / shows only rows with a text in them."
     )
     BINDINGS: ClassVar[list[Any]] = [
         *SCROLLING,
         Binding("enter", "edit", "change", id="site.edit", tooltip="Change the value under the bar."),
         Binding("slash", "text", "search", id="site.text", tooltip="Show rows with a text in them."),
-        Binding("i", "in_force", "in force", id="site.aims", tooltip="Show bands, limits and analysed waters in force, alone."),
+        Binding("i", "in_force", "in force", id="site.aims", tooltip="What is in force alone: bands, limits, waters."),
         Binding("backspace", "everything", "all", show=False, id="site.all", tooltip="Show every row again."),
         Binding("c", "check", "check", id="site.check", tooltip="Check site file, logbook and this machine."),
     ]
