@@ -46,9 +46,12 @@ class Frame(Screen[None], inherit_bindings=False):
         """The parts stand: begin."""
         await cast("Shell", self.app).begin()
 
-    def on_resize(self) -> None:
-        """A new size: nothing of what the terminal shows is known."""
+    def on_resize(self, event: events.Resize) -> None:
+        """A new size: nothing of what the terminal shows is known. The toolkit paints again unless the size went
+        there and back so fast that it saw none."""
         cast("Shell", self.app).forget_screen()
+        if event.size == self.size:
+            self.app.refresh()
 
 
 class Shell(App[int], inherit_bindings=False):
@@ -103,6 +106,11 @@ class Shell(App[int], inherit_bindings=False):
     def too_small(self) -> bool:
         """Whether the screen is below the floor for which views are made."""
         return self.size.width < FLOOR[0] or self.size.height < FLOOR[1]
+
+    @property
+    def typing(self) -> bool:
+        """Whether a question or a page above the view stands, which must not be taken away from whoever answers."""
+        return self.query_one(Prompt).display or self.query_one(Stage).piled > 0
 
     def draw_frame(self) -> None:
         """Header, view names and keys."""

@@ -46,6 +46,7 @@ class Working(Shell):
         self._last_number = -1
         self._site_stamp = 0
         self._last_trouble = ""
+        self._untold: tuple[str, str] | None = None
 
     async def begin(self) -> None:
         """Open the site; the frame is on the screen already."""
@@ -73,6 +74,17 @@ class Working(Shell):
         from fertui.tui.text_page import TextPage
 
         self.call_next(self.open_page, TextPage(title, [sentence]))
+
+    def _tell_once_free(self, title: str, sentence: str) -> None:
+        """The same about what nobody here did: in the bottom line at once, the page only once nobody is typing."""
+        self.say(title, "act")
+        self._untold = (title, sentence)
+        self._tell_if_free()
+
+    def _tell_if_free(self) -> None:
+        if self._untold is not None and not self.typing:
+            self.say_at_length(*self._untold)
+            self._untold = None
 
     # the snapshot and what it lacks
 
@@ -141,6 +153,7 @@ class Working(Shell):
     # what others write
 
     def _look_for_news(self) -> None:
+        self._tell_if_free()
         if self.initials.now != self.snapshot.initials:
             self.snapshot = self.snapshot._replace(initials=self.initials.now)
         if self.snapshot.loop:
@@ -162,7 +175,7 @@ class Working(Shell):
     def _site_read(self, answer: Answer) -> None:
         """The site file was written by someone: take it up, or say what is wrong with it and go on without."""
         if answer.value is None:
-            self.say_at_length("site.toml cannot be read now", f"{answer.trouble} {UNREADABLE}")
+            self._tell_once_free("site.toml cannot be read now", f"{answer.trouble} {UNREADABLE}")
             return
         self._model.put(Call(lambda bench: bench.read_site_again(), lambda _: self.changed(self._last_number)))
         self.site_changed(answer.value)
