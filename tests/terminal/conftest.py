@@ -14,7 +14,8 @@ import pytest
 HERE = Path(__file__).parent
 sys.path.insert(0, str(HERE))  # the driver and the hand-made workbench lie beside the tests
 
-from pseudo_terminal import PseudoTerminal  # noqa: E402
+from pseudo_terminal import Command, PseudoTerminal  # noqa: E402
+from ready_program import ReadyProgram  # noqa: E402
 
 AT = datetime(2026, 6, 1, 7, 0, tzinfo=UTC)
 """The morning the demo site of the tests ends on."""
@@ -43,21 +44,40 @@ def todays_site(built: dict[str, Path], tmp_path: Path) -> Path:
     return shutil.copytree(built["today"], tmp_path / "nursery")
 
 
+@pytest.fixture(scope="session")
+def ready() -> Iterator[ReadyProgram]:
+    """The program loaded once for all tests."""
+    program = ReadyProgram()
+    yield program
+    program.close()
+
+
+def own_folders(home: Path) -> dict[str, str]:
+    """An environment in which the program keeps its settings in a folder of the test."""
+    return {"HOME": str(home), "XDG_CONFIG_HOME": str(home / "config"), "XDG_STATE_HOME": str(home / "state")}
+
+
 @pytest.fixture
-def open_terminal(tmp_path: Path) -> Iterator[Opened]:
-    """Opens a site in a terminal of its own; every terminal is closed at the end of the test."""
+def open_terminal(ready: ReadyProgram, tmp_path: Path) -> Iterator[Opened]:
+    """Opens a site in a terminal of its own; every terminal is closed at the end of the test.
+
+    ``from_nothing``: by the command line, as a person does, not from the program that is loaded already.
+    """
     opened: list[PseudoTerminal] = []
 
     def start(
-        site: Path, *, fixed: bool = False, size: tuple[int, int] = (80, 24), **environment: str
+        site: Path,
+        *,
+        fixed: bool = False,
+        from_nothing: bool = False,
+        size: tuple[int, int] = (80, 24),
+        **environment: str,
     ) -> PseudoTerminal:
-        command = [sys.executable, str(HERE / "hand_made.py"), str(site), *([AT.isoformat()] if fixed else [])]
-        own = {
-            "HOME": str(tmp_path),
-            "XDG_CONFIG_HOME": str(tmp_path / "config"),
-            "XDG_STATE_HOME": str(tmp_path / "state"),
-        }
-        terminal = PseudoTerminal(command, size, {**own, **environment}, tmp_path)
+        at = AT.isoformat() if fixed else ""
+        starting = Command([sys.executable, str(HERE / "hand_made.py"), str(site), at])
+        terminal = PseudoTerminal(
+            starting if from_nothing else ready.on(site, at), size, {**own_folders(tmp_path), **environment}, tmp_path
+        )
         opened.append(terminal)
         return terminal
 
@@ -82,11 +102,10 @@ def shared_site(built: dict[str, Path], tmp_path_factory: pytest.TempPathFactory
 
 
 @pytest.fixture(scope="module")
-def shared_terminal(shared_site: Path) -> Iterator[PseudoTerminal]:
+def shared_terminal(ready: ReadyProgram, shared_site: Path) -> Iterator[PseudoTerminal]:
     """One terminal for those tests: a start costs more than all they press."""
     home = shared_site.parent
-    own = {"HOME": str(home), "XDG_CONFIG_HOME": str(home), "XDG_STATE_HOME": str(home)}
-    with PseudoTerminal([sys.executable, str(HERE / "hand_made.py"), str(shared_site)], (80, 24), own, home) as shown:
+    with PseudoTerminal(ready.on(shared_site), (80, 24), own_folders(home), home) as shown:
         shown.until_text("more to look at")
         shown.settle()
         yield shown

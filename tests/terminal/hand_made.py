@@ -241,15 +241,19 @@ class HandMade(Bench):
         )  # fmt: skip
 
 
-if __name__ == "__main__":
+def open_hand_made(site: Path, at: str = "") -> int:
+    """Show a site with these results until the operator leaves; returns the exit code."""
     from fertui.refusals import Refusal
+    from fertui.tui import working
     from fertui.tui.app import run_on
 
-    here = Path(sys.argv[1])
+    working.LOOK_FOR_NEWS_EVERY = 0.25  # seconds; tests wait for what others write
     try:
-        sys.exit(
-            run_on(lambda: HandMade(here), here, datetime.fromisoformat(sys.argv[2]) if len(sys.argv) > 2 else None)
-        )
+        return run_on(lambda: HandMade(site), site, datetime.fromisoformat(at) if at else None)
     except Refusal as no:
         print(no)
-        sys.exit(2)
+        return 2
+
+
+if __name__ == "__main__":
+    sys.exit(open_hand_made(Path(sys.argv[1]), *sys.argv[2:3]))

@@ -66,7 +66,7 @@ def test_suspended_and_resumed_it_draws_itself_again(todays_site: Path, open_ter
     terminal.until_text("more to look at")
     terminal.settle()
     terminal.signal(signal.SIGTSTP)
-    terminal.settle()
+    terminal.until_stopped()
     assert given_back(terminal)
     terminal.screen.reset()
     terminal.signal(signal.SIGCONT)

@@ -156,3 +156,15 @@ def test_below_the_floor_it_says_so_and_comes_back(site: Path, open_terminal: Op
     terminal.until_text("fertui needs 60 columns and 20 rows")
     terminal.resize(80, 24)
     terminal.until_text("All loops, worst first")
+
+
+def test_a_size_that_goes_there_and_back_at_once_leaves_a_whole_screen(site: Path, open_terminal: Opened) -> None:
+    """The terminal cuts what it shows, the program may never see the smaller size."""
+    terminal = open_terminal(site, fixed=True)
+    whole = show(terminal, ())
+    for wait in (0.0, 0.005, 0.01, 0.02, 0.03) * 4:
+        terminal.resize(50, 15)
+        terminal.read(wait)
+        terminal.resize(80, 24)
+        terminal.settle()
+        assert terminal.text == whole
