@@ -245,6 +245,7 @@ def _read_commands(commands: argparse._SubParsersAction) -> None:
     plan.add_argument("--without", metavar="SALT", action="append", default=[], help="leave a salt out (repeatable)")
     plan.add_argument("--steps", metavar="N", help="at most so many dosing steps (1-4)")
     plan.add_argument("--salts", metavar="N", help="at most so many different salts")
+    plan.add_argument("--ec-step", metavar="MS_CM", help="EC may change so much in one step of tank or feed")
     plan.add_argument("--sheet", metavar="FILE", help="write the sheet to weigh and mix from")
     plan.add_argument("--cautions-read", action="store_true", help="the cautions of acids and lyes have been read")
     plan.add_argument("--label-strength", metavar="PERCENT", help="strength read off the acid's label")

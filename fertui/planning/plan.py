@@ -29,18 +29,20 @@ def plan(
     without: Iterable[str] = (),
     steps: int | None = None,
     salts: int | None = None,
+    ec_step: float | None = None,
     entries: Sequence[Entry] = (),
 ) -> Plan:
     """What brings the ions of a loop back within ``days``; what cannot be done is a plan with its reason.
 
     ``days`` 0: one step into the dosed tank, as it stands right after mixing: no uptake, exchange or EC step.
     ``target``: a target of the site or of the catalogue instead of the loop's own. ``supplies``: use these alone;
-    ``without``: leave these out; ``steps`` 1-4 weighing days; ``salts``: at most so many. ``entries``: effective
-    entries, for what the year has discharged. Raises ``PlanningError``, ``SiteError`` or ``CatalogueError`` for what
+    ``without``: leave these out; ``steps`` 1-4 weighing days; ``salts``: at most so many;
+    ``ec_step``: most that EC may change in one step of the tank or the feed [mS/cm]. ``entries``: effective entries,
+    for what the year has discharged. Raises ``PlanningError``, ``SiteError`` or ``CatalogueError`` for what
     cannot be asked.
     """
     only = None if supplies is None else tuple(supplies)
-    wishes = Wishes(days, target, only, tuple(without), steps, salts).checked()
+    wishes = Wishes(days, target, only, tuple(without), steps, salts, ec_step).checked()
     situation = situation_of(estimate, entries)
     runs: Runs = StillRuns(situation, "tank") if days == 0 else ModelRuns(estimate, days, situation.usual_acid_mmol_d)
     if situation.loop.layout != "shared-tank" and days == 0:
@@ -50,7 +52,7 @@ def plan(
         )
     points = ("tank", situation.managed) if situation.loop.layout == "shared-tank" else ("feed", situation.managed)
     request = Request(
-        situation, goals_of(situation, target, tuple(dict.fromkeys(points))), wishes, materials_of(situation, wishes),
+        situation, goals_of(situation, wishes, tuple(dict.fromkeys(points))), wishes, materials_of(situation, wishes),
         runs, Solver(), entries, situation.points, year_kg_n(estimate, entries),
     )  # fmt: skip
     if situation.loop.layout == "shared-tank":

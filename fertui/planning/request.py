@@ -32,11 +32,13 @@ FILLING = 0.3
 """Part of the aim's EC below which a vessel is being filled, and its aim not scaled down to what is in it."""
 STEPS_BY_DEFAULT = 4
 MOST_STEPS = 4
+LEAST_EC_STEP, MOST_EC_STEP = 0.05, 1.0
+"""A smaller step no hand meter sees; a larger one is a shock to roots (common practice, no source)."""
 
 
 class Wishes(NamedTuple):
     """What the grower asked for: horizon [d], target by name, supplies to use only, to leave out, steps, number of
-    salts."""
+    salts, most that EC may change in one step of the solution that is dosed [mS/cm]."""
 
     days: int = 14
     target: str | None = None
@@ -44,6 +46,7 @@ class Wishes(NamedTuple):
     without: tuple[str, ...] = ()
     steps: int | None = None
     salts: int | None = None
+    ec_step: float | None = None
 
     def checked(self) -> Wishes:
         """Itself; raises ``PlanningError`` for a number no plan can have."""
@@ -53,6 +56,10 @@ class Wishes(NamedTuple):
             raise PlanningError(f"a plan has 1 to {MOST_STEPS} steps, not {self.steps}.")
         if self.salts is not None and self.salts < 1:
             raise PlanningError(f"a plan needs at least 1 salt, not {self.salts}.")
+        if self.ec_step is not None and not LEAST_EC_STEP <= self.ec_step <= MOST_EC_STEP:
+            raise PlanningError(
+                f"EC may change by {LEAST_EC_STEP:g} to {MOST_EC_STEP:g} mS/cm in a step, not {self.ec_step:g}."
+            )
         return self
 
 
@@ -118,9 +125,14 @@ def _ec_of_aim(goal: Goal) -> float:
     return float(conductivity(wanted)) - 0.1 * float(wanted[INDEX["Na"]])
 
 
-def goals_of(situation: Situation, target: str | None, points: Sequence[str]) -> dict[str, Goal]:
-    """The goal at each point; raises ``SiteError`` for an unknown target."""
-    return {point: goal_of(situation.site, situation.loop, point, target) for point in points}
+def goals_of(situation: Situation, wishes: Wishes, points: Sequence[str]) -> dict[str, Goal]:
+    """The goal at each point, the dosed one first; raises ``SiteError`` for an unknown target."""
+    goals = {point: goal_of(situation.site, situation.loop, point, wishes.target) for point in points}
+    if wishes.ec_step is not None:
+        dosed = goals[points[0]]
+        sources = {**dosed.sources, "EC step": "asked for"}
+        goals[points[0]] = dosed._replace(ec_step=wishes.ec_step, sources=sources)
+    return goals
 
 
 def materials_of(situation: Situation, wishes: Wishes) -> tuple[Material, ...]:

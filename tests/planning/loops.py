@@ -97,7 +97,7 @@ def request(place: Situation, runs: Runs | None = None, **wishes: object) -> Req
     asked = Wishes(**wishes).checked()
     model = runs or (StillRuns(place, "tank") if asked.days == 0 else MixingTank(place, asked.days))
     return Request(
-        place, goals_of(place, asked.target, ("tank",)), asked, materials_of(place, asked), model, Solver(), (),
+        place, goals_of(place, asked, ("tank",)), asked, materials_of(place, asked), model, Solver(), (),
         place.points,
     )  # fmt: skip
 

@@ -85,7 +85,25 @@ def test_supplies_salts_and_what_is_left_out_are_obeyed() -> None:
     assert {step.salt for step in only.steps} <= {"potassium sulfate"}
 
 
-@pytest.mark.parametrize("wrong", [{"days": -1}, {"days": 400}, {"steps": 5}, {"steps": 0}, {"salts": 0}])
+def first_rise(place, plan) -> float:
+    """How much EC rises with what is weighed in on the first day of a plan."""
+    added = sum(vector(step.adds_mmol) for step in plan.steps if step.at == plan.steps[0].at)
+    now = place.composition("tank")
+    return float(conductivity(now + added / place.volumes_l["tank"]) - conductivity(now))
+
+
+@pytest.mark.parametrize("asked", [0.1, 0.2])
+def test_no_step_moves_ec_by_more_than_was_asked(asked: float) -> None:
+    place = place_of({**LOW_K, "K": 2.0, "NO3": 10.0})
+    tank = MixingTank(place, 14)
+    usual, careful = (
+        hand_plan(request(place, tank, days=14, target="hoagland-1", ec_step=step)) for step in (None, asked)
+    )
+    assert 0.5 * asked < first_rise(place, careful) <= asked + 2e-3 < first_rise(place, usual)
+    assert any(each.limit.startswith("EC step") and each.source == "asked for" for each in careful.binding)
+
+
+@pytest.mark.parametrize("wrong", [{"days": -1}, {"days": 400}, {"steps": 5}, {"steps": 0}, {"salts": 0}, {"ec_step": 0.01}, {"ec_step": 3.0}])
 def test_what_no_plan_can_be(wrong: dict) -> None:
     with pytest.raises(PlanningError):
         Wishes(**wrong).checked()
@@ -264,7 +282,7 @@ def rooted_plan(step: float | None):
     loop = place.loop._replace(medium="perlite", limits={**place.loop.limits, **own})
     place = place._replace(loop=loop, site=place.site._replace(loops=(loop,)), managed="root_zone")
     tank = RootedTank(place, 7)
-    goals = goals_of(place, "hoagland-1", ("tank", "root_zone"))
+    goals = goals_of(place, Wishes(target="hoagland-1"), ("tank", "root_zone"))
     asked = request(place, tank, days=7, target="hoagland-1")._replace(goals=goals)
     return place, tank, hand_plan(asked)
 

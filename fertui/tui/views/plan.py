@@ -21,6 +21,7 @@ if TYPE_CHECKING:
 HORIZONS = (7, 14, 21, 0)
 SALTS = (None, 1, 2, 3, 4)
 STEPS = (None, 1, 2, 3, 4)
+EC_STEPS = (None, 0.1, 0.2, 0.3, 0.5)
 
 
 class PlanView(View):
@@ -34,7 +35,7 @@ class PlanView(View):
         "count only once marked "
         "done. Enter marks the chosen step done and asks what was really weighed; v says it was not done. "
         "l leaves a salt out, h sets the horizon (0: right after mixing), g the number of steps, s the number of "
-        "salts. "
+        "salts, c how much EC may change in one step. "
         "i shows the arithmetic for a pocket calculator, o the sheet. Steps with acid are held back until k: read "
         "the cautions and give "
         "the strength on the label."
@@ -50,6 +51,8 @@ class PlanView(View):
         Binding("h", "horizon", "horizon", id="plan.horizon", tooltip="7, 14, 21 days, or right after mixing."),
         Binding("s", "salts", "salts", show=False, id="plan.salts", tooltip="At most so many different salts."),
         Binding("g", "steps", "steps", show=False, id="plan.steps", tooltip="At most so many dosing steps."),
+        Binding("c", "ec_step", "EC step", show=False, id="plan.ec_step",
+        tooltip="How much EC may change in one step: usual, 0.1, 0.2, 0.3 or 0.5 mS/cm."),
         Binding("i", "arithmetic", "sums", id="plan.arithmetic", tooltip="The arithmetic, step by step."),
         Binding("k", "acknowledge", "cautions", show=False, id="plan.cautions",
         tooltip="Read the cautions of the acid steps."),
@@ -58,13 +61,18 @@ class PlanView(View):
 
     def __init__(self) -> None:
         super().__init__()
-        self.horizon, self.salts, self.steps, self.row = 14, 0, 0, 0
+        self.horizon, self.salts, self.steps, self.ec_step, self.row = 14, 0, 0, 0, 0
         self.without: tuple[str, ...] = ()
         self.released: Plan | None = None
 
     def _ask(self, snapshot: Snapshot) -> Ask:
         options: list[tuple[str, Any]] = [("days", self.horizon)]
-        wishes = {"without": self.without, "salts": SALTS[self.salts], "steps": STEPS[self.steps]}
+        wishes = {
+            "without": self.without,
+            "salts": SALTS[self.salts],
+            "steps": STEPS[self.steps],
+            "ec_step": EC_STEPS[self.ec_step],
+        }
         options += [(name, wish) for name, wish in wishes.items() if wish]
         return Ask("plan", snapshot.loop, tuple(options))
 
@@ -99,6 +107,7 @@ class PlanView(View):
         wishes = [f"without {', '.join(self.without)}"] if self.without else []
         wishes += [f"at most {SALTS[self.salts]} salts"] if self.salts else []
         wishes += [f"at most {STEPS[self.steps]} steps"] if self.steps else []
+        wishes += [f"EC step {EC_STEPS[self.ec_step]} mS/cm"] if self.ec_step else []
         return [*rows, *([BLANK] if rows else []), *draw_plan(plan, held, wishes, snapshot, self.fertui.local, width)]
 
     def action_up(self) -> None:
@@ -133,6 +142,11 @@ class PlanView(View):
     def action_steps(self) -> None:
         """The next number of steps."""
         self.steps = (self.steps + 1) % len(STEPS)
+        self._again()
+
+    def action_ec_step(self) -> None:
+        """The next EC step."""
+        self.ec_step = (self.ec_step + 1) % len(EC_STEPS)
         self._again()
 
     async def action_without(self) -> None:
