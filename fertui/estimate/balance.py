@@ -37,6 +37,11 @@ class BalanceRow(NamedTuple):
     unexplained: float
     end_mmol: float
 
+    @property
+    def flows(self) -> tuple[str, ...]:
+        """Names of the columns between start and end."""
+        return self._fields[1:-1]
+
 
 class Balance(NamedTuple):
     """The account of a period by ion, and the numbers of the entries behind a cell, by (ion, column)."""
@@ -45,6 +50,11 @@ class Balance(NamedTuple):
     end: datetime
     ions: Mapping[str, BalanceRow]
     entries: Mapping[tuple[str, str], tuple[int, ...]]
+
+    @property
+    def columns(self) -> tuple[str, ...]:
+        """Names of the columns of a row, in the order they are shown in."""
+        return BalanceRow._fields
 
 
 def balance(estimate: Estimate, start: datetime, end: datetime) -> Balance:

@@ -7,26 +7,11 @@ from typing import Any
 from fertui.cli.views import as_json, words
 from fertui.estimate.balance import Balance
 
-COLUMNS = (
-    "start_mmol",
-    "make_up",
-    "stock",
-    "dose",
-    "acid",
-    "feed",
-    "uptake",
-    "exchange",
-    "bleed",
-    "drain",
-    "unexplained",
-    "end_mmol",
-)
-
 
 def text(account: Balance, loop: str, timezone: str) -> str:
     """A row an ion, a column a cause, in mol of the whole loop; columns that are nothing everywhere are left out."""
     rows = {ion: as_json.plain(row) for ion, row in account.ions.items()}
-    used = [name for name in COLUMNS if any(abs(row[name]) > 1e-9 for row in rows.values())]
+    used = [name for name in account.columns if any(abs(row[name]) > 1e-9 for row in rows.values())]
     shown = [("mol", *(name.removesuffix("_mmol").replace("_", "-") for name in used))]
     for ion, row in rows.items():
         shown.append((ion, *(f"{row[name] / 1000:.2f}" for name in used)))
@@ -42,7 +27,7 @@ def text(account: Balance, loop: str, timezone: str) -> str:
 def document(account: Balance, loop: str) -> dict[str, Any]:
     """The contract of ``balance --json``."""
     ions = {
-        ion: {name: value for name, value in as_json.plain(row).items() if name in COLUMNS}
+        ion: {name: value for name, value in as_json.plain(row).items() if name in account.columns}
         for ion, row in account.ions.items()
     }
     return {"schema": "fertui.balance/1", "loop": loop, "from": account.start, "to": account.end, "ions": ions}

@@ -17,20 +17,6 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Balance, BalanceRow
 
 PERIODS = (7, 14, 28, 90)
-CAUSES = (
-    "start_mmol",
-    "make_up",
-    "stock",
-    "dose",
-    "acid",
-    "feed",
-    "uptake",
-    "exchange",
-    "bleed",
-    "drain",
-    "unexplained",
-    "end_mmol",
-)
 HEADS = {"start_mmol": "start", "make_up": "water", "unexplained": "unexpl.", "exchange": "medium", "end_mmol": "end"}
 """Short heads of the columns; the others are their own."""
 WORDS = {
@@ -151,7 +137,7 @@ def used(account: Balance, width: int) -> list[str]:
     def size(cause: str) -> float:
         return max((abs(getattr(row, cause)) for row in account.ions.values()), default=0.0)
 
-    moved = [cause for cause in CAUSES if cause in ("start_mmol", "end_mmol") or size(cause) > 0]
+    moved = [cause for cause in account.columns if cause in ("start_mmol", "end_mmol") or size(cause) > 0]
     while 6 + CELL * len(moved) > width:
         moved.remove(min((cause for cause in moved if cause not in ("start_mmol", "end_mmol")), key=size))
     return moved
@@ -170,7 +156,7 @@ def _cell(value: float, chosen: bool) -> Span:
 
 def bars(ion: str, row: BalanceRow, unit: str, factor: float, name: str, width: int) -> list[Line]:
     """Every cause of an ion that moved anything, as a bar to the right for a gain and to the left for a loss."""
-    flows = [(cause, _shown(ion, row, cause, unit, factor)) for cause in CAUSES[1:-1]]
+    flows = [(cause, _shown(ion, row, cause, unit, factor)) for cause in row.flows]
     moved: Sequence[tuple[str, float]] = [(cause, value) for cause, value in flows if abs(value) > 1e-9]
     half = max(8, (width - 40) // 2)
     largest = max((abs(value) for _, value in moved), default=1.0)
