@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from datetime import datetime
+from collections.abc import Sequence
+from datetime import UTC, datetime
 from typing import NamedTuple
 
 from fertui.logbook.entries import Entry
@@ -43,10 +44,10 @@ def is_good(calibration: Entry) -> bool:
     return result in _GOOD if result else _within(calibration)
 
 
-def _was_right(calibration: Entry) -> bool:
-    """Whether the instrument was right as found, before anything was adjusted."""
+def was_off(calibration: Entry) -> bool:
+    """Whether the instrument was found wrong, adjusted since or not."""
     result = calibration.text_of("result")
-    return result == "good" or (result != "off" and _within(calibration))
+    return result == "off" or (result != "good" and not _within(calibration))
 
 
 def _within(calibration: Entry) -> bool:
@@ -64,29 +65,39 @@ def standing(book: Logbook, instrument: str, at: datetime) -> tuple[Entry, ...]:
     return tuple(last.values())
 
 
-def doubted_by(book: Logbook, calibration: Entry) -> tuple[Doubted, ...]:
-    """Readings a calibration puts in doubt: those of its instrument since the last good check. Nothing is rewritten.
+def doubted_by(calibration: Entry, entries: Sequence[Entry]) -> tuple[Doubted, ...]:
+    """Readings a calibration puts in doubt, among ``entries``, oldest first. Nothing is rewritten.
 
-    Empty when the instrument was found good. pH is corrected by the offset, everything else by the ratio.
+    Those of its instrument since the last good check, up to this one where it was put right, on and on where it was
+    not; none where it was found good. pH is corrected by the offset, everything else by the ratio.
     """
-    quantity = calibration.text_of("quantity")
-    if _was_right(calibration):
+    if not was_off(calibration):
         return ()
-    earlier = [
-        entry
-        for entry in book.entries(kinds=("calibration",), at=calibration.at)
-        if entry.instrument == calibration.instrument
-        and entry.text_of("quantity") == quantity
-        and entry.number != calibration.number
-        and is_good(entry)
+    since = last_good(calibration, entries)
+    until = calibration.at if is_good(calibration) else datetime.max.replace(tzinfo=UTC)
+    quantity = calibration.text_of("quantity")
+    mine = [
+        each
+        for each in entries
+        if each.kind == "reading" and each.instrument == calibration.instrument and each.at <= until
+        if since is None or each.at > since.at
     ]
-    since = earlier[-1].at if earlier else None
-    readings = book.entries(kinds=("reading",), since=since, at=calibration.at)
-    mine = [entry for entry in readings if entry.instrument == calibration.instrument]
     found = ((entry, entry.number_of(quantity)) for entry in mine)
     return tuple(
         Doubted(entry, quantity, read, _corrected(read, calibration)) for entry, read in found if read is not None
     )
+
+
+def last_good(calibration: Entry, entries: Sequence[Entry]) -> Entry | None:
+    """The last good check of the same instrument and quantity before a calibration, among ``entries``, oldest first."""
+    about = (calibration.instrument, calibration.text_of("quantity"))
+    good = [
+        each
+        for each in entries
+        if each.kind == "calibration" and each.at < calibration.at and is_good(each)
+        if (each.instrument, each.text_of("quantity")) == about
+    ]
+    return good[-1] if good else None
 
 
 def _corrected(read: float, calibration: Entry) -> float:

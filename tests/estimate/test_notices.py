@@ -325,8 +325,8 @@ def test_a_meter_found_off_puts_its_readings_since_the_last_good_check_in_doubt(
     log += [read(f"2026-06-{day} 08:00", EC="2.6")._replace(instrument="EC pen") for day in (18, 22, 25)]
     (found,) = only("meter_doubt", standing, log)
     assert found.text == (
-        "EC pen read EC +11 % off on Tue 30 Jun: 2 readings since the last good check on Sat 20 Jun are in doubt. "
-        "Adjust it or use another."
+        "EC pen read EC +11 % off on Tue 30 Jun: 2 readings since the last good check on Sat 20 Jun are in doubt; "
+        "the last, 2.6, would be 2.35. Adjust it or use another."
     )
     assert only("meter_doubt", standing, [*log, calibrated("2026-06-30 10:00", "2.76")]) == []
 

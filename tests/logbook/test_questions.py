@@ -157,13 +157,13 @@ def test_a_meter_found_off_puts_its_readings_in_doubt_and_offers_the_correction(
         "calibration", at=on(28), instrument="white pen", quantity="EC", standard="1.413", reading="1.60", result="off"
     )
     (number,) = book.append(off)
-    doubted = doubted_by(book, book.entry(number))
+    doubted = doubted_by(book.entry(number), book.entries())
     assert [each.entry.number for each in doubted] == [3, 4]
     assert doubted[0].corrected == pytest.approx(2.6 * 1.413 / 1.60)
     assert book.history()[:-1] == before
     assert "instrument_off" in asked(say("reading", point="feed", EC="2.6", instrument="white pen"), book)
     good = say("calibration", at=on(29), instrument="white pen", quantity="EC", standard="1.413", reading="1.41")
-    assert doubted_by(book, good) == ()
+    assert doubted_by(good, book.entries()) == ()
     book.append(good)
     assert asked(say("reading", point="feed", EC="2.6", instrument="white pen"), book) == {}
 

@@ -6,7 +6,7 @@ from collections.abc import Iterator, Sequence
 
 from fertui.estimate.notices.look import Look
 from fertui.estimate.notices.notice import NOTE, POINT_WORDS, WATCH, Notice
-from fertui.logbook.calibrations import EC_FAIR_PCT, PH_GOOD, deviation, is_good
+from fertui.logbook.calibrations import deviation, doubted_by, is_good, last_good, was_off
 from fertui.logbook.entries import Entry
 
 RECENT_DAYS = 14.0
@@ -46,17 +46,6 @@ def surprises(look: Look) -> Iterator[Notice]:
             yield Notice("surprise", WATCH, f"{text} It is used; sample again if in doubt.", "2")
 
 
-def was_off(calibration: Entry) -> bool:
-    """Whether an instrument was found wrong, adjusted since or not.
-
-    EC more than 5 % off (Owen 2022, e-GRO blog 179), pH more than 0.05 (vendor practice, low trust).
-    """
-    if calibration.text_of("result") == "off":
-        return True
-    limit = PH_GOOD if calibration.text_of("quantity") == "pH" else EC_FAIR_PCT
-    return calibration.text_of("result") != "good" and abs(deviation(calibration)) > limit
-
-
 def _calibrations(look: Look) -> list[Entry]:
     return [each for each in look.past if each.kind == "calibration" and each.loop in ("", look.loop.name)]
 
@@ -73,16 +62,13 @@ def _found_off(look: Look) -> Iterator[Notice]:
 
 
 def _doubted(look: Look, bad: Entry, done: Sequence[Entry]) -> str:
-    """How many readings of an instrument a bad calibration puts in doubt, and since when."""
-    same = [each for each in done if _subject(each) == _subject(bad) and each.at < bad.at and is_good(each)]
-    until = bad.at if is_good(bad) else look.at
-    count = sum(
-        each.instrument == bad.instrument and each.number_of(bad.text_of("quantity")) is not None and each.at <= until
-        and (not same or each.at > same[-1].at)
-        for each in look.of("reading")
-    )  # fmt: skip
-    since = f" since the last good check on {look.day(same[-1].at)}" if same else ""
-    return f"{count} reading{'' if count == 1 else 's'}{since} {'is' if count == 1 else 'are'} in doubt"
+    """How many readings of an instrument a bad calibration puts in doubt, since when, and what the last would be."""
+    doubted, good = doubted_by(bad, [*done, *look.of("reading")]), last_good(bad, done)
+    since = f" since the last good check on {look.day(good.at)}" if good else ""
+    count = len(doubted)
+    words = f"{count} reading{'' if count == 1 else 's'}{since} {'is' if count == 1 else 'are'} in doubt"
+    last = f"; the last, {doubted[-1].read:.3g}, would be {doubted[-1].corrected:.3g}" if doubted else ""
+    return words + last
 
 
 def _subject(calibration: Entry) -> tuple[str, str]:
