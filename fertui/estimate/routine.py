@@ -251,7 +251,7 @@ class _Builder:
         for plan in self.plans:
             if plan.begin > self.now:
                 found += self._planned_events(plan)
-        return sorted((each for each in found if each.at < self.end), key=lambda event: event.at)
+        return sorted((each for each in found if each.at < self.end), key=_in_order)
 
     def _planned_events(self, plan: _Planned) -> list[Event]:
         """Doses and bleeds that are intended at a time to come."""
@@ -278,6 +278,11 @@ class _Builder:
 
     def _assume(self, text: str) -> None:
         self.assumed.append(text)
+
+
+def _in_order(event: Event) -> tuple[float, bool]:
+    """Events by time; of one moment what is let go and refilled before what is weighed in, or it would go with it."""
+    return event.at, event.cause == "dose"
 
 
 class _Planned(NamedTuple):

@@ -46,15 +46,15 @@ ENOUGH = 0.97
 
 
 def steps_of(plan: Plan, by: str) -> tuple[Fields, ...]:
-    """The texts of the plan entries a plan is accepted as: one a weighing, acid split, bleed or recipe."""
+    """The texts of the plan entries a plan is accepted as: the bleed first, then each weighing, acid split, recipe."""
     rows: list[Fields] = []
+    if plan.renewal is not None:
+        rows.append({"at": plan.at.isoformat(), "bleed": f"{plan.renewal.litres:.0f}"})
     for step in plan.steps:
         rows.append({"at": step.at.isoformat(), "salt": step.salt, "kg": f"{step.kg:g}", "tank": _tank(step.target)})
     for split in plan.acid:
         litres = f"{split.litres:.3f}"
         rows.append({"at": split.at.isoformat(), "acid": split.acid, "litres": litres, "tank": _tank(split.target)})
-    if plan.renewal is not None:
-        rows.append({"at": plan.at.isoformat(), "bleed": f"{plan.renewal.litres:.0f}"})
     if plan.recipe is not None:
         ions = {ion: f"{amount:.3f}" for ion, amount in plan.recipe.ions_mmol_l.items()}
         named = {"recipe": f"planned {plan.at:%Y-%m-%d}", "EC": f"{plan.recipe.ec:.2f}"}

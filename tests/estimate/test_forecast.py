@@ -132,6 +132,17 @@ def test_a_renewal_takes_out_and_fills_up() -> None:
     assert after[INDEX["Na"]] == pytest.approx(0.5 * before[INDEX["Na"]] + 2.0, rel=0.1)
 
 
+def test_of_one_moment_the_renewal_comes_before_what_is_weighed_in() -> None:
+    at = moment(8.9)
+    renewal, dose = Renewal(at, 1800.0, {}), Dose(at, "potassium nitrate", 1.0)
+    both, alone = (
+        trajectories(copies(_tank(), 1), 1, Scenario(doses=doses, renewals=(renewal,)), settled=True)
+        for doses in ((dose,), ())
+    )
+    # 9.891 mol K in 2000 L, none of which leaves with the 1800 L let go
+    assert (both.ions["tank"] - alone.ions["tank"])[1, 0, K] == pytest.approx(4.95, abs=0.15)
+
+
 def test_recipes_follow_one_another() -> None:
     steps = (FeedRecipe(moment(24.0), scaled(FEED, K=13.0, NO3=18.5)), FeedRecipe(moment(28.0), FEED))
     stepped = forecast(_slab(), 14, Scenario(recipes=steps))

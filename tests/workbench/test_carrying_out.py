@@ -42,6 +42,13 @@ def test_accepting_a_plan_logs_what_is_intended_and_nothing_as_done(bench: Bench
     assert len(bench.book.entries(kinds=("dose", "acid", "bleed", "recipe"))) == before
 
 
+def test_a_renewal_is_the_first_step_or_its_salts_would_leave_with_it(bench: Bench) -> None:
+    bench.accept_plan(hand_plan(**LETTUCE, renewal=renewal(), steps=hand_plan().steps[:1]), "RV")
+    items = bench.open_plans("lettuce")
+    assert [item.what for item in items] == ["bleed", items[1].what]
+    assert items[0].at <= items[1].at
+
+
 def test_a_plan_that_asks_for_nothing_cannot_be_accepted(bench: Bench) -> None:
     with pytest.raises(Refusal, match="asks for nothing"):
         accepted(bench, steps=())
