@@ -52,9 +52,9 @@ def substance(kind: str) -> Salt | Acid:
     known = _known()
     if spelling(kind) not in known and question(kind) is None:
         near = nearest(spelling(kind), known)
-        which = f"nearest: {', '.join(near)}" if near else f"it has {', '.join(dict.fromkeys(known.values()))}"
+        which = f"nearest: {', '.join(near)}" if near else f"it has {', '.join(substances())}"
         raise CatalogueError(f"{kind[:60]!r} is no salt or acid of the catalogue; {which}.")
-    return acid(kind) if _is_acid(kind) else salt(kind)
+    return acid(kind) if is_acid(kind) else salt(kind)
 
 
 def of_supply(supply: Shelved) -> Salt | Acid:
@@ -66,7 +66,7 @@ def of_supply(supply: Shelved) -> Salt | Acid:
         found = acid(supply.kind)
         found.check_strength(supply.strength_pct)
         return found
-    if _is_acid(supply.kind):
+    if is_acid(supply.kind):
         raise CatalogueError(
             f"{supply.name}: an acid needs strength_pct, the mass % on its label; without it no dose is safe."
         )
@@ -98,6 +98,11 @@ def contents(supply: Shelved) -> dict[str, float]:
     return found.mmol_per_kg
 
 
+def substances() -> tuple[str, ...]:
+    """Names of all salts and acids, each once."""
+    return tuple(dict.fromkeys(_known().values()))
+
+
 @cache
 def _known() -> Mapping[str, str]:
     """Spelling -> name of every salt and acid."""
@@ -107,7 +112,8 @@ def _known() -> Mapping[str, str]:
     }
 
 
-def _is_acid(kind: str) -> bool:
+def is_acid(kind: str) -> bool:
+    """Whether that is the name of an acid."""
     names = (each for entry in acids() if entry.is_acid for each in (entry.name, entry.formula, *entry.aliases))
     return spelling(kind) in map(spelling, names)
 

@@ -66,9 +66,15 @@ def _say(sentence: str, code: int) -> int:
     return code
 
 
-def _log_fault() -> Path:
+def state_folder() -> Path:
+    """Where the command line keeps what belongs to no site; made where it is absent."""
     folder = Path(os.environ.get("XDG_STATE_HOME") or Path.home() / ".local" / "state") / "fertui"
     folder.mkdir(parents=True, exist_ok=True)
+    return folder
+
+
+def _log_fault() -> Path:
+    folder = state_folder()
     path = folder / f"fault-{datetime.now():%Y%m%d-%H%M%S}.log"
     path.write_text(traceback.format_exc(), encoding="utf-8")
     return path

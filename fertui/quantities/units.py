@@ -14,7 +14,7 @@ from fertui.quantities.refusal import QuantityError, quoted
 
 CANONICAL: Mapping[str, str] = {
     "EC": "mS/cm", "pH": "", "temperature": "C", "light": "J/cm2", "litres": "L", "litres a day": "L/d", "kg": "kg",
-    "percent": "%", "fraction": "", "number": "",
+    "area": "m2", "litres per m2": "L/m2", "percent": "%", "fraction": "", "number": "",
 }  # fmt: skip
 """Everything but ions that can be measured, with the unit it is kept in. EC is at 25 C."""
 
@@ -37,6 +37,8 @@ FACTORS: Mapping[str, Mapping[str, float]] = {
     "litres": {"L": 1, "mL": 1e-3, "dL": 0.1, "cL": 0.01, "hL": 100, "m3": 1e3, "dm3": 1, "cm3": 1e-3,
                "US gal": 3.785411784, "gal US": 3.785411784, "US fl oz": 0.0295735295625, "imp gal": 4.54609},
     "litres a day": {"L/d": 1, "L/day": 1, "m3/d": 1e3, "m3/day": 1e3, "US gal/d": 3.785411784, "L/h": 24},
+    "area": {"m2": 1, "ha": 1e4, "sq ft": 0.09290304, "ft2": 0.09290304},
+    "litres per m2": {"L/m2": 1, "mm": 1, "m3/ha": 0.1},
     "kg": {"kg": 1, "g": 1e-3, "mg": 1e-6, "t": 1e3, "lb": 0.45359237, "lbs": 0.45359237, "oz": 0.028349523125},
     "percent": {"%": 1, "pct": 1, "percent": 1, "permille": 0.1},
     "fraction": {"": 1, "%": 0.01, "pct": 0.01, "percent": 0.01},
@@ -44,7 +46,7 @@ FACTORS: Mapping[str, Mapping[str, float]] = {
     "number": {"": 1},
 }  # fmt: skip
 """Worth of a unit in the canonical one. mS and uS alone are the trade's short for mS/cm and uS/cm.
-Gallon, pound, ounce: exact by definition (NIST Handbook 44, from memory)."""
+Gallon, pound, ounce, foot: exact by definition (NIST Handbook 44, from memory)."""
 
 _TEMPERATURE = {"c": "C", "degc": "C", "celsius": "C", "f": "F", "degf": "F", "fahrenheit": "F"}
 _TRAPS = {

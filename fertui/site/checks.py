@@ -42,10 +42,8 @@ class Table:
         value = self._take(key, default)
         if not isinstance(value, str):
             raise self.refuse(key, "a text in quotes is allowed here.")
-        if len(value) > LONGEST_TEXT:
-            raise self.refuse(key, f"{len(value)} characters; at most {LONGEST_TEXT} are allowed.")
-        if not value.isprintable():
-            raise self.refuse(key, "control characters and line breaks are not allowed in a text.")
+        if why := text_trouble(value):
+            raise self.refuse(key, why)
         if among and value != default and value not in among:
             raise self.refuse(key, f"allowed: {', '.join(among)}{nearest(value, among)}.")
         return value
@@ -60,8 +58,8 @@ class Table:
     def name(self, key: str = "name") -> str:
         """A name people choose: not empty, at most 60 characters, no leading or trailing space."""
         value = self.text(key)
-        if not 0 < len(value) <= 60 or value != value.strip():
-            raise self.refuse(key, "a name of 1 to 60 characters without spaces around it is allowed.")
+        if why := name_trouble(value):
+            raise self.refuse(key, why)
         return value
 
     def number(self, key: str, low: float, high: float, unit: str = "", default: float | None = None) -> float:
@@ -157,6 +155,20 @@ class Table:
         if not low <= value <= high or not math.isfinite(value):
             raise self.refuse(key, allowed)
         return float(value)
+
+
+def text_trouble(text: str) -> str:
+    """Why a text is not taken as a line of site.toml, "" where it is."""
+    if len(text) > LONGEST_TEXT:
+        return f"{len(text)} characters; at most {LONGEST_TEXT} are allowed."
+    return "" if text.isprintable() else "control characters and line breaks are not allowed in a text."
+
+
+def name_trouble(text: str) -> str:
+    """Why a text is not taken as a name that people choose, "" where it is."""
+    if not 0 < len(text) <= 60 or text != text.strip():
+        return "a name of 1 to 60 characters without spaces around it is allowed."
+    return text_trouble(text)
 
 
 def nearest(word: str, words: Collection[str]) -> str:

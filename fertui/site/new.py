@@ -12,7 +12,8 @@ from fertui.catalogue.acids import Acid
 from fertui.catalogue.crops import crop as crop_preset
 from fertui.catalogue.figures import CatalogueError
 from fertui.catalogue.media import medium as medium_preset
-from fertui.catalogue.supplies import substance
+from fertui.catalogue.salts import Salt
+from fertui.catalogue.supplies import contents, is_acid, substance
 from fertui.chemistry.names import IONS
 from fertui.site.checks import SiteError
 from fertui.site.files import NAME, write_site
@@ -40,7 +41,8 @@ COMMON_SALTS = (
 STOCK_TANKS = (("calcium", "A"), ("sulfate and phosphate", "B"))
 PURE_WATER = ("pure", "pure water", "rain", "rainwater")
 DRAIN_STORE_L_PER_M2 = 2.5
-STRENGTH = re.compile(r"(?P<name>.*\S)\s+(?P<pct>\d+(?:[.,]\d+)?)\s*%")
+DRAIN_STORE_SOURCE = "unverified preset: 20-30 m3 per ha (storage table of Flanders, 10 Oct 2008)"
+STRENGTH = re.compile(r"(?P<name>.*\S)\s+(?P<pct>\d+(?:[.,]\d+)?)\s*(?P<sign>%?)")
 
 
 def new_site(
@@ -69,7 +71,7 @@ def new_site(
     Raises ``SiteError``: a site there already, or a value that site.toml would refuse.
     """
     path = Path(folder)
-    refuse_site_there(path)
+    refuse_place(path)
     first = Loop(
         name=loop or _canonical_crop(crop),
         layout=layout,
@@ -96,35 +98,48 @@ def new_site(
     return site
 
 
-def refuse_site_there(folder: Path) -> None:
-    """Raises ``SiteError`` where the folder holds a site already."""
+def refuse_place(folder: Path) -> None:
+    """Raises ``SiteError`` where the folder holds a site already, or cannot be made or written."""
     if (folder / NAME).exists():
         raise SiteError(f"{folder}: there is a {NAME} already; nothing was changed. Add a loop to it with an editor.")
+    there = next(each for each in (folder.absolute(), *folder.absolute().parents) if each.exists())
+    if not there.is_dir() or not os.access(there, os.W_OK | os.X_OK):
+        raise SiteError(f"{folder} cannot be made a site folder: {there} is no folder that you may write to.")
 
 
 def supply_from(text: str) -> Supply:
     """A supply from a name or formula, with the strength of an acid or the content of a chelate behind it.
 
-    Raises ``SiteError`` where the name is unknown or ambiguous, or an acid comes without its strength.
+    Raises ``SiteError`` where the name is unknown or ambiguous, an acid comes without its strength or with one that
+    cannot be, or a product needs its label.
 
     >>> supply_from("nitric acid 60 %")
     Supply(name='nitric acid 60 %', kind='nitric acid', strength_pct=60.0, density_kg_per_l=None, label_pct={}, \
 amount_kg=None, price_per_kg=None, bag_kg=None)
     """
     said = STRENGTH.fullmatch(text.strip())
+    if said and not said["sign"]:
+        if is_acid(said["name"]):
+            raise SiteError(f"{text.strip()[:60]!r}: per cent by weight? Then write '{text.strip()[:60]} %'.")
+        said = None
     pct = float(said["pct"].replace(",", ".")) if said else None
     try:
-        found = substance(said["name"] if said else text.strip())
+        supply = _supply(substance(said["name"] if said else text.strip()), pct, text)
+        contents(supply)
     except CatalogueError as trouble:
-        raise SiteError(f"supplies: {trouble}") from trouble
+        raise SiteError(str(trouble)) from trouble
+    return supply
+
+
+def _supply(found: Salt | Acid, pct: float | None, text: str) -> Supply:
     if isinstance(found, Acid):
         if pct is None:
-            raise SiteError(f"supplies: {found.name} needs the strength on its label, such as '{found.name} 60 %'.")
+            raise SiteError(f"{text[:60]!r} needs the strength on its label in per cent, such as '{found.name} 60 %'.")
         return Supply(name=f"{found.name} {pct:g} %", kind=found.name, strength_pct=pct)
     if pct is None:
         return Supply(name=found.name, kind=found.name)
     if len(found.label_pct) != 1:
-        raise SiteError(f"supplies: {text[:60]!r}: a percentage goes with an acid or chelate; a label goes in {NAME}.")
+        raise SiteError(f"{text[:60]!r}: a percentage goes with an acid or chelate; a label goes in {NAME}.")
     return Supply(name=f"{found.name} {pct:g} %", kind=found.name, label_pct={next(iter(found.label_pct)): pct})
 
 
@@ -178,7 +193,7 @@ def _with_volumes(loop: Loop) -> Loop:
         sources["root_zone_water_l_per_m2"] = why
     if loop.layout == "drain-blend" and loop.drain_store_l is None:
         loop = loop._replace(drain_store_l=round(DRAIN_STORE_L_PER_M2 * loop.area_m2, 1))
-        sources["drain_store_l"] = "unverified preset: 20-30 m3 per ha (storage table of Flanders, 10 Oct 2008)"
+        sources["drain_store_l"] = DRAIN_STORE_SOURCE
     return loop._replace(sources=sources)
 
 

@@ -238,12 +238,18 @@ def _subtables(table: Table) -> list[tuple[str, Table]]:
 
 def _timezone(head: Table) -> str:
     name = head.text("timezone")
+    if why := timezone_trouble(name):
+        raise head.refuse("timezone", why)
+    return name
+
+
+def timezone_trouble(name: str) -> str:
+    """Why a name is not taken as a time zone, "" where it is one."""
     try:
         zoneinfo.ZoneInfo(name)
-    except (zoneinfo.ZoneInfoNotFoundError, ValueError, OSError) as trouble:
-        known = nearest(name, zoneinfo.available_timezones())
-        raise head.refuse("timezone", f"a zone like Europe/Amsterdam or UTC is allowed{known}.") from trouble
-    return name
+    except (zoneinfo.ZoneInfoNotFoundError, ValueError, OSError):
+        return f"a zone like Europe/Amsterdam or UTC is allowed{nearest(name, zoneinfo.available_timezones())}."
+    return ""
 
 
 def _staffed(head: Table) -> tuple[str, ...]:

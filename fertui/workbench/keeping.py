@@ -62,9 +62,9 @@ def make_new_site(folder: Path, answers: Mapping[str, str]) -> tuple[Path, tuple
     return folder, first_steps(site)
 
 
-def refuse_site_there(folder: Path) -> None:
-    """Raises ``SiteError`` where the folder holds a site already, so that nobody answers questions for nothing."""
-    from fertui.site.new import refuse_site_there as refuse
+def refuse_place(folder: Path) -> None:
+    """Raises ``SiteError`` where no site can be made in a folder, so that nobody answers questions for nothing."""
+    from fertui.site.new import refuse_place as refuse
 
     refuse(folder)
 

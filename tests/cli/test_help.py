@@ -2,14 +2,19 @@
 
 from __future__ import annotations
 
+import re
 import subprocess
 from pathlib import Path
 
 import pytest
 
+from fertui.catalogue.crops import targets
+from fertui.catalogue.media import media
 from fertui.cli.completion import script
-from fertui.cli.parser import COMMANDS, ENTRY, GROUPS, build, commands_of
+from fertui.cli.parser import COMMANDS, ENTRY, GROUPS, NEW_OPTIONS, build, commands_of
 from fertui.logbook.kinds import KINDS
+from fertui.site.model import LAYOUTS
+from fertui.site.questions import questions
 
 
 def test_every_command_stands_in_one_group_of_the_help() -> None:
@@ -38,3 +43,9 @@ def test_the_bash_script_completes_commands_and_kinds(tmp_path: Path) -> None:
     )
     done = subprocess.run(["bash", "-c", asked], cwd=tmp_path, capture_output=True, text=True, check=True)
     assert done.stdout.split() == ["batch", "today"]
+
+
+def test_every_medium_layout_and_published_target_stands_in_the_help_of_new() -> None:
+    words = re.findall(r"[a-z0-9-]+", " ".join(NEW_OPTIONS.values()))
+    assert {*(each.name for each in media()), *LAYOUTS, *targets(), "rain", "pure"} <= set(words)
+    assert set(NEW_OPTIONS) == {each.option for each in questions()}
