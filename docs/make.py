@@ -49,7 +49,8 @@ def _kinds() -> list[str]:
         for field in kind.fields:
             words = " or ".join(field.words)
             about = "; ".join(part for part in (field.about, words, "needed" if field.required else "") if part)
-            lines.append(f"| {field.name} | {field.unit} | {about} |")
+            unit = "a time" if field.what == "time" else field.unit
+            lines.append(f"| {field.name} | {unit} | {about} |")
         if kind.salts:
             lines.append("| any supply or salt | kg | one value for each |")
         lines.append("")

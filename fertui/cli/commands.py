@@ -9,6 +9,7 @@ from collections.abc import Callable, Mapping
 from datetime import datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
+from zoneinfo import ZoneInfo
 
 from fertui.cli.main import FINE, NO
 from fertui.refusals import Refusal
@@ -179,10 +180,11 @@ def forecast(options: Options) -> int:
     bench, view = _reading(options)
     ahead = bench.forecast(days=_whole(options.days, "--days", 1, 60), **view)
     loop = bench.loop(view["loop"])
+    sample = bench.next_sample(ahead, loop.name, view["known"])
     return _show(
         options,
-        lambda: document(ahead, loop.name),
-        lambda: text(ahead, loop.name, managed_point(loop), bench.site.timezone, _unit(bench, options)),
+        lambda: document(ahead, sample, loop.name),
+        lambda: text(ahead, sample, loop.name, managed_point(loop), bench.site.timezone, _unit(bench, options)),
     )
 
 
@@ -230,11 +232,21 @@ def stock(options: Options) -> int:
         mixes = bench.last_mixes(days, view["loop"], plain, view["at"])
         document = {"schema": "fertui.last_mix/1", "tanks": as_json.plain(mixes)}
         return _show(options, lambda: document, lambda: last_mix_text(mixes))
-    sheet = bench.stock(view["loop"])
+    sheet = bench.stock(**view, left_l=_left(bench, options))
     page = bench.stock_page(sheet, view["loop"])
     _release(bench, sheet, page, options)
     _show(options, lambda: stock_document(sheet), lambda: page.text)
     return FINE if sheet.feasible else NO
+
+
+def _left(bench: Bench, options: Options) -> dict[str, float]:
+    """Litres of old stock by tank."""
+    left = {tank: _number(litres) for tank, litres in _fields(options.left).items()}
+    unknown = [tank for tank in left if tank not in bench.loop(options.loop).stock_tanks]
+    if unknown:
+        tanks = ", ".join(bench.loop(options.loop).stock_tanks) or "none"
+        raise Refusal(f"{unknown[0]!r} is no stock tank of this loop; it has {tanks}.")
+    return left
 
 
 def acid(options: Options) -> int:
@@ -242,7 +254,7 @@ def acid(options: Options) -> int:
     from fertui.cli.views.sheets import acid_document
 
     bench, view = _reading(options)
-    sheet = bench.acid(view["loop"])
+    sheet = bench.acid(**view)
     page = bench.acid_page(sheet, view["loop"])
     _release(bench, sheet, page, options)
     _show(options, lambda: acid_document(sheet), lambda: page.text)
@@ -253,13 +265,13 @@ def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
     """Write a sheet to the file asked for; one with acid only after its cautions were read and its label matches."""
     if not options.sheet:
         return
-    strength = None if options.label_strength is None else _percent(options.label_strength)
+    strength = None if options.label_strength is None else _number(options.label_strength)
     bench.acknowledge(made, strength if options.cautions_read else None)
     path = Path(options.sheet)
     bench.write(page.csv() if path.suffix.lower() == ".csv" else page.text, path)
 
 
-def _percent(written: str) -> float:
+def _number(written: str) -> float:
     from fertui.quantities import parse_number
 
     return parse_number(written).value
@@ -285,6 +297,17 @@ def logbook(options: Options) -> int:
     bench, view = _reading(options)
     entries = bench.history(options.kind, view["loop"] if options.loop else None, view["at"])
     return _show(options, lambda: entries_document(entries), lambda: entries_text(entries, bench.site.timezone))
+
+
+def given(options: Options) -> int:
+    """``given``: what a loop was given on a day, and what its stock tanks held."""
+    from fertui.cli.views.given import document, text
+
+    bench, view = _reading(options)
+    day = (_time(bench, options.day) or view["at"]).astimezone(ZoneInfo(bench.site.timezone)).date()
+    loop = bench.loop(view["loop"])
+    found, held = bench.given(day, loop.name, view["known"]), bench.mixes_on(day, loop.name, view["known"])
+    return _show(options, lambda: document(found, held, loop), lambda: text(found, held, loop, bench.site.timezone))
 
 
 def supplies(options: Options) -> int:
@@ -326,7 +349,7 @@ COMMANDS: Mapping[str, Callable[[Options], int]] = {
     "backup": backup, "restore": restore,
     "today": today, "analysis": analysis, "drift": drift, "balance": balance, "forecast": forecast,
     "hindcast": hindcast, "plan": plan, "stock": stock, "acid": acid, "round": paper, "handover": paper,
-    "report": paper, "logbook": logbook, "supplies": supplies, "site": site, "check": check,
+    "report": paper, "logbook": logbook, "given": given, "supplies": supplies, "site": site, "check": check,
 }  # fmt: skip
 
 

@@ -37,7 +37,7 @@ class Parser(argparse.ArgumentParser):
 COMMANDS = frozenset(
     {
         "open", "demo", "new", "completion",
-        "record", "supersede", "void", "import", "export", "backup", "restore",
+        "record", "supersede", "void", "import", "export", "backup", "restore", "given",
         "today", "analysis", "drift", "balance", "forecast", "hindcast", "plan",
         "stock", "acid", "round", "handover", "report", "logbook", "supplies", "site", "check",
     }
@@ -67,7 +67,7 @@ def build() -> Parser:
 
 GROUPS = {
     "a site": ("demo", "new", "open", "check", "site", "supplies", "backup", "restore", "completion"),
-    "what happened": ("record", "import", "supersede", "void", "logbook", "export"),
+    "what happened": ("record", "import", "supersede", "void", "logbook", "given", "export"),
     "where the loop is": ("today", "analysis", "drift", "balance"),
     "what comes": ("forecast", "plan", "hindcast"),
     "paper": ("round", "handover", "stock", "acid", "report"),
@@ -215,8 +215,12 @@ def _reading(commands: argparse._SubParsersAction, name: str, about: str, exampl
     parser.add_argument("--loop", metavar="NAME", help=LOOP)
     parser.add_argument("--at", metavar="TIME", help="hide events later than TIME (default: now)")
     parser.add_argument("--known", metavar="TIME", help="also hide entries and corrections made after TIME")
-    parser.add_argument("--unit", choices=["mmol/L", "meq/L", "mg/L"], help="unit shown (default: the site's)")
     parser.add_argument("--json", action="store_true", help="JSON instead of text")
+    return parser
+
+
+def _units(parser: Parser) -> Parser:
+    parser.add_argument("--unit", choices=["mmol/L", "meq/L", "mg/L"], help="unit shown (default: the site's)")
     return parser
 
 
@@ -226,17 +230,18 @@ def _period(parser: Parser) -> None:
 
 
 def _read_commands(commands: argparse._SubParsersAction) -> None:
-    _reading(commands, "today", "state and what to look at", "fertui today north")
-    _reading(commands, "analysis", "last analysis against target", "fertui analysis north")
+    _units(_reading(commands, "today", "state and what to look at", "fertui today north"))
+    _units(_reading(commands, "analysis", "last analysis against target", "fertui analysis north"))
     drift = _reading(commands, "drift", "shares, ions, EC, pH over time", "fertui drift north --days 28")
     drift.add_argument("--days", default="28", metavar="N", help="days back (default: 28)")
     _period(_reading(commands, "balance", "account of each ion by cause", "fertui balance north --from 2026-05-01"))
-    forecast = _reading(commands, "forecast", "the days ahead", "fertui forecast north --days 14")
+    forecast = _units(_reading(commands, "forecast", "the days ahead", "fertui forecast north --days 14"))
     forecast.add_argument("--days", default="14", metavar="N", help="days ahead (default: 14)")
     hindcast = _reading(commands, "hindcast", "the record of past forecasts", "fertui hindcast north --inputs planned")
     hindcast.add_argument("--inputs", choices=["logged", "planned"], default="logged", help=INPUTS)
     hindcast.add_argument("--seed", metavar="N", help="another seed for the ensemble")
     plan = _reading(commands, "plan", "what brings the ions back; records nothing", "fertui plan north --days 14")
+    _units(plan)
     plan.add_argument(
         "--days", default="14", metavar="N", help="days ahead (default: 14); 0: right after mixing, the dosed tank only"
     )
@@ -261,10 +266,15 @@ def _paper_commands(commands: argparse._SubParsersAction) -> None:
             sheet.add_argument(
                 "--crop-ends", metavar="DAYS", help="only the last mix of a crop that ends in so many days"
             )
+            sheet.add_argument(
+                "--left", metavar="TANK=LITRES", action="append", default=[], help="old stock left in a tank: taken off"
+            )
             sheet.add_argument("--plain-water", metavar="DAYS", default="0", help="days of plain water before the end")
     _reading(commands, "round", "blank round sheet with last values", "fertui round north")
     _reading(commands, "handover", "one-page shift handover", "fertui handover north")
     _period(_reading(commands, "report", "report for consultant or auditor", "fertui report north --from 2026-05-01"))
+    on = _reading(commands, "given", "what the crop was given on a day", "fertui given north --on 2026-03-04")
+    on.add_argument("--on", dest="day", metavar="DATE", help="the day (default: today)")
     _reading(commands, "logbook", "every entry, struck ones too", "fertui logbook north").add_argument(
         "--kind", metavar="KIND", help="entries of one kind only"
     )

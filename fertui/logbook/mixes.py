@@ -9,7 +9,7 @@ from typing import NamedTuple
 from fertui.logbook.entries import Entry
 from fertui.logbook.kinds import KINDS
 from fertui.logbook.times import zone
-from fertui.site.model import Site, Supply
+from fertui.site.model import Site, StockTank, Supply
 
 LONGEST_SPAN = timedelta(days=3)
 """An amount without a day of its own reaches back to the entry before it, but no further than this."""
@@ -83,6 +83,16 @@ def mixes(entries: Sequence[Entry], tank: str) -> tuple[Mix, ...]:
 def mix_at(entries: Sequence[Entry], tank: str, at: datetime) -> Mix | None:
     """What a stock tank held at a time, None before its first batch."""
     return next((mix for mix in reversed(mixes(entries, tank)) if mix.since <= at), None)
+
+
+def as_mixed(tanks: Sequence[StockTank], entries: Sequence[Entry]) -> tuple[StockTank, ...]:
+    """Stock tanks, full, with what their last batch put into them; one without a batch as the site file says."""
+    mixed = []
+    for tank in tanks:
+        last = mixes(entries, tank.name)[-1:]
+        held = {salt: kg * tank.litres for mix in last for salt, kg in mix.kg_per_l.items()}
+        mixed.append(tank._replace(salts_kg=held) if last else tank)
+    return tuple(mixed)
 
 
 def given_on(entries: Sequence[Entry], site: Site, loop: str, day: date) -> Given:

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from datetime import datetime, timedelta
+from collections.abc import Mapping, Sequence
+from datetime import UTC, date, datetime, time, timedelta
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
+from zoneinfo import ZoneInfo
 
 from fertui.workbench.clock import now
 from fertui.workbench.folder import RECENT, SiteFolder
@@ -17,7 +18,9 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Balance
     from fertui.estimate.forecast import Forecast, Scenario
     from fertui.estimate.hindcast import Hindcast
+    from fertui.estimate.sampling import SampleAdvice
     from fertui.logbook.entries import Entry
+    from fertui.logbook.mixes import Given, Mix
     from fertui.planning.last_mix import LastMix
     from fertui.planning.values import AcidSheet, Plan, StockSheet
     from fertui.site.edit import Row as SiteRow
@@ -34,6 +37,8 @@ HORIZON_DAYS = 14
 GLANCED = timedelta(days=60)
 """So far back every entry is looked at for last numbers."""
 A_CUBIC_METRE = 1000.0
+GIVING = ("stock", "dose", "acid", "batch", "recipe")
+"""Kinds of entry that tell what a crop was given."""
 
 
 class Answers(SiteFolder):
@@ -129,6 +134,12 @@ class Answers(SiteFolder):
 
         return forecast(self.estimate(loop, at or now(), known), days, scenario or ROUTINE)
 
+    def next_sample(self, ahead: Forecast, loop: str | None = None, known: datetime | None = None) -> SampleAdvice:
+        """The best day for the next sample of a loop and what an analysis now would tell, by a forecast of it."""
+        from fertui.estimate.sampling import next_sample
+
+        return next_sample(self.estimate(loop, ahead.at, known), ahead)
+
     def hindcast(
         self,
         loop: str | None = None,
@@ -161,21 +172,33 @@ class Answers(SiteFolder):
         at = at or now()
         return plan(self.estimate(loop, at, known), days=days, entries=self.entries(at, known), **wishes)
 
-    def stock(self, loop: str | None = None) -> StockSheet:
-        """The stock-tank sheet of the recipe a loop runs on, its target where none was logged."""
+    def stock(
+        self,
+        loop: str | None = None,
+        at: datetime | None = None,
+        known: datetime | None = None,
+        left_l: Mapping[str, float] | None = None,
+    ) -> StockSheet:
+        """The stock-tank sheet of the recipe a loop runs on, its target where none was logged.
+
+        ``left_l``: litres of old stock left in a tank by name; what they hold is taken off.
+        """
+        from fertui.logbook.mixes import as_mixed
         from fertui.planning import stock_sheet
         from fertui.workbench.carrying_out import running_recipe
 
-        chosen, entries = self.loop(loop), self.entries()
+        chosen, entries = self.loop(loop), self.entries(at, known)
         site = self.site_as_analysed(entries)
-        return stock_sheet(site, chosen, recipe=running_recipe(site, chosen, entries))
+        if left_l:
+            site = site._replace(stock_tanks=as_mixed(site.stock_tanks, entries))
+        return stock_sheet(site, chosen, recipe=running_recipe(site, chosen, entries), remainder_l=left_l)
 
-    def acid(self, loop: str | None = None) -> AcidSheet:
+    def acid(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> AcidSheet:
         """The acid sheet of a loop's make-up water: for its tank, or for a m3 where the water is treated on its way."""
         from fertui.planning import acid_sheet
 
         chosen = self.loop(loop)
-        site = self.site_as_analysed(self.entries())
+        site = self.site_as_analysed(self.entries(at, known))
         return acid_sheet(site, chosen, volume_l=chosen.tank_l or A_CUBIC_METRE)
 
     def site_as_analysed(self, entries: Sequence[Entry], at: datetime | None = None) -> Site:
@@ -211,6 +234,22 @@ class Answers(SiteFolder):
 
         rows = self.stock_rows(loop, at)
         return last_mixes(self.site, rows, days_left, stop_days_before)
+
+    def given(self, day: date, loop: str | None = None, known: datetime | None = None) -> Given:
+        """What a loop was given on a local day: stock, salts, acid, ions."""
+        from fertui.logbook.mixes import LONGEST_SPAN, given_on
+
+        after = datetime.combine(day, time.max, UTC) + LONGEST_SPAN
+        return given_on(self.book.entries(kinds=GIVING, at=after, known=known), self.site, self.loop(loop).name, day)
+
+    def mixes_on(self, day: date, loop: str | None = None, known: datetime | None = None) -> tuple[Mix, ...]:
+        """What each stock tank of a loop held at the end of a local day, as far as its batches say."""
+        from fertui.logbook.mixes import mix_at
+
+        end = datetime.combine(day, time.max, ZoneInfo(self.site.timezone))
+        batches = self.book.entries(kinds=("batch",), at=end, known=known)
+        held = (mix_at(batches, tank, end) for tank in self.loop(loop).stock_tanks)
+        return tuple(mix for mix in held if mix is not None)
 
     def acid_cautions(self, acid: str, strength_pct: float | None = None) -> tuple[Caution, ...]:
         """Cautions of an acid or lye at the strength on its label."""

@@ -8,7 +8,7 @@ from typing import Any
 from fertui.chemistry.names import IONS
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
-from fertui.paper.page import folded
+from fertui.paper.page import columns, folded
 from fertui.workbench.analysis import AnalysisRow, AnalysisView
 from fertui.workbench.drift import Drift, Series
 
@@ -33,9 +33,9 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
         lines.append(f"  sampled by {view.method}; shown as the pore water it stands for, by the site's factor")
     if view.ec_reference is not None:
         lines.append(f"  normalised to a nutrient EC of {view.ec_reference:.1f} mS/cm; Na, NH4, HCO3 not scaled")
-    lines += ["", *words.table(_rows(view.rows, view.managed_point, unit), right=range(1, 7))]
+    lines += ["", *columns(_rows(view.rows, view.managed_point, unit), range(1, 7))]
     if any(row.feed is not None or row.managed is not None for row in view.micronutrients):
-        lines += ["", *words.table(_rows(view.micronutrients, view.managed_point, "umol/L"), right=range(1, 7))]
+        lines += ["", *columns(_rows(view.micronutrients, view.managed_point, "umol/L"), range(1, 7))]
     for point, checks in view.checks.items():
         lines += ["", f"Checks of the {POINT_WORDS[point]} analysis"]
         for check in checks:
@@ -98,7 +98,7 @@ def drift_text(course: Drift, timezone: str) -> str:
     for index, at in enumerate(times):
         cells = [_value_of(each, index) for each in shown]
         rows.append((words.local(at, timezone)[:10], *cells))
-    lines = [f"{course.loop}: the past days", "", *words.table(rows), "", "Done and measured"]
+    lines = [f"{course.loop}: the past days", "", *columns(rows), "", "Done and measured"]
     for mark in course.marks:
         lines += folded(f"{words.local(mark.at, timezone)} {mark.kind}: {mark.text}", "  ")
     return "\n".join(lines)

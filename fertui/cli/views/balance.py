@@ -6,6 +6,7 @@ from typing import Any
 
 from fertui.cli.views import as_json, words
 from fertui.estimate.balance import Balance
+from fertui.paper.page import columns
 
 
 def text(account: Balance, loop: str, timezone: str) -> str:
@@ -21,7 +22,7 @@ def text(account: Balance, loop: str, timezone: str) -> str:
         "gains +, losses -; start + flows = end; tank, stores and root-zone solution",
         "",
     ]
-    return "\n".join(head + words.table(shown, right=range(1, len(used) + 1)))
+    return "\n".join(head + columns(shown, range(1, len(used) + 1)))
 
 
 def document(account: Balance, loop: str) -> dict[str, Any]:

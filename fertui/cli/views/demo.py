@@ -17,7 +17,7 @@ def text(bench: Bench) -> str:
         ahead = bench.forecast(name)
         parts += [
             today.text(state, timezone, unit),
-            forecast.text(ahead, name, state.managed_point, timezone, unit),
+            forecast.text(ahead, bench.next_sample(ahead, name), name, state.managed_point, timezone, unit),
             plan.text(bench.plan(name), timezone, unit),
         ]
     return f"\n{RULE}\n".join(parts)

@@ -8,15 +8,16 @@ from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
 from fertui.estimate.forecast import Forecast, LeavesBand
 from fertui.estimate.hindcast import Hindcast
-from fertui.paper.page import folded
+from fertui.estimate.sampling import SampleAdvice
+from fertui.paper.page import columns, folded
 from fertui.workbench.today import in_words, reading_of, unit_of
 
 SHOWN = ("K share", "Ca share", "Mg share", "Na", "EC")
 """Columns of the days ahead, as many as 80 columns hold; the rest speaks under "leaves its band"."""
 
 
-def text(ahead: Forecast, loop: str, managed: str, timezone: str, unit: str) -> str:
-    """Every second day of the managed point with its 80 % range, then what leaves its band, and what was assumed."""
+def text(ahead: Forecast, sample: SampleAdvice, loop: str, managed: str, timezone: str, unit: str) -> str:
+    """Every second day of the managed point with its 80 % range, what leaves its band, the next sample, assumptions."""
     rows = [(POINT_WORDS[managed], *(f"{what} {_unit(what, unit)}".rstrip() for what in SHOWN))]
     for day in ahead.days[1::2] if len(ahead.days) > 7 else ahead.days:
         cells = []
@@ -25,11 +26,12 @@ def text(ahead: Forecast, loop: str, managed: str, timezone: str, unit: str) -> 
             scale = words.factor(what, unit) if unit_of(what) == "mmol/L" else 1.0
             cells.append(words.ABSENT if value is None else words.ranged(value, scale, unit_of(what)))
         rows.append((words.local(day.at, timezone)[:10], *cells))
-    lines = [f"{loop}, {len(ahead.days)} days ahead ({_inputs(ahead)}), 80 % ranges", "", *words.table(rows), ""]
+    lines = [f"{loop}, {len(ahead.days)} days ahead ({_inputs(ahead)}), 80 % ranges", "", *columns(rows), ""]
     lines += ["Leaves its band"]
     same = {"root_zone"} if managed == "tank" else {"drain"}
     shown = [each for each in ahead.leaves_band if each.point not in same]
     lines += [f"  {_leaves(each, len(ahead.days), timezone)}" for each in shown] or ["  nothing within these days"]
+    lines += ["", "Next sample", *_sample(sample, len(ahead.days), timezone)]
     lines += ["", "Assumed", *(line for each in ahead.assumed for line in folded(each, "  "))]
     return "\n".join(lines)
 
@@ -47,7 +49,16 @@ def _leaves(each: LeavesBand, horizon: int, timezone: str) -> str:
     return f"{POINT_WORDS[each.point]} {each.what}: {in_words(each, horizon, timezone)}{chance}"
 
 
-def document(ahead: Forecast, loop: str) -> dict[str, Any]:
+def _sample(sample: SampleAdvice, horizon: int, timezone: str) -> list[str]:
+    taken, known = (words.local(each, timezone)[:10] for each in (sample.take_at, sample.result_at))
+    said = f"{taken} ({sample.why}); its result can be there on {known}"
+    shares = {what: pct for (_, what), pct in sample.narrows_pct.items() if what.endswith(" share")}
+    what, most = max(shares.items(), key=lambda each: each[1], default=("", 0.0))
+    tells = f"; one today would make the range of {what} in {horizon} days {most:.0f} % narrower" if most >= 1.0 else ""
+    return folded(said + tells, "  ")
+
+
+def document(ahead: Forecast, sample: SampleAdvice, loop: str) -> dict[str, Any]:
     """The contract of ``forecast --json``."""
     return {
         "schema": "fertui.forecast/1",
@@ -66,6 +77,14 @@ def document(ahead: Forecast, loop: str) -> dict[str, Any]:
             }
             for each in ahead.leaves_band
         ],
+        "next_sample": {
+            "take_at": sample.take_at,
+            "result_at": sample.result_at,
+            "why": sample.why,
+            "narrows": [
+                {"point": point, "what": what, "by_pct": pct} for (point, what), pct in sample.narrows_pct.items()
+            ],
+        },
         "assumed": list(ahead.assumed),
     }
 
@@ -112,4 +131,4 @@ def record_text(record: Hindcast, loop: str, timezone: str) -> str:
                 share,
             )
         )
-    return "\n".join([*lines, *words.table(rows), "", *folded(record.summary.words, "")])
+    return "\n".join([*lines, *columns(rows), "", *folded(record.summary.words, "")])

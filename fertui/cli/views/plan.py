@@ -7,7 +7,7 @@ from typing import Any
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
 from fertui.paper.cautions import read_first
-from fertui.paper.page import folded
+from fertui.paper.page import columns, folded
 from fertui.planning.values import Outlook, Plan
 from fertui.workbench.today import reading_of, unit_of
 
@@ -49,7 +49,7 @@ def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
                 "" if change is None else f"{change:+.0f} %",
             )
         )
-    lines = ["", f"Next recipe, EC {words.number(recipe.ec)} mS/cm", *words.table(rows, right=(1, 2))]
+    lines = ["", f"Next recipe, EC {words.number(recipe.ec)} mS/cm", *columns(rows, (1, 2))]
     if len(recipe.stages) > 1:
         lines += [f"  from {words.local(stage.at, timezone)}: EC {stage.ec:.1f} mS/cm" for stage in recipe.stages]
     if recipe.sheet is not None:
@@ -67,7 +67,7 @@ def _steps(plan: Plan, timezone: str) -> list[str]:
         (words.local(each.at, timezone), each.salt, each.formula, f"{each.kg:g}", each.target.removeprefix("tank:"))
         for each in plan.steps
     ]
-    return ["", "Weigh and dissolve", *words.table(rows, right=(3,))]
+    return ["", "Weigh and dissolve", *columns(rows, (3,))]
 
 
 def _acid(plan: Plan, timezone: str) -> list[str]:
@@ -97,7 +97,7 @@ def _outcome(plan: Plan) -> list[str]:
     for what in ("K share", "Ca share", "Mg share", "EC", "Na", "NH4"):
         cells = [_cell(outlook, plan.point, what) for outlook in (plan.before, plan.after, plan.after_without)]
         rows.append((f"{what} {'%' if 'share' in what else 'mS/cm' if what == 'EC' else 'mmol/L'}", *cells))
-    return words.table(rows)
+    return columns(rows)
 
 
 def _cell(outlook: Outlook, point: str, what: str) -> str:

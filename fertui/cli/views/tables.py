@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from fertui.cli.views import as_json, words
 from fertui.logbook.entries import Entry, Value
+from fertui.paper.page import columns
 
 if TYPE_CHECKING:
     from fertui.site.edit import Row
@@ -56,24 +57,24 @@ def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> s
         rows.append(
             (each.name, each.formula, each.label, words.number(each.amount_kg), words.number(each.price_per_kg, 2))
         )
-    lines = words.table(rows, right=(3, 4))
+    lines = columns(rows, (3, 4))
     stock = [("stock tank", "letter", "litres", "left", "days left")]
     stock += [
         (each.name, each.letter, f"{each.litres:g}", words.number(each.litres_left), words.number(each.days_left))
         for each in tanks
     ]
-    return "\n".join([*lines, "", *words.table(stock, right=(2, 3, 4))])
+    return "\n".join([*lines, "", *columns(stock, (2, 3, 4))])
 
 
 def aims_text(aims: Sequence[Aim], loop: str) -> str:
     """Bands and limits in force for a loop with where each comes from."""
     rows = [(each.point.replace("_", " "), f"{each.what} {each.kind}", each.words, each.source) for each in aims]
-    return "\n".join([f"In force for {loop}:", *words.table([("point", "what", "value", "from"), *rows])])
+    return "\n".join([f"In force for {loop}:", *columns([("point", "what", "value", "from"), *rows])])
 
 
 def site_text(rows: Sequence[Row]) -> str:
     """Every value of the site file with where it comes from."""
-    return "\n".join(words.table([("key", "value", "from"), *((row.key, row.text, row.source) for row in rows)]))
+    return "\n".join(columns([("key", "value", "from"), *((row.key, row.text, row.source) for row in rows)]))
 
 
 def check_text(rows: Sequence[CheckRow]) -> str:

@@ -6,7 +6,7 @@ from typing import Any
 
 from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.cli.views import as_json, words
-from fertui.paper.page import folded
+from fertui.paper.page import columns, folded
 from fertui.workbench.glance import Seen
 from fertui.workbench.today import Today
 
@@ -64,7 +64,7 @@ def _gauges(state: Today, unit: str) -> list[str]:
         scale, shown = (1.0, gauge.unit) if gauge.unit != "mmol/L" else (words.factor(gauge.what, unit), unit)
         now = f"{words.ranged(gauge.now, scale, gauge.unit)} {shown}"
         rows.append((gauge.what, now, words.band(gauge.now.band, scale), gauge.leaves))
-    return words.table(rows)
+    return columns(rows)
 
 
 def _concentrations(state: Today, unit: str) -> list[str]:
@@ -75,12 +75,12 @@ def _concentrations(state: Today, unit: str) -> list[str]:
     rows.append(("EC mS/cm", *(words.ranged(state.points[name].ec) for name in names)))
     traces = [ion for ion in MICRONUTRIENTS if any(ion in point.ions for point in state.points.values())]
     if not traces:
-        return words.table(rows)
+        return columns(rows)
     trace_unit = unit if unit == "mg/L" else "umol/L"
     return [
-        *words.table(rows),
+        *columns(rows),
         "",
-        *words.table([(trace_unit, *heads), *(_row(state, ion, unit) for ion in traces)]),
+        *columns([(trace_unit, *heads), *(_row(state, ion, unit) for ion in traces)]),
     ]
 
 

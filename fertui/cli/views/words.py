@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from datetime import datetime
 from zoneinfo import ZoneInfo
 
@@ -84,18 +83,3 @@ def age(at: datetime, now: datetime) -> str:
     """How old something is, in words."""
     hours = (now - at).total_seconds() / 3600
     return f"{hours:.0f} h old" if hours < 72 else f"{hours / 24:.0f} days old"
-
-
-def table(rows: Sequence[Sequence[str]], right: Sequence[int] = ()) -> list[str]:
-    """Rows as aligned lines; ``right`` names the columns set flush right."""
-    if not rows:
-        return []
-    widths = [max(len(row[column]) for row in rows) for column in range(len(rows[0]))]
-    lines = []
-    for row in rows:
-        cells = [
-            cell.rjust(width) if column in right else cell.ljust(width)
-            for column, (cell, width) in enumerate(zip(row, widths, strict=True))
-        ]
-        lines.append("  ".join(cells).rstrip())
-    return lines
