@@ -28,7 +28,7 @@ GLOBAL_KEYS = [
     Binding("f5", "again", "work out again", show=False, id="again",
     tooltip="As of now, worked out again, drawn again."),
     Binding("q", "leave", "leave", show=False, id="leave", tooltip="Leave. A half-filled form is kept."),
-    Binding("ctrl+q", "leave", "leave at once", show=False, id="leave.at_once",
+    Binding("f10,ctrl+q", "leave", "leave at once", show=False, id="leave.at_once",
     tooltip="Leave from anywhere, a form too."),
     Binding("x", "actions", "actions", id="actions", tooltip="Every action, with its key."),
     Binding("question_mark,f1", "help", "help", id="help", tooltip="What this place is for and how to use it."),

@@ -12,6 +12,9 @@ from fertui.tui.ink import Line, Span, cells, line, literal
 from fertui.tui.page import Page
 from fertui.tui.typing_line import Typed
 
+MEANT = ("prompt.answer", "prompt.drop", "leave.at_once")
+"""Keys that mean something while a question stands, whatever keys the settings give them."""
+
 
 class Prompt(Page, can_focus=True):
     """Takes the place of the key line while it asks; Enter answers, Esc takes the question back."""
@@ -42,7 +45,8 @@ class Prompt(Page, can_focus=True):
 
     def take_key(self, event: events.Key) -> bool:
         """Type and edit; no other key reaches the views while a question stands."""
-        if event.key in ("enter", "escape", "ctrl+q"):
+        active = self.screen.active_bindings.get(event.key)
+        if active is not None and active.binding.id in MEANT:
             return False
         if event.is_printable and event.character:
             self._typed = self._typed.insert(event.character)

@@ -103,7 +103,10 @@ def test_no_step_moves_ec_by_more_than_was_asked(asked: float) -> None:
     assert any(each.limit.startswith("EC step") and each.source == "asked for" for each in careful.binding)
 
 
-@pytest.mark.parametrize("wrong", [{"days": -1}, {"days": 400}, {"steps": 5}, {"steps": 0}, {"salts": 0}, {"ec_step": 0.01}, {"ec_step": 3.0}])
+@pytest.mark.parametrize(
+    "wrong",
+    [{"days": -1}, {"days": 400}, {"steps": 5}, {"steps": 0}, {"salts": 0}, {"ec_step": 0.01}, {"ec_step": 3.0}],
+)
 def test_what_no_plan_can_be(wrong: dict) -> None:
     with pytest.raises(PlanningError):
         Wishes(**wrong).checked()

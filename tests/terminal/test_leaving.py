@@ -7,7 +7,7 @@ from pathlib import Path
 
 import pytest
 from conftest import Opened
-from pseudo_terminal import PseudoTerminal
+from pseudo_terminal import KEYS, PseudoTerminal
 
 ALTERNATE_SCREEN_OFF, CURSOR_ON = b"\x1b[?1049l", b"\x1b[?25h"
 
@@ -20,6 +20,19 @@ def test_q_leaves(terminal: PseudoTerminal) -> None:
     terminal.type(b"q")
     assert terminal.wait() == 0
     assert given_back(terminal)
+
+
+@pytest.mark.parametrize("key", ["\x1b[21~", "ctrl+q"])
+def test_f10_leaves_from_a_form_and_from_a_question_and_keeps_the_draft(
+    site: Path, terminal: PseudoTerminal, key: str
+) -> None:
+    terminal.press("r", "2", ".", "6", "+")
+    terminal.until_text("Your initials:")
+    terminal.press("M")
+    terminal.type(KEYS.get(key, key).encode())
+    assert terminal.wait(5.0) == 0
+    assert given_back(terminal)
+    assert "2.6" in (site / "drafts.json").read_text(encoding="utf-8")
 
 
 @pytest.mark.parametrize("number", [signal.SIGHUP, signal.SIGTERM])
