@@ -241,7 +241,7 @@ def stock(options: Options) -> int:
 
 def _left(bench: Bench, options: Options) -> dict[str, float]:
     """Litres of old stock by tank."""
-    left = {tank: _number(litres) for tank, litres in _fields(options.left).items()}
+    left = {tank: _number(litres, f"--left {tank}") for tank, litres in _fields(options.left).items()}
     unknown = [tank for tank in left if tank not in bench.loop(options.loop).stock_tanks]
     if unknown:
         tanks = ", ".join(bench.loop(options.loop).stock_tanks) or "none"
@@ -265,16 +265,10 @@ def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
     """Write a sheet to the file asked for; one with acid only after its cautions were read and its label matches."""
     if not options.sheet:
         return
-    strength = None if options.label_strength is None else _number(options.label_strength)
+    strength = None if options.label_strength is None else _number(options.label_strength, "--label-strength")
     bench.acknowledge(made, strength if options.cautions_read else None)
     path = Path(options.sheet)
     bench.write(page.csv() if path.suffix.lower() == ".csv" else page.text, path)
-
-
-def _number(written: str) -> float:
-    from fertui.quantities import parse_number
-
-    return parse_number(written).value
 
 
 def paper(options: Options) -> int:
