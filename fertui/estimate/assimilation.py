@@ -6,7 +6,7 @@ and because random numbers are keyed by day the days before it come out as they 
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from datetime import datetime
 from typing import Any
 
@@ -58,13 +58,15 @@ def assimilate(
     members: int = MEMBERS,
     seed: int = SEED,
     before: Estimate | None = None,
+    progress: Callable[[float], None] | None = None,
 ) -> Estimate:
     """Where a loop is at a time, from its effective entries (those after ``at`` are left out).
 
     ``before``: an earlier estimate of the same loop; only what has changed since is run again. The same entries give
-    the same answer with it or without. Raises ``CatalogueError`` for a crop or medium the catalogue does not know.
+    the same answer with it or without. ``progress`` hears what part of the
+    stretches is done. Raises ``CatalogueError`` for a crop or medium the catalogue does not know.
     """
-    return Assimilation(read(site, loop, entries, at), members, seed).run(before.run if before else None)
+    return Assimilation(read(site, loop, entries, at), members, seed).run(before.run if before else None, progress)
 
 
 class Assimilation:
@@ -94,12 +96,17 @@ class Assimilation:
         self.after: list[tuple[Observation, Ensemble, Spread, int]] = []
         self.stops: list[Stop] = []
 
-    def run(self, before: Assimilation | None = None) -> Estimate:
+    def run(
+        self, before: Assimilation | None = None, progress: Callable[[float], None] | None = None
+    ) -> Estimate:
         """Through all stretches to the end of the record, or through those that differ from an earlier run."""
         if self.begin.analysis is not None:
             self.after.append((self.begin.analysis, self.ensemble, self.spread, 0))
         first = self._resumed(before) if before is not None else 0
-        for span in range(first, len(self.grid) - 1):
+        last = len(self.grid) - 1
+        for span in range(first, last):
+            if progress is not None:
+                progress((span - first) / (last - first))
             if span in self.night_of:
                 self.stops.append(self._stop(span))
             self._arrive(span)

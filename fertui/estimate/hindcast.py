@@ -6,7 +6,7 @@ or planned when the forecast was issued, which is what users saw.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from datetime import datetime, timedelta
 from typing import NamedTuple
 
@@ -50,13 +50,14 @@ def hindcast(
     inputs: str = "logged",
     members: int | None = None,
     seed: int = SEED,
+    progress: Callable[[float], None] | None = None,
 ) -> Hindcast:
     """The record of a loop's forecasts from one analysis of its solution to the next, up to ``at``.
 
     ``members``: by default twice those of an estimate, so that chance moves an error of shares by 0.05 points only;
     forecasts as they were issued had the members they had.
 
-    Raises ``ValueError`` for ``inputs`` other than "logged" or "planned".
+    ``progress`` hears what part is done. Raises ``ValueError`` for ``inputs`` other than "logged" or "planned".
     """
     if inputs not in INPUTS:
         raise ValueError(f"inputs {inputs!r} is not one of {', '.join(INPUTS)}")
@@ -64,13 +65,21 @@ def hindcast(
     past = (entry for entry in entries if entry.at <= at)
     kept = [entry for entry in past if entry.loop == loop.name or is_of_water(entry)]
     rows: list[HindcastRow] = []
-    for end in _epochs(kept):
+    epochs = _epochs(kept)
+    for turn, end in enumerate(epochs):
         run = Assimilation(read(site, loop, kept, end, whole=True), count, seed)
-        run.run()
+        run.run(progress=_part_of(progress, turn / len(epochs), 0.5 / len(epochs)))
         ahead = _Logged(run) if inputs == "logged" else _Planned(site, loop, kept, count, seed)
-        for pair in _pairs(run):
+        pairs, done = _pairs(run), _part_of(progress, (turn + 0.5) / len(epochs), 0.5 / len(epochs))
+        for place, pair in enumerate(pairs):
+            done(place / len(pairs))
             rows += _rows(run, pair, ahead.members(pair))
     return Hindcast(inputs, tuple(rows), summary(rows))
+
+
+def _part_of(progress: Callable[[float], None] | None, begin: float, width: float) -> Callable[[float], None]:
+    """The progress of one part of the work as that of the whole."""
+    return lambda part: None if progress is None else progress(begin + width * part)
 
 
 def _epochs(entries: Sequence[Entry]) -> list[datetime]:

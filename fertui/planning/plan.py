@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 
 import numpy as np
 
@@ -31,6 +31,7 @@ def plan(
     salts: int | None = None,
     ec_step: float | None = None,
     entries: Sequence[Entry] = (),
+    progress: Callable[[float], None] | None = None,
 ) -> Plan:
     """What brings the ions of a loop back within ``days``; what cannot be done is a plan with its reason.
 
@@ -38,13 +39,17 @@ def plan(
     ``target``: a target of the site or of the catalogue instead of the loop's own. ``supplies``: use these alone;
     ``without``: leave these out; ``steps`` 1-4 weighing days; ``salts``: at most so many;
     ``ec_step``: most that EC may change in one step of the tank or the feed [mS/cm]. ``entries``: effective entries,
-    for what the year has discharged. Raises ``PlanningError``, ``SiteError`` or ``CatalogueError`` for what
+    for what the year has discharged; ``progress`` hears what part of the work is done.
+
+    Raises ``PlanningError``, ``SiteError`` or ``CatalogueError`` for what
     cannot be asked.
     """
     only = None if supplies is None else tuple(supplies)
     wishes = Wishes(days, target, only, tuple(without), steps, salts, ec_step).checked()
     situation = situation_of(estimate, entries)
-    runs: Runs = StillRuns(situation, "tank") if days == 0 else ModelRuns(estimate, days, situation.usual_acid_mmol_d)
+    runs: Runs = (
+        StillRuns(situation, "tank") if days == 0 else ModelRuns(estimate, days, situation.usual_acid_mmol_d, progress)
+    )
     if situation.loop.layout != "shared-tank" and days == 0:
         raise PlanningError(
             f"loop {situation.loop.name} is fed through stock tanks: there is no tank to dose by hand; "

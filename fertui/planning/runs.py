@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from datetime import datetime, timedelta
 from typing import TYPE_CHECKING, NamedTuple, Protocol
@@ -19,6 +19,8 @@ from fertui.site.model import Loop, Site
 if TYPE_CHECKING:
     from fertui.estimate.forecast import Scenario
 
+MOST_RUNS = 12
+"""A plan takes no more runs of the model than this; most take fewer."""
 JUST_AFTER = timedelta(minutes=1)
 """A dose is given just after a full day from now, so that the day's composition is the one before it."""
 
@@ -114,18 +116,27 @@ class Situation(NamedTuple):
 
 @dataclass(slots=True)
 class ModelRuns:
-    """``Runs`` of an estimate over a horizon of whole days; ``usual_mmol_d`` (10,) goes in half-way through each."""
+    """``Runs`` of an estimate over a horizon of whole days; ``usual_mmol_d`` (10,) goes in half-way through each.
+
+    ``progress`` hears before every run which part of the most that a plan takes has begun.
+    """
 
     estimate: Estimate
     days: int
     usual_mmol_d: Array = field(default_factory=lambda: np.zeros(len(IONS)))
+    progress: Callable[[float], None] | None = None
     count: int = field(default=0)
+
+    def _counted(self) -> None:
+        self.count += 1
+        if self.progress is not None:
+            self.progress(min(self.count / MOST_RUNS, 1.0))
 
     def settled(self, doing: Doing, members: int) -> Course:
         """See ``Runs.settled``."""
         from fertui.estimate.forecast import copies, trajectories
 
-        self.count += 1
+        self._counted()
         course = trajectories(copies(self.estimate, members), self.days, self._scenario(doing), settled=True)
         return Course(course.ions, course.volumes_l)
 
@@ -133,7 +144,7 @@ class ModelRuns:
         """See ``Runs.shown``."""
         from fertui.estimate.forecast import forecast
 
-        self.count += 1
+        self._counted()
         return forecast(self.estimate, self.days, self._scenario(doing)).days[-1].points
 
     def _scenario(self, doing: Doing) -> Scenario:

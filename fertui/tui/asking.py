@@ -88,11 +88,21 @@ WORDS = {
 }  # fmt: skip
 
 
-def progress(use_cases: Sequence[str]) -> str:
-    """What is being worked out, and a bar of what waits behind it.
+BAR = 8
+"""Columns of the bar of progress."""
+
+
+def progress(use_cases: Sequence[str], far: tuple[str, float] | None = None) -> str:
+    """What is being worked out, how far that is where it is told, and how much waits behind it.
 
     >>> progress(["today", "plan"])
-    'working out where the ions are ░░'
+    'working out where the ions are, then 1 more'
+    >>> progress(["plan"], ("trying plans", 0.5))
+    'trying plans ████░░░░ 50 %'
     """
-    first = WORDS.get(use_cases[0], use_cases[0].replace("_", " "))
-    return f"working out {first} {'░' * len(use_cases)}"
+    behind = f", then {len(use_cases) - 1} more" if len(use_cases) > 1 else ""
+    if far is None:
+        return f"working out {WORDS.get(use_cases[0], use_cases[0].replace('_', ' '))}{behind}"
+    doing, part = far
+    done = round(part * BAR)
+    return f"{doing} {'█' * done}{'░' * (BAR - done)} {100 * part:.0f} %{behind}"

@@ -6,6 +6,7 @@ from __future__ import annotations
 from collections import deque
 from collections.abc import Callable
 from threading import Condition, Thread
+from time import monotonic
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 from textual.message import Message
@@ -38,7 +39,7 @@ class Call(NamedTuple):
 
 
 class Came(Message):
-    """An answer has come: the one message a desk ever sends."""
+    """An answer has come."""
 
     def __init__(self, call: Call, answer: Answer) -> None:
         super().__init__()
@@ -46,8 +47,21 @@ class Came(Message):
         self.answer = answer
 
 
+class Underway(Message):
+    """How far a call is that takes its time."""
+
+    def __init__(self, call: Call, doing: str, part: float) -> None:
+        super().__init__()
+        self.call, self.doing, self.part = call, doing, part
+
+
+FIRST_SAID_AFTER, SAID_EVERY = 0.5, 0.3
+"""Seconds of a call before its progress is told, and between two times that it is: a thin line carries little."""
+
+
 class Desk:
-    """A thread that opens the site on its first call and answers by ``Came``. It never touches a widget."""
+    """A thread that opens the site on its first call and answers by ``Came``, and by ``Underway`` where that takes its
+    time. It never touches a widget."""
 
     def __init__(self, name: str, open_bench: Callable[[], Bench], post: Callable[[Message], Any]) -> None:
         self._open_bench = open_bench
@@ -56,6 +70,18 @@ class Desk:
         self._waiting = Condition()
         # A daemon: leaving the program must not wait for a model that is still running.
         self._thread = Thread(target=self._run, name=name, daemon=True)
+
+    def _hear(self, call: Call, bench: Bench) -> None:
+        """Have the bench tell how far it is with a call, now and then."""
+        said = monotonic() + FIRST_SAID_AFTER - SAID_EVERY
+
+        def heard(doing: str, part: float) -> None:
+            nonlocal said
+            if monotonic() - said >= SAID_EVERY:
+                said = monotonic()
+                self._post(Underway(call, doing, part))
+
+        bench.progress = heard
 
     def put(self, call: Call) -> None:
         """Add a call; it is answered after those before it."""
@@ -90,6 +116,7 @@ class Desk:
         try:
             if bench is None:
                 bench = self._open_bench()
+            self._hear(call, bench)
             return Answer(call.work(bench)), bench
         except (Refusal, FileTrouble) as no:
             return Answer(trouble=str(no)), bench

@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from fertui.tui.asking import QUICK, call_for, progress
-from fertui.tui.desk import Answer, Call, Came, Desk
+from fertui.tui.desk import Answer, Call, Came, Desk, Underway
 from fertui.tui.faults import fault_sentence
 from fertui.tui.settings import Settings
 from fertui.tui.shell import Shell
@@ -43,6 +43,7 @@ class Working(Shell):
         self._model = Desk("model", open_bench, self.post_message)
         self._clerk = Desk("clerk", open_bench, self.post_message)
         self._under_way: dict[Ask, Call] = {}
+        self._how_far: Underway | None = None
         self._last_number = -1
         self._site_stamp = 0
         self._last_trouble = ""
@@ -119,7 +120,16 @@ class Working(Shell):
 
     def what_is_going_on(self) -> str:
         """What the desks are at."""
-        return progress([ask.use_case for ask in self._under_way]) if self._under_way else ""
+        if not self._under_way:
+            return ""
+        told = self._how_far
+        far = (told.doing, told.part) if told is not None and told.call in self._under_way.values() else None
+        return progress([ask.use_case for ask in self._under_way], far)
+
+    def on_underway(self, message: Underway) -> None:
+        """A desk tells how far it is."""
+        self._how_far = message
+        self.update_keys()
 
     async def open_page(self, page: View) -> None:
         """Show a page above the view and have worked out what it needs."""

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from datetime import UTC, date, datetime, time, timedelta
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -41,6 +41,14 @@ GIVING = ("stock", "dose", "acid", "batch", "recipe")
 """Kinds of entry that tell what a crop was given."""
 
 
+Progress = Callable[[str, float], None]
+"""Hears what is being done and what part of it is."""
+
+
+def _unheard(doing: str, part: float) -> None:
+    """Nobody is waiting."""
+
+
 class Answers(SiteFolder):
     """Every read of the workbench."""
 
@@ -48,6 +56,11 @@ class Answers(SiteFolder):
         super().__init__(folder)
         self._estimates: dict[tuple[Any, ...], Estimate] = {}
         self._latest: dict[str, Estimate] = {}
+        self.progress: Progress = _unheard
+
+    def _told(self, doing: str) -> Callable[[float], None]:
+        """Hears what part of one thing is done."""
+        return lambda part: self.progress(doing, part)
 
     def glance(self, loop: str | None = None, at: datetime | None = None) -> Glance:
         """Last known numbers of a loop, without running the model."""
@@ -67,7 +80,14 @@ class Answers(SiteFolder):
             if len(self._estimates) > 8:
                 self._estimates.clear()
             before = self._latest.get(chosen.name)
-            found = assimilate(self.site, chosen, self.entries(at, known), at, before=before)
+            found = assimilate(
+                self.site,
+                chosen,
+                self.entries(at, known),
+                at,
+                before=before,
+                progress=self._told("following the logbook of " + chosen.name),
+            )
             self._estimates[key] = self._latest[chosen.name] = found
         return self._estimates[key]
 
@@ -152,11 +172,13 @@ class Answers(SiteFolder):
         from fertui.estimate.hindcast import hindcast
 
         chosen, at = self.loop(loop), at or now()
-        chance = {} if seed is None else {"seed": seed}
+        chance: dict[str, Any] = {} if seed is None else {"seed": seed}
         own = self.book.entries(loop=chosen.name, at=at, known=known)
         analyses = self.book.entries(kinds=("analysis",), at=at, known=known)
         waters = (each for each in analyses if each.point == "source" and each.loop not in (chosen.name, ""))
-        return hindcast(self.site, chosen, (*own, *waters), at, inputs, **chance)
+        return hindcast(
+            self.site, chosen, (*own, *waters), at, inputs, progress=self._told("forecasting the past"), **chance
+        )
 
     def plan(
         self,
@@ -170,7 +192,8 @@ class Answers(SiteFolder):
         from fertui.planning import plan
 
         at = at or now()
-        return plan(self.estimate(loop, at, known), days=days, entries=self.entries(at, known), **wishes)
+        estimate, entries = self.estimate(loop, at, known), self.entries(at, known)
+        return plan(estimate, days=days, entries=entries, progress=self._told("trying plans"), **wishes)
 
     def stock(
         self,

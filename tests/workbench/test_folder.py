@@ -104,3 +104,17 @@ def test_acid_plan_and_stock_sheet_count_with_the_water_as_last_analysed(demo: P
     assert [water.composition.source for water in bench.site.waters] == ["invented analysis"] * 2
     estimate = bench.estimate("lettuce", DEMO_MORNING)
     assert [water.composition.ions["HCO3"] for water in estimate.site.waters] == [2.9, 3.3]
+
+
+def test_what_takes_its_time_tells_how_far_it_is(demo_once: Path) -> None:
+    bench = open_site(demo_once)
+    heard: list[tuple[str, float]] = []
+    bench.progress = lambda doing, part: heard.append((doing, part))
+    bench.plan("lettuce", 7, DEMO_MORNING)
+    bench.hindcast("lettuce", DEMO_MORNING)
+    told = {doing: [part for name, part in heard if name == doing] for doing, _ in heard}
+    assert list(told) == ["following the logbook of lettuce", "trying plans", "forecasting the past"]
+    for parts in told.values():
+        assert parts == sorted(parts)
+        assert 0.0 <= parts[0] < 0.2
+        assert 0.3 < parts[-1] <= 1.0
