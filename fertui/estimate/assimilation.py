@@ -29,8 +29,7 @@ from fertui.estimate.setting import setting
 from fertui.estimate.standing import Estimate, HeldBack, PointAt, Surprise, TrailDay, copies, thin
 from fertui.estimate.walk import events_between, grid_of, night, nights_of, spans_of, stretch
 from fertui.logbook.entries import Entry
-from fertui.loop import corrected as booked_as_unexplained
-from fertui.loop.account import Booking, booking
+from fertui.loop.account import Booking, unexplained
 from fertui.site.model import Loop, Site
 
 SEED = 20191216
@@ -194,7 +193,7 @@ class Assimilation:
         if found is None:
             return
         now = self._at(span)
-        self.lines.append(booking(now, now, booked_as_unexplained(before.state, self.ensemble.state)))
+        self.lines.append(unexplained(now, before.state, self.ensemble.state))
         self._flag(seen, found)
         if shows_a_vessel(self.setting, seen):
             self._learn(seen, found, before)

@@ -12,8 +12,8 @@ from fertui.chemistry.ions import Array
 from fertui.estimate.ensemble import Ensemble, wandered
 from fertui.estimate.record import Record
 from fertui.estimate.setting import Setting
-from fertui.loop import Drive, Event, advance, apply, corrected
-from fertui.loop.account import Booking, booking
+from fertui.loop import Drive, Event, advance, apply
+from fertui.loop.account import Booking, booking, unexplained
 
 INSTANT, CLOSE = 1e-6, 1e-4
 TOLERANCE = 0.03
@@ -107,7 +107,7 @@ def stretch(setting: Setting, drives: Driven, span: int, ensemble: Ensemble, eve
 def night(setting: Setting, ensemble: Ensemble, seed: int, day: int, now: float) -> tuple[Ensemble, Booking]:
     """The members after the noise of one day, booked as unexplained."""
     after = wandered(ensemble, setting, seed, day)
-    return after, booking(now, now, corrected(ensemble.state, after.state))
+    return after, unexplained(now, ensemble.state, after.state)
 
 
 def events_between(events: Sequence[Event], begin: float, end: float) -> list[Event]:

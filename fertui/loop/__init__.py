@@ -5,7 +5,7 @@ from fertui.loop.alkalinity import Drift, Tendency, tendency
 from fertui.loop.circulation import advance, feed_composition
 from fertui.loop.fluxes import CAUSE, CAUSES, WATERS, Fluxes, no_fluxes
 from fertui.loop.sharing import Sharer, pooled, simulate_together
-from fertui.loop.simulation import Timeline, Trajectory, apply, corrected, simulate
+from fertui.loop.simulation import Timeline, Trajectory, apply, simulate
 from fertui.loop.uptake import UPTAKE_TABLE, Kinetics, Parameter, Plants, temperature_notice, uptake
 from fertui.loop.values import (
     INERT,
@@ -26,6 +26,6 @@ __all__ = [
     "CAUSE", "CAUSES", "INERT", "ROOT", "STORE", "UPTAKE_TABLE", "WATERS",
     "Account", "Booking", "Circuit", "Discharge", "Drift", "Drive", "Event", "Fluxes", "Hold", "Kinetics", "Medium",
     "Parameter", "Plants", "Sharer", "State", "Tendency", "Timeline", "Trajectory",
-    "advance", "apply", "corrected", "discharged", "feed_composition", "hold_ec", "hold_ph", "no_fluxes", "pooled",
+    "advance", "apply", "discharged", "feed_composition", "hold_ec", "hold_ph", "no_fluxes", "pooled",
     "running", "simulate", "simulate_together", "start", "temperature_notice", "tendency", "uptake",
 ]  # fmt: skip

@@ -12,7 +12,7 @@ import numpy as np
 
 from fertui.chemistry.ions import ATOMIC_WEIGHT, INDEX, IONS, Array
 from fertui.loop.fluxes import CAUSE, CAUSES, WATERS, Fluxes
-from fertui.loop.values import Event
+from fertui.loop.values import Event, State
 
 MICROMOLE = 1e-3
 """[mmol] Below this an amount is rounding of what the medium holds."""
@@ -38,6 +38,13 @@ def booking(begin: float, end: float, fluxes: Fluxes, event: Event | None = None
     """One line of the account from the fluxes of a stretch or an event."""
     means = (fluxes.by_cause.mean(axis=0), fluxes.overflow.mean(axis=0), fluxes.litres.mean(axis=0))
     return Booking(begin, end, *means, event.reason if event else "", event.entry if event else None)
+
+
+def unexplained(at: float, before: State, after: State) -> Booking:
+    """One line of the account: what an analysis, or noise, changed in the solution at a time."""
+    by_cause = np.zeros((len(CAUSES), len(IONS)))
+    by_cause[CAUSE["unexplained"]] = (after.ions_mmol - before.ions_mmol).sum(axis=1).mean(axis=0)
+    return Booking(at, at, by_cause, np.zeros(len(IONS)), np.zeros(len(WATERS)))
 
 
 class Account(NamedTuple):

@@ -146,13 +146,6 @@ def _levelled(state: State, event: Event, where: int) -> State:
     return state._replace(water_l=water)
 
 
-def corrected(before: State, after: State) -> Fluxes:
-    """What an analysis (or random noise) changed in the solution, booked under ``unexplained``."""
-    fluxes = no_fluxes(before.members)
-    fluxes.by_cause[:, CAUSE["unexplained"]] = (after.ions_mmol - before.ions_mmol).sum(axis=1)
-    return fluxes
-
-
 def simulate(
     circuit: Circuit,
     medium: Medium,
