@@ -216,7 +216,7 @@ def _wishes(options: Options) -> dict[str, Any]:
     wishes["supplies"] = None if options.supplies is None else _names(options.supplies)
     wishes["steps"] = None if options.steps is None else _whole(options.steps, "--steps", 1, 4)
     wishes["salts"] = None if options.salts is None else _whole(options.salts, "--salts", 1, 20)
-    wishes["ec_step"] = None if options.ec_step is None else _number(options.ec_step)
+    wishes["ec_step"] = None if options.ec_step is None else _number(options.ec_step, "--ec-step")
     return wishes
 
 
@@ -402,6 +402,15 @@ def _whole(written: str, what: str, lowest: int = 0, highest: int = 2**31) -> in
     if not lowest <= number <= highest:
         raise Refusal(f"{what} {written!r} is not a whole number from {lowest} to {highest}.")
     return number
+
+
+def _number(written: str, what: str) -> float:
+    from fertui.quantities import QuantityError, parse_number
+
+    try:
+        return parse_number(written).value
+    except QuantityError as no:
+        raise Refusal(f"{what}: {no}") from None
 
 
 def _print_entry(bench: Bench, entry: Any) -> None:

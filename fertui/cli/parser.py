@@ -153,6 +153,7 @@ NEW_OPTIONS = {
     "root-zone-water": "water they hold [L per m2] (default: usual for the medium)",
     "target": "another crop by name, or hoagland-1, hoagland-2, steiner (default: the crop's own)",
     "water": "the fresh water by a name of your own; rain or pure: no ions in it",
+    "water-report": "what it holds: 'Ca 52 mg/L, CaCO3 145 mg/L, pH 7.6' (default: not analysed)",
     "supplies": "salts and acids on the shelf: 'KNO3, nitric acid 60 %%' (default: the common salts)",
     "stage": "stage of the crop, such as fruit-set (default: standard)",
     "name": "name of the site (default: the folder's)",

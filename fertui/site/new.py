@@ -62,12 +62,14 @@ def new_site(
     name: str | None = None,
     loop: str | None = None,
     water: str | None = None,
+    water_report: Composition | None = None,
     stage: str | None = None,
 ) -> Site:
     """Write the ``site.toml`` of a new site with one loop into a folder, made where it is absent; return the site.
 
     Volumes [L], per m2 where the name says so. ``supplies``: names or formulas, an acid with its strength ("nitric acid
-    60 %"); None: ``COMMON_SALTS``. ``water``: a name, or "pure" for water without ions. ``stage``: of the crop.
+    60 %"); None: ``COMMON_SALTS``. ``water``: a name, or "pure" for water without ions;
+    ``water_report``: what it holds. ``stage``: of the crop.
     Raises ``SiteError``: a site there already, or a value that site.toml would refuse.
     """
     path = Path(folder)
@@ -89,7 +91,7 @@ def new_site(
         name=name or path.resolve().name or "site",
         timezone=timezone or machine_timezone(),
         loops=(first,),
-        waters=(_water(water),),
+        waters=(_water(water, water_report),),
         supplies=tuple(supply_from(each) for each in (COMMON_SALTS if supplies is None else supplies)),
     )
     site = site_from(tables_of(_with_defaults(site)), f"the new {NAME}")
@@ -158,7 +160,9 @@ def first_steps(site: Site) -> tuple[str, ...]:
     where = "the tank" if loop.layout == "shared-tank" else "feed and drain (or root zone)"
     steps = [f"An analysis of {where} (key a, or `fertui import`): without one no ion of yours is known."]
     if not site.waters[0].composition.ions:
-        steps.append(f"The analysis of the water {site.waters[0].name!r} in site.toml: acid and salts depend on it.")
+        steps.append(
+            f"The report of the water {site.waters[0].name!r} (key a, point source): acid and salts depend on it."
+        )
     steps.append(
         "The daily round (key r): EC, pH, litres of make-up water and stock; two minutes, blank sheet: `fertui round`."
     )
@@ -224,7 +228,9 @@ def _stock_tanks(loop: Loop) -> tuple[StockTank, ...]:
     return tuple(StockTank(name, litres, letter=letter, source=source) for name, letter in STOCK_TANKS)
 
 
-def _water(name: str | None) -> Water:
+def _water(name: str | None, report: Composition | None) -> Water:
+    if report is not None:
+        return Water((name or "make-up water").strip(), report)
     if name is not None and name.strip().lower() in PURE_WATER:
         return Water(name.strip(), Composition(dict.fromkeys(IONS, 0.0), ec=0.0, source="taken as water without ions"))
     return Water((name or "make-up water").strip(), Composition(source="not analysed yet"))

@@ -14,9 +14,17 @@ from fertui.catalogue.supplies import substances
 from fertui.refusals import Refusal
 from fertui.site.answers import UNKNOWN, amount, name, one_of, supplies, timezone
 from fertui.site.checks import SiteError, nearest, plain
-from fertui.site.model import Loop, Site
-from fertui.site.new import COMMON_SALTS, DRAIN_STORE_L_PER_M2, DRAIN_STORE_SOURCE, machine_timezone, new_site
+from fertui.site.model import Composition, Loop, Site
+from fertui.site.new import (
+    COMMON_SALTS,
+    DRAIN_STORE_L_PER_M2,
+    DRAIN_STORE_SOURCE,
+    PURE_WATER,
+    machine_timezone,
+    new_site,
+)
 from fertui.site.presets import root_zone_water
+from fertui.site.water_report import read_report, report_text
 
 Answers = Mapping[str, str]
 """Option -> answer as understood, a text that reads back to it; "" for "I do not know"."""
@@ -72,6 +80,8 @@ class Question(NamedTuple):
         """A value as the text that reads back to it, "" for None."""
         if value is None:
             return ""
+        if isinstance(value, Composition):
+            return report_text(value)
         if isinstance(value, float):
             return f"{plain(value).replace(',', '')} {self.unit}"
         return ", ".join(value) if isinstance(value, tuple) else str(value)
@@ -235,13 +245,24 @@ def _about_feeding() -> tuple[Question, ...]:
             "water",
             "water",
             "What do you call the fresh water?",
-            "A name of your own. Its analysis (Na, Cl, Ca, Mg, HCO3) comes later; acid and salts depend on it.",
+            "A name of your own; its report is asked for next.",
             name,
             presets=lambda answers: (
                 Preset("rain", "no ions in it"),
-                Preset("well", "or tap, river ...: its analysis is asked for"),
+                Preset("well", "or tap, river ...: its report is asked for"),
             ),
             instead=lambda answers: "make-up water, not analysed",
+        ),
+        Question(
+            "water_report",
+            "water-report",
+            "What does its report say?",
+            "Names and numbers with commas between, as it has them: pH 7.6, Ca 52 mg/L, Na 0.5, CaCO3 145 mg/L. "
+            "Without a unit they are mmol/L (HCO3 meq/L, EC mS/cm). Acid and salts depend on it. A report that comes "
+            "later is logged as an analysis of the source.",
+            read_report,
+            instead=lambda answers: "not analysed yet",
+            applies=lambda answers: answers.get("water", "").lower() not in PURE_WATER,
         ),
         Question(
             "target",

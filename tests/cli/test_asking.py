@@ -15,7 +15,7 @@ from fertui.site.files import read_site
 Ask = Callable[..., tuple[int, str]]
 """Runs ``fertui new home`` with options and answers; the exit code and all that was shown."""
 
-GOOD = ("lettuce", "180", "shared-tank", "none", "700", "well", "", "", "", "", "Europe/Rome")
+GOOD = ("lettuce", "180", "shared-tank", "none", "700", "well", "", "", "", "", "", "Europe/Rome")
 
 
 @pytest.fixture
@@ -60,7 +60,7 @@ def test_every_wrong_answer_is_refused_at_its_own_question(ask: Ask, tmp_path: P
 
 
 def test_what_was_understood_stands_under_the_answer(ask: Ask) -> None:
-    said = ("Salad", "180", "Shared tank", "none", "0.7 m3", "well", "", "KNO3; HNO3 38%", "", "", "")
+    said = ("Salad", "180", "Shared tank", "none", "0.7 m3", "well", "", "", "KNO3; HNO3 38%", "", "", "")
     code, shown = ask(said)
     assert code == 0
     for understood in ("lettuce", "180 m2", "shared-tank", "700 L", "potassium nitrate, nitric acid 38 %"):
@@ -69,7 +69,7 @@ def test_what_was_understood_stands_under_the_answer(ask: Ask) -> None:
 
 
 def test_brackets_hold_what_enter_takes_in_the_unit_asked_for(ask: Ask) -> None:
-    _, shown = ask(("sweet-pepper", "", "800", "drain-blend", "peat", *[""] * 9))
+    _, shown = ask(("sweet-pepper", "", "800", "drain-blend", "peat", *[""] * 10))
     for hint in ("drain store [2000 L]: ", "medium volume [12 L/m2]: ", "stage [standard]: ", "timezone [Europe/Rome]"):
         assert f"\n{hint}" in shown
     assert re.search(r"standard +the crop's usual feed\n +fruit-set +feed K \+1 +Ca -0.5 mmol/L\n", shown)
