@@ -13,6 +13,7 @@ from fertui.logbook.readers import field_named
 from fertui.logbook.sheets import Sheet
 from fertui.logbook.templates import Template
 from fertui.quantities.names import unit_and_species
+from fertui.quantities.refusal import QuantityError
 from fertui.quantities.units import fold
 
 KEPT_BY_THE_BOOK = ("number", "entered", "supersedes", "why", "flags")
@@ -20,7 +21,9 @@ KEPT_BY_THE_BOOK = ("number", "entered", "supersedes", "why", "flags")
 
 HEADS: Mapping[str, str] = {
     "date": "at", "datetime": "at", "date and time": "at", "sampled": "at", "date sampled": "at", "sampling date": "at",
-    "sample date": "at", "sample point": "point", "sampling point": "point", "location": "point",
+    "sample date": "at", "date of sampling": "at", "date of sample": "at", "sampled on": "at", "date collected": "at",
+    "collection date": "at", "date of collection": "at", "sample point": "point", "sampling point": "point",
+    "location": "point",
     "remark": "note", "remarks": "note", "comment": "note", "comments": "note", "operator": "by", "laboratory": "lab",
     "sample number": "sample", "sample no": "sample", "lab number": "sample", "sample id": "sample",
 }  # fmt: skip
@@ -57,7 +60,10 @@ def columns_of(sheet: Sheet, kind: Kind, template: Template) -> tuple[Column, ..
     columns, unknown = [], []
     for place, (head, unit) in enumerate(zip(sheet.heads, sheet.units, strict=True)):
         head = undefused(head)
-        column = None if head in template.ignore else _column(head, template.columns.get(head, head), unit, kind)
+        try:
+            column = None if head in template.ignore else _column(head, template.columns.get(head, head), unit, kind)
+        except QuantityError as trouble:
+            raise LogbookError(f"{_called(head, place, sheet)}: {trouble}") from trouble
         columns.append(column or Column(head, ""))
         if column is None and head not in template.ignore and any(row[place] for row in sheet.rows):
             unknown.append(head)
@@ -65,6 +71,14 @@ def columns_of(sheet: Sheet, kind: Kind, template: Template) -> tuple[Column, ..
         raise _unknown(unknown, kind)
     _check_once(columns)
     return tuple(columns)
+
+
+def _called(head: str, place: int, sheet: Sheet) -> str:
+    """A column by its head; one without a head by its place and the line that has a cell there."""
+    if head:
+        return f"column {head!r}"
+    line = next((line for line, row in zip(sheet.lines, sheet.rows, strict=True) if row[place]), None)
+    return f"column {place + 1}" if line is None else f"column {place + 1}, in which line {line} has a cell"
 
 
 def learned(template: Template, sheet: Sheet, columns: Sequence[Column], dates: str) -> Template:
@@ -120,5 +134,6 @@ def _unknown(heads: Sequence[str], kind: Kind) -> LogbookError:
     listed = ", ".join(f"{head!r}{nearest(head, known).replace(';', ' -')}" for head in heads)
     return LogbookError(
         f"columns not known for {kind.name}: {listed}. Rename them to one of {', '.join(known)} with the unit in "
-        'brackets, as in "K [mmol/L]", or name them in a template under columns or ignore.'
+        'brackets, as in "K [mmol/L]". Or say what they are in a template, templates/NAME.toml in the folder of the '
+        f'site: columns = {{ "{heads[0]}" = "K [mg/L]" }} or ignore = ["{heads[0]}"]; then import with --template NAME.'
     )

@@ -30,6 +30,11 @@ POINT_WORDS: Mapping[str, str] = {
 }  # fmt: skip
 """Words tables use for points (common practice, no source)."""
 
+STATES: Mapping[str, str] = {
+    "new": "new", "there": "already there as entry {}", "differs": "differs from entry {} and is left out",
+}  # fmt: skip
+"""What can become of a row, and how it is said."""
+
 MOST_TROUBLES, MOST_LINES = 20, 8
 
 Signature = tuple[str, str, str, str, str, tuple[tuple[str, str], ...]]
@@ -39,11 +44,13 @@ Signature = tuple[str, str, str, str, str, tuple[tuple[str, str], ...]]
 class ImportRow(NamedTuple):
     """One row: its entry, and whether it is ``new``, ``there`` already, or ``differs`` from the book (not written).
 
-    ``conversions`` says for each value what was written and what it became; ``questions`` what a careful reader asks.
+    ``when``: its time on the clock of the site, and whether an hour was given. ``conversions`` says for each value what
+    was written and what it became; ``questions`` what a careful reader asks.
     """
 
     line: int
     entry: Entry
+    when: str
     state: str
     existing: int | None
     conversions: tuple[str, ...]
@@ -69,23 +76,23 @@ class ImportResult(NamedTuple):
 
     def words(self) -> tuple[str, ...]:
         """The result as lines of text."""
-        lines = [f"column {column.says()}" for column in self.columns]
+        lines = [f"column {column.says()}{self._assumed(column)}" for column in self.columns]
         for row in self.rows:
-            at = f" as entry {row.existing}" if row.existing else ""
-            lines.append(
-                f"line {row.line}: {row.state}{at}, {row.entry.at:%Y-%m-%d %H:%M} UTC {row.entry.point}".rstrip()
-            )
+            state = STATES[row.state].format(row.existing)
+            lines.append(f"line {row.line}: {state}, {row.when} {row.entry.point}".rstrip())
             lines += [f"  {conversion}" for conversion in row.conversions]
             lines += [f"  ? {question.text}" for question in row.questions]
         did = "would be added (dry run, nothing written)" if self.dry_run else "added"
-        last = f"{self.count('new')} {self.kind} entries {did}, {self.count('there')} were there already"
-        differs = self.count("differs")
-        lines.append(
-            f"{last}, {differs} differ from what is there and were left out (fertui supersede)."
-            if differs
-            else f"{last}."
-        )
-        return tuple(lines)
+        new, there, differs = (self.count(state) for state in STATES)
+        last = f"{new} {self.kind} {'entry' if new == 1 else 'entries'} {did}, already there: {there}"
+        left_out = f", differing from what is there and left out: {differs} (fertui supersede)" if differs else ""
+        return (*lines, f"{last}{left_out}.")
+
+    def _assumed(self, column: Column) -> str:
+        """The unit that the numbers of a column are taken in where its head names none."""
+        field = KINDS[self.kind].field(column.field)
+        silent = field is not None and field.is_number and field.unit and not column.unit
+        return f", no unit given: taken as {field.unit}" if field is not None and silent else ""
 
 
 def import_table(
@@ -147,7 +154,11 @@ def _entries(sheet: Sheet, columns: Sequence[Column], source: _Source, order: st
     if troubles:
         raise _refused(troubles)
     if not read:
-        raise LogbookError(f"no row has a value of {source.kind.name}; nothing was imported.")
+        lines = f"line {sheet.lines[0]}" if len(sheet.lines) == 1 else f"lines {sheet.lines[0]} to {sheet.lines[-1]}"
+        raise LogbookError(
+            f"{lines}: no row has a value of {source.kind.name}; nothing was imported. "
+            "Has each as many cells as there are heads?"
+        )
     return read
 
 
@@ -220,7 +231,15 @@ def _judged(read: Sequence[tuple[int, Entry]], book: Logbook, here: ZoneInfo) ->
         state, other = ("there", number) if number else _against(entry, past)
         conversions = tuple(_conversion(KINDS[entry.kind], value) for value in entry.values)
         asked = questions_of_values(entry) if state == "new" else ()
-        yield ImportRow(line, entry, state, other, conversions, asked)
+        yield ImportRow(line, entry, _when(entry, here), state, other, conversions, asked)
+
+
+def _when(entry: Entry, here: ZoneInfo) -> str:
+    """Time of an entry on the clock of the site; a day without an hour says what was made of it."""
+    at = entry.at.astimezone(here)
+    if entry.whole_day and KINDS[entry.kind].spans:
+        return f"{at:%a %d %b %Y}, the whole day"
+    return f"{at:%a %d %b %Y %H:%M}{' (no hour given)' if entry.whole_day else ''}"
 
 
 def _signatures(past: Sequence[Entry], here: ZoneInfo) -> dict[Signature, list[int]]:

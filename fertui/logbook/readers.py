@@ -20,7 +20,7 @@ _MEASURED_AS = {"meter": "litres", "entry": "number"}
 def read_value(field: Field, name: str, text: str, site: Site, loop: Loop | None, now: datetime) -> Value:
     """The value of one field. ``name`` is the name as written (``NO3-N`` for the field NO3).
 
-    Raises ``LogbookError`` or ``QuantityError`` for what is not a value of this field.
+    Raises ``LogbookError``, naming the field, for what is not a value of it.
     """
     written = text.strip()
     if not written:
@@ -63,7 +63,10 @@ def _number(field: Field, name: str, written: str, site: Site, now: datetime) ->
         what = field.name if name.lower() == field.name.lower() else name
     else:
         what = _MEASURED_AS.get(field.what, field.what)
-    quantity = quantities.read(written, what)
+    try:
+        quantity = quantities.read(written, what)
+    except quantities.QuantityError as trouble:
+        raise LogbookError(f"{name}: {trouble}") from trouble
     return Value(field.name, written, quantity.number, quantity.unit, quantity.species, quantity.below)
 
 

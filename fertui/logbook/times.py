@@ -14,6 +14,7 @@ AHEAD = timedelta(minutes=2)
 """How far clocks of two sessions may differ before a time lies in the future (common practice, no source)."""
 
 _CLOCK = re.compile(r"(\d{1,2})[:.h](\d{2})(?::(\d{2}))?")
+_DAY_FIRST = re.compile(r"(\d{1,2})\.(\d{1,2})\.(\d{4})", re.ASCII)
 _DAY_WORDS = {"today": 0, "yesterday": 1}
 
 
@@ -29,9 +30,9 @@ def zone(name: str) -> ZoneInfo:
 def read_moment(text: str, timezone: str, now: datetime) -> tuple[datetime, bool]:
     """UTC time of a text, and whether it names a whole day (then its local midnight).
 
-    Takes ``07:30`` (today), ``yesterday 16:05``, ``2024-12-01``, ``2024-12-01 07:30`` and ISO 8601 with a zone; without
-    one the time is in ``timezone``. Raises ``LogbookError`` for anything else, and for local times that a change of
-    clocks skips or gives twice.
+    Takes ``07:30`` (today), ``yesterday 16:05``, ``2024-12-01``, ``2024-12-01 07:30``, ``1.12.2024 7:30`` (points mean
+    day first; common practice, no source) and ISO 8601 with a zone; without one the time is in ``timezone``.
+    Raises ``LogbookError`` for anything else, and for local times that a change of clocks skips or gives twice.
 
     >>> now = datetime(2024, 12, 1, 9, 0, tzinfo=UTC)
     >>> read_moment("07:30", "Europe/Amsterdam", now)
@@ -46,19 +47,19 @@ def read_moment(text: str, timezone: str, now: datetime) -> tuple[datetime, bool
     try:
         if written.lower() == "now":
             return now.astimezone(UTC), False
-        if first.lower() in _DAY_WORDS:
-            day = today - timedelta(days=_DAY_WORDS[first.lower()])
-            return (local(datetime.combine(day, _clock(rest)), here), False) if rest else (midnight(day, here), True)
+        day = _day(first, today)
+        if day is not None and not rest:
+            return midnight(day, here), True
+        if day is not None and _CLOCK.fullmatch(rest.strip()):
+            return local(datetime.combine(day, _clock(rest)), here), False
         if _CLOCK.fullmatch(written):
             return local(datetime.combine(today, _clock(written)), here), False
-        if re.fullmatch(r"\d{4}-\d{2}-\d{2}", written):
-            return midnight(date.fromisoformat(written), here), True
         return local(datetime.fromisoformat(written), here), False
     except (ValueError, OverflowError) as error:
         if isinstance(error, LogbookError):
             raise
         raise LogbookError(
-            f"{text!r} is not a time; write 07:30 (today), yesterday 16:05, 2024-12-01 or 2024-12-01 07:30."
+            f"{text!r} is not a time; write 07:30 (today), yesterday 16:05, 2024-12-01 or 1.12.2024 7:30."
         ) from error
 
 
@@ -97,6 +98,15 @@ def shown(moment: datetime, timezone: str) -> str:
     '2024-12-01T07:30:00+01:00'
     """
     return moment.astimezone(zone(timezone)).isoformat()
+
+
+def _day(word: str, today: date) -> date | None:
+    """The day that a word names, None where it names none; raises ``ValueError`` for a day that cannot be."""
+    if word.lower() in _DAY_WORDS:
+        return today - timedelta(days=_DAY_WORDS[word.lower()])
+    if points := _DAY_FIRST.fullmatch(word):
+        return date(int(points[3]), int(points[2]), int(points[1]))
+    return date.fromisoformat(word) if re.fullmatch(r"\d{4}-\d{2}-\d{2}", word, re.ASCII) else None
 
 
 def _clock(text: str) -> time:

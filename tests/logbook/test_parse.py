@@ -62,6 +62,10 @@ def test_below_detection_keeps_the_limit_and_says_so(say: Say) -> None:
         ("bleed", {"litres": "200", "reason": "x", "from": "river"}, "Known: tank, drain, drain_store"),
         ("acid", {"acid": "phosphoric acid", "litres": "1"}, "needs strength"),
         ("setpoint", {"drain_share": "30"}, "0 to 1"),
+        ("reading", {"EC": "abc"}, "EC: 'abc' does not begin with a number"),
+        ("water", {"make_up": "-4"}, "make_up: '-4' is negative"),
+        ("reading", {"EC": "2", "at": "28.13.2025 17:00"}, "is not a time; write"),
+        ("reading", {"EC": "2", "at": "3/4/2026"}, "is not a time; write"),
         ("plan", {"K": "7", "until": "2026-06-01"}, "not after"),
         ("reading", {"EC": "2", "instrument": "blue pen"}, "temperature="),
         ("analysis", {"K": "8", "point": "root_zone", "method": "extract_1_1.5"}, "is an extract, not pore water"),
@@ -100,6 +104,24 @@ def test_amounts_without_a_time_cover_the_local_day_and_samples_stand_at_noon(sa
     assert (sample.at, sample.whole_day) == (datetime(2026, 6, 30, 10, 0, tzinfo=UTC), True)
     early = say("reading", point="feed", EC="2", at="today", now=datetime(2026, 7, 1, 5, 0, tzinfo=UTC))
     assert early.at == datetime(2026, 7, 1, 5, 0, tzinfo=UTC)
+
+
+@pytest.mark.parametrize(
+    ("written", "utc"),
+    [
+        ("28.6.2026 17:00", "2026-06-28T15:00"),
+        ("28.06.2026 7.05", "2026-06-28T05:05"),
+        ("2026-06-28 7:05", "2026-06-28T05:05"),
+        ("2026-06-28T07:05", "2026-06-28T05:05"),
+        ("yesterday 8:00", "2026-06-30T06:00"),
+        ("1.7.2026", "2026-06-30T22:00"),
+    ],
+)
+def test_times_as_people_write_them(written: str, utc: str) -> None:
+    # Europe/Amsterdam is two hours ahead of UTC in summer (IANA time zone database)
+    moment, whole = read_moment(written, "Europe/Amsterdam", datetime(2026, 7, 1, 9, tzinfo=UTC))
+    assert f"{moment:%Y-%m-%dT%H:%M}" == utc
+    assert whole == (written == "1.7.2026")
 
 
 def test_clock_changes_are_never_guessed() -> None:

@@ -81,7 +81,8 @@ def test_a_dry_run_shows_every_conversion_and_check_and_writes_nothing(take: Imp
     assert "H2PO4: 90 mg/L P2O5 = 1.268 mmol/L" in words
     assert "HCO3: 120 mg/L CaCO3 = 2.398 meq/L" in words
     assert "EC: 260 10^-5 S/cm = 2.6 mS/cm" in words
-    assert "3 analysis entries would be added" in words
+    assert "3 analysis entries would be added (dry run, nothing written), already there: 0." in words
+    assert "line 3: new, Mon 15 Jun 2026 12:00 (no hour given) feed" in words
 
 
 def test_nitrate_given_as_ion_where_nitrogen_was_meant_is_asked_about(take: Import) -> None:
@@ -108,13 +109,48 @@ def test_a_sample_that_is_there_with_other_numbers_is_shown_and_left_out(take: I
     result = take(LAB_SHEET.replace("168;", "178;"))
     assert [(row.state, row.existing) for row in result.rows] == [("differs", 1), ("there", 2), ("there", 3)]
     assert book.last_number() == 3
-    assert "fertui supersede" in result.words()[-1]
+    assert result.words()[-1].endswith("left out: 1 (fertui supersede).")
+    assert "line 3: differs from entry 1 and is left out, Mon 15 Jun" in "\n".join(result.words())
 
 
 def test_two_equal_rows_of_one_table_are_two_events(take: Import, book: Logbook) -> None:
     table = "at,salt,kg [kg]\n2026-06-20,MKP,0.5\n2026-06-20,MKP,0.5\n"
     assert len(take(table, "dose", loop="gutters").written) == 2
     assert len(take(table, "dose", loop="gutters").written) == 0
+
+
+def test_times_are_told_on_the_clock_of_the_site(take: Import) -> None:
+    # Amsterdam is two hours ahead of UTC in June (IANA time zone database)
+    result = take("at,point,K [mg/L]\n2026-06-20 11:00,drain,280\n20.06.2026 7:30,feed,280\n")
+    assert [row.when for row in result.rows] == ["Sat 20 Jun 2026 11:00", "Sat 20 Jun 2026 07:30"]
+    assert [f"{row.entry.at:%H:%M}" for row in result.rows] == ["09:00", "05:30"]
+    assert result.words()[-1] == "2 analysis entries added, already there: 0."
+    amounts = take("at,make_up [L]\n2026-06-20,2400\n", "water")
+    assert amounts.rows[0].when == "Sat 20 Jun 2026, the whole day"
+    assert amounts.words()[-1] == "1 water entry added, already there: 0."
+
+
+def test_a_unit_that_the_head_does_not_give_is_said(take: Import) -> None:
+    words = take("at,point,K,Fe,pH,Ca [mg/L]\n2026-06-20,drain,7.1,30,5.6,280\n", dry_run=True).words()
+    assert "column K: K, no unit given: taken as mmol/L" in words
+    assert "column Fe: Fe, no unit given: taken as umol/L" in words
+    assert "column pH: pH" in words
+    assert "column Ca [mg/L]: Ca in mg/L" in words
+
+
+@pytest.mark.parametrize(
+    ("table", "says"),
+    [
+        ("at,point,K\n2026-06-20,drain\n", "line 2: no row has a value"),
+        ("at,point,K\n2026-06-20,drain,7,8\n", "column 4, in which line 2 has a cell"),
+        ("at,point,K [mmol/kg]\n2026-06-20,drain,7\n", r"column 'K \[mmol/kg\]': 'mmol/kg' is not a unit"),
+        ("at,point,K,pH\n2026-06-20,drain,7,29\n", "line 2: pH: pH 29 cannot be"),
+        ("at,point,Kalium\n2026-06-20,drain,7\n", r'templates/NAME.toml .*columns = \{ "Kalium" = "K \[mg/L\]" \}'),
+    ],
+)
+def test_a_refusal_names_the_column_or_line(take: Import, table: str, says: str) -> None:
+    with pytest.raises(Refusal, match=says):
+        take(table)
 
 
 SHAPES = {
