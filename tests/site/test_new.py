@@ -149,7 +149,8 @@ def test_what_was_understood_reads_back_to_the_same() -> None:
     answers = {
         "crop": "tomato", "stage": "fruit-set", "area": "1,2 ha", "layout": "Drain blend", "medium": "rockwool",
         "drain-store": "20 m3", "medium-volume": "9", "root-zone-water": "6 mm", "water": "well", "target": "Steiner",
-        "water-report": "EC 0,5; Ca 52 mg/L, CaCO3 145 mg/L", "supplies": "KNO3; HNO3 38%; iron DTPA 11 %", "loop": "north", "name": "home", "timezone": "Europe/Rome",
+        "water-report": "EC 0,5; Ca 52 mg/L, CaCO3 145 mg/L",
+        "supplies": "KNO3; HNO3 38%; iron DTPA 11 %", "loop": "north", "name": "home", "timezone": "Europe/Rome",
         "tank": "3 m3",
     }  # fmt: skip
     understood: dict[str, str] = {}

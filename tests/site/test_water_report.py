@@ -23,7 +23,10 @@ def test_numbers_are_taken_in_the_units_of_the_report() -> None:
     assert read_report(report_text(found)) == found
 
 
-@pytest.mark.parametrize("written", ["good water", "Ca", "Ca 52", "alkalinity 145 mg/L", "Xy 3", "Ca 1 mmol/L 2", "pH 76"])
+NO_REPORT = ("good water", "Ca", "Ca 52", "alkalinity 145 mg/L", "Xy 3", "Ca 1 mmol/L 2", "pH 76")
+
+
+@pytest.mark.parametrize("written", NO_REPORT)
 def test_what_is_no_report_is_refused_with_what_is_wanted(written: str) -> None:
     with pytest.raises(Refusal):
         read_report(written)
