@@ -9,8 +9,8 @@ from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from fertui.cli.exit_codes import FINE
 from fertui.cli.kept import KeptAnswers
-from fertui.cli.main import FINE
 from fertui.cli.parser import NEW_OPTIONS
 from fertui.refusals import Refusal
 

@@ -2,23 +2,29 @@
 
 from __future__ import annotations
 
-import argparse
 import os
 import sys
 from collections.abc import Callable, Mapping
-from datetime import datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 from zoneinfo import ZoneInfo
 
-from fertui.cli.main import FINE, NO
+from fertui.cli.exit_codes import FINE, NO
+from fertui.cli.options import (
+    Options,
+    read_fields,
+    read_names,
+    read_number,
+    read_time,
+    read_unit,
+    read_view,
+    read_whole,
+)
 from fertui.refusals import Refusal
 from fertui.workbench import Bench, open_site
 
 if TYPE_CHECKING:
     from fertui.paper import Page
-
-Options = argparse.Namespace
 
 
 def run(options: Options) -> int:
@@ -31,7 +37,7 @@ def opened(options: Options) -> int:
     bench = open_site(options.site)
     if options.open_terminal is None:
         raise Refusal("The terminal interface is not part of this installation; use the plain commands.")
-    return int(options.open_terminal(bench.folder, _time(bench, options.at)))
+    return int(options.open_terminal(bench.folder, read_time(bench, options.at)))
 
 
 def demo(options: Options) -> int:
@@ -66,7 +72,7 @@ def completion(options: Options) -> int:
 def record(options: Options) -> int:
     """``record``: append one entry, print it as read back."""
     bench = open_site(options.site)
-    fields = _fields(options.values)
+    fields = read_fields(options.values)
     fields.setdefault("by", os.environ.get("FERTUI_OPERATOR", ""))
     for question in bench.questions(options.kind, fields, options.loop):
         print(f"? {question.text}", file=sys.stderr)
@@ -78,7 +84,7 @@ def supersede(options: Options) -> int:
     """``supersede``: a new entry that corrects an old one."""
     bench = open_site(options.site)
     fields, why, by = _correction(options)
-    _print_entry(bench, bench.supersede(_whole(options.number, "NUMBER"), fields, why, by))
+    _print_entry(bench, bench.supersede(read_whole(options.number, "NUMBER"), fields, why, by))
     return FINE
 
 
@@ -90,7 +96,7 @@ def void(options: Options) -> int:
         raise Refusal(
             f"void takes why= and by= only, not {', '.join(fields)}. To change values use 'fertui supersede'."
         )
-    _print_entry(bench, bench.void(_whole(options.number, "NUMBER"), why, by))
+    _print_entry(bench, bench.void(read_whole(options.number, "NUMBER"), why, by))
     return FINE
 
 
@@ -138,26 +144,26 @@ def today(options: Options) -> int:
     """``today``."""
     from fertui.cli.views.today import document, text
 
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     state = bench.today(**view)
-    return _show(options, lambda: document(state), lambda: text(state, bench.site.timezone, _unit(bench, options)))
+    return _show(options, lambda: document(state), lambda: text(state, bench.site.timezone, read_unit(bench, options)))
 
 
 def analysis(options: Options) -> int:
     """``analysis``."""
     from fertui.cli.views.analysis import document, text
 
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     found = bench.analysis(**view)
-    return _show(options, lambda: document(found), lambda: text(found, bench.site.timezone, _unit(bench, options)))
+    return _show(options, lambda: document(found), lambda: text(found, bench.site.timezone, read_unit(bench, options)))
 
 
 def drift(options: Options) -> int:
     """``drift``."""
     from fertui.cli.views.analysis import drift_document, drift_text
 
-    bench, view = _reading(options)
-    course = bench.drift(days=_whole(options.days, "--days", 1, 3650), **view)
+    bench, view = read_view(options)
+    course = bench.drift(days=read_whole(options.days, "--days", 1, 3650), **view)
     return _show(options, lambda: drift_document(course), lambda: drift_text(course, bench.site.timezone))
 
 
@@ -165,9 +171,9 @@ def balance(options: Options) -> int:
     """``balance``."""
     from fertui.cli.views.balance import document, text
 
-    bench, view = _reading(options)
-    end = _time(bench, options.end) or view["at"]
-    account = bench.balance(view["loop"], _time(bench, options.start), end, view["known"])
+    bench, view = read_view(options)
+    end = read_time(bench, options.end) or view["at"]
+    account = bench.balance(view["loop"], read_time(bench, options.start), end, view["known"])
     name = bench.loop(view["loop"]).name
     return _show(options, lambda: document(account, name), lambda: text(account, name, bench.site.timezone))
 
@@ -177,14 +183,14 @@ def forecast(options: Options) -> int:
     from fertui.cli.views.forecast import document, text
     from fertui.workbench.glance import managed_point
 
-    bench, view = _reading(options)
-    ahead = bench.forecast(days=_whole(options.days, "--days", 1, 60), **view)
+    bench, view = read_view(options)
+    ahead = bench.forecast(days=read_whole(options.days, "--days", 1, 60), **view)
     loop = bench.loop(view["loop"])
     sample = bench.next_sample(ahead, loop.name, view["known"])
     return _show(
         options,
         lambda: document(ahead, sample, loop.name),
-        lambda: text(ahead, sample, loop.name, managed_point(loop), bench.site.timezone, _unit(bench, options)),
+        lambda: text(ahead, sample, loop.name, managed_point(loop), bench.site.timezone, read_unit(bench, options)),
     )
 
 
@@ -192,8 +198,8 @@ def hindcast(options: Options) -> int:
     """``hindcast``."""
     from fertui.cli.views.forecast import record_document, record_text
 
-    bench, view = _reading(options)
-    seed = None if options.seed is None else _whole(options.seed, "--seed")
+    bench, view = read_view(options)
+    seed = None if options.seed is None else read_whole(options.seed, "--seed")
     past = bench.hindcast(inputs=options.inputs, seed=seed, **view)
     name = bench.loop(view["loop"]).name
     return _show(options, lambda: record_document(past, name), lambda: record_text(past, name, bench.site.timezone))
@@ -203,20 +209,27 @@ def plan(options: Options) -> int:
     """``plan``: exit code 1 where the answer is no."""
     from fertui.cli.views.plan import document, text
 
-    bench, view = _reading(options)
-    made = bench.plan(days=_whole(options.days, "--days", 0, 60), **view, **_wishes(options))
+    bench, view = read_view(options)
+    made = bench.plan(days=read_whole(options.days, "--days", 0, 60), **view, **_wishes(options))
     if options.sheet:
         _release(bench, made, bench.plan_page(made), options)
-    _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, _unit(bench, options)))
+    _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, read_unit(bench, options)))
     return FINE if made.feasible else NO
 
 
 def _wishes(options: Options) -> dict[str, Any]:
     wishes: dict[str, Any] = {"target": options.target, "without": tuple(options.without)}
+<<<<<<< Updated upstream
     wishes["supplies"] = None if options.supplies is None else _names(options.supplies)
     wishes["steps"] = None if options.steps is None else _whole(options.steps, "--steps", 1, 4)
     wishes["salts"] = None if options.salts is None else _whole(options.salts, "--salts", 1, 20)
     wishes["ec_step"] = None if options.ec_step is None else _number(options.ec_step, "--ec-step")
+=======
+    wishes["supplies"] = None if options.supplies is None else read_names(options.supplies)
+    wishes["steps"] = None if options.steps is None else read_whole(options.steps, "--steps", 1, 4)
+    wishes["salts"] = None if options.salts is None else read_whole(options.salts, "--salts", 1, 20)
+    wishes["ec_step"] = None if options.ec_step is None else read_number(options.ec_step, "--ec-step")
+>>>>>>> Stashed changes
     return wishes
 
 
@@ -224,11 +237,11 @@ def stock(options: Options) -> int:
     """``stock``: exit code 1 where a pair of salts is refused; ``--crop-ends`` asks for the last mix alone."""
     from fertui.cli.views.sheets import last_mix_text, stock_document
 
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     if options.crop_ends is not None:
         from fertui.cli.views import as_json
 
-        days, plain = _whole(options.crop_ends, "--crop-ends"), _whole(options.plain_water, "--plain-water")
+        days, plain = read_whole(options.crop_ends, "--crop-ends"), read_whole(options.plain_water, "--plain-water")
         mixes = bench.last_mixes(days, view["loop"], plain, view["at"])
         document = {"schema": "fertui.last_mix/1", "tanks": as_json.plain(mixes)}
         return _show(options, lambda: document, lambda: last_mix_text(mixes))
@@ -241,7 +254,7 @@ def stock(options: Options) -> int:
 
 def _left(bench: Bench, options: Options) -> dict[str, float]:
     """Litres of old stock by tank."""
-    left = {tank: _number(litres, f"--left {tank}") for tank, litres in _fields(options.left).items()}
+    left = {tank: read_number(litres, f"--left {tank}") for tank, litres in read_fields(options.left).items()}
     unknown = [tank for tank in left if tank not in bench.loop(options.loop).stock_tanks]
     if unknown:
         tanks = ", ".join(bench.loop(options.loop).stock_tanks) or "none"
@@ -253,7 +266,7 @@ def acid(options: Options) -> int:
     """``acid``: exit code 1 where there is no dose."""
     from fertui.cli.views.sheets import acid_document
 
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     sheet = bench.acid(**view)
     page = bench.acid_page(sheet, view["loop"])
     _release(bench, sheet, page, options)
@@ -265,7 +278,7 @@ def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
     """Write a sheet to the file asked for; one with acid only after its cautions were read and its label matches."""
     if not options.sheet:
         return
-    strength = None if options.label_strength is None else _number(options.label_strength, "--label-strength")
+    strength = None if options.label_strength is None else read_number(options.label_strength, "--label-strength")
     bench.acknowledge(made, strength if options.cautions_read else None)
     path = Path(options.sheet)
     bench.write(page.csv() if path.suffix.lower() == ".csv" else page.text, path)
@@ -273,9 +286,9 @@ def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
 
 def paper(options: Options) -> int:
     """``round``, ``handover`` and ``report``: pages of text, or their data as JSON."""
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     if options.command == "report":
-        page = bench.report(view["loop"], _time(bench, options.start), _time(bench, options.end), view["known"])
+        page = bench.report(view["loop"], read_time(bench, options.start), read_time(bench, options.end), view["known"])
     else:
         page = bench.round_sheet(**view) if options.command == "round" else bench.handover(**view)
     from fertui.cli.views import as_json
@@ -288,7 +301,7 @@ def logbook(options: Options) -> int:
     """``logbook``: every entry, struck ones too."""
     from fertui.cli.views.tables import entries_document, entries_text
 
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     entries = bench.history(options.kind, view["loop"] if options.loop else None, view["at"])
     return _show(options, lambda: entries_document(entries), lambda: entries_text(entries, bench.site.timezone))
 
@@ -297,8 +310,8 @@ def given(options: Options) -> int:
     """``given``: what a loop was given on a day, and what its stock tanks held."""
     from fertui.cli.views.given import document, text
 
-    bench, view = _reading(options)
-    day = (_time(bench, options.day) or view["at"]).astimezone(ZoneInfo(bench.site.timezone)).date()
+    bench, view = read_view(options)
+    day = (read_time(bench, options.day) or view["at"]).astimezone(ZoneInfo(bench.site.timezone)).date()
     loop = bench.loop(view["loop"])
     found, held = bench.given(day, loop.name, view["known"]), bench.mixes_on(day, loop.name, view["known"])
     return _show(options, lambda: document(found, held, loop), lambda: text(found, held, loop, bench.site.timezone))
@@ -309,7 +322,7 @@ def supplies(options: Options) -> int:
     from fertui.cli.views import as_json
     from fertui.cli.views.tables import supplies_text
 
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     shelf, tanks = bench.supplies_rows(), bench.stock_rows(view["loop"], view["at"])
     document = {"schema": "fertui.supplies/1", "supplies": as_json.plain(shelf), "stock_tanks": as_json.plain(tanks)}
     return _show(options, lambda: document, lambda: supplies_text(shelf, tanks))
@@ -320,7 +333,7 @@ def site(options: Options) -> int:
     from fertui.cli.views import as_json
     from fertui.cli.views.tables import aims_text, site_text
 
-    bench, view = _reading(options)
+    bench, view = read_view(options)
     rows, loop = bench.site_rows(), bench.loop(view["loop"]).name
     aims = bench.aims(loop)
     document = {"schema": "fertui.site/1", "rows": as_json.plain(rows), "loop": loop, "aims": as_json.plain(aims)}
@@ -347,15 +360,6 @@ COMMANDS: Mapping[str, Callable[[Options], int]] = {
 }  # fmt: skip
 
 
-def _reading(options: Options) -> tuple[Bench, dict[str, Any]]:
-    """The bench, and which loop as of when."""
-    from fertui.workbench.clock import now
-
-    bench = open_site(options.site)
-    view = {"loop": options.loop, "at": _time(bench, options.at) or now(), "known": _time(bench, options.known)}
-    return bench, view
-
-
 def _show(options: Options, document: Callable[[], dict[str, Any]], text: Callable[[], str]) -> int:
     from fertui.cli.views import as_json
 
@@ -363,33 +367,13 @@ def _show(options: Options, document: Callable[[], dict[str, Any]], text: Callab
     return FINE
 
 
-def _unit(bench: Bench, options: Options) -> str:
-    return str(options.unit or bench.site.units)
-
-
-def _time(bench: Bench, written: str | None) -> datetime | None:
-    return None if written is None else bench.time(written)
-
-
-def _fields(words: list[str]) -> dict[str, str]:
-    """``name=value`` words as a mapping; refuses a word without '=' and a name given twice."""
-    fields: dict[str, str] = {}
-    for word in words:
-        name, sign, value = word.partition("=")
-        if not sign or not name:
-            raise Refusal(f"{word!r} is not name=value, such as EC=2.6 or note='filter cleaned'.")
-        if name in fields:
-            raise Refusal(f"{name!r} is given twice; give it once.")
-        fields[name] = value
-    return fields
-
-
 def _correction(options: Options) -> tuple[dict[str, str], str, str]:
-    fields = _fields(options.values)
+    fields = read_fields(options.values)
     why, by = fields.pop("why", ""), fields.pop("by", os.environ.get("FERTUI_OPERATOR", ""))
     return fields, why, by
 
 
+<<<<<<< Updated upstream
 def _names(written: str) -> tuple[str, ...]:
     return tuple(name.strip() for name in written.split(",") if name.strip())
 
@@ -413,6 +397,8 @@ def _number(written: str, what: str) -> float:
         raise Refusal(f"{what}: {no}") from None
 
 
+=======
+>>>>>>> Stashed changes
 def _print_entry(bench: Bench, entry: Any) -> None:
     from fertui.cli.views.tables import entry_text
 

@@ -6,7 +6,7 @@ import json
 from collections.abc import Mapping
 from pathlib import Path
 
-from fertui.cli.main import state_folder
+from fertui.cli.state import state_folder
 
 FILE = "new-sites.json"
 

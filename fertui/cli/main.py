@@ -9,10 +9,9 @@ from collections.abc import Callable, Sequence
 from datetime import datetime
 from pathlib import Path
 
+from fertui.cli.exit_codes import FILE_TROUBLE, FINE, INTERNAL, REFUSED
+from fertui.cli.state import state_folder
 from fertui.refusals import FileTrouble, Refusal
-
-FINE, NO, REFUSED, FILE_TROUBLE, INTERNAL = range(5)
-
 
 OpenTerminal = Callable[[Path, datetime | None], int]
 """Opens the terminal interface of a site folder as of a time; returns its exit code."""
@@ -66,15 +65,7 @@ def _say(sentence: str, code: int) -> int:
     return code
 
 
-def state_folder() -> Path:
-    """Where the command line keeps what belongs to no site; made where it is absent."""
-    folder = Path(os.environ.get("XDG_STATE_HOME") or Path.home() / ".local" / "state") / "fertui"
-    folder.mkdir(parents=True, exist_ok=True)
-    return folder
-
-
 def _log_fault() -> Path:
-    folder = state_folder()
-    path = folder / f"fault-{datetime.now():%Y%m%d-%H%M%S}.log"
+    path = state_folder() / f"fault-{datetime.now():%Y%m%d-%H%M%S}.log"
     path.write_text(traceback.format_exc(), encoding="utf-8")
     return path
