@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import os
 from collections.abc import Mapping
 from typing import NoReturn
 
@@ -23,6 +24,20 @@ exit codes: 0 fine, 1 the answer is no, 2 usage or input refused,
             3 logbook or file trouble, 4 internal fault
 fertui advises and you decide. It is no alarm system and no controller.
 """
+
+
+class Help(argparse.RawDescriptionHelpFormatter):
+    """Help as wide as the terminal. argparse makes one for every argument it is told of, and would load more for it."""
+
+    def __init__(self, prog: str) -> None:
+        super().__init__(prog, width=_columns() - 2)
+
+
+def _columns() -> int:
+    try:
+        return int(os.environ.get("COLUMNS") or os.get_terminal_size().columns)
+    except (ValueError, OSError):
+        return 80
 
 
 class Parser(argparse.ArgumentParser):
@@ -51,7 +66,7 @@ def build() -> Parser:
         prog="fertui",
         usage="fertui SITE\n       fertui COMMAND ...",
         epilog=CLOSING,
-        formatter_class=argparse.RawDescriptionHelpFormatter,
+        formatter_class=Help,
     )
     parser.add_argument("--version", action="store_true", help="print the version")
     commands = parser.add_subparsers(
@@ -95,7 +110,7 @@ def _add(commands: argparse._SubParsersAction, name: str, about: str, example: s
         name,
         description=f"  {example}\n\n{about[0].upper()}{about[1:]}.",
         epilog=more or None,
-        formatter_class=argparse.RawDescriptionHelpFormatter,
+        formatter_class=Help,
     )
     parser.about = about
     return parser
