@@ -26,7 +26,9 @@ class LastValue(NamedTuple):
 
 
 def echo(kind: str, name: str, text: str, site: Site, loop: Loop) -> str:
-    """What was understood of one value, with its canonical unit: ``730 mg/L = 11.8 mmol/L NO3``."""
+    """What was understood of one value with its canonical unit, or of ``at`` on the clock of the site."""
+    if name == "at":
+        return _moment(text, site)
     from fertui.logbook.kinds import kind_named
     from fertui.logbook.readers import field_named, read_value, unknown_name
 
@@ -36,6 +38,15 @@ def echo(kind: str, name: str, text: str, site: Site, loop: Loop) -> str:
         raise unknown_name(chosen, name, ())
     value = read_value(field, name, text, site, loop, datetime.now(UTC))
     return said(value, field.unit)
+
+
+def _moment(text: str, site: Site) -> str:
+    """A time as understood: the day, and the hour where one was given."""
+    from fertui.logbook.times import read_moment, zone
+
+    at, whole_day = read_moment(text, site.timezone, datetime.now(UTC))
+    local = at.astimezone(zone(site.timezone))
+    return f"{local:%a %d %b %Y}" if whole_day else f"{local:%a %d %b %Y %H:%M}"
 
 
 def said(value: Value, unit: str) -> str:

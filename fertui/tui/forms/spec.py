@@ -34,6 +34,11 @@ class Asked(NamedTuple):
         """Whether a number is expected, so that + and * are keys and not text."""
         return not self.choices and not self.words
 
+    @property
+    def is_read(self) -> bool:
+        """Whether what is typed is understood as something, a number or a time, and not kept as words."""
+        return self.is_number or self.name == "at"
+
 
 class Group(NamedTuple):
     """Fields that are walked together; Tab goes from group to group."""
