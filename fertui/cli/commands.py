@@ -219,17 +219,10 @@ def plan(options: Options) -> int:
 
 def _wishes(options: Options) -> dict[str, Any]:
     wishes: dict[str, Any] = {"target": options.target, "without": tuple(options.without)}
-<<<<<<< Updated upstream
-    wishes["supplies"] = None if options.supplies is None else _names(options.supplies)
-    wishes["steps"] = None if options.steps is None else _whole(options.steps, "--steps", 1, 4)
-    wishes["salts"] = None if options.salts is None else _whole(options.salts, "--salts", 1, 20)
-    wishes["ec_step"] = None if options.ec_step is None else _number(options.ec_step, "--ec-step")
-=======
     wishes["supplies"] = None if options.supplies is None else read_names(options.supplies)
     wishes["steps"] = None if options.steps is None else read_whole(options.steps, "--steps", 1, 4)
     wishes["salts"] = None if options.salts is None else read_whole(options.salts, "--salts", 1, 20)
     wishes["ec_step"] = None if options.ec_step is None else read_number(options.ec_step, "--ec-step")
->>>>>>> Stashed changes
     return wishes
 
 
@@ -373,32 +366,6 @@ def _correction(options: Options) -> tuple[dict[str, str], str, str]:
     return fields, why, by
 
 
-<<<<<<< Updated upstream
-def _names(written: str) -> tuple[str, ...]:
-    return tuple(name.strip() for name in written.split(",") if name.strip())
-
-
-def _whole(written: str, what: str, lowest: int = 0, highest: int = 2**31) -> int:
-    try:
-        number = int(written)
-    except ValueError:
-        number = lowest - 1
-    if not lowest <= number <= highest:
-        raise Refusal(f"{what} {written!r} is not a whole number from {lowest} to {highest}.")
-    return number
-
-
-def _number(written: str, what: str) -> float:
-    from fertui.quantities import QuantityError, parse_number
-
-    try:
-        return parse_number(written).value
-    except QuantityError as no:
-        raise Refusal(f"{what}: {no}") from None
-
-
-=======
->>>>>>> Stashed changes
 def _print_entry(bench: Bench, entry: Any) -> None:
     from fertui.cli.views.tables import entry_text
 
