@@ -15,6 +15,7 @@ from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
 from fertui.estimate.record import HISTORY_DAYS, WHOLE_DAYS, Record, start_among
 from fertui.estimate.setting import Setting
+from fertui.estimate.unanalysed import filled_up, unseen
 from fertui.loop import ROOT, STORE, start
 
 LEAST_IONS = 3
@@ -81,12 +82,13 @@ def first_members(record: Record, setting: Setting, begin: Beginning, members: i
 
 def _vessel(record: Record, setting: Setting, begin: Beginning, drawn: Array, where: int) -> Array:
     """Concentrations (M, 10) of one vessel at the start."""
-    middle = _unseen(record, setting, begin.time)
+    middle = _unseen(record, setting, begin.time, len(drawn))
+    middle += unseen(setting.loop.name, where, len(drawn))
     noise = UNSEEN_SD * drawn[:, : len(IONS)]
     seen = begin.analysis
     if seen is not None:
         columns = seen.columns()
-        middle[columns] = [seen.ions[IONS[column]] for column in columns]
+        middle[:, columns] = [seen.ions[IONS[column]] for column in columns]
         noise[:, columns] = drawn[:, : len(columns)] @ np.linalg.cholesky(seen.covariance()).T
         if compartment(setting, seen.point) != where:
             noise = noise + UNSEEN_SD * (drawn[:, len(IONS) : 2 * len(IONS)] + drawn[:, -1, None])
@@ -94,7 +96,8 @@ def _vessel(record: Record, setting: Setting, begin: Beginning, drawn: Array, wh
     if seen is None:
         feed = array(target_feed(record.site, record.loop).ions)
         vessel += np.maximum(NOT_ANALYSED * drawn[:, -1, None] - 0.1, 0.0) * feed
-    vessel[:, INDEX["HCO3"]] = _alkalinity(record, setting, begin)
+    of_water = seen is None and setting.circuit.layout == "shared-tank"
+    vessel[:, INDEX["HCO3"]] = middle[:, INDEX["HCO3"]] if of_water else _alkalinity(record, setting, begin)
     return vessel
 
 
@@ -102,15 +105,17 @@ def _alkalinity(record: Record, setting: Setting, begin: Beginning) -> float:
     """Alkalinity [meq/L] at the start: as measured, that of the source water in a tank, else the usual."""
     if begin.analysis is not None:
         return begin.analysis.ions.get("HCO3", ALKALINITY_MEQ_L)
-    if setting.circuit.layout == "shared-tank":
-        return float(_unseen(record, setting, begin.time)[INDEX["HCO3"]])
-    return ALKALINITY_MEQ_L
+    water = record.make_up_as_said(begin.time)[INDEX["HCO3"]]
+    known = setting.circuit.layout == "shared-tank" and not np.isnan(water)
+    return float(water) if known else ALKALINITY_MEQ_L
 
 
-def _unseen(record: Record, setting: Setting, time: float) -> Array:
-    """What a vessel holds (10,) before anyone analysed it: its feed; a shared tank its source water."""
+def _unseen(record: Record, setting: Setting, time: float, members: int) -> Array:
+    """What a vessel holds (M, 10) before anyone analysed it: its feed; a shared tank its source water."""
     if setting.circuit.layout == "shared-tank":
-        return record.make_up_at(time).copy()
-    if setting.circuit.layout == "known-feed" and record.feed:
-        return record.feed[0][1].copy()
-    return stock_proportions(record, time).copy()
+        held = filled_up(record.make_up_as_said(time), setting.loop.name, members)
+    elif setting.circuit.layout == "known-feed" and record.feed:
+        held = record.feed[0][1]
+    else:
+        held = stock_proportions(record, time)
+    return np.array(np.broadcast_to(held, (members, len(IONS))))

@@ -34,6 +34,8 @@ LEAST_EC, EC_STEP = 0.01, 0.05
 PH_ERROR, PH_DRIFT = 0.1, 0.1
 """pH is known to 0.1 where measured; its range widens by 0.1 times the square root of the days since (our own)."""
 PH_DAYS = 28.0
+MOST_CO2, PK1 = 2.5, 6.35
+"""Dissolved CO2 that a loop may hold [mmol/L]: a well water acidified in a closed line; pK1 at 25 C (CRC Handbook)."""
 SAME_WATER = {"root_zone": ("root_zone", "drain"), "drain": ("drain", "root_zone"), "feed": ("feed", "tank")}
 
 
@@ -143,6 +145,8 @@ class Panel:
     def state(self, time: int, ph: Estimated | None) -> PointState:
         """The point at one of the times."""
         ions = {ion: self._ion(ion, time) for ion in IONS}
+        if ph is not None:
+            ions["HCO3"] = IonState(_as_ph_allows(ions["HCO3"].mmol_l, ph))
         return PointState(self._estimated(self.course.ec[:, time], "EC"), ph, ions)
 
     def _ion(self, ion: str, time: int) -> IonState:
@@ -154,6 +158,18 @@ class Panel:
     def _estimated(self, triple: Array, what: str) -> Estimated:
         middle, low, high = (float(value) for value in triple)
         return Estimated(middle, low, high, self.bands.get(what))
+
+
+def _as_ph_allows(alkalinity: Estimated, ph: Estimated) -> Estimated:
+    """An alkalinity [meq/L] no higher than its pH allows: HCO3 = CO2 x 10^(pH - pK1) with the most CO2 that stays.
+
+    A solution of pH 5.9 to 6.0 holds at most about 1 meq/L: with more, it would have to fizz.
+    """
+    value, low, high = (
+        min(found, MOST_CO2 * 10.0 ** (at - PK1))
+        for found, at in ((alkalinity.value, ph.value), (alkalinity.low, ph.value), (alkalinity.high, ph.high))
+    )
+    return Estimated(value, low, max(high, value), alkalinity.band)
 
 
 class Acidity:

@@ -12,6 +12,7 @@ from fertui.chemistry.ions import INDEX, Array
 from fertui.estimate import compositions
 from fertui.estimate.record import Record
 from fertui.estimate.setting import Setting
+from fertui.estimate.unanalysed import filled_up
 from fertui.estimate.waters import ASSUMED, DRAINED, LOGGED, MOST_TAKEN, Waters, waters
 from fertui.loop import Drive, Hold, hold_ec
 from fertui.site.model import StockTank
@@ -28,6 +29,7 @@ class Drives(NamedTuple):
     grid: Array
     water: Waters
     make_up: tuple[Array, ...]
+    """What fills up (10,) in every stretch; nan where nobody analysed it: each member then has its own guess."""
     stock_mmol_d: Array
     feeds: Array
     holds: tuple[tuple[Hold, ...], ...]
@@ -41,7 +43,7 @@ class Drives(NamedTuple):
         return Drive(
             irrigation_l_d=float(water.irrigation[span]),
             crop_l_d=crop_water(water, span, log_drain),
-            make_up=self.make_up[span],
+            make_up=filled_up(self.make_up[span], self.setting.loop.name, len(log_drain)),
             make_up_l_d=None if np.isnan(make_up) else float(make_up),
             condensate_l_d=float(water.condensate[span]),
             stock_mmol_d=self.stock_mmol_d[span] * np.exp(log_stock)
@@ -72,7 +74,7 @@ def drives(record: Record, setting: Setting, grid: Array) -> Drives:
     """The drives of a record over the stretches of a grid [d]."""
     days = np.maximum(np.diff(grid), 1e-9)
     starts = grid[:-1]
-    make_up = tuple(record.make_up_at(time) for time in starts)
+    make_up = tuple(record.make_up_as_said(time) for time in starts)
     holding = Holding(record, setting)
     covered = record.stock.covered(grid) >= LOGGED
     holds = tuple(() if logged else holding.holds(time) for logged, time in zip(covered, starts, strict=True))

@@ -14,7 +14,7 @@ import numpy as np
 
 from fertui.chemistry.ions import Array
 from fertui.estimate.assimilation import Estimate, copies, thin
-from fertui.estimate.display import Acidity, Course, Panel, allowed, courses, log_ec, solutions, stacked
+from fertui.estimate.display import Acidity, Course, Panel, allowed, courses, log_ec, same_solution, solutions, stacked
 from fertui.estimate.ensemble import Ensemble
 from fertui.estimate.passage import Days, LeavesBand, banded, leaves_band, out_since, passages, quantities
 from fertui.estimate.points import Band, PointState
@@ -117,7 +117,8 @@ def forecast(estimate: Estimate, days: int, scenario: Scenario = ROUTINE) -> For
     leaving: list[LeavesBand] = []
     for point, course in courses(ran.ions, ran.log_ec, estimate.spread).items():
         bands = allowed(estimate.site, estimate.loop, point)
-        panel, acidity = Panel(course, bands), Acidity(estimate.record.observations, point)
+        acidity = Acidity(estimate.record.observations, same_solution(estimate.setting, point))
+        panel = Panel(course, bands)
         for day in range(1, days + 1):
             coming[day - 1][point] = panel.state(day, acidity.at(estimate.record.end + day, bands.get("pH")))
         leaving += _leaving(estimate, point, course, bands)

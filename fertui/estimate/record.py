@@ -79,13 +79,21 @@ class Record(NamedTuple):
         return (moment - self.zero).total_seconds() / 86400.0
 
     def water_at(self, name: str, time: float) -> Array:
-        """What a source water holds (10,) [mmol/L] at a time; nothing where the site does not know it."""
+        """What a source water holds (10,) [mmol/L] at a time; nothing where nobody analysed it."""
+        return np.nan_to_num(self.as_said(name, time))
+
+    def as_said(self, name: str, time: float) -> Array:
+        """The same with nan for every ion where nobody has analysed the water by then."""
         known = self.waters.get(name.lower())
-        return np.zeros(len(IONS)) if known is None else np.asarray(known.at(time))
+        return np.full(len(IONS), np.nan) if known is None else np.asarray(known.at(time))
+
+    def make_up_as_said(self, time: float) -> Array:
+        """What the water that tops up the loop at a time holds (10,) [mmol/L]; nan where nobody analysed it."""
+        return self.as_said(str(self.sources.at(time) or self.loop.water), time)
 
     def make_up_at(self, time: float) -> Array:
-        """What the water that tops up the loop at a time holds (10,) [mmol/L]."""
-        return self.water_at(str(self.sources.at(time) or self.loop.water), time)
+        """The same, nothing in a water that nobody analysed."""
+        return np.nan_to_num(self.make_up_as_said(time))
 
     def moment(self, days: float) -> datetime:
         """The moment so many days after ``zero``, in UTC."""
@@ -153,6 +161,11 @@ def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, whole: 
 def _known(entry: Entry, at: datetime) -> bool:
     """Whether an entry counts at a time: it has happened, or it is a plan for later that was already entered."""
     return entry.at <= at or (entry.kind == "plan" and entry.entered <= at)
+
+
+def _content(ions: Mapping[str, float]) -> Array:
+    """What a water holds (10,) [mmol/L]; nan where nobody has said a word of it."""
+    return compositions.array(ions) if ions else np.full(len(IONS), np.nan)
 
 
 class _Reader:
@@ -335,7 +348,7 @@ class _Reader:
             later = analyses.get(water.name.lower(), ())
             held = [water.composition, *(composition for _, composition in later)]
             times = (-np.inf, *(self.days(when) for when, _ in later))
-            found[water.name.lower()] = Steps(times, tuple(compositions.array(each.ions) for each in held))
+            found[water.name.lower()] = Steps(times, tuple(_content(each.ions) for each in held))
         return found
 
     def _steps(self, kind: str) -> Steps:

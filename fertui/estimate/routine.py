@@ -15,6 +15,8 @@ from fertui.estimate.assimilation import Estimate
 from fertui.estimate.drives import Holding, beyond, carried, leaning
 from fertui.estimate.noise import normals
 from fertui.estimate.scenario import Scenario
+from fertui.estimate.standing import begun_from
+from fertui.estimate.unanalysed import filled_up
 from fertui.estimate.walk import grid_of
 from fertui.estimate.waters import DRAINED, lately
 from fertui.logbook.entries import Entry
@@ -73,7 +75,7 @@ class _Builder:
         self.record, self.setting, self.loop = estimate.record, estimate.setting, estimate.loop
         self.now, self.end = self.record.end, self.record.end + days
         self.plans = [_Planned(entry, self.record.time(entry.at), self._until(entry)) for entry in self.record.plans]
-        self.assumed: list[str] = []
+        self.assumed: list[str] = list(begun_from(estimate))
         self.holding = Holding(self.record, self.setting)
         self.past = lately(self.record, self.setting)
         self.draw = normals(estimate.seed, self.loop.name, f"ahead {estimate.at.date()}", estimate.members, 12)
@@ -108,9 +110,12 @@ class _Builder:
 
     def _drive(self, begin: float, end: float) -> Drive:
         crop, irrigation = self._water(begin)
-        water = self._source(begin)
+        said = self._source(begin)
+        if np.isnan(said).any() and self.loop.layout != "known-feed":
+            self._assume("the make-up water was never analysed: what it holds is guessed, differently by each member")
+        water = filled_up(said, self.loop.name, 1 if self.settled else self.estimate.members)
         feed_from, feed_to = self._known_feed(begin), self._known_feed(end)
-        holds, stock = self._stock(begin, water)
+        holds, stock = self._stock(begin, np.nan_to_num(said))
         return Drive(
             irrigation_l_d=irrigation, crop_l_d=crop, make_up=water, make_up_l_d=None, stock_mmol_d=stock, holds=holds,
             ec=self.holding.ec, feed_from=feed_from, feed_to=feed_to, bleed_l_d=self._bleed(),
@@ -167,7 +172,7 @@ class _Builder:
         planned = [each.entry.text_of("source") for each in self.plans if each.begin <= time < each.end]
         named = self.scenario.source or next((name for name in reversed(planned) if name), "")
         logged = str(self.record.sources.at(self.now) or self.loop.water)
-        return self.record.water_at(named or logged, self.now)
+        return self.record.as_said(named or logged, self.now)
 
     def _recipe(self, time: float) -> tuple[Mapping[str, float | Array] | None, bool]:
         """The recipe a what-if or a plan sets at a time, if any, and whether it was a what-if."""

@@ -115,11 +115,13 @@ class Estimate:
     @property
     def assumed(self) -> tuple[str, ...]:
         """What the record did not say and what was taken instead."""
-        words = (*self.record.assumed, *self.setting.assumed, *self.drives.assumed)
-        if self.begin.analysis is not None:
-            return words
-        start = "its source water" if self.loop.layout == "shared-tank" else "its feed"
-        return (*words, f"no analysis to begin with: the loop begins as {start}")
+        return (*self.record.assumed, *self.setting.assumed, *self.drives.assumed, *begun_from(self))
+
+    @property
+    def unanalysed_water(self) -> str | None:
+        """Name of the water that tops up the loop, where nobody has said what it holds; None where it is known."""
+        unknown = self.loop.layout != "known-feed" and np.isnan(self.record.make_up_as_said(self.record.end)).any()
+        return str(self.record.sources.at(self.record.end) or self.loop.water or "make-up") if unknown else None
 
     @property
     def last_analysis(self) -> Mapping[str, datetime]:
@@ -164,7 +166,8 @@ class Estimate:
         for point in self.path:
             bands, end = allowed(self.site, self.loop, point), self.times[-1]
             state = self.course(point, 1)[0].state
-            micronutrients = micronutrients_at(self.record.observations, point, end, bands)
+            where = same_solution(self.setting, point)
+            micronutrients = micronutrients_at(self.record.observations, where, end, bands)
             found[point] = state._replace(
                 ions={**state.ions, **{name: IonState(each) for name, each in micronutrients.items()}}
             )
@@ -173,8 +176,8 @@ class Estimate:
     def course(self, point: str, last: int | None = None) -> tuple[PointAt, ...]:
         """One point once a local day, the ``last`` so many (all: None), and now; without micronutrients."""
         which = slice(0 if last is None else max(len(self.times) - last, 0), None)
-        bands, acidity = allowed(self.site, self.loop, point), Acidity(self.record.observations, point)
-        panel = Panel(self._quantiles(same_solution(self.setting, point), which), bands)
+        where, bands = same_solution(self.setting, point), allowed(self.site, self.loop, point)
+        acidity, panel = Acidity(self.record.observations, where), Panel(self._quantiles(where, which), bands)
         return tuple(
             PointAt(self.record.moment(time), panel.state(place, acidity.at(time, bands.get("pH"))))
             for place, time in enumerate(self.times[which])
@@ -207,3 +210,11 @@ def thin(estimate: Estimate, members: int) -> Estimate:
 def copies(estimate: Estimate, members: int) -> Estimate:
     """The middle of the ensemble so many times: what a planner perturbs."""
     return replace(estimate, ensemble=estimate.ensemble.middle(estimate.setting).chosen(np.zeros(members, dtype=int)))
+
+
+def begun_from(estimate: Estimate) -> tuple[str, ...]:
+    """What was taken for the start where no analysis stands behind it."""
+    if estimate.begin.analysis is not None:
+        return ()
+    start = "its source water" if estimate.loop.layout == "shared-tank" else "its feed"
+    return (f"no analysis to begin with: the loop begins as {start}",)

@@ -66,6 +66,7 @@ class Standing:
     held_back: tuple[HeldBack, ...] = ()
     spread: Spread = field(default_factory=Spread)
     trail: tuple[PointAt, ...] = ()
+    unanalysed_water: str | None = None
 
     @property
     def setting(self) -> Setting:

@@ -369,7 +369,7 @@ def test_a_sample_is_due_every_week_on_coir_and_every_two_weeks_on_stone_wool() 
     assert only("sample_now", Standing(loop=SLABS._replace(medium="stone-wool"), last_analysis=nine)) == []
 
 
-@pytest.mark.parametrize(("count", "severity"), [(0, "watch"), (1, "note"), (2, "note"), (3, None)])
+@pytest.mark.parametrize(("count", "severity"), [(0, "act"), (1, "note"), (2, "note"), (3, None)])
 def test_fewer_than_three_analyses_are_said(count: int, severity: str | None) -> None:
     found = only("few_analyses", Standing(analyses=count))
     assert [each.severity for each in found] == ([] if severity is None else [severity])

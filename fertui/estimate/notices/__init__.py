@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 __all__ = ["RULES", "Notice", "StockLeft", "notices", "stock_days_left", "stock_left"]
 
 RULES: tuple[Rule, ...] = (
+    samples.none,
     roots.acidity,
     feeding.off_set_point,
     feeding.unequal_draw,
@@ -35,6 +36,7 @@ RULES: tuple[Rule, ...] = (
     roots.root_temperature,
     roots.blossom_end_rot,
     roots.new_medium,
+    samples.water,
     samples.few,
     samples.age,
     samples.volatile,

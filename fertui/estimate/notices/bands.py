@@ -58,7 +58,12 @@ class Standing(NamedTuple):
 
 
 def shares(look: Look) -> Iterator[Notice]:
-    """K, Ca and Mg shares of the point the loop is managed by: the headline, EC told beside it."""
+    """K, Ca and Mg shares of the point the loop is managed by: the headline, EC told beside it.
+
+    Nothing before the first analysis: what stands there then is other growers' loops, and no alarm.
+    """
+    if not look.estimate.analyses:
+        return
     state = look.points[look.estimate.managed]
     for ion in SHARED:
         known = state.ions[ion].share_pct
@@ -72,11 +77,16 @@ def shares(look: Look) -> Iterator[Notice]:
 
 
 def limits(look: Look) -> Iterator[Notice]:
-    """Everything else that has a band or limit: Na and NH4 in their own words, then Cl, micronutrients, EC and pH."""
+    """Everything else that has a band or limit: Na and NH4 in their own words, then Cl, micronutrients, EC and pH.
+
+    Before the first analysis only pH, which is measured.
+    """
     for point, state in look.points.items():
         if point != look.estimate.managed and _same_water(look, point):
             continue
         for what, unit, known in _numbers(state):
+            if what != "pH" and not look.estimate.analyses:
+                continue
             stand = _standing(look, point, what, unit, known)
             if stand is not None and stand.severity and _is_meant(look, point, what):
                 yield _limit(look, stand)

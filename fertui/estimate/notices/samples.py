@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from datetime import datetime, timedelta
 
 from fertui.estimate.notices.look import Look
-from fertui.estimate.notices.notice import NOTE, WATCH, Notice
+from fertui.estimate.notices.notice import ACT, NOTE, WATCH, Notice
 from fertui.estimate.sampling import due_in, narrows_now
 
 FEW = 3
@@ -19,14 +19,34 @@ WORTH_PCT = 10.0
 """A range narrowed by less is not worth the words."""
 
 
+def none(look: Look) -> Iterator[Notice]:
+    """No analysis at all: everything else that could be said of the ions would be a guess."""
+    if look.estimate.analyses > 0:
+        return
+    sent = awaited(look, last_analysis(look))
+    known = "No analysis yet" if last_analysis(look) is None else "No analysis to begin from"
+    text = f"{known}: what the solution holds is not known, ranges are those of other growers' loops."
+    if sent is not None:
+        yield Notice("few_analyses", WATCH, f"{text} A sample went out on {look.day(sent)}.", "a")
+    else:
+        yield Notice("few_analyses", ACT, f"Take a sample. {text}", "a")
+
+
+def water(look: Look) -> Iterator[Notice]:
+    """The water that fills up was never analysed: its ions gather unseen, and no acid can be reckoned."""
+    name = look.estimate.unanalysed_water
+    if name is not None:
+        text = (
+            f"The water {name!r} was never analysed: Na, Cl, Ca, Mg, SO4 and alkalinity of it are not known. "
+            "No forecast of Na or Cl is sure before, and no acid is reckoned. Send a sample of it."
+        )
+        yield Notice("water_unknown", WATCH, text, "a")
+
+
 def few(look: Look) -> Iterator[Notice]:
     """Fewer than three analyses: the ranges come from other growers' crops."""
     count = look.estimate.analyses
-    if count == 0:
-        known = "No analysis yet" if last_analysis(look) is None else "No analysis to begin from"
-        text = f"{known}: what is shown starts from feed or water and other growers' crops. Send a sample."
-        yield Notice("few_analyses", WATCH, text, "a")
-    elif count < FEW:
+    if 0 < count < FEW:
         word = "analysis" if count == 1 else "analyses"
         text = f"Only {count} {word} so far: ranges are not this loop's own before {FEW}."
         yield Notice("few_analyses", NOTE, text, "a")
