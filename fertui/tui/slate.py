@@ -11,7 +11,13 @@ import re
 from fertui.tui.ink import cells
 from fertui.tui.pen import PLAIN, Style, change, styled
 
-_TOKEN = re.compile(r"\x1b\[([\d;]*)m|\x1b\[(\d*);?(\d*)H|(\x1b\[[\d;?<>=$ ]*[@-GI-ln-~]|\x1b[^\[]|[\n\r])")
+_STRING = r"\x1b[\]P_^X][^\x07\x1b]*(?:\x07|\x1b\\)"
+_TOKEN = re.compile(
+    r"\x1b\[([\d;]*)m|\x1b\[(\d*);?(\d*)H|"
+    rf"({_STRING}|\x1b\[[\d;?<>=$ ]*[@-GI-ln-~]|\x1b[^\[]|[\x00-\x1a\x1c-\x1f\x7f])"
+)
+_NOT_SENT = re.compile(r"\x07|\x1b\]22;.*")
+"""A bell and the shape of the pointer: the toolkit's own, which nobody asked for."""
 _CLEARS = ("\x1b[?1049h", "\x1b[?1049l", "\x1b[2J", "\x1b[J")
 WORTH_A_JUMP = 5
 """Unchanged cells that are sent again rather than jumped over: a jump costs about as many bytes."""
@@ -89,7 +95,7 @@ class Slate:
             self._x = 0
         elif other == "\n":
             self._y += 1
-        else:
+        elif not _NOT_SENT.fullmatch(other):
             out.append(other)
             if other in _CLEARS:
                 self.forget()

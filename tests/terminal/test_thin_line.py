@@ -2,8 +2,13 @@
 
 from __future__ import annotations
 
+import re
+from base64 import b64decode
+
 import pytest
 from pseudo_terminal import PseudoTerminal
+
+from fertui.tui.slate import Slate
 
 START, REPAINT, CURSOR = 14_000, 4_000, 300
 
@@ -52,3 +57,35 @@ def test_typing_in_a_form_stays_within_its_bytes(shared_terminal: PseudoTerminal
     terminal.press("r")
     assert max(terminal.press(key) for key in ("2", ",", "6", "backspace", "6")) <= CURSOR
     assert terminal.press("enter") <= CURSOR
+
+
+@pytest.mark.parametrize(
+    "string",
+    ["\x1b]52;c;" + "bGFiZWw6" * 40 + "\x07", "\x1bP1;2|6f6e65\x1b\\", "\x1b_picture\x1b\\", "\x1b]0;a title\x1b\\"],
+)
+def test_a_string_for_the_terminal_itself_passes_whole_and_takes_no_column(string: str) -> None:
+    """Operating system, device control and application program strings as ECMA-48 (1991), 5.6 and 8.3, frames them."""
+    slate = Slate(20, 2)
+    slate.thin("\x1b[1;1Hab")
+    assert slate.thin(string) == string
+    assert slate.thin(f"c{string}d") == f"c{string}d"
+    assert slate.thin("\x1b[1;1Habcd") == ""
+
+
+@pytest.mark.parametrize("unasked", ["\x07", "\x1b]22;default\x07"])
+def test_no_bell_and_no_pointer_shape_is_sent(unasked: str) -> None:
+    slate = Slate(20, 2)
+    assert slate.thin(f"\x1b[1;1Ha{unasked}b") == "\x1b[1;1Hab"
+
+
+def test_copying_hands_the_text_to_the_terminal_and_leaves_the_screen_alone(shared_terminal: PseudoTerminal) -> None:
+    terminal = shared_terminal
+    terminal.press("8", "enter")
+    before, sent = terminal.text, len(terminal.sent)
+    terminal.press("y")
+    [copied] = re.findall(rb"\x1b\]52;c;([^\x07]*)\x07", terminal.sent[sent:])
+    text = b64decode(copied, validate=True).decode()
+    assert all(word in before.split() for word in text.splitlines()[0].split())
+    assert terminal.text.splitlines()[:23] == before.splitlines()[:23]
+    assert b"\x1b]22" not in terminal.sent
+    terminal.press("esc")
