@@ -113,6 +113,16 @@ def _key(name: str) -> str:
     return "".join(name.lower().split())
 
 
+def with_strength(name: str, strength_pct: float) -> str:
+    """A product on the shelf with its strength [mass %], said once however it is called.
+
+    >>> [with_strength(name, 38.0) for name in ("nitric acid", "nitric acid 38", "nitric acid 38 %")]
+    ['nitric acid 38 %', 'nitric acid 38 %', 'nitric acid 38 %']
+    """
+    strength = f"{strength_pct:g}"
+    return f"{name.removesuffix('%').rstrip().removesuffix(f' {strength}')} {strength} %"
+
+
 def _acid(entry: Mapping[str, Any], sources: Mapping[str, Provenance]) -> Acid:
     densities = tuple((float(strength), float(density)) for strength, density in entry["density"].items())
     remembered = entry.get("remembered", {"strengths": [], "source": entry["density_source"]})

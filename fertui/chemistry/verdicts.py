@@ -31,6 +31,15 @@ class Check(NamedTuple):
     remark: str
     source: str
 
+    @property
+    def found(self) -> str:
+        """Value and limit, with the digits that tell them apart.
+
+        >>> Check("EC", 1.0566, "0.9 to 1.1", "", True, "", "").found
+        '1.06, allowed 0.9 to 1.1'
+        """
+        return f"{f'{self.value:.2f} {self.unit}'.rstrip()}, allowed {self.limit}"
+
 
 class Guess(NamedTuple):
     """A way of reading the analysis that would close its charges; offered, never applied."""
@@ -95,7 +104,7 @@ def _standard_methods(ions: Array) -> Check:
 def _rivm(ions: Array) -> Check:
     imbalance = float(imbalance_pct(ions))
     return Check(
-        what="charge balance, doubtful",
+        what="charge balance, usable",
         value=imbalance,
         limit=f"-{DOUBT_PCT:g} to {DOUBT_PCT:g}",
         unit="%",
@@ -112,7 +121,7 @@ def _ec_row(ions: Array, ec_measured: float, ph: float, temperature_c: float) ->
         what="EC calculated / EC measured",
         value=ratio,
         limit=f"{low:g} to {high:g}",
-        unit="-",
+        unit="",
         passed=low <= ratio <= high,
         remark=f"the ions make {calculated:.2f} mS/cm, {ec_measured:.2f} was measured",
         source=f"{RIVM}; {STANDARD_METHODS}",

@@ -6,6 +6,7 @@ from collections.abc import Iterable
 from itertools import groupby
 from typing import TYPE_CHECKING
 
+from fertui.catalogue.acids import with_strength
 from fertui.paper.acid_page import litres
 from fertui.paper.cautions import read_first
 from fertui.paper.page import SIGN, Page, amount, clock, columns, folded, heading, listed, page, section
@@ -79,9 +80,9 @@ def _weighings(steps: Iterable[Step], timezone: str) -> list[str]:
 def _acid(splits: Iterable[AcidStep], timezone: str) -> list[str]:
     lines = []
     for split in splits:
-        what = f"{litres(split.litres)} {split.acid} {split.strength_pct:g} % ({split.density_kg_per_l:.3f} kg/L)"
+        acid = f"{with_strength(split.acid, split.strength_pct)} ({split.density_kg_per_l:.3f} kg/L)"
         go_on = f"wait {split.wait_min:.0f} min, retest; go on only above pH {split.retest_ph:.1f}"
-        pour = f"{clock(split.at, timezone)}: {what} into {_into(split.target)}"
+        pour = f"{clock(split.at, timezone)}: {litres(split.litres)} {acid} into {_into(split.target)}"
         stop = f"stop everything at pH {split.stop_ph:.1f}"
         lines += [*folded(f"{pour}; {go_on}; {stop}", "[ ] "), "    pH before ______   pH after ______", f"    {SIGN}"]
     return section("ACID, acid into water, second person knows: ____________", lines)
@@ -107,8 +108,7 @@ def _renewal(renewal: Renewal) -> list[str]:
     refill = ", ".join(f"{ion} {amount(value)}" for ion, value in renewal.refill.items() if value)
     lines = folded(f"let go {renewal.litres:.0f} L and refill with {refill} mmol/L", "[ ] ") if refill else []
     lost = f"with it leave {renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P"
-    year = f"the year comes to {renewal.year_kg_n:.1f} kg N"
-    body = [*lines, *folded(f"{lost}; {year}"), f"    {SIGN}", *listed((each.text for each in renewal.options), "  - ")]
+    body = [*lines, *folded(lost), f"    {SIGN}", *listed((each.text for each in renewal.options), "  - ")]
     return section(f"RENEWAL of {renewal.litres:.0f} L", body)
 
 

@@ -139,9 +139,11 @@ def _option(
     year = year_so_far_kg_n + kg_n
     per_ha = 1e4 / situation.loop.area_m2
     budget = situation.site.budget_n_kg_per_ha
-    words = f"{text}; {kg_n:.2f} kg N, {kg_p:.2f} kg P; the year comes to {year * per_ha:.0f} kg N/ha"
-    if budget is not None:
-        words += f" of {budget:g}"
+    words = text
+    if litres:
+        so_far = f"{year * per_ha:.{0 if year * per_ha >= 10 else 1}f} kg N/ha"
+        words += f"; {kg_n:.2f} kg N, {kg_p:.2f} kg P; the year comes to {so_far}"
+        words += "" if budget is None else f" of {budget:g}"
     return RenewalOption(name, litres, kg_n, kg_p, year, year * per_ha, budget, reaches, words)
 
 

@@ -26,7 +26,7 @@ def test_balanced_analysis_passes_every_row() -> None:
 
 
 def test_without_ec_the_row_is_left_out() -> None:
-    assert [row.what for row in verdicts(HOAGLAND)] == ["charge balance", "charge balance, doubtful"]
+    assert [row.what for row in verdicts(HOAGLAND)] == ["charge balance", "charge balance, usable"]
 
 
 def test_ec_far_from_the_ions_holds_the_analysis_back() -> None:

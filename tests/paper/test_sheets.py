@@ -9,6 +9,7 @@ from collections.abc import Callable, Mapping
 
 import pytest
 
+from fertui.cli.views.plan import text as plan_text
 from fertui.paper.acid_page import acid_page
 from fertui.paper.cautions import read_first
 from fertui.paper.dose_sheet import dose_sheet
@@ -101,6 +102,20 @@ def test_cautions_stand_before_anything_is_weighed_and_the_data_sheet_before_all
     assert text[start:].splitlines()[1].startswith("!! Read the safety data sheet")
 
 
+@pytest.mark.parametrize("named", ["nitric", "nitric 60", "nitric 60 %"])
+def test_the_strength_of_an_acid_is_said_once_however_the_shelf_calls_it(named: str) -> None:
+    plan = hand_plan(acid=(acid_step()._replace(acid=named),))
+    for text in (dose_sheet(plan, SITE.name, ZONE).text, plan_text(plan, ZONE, "mmol/L")):
+        assert "nitric 60 % (1.367 kg/L)" in text
+        assert text.count("60 %") == 1
+
+
+def test_what_a_renewal_costs_is_told_in_one_measure() -> None:
+    plan = hand_plan(renewal=renewal())
+    for text in (dose_sheet(plan, SITE.name, ZONE).text, plan_text(plan, ZONE, "mmol/L")):
+        assert "the year comes to 4.2 kg N" not in " ".join(text.split())
+
+
 def test_cautions_come_worst_first_and_the_same_words_only_once() -> None:
     lines = read_first(stocks().cautions)
     signs = [line[:2] for line in lines[1:] if line[:2].strip()]
@@ -118,7 +133,7 @@ def test_a_renewal_says_what_leaves_with_it() -> None:
     # Field practice: 25 % of 10 m3 at 12 mmol/L N loses 0.42 kg N (computed there).
     text = " ".join(dose_sheet(hand_plan(renewal=renewal()), SITE.name, ZONE).text.split())
     assert "let go 2500 L and refill with K 5.0, Ca 3.0 mmol/L" in text
-    assert "0.42 kg N and 0.05 kg P; the year comes to 4.2 kg N" in text
+    assert "with it leave 0.42 kg N and 0.05 kg P" in text
 
 
 # Stock tanks ---------------------------------------------------------------------------------------------------------

@@ -60,10 +60,7 @@ def _water(view: AnalysisView, timezone: str, unit: str) -> list[str]:
 
 
 def _check(check: Any) -> str:
-    unit = f" {check.unit}" if check.unit.strip("-") else ""
-    limit = f", allowed {check.limit}{unit}" if check.limit else ""
-    remark = f": {check.remark}" if check.remark else ""
-    return f"{words.number(check.value)}{unit}{limit}{remark} ({check.source})"
+    return f"{check.found}: {check.remark} ({check.source})"
 
 
 def _rows(rows: Sequence[AnalysisRow], managed: str, unit: str) -> list[tuple[str, ...]]:

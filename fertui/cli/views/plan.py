@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
+from fertui.catalogue.acids import with_strength
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
 from fertui.paper.cautions import read_first
@@ -74,9 +75,9 @@ def _acid(plan: Plan, timezone: str) -> list[str]:
     lines = []
     for each in plan.acid:
         into = f"into {each.target.removeprefix('tank:')}"
-        strength = f"{each.strength_pct:g} % ({each.density_kg_per_l:.3f} kg/L)"
+        acid = f"{with_strength(each.acid, each.strength_pct)} ({each.density_kg_per_l:.3f} kg/L)"
         lines += folded(
-            f"{words.local(each.at, timezone)}: {each.litres:.3f} L {each.acid} {strength} {into}; wait "
+            f"{words.local(each.at, timezone)}: {each.litres:.3f} L {acid} {into}; wait "
             f"{each.wait_min:.0f} min, retest, go on only above pH {each.retest_ph:.1f}; stop at pH {each.stop_ph:.1f}",
             "  ",
         )
@@ -87,8 +88,7 @@ def _renewal(plan: Plan) -> list[str]:
     if plan.renewal is None:
         return []
     renewal = plan.renewal
-    lost = f"{renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P leave with it"
-    head = f"Renew {renewal.litres:.0f} L: {lost}; the year comes to {renewal.year_kg_n:.1f} kg N"
+    head = f"Renew {renewal.litres:.0f} L: {renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P leave with it"
     return ["", *folded(head, ""), *(line for each in renewal.options for line in folded(each.text, "  "))]
 
 

@@ -25,7 +25,7 @@ def holds_together(entry: Entry) -> Iterator[Question]:
     for check in verdicts(ions, entry.number_of("EC"), entry.number_of("pH")):
         if not check.passed:
             code = "ec_check" if check.what.startswith("EC") else "charge_balance"
-            text = f"{check.what} {check.value:.3g} {check.unit}, allowed {check.limit}: {check.remark}.{explained}"
+            text = f"{check.what} {check.found}: {check.remark}.{explained}"
             yield Question(code, text, next(iter(perhaps[0].instead), "") if perhaps else "", "", suggestion)
 
 

@@ -131,10 +131,7 @@ def _checks(report: Report, width: int) -> list[Line]:
         for check in (each for each in checks if not each.passed or each.what in SHOWN_ALWAYS):
             ink = "good" if check.passed else "act"
             mark = MARKS["good"] if check.passed else MARKS["act"]
-            unit = "" if check.unit == "-" else f" {check.unit}"
-            text = (
-                f"{point_name(point)}: {check.what} {amount(check.value)}{unit}, allowed {check.limit}; {check.remark}"
-            )
+            text = f"{point_name(point)}: {check.what} {check.found}; {check.remark}"
             first, *more = wrap(literal(text), width - 5)
             rows += [line(Span(f" {mark} ", ink), first), *(line("   ", text) for text in more)]
     return rows if len(rows) > 1 else []
