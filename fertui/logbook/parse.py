@@ -91,14 +91,18 @@ def _values(kind: Kind, given: Mapping[str, str], site: Site, loop: Loop, now: d
     """Values by canonical name; None where an empty text takes one out."""
     found: dict[str, Value | None] = {}
     for name, text in given.items():
-        canonical, value = _named_value(kind, name, text, site, loop, now)
+        canonical, value = named_value(kind, name, text, site, loop, now)
         if canonical in found and not _agree(found[canonical], value):
             raise LogbookError(f"{canonical} is given twice ({name} = {text!r} beside {_text(found[canonical])!r}).")
         found.setdefault(canonical, value)
     return found
 
 
-def _named_value(kind: Kind, name: str, text: str, site: Site, loop: Loop, now: datetime) -> tuple[str, Value | None]:
+def named_value(kind: Kind, name: str, text: str, site: Site, loop: Loop, now: datetime) -> tuple[str, Value | None]:
+    """The canonical name that a name means, a field of the kind or a salt of a batch, and its value; None for ''.
+
+    Raises ``LogbookError`` for a name the kind does not know or a text that is no value of it.
+    """
     field = field_named(kind, name)
     if field is not None:
         return field.name, read_value(field, name, text, site, loop, now) if text else None

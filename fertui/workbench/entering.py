@@ -29,15 +29,12 @@ def echo(kind: str, name: str, text: str, site: Site, loop: Loop) -> str:
     """What was understood of one value with its canonical unit, or of ``at`` on the clock of the site."""
     if name == "at":
         return _moment(text, site)
-    from fertui.logbook.kinds import kind_named
-    from fertui.logbook.readers import field_named, read_value, unknown_name
+    from fertui.logbook.kinds import kind_named, unit_of
+    from fertui.logbook.parse import named_value
 
     chosen = kind_named(kind)
-    field = field_named(chosen, name)
-    if field is None:
-        raise unknown_name(chosen, name, ())
-    value = read_value(field, name, text, site, loop, datetime.now(UTC))
-    return said(value, field.unit)
+    name, value = named_value(chosen, name, text, site, loop, datetime.now(UTC))
+    return said(value, unit_of(chosen, name)) if value is not None else ""
 
 
 def _moment(text: str, site: Site) -> str:

@@ -370,3 +370,17 @@ def test_a_report_of_a_source_water_names_the_water(site: Path, counting: Counte
     terminal.until_text("saved")
     [analysis] = fresh(site, "analysis")
     assert (analysis.point, analysis.text_of("source")) == ("source", "rain")
+
+
+def test_a_batch_is_logged_with_every_salt_weighed(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("m", "enter", "1000", "enter", "0", "enter", "enter")
+    salts = [supply.name for supply in open_site(site).site.supplies if supply.strength_pct is None]
+    for weight in ("88", "1.5"):
+        terminal.press(weight, "enter")
+        terminal.until_text(f"= {weight} kg")
+    terminal.press("f2")
+    give_initials(terminal)
+    terminal.until_text("saved")
+    [batch] = fresh(site, "batch")
+    assert [(salt, batch.number_of(salt)) for salt in salts[:2]] == [(salts[0], 88.0), (salts[1], 1.5)]

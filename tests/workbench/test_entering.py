@@ -27,3 +27,11 @@ def test_what_was_understood_of_a_value_or_time(demo_once: Path, name: str, text
 def test_a_time_that_is_none_is_refused(demo_once: Path) -> None:
     with pytest.raises(Refusal, match="is not a time"):
         open_site(demo_once).echo("reading", "at", "half past", "north bay")
+
+
+def test_a_salt_of_a_batch_is_understood_as_the_logbook_takes_it(demo_once: Path) -> None:
+    bench = open_site(demo_once)
+    salt = next(supply.name for supply in bench.site.supplies if supply.strength_pct is None)
+    assert bench.echo("batch", salt, "88", "north bay") == "88 kg"
+    with pytest.raises(Refusal, match="unobtainium"):
+        bench.echo("batch", "unobtainium", "88", "north bay")
