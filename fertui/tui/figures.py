@@ -12,6 +12,9 @@ OUT, LEAVING, INSIDE = "act", "watch", "good"
 MARKS = {"act": "!", "watch": "▸", "good": "✓", "note": "·", "faint": "·"}
 """The sign that goes with each ink of a state, so that the state is never colour alone."""
 
+CAUTION_INKS = {"danger": "act", "warning": "watch", "note": "faint"}
+"""The ink of a caution by its severity in the catalogue."""
+
 POINT_NAMES = {
     "source": "water", "feed": "drip", "tank": "tank", "root_zone": "root zone", "drain": "drain",
     "drain_store": "drain store",

@@ -6,7 +6,17 @@ from collections.abc import Callable, Iterable, Sequence
 from datetime import datetime
 from typing import TYPE_CHECKING
 
-from fertui.tui.figures import MARKS, amount, band_words, estimated, number, point_name, standing, unit_and_species
+from fertui.tui.figures import (
+    CAUTION_INKS,
+    MARKS,
+    amount,
+    band_words,
+    estimated,
+    number,
+    point_name,
+    standing,
+    unit_and_species,
+)
 from fertui.tui.ink import BLANK, Line, Span, col, cut, filled, fit, inked, line, literal, wrap
 from fertui.tui.snapshot import Snapshot
 
@@ -62,7 +72,7 @@ def draw_plan(
     rows += _texts("if done otherwise", [each.text for each in plan.sensitivity], width)
     rows += _texts("notice", plan.notices, width)
     for caution in plan.cautions:
-        rows += _marked({"act": "act", "watch": "watch"}.get(caution.severity, "faint"), caution.text, width)
+        rows += _marked(CAUTION_INKS[caution.severity], caution.text, width)
     return rows
 
 

@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterable
 from typing import TYPE_CHECKING, Any
 
 from fertui.tui.desk import Answer
+from fertui.tui.figures import CAUTION_INKS, MARKS
 from fertui.tui.text_page import TextPage
 
 if TYPE_CHECKING:
@@ -37,7 +38,7 @@ async def release(app: FertuiApp, made: Any, cautions: Iterable[Caution], then: 
 
         app.clerk(lambda bench: bench.acknowledge(made, number), checked, "the label")
 
-    text = [f"{'!' if each.severity == 'act' else '-'} {each.text}  [{each.source}]" for each in cautions]
+    text = [f"{MARKS[CAUTION_INKS[each.severity]]} {each.text}  [{each.source}]" for each in cautions]
     await app.open_page(TextPage("Before any acid is handled", text, go_on=strength, asks=READ_THEM))
 
 
