@@ -93,7 +93,7 @@ class Chooser(View):
 
     def action_leaf(self, leaves: int) -> None:
         """A screenful of options on."""
-        self._move(self._row + leaves * (self.size.height - 3))
+        self._move(self._row + leaves * (self.room.height - 3))
 
     def action_top(self) -> None:
         """The first option."""

@@ -43,6 +43,12 @@ class View(Page, can_focus=True):
         raise NotImplementedError
 
     @property
+    def room(self) -> Size:
+        """Columns and rows there are for the view: those of the stage while it is not laid out, for keys typed
+        ahead."""
+        return self.size or self.fertui.stage_size
+
+    @property
     def below(self) -> int:
         """Lines below the last one shown."""
         return max(0, self._total - self._top - self.size.height)
@@ -74,15 +80,15 @@ class View(Page, can_focus=True):
         """Scroll just so far that a line is in sight."""
         if row < self._top:
             self._top = row
-        elif row >= self._top + self.size.height:
-            self._top = row - self.size.height + 1
+        elif row >= self._top + self.room.height:
+            self._top = row - self.room.height + 1
 
     def action_close(self) -> None:
         """Back to what was open before."""
         self.fertui.close_page()
 
     def _scroll(self, top: int) -> None:
-        before, height = self._top, self.size.height
+        before, height = self._top, self.room.height
         self._top = max(0, min(top, self._total - height))
         moved = self._top - before
         if 0 < abs(moved) < height // 2:
@@ -99,7 +105,7 @@ class View(Page, can_focus=True):
 
     def action_leaf(self, leaves: int) -> None:
         """Screenfuls up or down."""
-        self._scroll(self._top + leaves * (self.size.height - 1))
+        self._scroll(self._top + leaves * (self.room.height - 1))
 
     def action_top(self) -> None:
         """To the first line."""

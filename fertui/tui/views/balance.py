@@ -122,7 +122,7 @@ class BalanceView(View):
         account: Balance | None = self.fertui.snapshot.get(self._ask(self.fertui.snapshot))
         if account is None:
             return
-        cause, ion = used(account, self.size.width)[self.x], list(account.ions)[self.y]
+        cause, ion = used(account, self.room.width)[self.x], list(account.ions)[self.y]
         title = f"{ion}, {WORDS[cause]}"
         await self.fertui.open_page(
             EntryList(

@@ -75,7 +75,7 @@ class DriftView(View):
         self.chosen %= len(drift.series)
         series = in_unit(drift.series[self.chosen], snapshot.unit)
         moment = self.fertui.moment - timedelta(days=self.days_back)
-        height = max(8, (self.size.height or self.fertui.stage_size.height) - 3)
+        height = max(8, self.room.height - 3)
         left_width = 78 if width >= WIDE else width
         curve = _curve(series, drift, self.fertui.moment, self.period)
         start, end = curve.span

@@ -80,7 +80,7 @@ class SiteView(View):
         narrowed = f", with {self.text!r}" if self.text else ""
         place = f"{self.fertui.folder.name}/site.toml and in force for {snapshot.loop}"
         heading = f" {len(rows)} rows of {literal(place)}{literal(narrowed)}"
-        height = max(1, (self.size.height or self.fertui.stage_size.height) - 1)
+        height = max(1, self.room.height - 1)
         first = max(0, min(self.row - height // 2, len(rows) - height))
         lines = [line(Span(heading, "title"))]
         columns = columns_of(rows, width)
@@ -106,7 +106,7 @@ class SiteView(View):
 
     def action_leaf(self, leaves: int) -> None:
         """A screenful on."""
-        self._go(self.row + leaves * (self.size.height - 2))
+        self._go(self.row + leaves * (self.room.height - 2))
 
     def action_top(self) -> None:
         """The first row."""
