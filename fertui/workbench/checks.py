@@ -48,6 +48,9 @@ def _logbook(bench: Answers) -> Iterator[CheckRow]:
 
 
 def _watch(bench: Answers) -> Iterator[CheckRow]:
+    if bench.book.last_number() == 0:
+        yield CheckRow("watch list", "empty", "Nothing is logged yet; an analysis of loop and water come first.", True)
+        return
     for name in bench.loops:
         for notice in bench.today(name).watch:
             yield CheckRow(f"watch {name}", notice.code, notice.text, notice.severity == "note")

@@ -9,6 +9,7 @@ from pathlib import Path
 import pytest
 
 from fertui.cli.main import run_command
+from fertui.workbench import open_site
 from tests.conftest import DEMO_MORNING
 
 AT = DEMO_MORNING.isoformat()
@@ -30,6 +31,35 @@ def test_no_line_is_wider_than_80_columns(
     assert code in (0, 1)
     assert out.strip()
     assert [line for line in out.splitlines() if len(line) > 80] == []
+
+
+@pytest.mark.parametrize("command", ["site", "check", "supplies"])
+def test_what_is_told_of_the_site_keeps_to_80_columns(
+    capsys: pytest.CaptureFixture[str], demo_once: Path, command: str
+) -> None:
+    _, out, _ = printed(capsys, command, str(demo_once))
+    assert [line for line in out.splitlines() if len(line) > 80] == []
+
+
+def test_every_value_of_the_site_stands_above_its_source(capsys: pytest.CaptureFixture[str], demo_once: Path) -> None:
+    _, out, _ = printed(capsys, "site", str(demo_once))
+    bench = open_site(demo_once)
+    told = " ".join(out.split())
+    for row in bench.site_rows():
+        assert " ".join(f"{row.key} = {row.text}".split()) in told
+        assert not row.source or f"from {row.source}" in told
+
+
+def test_a_site_just_made_has_nothing_to_look_at(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
+    words = "--crop lettuce --medium none --layout shared-tank --area 180 --tank 700 --water well --timezone UTC"
+    printed(capsys, "new", str(tmp_path / "home"), *words.split())
+    code, out, _ = printed(capsys, "check", str(tmp_path / "home"))
+    assert code == 0
+    assert "Nothing is logged yet" in out
+    printed(capsys, "record", str(tmp_path / "home"), "reading", "point=tank", "EC=2.5", "by=MK")
+    code, out, _ = printed(capsys, "check", str(tmp_path / "home"))
+    assert code == 1
+    assert "  !  Take a sample" in out
 
 
 def test_the_report_holds_its_sections(capsys: pytest.CaptureFixture[str], demo_once: Path) -> None:

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from fertui.cli.views import as_json, words
 from fertui.logbook.entries import Entry, Value
-from fertui.paper.page import columns
+from fertui.paper.page import columns, folded
 
 if TYPE_CHECKING:
     from fertui.site.edit import Row
@@ -68,13 +68,23 @@ def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> s
 
 def aims_text(aims: Sequence[Aim], loop: str) -> str:
     """Bands and limits in force for a loop with where each comes from."""
-    rows = [(each.point.replace("_", " "), f"{each.what} {each.kind}", each.words, each.source) for each in aims]
-    return "\n".join([f"In force for {loop}:", *columns([("point", "what", "value", "from"), *rows])])
+    lines = columns([(each.point.replace("_", " "), f"{each.what} {each.kind}", each.words) for each in aims])
+    return "\n".join([f"In force for {loop}:", *_with_sources(lines, [each.source for each in aims])])
 
 
 def site_text(rows: Sequence[Row]) -> str:
     """Every value of the site file with where it comes from."""
-    return "\n".join(columns([("key", "value", "from"), *((row.key, row.text, row.source) for row in rows)]))
+    return "\n".join(_with_sources([f"{row.key} = {row.text}" for row in rows], [row.source for row in rows]))
+
+
+def _with_sources(lines: Sequence[str], sources: Sequence[str]) -> list[str]:
+    """Lines of the width of a page, in blocks that share a source, which stands under each."""
+    shown: list[str] = []
+    for source, pairs in groupby(zip(sources, lines, strict=True), key=lambda pair: pair[0]):
+        shown += [""] if shown else []
+        shown += [folded_line for _, text in pairs for folded_line in folded(text, "")]
+        shown += folded(f"from {source}", "      ") if source else []
+    return shown
 
 
 def check_text(rows: Sequence[CheckRow]) -> str:
