@@ -63,6 +63,8 @@ class Forecast(NamedTuple):
     assumed: tuple[str, ...]
     inputs: str
     scenario: Scenario = ROUTINE
+    analyses: int = 1
+    """Analyses behind the estimate it starts from; none: the ranges are those of other growers' loops."""
 
 
 def trajectories(estimate: Estimate, days: int, scenario: Scenario = ROUTINE, settled: bool = False) -> Trajectories:
@@ -123,7 +125,7 @@ def forecast(estimate: Estimate, days: int, scenario: Scenario = ROUTINE) -> For
             coming[day - 1][point] = panel.state(day, acidity.at(estimate.record.end + day, bands.get("pH")))
         leaving += _leaving(estimate, point, course, bands)
     ahead = tuple(ForecastDay(at, points) for at, points in zip(ran.at[1:], coming, strict=True))
-    return Forecast(estimate.at, ahead, tuple(leaving), ran.assumed, ran.inputs, scenario)
+    return Forecast(estimate.at, ahead, tuple(leaving), ran.assumed, ran.inputs, scenario, estimate.analyses)
 
 
 def _leaving(estimate: Estimate, point: str, course: Course, bands: Mapping[str, Band]) -> list[LeavesBand]:

@@ -61,6 +61,8 @@ class Today(NamedTuple):
     gauges: tuple[Gauge, ...]
     watch: tuple[Notice, ...]
     analyses_behind: int
+    unanalysed_water: str | None = None
+    """Name of the water that fills up, where nobody has said what it holds."""
     awaited: tuple[str, ...] = ()
     half_done: tuple[str, ...] = ()
 
@@ -92,12 +94,15 @@ def today(estimate: Estimate, entries: Sequence[Entry], ahead: Forecast) -> Toda
         gauges=gauges(estimate, ahead),
         watch=notices(estimate, entries, ahead),
         analyses_behind=estimate.analyses,
+        unanalysed_water=estimate.unanalysed_water,
         awaited=_awaited(own, at, estimate.site.timezone),
         half_done=_half_done(own, at, estimate.site.timezone),
     )
 
 
 PAST_DAYS = 14
+NOT_KNOWN = "not known yet"
+"""Where no analysis stands behind a number: a range of other growers' loops leaves no band of this one."""
 
 
 def gauges(estimate: Estimate, ahead: Forecast) -> tuple[Gauge, ...]:
@@ -114,9 +119,8 @@ def gauges(estimate: Estimate, ahead: Forecast) -> tuple[Gauge, ...]:
         if value is None or (what in LIMITED and value.band is None):
             continue
         numbers = tuple(each.value for state in course if (each := reading_of(state, what)) is not None)
-        rows.append(
-            Gauge(what, unit_of(what), value, numbers, len(past), in_words(leaving.get(what), len(ahead.days), zone))
-        )
+        leaves = in_words(leaving.get(what), len(ahead.days), zone) if estimate.analyses else NOT_KNOWN
+        rows.append(Gauge(what, unit_of(what), value, numbers, len(past), leaves))
     return tuple(rows)
 
 

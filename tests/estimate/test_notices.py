@@ -59,6 +59,14 @@ def test_a_share_out_of_its_band_says_that_ec_is_on_set_point() -> None:
     assert found.text == "K share in the root zone is 12 % (7-17), band 18-28 %. EC is on set point."
 
 
+def test_an_ec_that_was_read_before_much_was_logged_is_not_called_on_set_point() -> None:
+    tank = point({"K": Estimated(12.1, 7.2, 17.1, (18, 28))})._replace(ec=known(41.0))
+    standing = Standing(loop=GUTTERS, managed="tank", state=tank, last_analysis={"tank": NOW})
+    (found,) = only("share_out", standing, [said("reading", MORNING, GUTTERS, EC="2.61")])
+    assert "set point" not in found.text
+    assert found.text.endswith("EC read 2.6 mS/cm; by what is logged it is 41 now: read it again.")
+
+
 def test_a_share_out_while_ec_is_off_says_what_ec_reads() -> None:
     state = point({"K": known(12.0, (18, 28))})
     (found,) = only("share_out", Standing(state=state), [read(EC="2.1")])
@@ -449,7 +457,7 @@ def test_every_rule_is_asked_once() -> None:
 
 
 def test_a_shared_tank_is_looked_at_in_the_tank() -> None:
-    tank = point({"K": known(28.0, (30, 45))})
+    tank = point({"K": known(28.0, (30, 45))})._replace(ec=known(1.8))
     standing = Standing(loop=GUTTERS, managed="tank", state=tank, last_analysis={"tank": NOW})
     (found,) = only("share_out", standing, [said("reading", MORNING, GUTTERS, EC="1.85")])
     assert found.text.startswith("K share in the tank is 28 %")

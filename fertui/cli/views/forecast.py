@@ -30,7 +30,10 @@ def text(ahead: Forecast, sample: SampleAdvice, loop: str, managed: str, timezon
     lines += ["Leaves its band"]
     same = {"root_zone"} if managed == "tank" else {"drain"}
     shown = [each for each in ahead.leaves_band if each.point not in same]
-    lines += [f"  {_leaves(each, len(ahead.days), timezone)}" for each in shown] or ["  nothing within these days"]
+    if ahead.analyses:
+        lines += [f"  {_leaves(each, len(ahead.days), timezone)}" for each in shown] or ["  nothing within these days"]
+    else:
+        lines.append("  not known yet: no analysis stands behind these ranges; take a sample first")
     lines += ["", "Next sample", *_sample(sample, len(ahead.days), timezone)]
     lines += ["", "Assumed", *(line for each in ahead.assumed for line in folded(each, "  "))]
     return "\n".join(lines)

@@ -8,7 +8,7 @@ from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.cli.views import as_json, words
 from fertui.paper.page import columns, folded
 from fertui.workbench.glance import Seen
-from fertui.workbench.today import Today
+from fertui.workbench.today import NOT_KNOWN, Today
 
 POINT_WORDS = {
     "feed": "drip",
@@ -24,7 +24,13 @@ def text(state: Today, timezone: str, unit: str) -> str:
     """State, gauges and what to look at, in plain lines of at most 80 characters where the words allow it."""
     lines = [_heading(state, timezone), ""]
     lines += _readings(state)
-    lines += ["", *_gauges(state, unit), "", *_concentrations(state, unit), ""]
+    if state.analyses_behind:
+        lines += ["", *_gauges(state, unit)]
+    else:
+        lines += ["", *_wanted(state, unit)]
+    if state.analyses_behind or state.layout == "known-feed":
+        lines += ["", *_concentrations(state, unit)]
+    lines.append("")
     lines += ["To look at"]
     lines += [line for each in state.watch for line in folded(each.text, f" {words.SIGNS[each.severity]} ")]
     lines += [line for each in state.half_done for line in folded(each, " !  ")]
@@ -52,7 +58,8 @@ def _readings(state: Today) -> list[str]:
         left = "  ".join(f"{tank} {days:.1f} days" for tank, days in state.stock_days_left.items())
         lines.append(f"stock left: {left}")
     if state.last_analysis is not None:
-        behind = f"{state.analyses_behind} analyses behind the estimate"
+        analyses = "analysis" if state.analyses_behind == 1 else "analyses"
+        behind = f"{state.analyses_behind} {analyses} behind the estimate"
         lines.append(f"last analysis: {words.age(state.last_analysis.at, state.at)}; {behind}")
     return lines
 
@@ -67,11 +74,22 @@ def _gauges(state: Today, unit: str) -> list[str]:
     return columns(rows)
 
 
+def _wanted(state: Today, unit: str) -> list[str]:
+    """The bands alone, before an analysis says where the loop stands in them."""
+    water = f"not known: the water {state.unanalysed_water!r} was never analysed"
+    rows = [(POINT_WORDS[state.managed_point], "now", "band")]
+    for gauge in state.gauges:
+        scale, shown = (1.0, gauge.unit) if gauge.unit != "mmol/L" else (words.factor(gauge.what, unit), unit)
+        of_water = gauge.what in ("Na", "Cl") and state.unanalysed_water is not None
+        rows.append((gauge.what, water if of_water else NOT_KNOWN, f"{words.band(gauge.now.band, scale)} {shown}"))
+    return columns(rows)
+
+
 def _concentrations(state: Today, unit: str) -> list[str]:
     """Macro-ions and EC at every point; micronutrients below where an analysis brought them."""
-    names = list(state.points)
+    names = [name for name in state.points if not (name == "root_zone" and state.managed_point == "tank")]
     heads = [POINT_WORDS[name] for name in names]
-    rows = [(unit, *heads), *(_row(state, ion, unit) for ion in IONS)]
+    rows = [(unit, *heads), *(_row(state, ion, unit, names) for ion in IONS)]
     rows.append(("EC mS/cm", *(words.ranged(state.points[name].ec) for name in names)))
     traces = [ion for ion in MICRONUTRIENTS if any(ion in point.ions for point in state.points.values())]
     if not traces:
@@ -80,13 +98,13 @@ def _concentrations(state: Today, unit: str) -> list[str]:
     return [
         *columns(rows),
         "",
-        *columns([(trace_unit, *heads), *(_row(state, ion, unit) for ion in traces)]),
+        *columns([(trace_unit, *heads), *(_row(state, ion, unit, names) for ion in traces)]),
     ]
 
 
-def _row(state: Today, ion: str, unit: str) -> tuple[str, ...]:
+def _row(state: Today, ion: str, unit: str, names: list[str]) -> tuple[str, ...]:
     scale = words.factor(ion, unit)
-    found = [point.ions.get(ion) for point in state.points.values()]
+    found = [state.points[name].ions.get(ion) for name in names]
     cells = (words.ABSENT if each is None else words.ranged(each.mmol_l, scale) for each in found)
     return words.label(ion, unit), *cells
 

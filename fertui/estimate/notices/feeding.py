@@ -37,6 +37,9 @@ def near_set_point(look: Look) -> str:
     read = look.last("EC", (look.fed_from,), EC_FRESH_DAYS)
     if read is None or look.set_ec is None:
         return ""
+    known = look.points.get(look.fed_from)
+    if known is not None and not known.ec.low - EC_NEAR <= read.value <= known.ec.high + EC_NEAR:
+        return f"EC read {read.value:.1f} mS/cm; by what is logged it is {plain(known.ec.value)} now: read it again."
     if abs(read.value - look.set_ec) <= EC_NEAR:
         return "EC is on set point."
     return f"EC reads {read.value:.1f}, set {look.set_ec:.1f} mS/cm."
