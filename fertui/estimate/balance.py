@@ -7,7 +7,7 @@ stood still amounts are taken to move evenly.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from datetime import datetime
+from datetime import datetime, timedelta
 from typing import NamedTuple
 
 import numpy as np
@@ -17,6 +17,7 @@ from fertui.estimate.assimilation import Estimate
 from fertui.loop import CAUSES, WATERS, Discharge
 from fertui.loop import discharged as discharged_by
 from fertui.loop.account import Account, Booking, summed
+from fertui.refusals import Refusal
 
 AT_ONCE = 1e-9
 
@@ -44,29 +45,72 @@ class BalanceRow(NamedTuple):
 
 
 class Balance(NamedTuple):
-    """The account of a period by ion, and the numbers of the entries behind a cell, by (ion, column)."""
+    """The account of a period by ion, and the numbers of the entries behind a cell, by (ion, column).
+
+    ``asked``: start of the period asked for; where the account starts later, ``began`` says why it could not then.
+    """
 
     start: datetime
     end: datetime
     ions: Mapping[str, BalanceRow]
     entries: Mapping[tuple[str, str], tuple[int, ...]]
+    asked: datetime
+    began: str
 
     @property
     def columns(self) -> tuple[str, ...]:
         """Names of the columns of a row, in the order they are shown in."""
         return BalanceRow._fields
 
+    @property
+    def is_cut(self) -> bool:
+        """Whether it starts later than asked."""
+        return self.start - self.asked > timedelta(seconds=1)
+
+
+class Stretch(NamedTuple):
+    """What one run of the estimate says of a part of a period; ``analyses``: how many are behind the run."""
+
+    account: Balance
+    discharges: tuple[Discharge, ...]
+    crop_water_l: float | None
+    analyses: int
+
+
+def stretch(estimate: Estimate, start: datetime, end: datetime) -> Stretch:
+    """Account, discharges and crop water of the part of a period that an estimate covers; raises as ``balance``."""
+    account = balance(estimate, start, end)
+    lost, water = discharged(estimate, start, end), crop_water_l(estimate, start, end)
+    return Stretch(account, lost, water, estimate.analyses)
+
 
 def balance(estimate: Estimate, start: datetime, end: datetime) -> Balance:
     """The account of a period, ensemble means. It is cut to what the estimate covers; ``start``, ``end`` say to what.
 
-    Raises ``ValueError`` for an end before the start, or a period before the estimate began.
+    Raises ``Refusal`` for an end before the start, or a period before the estimate began.
     """
     account, begin, until = _account(estimate, start, end)
     rows = {ion: BalanceRow(**account.row(ion)) for ion in IONS}
     entries = {(ion, cause): account.entries(ion, cause) for ion in IONS for cause in CAUSES}
     moments = estimate.record.moment(begin), estimate.record.moment(until)
-    return Balance(*moments, rows, {cell: numbers for cell, numbers in entries.items() if numbers})
+    behind = {cell: numbers for cell, numbers in entries.items() if numbers}
+    return Balance(*moments, rows, behind, start, began(estimate))
+
+
+def began(estimate: Estimate) -> str:
+    """Why an estimate, and so its account, begins when it does."""
+    analysis, anew = estimate.begin.analysis, _anew(estimate)
+    if analysis is not None:
+        renewed = ", the first since crop, medium or solution were renewed" if anew else ""
+        return f"with the analysis of entry {analysis.entry}{renewed}"
+    if any(abs(time - _first(estimate)) < AT_ONCE for time in anew):
+        return "anew, because crop, medium or solution were renewed"
+    return "with the logbook, before any analysis"
+
+
+def since(estimate: Estimate) -> datetime:
+    """From when on an estimate has an account."""
+    return estimate.record.moment(_first(estimate))
 
 
 def discharged(estimate: Estimate, start: datetime, end: datetime) -> tuple[Discharge, ...]:
@@ -85,17 +129,26 @@ def crop_water_l(estimate: Estimate, start: datetime, end: datetime) -> float | 
 
 def _clipped(estimate: Estimate, start: datetime, end: datetime) -> tuple[float, float] | None:
     """The period in days from the record's zero, cut to the estimate; None where they do not meet."""
-    first, last = float(estimate.drives.grid[0]), float(estimate.drives.grid[-1])
+    first, last = _first(estimate), float(estimate.drives.grid[-1])
     begin, until = max(estimate.record.time(start), first), min(estimate.record.time(end), last)
     return (begin, until) if until >= begin else None
 
 
+def _first(estimate: Estimate) -> float:
+    """When an account can begin [d]: a run is never shorter than a minute, and may reach back over a new start."""
+    return max([estimate.begin.time, *_anew(estimate)])
+
+
+def _anew(estimate: Estimate) -> list[float]:
+    return [time for time in estimate.record.anew if time <= estimate.record.end]
+
+
 def _account(estimate: Estimate, start: datetime, end: datetime) -> tuple[Account, float, float]:
     if end < start:
-        raise ValueError(f"the account ends ({end:%Y-%m-%d %H:%M}) before it begins ({start:%Y-%m-%d %H:%M})")
+        raise Refusal(f"the account ends ({end:%Y-%m-%d %H:%M}) before it begins ({start:%Y-%m-%d %H:%M})")
     period = _clipped(estimate, start, end)
     if period is None:
-        raise ValueError(
+        raise Refusal(
             f"no account from {start:%Y-%m-%d} to {end:%Y-%m-%d}: the estimate runs from {estimate.since:%Y-%m-%d} "
             f"to {estimate.at:%Y-%m-%d}; ask for days within it"
         )

@@ -1,16 +1,19 @@
 """The report for a consultant or an inspector: measured, taken up, dosed, discharged, calibrated, corrected.
 
-Every table says its unit; concentrations stand in mmol/L and in mg/L; corrected and struck entries stay visible.
+Every table says its unit; concentrations stand in mmol/L and in mg/L; corrected and struck entries stay visible. What
+was logged in the period stands in it whether or not the estimate can follow; what is estimated says since when.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from datetime import datetime
+from datetime import datetime, timedelta
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.logbook.entries import Entry
+from fertui.paper.discharges import LetGo, let_go, rows_of
 from fertui.paper.handover import said
 from fertui.paper.page import Page, amount, clock, columns, day, folded, heading, listed, page, section
 from fertui.paper.round_sheet import POINT_WORDS
@@ -18,12 +21,15 @@ from fertui.quantities import in_unit, shown_in
 from fertui.site.model import Loop, Site
 
 if TYPE_CHECKING:
-    from fertui.estimate.balance import Balance
-    from fertui.loop import Discharge
+    from fertui.estimate.balance import Stretch
 
-WATERS = {"make_up": "make-up", "irrigation": "irrigation", "drain": "drain", "condensate": "condensate"}
+WATERS = {
+    "make_up": "make-up", "irrigation": "irrigation", "drain": "drain", "condensate": "condensate", "crop": "crop water"
+}  # fmt: skip
 ACTS = ("recipe", "setpoint", "batch", "dose", "disinfection", "crop")
 """Kinds listed one by one; acid and stock, used every day, are listed as sums."""
+
+A_MINUTE = timedelta(minutes=1)
 
 Row = tuple[str, ...]
 
@@ -31,26 +37,27 @@ Row = tuple[str, ...]
 class Reported(NamedTuple):
     """A loop over a period: ``history`` is verbatim, ``effective`` leaves out what was corrected or struck.
 
-    ``crop_water_l`` [L] as the account has it, None where it is not known.
+    ``stretches``: the parts of the period that runs of the estimate cover, in order of time.
     """
 
     site: Site
     loop: Loop
+    start: datetime
+    end: datetime
     history: Sequence[Entry]
     effective: Sequence[Entry]
-    account: Balance
-    discharges: Sequence[Discharge]
-    crop_water_l: float | None
+    stretches: Sequence[Stretch]
 
     @property
-    def start(self) -> datetime:
-        """Begin of the period."""
-        return self.account.start
+    def crop_water_l(self) -> float | None:
+        """Crop water [L] as the estimate has it, None where it is not known."""
+        known = [each.crop_water_l for each in self.stretches if each.crop_water_l is not None]
+        return sum(known) if known else None
 
     @property
-    def end(self) -> datetime:
-        """End of the period."""
-        return self.account.end
+    def days(self) -> float:
+        """Days of the period that the estimate covers."""
+        return sum((each.account.end - each.account.start).total_seconds() for each in self.stretches) / 86400.0
 
     def of(self, *kinds: str) -> list[Entry]:
         """Effective entries of some kinds within the period."""
@@ -67,7 +74,7 @@ def report(it: Reported) -> Page:
     about = f"{it.loop.crop} on {it.loop.medium}, {it.loop.area_m2:g} m2, {it.loop.layout}"
     lines = heading(f"Report: {it.loop.name}", it.site.name, period, about)
     lines += section("ANALYSES", _analyses(it))
-    lines += section("UPTAKE BY THE ACCOUNT", _uptake(it))
+    lines += section("UPTAKE BY THE ACCOUNT", [*_uptake(it), *_rests_on(it)])
     lines += section("WATER, STOCK AND ACID USED", columns([("what", "used", "unit", "entries"), *_used(it)], (1, 3)))
     lines += section("RECIPES, BATCHES, DOSES AND OTHER ACTS", listed(_said(it, *ACTS)))
     lines += section("DISCHARGES BY REASON", _discharged(it))
@@ -125,7 +132,7 @@ def _uptake(it: Reported) -> list[str]:
         else f"crop water {known / 1000:.1f} m3, {_per_day(it, known)} L/m2 a day"
     )
     rows: list[Row] = [("ion", "mmol/m2", "g/m2", "mmol/L", "mg/L", "mg of")]
-    for ion, taken in _taken(it):
+    for ion, taken in _taken(it).items():
         per_m2 = taken / it.loop.area_m2
         grams, species = mg_l(ion, per_m2)
         per_litre = ("", "") if not known else (amount(taken / known), amount(mg_l(ion, taken / known)[0]))
@@ -135,28 +142,70 @@ def _uptake(it: Reported) -> list[str]:
 
 
 def _per_day(it: Reported, litres: float) -> str:
-    days = max((it.end - it.start).total_seconds() / 86400.0, 1e-9)
-    return f"{litres / it.loop.area_m2 / days:.1f}"
+    return f"{litres / it.loop.area_m2 / max(it.days, 1e-9):.1f}"
 
 
-def _taken(it: Reported) -> Iterator[tuple[str, float]]:
-    """Uptake of every ion [mmol] over the period; alkalinity is not taken up."""
-    return ((ion, -row.uptake) for ion, row in it.account.ions.items() if ion != "HCO3")
+def _taken(it: Reported) -> dict[str, float]:
+    """Uptake of every ion [mmol] over what is estimated of the period; alkalinity is not taken up."""
+    taken: dict[str, float] = {}
+    for each in it.stretches:
+        for ion, row in each.account.ions.items():
+            if ion != "HCO3":
+                taken[ion] = taken.get(ion, 0.0) - row.uptake
+    return taken
+
+
+def _rests_on(it: Reported) -> list[str]:
+    """Since when the estimate behind uptake, N and P runs; nothing where one run covers the period."""
+    if not it.stretches:
+        return folded("Nothing is estimated: the logbook of this loop begins later.", "")
+    first = it.stretches[0]
+    if len(it.stretches) == 1 and not first.account.is_cut and first.analyses:
+        return []
+    return [*folded("What the estimate behind uptake, N and P rests on:", ""), *listed(_runs(it))]
+
+
+def _runs(it: Reported) -> Iterator[str]:
+    for each in it.stretches:
+        account = each.account
+        if account.end - account.start < A_MINUTE:
+            continue
+        period = f"{clock(account.start, it.site.timezone)} to {clock(account.end, it.site.timezone)}"
+        began = f", begun {account.began}" if account.is_cut else ""
+        known = f"{each.analyses} {'analysis' if each.analyses == 1 else 'analyses'} behind it"
+        yield f"{period}{began}: {known if each.analyses else 'no analysis behind it, a guess'}"
 
 
 def _used(it: Reported) -> Iterator[Row]:
     """Sums of what was used: water in m3, stock and acid in L."""
     for name, words in WATERS.items():
-        by_source: dict[str, list[float]] = {}
-        for entry in it.of("water"):
-            if (litres := entry.number_of(name)) is not None:
-                source = entry.text_of("source") if name == "make_up" else ""
-                by_source.setdefault(source, []).append(litres)
-        for source, amounts in by_source.items():
+        by_label: dict[str, list[float]] = {}
+        for entry, litres in (*_amounts(it, name), *_metered(it, name)):
+            source = entry.text_of("source") if name == "make_up" else ""
             label = f"{words} water, {source}" if source else words
+            by_label.setdefault(_labelled(label, entry), []).append(litres)
+        for label, amounts in by_label.items():
             yield label, f"{sum(amounts) / 1000:.2f}", "m3", str(len(amounts))
     yield from _summed(it, "stock", "tank", "stock")
     yield from _summed(it, "acid", "acid", "acid")
+
+
+def _amounts(it: Reported, name: str) -> Iterator[tuple[Entry, float]]:
+    for entry in it.of("water"):
+        if (litres := entry.number_of(name)) is not None:
+            yield entry, litres
+
+
+def _metered(it: Reported, name: str) -> Iterator[tuple[Entry, float]]:
+    """Litres [L] by the positions of a meter where no litres were written: each since the position before it."""
+    meter = f"{name}_meter"
+    read = [each for each in it.effective if each.kind == "water" and each.number_of(meter) is not None]
+    certain = sorted((each for each in read if not each.doubtful), key=lambda each: each.at)
+    for before, entry in pairwise(certain):
+        litres = (entry.number_of(meter) or 0.0) - (before.number_of(meter) or 0.0)
+        written = entry.number_of(name) is not None or entry.text_of("meter")
+        if it.start <= entry.at <= it.end and not written and litres >= 0:
+            yield entry, litres
 
 
 def _summed(it: Reported, kind: str, by: str, words: str) -> Iterator[Row]:
@@ -164,23 +213,29 @@ def _summed(it: Reported, kind: str, by: str, words: str) -> Iterator[Row]:
     for entry in it.of(kind):
         strength = entry.number_of("strength")
         name = entry.text_of(by) + (f", {strength:g} %" if strength is not None else "")
-        sums.setdefault(name, []).append(entry.number_of("litres") or 0.0)
+        sums.setdefault(_labelled(name, entry), []).append(entry.number_of("litres") or 0.0)
     for name, litres in sums.items():
         yield f"{words} {name}", f"{sum(litres):.1f}", "L", str(len(litres))
 
 
+def _labelled(label: str, entry: Entry) -> str:
+    """Doubtful amounts are kept apart: they stand in the report and in no other sum."""
+    return f"{label}, doubtful" if entry.doubtful else label
+
+
+def _let_go(it: Reported) -> tuple[LetGo, ...]:
+    booked = [each for stretch in it.stretches for each in stretch.discharges]
+    return let_go(it.of("bleed", "water"), booked, it.loop.layout == "known-feed")
+
+
 def _discharged(it: Reported) -> list[str]:
-    if not it.discharges:
+    lost = _let_go(it)
+    if not lost:
         return ["  none"]
-    rows: list[Row] = [("reason", "m3", "kg N", "kg P", "kg N/ha", "kg P/ha")]
-    for each in it.discharges:
-        numbers = (each.litres / 1000, each.kg_n, each.kg_p, each.kg_n_per_ha, each.kg_p_per_ha)
-        rows.append((each.reason or "no reason given", *(f"{number:.2f}" for number in numbers)))
-    sums = [sum(float(row[place]) for row in rows[1:]) for place in range(1, 6)]
-    rows.append(("in all", *(f"{number:.2f}" for number in sums)))
     budget = it.site.budget_n_kg_per_ha
-    limit = [f"budget of the year: {budget:g} kg N/ha"] if budget is not None else []
-    return [*columns(rows, range(1, 6)), *limit]
+    lines = columns(rows_of(lost, it.loop.area_m2), range(1, 6))
+    lines += listed(each.unknown_words for each in lost if not each.is_known)
+    return [*lines, *([f"budget of the year: {budget:g} kg N/ha"] if budget is not None else [])]
 
 
 def _said(it: Reported, *kinds: str) -> Iterator[str]:
@@ -209,11 +264,13 @@ def _rows(it: Reported) -> Iterator[Row]:
     """The report as one long table: a line a number."""
     for entry in it.of("analysis", "calibration", *ACTS, "acid", "stock", "water", "bleed"):
         yield from _entry_rows(it, entry)
-    for ion, taken in _taken(it):
+    for ion, taken in _taken(it).items():
         yield "uptake", "", ion, f"{taken / it.loop.area_m2:.4g}", "mmol/m2", "", ""
-    for each in it.discharges:
-        for name, number, unit in (("water", each.litres / 1000, "m3"), ("N", each.kg_n, "kg"), ("P", each.kg_p, "kg")):
-            yield "discharge", "", f"{name}, {each.reason}", f"{number:.4g}", unit, "", ""
+    for each in _let_go(it):
+        yield "discharge", "", f"water, {each.reason}", f"{each.litres / 1000:.4g}", "m3", "", ""
+        for name, kg in (("N", each.kg_n), ("P", each.kg_p)):
+            of = "" if each.is_known else f", of {each.followed_l / 1000:.4g} m3"
+            yield "discharge", "", f"{name}, {each.reason}{of}", f"{kg:.4g}", "kg", "", ""
 
 
 def _entry_rows(it: Reported, entry: Entry) -> Iterator[Row]:
@@ -236,11 +293,22 @@ def _data(it: Reported) -> dict[str, Any]:
         "crop_water_m3": None if water is None else water / 1000,
         "uptake": {
             ion: {"mmol_m2": taken / it.loop.area_m2, "mmol_L": taken / water if water else None}
-            for ion, taken in _taken(it)
+            for ion, taken in _taken(it).items()
         },
         "used": [dict(zip(("what", "amount", "unit", "entries"), row, strict=True)) for row in _used(it)],
         "discharges": [
-            {"reason": d.reason, "m3": d.litres / 1000, "kg_N": d.kg_n, "kg_P": d.kg_p} for d in it.discharges
+            {
+                "reason": d.reason,
+                "m3": d.litres / 1000,
+                "followed_m3": d.followed_l / 1000,
+                "kg_N": d.kg_n,
+                "kg_P": d.kg_p,
+            }
+            for d in _let_go(it)
+        ],
+        "estimate": [
+            {"from": each.account.start, "to": each.account.end, "began": each.account.began, "analyses": each.analyses}
+            for each in it.stretches
         ],
         "corrections": list(_corrections(it)),
     }

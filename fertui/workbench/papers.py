@@ -2,16 +2,23 @@
 
 from __future__ import annotations
 
-from datetime import datetime
+from datetime import datetime, time, timedelta
 from pathlib import Path
 from typing import TYPE_CHECKING
+from zoneinfo import ZoneInfo
 
-from fertui.workbench.answers import Answers
+from fertui.refusals import Refusal
+from fertui.workbench.answers import HORIZON_DAYS, Answers
 from fertui.workbench.clock import now
 
 if TYPE_CHECKING:
+    from fertui.estimate.balance import Stretch
     from fertui.paper import Page
     from fertui.planning.values import AcidSheet, Plan, StockSheet
+    from fertui.site.model import Loop
+
+A_MOMENT = timedelta(milliseconds=1)
+"""Between the end of one run of the estimate and the beginning of the next."""
 
 
 class Papers(Answers):
@@ -57,18 +64,39 @@ class Papers(Answers):
         end: datetime | None = None,
         known: datetime | None = None,
     ) -> Page:
-        """The report of a loop for consultant or inspector."""
-        from fertui.estimate.balance import crop_water_l, discharged
+        """The report of a loop for consultant or inspector: by default of the last 14 days and what there is of today.
+
+        All that was logged in the period is in it, also where the estimate cannot follow.
+        """
         from fertui.paper.report import Reported, report
 
-        chosen = self.loop(loop)
-        account = self.balance(loop, start, end, known)
-        estimate = self.estimate(loop, account.end, known)
-        effective = self.book.entries(loop=chosen.name, at=account.end, known=known)
+        chosen, end = self.loop(loop), end or now()
+        start = start or self._midnight(end - timedelta(days=HORIZON_DAYS))
+        if end < start:
+            raise Refusal(f"the report ends ({end:%Y-%m-%d %H:%M}) before it begins ({start:%Y-%m-%d %H:%M}).")
+        effective = self.book.entries(loop=chosen.name, at=end, known=known)
         history = self.book.history(loop=chosen.name, known=known)
-        lost = discharged(estimate, account.start, account.end)
-        water = crop_water_l(estimate, account.start, account.end)
-        return report(Reported(self.site, chosen, history, effective, account, lost, water))
+        stretches = self._stretches(chosen, start, end, known)
+        return report(Reported(self.site, chosen, start, end, history, effective, stretches))
+
+    def _midnight(self, at: datetime) -> datetime:
+        """The beginning of a day on the clock of the site."""
+        zone = ZoneInfo(self.site.timezone)
+        return datetime.combine(at.astimezone(zone).date(), time(), zone)
+
+    def _stretches(self, loop: Loop, start: datetime, end: datetime, known: datetime | None) -> tuple[Stretch, ...]:
+        """The period as runs of the estimate that join, oldest first: one begins anew where the crop does."""
+        from fertui.estimate.assimilation import assimilate
+        from fertui.estimate.balance import since, stretch
+
+        found: list[Stretch] = []
+        until, entries = end, self.entries(end, known)
+        while until >= start and any(each.loop == loop.name and each.at <= until for each in entries):
+            run = self.estimate(loop.name, until, known) if not found else assimilate(self.site, loop, entries, until)
+            found.append(stretch(run, start, until))
+            until = since(run) - A_MOMENT
+            entries = self.entries(until, known)
+        return tuple(reversed(found))
 
     def plan_page(self, plan: Plan) -> Page:
         """The sheet of a plan."""

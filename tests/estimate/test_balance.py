@@ -92,6 +92,8 @@ def test_coir_gives_and_takes_and_stone_wool_does_not() -> None:
 def test_a_period_is_cut_to_the_estimate_and_refused_where_it_does_not_meet_it() -> None:
     account = balance(_slab(), moment(-30.0), moment(5.0))
     assert account.start == moment(0.5)
+    assert (account.is_cut, account.asked) == (True, moment(-30.0))
+    assert account.began.startswith("with the analysis of entry")
     with pytest.raises(ValueError, match="the estimate runs from"):
         balance(_slab(), moment(-30.0), moment(-20.0))
     with pytest.raises(ValueError, match="before it begins"):

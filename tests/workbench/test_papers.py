@@ -69,3 +69,27 @@ def test_a_sheet_is_written_once_and_never_over_another(bench: Bench, tmp_path: 
     with pytest.raises(Refusal, match="is there already"):
         bench.write("two", path)
     assert path.read_text() == "one\n"
+
+
+def test_the_report_holds_all_that_was_logged_over_new_starts_of_the_crop(demo: Path) -> None:
+    bench, loop = open_site(demo), "north bay"
+    for at, litres, reason in (("08:00", "800", "sodium"), ("08:10", "1500", "crop change")):
+        fields = {"litres": litres, "from": "drain", "reason": reason, "at": f"2026-06-01 {at}", "by": "MK"}
+        bench.record("bleed", fields, loop)
+    for at, event in (("08:10", "planted"), ("08:20", "emptied"), ("08:21", "removed")):
+        bench.record("crop", {"event": event, "at": f"2026-06-01 {at}", "by": "MK"}, loop)
+    page = bench.report(loop, bench.time("2026-01-01"), DEMO_MORNING)
+    assert page.text.splitlines()[2].startswith("Thu 1 Jan 2026 00:00 to Mon 1 Jun 2026 08:30")
+    let_go = {each["reason"]: each for each in page.data["discharges"]}
+    assert (let_go["sodium"]["m3"], let_go["crop change"]["m3"]) == (0.8, 1.5)
+    assert let_go["sodium"]["kg_N"] > 0
+    kinds = ("analysis", "bleed", "water", "stock", "acid", "dose")
+    logged = {str(each.number) for each in bench.book.entries(loop=loop, kinds=kinds, at=DEMO_MORNING)}
+    assert logged <= {row[5] for row in page.rows}
+    assert [run["analyses"] > 0 for run in page.data["estimate"]][-2:] == [False, False]
+    assert "begun anew, because crop, medium or solution were renewed" in " ".join(page.text.split())
+
+
+def test_a_report_that_ends_before_it_begins_is_refused(bench: Bench) -> None:
+    with pytest.raises(Refusal, match="before it begins"):
+        bench.report(start=DEMO_MORNING, end=DEMO_MORNING.replace(year=2025))

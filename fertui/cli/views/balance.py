@@ -6,7 +6,7 @@ from typing import Any
 
 from fertui.cli.views import as_json, words
 from fertui.estimate.balance import Balance
-from fertui.paper.page import columns
+from fertui.paper.page import columns, folded
 
 
 def text(account: Balance, loop: str, timezone: str) -> str:
@@ -20,9 +20,19 @@ def text(account: Balance, loop: str, timezone: str) -> str:
     head = [
         f"{loop}: account of {period}",
         "gains +, losses -; start + flows = end; tank, stores and root-zone solution",
+        *_cut(account, timezone),
         "",
     ]
     return "\n".join(head + columns(shown, range(1, len(used) + 1)))
+
+
+def _cut(account: Balance, timezone: str) -> list[str]:
+    """Why the account starts later than asked."""
+    if not account.is_cut:
+        return []
+    asked = words.local(account.asked, timezone)
+    text = f"asked from {asked}, but the estimate begins {words.local(account.start, timezone)}, {account.began}"
+    return folded(f"{text}; 'fertui report' holds what was logged before.", "")
 
 
 def document(account: Balance, loop: str) -> dict[str, Any]:
@@ -31,4 +41,7 @@ def document(account: Balance, loop: str) -> dict[str, Any]:
         ion: {name: value for name, value in as_json.plain(row).items() if name in account.columns}
         for ion, row in account.ions.items()
     }
-    return {"schema": "fertui.balance/1", "loop": loop, "from": account.start, "to": account.end, "ions": ions}
+    return {
+        "schema": "fertui.balance/1", "loop": loop, "from": account.start, "to": account.end,
+        "asked_from": account.asked, "began": account.began, "ions": ions,
+    }  # fmt: skip
