@@ -95,10 +95,16 @@ def terminal(site: Path, open_terminal: Opened) -> PseudoTerminal:
     return shown
 
 
+@pytest.fixture(scope="session")
+def copied(built: dict[str, Path], tmp_path_factory: pytest.TempPathFactory) -> Callable[[], Path]:
+    """Makes demo sites that end on the morning of ``AT``, each alone in a folder."""
+    return lambda: shutil.copytree(built["fixed"], tmp_path_factory.mktemp("shared") / "nursery")
+
+
 @pytest.fixture(scope="module")
-def shared_site(built: dict[str, Path], tmp_path_factory: pytest.TempPathFactory) -> Path:
+def shared_site(copied: Callable[[], Path]) -> Path:
     """A demo site for all tests of a file that leave it fit for the next one."""
-    return shutil.copytree(built["fixed"], tmp_path_factory.mktemp("shared") / "nursery")
+    return copied()
 
 
 @pytest.fixture(scope="module")

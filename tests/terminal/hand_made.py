@@ -122,29 +122,10 @@ class HandMade(Bench):
         )  # fmt: skip
 
     def balance(self, loop=None, start=None, end=None, known=None):
+        from fertui.estimate.balance import BalanceRow
+
         def row(**v):
-            return SimpleNamespace(
-                **{
-                    **dict.fromkeys(
-                        (
-                            "start_mmol",
-                            "make_up",
-                            "stock",
-                            "dose",
-                            "acid",
-                            "feed",
-                            "uptake",
-                            "exchange",
-                            "bleed",
-                            "drain",
-                            "unexplained",
-                            "end_mmol",
-                        ),
-                        0.0,
-                    ),
-                    **v,
-                }
-            )
+            return BalanceRow(**{**dict.fromkeys(BalanceRow._fields, 0.0), **v})
 
         ions = {
             "K": row(start_mmol=61000.0, make_up=5000.0, stock=348000.0, uptake=-377000.0, exchange=4200.0,
@@ -153,7 +134,8 @@ class HandMade(Bench):
             bleed=-2300.0, unexplained=900.0, end_mmol=93500.0),
             "Na": row(start_mmol=31000.0, make_up=41000.0, uptake=-22000.0, bleed=-800.0, end_mmol=49200.0),
         }  # fmt: skip
-        return SimpleNamespace(start=start, end=end, ions=ions)
+        columns = BalanceRow._fields
+        return SimpleNamespace(start=start, end=end, ions=ions, columns=columns, entries={}, asked=start, began="")
 
     def forecast(self, loop=None, days=14, at=None, known=None, scenario=None):
         where = "root_zone" if loop != "lettuce" else "tank"
@@ -235,7 +217,7 @@ class HandMade(Bench):
             (v.Binding("EC", 2.6, "mS/cm", 2.6, "own setting"),),
             ("K 12 % below 18 %: one step of +25 % K, then look again.",),
             (caution("note", "The safety data sheet, site procedure, local code and licensed practice come first."),
-             caution("watch", "Potassium nitrate is an oxidiser: keep it from combustibles.")),
+             caution("warning", "Potassium nitrate is an oxidiser: keep it from combustibles.")),
             ("KNO3 and not K2SO4: SO4 is above its target already.",), ("0.65 kg KNO3 / 0.1011 kg/mol = 6.43 mol K",
             "6.43 mol / 2000 L = 3.2 mmol/L"),
         )  # fmt: skip

@@ -20,9 +20,9 @@ import pyte
 KEYS = {
     "up": "\x1b[A", "down": "\x1b[B", "right": "\x1b[C", "left": "\x1b[D", "enter": "\r", "tab": "\t", "space": " ",
     "backspace": "\x7f", "home": "\x1b[H", "end": "\x1b[F", "pageup": "\x1b[5~", "pagedown": "\x1b[6~",
-    "delete": "\x1b[3~", "shift+tab": "\x1b[Z", "f1": "\x1bOP", "f2": "\x1bOQ", "f3": "\x1bOR", "f5": "\x1b[15~",
-    "esc": "\x1b[27u", "bare esc": "\x1b", "ctrl+d": "\x04", "ctrl+q": "\x11", "ctrl+z": "\x1a", "ctrl+c": "\x03",
-    "ctrl+o": "\x0f", "ctrl+r": "\x12", "ctrl+x": "\x18",
+    "delete": "\x1b[3~", "shift+tab": "\x1b[Z", "esc": "\x1b[27u", "bare esc": "\x1b", "f1": "\x1bOP", "f2": "\x1bOQ",
+    "f3": "\x1bOR", "f4": "\x1bOS", "f5": "\x1b[15~", "ctrl+d": "\x04", "ctrl+q": "\x11", "ctrl+z": "\x1a",
+    "ctrl+c": "\x03", "ctrl+o": "\x0f", "ctrl+r": "\x12", "ctrl+x": "\x18",
 }  # fmt: skip
 """What a terminal sends. An Esc that says so itself need not be waited for; the bare one is one if nothing follows."""
 DEADLINE = 15.0
@@ -125,7 +125,8 @@ class PseudoTerminal:
         while not condition(self.text):
             if time.monotonic() > end:
                 raise AssertionError(f"the screen never showed it:\n{self.text}")
-            self.read(0.05)
+            if not self.read(0.05) and self._states() == {"Z"}:
+                raise AssertionError(f"the program has ended:\n{self.text}")
         return self.text
 
     def until_text(self, text: str) -> str:
