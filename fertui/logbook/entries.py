@@ -31,6 +31,17 @@ class Value(NamedTuple):
         """
         return self.text if not self.unit or self.text.endswith(self.unit) else f"{self.text} {self.unit}"
 
+    @property
+    def label(self) -> str:
+        """What the written number is the number of: mg of nitrogen are not mg of nitrate.
+
+        >>> Value("NO3", "260 mg/L", 18.6, "mg/L", "NO3-N").label, Value("SO4", "52 mg/L", 1.6, "mg/L", "S").label
+        ('NO3-N', 'SO4 as S')
+        """
+        if self.species.startswith(self.name):
+            return self.species
+        return f"{self.name} as {self.species}" if self.species else self.name
+
 
 class Entry(NamedTuple):
     """One line of the logbook. Times are aware and in UTC. ``number`` is None until the store gave it one.

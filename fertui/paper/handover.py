@@ -107,6 +107,6 @@ def said(entry: Entry) -> str:
     parts = []
     for value in entry.values:
         unit = "" if value.number is None or value.unit else unit_of(kind, value.name)
-        name = "" if value.name in SPEAKING or value.name == value.text else f"{value.name} "
+        name = "" if value.name in SPEAKING or value.name == value.text else f"{value.label} "
         parts.append(f"{name}{value.written}{f' {unit}' if unit else ''}")
     return ", ".join([*parts, *([entry.note] if entry.note else [])])

@@ -143,7 +143,7 @@ def done_fields(planned: Entry, by: str, amount: str | None, strength_pct: float
 
 
 def _ions(planned: Entry) -> Fields:
-    return {value.name: value.written for value in planned.values if value.number is not None}
+    return {value.species or value.name: value.written for value in planned.values if value.number is not None}
 
 
 def acids_of(made: Plan | AcidSheet | StockSheet) -> tuple[tuple[str, float], ...]:

@@ -80,4 +80,4 @@ def _measured(entries: Sequence[Entry], point: str, what: str) -> tuple[tuple[da
 
 def _said(entry: Entry) -> str:
     """An entry in one short line: its values as written."""
-    return " ".join(f"{value.name} {value.written}" for value in entry.values[:4])
+    return " ".join(f"{value.label} {value.written}" for value in entry.values[:4])

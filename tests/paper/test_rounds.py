@@ -147,3 +147,13 @@ def test_an_empty_site_hands_over_too() -> None:
     page = handover(SITE, NOW, [], {"slabs": LoopShift(), "gutters": LoopShift()}, [])
     assert "never" in page.text
     assert max(map(len, page.text.splitlines())) <= WIDTH
+
+
+def test_an_analysis_is_handed_over_in_the_forms_the_report_gave() -> None:
+    report = {"NO3-N": "260 mg/L", "NH4-N": "4.2 mg/L", "S": "52 mg/L", "P": "47 mg/L", "CaCO3": "20 mg/L"}
+    log = [*a_morning(), said("analysis", "2026-06-30 08:50", point="drain", K="8,0", Fe="15", **report)]
+    text = " ".join(handover(SITE, NOW, log, {"slabs": shift()}, []).text.split())
+    for words in ("NO3-N 260 mg/L", "NH4-N 4.2 mg/L", "SO4 as S 52 mg/L", "H2PO4 as P 47 mg/L"):
+        assert words in text
+    for words in ("HCO3 as CaCO3 20 mg/L", "K 8,0 mmol/L", "Fe 15 umol/L"):
+        assert words in text

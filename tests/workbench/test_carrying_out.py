@@ -109,6 +109,14 @@ def test_a_recipe_marked_done_is_the_recipe_that_runs_from_then_on(bench: Bench)
     assert next(each.state for each in bench.open_plans("lettuce") if each.number == item.number) == "done"
 
 
+def test_a_recipe_planned_in_mg_of_nitrogen_is_carried_out_as_that(bench: Bench) -> None:
+    # 210 mg/L N / 14.007 g/mol (CIAAW 2021) = 14.99 mmol/L NO3; read as mg of nitrate it would be 3.39.
+    planned = bench.record("plan", {"recipe": "summer", "NO3-N": "210 mg/L", "K": "8", "by": "RV"}, "lettuce")
+    done = bench.mark_done(planned.number or 0, "AN")
+    assert done.number_of("NO3") == pytest.approx(14.99, rel=0.001)
+    assert done.number_of("K") == 8.0
+
+
 @pytest.mark.parametrize("read", [True, False])
 def test_acid_marked_done_says_whether_its_cautions_were_acknowledged(bench: Bench, read: bool) -> None:
     # Logging what happened always works, and carries "cautions not acknowledged" where they were not.
