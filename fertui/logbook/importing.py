@@ -15,7 +15,7 @@ from fertui.logbook.errors import LogbookError
 from fertui.logbook.exporting import undefused
 from fertui.logbook.kinds import KINDS, Kind, kind_named, unit_of
 from fertui.logbook.parse import entry_from_text
-from fertui.logbook.questions import Question, flagged, questions_of_values
+from fertui.logbook.questions import LOOK_BACK, Question, flagged, questions_of_row
 from fertui.logbook.sheets import Sheet, read_sheet
 from fertui.logbook.store import Logbook
 from fertui.logbook.templates import Template
@@ -36,6 +36,9 @@ STATES: Mapping[str, str] = {
 """What can become of a row, and how it is said."""
 
 MOST_TROUBLES, MOST_LINES = 20, 8
+
+MOST_LOOKED_BACK = 60
+"""Entries before a row that it is held against: enough for the last values, and quick for the table of a logger."""
 
 Signature = tuple[str, str, str, str, str, tuple[tuple[str, str], ...]]
 """What makes two entries of a kind the same event."""
@@ -86,7 +89,15 @@ class ImportResult(NamedTuple):
         new, there, differs = (self.count(state) for state in STATES)
         last = f"{new} {self.kind} {'entry' if new == 1 else 'entries'} {did}, already there: {there}"
         left_out = f", differing from what is there and left out: {differs} (fertui supersede)" if differs else ""
-        return (*lines, f"{last}{left_out}.")
+        return (*lines, *self._odd(), f"{last}{left_out}.")
+
+    def _odd(self) -> tuple[str, ...]:
+        """The lines with open questions once more, and what to do about them."""
+        odd = [row.line for row in self.rows if row.questions]
+        if not odd:
+            return ()
+        todo = "mend the table first" if self.dry_run else "mend with 'fertui supersede' or 'fertui void'"
+        return (f"look again at line {_listed(odd)} (see ? there); what is right may stay, else {todo}.",)
 
     def _assumed(self, column: Column) -> str:
         """The unit that the numbers of a column are taken in where its head names none."""
@@ -118,7 +129,7 @@ def import_table(
     sheet = read_sheet(path, source.template.delimiter, source.template.decimal)
     columns = columns_of(sheet, wanted, source.template)
     order = source.template.dates or order_of(_column_of(sheet, columns, "at"))
-    rows = tuple(_judged(_entries(sheet, columns, source, order), book, zone(site.timezone)))
+    rows = tuple(_judged(_entries(sheet, columns, source, order), book, site))
     new = [flagged(row.entry, row.questions) for row in rows if row.state == "new"]
     written = book.append(new) if new and not dry_run else ()
     return ImportResult(kind, columns, rows, written, dry_run, learned(source.template, sheet, columns, order))
@@ -166,12 +177,15 @@ def _refused(troubles: Mapping[str, Sequence[int]]) -> LogbookError:
     """Every trouble once, with the lines that have it."""
     told = []
     for words, lines in list(troubles.items())[:MOST_TROUBLES]:
-        listed = ", ".join(map(str, lines[:MOST_LINES]))
-        more = f" and {len(lines) - MOST_LINES} more" if len(lines) > MOST_LINES else ""
-        told.append(f"line {listed}{more}: {words}")
+        told.append(f"line {_listed(lines)}: {words}")
     rest = len(troubles) - len(told)
     told += [f"... and {rest} more troubles"] if rest else []
     return LogbookError("\n".join(["nothing was imported:", *told]))
+
+
+def _listed(lines: Sequence[int]) -> str:
+    more = f" and {len(lines) - MOST_LINES} more" if len(lines) > MOST_LINES else ""
+    return ", ".join(map(str, lines[:MOST_LINES])) + more
 
 
 def _texts(sheet: Sheet, row: Sequence[str], columns: Sequence[Column], source: _Source) -> dict[str, str]:
@@ -219,18 +233,28 @@ def _placed(written: str, source: _Source) -> dict[str, str]:
     return {"point": POINT_WORDS.get(plain) or {each.replace("_", " "): each for each in POINTS}.get(plain, point)}
 
 
-def _judged(read: Sequence[tuple[int, Entry]], book: Logbook, here: ZoneInfo) -> Iterator[ImportRow]:
+def _judged(read: Sequence[tuple[int, Entry]], book: Logbook, site: Site) -> Iterator[ImportRow]:
     """Each row against the book: a signature in the book is used up by one row, so equal rows of one table stay two."""
-    moments = [entry.at for _, entry in read]
-    first, last = min(moments) - timedelta(days=1), max(moments) + timedelta(days=1)
-    past = book.history(kinds=(read[0][1].kind,), since=first, at=last)
+    here, moments = zone(site.timezone), [entry.at for _, entry in read]
+    kind, first, last = read[0][1].kind, min(moments), max(moments)
+    day = timedelta(days=1)
+    past = book.history(kinds=(kind,), since=first - day, at=last + day)
     there = _signatures(past, here)
-    for line, entry in read:
+    found = []
+    for _, entry in read:
         numbers = there.get(_signature(entry, here))
         number = numbers.pop(0) if numbers else None
-        state, other = ("there", number) if number else _against(entry, past)
+        found.append(("there", number) if number else _against(entry, past))
+    new = [entry for (_, entry), (state, _) in zip(read, found, strict=True) if state == "new"]
+    standing = book.entries(kinds=(kind,), since=first - LOOK_BACK, at=last)
+    told = sorted((*standing, *new), key=lambda each: each.at)
+    place = {id(each): position for position, each in enumerate(told)}
+    for (line, entry), (state, other) in zip(read, found, strict=True):
         conversions = tuple(_conversion(KINDS[entry.kind], value) for value in entry.values)
-        asked = questions_of_values(entry) if state == "new" else ()
+        asked: tuple[Question, ...] = ()
+        if state == "new":
+            before = told[max(place[id(entry)] - MOST_LOOKED_BACK, 0) : place[id(entry)]]
+            asked = questions_of_row(entry, before, book, site)
         yield ImportRow(line, entry, _when(entry, here), state, other, conversions, asked)
 
 

@@ -2,16 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 
 from fertui.logbook.asking import amounts, analyses, instruments, meters, times, values
-from fertui.logbook.asking.question import Asker, Question, Setting
+from fertui.logbook.asking.question import LOOK_BACK, Asker, Question, Setting
 from fertui.logbook.entries import Entry
-from fertui.logbook.kinds import KINDS
 from fertui.logbook.store import Logbook
 from fertui.site.model import Site
 
-__all__ = ["Question", "flagged", "questions", "questions_of_values"]
+__all__ = ["LOOK_BACK", "Question", "flagged", "questions", "questions_of_row"]
 
 ASKERS: tuple[Asker, ...] = (
     values.out_by_ten,
@@ -35,6 +34,22 @@ ASKERS: tuple[Asker, ...] = (
     instruments.instrument_off,
 )
 """Asked in this order; a value is asked about once by those of ``values``."""
+OF_ROWS: tuple[Asker, ...] = (
+    values.out_by_ten,
+    values.other_unit,
+    values.unusual,
+    values.stage,
+    times.twice,
+    meters.backwards,
+    meters.jump,
+    meters.against_amount,
+    amounts.per_area,
+    amounts.drain_over_irrigation,
+    amounts.over_full,
+    amounts.shelf,
+    amounts.acid,
+)
+"""Those asked about the rows of a table."""
 
 
 def questions(entry: Entry, book: Logbook, site: Site) -> tuple[Question, ...]:
@@ -44,16 +59,13 @@ def questions(entry: Entry, book: Logbook, site: Site) -> tuple[Question, ...]:
     return _once([*asked, *analyses.holds_together(entry)])
 
 
-def questions_of_values(entry: Entry) -> tuple[Question, ...]:
-    """What is odd about the numbers of an entry by themselves, without a look into the book."""
-    kind = KINDS[entry.kind]
-    found = ((kind.field(value.name), value) for value in entry.values)
-    asked = [
-        question
-        for field, value in found
-        if field and value.number is not None
-        for question in values.usual_range_only(field, value, value.number)
-    ]
+def questions_of_row(entry: Entry, before: Sequence[Entry], book: Logbook, site: Site) -> tuple[Question, ...]:
+    """What is odd about a row of a table, held against the entries and rows before it.
+
+    How long ago it was, its instrument and what only the person who was there can tell are not asked about.
+    """
+    setting = Setting(entry, book, site, before)
+    asked = [question for asker in OF_ROWS for question in asker(setting)]
     return _once([*asked, *analyses.holds_together(entry)])
 
 

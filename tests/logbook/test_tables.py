@@ -340,3 +340,27 @@ def test_a_sample_called_like_a_point_was_taken_there(take: Import) -> None:
     assert [(row.entry.point, row.entry.text_of("sample")) for row in rows] == [("root_zone", ""), ("feed", "")]
     with pytest.raises(LogbookError, match="a column point"):
         take("date,sample,K\n2026-06-20,4711,8\n")
+
+
+def test_rows_unlike_those_before_them_are_asked_about_by_line(take: Import, book: Logbook) -> None:
+    readings = "at,point,EC\n2026-06-18 08:00,feed,2.5\n2026-06-19 08:00,feed,2.6\n2026-06-20 08:00,feed,26\n"
+    (said,) = [row for row in take(readings, "reading", dry_run=True).rows if row.questions]
+    assert (said.line, [each.code for each in said.questions]) == (4, ["out_by_ten"])
+    assert said.questions[0].text == "EC 26? The last was 2.6. Out by ten?"
+    meter = "at,make_up_meter\n2026-06-18 08:00,52000\n2026-06-19 08:00,54100\n2026-06-20 08:00,45200\n"
+    found = take(meter, "water")
+    assert [(row.line, row.questions[0].code) for row in found.rows if row.questions] == [(4, "meter_backwards")]
+    assert "below the last position, 54100 L (a row before)" in "\n".join(found.words())
+    assert found.words()[-2].startswith("look again at line 4 (see ? there)")
+    assert [entry.flags for entry in book.entries(kinds=("water",))] == ["", "", "meter_backwards"]
+    # the same rows once more are known, and those after them are held against the book
+    again = take(meter + "2026-06-21 08:00,56200\n2026-06-21 08:00,56200\n", "water")
+    assert [row.state for row in again.rows] == ["there"] * 3 + ["new"] * 2
+    assert [[each.code for each in row.questions] for row in again.rows[3:]] == [[], ["duplicate"]]
+
+
+def test_a_steady_sensor_every_five_minutes_raises_no_question_and_takes_no_time(take: Import) -> None:
+    rows = [f"2026-06-{day:02} {hour:02}:{minute:02},feed,2.6" for day in (18, 19, 20) for hour in range(24)
+            for minute in range(0, 60, 5)]  # fmt: skip
+    found = take("\n".join(["at,point,EC", *rows]), "reading", dry_run=True)
+    assert (found.count("new"), [row for row in found.rows if row.questions]) == (864, [])

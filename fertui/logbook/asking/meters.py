@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 
-from fertui.logbook.asking.question import Question, Setting
+from fertui.logbook.asking.question import Question, Setting, named
 from fertui.logbook.entries import Entry
 
 JUMP = 6.0
@@ -21,7 +21,7 @@ def backwards(setting: Setting) -> Iterator[Question]:
         if last and number < last[1]:
             digits = setting.instrument.digits if setting.instrument else None
             rolled = _used_when_rolled_over(number, last[1], digits)
-            text = f"{field.name} {value.text} is below the last position, {last[1]:.10g} L (entry {last[0].number}). "
+            text = f"{field.name} {value.text} is below the last position, {last[1]:.10g} L ({named(last[0])}). "
             rest = f"Rolled over ({rolled:.6g} L used), replaced" if rolled is not None else "Was the meter replaced"
             suggestion = "meter=rolled over" if rolled is not None else "meter=replaced"
             yield Question("meter_backwards", f"{text}{rest}, or a slip?", field.name, value.text, suggestion)
@@ -31,14 +31,16 @@ def jump(setting: Setting) -> Iterator[Question]:
     """Far more a day than lately: a misread digit, or m3 against litres."""
     for field, value, number in setting.numbers:
         last = setting.last(field.name) if field.what == "meter" else None
+        if last is None or number <= last[1] or setting.entry.text_of("meter"):
+            continue
         usual = _litres_a_day([entry for entry in setting.past if entry.number_of(field.name) is not None], field.name)
-        if last is None or not usual or number <= last[1] or setting.entry.text_of("meter"):
+        if not usual:
             continue
         days = max((setting.entry.at - last[0].at).total_seconds() / 86400, 0.25)
         used = number - last[1]
         if used / days > JUMP * usual:
             lately = f"lately it was {usual:.4g} L a day"
-            text = f"{field.name} {value.text} makes {used:.5g} L since entry {last[0].number}; {lately}."
+            text = f"{field.name} {value.text} makes {used:.5g} L since {named(last[0])}; {lately}."
             yield Question("meter_jump", f"{text} Is a digit or the unit wrong?", field.name, value.text)
 
 
@@ -52,7 +54,7 @@ def against_amount(setting: Setting) -> Iterator[Question]:
         moved = number - last[1]
         if abs(moved - amount) > DISAGREE_L + DISAGREE_PCT / 100 * max(moved, amount):
             name = field.name.removesuffix("_meter")
-            text = f"{name} says {amount:.5g} L, but its meter moved by {moved:.5g} L since entry {last[0].number}."
+            text = f"{name} says {amount:.5g} L, but its meter moved by {moved:.5g} L since {named(last[0])}."
             yield Question("meter_amount", f"{text} Which is right?", name, setting.entry.text_of(name), f"{moved:.6g}")
 
 

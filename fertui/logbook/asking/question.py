@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from datetime import timedelta
 from functools import cached_property
@@ -37,6 +37,8 @@ class Setting:
     entry: Entry
     book: Logbook
     site: Site
+    before: Sequence[Entry] | None = None
+    """Entries to look back on in place of the book's: those of a table are not in it yet."""
 
     @cached_property
     def loop(self) -> Loop | None:
@@ -46,14 +48,24 @@ class Setting:
     @cached_property
     def past(self) -> tuple[Entry, ...]:
         """Effective entries of the same kind, loop, point and zone up to its time, itself left out, oldest first."""
-        recent = self.book.entries(
-            self.entry.loop or None, (self.entry.kind,), self.entry.at - LOOK_BACK, self.entry.at
-        )
+        entry, since = self.entry, self.entry.at - LOOK_BACK
+        if self.before is None:
+            recent = self.book.entries(entry.loop or None, (entry.kind,), since, entry.at)
+        else:
+            recent = tuple(each for each in self.before if each.loop == entry.loop and each.at >= since)
         return tuple(
             each
             for each in recent
-            if (each.point, each.zone) == (self.entry.point, self.entry.zone) and each.number != self.entry.supersedes
+            if (each.point, each.zone) == (entry.point, entry.zone)
+            if (each.number or 0) != entry.supersedes
         )
+
+    def around(self, span: timedelta) -> tuple[Entry, ...]:
+        """Entries of the same kind and loop within a time before and after; rows of a table only at the same time."""
+        entry = self.entry
+        if self.before is not None:
+            return tuple(each for each in self.before if (each.loop, each.at) == (entry.loop, entry.at))
+        return self.book.entries(entry.loop or None, (entry.kind,), entry.at - span, entry.at + span)
 
     @cached_property
     def numbers(self) -> tuple[tuple[Field, Value, float], ...]:
@@ -82,6 +94,11 @@ class Setting:
     def stock_tank(self, name: str) -> StockTank | None:
         """The site's stock tank of that name."""
         return next((each for each in self.site.stock_tanks if each.name == name), None)
+
+
+def named(entry: Entry) -> str:
+    """How a question speaks of another entry; one that is not written yet is a row of the same table."""
+    return "a row before" if entry.number is None else f"entry {entry.number}"
 
 
 Asker = Callable[[Setting], Iterator[Question]]

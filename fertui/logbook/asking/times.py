@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from datetime import timedelta
 
-from fertui.logbook.asking.question import Question, Setting
+from fertui.logbook.asking.question import Question, Setting, named
 from fertui.logbook.entries import Entry
 from fertui.logbook.times import AHEAD, shown
 
@@ -17,15 +17,14 @@ LONG_PAUSE = timedelta(days=400)
 
 
 def twice(setting: Setting) -> Iterator[Question]:
-    """The same values for the same place within minutes, or for the same whole day."""
+    """The same values for the same place within minutes, or for the same whole day; in a table at the same time."""
     entry = setting.entry
-    start, end = entry.at - SAME_EVENT, entry.at + SAME_EVENT
-    for other in setting.book.entries(entry.loop or None, (entry.kind,), start, end):
+    for other in setting.around(SAME_EVENT):
         same_place = (other.point, other.zone, other.whole_day) == (entry.point, entry.zone, entry.whole_day)
-        if same_place and other.number != entry.supersedes and _values(entry) == _values(other):
+        if same_place and (other.number or 0) != entry.supersedes and _values(entry) == _values(other):
             at = shown(other.at, setting.site.timezone)[:16].replace("T", " ")
-            text = f"The same was entered for {at} by {other.by} as entry {other.number}. Enter it again?"
-            yield Question("duplicate", text, suggestion=f"entry {other.number}")
+            text = f"The same was entered for {at} by {other.by} as {named(other)}. Enter it again?"
+            yield Question("duplicate", text, suggestion=named(other))
             return
 
 

@@ -79,13 +79,6 @@ def stage(setting: Setting) -> Iterator[Question]:
         yield Question("stage", f"{text} With another name the uptake of the whole season is used.", "stage", written)
 
 
-def usual_range_only(field: Field, value: Value, number: float) -> Iterator[Question]:
-    """The question of a number outside the usual range, asked without a book."""
-    low, high = field.usual_low, field.usual_high
-    if (low is not None and number < low) or (high is not None and number > high):
-        yield _unusual(field, value, number)
-
-
 def _unusual(field: Field, value: Value, number: float) -> Question:
     unit = f" {field.unit}" if field.unit else ""
     low = "" if field.usual_low is None else f"{field.usual_low:g}"
