@@ -104,8 +104,8 @@ def acid(name: str) -> Acid:
     by_name = {_key(each): entry for entry in acids() for each in (entry.name, entry.formula, *entry.aliases)}
     if _key(name) not in by_name:
         near = nearest(_key(name), {key: entry.name for key, entry in by_name.items()})
-        known = near or [entry.name for entry in acids()]
-        raise CatalogueError(f"{name[:60]!r} is not an acid or lye of the catalogue; known: {', '.join(known)}.")
+        which = f"nearest: {', '.join(near)}" if near else f"it has {', '.join(entry.name for entry in acids())}"
+        raise CatalogueError(f"{name[:60]!r} is not an acid or lye of the catalogue; {which}.")
     return by_name[_key(name)]
 
 

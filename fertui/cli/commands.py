@@ -272,7 +272,12 @@ def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
     if not options.sheet:
         return
     strength = None if options.label_strength is None else read_number(options.label_strength, "--label-strength")
-    bench.acknowledge(made, strength if options.cautions_read else None)
+    said = strength if options.cautions_read else None
+    try:
+        bench.acknowledge(made, said)
+    except Refusal as no:
+        how = " Say so with --cautions-read --label-strength PERCENT." if said is None else ""
+        raise Refusal(f"{no}{how}") from None
     path = Path(options.sheet)
     bench.write(page.csv() if path.suffix.lower() == ".csv" else page.text, path)
 

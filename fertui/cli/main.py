@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 import sys
 import traceback
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Collection, Sequence
 from datetime import datetime
 from pathlib import Path
 
@@ -45,6 +45,7 @@ def _run(words: list[str], open_terminal: OpenTerminal | None) -> int:
         print(tree.format_help())
         return FINE
     if not words[0].startswith("-") and words[0] not in parser.COMMANDS:
+        _refuse_slip(words[0], parser.COMMANDS)
         words.insert(0, "open")
     options = tree.parse_args(words)
     if options.version:
@@ -58,6 +59,16 @@ def _run(words: list[str], open_terminal: OpenTerminal | None) -> int:
 
     options.open_terminal = open_terminal
     return run(options)
+
+
+def _refuse_slip(word: str, commands: Collection[str]) -> None:
+    """Refuse a first word that is no folder and looks like a slip of a command."""
+    if Path(word).exists():
+        return
+    import difflib
+
+    if near := difflib.get_close_matches(word.lower(), commands, n=1):
+        raise Refusal(f"{word!r} is no command and no folder; did you mean 'fertui {near[0]}'? See 'fertui --help'.")
 
 
 def _say(sentence: str, code: int) -> int:

@@ -105,7 +105,7 @@ class Table:
         """The list of tables [[key]], empty where absent, each placed by its name or number."""
         value = self._take(key, [])
         if not isinstance(value, list) or any(not isinstance(each, dict) for each in value):
-            raise self.refuse(key, f"tables headed [[{key}]] are allowed here.")
+            raise self.refuse(key, f"tables headed [[{key}]] are allowed here{self._instead(key)}.")
         if len(value) > MOST_TABLES:
             raise SiteError(f"{self.file}: {len(value)} tables [[{key}]]; at most {MOST_TABLES} are allowed.")
         return [Table(each, f"[[{key}]] {_title(each, number)}", self.file) for number, each in enumerate(value, 1)]

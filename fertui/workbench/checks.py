@@ -11,6 +11,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING, NamedTuple
 
 if TYPE_CHECKING:
+    from fertui.site.model import Water
     from fertui.workbench.answers import Answers
 
 LEAST_FREE_MB = 100
@@ -38,6 +39,20 @@ def _site(bench: Answers) -> Iterator[CheckRow]:
     for loop in site.loops:
         if loop.layout != "known-feed" and not loop.water:
             yield CheckRow("site", f"water of {loop.name}", "not named", False, "name its source water and analysis")
+    for water in site.waters:
+        yield from _water(water)
+
+
+def _water(water: Water) -> Iterator[CheckRow]:
+    """Whether the report of a water can be used as it is, where it says enough."""
+    from fertui.chemistry.verdicts import STANDARD_METHODS, verdicts
+
+    if not water.composition.ions.get("Ca") or "HCO3" not in water.composition.ions:
+        return
+    for row in verdicts(water.composition.ions, water.composition.ec, water.composition.ph):
+        if row.source != STANDARD_METHODS:
+            remark = f"{row.remark}; look at its units"
+            yield CheckRow("site", f"water {water.name}, {row.what}", row.found, row.passed, remark)
 
 
 def _logbook(bench: Answers) -> Iterator[CheckRow]:

@@ -47,7 +47,8 @@ def book(site: Path) -> list[tuple[object, ...]]:
         (["import", "SITE", "EMPTY", "--as", "analysis"], 2, "empty"),
         (["import", "SITE", "MISSING.csv", "--as", "analysis"], 2, "MISSING.csv"),
         (["today", "NOWHERE"], 2, "fertui new"),
-        (["todya", "SITE"], 2, ""),
+        (["todya", "SITE"], 2, "did you mean 'fertui today'?"),
+        (["north-side"], 2, "fertui new north-side"),
     ],
 )
 def test_what_cannot_be_taken_is_refused_in_words_and_changes_nothing(

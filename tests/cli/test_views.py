@@ -62,6 +62,22 @@ def test_a_site_just_made_has_nothing_to_look_at(capsys: pytest.CaptureFixture[s
     assert "  !  Take a sample" in out
 
 
+def test_a_water_typed_in_another_unit_is_looked_at(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
+    words = "--crop lettuce --medium none --layout shared-tank --area 180 --tank 700 --water well --timezone UTC"
+    report = "EC 0.55, Ca 80 mg/L, Mg 12 mg/L, Na 16 mg/L, Cl 21 mg/L, SO4 24 mg/L, CaCO3 240 mg/L"
+    site = tmp_path / "home"
+    printed(capsys, "new", str(site), *words.split(), "--water-report", report)
+    code, out, _ = printed(capsys, "check", str(site))
+    assert code == 0
+    assert "ok water well, EC calculated / EC measured: " in " ".join(out.split())
+    text = (site / "site.toml").read_text()
+    assert "Ca = 1.996" in text  # 80 mg/L at 40.078 g/mol (CIAAW 2021)
+    (site / "site.toml").write_text(text.replace("Ca = 1.996", "Ca = 80"))
+    code, out, _ = printed(capsys, "check", str(site))
+    assert code == 1
+    assert "look at its units" in " ".join(out.split())
+
+
 def test_the_report_holds_its_sections(capsys: pytest.CaptureFixture[str], demo_once: Path) -> None:
     words = ("report", str(demo_once), "--loop", "north bay", "--from", "2026-05-10", "--to", "2026-05-31")
     code, out, _ = printed(capsys, *words)
@@ -80,6 +96,7 @@ def test_an_acid_sheet_is_released_by_cautions_read_and_the_strength_on_the_labe
         code, _, err = printed(capsys, *asked, *wrong)
         assert (code, sheet.exists()) == (2, False)
         assert "label" in err
+        assert ("--cautions-read --label-strength PERCENT" in err) == (len(wrong) < 3)
     code, _, _ = printed(capsys, *asked, "--cautions-read", "--label-strength", "38")
     assert code == 0
     head, *rows = csv.reader(io.StringIO(sheet.read_text()))

@@ -103,6 +103,7 @@ def test_a_file_saved_with_a_byte_order_mark_is_read() -> None:
         ('stock_tanks = ["calcium", "rest"]', "stock_tanks = [1]", ["stock_tanks", "a text in quotes"]),
         ("ions = { Ca = 1.5, HCO3 = 3, Na = 1 }", "ions = 3", ["ions = 3", "a table"]),
         ("[[loops]]", "[loops]", ["loops", "[[loops]]"]),
+        ("[[loops]]", "[loops.bands.feed]\n\n[[loop]]", ["loops", "[[loops]]", "found 'loop': is that meant?"]),
         ("K_share = {", "K_share = 5 #", ["K_share = 5", "a table"]),
         # impossible numbers
         ("area_m2 = 1000", "area_m2 = -1", ["area_m2 = -1", "0.01"]),
