@@ -74,6 +74,7 @@ class Shell(App[int], inherit_bindings=False):
         self.fault: BaseException | None = None
         self.open_view = 1
         self._notice = ("", "faint")
+        self.ready = False
         self._holding = 0
         self._held: deque[events.Key | events.Paste] = deque()
         for theme in THEMES:
@@ -200,10 +201,20 @@ class Shell(App[int], inherit_bindings=False):
         """Keys are taken one after the other, each done with before the next: what is typed ahead lands where it
         is meant."""
         if isinstance(event, events.Key | events.Paste) and not event.is_forwarded:
+            if not self.ready and self._leaves(event):
+                await self._press(event)
+                return
             self._held.append(event)
             await self.release_keys()
         else:
             await super().on_event(event)
+
+    def _leaves(self, event: events.Event) -> bool:
+        """Whether it is a key that leaves: one need not wait for what may never open."""
+        if not isinstance(event, events.Key) or not self.screen_stack:
+            return False
+        active = self.screen.active_bindings.get(event.key)
+        return active is not None and active.binding.id in ("leave", "leave.at_once")
 
     def hold_keys(self) -> None:
         """Keep keys back while something is under way that decides what they mean."""
@@ -216,9 +227,9 @@ class Shell(App[int], inherit_bindings=False):
         return dropped
 
     async def release_keys(self, done: int = 0) -> None:
-        """Take the keys that were kept back, unless something else is under way."""
+        """Take the keys that were kept back, unless something else is under way or there is nothing yet to act on."""
         self._holding -= done
-        while self._held and not self._holding:
+        while self._held and self.ready and not self._holding:
             await self._press(self._held.popleft())
 
     async def _press(self, event: events.Key | events.Paste) -> None:

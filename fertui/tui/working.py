@@ -60,6 +60,7 @@ class Working(Shell):
         )
 
     def _opened(self, answer: Answer) -> None:
+        self.ready = True
         if answer.value is None:
             self.say_at_length("The site cannot be opened", answer.trouble)
             return

@@ -7,11 +7,12 @@ characters and 16, both without the initials.
 from __future__ import annotations
 
 import re
+import sys
 from pathlib import Path
 
 import pytest
-from conftest import Opened
-from pseudo_terminal import PseudoTerminal
+from conftest import Opened, own_folders
+from pseudo_terminal import Command, PseudoTerminal
 
 from fertui.logbook.entries import Entry
 from fertui.logbook.kinds import KINDS
@@ -170,6 +171,16 @@ def test_keys_typed_ahead_of_a_slow_line_land_in_their_fields(counting: Counted)
     text = counting.terminal.until_text("= 18.2 C")
     assert "2.61______" in text
     assert "5.4_______" in text
+
+
+def test_keys_pressed_before_the_site_is_open_wait_for_it(site: Path, tmp_path: Path) -> None:
+    """Typed at the first paint of the program as people start it, which comes before the site is read."""
+    with PseudoTerminal(
+        Command([sys.executable, "-m", "fertui", str(site)]), (80, 24), own_folders(tmp_path)
+    ) as terminal:
+        terminal.until_text("Today")
+        terminal.type(b"r2.61\r")
+        terminal.until_text("= 2.61 mS/cm")
 
 
 def test_a_newcomer_who_types_initials_into_a_number_is_told_how_to_save(tmp_path: Path, open_terminal: Opened) -> None:
