@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from datetime import date, datetime
 from typing import TYPE_CHECKING, Any, ClassVar, NamedTuple
 
@@ -99,7 +99,7 @@ class EntryList(View):
         rows = [
             line(Span(f" {literal(self.heading)}", "title"), Span(f"   {len(entries)} entries, newest first", "faint"))
         ]
-        height = max(1, (self.size.height or self.fertui.stage_size.height) - 1)
+        height = max(1, self.room.height - 1)
         first = max(0, min(self.row - height // 2, len(entries) - height))
         self.first_shown = first
         for index, entry in enumerate(entries[first : first + height], first):
@@ -109,16 +109,22 @@ class EntryList(View):
     def _row(self, entry: Entry, by: Entry | None, chosen: bool, width: int) -> Line:
         at = self.fertui.local(entry.at)
         when = f"{at:%-d %b}" if entry.whole_day else f"{at:%-d %b %H:%M}"
+        words = cut(literal(self._where(entry) + said(entry, by)), width - 37)
         mark = "×" if by is not None else "▸" if chosen else "!" if entry.doubtful else " "
         row = line(
             col(f"{mark}{entry.number}", 7), col(when, 13), Span("  "), col(entry.kind, 9, "strong", right=False),
-            col(literal(entry.by), 5, "faint", right=False), Span(cut(literal(said(entry, by)), width - 37)),
+            col(literal(entry.by), 5, "faint", right=False), Span(words),
         )  # fmt: skip
         if chosen:
             from fertui.tui.ink import filled
 
             return inked(filled(row, width), "chosen")
         return inked(row, "struck") if by is not None else row
+
+    def _where(self, entry: Entry) -> str:
+        """The loop of an entry in a list of several."""
+        several = not self.wanted.loop and len(self.fertui.snapshot.loops) > 1
+        return f"{entry.loop}: " if several and entry.loop else ""
 
     def chosen(self) -> Entry | None:
         """The entry under the bar."""
@@ -139,7 +145,7 @@ class EntryList(View):
 
     def action_leaf(self, leaves: int) -> None:
         """A screenful on."""
-        self._go(self.row + leaves * (self.size.height - 2))
+        self._go(self.row + leaves * (self.room.height - 2))
 
     def action_top(self) -> None:
         """The newest."""
@@ -172,13 +178,16 @@ def struck_by(history: Sequence[Entry]) -> Mapping[int, Entry]:
     return {entry.supersedes: entry for entry in history if entry.supersedes is not None}
 
 
+CONCENTRATIONS = ("mmol/L", "meq/L", "umol/L")
+
+
 def said(entry: Entry, by: Entry | None = None) -> str:
     """An entry in one line: point, values as written, note; for a struck one who did it and why."""
     words = [entry.point.replace("_", " ")] if entry.point else []
     if entry.kind == "site":
         words.append("site.toml changed")
     else:
-        words += [f"{value.name} {value.text}" for value in entry.values]
+        words += list(_values(entry))
     if entry.supersedes is not None:
         words.insert(0, f"{'strikes' if entry.void else 'corrects'} {entry.supersedes} ({entry.why})")
     if entry.note:
@@ -191,3 +200,22 @@ def said(entry: Entry, by: Entry | None = None) -> str:
         if by is not None
         else text
     )
+
+
+def _values(entry: Entry) -> Iterator[str]:
+    """Values as written, each with its unit; that of concentrations stands once, before the first of them."""
+    from fertui.logbook.kinds import KINDS, unit_of
+
+    told = ""
+    for value in entry.values:
+        name = value.name.removesuffix("_pct").replace("_", " ")
+        unit = unit_of(KINDS[entry.kind], value.name) if entry.kind in KINDS else ""
+        if value.number is None or value.unit or value.written != value.text:
+            yield f"{value.label if value.species else name} {value.written}"
+        elif unit in CONCENTRATIONS:
+            yield f"{name} {value.text}" if told == unit or value.name == "HCO3" else f"{unit}: {name} {value.text}"
+            told = unit if value.name != "HCO3" else told
+        elif name in ("litres", "kg"):
+            yield f"{value.text} {unit}"
+        else:
+            yield f"{name} {value.text} {unit}".rstrip()

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from datetime import datetime, timedelta
 from typing import TYPE_CHECKING
 
@@ -134,3 +135,12 @@ def age(moment: datetime, now: datetime) -> str:
     if passed < timedelta(hours=48):
         return f"{passed / timedelta(hours=1):.0f} h"
     return f"{passed.days} days"
+
+
+def short_leaving(words: str) -> str:
+    """When a value leaves its band, in the room of a gauge row.
+
+    >>> short_leaving("in 6 (0-over 14) days"), short_leaving("in 4 (2-9) days")
+    ('in 6 (0-14+) days', 'in 4 (2-9) days')
+    """
+    return re.sub(r"over (\d+)\)", r"\1+)", words)

@@ -26,6 +26,8 @@ if TYPE_CHECKING:
     from fertui.workbench.carrying_out import PlanItem
 
 Local = Callable[[datetime], datetime]
+USUAL = 76
+"""Columns from which the days without the plan have room beside those with it."""
 COMPARED = ("K share", "Ca share", "Mg share", "EC", "Na", "NH4", "NO3")
 
 
@@ -57,8 +59,9 @@ def draw_plan(
         rows += _marked("act", f"No plan reaches it: {plan.reason}", width)
     if plan.sample_first:
         rows += _marked("watch", "The range is wider than the band: take a sample first, then plan.", width)
-    rows += [*_recipe(plan, snapshot.unit, width), *_doses(plan, local, width), *_acid(plan, held, local), BLANK]
-    rows += [*_outcome(plan, snapshot.unit), BLANK, *_tanks(plan, held, width), *_renewal(plan, width)]
+    rows += [*_recipe(plan, snapshot.unit, width), *_doses(plan, local, width), *_acid(plan, held, local, width), BLANK]
+    rows += [*_outcome(plan, snapshot.unit, width), BLANK, *_texts("notice", plan.notices, width)]
+    rows += [*_tanks(plan, held, width), *_renewal(plan, width)]
     for binding in plan.binding:
         source = f" ({literal(binding.source)})" if binding.source else ""
         rows += _marked(
@@ -70,7 +73,6 @@ def draw_plan(
     if plan.runner_up is not None:
         rows += _texts("next best", [plan.runner_up.difference], width)
     rows += _texts("if done otherwise", [each.text for each in plan.sensitivity], width)
-    rows += _texts("notice", plan.notices, width)
     for caution in plan.cautions:
         rows += _marked(CAUTION_INKS[caution.severity], caution.text, width)
     return rows
@@ -89,12 +91,10 @@ def _recipe(plan: Plan, unit: str, width: int) -> list[Line]:
     from fertui.workbench.units import shown
 
     recipe = plan.recipe
-    rows = [
-        line(
-            Span(" next recipe", "strong"),
-            Span(f"  {unit}, EC {number(recipe.ec, 2)} mS/cm; change on the running one in %", "faint"),
-        )
-    ]
+    about = f"{unit}, EC {number(recipe.ec, 2)} mS/cm; change on the running one in %"
+    first, *more = wrap(about, width - 15)
+    rows = [line(Span(" next recipe", "strong"), Span(f"  {first}", "faint"))]
+    rows += [line(Span(f" {text}", "faint")) for text in more]
     cells: list[str | Span] = []
     for ion, value in recipe.ions_mmol_l.items():
         shown_value, label = shown(ion, value, unit)
@@ -133,32 +133,32 @@ def weighed(each: Weighing) -> str:
 
 
 def _doses(plan: Plan, local: Local, width: int) -> list[Line]:
-    rows = []
+    rows: list[Line] = []
     for step in plan.steps:
         where = step.target.removeprefix("tank:")
         words = f"{local(step.at):%a %-d %b}  {step.kg:g} kg {step.salt} ({step.formula}) into {where}"
-        rows.append(line(Span(" weigh ", "accent"), Span(cut(literal(words), width - 8), "strong")))
+        rows += _labelled("weigh", "accent", words, width)
     return rows
 
 
-def _acid(plan: Plan, held: bool, local: Local) -> list[Line]:
+def _acid(plan: Plan, held: bool, local: Local, width: int) -> list[Line]:
     if held:
-        return [
-            line(
-                Span(" ! ", "act"),
-                "What holds acid is held back: ",
-                Span("k", "accent"),
-                " shows the cautions and asks for the label.",
-            )
-        ]
-    rows = []
+        return _marked("act", "What holds acid is held back; k shows its cautions and asks for the label.", width)
+    rows: list[Line] = []
     for split in plan.acid:
         words = (
             f"{local(split.at):%a %-d %b}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, wait "
             f"{split.wait_min:g} min, retest for pH {number(split.retest_ph)}, stop at {number(split.stop_ph)}"
         )
-        rows.append(line(Span(" acid  ", "act"), Span(literal(words), "strong")))
+        rows += _labelled("acid", "act", words, width)
     return rows
+
+
+def _labelled(label: str, ink: str, text: str, width: int) -> list[Line]:
+    """What is to be done, never cut: what does not fit goes on below."""
+    first, *more = wrap(literal(text), width - 8)
+    below = [line(" " * 7, Span(words, "strong")) for words in more]
+    return [line(Span(fit(f" {label}", 7), ink), Span(first, "strong")), *below]
 
 
 def _renewal(plan: Plan, width: int) -> list[Line]:
@@ -173,15 +173,17 @@ def _renewal(plan: Plan, width: int) -> list[Line]:
     return rows + [row for option in plan.renewal.options for row in _texts(option.name, [option.text], width)]
 
 
-def _outcome(plan: Plan, unit: str) -> list[Line]:
+def _outcome(plan: Plan, unit: str, width: int) -> list[Line]:
     """Now, at the horizon with the plan, at the horizon without."""
     from fertui.tui.views.forecast import _in_unit, _value
 
-    heads = (("now", 18), ("with the plan", 18), ("without", 18), ("band", 11))
+    outlooks = [("now", plan.before), ("with the plan", plan.after)]
+    outlooks += [("without", plan.after_without)] if width >= USUAL else []
+    heads = (*((head, 18) for head, _ in outlooks), ("band", 10))
     rows = [line(col("", 14), *(col(head, size, "faint") for head, size in heads))]
     for what in COMPARED:
         cells, label, band = [], "", ""
-        for outlook in (plan.before, plan.after, plan.after_without):
+        for _, outlook in outlooks:
             state = outlook.points.get(plan.point)
             value, name = _in_unit(None if state is None else _value(state, what), what, unit)
             if value is None:
@@ -201,7 +203,7 @@ def _outcome(plan: Plan, unit: str) -> list[Line]:
                 line(
                     col(f" {what} {label}".replace("share %", "share, %"), 14, right=False),
                     *cells,
-                    col(band, 11, "faint"),
+                    col(band, 10, "faint"),
                 )
             )
     return rows

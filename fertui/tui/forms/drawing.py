@@ -156,6 +156,17 @@ def _padded(row: Line, width: int) -> Line:
     return filled(row, width)
 
 
+def hint_of(each: Asked) -> str:
+    """What can be typed into a field that takes no number.
+
+    >>> hint_of(Asked("point", "point", choices=("feed", "drain")))
+    'Space, Left and Right choose, or the first letter.'
+    """
+    if each.name == "at":
+        return "Empty: now. Or 07:30 (today), yesterday 16:05, 2026-12-01 07:30; a date alone: that whole day."
+    return "Space, Left and Right choose, or the first letter." if each.choices else ""
+
+
 def messages(words: Sequence[tuple[str, str]], width: int, height: int) -> list[Line]:
     """Sentences in their ink, wrapped, at most ``height`` lines."""
     rows = [line(Span(f" {text}", ink)) for words, ink in words for text in wrap(literal(words), width - 2)]

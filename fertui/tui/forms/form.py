@@ -11,7 +11,7 @@ from textual.binding import Binding
 from fertui.tui.desk import Answer
 from fertui.tui.figures import MARKS
 from fertui.tui.forms.answers import Answers
-from fertui.tui.forms.drawing import Last, draw_form, in_unit, last_of, messages
+from fertui.tui.forms.drawing import Last, draw_form, hint_of, in_unit, last_of, messages
 from fertui.tui.forms.spec import Spec, Texts, entries_of
 from fertui.tui.ink import BLANK, Line, Span, line, literal
 from fertui.tui.snapshot import UNITS, Ask, Snapshot
@@ -96,15 +96,14 @@ class Form(View):
             Span(f" {self.spec.title}, {literal(self.loop)}", "title"),
             Span(f"   {unit}; {how_to_save(snapshot.initials)}", "faint"),
         )
-        height = max(1, self.stage_height - 1 - self._foot)
+        height = max(1, self.room.height - 1 - self._foot)
         top = max(0, min(at - height + 2, len(rows) - height))
         shown = [*rows[top : top + height], *[BLANK] * (height - len(rows))]
-        return [title, *shown, *messages([*self._checked, *self._words], width, self._foot)]
+        return [title, *shown, *messages(self._said(), width, self._foot)]
 
-    @property
-    def stage_height(self) -> int:
-        """Rows there are for the form."""
-        return self.size.height or self.fertui.stage_size.height
+    def _said(self) -> list[tuple[str, str]]:
+        """What is said at the foot: checks, what is asked back, else what the field takes."""
+        return [*self._checked, *self._words] or [(hint_of(self.answers.current), "faint")]
 
     @property
     def _foot(self) -> int:
@@ -211,7 +210,7 @@ class Form(View):
         number, text = self.answers.at, self.answers.texts[self.answers.at]
         each = self.answers.current
         settled = (number, text) in self.answers.settled or number in self.answers.understood
-        if not text or each.choices or each.words or settled:
+        if not text or not each.is_read or settled:
             self._words = []
             go_on()
             return

@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from fertui.chemistry.names import IONS
-from fertui.tui.figures import MARKS, amount, number, point_name, unit_and_species
+from fertui.tui.figures import MARKS, age, amount, number, point_name, unit_and_species
 from fertui.tui.ink import BLANK, Line, Span, beside, col, fit, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import View, waiting
@@ -75,7 +75,7 @@ def _heading(report: Report, unit: str, room: int) -> list[Line]:
     method = f" ({literal(report.method.replace('_', ' '))})" if report.method else ""
     feed = f"; drip of {_day(report.feed)}" if report.feed else "; no analysis of the drip"
     reference = "" if report.ec_reference is None else f", normalised to EC {number(report.ec_reference)} mS/cm"
-    words = f"{managed} of {_day(report.managed)}{method}{feed}{reference}"
+    words = f"{managed} of {_day(report.managed)}{_old(report)}{method}{feed}{reference}"
     return [*(line(Span(f" {text}", "title")) for text in wrap(words, room - 2)), _heads(unit, managed, room)]
 
 
@@ -86,6 +86,13 @@ def _heads(first: str, managed: str, room: int, ink: str = "faint") -> Line:
 
 def _day(seen: Seen | None) -> str:
     return "no date" if seen is None else f"{seen.at:%a %-d %b}"
+
+
+def _old(report: Report) -> str:
+    """How old the report is, where that is more than two weeks."""
+    if report.managed is None or (report.at - report.managed.at).days <= 14:
+        return ""
+    return f", {age(report.managed.at, report.at)} old"
 
 
 def _rows(rows: Sequence[AnalysisRow], unit: str, room: int) -> list[Line]:

@@ -7,8 +7,8 @@ from typing import TYPE_CHECKING, Any, ClassVar
 from textual.binding import Binding
 
 from fertui.tui.chart import Curve, draw_chart
-from fertui.tui.figures import LEAVING, MARKS, OUT, band_words, digits_for, estimated, point_name
-from fertui.tui.ink import BLANK, Line, Span, beside, col, fit, line, literal, wrap
+from fertui.tui.figures import LEAVING, MARKS, OUT, band_words, digits_for, estimated, point_name, short_leaving
+from fertui.tui.ink import BLANK, Line, Span, beside, col, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.supposing import WHAT_IFS
 from fertui.tui.view import View, waiting
@@ -18,6 +18,8 @@ if TYPE_CHECKING:
     from fertui.estimate.points import Estimated, PointState
 
 HORIZONS = (7, 14, 28)
+USUAL = 76
+"""Columns from which the first day has room beside the last."""
 WIDE = 112
 CHART_ROWS = 14
 
@@ -124,18 +126,20 @@ class ForecastView(View):
 
     def _title(self, ahead: Forecast, width: int) -> list[Line]:
         inputs = {"plan": "with the plan entered", "routine": "as logged lately"}.get(ahead.inputs, ahead.inputs)
-        return [
-            line(
-                Span(f" {point_name(self.point)}, {self.horizon} days ahead, {inputs}", "title"),
-                Span("   80 % range in brackets", "faint"),
-            )
-        ]
+        title = f" {point_name(self.point)}, {self.horizon} days ahead, {inputs}"
+        note = "   80 % range in brackets"
+        if len(title + note) > width:
+            return [line(Span(title, "title")), line(Span(note[2:], "faint"))]
+        return [line(Span(title, "title"), Span(note, "faint"))]
 
     def _table(
         self, rows: list[LeavesBand], ahead: Forecast, other: Forecast | None, unit: str, width: int
     ) -> list[Line]:
-        heads = ("now", f"in {self.horizon} days") if other is None else (f"in {self.horizon} d, as is", "as supposed")
-        head = line(col("", 15), col(heads[0], 17, "faint"), col(heads[1], 17, "faint"), Span("  leaves band", "faint"))
+        heads = ("in 1 day", f"in {self.horizon} days")
+        heads = heads if other is None else (f"in {self.horizon} d, as is", "as supposed")
+        leaving_head = Span("  leaves its band, chance", "faint")
+        shown = heads if width >= USUAL else heads[1:]
+        head = line(col("", 15), *(col(text, 17, "faint") for text in shown), leaving_head)
         table = [head]
         supposed = {} if other is None else {(each.point, each.what): each for each in other.leaves_band}
         for index, each in enumerate(rows):
@@ -149,7 +153,7 @@ class ForecastView(View):
             else:
                 left, right = _value(last, each.what), _value(other.days[-1].points[each.point], each.what)
                 leaving = supposed.get((each.point, each.what), each)
-            table.append(_row(each, left, right, leaving, unit, self.horizon, index == self.row))
+            table.append(_row(each, left, right, leaving, unit, self.horizon, index == self.row, width >= USUAL))
         return table
 
     def _supposed_words(self) -> list[Line]:
@@ -269,19 +273,23 @@ def _row(
     unit: str,
     days: int,
     chosen: bool,
+    roomy: bool,
 ) -> Line:
+    """What may leave its band, first and last day, when; without the first day and shorter where there is no room."""
     from fertui.workbench.today import in_words
 
     left, name = _in_unit(left, each.what, unit)
     right, _ = _in_unit(right, each.what, unit)
     out, probability = leaving.days.value == 0, leaving.probability
     ink = OUT if out else LEAVING if probability >= 0.1 else "good"
-    likely = "" if out or probability <= 0 else f" {100 * probability:.0f} %"
+    likely = "" if out or probability <= 0 else f", {100 * probability:.0f} %"
     label = f" {each.what} {name}".replace(" share %", " share, %")
     words = in_words(leaving, days)
+    words = words if roomy else short_leaving(words)
     return line(
-        col(label, 15, "chosen" if chosen else "strong", right=False), col(_words(left, name), 17), col(_words(right,
-        name), 17),
+        col(label, 15, "chosen" if chosen else "strong", right=False),
+        *([col(_words(left, name), 17)] if roomy else []),
+        col(_words(right, name), 17),
         Span(f"  {MARKS[ink]} {words}{likely}", ink if ink != "good" else "plain"),
     )  # fmt: skip
 
@@ -317,5 +325,5 @@ def _assumed(ahead: Forecast, width: int) -> list[Line]:
     rows: list[Line] = []
     for text in ahead.assumed:
         first, *more = wrap(literal(text), width - 12)
-        rows += [line(Span(fit(" assumed: ", 11), "faint"), first), *(line(" " * 11, words) for words in more)]
+        rows += [line(Span(" assumed: ", "faint"), first), *(line(" " * 10, words) for words in more)]
     return rows

@@ -17,6 +17,8 @@ if TYPE_CHECKING:
 
 
 WIDE = 112
+USUAL = 76
+"""Columns from which formulas and tank sizes have room."""
 
 
 class SuppliesView(View):
@@ -60,7 +62,7 @@ class SuppliesView(View):
         self.row = max(0, min(self.row, len(shelf) - 1))
         tanks: tuple[StockRow, ...] = snapshot.get(Ask("stock_rows", snapshot.loop)) or ()
         trouble = snapshot.trouble(Ask("stock_rows", snapshot.loop))
-        above = waiting(snapshot, Ask("stock_rows", snapshot.loop), "", width) if trouble else self._tanks(tanks)
+        above = waiting(snapshot, Ask("stock_rows", snapshot.loop), "", width) if trouble else self._tanks(tanks, width)
         rows = [*above, BLANK, line(Span(" Shelf", "title")), _shelf_head(width)]
         for index, supply in enumerate(shelf):
             if index == self.row:
@@ -68,14 +70,12 @@ class SuppliesView(View):
             rows.append(_supply(supply, index == self.row, width))
         return rows
 
-    def _tanks(self, tanks: tuple[StockRow, ...]) -> list[Line]:
-        head = line(
-            Span(" Stock tanks", "title"),
-            *(
-                col(text, size, "faint")
-                for text, size in (("size", 19), ("mixed", 12), ("left", 12), ("days left", 12))
-            ),
-        )
+    def _tanks(self, tanks: tuple[StockRow, ...], width: int) -> list[Line]:
+        roomy = width >= USUAL
+        sizes = [("size", 13)] if roomy else []
+        heads = [*sizes, ("mixed", 13), ("left", 9), ("days left", 12)]
+        title = col(" Stock tanks", 20, "title", right=False)
+        head = line(title, *(col(text, size, "faint") for text, size in heads))
         rows = [head]
         for tank in tanks:
             mixed = "never logged" if tank.mixed_at is None else f"{age(tank.mixed_at, self.fertui.moment)} ago"
@@ -93,10 +93,10 @@ class SuppliesView(View):
             name = literal(f" {tank.name}{' (' + tank.letter + ')' if tank.letter else ''}")
             rows.append(
                 line(
-                    col(name, 22, "strong", right=False),
-                    col(f"{tank.litres:g} L {tank.dilution:g}x", 10),
-                    col(mixed, 12),
-                    col(left, 12),
+                    col(name, 20, "strong", right=False),
+                    *([col(f"{tank.litres:g} L {tank.dilution:g}x", 13)] if roomy else []),
+                    col(mixed, 13),
+                    col(left, 9),
                     col(days, 12, ink),
                 )
             )
@@ -141,8 +141,8 @@ class SuppliesView(View):
 def _shelf_head(width: int) -> Line:
     dear = [col("price", 12, "faint")] if width >= WIDE else []
     heads = [
-        col("name", 30, "faint", False),
-        col("formula", 24, "faint", False),
+        col("name", 31, "faint", False),
+        *([col("formula", 23, "faint", False)] if width >= USUAL else []),
         col("left", 9, "faint"),
         *dear,
         Span("  label", "faint"),
@@ -155,10 +155,11 @@ def _supply(supply: SupplyRow, chosen: bool, width: int) -> Line:
     price = "-" if supply.price_per_kg is None else f"{supply.price_per_kg:g} a kg"
     dear = [col(price, 12)] if width >= WIDE else []
     density = f", {supply.density_kg_per_l:.3g} kg/L" if supply.density_kg_per_l is not None and width >= WIDE else ""
+    formula = [col(literal(supply.formula), 23, right=False)] if width >= USUAL else []
     mark = "!" if len(supply.hazards) > 1 else " "
     row = line(
-        Span(f"▸{mark}" if chosen else f" {mark}", "watch"), col(literal(supply.name), 30, "strong", right=False),
-        col(literal(supply.formula), 24, right=False), col(left, 9), *dear,
-        Span("  " + cut(literal(supply.label + density), width - 67)),
+        Span(f"▸{mark}" if chosen else f" {mark}", "watch"), col(literal(supply.name), 31, "strong", right=False),
+        *formula, col(left, 9), *dear,
+        Span("  " + cut(literal(supply.label + density), max(width - (67 if formula else 44), 8))),
     )  # fmt: skip
     return inked(filled(row, width), "chosen") if chosen else row

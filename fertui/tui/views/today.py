@@ -2,14 +2,24 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
 from fertui.tui import charts
-from fertui.tui.figures import MARKS, age, digits_for, estimated, number, point_name, span, standing, unit_and_species
+from fertui.tui.figures import (
+    MARKS,
+    age,
+    digits_for,
+    estimated,
+    number,
+    point_name,
+    short_leaving,
+    span,
+    standing,
+    unit_and_species,
+)
 from fertui.tui.ink import BLANK, Line, Span, beside, filled, fit, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import View, waiting
@@ -225,15 +235,6 @@ def gauges(state: Today, snapshot: Snapshot, width: int) -> list[Line]:
         mark = Span(f"{MARKS[ink]} {short_leaving(each.leaves)}", ink if ink != "good" else "plain")
         rows.append(line(*row, *picture, " " if gauge_width else "", *spark[0], spark[1], mark))
     return rows
-
-
-def short_leaving(words: str) -> str:
-    """When a value leaves its band, in the room of a gauge row.
-
-    >>> short_leaving("in 6 (0-over 14) days"), short_leaving("in 4 (2-9) days")
-    ('in 6 (0-14+) days', 'in 4 (2-9) days')
-    """
-    return re.sub(r"over (\d+)\)", r"\1+)", words)
 
 
 def _gauge_ink(each: Gauge) -> str:
