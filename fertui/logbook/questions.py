@@ -23,6 +23,7 @@ ASKERS: tuple[Asker, ...] = (
     meters.backwards,
     meters.jump,
     meters.against_amount,
+    amounts.out_by_ten,
     amounts.per_area,
     amounts.drain_over_irrigation,
     amounts.over_full,

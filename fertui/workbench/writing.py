@@ -40,9 +40,7 @@ class Writing(Answers):
 
     def questions(self, kind: str, fields: Mapping[str, str], loop: str | None = None) -> tuple[Question, ...]:
         """What a careful colleague would ask before this entry is written."""
-        from fertui.logbook.questions import questions
-
-        return questions(self._read(kind, fields, loop, whole=False), self.book, self.site)
+        return self._questions(self._read(kind, fields, loop, whole=False))
 
     def check_analysis(self, fields: Mapping[str, str], loop: str | None = None) -> tuple[Check, ...]:
         """Charge balance and EC check of an analysis before it is saved."""
@@ -52,11 +50,11 @@ class Writing(Answers):
 
     def record(self, kind: str, fields: Mapping[str, str], loop: str | None = None, asked: bool = True) -> Entry:
         """Append one entry, return it as read back; ``asked`` False: unanswered questions are kept with it as flags."""
-        from fertui.logbook.questions import flagged, questions
+        from fertui.logbook.questions import flagged
 
         entry = self._read(kind, fields, loop)
         if not asked:
-            entry = flagged(entry, questions(entry, self.book, self.site))
+            entry = flagged(entry, self._questions(entry))
         return self._stored(self.book.append(entry))
 
     def record_all(self, lines: Sequence[tuple[str, Mapping[str, str]]], loop: str | None = None) -> tuple[Entry, ...]:
@@ -139,6 +137,12 @@ class Writing(Answers):
         if kind == "acid":
             fields = {"cautions": "not acknowledged", **fields}
         return entry_from_text(kind, fields, self.site, self.loop(loop), datetime.now(UTC), whole=whole)
+
+    def _questions(self, entry: Entry) -> tuple[Question, ...]:
+        from fertui.logbook.questions import questions
+        from fertui.workbench.pairs import pairs
+
+        return (*questions(entry, self.book, self.site), *pairs(entry, self.book, self.site))
 
     def _stored(self, numbers: Sequence[int]) -> Entry:
         return self.book.entry(numbers[-1])

@@ -70,6 +70,32 @@ def test_the_same_within_minutes_is_asked_about_once(book: Logbook, say: Say) ->
     assert "duplicate" not in asked(say("reading", point="feed", EC="2.7"), book)
 
 
+@pytest.mark.parametrize(
+    ("written", "suggestion"), [("25", "2.5"), ("280", "28"), ("0.26", "2.6"), ("2.4", None), ("9", None)]
+)
+def test_stock_unlike_the_last_of_that_tank_is_asked_about(
+    book: Logbook, say: Say, written: str, suggestion: str | None
+) -> None:
+    book.append(say("stock", at="2026-06-29", tank="calcium", litres="2.6"))
+    book.append(say("stock", at="2026-06-29", tank="sulfate", litres="26"))
+    for when in ("2026-06-30", "2026-06-30 07:30"):
+        found = asked(say("stock", at=when, tank="calcium", litres=written), book)
+        assert found.get("out_by_ten", Question("", "")).suggestion == (suggestion or "")
+    assert "out_by_ten" not in asked(say("stock", at="2026-06-30", tank="sulfate", litres="25"), book)
+
+
+def test_stock_of_a_week_is_not_ten_times_that_of_a_day(book: Logbook, say: Say) -> None:
+    book.append(say("stock", at="2026-06-20 08:00", tank="calcium", litres="2.6"))
+    assert "out_by_ten" not in asked(say("stock", at="2026-06-30 08:00", tank="calcium", litres="25"), book)
+
+
+def test_acid_unlike_the_last_into_that_tank_is_asked_about(book: Logbook, say: Say) -> None:
+    book.append(say("acid", at="2026-06-29", acid="nitric 38", litres="1.1"))
+    found = asked(say("acid", at="2026-06-30", acid="nitric 38", litres="11"), book)
+    assert found["out_by_ten"].text == "nitric 38, 11 L? The last was 1.1 L (entry 1). Out by ten?"
+    assert "out_by_ten" not in asked(say("acid", at="2026-06-30", acid="nitric 38", tank="tank", litres="11"), book)
+
+
 def test_dates_long_past_and_jumping_clocks_are_asked_about(book: Logbook, say: Say) -> None:
     assert "long_past" in asked(say("reading", point="feed", EC="2.6", at="2025-07-01"), book)
     assert "long_past" not in asked(say("analysis", point="feed", EC="2.6", at="2026-05-20"), book)

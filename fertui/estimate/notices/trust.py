@@ -18,6 +18,7 @@ WORDS = {
     "meter_jump": "meter jumped", "meter_amount": "meter and amount differ", "per_area": "litres per m2?",
     "drain_over_irrigation": "more drain than irrigation", "duplicate": "entered twice?", "clock": "clock wrong?",
     "over_full": "more than the tank holds", "instrument_off": "meter known to be off",
+    "pair": "salts that precipitate in one stock tank",
 }  # fmt: skip
 """Questions nobody answered that make an amount or reading doubtful."""
 

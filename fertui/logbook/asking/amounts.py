@@ -3,13 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from datetime import timedelta
 
 from fertui.logbook.asking.question import Question, Setting
+from fertui.logbook.asking.values import TEN
+from fertui.logbook.entries import Entry
 
 MOST_L_PER_M2_D = 20.0
 LEAST_L_PER_M2_D = 0.02
 """Water of a loop beyond these is asked about; 0.2 to 10 L/m2/d are met over the year (common practice, no source)."""
 
+A_DAY = timedelta(days=1)
 ROOM = 1.02
 """A tank may be this much fuller than its nominal volume before it is asked about."""
 
@@ -26,6 +30,33 @@ def per_area(setting: Setting) -> Iterator[Question]:
         hint = "Was it litres per m2, or m3?" if few else "Is the unit right?"
         text = f"{field.name} {value.text} is {per_m2:.3g} L/m2 on {setting.loop.area_m2:g} m2. {hint}"
         yield Question("per_area", text, field.name, value.text, f"{number * setting.loop.area_m2:.6g}" if few else "")
+
+
+def out_by_ten(setting: Setting) -> Iterator[Question]:
+    """Ten times the stock of a tank, or the acid into one, that was logged last, counted by the day; or a tenth."""
+    entry, last = setting.entry, _last_alike(setting)
+    litres = entry.number_of("litres")
+    if entry.kind not in ("stock", "acid") or last is None or not litres:
+        return
+    before = last.number_of("litres") or 0.0
+    since = (entry.at - last.at) / A_DAY - last.whole_day
+    expected = before if entry.whole_day else before * max(1.0, since)
+    if litres >= TEN[0] * expected > 0 or TEN[0] <= before / litres <= TEN[1]:
+        tank, acid = entry.text_of("tank"), entry.text_of("acid")
+        what = f"stock {tank}" if entry.kind == "stock" else f"{acid} into {tank}" if tank else acid
+        text = f"{what}, {litres:g} L? The last was {before:g} L (entry {last.number}). Out by ten?"
+        meant = litres / 10 if litres > before else litres * 10
+        yield Question("out_by_ten", text, "litres", entry.text_of("litres"), f"{meant:.4g}")
+
+
+def _last_alike(setting: Setting) -> Entry | None:
+    """The last entry about the same stock tank, or the same acid into the same tank."""
+    same = [
+        each
+        for each in setting.past
+        if all(each.text_of(name) == setting.entry.text_of(name) for name in ("tank", "acid")) and not each.doubtful
+    ]
+    return next((each for each in reversed(same) if each.number_of("litres")), None)
 
 
 def drain_over_irrigation(setting: Setting) -> Iterator[Question]:
