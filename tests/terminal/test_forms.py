@@ -7,12 +7,13 @@ characters and 16, both without the initials.
 from __future__ import annotations
 
 import re
-import sys
+import sqlite3
+from contextlib import closing
 from pathlib import Path
 
 import pytest
-from conftest import Opened, own_folders
-from pseudo_terminal import Command, PseudoTerminal
+from conftest import Opened
+from pseudo_terminal import PseudoTerminal
 
 from fertui.logbook.entries import Entry
 from fertui.logbook.kinds import KINDS
@@ -173,14 +174,27 @@ def test_keys_typed_ahead_of_a_slow_line_land_in_their_fields(counting: Counted)
     assert "5.4_______" in text
 
 
-def test_keys_pressed_before_the_site_is_open_wait_for_it(site: Path, tmp_path: Path) -> None:
-    """Typed at the first paint of the program as people start it, which comes before the site is read."""
-    with PseudoTerminal(
-        Command([sys.executable, "-m", "fertui", str(site)]), (80, 24), own_folders(tmp_path)
-    ) as terminal:
+def test_keys_pressed_before_the_site_is_open_wait_for_it(site: Path, open_terminal: Opened) -> None:
+    with closing(sqlite3.connect(site / "logbook.sqlite3", isolation_level=None)) as other:
+        other.execute("PRAGMA locking_mode = EXCLUSIVE")
+        other.execute("BEGIN EXCLUSIVE")
+        terminal = open_terminal(site)
         terminal.until_text("Today")
-        terminal.type(b"r2.61\r")
-        terminal.until_text("= 2.61 mS/cm")
+        terminal.settle()
+        assert "Demo nursery" not in terminal.text
+        terminal.press("r", "2.61", "enter")
+        assert "Demo nursery" not in terminal.text
+    terminal.until_text("= 2.61 mS/cm")
+
+
+def test_leaving_does_not_wait_for_a_site_that_does_not_open(site: Path, open_terminal: Opened) -> None:
+    with closing(sqlite3.connect(site / "logbook.sqlite3", isolation_level=None)) as other:
+        other.execute("PRAGMA locking_mode = EXCLUSIVE")
+        other.execute("BEGIN EXCLUSIVE")
+        terminal = open_terminal(site)
+        terminal.until_text("Today")
+        terminal.type(b"q")
+        assert terminal.wait() == 0
 
 
 def test_a_newcomer_who_types_initials_into_a_number_is_told_how_to_save(tmp_path: Path, open_terminal: Opened) -> None:
