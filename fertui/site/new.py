@@ -208,7 +208,7 @@ def _with_routine(site: Site, loop: Loop) -> Loop:
     water = crop_preset(loop.crop).water
     sources = {**loop.sources, "feed_EC": aim.source, "crop_water_l_per_m2_d": water.source.shown}
     if loop.layout != "shared-tank":
-        sources["drain_fraction"] = "the classic checkpoint of slabs, 30 % (Greenhouse Canada, rootzone series 2013)"
+        sources["drain_fraction"] = "the usual checkpoint of slabs, 30 % (common practice, no source)"
     return loop._replace(feed_ec=aim.ec, feed_ph=aim.ph, crop_water_l_per_m2_d=water.value, sources=sources)
 
 

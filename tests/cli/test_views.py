@@ -62,6 +62,22 @@ def test_a_site_just_made_has_nothing_to_look_at(capsys: pytest.CaptureFixture[s
     assert "  !  Take a sample" in out
 
 
+def test_an_ion_goes_by_the_name_of_its_unit_in_every_table(
+    capsys: pytest.CaptureFixture[str], demo_once: Path
+) -> None:
+    _, out, _ = printed(capsys, "today", str(demo_once), "--at", AT, "--unit", "mg/L")
+    assert len([line for line in out.splitlines() if line.startswith("NH4-N ")]) == 2
+    assert [line for line in out.splitlines() if line.startswith("NH4 ")] == []
+
+
+def test_the_logbook_tells_a_changed_site_in_one_line(capsys: pytest.CaptureFixture[str], demo: Path) -> None:
+    bench = open_site(demo)
+    bench.change_site("site.name", "Other nursery", "MK")
+    _, out, _ = printed(capsys, "logbook", str(demo), "--kind", "site")
+    assert len(out.splitlines()) == len(bench.history("site"))
+    assert " lines" in out.splitlines()[-1]
+
+
 def test_a_water_typed_in_another_unit_is_looked_at(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
     words = "--crop lettuce --medium none --layout shared-tank --area 180 --tank 700 --water well --timezone UTC"
     report = "EC 0.55, Ca 80 mg/L, Mg 12 mg/L, Na 16 mg/L, Cl 21 mg/L, SO4 24 mg/L, CaCO3 240 mg/L"

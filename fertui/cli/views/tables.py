@@ -28,12 +28,17 @@ def entry_text(entry: Entry, timezone: str) -> str:
         parts.append(f"{'strikes' if entry.void else 'corrects'} {entry.supersedes}: {entry.why}")
     if entry.doubtful:
         parts.append(f"doubtful: {entry.doubtful}")
+    if entry.flags:
+        parts.append(f"asked, not answered: {', '.join(entry.flags.split())}")
     if entry.note:
         parts.append(f'"{entry.note}"')
     return "  ".join(part for part in parts if part)
 
 
 def _value(value: Value) -> str:
+    """A value as written, with its name; a text of many lines by their number."""
+    if "\n" in value.written:
+        return f"{value.name} of {len(value.written.splitlines())} lines"
     species = f" as {value.species}" if value.species and value.species != value.name else ""
     return f"{value.name}={value.written}{species}"
 

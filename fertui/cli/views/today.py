@@ -8,7 +8,7 @@ from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.cli.views import as_json, words
 from fertui.paper.page import columns, folded
 from fertui.workbench.glance import Seen
-from fertui.workbench.today import NOT_KNOWN, Today
+from fertui.workbench.today import NOT_KNOWN, Gauge, Today
 
 POINT_WORDS = {
     "feed": "drip",
@@ -68,10 +68,17 @@ def _gauges(state: Today, unit: str) -> list[str]:
     where = POINT_WORDS[state.managed_point]
     rows = [(where, "now, 80 % range", "band", "leaves its band")]
     for gauge in state.gauges:
-        scale, shown = (1.0, gauge.unit) if gauge.unit != "mmol/L" else (words.factor(gauge.what, unit), unit)
+        name, scale, shown = _in_unit(gauge, unit)
         now = f"{words.ranged(gauge.now, scale, gauge.unit)} {shown}"
-        rows.append((gauge.what, now, words.band(gauge.now.band, scale), gauge.leaves))
+        rows.append((name, now, words.band(gauge.now.band, scale), gauge.leaves))
     return columns(rows)
+
+
+def _in_unit(gauge: Gauge, unit: str) -> tuple[str, float, str]:
+    """What a gauge is called in the unit shown, what its number is multiplied by, and its unit."""
+    if gauge.unit != "mmol/L":
+        return gauge.what, 1.0, gauge.unit
+    return words.label(gauge.what, unit), words.factor(gauge.what, unit), unit
 
 
 def _wanted(state: Today, unit: str) -> list[str]:
@@ -79,9 +86,9 @@ def _wanted(state: Today, unit: str) -> list[str]:
     water = f"not known: the water {state.unanalysed_water!r} was never analysed"
     rows = [(POINT_WORDS[state.managed_point], "now", "band")]
     for gauge in state.gauges:
-        scale, shown = (1.0, gauge.unit) if gauge.unit != "mmol/L" else (words.factor(gauge.what, unit), unit)
+        name, scale, shown = _in_unit(gauge, unit)
         of_water = gauge.what in ("Na", "Cl") and state.unanalysed_water is not None
-        rows.append((gauge.what, water if of_water else NOT_KNOWN, f"{words.band(gauge.now.band, scale)} {shown}"))
+        rows.append((name, water if of_water else NOT_KNOWN, f"{words.band(gauge.now.band, scale)} {shown}"))
     return columns(rows)
 
 
