@@ -50,7 +50,7 @@ def _history(bench: Bench, ask: Ask, moment: datetime) -> Any:
 
 USE_CASES: dict[str, UseCase] = {
     "overview": _overview, "balance": _balance, "forecast": _forecast, "stock": _untimed, "acid": _untimed,
-    "aims": _untimed, "previous": _untimed,
+    "aims": _untimed,
     "check": _whole, "history": _history, "open_plans": _untimed, "site_rows": _whole, "supplies_rows": _whole,
     "news": _whole,
 }  # fmt: skip

@@ -29,12 +29,13 @@ class Writing(Answers):
 
         return echo(kind, name, text, self.site, self.loop(loop))
 
-    def previous(self, loop: str | None = None) -> Mapping[Place, LastValue]:
+    def previous(self, loop: str | None = None, at: datetime | None = None) -> Mapping[Place, LastValue]:
         """The last value for every place a form asks for."""
         from fertui.workbench.entering import previous
 
-        chosen, since = self.loop(loop).name, now() - GLANCED
-        recent = self.book.entries(loop=chosen, since=since)
+        chosen, at = self.loop(loop).name, at or now()
+        since = at - GLANCED
+        recent = self.book.entries(loop=chosen, since=since, at=at)
         old = (entry for entry in self._in_force(recent, since) if entry.loop == chosen)
         return previous((*old, *recent))
 
@@ -62,12 +63,25 @@ class Writing(Answers):
         entries = [self._read(kind, fields, loop) for kind, fields in lines]
         return tuple(self.book.entry(number) for number in self.book.append(entries))
 
-    def supersede(self, number: int, fields: Mapping[str, str], why: str, by: str) -> Entry:
-        """Correct an entry by a new one; the old one stays visible."""
+    def supersede(self, number: int, fields: Mapping[str, str], why: str, by: str, asked: bool = True) -> Entry:
+        """Correct an entry by a new one; the old one stays visible. ``asked`` as in ``record``."""
+        from fertui.logbook.questions import flagged
+
+        entry = self._corrected(number, fields, why, by)
+        if not asked:
+            entry = flagged(entry, self._questions(entry))
+        return self._stored(self.book.append(entry))
+
+    def questions_of_correction(
+        self, number: int, fields: Mapping[str, str], why: str, by: str
+    ) -> tuple[Question, ...]:
+        """What is odd about an entry as it would be after a correction."""
+        return self._questions(self._corrected(number, fields, why, by))
+
+    def _corrected(self, number: int, fields: Mapping[str, str], why: str, by: str) -> Entry:
         from fertui.logbook.parse import corrected
 
-        old = self.book.entry(number)
-        return self._stored(self.book.append(corrected(old, fields, self.site, datetime.now(UTC), why=why, by=by)))
+        return corrected(self.book.entry(number), fields, self.site, datetime.now(UTC), why=why, by=by)
 
     def void(self, number: int, why: str, by: str) -> Entry:
         """Strike an entry; it stays visible."""

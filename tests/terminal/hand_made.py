@@ -96,8 +96,7 @@ class HandMade(Bench):
             g,
             watch,
             5,
-            ("sample of the drain sent Mon 30 Nov",),
-            (),
+            awaited=("sample of the drain sent Mon 30 Nov",),
         )
 
     def overview(self, at=None, known=None):
