@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 from zoneinfo import ZoneInfo
 
+from fertui.cli.confirming import confirmed, say_how_to_undo
 from fertui.cli.exit_codes import FINE, NO
 from fertui.cli.options import (
     Options,
@@ -70,13 +71,14 @@ def completion(options: Options) -> int:
 
 
 def record(options: Options) -> int:
-    """``record``: append one entry, print it as read back."""
+    """``record``: append one entry, print it as read back; what is odd about it is asked first."""
     bench = open_site(options.site)
     fields = read_fields(options.values)
     fields.setdefault("by", os.environ.get("FERTUI_OPERATOR", ""))
-    for question in bench.questions(options.kind, fields, options.loop):
-        print(f"? {question.text}", file=sys.stderr)
-    _print_entry(bench, bench.record(options.kind, fields, options.loop, asked=False))
+    odd = bench.questions(options.kind, fields, options.loop) if fields["by"] else ()
+    entry = bench.record(options.kind, fields, options.loop, asked=confirmed(odd))
+    _print_entry(bench, entry)
+    say_how_to_undo(entry, options.site)
     return FINE
 
 
@@ -84,7 +86,11 @@ def supersede(options: Options) -> int:
     """``supersede``: a new entry that corrects an old one."""
     bench = open_site(options.site)
     fields, why, by = _correction(options)
-    _print_entry(bench, bench.supersede(read_whole(options.number, "NUMBER"), fields, why, by))
+    number = read_whole(options.number, "NUMBER")
+    odd = bench.questions_of_correction(number, fields, why, by)
+    entry = bench.supersede(number, fields, why, by, asked=confirmed(odd))
+    _print_entry(bench, entry)
+    say_how_to_undo(entry, options.site)
     return FINE
 
 
