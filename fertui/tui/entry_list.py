@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any, ClassVar, NamedTuple
 
 from textual.binding import Binding
 
-from fertui.tui.ink import BLANK, Line, Span, col, cut, inked, line, literal
+from fertui.tui.ink import BLANK, Line, Span, barred, col, cut, inked, line, literal
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import SCROLLING, View, waiting
 
@@ -116,9 +116,7 @@ class EntryList(View):
             col(literal(entry.by), 5, "faint", right=False), Span(words),
         )  # fmt: skip
         if chosen:
-            from fertui.tui.ink import filled
-
-            return inked(filled(row, width), "chosen")
+            return barred(row, width)
         return inked(row, "struck") if by is not None else row
 
     def _where(self, entry: Entry) -> str:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import unicodedata
 from collections.abc import Iterable, Sequence
 from functools import lru_cache
+from itertools import accumulate
 from textwrap import wrap as wrap_words
 from typing import NamedTuple
 
@@ -148,6 +149,21 @@ def width_of(spans: Line) -> int:
 def inked(spans: Line, ink: str) -> Line:
     """The same line in another ink."""
     return (Span("".join(span.text for span in spans), ink),)
+
+
+BAR = 80
+"""Columns of the bar on a chosen row: on a wide screen it must not cost more to move than on a usual one."""
+
+
+def barred(spans: Line, width: int) -> Line:
+    """The line under the bar, filled to ``width`` columns.
+
+    >>> [(span.ink, len(span.text)) for span in barred(line("x" * 100), 120)]
+    [('chosen', 80), ('plain', 40)]
+    """
+    text = "".join(span.text for span in filled(spans, width))
+    end = sum(1 for reach in accumulate(map(cells, text)) if reach <= BAR)
+    return line(Span(text[:end], "chosen"), Span(text[end:]))
 
 
 def filled(spans: Line, width: int, ink: str = "plain") -> Line:

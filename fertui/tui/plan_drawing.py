@@ -17,7 +17,7 @@ from fertui.tui.figures import (
     standing,
     unit_and_species,
 )
-from fertui.tui.ink import BLANK, Line, Span, col, cut, filled, fit, inked, line, literal, wrap
+from fertui.tui.ink import BLANK, Line, Span, barred, col, cut, fit, line, literal, wrap
 from fertui.tui.snapshot import Snapshot
 
 if TYPE_CHECKING:
@@ -46,7 +46,7 @@ def draw_accepted(items: Sequence[PlanItem], chosen: int, local: Local, width: i
             fit(literal(words), width - 24),
             Span(state, "good" if item.done_number else "watch"),
         )
-        rows.append(inked(filled(row, width), "chosen") if index == chosen else row)
+        rows.append(barred(row, width) if index == chosen else row)
     return rows
 
 

@@ -88,7 +88,7 @@ class DriftView(View):
             *draw_chart(curve, fraction, left_width, height),
             _reading(series, drift, moment, left_width),
         ]  # fmt: skip
-        return beside(chart, _table(drift, snapshot.unit, moment), left_width, 2) if width >= WIDE else chart
+        return beside(chart, _table(drift, snapshot.unit, start), left_width, 2) if width >= WIDE else chart
 
     def action_choose(self, step: int) -> None:
         """Another quantity."""
@@ -179,28 +179,37 @@ def _reading(series: Series, drift: Drift, moment: datetime, width: int) -> Line
     return line(*row, Span("  " + cut("; ".join(done), room), "accent")) if done and room > 8 else row
 
 
-def _table(drift: Drift, unit: str, moment: datetime) -> list[Line]:
-    """Every quantity on the day of the cursor."""
+def _table(drift: Drift, unit: str, begin: datetime) -> list[Line]:
+    """Every quantity when the period began and now. It does not follow the cursor, whose keys must stay cheap on a
+    thin line; the reading under the chart does."""
     rows: list[Line] = [
-        line(Span(f"{moment:%a %-d %b}", "title")),
-        line(col("", 10), col("value", 8, "faint"), col("80 % range", 15, "faint")),
+        line(Span("All quantities", "title")),
+        line(
+            col("", 9),
+            col(f"{begin:%-d %b}", 7, "faint"),
+            col("now", 7, "strong"),
+            Span(f" {'80 % range':<11}", "faint"),
+        ),
     ]
     for series in (in_unit(each, unit) for each in drift.series):
-        if not series.times:
-            continue
-        value, reach = estimated(series.values[nearest(series.times, moment)], series.unit)
-        rows.append(
-            filled(
-                line(
-                    col(series.what, 10, "plain", right=False),
-                    col(value, 8, "strong"),
-                    col(f"({reach})", 15, "faint"),
-                    f" {series.unit}",
-                ),
-                42,
-            )
-        )
+        if series.times:
+            rows.append(_table_row(series, begin))
     return rows
+
+
+def _table_row(series: Series, begin: datetime) -> Line:
+    first = nearest(series.times, begin)
+    known = abs(series.times[first] - begin) < timedelta(days=1)
+    before = estimated(series.values[first], series.unit)[0] if known else "-"
+    now, reach = estimated(series.values[-1], series.unit)
+    row = line(
+        col(series.what, 9, "plain", right=False),
+        col(before, 7, "faint"),
+        col(now, 7, "strong"),
+        Span(f" {f'({reach})':<10}", "faint"),
+        f" {series.unit}",
+    )
+    return filled(row, 40)
 
 
 __all__ = ["AXIS", "DriftView", "column_of"]

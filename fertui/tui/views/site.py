@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any, ClassVar, NamedTuple
 from textual.binding import Binding
 
 from fertui.tui.desk import Answer
-from fertui.tui.ink import BLANK, Line, Span, cells, col, cut, filled, inked, line, literal
+from fertui.tui.ink import BLANK, Line, Span, barred, cells, col, cut, line, literal
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import SCROLLING, View, waiting
 
@@ -207,4 +207,4 @@ def site_row(row: Any, chosen: bool, columns: tuple[int, int], width: int) -> Li
         Span(" "),
         Span(cut(source, width - key_width - text_width - 4), "faint"),
     )
-    return inked(filled(shown, width), "chosen") if chosen else shown
+    return barred(shown, width) if chosen else shown

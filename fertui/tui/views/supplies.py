@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any, ClassVar
 from textual.binding import Binding
 
 from fertui.tui.figures import age, number
-from fertui.tui.ink import BLANK, Line, Span, col, cut, filled, inked, line, literal
+from fertui.tui.ink import BLANK, Line, Span, barred, col, cut, line, literal
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.text_page import TextPage
 from fertui.tui.view import View, waiting
@@ -162,4 +162,4 @@ def _supply(supply: SupplyRow, chosen: bool, width: int) -> Line:
         *formula, col(left, 9), *dear,
         Span("  " + cut(literal(supply.label + density), max(width - (67 if formula else 44), 8))),
     )  # fmt: skip
-    return inked(filled(row, width), "chosen") if chosen else row
+    return barred(row, width) if chosen else row
