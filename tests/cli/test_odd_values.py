@@ -47,7 +47,7 @@ def test_without_a_terminal_it_is_kept_with_its_question_and_the_way_to_strike_i
     out, err = capsys.readouterr()
     number = open_site(demo).last_number()
     assert "out_by_ten" in last(demo).flags.split()  # type: ignore[attr-defined]
-    assert "asked, not answered: out_by_ten" in out
+    assert "asked, not answered: " in out
     assert f"fertui void {demo} {number} why=" in err
 
 
