@@ -186,9 +186,9 @@ def _table(drift: Drift, unit: str, begin: datetime) -> list[Line]:
         line(Span("All quantities", "title")),
         line(
             col("", 9),
-            col(f"{begin:%-d %b}", 7, "faint"),
-            col("now", 7, "strong"),
-            Span(f" {'80 % range':<11}", "faint"),
+            col(f"{begin:%-d %b}", 6, "faint"),
+            col("now", 6, "strong"),
+            Span(" 80 % range", "faint"),
         ),
     ]
     for series in (in_unit(each, unit) for each in drift.series):
@@ -204,9 +204,9 @@ def _table_row(series: Series, begin: datetime) -> Line:
     now, reach = estimated(series.values[-1], series.unit)
     row = line(
         col(series.what, 9, "plain", right=False),
-        col(before, 7, "faint"),
-        col(now, 7, "strong"),
-        Span(f" {f'({reach})':<10}", "faint"),
+        col(before, 6, "faint"),
+        col(now, 6, "strong"),
+        Span(f" {f'({reach})':<11}", "faint"),
         f" {series.unit}",
     )
     return filled(row, 40)
