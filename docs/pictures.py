@@ -40,7 +40,11 @@ SCREENS: Mapping[str, tuple[str, ...]] = {
 }
 """Screens by name, each with the keys that lead to it from the one before."""
 
-NFT_ANSWERS = ("lettuce", "180", "shared-tank", "none", "700", "well", "", "", "nft", "", "")
+WATER_REPORT = (
+    "EC 0.61, pH 7.4, Ca 76 mg/L, Mg 12 mg/L, K 4 mg/L, Na 28 mg/L, NO3-N 2.8 mg/L, Cl 39 mg/L, SO4 67 mg/L, "
+    "CaCO3 163 mg/L"
+)
+NFT_ANSWERS = ("lettuce", "180", "shared-tank", "none", "0.7 m3", "well", WATER_REPORT, "", "", "nft", "", "")
 PEPPER_ANSWERS = ("sweet-pepper", "", "800", "drain-blend", "peat", "", "", "", "rain", "", "", "pepper", "", "")
 LAB_REPORT = """\
 Sample date;Sample;EC (mS/cm);pH;NH4 [mmol/L];K [mmol/L];Na [mmol/L];Ca [mmol/L];Mg [mmol/L];NO3 [mmol/L];Cl [mmol/L];\

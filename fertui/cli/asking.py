@@ -6,6 +6,7 @@ import argparse
 import sys
 import textwrap
 from collections.abc import Mapping, Sequence
+from contextlib import suppress
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -20,8 +21,8 @@ if TYPE_CHECKING:
 NECESSARY = ("crop", "medium", "layout", "area")
 BACK = "<"
 HOW = (
-    "Enter takes what stands in brackets, also where you do not know. ? explains, < goes back. "
-    "Ctrl-C leaves, and the same command then goes on where you left."
+    "Enter takes what stands in brackets, also where you do not know. ? explains, < goes back, "
+    "the up key brings back what was typed. Ctrl-C leaves, and the same command then goes on where you left."
 )
 
 
@@ -54,6 +55,8 @@ def _say_what_next(folder: Path, steps: Sequence[str]) -> None:
 
 def _ask(questions: Sequence[Question], given: Mapping[str, str], kept: KeptAnswers) -> dict[str, str]:
     """Ask what is not given, each answer checked at its question and kept from then on; returns them as understood."""
+    with suppress(ImportError):
+        import readline  # noqa: F401  input() then edits its line and remembers those before
     print(*_folded(HOW, ""), sep="\n")
     waiting = {**_taken_up(kept), **given}
     answers: dict[str, str] = {}
