@@ -84,7 +84,7 @@ class Assimilation:
         self.grid = grid_of(self.begin.time, record.end, falling, moments, events, self._changes())
         self.night_of = spans_of(self.grid, self.nights)
         self.drives = drives(record, self.setting, self.grid)
-        self.ensemble = first_members(record, self.setting, self.begin, members, seed)
+        self.ensemble = self.first = first_members(record, self.setting, self.begin, members, seed)
         self.spread = Spread()
         self.meters: dict[str, ElectroMeter] = {}
         self.analyses = int(self.begin.analysis is not None)

@@ -133,7 +133,8 @@ class _Logged:
     def members(self, pair: _Pair) -> tuple[Array, Spread]:
         """What members say at the target (M, 10), widened by the scale that was known, and that scale."""
         run = self.run
-        _, ensemble, spread, first = [each for each in run.after if each[0].time <= pair.origin.time + CLOSE][-1]
+        behind = [each[1:] for each in run.after if each[0].time <= pair.origin.time + CLOSE]
+        ensemble, spread, first = behind[-1] if behind else (run.first, Spread(), 0)  # the first was held back
         for _, ahead in self.way.led(ensemble, first, pair.target.time):
             ensemble = ahead
         said = solutions(run.setting, ensemble, feed_drive(run.drives, 0, ensemble))
