@@ -401,6 +401,7 @@ def test_a_batch_is_logged_with_every_salt_weighed(site: Path, counting: Counted
     terminal = counting.terminal
     terminal.press("m", "enter", "1000", "enter", "0", "enter", "enter")
     salts = [supply.name for supply in open_site(site).site.supplies if supply.strength_pct is None]
+    assert all(f" {salt} " in terminal.text for salt in salts), terminal.text
     for weight in ("88", "1.5"):
         terminal.press(weight, "enter")
         terminal.until_text(f"= {weight} kg")
@@ -409,3 +410,15 @@ def test_a_batch_is_logged_with_every_salt_weighed(site: Path, counting: Counted
     terminal.until_text("saved")
     [batch] = fresh(site, "batch")
     assert [(salt, batch.number_of(salt)) for salt in salts[:2]] == [(salts[0], 88.0), (salts[1], 1.5)]
+
+
+def test_a_last_value_written_in_another_unit_is_shown_in_that_of_the_field(counting: Counted, site: Path) -> None:
+    open_site(site).record("stock", {"tank": "calcium", "litres": "2600 ml", "by": "RV"}, "north bay")
+    counting.terminal.press("r")
+    counting.terminal.until(lambda shown: re.search(r"stock calcium +_+ L +last 2\.6 ", shown) is not None)
+
+
+def test_a_time_typed_is_told_back_with_its_day(counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("w", "tab", "tab", "yesterday 8:00", "enter")
+    assert re.search(r"when +yesterday 8:00_+ = \w{3} \d\d \w{3} \d{4} 08:00", terminal.text), terminal.text

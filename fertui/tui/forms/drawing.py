@@ -8,8 +8,8 @@ from typing import TYPE_CHECKING
 
 from fertui.tui.figures import age
 from fertui.tui.forms.answers import Answers
-from fertui.tui.forms.spec import EVERY, Asked, Group
-from fertui.tui.ink import BLANK, Line, Span, cut, filled, fit, line, literal, wrap
+from fertui.tui.forms.spec import EVERY, Asked, Group, Spec
+from fertui.tui.ink import BLANK, Line, Span, cells, cut, filled, fit, line, literal, width_of, wrap
 
 if TYPE_CHECKING:
     from fertui.workbench.entering import LastValue
@@ -17,6 +17,8 @@ if TYPE_CHECKING:
 Last = Mapping[tuple[str, str, str, str], "LastValue"]
 BESIDE = 34
 """Column of the last value in a form of two columns."""
+LABEL = 22
+"""Columns of the labels of a form of one column whose names are short."""
 NARROW = 76
 """Columns below which a form of two columns becomes one of one."""
 
@@ -43,17 +45,35 @@ def _one_column(answers: Answers, last: Last, now: datetime, width: int) -> tupl
 
 
 def _row(answers: Answers, number: int, last: Last, now: datetime, width: int) -> Line:
-    each = answers.spec.fields[number]
-    here = number == answers.at
-    field_width = width - 27 if each.words else 24 if each.choices else 10
-    row = line(*_label(each, here, 22), *_field(answers, number, field_width))
+    each, echo = answers.spec.fields[number], answers.understood.get(number, "")
+    label = _label_width(answers.spec, width)
+    understood = f"= {echo}" if echo else ""
+    free = width - label - 5 - (cells(understood) + 1 if echo else 0)
+    size = free if each.words else 24 if each.choices else 10
+    row = line(*_label(each, number == answers.at, label), *_field(answers, number, size))
     if each.words or each.choices:
-        return row
-    before = last_of(last, answers, each)
-    said = f"last {_short(in_unit(before, each))} ({age(before.at, now)})" if before else ""
-    row = line(*row, Span(f" {fit(each.unit, 7)}", "faint"), Span(f" {fit(said, 24)}", "faint"))
-    echo = answers.understood.get(number, "")
-    return line(*row, Span(cut(f"= {echo}", max(width - 68, 10)), "good")) if echo else row
+        return line(*row, Span(f" {understood}", "good")) if echo else row
+    row = line(*row, Span(f" {fit(each.unit, 6)} ", "faint"))
+    return line(*row, *_beside(last_of(last, answers, each), each, understood, now, width - width_of(row)))
+
+
+def _label_width(spec: Spec, width: int) -> int:
+    """Columns of the labels: so many that no name is cut, as long as a number, its unit and its last value fit
+    beside them."""
+    longest = max(cells(each.label) for each in spec.fields) + 1
+    return max(LABEL, min(longest, width - 48))
+
+
+def _beside(before: LastValue | None, each: Asked, understood: str, now: datetime, room: int) -> Line:
+    """The last value and what was understood of the one typed. Where there is no room for both, first the age of the
+    last value goes, then itself."""
+    value = f"last {_short(in_unit(before, each))}" if before else ""
+    aged = f"{value} ({age(before.at, now)})" if before else ""
+    column = min(24, room if not understood else min(room - 11, room - cells(understood) - 1))
+    said = next((text for text in (aged, value) if cells(text) <= column), "")
+    return line(
+        Span(fit(said, max(column, 0)), "faint"), Span(cut(f" {understood}" if understood else "", room), "good")
+    )
 
 
 def _two_columns(answers: Answers, last: Last, now: datetime, width: int) -> tuple[list[Line], int]:
@@ -139,12 +159,20 @@ def last_of(last: Last, answers: Answers, each: Asked) -> LastValue | None:
 
 
 def in_unit(last: LastValue, each: Asked) -> str:
-    """A last value as it would be written into a field: a concentration in the unit of the field."""
-    if not each.ion or last.number is None:
+    """A last value as it would be written into a field: in the unit of the field, whatever it was written in."""
+    if last.number is None or (not each.ion and _is_bare(last.written)):
         return last.written
+    below = "<" if last.below else ""
+    if not each.ion:
+        return f"{below}{last.number:.4g}"
     from fertui.workbench.units import shown
 
-    return f"{'<' if last.below else ''}{shown(each.ion, last.number, each.unit)[0]:.3g}"
+    return f"{below}{shown(each.ion, last.number, each.unit)[0]:.3g}"
+
+
+def _is_bare(text: str) -> bool:
+    """Whether a number was written without a unit: 2600, 2,6, <0.1."""
+    return text[-1:].isdigit()
 
 
 def _short(text: str) -> str:

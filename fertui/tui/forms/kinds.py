@@ -36,22 +36,13 @@ def meters(point: str, entry: int, layout: str, temperature: bool = True) -> Gro
     return Group(point_name(point, layout), tuple(fields))
 
 
-def stock_label(tank: str) -> str:
-    """A stock tank in the room of a label; a long name stands alone.
-
-    >>> stock_label("calcium"), stock_label("sulfate and phosphate")
-    ('stock calcium', 'sulfate and phosphate')
-    """
-    return f"stock {tank}" if len(tank) <= 15 else tank
-
-
 def reading(site: Site, loop: Loop, unit: str) -> Spec:
     """The morning round: the seven numbers of the mixing room first, then the house."""
     where = "tank" if loop.layout == "shared-tank" else "feed"
     parts = [Part("reading", {"point": where}), Part("water", {"source": loop.water} if loop.water else {})]
     used = [Asked("make_up", "fresh water", "L", 1)]
     for tank in tanks_of(site, loop):
-        used.append(Asked("litres", stock_label(tank), "L", len(parts)))
+        used.append(Asked("litres", f"stock {tank}", "L", len(parts)))
         parts.append(Part("stock", {"tank": tank}))
     for acid in acids_of(site)[:1]:
         used.append(Asked("litres", acid, "L", len(parts)))
