@@ -70,6 +70,14 @@ def test_an_analysis_that_fails_its_charges_is_held_back_and_leaves_the_estimate
     assert with_it.points() == without.points()
 
 
+def test_the_record_stands_where_the_first_analysis_was_held_back() -> None:
+    analyses = [*_weekly(4)]
+    first = next(each for each in analyses if each.number == 100)
+    wrong = entry("analysis", 0.5, point="drain", number=100, **scaled(DRAIN, NO3=22.0 / 4.43))
+    rows = hindcast(SITE, SLAB, [wrong if each is first else each for each in analyses], moment(22.0), members=40).rows
+    assert {row.issued for row in rows} == {moment(0.5), moment(7.5), moment(14.5)}
+
+
 def test_a_doubtful_analysis_is_kept_and_never_used() -> None:
     shuffled = entry("analysis", 25.0, point="drain", doubtful="bottles look interchanged", **FEED)
     assert _estimate([*_weekly(4), shuffled], 27.0).points() == _estimate(_weekly(4), 27.0).points()

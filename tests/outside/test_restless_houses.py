@@ -1,9 +1,10 @@
 """Loops as restless as the measured houses that were kept back, which this project never saw.
 
 Feed and water of the two measured houses (Hemming et al. 2020, see ``test_houses``); what the drain held is invented:
-the model itself, run with twice its usual noise, charges closed, with the error an analysis has. "No change" is then off by
-about 4.9 / 4.3 / 3.3 points of the K / Ca / Mg share, as it is on restless measured houses (4.9 / 4.2 / 2.6 in the study
-that set out the form of the filter). Bars from there: no ion worse than "no change", ranges hold 65-90 % of ions.
+the model itself, run with twice its usual noise, charges closed, with the error an analysis has. "No change" is then
+off by about 4.9 / 4.3 / 3.3 points of the K / Ca / Mg share, as it is on restless measured houses (4.9 / 4.2 / 2.6 in
+the study that set out the form of the filter). Bars from there: no ion worse than "no change", ranges that hold
+65-90 % of the ions.
 """
 
 from __future__ import annotations
