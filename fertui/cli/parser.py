@@ -7,6 +7,7 @@ import os
 from collections.abc import Mapping
 from typing import NoReturn
 
+from fertui.estimate.signs import LEGEND
 from fertui.refusals import Refusal
 
 ABOUT = """\
@@ -167,7 +168,7 @@ NEW_OPTIONS = {
     "medium-volume": "slabs or pots [L per m2] (default: usual for the medium)",
     "root-zone-water": "water they hold [L per m2] (default: usual for the medium)",
     "target": "another crop by name, or hoagland-1, hoagland-2, steiner (default: the crop's own)",
-    "water": "the fresh water by a name of your own; rain or pure: no ions in it",
+    "water": "the make-up water by a name of your own; rain or pure: no ions in it",
     "water-report": "what it holds: 'Ca 52 mg/L, CaCO3 145 mg/L, pH 7.6' (default: not analysed)",
     "supplies": "salts and acids on the shelf: 'KNO3, nitric acid 60 %%' (default: the common salts)",
     "stage": "stage of the crop, such as fruit-set (default: standard)",
@@ -246,7 +247,8 @@ def _period(parser: Parser) -> None:
 
 
 def _read_commands(commands: argparse._SubParsersAction) -> None:
-    _units(_reading(commands, "today", "state and what to look at", "fertui today north"))
+    today = _units(_reading(commands, "today", "state and what to look at", "fertui today north"))
+    today.epilog = f"signs: {LEGEND}"
     _units(_reading(commands, "analysis", "last analysis against target", "fertui analysis north"))
     drift = _reading(commands, "drift", "shares, ions, EC, pH over time", "fertui drift north --days 28")
     drift.add_argument("--days", default="28", metavar="N", help="days back (default: 28)")
@@ -296,4 +298,5 @@ def _paper_commands(commands: argparse._SubParsersAction) -> None:
     )
     _reading(commands, "supplies", "salts, acids, stock tanks", "fertui supplies north")
     _reading(commands, "site", "targets, bands and limits, and where each comes from", "fertui site north")
-    _reading(commands, "check", "site file, logbook, watch list, this machine", "fertui check north")
+    looked_over = _reading(commands, "check", "site file, logbook, watch list, this machine", "fertui check north")
+    looked_over.epilog = f"signs: {LEGEND}   ok all right"

@@ -35,7 +35,7 @@ def read_report(text: str) -> Composition:
     for name, written in _pairs(text):
         quantity = read(written, name)
         if quantity.number > MOST.get(quantity.name, MOST_MMOL_L):
-            raise SiteError(f"{name} {written}: no fresh water holds that; look at the unit.")
+            raise SiteError(f"{name} {written}: no make-up water holds that; look at the unit.")
         numbers[quantity.name] = float(f"{quantity.number:.4g}")  # no report has more digits
     ions = {ion: numbers[ion] for ion in IONS if ion in numbers}
     return Composition(ions, {}, numbers.get("EC"), numbers.get("pH"), "water report")

@@ -28,7 +28,7 @@ def test_a_dropped_line_loses_no_answer_and_a_refused_one_can_be_mended(tmp_path
     with asked(tmp_path) as terminal:
         for prompt, text in FIRST:
             answer(terminal, prompt, text)
-        terminal.until_text("fresh water?")
+        terminal.until_text("make-up water?")
         terminal.hang_up()
         assert terminal.wait() != 0
     with asked(tmp_path) as terminal:
