@@ -171,7 +171,7 @@ def _about_the_loop() -> tuple[Question, ...]:
             "Decides whether hand doses into a tank or recipe changes in the stock correct the loop.",
             presets=lambda answers: (
                 Preset("shared-tank", "runs back into the tank that feeds: NFT, raft, ebb and flood"),
-                Preset("drain-blend", "is collected, blended with make-up water, dosed from stock tanks: drip on slabs"),
+                Preset("drain-blend", "is collected, blended with make-up water, dosed from stock: drip on slabs"),
                 Preset("known-feed", "is not tracked back: run to waste, research, or only feed analyses"),
             ),
             only_presets=True,
