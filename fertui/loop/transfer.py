@@ -17,6 +17,8 @@ from fertui.chemistry.ions import Array
 
 _SMALL = 0.02
 _TWIN = 1e-7
+_FAR = 0.9999
+"""Rates further apart than that, in units of the root, lose digits in their difference to it."""
 _TINY = 1e-30
 _NONE: Array = np.zeros((1, 10))
 
@@ -68,16 +70,16 @@ def transfer(p: Array, q: Array, r: Array, w: Array, days: float) -> Transfer:
     (4.0, 4.0)
     """
     half_sum, half_difference = 0.5 * (p + w), 0.5 * (p - w)
-    root = np.maximum(np.sqrt(half_difference * half_difference + q * r), _TWIN * half_sum + _TINY)
+    product = q * r
+    root = np.maximum(np.sqrt(half_difference * half_difference + product), _TWIN * half_sum + _TINY)
     fast = -(half_sum + root) * days
     slow = (q * r - p * w) / (half_sum + root) * days
-    weight = 0.5 - half_difference * (0.5 / root)
-    twist = (0.5 / root, q, r)
-    kept = _response(np.exp(slow), np.exp(fast), weight, *twist)
+    twist = (*_weights(half_difference, root, product), 0.5 / root, q, r)
+    kept = _response(np.exp(slow), np.exp(fast), *twist)
     mean_slow, mean_fast = _phi1(slow), _phi1(fast)
-    gained = _response(days * mean_slow, days * mean_fast, weight, *twist)
+    gained = _response(days * mean_slow, days * mean_fast, *twist)
     square = days * days
-    ramp = _response(square * _phi2(slow, mean_slow), square * _phi2(fast, mean_fast), weight, *twist)
+    ramp = _response(square * _phi2(slow, mean_slow), square * _phi2(fast, mean_fast), *twist)
     return Transfer(days, kept, gained, ramp)
 
 
@@ -104,11 +106,27 @@ def _single(f11: Array) -> Response:
     return Response(_NONE, _NONE, _NONE, f11, alone=True)
 
 
-def _response(at_slow: Array, at_fast: Array, weight: Array, apart: Array, q: Array, r: Array) -> Response:
+def _response(at_slow: Array, at_fast: Array, slow0: Array, slow1: Array, apart: Array, q: Array, r: Array) -> Response:
     between = at_slow - at_fast
-    f00 = at_fast + between * weight
     cross = between * apart
-    return Response(f00, cross * q, cross * r, at_slow + at_fast - f00)
+    return Response(at_fast + between * slow0, cross * q, cross * r, at_fast + between * slow1)
+
+
+def _weights(half_difference: Array, root: Array, product: Array) -> Pair:
+    """Part of store and of root zone that moves with the slow eigenvalue; they add up to 1.
+
+    The smaller, (root - apart) / (2 root), loses its digits where a dry volume, which passes on within seconds what
+    enters it, sets the two rates a million times apart; there it is written without that difference.
+    """
+    shift = half_difference * (0.5 / root)
+    store, root_zone = 0.5 - shift, 0.5 + shift
+    apart = np.abs(half_difference)
+    far = apart > _FAR * root
+    if far.any():
+        smaller = 0.5 * product / (root * (root + apart))
+        store = np.where(far & (half_difference > 0.0), smaller, store)
+        root_zone = np.where(far & (half_difference < 0.0), smaller, root_zone)
+    return store, root_zone
 
 
 def _sum(a: Pair, b: Pair) -> Pair:

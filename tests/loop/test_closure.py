@@ -154,3 +154,11 @@ def test_members_do_not_see_each_other_beyond_the_step_length(members: int) -> N
 
 def test_line_is_near_the_set_points_used_here() -> None:
     np.testing.assert_allclose(LINE(FEED), linearise(FEED).ec, rtol=1e-12)
+
+
+def test_a_store_without_water_leaves_the_charge_balance_its_digits() -> None:
+    """Water runs through an empty store within seconds: its rates are a million times those of the root zone."""
+    circuit = Circuit("shared-tank", area_m2=1.0, root_zone_l=1.0, store_max_l=0.0)
+    drive = Drive(irrigation_l_d=0.5 * spread(7, MEMBERS), make_up=WELL, make_up_l_d=2.0, ec=LINE)
+    taken = run(circuit, drive, 0.0, 1.0, []).fluxes.cause("uptake")
+    assert np.abs(taken @ CHARGE).max() <= 1e-12 * max(np.abs(taken).max(), 1.0)
