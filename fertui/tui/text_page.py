@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any, ClassVar
@@ -9,7 +10,7 @@ from typing import Any, ClassVar
 from textual.binding import Binding
 
 from fertui.tui.desk import Answer
-from fertui.tui.ink import BLANK, Line, Span, cut, line, literal, wrap
+from fertui.tui.ink import BLANK, Line, Span, cells, cut, line, literal, wrap
 from fertui.tui.snapshot import Snapshot
 from fertui.tui.view import SCROLLING, View
 
@@ -42,12 +43,11 @@ class TextPage(View):
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """The heading and the lines; where it asks for something, that comes last."""
-        rows = [line(Span(f" {cut(literal(self.heading), width - 2)}", "title")), BLANK]
+        how = "   Space reads on, Enter once all is read" if self._asks else ""
+        heading = cut(literal(self.heading), width - 2 - len(how))
+        rows = [line(Span(f" {heading}", "title"), Span(how, "watch")), BLANK]
         for text in self.text:
-            short = len(text) < width - 1
-            rows += (
-                [line(" ", literal(text))] if short else [line(" ", more) for more in wrap(literal(text), width - 2)]
-            )
+            rows += _paragraph(literal(text), width)
         return [*rows, BLANK, line(" ", Span(self._asks, "watch"))] if self._asks else rows
 
     def action_go_on(self) -> None:
@@ -75,3 +75,13 @@ class TextPage(View):
         """Copy by the terminal's own means."""
         self.app.copy_to_clipboard("\n".join(self.text))
         self.fertui.say("copied, if your terminal allows it", "good")
+
+
+def _paragraph(text: str, width: int) -> list[Line]:
+    """A text in as many lines as it needs; what follows a mark hangs below its first word."""
+    if cells(text) < width - 1:
+        return [line(" ", text)]
+    mark = re.match(r"[^\w\s(]{1,2} ", text)
+    hang = " " * len(mark[0]) if mark else ""
+    first, *more = wrap(text, width - 2 - len(hang))
+    return [line(" ", first), *(line(" ", hang, words) for words in more)]

@@ -85,6 +85,14 @@ class PlanView(View):
         found: Plan | None = self.fertui.snapshot.get(self._ask(self.fertui.snapshot))
         return found
 
+    def _made(self) -> Plan | None:
+        """The plan on screen; says so where there is none yet."""
+        plan = self.plan()
+        if plan is None:
+            trouble = self.fertui.snapshot.trouble(self._ask(self.fertui.snapshot))
+            self.fertui.say("There is no plan." if trouble else "The plan is still being worked out.", "watch")
+        return plan
+
     def _holds_acid(self, plan: Plan) -> bool:
         from fertui.workbench.carrying_out import acids_of
 
@@ -166,19 +174,20 @@ class PlanView(View):
 
     async def action_acknowledge(self) -> None:
         """Read the cautions of the acid steps."""
-        plan = self.plan()
-        if plan is not None and self._holds_acid(plan) and self.released is not plan:
+        plan = self._made()
+        if plan is None:
+            return
+        if self._holds_acid(plan) and self.released is not plan:
             await self._released(lambda: self.fertui.say("The acid steps are released.", "good"))
-        elif plan is not None:
+        else:
             await self.fertui.open_page(
                 TextPage("Cautions", [f"- {each.text}  [{each.source}]" for each in plan.cautions])
             )
 
     async def _released(self, then: Any) -> None:
         """Go on with the plan, after cautions and label where it holds acid."""
-        plan = self.plan()
+        plan = self._made()
         if plan is None:
-            self.fertui.say("The plan is still being worked out.", "watch")
             return
         if not self._holds_acid(plan) or self.released is plan:
             then()
@@ -250,7 +259,7 @@ class PlanView(View):
 
     async def action_arithmetic(self) -> None:
         """The arithmetic."""
-        plan = self.plan()
+        plan = self._made()
         if plan is not None:
             text = [*plan.arithmetic, *(["", "Why these and not others", *plan.reasons] if plan.reasons else [])]
             await self.fertui.open_page(TextPage("The sums of this plan, for a pocket calculator", text, "sums.txt"))
