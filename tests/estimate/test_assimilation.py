@@ -70,11 +70,11 @@ def test_an_analysis_that_fails_its_charges_is_held_back_and_leaves_the_estimate
     assert with_it.points() == without.points()
 
 
-def test_the_record_stands_where_the_first_analysis_was_held_back() -> None:
-    analyses = [*_weekly(4)]
-    first = next(each for each in analyses if each.number == 100)
-    wrong = entry("analysis", 0.5, point="drain", number=100, **scaled(DRAIN, NO3=22.0 / 4.43))
-    rows = hindcast(SITE, SLAB, [wrong if each is first else each for each in analyses], moment(22.0), members=40).rows
+def test_the_record_stands_where_every_analysis_was_held_back() -> None:
+    off = entry("analysis", 0.0, **scaled(DRAIN, NO3=22.0 / 4.43)).values
+    entries = [each._replace(values=off) if (each.number or 0) >= 100 else each for each in _weekly(4)]
+    assert len(_estimate(entries, 22.0).held_back) == 4
+    rows = hindcast(SITE, SLAB, entries, moment(22.0), members=40).rows
     assert {row.issued for row in rows} == {moment(0.5), moment(7.5), moment(14.5)}
 
 
