@@ -56,9 +56,10 @@ class AnalysisView(View):
             none = [BLANK, line(" ", Span("No analysis of this loop's solution is logged.", "watch"), " a logs one.")]
             return [*none, BLANK, *_water(report, snapshot.unit, width)]
         room = min(width, 80)
+        left = 79 if width >= WIDE else width
         table = [*_heading(report, snapshot.unit, room), *_rows(report.rows, snapshot.unit, room)]
-        below = [*_shares(report, room), *_said(report, width), BLANK, *_checks(report, width)]
-        below += [line(), *water] if (water := _water(report, snapshot.unit, width)) else []
+        below = [*_shares(report, room), *_said(report, left), BLANK, *_checks(report, left)]
+        below += [line(), *water] if (water := _water(report, snapshot.unit, left)) else []
         micros = _micronutrients(report.micronutrients, snapshot.unit, room)
         if width >= WIDE:
             return beside([*table, BLANK, *below], micros, 80, 3)
@@ -139,8 +140,8 @@ def _checks(report: Report, width: int) -> list[Line]:
             ink = "good" if check.passed else "act"
             mark = MARKS["good"] if check.passed else MARKS["act"]
             text = f"{point_name(point)}: {check.what} {check.found}; {check.remark}"
-            first, *more = wrap(literal(text), width - 5)
-            rows += [line(Span(f" {mark} ", ink), first), *(line("   ", text) for text in more)]
+            first, *more = wrap(literal(text), width - 6)
+            rows += [line(Span(f" {mark:2} ", ink), first), *(line("    ", text) for text in more)]
     return rows if len(rows) > 1 else []
 
 
