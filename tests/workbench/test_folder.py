@@ -5,6 +5,7 @@ from __future__ import annotations
 from datetime import timedelta
 from pathlib import Path
 
+from fertui.cli.views.analysis import text
 from fertui.workbench import open_site
 from tests.conftest import DEMO_MORNING
 
@@ -118,3 +119,19 @@ def test_what_takes_its_time_tells_how_far_it_is(demo_once: Path) -> None:
         assert parts == sorted(parts)
         assert 0.0 <= parts[0] < 0.2
         assert 0.3 < parts[-1] <= 1.0
+
+
+def test_the_report_of_the_make_up_water_stands_with_the_analysis_on_screen_and_in_words(demo: Path) -> None:
+    bench = open_site(demo)
+    assert bench.analysis("lettuce", DEMO_MORNING).water is None
+    report = {"point": "source", "at": "2026-05-20 09:00", "by": "MK", "HCO3": "1.2", "pH": "7.1"}
+    other = bench.record("analysis", {**report, "source": "well"}, "north bay")
+    entry = bench.record("analysis", {**report, "source": "rain"}, "north bay")  # noted at the other loop: shared
+    found = bench.analysis("lettuce", DEMO_MORNING)
+    assert found.water is not None
+    assert (found.water.number, found.water_name, found.water.values["HCO3"]) == (entry.number, "rain", 1.2)
+    said = text(found, bench.site.timezone, "mmol/L")
+    assert f"Make-up water rain, Wed 20 May 2026 09:00, entry {entry.number}, used from then on" in said
+    last = bench.glance("north bay", DEMO_MORNING).last_analysis
+    assert last is not None
+    assert last.number not in (entry.number, other.number)
