@@ -111,7 +111,7 @@ async def _until_still(app: Any, pilot: Any) -> None:
 def text_of(picture: str) -> str:
     """The characters of a screen drawn as SVG, without trailing blanks."""
     rows: dict[int, list[str]] = {}
-    cell = float(re.search(r'textLength="([\d.]+)"[^>]*>[^<]</text>', picture)[1])  # type: ignore[index]
+    cell = float(re.search(r'textLength="([\d.]+)"[^>]*>[^<]</text>', picture)[1])
     for x, row, text in re.findall(r'<text [^>]*? x="([\d.]+)"[^>]*-line-(\d+)\)">([^<]*)</text>', picture):
         characters = html.unescape(text).replace("\xa0", " ")
         line = rows.setdefault(int(row), [" "] * SIZE[0])

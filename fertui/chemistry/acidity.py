@@ -45,7 +45,10 @@ class Water(NamedTuple):
         temperature_c: float | Array = 20.0,
         ionic_strength: float | Array | None = None,
     ) -> Water:
-        """Water with these ions; strength and free calcium, magnesium by ``activity.speciate`` where not given."""
+        """Water with these ions [mmol/L; HCO3 meq/L] at a pH and temperature [C].
+
+        Ionic strength [mol/L] and free calcium, magnesium by ``activity.speciate`` where not given.
+        """
         ions = composition(ions_mmol_per_l)
         solution = speciate(ions, ph, temperature_c)
         return cls(
@@ -91,7 +94,7 @@ class Buffer(NamedTuple):
     """(protons given off, name of the constant with Ca, with Mg)."""
 
     def protons_given(self, ph: float | Array, water: Water) -> Array:
-        """Protons given off per mole at a pH, from the most acid form."""
+        """Protons given off [mol/mol] at a pH, from the most acid form."""
         forms = self._forms(np.asarray(ph, dtype=float), water)
         given = np.sum([number * form for number, form in enumerate(forms)], axis=0)
         return given / np.sum(forms, axis=0)
@@ -132,7 +135,7 @@ class Acid(NamedTuple):
     rest: Buffer | None = None
 
     def protons(self, ph: float | Array, water: Water) -> Array:
-        """Protons that one mole gives off on the way to a pH.
+        """Protons [mol] that one mole gives off on the way to a pH.
 
         >>> round(float(ACIDS["phosphoric"].protons(5.8, Water.hard(3.0))), 2)
         1.07

@@ -47,7 +47,7 @@ _MOST_STEPS = 200
 
 
 def intensity(solution_mmol_per_l: Cations, selectivity: npt.ArrayLike) -> Array:
-    """The one unknown s (...) of an exchanger in equilibrium with a solution, from its quadratic.
+    """The one unknown s (...) of an exchanger in equilibrium with a solution (..., 5) [mmol/L], from its quadratic.
 
     With A = sum k c of the divalents and B of the monovalents, s = 2 / (B + sqrt(B**2 + 4 A)). Arguments and errors as
     for ``loading``.

@@ -57,7 +57,7 @@ def composition(ions_mmol_per_l: Mapping[str, float | Array] | Array) -> Array:
 
 
 def mapping(composition: Array) -> dict[str, float]:
-    """Mapping of ion name to number from one composition array of shape (10,).
+    """Mapping of ion name to number [mmol/L; HCO3 meq/L] from one composition array of shape (10,).
 
     >>> mapping(vector({"Ca": 5}))["Ca"]
     5.0

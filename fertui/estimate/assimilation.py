@@ -264,6 +264,5 @@ class Assimilation:
 
 def _stage(record: Record, time: float) -> str:
     """Stage of the crop at a time: as logged, else as the site file says."""
-    logged = record.stages.at(time)
-    stage = logged.get("stage", "") if isinstance(logged, dict) else ""
-    return str(stage or record.loop.stage)
+    logged = record.stages.at(time) or {}
+    return str(logged.get("stage") or record.loop.stage)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator
 from typing import NamedTuple
 
 import numpy as np
@@ -109,7 +109,7 @@ def carried(record: Record, time: float) -> Array:
     if recipe is None and mixed.any():
         return mixed
     feed = compositions.array(compositions.target_feed(record.site, record.loop).ions)
-    return beyond(np.asarray(recipe) if recipe is not None else feed, water)
+    return beyond(feed if recipe is None else recipe, water)
 
 
 def beyond(feed: Array, water: Array) -> Array:
@@ -144,8 +144,8 @@ class Holding:
 
     def set_point(self, time: float) -> float | None:
         """EC set point in force [mS/cm], by the light of the day where the grower set it so."""
-        given = self.record.setpoints.at(time)
-        stated = dict(given) if isinstance(given, Mapping) else {}
+        given = self.record.setpoints.at(time) or {}
+        stated = {name: value for name, value in given.items() if isinstance(value, (int, float))}
         light = self.record.light.get(self.record.local_day(time))
         if light is not None and {"EC_dull", "EC_bright", "light_dull", "light_bright"} <= stated.keys():
             ends = (stated["light_dull"], stated["light_bright"]), (stated["EC_dull"], stated["EC_bright"])

@@ -60,14 +60,14 @@ class Record(NamedTuple):
     stock_held: Mapping[str, Sequence[tuple[Entry | None, Array]]]
     events: tuple[Event, ...]
     feed: tuple[tuple[float, Array], ...]
-    recipes: Steps
-    sources: Steps
-    waters: Mapping[str, Steps]
+    recipes: Steps[Array]
+    sources: Steps[str]
+    waters: Mapping[str, Steps[Array]]
     site_now: Site
-    setpoints: Steps
-    stages: Steps
+    setpoints: Steps[Mapping[str, float | str]]
+    stages: Steps[Mapping[str, float | str]]
     light: Mapping[int, float]
-    drain_pct: Steps
+    drain_pct: Steps[float]
     observations: tuple[Observation, ...]
     anew: tuple[float, ...]
     new_medium: float | None
@@ -89,7 +89,7 @@ class Record(NamedTuple):
 
     def make_up_as_said(self, time: float) -> Array:
         """What the water that tops up the loop at a time holds (10,) [mmol/L]; nan where nobody analysed it."""
-        return self.as_said(str(self.sources.at(time) or self.loop.water), time)
+        return self.as_said(self.sources.at(time) or self.loop.water, time)
 
     def make_up_at(self, time: float) -> Array:
         """The same, nothing in a water that nobody analysed."""
@@ -200,6 +200,7 @@ class _Reader:
         )  # fmt: skip
 
     def days(self, moment: datetime) -> float:
+        """A moment as days from the record's zero [d]."""
         return (moment - self.zero).total_seconds() / 86400.0
 
     def _first(self) -> float | None:
@@ -332,16 +333,16 @@ class _Reader:
             knots.sort(key=lambda knot: knot[0])
         return tuple(sorted(knots, key=lambda knot: knot[0]))
 
-    def _recipes(self) -> Steps:
+    def _recipes(self) -> Steps[Array]:
         given = [entry for entry in self._certain("recipe") if compositions.entry_ions(entry)]
         times = tuple(self.days(entry.at) for entry in given)
         return Steps(times, tuple(compositions.array(compositions.entry_ions(entry)) for entry in given))
 
-    def _sources(self) -> Steps:
+    def _sources(self) -> Steps[str]:
         given = [entry for entry in self._certain("water") if entry.text_of("source")]
         return Steps(tuple(self.days(each.at) - 1.0 for each in given), tuple(each.text_of("source") for each in given))
 
-    def _waters(self) -> dict[str, Steps]:
+    def _waters(self) -> dict[str, Steps[Array]]:
         analyses = water_analyses(self.site, self.of_all_loops)
         found = {}
         for water in self.site.waters:
@@ -351,10 +352,10 @@ class _Reader:
             found[water.name.lower()] = Steps(times, tuple(_content(each.ions) for each in held))
         return found
 
-    def _steps(self, kind: str) -> Steps:
+    def _steps(self, kind: str) -> Steps[Mapping[str, float | str]]:
         """Entries of a kind; later ones keep what they do not name from earlier ones."""
         times, values = [], []
-        merged: dict[str, object] = {}
+        merged: dict[str, float | str] = {}
         for entry in self._certain(kind):
             merged = {
                 **merged,
@@ -368,7 +369,7 @@ class _Reader:
         given = [entry for entry in self._certain("reading") if entry.number_of("light_sum") is not None]
         return {entry.at.astimezone(self.zone).toordinal(): entry.number_of("light_sum") or 0.0 for entry in given}
 
-    def _drain_pct(self) -> Steps:
+    def _drain_pct(self) -> Steps[float]:
         given = [entry for entry in self._certain("reading") if entry.number_of("drain_pct") is not None]
         return Steps(
             tuple(self.days(each.at) for each in given), tuple((each.number_of("drain_pct") or 0.0) for each in given)

@@ -171,7 +171,7 @@ class _Builder:
     def _source(self, time: float) -> Array:
         planned = [each.entry.text_of("source") for each in self.plans if each.begin <= time < each.end]
         named = self.scenario.source or next((name for name in reversed(planned) if name), "")
-        logged = str(self.record.sources.at(self.now) or self.loop.water)
+        logged = self.record.sources.at(self.now) or self.loop.water
         return self.record.as_said(named or logged, self.now)
 
     def _recipe(self, time: float) -> tuple[Mapping[str, float | Array] | None, bool]:

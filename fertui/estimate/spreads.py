@@ -6,7 +6,7 @@ Times are days from the start of a record.
 from __future__ import annotations
 
 from collections.abc import Iterable
-from typing import NamedTuple
+from typing import Generic, NamedTuple, TypeVar
 
 import numpy as np
 
@@ -50,13 +50,16 @@ def spread(items: Iterable[tuple[float, float, float | Array]], width: tuple[int
     return Spread(starts, ends, amounts)
 
 
-class Steps(NamedTuple):
+Held = TypeVar("Held")
+
+
+class Steps(NamedTuple, Generic[Held]):
     """Values that hold from their time on: set points, recipes, waters, stages."""
 
     times: tuple[float, ...]
-    values: tuple[object, ...]
+    values: tuple[Held, ...]
 
-    def at(self, time: float) -> object | None:
+    def at(self, time: float) -> Held | None:
         """The value in force at a time, None before the first.
 
         >>> Steps((1.0, 3.0), ("a", "b")).at(2.0)

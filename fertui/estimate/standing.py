@@ -121,7 +121,7 @@ class Estimate:
     def unanalysed_water(self) -> str | None:
         """Name of the water that tops up the loop, where nobody has said what it holds; None where it is known."""
         unknown = self.loop.layout != "known-feed" and np.isnan(self.record.make_up_as_said(self.record.end)).any()
-        return str(self.record.sources.at(self.record.end) or self.loop.water or "make-up") if unknown else None
+        return (self.record.sources.at(self.record.end) or self.loop.water or "make-up") if unknown else None
 
     @property
     def last_analysis(self) -> Mapping[str, datetime]:

@@ -75,7 +75,7 @@ def _drain_part(record: Record, setting: Setting, grid: Array) -> Array:
     """Drain as a fraction of irrigation in every stretch: the last one read, else what the site says."""
     found = [record.drain_pct.at(time) for time in grid[1:]]
     usual = setting.loop.drain_fraction
-    return np.clip([usual if pct is None else float(pct) / 100.0 for pct in found], 0.0, 0.9)  # type: ignore[arg-type]
+    return np.clip([usual if pct is None else pct / 100.0 for pct in found], 0.0, 0.9)
 
 
 def _balance(

@@ -6,7 +6,7 @@ import re
 import tomllib
 from collections.abc import Mapping
 from pathlib import Path
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 from fertui.logbook.dates import ORDERS
 from fertui.logbook.errors import LogbookError
@@ -69,7 +69,7 @@ def _path(site_folder: Path, name: str) -> Path:
     return site_folder / FOLDER / f"{name}.toml"
 
 
-def _checked(table: Mapping[str, object], where: str) -> Template:
+def _checked(table: Mapping[str, Any], where: str) -> Template:
     known = Template._fields
     for key, value in table.items():
         if key not in known:
@@ -78,7 +78,8 @@ def _checked(table: Mapping[str, object], where: str) -> Template:
             )
         if not _fits(key, value):
             raise LogbookError(f"{where}: {key} = {value!r} is not what it takes; see docs/files.md, templates.")
-    return Template(**{key: tuple(value) if isinstance(value, list) else value for key, value in table.items()})  # type: ignore[arg-type]
+    held: dict[str, Any] = {key: tuple(value) if isinstance(value, list) else value for key, value in table.items()}
+    return Template(**held)
 
 
 def _fits(key: str, value: object) -> bool:

@@ -35,13 +35,13 @@ class Booking(NamedTuple):
 
 
 def booking(begin: float, end: float, fluxes: Fluxes, event: Event | None = None) -> Booking:
-    """One line of the account from the fluxes of a stretch or an event."""
+    """One line of the account from the fluxes of a stretch or an event, ``begin`` to ``end`` [d]."""
     means = (fluxes.by_cause.mean(axis=0), fluxes.overflow.mean(axis=0), fluxes.litres.mean(axis=0))
     return Booking(begin, end, *means, event.reason if event else "", event.entry if event else None)
 
 
 def unexplained(at: float, before: State, after: State) -> Booking:
-    """One line of the account: what an analysis, or noise, changed in the solution at a time."""
+    """One line of the account: what an analysis, or noise, changed in the solution at a time [d]."""
     by_cause = np.zeros((len(CAUSES), len(IONS)))
     by_cause[CAUSE["unexplained"]] = (after.ions_mmol - before.ions_mmol).sum(axis=1).mean(axis=0)
     return Booking(at, at, by_cause, np.zeros(len(IONS)), np.zeros(len(WATERS)))
@@ -75,7 +75,7 @@ class Account(NamedTuple):
 
 
 def summed(begin: float, end: float, start_mmol: Array, end_mmol: Array, lines: Iterable[Booking]) -> Account:
-    """Account over the lines of one period."""
+    """Account over the lines of one period, ``begin`` to ``end`` [d], which held (10,) [mmol] at either end."""
     kept = tuple(lines)
     flows = sum((line.by_cause for line in kept), np.zeros((len(CAUSES), len(IONS))))
     return Account(begin, end, start_mmol, flows, end_mmol, kept)
@@ -95,7 +95,7 @@ class Discharge(NamedTuple):
 def discharged(lines: Iterable[Booking], area_m2: float) -> tuple[Discharge, ...]:
     """N and P that left with bleed, overflow and lost drain, by reason, largest N first.
 
-    N counts NH4 and NO3, P total phosphate; ``area_m2`` of the loop. Bleed by rate has the reason "continuous",
+    N counts NH4 and NO3, P total phosphate; ``area_m2`` of the loop [m2]. Bleed by rate has the reason "continuous",
     what ran over "overflow", the drain of a known-feed loop "drain".
     """
     amounts: dict[str, Array] = {}

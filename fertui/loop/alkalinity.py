@@ -40,7 +40,8 @@ class Tendency(NamedTuple):
 
 
 def tendency(fluxes: Fluxes, litres: float | Array, days: float) -> Tendency:
-    """Tendency of pH over a period from what moved in it: ``litres`` of solution in the loop, scalar or (M,).
+    """Tendency of pH over a period from what moved in it: ``litres`` of solution in the loop
+    [L], scalar or (M,), ``days`` [d].
 
     Drivers are sorted by size; those below a hundredth of ``STEADY_MEQ_L_D`` are left out.
 

@@ -25,7 +25,7 @@ def intensity(mmol_l: Array, selectivity: Array) -> Array:
 
 
 def retained(log_s: Array, water_l: Array, capacity_meq: Array, selectivity: Array) -> Array:
-    """Amount held per amount in water, h (M, 5)."""
+    """Amount held per amount in water, h (M, 5) [-], at log s (M,), water (M,) [L] and capacity (M,) [meq]."""
     s_to_charge = np.exp(np.multiply.outer(CATION_CHARGE, log_s).T)
     return s_to_charge * (capacity_meq / water_l)[:, None] * (selectivity / CATION_CHARGE)
 

@@ -209,6 +209,7 @@ class Record:
     marks: list[int] = field(default_factory=list)
 
     def book(self, begin: float, end: float, moved: Fluxes, event: Event | None = None) -> None:
+        """Book what moved from ``begin`` to ``end`` [d], or at one time by an event."""
         self.fluxes = self.fluxes + moved
         self.bookings.append(booking(begin, end, moved, event))
 
@@ -218,12 +219,14 @@ class Record:
         self.bookings.extend(run.bookings)
 
     def report(self, now: float, state: State, feed: Array) -> None:
+        """Keep the state and the feed (M, 10) [mmol/L] of a time [d]."""
         self.times.append(now)
         self.states.append(state)
         self.feeds.append(feed)
         self.marks.append(len(self.bookings))
 
     def trajectory(self) -> Trajectory:
+        """All of it, frozen."""
         return Trajectory(
             tuple(self.times),
             tuple(self.states),

@@ -91,7 +91,7 @@ def alone(w: Array, days: float) -> Transfer:
 
 
 def half_implicit(p: Array, q: Array, r: Array, w: Array, days: float) -> Response:
-    """Implicit Euler step: first order, positive, cheap; end = response(x + days s)."""
+    """Implicit Euler step [d] at rates [1/d]: first order, positive, cheap; end = response(x + days s)."""
     a, b = 1.0 + days * p, 1.0 + days * w
     scale = 1.0 / (a * b - days * days * q * r)
     return Response(b * scale, days * q * scale, days * r * scale, a * scale)

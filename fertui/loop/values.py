@@ -179,7 +179,7 @@ class Hold:
         return np.maximum((self.set_point - self.offset) * litres - ions_mmol @ self.slope, 0.0)
 
     def needed(self, mmol_l: Array) -> Array:
-        """Units to dose per litre (M,) that bring compositions (M, 10) up to the set point; never negative."""
+        """Units to dose per litre (M,) that bring compositions (M, 10) [mmol/L] up to the set point; never negative."""
         return self.lacking(mmol_l, np.ones(mmol_l.shape[0])) / (self.proportions @ self.slope)
 
 

@@ -8,6 +8,7 @@ from __future__ import annotations
 import re
 from collections.abc import Mapping
 from functools import cache, lru_cache
+from typing import Any
 
 from fertui.quantities.numbers import tidy
 from fertui.quantities.refusal import QuantityError, quoted
@@ -161,7 +162,7 @@ def pint_factor(unit: str, target: str) -> float | None:
 
 
 @cache
-def _registry():  # type: ignore[no-untyped-def]
+def _registry() -> Any:
     import pint
 
     return pint.UnitRegistry(cache_folder=None)

@@ -6,7 +6,7 @@ from collections.abc import Callable
 from time import perf_counter
 
 import numpy as np
-import pytest
+from phreeqc import Phreeqc
 
 from fertui.chemistry.exchange import PHREEQC_SELECTIVITY, batch
 from fertui.chemistry.ions import CATION_CHARGE
@@ -35,11 +35,10 @@ def test_batches_against_phreeqc(says_ratio: Callable[[str, float, str], None]) 
     """PHREEQC 3.8.6 runs 1000 solutions and exchangers it was given beforehand, re-used in one RunString; at least
     25 times as many batches a second are asked of the exchanger.
     """
-    package = pytest.importorskip("phreeqc")
     random = np.random.default_rng(1)
     solution = np.array([6.0, 5.0, 2.0, 3.0, 0.7]) * random.lognormal(0.0, 0.4, (MEMBERS, 5))
     sites = 50.0 * random.dirichlet(np.ones(5), MEMBERS) / CATION_CHARGE
-    engine = package.Phreeqc()
+    engine = Phreeqc()
     assert engine.LoadBuiltInDatabase("Amm.dat") == 0
     assert engine.RunString("".join(map(defined, range(1, MEMBERS + 1), solution, sites))) == 0
     reuse = "".join(f"USE solution {each}\nUSE exchange {each}\nEND\n" for each in range(1, MEMBERS + 1))

@@ -36,7 +36,7 @@ class Ahead:
 def only(
     code: str, standing: Standing | None = None, entries: Sequence[Entry] = (), ahead: Ahead | None = None
 ) -> list[Notice]:
-    found = notices(standing or Standing(), entries, ahead)  # type: ignore[arg-type]
+    found = notices(standing or Standing(), entries, ahead)
     return [each for each in found if each.code == code]
 
 
@@ -225,7 +225,7 @@ def test_ec_off_its_set_point(ec: str, said_so: bool) -> None:
 )  # below 5.0 a warning, below 4.5 stop dosing and irrigation, 3.5 the emergency: common practice, no source
 def test_low_ph_is_an_act_and_speaks_first(ph: str, code: str | None) -> None:
     state = point({"K": known(12.0, (18, 28))})
-    found = notices(Standing(state=state), [read(EC="2.6", pH=ph)])  # type: ignore[arg-type]
+    found = notices(Standing(state=state), [read(EC="2.6", pH=ph)])
     assert [each.code for each in found if each.code.startswith("ph_")] == ([code] if code else [])
     if code:
         assert (found[0].code, found[0].severity, found[0].key) == (code, "act", "r")
@@ -240,7 +240,7 @@ def test_the_emergency_defers_to_site_procedure_and_safety_data_sheet() -> None:
 
 def test_the_lowest_ph_of_all_points_speaks_and_a_better_later_one_silences_it() -> None:
     low = [read("2026-07-01 06:30", pH="3.4"), read("2026-07-01 07:00", "drain", pH="4.8")]
-    assert [each.code for each in notices(Standing(), low) if each.code.startswith("ph_")] == ["ph_emergency"]  # type: ignore[arg-type]
+    assert [each.code for each in notices(Standing(), low) if each.code.startswith("ph_")] == ["ph_emergency"]
     assert only("ph_emergency", entries=[*low, read("2026-07-01 07:40", pH="5.4")]) == []
 
 
@@ -413,16 +413,16 @@ def test_a_loop_in_order_has_nothing_to_look_at() -> None:
         {"K": known(23.0, (10, 40)), "Ca": known(54.0, (30, 80)), "Mg": known(24.0, (10, 40))},
         Na=known(4.0, (None, 8.0)),
     )
-    assert notices(Standing(state=inside), log) == ()  # type: ignore[arg-type]
+    assert notices(Standing(state=inside), log) == ()
 
 
 def test_act_comes_first_and_the_same_data_give_the_same_list() -> None:
     state = point({"K": known(12.0, (18, 28))}, Na=known(7.9, (None, 8.0)))
     log = [read(EC="2.6", pH="4.8"), read(where="drain", EC="4.3"), *daily(range(2, 9))]
-    found = notices(Standing(state=state, analyses=1), log)  # type: ignore[arg-type]
+    found = notices(Standing(state=state, analyses=1), log)
     ranks = [SEVERITIES.index(each.severity) for each in found]
     assert ranks == sorted(ranks)
-    assert found == notices(Standing(state=state, analyses=1), list(reversed(log)))  # type: ignore[arg-type]
+    assert found == notices(Standing(state=state, analyses=1), list(reversed(log)))
 
 
 @given(
@@ -435,7 +435,7 @@ def test_whatever_is_logged_each_notice_has_a_reason_a_unit_and_a_key(
     state = point({"K": known(share, (18, 28))}, Na=known(na, (None, 8.0)), NH4=known(na / 20, (None, 0.5)))
     log = [read(EC=f"{ec:.2f}", pH=f"{ph:.1f}"), read(where="drain", EC=f"{drain:.2f}", temperature=f"{celsius:.1f}"),
            read(where="root_zone", temperature=f"{celsius:.1f}")]  # fmt: skip
-    for each in notices(Standing(state=state, analyses=analyses), log):  # type: ignore[arg-type]
+    for each in notices(Standing(state=state, analyses=analyses), log):
         assert each.severity in SEVERITIES
         assert each.key in KEYS
         assert each.text.endswith(".")
@@ -452,7 +452,7 @@ def test_doubtful_struck_and_future_entries_are_looked_at_by_no_rule() -> None:
 
 def test_every_rule_is_asked_once() -> None:
     assert len(set(RULES)) == len(RULES)
-    look = Look(Standing(), (), None)  # type: ignore[arg-type]
+    look = Look(Standing(), (), None)
     assert [list(rule(look)) for rule in RULES if rule.__name__ != "readings"] == [[] for _ in RULES[1:]]
 
 

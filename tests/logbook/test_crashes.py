@@ -114,7 +114,7 @@ def test_four_writers_keep_two_thousand_entries_in_order_without_a_long_wait(tmp
                 longest = max(longest, time.perf_counter() - started)
         (tmp_path / f"wait{who}").write_text(str(longest))
 
-    children = [in_child(lambda who=who: write(who)) for who in range(1, 5)]  # type: ignore[misc]
+    children = [in_child(lambda who=who: write(who)) for who in range(1, 5)]
     outcomes = [succeeded(child) for child in children]
     assert outcomes == [True] * 4
     with Logbook.open(path) as book:

@@ -92,8 +92,8 @@ def test_a_loop_sees_its_own_and_the_sites_entries(book: Logbook) -> None:
         (reading(1)._replace(values=(Value("K", "x", float("nan")),)), "not a number"),
         (reading(1)._replace(values=(Value("K", "1", 1.0), Value("K", "2", 2.0))), "twice"),
         (reading(1)._replace(note="\ud800"), "not text"),
-        (reading(1)._replace(at=datetime(2026, 1, 1)), "no zone"),  # noqa: DTZ001
-        (reading(1)._replace(by=None), "cannot be None"),  # type: ignore[arg-type]
+        (reading(1)._replace(at=datetime(2026, 1, 1)), "no zone"),
+        (reading(1)._replace(by=None), "cannot be None"),
     ],
 )
 def test_an_entry_that_cannot_be_kept_leaves_its_whole_batch_out(book: Logbook, entry: Entry, says: str) -> None:

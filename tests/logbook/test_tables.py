@@ -6,6 +6,7 @@ import csv
 import random
 from collections.abc import Callable
 from pathlib import Path
+from typing import Any
 
 import pytest
 
@@ -26,10 +27,10 @@ Import = Callable[..., ImportResult]
 def take(book: Logbook, tmp_path: Path) -> Import:
     """Import a text as a table of a kind."""
 
-    def imported(text: str | bytes, kind: str = "analysis", **wishes: object) -> ImportResult:
+    def imported(text: str | bytes, kind: str = "analysis", **wishes: Any) -> ImportResult:
         path = tmp_path / "table.csv"
         path.write_bytes(text if isinstance(text, bytes) else text.encode())
-        return import_table(path, kind, book, SITE, NOW, **{"by": "MK", **wishes})  # type: ignore[arg-type]
+        return import_table(path, kind, book, SITE, NOW, **{"by": "MK", **wishes})
 
     return imported
 

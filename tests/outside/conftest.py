@@ -8,6 +8,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from phreeqc import Phreeqc
 
 Columns = dict[str, np.ndarray]
 
@@ -18,12 +19,11 @@ def phreeqc() -> Callable[[str, str], Columns]:
 
     The default database is Amm.dat, where ammonium and nitrate do not meet through redox.
     """
-    package = pytest.importorskip("phreeqc")
     engines: dict[str, object] = {}
 
     def run(script: str, database: str = "Amm.dat") -> Columns:
         if database not in engines:
-            engines[database] = package.Phreeqc()
+            engines[database] = Phreeqc()
             assert engines[database].LoadBuiltInDatabase(database) == 0
         engine = engines[database]
         assert engine.RunString(script) == 0, engine.GetErrorString()

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import molmass
+import pint
 import pytest
 
 from fertui.chemistry.species import SPECIES
@@ -113,7 +115,6 @@ def test_arsia_example(text: str, oxide: str, element: str, mg_per_l: float) -> 
 @pytest.mark.parametrize("species", SPECIES.values(), ids=lambda each: each.name)
 def test_formula_masses_against_molmass(species) -> None:
     """Package molmass, its own atomic weights; 2e-4 covers ours, abridged to five digits (S 32.06, not 32.065)."""
-    molmass = pytest.importorskip("molmass")
     expected = molmass.Formula(species.formula).mass / species.per_formula
     assert species.grams_per_mol_of_ion == pytest.approx(expected, rel=2e-4)
 
@@ -134,7 +135,6 @@ PINT_NAMES = {
 @pytest.mark.parametrize("what", ["EC", "light", "litres", "litres a day", "kg"])
 def test_tabled_units_against_pint(what: str) -> None:
     """Package pint, default registry."""
-    pint = pytest.importorskip("pint")
     registry = pint.UnitRegistry()
     canonical = next(unit for unit, worth in FACTORS[what].items() if worth == 1)
     for unit, worth in FACTORS[what].items():
@@ -145,7 +145,6 @@ def test_tabled_units_against_pint(what: str) -> None:
 @pytest.mark.parametrize("basis", ["mg/L", "mmol/L"])
 def test_tabled_concentrations_against_pint(basis: str) -> None:
     """Package pint, default registry."""
-    pint = pytest.importorskip("pint")
     registry = pint.UnitRegistry()
     for unit, worth in PER_LITRE[basis].items():
         assert registry.Quantity(PINT_NAMES.get(unit, unit)).to(basis).magnitude == pytest.approx(worth, rel=1e-9), unit

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from datetime import UTC, datetime
+from typing import Any
 
 from fertui.catalogue.cautions import cautions_of
 from fertui.estimate.points import Estimated, IonState, PointState
@@ -39,9 +40,9 @@ SITE = Site(
 RECIPE = target_of(SITE, SLABS)["feed"]
 
 
-def stocks(**wishes: object) -> StockSheet:
+def stocks(**wishes: Any) -> StockSheet:
     """The stock-tank sheet of the slabs."""
-    return stock_sheet(SITE, SLABS, recipe=RECIPE, **wishes)  # type: ignore[arg-type]
+    return stock_sheet(SITE, SLABS, recipe=RECIPE, **wishes)
 
 
 def acid() -> AcidSheet:
@@ -58,7 +59,7 @@ def point(k_share: float) -> PointState:
     return PointState(Estimated(2.6, 2.5, 2.7, (2.0, 3.0)), None, ions)
 
 
-def hand_plan(**changes: object) -> Plan:
+def hand_plan(**changes: Any) -> Plan:
     """Two weighings on one day, one two days later."""
     later = datetime(2026, 7, 3, 6, 0, tzinfo=UTC)
     plan = Plan(
@@ -79,7 +80,7 @@ def hand_plan(**changes: object) -> Plan:
         arithmetic=("1.75 kg x 9891 mmol/kg / 5000 L = 3.46 mmol/L K",),
         sensitivity=(WhatIf("half done", {"K": 32.0}, 2.6, "K share 32 % at the end, inside its band"),),
     )  # fmt: skip
-    return plan._replace(**changes)  # type: ignore[arg-type]
+    return plan._replace(**changes)
 
 
 def acid_step() -> AcidStep:

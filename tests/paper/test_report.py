@@ -7,6 +7,7 @@ import io
 import re
 from datetime import UTC, datetime
 from types import SimpleNamespace
+from typing import Any
 
 import pytest
 
@@ -41,7 +42,7 @@ LOG = [
 SITE_WITH_BUDGET = SITE._replace(budget_n_kg_per_ha=50.0)
 
 
-def reported(**changes: object) -> Reported:
+def reported(**changes: Any) -> Reported:
     taken = {"K": -26_000.0 * 40, "NO3": -26_000.0 * 60, "HCO3": 26_000.0}
     account = SimpleNamespace(
         start=START, end=NOW, ions={ion: SimpleNamespace(uptake=mmol) for ion, mmol in taken.items()},
@@ -50,14 +51,14 @@ def reported(**changes: object) -> Reported:
     history = [ANALYSIS, *LOG, CORRECTED]
     effective = [CORRECTED, *LOG]
     lost = (Discharge("sodium", 2500.0, 0.42, 0.08, 16.2, 3.1),)
-    run = Stretch(account, lost, 104_000.0, analyses=3)  # type: ignore[arg-type]
+    run = Stretch(account, lost, 104_000.0, analyses=3)
     it = Reported(SITE_WITH_BUDGET, SLABS._replace(area_m2=260.0), START, NOW, history, effective, (run,))
-    return it._replace(**changes)  # type: ignore[arg-type]
+    return it._replace(**changes)
 
 
-def run_of(**changes: object) -> Stretch:
+def run_of(**changes: Any) -> Stretch:
     """The run behind the report, changed."""
-    return reported().stretches[0]._replace(**changes)  # type: ignore[arg-type]
+    return reported().stretches[0]._replace(**changes)
 
 
 @pytest.fixture

@@ -6,6 +6,7 @@ import csv
 import io
 from collections.abc import Sequence
 from datetime import timedelta
+from typing import Any
 
 import pytest
 
@@ -86,8 +87,8 @@ def test_doubtful_values_and_other_loops_are_not_what_stood_there_last() -> None
 # Handover ------------------------------------------------------------------------------------------------------------
 
 
-def shift(*watch: Notice, **changes: object) -> LoopShift:
-    return LoopShift(watch, {"calcium": 4.1, "sulfate": 3.9}, NOW - timedelta(days=9), **changes)  # type: ignore[arg-type]
+def shift(*watch: Notice, **changes: Any) -> LoopShift:
+    return LoopShift(watch, {"calcium": 4.1, "sulfate": 3.9}, NOW - timedelta(days=9), **changes)
 
 
 def handed_over() -> Page:

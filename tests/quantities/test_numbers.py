@@ -71,7 +71,7 @@ def test_a_refusal_is_the_programs_refusal_and_cannot_be_changed() -> None:
     assert isinstance(error, QuantityError)
     assert str(error) == f"{error.wrong}. Allowed: {error.allowed}. {error.advice[0].upper()}{error.advice[1:]}."
     with pytest.raises(AttributeError):
-        error.wrong = "something else"  # type: ignore[misc]
+        error.wrong = "something else"
 
 
 def test_negative_only_where_asked_for() -> None:
