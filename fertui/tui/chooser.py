@@ -8,7 +8,7 @@ from typing import Any, ClassVar, NamedTuple
 from textual import events
 from textual.binding import Binding
 
-from fertui.tui.ink import BLANK, Line, Span, cells, filled, fit, line, literal
+from fertui.tui.ink import BLANK, Line, Span, cells, filled, fit, line, literal, wrap
 from fertui.tui.snapshot import Snapshot
 from fertui.tui.view import SCROLLING, View
 
@@ -44,7 +44,7 @@ class Chooser(View):
         self._narrows = narrows
         self._title, self._options, self._then = title, tuple(options), then
         self._typed = ""
-        self._row = 0
+        self._row, self._head = 0, 2
 
     @property
     def _left(self) -> list[Option]:
@@ -54,13 +54,15 @@ class Chooser(View):
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """Title, what was typed, and the options left."""
         narrowed = f"  containing {self._typed!r}" if self._typed else "  type to narrow" if self._narrows else ""
-        rows: list[Line] = [line(Span(f" {self._title}", "title"), Span(literal(narrowed), "faint")), BLANK]
+        rows: list[Line] = [line(Span(f" {text}", "title")) for text in wrap(self._title, width - 2)]
+        rows = [*rows[:-1], line(*rows[-1], Span(literal(narrowed), "faint")), BLANK]
+        self._head = len(rows)
         size = max((cells(each.name) for each in self._options), default=0)
         for index, each in enumerate(self._left):
             rows.append(option_row(each, min(size, width - 20), index == self._row, width))
         return (
             rows
-            if len(rows) > 2
+            if len(rows) > self._head
             else [*rows, line(" ", Span("Nothing has that in it; Backspace widens the list.", "faint"))]
         )
 
@@ -80,7 +82,7 @@ class Chooser(View):
 
     def _move(self, row: int) -> None:
         self._row = max(0, min(row, len(self._left) - 1))
-        self.reveal(self._row + 2)
+        self.reveal(self._row + self._head)
         self.redraw()
 
     def action_up(self) -> None:

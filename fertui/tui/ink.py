@@ -91,6 +91,15 @@ def cut(text: str, width: int, mark: str = "~") -> str:
     return "".join(kept) + mark if width > 0 else ""
 
 
+def cut_words(text: str, width: int) -> str:
+    """The text in at most ``width`` columns, cut between words.
+
+    >>> cut_words("saved 4 reading EC 2.6", 16)
+    'saved 4 ...'
+    """
+    return text if cells(text) <= width else f"{wrap(text, width - 4)[0]} ..."
+
+
 def fit(text: str, width: int, right: bool = False) -> str:
     """The text in exactly ``width`` columns, cut or padded.
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from fertui.tui.ink import Line, Span, cells, fit, line, literal, width_of
+from fertui.tui.ink import Line, Span, cells, cut_words, fit, line, literal, width_of
 from fertui.tui.page import Page
 
 SHORT = {"question_mark": "?", "escape": "Esc", "enter": "Enter", "slash": "/", "plus": "+", "asterisk": "*",
@@ -36,7 +36,7 @@ def key_words(keys: Sequence[tuple[str, str]], notice: str, ink: str, width: int
     """As many keys as fit beside the notice, the last ones (actions and help) always among them."""
     notice = literal(notice)
     if cells(notice) > width - 30:
-        return line(Span(" " + fit(notice, width - 1), ink))
+        return line(Span(" " + fit(cut_words(notice, width - 1), width - 1), ink))
     room = width - cells(notice) - 3
     *some, actions, helping = keys if len(keys) > 1 else (*keys, ("", ""), ("", ""))
     row = line(" ")

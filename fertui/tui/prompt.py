@@ -8,10 +8,14 @@ from typing import Any, ClassVar
 from textual import events
 from textual.binding import Binding
 
-from fertui.tui.ink import Line, Span, cells, line, literal
+from fertui.tui.ink import Line, Span, cells, cut_words, line, literal
 from fertui.tui.page import Page
 from fertui.tui.typing_line import Typed
 
+PROMPT_KEYS = ("  Enter takes it, Esc leaves it ", "  Enter  Esc ")
+"""What the two keys of a question do, as long as there is room for it."""
+SHORTEST = 12
+"""Columns there are for an answer, however long the question is."""
 MEANT = ("prompt.answer", "prompt.drop", "leave.at_once")
 """Keys that mean something while a question stands, whatever keys the settings give them."""
 
@@ -33,7 +37,7 @@ class Prompt(Page, can_focus=True):
 
     def ask(self, question: str, then: Callable[[str], object], text: str = "") -> None:
         """Put a question; ``then`` gets the answer."""
-        self._question, self._then, self._typed = question, then, Typed.at_end(text)
+        self._question, self._then, self._typed = question, then, Typed.standing(text)
         self.display = True
         self.screen.set_focus(self, scroll_visible=False)
         self.redraw()
@@ -74,7 +78,7 @@ class Prompt(Page, can_focus=True):
 
 def question_line(question: str, typed: Typed, width: int) -> Line:
     """The question, the answer so far, and the two keys."""
-    keys = "  Enter takes it, Esc leaves it "
-    question = f" {literal(question)} "
-    room = max(8, width - cells(question) - len(keys))
+    question = f" {cut_words(literal(question), width - SHORTEST - 2)} "
+    keys = next((keys for keys in PROMPT_KEYS if cells(question) + SHORTEST + len(keys) <= width), "")
+    room = width - cells(question) - len(keys)
     return line(Span(question, "strong"), *typed.shown(room), Span(keys, "faint"))

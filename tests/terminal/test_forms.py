@@ -216,7 +216,7 @@ def test_a_newcomer_who_types_initials_into_a_number_is_told_how_to_save(tmp_pat
     give_initials(terminal)
     terminal.until_text("saved")
     terminal.press("7")
-    assert "EC 2.6, pH 5.6, temperature 21" in terminal.until_text("newest first")
+    assert "pH 5.6, temperature 21" in terminal.until_text("newest first")
     assert {entry.by for entry in open_site(folder).history(kind="reading")} == {"MK"}
 
 
@@ -422,3 +422,51 @@ def test_a_time_typed_is_told_back_with_its_day(counting: Counted) -> None:
     terminal = counting.terminal
     terminal.press("w", "tab", "tab", "yesterday 8:00", "enter")
     assert re.search(r"when +yesterday 8:00_+ = \w{3} \d\d \w{3} \d{4} 08:00", terminal.text), terminal.text
+
+
+def test_typing_takes_the_place_of_a_value_that_stood_there(site: Path, counting: Counted) -> None:
+    open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay")
+    terminal = counting.terminal
+    terminal.press("7", "c")
+    terminal.until_text("Correct ")
+    terminal.press("down", "26", "f2")
+    terminal.until_text("Why is entry")
+    terminal.press("slip", "enter")
+    give_initials(terminal)
+    terminal.until_text("logged as")
+    assert [entry.number_of("litres") for entry in fresh(site, "stock")][-1] == 26.0
+
+
+def test_a_correction_is_asked_about_before_it_is_written(site: Path, counting: Counted) -> None:
+    open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay")
+    terminal = counting.terminal
+    terminal.press("7", "c")
+    terminal.until_text("Correct ")
+    terminal.press("down", "2500", "f2")
+    terminal.until_text("2500 L is more than")
+    terminal.press("2x", "f2")
+    assert "Why is entry" not in terminal.text
+    assert re.search(r"▸ litres +2x_", terminal.text)
+
+
+def test_a_draft_says_what_it_holds_and_is_judged_again(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("r", "2.6", "enter", "5.6", "tab", "tab", "5.9", "esc")
+    drafts = site / "drafts.json"
+    drafts.write_text(drafts.read_text(encoding="utf-8").replace('"5.6"', '"29"'), encoding="utf-8")
+    terminal.press("r")
+    terminal.until_text("drip EC 2.6 mS/cm, drip pH 29, drain EC 5.9 mS/cm")
+    terminal.press("enter", "f2")
+    terminal.until_text("pH 29 cannot be")
+    assert re.search(r"▸ pH +29_", terminal.text)
+
+
+def test_a_choice_alone_makes_no_draft(site: Path, counting: Counted) -> None:
+    counting.terminal.press("a", "d", "enter", "esc")
+    assert not (site / "drafts.json").exists()
+
+
+def test_a_field_that_may_not_stay_empty_is_gone_to(counting: Counted) -> None:
+    counting.terminal.press("m", "tab", "88", "f2")
+    counting.terminal.until_text("mixed to: this cannot be left empty.")
+    assert "▸ mixed to" in counting.terminal.text

@@ -28,7 +28,7 @@ class Answers(NamedTuple):
     def blank(cls, spec: Spec) -> Answers:
         """Nothing typed yet, defaults in their fields."""
         texts = tuple(each.default for each in spec.fields)
-        return cls(spec, texts, 0, Typed.at_end(texts[0]))
+        return cls(spec, texts, 0, Typed.standing(texts[0]))
 
     @property
     def current(self) -> Asked:
@@ -37,8 +37,26 @@ class Answers(NamedTuple):
 
     @property
     def changed(self) -> bool:
-        """Whether anything was typed or chosen."""
-        return self.with_typed_kept().texts != tuple(each.default for each in self.spec.fields)
+        """Whether anything was typed; a choice alone is made again in a moment."""
+        pairs = zip(self.spec.fields, self.with_typed_kept().texts, strict=True)
+        return any(text != each.default for each, text in pairs if not each.choices)
+
+    @property
+    def unread(self) -> int | None:
+        """The first field whose text has not been understood yet, as those of a draft."""
+        return next((number for number in range(len(self.texts)) if self.is_unread(number)), None)
+
+    def is_unread(self, number: int) -> bool:
+        """Whether a field holds a text that is to be read and was not yet; what stood there from the start was."""
+        each, text = self.spec.fields[number], self.texts[number]
+        known = number in self.understood or (number, text) in self.settled
+        return bool(text) and each.is_read and text != each.default and not known
+
+    @property
+    def missing(self) -> int | None:
+        """The first field that may not stay empty and is."""
+        pairs = enumerate(zip(self.spec.fields, self.texts, strict=True))
+        return next((number for number, (each, text) in pairs if each.required and not text), None)
 
     def with_typed_kept(self) -> Answers:
         """What is being typed counts as the text of its field."""
@@ -63,7 +81,7 @@ class Answers(NamedTuple):
         """The cursor in another field, what was typed kept."""
         kept = self.with_typed_kept()
         to = max(0, min(to, len(self.spec.fields) - 1))
-        return kept._replace(at=to, typed=Typed.at_end(kept.texts[to]))
+        return kept._replace(at=to, typed=Typed.standing(kept.texts[to]))
 
     def next_group(self, step: int = 1) -> Answers:
         """The cursor in the first field of the next group, round about."""
@@ -93,10 +111,8 @@ class Answers(NamedTuple):
         return None if typed is None else self._replace(typed=typed)
 
     def _picked(self, characters: str) -> Answers:
-        """The next choice that begins with the character typed; a digit counts them from one."""
+        """The next choice that begins with the character typed."""
         choices, character = self.current.choices, characters[:1].lower()
-        if character.isdigit() and 1 <= int(character) <= len(choices):
-            return self._replace(typed=Typed.at_end(choices[int(character) - 1]))
         if character == " ":
             return self._stepped(1)
         here = choices.index(self.typed.text) if self.typed.text in choices else -1

@@ -16,10 +16,17 @@ METHODS = ("", "pore", "extract_1_1.5", "paste", "pour_through")
 
 
 def points_of(loop: Loop) -> tuple[str, ...]:
-    """Points of a loop that can be sampled, the first the usual one."""
+    """Points of a loop that can be sampled."""
     from fertui.logbook.parse import POINTS_BY_LAYOUT
 
     return POINTS_BY_LAYOUT[loop.layout]
+
+
+def usual_point(loop: Loop) -> str:
+    """Where a loop is sampled first of all: the point it is steered by."""
+    from fertui.workbench.glance import managed_point
+
+    return managed_point(loop)
 
 
 def tanks_of(site: Site, loop: Loop) -> tuple[str, ...]:

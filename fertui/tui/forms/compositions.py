@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from fertui.chemistry.names import IONS, MICRONUTRIENTS
-from fertui.tui.forms.choices import METHODS, NOTE, TIME, points_of
+from fertui.tui.forms.choices import METHODS, NOTE, TIME, points_of, usual_point
 from fertui.tui.forms.spec import Asked, Group, Part, Spec
 
 if TYPE_CHECKING:
@@ -40,7 +40,7 @@ def micronutrients(entry: int = 0) -> tuple[Asked, ...]:
 def analysis(site: Site, loop: Loop, unit: str) -> Spec:
     """A laboratory's report."""
     about = (
-        Asked("point", "point", choices=points_of(loop), default=points_of(loop)[1], required=True),
+        Asked("point", "point", choices=points_of(loop), default=usual_point(loop), required=True),
         Asked("at", "sampled", words=True),
     )
     rest = (

@@ -27,13 +27,14 @@ class Correction(Form):
         """A correction half typed is not kept: it belongs to this entry as it stood."""
         return True
 
-    def action_save(self) -> None:
-        """Ask for the reason where none is given, then write."""
-        self.answers = self.answers.with_typed_kept()
+    def _look_over(self) -> None:
+        """Ask for the reason once every changed value is understood and its doubts are answered, then write."""
         pairs = zip(self.spec.fields, self.answers.texts, strict=True)
         changes = {each.name: text for each, text in pairs if text != each.default}
         if not changes:
             self.say(("Nothing is changed. Esc leaves the form.", "watch"))
+            return
+        if self._asks_again(text for number in self.answers.doubts for text in self._doubted[number]):
             return
 
         def because(why: str) -> None:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual import events
@@ -13,11 +13,13 @@ from fertui.tui.figures import MARKS
 from fertui.tui.forms.answers import Answers
 from fertui.tui.forms.drawing import Last, draw_form, hint_of, in_unit, last_of, messages
 from fertui.tui.forms.spec import Spec, Texts, entries_of
-from fertui.tui.ink import BLANK, Line, Span, line, literal
+from fertui.tui.ink import BLANK, Line, Span, cells, line, literal
 from fertui.tui.snapshot import UNITS, Ask, Snapshot
+from fertui.tui.typing_line import Typed
 from fertui.tui.view import View
 
 if TYPE_CHECKING:
+    from fertui.logbook.entries import Entry
     from fertui.tui.drafts import Draft
     from fertui.workbench import Bench
 
@@ -92,10 +94,9 @@ class Form(View):
         last: Last = snapshot.get(Ask("previous", self.loop)) or {}
         rows, at = draw_form(self.answers, last, self.fertui.moment, width)
         unit = f"in {self.spec.unit} (u)" if self.spec.unit else "empty: not measured"
-        title = line(
-            Span(f" {self.spec.title}, {literal(self.loop)}", "title"),
-            Span(f"   {unit}; {how_to_save(snapshot.initials)}", "faint"),
-        )
+        name, saves = f" {self.spec.title}, {literal(self.loop)}", f"   {how_to_save(snapshot.initials)}"
+        both = f"   {unit}; {saves.strip()}"
+        title = line(Span(name, "title"), Span(both if cells(name + both) <= width else saves, "faint"))
         height = max(1, self.room.height - 1 - self._foot)
         top = max(0, min(at - height + 2, len(rows) - height))
         shown = [*rows[top : top + height], *[BLANK] * (height - len(rows))]
@@ -147,7 +148,8 @@ class Form(View):
         """Put characters into the field: after a question in place of what was asked about; no letter begins a
         number."""
         answers = self.answers.emptied() if self._asked_back else self.answers
-        self._stray = answers.current.is_number and not answers.typed.text and characters[0].isalpha()
+        begins = not answers.typed.text or answers.typed.found
+        self._stray = answers.current.is_number and begins and characters[0].isalpha()
         if self._stray:
             self.say((f"A number goes here. {how_to_save(self.fertui.snapshot.initials)}.", "watch"))
             return
@@ -187,9 +189,7 @@ class Form(View):
         if before is None:
             self.say(("There is no last value of this in the logbook.", "watch"))
         else:
-            self._set(
-                self.answers._replace(typed=type(self.answers.typed).at_end(in_unit(before, self.answers.current)))
-            )
+            self._set(self.answers._replace(typed=Typed.standing(in_unit(before, self.answers.current))))
 
     def action_close(self) -> None:
         """Leave; what was typed is kept."""
@@ -207,10 +207,8 @@ class Form(View):
         """Have the field understood before the cursor leaves it; a refusal or a doubt keeps it there."""
         self._asked_back = self._stray = False
         self.answers = self.answers.with_typed_kept()
-        number, text = self.answers.at, self.answers.texts[self.answers.at]
-        each = self.answers.current
-        settled = (number, text) in self.answers.settled or number in self.answers.understood
-        if not text or not each.is_read or settled:
+        number, each = self.answers.at, self.answers.current
+        if not self.answers.is_unread(number):
             self._words = []
             go_on()
             return
@@ -286,12 +284,26 @@ class Form(View):
 
     def action_save(self) -> None:
         """Look the whole form over, ask for initials where needed, write, and show what was read back."""
-        self._leave_field(self._look_over)
+        self._leave_field(self._read_rest)
+
+    def _read_rest(self) -> None:
+        """Have what was not understood yet read field by field; the cursor stays in one that cannot be."""
+        number = self.answers.unread
+        if number is None:
+            self._look_over()
+        else:
+            self.answers = self.answers.moved(number)
+            self._leave_field(self._read_rest)
 
     def _look_over(self) -> None:
-        found = entries_of(self.spec, self.answers.texts)
+        """Look at the entries as wholes."""
+        found, missing = entries_of(self.spec, self.answers.texts), self.answers.missing
         if not found:
             self.say(("Nothing is filled in yet. Esc leaves the form.", "watch"))
+            return
+        if missing is not None:
+            self.answers = self.answers.moved(missing)
+            self.say((f"{self.answers.current.label}: this cannot be left empty.", "act"))
             return
         by, loop = self.fertui.snapshot.initials or "?", self.loop
         self.fertui.clerk(lambda bench: _look(bench, found, by, loop), self._looked, "the form")
@@ -300,14 +312,19 @@ class Form(View):
         if answer.value is None:
             self.say((answer.trouble, "act"))
             return
-        open_questions = [text for text in answer.value if text not in self._confirmed]
-        if open_questions:
-            self._confirmed |= set(open_questions)
-            self.say(
-                *((text, "watch") for text in open_questions), ("Save again (+ or F2) to keep it as it is.", "faint")
-            )
-            return
-        self.fertui.with_initials(self._write)
+        if not self._asks_again(answer.value):
+            self.fertui.with_initials(self._write)
+
+    def _asks_again(self, questions: Iterable[str]) -> bool:
+        """Ask what has not been answered yet, the cursor in the field it is about; saving again is the answer."""
+        still_open = [text for text in questions if text not in self._confirmed]
+        if not still_open:
+            return False
+        self._confirmed |= set(still_open)
+        about = (number for number, doubts in self._doubted.items() if set(doubts) & set(still_open))
+        self.answers = self.answers.moved(next(about, self.answers.at))
+        self.say(*((text, "watch") for text in still_open), ("Save again (+ or F2) to keep it as it is.", "faint"))
+        return True
 
     def _write(self, initials: str) -> None:
         entries = [(kind, {**texts, "by": initials}) for kind, texts in entries_of(self.spec, self.answers.texts)]
@@ -340,11 +357,7 @@ class Form(View):
             self.fertui.choose_unit(draft.unit)
         if len(texts) == len(self.spec.fields):
             first_empty = next((i for i, text in enumerate(texts) if not text), 0)
-            self._set(
-                self.answers._replace(texts=texts, typed=type(self.answers.typed).at_end(texts[0]), at=0).moved(
-                    first_empty
-                )
-            )
+            self._set(self.answers._replace(texts=texts, typed=Typed.standing(texts[0]), at=0).moved(first_empty))
 
 
 def how_to_save(initials: str) -> str:
@@ -379,11 +392,8 @@ def _record(bench: Bench, entries: list[tuple[str, Texts]], loop: str) -> tuple[
     return bench.record_all(entries, loop), bench.last_number()
 
 
-def saved_words(entries: Any) -> str:
+def saved_words(entries: Iterable[Entry]) -> str:
     """What was read back from the logbook, in one line."""
-    said = []
-    for entry in entries:
-        values = " ".join(f"{value.name} {value.text}" for value in entry.values[:4])
-        more = f" and {len(entry.values) - 4} more" if len(entry.values) > 4 else ""
-        said.append(f"{entry.number} {entry.kind} {values}{more}")
-    return "saved " + "; ".join(said)
+    from fertui.tui.entry_list import said
+
+    return "saved " + "; ".join(f"{entry.number} {entry.kind} {said(entry)}" for entry in entries)

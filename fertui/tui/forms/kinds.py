@@ -6,7 +6,17 @@ from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING
 
 from fertui.tui.figures import point_name
-from fertui.tui.forms.choices import METHODS, NOTE, TIME, acids_of, containers_of, points_of, salts_of, tanks_of
+from fertui.tui.forms.choices import (
+    METHODS,
+    NOTE,
+    TIME,
+    acids_of,
+    containers_of,
+    points_of,
+    salts_of,
+    tanks_of,
+    usual_point,
+)
 from fertui.tui.forms.compositions import analysis, recipe
 from fertui.tui.forms.spec import Asked, Group, Part, Spec
 
@@ -226,7 +236,7 @@ def calibration(site: Site, loop: Loop, unit: str) -> Spec:
 def sample(site: Site, loop: Loop, unit: str) -> Spec:
     """A sample on its way."""
     fields = (
-        Asked("point", "point", choices=points_of(loop), default=points_of(loop)[1]),
+        Asked("point", "point", choices=points_of(loop), default=usual_point(loop)),
         Asked("status", "status", choices=("sent", "awaited", "arrived", "lost"), default="sent", required=True),
         Asked("lab", "lab", words=True), Asked("sample", "number", words=True), Asked("expected", "report expected",
         words=True),
