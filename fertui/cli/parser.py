@@ -248,7 +248,7 @@ def _period(parser: Parser) -> None:
 
 def _read_commands(commands: argparse._SubParsersAction) -> None:
     today = _units(_reading(commands, "today", "state and what to look at", "fertui today north"))
-    today.epilog = f"signs: {LEGEND}"
+    today.epilog = LEGEND
     _units(_reading(commands, "analysis", "last analysis against target", "fertui analysis north"))
     drift = _reading(commands, "drift", "shares, ions, EC, pH over time", "fertui drift north --days 28")
     drift.add_argument("--days", default="28", metavar="N", help="days back (default: 28)")
@@ -299,4 +299,4 @@ def _paper_commands(commands: argparse._SubParsersAction) -> None:
     _reading(commands, "supplies", "salts, acids, stock tanks", "fertui supplies north")
     _reading(commands, "site", "targets, bands and limits, and where each comes from", "fertui site north")
     looked_over = _reading(commands, "check", "site file, logbook, watch list, this machine", "fertui check north")
-    looked_over.epilog = f"signs: {LEGEND}   ok all right"
+    looked_over.epilog = LEGEND

@@ -5,17 +5,16 @@ from __future__ import annotations
 from collections.abc import Iterable
 
 from fertui.catalogue.cautions import SEVERITIES, Caution
+from fertui.estimate.signs import CAUTION_SIGNS
 from fertui.paper.page import folded, section
-
-SIGNS = {"danger": "!! ", "warning": "!  ", "note": "-  "}
 
 
 def read_first(found: Iterable[Caution]) -> list[str]:
     """A block of cautions: the first as it comes, the others worst first, same words about several supplies once."""
     kept = merged(found)
     ranked = [*kept[:1], *sorted(kept[1:], key=lambda each: SEVERITIES.index(each.severity))]
-    lines = [line for each in ranked for line in folded(each.text, SIGNS[each.severity])]
-    return section("READ BEFORE YOU START   (!! danger   ! warning)", lines)
+    lines = [line for each in ranked for line in folded(each.text, f"{CAUTION_SIGNS[each.severity]:2} ")]
+    return section("READ BEFORE YOU START   (!! danger   ! warning   - note)", lines)
 
 
 def merged(found: Iterable[Caution]) -> list[Caution]:

@@ -7,12 +7,12 @@ from datetime import datetime, timedelta
 from typing import NamedTuple
 
 from fertui.estimate.notices.notice import Notice
+from fertui.estimate.signs import SIGNS
 from fertui.logbook.entries import Entry
 from fertui.paper.page import Page, age, amount, clock, columns, day, folded, heading, listed, page, section
 from fertui.paper.round_sheet import POINT_WORDS, points_of
 from fertui.site.model import Loop, Site
 
-SIGNS = {"act": "[ ] !! ", "watch": "[ ] !  ", "note": "[ ] -  "}
 SHIFTS = timedelta(hours=36)
 """What was written down within this time is news to the next shift (common practice, no source)."""
 ROUTINE = ("reading", "water", "stock", "level", "plan", "site")
@@ -37,9 +37,9 @@ def handover(
     rows = [("loop", "where", "EC [mS/cm]", "pH", "read", "stock lasts", "analysis"), *_rows(site, at, entries, loops)]
     lines += columns(rows, (2, 3)) + [""]
     for name, loop in loops.items():
-        told = [line for each in loop.watch for line in folded(each.text, SIGNS[each.severity])]
+        told = [line for each in loop.watch for line in folded(each.text, f"[ ] {SIGNS[each.severity]:2} ")]
         awaited = listed((f"awaited: {text}" for text in loop.awaited), "[ ] -  ")
-        lines += section(f"TO LOOK AT, {name}   (!! act   ! watch)", [*told, *awaited])
+        lines += section(f"TO LOOK AT, {name}   (!! act   ! watch   - note)", [*told, *awaited])
     lines += section("PLANNED, NOT OR ONLY PARTLY DONE", listed(steps, "[ ] "))
     lines += section("WRITTEN DOWN SINCE YESTERDAY", listed(_news(site, at, entries)))
     lines += [

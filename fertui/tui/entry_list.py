@@ -110,7 +110,7 @@ class EntryList(View):
         at = self.fertui.local(entry.at)
         when = f"{at:%-d %b}" if entry.whole_day else f"{at:%-d %b %H:%M}"
         words = cut(literal(self._where(entry) + said(entry, by)), width - 37)
-        mark = "×" if by is not None else "▸" if chosen else "!" if entry.doubtful else " "
+        mark = "×" if by is not None else "▸" if chosen else "?" if entry.doubtful else " "
         row = line(
             col(f"{mark}{entry.number}", 7), col(when, 13), Span("  "), col(entry.kind, 9, "strong", right=False),
             col(literal(entry.by), 5, "faint", right=False), Span(words),

@@ -6,11 +6,13 @@ import re
 from datetime import datetime, timedelta
 from typing import TYPE_CHECKING
 
+from fertui.estimate.signs import SIGNS
+
 if TYPE_CHECKING:
     from fertui.estimate.points import Band, Estimated
 
 OUT, LEAVING, INSIDE = "act", "watch", "good"
-MARKS = {"act": "!", "watch": "▸", "good": "✓", "note": "·", "faint": "·"}
+MARKS = {**SIGNS, "good": "✓", "faint": SIGNS["note"]}
 """The sign that goes with each ink of a state, so that the state is never colour alone."""
 
 CAUTION_INKS = {"danger": "act", "warning": "watch", "note": "faint"}

@@ -6,11 +6,18 @@ from typing import Any, ClassVar
 
 from textual.binding import Binding
 
+from fertui.estimate.signs import MEANINGS, SIGNS
 from fertui.tui.ink import BLANK, Line, Span, fit, line, wrap
 from fertui.tui.key_line import key_name
 from fertui.tui.keys import GLOBAL_KEYS
 from fertui.tui.snapshot import Snapshot
 from fertui.tui.view import SCROLLING, View
+
+SIGNS_HERE = {
+    **{SIGNS[severity]: meaning for severity, meaning in MEANINGS.items()},
+    "✓": "all right", "?": "kept but in doubt: not used", "×": "corrected or struck", "▸": "what the keys act upon",
+}  # fmt: skip
+"""Every sign with its meaning; those of severity are the same in text and on paper."""
 
 
 class HelpPage(View):
@@ -36,7 +43,8 @@ class HelpPage(View):
             if bindings:
                 rows += [BLANK, line(Span(f" {title}", "title"))]
                 rows += [_row(binding, keymap.get(binding.id or "", binding.key), width) for binding in bindings]
-        return rows
+        signs = [line(" ", Span(fit(sign, 10), "accent"), meaning) for sign, meaning in SIGNS_HERE.items()]
+        return [*rows, BLANK, line(Span(" Signs", "title")), *signs]
 
 
 def _row(binding: Binding, key: str, width: int) -> Line:

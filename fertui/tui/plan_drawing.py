@@ -27,6 +27,8 @@ if TYPE_CHECKING:
 
 Local = Callable[[datetime], datetime]
 USUAL = 76
+CELL = 19
+"""Columns of a number with its sign and range."""
 """Columns from which the days without the plan have room beside those with it."""
 COMPARED = ("K share", "Ca share", "Mg share", "EC", "Na", "NH4", "NO3")
 
@@ -179,29 +181,29 @@ def _outcome(plan: Plan, unit: str, width: int) -> list[Line]:
 
     outlooks = [("now", plan.before), ("with the plan", plan.after)]
     outlooks += [("without", plan.after_without)] if width >= USUAL else []
-    heads = (*((head, 18) for head, _ in outlooks), ("band", 10))
-    rows = [line(col("", 14), *(col(head, size, "faint") for head, size in heads))]
+    heads = (*((head, CELL) for head, _ in outlooks), ("band", 10))
+    rows = [line(col("", 13), *(col(head, size, "faint") for head, size in heads))]
     for what in COMPARED:
         cells, label, band = [], "", ""
         for _, outlook in outlooks:
             state = outlook.points.get(plan.point)
             value, name = _in_unit(None if state is None else _value(state, what), what, unit)
             if value is None:
-                cells.append(col("-", 18))
+                cells.append(col("-", CELL))
                 continue
             middle, reach = estimated(value, name)
             ink = standing(value)
             label, band = name, band_words(value.band)
             cells.append(
                 Span(
-                    fit(f"{MARKS.get(ink, ' ')} {middle} ({reach})", 18, right=True),
+                    fit(f"{MARKS.get(ink, ' ')} {middle} ({reach})", CELL, right=True),
                     ink if ink in ("act", "watch") else "plain",
                 )
             )
         if label or what == "EC":
             rows.append(
                 line(
-                    col(f" {what} {label}".replace("share %", "share, %"), 14, right=False),
+                    col(f" {what} {label}".replace("share %", "share, %"), 13, right=False),
                     *cells,
                     col(band, 10, "faint"),
                 )
@@ -210,8 +212,8 @@ def _outcome(plan: Plan, unit: str, width: int) -> list[Line]:
 
 
 def _marked(ink: str, text: str, width: int) -> list[Line]:
-    first, *more = wrap(literal(text), width - 4)
-    return [line(Span(f" {MARKS.get(ink, '·')} ", ink), first), *(line("   ", words) for words in more)]
+    first, *more = wrap(literal(text), width - 5)
+    return [line(Span(f" {MARKS[ink]:2} ", ink), first), *(line("    ", words) for words in more)]
 
 
 def _texts(label: str, texts: Iterable[str], width: int) -> list[Line]:

@@ -15,16 +15,28 @@ if TYPE_CHECKING:
     from fertui.workbench.answers import Answers
 
 LEAST_FREE_MB = 100
+NAME_IT = "name its source water and analysis"
 
 
 class CheckRow(NamedTuple):
-    """One thing looked at: what, what was found, whether it is all right, and what to do where it is not."""
+    """One thing looked at: what, what was found, whether it is all right, and what to do where it is not.
+
+    ``severity``: act, watch or note; '' for what is all right.
+    """
 
     group: str
     what: str
     found: str
     passed: bool
     remark: str = ""
+    severity: str = ""
+
+    @property
+    def sign(self) -> str:
+        """How it stands: the sign of its severity, or ok."""
+        from fertui.estimate.signs import SIGNS
+
+        return SIGNS.get(self.severity, "ok" if self.passed else SIGNS["act"])
 
 
 def check(bench: Answers) -> tuple[CheckRow, ...]:
@@ -38,7 +50,7 @@ def _site(bench: Answers) -> Iterator[CheckRow]:
     yield CheckRow("site", "site.toml", f"loops {loops}; {len(site.supplies)} supplies", True)
     for loop in site.loops:
         if loop.layout != "known-feed" and not loop.water:
-            yield CheckRow("site", f"water of {loop.name}", "not named", False, "name its source water and analysis")
+            yield CheckRow("site", f"water of {loop.name}", "not named", False, NAME_IT, "watch")
     for water in site.waters:
         yield from _water(water)
 
@@ -52,7 +64,8 @@ def _water(water: Water) -> Iterator[CheckRow]:
     for row in verdicts(water.composition.ions, water.composition.ec, water.composition.ph):
         if row.source != STANDARD_METHODS:
             remark = f"{row.remark}; look at its units"
-            yield CheckRow("site", f"water {water.name}, {row.what}", row.found, row.passed, remark)
+            severity = "" if row.passed else "watch"
+            yield CheckRow("site", f"water {water.name}, {row.what}", row.found, row.passed, remark, severity)
 
 
 def _logbook(bench: Answers) -> Iterator[CheckRow]:
@@ -68,7 +81,7 @@ def _watch(bench: Answers) -> Iterator[CheckRow]:
         return
     for name in bench.loops:
         for notice in bench.today(name).watch:
-            yield CheckRow(f"watch {name}", notice.code, notice.text, notice.severity == "note")
+            yield CheckRow(f"watch {name}", notice.code, notice.text, notice.severity == "note", "", notice.severity)
 
 
 def _machine(bench: Answers) -> Iterator[CheckRow]:

@@ -59,7 +59,7 @@ def test_a_site_just_made_has_nothing_to_look_at(capsys: pytest.CaptureFixture[s
     printed(capsys, "record", str(tmp_path / "home"), "reading", "point=tank", "EC=2.5", "by=MK")
     code, out, _ = printed(capsys, "check", str(tmp_path / "home"))
     assert code == 1
-    assert "  !  Take a sample" in out
+    assert "  !! Take a sample" in out
 
 
 def test_an_ion_goes_by_the_name_of_its_unit_in_every_table(

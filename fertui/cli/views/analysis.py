@@ -8,6 +8,7 @@ from typing import Any
 from fertui.chemistry.names import IONS
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
+from fertui.estimate.signs import SIGNS
 from fertui.paper.page import columns, folded
 from fertui.workbench.analysis import AnalysisRow, AnalysisView
 from fertui.workbench.drift import Drift, Series
@@ -39,7 +40,7 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
     for point, checks in view.checks.items():
         lines += ["", f"Checks of the {POINT_WORDS[point]} analysis"]
         for check in checks:
-            lines += folded(f"{check.what}: {_check(check)}", f"  {'ok' if check.passed else '! '} ")
+            lines += folded(f"{check.what}: {_check(check)}", f"  {'ok' if check.passed else SIGNS['act']} ")
     lines += water
     return "\n".join([*lines, "", *folded(view.last_change, "")] if view.last_change else lines)
 

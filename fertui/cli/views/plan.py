@@ -7,6 +7,7 @@ from typing import Any
 from fertui.catalogue.acids import with_strength
 from fertui.cli.views import as_json, words
 from fertui.cli.views.today import POINT_WORDS
+from fertui.estimate.signs import SIGNS
 from fertui.paper.cautions import read_first
 from fertui.paper.page import columns, folded
 from fertui.planning.values import Outlook, Plan
@@ -18,7 +19,7 @@ def text(plan: Plan, timezone: str, unit: str) -> str:
     lines = [f"{plan.loop}: plan over {plan.horizon_days} days, for the {POINT_WORDS[plan.point]}"]
     if not plan.feasible:
         lines += folded(f"No: {plan.reason}", "")
-    lines += [line for each in plan.notices for line in folded(each, "! ")]
+    lines += [line for each in plan.notices for line in folded(each, f"{SIGNS['watch']} ")]
     lines += _recipe(plan, timezone, unit) + _steps(plan, timezone) + _acid(plan, timezone) + _renewal(plan)
     lines += ["", *_outcome(plan)]
     lines += ["", *read_first(plan.cautions)[:-1]] if plan.acid or plan.steps or plan.recipe else []

@@ -99,8 +99,7 @@ def check_text(rows: Sequence[CheckRow]) -> str:
         lines += [*([""] if lines else []), group]
         for row in members:
             watched = group.startswith("watch")
-            mark = "!" if not row.passed else "-" if watched else "ok"
             text = row.found if watched else f"{row.what}: {row.found}"
             remark = f" -> {row.remark}" if row.remark and not row.passed else ""
-            lines += wrap(f"{text}{remark}", 80, initial_indent=f"  {mark:3}", subsequent_indent="     ")
+            lines += wrap(f"{text}{remark}", 80, initial_indent=f"  {row.sign:3}", subsequent_indent="     ")
     return "\n".join(lines)

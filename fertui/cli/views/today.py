@@ -6,6 +6,7 @@ from typing import Any
 
 from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.cli.views import as_json, words
+from fertui.estimate.signs import SIGNS
 from fertui.paper.page import columns, folded
 from fertui.workbench.glance import Seen
 from fertui.workbench.today import NOT_KNOWN, Gauge, Today
@@ -32,7 +33,7 @@ def text(state: Today, timezone: str, unit: str) -> str:
         lines += ["", *_concentrations(state, unit)]
     lines.append("")
     lines += ["To look at"]
-    lines += [line for each in state.watch for line in folded(each.text, f" {words.SIGNS[each.severity]} ")]
+    lines += [line for each in state.watch for line in folded(each.text, f" {SIGNS[each.severity]:2} ")]
     lines += [line for each in state.half_done for line in folded(each, " !  ")]
     lines += [line for each in state.awaited for line in folded(f"awaited: {each}", " -  ")]
     lines += [] if state.watch or state.half_done or state.awaited else ["    nothing"]

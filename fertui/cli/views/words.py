@@ -9,7 +9,6 @@ from fertui.estimate.points import Band, Estimated
 from fertui.workbench.units import shown
 
 ABSENT = "-"
-SIGNS = {"act": "!!", "watch": "! ", "note": "- "}
 
 
 def factor(ion: str, unit: str) -> float:

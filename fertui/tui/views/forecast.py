@@ -290,7 +290,7 @@ def _row(
         col(label, 15, "chosen" if chosen else "strong", right=False),
         *([col(_words(left, name), 17)] if roomy else []),
         col(_words(right, name), 17),
-        Span(f"  {MARKS[ink]} {words}{likely}", ink if ink != "good" else "plain"),
+        Span(f"  {MARKS[ink]:2} {words}{likely}", ink if ink != "good" else "plain"),
     )  # fmt: skip
 
 

@@ -169,7 +169,7 @@ class SiteView(View):
         """Check everything."""
         self.fertui.clerk(
             lambda bench: [
-                f"{'ok ' if row.passed else '!! '} {row.what}: {row.found}. {row.remark}" for row in bench.check()
+                f"{row.sign:2} {row.what}: {row.found}. {row.remark}" for row in bench.check()
             ],
             self._checked,
             "the check",

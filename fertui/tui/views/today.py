@@ -34,7 +34,7 @@ WIDE = 110
 SEVERITY_INK = {"act": "act", "watch": "watch", "note": "faint"}
 
 
-UNKNOWN = "Where the ions are is not known: no analysis is logged yet. Send a sample (e), log its report (a)."
+UNKNOWN = "Where the ions are is not known: {why}. Send a sample (e), log its report (a)."
 
 
 class TodayView(View):
@@ -128,8 +128,8 @@ def draw_today(snapshot: Snapshot, width: int) -> list[Line]:
     top = [*measured(glance, state, width), BLANK]
     if state is None:
         return [*top, *waiting(snapshot, Ask("today", snapshot.loop), "where the ions are", width)[1:]]
-    if glance.last_analysis is None:
-        words = [line(" ", Span(text, "watch")) for text in wrap(UNKNOWN, width - 2)]
+    if not state.analyses_behind or glance.last_analysis is None:
+        words = [line(" ", Span(text, "watch")) for text in wrap(_unknown(glance), width - 2)]
         return [*top, *words, BLANK, *watch_list(state, width)]
     if width >= WIDE:
         left = gauges(state, snapshot, 80)
@@ -191,6 +191,13 @@ def _last(glance: Glance) -> Line:
     return line(Span(f"last reading {age(newest.at, glance.at)} ago by {literal(newest.by)}", "faint"))
 
 
+def _unknown(glance: Glance) -> str:
+    """Why nothing is drawn as known."""
+    if glance.last_analysis is None:
+        return UNKNOWN.format(why="no analysis is logged yet")
+    return UNKNOWN.format(why="no analysis of it is recent enough to begin from")
+
+
 def _analysed(glance: Glance) -> Line:
     if glance.last_analysis is None:
         return line(Span("no analysis yet: the estimate is a guess", "watch"))
@@ -232,7 +239,7 @@ def gauges(state: Today, snapshot: Snapshot, width: int) -> list[Line]:
             Span(f"{f'({value[1]})':>12}", "faint"),
             f" {limits:>7}  ",
         )
-        mark = Span(f"{MARKS[ink]} {short_leaving(each.leaves)}", ink if ink != "good" else "plain")
+        mark = Span(f"{MARKS[ink]:2} {short_leaving(each.leaves)}", ink if ink != "good" else "plain")
         rows.append(line(*row, *picture, " " if gauge_width else "", *spark[0], spark[1], mark))
     return rows
 
@@ -246,8 +253,8 @@ def _gauge_ink(each: Gauge) -> str:
 
 def _room(width: int) -> tuple[int, int]:
     """Columns for gauge and course beside the numbers and the words."""
-    room = width - 57
-    if room >= 23:
+    room = width - 59
+    if room >= 21:
         return min(31, room - 11), 9
     return (min(room - 1, 21), 0) if room >= 12 else (0, 0)
 
@@ -284,9 +291,9 @@ def watch_list(state: Today, width: int) -> list[Line]:
 
 def _notice(severity: str, text: str, key: str, width: int) -> list[Line]:
     ink = SEVERITY_INK.get(severity, "faint")
-    first, *more = wrap(literal(text), width - 6 - len(key))
-    row = filled(line(Span(f" {MARKS[ink]} ", ink), first), width - len(key) - 1)
-    return [line(*row, Span(key, "accent")), *(line("   ", text) for text in more)]
+    first, *more = wrap(literal(text), width - 7 - len(key))
+    row = filled(line(Span(f" {MARKS[ink]:2} ", ink), first), width - len(key) - 1)
+    return [line(*row, Span(key, "accent")), *(line("    ", text) for text in more)]
 
 
 def draw_overview(snapshot: Snapshot, chosen: int, width: int) -> list[Line]:
@@ -311,7 +318,7 @@ def _loop_block(name: str, snapshot: Snapshot, state: Today | None, chosen: bool
     if state is None:
         return [*rows, line(" ", Span("Working out where the ions are.", "faint"))]
     cells: list[Line] = []
-    for each in state.gauges:
+    for each in state.gauges if state.analyses_behind else ():
         ink = _gauge_ink(each)
         cells.append(
             line(
