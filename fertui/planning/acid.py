@@ -105,6 +105,7 @@ def acid_sheet(
     reason, where the alkalinity is not known. Raises ``PlanningError`` for no acid, no volume, or a target that is
     none.
     """
+    unknown = unanalysed_words(site, loop) if water is None else ()
     water = water_of(site, loop) if water is None else water
     volume = volume_l if volume_l is not None else loop.tank_l
     if volume is None or not (math.isfinite(volume) and volume > 0):
@@ -121,7 +122,7 @@ def acid_sheet(
     supply = acid or acid_on_shelf(site)
     start = ph_start or water.ph or PH_START
     if alkalinity is None:
-        return _refused(supply, volume, leave_meq_l, ph_target)
+        return _refused(supply, volume, leave_meq_l, ph_target, " ".join((*unknown, MEASURE_IT)))
     found, strength = named_acid(supply.kind), _strength(supply)
     demand = demanded(found, water, leave_meq_l, ph_target, start, temperature_c)
     return _sheet(supply, found, strength, volume, alkalinity, leave_meq_l, ph_target, start, demand)
@@ -130,6 +131,19 @@ def acid_sheet(
 def source_water(site: Site, loop: Loop) -> Composition | None:
     """Make-up water of the loop, None where the site describes none."""
     return next((each.composition for each in site.waters if each.name == loop.water or not loop.water), None)
+
+
+def unanalysed_words(site: Site, loop: Loop) -> tuple[str, ...]:
+    """What is said where nobody has analysed the make-up water, in site.toml or in the logbook; nothing where it is
+    known."""
+    water = source_water(site, loop)
+    if water is not None and water.ions:
+        return ()
+    name = loop.water or next((each.name for each in site.waters), "make-up")
+    return (
+        f"the water {name!r} was never analysed: Na, Cl, Ca, Mg, SO4 and alkalinity of it are not known and are taken "
+        "as none here; what it brings comes on top, of hard water a lot of Ca. Send a sample of it first.",
+    )
 
 
 def water_of(site: Site, loop: Loop) -> Composition:
@@ -183,12 +197,12 @@ def _strength(supply: Supply) -> float:
     return supply.strength_pct
 
 
-def _refused(supply: Supply, volume: float, leave: float, ph_target: float) -> AcidSheet:
+def _refused(supply: Supply, volume: float, leave: float, ph_target: float, why: str) -> AcidSheet:
     strength = _strength(supply)
     found = named_acid(supply.kind)
     density = supply.density_kg_per_l or found.density(strength)
     return AcidSheet(
-        False, MEASURE_IT, supply.name, strength, density, found.mol_per_l(strength, density), volume, None, leave,
+        False, why, supply.name, strength, density, found.mol_per_l(strength, density), volume, None, leave,
         ph_target, 0.0, 0.0, 0.0, 0.0, 0.0, (), {}, {}, (), (), cautions_of([supply]),
     )  # fmt: skip
 

@@ -21,6 +21,13 @@ FROM_MEQ_PER_L = 1.0
 """Alkalinity of a tank from which a plan doses acid: the upper end of what is left as buffer (ARSIA 5/2004, p. 179)."""
 TOLD_MEQ_PER_L = 0.2
 """Difference between what the make-up brings and what the model finds that is worth a word: what a test kit shows."""
+MOST_PORTIONS = 4
+"""Portions that one person pours in a day, each with its wait and retest: three to four (field practice)."""
+IN_PART = (
+    f"no more than {MOST_PORTIONS} portions of acid are planned for a day: measure pH and alkalinity again before the "
+    "next; the rest waits for another day"
+)
+NOT_MEASURED = "no acid is planned: the alkalinity of the make-up water was never measured, and pH alone tells no dose"
 FORTNIGHT = 14.0
 HABIT = 2
 """Acids logged within a fortnight from which they are a habit that goes on (common practice, no source)."""
@@ -58,20 +65,28 @@ def tank_acid(request: Request, days: Sequence[int], course: Course) -> TankAcid
     held = situation.points["tank"].ions.get("HCO3")
     if acid is None or held is None:
         return TankAcid((None,) * len(days))
+    if request.unknown_water:
+        return TankAcid((None,) * len(days), notices=(NOT_MEASURED,))
     volume, daily = situation.volumes_l["tank"], _daily(situation)
-    stands, taken, sheets, lines, withheld = held.mmol_l.value, 0.0, [], [], False
+    stands, taken, withheld = held.mmol_l.value, 0.0, False
+    sheets: list[AcidSheet | None] = []
+    lines: list[str] = []
     for before, day in zip((0, *days), days, strict=False):
         stands += daily * (day - before) / volume
         found = float(course.ions["tank"][day, 0, _HCO3]) - taken
         there = min(stands, found) if day > 0 else stands
-        dosed = there > FROM_MEQ_PER_L
         withheld |= stands > FROM_MEQ_PER_L and stands - there > TOLD_MEQ_PER_L
-        sheets.append(_sheet(situation, acid, there, day == 0) if dosed else None)
-        if dosed and day > 0:
+        if there <= FROM_MEQ_PER_L:
+            sheets.append(None)
+            continue
+        sheets.append(_sheet(situation, acid, there, day == 0))
+        if day > 0:
             lines.append(_sum(situation, day, there))
-        taken += there - LEAVE_MEQ_PER_L if dosed else 0.0
-        stands = LEAVE_MEQ_PER_L if dosed else stands
-    return TankAcid(tuple(sheets), tuple(lines), (_withheld(situation),) if withheld else ())
+        taken += _planned_part(sheets[-1]) * (there - LEAVE_MEQ_PER_L)
+        stands = there - _planned_part(sheets[-1]) * (there - LEAVE_MEQ_PER_L)
+    short = any(each is not None and _planned_part(each) < 1.0 for each in sheets)
+    notices = (*((_withheld(situation),) if withheld else ()), *((IN_PART,) if short else ()))
+    return TankAcid(tuple(sheets), tuple(lines), notices)
 
 
 def _daily(situation: Situation) -> float:
@@ -94,7 +109,15 @@ def _sheet(situation: Situation, acid: Supply, alkalinity: float, now: bool) -> 
     """The sheet for the tank at an alkalinity; its pH is known today alone."""
     ph = situation.points["tank"].ph if now else None
     water = Composition({"HCO3": alkalinity}, ph=None if ph is None else ph.value)
-    return acid_sheet(situation.site, situation.loop, water=water, acid=acid, volume_l=situation.volumes_l["tank"])
+    whole = acid_sheet(situation.site, situation.loop, water=water, acid=acid, volume_l=situation.volumes_l["tank"])
+    return whole._replace(splits=whole.splits[:MOST_PORTIONS])
+
+
+def _planned_part(sheet: AcidSheet | None) -> float:
+    """What part of the acid of a sheet is poured in the portions of its day."""
+    if sheet is None or sheet.litres_total <= 0.0:
+        return 0.0
+    return min(sum(each.litres for each in sheet.splits) / sheet.litres_total, 1.0)
 
 
 def _withheld(situation: Situation) -> str:
@@ -125,9 +148,10 @@ def _brought(sheet: AcidSheet | None) -> Array:
     brought = np.zeros(len(IONS))
     if sheet is None or sheet.alkalinity_meq_l is None or not sheet.splits:
         return brought
+    poured_l = _planned_part(sheet) * sheet.volume_l
     for ion, mmol in sheet.adds_mmol_l.items():
-        brought[INDEX[ion]] = mmol * sheet.volume_l
-    brought[_HCO3] = -(sheet.alkalinity_meq_l - LEAVE_MEQ_PER_L) * sheet.volume_l
+        brought[INDEX[ion]] = mmol * poured_l
+    brought[_HCO3] = -(sheet.alkalinity_meq_l - LEAVE_MEQ_PER_L) * poured_l
     return brought
 
 

@@ -198,6 +198,10 @@ def exceeded(each: Checkpoint, composition: Array, before: Checkpoint | None = N
 SHARE_WEIGHT = 5.0
 """What a share off by its whole counts beside an ion off by its whole: a point of share about as much as 5 % of an
 ion."""
+COMES_ALONG = ("NO3", "SO4", "H2PO4")
+OVERSHOT, OVERSHOT_WEIGHT = 0.5, 5.0
+"""An anion lifted over its aim by more than half counts among the bands: its double as much as 50 points of share.
+Half over is where the published rule takes its larger step (Nutrient Solutions for Greenhouse Crops 2016)."""
 FAR_COST = 3.0
 NEAR_SHARE = 0.05
 """Distance of a share over its aim from which it counts as far."""
@@ -228,10 +232,10 @@ def violation_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array,
             matrix.append(rows)
             high.append(rows @ x0 - sign * (now - bound * total) / scale)
             cost.append(np.full(3, 10.0 * each.weight))
-        over, most = _too_much(each)
-        matrix.append(each.slope[over] / most[:, None])
-        high.append((most - each.now[over] + each.slope[over] @ x0) / most)
-        cost.append(np.full(len(over), each.weight))
+        for over, most, heavy in ((*_too_much(each), 1.0), (*_would_gather(each), OVERSHOT_WEIGHT)):
+            matrix.append(each.slope[over] / most[:, None])
+            high.append((most - each.now[over] + each.slope[over] @ x0) / most)
+            cost.append(np.full(len(over), heavy * each.weight))
     n = len(x0)
     return (
         np.vstack([*matrix, np.zeros((0, n))]),
@@ -247,6 +251,13 @@ def _too_much(each: Checkpoint) -> tuple[list[int], Array]:
     most = np.minimum(each.goal.most, bears)
     over = [i for i in range(len(IONS)) if each.base[i] > most[i]]
     return over, most[over]
+
+
+def _would_gather(each: Checkpoint) -> tuple[list[int], Array]:
+    """Anions that come with K, Ca and Mg, and how far over their aim, or over what there is, salts may lift them."""
+    aim = np.nan_to_num(each.goal.aim, nan=0.0)
+    at = [INDEX[ion] for ion in COMES_ALONG if aim[INDEX[ion]] > 0.0]
+    return at, np.maximum((1.0 + OVERSHOT) * aim, each.base)[at]
 
 
 def violation(each: Checkpoint, composition: Array) -> float:

@@ -34,6 +34,8 @@ REACHED_PCT = 1.0
 """By how many points of share a plan may miss its bands and still be called one that reaches them: the last digit."""
 DAILY_WEIGHT = 0.3
 """Weight of the days on the way beside that of the horizon."""
+RENEWED_WEIGHTS = (1.0, 0.5)
+"""Weight of the bands and of the aim in a tank just renewed: it is mixed anew, so it is mixed right at once."""
 LIGHTER, TAKEN_BACK = 3, (0.85, 0.6, 0.0)
 """A plan that passes a limit when the model runs it is made lighter by single scale steps, then by parts, down to
 nothing."""
@@ -211,9 +213,11 @@ def _checkpoints(task: Task, doing: Doing, course: Course, without: Course, move
         found.append(_checkpoint(task, f"tank before the dose of day {day}", task.tank, day, base, before, move))
         after = mixed(before, doing, float(day), course.volumes_l[task.tank][day])
         last = task.horizon == 0
+        made_anew = bool(doing.renewals) and day == task.days[0]
+        weight, aim_weight = (float(last), float(last)) if last or not made_anew else RENEWED_WEIGHTS
         point = _checkpoint(task, f"tank after the dose of day {day}", task.tank, day, base, after, move)
         step = -1 if last else len(found) - 1
-        found.append(point._replace(before=step, weight=float(last), aim_weight=float(last)))
+        found.append(point._replace(before=step, weight=weight, aim_weight=aim_weight))
     return (*found, *_daily(task, course, without, move, len(found)))
 
 

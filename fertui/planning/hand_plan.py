@@ -22,6 +22,7 @@ from fertui.planning.reasons import (
     binding,
     held_by,
     over_limit_words,
+    overshot_words,
     rule_of_thumb,
     share_words,
     why_salts,
@@ -49,6 +50,9 @@ from fertui.site.model import Composition
 
 FED_EC, STARVED = 0.5, 0.5
 """A tank of at least the first [mS/cm] whose EC falls below the second part of itself is one that nothing feeds."""
+NOT_ANALYSED = (
+    "take a sample first: the tank was never analysed, and as if just filled with its water no weighing holds it"
+)
 MISSED_PART = 0.10
 """An ion of a named target missed by more than this part makes the plan one that does not reach it."""
 
@@ -68,10 +72,12 @@ def hand_plan(request: Request) -> Plan:
     days = _days(request)
     acid = tank_acid(request, days, course)
     if not request.managed.named and acid.first is None and request.in_order(empty.after_without):
-        words = "nothing to weigh: the shares stay in their bands and no limit is passed up to the horizon"
+        words = f"nothing to weigh: {request.why_in_order(empty.after_without)}"
         return request.counted(empty._replace(notices=(words, *acid.notices)))
     task = _task(request, days, acid)
     dosed = dose(task, request.runs, request.solver, course)
+    if request.situation.analysis_days_old is None and not dosed.units.any() and request.wishes.days:
+        return request.counted(empty._replace(feasible=False, reason=NOT_ANALYSED, sample_first=True))
     return _shown(request, task, dosed, empty, acid)
 
 
@@ -79,7 +85,10 @@ def _unseen(request: Request) -> tuple[str, ...]:
     """A word where nobody has analysed the tank yet."""
     if request.situation.analysis_days_old is not None:
         return ()
-    return ("no analysis of the tank yet: planned as if it held its source water; log one and plan again",)
+    return (
+        "take a sample first: the tank was never analysed; planned as if it had just been filled with its source "
+        "water. Log an analysis and plan again",
+    )
 
 
 def _drained(request: Request, course: Course) -> str | None:
@@ -142,6 +151,7 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, acid: TankAc
         notices=(
             *_unseen(request),
             *over_limit_words(dosed.end, request.managed),
+            *overshot_words(dosed.checkpoints),
             *acid.notices,
             *heated_words(request.situation, request.entries),
             *spread_words(request, steps),

@@ -7,7 +7,7 @@ from collections.abc import Callable, Iterable, Sequence
 import numpy as np
 
 from fertui.chemistry.ions import IONS
-from fertui.estimate.assimilation import Estimate
+from fertui.estimate.assimilation import Estimate, assimilate
 from fertui.logbook.entries import Entry
 from fertui.planning.acid_steps import usual_acid
 from fertui.planning.hand_plan import hand_plan
@@ -18,6 +18,7 @@ from fertui.planning.request import Request, Wishes, goals_of, materials_of
 from fertui.planning.runs import ModelRuns, Runs, Situation, StillRuns
 from fertui.planning.shelf import PlanningError
 from fertui.planning.values import Plan
+from fertui.site.model import Composition, Water
 
 
 def plan(
@@ -46,7 +47,8 @@ def plan(
     """
     only = None if supplies is None else tuple(supplies)
     wishes = Wishes(days, target, only, tuple(without), steps, salts, ec_step).checked()
-    situation = situation_of(estimate, entries)
+    known_site, estimate = estimate.site, just_filled(estimate, entries)
+    situation = situation_of(estimate, entries)._replace(site=known_site)
     runs: Runs = (
         StillRuns(situation, "tank") if days == 0 else ModelRuns(estimate, days, situation.usual_acid_mmol_d, progress)
     )
@@ -58,11 +60,26 @@ def plan(
     points = ("tank", situation.managed) if situation.loop.layout == "shared-tank" else ("feed", situation.managed)
     request = Request(
         situation, goals_of(situation, wishes, tuple(dict.fromkeys(points))), wishes, materials_of(situation, wishes),
-        runs, Solver(), entries, situation.points, year_kg_n(estimate, entries),
+        runs, Solver(), entries, situation.points, bool(estimate.record.observations), year_kg_n(estimate, entries),
     )  # fmt: skip
     if situation.loop.layout == "shared-tank":
         return hand_plan(request)
     return recipe_plan(request, estimate)
+
+
+def just_filled(estimate: Estimate, entries: Sequence[Entry]) -> Estimate:
+    """A tank that nothing was ever measured in, as filled with water without ions; any other estimate as it is.
+
+    So a new site plans its first filling. The plan says that nobody knows the water.
+    """
+    name = estimate.unanalysed_water
+    if name is None or estimate.loop.layout != "shared-tank" or estimate.record.observations:
+        return estimate
+    pure = Water(name, Composition(dict.fromkeys(IONS, 0.0), source="taken as none"))
+    others = tuple(each for each in estimate.site.waters if each.name.lower() != name.lower())
+    loop = estimate.loop._replace(water=name)
+    site = estimate.site._replace(waters=(pure, *others))
+    return assimilate(site, loop, entries, estimate.at, estimate.members, estimate.seed)
 
 
 def situation_of(estimate: Estimate, entries: Sequence[Entry] = ()) -> Situation:

@@ -8,7 +8,16 @@ from collections.abc import Iterable, Mapping, Sequence
 import numpy as np
 
 from fertui.chemistry.ions import CHARGE, INDEX, IONS, Array
-from fertui.planning.checkpoints import Checkpoint, before_of, ec_of, indices_of, step_most, step_name
+from fertui.planning.checkpoints import (
+    COMES_ALONG,
+    OVERSHOT,
+    Checkpoint,
+    before_of,
+    ec_of,
+    indices_of,
+    step_most,
+    step_name,
+)
 from fertui.planning.goal import LIMITED, SHARED, Goal
 from fertui.planning.runs import share_pct
 from fertui.planning.shelf import Material
@@ -177,6 +186,22 @@ def over_limit_words(end: Array, goal: Goal) -> tuple[str, ...]:
                 "renewal or better water lowers it"
             )
     return tuple(lines)
+
+
+def overshot_words(points: Sequence[Checkpoint]) -> tuple[str, ...]:
+    """Anions that a plan lifts far over their aim, with their highest point: what K, Ca or Mg bring along."""
+    highest: dict[str, tuple[float, float, str]] = {}
+    for each in points:
+        for ion in COMES_ALONG:
+            aim, now = float(np.nan_to_num(each.goal.aim[INDEX[ion]])), float(each.now[INDEX[ion]])
+            lifted = now > each.base[INDEX[ion]] + SPOKEN_MMOL and now > (1.0 + OVERSHOT) * aim > 0.0
+            if lifted and now > highest.get(ion, (0.0,))[0]:
+                highest[ion] = (now, aim, each.name)
+    return tuple(
+        f"{ion} comes to {now:.1f} mmol/L ({where}), {now / aim:.1f} times its aim of {aim:.1f}: it comes along with "
+        "what is missing; a salt without it would be better"
+        for ion, (now, aim, where) in highest.items()
+    )
 
 
 def share_words(composition: Array) -> str:

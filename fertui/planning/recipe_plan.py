@@ -46,7 +46,7 @@ def recipe_plan(request: Request, estimate: Estimate) -> Plan:
     course = request.runs.settled(Doing(), 1)
     request = request.strengthened(course.ions[request.situation.managed][-1, 0])
     if not request.managed.named and request.in_order(empty.after_without):
-        words = "no change: the shares stay in their bands and no limit is passed up to the horizon"
+        words = f"no change: {request.why_in_order(empty.after_without)}"
         return request.counted(empty._replace(notices=(words,)))
     task = _task(request, estimate)
     recipe = change(task, request.runs, request.solver, course)

@@ -13,8 +13,10 @@ import numpy as np
 from fertui.catalogue.cautions import Caution, cautions_of, loop_cautions
 from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array
+from fertui.estimate.notices.notice import chance_out
 from fertui.estimate.points import Estimated, PointState
 from fertui.logbook.entries import Entry
+from fertui.planning.acid import unanalysed_words
 from fertui.planning.goal import SHARED, Goal, goal_of
 from fertui.planning.programme import Solver
 from fertui.planning.runs import Runs, Situation
@@ -26,8 +28,11 @@ LONGEST_DAYS = 60
 STRENGTH = (0.5, 1.5)
 """How far an aim may be made weaker or stronger to stand at the EC the loop is run at."""
 CERTAIN = 0.8
+UNSURE = 0.35
+"""Chance of being out of a band at the horizon from which "in order" is not said flatly: that of the watch list."""
 FRESH_DAYS = 3.0
 """Age of an analysis [d] up to which another sample says nothing new (common practice, no source)."""
+NAMES = {"tank": "tank", "root_zone": "root zone"}
 FILLING = 0.3
 """Part of the aim's EC below which a vessel is being filled, and its aim not scaled down to what is in it."""
 STEPS_BY_DEFAULT = 4
@@ -74,6 +79,8 @@ class Request(NamedTuple):
     solver: Solver
     entries: Sequence[Entry]
     before: Mapping[str, PointState]
+    observed: bool = True
+    """Whether anything was ever read or analysed in the loop; if not it is planned for as just filled."""
     year_so_far_kg_n: float = 0.0
     """What the loop has discharged this calendar year [kg N]."""
 
@@ -83,8 +90,19 @@ class Request(NamedTuple):
         return self.goals[self.situation.managed]
 
     def counted(self, found: Plan) -> Plan:
-        """A plan with what it cost."""
-        return found._replace(model_runs=self.runs.count, solver_calls=self.solver.calls)
+        """A plan with what it cost, and with a word where nobody knows the water it counts with."""
+        water = self.unknown_water
+        return found._replace(
+            notices=tuple(dict.fromkeys((*water, *found.notices))),
+            model_runs=self.runs.count, solver_calls=self.solver.calls,
+        )  # fmt: skip
+
+    @property
+    def unknown_water(self) -> tuple[str, ...]:
+        """What is said of a make-up water that was never analysed; nothing where it is known or none is counted."""
+        if self.situation.loop.layout == "known-feed":
+            return ()
+        return unanalysed_words(self.situation.site, self.situation.loop)
 
     def empty(self, without: Outlook) -> Plan:
         """A plan that does nothing, with what then comes."""
@@ -102,6 +120,21 @@ class Request(NamedTuple):
         filling = self.before[point].ec.value < FILLING * _ec_of_aim(self.managed)
         return not filling and not any(
             out_of_band(points[point], self.managed) for points in (self.before, without.points)
+        )
+
+    def why_in_order(self, without: Outlook) -> str:
+        """That nothing need be done; where the ranges are wide, that the middle of the forecast alone says so."""
+        state, goal = without.points[self.situation.managed], self.managed
+        unsure = []
+        for ion, low, high in zip(SHARED, goal.share_low, goal.share_high, strict=True):
+            share = state.ions[ion].share_pct if ion in state.ions else None
+            if share is not None and chance_out(share, (100 * low, 100 * high)) >= UNSURE:
+                unsure.append(f"{ion} share {share.low:.0f}-{share.high:.0f} % of {100 * low:.0f}-{100 * high:.0f} %")
+        if not unsure:
+            return "the shares stay in their bands and no limit is passed up to the horizon"
+        return (
+            "the middle of the forecast stays in its bands, but that is not sure: by the horizon "
+            f"{', '.join(unsure)}. No dose makes a range narrower: take the next sample early, then plan again"
         )
 
     def strengthened(self, end: Array) -> Request:
@@ -172,6 +205,8 @@ def vague(request: Request) -> str | None:
     fresh = days_old is not None and days_old <= FRESH_DAYS
     if point is None or request.wishes.days == 0 or request.managed.named or fresh:
         return None
+    if days_old is None and request.observed and request.unknown_water:
+        return f"take a sample first: neither the {NAMES[request.situation.managed]} nor its water was ever analysed"
     wide = None
     for ion, low, high in zip(SHARED, request.managed.share_low, request.managed.share_high, strict=True):
         state = point.ions[ion].share_pct if ion in point.ions else None

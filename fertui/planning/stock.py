@@ -14,7 +14,7 @@ import numpy as np
 from fertui.catalogue.cautions import Caution, cautions_of
 from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import IONS, MICRONUTRIENTS, Array
-from fertui.planning.acid import LEAVE_MEQ_PER_L, water_of
+from fertui.planning.acid import LEAVE_MEQ_PER_L, unanalysed_words, water_of
 from fertui.planning.composing import SPECIES, Composed, compose
 from fertui.planning.programme import Solver
 from fertui.planning.shelf import Material, PlanningError, material, salts_of, shelf
@@ -111,6 +111,8 @@ def stock_sheet(
         )
         sheets.append(sheet)
         refused += bad
+    if not water.ions:
+        needed = needed._replace(notices=(*unanalysed_words(site, loop), *needed.notices))
     if not loop.stock_tanks:
         needed = needed._replace(notices=(*needed.notices, ASSUMED_WORDS))
     return _sheet(tuple(sheets), tuple(refused), needed, composed, placed, solver)

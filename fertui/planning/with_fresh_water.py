@@ -77,6 +77,8 @@ def spread_words(request: Request, steps: Sequence[Step]) -> tuple[str, ...]:
     if not drinks_it(request):
         return ()
     days = sorted({(each.at - situation.at).days for each in steps})
+    if not days:
+        return ()
     until = dict(zip(days, [*days[1:], request.wishes.days], strict=True))
     parts = []
     for day in days:

@@ -54,7 +54,7 @@ def situation(
     )  # fmt: skip
     place = Site(
         "test", "UTC", (loop,), supplies=supplies, scale_step_kg=step_kg,
-        waters=(Water("well", water or Composition({})),), **site,
+        waters=(Water("well", water or Composition(dict.fromkeys(IONS, 0.0))),), **site,
     )  # fmt: skip
     state = point_of(vector(dict(composition)), ph, spread)
     return Situation(place, loop, AT, "tank", {"tank": state, "root_zone": state}, {"tank": litres}, 3.0)

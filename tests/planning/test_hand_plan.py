@@ -15,6 +15,7 @@ from fertui.planning.hand_plan import hand_plan
 from fertui.planning.request import Wishes, goals_of, staffed_days
 from fertui.planning.runs import Addition, Doing, Exchange
 from fertui.planning.shelf import PlanningError
+from fertui.planning.with_fresh_water import spread_words
 from fertui.site.model import Composition, Sourced, Supply
 from tests.planning.loops import MixingTank, point_of, request, shelf_of, situation
 
@@ -50,6 +51,62 @@ def test_nothing_is_weighed_where_all_is_in_order() -> None:
     assert plan.feasible
     assert plan.steps == ()
     assert plan.notices
+
+
+def test_what_is_in_order_by_its_middle_alone_is_not_called_sure() -> None:
+    inside = {"K": 10.0, "Ca": 4.6, "Mg": 0.95, "NO3": 18.0, "SO4": 1.1, "H2PO4": 1.9, "NH4": 0.5, "Na": 1, "Cl": 1}
+    place = place_of(inside)._replace(analysis_days_old=1.0)
+
+    class Vague(MixingTank):
+        def shown(self, doing):
+            return {"tank": point_of(super().settled(doing, 1).ions["tank"][-1, 0], spread=0.5)}
+
+    (words,) = hand_plan(request(place, Vague(place, 7), days=7)).notices
+    assert "not sure" in words
+    assert "K share" in words
+    assert "sample" in words
+    (sure,) = hand_plan(request(place, MixingTank(place, 7), days=7)).notices
+    assert "the shares stay in their bands" in sure
+
+
+def test_phosphate_is_not_piled_up_for_the_sake_of_its_potassium() -> None:
+    place = place_of(LOW_K, supplies=shelf_of("monopotassium phosphate"))
+    plan = hand_plan(request(place, MixingTank(place, 7), days=7))
+    aim = 2.0  # lettuce, Sonneveld & Straver 1994 (from memory)
+    phosphate = 1.2 + sum(step.adds_mmol["H2PO4"] for step in plan.steps) / 2000.0
+    assert phosphate <= 1.5 * aim  # the K that is missing would take it to 2.4 times its aim
+    assert plan.steps
+
+
+def test_no_more_portions_of_acid_a_day_than_one_person_pours() -> None:
+    acid = Supply("nitric acid", "nitric acid", strength_pct=38.0)
+    water = Composition({"HCO3": 0.6}, ph=7.6)
+    place = place_of({**LOW_K, "HCO3": 3.0}, supplies=(*shelf_of(*SALTS), acid), water=water, ph=6.0)
+    plan = hand_plan(request(place, MixingTank(place, 7), days=7))
+    today = [each for each in plan.acid if (each.at - place.at).days == 0]
+    assert 1 <= len(today) <= 4  # three to four splits (field practice)
+    # a third of what a closed water takes to the target is the most one portion may be (model, section 10)
+    assert max(each.litres for each in today) <= plan.acid_sheet.litres_closed / 3 + 1e-9
+    assert any("no more than 4 portions" in each for each in plan.notices)
+
+
+def test_a_tank_with_nothing_to_weigh_has_nothing_to_spread() -> None:
+    place, tank = drunk_tank(400.0, {})
+    assert spread_words(request(place, tank, days=14), ()) == ()
+
+
+def test_a_tank_mixed_anew_stands_in_its_bands_at_once() -> None:
+    over = {**LOW_K, "K": 3.0, "Ca": 6.3, "Mg": 1.4, "NO3": 14.0, "SO4": 1.3}
+    place = place_of(over)._replace(analysis_days_old=1.0)
+    # stock goes on bringing Ca while the crop takes K: more K now would be right by the horizon, and wrong till then
+    drawn = 100.0 * vector({"K": 20.0, "Ca": -12.0})
+    plan = hand_plan(request(place, MixingTank(place, 7, drawn), days=7))
+    assert plan.renewal is not None
+    left = 1.0 - plan.renewal.litres / 2000.0
+    now = left * vector(over)
+    now = now + sum((vector(each.adds_mmol) for each in plan.steps if each.at == place.at), np.zeros(10)) / 2000.0
+    meq = np.array([now[0], 2 * now[1], 2 * now[2]])
+    assert 0.43 <= meq[0] / meq.sum() <= 0.54  # K 43.4-53.4 % of K + Ca + Mg, the preset band of lettuce
 
 
 def test_what_is_over_its_limit_is_not_added_and_does_not_forbid_the_rest() -> None:
