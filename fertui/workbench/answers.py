@@ -234,7 +234,8 @@ class Answers(SiteFolder):
         """Site file, logbook, watch list and this machine, as rows."""
         from fertui.workbench.checks import check
 
-        return check(self)
+        logged = self.loops if self.book.last_number() else ()
+        return check(self, {name: self.today(name).watch for name in logged})
 
     def supplies_rows(self) -> tuple[SupplyRow, ...]:
         """Supplies with formula, label, amount left and hazards."""

@@ -7,12 +7,13 @@ import os
 import shutil
 import sqlite3
 import sys
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping, Sequence
 from typing import TYPE_CHECKING, NamedTuple
 
 if TYPE_CHECKING:
+    from fertui.estimate.notices.notice import Notice
     from fertui.site.model import Water
-    from fertui.workbench.answers import Answers
+    from fertui.workbench.folder import SiteFolder
 
 LEAST_FREE_MB = 100
 NAME_IT = "name its source water and analysis"
@@ -39,13 +40,16 @@ class CheckRow(NamedTuple):
         return SIGNS.get(self.severity, "ok" if self.passed else SIGNS["act"])
 
 
-def check(bench: Answers) -> tuple[CheckRow, ...]:
-    """All rows, site first. A site file that cannot be read raises as ever."""
-    return (*_site(bench), *_logbook(bench), *_watch(bench), *_machine(bench))
+def check(folder: SiteFolder, watch: Mapping[str, Sequence[Notice]]) -> tuple[CheckRow, ...]:
+    """All rows, site first. A site file that cannot be read raises as ever.
+
+    ``watch``: what to look at by loop, {} before anything is logged.
+    """
+    return (*_site(folder), *_logbook(folder), *_watch(watch), *_machine(folder))
 
 
-def _site(bench: Answers) -> Iterator[CheckRow]:
-    site = bench.site
+def _site(folder: SiteFolder) -> Iterator[CheckRow]:
+    site = folder.site
     loops = ", ".join(loop.name for loop in site.loops)
     yield CheckRow("site", "site.toml", f"loops {loops}; {len(site.supplies)} supplies", True)
     for loop in site.loops:
@@ -68,24 +72,24 @@ def _water(water: Water) -> Iterator[CheckRow]:
             yield CheckRow("site", f"water {water.name}, {row.what}", row.found, row.passed, remark, severity)
 
 
-def _logbook(bench: Answers) -> Iterator[CheckRow]:
+def _logbook(folder: SiteFolder) -> Iterator[CheckRow]:
     from fertui.logbook.integrity import check_book
 
-    for row in check_book(bench.book.path):
+    for row in check_book(folder.book.path):
         yield CheckRow("logbook", row.what, row.found, row.passed, row.remark)
 
 
-def _watch(bench: Answers) -> Iterator[CheckRow]:
-    if bench.book.last_number() == 0:
+def _watch(watch: Mapping[str, Sequence[Notice]]) -> Iterator[CheckRow]:
+    if not watch:
         yield CheckRow("watch list", "empty", "Nothing is logged yet; an analysis of loop and water come first.", True)
         return
-    for name in bench.loops:
-        for notice in bench.today(name).watch:
+    for name, notices in watch.items():
+        for notice in notices:
             yield CheckRow(f"watch {name}", notice.code, notice.text, notice.severity == "note", "", notice.severity)
 
 
-def _machine(bench: Answers) -> Iterator[CheckRow]:
-    free = shutil.disk_usage(bench.folder).free // 2**20
+def _machine(folder: SiteFolder) -> Iterator[CheckRow]:
+    free = shutil.disk_usage(folder.folder).free // 2**20
     yield CheckRow("machine", "disk", f"{free} MB free", free > LEAST_FREE_MB, "make room before logging on")
     encoding = locale.getpreferredencoding(False)
     yield CheckRow("machine", "locale", encoding, True, "" if "UTF" in encoding.upper() else "screens use plain ASCII")
