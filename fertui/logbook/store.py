@@ -15,6 +15,7 @@ from weakref import WeakSet
 
 from fertui.logbook import schema
 from fertui.logbook.codec import VALUE_FIELDS, check_storable, line_of, moment_text, settled
+from fertui.logbook.connection import BUSY_SECONDS, DAMAGED, address_of, connect, spoken
 from fertui.logbook.entries import Entry, Value
 from fertui.logbook.errors import DamageError, LogbookError, StoreError
 from fertui.logbook.files import check_regular, check_whole, create_private, publish, quoted
@@ -30,7 +31,6 @@ from fertui.logbook.rows import (
 )
 
 FILE_NAME = "logbook.sqlite3"
-BUSY_SECONDS = 5.0
 RETRY_SECONDS = 0.001
 FIRST_HASH = "0" * 64
 
@@ -70,7 +70,7 @@ class Logbook:
         making = path.with_name(f".{path.name}.{os.getpid()}")
         create_private(making)
         try:
-            with _spoken(making), cls(making, _connect(making, f"file:{quoted(making)}?mode=rw"), True) as book:
+            with spoken(making), cls(making, connect(making, f"file:{quoted(making)}?mode=rw"), True) as book:
                 book._migrate()
                 book._connection.execute("PRAGMA journal_mode = WAL")
             publish(making, path)
@@ -92,8 +92,8 @@ class Logbook:
             if not any(book._file == _identity(path) for book in _OPEN):
                 check_whole(path)
                 schema.check_head(path)
-            with _spoken(path):
-                book = cls(path, _connect(path, _address(path, writable)), writable)
+            with spoken(path):
+                book = cls(path, connect(path, address_of(path, writable)), writable)
             _OPEN.add(book)
         try:
             if book._version() < schema.VERSION and writable:
@@ -204,18 +204,18 @@ class Logbook:
     def linked(self) -> Iterator[tuple[Entry, str]]:
         """Every entry as written with the link of the chain that the file holds for it."""
         for entry in self.verbatim():
-            with self._lock, _spoken(self.path):
+            with self._lock, spoken(self.path):
                 row = self._connection.execute("SELECT hash FROM entries WHERE number = ?", (entry.number,)).fetchone()
             yield entry, row[0]
 
     def sqlite_check(self) -> str:
         """What SQLite's integrity check says: ``ok``, or its first complaint."""
-        with self._lock, _spoken(self.path):
+        with self._lock, spoken(self.path):
             return str(self._connection.execute("PRAGMA integrity_check(1)").fetchone()[0])
 
     def copy_into(self, path: Path) -> None:
         """Copy the file as it is at this moment into an empty one, while the book is in use."""
-        with self._lock, _spoken(path), closing(sqlite3.connect(f"file:{quoted(path)}?mode=rw", uri=True)) as copy:
+        with self._lock, spoken(path), closing(sqlite3.connect(f"file:{quoted(path)}?mode=rw", uri=True)) as copy:
             self._connection.backup(copy)
 
     # writing
@@ -286,7 +286,7 @@ class Logbook:
         if _identity(self.path) != self._file:
             words = "was moved, deleted or replaced while it was open; nothing was recorded"
             raise StoreError(f"{self.path} {words}. Leave and open the site again.")
-        with self._lock, _spoken(self.path):
+        with self._lock, spoken(self.path):
             self._begin()
             try:
                 yield self._connection
@@ -317,18 +317,18 @@ class Logbook:
             schema.migrate(connection, self._version())
 
     def _version(self) -> int:
-        with self._lock, _spoken(self.path):
+        with self._lock, spoken(self.path):
             return schema.version_of(self._connection, self.path)
 
     def _one(self, query: str, *given: object) -> int | None:
-        with self._lock, _spoken(self.path):
+        with self._lock, spoken(self.path):
             row = self._connection.execute(query, given).fetchone()
         return None if row is None else row[0]
 
     def _read(self, where: Sequence[str], given: Sequence[object], order: str) -> tuple[Entry, ...]:
         """Entries by condition. An entry never changes, so those read before are not read again."""
         picked = f"SELECT e.number FROM entries e WHERE {' AND '.join(where) or '1'} ORDER BY {order}"
-        with self._lock, _spoken(self.path):
+        with self._lock, spoken(self.path):
             numbers = [row[0] for row in self._connection.execute(picked, given)]
             missing = sorted(set(numbers) - self._seen.keys())
             if len(self._seen) + len(missing) > _MOST_KEPT:
@@ -338,7 +338,7 @@ class Logbook:
             try:
                 return tuple(self._seen[number] for number in numbers)
             except KeyError as lost:
-                raise DamageError(f"{self.path}: {_DAMAGED} (entry {lost} is not where its index says).") from lost
+                raise DamageError(f"{self.path}: {DAMAGED} (entry {lost} is not where its index says).") from lost
 
     def _load(self, numbers: Sequence[int]) -> None:
         among = f"IN ({', '.join('?' * len(numbers))})"
@@ -349,7 +349,7 @@ class Logbook:
             for row in self._connection.execute(select_entry(f"e.number {among}"), numbers):
                 self._seen[row[0]] = entry_of_row(row, tuple(values.get(row[0], ())))
         except (ValueError, TypeError) as error:
-            raise DamageError(f"{self.path}: {_DAMAGED} ({error}).") from error
+            raise DamageError(f"{self.path}: {DAMAGED} ({error}).") from error
 
 
 def _effective(known: datetime | None) -> tuple[tuple[str, ...], list[object]]:
@@ -377,45 +377,3 @@ def _identity(path: Path) -> tuple[int, int] | None:
     except OSError:
         return None
     return found.st_dev, found.st_ino
-
-
-def _connect(path: Path, address: str) -> sqlite3.Connection:
-    connection = sqlite3.connect(address, uri=True, timeout=BUSY_SECONDS, isolation_level=None, check_same_thread=False)
-    connection.execute("PRAGMA synchronous = FULL")
-    connection.execute("PRAGMA foreign_keys = ON")
-    connection.execute("PRAGMA trusted_schema = OFF")
-    return connection
-
-
-def _address(path: Path, writable: bool) -> str:
-    # SQLite cannot open a WAL file in a folder it cannot write to; without a log beside it the file itself is whole.
-    alone = not path.with_name(path.name + "-wal").exists()
-    mode = "mode=rw" if writable else "mode=ro&immutable=1" if alone else "mode=ro"
-    return f"file:{quoted(path)}?{mode}"
-
-
-_DAMAGED = "it is damaged. Keep a copy; `fertui backup` saves what can still be read"
-_WORDS: dict[str, str] = {
-    "SQLITE_BUSY": "another session has been writing to it for more than 5 s; nothing was recorded, try again",
-    "SQLITE_FULL": "the disk is full; nothing was recorded. Make room and try again",
-    "SQLITE_READONLY": "it cannot be written (read-only file, folder or disk); nothing was recorded",
-    "SQLITE_CANTOPEN": "it cannot be opened; look at the rights of the file and its folder",
-    "SQLITE_IOERR": "the disk failed while it was read or written; nothing was recorded. Look after the disk first",
-    "SQLITE_PERM": "you have no right to use it",
-}
-
-
-@contextmanager
-def _spoken(path: Path) -> Iterator[None]:
-    """Turn what SQLite reports into a sentence about the file."""
-    try:
-        yield
-    except sqlite3.Error as error:
-        name = getattr(error, "sqlite_errorname", "") or type(error).__name__
-        damaged = name.startswith(("SQLITE_CORRUPT", "SQLITE_NOTADB")) or "decode" in str(error)
-        if damaged:
-            raise DamageError(f"{path}: {_DAMAGED} ({error}).") from error
-        words = next(
-            (text for start, text in _WORDS.items() if name.startswith(start)), f"SQLite says: {error} ({name})"
-        )
-        raise StoreError(f"{path}: {words}.") from error
