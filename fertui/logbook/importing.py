@@ -22,13 +22,7 @@ from fertui.logbook.templates import Template
 from fertui.logbook.times import zone
 from fertui.refusals import Refusal
 from fertui.site.model import POINTS, Site
-
-POINT_WORDS: Mapping[str, str] = {
-    "drip": "feed", "dripper": "feed", "drip water": "feed", "inlet": "feed", "slab": "root_zone",
-    "root zone": "root_zone", "substrate": "root_zone", "gutter": "drain", "drainage": "drain", "drain water": "drain",
-    "drain store": "drain_store",
-}  # fmt: skip
-"""Words tables use for points (common practice, no source)."""
+from fertui.site.points import point_called
 
 STATES: Mapping[str, str] = {
     "new": "new", "there": "already there as entry {}", "differs": "differs from entry {} and is left out",
@@ -229,8 +223,7 @@ def _placed(written: str, source: _Source) -> dict[str, str]:
     waters = {water.name.lower(): water.name for water in source.site.waters}
     if point.lower() in waters and point not in POINTS:
         return {"point": "source", "source": waters[point.lower()]}
-    plain = point.lower().replace("_", " ")
-    return {"point": POINT_WORDS.get(plain) or {each.replace("_", " "): each for each in POINTS}.get(plain, point)}
+    return {"point": point_called(point) or point}
 
 
 def _judged(read: Sequence[tuple[int, Entry]], book: Logbook, site: Site) -> Iterator[ImportRow]:

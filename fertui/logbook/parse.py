@@ -14,6 +14,7 @@ from fertui.logbook.readers import field_named, read_value, supply_named, unknow
 from fertui.logbook.sampling import at_25, check_method
 from fertui.logbook.times import AHEAD, EARLIEST, noon, read_moment, zone
 from fertui.site.model import POINTS, Loop, Site
+from fertui.site.points import point_called
 
 POINTS_BY_LAYOUT: Mapping[str, tuple[str, ...]] = {
     "shared-tank": ("tank", "root_zone", "source", "feed", "drain"),
@@ -201,7 +202,7 @@ def _when(text: str, kind: Kind, site: Site, now: datetime) -> tuple[datetime, b
 
 def _point(kind: Kind, text: str, loop: Loop) -> str:
     allowed = POINTS_BY_LAYOUT[loop.layout]
-    word = text.lower().replace(" ", "_").replace("-", "_")
+    word = point_called(text) or text
     if not text:
         return allowed[0] if kind.sampled and (kind.name != "analysis" or loop.layout == "shared-tank") else ""
     if word not in allowed:

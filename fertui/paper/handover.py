@@ -10,8 +10,9 @@ from fertui.estimate.notices.notice import Notice
 from fertui.estimate.signs import SIGNS
 from fertui.logbook.entries import Entry
 from fertui.paper.page import Page, age, amount, clock, columns, day, folded, heading, listed, page, section
-from fertui.paper.round_sheet import POINT_WORDS, points_of
+from fertui.paper.round_sheet import points_of
 from fertui.site.model import Loop, Site
+from fertui.site.points import point_name
 
 SHIFTS = timedelta(hours=36)
 """What was written down within this time is news to the next shift (common practice, no source)."""
@@ -77,7 +78,7 @@ def _loop_rows(loop: Loop, at: datetime, entries: Sequence[Entry], shift: LoopSh
         found = [each for each in entries if (each.loop, each.kind, each.point) == (loop.name, "reading", point)]
         read = f"{age(found[-1].at, at)} ago" if found else "never"
         numbers = [amount(found[-1].number_of(what)) if found else "" for what in ("EC", "pH")]
-        yield name, POINT_WORDS[point], *numbers, read, *whole
+        yield name, point_name(point), *numbers, read, *whole
         name, whole = "", ("", "")
 
 

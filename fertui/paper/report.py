@@ -16,9 +16,9 @@ from fertui.logbook.entries import Entry
 from fertui.paper.discharges import LetGo, let_go, rows_of
 from fertui.paper.handover import said
 from fertui.paper.page import Page, amount, clock, columns, day, folded, heading, listed, page, section
-from fertui.paper.round_sheet import POINT_WORDS
 from fertui.quantities import in_unit, shown_in
 from fertui.site.model import Loop, Site
+from fertui.site.points import point_name
 
 if TYPE_CHECKING:
     from fertui.estimate.balance import Stretch
@@ -100,7 +100,7 @@ def _analyses(it: Reported) -> list[str]:
     for entry in it.of("analysis"):
         measured = [f"{name} {amount(n)}{unit}" for name, unit in (("EC", " mS/cm"), ("pH", ""))
                     if (n := entry.number_of(name)) is not None]  # fmt: skip
-        where = ", ".join(part for part in (POINT_WORDS.get(entry.point, entry.point), entry.method) if part)
+        where = ", ".join(part for part in (point_name(entry.point), entry.method.replace("_", " ")) if part)
         lines += folded(f"{it.day(entry.at)} {where}, entry {entry.number}: {'  '.join(measured)}{_doubt(entry)}", "")
         lines += _composition(entry, IONS, "mmol/L") + _composition(entry, MICRONUTRIENTS, "umol/L")
     return lines

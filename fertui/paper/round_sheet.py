@@ -9,9 +9,9 @@ from fertui.chemistry.names import IONS
 from fertui.logbook.entries import Entry
 from fertui.paper.page import Page, amount, clock, columns, day, folded, heading, page, section
 from fertui.site.model import Loop, Site
+from fertui.site.points import point_name
 
 BLANK = "_" * 12
-POINT_WORDS = {"feed": "drip", "tank": "tank", "root_zone": "root zone", "drain": "drain", "drain_store": "drain store"}
 METERED = {"make_up": "make_up_meter", "irrigation": "irrigation_meter", "drain": "drain_meter"}
 HABIT = timedelta(days=30)
 """What was logged within this time belongs to the round (common practice, no source)."""
@@ -71,7 +71,7 @@ class _Last:
 
 def _readings(loop: Loop, last: _Last) -> Iterator[Row]:
     for point in points_of(loop):
-        words = POINT_WORDS[point]
+        words = point_name(point)
         yield last.row(f"{words} EC", "mS/cm", "reading", "EC", point)
         yield last.row(f"{words} pH", "pH", "reading", "pH", point)
         yield last.row(f"{words} temperature", "C", "reading", "temperature", point)

@@ -7,9 +7,9 @@ from typing import Any
 
 from fertui.chemistry.names import IONS
 from fertui.cli.views import as_json, words
-from fertui.cli.views.today import POINT_WORDS
 from fertui.estimate.signs import SIGNS
 from fertui.paper.page import columns, folded
+from fertui.site.points import point_name
 from fertui.workbench.analysis import AnalysisRow, AnalysisView
 from fertui.workbench.drift import Drift, Series
 
@@ -26,7 +26,7 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
             [*folded(f"{none}Take one with 'fertui record SITE analysis point=... K=... Ca=...'.", ""), *water]
         )
     lines = [f"{view.loop}: last analysis"]
-    for name, seen in (("drip", view.feed), (POINT_WORDS[view.managed_point], view.managed)):
+    for name, seen in ((point_name("feed"), view.feed), (point_name(view.managed_point), view.managed)):
         if seen is not None:
             numbers = "  ".join(f"{key} {words.number(seen.values[key])}" for key in ("EC", "pH") if key in seen.values)
             lines.append(f"  {name}, {words.local(seen.at, timezone)}, entry {seen.number}: {numbers}")
@@ -38,7 +38,7 @@ def text(view: AnalysisView, timezone: str, unit: str) -> str:
     if any(row.feed is not None or row.managed is not None for row in view.micronutrients):
         lines += ["", *columns(_rows(view.micronutrients, view.managed_point, "umol/L"), range(1, 7))]
     for point, checks in view.checks.items():
-        lines += ["", f"Checks of the {POINT_WORDS[point]} analysis"]
+        lines += ["", f"Checks of the {point_name(point)} analysis"]
         for check in checks:
             lines += folded(f"{check.what}: {_check(check)}", f"  {'ok' if check.passed else SIGNS['act']} ")
     lines += water
@@ -66,7 +66,7 @@ def _check(check: Any) -> str:
 
 def _rows(rows: Sequence[AnalysisRow], managed: str, unit: str) -> list[tuple[str, ...]]:
     shown: list[tuple[str, ...]] = [
-        (unit, "drip", POINT_WORDS[managed], "previous", "normalised", "target", "off %", "in words")
+        (unit, point_name("feed"), point_name(managed), "previous", "normalised", "target", "off %", "in words")
     ]
     for row in rows:
         if row.feed is None and row.managed is None:
@@ -90,7 +90,7 @@ def drift_text(course: Drift, timezone: str) -> str:
     """The past days of the managed point as a table of daily values, then what was done and measured."""
     shown = [each for each in course.series if each.what in FOLLOWED]
     rows: list[tuple[str, ...]] = [
-        (POINT_WORDS[course.point], *(f"{each.what} {each.unit}".rstrip() for each in shown))
+        (point_name(course.point), *(f"{each.what} {each.unit}".rstrip() for each in shown))
     ]
     times = shown[0].times if shown else ()
     for index, at in enumerate(times):

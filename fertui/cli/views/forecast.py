@@ -5,11 +5,11 @@ from __future__ import annotations
 from typing import Any
 
 from fertui.cli.views import as_json, words
-from fertui.cli.views.today import POINT_WORDS
 from fertui.estimate.forecast import Forecast, LeavesBand
 from fertui.estimate.hindcast import Hindcast
 from fertui.estimate.sampling import SampleAdvice
 from fertui.paper.page import columns, folded
+from fertui.site.points import point_name
 from fertui.workbench.today import in_words, reading_of, unit_of
 
 SHOWN = ("K share", "Ca share", "Mg share", "Na", "EC")
@@ -18,7 +18,7 @@ SHOWN = ("K share", "Ca share", "Mg share", "Na", "EC")
 
 def text(ahead: Forecast, sample: SampleAdvice, loop: str, managed: str, timezone: str, unit: str) -> str:
     """Every second day of the managed point with its 80 % range, what leaves its band, the next sample, assumptions."""
-    rows = [(POINT_WORDS[managed], *(f"{what} {_unit(what, unit)}".rstrip() for what in SHOWN))]
+    rows = [(point_name(managed), *(f"{what} {_unit(what, unit)}".rstrip() for what in SHOWN))]
     for day in ahead.days[1::2] if len(ahead.days) > 7 else ahead.days:
         cells = []
         for what in SHOWN:
@@ -49,7 +49,7 @@ def _inputs(ahead: Forecast) -> str:
 
 def _leaves(each: LeavesBand, horizon: int, timezone: str) -> str:
     chance = "" if each.days.value == 0 else f", chance {100 * each.probability:.0f} %"
-    return f"{POINT_WORDS[each.point]} {each.what}: {in_words(each, horizon, timezone)}{chance}"
+    return f"{point_name(each.point)} {each.what}: {in_words(each, horizon, timezone)}{chance}"
 
 
 def _sample(sample: SampleAdvice, horizon: int, timezone: str) -> list[str]:
@@ -125,7 +125,7 @@ def record_text(record: Hindcast, loop: str, timezone: str) -> str:
         rows.append(
             (
                 words.local(row.at, timezone)[:10] + mark,
-                POINT_WORDS[row.point],
+                point_name(row.point),
                 row.ion,
                 words.number(row.measured_mmol_l),
                 forecast,

@@ -6,30 +6,34 @@ from typing import Any
 
 from fertui.catalogue.acids import with_strength
 from fertui.cli.views import as_json, words
-from fertui.cli.views.today import POINT_WORDS
 from fertui.estimate.signs import SIGNS
 from fertui.paper.cautions import read_first
 from fertui.paper.page import columns, folded
 from fertui.planning.values import Outlook, Plan
+from fertui.site.points import point_name
 from fertui.workbench.today import reading_of, unit_of
 
+Held = tuple[tuple[str, float], ...]
+"""Acids and lyes whose litres are held back, with the strength counted on."""
 
-def text(plan: Plan, timezone: str, unit: str) -> str:
-    """The plan: the answer first, what to do, before and after, cautions, then limits, reasons and sums."""
-    lines = [f"{plan.loop}: plan over {plan.horizon_days} days, for the {POINT_WORDS[plan.point]}"]
+
+def text(plan: Plan, timezone: str, unit: str, held: Held = ()) -> str:
+    """The plan: the answer, cautions, what to do in its order, before and after, then limits, reasons and sums."""
+    lines = [f"{plan.loop}: plan over {plan.horizon_days} days, for the {point_name(plan.point)}"]
     if not plan.feasible:
         lines += folded(f"No: {plan.reason}", "")
     lines += [line for each in plan.notices for line in folded(each, f"{SIGNS['watch']} ")]
-    lines += _recipe(plan, timezone, unit) + _steps(plan, timezone) + _acid(plan, timezone) + _renewal(plan)
-    lines += ["", *_outcome(plan)]
     lines += ["", *read_first(plan.cautions)[:-1]] if plan.acid or plan.steps or plan.recipe else []
+    lines += _held_back(held) + _renewal(plan, timezone)
+    lines += _recipe(plan, timezone, unit, held) + _steps(plan, timezone) + ([] if held else _acid(plan, timezone))
+    lines += ["", *_outcome(plan)]
     lines += _section("Limits that bind", [_binding(each) for each in plan.binding])
     lines += _section("Rule of thumb beside it", plan.rule_of_thumb)
     lines += _section("Why", plan.reasons)
     lines += _section("Otherwise", [each.text for each in plan.sensitivity])
     if plan.runner_up is not None:
         lines += _section("Next best", [plan.runner_up.difference])
-    lines += _section("Step by step", plan.arithmetic)
+    lines += _section("Step by step", [each for each in plan.arithmetic if not _tells_litres(each, held)])
     return "\n".join(lines)
 
 
@@ -37,7 +41,24 @@ def _section(title: str, rows: Any) -> list[str]:
     return ["", title, *(line for row in rows for line in folded(row, "  "))] if rows else []
 
 
-def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
+def _held_back(held: Held) -> list[str]:
+    """What is not shown yet, and how it is."""
+    if not held:
+        return []
+    named = " and ".join(with_strength(*each) for each in held)
+    words = (
+        f"{named}: amounts are held back. Read the cautions above and the label, then ask again with --cautions-read "
+        "--label-strength PERCENT"
+    )
+    return ["", *folded(words, f"{SIGNS['act']} ")]
+
+
+def _tells_litres(line: str, held: Held) -> bool:
+    """Whether a sum gives away how much of what is held back."""
+    return any(name in line for name, _ in held)
+
+
+def _recipe(plan: Plan, timezone: str, unit: str, held: Held) -> list[str]:
     if plan.recipe is None:
         return []
     recipe = plan.recipe
@@ -57,7 +78,10 @@ def _recipe(plan: Plan, timezone: str, unit: str) -> list[str]:
     if recipe.sheet is not None:
         for tank in recipe.sheet.tanks:
             lines += ["", f"{tank.name} ({tank.content}), {tank.litres:.0f} L, 1:{tank.dilution:.0f}"]
-            lines += [line for each in tank.salts for line in folded(f"{each.salt}: {each.words}", "  ")]
+            names = {name for name, _ in held}
+            for each in tank.salts:
+                amount = "held back, see above" if each.salt in names else each.words
+                lines += folded(f"{each.salt}: {amount}", "  ")
     return lines
 
 
@@ -85,11 +109,20 @@ def _acid(plan: Plan, timezone: str) -> list[str]:
     return ["", "Acid, acid into water, with a second person", *lines] if lines else []
 
 
-def _renewal(plan: Plan) -> list[str]:
+def _renewal(plan: Plan, timezone: str) -> list[str]:
+    """The renewal in words: when, before what, with what; or as advice beside the plan."""
     if plan.renewal is None:
         return []
     renewal = plan.renewal
-    head = f"Renew {renewal.litres:.0f} L: {renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P leave with it"
+    lost = f"{renewal.kg_n:.2f} kg N and {renewal.kg_p:.2f} kg P leave with it"
+    head = f"Renew {renewal.litres:.0f} L: {lost}"
+    if renewal.at is not None:
+        fresh = ", ".join(f"{ion} {words.number(mmol)}" for ion, mmol in renewal.refill.items() if mmol >= 0.05)
+        water = f"make-up water ({fresh} mmol/L)" if fresh else "make-up water"
+        head = (
+            f"First, {words.local(renewal.at, timezone)}, before anything is weighed in: let go {renewal.litres:.0f} L "
+            f"and fill up with {water}; {lost}"
+        )
     return ["", *folded(head, ""), *(line for each in renewal.options for line in folded(each.text, "  "))]
 
 
@@ -142,6 +175,7 @@ def document(plan: Plan) -> dict[str, Any]:
             "kg_N": renewal.kg_n,
             "kg_P": renewal.kg_p,
             "year_kg_N": renewal.year_kg_n,
+            "at": renewal.at,
         },
         "before": {"points": as_json.points(plan.before.points)},
         "after": {"points": as_json.points(plan.after.points)},

@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 from fertui.cli.views import as_json, words
 from fertui.logbook.entries import Entry, Value
 from fertui.paper.page import columns, folded
+from fertui.site.points import point_name
 
 if TYPE_CHECKING:
     from fertui.site.edit import Row
@@ -21,7 +22,7 @@ if TYPE_CHECKING:
 def entry_text(entry: Entry, timezone: str) -> str:
     """One entry in a line: number, time, loop, kind, place, values, who, and what became of it."""
     values = " ".join(_value(value) for value in entry.values)
-    place = " ".join(part for part in (entry.point, entry.zone, entry.method) if part)
+    place = " ".join(part for part in (point_name(entry.point), entry.zone, entry.method) if part)
     parts = [str(entry.number or "new"), words.local(entry.at, timezone), entry.loop, entry.kind, place, values]
     parts.append(f"by {entry.by}")
     if entry.supersedes is not None:
@@ -73,7 +74,7 @@ def supplies_text(supplies: Sequence[SupplyRow], tanks: Sequence[StockRow]) -> s
 
 def aims_text(aims: Sequence[Aim], loop: str) -> str:
     """Bands and limits in force for a loop with where each comes from."""
-    lines = columns([(each.point.replace("_", " "), f"{each.what} {each.kind}", each.words) for each in aims])
+    lines = columns([(point_name(each.point), f"{each.what} {each.kind}", each.words) for each in aims])
     return "\n".join([f"In force for {loop}:", *_with_sources(lines, [each.source for each in aims])])
 
 

@@ -8,17 +8,9 @@ from fertui.chemistry.names import IONS, MICRONUTRIENTS
 from fertui.cli.views import as_json, words
 from fertui.estimate.signs import SIGNS
 from fertui.paper.page import columns, folded
+from fertui.site.points import point_name
 from fertui.workbench.glance import Seen
 from fertui.workbench.today import NOT_KNOWN, Gauge, Today
-
-POINT_WORDS = {
-    "feed": "drip",
-    "root_zone": "root zone",
-    "drain": "drain",
-    "drain_store": "drain store",
-    "tank": "tank",
-    "source": "source water",
-}
 
 
 def text(state: Today, timezone: str, unit: str) -> str:
@@ -50,7 +42,7 @@ def _readings(state: Today) -> list[str]:
     for point, seen in state.readings.items():
         numbers = [f"{name} {words.number(seen.values[name])}" for name in ("EC", "pH") if name in seen.values]
         if numbers:
-            lines.append(f"{POINT_WORDS.get(point, point)}: {'  '.join(numbers)}  ({words.age(seen.at, state.at)})")
+            lines.append(f"{point_name(point, state.layout)}: {'  '.join(numbers)}  ({words.age(seen.at, state.at)})")
     if state.set_ec is not None:
         lines.append(
             f"set: EC {words.number(state.set_ec)} mS/cm" + (f"  pH {state.set_ph:.1f}" if state.set_ph else "")
@@ -66,7 +58,7 @@ def _readings(state: Today) -> list[str]:
 
 
 def _gauges(state: Today, unit: str) -> list[str]:
-    where = POINT_WORDS[state.managed_point]
+    where = point_name(state.managed_point)
     rows = [(where, "now, 80 % range", "band", "leaves its band")]
     for gauge in state.gauges:
         name, scale, shown = _in_unit(gauge, unit)
@@ -85,7 +77,7 @@ def _in_unit(gauge: Gauge, unit: str) -> tuple[str, float, str]:
 def _wanted(state: Today, unit: str) -> list[str]:
     """The bands alone, before an analysis says where the loop stands in them."""
     water = f"not known: the water {state.unanalysed_water!r} was never analysed"
-    rows = [(POINT_WORDS[state.managed_point], "now", "band")]
+    rows = [(point_name(state.managed_point), "now", "band")]
     for gauge in state.gauges:
         name, scale, shown = _in_unit(gauge, unit)
         of_water = gauge.what in ("Na", "Cl") and state.unanalysed_water is not None
@@ -96,7 +88,7 @@ def _wanted(state: Today, unit: str) -> list[str]:
 def _concentrations(state: Today, unit: str) -> list[str]:
     """Macro-ions and EC at every point; micronutrients below where an analysis brought them."""
     names = [name for name in state.points if not (name == "root_zone" and state.managed_point == "tank")]
-    heads = [POINT_WORDS[name] for name in names]
+    heads = [point_name(name) for name in names]
     rows = [(unit, *heads), *(_row(state, ion, unit, names) for ion in IONS)]
     rows.append(("EC mS/cm", *(words.ranged(state.points[name].ec) for name in names)))
     traces = [ion for ion in MICRONUTRIENTS if any(ion in point.ions for point in state.points.values())]

@@ -9,8 +9,9 @@ from typing import TYPE_CHECKING, NamedTuple
 from fertui.chemistry.names import MICRONUTRIENTS
 from fertui.estimate.notices.feeding import near_set_point
 from fertui.estimate.notices.look import Look
-from fertui.estimate.notices.notice import ACT, POINT_WORDS, Notice, allowed, chance_out, is_out, ranged, severity_of
+from fertui.estimate.notices.notice import ACT, Notice, allowed, chance_out, is_out, ranged, severity_of
 from fertui.estimate.points import Band, Estimated, PointState
+from fertui.site.points import at_point
 from fertui.site.presets import limits_of
 
 if TYPE_CHECKING:
@@ -54,7 +55,7 @@ class Standing(NamedTuple):
     @property
     def subject(self) -> str:
         """What it is about and where."""
-        return f"{self.what} {POINT_WORDS[self.point]}"
+        return f"{self.what} {at_point(self.point)}"
 
 
 def shares(look: Look) -> Iterator[Notice]:

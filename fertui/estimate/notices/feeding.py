@@ -10,9 +10,10 @@ import numpy as np
 from fertui.chemistry.ions import Array
 from fertui.estimate import compositions
 from fertui.estimate.notices.look import Look
-from fertui.estimate.notices.notice import ACT, POINT_WORDS, WATCH, Notice, plain
+from fertui.estimate.notices.notice import ACT, WATCH, Notice, plain
 from fertui.estimate.notices.stocks import day_grid, drawn, stock_left
 from fertui.site.model import StockTank
+from fertui.site.points import at_point
 
 EC_NEAR = 0.2
 """EC this near its set point [mS/cm] is on it: 0.2-0.3 is usually sufficient (extension video on injector checks)."""
@@ -50,7 +51,7 @@ def off_set_point(look: Look) -> Iterator[Notice]:
     read = look.last("EC", (look.fed_from,), EC_FRESH_DAYS)
     if read is None or look.set_ec is None or abs(read.value - look.set_ec) <= EC_OFF:
         return
-    text = f"EC {POINT_WORDS[look.fed_from]} reads {read.value:.1f} mS/cm, set point {look.set_ec:.1f}."
+    text = f"EC {at_point(look.fed_from)} reads {read.value:.1f} mS/cm, set point {look.set_ec:.1f}."
     yield Notice("ec_off_set", WATCH, f"{text} Read again, then check dosing.", "r")
 
 

@@ -23,8 +23,6 @@ KEYS = ("r", "a", "w", "d", "m", "p", *"123456789")
 NORMAL_10 = 1.2815515655446004
 """Standard deviations from the median to the 10 % and 90 % quantiles of a normal distribution."""
 
-POINT_WORDS = {"feed": "at the drip", "tank": "in the tank", "root_zone": "in the root zone", "drain": "in the drain",
-               "drain_store": "in the drain store"}  # fmt: skip
 
 
 class Notice(NamedTuple):

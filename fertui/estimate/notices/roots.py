@@ -8,8 +8,9 @@ from collections.abc import Iterator
 from fertui.catalogue.media import medium
 from fertui.chemistry.ions import CHARGES
 from fertui.estimate.notices.look import Look, Measured
-from fertui.estimate.notices.notice import ACT, NOTE, POINT_WORDS, WATCH, Notice, plain
+from fertui.estimate.notices.notice import ACT, NOTE, WATCH, Notice, plain
 from fertui.loop import temperature_notice
+from fertui.site.points import at_point
 
 PH_LOW, PH_STOP, PH_EMERGENCY = 5.0, 4.5, 3.5
 """Warning; stop dosing and irrigation; roots burn (common practice, no source; grower's handbook on acid by hand)."""
@@ -43,7 +44,7 @@ def acidity(look: Look) -> Iterator[Notice]:
     lowest = min(last.values(), key=lambda each: each.value, default=None)
     if lowest is None or lowest.value >= PH_LOW:
         return
-    head = f"pH {POINT_WORDS[lowest.point]} read {lowest.value:.1f} at {look.local(lowest.at):%a %H:%M}."
+    head = f"pH {at_point(lowest.point)} read {lowest.value:.1f} at {look.local(lowest.at):%a %H:%M}."
     yield _emergency(head) if lowest.value < PH_EMERGENCY else _too_low(look, head, lowest)
 
 
@@ -97,7 +98,7 @@ def zones(look: Look) -> Iterator[Notice]:
             if last[high] - last[low] > max(apart, part * mean):
                 unit = " mS/cm" if name == "EC" else ""
                 both = f"{last[high]:.1f}{unit} in zone {high}, {last[low]:.1f}{unit} in zone {low}"
-                text = f"{name} {POINT_WORDS[point]} differs: {both}. Look at valves and drippers."
+                text = f"{name} {at_point(point)} differs: {both}. Look at valves and drippers."
                 yield Notice("zones_differ", WATCH, text, "r")
 
 

@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 from fertui.estimate.notices.look import Look
-from fertui.estimate.notices.notice import NOTE, POINT_WORDS, WATCH, Notice
+from fertui.estimate.notices.notice import NOTE, WATCH, Notice
 from fertui.logbook.calibrations import deviation, doubted_by, is_good, last_good, was_off
 from fertui.logbook.entries import Entry
+from fertui.site.points import at_point
 
 RECENT_DAYS = 14.0
 """Doubts older than this have left the solution, or have been settled."""
@@ -35,7 +36,7 @@ def held_back(look: Look) -> Iterator[Notice]:
     """Analyses that fail their own checks: not used, to be asked about."""
     for each in look.estimate.held_back:
         if look.age_days(each.at) <= 60.0:
-            text = f"Analysis {_where(each.point)} of {look.day(each.at)} is held back: {each.why}."
+            text = f"Analysis {at_point(each.point)} of {look.day(each.at)} is held back: {each.why}."
             yield Notice("analysis_held_back", WATCH, text, "7")
 
 
@@ -43,7 +44,7 @@ def surprises(look: Look) -> Iterator[Notice]:
     """Analyses that were used but far from what was expected."""
     for each in look.estimate.surprises:
         if each.ions != ("EC",) and look.age_days(each.at) <= RECENT_DAYS:
-            text = f"Analysis {_where(each.point)} of {look.day(each.at)} surprises: {each.text}."
+            text = f"Analysis {at_point(each.point)} of {look.day(each.at)} surprises: {each.text}."
             yield Notice("surprise", WATCH, f"{text} It is used; sample again if in doubt.", "2")
 
 
@@ -94,17 +95,13 @@ def _not_believed(look: Look) -> Iterator[Notice]:
     for each in look.estimate.surprises:
         if each.ions == ("EC",) and look.age_days(each.at) <= 7.0:
             yield Notice(
-                "meter_doubt", WATCH, f"{_where(each.point).capitalize()}, {look.day(each.at)}: {each.text}.", "r"
+                "meter_doubt", WATCH, f"{at_point(each.point).capitalize()}, {look.day(each.at)}: {each.text}.", "r"
             )
 
 
 def _unanswered(look: Look) -> Iterator[Notice]:
-    for each in look.of("reading", "water", "stock", "level", "acid", "dose", days=RECENT_DAYS):
+    for each in look.of("reading", "water", "stock", "level", "acid", "dose", "batch", days=RECENT_DAYS):
         asked = [WORDS[code] for code in each.flags.split() if code in WORDS]
         if asked:
             text = f"Entry {each.number} ({each.kind}, {look.day(each.at)}) was never settled: {', '.join(asked)}"
             yield Notice("meter_doubt", WATCH, f"{text} Correct it, or strike it.", "7")
-
-
-def _where(point: str) -> str:
-    return POINT_WORDS.get(point, point)
