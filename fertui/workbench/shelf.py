@@ -16,7 +16,8 @@ if TYPE_CHECKING:
 
 
 class SupplyRow(NamedTuple):
-    """One supply; ``label`` is its own analysis or strength where it differs from the formula."""
+    """One supply; ``label`` is its own analysis or strength where it differs from the formula, ``signal`` the gravest
+    severity among its own cautions: danger, warning or ''."""
 
     name: str
     kind: str
@@ -26,6 +27,7 @@ class SupplyRow(NamedTuple):
     price_per_kg: float | None
     amount_kg: float | None
     hazards: tuple[str, ...]
+    signal: str = ""
 
 
 class StockRow(NamedTuple):
@@ -44,7 +46,7 @@ class StockRow(NamedTuple):
 def supply_rows(site: Site) -> tuple[SupplyRow, ...]:
     """Every supply of a site with the cautions of its strength."""
     from fertui.catalogue.acids import Acid
-    from fertui.catalogue.cautions import cautions_of
+    from fertui.catalogue.cautions import cautions_of, first
     from fertui.catalogue.supplies import of_supply
 
     rows = []
@@ -56,10 +58,20 @@ def supply_rows(site: Site) -> tuple[SupplyRow, ...]:
         density = supply.density_kg_per_l
         if density is None and supply.strength_pct is not None and isinstance(found, Acid):
             density = found.density(supply.strength_pct)
-        hazards = tuple(each.text for each in cautions_of([supply]))
+        cautions = cautions_of([supply])
+        hazards, own = tuple(each.text for each in cautions), {each.severity for each in cautions if each != first()}
+        signal = next((word for word in ("danger", "warning") if word in own), "")
         rows.append(
             SupplyRow(
-                supply.name, supply.kind, found.formula, label, density, supply.price_per_kg, supply.amount_kg, hazards
+                supply.name,
+                supply.kind,
+                found.formula,
+                label,
+                density,
+                supply.price_per_kg,
+                supply.amount_kg,
+                hazards,
+                signal,
             )
         )
     return tuple(rows)
@@ -105,7 +117,6 @@ def last_mixes(site: Site, rows: Sequence[StockRow], days_left: float, stop_days
 
 def acid_cautions(site: Site, acid: str, strength_pct: float | None) -> tuple[Caution, ...]:
     """Cautions of an acid or lye at the strength read off its label."""
-
     from fertui.catalogue.cautions import cautions_of
     from fertui.site.model import Supply
 

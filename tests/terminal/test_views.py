@@ -13,6 +13,10 @@ import pytest
 from conftest import HERE, Opened
 from pseudo_terminal import PseudoTerminal
 
+from fertui.tui.ink import text_of
+from fertui.tui.views.supplies import shelf_table
+from fertui.workbench.shelf import SupplyRow
+
 GOLDEN = HERE / "golden"
 SCREENS = {
     "loops": (), "today": ("v",), "today lettuce": ("v", "n"), "today in mg": ("v", "u", "u"), "analysis": ("2",),
@@ -168,3 +172,23 @@ def test_a_size_that_goes_there_and_back_at_once_leaves_a_whole_screen(site: Pat
         terminal.resize(80, 24)
         terminal.settle()
         assert terminal.text == whole
+
+
+@pytest.mark.parametrize("width", [60, 80, 120])
+def test_columns_of_the_shelf_stay_apart_and_no_name_is_cut(width: int) -> None:
+    names = ("magnesium sulfate heptahydrate", "calcium nitrate double salt", "nitric acid 38")
+    shelf = [SupplyRow(name, "", "5Ca(NO3)2.NH4NO3.10H2O", "38 %", 1.23, 1.2, 120.0, (), "warning") for name in names]
+    head, *rows = text_of(shelf_table(shelf, width)).splitlines()
+    assert max(map(len, (head, *rows))) <= width
+    for name, row in zip(names, rows, strict=True):
+        assert [text for text in re.split(" {2,}", row) if text][:1] == [name]
+        assert len(re.split(" {2,}", row.strip())) == len(head.split())
+
+
+def test_a_stock_tank_with_a_long_name_keeps_it_and_its_columns(site: Path, open_terminal: Opened) -> None:
+    file = site / "site.toml"
+    file.write_text(file.read_text(encoding="utf-8").replace('"sulfate"', '"sulfate and phosphate"'), encoding="utf-8")
+    terminal = open_terminal(site, fixed=True)
+    terminal.until_text("look at")
+    terminal.press("8")
+    terminal.until(lambda text: re.search(r"sulfate and phosphate \(B\) +1000 L 100x  ", text) is not None)

@@ -27,6 +27,9 @@ def test_every_supply_stands_on_the_shelf_with_formula_label_and_hazards(bench: 
     assert (acid.label, acid.density_kg_per_l) == ("38 %", pytest.approx(1.233, abs=0.001))
     assert any("H314" in hazard for hazard in acid.hazards)
     assert rows["potassium nitrate"].formula == "KNO3"
+    # Signal words of labels: Regulation (EC) 1272/2008, see the catalogue's own sources; dust alone bears none.
+    signals = [rows[name].signal for name in ("nitric acid 38", "potassium nitrate", "potassium sulfate")]
+    assert signals == ["danger", "warning", ""]
     assert rows["potassium nitrate"].density_kg_per_l is None
 
 

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
 from fertui.tui.figures import age, number
-from fertui.tui.ink import BLANK, Line, Span, barred, col, cut, line, literal
+from fertui.tui.ink import BLANK, Line, Span, barred, cells, col, fit, line, literal
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.text_page import TextPage
 from fertui.tui.view import View, waiting
@@ -16,9 +17,8 @@ if TYPE_CHECKING:
     from fertui.workbench.shelf import StockRow, SupplyRow
 
 
-WIDE = 112
 USUAL = 76
-"""Columns from which formulas and tank sizes have room."""
+"""Columns from which the sizes of stock tanks have room."""
 
 
 class SuppliesView(View):
@@ -28,8 +28,8 @@ class SuppliesView(View):
     HELP = (
         "Salts, acids and lyes on the shelf: the label's own analysis wins over the formula. Days left come from "
         "what was logged as used. "
-        "Stock tanks are named by content; the letter is what is painted on them. Enter shows the hazards of the "
-        "chosen supply. "
+        "Stock tanks are named by content; the letter is what is painted on them. Danger and warning are the "
+        "signal words of a label; Enter shows the hazards of the chosen supply. "
         "s is the stock-tank sheet, one card a tank in the order of dissolving, h the acid sheet for the make-up water."
     )
     BINDINGS: ClassVar[list[Any]] = [
@@ -63,21 +63,21 @@ class SuppliesView(View):
         tanks: tuple[StockRow, ...] = snapshot.get(Ask("stock_rows", snapshot.loop)) or ()
         trouble = snapshot.trouble(Ask("stock_rows", snapshot.loop))
         above = waiting(snapshot, Ask("stock_rows", snapshot.loop), "", width) if trouble else self._tanks(tanks, width)
-        rows = [*above, BLANK, line(Span(" Shelf", "title")), _shelf_head(width)]
-        for index, supply in enumerate(shelf):
-            if index == self.row:
-                self.reveal(len(rows))
-            rows.append(_supply(supply, index == self.row, width))
-        return rows
+        head, *supplies = shelf_table(shelf, width)
+        rows = [*above, BLANK, line(Span(" Shelf", "title")), head]
+        self.reveal(len(rows) + self.row)
+        return [*rows, *(_chosen(row, width) if index == self.row else row for index, row in enumerate(supplies))]
 
     def _tanks(self, tanks: tuple[StockRow, ...], width: int) -> list[Line]:
         roomy = width >= USUAL
         sizes = [("size", 13)] if roomy else []
-        heads = [*sizes, ("mixed", 13), ("left", 9), ("days left", 12)]
-        title = col(" Stock tanks", 20, "title", right=False)
+        heads = [*sizes, ("mixed", 14), ("left", 9), ("days left", 12)]
+        names = [literal(f" {tank.name}{' (' + tank.letter + ')' if tank.letter else ''}") for tank in tanks]
+        size = min(max((20, *(cells(name) + 1 for name in names))), width - sum(size for _, size in heads))
+        title = col(" Stock tanks", size, "title", right=False)
         head = line(title, *(col(text, size, "faint") for text, size in heads))
         rows = [head]
-        for tank in tanks:
+        for name, tank in zip(names, tanks, strict=True):
             mixed = "never logged" if tank.mixed_at is None else f"{age(tank.mixed_at, self.fertui.moment)} ago"
             left = "-" if tank.litres_left is None else f"{tank.litres_left:.0f} L"
             days = "-" if tank.days_left is None else f"{number(tank.days_left)} days"
@@ -90,12 +90,11 @@ class SuppliesView(View):
                 if tank.days_left < 3
                 else "plain"
             )
-            name = literal(f" {tank.name}{' (' + tank.letter + ')' if tank.letter else ''}")
             rows.append(
                 line(
-                    col(name, 20, "strong", right=False),
+                    col(name, size, "strong", right=False),
                     *([col(f"{tank.litres:g} L {tank.dilution:g}x", 13)] if roomy else []),
-                    col(mixed, 13),
+                    col(mixed, 14),
                     col(left, 9),
                     col(days, 12, ink),
                 )
@@ -138,28 +137,45 @@ class SuppliesView(View):
         self.fertui.paper("acid")
 
 
-def _shelf_head(width: int) -> Line:
-    dear = [col("price", 12, "faint")] if width >= WIDE else []
-    heads = [
-        col("name", 31, "faint", False),
-        *([col("formula", 23, "faint", False)] if width >= USUAL else []),
-        col("left", 9, "faint"),
-        *dear,
-        Span("  label", "faint"),
-    ]
-    return line(col("", 2), *heads)
+SPARED = ("kg/L", "price", "formula")
+"""Columns of the shelf that are left out where there is no room, the first one first; Enter tells them all."""
+RIGHT = ("left", "price", "kg/L")
+SIGNAL_INKS = {"danger": "act", "warning": "watch"}
 
 
-def _supply(supply: SupplyRow, chosen: bool, width: int) -> Line:
-    left = "-" if supply.amount_kg is None else f"{supply.amount_kg:g} kg"
-    price = "-" if supply.price_per_kg is None else f"{supply.price_per_kg:g} a kg"
-    dear = [col(price, 12)] if width >= WIDE else []
-    density = f", {supply.density_kg_per_l:.3g} kg/L" if supply.density_kg_per_l is not None and width >= WIDE else ""
-    formula = [col(literal(supply.formula), 23, right=False)] if width >= USUAL else []
-    mark = "!" if len(supply.hazards) > 1 else " "
-    row = line(
-        Span(f"▸{mark}" if chosen else f" {mark}", "watch"), col(literal(supply.name), 31, "strong", right=False),
-        *formula, col(left, 9), *dear,
-        Span("  " + cut(literal(supply.label + density), max(width - (67 if formula else 44), 8))),
-    )  # fmt: skip
-    return barred(row, width) if chosen else row
+def shelf_table(shelf: Sequence[SupplyRow], width: int) -> list[Line]:
+    """A head and a row a supply. ``hazard`` is the signal word of the label."""
+    table = {
+        "name": [literal(each.name) for each in shelf], "formula": [literal(each.formula) for each in shelf],
+        "hazard": [each.signal for each in shelf],
+        "left": ["-" if each.amount_kg is None else f"{each.amount_kg:g} kg" for each in shelf],
+        "price": ["-" if each.price_per_kg is None else f"{each.price_per_kg:g} a kg" for each in shelf],
+        "kg/L": ["" if each.density_kg_per_l is None else f"{each.density_kg_per_l:.3g}" for each in shelf],
+        "label": [literal(each.label) for each in shelf],
+    }  # fmt: skip
+    sizes = {head: max(map(cells, (head, *texts))) for head, texts in table.items()}
+    for head in SPARED:
+        if _needed(sizes) > width:
+            del sizes[head]
+    sizes["name"] -= max(0, _needed(sizes) - width)
+    heads = line(*(Span(f"  {fit(head, size, head in RIGHT)}", "faint") for head, size in sizes.items()))
+    return [heads, *(_supply({head: table[head][row] for head in sizes}, sizes) for row in range(len(shelf)))]
+
+
+def _chosen(row: Line, width: int) -> Line:
+    """The row under the bar, with the mark of it in the gap before its first cell."""
+    first, *rest = row
+    return barred(line(Span(f"▸{first.text[1:]}", first.ink), *rest), width)
+
+
+def _needed(sizes: Mapping[str, int]) -> int:
+    """Columns of a row: a gap of two before each of its cells."""
+    return sum(sizes.values()) + 2 * len(sizes)
+
+
+def _supply(texts: Mapping[str, str], sizes: Mapping[str, int]) -> Line:
+    inks = {"name": "strong", "hazard": SIGNAL_INKS.get(texts["hazard"], "plain")}
+    found = (
+        Span(f"  {fit(text, sizes[head], head in RIGHT)}", inks.get(head, "plain")) for head, text in texts.items()
+    )
+    return line(*found)
