@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any, ClassVar, NamedTuple
 
 from textual.binding import Binding
 
+from fertui.site.points import point_name
 from fertui.tui.ink import BLANK, Line, Span, barred, col, cut, inked, line, literal
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import SCROLLING, View, waiting
@@ -181,7 +182,7 @@ CONCENTRATIONS = ("mmol/L", "meq/L", "umol/L")
 
 def said(entry: Entry, by: Entry | None = None) -> str:
     """An entry in one line: point, values as written, note; for a struck one who did it and why."""
-    words = [entry.point.replace("_", " ")] if entry.point else []
+    words = [point_name(entry.point)] if entry.point else []
     if entry.kind == "site":
         words.append("site.toml changed")
     else:

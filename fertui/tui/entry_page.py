@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
+from fertui.site.points import point_name
 from fertui.tui.entry_list import struck_by
 from fertui.tui.ink import BLANK, Line, Span, fit, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
@@ -78,8 +79,8 @@ class EntryPage(View):
         at, entered = self.fertui.local(entry.at), self.fertui.local(entry.entered)
         return [
             ("happened", f"{at:%a %-d %b %Y}, the whole day" if entry.whole_day else f"{at:%a %-d %b %Y %H:%M}"),
-            ("written down", f"{entered:%a %-d %b %Y %H:%M} by {entry.by}"), ("point", entry.point.replace("_",
-            " ")), ("zone", entry.zone),
+            ("written down", f"{entered:%a %-d %b %Y %H:%M} by {entry.by}"), ("point",
+            point_name(entry.point)), ("zone", entry.zone),
             ("method", entry.method.replace("_", " ")), ("instrument", entry.instrument), ("note", entry.note),
             ("doubtful", entry.doubtful),
             ("not answered", getattr(entry, "flags", "").replace("_", " ")),

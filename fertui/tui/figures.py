@@ -18,18 +18,6 @@ MARKS = {**SIGNS, "good": "✓", "faint": SIGNS["note"]}
 CAUTION_INKS = {"danger": "act", "warning": "watch", "note": "faint"}
 """The ink of a caution by its severity in the catalogue."""
 
-POINT_NAMES = {
-    "source": "water", "feed": "drip", "tank": "tank", "root_zone": "root zone", "drain": "drain",
-    "drain_store": "drain store",
-}  # fmt: skip
-"""Points as the screen names them."""
-
-
-def point_name(point: str, layout: str = "") -> str:
-    """A point in words; the feed of a tank without drippers is an inlet."""
-    return "inlet" if point == "feed" and layout == "shared-tank" else POINT_NAMES.get(point, point)
-
-
 def digits_for(spread: float, unit: str = "") -> int:
     """Decimals a number deserves whose range is this wide: the last one shown still means something.
 

@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterable, Sequence
 from datetime import datetime
 from typing import TYPE_CHECKING
 
+from fertui.site.points import point_name
 from fertui.tui.figures import (
     CAUTION_INKS,
     MARKS,
@@ -13,7 +14,6 @@ from fertui.tui.figures import (
     band_words,
     estimated,
     number,
-    point_name,
     standing,
     unit_and_species,
 )

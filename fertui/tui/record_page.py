@@ -6,7 +6,8 @@ from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
-from fertui.tui.figures import MARKS, number, point_name
+from fertui.site.points import point_name
+from fertui.tui.figures import MARKS, number
 from fertui.tui.ink import BLANK, Line, Span, col, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import SCROLLING, View, waiting

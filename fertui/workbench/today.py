@@ -9,6 +9,7 @@ from zoneinfo import ZoneInfo
 
 from fertui.estimate.points import Estimated, PointState
 from fertui.logbook.entries import Entry
+from fertui.site.points import point_name
 from fertui.workbench.carrying_out import in_words as plan_in_words
 from fertui.workbench.carrying_out import open_plans
 from fertui.workbench.glance import Glance, Seen, glance
@@ -180,7 +181,7 @@ def _awaited(entries: Sequence[Entry], at: datetime, timezone: str) -> tuple[str
     came = [entry for entry in entries if entry.kind == "analysis"]
     came += [entry for entry in recent if entry.text_of("status") in ("arrived", "lost")]
     return tuple(
-        f"sample of the {(entry.point or 'loop').replace('_', ' ')}, sent {_day(entry.at, timezone)}"
+        f"sample of the {point_name(entry.point or 'loop')}, sent {_day(entry.at, timezone)}"
         for entry in sent
         if not any(result.point == entry.point and result.at >= entry.at - TAKEN_BEFORE for result in came)
     )

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING
 
-from fertui.tui.figures import point_name
+from fertui.site.points import point_name
 from fertui.tui.forms.choices import (
     METHODS,
     NOTE,

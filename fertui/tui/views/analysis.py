@@ -6,7 +6,8 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from fertui.chemistry.names import IONS
-from fertui.tui.figures import MARKS, age, amount, number, point_name, unit_and_species
+from fertui.site.points import point_name
+from fertui.tui.figures import MARKS, age, amount, number, unit_and_species
 from fertui.tui.ink import BLANK, Line, Span, beside, col, fit, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import View, waiting

@@ -8,8 +8,9 @@ from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
+from fertui.site.points import point_name
 from fertui.tui.chart import AXIS, MARK_LETTERS, Curve, column_of, draw_chart, nearest
-from fertui.tui.figures import band_words, digits_for, estimated, number, point_name
+from fertui.tui.figures import band_words, digits_for, estimated, number
 from fertui.tui.ink import BLANK, Line, Span, beside, col, cut, filled, line, literal
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import View, waiting

@@ -6,8 +6,9 @@ from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
+from fertui.site.points import point_name
 from fertui.tui.chart import Curve, draw_chart
-from fertui.tui.figures import LEAVING, MARKS, OUT, band_words, digits_for, estimated, point_name, short_leaving
+from fertui.tui.figures import LEAVING, MARKS, OUT, band_words, digits_for, estimated, short_leaving
 from fertui.tui.ink import BLANK, Line, Span, beside, col, line, literal, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.supposing import WHAT_IFS

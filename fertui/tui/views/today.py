@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any, ClassVar
 
 from textual.binding import Binding
 
+from fertui.site.points import point_name
 from fertui.tui import charts
 from fertui.tui.figures import (
     MARKS,
@@ -14,7 +15,6 @@ from fertui.tui.figures import (
     digits_for,
     estimated,
     number,
-    point_name,
     short_leaving,
     span,
     standing,
