@@ -50,9 +50,7 @@ def action_list(app: FertuiApp) -> View:
     found |= {binding.id: (binding, None) for binding in GLOBAL_KEYS if binding.id not in ("actions",)}
     keys = app.settings.keys
     options = [
-        Option(
-            binding.description, f"{binding.tooltip} ({name})", key_name(keys.get(name or "", binding.key)), name or ""
-        )
+        Option(binding.description, binding.tooltip, key_name(keys.get(name or "", binding.key)), name or "")
         for name, (binding, _) in found.items()
     ]
 

@@ -8,7 +8,7 @@ from typing import Any, ClassVar, NamedTuple
 from textual import events
 from textual.binding import Binding
 
-from fertui.tui.ink import BLANK, Line, Span, cells, filled, fit, line, literal, wrap
+from fertui.tui.ink import BLANK, Line, Span, barred, cells, fit, line, literal, width_of, wrap
 from fertui.tui.snapshot import Snapshot
 from fertui.tui.view import SCROLLING, View
 
@@ -44,7 +44,7 @@ class Chooser(View):
         self._narrows = narrows
         self._title, self._options, self._then = title, tuple(options), then
         self._typed = ""
-        self._row, self._head = 0, 2
+        self._row = 0
 
     @property
     def _left(self) -> list[Option]:
@@ -56,13 +56,17 @@ class Chooser(View):
         narrowed = f"  containing {self._typed!r}" if self._typed else "  type to narrow" if self._narrows else ""
         rows: list[Line] = [line(Span(f" {text}", "title")) for text in wrap(self._title, width - 2)]
         rows = [*rows[:-1], line(*rows[-1], Span(literal(narrowed), "faint")), BLANK]
-        self._head = len(rows)
+        head = len(rows)
         size = max((cells(each.name) for each in self._options), default=0)
         for index, each in enumerate(self._left):
-            rows.append(option_row(each, min(size, width - 20), index == self._row, width))
+            option = option_rows(each, min(size, width - 20), index == self._row, width)
+            if index == self._row:
+                self.reveal(len(rows) + len(option) - 1)
+                self.reveal(len(rows))
+            rows += option
         return (
             rows
-            if len(rows) > self._head
+            if len(rows) > head
             else [*rows, line(" ", Span("Nothing has that in it; Backspace widens the list.", "faint"))]
         )
 
@@ -82,7 +86,6 @@ class Chooser(View):
 
     def _move(self, row: int) -> None:
         self._row = max(0, min(row, len(self._left) - 1))
-        self.reveal(self._row + self._head)
         self.redraw()
 
     def action_up(self) -> None:
@@ -113,9 +116,9 @@ class Chooser(View):
             self._then(left[self._row].value or left[self._row].name)
 
 
-def option_row(option: Option, size: int, chosen: bool, width: int) -> Line:
-    """Key, name and meaning in one line, the chosen one as a bar with a mark."""
-    mark = "▸ " if chosen else "  "
-    row = line(mark, Span(fit(option.key, 6), "accent"), Span(fit(literal(option.name), size), "strong"), "  ")
-    row = filled(line(*row, literal(option.about)), width)
-    return (Span("".join(span.text for span in row), "chosen"),) if chosen else row
+def option_rows(option: Option, size: int, chosen: bool, width: int) -> list[Line]:
+    """Key, name and meaning, in as many lines as the meaning needs, the chosen one as a bar with a mark."""
+    head = line(Span(fit(option.key, 6), "accent"), Span(fit(literal(option.name), size), "strong"), "  ")
+    first, *more = wrap(literal(option.about), width - width_of(head) - 3)
+    rows = [line("▸ " if chosen else "  ", *head, first), *(line(" " * (width_of(head) + 2), text) for text in more)]
+    return [barred(row, width) for row in rows] if chosen else rows

@@ -93,6 +93,12 @@ def test_the_settings_file_can_name_every_binding() -> None:
     assert {binding.id for page, _ in PLACES.values() for binding in page.BINDINGS} <= known
 
 
+def test_the_page_about_files_names_every_action_with_its_key() -> None:
+    page = (Path(__file__).parents[2] / "docs" / "files.md").read_text(encoding="utf-8")
+    rows = (f"| `{binding.id}` | {binding.key.replace(',', ', ')} |" for binding in all_bindings())
+    assert [row for row in rows if row not in page] == []
+
+
 @pytest.mark.parametrize("number", range(1, 10))
 def test_no_key_of_a_view_is_bound_twice(number: int) -> None:
     keys = [key for binding in view_numbered(number).BINDINGS for key in binding.key.split(",")]

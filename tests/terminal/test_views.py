@@ -192,3 +192,11 @@ def test_a_stock_tank_with_a_long_name_keeps_it_and_its_columns(site: Path, open
     terminal.until_text("look at")
     terminal.press("8")
     terminal.until(lambda text: re.search(r"sulfate and phosphate \(B\) +1000 L 100x  ", text) is not None)
+
+
+def test_the_list_of_actions_cuts_no_word_and_shows_no_name_of_the_program(site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True, size=(60, 24))
+    terminal.until_text("look at")
+    terminal.press("6", "x")
+    listed = terminal.until_text("All actions").splitlines()[4:23]
+    assert [row for row in listed if row.endswith("~") or "plan." in row] == []
