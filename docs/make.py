@@ -65,23 +65,25 @@ def safety_page() -> str:
 def readme_page() -> str:
     """README.md with today and a plan as the demo gives them on a fixed morning."""
     from fertui.cli.views import plan, today
+    from fertui.workbench.carrying_out import acids_of
 
     with tempfile.TemporaryDirectory() as folder:
         bench = open_site(build_demo(Path(folder) / "demo", now=DEMO_MORNING))
         state = bench.today("north bay", DEMO_MORNING)
         made = bench.plan("north bay", at=DEMO_MORNING)
         shown = today.text(state, bench.site.timezone, "mmol/L")
-        planned = plan.text(made, bench.site.timezone, "mmol/L")
+        planned = plan.text(made, bench.site.timezone, "mmol/L", acids_of(made))
     page = README.read_text(encoding="utf-8")
     page = replaced(page, "today", "\n".join(_block(shown)))
     return replaced(page, "plan", "\n".join(_block(_beginning(planned))))
 
 
 def _beginning(planned: str) -> str:
-    """The answer of a plan up to its first caution; the sums and reasons after it the README does not need whole."""
+    """The answer of a plan, its first caution and what to do; sums and reasons the README does not need whole."""
     answer, mark, rest = planned.partition("READ BEFORE YOU START")
     first = rest.split("\n!!")
-    return f"{answer}{mark}{first[0]}\n!!{first[1]}\n..."
+    todo = rest.partition("\n\n")[2].partition("\n\nLimits that bind")[0]
+    return f"{answer}{mark}{first[0]}\n!!{first[1]}\n...\n\n{todo}\n..."
 
 
 def guide_with_answers() -> str:

@@ -219,7 +219,8 @@ def plan(options: Options) -> int:
     made = bench.plan(days=read_whole(options.days, "--days", 0, 60), **view, **_wishes(options))
     if options.sheet:
         _release(bench, made, bench.plan_page(made), options)
-    _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, read_unit(bench, options)))
+    held = () if options.json else _held_back(bench, made, options)
+    _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, read_unit(bench, options), held))
     return FINE if made.feasible else NO
 
 
@@ -269,16 +270,37 @@ def acid(options: Options) -> int:
     sheet = bench.acid(**view)
     page = bench.acid_page(sheet, view["loop"])
     _release(bench, sheet, page, options)
-    _show(options, lambda: acid_document(sheet), lambda: page.text)
+    held = () if options.json else _held_back(bench, sheet, options)
+    shown = bench.acid_page(sheet, view["loop"], released=False) if held else page
+    _show(options, lambda: acid_document(sheet), lambda: shown.text)
     return FINE if sheet.feasible else NO
+
+
+def _held_back(bench: Bench, made: Any, options: Options) -> tuple[tuple[str, float], ...]:
+    """Acids and lyes whose amounts a text keeps to itself: none once cautions were read and the label matches.
+
+    JSON holds them back from nobody: it is data, with the cautions beside it.
+    """
+    from fertui.workbench.carrying_out import acids_of
+
+    said = _label(options)
+    if said is not None:
+        bench.acknowledge(made, said)
+        return ()
+    return acids_of(made)
+
+
+def _label(options: Options) -> float | None:
+    """The strength read off a label, once the cautions were read."""
+    strength = None if options.label_strength is None else read_number(options.label_strength, "--label-strength")
+    return strength if options.cautions_read else None
 
 
 def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
     """Write a sheet to the file asked for; one with acid only after its cautions were read and its label matches."""
     if not options.sheet:
         return
-    strength = None if options.label_strength is None else read_number(options.label_strength, "--label-strength")
-    said = strength if options.cautions_read else None
+    said = _label(options)
     try:
         bench.acknowledge(made, said)
     except Refusal as no:

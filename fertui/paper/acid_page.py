@@ -14,11 +14,22 @@ if TYPE_CHECKING:
 SHORT_UNDER_L = 1.0
 
 
-def acid_page(sheet: AcidSheet, loop: str, site: str) -> Page:
-    """Acid for one volume of water; with the reason where there is no dose."""
+HOW_RELEASED = (
+    "the portions are held back: read the cautions above and the strength on the label, then ask again with "
+    "--cautions-read --label-strength PERCENT"
+)
+
+
+def acid_page(sheet: AcidSheet, loop: str, site: str, released: bool = True) -> Page:
+    """Acid for one volume of water; with the reason where there is no dose.
+
+    Not ``released``: cautions and bottle alone, until somebody has read them.
+    """
     lines = heading(f"Acid: {loop}", site, _water(sheet)) + read_first(sheet.cautions)
     if not sheet.feasible:
         lines += section("NO DOSE", folded(sheet.reason or "", "!! "))
+    if sheet.splits and not released:
+        return page([*lines, *_label(sheet), *section("HELD BACK", folded(HOW_RELEASED, "!! "))], {"loop": loop}, ())
     if sheet.splits:
         lines += _label(sheet) + section("HOW", listed(sheet.words)) + _splits(sheet)
         lines += section("WHAT IT FEEDS", listed(fed(sheet.adds_mmol_l, sheet.adds_mg_l)))

@@ -243,7 +243,7 @@ def _renewal(request: Request, dosed: Dosed) -> Renewal | None:
     """The renewal of the plan, or advice beside it where Na, Cl or NH4 is over its limit and the water is better."""
     situation, goal = request.situation, request.managed
     litres = _litres(dosed)
-    reaches = dosed.missed_pct <= REACHED_PCT
+    reaches, at = dosed.missed_pct <= REACHED_PCT, situation.at if litres > 0.0 else None
     if litres <= 0.0:
         part = smallest_fraction(dosed.end, refill_of(request), goal)
         over = set(excess_of(dosed.end, goal)) & set(LIMITED)
@@ -254,7 +254,7 @@ def _renewal(request: Request, dosed: Dosed) -> Renewal | None:
     return renewal_of(
         situation, "tank", litres, refill_of(request), goal, request.year_so_far_kg_n,
         situation.composition(situation.managed), _days_to_drink(situation, float(nitrogen)), reaches,
-    )  # fmt: skip
+    )._replace(at=at)  # fmt: skip
 
 
 def _days_to_drink(situation: Situation, nitrogen: float) -> float | None:

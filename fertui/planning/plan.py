@@ -60,7 +60,8 @@ def plan(
     points = ("tank", situation.managed) if situation.loop.layout == "shared-tank" else ("feed", situation.managed)
     request = Request(
         situation, goals_of(situation, wishes, tuple(dict.fromkeys(points))), wishes, materials_of(situation, wishes),
-        runs, Solver(), entries, situation.points, bool(estimate.record.observations), year_kg_n(estimate, entries),
+        runs, Solver(), entries, situation.points, not estimate.analyses and bool(estimate.record.observations),
+        year_kg_n(estimate, entries),
     )  # fmt: skip
     if situation.loop.layout == "shared-tank":
         return hand_plan(request)

@@ -79,8 +79,8 @@ class Request(NamedTuple):
     solver: Solver
     entries: Sequence[Entry]
     before: Mapping[str, PointState]
-    observed: bool = True
-    """Whether anything was ever read or analysed in the loop; if not it is planned for as just filled."""
+    guessed: bool = False
+    """Whether the loop was read but never analysed: any dose would be a guess. A tank not even read is just filled."""
     year_so_far_kg_n: float = 0.0
     """What the loop has discharged this calendar year [kg N]."""
 
@@ -205,8 +205,10 @@ def vague(request: Request) -> str | None:
     fresh = days_old is not None and days_old <= FRESH_DAYS
     if point is None or request.wishes.days == 0 or request.managed.named or fresh:
         return None
-    if days_old is None and request.observed and request.unknown_water:
-        return f"take a sample first: neither the {NAMES[request.situation.managed]} nor its water was ever analysed"
+    if request.guessed:
+        also = ", nor its water" if request.unknown_water else ""
+        name = NAMES[request.situation.managed]
+        return f"take a sample first: the {name} was never analysed{also}; any dose would be a guess"
     wide = None
     for ion, low, high in zip(SHARED, request.managed.share_low, request.managed.share_high, strict=True):
         state = point.ions[ion].share_pct if ion in point.ions else None

@@ -82,6 +82,8 @@ class Renewal(NamedTuple):
     year_kg_n: float
     excess: Mapping[str, float]
     options: tuple[RenewalOption, ...]
+    at: datetime | None = None
+    """When a plan renews: before anything it weighs in at that time; None where it is advice beside a plan."""
 
 
 class Binding(NamedTuple):

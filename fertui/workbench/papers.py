@@ -111,13 +111,13 @@ class Papers(Answers):
 
         chosen = self.loop(loop)
         carried = running_recipe(self.site, chosen, self.entries()).source
-        return stock_page(sheet, chosen.name, self.site.name, carried)
+        return stock_page(sheet, chosen.name, self.site.name, carried, chosen.layout)
 
-    def acid_page(self, sheet: AcidSheet, loop: str | None = None) -> Page:
-        """The acid sheet as a page."""
+    def acid_page(self, sheet: AcidSheet, loop: str | None = None, released: bool = True) -> Page:
+        """The acid sheet as a page; its portions only where it is released."""
         from fertui.paper.acid_page import acid_page
 
-        return acid_page(sheet, self.loop(loop).name, self.site.name)
+        return acid_page(sheet, self.loop(loop).name, self.site.name, released)
 
     def acknowledge(self, made: Plan | AcidSheet | StockSheet, strength_pct: float | None) -> None:
         """Refuse unless the strength read off the label is the one a plan or sheet with acid counts on."""

@@ -85,3 +85,13 @@ def test_a_logged_analysis_of_the_water_ends_it(fresh: Path, capsys: pytest.Capt
     for command in ("today", "forecast", "plan", "stock", "acid"):
         _, out = told(capsys, command, fresh, "--at", AT)
         assert "never analysed" not in flat(out), command
+
+
+def test_a_tank_that_was_read_and_never_analysed_gets_no_weighings(
+    fresh: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    told(capsys, "record", fresh, "reading", "point=tank", "at=2026-07-01T07:00+00:00", "by=MK", "EC=2.5", "pH=5.9")
+    code, out = told(capsys, "plan", fresh, "--at", AT)
+    assert code == 1
+    assert "take a sample first: the tank was never analysed, nor its water" in flat(out)
+    assert "Weigh and dissolve" not in out

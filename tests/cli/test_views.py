@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import csv
 import io
+import json
+import re
 from pathlib import Path
 
 import pytest
@@ -118,3 +120,39 @@ def test_an_acid_sheet_is_released_by_cautions_read_and_the_strength_on_the_labe
     head, *rows = csv.reader(io.StringIO(sheet.read_text()))
     assert head[:4] == ["split", "acid", "strength [%]", "litres [L]"]
     assert len(rows) >= 3
+
+
+def test_a_plan_on_the_command_line_holds_acid_back_until_its_cautions_are_read(
+    capsys: pytest.CaptureFixture[str], demo_once: Path
+) -> None:
+    asked = ("plan", str(demo_once), "--loop", "north bay", "--at", AT)
+    code, held, _ = printed(capsys, *asked)
+    assert "nitric acid 38: held back, see above" in held
+    assert "--cautions-read --label-strength PERCENT" in " ".join(held.split())
+    assert held.index("READ BEFORE YOU START") < held.index("Next recipe")
+    assert re.search(r"nitric acid 38: [\d.]+ L", held) is None
+    assert printed(capsys, *asked, "--cautions-read")[1] == held
+    assert printed(capsys, *asked, "--cautions-read", "--label-strength", "60")[0] == 2
+    released, shown, _ = printed(capsys, *asked, "--cautions-read", "--label-strength", "38")
+    assert released == code
+    assert re.search(r"nitric acid 38: [\d.]+ L", shown)
+    assert "held back" not in shown
+
+
+def test_an_acid_page_on_the_command_line_shows_its_portions_to_who_has_read_the_cautions(
+    capsys: pytest.CaptureFixture[str], demo_once: Path
+) -> None:
+    asked = ("acid", str(demo_once), "--loop", "north bay")
+    _, held, _ = printed(capsys, *asked)
+    assert "HELD BACK" in held
+    assert "slowly into the moving water" not in held
+    _, shown, _ = printed(capsys, *asked, "--cautions-read", "--label-strength", "38")
+    assert "slowly into the moving water" in " ".join(shown.split())
+
+
+def test_json_carries_acid_with_its_cautions_beside_it(capsys: pytest.CaptureFixture[str], demo_once: Path) -> None:
+    _, out, _ = printed(capsys, "acid", str(demo_once), "--loop", "north bay", "--json")
+    told = json.loads(out)
+    assert told["splits"]
+    assert told["splits"][0]["litres"] > 0
+    assert told["cautions"][0]["code"] == "sds-first"

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from fertui.cli.views import forecast, plan, today
 from fertui.workbench import Bench
+from fertui.workbench.carrying_out import acids_of
 
 RULE = "-" * 78
 
@@ -18,6 +19,6 @@ def text(bench: Bench) -> str:
         parts += [
             today.text(state, timezone, unit),
             forecast.text(ahead, bench.next_sample(ahead, name), name, state.managed_point, timezone, unit),
-            plan.text(bench.plan(name), timezone, unit),
+            plan.text(planned := bench.plan(name), timezone, unit, acids_of(planned)),
         ]
     return f"\n{RULE}\n".join(parts)

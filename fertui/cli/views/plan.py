@@ -80,8 +80,8 @@ def _recipe(plan: Plan, timezone: str, unit: str, held: Held) -> list[str]:
             lines += ["", f"{tank.name} ({tank.content}), {tank.litres:.0f} L, 1:{tank.dilution:.0f}"]
             names = {name for name, _ in held}
             for each in tank.salts:
-                amount = "held back, see above" if each.salt in names else each.words
-                lines += folded(f"{each.salt}: {amount}", "  ")
+                how_much = "held back, see above" if each.salt in names else each.words
+                lines += folded(f"{each.salt}: {how_much}", "  ")
     return lines
 
 
