@@ -36,7 +36,16 @@ def readings(look: Look) -> Iterator[Notice]:
     when = f"{look.local(given[-1].at):%a %-d %b %H:%M}"
     fades = " What is shown rests on the model alone since." if hours > SILENT_HOURS else ""
     yield Notice("log_missing", WATCH if hours > SILENT_HOURS else NOTE,
-                 f"No reading since {when}, {hours:.0f} h ago.{fades}", "r")  # fmt: skip
+                 f"No reading since {when}, {_ago(hours)} ago.{fades}", "r")  # fmt: skip
+
+
+def _ago(hours: float) -> str:
+    """Hours as people say them.
+
+    >>> _ago(30.0), _ago(200.0)
+    ('30 h', '8 days')
+    """
+    return f"{hours:.0f} h" if hours < 72.0 else f"{hours / 24.0:.0f} days"
 
 
 def amounts(look: Look) -> Iterator[Notice]:
