@@ -41,15 +41,18 @@ def draw_accepted(items: Sequence[PlanItem], chosen: int, local: Local, width: i
     for index, item in enumerate(items):
         how_much = "" if item.amount is None else f"{item.amount:g} {item.unit}"
         where = f" into {item.target}" if item.target else ""
-        state = f"✓ done in {item.done_number}" if item.done_number is not None else "· to do"
-        words = f"{local(item.at):%a %-d %b}  {how_much} {item.what}{where}"
+        words = f"{local(item.at):%a %-d %b %H:%M}  {how_much} {item.what}{where}"
         row = line(
-            Span(" ▸ " if index == chosen else "   ", "accent"),
-            fit(literal(words), width - 24),
-            Span(state, "good" if item.done_number else "watch"),
+            Span(" ▸ " if index == chosen else "   ", "accent"), fit(literal(words), width - 24), _done_so_far(item)
         )
         rows.append(barred(row, width) if index == chosen else row)
     return rows
+
+
+def _done_so_far(item: PlanItem) -> Span:
+    if item.state == "partly done":
+        return Span(f"{MARKS['watch']} {item.done_amount:g} of {item.amount:g} {item.unit} done", "watch")
+    return Span(f"✓ done in {item.done_number}", "good") if item.state == "done" else Span("· to do", "watch")
 
 
 def draw_plan(
@@ -138,7 +141,7 @@ def _doses(plan: Plan, local: Local, width: int) -> list[Line]:
     rows: list[Line] = []
     for step in plan.steps:
         where = step.target.removeprefix("tank:")
-        words = f"{local(step.at):%a %-d %b}  {step.kg:g} kg {step.salt} ({step.formula}) into {where}"
+        words = f"{local(step.at):%a %-d %b %H:%M}  {step.kg:g} kg {step.salt} ({step.formula}) into {where}"
         rows += _labelled("weigh", "accent", words, width)
     return rows
 
@@ -149,7 +152,7 @@ def _acid(plan: Plan, held: bool, local: Local, width: int) -> list[Line]:
     rows: list[Line] = []
     for split in plan.acid:
         words = (
-            f"{local(split.at):%a %-d %b}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, wait "
+            f"{local(split.at):%a %-d %b %H:%M}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, wait "
             f"{split.wait_min:g} min, retest for pH {number(split.retest_ph)}, stop at {number(split.stop_ph)}"
         )
         rows += _labelled("acid", "act", words, width)

@@ -85,7 +85,7 @@ def in_words(item: PlanItem, timezone: str) -> str:
     much = "" if item.amount is None else f"{item.amount:g} {item.unit} "
     into = f" into {item.target}" if item.target else ""
     partly = f"; partly done: {item.done_amount:g} {item.unit}" if item.state == "partly done" else ""
-    return f"{local:%a} {local.day} {local:%b} {much}{item.what}{into} (plan {item.number}){partly}"
+    return f"{local:%a} {local.day} {local:%b %H:%M} {much}{item.what}{into} (plan {item.number}){partly}"
 
 
 def _is_step(entry: Entry) -> bool:

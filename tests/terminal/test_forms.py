@@ -134,6 +134,24 @@ def test_plan_accepted_and_a_step_marked_done(site: Path, counting: Counted) -> 
     assert (acid.number_of("litres"), acid.text_of("cautions")) == (0.42, "acknowledged")
 
 
+def test_a_step_done_in_part_says_what_is_left_and_asks_for_that(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("n", "p")
+    terminal.until_text("with the plan")
+    terminal.press("y", "enter", "38", "enter")
+    give_initials(terminal)
+    terminal.until_text("logged as")
+    terminal.press("enter")
+    terminal.until_text("done with how much, L? 0.42")
+    terminal.press("0.2", "enter")
+    assert "! 0.2 of 0.42 L done" in terminal.until_text("0.2 of 0.42")
+    terminal.press("enter")
+    terminal.until_text("done with how much more, L? 0.22")
+    terminal.press("enter")
+    terminal.until_text("✓ done in")
+    assert [entry.number_of("litres") for entry in fresh(site, "acid")] == [0.2, 0.22]
+
+
 def test_a_plan_with_acid_is_held_back_until_the_label_fits(site: Path, counting: Counted) -> None:
     terminal = counting.terminal
     terminal.press("n", "p")

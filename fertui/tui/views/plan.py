@@ -101,7 +101,7 @@ class PlanView(View):
     def items(self, snapshot: Snapshot) -> list[PlanItem]:
         """Accepted steps, those still to do first."""
         found = snapshot.get(Ask("open_plans", snapshot.loop)) or ()
-        return sorted(found, key=lambda item: (item.done_number is not None, item.at, item.number))[:12]
+        return sorted(found, key=lambda item: (item.state == "done", item.at, item.number))[:12]
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """Accepted steps, then the plan."""
@@ -215,7 +215,7 @@ class PlanView(View):
         item = items[self.row] if items else None
         if item is None:
             self.fertui.say("No step is accepted yet: y accepts the plan.", "watch")
-        elif item.done_number is not None:
+        elif item.state == "done":
             self.fertui.say(f"Done already, in entry {item.done_number}.", "watch")
             return None
         return item
@@ -239,7 +239,9 @@ class PlanView(View):
         if item.amount is None:
             done("")
         else:
-            self.fertui.ask(f"{item.what}: done with how much, {item.unit}?", done, f"{item.amount:g}")
+            more = " more" if item.done_amount else ""
+            left = item.amount - (item.done_amount or 0.0)
+            self.fertui.ask(f"{item.what}: done with how much{more}, {item.unit}?", done, f"{left:.4g}")
 
     def action_not_done(self) -> None:
         """Ask why it was not done."""
