@@ -16,8 +16,12 @@ from fertui.planning.programme import Aim, Region, Solver, lexicographic
 from fertui.planning.shelf import Material
 
 SPECIES = IONS + MICRONUTRIENTS
-FLOOR: Array = np.array([1.0, 1.0, 0.5, 2.0, 0.5, 1.0, 2.0, 1.0, 0.5, 0.5, 5.0, 5.0, 2.0, 5.0, 0.5, 0.5, 500.0])
-"""Misfit is counted in parts of what is wanted, but never of less than this [mmol/L, umol/L]."""
+FLOOR: Array = np.array([1.0, 1.0, 0.5, 2.0, 1.5, 1.0, 2.0, 1.0, 0.5, 0.5, 5.0, 5.0, 2.0, 5.0, 0.5, 0.5, 500.0])
+"""Misfit is counted in parts of what is wanted, but never of less than this [mmol/L, umol/L].
+
+NH4 by the 1.5 that a feed may have (Nutrient Solutions for Greenhouse Crops 2016, second-hand): what a calcium nitrate
+brings of it is no reason to leave out the calcium.
+"""
 
 IMPORTANCE: Array = np.where(np.isin(SPECIES, ("SO4", "Cl", "Na")), 0.5, 1.0)
 """Sulfate, chloride and sodium give way first: a crop bears the widest range of them (common practice, no source)."""

@@ -102,6 +102,8 @@ def misfits(composed: Composed, needed: Needed) -> list[str]:
             )
         elif abs(part) > MISSED and name != "HCO3" and (name in IONS or composed.brought[SPECIES.index(name)] > 0):
             notices.append(f"{name}: {abs(off):.2f} {'too much' if off > 0 else 'missing'} with these supplies")
+            if name == "NH4" and off > 0:
+                notices[-1] += "; a calcium nitrate without ammonium would bring none"
     return notices
 
 

@@ -47,6 +47,22 @@ def test_hoagland_at_100_times_is_molar_mass_times_mmol() -> None:
     assert kg(sheet_of()) == pytest.approx(expected, abs=0.06)
 
 
+def test_ammonium_of_the_double_salt_is_no_reason_to_leave_out_the_calcium() -> None:
+    pepper = Composition({"K": 7.8, "Ca": 4.5, "Mg": 1.5, "NH4": 0.5, "NO3": 15.5, "SO4": 1.75, "H2PO4": 1.25})
+    names = ("calcium nitrate double salt", *SALTS[1:], "magnesium nitrate hexahydrate", "potassium sulfate")
+    sheet = sheet_of(recipe=pepper, supplies=tuple(Supply(name, name) for name in names))
+    assert sheet.ions_mmol_l["Ca"] > 0.93 * 4.5
+    # 5Ca(NO3)2.NH4NO3.10H2O: a fifth of its calcium; a feed may have 1.0-1.5 (Nutrient Solutions 2016, second-hand)
+    assert sheet.ions_mmol_l["NH4"] == pytest.approx(sheet.ions_mmol_l["Ca"] / 5.0, rel=0.02)
+    assert any("NH4" in each and "without ammonium" in each for each in sheet.notices)
+
+
+def test_a_water_that_nobody_analysed_is_said_on_the_sheet() -> None:
+    assert any("never analysed" in each for each in sheet_of().notices)
+    pure = Composition(dict.fromkeys(("Ca", "Na"), 0.0))
+    assert not any("never analysed" in each for each in sheet_of(water=pure).notices)
+
+
 def test_both_tanks_weigh_alike_through_potassium_nitrate() -> None:
     # calcium nitrate alone (118 kg) outweighs all else (113 kg): all potassium nitrate goes with the sulfates
     sheet = sheet_of()
