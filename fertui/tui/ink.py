@@ -120,6 +120,7 @@ def wrap(text: str, width: int) -> list[str]:
     if text.isascii():
         return wrap_words(text, max(width, 1), break_on_hyphens=False) or [""]
     lines: list[str] = [""]
+    width = max(width, 2)  # a wide character takes two columns wherever it stands
     for word in text.split():
         while cells(word) > width:
             head = cut(word, width, "")

@@ -20,7 +20,7 @@ if TYPE_CHECKING:
 
 def offer(draft: Draft, form: Form, now: datetime) -> Chooser:
     """The list with the two ways; leaving it leaves the form empty and the draft kept."""
-    who = f"by {draft.by}" if draft.by else "by someone who gave no initials"
+    who = f"by {literal(draft.by)}" if draft.by else "by someone who gave no initials"
     when = age(draft.at, max(now, draft.at))
     spec = form.spec_in(draft.unit) if form.spec.unit and draft.unit in UNITS else form.spec
     title = f"A half-filled form {who}, {when} ago: {spec.title}, {literal(typed(spec, draft.texts))}"
