@@ -2,29 +2,47 @@
 
 from __future__ import annotations
 
+import json
+import re
+from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
+from conftest import Opened
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from pseudo_terminal import PseudoTerminal
+from test_keys import FORMS
 
+from fertui.tui.drafts import Draft, Drafts
 from fertui.tui.ink import cells, cut, filled, fit, line, literal, wrap
 from fertui.tui.pen import PLAIN, change, styled
 from fertui.tui.slate import Slate
 from fertui.workbench import open_site
 
-pytestmark = pytest.mark.long  # every key and random walks: minutes of waiting for screens
-
 NASTY = {
     "markup": "[red]not red[/red] [@click=app.bell]x[/]", "wide": "日本語のメモ 温室",
     "combining": "e\u0301 a\u0300\u0316 z\u0335", "bidi": "abc \u202eevil\u202c", "long": "x" * 10_000,
-    "lines": "one\ntwo\r\nthree",
-    "emoji": "👩‍🌾 ok ☀️",
+    "lines": "one\ntwo\r\nthree", "emoji": "👩‍🌾 ok ☀️",
+    "escapes": "a\x1b[2J\x1b[31mred\x1b]0;title\x07\x9b5A\x1b[?1049l z",
 }  # fmt: skip
+KEPT = [name for name in NASTY if name != "escapes"]
+"""What a logbook takes: it refuses control characters."""
+VIEWS = "123456789"
 
 
-@pytest.mark.parametrize("name", NASTY)
+def frame_stands(terminal: PseudoTerminal, site_name: str = "Demo nursery") -> None:
+    """Header, view names and keys are where they belong, and no text has coloured or moved anything."""
+    terminal.settle()
+    rows = terminal.screen.display
+    assert rows[0].startswith(f" {site_name}"), terminal.text
+    assert re.search(r"\d\d:\d\d( +\w+)? *$", rows[0]), terminal.text
+    assert re.match(r" ?1 ?Today", rows[1]), terminal.text
+    assert rows[23].strip(), terminal.text
+    assert "fault of its own" not in terminal.text
+
+
+@pytest.mark.parametrize("name", KEPT)
 def test_a_note_is_shown_literally_and_the_frame_stands(
     shared_site: Path, shared_terminal: PseudoTerminal, name: str
 ) -> None:
@@ -33,11 +51,71 @@ def test_a_note_is_shown_literally_and_the_frame_stands(
     terminal.press("7")
     terminal.until_text(f"▸{number}")
     terminal.press("enter")
-    rows = terminal.until_text("written down").splitlines()
-    assert rows[0].startswith(" Demo nursery")
-    assert "Esc back" in rows[-1]
+    terminal.until_text("written down")
+    frame_stands(terminal)
+    assert "Esc back" in terminal.screen.display[23]
     if name == "markup":
         assert "[red]not red[/red]" in terminal.text
+
+
+@pytest.mark.parametrize("name", KEPT)
+def test_a_note_with_any_kind_of_entry_leaves_every_view_whole(
+    shared_site: Path, shared_terminal: PseudoTerminal, name: str
+) -> None:
+    """Beside a copy of the last entry of every kind there is."""
+    bench, terminal = open_site(shared_site), shared_terminal
+    for kind in ("reading", "analysis", "water", "dose", "stock", "batch", "setpoint", "acid", "bleed", "crop"):
+        last = bench.history(kind=kind)[-1]
+        texts = {value.name: value.text for value in last.values} | ({"point": last.point} if last.point else {})
+        number = bench.record(kind, {**texts, "by": "MK", "note": NASTY[name]}, last.loop).number
+    terminal.press("7")
+    terminal.until_text(f"▸{number}")
+    for view in VIEWS:
+        terminal.press(view)
+        frame_stands(terminal)
+
+
+@pytest.mark.parametrize("kind", FORMS)
+def test_anything_can_be_pasted_into_every_field_of_a_form(
+    shared_site: Path, shared_terminal: PseudoTerminal, kind: str
+) -> None:
+    terminal = shared_terminal
+    (shared_site / "drafts.json").unlink(missing_ok=True)
+    terminal.press("1", *FORMS[kind])
+    terminal.until_text(", north bay")
+    for text in NASTY.values():
+        terminal.type(f"\x1b[200~{text}\x1b[201~".encode())
+        frame_stands(terminal)
+        terminal.press("down")
+    terminal.press("esc", "esc")
+    frame_stands(terminal)
+
+
+@pytest.mark.parametrize("name", NASTY)
+def test_a_draft_with_anything_in_it_is_offered_literally(site: Path, open_terminal: Opened, name: str) -> None:
+    Drafts(site).keep("note", "north bay", Draft(NASTY[name], datetime.now(UTC), (NASTY[name], "")))
+    terminal = open_terminal(site)
+    terminal.until_text("more to look at")
+    terminal.press("e", "note", "enter")
+    terminal.until_text("half-filled")
+    frame_stands(terminal)
+    terminal.press("enter")
+    frame_stands(terminal)
+
+
+@pytest.mark.parametrize("name", NASTY)
+def test_names_in_the_site_file_are_shown_literally_or_refused(site: Path, open_terminal: Opened, name: str) -> None:
+    path = site / "site.toml"
+    written = json.dumps(NASTY[name], ensure_ascii=False)[1:-1].replace("\x9b", "\\u009b")
+    text = path.read_text(encoding="utf-8")
+    for known in ("Demo nursery", "own setting: warm season", "invented analysis", "drain store"):
+        text = text.replace(known, f"{known} {written}")
+    path.write_text(text, encoding="utf-8")
+    terminal = open_terminal(site)
+    shown = terminal.until(lambda text: "to look at" in text or "cannot be opened" in text)
+    for view in VIEWS:
+        frame_stands(terminal, "nursery" if "cannot be opened" in shown else "Demo nursery")
+        terminal.press(view)
 
 
 @given(st.text(max_size=60), st.integers(1, 40))
