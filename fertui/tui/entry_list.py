@@ -70,6 +70,7 @@ class EntryList(View):
         self.heading = title
         self.wanted = Wanted(loop, kinds, start=start, end=end)
         self.row = 0
+        self._under_bar = (0, False)
 
     @classmethod
     def of_day(cls, day: date, loop: str) -> EntryList:
@@ -89,14 +90,14 @@ class EntryList(View):
         found = [entry for entry in snapshot.get(Ask("history")) or () if self.wanted.takes(entry)]
         if self.day is not None:
             found = [entry for entry in found if self.fertui.local(entry.at).date() == self.day]
-        return sorted(found, key=lambda entry: (entry.at, entry.number or 0), reverse=True)
+        return sorted(found, key=when_known, reverse=True)
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """A heading and one line an entry; a struck one is followed by why."""
         if snapshot.get(Ask("history")) is None:
             return waiting(snapshot, Ask("history"), "the logbook", width)
         entries, struck = self.entries(snapshot), struck_by(snapshot.get(Ask("history")))
-        self.row = max(0, min(self.row, len(entries) - 1))
+        self._keep_bar(entries, struck)
         rows = [
             line(Span(f" {literal(self.heading)}", "title"), Span(f"   {len(entries)} entries, newest first", "faint"))
         ]
@@ -125,13 +126,24 @@ class EntryList(View):
         several = not self.wanted.loop and len(self.fertui.snapshot.loops) > 1
         return f"{entry.loop}: " if several and entry.loop else ""
 
+    def _keep_bar(self, entries: Sequence[Entry], struck: Mapping[int, Entry]) -> None:
+        """The bar stays on its entry when others come above it, and goes on to the one that corrects it; at the top it
+        stays there, on the newest."""
+        number, was_struck = self._under_bar
+        if number in struck and not was_struck and not struck[number].void:
+            number = struck[number].number or 0
+        row = next((row for row, entry in enumerate(entries) if entry.number == number), self.row)
+        self.row = max(0, min(row, len(entries) - 1))
+        number = (entries[self.row].number or 0) if self.row else 0
+        self._under_bar = number, number in struck
+
     def chosen(self) -> Entry | None:
         """The entry under the bar."""
         entries = self.entries(self.fertui.snapshot)
         return entries[self.row] if entries else None
 
     def _go(self, row: int) -> None:
-        self.row = max(0, row)
+        self.row, self._under_bar = max(0, row), (0, False)
         self.redraw()
 
     def action_up(self) -> None:
@@ -172,6 +184,11 @@ class EntryList(View):
             self.fertui.strike(entry)
 
 
+def when_known(entry: Entry) -> tuple[datetime, int]:
+    """By what an entry is put in order: when it happened; what is yet to come, when it was written down."""
+    return min(entry.at, entry.entered), entry.number or 0
+
+
 def struck_by(history: Sequence[Entry]) -> Mapping[int, Entry]:
     """For every entry that was corrected or struck, the last entry that did it."""
     return {entry.supersedes: entry for entry in history if entry.supersedes is not None}
@@ -184,12 +201,12 @@ def said(entry: Entry, by: Entry | None = None) -> str:
     """An entry in one line: point, values as written, note; for a struck one who did it and why."""
     words = [point_name(entry.point)] if entry.point else []
     if entry.kind == "site":
-        words.append("site.toml changed")
+        words.append(entry.note or "site.toml changed")
     else:
         words += list(_values(entry))
     if entry.supersedes is not None:
         words.insert(0, f"{'strikes' if entry.void else 'corrects'} {entry.supersedes} ({entry.why})")
-    if entry.note:
+    if entry.note and entry.kind != "site":
         words.append(f"- {entry.note}")
     if entry.doubtful:
         words.append(f"doubtful: {entry.doubtful}")

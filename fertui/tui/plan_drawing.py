@@ -152,8 +152,8 @@ def _acid(plan: Plan, held: bool, local: Local, width: int) -> list[Line]:
     rows: list[Line] = []
     for split in plan.acid:
         words = (
-            f"{local(split.at):%a %-d %b %H:%M}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, wait "
-            f"{split.wait_min:g} min, retest for pH {number(split.retest_ph)}, stop at {number(split.stop_ph)}"
+            f"{local(split.at):%a %-d %b %H:%M}  {number(split.litres, 2)} L {split.acid} of {split.strength_pct:g} %, "
+            f"wait {split.wait_min:g} min, retest for pH {number(split.retest_ph)}, stop at {number(split.stop_ph)}"
         )
         rows += _labelled("acid", "act", words, width)
     return rows

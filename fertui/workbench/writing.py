@@ -107,13 +107,16 @@ class Writing(Answers):
 
     def change_site(self, key: str, text: str, by: str) -> Entry:
         """Change one value of the site file as it is now, keep the old file, and log the new one whole."""
-        from fertui.site.edit import changed
+        from fertui.site.edit import changed, rows
         from fertui.site.files import write_site
 
-        site = changed(self.read_site_again(), key, text, source=f"{by}, {now():%Y-%m-%d}")
+        before = self.read_site_again()
+        old = next((row.text for row in rows(before) if row.key == key), "")
+        site = changed(before, key, text, source=f"{by}, {now():%Y-%m-%d}")
         path = write_site(site, self.folder, datetime.now(UTC))
         self.__dict__.pop("site", None)
-        return self.record("site", {"text": path.read_text(encoding="utf-8"), "by": by})
+        words = {"text": path.read_text(encoding="utf-8"), "note": f"{key}: {old or 'nothing'} -> {text or 'nothing'}"}
+        return self.record("site", {**words, "by": by})
 
     def accept_plan(self, plan: Plan, by: str) -> tuple[Entry, ...]:
         """Log what is intended: one plan entry a step, all or none."""

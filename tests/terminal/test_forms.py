@@ -488,3 +488,27 @@ def test_a_field_that_may_not_stay_empty_is_gone_to(counting: Counted) -> None:
     counting.terminal.press("m", "tab", "88", "f2")
     counting.terminal.until_text("mixed to: this cannot be left empty.")
     assert "▸ mixed to" in counting.terminal.text
+
+
+def test_the_bar_of_the_logbook_follows_the_entry_that_was_corrected(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    number = open_site(site).record("note", {"text": "first", "by": "RV", "at": "yesterday 16:05"}, "north bay").number
+    terminal.press("7", "down", "down", "down")
+    terminal.until_text(f"▸{number}")
+    terminal.press("c")
+    terminal.until_text(f"Correct {number}")
+    terminal.press("second", "f2")
+    terminal.until_text("Why is entry")
+    terminal.press("slip", "enter")
+    give_initials(terminal)
+    terminal.until_text(f"▸{fresh(site, 'note')[-1].number}")
+
+
+def test_what_is_planned_for_next_week_does_not_stand_above_what_happened_today(site: Path, counting: Counted) -> None:
+    bench = open_site(site)
+    planned = bench.record("plan", {"bleed": "300", "by": "RV", "at": "2099-12-24 09:00"}, "north bay").number
+    today = bench.record("note", {"text": "today", "by": "RV"}, "north bay").number
+    counting.terminal.press("7")
+    rows = counting.terminal.until_text(f"{today} ").splitlines()
+    [first, second] = [row for row in rows if re.match(rf" *▸?({today}|{planned}) ", row)]
+    assert str(today) in first.split()[0]

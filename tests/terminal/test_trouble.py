@@ -113,3 +113,21 @@ def test_a_site_that_cannot_be_opened_says_what_is_wrong(site: Path, open_termin
     assert "site.toml" in shown.until_text("The site cannot be opened").replace("\n ", "")
     shown.press("q")
     assert shown.wait() == 0
+
+
+def test_a_value_of_the_site_is_changed_only_once_old_and_new_were_looked_at(
+    site: Path, open_today: PseudoTerminal
+) -> None:
+    terminal = open_today
+    before = (site / "site.toml").read_text(encoding="utf-8")
+    terminal.press("9", "/", "timezone", "enter", "enter", "Europe/Paris", "enter")
+    terminal.until_text("Europe/Rome -> Europe/Paris: y writes it")
+    terminal.press("2.6", "enter")
+    terminal.until_text("Nothing was changed.")
+    assert (site / "site.toml").read_text(encoding="utf-8") == before
+    terminal.press("enter", "Europe/Paris", "enter", "y", "enter")
+    give_initials(terminal)
+    terminal.until_text("logged as")
+    assert open_site(site).site.timezone == "Europe/Paris"
+    terminal.press("7")
+    terminal.until_text("site.timezone: Europe/Rome -> Europ")

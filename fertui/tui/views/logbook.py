@@ -36,7 +36,7 @@ class LogbookView(EntryList, inherit_bindings=False):
         super().__init__("All entries")
 
     def _filter(self, wanted: Wanted) -> None:
-        self.wanted, self.row = wanted, 0
+        self.wanted, self.row, self._under_bar = wanted, 0, (0, False)
         words = [
             "since you looked" if wanted.numbers else "",
             *wanted.kinds,

@@ -149,13 +149,21 @@ class SiteView(View):
 
         def change(text: str) -> None:
             if text != row.text:
-                self.fertui.with_initials(
-                    lambda by: self.fertui.clerk(
-                        lambda bench: _change(bench, key, text, by), self._changed, "changing the site"
-                    )
-                )
+                asked = f"{cut(row.text or 'nothing', 20)} -> {cut(text or 'nothing', 20)}: y writes it"
+                self.fertui.ask(asked, lambda answer: self._write(key, text, answer))
 
         self.fertui.ask(f"{cut(key, 40)} =", change, row.text)
+
+    def _write(self, key: str, text: str, answer: str) -> None:
+        """Write a change once it was looked at: what is typed without looking must not change a site."""
+        if answer.lower() not in ("y", "yes"):
+            self.fertui.say("Nothing was changed.", "watch")
+            return
+
+        def signed(by: str) -> None:
+            self.fertui.clerk(lambda bench: _change(bench, key, text, by), self._changed, "changing the site")
+
+        self.fertui.with_initials(signed)
 
     def _changed(self, answer: Answer) -> None:
         if answer.value is None:
