@@ -15,7 +15,7 @@ from fertui.estimate.assimilation import Estimate
 from fertui.estimate.drives import Holding, beyond, carried, leaning
 from fertui.estimate.noise import normals
 from fertui.estimate.scenario import Scenario
-from fertui.estimate.standing import begun_from
+from fertui.estimate.standing import begun_from, shared_store
 from fertui.estimate.unanalysed import filled_up
 from fertui.estimate.walk import grid_of
 from fertui.estimate.waters import DRAINED, lately
@@ -75,7 +75,7 @@ class _Builder:
         self.record, self.setting, self.loop = estimate.record, estimate.setting, estimate.loop
         self.now, self.end = self.record.end, self.record.end + days
         self.plans = [_Planned(entry, self.record.time(entry.at), self._until(entry)) for entry in self.record.plans]
-        self.assumed: list[str] = list(begun_from(estimate))
+        self.assumed: list[str] = [*shared_store(self.record.site, self.loop), *begun_from(estimate)]
         self.holding = Holding(self.record, self.setting)
         self.past = lately(self.record, self.setting)
         self.draw = normals(estimate.seed, self.loop.name, f"ahead {estimate.at.date()}", estimate.members, 12)

@@ -115,7 +115,8 @@ class Estimate:
     @property
     def assumed(self) -> tuple[str, ...]:
         """What the record did not say and what was taken instead."""
-        return (*self.record.assumed, *self.setting.assumed, *self.drives.assumed, *begun_from(self))
+        shared = shared_store(self.site, self.loop)
+        return (*self.record.assumed, *self.setting.assumed, *shared, *self.drives.assumed, *begun_from(self))
 
     @property
     def unanalysed_water(self) -> str | None:
@@ -218,3 +219,11 @@ def begun_from(estimate: Estimate) -> tuple[str, ...]:
         return ()
     start = "its source water" if estimate.loop.layout == "shared-tank" else "its feed"
     return (f"no analysis to begin with: the loop begins as {start}",)
+
+
+def shared_store(site: Site, loop: Loop) -> tuple[str, ...]:
+    """That a drain store which several loops name is followed for each of them by itself."""
+    others = [each.name for each in site.loops if each.name != loop.name and each.drain_store == loop.drain_store]
+    if not loop.drain_store or not others:
+        return ()
+    return (f"{loop.drain_store} is shared with {', '.join(others)}: every loop is followed by itself",)

@@ -76,6 +76,15 @@ def test_what_was_assumed_is_said_and_a_plan_takes_its_place() -> None:
     assert planned.assumed == ()
 
 
+def test_a_drain_store_that_loops_share_is_said_to_be_followed_apart() -> None:
+    one, other = (SLAB._replace(name=name, layout="drain-blend", drain_store="the pit") for name in ("one", "other"))
+    estimate = assimilate(SITE._replace(loops=(one, other)), one, _entries(), moment(23.5), members=20)
+    words = "the pit is shared with other: every loop is followed by itself"
+    assert words in estimate.assumed
+    assert words in forecast(estimate, 1).assumed
+    assert not any("is shared with" in each for each in _slab().assumed)
+
+
 def test_a_planned_feed_narrows_the_range() -> None:
     plan = entry("plan", 23.4, crop=3000.0, irrigation=4500.0, **FEED)
     planned = forecast(assimilate(SITE, SLAB, _entries(plan), moment(23.5), members=150), 14)
