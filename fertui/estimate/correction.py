@@ -9,7 +9,7 @@ Evensen 1994, J. Geophys. Res. 99:10143 (ensemble Kalman filter; from memory); t
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -177,7 +177,7 @@ def _covariance(left: Array, right: Array) -> Array:
 
 def _learned(ensemble: Ensemble, setting: Setting, names: Sequence[str], anomalies: Array, weights: Array) -> Ensemble:
     """Unknowns after an update; ``weights`` (M, n): innovation, levelled off, over its covariance."""
-    moved = {}
+    moved: dict[str, Any] = {}
     for name in names:
         values = getattr(ensemble, name)
         if name == "stock" and setting.circuit.layout == "known-feed":
@@ -185,7 +185,7 @@ def _learned(ensemble: Ensemble, setting: Setting, names: Sequence[str], anomali
         flat = values.reshape(len(values), -1)
         shifted = flat + weights @ _covariance(anomalies, flat)
         bound = MOST_LEARNED.get(name, np.inf)
-        moved[name] = np.clip(shifted, -bound, bound).reshape(values.shape)
+        moved[name] = np.asfortranarray(np.clip(shifted, -bound, bound).reshape(values.shape))
     return ensemble._replace(**moved)
 
 

@@ -37,7 +37,7 @@ def normals(seed: int, loop: str, key: int | str, members: int, columns: int, ap
     radius, angle = np.sqrt(-2.0 * np.log(high)), (2.0 * np.pi) * low
     drawn = np.concatenate([radius * np.cos(angle), radius * np.sin(angle)], dtype=float)[: members * columns]
     drawn = drawn.reshape(members, columns)
-    drawn -= drawn.mean(axis=0)
+    drawn = np.asfortranarray(drawn - drawn.mean(axis=0))
     if not apart or members <= 2 * columns:
         return drawn
     root = np.linalg.cholesky(drawn.T @ drawn / members)

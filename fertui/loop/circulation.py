@@ -53,6 +53,7 @@ def advance(
     >>> bool(np.allclose(state.ions_mmol.sum(1) + moved.by_cause.sum(1), end.ions_mmol.sum(1), rtol=1e-12))
     True
     """
+    drive = drive.laid_out()
     state, total = _hold_vessel(circuit, drive, state.laid_out())
     done, length = 0.0, min(days, LONGEST_STEP_D)
     while done < days * (1.0 - 1e-12):

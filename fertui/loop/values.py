@@ -236,6 +236,15 @@ class Drive(NamedTuple):
         """Known feed [mmol/L] at a place of the stretch, 0 at its beginning and 1 at its end."""
         return self.feed_from if self.feed_to is None else self.feed_from + when * (self.feed_to - self.feed_from)
 
+    def laid_out(self) -> Drive:
+        """The same drive with members side by side in memory, as the state: mixed orders cost twice the time."""
+        return self._replace(
+            make_up=np.asfortranarray(self.make_up),
+            stock_mmol_d=np.asfortranarray(self.stock_mmol_d),
+            feed_from=np.asfortranarray(self.feed_from),
+            feed_to=None if self.feed_to is None else np.asfortranarray(self.feed_to),
+        )
+
     def part(self, first: float, last: float) -> Drive:
         """The drive of a part of the stretch, from place ``first`` to ``last`` (0-1)."""
         return self._replace(feed_from=self.feed_at(first), feed_to=self.feed_at(last))

@@ -48,6 +48,9 @@ def flows(circuit: Circuit, drive: Drive, water_l: Array, days: float, share: Ar
 
 
 def _each(value: npt.ArrayLike, like: Array) -> Array:
+    """A flow of every member, none below zero."""
+    if isinstance(value, float):
+        return np.full(like.shape, max(value, 0.0))
     return np.maximum(np.broadcast_to(np.asarray(value, dtype=float), like.shape), 0.0)
 
 
