@@ -172,7 +172,7 @@ KINDS: Mapping[str, Kind] = {
             "water",
             "litres of water, of the whole loop",
             (
-                _litres("make_up", "fresh water added"),
+                _litres("make_up", "make-up water added"),
                 WATER_NAME,
                 _litres("irrigation", "given to the crop"),
                 _litres("drain", "come back from the crop"),

@@ -24,7 +24,8 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Stretch
 
 WATERS = {
-    "make_up": "make-up", "irrigation": "irrigation", "drain": "drain", "condensate": "condensate", "crop": "crop water"
+    "make_up": "make-up water", "irrigation": "irrigation", "drain": "drain", "condensate": "condensate",
+    "crop": "crop water",
 }  # fmt: skip
 ACTS = ("recipe", "setpoint", "batch", "dose", "disinfection", "crop")
 """Kinds listed one by one; acid and stock, used every day, are listed as sums."""
@@ -182,7 +183,7 @@ def _used(it: Reported) -> Iterator[Row]:
         by_label: dict[str, list[float]] = {}
         for entry, litres in (*_amounts(it, name), *_metered(it, name)):
             source = entry.text_of("source") if name == "make_up" else ""
-            label = f"{words} water, {source}" if source else words
+            label = f"{words}, {source}" if source else words
             by_label.setdefault(_labelled(label, entry), []).append(litres)
         for label, amounts in by_label.items():
             yield label, f"{sum(amounts) / 1000:.2f}", "m3", str(len(amounts))

@@ -1,4 +1,4 @@
-"""The stock-tank sheet: one card a tank in the order of dissolving, and what then reaches the dripper."""
+"""The stock-tank sheet: one card a tank in the order of dissolving, and what then reaches the crop."""
 
 from __future__ import annotations
 
@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 from fertui.paper.cautions import read_first
 from fertui.paper.page import SIGN, WIDTH, Page, amount, columns, folded, heading, listed, page, section
+from fertui.site.points import at_point
 
 if TYPE_CHECKING:
     from fertui.planning.stock import StockSheet, TankSheet
@@ -14,16 +15,17 @@ if TYPE_CHECKING:
     from fertui.planning.weighing import Weighing
 
 
-def stock_page(sheet: StockSheet, loop: str, site: str, recipe: str = "") -> Page:
-    """Cards of a stock-tank sheet; ``recipe`` says which recipe they carry."""
+def stock_page(sheet: StockSheet, loop: str, site: str, recipe: str = "", layout: str = "") -> Page:
+    """Cards of a stock-tank sheet; ``recipe`` says which recipe they carry, ``layout`` where the feed is caught."""
     carries = f"carries {recipe}; " if recipe else ""
-    lines = heading(f"Stock tanks: {loop}", site, f"{carries}EC to expect at the dripper {amount(sheet.ec)} mS/cm")
+    fed = at_point("feed", layout)
+    lines = heading(f"Stock tanks: {loop}", site, f"{carries}EC to expect {fed} {amount(sheet.ec)} mS/cm")
     lines += section("REFUSED", listed((f"{' with '.join(each.pair)}: {each.why}" for each in sheet.refused), "!! "))
     lines += read_first(sheet.cautions)
     lines += section("NOTE", listed(sheet.notices))
     for tank in sheet.tanks:
         lines += card(tank)
-    lines += reached(sheet)
+    lines += reached(sheet, fed.upper())
     lines += section("THE SUM, STEP BY STEP", listed(sheet.arithmetic, "  "))
     data = {"loop": loop, "feasible": sheet.feasible}
     return page(lines, data, table(sheet), advice=True)
@@ -58,12 +60,12 @@ def table(sheet: StockSheet) -> list[tuple[str, ...]]:
     return rows
 
 
-def reached(sheet: StockSheet) -> list[str]:
+def reached(sheet: StockSheet, where: str = "AT THE DRIP") -> list[str]:
     """What the recipe asks and what the weighed amounts make of it."""
     ions = _beside(sheet.asked_mmol_l, sheet.ions_mmol_l)
     micros = _beside(sheet.asked_micros_umol_l, sheet.micros_umol_l)
-    lines = section("AT THE DRIPPER [mmol/L; HCO3 meq/L]", ions)
-    return [*lines, *section("AT THE DRIPPER, MICRONUTRIENTS [umol/L]", micros)]
+    lines = section(f"{where} [mmol/L; HCO3 meq/L]", ions)
+    return [*lines, *section(f"{where}, MICRONUTRIENTS [umol/L]", micros)]
 
 
 def _weighing(position: int, each: Weighing) -> list[str]:

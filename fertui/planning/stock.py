@@ -294,16 +294,16 @@ def _named(names: Sequence[str], values: Array) -> dict[str, float]:
 
 
 def _weighed_out(sheets: Sequence[TankSheet], placed: Mapping[str, Mapping[Material, float]]) -> list[str]:
-    """kg x mmol/kg / litres of stock / dilution = mmol/L at the dripper, for every line and ion."""
+    """kg x mmol/kg / litres of stock / dilution = mmol/L in the feed, for every line and ion."""
     lines = []
     for sheet in sheets:
         by_name = {each.name: each for each in placed[sheet.name]}
         for line in sheet.salts:
             for ion, content in zip(IONS, by_name[line.salt].ions_mmol_per_kg, strict=True):
                 if abs(content) > 1.0:
-                    at_dripper = line.kg * content / sheet.litres / sheet.dilution
+                    fed = line.kg * content / sheet.litres / sheet.dilution
                     lines.append(
                         f"{sheet.name}, {line.salt}: {line.kg:.3f} kg x {content:.0f} mmol/kg {ion} / "
-                        f"{sheet.litres:g} L / {sheet.dilution:g} = {at_dripper:.3f} mmol/L at the dripper"
+                        f"{sheet.litres:g} L / {sheet.dilution:g} = {fed:.3f} mmol/L in the feed"
                     )
     return lines

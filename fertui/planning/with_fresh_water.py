@@ -49,7 +49,7 @@ def holding_words(request: Request, salts: Sequence[Material], course: Course) -
         return ()
     brings = ", ".join(f"{ion} {composed.brought[INDEX[ion]]:.1f}" for ion in IONS if wanted[INDEX[ion]] > 0.05)
     return (
-        f"to hold the tank meanwhile, dissolve for each {PER_L:.0f} L of fresh water: {', '.join(grams)} ({brings} "
+        f"to hold the tank meanwhile, dissolve for each {PER_L:.0f} L of make-up water: {', '.join(grams)} ({brings} "
         "mmol/L: what the crop takes of each litre, by the model, less what the water brings); log each as a dose",
     )
 
@@ -91,6 +91,6 @@ def spread_words(request: Request, steps: Sequence[Step]) -> tuple[str, ...]:
         return ()
     return (
         f"the crop drinks the {situation.volumes_l['tank']:.0f} L of this tank in "
-        f"{situation.volumes_l['tank'] / per_day:.1f} days: the later weighings may go in with the fresh water "
+        f"{situation.volumes_l['tank'] / per_day:.1f} days: the later weighings may go in with the make-up water "
         f"instead, for each {PER_L:.0f} L of it {'; '.join(parts)}",
     )

@@ -178,4 +178,4 @@ def test_litres_by_a_meter_count_from_the_position_before() -> None:
     days = (("2026-06-15 08:00", "41000"), ("2026-06-18 08:00", "44500"), ("2026-06-20 08:00", "47000"))
     meters = [said(20 + n, "water", at, make_up_meter=litres) for n, (at, litres) in enumerate(days)]
     rows = [line.split() for line in report(reported(effective=meters)).text.splitlines()]
-    assert ["make-up", "6.00", "m3", "2"] in rows
+    assert ["make-up", "water", "6.00", "m3", "2"] in rows

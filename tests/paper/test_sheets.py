@@ -165,9 +165,16 @@ def test_a_weight_too_small_for_the_scale_goes_by_a_pre_solution() -> None:
     assert re.search(r"sodium molybdate \.+ +\d+ L of it", stock_page(stocks(), "slabs", SITE.name).text)
 
 
-def test_what_reaches_the_dripper_stands_beside_what_the_recipe_asks() -> None:
+def test_a_loop_without_drippers_is_fed_at_its_inlet() -> None:
+    text = stock_page(stocks(), "gutters", "Testing house", layout="shared-tank").text
+    assert "EC to expect at the inlet" in text
+    assert "AT THE INLET [mmol/L; HCO3 meq/L]" in text
+    assert "drip" not in text.lower()
+
+
+def test_what_reaches_the_crop_stands_beside_what_the_recipe_asks() -> None:
     text = stock_page(stocks(), "slabs", SITE.name).text
-    block = text[text.index("AT THE DRIPPER [mmol/L; HCO3 meq/L]") :].splitlines()
+    block = text[text.index("AT THE DRIP [mmol/L; HCO3 meq/L]") :].splitlines()
     assert block[2].startswith("asked")
     assert block[3].startswith("reached")
 

@@ -241,7 +241,7 @@ def test_a_tank_that_nothing_feeds_is_held_by_salts_in_its_fresh_water() -> None
     assert not plan.feasible
     assert "too long for this tank" in plan.reason
     (words,) = plan.notices
-    told = words.split("fresh water: ")[1].split(" (")[0].split(", ")
+    told = words.split("make-up water: ")[1].split(" (")[0].split(", ")
     kg = {each.split(" g ")[1]: float(each.split(" g ")[0]) / 1000.0 for each in told}
     # a day's fresh water with these salts, against a day's uptake: the tank stands still
     brought = sum(4.0 * kg[name] * vector(salt(name).mmol_per_kg) for name in kg) / 400.0
@@ -255,7 +255,7 @@ def test_later_weighings_may_go_in_with_the_fresh_water() -> None:
     plan = hand_plan(request(place, tank, days=14))
     later = [step for step in plan.steps if step.at > place.at]
     assert later
-    words = next(each for each in plan.notices if "with the fresh water" in each)
+    words = next(each for each in plan.notices if "with the make-up water" in each)
     assert "2000 L of this tank in 5.0 days" in words
     days = sorted({(step.at - place.at).days for step in plan.steps})
     first = later[0]
@@ -263,7 +263,7 @@ def test_later_weighings_may_go_in_with_the_fresh_water() -> None:
     until = [*days, 14][days.index(day) + 1]
     assert f"{1000 * first.kg / (400.0 * (until - day)) * 100:.0f} g {first.salt}" in words
     slow = place._replace(crop_water_l_per_m2_d=0.2)
-    assert not any("with the fresh water" in each for each in hand_plan(request(slow, tank, days=14)).notices)
+    assert not any("with the make-up water" in each for each in hand_plan(request(slow, tank, days=14)).notices)
 
 
 def with_make_up(litres_a_day: float, alkalinity: float, **more):

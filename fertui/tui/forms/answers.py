@@ -117,7 +117,7 @@ class Answers(NamedTuple):
             return self._stepped(1)
         here = choices.index(self.typed.text) if self.typed.text in choices else -1
         for choice in (*choices[here + 1 :], *choices[: here + 1]):
-            if choice.lower().startswith(character):
+            if any(word.lower().startswith(character) for word in (choice, self.current.shown(choice))):
                 return self._replace(typed=Typed.at_end(choice))
         return self
 

@@ -132,7 +132,7 @@ def _field(answers: Answers, number: int, width: int) -> Line:
     each, here = answers.spec.fields[number], number == answers.at
     ink = "watch" if number in answers.doubts else "field"
     if each.choices:
-        text = literal((answers.typed.text if here else answers.texts[number]).replace("_", " "))
+        text = literal(each.shown(answers.typed.text if here else answers.texts[number]))
         return line(Span(fit(f"< {text} >" if here else f"  {text}", width), "chosen" if here else ink))
     if here:
         return answers.typed.shown(width)

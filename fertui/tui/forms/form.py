@@ -136,7 +136,7 @@ class Form(View):
     def _free_for_unit(self) -> bool:
         """Whether u is the key of the unit: in an empty or doubted number field, or where no choice begins with it."""
         current, text = self.answers.current, self.answers.typed.text
-        unheard = bool(current.choices) and not any(choice.startswith("u") for choice in current.choices)
+        unheard = bool(current.choices) and not any(current.shown(each).startswith("u") for each in current.choices)
         return bool(self.spec.unit) and (unheard or (current.is_number and (not text or self._asked_back)))
 
     def take_paste(self, text: str) -> None:

@@ -50,7 +50,7 @@ def reading(site: Site, loop: Loop, unit: str) -> Spec:
     """The morning round: the seven numbers of the mixing room first, then the house."""
     where = "tank" if loop.layout == "shared-tank" else "feed"
     parts = [Part("reading", {"point": where}), Part("water", {"source": loop.water} if loop.water else {})]
-    used = [Asked("make_up", "fresh water", "L", 1)]
+    used = [Asked("make_up", "make-up water", "L", 1)]
     for tank in tanks_of(site, loop):
         used.append(Asked("litres", f"stock {tank}", "L", len(parts)))
         parts.append(Part("stock", {"tank": tank}))
@@ -61,7 +61,7 @@ def reading(site: Site, loop: Loop, unit: str) -> Spec:
     house = [Asked("light_sum", "light of the day", "J/cm2", 0)]
     if loop.layout != "shared-tank":
         came_back = meters("drain", len(parts), loop.layout, temperature=False)
-        groups.append(Group("drain", (*came_back.fields, Asked("drain_pct", "drain", "%", len(parts)))))
+        groups.append(Group("drain", (*came_back.fields, Asked("drain_pct", "drain of irrigation", "%", len(parts)))))
         parts.append(Part("reading", {"point": "drain"}))
     groups.append(Group("house", (*house, NOTE, TIME)))
     return Spec("Reading", tuple(parts), tuple(groups), help=ROUND_HELP)
@@ -79,12 +79,12 @@ def water(site: Site, loop: Loop, unit: str) -> Spec:
     """Litres and meter positions."""
     sources = tuple(each.name for each in site.waters)
     fields = (
-        Asked("make_up", "make-up", "L"), Asked("irrigation", "irrigation", "L"), Asked("drain", "drain", "L"),
+        Asked("make_up", "make-up water", "L"), Asked("irrigation", "irrigation", "L"), Asked("drain", "drain", "L"),
         Asked("condensate", "condensate", "L"), Asked("crop", "taken by the crop", "L"),
-        Asked("source", "source", choices=sources, default=loop.water or (sources[0] if sources else "")),
+        Asked("source", "source water", choices=sources, default=loop.water or (sources[0] if sources else "")),
     )  # fmt: skip
     positions = (
-        Asked("make_up_meter", "make-up meter", "L"), Asked("irrigation_meter", "irrigation meter", "L"),
+        Asked("make_up_meter", "make-up water meter", "L"), Asked("irrigation_meter", "irrigation meter", "L"),
         Asked("drain_meter", "drain meter", "L"), Asked("meter", "meter was", choices=("", "replaced", "rolled over")),
     )  # fmt: skip
     return Spec(

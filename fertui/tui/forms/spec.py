@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import NamedTuple
 
+from fertui.site.points import point_name
+
 EVERY = -1
 """Number in place of an entry's for a field that belongs to all entries of a form, such as the time."""
 
@@ -38,6 +40,10 @@ class Asked(NamedTuple):
     def is_read(self) -> bool:
         """Whether what is typed is understood as something, a number or a time, and not kept as words."""
         return self.is_number or self.name == "at"
+
+    def shown(self, choice: str) -> str:
+        """A choice as the screen names it: points by the word of the trade."""
+        return point_name(choice) if self.name == "point" else choice.replace("_", " ")
 
 
 class Group(NamedTuple):

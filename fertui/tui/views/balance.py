@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from fertui.estimate.balance import Balance, BalanceRow
 
 PERIODS = (7, 14, 28, 90)
-HEADS = {"start_mmol": "start", "make_up": "water", "unexplained": "unexpl.", "exchange": "medium", "end_mmol": "end"}
+HEADS = {"start_mmol": "start", "make_up": "make-up", "unexplained": "unexpl.", "exchange": "medium", "end_mmol": "end"}
 """Short heads of the columns; the others are their own."""
 WORDS = {
     "start_mmol": "in the water of the loop at the start", "make_up": "brought by make-up water",
