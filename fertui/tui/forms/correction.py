@@ -59,13 +59,15 @@ class Correction(Form):
 
 
 def spec_of(entry: Entry) -> Spec:
-    """A form with a field for every text the entry holds and for those it might have held."""
+    """A form with a field for every text the entry holds, as it was written, and for those it might have held."""
     from fertui.logbook.kinds import kind_named
 
     kind = kind_named(entry.kind)
-    held = {value.name: f"{value.text} {value.unit}".strip() for value in entry.values}
-    names = [*held, *(name for name in kind.names if name not in held)]
-    values = tuple(_asked(name, kind.field(name), held.get(name, "")) for name in names)
+    held = {value.name for value in entry.values}
+    values = (
+        *(_asked(value.species or value.name, kind.field(value.name), value.written) for value in entry.values),
+        *(_asked(name, kind.field(name), "") for name in kind.names if name not in held),
+    )
     about = tuple(Asked(name, name, words=True, default=getattr(entry, name)) for name in ABOUT)
     when = Asked("at", "when", words=True)
     help_text = (
