@@ -71,7 +71,12 @@ def site_from(data: Mapping[str, Any], file: str = "site.toml") -> Site:
         _check_references(place, loop, site)
     for place, tank in zip(top.tables("stock_tanks"), site.stock_tanks, strict=True):
         _check_salts(place, tank, site)
-    return site
+    return site._replace(loops=tuple(_topped_up(loop, site) for loop in site.loops))
+
+
+def _topped_up(loop: Loop, site: Site) -> Loop:
+    """The loop with its make-up water by name: the first of the site where it names none."""
+    return loop._replace(water=site.waters[0].name) if site.waters and not loop.water else loop
 
 
 def _loop(table: Table) -> Loop:

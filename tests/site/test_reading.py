@@ -194,3 +194,10 @@ def test_too_many_tables_are_refused() -> None:
     many = PLAIN + "".join(f'\n[[waters]]\nname = "w{n}"\n' for n in range(300))
     with pytest.raises(SiteError, match="at most 200"):
         site(many)
+
+
+def test_a_loop_that_names_no_water_is_topped_up_with_the_first_of_the_site() -> None:
+    loop = '[[loops]]\nname = "a"\nlayout = "known-feed"\narea_m2 = 10\ncrop = "tomato"\nmedium = "coir"\n'
+    head, waters = '[site]\nname = "x"\ntimezone = "UTC"\n', '[[waters]]\nname = "well"\n[[waters]]\nname = "rain"\n'
+    assert parse_site((head + loop + waters).encode()).loop().water == "well"
+    assert parse_site((head + loop + 'water = "rain"\n' + waters).encode()).loop().water == "rain"
