@@ -93,6 +93,11 @@ def acids() -> tuple[Acid, ...]:
     return tuple(_acid(entry, sources) for entry in data["acids"])
 
 
+@cache
+def _by_name() -> dict[str, Acid]:
+    return {_key(each): entry for entry in acids() for each in (entry.name, entry.formula, *entry.aliases)}
+
+
 def acid(name: str) -> Acid:
     """The acid or liquid alkali of that name, formula or alias.
 
@@ -101,7 +106,7 @@ def acid(name: str) -> Acid:
     >>> acid("sulphuric acid").formula
     'H2SO4'
     """
-    by_name = {_key(each): entry for entry in acids() for each in (entry.name, entry.formula, *entry.aliases)}
+    by_name = _by_name()
     if _key(name) not in by_name:
         near = nearest(_key(name), {key: entry.name for key, entry in by_name.items()})
         which = f"nearest: {', '.join(near)}" if near else f"it has {', '.join(entry.name for entry in acids())}"

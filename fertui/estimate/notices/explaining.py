@@ -12,6 +12,7 @@ from fertui.chemistry.ions import IONS, Array
 from fertui.estimate.notices.look import Look
 from fertui.estimate.notices.notice import WATCH, Notice
 from fertui.estimate.notices.stocks import amounts, day_grid
+from fertui.estimate.quantiles import median
 
 UNEXPLAINED = 0.10
 """EC at the drip this far from what stock and blend make, against the loop's own past (common practice, no source)."""
@@ -44,8 +45,8 @@ def _blended(look: Look) -> Iterator[Notice]:
     past = ratios[:-RECENT_DAYS]
     usual, allowed = 1.0, UNEXPLAINED_ALONE
     if len(past) >= LEAST_PAST_DAYS:
-        usual, allowed = float(np.median(past)), UNEXPLAINED
-    off = float(np.median(ratios[-RECENT_DAYS:])) / usual
+        usual, allowed = float(median(past)), UNEXPLAINED
+    off = float(median(ratios[-RECENT_DAYS:])) / usual
     if abs(off - 1.0) > allowed:
         read = float(np.nanmean(measured[-RECENT_DAYS:]))
         text = f"EC at the drip reads {read:.1f} mS/cm; blend and stock used make {read / off:.1f}."
