@@ -443,9 +443,11 @@ def test_a_time_typed_is_told_back_with_its_day(counting: Counted) -> None:
 
 
 def test_typing_takes_the_place_of_a_value_that_stood_there(site: Path, counting: Counted) -> None:
-    open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay")
+    number = open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay").number
     terminal = counting.terminal
-    terminal.press("7", "c")
+    terminal.press("7")
+    terminal.until_text(f"▸{number}")
+    terminal.press("c")
     terminal.until_text("Correct ")
     terminal.press("down", "26", "f2")
     terminal.until_text("Why is entry")
@@ -456,9 +458,11 @@ def test_typing_takes_the_place_of_a_value_that_stood_there(site: Path, counting
 
 
 def test_a_correction_is_asked_about_before_it_is_written(site: Path, counting: Counted) -> None:
-    open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay")
+    number = open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay").number
     terminal = counting.terminal
-    terminal.press("7", "c")
+    terminal.press("7")
+    terminal.until_text(f"▸{number}")
+    terminal.press("c")
     terminal.until_text("Correct ")
     terminal.press("down", "2500", "f2")
     terminal.until_text("2500 L is more than")
@@ -493,7 +497,9 @@ def test_a_field_that_may_not_stay_empty_is_gone_to(counting: Counted) -> None:
 def test_the_bar_of_the_logbook_follows_the_entry_that_was_corrected(site: Path, counting: Counted) -> None:
     terminal = counting.terminal
     number = open_site(site).record("note", {"text": "first", "by": "RV", "at": "yesterday 16:05"}, "north bay").number
-    terminal.press("7", "down", "down", "down")
+    terminal.press("7")
+    terminal.until_text(f"{number} ")
+    terminal.press("down", "down", "down")
     terminal.until_text(f"▸{number}")
     terminal.press("c")
     terminal.until_text(f"Correct {number}")
@@ -509,6 +515,6 @@ def test_what_is_planned_for_next_week_does_not_stand_above_what_happened_today(
     planned = bench.record("plan", {"bleed": "300", "by": "RV", "at": "2099-12-24 09:00"}, "north bay").number
     today = bench.record("note", {"text": "today", "by": "RV"}, "north bay").number
     counting.terminal.press("7")
-    rows = counting.terminal.until_text(f"{today} ").splitlines()
+    rows = counting.terminal.until(lambda text: f"{today} " in text and f"{planned} " in text).splitlines()
     [first, second] = [row for row in rows if re.match(rf" *▸?({today}|{planned}) ", row)]
     assert str(today) in first.split()[0]
