@@ -18,11 +18,12 @@ from fertui.planning.hand_doses import LITRES, REACHED_PCT, Dosed, Task, doing_o
 from fertui.planning.reasons import (
     MAJOR,
     arithmetic,
-    bands_words,
     binding,
     held_by,
+    outside_words,
     over_limit_words,
     overshot_words,
+    points_out,
     rule_of_thumb,
     share_words,
     why_salts,
@@ -130,14 +131,15 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, acid: TankAc
     steps = _steps(task, dosed)
     by_name = {each.name: each for each in task.materials}
     used = [by_name[name] for name in dict.fromkeys(step.salt for step in steps)]
-    feasible, why = _verdict(request, dosed)
+    after = Outlook(request.runs.shown(doing_of(task, dosed.measures, dosed.units).alone()))
+    feasible, why = _verdict(request, dosed, after)
     poured = [] if acid.first is None else [acid_on_shelf(request.situation.site)]
     found = empty._replace(
         feasible=feasible,
         reason=why,
         steps=steps,
         renewal=_renewal(request, dosed),
-        after=Outlook(request.runs.shown(doing_of(task, dosed.measures, dosed.units).alone())),
+        after=after,
         binding=binding(dosed.checkpoints),
         rule_of_thumb=rule_of_thumb(request.situation.composition(request.situation.managed), request.managed),
         cautions=cautions_for([*(each.supply for each in used), *poured]),
@@ -194,7 +196,7 @@ def _litres(dosed: Dosed) -> float:
     return float(dosed.units[-1] * dosed.measures.unit[-1]) if dosed.measures.renews else 0.0
 
 
-def _verdict(request: Request, dosed: Dosed) -> tuple[bool, str | None]:
+def _verdict(request: Request, dosed: Dosed, after: Outlook) -> tuple[bool, str | None]:
     """Whether the plan reaches what was asked, and what has to be said about it: why not, or that salts alone do
     not."""
     parts = []
@@ -211,7 +213,8 @@ def _verdict(request: Request, dosed: Dosed) -> tuple[bool, str | None]:
     if dosed.missed_pct > REACHED_PCT:
         held = held_by(binding(dosed.checkpoints))
         when = f"not within {request.wishes.days} days: " if request.wishes.days else ""
-        parts.append(f"{when}{share_words(end)} at the end, outside the bands {bands_words(goal)}; {held}")
+        shown = after.shares_pct(request.situation.managed)
+        parts.append(f"{when}{outside_words(end, shown, goal)} at the end; {held}")
     missed = _missed_aims(request, end, goal)
     if missed:
         parts.append(f"with these salts {missed}")
@@ -290,6 +293,6 @@ def _sensitivity(dosed: Dosed) -> tuple[WhatIf, ...]:
         if case == "runner-up" or (case == "a day late" and end.day == 0):
             continue
         missed = violation(end, composition)
-        words = "still in the bands" if missed <= REACHED_PCT else f"{missed:.0f} points out of the bands"
+        words = "in the bands" if missed <= REACHED_PCT else points_out(missed)
         found.append(WhatIf(case, share_pct(composition), float(ec_of(end, composition)), f"{case}: {words}"))
     return tuple(found)

@@ -209,10 +209,29 @@ def share_words(composition: Array) -> str:
     return ", ".join(f"{ion} share {part:.1f} %" for ion, part in share_pct(composition).items())
 
 
-def bands_words(goal: Goal) -> str:
-    """The bands of the shares in words."""
-    bands = zip(SHARED, goal.share_low, goal.share_high, strict=True)
-    return ", ".join(f"{ion} {100 * low:.0f}-{100 * high:.0f} %" for ion, low, high in bands)
+def outside_words(end: Array, shown: Mapping[str, float], goal: Goal) -> str:
+    """The shares outside their bands and no others, by the numbers the tables show.
+
+    ``end``: composition (10,) the plan is judged by; ``shown``: share [%] of each ion as the tables have it. Where the
+    two differ by a hair, the share is said to be at the edge.
+    """
+    found = []
+    for ion, low, high in zip(SHARED, 100 * goal.share_low, 100 * goal.share_high, strict=True):
+        band = f"band {round(float(low), 1):g}-{round(float(high), 1):g} %"
+        if not low <= round(shown[ion]) <= high:
+            found.append(f"{ion} share {shown[ion]:.0f} %, {band}")
+        elif not low <= share_pct(end)[ion] <= high:
+            found.append(f"{ion} share at the edge of its {band}")
+    return "; ".join(found) or "shares at the edge of their bands"
+
+
+def points_out(missed_pct: float) -> str:
+    """How far shares are out of their bands, summed.
+
+    >>> points_out(0.8), points_out(2.3)
+    ('shares 1 % of K + Ca + Mg out of their bands', 'shares 2 % of K + Ca + Mg out of their bands')
+    """
+    return f"shares {missed_pct:.0f} % of K + Ca + Mg out of their bands"
 
 
 def held_by(limits: Sequence[Binding]) -> str:

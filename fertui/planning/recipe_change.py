@@ -6,7 +6,7 @@ it is: what one ion gains the others give.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -25,13 +25,12 @@ from fertui.planning.recipe_programme import solved
 from fertui.planning.recipe_task import MOVED, RecipeTask
 from fertui.planning.runs import Course, Doing, Feed, Runs
 from fertui.planning.shelf import Material
+from fertui.planning.stock import StockSheet
 
 MOVE = 0.5
 """How far each ion of the feed is moved to see what the model answers [mmol/L]."""
 STAY = 0.1
 """Weight of a change of the feed beside distance to the aim in the root zone: no ion moves for nothing."""
-LEAST_GRAMS = 1e-4
-"""A salt of less [g/L] is not in a recipe."""
 
 
 class Recipe(NamedTuple):
@@ -44,6 +43,7 @@ class Recipe(NamedTuple):
     end: Array
     variants: Mapping[str, Array]
     runner_up: RunnerUpRecipe | None
+    sheet: StockSheet
 
 
 class RunnerUpRecipe(NamedTuple):
@@ -67,11 +67,13 @@ def usable_in_stock(task: RecipeTask) -> tuple[Material, ...]:
     )
 
 
-def change(task: RecipeTask, runs: Runs, solver: Solver, without: Course) -> Recipe | None:
+def change(
+    task: RecipeTask, runs: Runs, solver: Solver, without: Course, sheet_of: Callable[[Array], StockSheet]
+) -> Recipe | None:
     """The recipe for a task, None where no mix of these salts keeps the limits.
 
-    Two looks, each about a run of the model, then the next best without one salt. Three solver calls and three model
-    runs.
+    Two looks, each about a run of the model, then the next best without one of the salts weighed for it (``sheet_of``
+    a recipe (10,)). Three solver calls beside those of the sheet, and three model runs.
     """
     task = task._replace(materials=usable_in_stock(task))
     stages = np.tile(task.running, (len(task.days), 1))
@@ -79,24 +81,28 @@ def change(task: RecipeTask, runs: Runs, solver: Solver, without: Course) -> Rec
     found = solved(task, checkpoints, stages, solver)
     if found is None:
         return None
-    checkpoints = _about(task, found.stages, runs, without)
-    best = solved(task, checkpoints, found.stages, solver) or found
-    left_out = _replaceable(task.materials, best.salts)
+    checkpoints = _about(task, found, runs, without)
+    again = solved(task, checkpoints, found, solver)
+    stages = np.round(found if again is None else again, 2)
+    sheet = sheet_of(stages[0])
+    left_out = _replaceable(task.materials, sheet)
     other = None
     if left_out is not None:
         fewer = tuple(each for each in task.materials if each is not left_out)
-        other = solved(task._replace(materials=fewer), checkpoints, found.stages, solver)
-    second = None if other is None or left_out is None else (left_out.name, other.stages)
-    return _verified(task, best.stages, second, runs, without)
+        other = solved(task._replace(materials=fewer), checkpoints, found, solver)
+    second = None if other is None or left_out is None else (left_out.name, other)
+    return _verified(task, stages, second, runs, without, sheet)
 
 
-def _replaceable(materials: Sequence[Material], grams: Array) -> Material | None:
+def _replaceable(materials: Sequence[Material], sheet: StockSheet) -> Material | None:
     """The salt weighed most among those for whose K, Ca or Mg another salt stands, unused if there is such a one."""
 
     def stands_in(each: Material, others: Sequence[Material]) -> bool:
         return any(other is not each and other.brings(ion) for other in others for ion in SHARED if each.brings(ion))
 
-    heaviest_first = [materials[j] for j in np.argsort(-grams) if grams[j] > LEAST_GRAMS]
+    kg = {each.name: sum(line.kg for tank in sheet.tanks for line in tank.salts if line.salt == each.name)
+          for each in materials}  # fmt: skip
+    heaviest_first = sorted((each for each in materials if kg[each.name] > 0.0), key=lambda each: -kg[each.name])
     unused = [each for each in materials if each not in heaviest_first]
     for others in (unused, materials):
         found = next((each for each in heaviest_first if stands_in(each, others)), None)
@@ -170,9 +176,10 @@ def _feed_checkpoint(task: RecipeTask, stage: int, recipe: Array) -> Checkpoint:
     )  # fmt: skip
 
 
-def _verified(task: RecipeTask, stages: Array, second: tuple[str, Array] | None, runs: Runs, without: Course) -> Recipe:
+def _verified(
+    task: RecipeTask, stages: Array, second: tuple[str, Array] | None, runs: Runs, without: Course, sheet: StockSheet
+) -> Recipe:
     """The recipe as the model finds it, carried out otherwise, and the next best, in one run."""
-    stages = np.round(stages, 2)
     part = stages - task.running
     cases = {
         "plan": stages, "half of the change": task.running + 0.5 * part, "a day late": stages,
@@ -189,7 +196,8 @@ def _verified(task: RecipeTask, stages: Array, second: tuple[str, Array] | None,
     if task.horizon < 2:
         del variants["a day late"]
     other = None if second is None else RunnerUpRecipe(second[0], cases["runner-up"], end["runner-up"])
-    return Recipe(stages, checkpoints, violation(checkpoints[-1], end["plan"]), broken, end["plan"], variants, other)
+    missed = violation(checkpoints[-1], end["plan"])
+    return Recipe(stages, checkpoints, missed, broken, end["plan"], variants, other, sheet)
 
 
 def _broken(each: Checkpoint, points: Sequence[Checkpoint]) -> list[tuple[str, float, float]]:

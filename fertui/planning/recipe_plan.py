@@ -15,7 +15,16 @@ from fertui.planning.acid import LEAVE_MEQ_PER_L, PH_START, PH_TARGET, demanded,
 from fertui.planning.checkpoints import ec_of, violation
 from fertui.planning.goal import LIMITED
 from fertui.planning.hand_doses import REACHED_PCT
-from fertui.planning.reasons import MAJOR, bands_words, binding, held_by, over_limit_words, rule_of_thumb, share_words
+from fertui.planning.reasons import (
+    MAJOR,
+    binding,
+    held_by,
+    outside_words,
+    over_limit_words,
+    points_out,
+    rule_of_thumb,
+    share_words,
+)
 from fertui.planning.recipe_change import Recipe, change, feeds, usable_in_stock
 from fertui.planning.recipe_programme import step_limits
 from fertui.planning.recipe_task import RecipeTask
@@ -49,7 +58,7 @@ def recipe_plan(request: Request, estimate: Estimate) -> Plan:
         words = f"no change: {request.why_in_order(empty.after_without)}"
         return request.counted(empty._replace(notices=(words,)))
     task = _task(request, estimate)
-    recipe = change(task, request.runs, request.solver, course)
+    recipe = change(task, request.runs, request.solver, course, lambda feed: _sheet(request, feed))
     if recipe is None:
         reason = "no mix of these salts keeps EC, NH4 and solubility within their limits"
         return request.counted(empty._replace(feasible=False, reason=reason))
@@ -109,11 +118,11 @@ def _own(request: Request) -> Array:
 
 
 def _shown(request: Request, task: RecipeTask, recipe: Recipe, empty: Plan) -> Plan:
-    sheet = _sheet(request, recipe)
+    sheet = recipe.sheet
     first = recipe.stages[0]
     changed = _change_pct(task.running, first)
-    feasible, why, notice = _verdict(request, task, recipe)
-    doing = feeds(task, recipe.stages[None]).alone()
+    after = Outlook(request.runs.shown(feeds(task, recipe.stages[None]).alone()))
+    feasible, why, notice = _verdict(request, task, recipe, after)
     used = _used(request, sheet)
     found = empty._replace(
         feasible=feasible,
@@ -123,7 +132,7 @@ def _shown(request: Request, task: RecipeTask, recipe: Recipe, empty: Plan) -> P
             tuple(_stage(request, task, recipe, s) for s in range(len(recipe.stages))), sheet,
         ),
         renewal=_renewal(request, recipe),
-        after=Outlook(request.runs.shown(doing)),
+        after=after,
         binding=(*binding(recipe.checkpoints), *step_limits(task, recipe.stages[0])),
         rule_of_thumb=rule_of_thumb(request.situation.composition(request.situation.managed), request.managed, changed),
         cautions=cautions_for(used),
@@ -156,13 +165,13 @@ def _stage(request: Request, task: RecipeTask, recipe: Recipe, s: int) -> Recipe
     )
 
 
-def _sheet(request: Request, recipe: Recipe) -> StockSheet:
-    """Stock tanks of the first stage, micronutrients as the target has them."""
+def _sheet(request: Request, ions: Array) -> StockSheet:
+    """Stock tanks that carry a feed (10,) [mmol/L], micronutrients as the target has them."""
     site, loop = request.situation.site, request.situation.loop
     feed = target_of(site, loop, request.wishes.target).get("feed", Composition()).micronutrients
     acid = _stock_acid(request)
     return stock_sheet(
-        site, loop, recipe=Composition(_named(recipe.stages[0]), feed),
+        site, loop, recipe=Composition(_named(ions), feed),
         water=source_water(site, loop) or Composition(), acid=acid, supplies=request.wishes.supplies,
         without=request.wishes.without, solver=request.solver,
     )  # fmt: skip
@@ -184,7 +193,9 @@ def _used(request: Request, sheet: StockSheet) -> list[Supply]:
     return [each for each in request.situation.site.supplies if each.name in names]
 
 
-def _verdict(request: Request, task: RecipeTask, recipe: Recipe) -> tuple[bool, str | None, tuple[str, ...]]:
+def _verdict(
+    request: Request, task: RecipeTask, recipe: Recipe, after: Outlook
+) -> tuple[bool, str | None, tuple[str, ...]]:
     """Whether the recipe serves, why not, and when it will have served.
 
     It serves where it reaches the bands, or moves towards them as fast as the steps of a recipe allow.
@@ -198,7 +209,8 @@ def _verdict(request: Request, task: RecipeTask, recipe: Recipe) -> tuple[bool, 
     gained = violation(end, end.base) - recipe.missed_pct
     held = held_by((*binding(recipe.checkpoints), *step_limits(task, recipe.stages[0])))
     days = request.wishes.days
-    words = f"{share_words(recipe.end)} after {days} days, outside the bands {bands_words(request.managed)}; {held}"
+    outside = outside_words(recipe.end, after.shares_pct(request.situation.managed), request.managed)
+    words = f"{outside} after {days} days; {held}"
     if gained < GAINED_PCT:
         return False, words, ()
     return (
@@ -264,7 +276,7 @@ def _sensitivity(recipe: Recipe) -> tuple[WhatIf, ...]:
     found = []
     for case, composition in recipe.variants.items():
         missed = violation(end, composition)
-        words = "still in the bands" if missed <= REACHED_PCT else f"{missed:.0f} points out of the bands"
+        words = "in the bands" if missed <= REACHED_PCT else points_out(missed)
         found.append(WhatIf(case, share_pct(composition), float(ec_of(end, composition)), f"{case}: {words}"))
     return tuple(found)
 
@@ -283,5 +295,5 @@ def _runner_up(recipe: Recipe) -> RunnerUp | None:
         return RunnerUp((), f"without {second.without}: the other salts make the same feed")
     shares = f"{share_words(second.end)} instead of {share_words(recipe.end)}"
     missed = violation(recipe.checkpoints[-1], second.end) - recipe.missed_pct
-    further = f", {missed:.1f} points further from the bands" if missed > GAINED_PCT else ""
+    further = f", {missed:.1f} % of K + Ca + Mg further from the bands" if missed > GAINED_PCT else ""
     return RunnerUp((), f"without {second.without}: {', '.join(moved)} mmol/L in the feed; {shares}{further}")

@@ -67,15 +67,8 @@ class Places(NamedTuple):
         return wide, np.full(len(ions), -np.inf) if low is None else low - shift, high - shift
 
 
-class Solved(NamedTuple):
-    """Recipes (stages, 10) [mmol/L] and the salts of the first stage, in the order of the materials [g/L]."""
-
-    stages: Array
-    salts: Array
-
-
-def solved(task: RecipeTask, checkpoints: Sequence[Checkpoint], stages: Array, solver: Solver) -> Solved | None:
-    """The recipes that solve the program about ``stages`` in one call; None where there are none."""
+def solved(task: RecipeTask, checkpoints: Sequence[Checkpoint], stages: Array, solver: Solver) -> Array | None:
+    """Recipes (stages, 10) [mmol/L] that solve the program about ``stages`` in one call; None where there are none."""
     x0 = stages[:, MOVED].ravel()
     bands, aim, step = violation_rows(checkpoints, x0), misfit_rows(checkpoints, x0), _step(task)
     count, ions = len(task.days), len(MOVED)
@@ -93,7 +86,7 @@ def solved(task: RecipeTask, checkpoints: Sequence[Checkpoint], stages: Array, s
         return None
     recipes = stages.copy()
     recipes[:, MOVED] = (own + places.content @ found[: places.salts]).reshape(count, ions)
-    return Solved(recipes, found[: len(task.materials)])
+    return recipes
 
 
 def _soft(places: Places, bands: tuple[Array, Array], aim: tuple[Array, Array]) -> list[Block]:

@@ -117,6 +117,11 @@ class Outlook(NamedTuple):
 
     points: Mapping[str, PointState]
 
+    def shares_pct(self, point: str) -> Mapping[str, float]:
+        """Share [%] of K, Ca and Mg at a point, as it is shown."""
+        ions = self.points[point].ions
+        return {ion: state.share_pct.value for ion, state in ions.items() if state.share_pct is not None}
+
 
 class Plan(NamedTuple):
     """What to do, why, what comes of it.
