@@ -100,7 +100,7 @@ def test_an_analysis_of_twelve_ions(site: Path, counting: Counted) -> None:
         counting.value(text)
         counting.key("enter")
     counting.value(last)
-    assert "charge balance" in counting.terminal.text
+    counting.terminal.until_text("charge balance")
     counting.key("+")
     give_initials(counting.terminal)
     counting.terminal.until_text("saved")

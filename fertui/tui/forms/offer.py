@@ -10,20 +10,24 @@ from typing import TYPE_CHECKING
 from fertui.tui.chooser import Chooser, Option
 from fertui.tui.figures import age
 from fertui.tui.forms.spec import Spec
-from fertui.tui.ink import literal
+from fertui.tui.ink import cut, literal
 from fertui.tui.snapshot import UNITS
 
 if TYPE_CHECKING:
     from fertui.tui.drafts import Draft
     from fertui.tui.forms.form import Form
 
+MOST_SHOWN = 100
+"""Columns of what was typed: enough to know it again, with room for the two ways below it."""
+
 
 def offer(draft: Draft, form: Form, now: datetime) -> Chooser:
     """The list with the two ways; leaving it leaves the form empty and the draft kept."""
-    who = f"by {literal(draft.by)}" if draft.by else "by someone who gave no initials"
+    who = f"by {cut(literal(draft.by), 16)}" if draft.by else "by someone who gave no initials"
     when = age(draft.at, max(now, draft.at))
     spec = form.spec_in(draft.unit) if form.spec.unit and draft.unit in UNITS else form.spec
-    title = f"A half-filled form {who}, {when} ago: {spec.title}, {literal(typed(spec, draft.texts))}"
+    said = cut(literal(typed(spec, draft.texts)), MOST_SHOWN)
+    title = f"A half-filled form {who}, {when} ago: {spec.title}, {said}"
     options = [
         Option("take it up", "go on where it was left", value="take"),
         Option("begin anew", "and forget it", value="drop"),
