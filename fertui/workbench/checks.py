@@ -56,17 +56,21 @@ def _site(folder: SiteFolder) -> Iterator[CheckRow]:
         if loop.layout != "known-feed" and not loop.water:
             yield CheckRow("site", f"water of {loop.name}", "not named", False, NAME_IT, "watch")
     for water in site.waters:
-        yield from _water(water)
+        yield from water_rows(water)
 
 
-def _water(water: Water) -> Iterator[CheckRow]:
-    """Whether the report of a water can be used as it is, where it says enough."""
-    from fertui.chemistry.verdicts import STANDARD_METHODS, verdicts
+def water_rows(water: Water) -> Iterator[CheckRow]:
+    """Whether the report of a water can be used as it is: its charge balance where it says enough, its ions against EC.
 
-    if not water.composition.ions.get("Ca") or "HCO3" not in water.composition.ions:
-        return
-    for row in verdicts(water.composition.ions, water.composition.ec, water.composition.ph):
-        if row.source != STANDARD_METHODS:
+    A report of a few ions cannot close its charges, but even a few must not make more EC than was measured.
+    """
+    from fertui.chemistry.verdicts import EC_RATIO, STANDARD_METHODS, verdicts
+
+    held = water.composition
+    is_whole = bool(held.ions.get("Ca")) and "HCO3" in held.ions
+    for row in verdicts(held.ions, held.ec, held.ph):
+        too_much = row.what.startswith("EC") and row.value > EC_RATIO[1]
+        if row.source != STANDARD_METHODS and (is_whole or too_much):
             remark = f"{row.remark}; look at its units"
             severity = "" if row.passed else "watch"
             yield CheckRow("site", f"water {water.name}, {row.what}", row.found, row.passed, remark, severity)

@@ -51,15 +51,21 @@ def write_new(path: Path, text: str) -> Path:
 
 
 def make_new_site(folder: Path, answers: Mapping[str, str]) -> tuple[Path, tuple[str, ...]]:
-    """Make a site folder with an empty logbook from answers as texts; returns the folder and what to log first."""
+    """Make a site folder with an empty logbook from answers as texts; returns the folder and what to do first.
+
+    A report of its water that does not hold together is said before all else.
+    """
     from fertui.logbook.store import Logbook
     from fertui.site.new import first_steps
     from fertui.site.questions import new_site_from
+    from fertui.workbench.checks import water_rows
     from fertui.workbench.folder import LOGBOOK
 
     site = new_site_from(folder, answers)
     Logbook.create(folder / LOGBOOK).close()
-    return folder, first_steps(site)
+    doubted = [row for water in site.waters for row in water_rows(water) if not row.passed]
+    doubts = (f"Look at {row.what} again: {row.found}; {row.remark}." for row in doubted)
+    return folder, (*doubts, *first_steps(site))
 
 
 def refuse_place(folder: Path) -> None:

@@ -90,10 +90,24 @@ def test_a_water_typed_in_another_unit_is_looked_at(capsys: pytest.CaptureFixtur
     assert "ok water well, EC calculated / EC measured: " in " ".join(out.split())
     text = (site / "site.toml").read_text()
     assert "Ca = 1.996" in text  # 80 mg/L at 40.078 g/mol (CIAAW 2021)
-    (site / "site.toml").write_text(text.replace("Ca = 1.996", "Ca = 80"))
+    (site / "site.toml").write_text(text.replace("Ca = 1.996", "Ca = 80"))  # mg/L typed as mmol/L
     code, out, _ = printed(capsys, "check", str(site))
     assert code == 1
     assert "look at its units" in " ".join(out.split())
+
+
+def test_a_report_typed_in_the_wrong_unit_is_said_when_the_site_is_made(
+    capsys: pytest.CaptureFixture[str], tmp_path: Path
+) -> None:
+    # 20 mmol/L Ca alone makes several mS/cm: a report of a few ions shows the slip too.
+    words = "--crop lettuce --medium none --layout shared-tank --area 180 --tank 700 --water well --timezone UTC"
+    for name, report in (("few", "EC 0.55, Ca 20, Mg 3"), ("whole", "EC 0.55, Ca 20, Mg 3, CaCO3 240 mg/L")):
+        code, _, err = printed(capsys, "new", str(tmp_path / name), *words.split(), "--water-report", report)
+        assert code == 0
+        assert "Look at water well, EC calculated / EC measured again: " in " ".join(err.split())
+    good = "EC 0.55, Ca 80 mg/L, Mg 12 mg/L, Na 16 mg/L, Cl 21 mg/L, SO4 24 mg/L, CaCO3 240 mg/L"
+    _, _, err = printed(capsys, "new", str(tmp_path / "good"), *words.split(), "--water-report", good)
+    assert "Look at" not in err
 
 
 def test_the_report_holds_its_sections(capsys: pytest.CaptureFixture[str], demo_once: Path) -> None:
