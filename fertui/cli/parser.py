@@ -134,6 +134,9 @@ Every kind takes at= (default: now), by= (default: FERTUI_OPERATOR), point=,
 note= and doubtful=. A value may carry its unit: NO3-N="200 mg/L". All values of
 all kinds stand in docs/command.md; an unknown one is answered with those of its
 kind.
+
+What looks odd is asked at a terminal, and n logs nothing; without one it is
+logged with its open question, to be settled by supersede or void.
 """
 
 

@@ -47,7 +47,7 @@ def test_a_planned_step_stands_on_the_round_sheet_until_it_is_done(bench: Bench)
         "lettuce",
     )
     assert planned.number is not None
-    assert "[ ] Mon 1 Jun 1.5 kg potassium nitrate into tank" in bench.round_sheet("lettuce").text
+    assert "[ ] Mon 1 Jun 08:00 1.5 kg potassium nitrate into tank" in bench.round_sheet("lettuce").text
     bench.mark_done(planned.number, "AN")
     assert "1.5 kg potassium nitrate into tank" not in bench.round_sheet("lettuce").text
 
