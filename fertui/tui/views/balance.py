@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any, ClassVar
 from textual.binding import Binding
 
 from fertui.tui.figures import amount
-from fertui.tui.ink import BLANK, Line, Span, col, fit, line
+from fertui.tui.ink import BLANK, Line, Span, col, fit, line, wrap
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.view import View, waiting
 
@@ -86,7 +86,7 @@ class BalanceView(View):
         unit, factor = AMOUNT_UNITS[snapshot.unit]
         title = f" {account.start:%-d %b} to {account.end:%-d %b}, {unit} in the water of the loop"
         heads = [col(HEADS.get(cause, cause), CELL, "faint") for cause in causes]
-        rows = [line(Span(title, "title")), line(col("", 6), *heads)]
+        rows = [line(Span(title, "title")), *_cut(account, self.period, width), line(col("", 6), *heads)]
         for y, ion in enumerate(ions):
             numbers = [_shown(ion, account.ions[ion], cause, snapshot.unit, factor) for cause in causes]
             cells = [_cell(numbers[x], x == self.x and y == self.y) for x in range(len(causes))]
@@ -129,6 +129,14 @@ class BalanceView(View):
                 title, self.fertui.snapshot.loop, KINDS_BEHIND[cause], account.start - timedelta(days=1), account.end
             )
         )
+
+
+def _cut(account: Balance, days: int, width: int) -> list[Line]:
+    """Why the account does not reach back as far as asked."""
+    if not account.is_cut:
+        return []
+    words = f"not {days} days: the estimate begins {account.start:%-d %b}, {account.began}; the report holds all days"
+    return [line(" ", Span(text, "watch")) for text in wrap(words, width - 2)]
 
 
 def used(account: Balance, width: int) -> list[str]:
