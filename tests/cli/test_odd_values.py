@@ -61,6 +61,6 @@ def test_a_correction_is_asked_about_like_any_entry(demo: Path, monkeypatch: pyt
 
 def test_an_ordinary_value_asks_nothing(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     site = str(tmp_path / "site")
-    run_command(["new", site, *"--crop tomato --medium coir --layout drain-blend --area 1200".split()])
+    run_command(["new", site, *["--crop", "tomato", "--medium", "coir", "--layout", "drain-blend", "--area", "1200"]])
     at_a_terminal(monkeypatch, "n")
     assert run_command(["record", site, "reading", "point=feed", "EC=2.6", "by=MK"]) == 0
