@@ -134,7 +134,8 @@ class HandMade(Bench):
             "Na": row(start_mmol=31000.0, make_up=41000.0, uptake=-22000.0, bleed=-800.0, end_mmol=49200.0),
         }  # fmt: skip
         columns = BalanceRow._fields
-        return SimpleNamespace(start=start, end=end, ions=ions, columns=columns, entries={}, asked=start, is_cut=False, began="")
+        begun = {"asked": start, "is_cut": False, "began": ""}
+        return SimpleNamespace(start=start, end=end, ions=ions, columns=columns, entries={}, **begun)
 
     def forecast(self, loop=None, days=14, at=None, known=None, scenario=None):
         where = "root_zone" if loop != "lettuce" else "tank"
