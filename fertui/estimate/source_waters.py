@@ -59,6 +59,33 @@ def water_of(site: Site, entry: Entry) -> str:
     return entry.text_of("source") or make_up_of(site, loop)
 
 
+def alkalinity_from(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime) -> str:
+    """Where the alkalinity of a loop's make-up water is known from at a time, '' where it is not.
+
+    The last analysis that names it; a later one of other ions leaves it as it was.
+    """
+    name = make_up_of(site, loop).lower()
+    named = (entry for entry in entries if entry.at <= at and _says(entry, "HCO3"))
+    found = max(
+        (entry for entry in named if water_of(site, entry).lower() == name), key=lambda each: each.at, default=None
+    )
+    if found is not None:
+        return _called(found)
+    written = next((water.composition for water in site.waters if water.name.lower() == name), Composition())
+    if "HCO3" not in written.ions:
+        return ""
+    return f"site.toml ({written.source})" if written.source else "site.toml"
+
+
+def _says(entry: Entry, ion: str) -> bool:
+    return is_of_water(entry) and not entry.doubtful and entry.number_of(ion) is not None
+
+
+def _called(entry: Entry) -> str:
+    day = f"{entry.at:%-d %b %Y}"
+    return f"analysis {entry.number} of {day}" if entry.number else f"analysis of {day}"
+
+
 def _renewed(before: Composition, entry: Entry) -> Composition:
     numbers = {value.name: value.number for value in entry.values if value.number is not None}
     return Composition(
@@ -66,5 +93,5 @@ def _renewed(before: Composition, entry: Entry) -> Composition:
         {**before.micronutrients, **{name: numbers[name] for name in MICRONUTRIENTS if name in numbers}},
         numbers.get("EC", before.ec),
         numbers.get("pH", before.ph),
-        f"analysis {entry.number} of {entry.at:%-d %b %Y}" if entry.number else f"analysis of {entry.at:%-d %b %Y}",
+        _called(entry),
     )

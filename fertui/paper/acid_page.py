@@ -25,7 +25,7 @@ def acid_page(sheet: AcidSheet, loop: str, site: str, released: bool = True) -> 
 
     Not ``released``: cautions and bottle alone, until somebody has read them.
     """
-    lines = heading(f"Acid: {loop}", site, _water(sheet)) + read_first(sheet.cautions)
+    lines = heading(f"Acid: {loop}", site, *_water(sheet)) + read_first(sheet.cautions)
     if not sheet.feasible:
         lines += section("NO DOSE", folded(sheet.reason or "", "!! "))
     if sheet.splits and not released:
@@ -55,9 +55,11 @@ def fed(adds_mmol_l: Mapping[str, float], adds_mg_l: Mapping[str, float]) -> lis
     return [f"{ions} ({elements}): take it off the salts"] if ions else []
 
 
-def _water(sheet: AcidSheet) -> str:
+def _water(sheet: AcidSheet) -> list[str]:
+    """What the dose is for, and where its alkalinity is known from."""
     known = "not known" if sheet.alkalinity_meq_l is None else f"{sheet.alkalinity_meq_l:.2f} meq/L"
-    return f"{sheet.volume_l:.0f} L of make-up water, alkalinity {known}, {sheet.leave_meq_l:g} meq/L to be left"
+    water = f"{sheet.volume_l:.0f} L of make-up water, alkalinity {known}, {sheet.leave_meq_l:g} meq/L to be left"
+    return [water, *([f"alkalinity from: {sheet.alkalinity_from}"] if sheet.alkalinity_from else [])]
 
 
 def _label(sheet: AcidSheet) -> list[str]:

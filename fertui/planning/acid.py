@@ -25,9 +25,9 @@ practice."""
 PH_TARGET = 5.8
 PH_START = 7.0
 """Taken where the pH of the water is not known: a low guess, which makes the closed figure and so each split small."""
-WARN_PH, STOP_PH, EMERGENCY_PH = 5.0, 4.5, 3.5
-"""No more acid below the first, dosing and irrigation stop below the second, emergency card at the third (common
-practice)."""
+WARN_PH, STOP_PH, BURN_PH = 5.0, 4.5, 3.5
+"""No more acid below the first, dosing and irrigation stop below the second, roots burn below the third (common
+practice, no source)."""
 WAIT_MIN = 15.0
 """Minutes of circulation before a retest: one turnover of a small tank (common practice, no source)."""
 PART_OF_CLOSED = 3
@@ -76,6 +76,8 @@ class AcidSheet(NamedTuple):
     arithmetic: tuple[str, ...]
     words: tuple[str, ...]
     cautions: tuple[Caution, ...]
+    alkalinity_from: str = ""
+    """Which analysis the alkalinity was taken from."""
 
 
 class Demand(NamedTuple):
@@ -303,7 +305,7 @@ def _words(
     if found.is_acid:
         lines += [
             f"Below pH {WARN_PH:g} no more acid. Below {STOP_PH:g} stop dosing and stop irrigation. "
-            f"At {EMERGENCY_PH:g} take the emergency card.",
+            f"Below {BURN_PH:g} roots burn: no solution to the crop, and the site's own procedure comes first.",
             f"pH reads {ph_target:g} after about {demand.closed:.2f} mmol/L while CO2 is dissolved and creeps up as it "
             f"leaves; {demand.to_leave:.2f} mmol/L is the sum that may be reached over the retests, never one dose. "
             f"Reckoned from pH {ph_start:g}.",

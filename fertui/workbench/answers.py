@@ -218,11 +218,12 @@ class Answers(SiteFolder):
 
     def acid(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> AcidSheet:
         """The acid sheet of a loop's make-up water: for its tank, or for a m3 where the water is treated on its way."""
+        from fertui.estimate.source_waters import alkalinity_from
         from fertui.planning import acid_sheet
 
-        chosen = self.loop(loop)
-        site = self.site_as_analysed(self.entries(at, known))
-        return acid_sheet(site, chosen, volume_l=chosen.tank_l or A_CUBIC_METRE)
+        chosen, entries = self.loop(loop), self.entries(at, known)
+        sheet = acid_sheet(self.site_as_analysed(entries), chosen, volume_l=chosen.tank_l or A_CUBIC_METRE)
+        return sheet._replace(alkalinity_from=alkalinity_from(self.site, chosen, entries, at or now()))
 
     def site_as_analysed(self, entries: Sequence[Entry], at: datetime | None = None) -> Site:
         """The site with its source waters as the logbook's last analyses of them say."""

@@ -28,6 +28,12 @@ def test_without_alkalinity_there_is_no_dose_whatever_the_ph() -> None:
     assert sheet.litres_total == 0.0
 
 
+def test_too_low_a_ph_is_told_by_what_to_do_not_by_a_paper_nobody_has() -> None:
+    words = " ".join(acid_sheet(site(NITRIC), LOOP, water=Composition({"HCO3": 3.5})).words)
+    assert "Below 3.5 roots burn: no solution to the crop" in words
+    assert "card" not in words
+
+
 def test_no_acid_where_none_is_needed_even_with_none_on_the_shelf() -> None:
     sheet = acid_sheet(site(), LOOP, water=Composition({"HCO3": 0.3}))
     assert sheet.feasible

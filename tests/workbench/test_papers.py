@@ -60,6 +60,19 @@ def test_acid_for_water_treated_on_its_way_is_told_for_a_cubic_metre(bench: Benc
     assert sheet.litres_total == pytest.approx((well.composition.ions["HCO3"] - 0.5) / 7.44, rel=0.002)
 
 
+def test_the_acid_sheet_names_what_its_alkalinity_comes_from(bench: Bench, tmp_path: Path) -> None:
+    well = {"point": "source", "source": "well", "by": "RV"}
+    of_alkalinity = bench.record("analysis", {**well, "HCO3": "4.1", "at": "2026-05-30 09:00"}, "north bay")
+    bench.record("analysis", {**well, "Na": "1.2", "Cl": "1.1", "at": "2026-05-31 09:00"}, "north bay")
+    sheet = bench.acid("north bay", DEMO_MORNING)
+    assert sheet.alkalinity_meq_l == 4.1
+    assert (
+        f"alkalinity from: analysis {of_alkalinity.number} of 30 May 2026" in bench.acid_page(sheet, "north bay").text
+    )
+    before = bench.acid("north bay", DEMO_MORNING.replace(year=2020))
+    assert before.alkalinity_from.startswith("site.toml")
+
+
 def test_soft_water_needs_no_acid_and_says_so(bench: Bench) -> None:
     assert "no acid needed" in bench.acid_page(bench.acid("lettuce"), "lettuce").text
 
