@@ -285,8 +285,7 @@ def _row(
     ink = OUT if out else LEAVING if probability >= 0.1 else "good"
     likely = "" if out or probability <= 0 else f", {100 * probability:.0f} %"
     label = f" {each.what} {name}".replace(" share %", " share, %")
-    words = in_words(leaving, days)
-    words = words if roomy else short_leaving(words)
+    words = short_leaving(in_words(leaving, days))
     return line(
         col(label, 15, "chosen" if chosen else "strong", right=False),
         *([col(_words(left, name), 17)] if roomy else []),
