@@ -56,6 +56,22 @@ class FertuiApp(Papers):
         """Show a loop by name."""
         self.snapshot = self.snapshot._replace(loop=name)
 
+    def go_on_round(self, saved: str) -> None:
+        """A round was walked through and saved: open that of the next loop, after the last loop Today."""
+        self.hold_keys()  # what is typed ahead is for the next round, not for the view under it
+        self.call_next(self._next_round, saved)
+
+    async def _next_round(self, saved: str) -> None:
+        loops, loop = self.snapshot.loops, self.snapshot.loop
+        later = loops[loops.index(loop) + 1 :]
+        if later:
+            self.choose_loop(later[0])
+            await self.action_enter("reading")
+        else:
+            await self.action_view(1)
+        self.say(saved, "good")
+        await self.release_keys(1)
+
     def choose_unit(self, unit: str) -> None:
         """Show amounts in a unit, and take bare numbers in it."""
         self.snapshot = self.snapshot._replace(unit=unit)

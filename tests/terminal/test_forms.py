@@ -84,6 +84,38 @@ def test_a_reading_of_seven_numbers(site: Path, counting: Counted) -> None:
     assert (acid.number_of("litres"), acid.text_of("cautions")) == (1.1, "not acknowledged")
 
 
+def test_after_the_last_field_of_a_round_comes_the_next_loop_and_after_the_last_loop_today(
+    site: Path, counting: Counted
+) -> None:
+    terminal = counting.terminal
+    first, second = open_site(site).loops
+    terminal.press("7", "r", "2.6")
+    for _ in range(30):
+        if "Your initials:" in terminal.text:
+            break
+        terminal.press("enter")
+    terminal.until_text("Your initials:")
+    terminal.type(b"MK\r1.92\r5.8")  # typed ahead: it lands in the round of the next loop
+    terminal.until_text(f"Reading, {second}")
+    terminal.until_text("= 1.92 mS/cm")
+    terminal.settle()
+    for _ in range(30):
+        if f"Reading, {second}" not in terminal.text:
+            break
+        terminal.press("enter")
+    assert "saved" in terminal.until_text("worst first")
+    found = [(entry.loop, entry.number_of("EC"), entry.number_of("pH")) for entry in fresh(site, "reading")]
+    assert found == [(first, 2.6, None), (second, 1.92, 5.8)]
+
+
+def test_plus_saves_a_round_and_stays_with_its_loop(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("7", "r", "2.6", "+")
+    give_initials(terminal)
+    terminal.until_text("saved")
+    assert "newest first" in terminal.text
+
+
 ANALYSIS = {
     "K": "7.8", "Ca": "5.6", "Mg": "2.5", "Na": "1.6", "NH4": "0.4", "NO3": "14.7", "Cl": "1.4", "SO4": "3.7",
     "H2PO4": "1.1",

@@ -11,6 +11,7 @@ from textual.binding import Binding
 from fertui.tui.desk import Answer
 from fertui.tui.figures import MARKS
 from fertui.tui.forms.answers import Answers
+from fertui.tui.forms.clerking import doubts_of, look_over, record, saved_words
 from fertui.tui.forms.drawing import Last, draw_form, hint_of, in_unit, last_of, messages
 from fertui.tui.forms.spec import Spec, Texts, entries_of
 from fertui.tui.ink import BLANK, Line, Span, cells, line, literal
@@ -19,10 +20,11 @@ from fertui.tui.typing_line import Typed
 from fertui.tui.view import View
 
 if TYPE_CHECKING:
-    from fertui.logbook.entries import Entry
     from fertui.tui.drafts import Draft
     from fertui.workbench import Bench
 
+ROUND = "reading"
+"""Kind of the form that is walked loop by loop."""
 FEWEST_TO_CHECK = 8
 """Texts of an analysis from which its charge balance is worth showing."""
 MESSAGE_ROWS = 4
@@ -39,7 +41,7 @@ class Form(View):
             "next",
             "next",
             id="form.next",
-            tooltip="Keep the value, go to the next field; after the last: save.",
+            tooltip="Keep the value, go to the next field; after the last: save; on a round then the next loop.",
         ),
         Binding("down", "step(1)", "down", show=False, id="form.down", tooltip="The field below."),
         Binding("up", "step(-1)", "up", show=False, id="form.up", tooltip="The field above."),
@@ -71,6 +73,7 @@ class Form(View):
         self._done = False
         self._asked_back = False
         self._stray = False
+        self._walked_through = False
         self._doubted: dict[int, tuple[str, ...]] = {}
         self._confirmed: frozenset[str] = frozenset()
 
@@ -180,6 +183,7 @@ class Form(View):
         if at + 1 < len(self.spec.fields):
             self._leave_field(lambda: self._set(self.answers.moved(at + 1)))
         else:
+            self._walked_through = True
             self.action_save()
 
     def action_same(self) -> None:
@@ -216,7 +220,7 @@ class Form(View):
         loop = self.loop
 
         def look(bench: Bench) -> tuple[str, tuple[str, ...]]:
-            return bench.echo(kind, each.name, texts[each.name], loop), _doubt(bench, kind, texts, each.name, loop)
+            return bench.echo(kind, each.name, texts[each.name], loop), doubts_of(bench, kind, texts, each.name, loop)
 
         self.fertui.clerk(look, lambda answer: self._heard(number, answer, go_on), "a field")
 
@@ -306,7 +310,7 @@ class Form(View):
             self.say((f"{self.answers.current.label}: this cannot be left empty.", "act"))
             return
         by, loop = self.fertui.snapshot.initials or "?", self.loop
-        self.fertui.clerk(lambda bench: _look(bench, found, by, loop), self._looked, "the form")
+        self.fertui.clerk(lambda bench: look_over(bench, found, by, loop), self._looked, "the form")
 
     def _looked(self, answer: Answer) -> None:
         if answer.value is None:
@@ -329,7 +333,7 @@ class Form(View):
     def _write(self, initials: str) -> None:
         entries = [(kind, {**texts, "by": initials}) for kind, texts in entries_of(self.spec, self.answers.texts)]
         loop = self.loop
-        self.fertui.clerk(lambda bench: _record(bench, entries, loop), self._written, "saving")
+        self.fertui.clerk(lambda bench: record(bench, entries, loop), self._written, "saving")
 
     def _written(self, answer: Answer) -> None:
         if answer.value is None:
@@ -340,7 +344,10 @@ class Form(View):
         self.fertui.drop_draft(self.spec.kind, self.loop)
         self.finish()
         self.fertui.changed(last_number)
-        self.fertui.say(saved_words(written), "good")
+        if self._walked_through and self.spec.kind == ROUND:
+            self.fertui.go_on_round(saved_words(written))
+        else:
+            self.fertui.say(saved_words(written), "good")
 
     # drafts
 
@@ -367,33 +374,3 @@ def how_to_save(initials: str) -> str:
     ('+ saves, then asks your initials', '+ saves as MK')
     """
     return f"+ saves as {literal(initials)}" if initials else "+ saves, then asks your initials"
-
-
-def _doubt(bench: Bench, kind: str, texts: Texts, name: str, loop: str) -> tuple[str, ...]:
-    """What is odd about one field of an entry that may not be complete yet."""
-    from fertui.refusals import Refusal
-
-    try:
-        asked = bench.questions(kind, texts, loop)
-    except Refusal:  # an incomplete entry cannot be asked about as a whole; the value itself was understood
-        return ()
-    return tuple(question.text for question in asked if question.field and question.field.lower() == name.lower())
-
-
-def _look(bench: Bench, found: list[tuple[str, Texts]], by: str, loop: str) -> list[str]:
-    """Everything odd about the entries of a form, each text once."""
-    asked: list[str] = []
-    for kind, texts in found:
-        asked += [question.text for question in bench.questions(kind, {**texts, "by": by}, loop)]
-    return list(dict.fromkeys(asked))
-
-
-def _record(bench: Bench, entries: list[tuple[str, Texts]], loop: str) -> tuple[Any, int]:
-    return bench.record_all(entries, loop), bench.last_number()
-
-
-def saved_words(entries: Iterable[Entry]) -> str:
-    """What was read back from the logbook, in one line."""
-    from fertui.tui.entry_list import said
-
-    return "saved " + "; ".join(f"{entry.number} {entry.kind} {said(entry)}" for entry in entries)

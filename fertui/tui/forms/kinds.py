@@ -69,7 +69,8 @@ def reading(site: Site, loop: Loop, unit: str) -> Spec:
 
 ROUND_HELP = (
     "The morning round in its order. Type a number and press Enter; the last value stands beside each field. "
-    "Empty means not measured. + saves from any field, * takes the last value again, Tab goes to the next group. "
+    "Empty means not measured. After the last field Enter saves and opens the round of the next loop; + saves from any "
+    "field and ends here. * takes the last value again, Tab goes to the next group. "
     "Both . and , are decimal marks; a unit may follow the number. Litres without a time cover the time since the "
     "last entry."
 )
