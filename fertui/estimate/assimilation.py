@@ -95,9 +95,7 @@ class Assimilation:
         self.after: list[tuple[Observation, Ensemble, Spread, int]] = []
         self.stops: list[Stop] = []
 
-    def run(
-        self, before: Assimilation | None = None, progress: Callable[[float], None] | None = None
-    ) -> Estimate:
+    def run(self, before: Assimilation | None = None, progress: Callable[[float], None] | None = None) -> Estimate:
         """Through all stretches to the end of the record, or through those that differ from an earlier run."""
         if self.begin.analysis is not None:
             self.after.append((self.begin.analysis, self.ensemble, self.spread, 0))

@@ -13,7 +13,8 @@ from fertui.estimate.drives import stock_proportions
 from fertui.estimate.ensemble import ALKALINITY_MEQ_L, Ensemble, compartment, unknowns
 from fertui.estimate.noise import normals
 from fertui.estimate.observations import Observation
-from fertui.estimate.record import HISTORY_DAYS, WHOLE_DAYS, Record, start_among
+from fertui.estimate.reach import HISTORY_DAYS, WHOLE_DAYS, start_among
+from fertui.estimate.record import Record
 from fertui.estimate.setting import Setting
 from fertui.estimate.unanalysed import filled_up, unseen
 from fertui.loop import ROOT, STORE, start

@@ -17,17 +17,13 @@ from fertui.catalogue.figures import CatalogueError
 from fertui.chemistry.ions import IONS, Array
 from fertui.estimate import compositions
 from fertui.estimate.observations import Observation, observations
+from fertui.estimate.reach import HISTORY_DAYS, WHOLE_DAYS
 from fertui.estimate.source_waters import as_analysed, water_analyses
 from fertui.estimate.spreads import Spread, Steps, spread
 from fertui.logbook.entries import Entry
+from fertui.logbook.growing import stands_after
 from fertui.loop.values import Event
 from fertui.site.model import Loop, Site
-
-HISTORY_DAYS, WHOLE_DAYS = 180, 730
-"""An estimate begins at most so far back: what happened earlier has left the solution long ago. The record of past
-forecasts goes two years back."""
-LEAST_DAYS, KEPT_ANALYSES, SHIFT = 60, 6, 3
-"""It begins at least 60 days back and at least six analyses back, and moves on by three analyses at a time."""
 
 ANEW = ("planted", "replanted", "new medium", "emptied", "refilled")
 WATER_AMOUNTS = ("make_up", "irrigation", "drain", "condensate", "crop")
@@ -44,6 +40,7 @@ class Record(NamedTuple):
     ``stock_held``: what each stock tank held from which batch on [mmol/L].
     ``waters``: what each source water of the site holds (10,) [mmol/L], by its name in lower case: as the site file
     says, and from each analysis on. ``site_now``: the site with its waters as last analysed.
+    ``standing``: whether a crop stands, from each time on at which that changed.
     ``feed``: knots (time, composition) of a known feed. ``anew``: times at which the estimate must start afresh.
     """
 
@@ -66,6 +63,7 @@ class Record(NamedTuple):
     site_now: Site
     setpoints: Steps[Mapping[str, float | str]]
     stages: Steps[Mapping[str, float | str]]
+    standing: Steps[bool]
     light: Mapping[int, float]
     drain_pct: Steps[float]
     observations: tuple[Observation, ...]
@@ -77,6 +75,15 @@ class Record(NamedTuple):
     def time(self, moment: datetime) -> float:
         """Days from ``zero`` to a moment."""
         return (moment - self.zero).total_seconds() / 86400.0
+
+    def has_crop(self, time: float) -> bool:
+        """Whether a crop stands at a time: so it is until one was removed."""
+        return self.standing.at(time) is not False
+
+    @property
+    def bare_since(self) -> datetime | None:
+        """Since when no crop stands at the end of the record; None where one does."""
+        return None if self.has_crop(self.end) else self.moment(self.standing.times[-1])
 
     def water_at(self, name: str, time: float) -> Array:
         """What a source water holds (10,) [mmol/L] at a time; nothing where nobody analysed it."""
@@ -115,34 +122,6 @@ class Record(NamedTuple):
     def local_day(self, days: float) -> int:
         """Ordinal of the local date at a time: what daily random numbers are keyed by."""
         return self.moment(days + 1e-6).astimezone(ZoneInfo(self.site.timezone)).toordinal()
-
-
-def start_among(times: Sequence[float], end: float, kept: int = KEPT_ANALYSES) -> float:
-    """When an estimate up to ``end`` begins, from the times [d] of its analyses in order.
-
-    >>> start_among([0.0, 10.0, 20.0, 30.0, 40.0, 50.0, 60.0, 70.0, 80.0, 90.0, 100.0], 101.0)
-    30.0
-    """
-    if not times:
-        return end - LEAST_DAYS
-    place = max((len(times) - kept) // SHIFT * SHIFT, 0)
-    early = [time for time in times if time <= end - LEAST_DAYS]
-    return min(times[place], early[-1] if early else times[0])
-
-
-def since_needed(at: datetime, analyses: Iterable[Entry] = ()) -> datetime:
-    """The earliest time whose entries an estimate at ``at`` looks at, those that stay in force aside.
-
-    ``analyses``: analysis entries of all loops of the last ``HISTORY_DAYS``; without any it is that far back.
-    """
-    oldest = at - timedelta(days=HISTORY_DAYS + 7)
-    by_loop: dict[str, list[float]] = {}
-    for entry in sorted(analyses, key=lambda each: each.at):
-        if oldest <= entry.at <= at and entry.point not in ("source", "feed") and not entry.doubtful:
-            by_loop.setdefault(entry.loop, []).append((entry.at - oldest).total_seconds() / 86400.0)
-    end = HISTORY_DAYS + 7.0
-    starts = [start_among(times, end, KEPT_ANALYSES + SHIFT) for times in by_loop.values()]
-    return max(oldest + timedelta(days=min(starts) - 1.0), oldest) if starts else oldest
 
 
 def read(site: Site, loop: Loop, entries: Iterable[Entry], at: datetime, whole: bool = False) -> Record:
@@ -194,7 +173,8 @@ class _Reader:
             events=self._events(seen), feed=self._feed(seen),
             recipes=self._recipes(), sources=self._sources(), waters=self._waters(),
             site_now=as_analysed(self.site, self.of_all_loops, at), setpoints=self._steps("setpoint"),
-            stages=self._steps("crop"), light=self._light(), drain_pct=self._drain_pct(), observations=seen,
+            stages=self._steps("crop"), standing=self._standing(), light=self._light(),
+            drain_pct=self._drain_pct(), observations=seen,
             anew=self._anew(ANEW), new_medium=max(self._anew(("planted", "replanted", "new medium")), default=None),
             plans=tuple(self._of("plan")), assumed=tuple(self.assumed),
         )  # fmt: skip
@@ -364,6 +344,15 @@ class _Reader:
             times.append(self.days(entry.at))
             values.append(merged)
         return Steps(tuple(times), tuple(values))
+
+    def _standing(self) -> Steps[bool]:
+        changes: list[tuple[float, bool]] = []
+        stands = True
+        for entry in self._certain("crop"):
+            before, stands = stands, stands_after(entry, stands)
+            if stands != before:
+                changes.append((self.days(entry.at), stands))
+        return Steps(tuple(time for time, _ in changes), tuple(each for _, each in changes))
 
     def _light(self) -> dict[int, float]:
         given = [entry for entry in self._certain("reading") if entry.number_of("light_sum") is not None]

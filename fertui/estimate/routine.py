@@ -123,6 +123,9 @@ class _Builder:
 
     def _water(self, time: float) -> tuple[Array, Array]:
         """Crop water and irrigation (M,) [L/d]: what-if, else plan, else light, else the last week's mean."""
+        if not self.record.has_crop(self.now):
+            self._assume("no crop stands: nothing is taken up")
+            return np.zeros(self.estimate.members), np.zeros(self.estimate.members)
         usual_crop, usual_irrigation = (float(each[-WEEK:].mean()) for each in (self.past.crop, self.past.irrigation))
         area = self.loop.area_m2
         irrigation, drain = self._planned("irrigation", time), self._planned("drain", time)

@@ -55,13 +55,20 @@ def waters(record: Record, setting: Setting, grid: Array) -> Waters:
     known = np.where(logged["crop"], rate["crop"], known)
     origin = np.where(balanced | logged["crop"], BALANCED, ASSUMED)
     origin = np.where(logged["irrigation"] & ~logged["crop"], DRAINED, origin)
-    crop = _filled(known, days, setting.crop_water_l_per_m2_d * setting.loop.area_m2)
+    stands = _stands(record, grid)
+    origin = np.where(stands, origin, BALANCED)
+    crop = _filled(known, days, setting.crop_water_l_per_m2_d * setting.loop.area_m2) * stands
     irrigation = np.where(logged["irrigation"], rate["irrigation"], crop / (1.0 - drain_part))
     steered = logged["make_up"] & (len(record.levels) > 1)
     make_up = np.where(steered, rate["make_up"], np.nan)
     floor = 0.1 * setting.loop.area_m2
     reference = np.maximum(np.cumsum(crop * days) / np.cumsum(days), floor)
     return Waters(irrigation, np.minimum(drain, irrigation), crop, make_up, rate["condensate"], origin, reference)
+
+
+def _stands(record: Record, grid: Array) -> Flags:
+    """Whether a crop stands in every stretch: without one no water is taken, and with it no ion."""
+    return np.array([record.has_crop(time) for time in (grid[:-1] + grid[1:]) / 2.0])
 
 
 def lately(record: Record, setting: Setting, days: int = 14) -> Waters:

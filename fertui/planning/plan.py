@@ -15,10 +15,15 @@ from fertui.planning.programme import Solver
 from fertui.planning.recipe_plan import recipe_plan
 from fertui.planning.renewal import year_kg_n
 from fertui.planning.request import Request, Wishes, goals_of, materials_of
-from fertui.planning.runs import ModelRuns, Runs, Situation, StillRuns
+from fertui.planning.runs import Doing, ModelRuns, Runs, Situation, StillRuns
 from fertui.planning.shelf import PlanningError
-from fertui.planning.values import Plan
+from fertui.planning.values import Outlook, Plan
 from fertui.site.model import Composition, Water
+
+NO_CROP_STANDS = (
+    "no crop stands in this loop, so nothing is taken up and nothing is planned; log the next one first: crop "
+    "event=planted"
+)
 
 
 def plan(
@@ -63,6 +68,9 @@ def plan(
         runs, Solver(), entries, situation.points, not estimate.analyses and bool(estimate.record.observations),
         year_kg_n(estimate, entries),
     )  # fmt: skip
+    if estimate.record.bare_since is not None:
+        nothing = request.empty(Outlook(runs.shown(Doing())))
+        return request.counted(nothing._replace(feasible=False, reason=NO_CROP_STANDS))
     if situation.loop.layout == "shared-tank":
         return hand_plan(request)
     return recipe_plan(request, estimate)

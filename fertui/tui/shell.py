@@ -127,8 +127,8 @@ class Shell(App[int], inherit_bindings=False):
             return self.folder.name
         site, loop = self.snapshot.site, self.snapshot.site.loop(self.snapshot.loop)
         glance = self.snapshot.get(Ask("glance", loop.name))
-        stage = glance.stage if glance is not None else loop.stage
-        grown = ", ".join(word for word in (loop.crop, stage, loop.medium) if word and word != "none")
+        crop, stage = (loop.crop, loop.stage) if glance is None else (glance.crop, glance.stage)
+        grown = ", ".join(word for word in (crop, stage, loop.medium) if word and word != "none")
         return f"{site.name}, {loop.name}: {grown}"
 
     def local(self, moment: datetime) -> datetime:

@@ -80,7 +80,7 @@ class SiteFolder:
         Of what has left every solution long ago only what stays in force, or counts for a year, is read: a book of
         many years answers like a new one.
         """
-        from fertui.estimate.record import since_needed
+        from fertui.estimate.reach import since_needed
 
         at = at or now()
         analyses = self.book.entries(kinds=("analysis",), since=since_needed(at), at=at, known=known)

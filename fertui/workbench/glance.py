@@ -7,6 +7,7 @@ from datetime import datetime
 from typing import NamedTuple
 
 from fertui.logbook.entries import Entry
+from fertui.logbook.growing import NO_CROP, stands_after
 from fertui.site.model import Loop
 
 
@@ -45,7 +46,7 @@ def glance(loop: Loop, entries: Iterable[Entry], at: datetime) -> Glance:
     """Last reading of every point, last analysis, set points, from effective entries in the order of their time."""
     readings: dict[str, Seen] = {}
     analysis = None
-    set_ec, set_ph, stage = loop.feed_ec, loop.feed_ph, loop.stage
+    set_ec, set_ph, stage, stands = loop.feed_ec, loop.feed_ph, loop.stage, True
     for entry in entries:
         if entry.kind == "reading":
             readings[entry.point or managed_point(loop)] = seen(entry)
@@ -55,12 +56,12 @@ def glance(loop: Loop, entries: Iterable[Entry], at: datetime) -> Glance:
             set_ec = _later(entry.number_of("EC"), set_ec)
             set_ph = _later(entry.number_of("pH"), set_ph)
         elif entry.kind == "crop":
-            stage = entry.text_of("stage") or stage
+            stage, stands = entry.text_of("stage") or stage, stands_after(entry, stands)
     return Glance(
         loop.name,
         loop.layout,
-        loop.crop,
-        stage,
+        loop.crop if stands else NO_CROP,
+        stage if stands else "",
         loop.medium,
         at,
         managed_point(loop),

@@ -78,7 +78,7 @@ def today(estimate: Estimate, entries: Sequence[Entry], ahead: Forecast) -> Toda
     return Today(
         loop=loop.name,
         layout=loop.layout,
-        crop=loop.crop,
+        crop=last.crop,
         stage=last.stage,
         medium=loop.medium,
         at=at,

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from fertui.estimate.notices import bands, explaining, feeding, missing, roots, samples, trust
+from fertui.estimate.notices import bands, crop, explaining, feeding, missing, roots, samples, trust
 from fertui.estimate.notices.look import Look
 from fertui.estimate.notices.notice import SEVERITIES, Notice, Rule
 from fertui.estimate.notices.stocks import StockLeft, stock_days_left, stock_left
@@ -43,6 +43,9 @@ RULES: tuple[Rule, ...] = (
 )
 """Asked in this order, which is also the order of notices of one severity."""
 
+BARE_RULES: tuple[Rule, ...] = (crop.gone, roots.acidity, trust.meters, trust.held_back)
+"""Those of a loop without a crop: the solution can still hurt somebody, and what is measured can still be wrong."""
+
 
 def notices(estimate: Estimate, entries: Sequence[Entry], ahead: Forecast | None = None) -> tuple[Notice, ...]:
     """What to look at in a loop, act first, from its estimate, the effective entries of the site and its forecast.
@@ -50,5 +53,6 @@ def notices(estimate: Estimate, entries: Sequence[Entry], ahead: Forecast | None
     Without a forecast nothing is said of the days ahead. The same data give the same list.
     """
     look = Look(estimate, entries, ahead)
-    found = [notice for rule in RULES for notice in rule(look)]
+    rules = RULES if estimate.record.bare_since is None else BARE_RULES
+    found = [notice for rule in rules for notice in rule(look)]
     return tuple(sorted(found, key=lambda notice: SEVERITIES.index(notice.severity)))

@@ -24,7 +24,6 @@ NORMAL_10 = 1.2815515655446004
 """Standard deviations from the median to the 10 % and 90 % quantiles of a normal distribution."""
 
 
-
 class Notice(NamedTuple):
     """One thing to look at: ``severity`` act, watch or note; ``key`` of the form or view where it is acted upon."""
 
