@@ -12,6 +12,7 @@ from fertui.logbook.errors import LogbookError
 from fertui.logbook.kinds import KILOGRAMS, KINDS, METHODS, WRITTEN_ABOUT_EVERY_ENTRY, Kind, kind_named, nearest
 from fertui.logbook.readers import field_named, read_value, supply_named, unknown_name
 from fertui.logbook.sampling import at_25, check_method
+from fertui.logbook.signing import initials
 from fertui.logbook.times import AHEAD, EARLIEST, noon, read_moment, zone
 from fertui.site.model import POINTS, Loop, Site
 from fertui.site.points import point_called
@@ -133,8 +134,7 @@ def _text(value: Value | None) -> str:
 def _complete(entry: Entry, site: Site, loop: Loop) -> Entry:
     """The entry with what the site knows filled in; raises ``LogbookError`` for what is missing or contradicts."""
     kind = KINDS[entry.kind]
-    if not entry.by:
-        raise LogbookError("by is missing: who made this entry? Give by=INITIALS or set FERTUI_OPERATOR.")
+    initials(entry.by)
     missing = [field.name for field in kind.fields if field.required and entry.value(field.name) is None]
     if missing:
         example = f"{missing[0]}={_example(kind, missing[0])}"

@@ -7,6 +7,7 @@ from datetime import UTC, datetime
 from functools import cached_property, partial
 from typing import TYPE_CHECKING
 
+from fertui.logbook.signing import ALLOWED
 from fertui.refusals import Refusal
 from fertui.tui.desk import Answer
 from fertui.tui.drafts import Draft, Drafts
@@ -103,8 +104,8 @@ class Entering(Working):
         def given(text: str) -> None:
             try:
                 initials = self.initials.give(text)
-            except Refusal as no:
-                self.ask(str(no), given)
+            except Refusal:
+                self.ask(f"Initials are {ALLOWED}:", given)
                 return
             self.snapshot = self.snapshot._replace(initials=initials)
             then(initials)

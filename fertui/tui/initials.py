@@ -2,25 +2,10 @@
 
 from __future__ import annotations
 
-import re
 import time
 from collections.abc import Callable
 
-from fertui.refusals import Refusal
-
-_ALLOWED = re.compile(r"[^\W_][\w.-]{0,15}")
-
-
-def checked(text: str) -> str:
-    """Initials as they are written in the logbook; raises ``Refusal`` for what is none.
-
-    >>> checked(" MK ")
-    'MK'
-    """
-    text = text.strip()
-    if not _ALLOWED.fullmatch(text):
-        raise Refusal("Initials are 1 to 16 letters or digits.")
-    return text
+from fertui.logbook.signing import initials
 
 
 class Initials:
@@ -28,7 +13,7 @@ class Initials:
 
     def __init__(self, lasting: str, minutes: int, clock: Callable[[], float] = time.monotonic) -> None:
         self._clock = clock
-        self._lasting = checked(lasting) if lasting else ""
+        self._lasting = initials(lasting) if lasting else ""
         self._pause = minutes * 60.0
         self._given, self._seen = "", 0.0
 
@@ -43,7 +28,7 @@ class Initials:
 
     def give(self, text: str) -> str:
         """Someone says who they are."""
-        self._given, self._seen = checked(text), self._clock()
+        self._given, self._seen = initials(text), self._clock()
         return self._given
 
     def touch(self) -> None:

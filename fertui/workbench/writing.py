@@ -85,7 +85,9 @@ class Writing(Answers):
 
     def void(self, number: int, why: str, by: str) -> Entry:
         """Strike an entry; it stays visible."""
-        return self._stored((self.book.void(number, why, by),))
+        from fertui.logbook.signing import initials
+
+        return self._stored((self.book.void(number, why, initials(by)),))
 
     def import_table(self, path: Path, kind: str, loop: str | None = None, **wishes: Any) -> ImportResult:
         """Take in a table; ``wishes`` as in ``keeping.import_table``."""
@@ -107,12 +109,13 @@ class Writing(Answers):
 
     def change_site(self, key: str, text: str, by: str) -> Entry:
         """Change one value of the site file as it is now, keep the old file, and log the new one whole."""
+        from fertui.logbook.signing import initials
         from fertui.site.edit import changed, rows
         from fertui.site.files import write_site
 
         before = self.read_site_again()
         old = next((row.text for row in rows(before) if row.key == key), "")
-        site = changed(before, key, text, source=f"{by}, {now():%Y-%m-%d}")
+        site = changed(before, key, text, source=f"{initials(by)}, {now():%Y-%m-%d}")
         path = write_site(site, self.folder, datetime.now(UTC))
         self.__dict__.pop("site", None)
         words = {"text": path.read_text(encoding="utf-8"), "note": f"{key}: {old or 'nothing'} -> {text or 'nothing'}"}

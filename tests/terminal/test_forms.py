@@ -16,6 +16,7 @@ from conftest import Opened
 from pseudo_terminal import PseudoTerminal
 
 from fertui.logbook.entries import Entry
+from fertui.logbook.errors import LogbookError
 from fertui.logbook.kinds import KINDS
 from fertui.workbench import open_site
 
@@ -293,6 +294,16 @@ def test_initials_refused_or_left_save_nothing_and_say_so(site: Path, counting: 
     counting.terminal.press("+")
     give_initials(counting.terminal)
     counting.terminal.until_text("saved")
+
+
+def test_the_rule_for_initials_is_that_of_the_command_line(site: Path, counting: Counted) -> None:
+    counting.terminal.press("r", "2.6", "+")
+    counting.terminal.until_text("Your initials:")
+    counting.terminal.press("Mary M", "enter")
+    counting.terminal.until_text("Initials are 1 to 16 letters or digits without spaces")
+    with pytest.raises(LogbookError, match="1 to 16 letters or digits without spaces"):
+        open_site(site).void(1, why="slip", by="Mary M")
+    assert fresh(site, "reading") == []
 
 
 def test_star_takes_the_last_value(counting: Counted) -> None:
