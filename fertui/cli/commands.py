@@ -6,7 +6,7 @@ import os
 import sys
 from collections.abc import Callable, Mapping
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 from zoneinfo import ZoneInfo
 
 from fertui.cli.confirming import confirmed, say_how_to_undo
@@ -21,11 +21,9 @@ from fertui.cli.options import (
     read_view,
     read_whole,
 )
+from fertui.cli.releasing import held_back, release
 from fertui.refusals import Refusal
 from fertui.workbench import Bench, open_site
-
-if TYPE_CHECKING:
-    from fertui.paper import Page
 
 
 def run(options: Options) -> int:
@@ -218,8 +216,8 @@ def plan(options: Options) -> int:
     bench, view = read_view(options)
     made = bench.plan(days=read_whole(options.days, "--days", 0, 60), **view, **_wishes(options))
     if options.sheet:
-        _release(bench, made, bench.plan_page(made), options)
-    held = () if options.json else _held_back(bench, made, options)
+        release(bench, made, bench.plan_page(made), options)
+    held = () if options.json else held_back(bench, made, options)
     _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, read_unit(bench, options), held))
     return FINE if made.feasible else NO
 
@@ -247,7 +245,7 @@ def stock(options: Options) -> int:
         return _show(options, lambda: document, lambda: last_mix_text(mixes))
     sheet = bench.stock(**view, left_l=_left(bench, options))
     page = bench.stock_page(sheet, view["loop"])
-    _release(bench, sheet, page, options)
+    release(bench, sheet, page, options)
     _show(options, lambda: stock_document(sheet), lambda: page.text)
     return FINE if sheet.feasible else NO
 
@@ -269,45 +267,11 @@ def acid(options: Options) -> int:
     bench, view = read_view(options)
     sheet = bench.acid(**view)
     page = bench.acid_page(sheet, view["loop"])
-    _release(bench, sheet, page, options)
-    held = () if options.json else _held_back(bench, sheet, options)
+    release(bench, sheet, page, options)
+    held = () if options.json else held_back(bench, sheet, options)
     shown = bench.acid_page(sheet, view["loop"], released=False) if held else page
     _show(options, lambda: acid_document(sheet), lambda: shown.text)
     return FINE if sheet.feasible else NO
-
-
-def _held_back(bench: Bench, made: Any, options: Options) -> tuple[tuple[str, float], ...]:
-    """Acids and lyes whose amounts a text keeps to itself: none once cautions were read and the label matches.
-
-    JSON holds them back from nobody: it is data, with the cautions beside it.
-    """
-    from fertui.workbench.carrying_out import acids_of
-
-    said = _label(options)
-    if said is not None:
-        bench.acknowledge(made, said)
-        return ()
-    return acids_of(made)
-
-
-def _label(options: Options) -> float | None:
-    """The strength read off a label, once the cautions were read."""
-    strength = None if options.label_strength is None else read_number(options.label_strength, "--label-strength")
-    return strength if options.cautions_read else None
-
-
-def _release(bench: Bench, made: Any, page: Page, options: Options) -> None:
-    """Write a sheet to the file asked for; one with acid only after its cautions were read and its label matches."""
-    if not options.sheet:
-        return
-    said = _label(options)
-    try:
-        bench.acknowledge(made, said)
-    except Refusal as no:
-        how = " Say so with --cautions-read --label-strength PERCENT." if said is None else ""
-        raise Refusal(f"{no}{how}") from None
-    path = Path(options.sheet)
-    bench.write(page.csv() if path.suffix.lower() == ".csv" else page.text, path)
 
 
 def paper(options: Options) -> int:

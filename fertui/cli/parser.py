@@ -74,7 +74,9 @@ def build() -> Parser:
         dest="command", metavar="COMMAND", prog="fertui", parser_class=Parser, help=argparse.SUPPRESS
     )
     _site_commands(commands)
-    _write_commands(commands)
+    _entry_commands(commands)
+    _table_commands(commands)
+    _copy_commands(commands)
     _read_commands(commands)
     _paper_commands(commands)
     parser.description = f"{ABOUT}\n{_listed(commands_of(parser))}"
@@ -181,7 +183,7 @@ NEW_OPTIONS = {
 }
 
 
-def _write_commands(commands: argparse._SubParsersAction) -> None:
+def _entry_commands(commands: argparse._SubParsersAction) -> None:
     record = _add(
         commands,
         "record",
@@ -206,6 +208,9 @@ def _write_commands(commands: argparse._SubParsersAction) -> None:
     strike.add_argument("site", metavar="SITE", help=SITE)
     strike.add_argument("number", metavar="NUMBER", help="number of the entry, as the logbook shows it")
     strike.add_argument("values", nargs="+", metavar="name=value", help='why="..." and by=')
+
+
+def _table_commands(commands: argparse._SubParsersAction) -> None:
     load = _add(commands, "import", "take in a table", "fertui import north lab.csv --as analysis --dry-run")
     load.add_argument("site", metavar="SITE", help=SITE)
     load.add_argument("file", metavar="FILE", help="CSV; the unit of a column stands in its head: K [mmol/L]")
@@ -221,6 +226,9 @@ def _write_commands(commands: argparse._SubParsersAction) -> None:
     export = _add(commands, "export", "write the logbook as tables, one a kind", "fertui export north --into tables")
     export.add_argument("site", metavar="SITE", help=SITE)
     export.add_argument("--into", required=True, metavar="DIR", help="folder for the tables")
+
+
+def _copy_commands(commands: argparse._SubParsersAction) -> None:
     backup = _add(commands, "backup", "write the whole book verbatim", "fertui backup north north.jsonl")
     backup.add_argument("site", metavar="SITE", help=SITE)
     backup.add_argument("file", metavar="FILE", help="where to write it (JSON lines)")

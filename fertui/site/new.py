@@ -75,18 +75,11 @@ def new_site(
     path = Path(folder)
     refuse_place(path)
     first = Loop(
-        name=loop or _canonical_crop(crop),
-        layout=layout,
-        area_m2=area_m2,
-        crop=_canonical_crop(crop),
-        medium=_canonical_medium(medium),
-        stage=stage or "",
-        target=target or "",
-        tank_l=tank_l,
-        drain_store_l=drain_store_l,
-        medium_volume_l_per_m2=medium_volume_l_per_m2,
+        name=loop or _canonical_crop(crop), layout=layout, area_m2=area_m2, crop=_canonical_crop(crop),
+        medium=_canonical_medium(medium), stage=stage or "", target=target or "", tank_l=tank_l,
+        drain_store_l=drain_store_l, medium_volume_l_per_m2=medium_volume_l_per_m2,
         root_zone_water_l_per_m2=root_zone_water_l_per_m2,
-    )
+    )  # fmt: skip
     site = Site(
         name=name or path.resolve().name or "site",
         timezone=timezone or machine_timezone(),

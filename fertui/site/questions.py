@@ -98,6 +98,7 @@ def questions() -> tuple[Question, ...]:
         *_about_the_loop(),
         *_about_tanks(),
         *_about_the_root_zone(),
+        *_about_the_water(),
         *_about_feeding(),
         *_about_names(),
     )
@@ -239,7 +240,7 @@ def _about_the_root_zone() -> tuple[Question, ...]:
     )
 
 
-def _about_feeding() -> tuple[Question, ...]:
+def _about_the_water() -> tuple[Question, ...]:
     return (
         Question(
             "water",
@@ -264,6 +265,11 @@ def _about_feeding() -> tuple[Question, ...]:
             instead=lambda answers: "not analysed yet",
             applies=lambda answers: answers.get("water", "").lower() not in PURE_WATER,
         ),
+    )
+
+
+def _about_feeding() -> tuple[Question, ...]:
+    return (
         Question(
             "target",
             "target",

@@ -9,7 +9,7 @@ from fertui.cli.views import as_json, words
 from fertui.estimate.signs import SIGNS
 from fertui.paper.cautions import read_first
 from fertui.paper.page import columns, folded
-from fertui.planning.values import Outlook, Plan
+from fertui.planning.values import Outlook, Plan, RecipeChange, Renewal
 from fertui.site.points import point_name
 from fertui.workbench.today import reading_of, unit_of
 
@@ -148,7 +148,6 @@ def _binding(each: Any) -> str:
 
 def document(plan: Plan) -> dict[str, Any]:
     """The contract of ``plan --json``."""
-    recipe, renewal = plan.recipe, plan.renewal
     return {
         "schema": "fertui.plan/1",
         "loop": plan.loop,
@@ -157,26 +156,10 @@ def document(plan: Plan) -> dict[str, Any]:
         "feasible": plan.feasible,
         "reason": plan.reason,
         "horizon_days": plan.horizon_days,
-        "recipe": None
-        if recipe is None
-        else {
-            "ions_mmol_L": recipe.ions_mmol_l,
-            "change_pct": recipe.change_pct,
-            "EC_mS_cm": recipe.ec,
-            "tanks": [] if recipe.sheet is None else tanks(recipe.sheet),
-        },
+        "recipe": None if plan.recipe is None else _recipe_data(plan.recipe),
         "steps": [as_json.plain(step) for step in plan.steps],
         "acid": [_acid_step(step) for step in plan.acid],
-        "renewal": None
-        if renewal is None
-        else {
-            "litres": renewal.litres,
-            "refill": renewal.refill,
-            "kg_N": renewal.kg_n,
-            "kg_P": renewal.kg_p,
-            "year_kg_N": renewal.year_kg_n,
-            "at": renewal.at,
-        },
+        "renewal": None if plan.renewal is None else _renewal_data(plan.renewal),
         "before": {"points": as_json.points(plan.before.points)},
         "after": {"points": as_json.points(plan.after.points)},
         "after_without": {"points": as_json.points(plan.after_without.points)},
@@ -188,6 +171,26 @@ def document(plan: Plan) -> dict[str, Any]:
         "model_runs": plan.model_runs,
         "solver_calls": plan.solver_calls,
         "cautions": [as_json.plain(each) for each in plan.cautions],
+    }
+
+
+def _recipe_data(recipe: RecipeChange) -> dict[str, Any]:
+    return {
+        "ions_mmol_L": recipe.ions_mmol_l,
+        "change_pct": recipe.change_pct,
+        "EC_mS_cm": recipe.ec,
+        "tanks": [] if recipe.sheet is None else tanks(recipe.sheet),
+    }
+
+
+def _renewal_data(renewal: Renewal) -> dict[str, Any]:
+    return {
+        "litres": renewal.litres,
+        "refill": renewal.refill,
+        "kg_N": renewal.kg_n,
+        "kg_P": renewal.kg_p,
+        "year_kg_N": renewal.year_kg_n,
+        "at": renewal.at,
     }
 
 
