@@ -3,6 +3,7 @@ day)."""
 
 from __future__ import annotations
 
+import re
 import shutil
 import sys
 from collections.abc import Callable, Iterator
@@ -55,6 +56,13 @@ def ready() -> Iterator[ReadyProgram]:
 def own_folders(home: Path) -> dict[str, str]:
     """An environment in which the program keeps its settings in a folder of the test."""
     return {"HOME": str(home), "XDG_CONFIG_HOME": str(home / "config"), "XDG_STATE_HOME": str(home / "state")}
+
+
+def frame_stands(terminal: PseudoTerminal, site_name: str) -> bool:
+    """Whether header with place and clock, view names and the line of keys are where they belong."""
+    rows = terminal.screen.display
+    head = re.match(r" " + re.escape(site_name) + r".* \d\d:\d\d( +[\w.-]+)? *$", rows[0])
+    return bool(head and re.match(r" ?1 ?Today", rows[1]) and rows[-1].strip())
 
 
 @pytest.fixture

@@ -3,12 +3,11 @@
 from __future__ import annotations
 
 import json
-import re
 from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
-from conftest import Opened
+from conftest import Opened, frame_stands
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from pseudo_terminal import PseudoTerminal
@@ -31,14 +30,10 @@ KEPT = [name for name in NASTY if name != "escapes"]
 VIEWS = "123456789"
 
 
-def frame_stands(terminal: PseudoTerminal, site_name: str = "Demo nursery") -> None:
-    """Header, view names and keys are where they belong, and no text has coloured or moved anything."""
+def look(terminal: PseudoTerminal, site_name: str = "Demo nursery") -> None:
+    """Wait until the frame stands at rest: no text has coloured or moved anything of it."""
     terminal.settle()
-    rows = terminal.screen.display
-    assert rows[0].startswith(f" {site_name}"), terminal.text
-    assert re.search(r"\d\d:\d\d( +\w+)? *$", rows[0]), terminal.text
-    assert re.match(r" ?1 ?Today", rows[1]), terminal.text
-    assert rows[23].strip(), terminal.text
+    terminal.until(lambda _: frame_stands(terminal, site_name))
     assert "fault of its own" not in terminal.text
 
 
@@ -52,7 +47,7 @@ def test_a_note_is_shown_literally_and_the_frame_stands(
     terminal.until_text(f"▸{number}")
     terminal.press("enter")
     terminal.until_text("written down")
-    frame_stands(terminal)
+    look(terminal)
     assert "Esc back" in terminal.screen.display[23]
     if name == "markup":
         assert "[red]not red[/red]" in terminal.text
@@ -72,7 +67,7 @@ def test_a_note_with_any_kind_of_entry_leaves_every_view_whole(
     terminal.until_text(f"▸{number}")
     for view in VIEWS:
         terminal.press(view)
-        frame_stands(terminal)
+        look(terminal)
 
 
 @pytest.mark.parametrize("kind", FORMS)
@@ -85,10 +80,10 @@ def test_anything_can_be_pasted_into_every_field_of_a_form(
     terminal.until_text(", north bay")
     for text in NASTY.values():
         terminal.type(f"\x1b[200~{text}\x1b[201~".encode())
-        frame_stands(terminal)
+        look(terminal)
         terminal.press("down")
     terminal.press("esc", "esc")
-    frame_stands(terminal)
+    look(terminal)
 
 
 @pytest.mark.parametrize("name", NASTY)
@@ -98,9 +93,9 @@ def test_a_draft_with_anything_in_it_is_offered_literally(site: Path, open_termi
     terminal.until_text("more to look at")
     terminal.press("e", "note", "enter")
     terminal.until_text("half-filled")
-    frame_stands(terminal)
+    look(terminal)
     terminal.press("enter")
-    frame_stands(terminal)
+    look(terminal)
 
 
 @pytest.mark.parametrize("name", NASTY)
@@ -114,11 +109,11 @@ def test_names_in_the_site_file_are_shown_literally_or_refused(site: Path, open_
     terminal = open_terminal(site)
     shown = terminal.until(lambda text: "to look at" in text or "cannot be opened" in text)
     if "cannot be opened" in shown:
-        frame_stands(terminal, "nursery")
+        look(terminal, "nursery")
         return
     for view in VIEWS:
         terminal.press(view)
-        frame_stands(terminal)
+        look(terminal)
 
 
 @given(st.text(max_size=60), st.integers(1, 40))
