@@ -164,8 +164,10 @@ class PseudoTerminal:
         os.kill(self.pid, number)
 
     def until_stopped(self) -> None:
-        """Read until the program is suspended."""
+        """Read until the program is suspended, and all it sent before."""
         self.until(lambda _: self._states() == {"T"})
+        while self.read(0):
+            pass
 
     def hang_up(self) -> None:
         """Close our end of the line."""
