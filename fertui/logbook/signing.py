@@ -1,4 +1,4 @@
-"""Who made an entry: the one rule for initials, whichever way they come in."""
+"""Who made an entry: the one rule for initials and names, whichever way they come in."""
 
 from __future__ import annotations
 
@@ -6,14 +6,12 @@ import re
 
 from fertui.logbook.errors import LogbookError
 
-ALLOWED = "1 to 16 letters or digits without spaces, such as MK"
-_INITIALS = re.compile(r"[^\W_][\w.-]{0,15}")
+ALLOWED = "1 to 40 letters, digits, spaces, . ' or -, such as MK"
+_INITIALS = re.compile(r"[^\W_][\w .'-]{0,39}")
 
 
 def initials(text: str) -> str:
-    """Initials as they are written in the logbook; raises ``LogbookError`` for none and for what is none.
-
-    Short, so that they fit every line and sheet; without spaces, so that a table keeps them in one column.
+    """Initials or a short name as written in the logbook; raises ``LogbookError`` for none and for what is none.
 
     >>> initials(" MK ")
     'MK'
@@ -22,5 +20,5 @@ def initials(text: str) -> str:
     if not text:
         raise LogbookError("by is missing: who made this entry? Give by=INITIALS or set FERTUI_OPERATOR.")
     if not _INITIALS.fullmatch(text):
-        raise LogbookError(f"by = {text!r}: initials are {ALLOWED}.")
+        raise LogbookError(f"by = {text!r}: initials or a name are {ALLOWED}.")
     return text
