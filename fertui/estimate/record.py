@@ -6,7 +6,7 @@ since the previous entry of their kind. Doubtful entries are kept among the obse
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from datetime import UTC, datetime, time, timedelta
 from typing import NamedTuple
 from zoneinfo import ZoneInfo
@@ -22,6 +22,7 @@ from fertui.estimate.source_waters import as_analysed, water_analyses
 from fertui.estimate.spreads import Spread, Steps, spread
 from fertui.logbook.entries import Entry
 from fertui.logbook.growing import stands_after
+from fertui.logbook.intended import carried_out, given, part_left, subject
 from fertui.loop.values import Event
 from fertui.site.model import Loop, Site
 
@@ -41,6 +42,7 @@ class Record(NamedTuple):
     ``waters``: what each source water of the site holds (10,) [mmol/L], by its name in lower case: as the site file
     says, and from each analysis on. ``site_now``: the site with its waters as last analysed.
     ``standing``: whether a crop stands, from each time on at which that changed.
+    ``plans``: what is intended or expected, each with the part of it still to do.
     ``feed``: knots (time, composition) of a known feed. ``anew``: times at which the estimate must start afresh.
     """
 
@@ -69,7 +71,7 @@ class Record(NamedTuple):
     observations: tuple[Observation, ...]
     anew: tuple[float, ...]
     new_medium: float | None
-    plans: tuple[Entry, ...]
+    plans: tuple[tuple[Entry, float], ...]
     assumed: tuple[str, ...]
 
     def time(self, moment: datetime) -> float:
@@ -176,8 +178,18 @@ class _Reader:
             stages=self._steps("crop"), standing=self._standing(), light=self._light(),
             drain_pct=self._drain_pct(), observations=seen,
             anew=self._anew(ANEW), new_medium=max(self._anew(("planted", "replanted", "new medium")), default=None),
-            plans=tuple(self._of("plan")), assumed=tuple(self.assumed),
+            plans=tuple(self._plans()), assumed=tuple(self.assumed),
         )  # fmt: skip
+
+    def _plans(self) -> Iterator[tuple[Entry, float]]:
+        """Plan entries that are not carried out yet, wholly or in part."""
+        done = carried_out(each for entries in self.by_kind.values() for each in entries)
+        for plan in self._of("plan"):
+            begun = done.get(plan.number or 0)
+            name = subject(plan)[1]
+            left = 1.0 if begun is None else part_left(plan.number_of(name) if name else None, given(plan, begun))
+            if left > 0:
+                yield plan, left
 
     def days(self, moment: datetime) -> float:
         """A moment as days from the record's zero [d]."""

@@ -13,13 +13,13 @@ from fertui.chemistry.ions import INDEX, Array
 from fertui.estimate import compositions
 from fertui.estimate.assimilation import Estimate
 from fertui.estimate.drives import Holding, beyond, carried, leaning
+from fertui.estimate.expected import Planned, expected_words, is_coming, plans_of
 from fertui.estimate.noise import normals
 from fertui.estimate.scenario import Scenario
 from fertui.estimate.standing import begun_from, shared_store
 from fertui.estimate.unanalysed import filled_up
 from fertui.estimate.walk import grid_of
 from fertui.estimate.waters import DRAINED, lately
-from fertui.logbook.entries import Entry
 from fertui.loop import Drive, Event, Hold
 
 WEEK = 7
@@ -74,8 +74,9 @@ class _Builder:
         self.estimate, self.scenario, self.settled = estimate, scenario, settled
         self.record, self.setting, self.loop = estimate.record, estimate.setting, estimate.loop
         self.now, self.end = self.record.end, self.record.end + days
-        self.plans = [_Planned(entry, self.record.time(entry.at), self._until(entry)) for entry in self.record.plans]
+        self.plans = plans_of(self.record)
         self.assumed: list[str] = [*shared_store(self.record.site, self.loop), *begun_from(estimate)]
+        self.assumed += expected_words(self.record, self.plans)
         self.holding = Holding(self.record, self.setting)
         self.past = lately(self.record, self.setting)
         self.draw = normals(estimate.seed, self.loop.name, f"ahead {estimate.at.date()}", estimate.members, 12)
@@ -93,12 +94,6 @@ class _Builder:
         made = tuple(self._drive(float(begin), float(end)) for begin, end in zip(grid, grid[1:], strict=False))
         inputs = "what-if" if self.scenario != Scenario() else "plan" if self.plans else "routine"
         return Routine(grid, _Water(reference), made, tuple(events), tuple(dict.fromkeys(self.assumed)), inputs)
-
-    def _until(self, entry: Entry) -> float:
-        seconds = entry.number_of("until")
-        if seconds is None:
-            return np.inf
-        return (seconds - self.record.zero.timestamp()) / 86400.0
 
     def _planned(self, name: str, time: float) -> float | None:
         """The number a plan in force at a time gives for something."""
@@ -257,19 +252,17 @@ class _Builder:
             found.append(Event(at, "bleed", litres=litres, reason="renewal"))
             found.append(Event(at, "make_up", refill * litres[..., None], litres))
         for plan in self.plans:
-            if plan.begin > self.now:
+            if is_coming(self.record, plan):
                 found += self._planned_events(plan)
         return sorted((each for each in found if each.at < self.end), key=_in_order)
 
-    def _planned_events(self, plan: _Planned) -> list[Event]:
-        """Doses and bleeds that are intended at a time to come."""
+    def _planned_events(self, plan: Planned) -> list[Event]:
+        """Doses and bleeds that are accepted and still to do."""
         entry, found = plan.entry, []
-        if entry.text_of("salt") and entry.number_of("kg"):
-            found.append(self._dosed(entry.at, entry.text_of("salt"), entry.number_of("kg") or 0.0, None))
-        if entry.number_of("bleed"):
-            found.append(
-                Event(self._soon(plan.begin), "bleed", litres=entry.number_of("bleed") or 0.0, reason="planned")
-            )
+        if entry.text_of("salt") and (kg := plan.amount("kg")):
+            found.append(self._dosed(entry.at, entry.text_of("salt"), kg, None))
+        if litres := plan.amount("bleed"):
+            found.append(Event(self._soon(plan.begin), "bleed", litres=litres, reason="planned"))
         return found
 
     def _dosed(self, at: datetime, salt: str, kg: float | Array, adds: Array | None) -> Event:
@@ -291,9 +284,3 @@ class _Builder:
 def _in_order(event: Event) -> tuple[float, bool]:
     """Events by time; of one moment what is let go and refilled before what is weighed in, or it would go with it."""
     return event.at, event.cause == "dose"
-
-
-class _Planned(NamedTuple):
-    entry: Entry
-    begin: float
-    end: float

@@ -1,4 +1,4 @@
-"""From a plan to what was done: intended steps are entries of their own, and count only when marked done."""
+"""From a plan to what was done: intended steps are entries of their own, expected until marked done, done only then."""
 
 from __future__ import annotations
 
@@ -7,6 +7,7 @@ from datetime import datetime
 from typing import TYPE_CHECKING, NamedTuple
 
 from fertui.logbook.entries import Entry
+from fertui.logbook.intended import carried_out, given, is_step, part_left, subject
 from fertui.refusals import Refusal
 from fertui.site.model import Composition, Loop, Site
 
@@ -36,13 +37,7 @@ class PlanItem(NamedTuple):
         """planned, partly done, or done: never taken for done before somebody said so."""
         if self.done_number is None:
             return "planned"
-        wanted, given = self.amount, self.done_amount
-        short = wanted is not None and given is not None and given < ENOUGH * wanted
-        return "partly done" if short else "done"
-
-
-ENOUGH = 0.97
-"""Weighed to within 3 % counts as done: what a scale step and a spilled spoon make (common practice, no source)."""
+        return "partly done" if part_left(self.amount, self.done_amount) > 0 else "done"
 
 
 def steps_of(plan: Plan, by: str) -> tuple[Fields, ...]:
@@ -70,11 +65,8 @@ def _tank(target: str) -> str:
 
 def open_plans(entries: Sequence[Entry]) -> tuple[PlanItem, ...]:
     """Every intended step of a loop's effective entries, with what was done of it."""
-    done: dict[int, list[Entry]] = {}
-    for entry in entries:
-        if entry.kind != "plan" and (number := entry.number_of("plan")) is not None:
-            done.setdefault(int(number), []).append(entry)
-    return tuple(_item(entry, done.get(entry.number or 0, [])) for entry in entries if _is_step(entry))
+    done = carried_out(entries)
+    return tuple(_item(entry, done.get(entry.number or 0, [])) for entry in entries if is_step(entry))
 
 
 def in_words(item: PlanItem, timezone: str) -> str:
@@ -88,37 +80,12 @@ def in_words(item: PlanItem, timezone: str) -> str:
     return f"{local:%a} {local.day} {local:%b %H:%M} {much}{item.what}{into} (plan {item.number}){partly}"
 
 
-def _is_step(entry: Entry) -> bool:
-    """Whether a plan entry is a step to carry out; coming water, light or feed alone are expectations."""
-    if entry.kind != "plan":
-        return False
-    return any(entry.text_of(name) for name in ("salt", "acid", "recipe")) or entry.number_of("bleed") is not None
-
-
 def _item(planned: Entry, done: Sequence[Entry]) -> PlanItem:
-    what, name, unit = _subject(planned)
+    what, name, unit = subject(planned)
     target = planned.text_of("tank") or ("feed" if what == "recipe" else "")
-    amounts = [amount for entry in done if (amount := entry.number_of(DONE_NAME.get(name, name))) is not None]
     last = max((entry.number or 0 for entry in done), default=None)
     amount = planned.number_of(name) if name else None
-    return PlanItem(
-        planned.number or 0, planned.at, what, amount, unit, target, last, sum(amounts) if amounts else None
-    )
-
-
-DONE_NAME = {"bleed": "litres"}
-"""What the amount of a plan entry is called in the entry that carries it out, where that differs."""
-
-
-def _subject(entry: Entry) -> tuple[str, str, str]:
-    """What a plan entry is about, the name of its amount, and the unit of that."""
-    if entry.text_of("salt"):
-        return entry.text_of("salt"), "kg", "kg"
-    if entry.text_of("acid"):
-        return entry.text_of("acid"), "litres", "L"
-    if entry.number_of("bleed") is not None:
-        return "bleed", "bleed", "L"
-    return "recipe", "", ""
+    return PlanItem(planned.number or 0, planned.at, what, amount, unit, target, last, given(planned, done))
 
 
 def done_fields(planned: Entry, by: str, amount: str | None, strength_pct: float | None) -> tuple[str, Fields]:
@@ -127,7 +94,7 @@ def done_fields(planned: Entry, by: str, amount: str | None, strength_pct: float
         raise Refusal(
             f"entry {planned.number} is a {planned.kind}, not a plan; mark the number of a plan entry as done."
         )
-    what, name, _ = _subject(planned)
+    what, name, _ = subject(planned)
     fields: Fields = {"by": by, "plan": str(planned.number)}
     if planned.text_of("tank"):
         fields["tank"] = planned.text_of("tank")

@@ -209,3 +209,53 @@ def test_an_analysis_now_would_narrow_the_range() -> None:
     stale = assimilate(SITE, SLAB, [*_entries(), *daily_water(40)[24:]], moment(38.0), members=150)
     narrows = next_sample(stale, forecast(stale, 3)).narrows_pct
     assert narrows["root_zone", "K"] > 20.0
+
+
+def _lettuce(*more: Entry) -> Estimate:
+    """A lettuce tank at noon of a day, followed for a week."""
+    seen = entry("analysis", 6.2, "tank", "tank", **SALAD)
+    water = [entry("water", float(day), "tank", whole_day=True, make_up=400.0) for day in range(7)]
+    return assimilate(SITE, TANK, (*water, seen, *more), moment(7.5), members=30)
+
+
+def _potassium(*more: Entry) -> float:
+    """K in the tank a day ahead [mmol/L]."""
+    return forecast(_lettuce(*more), 1).days[0].points["tank"].ions["K"].mmol_l.value
+
+
+def _accepted(when: float, **amount: float) -> Entry:
+    return entry("plan", when, "tank", entered=6.5, number=9, salt="potassium nitrate", **(amount or {"kg": 2.022}))
+
+
+K_OF_THE_DOSE = 10.0
+"""2.022 kg potassium nitrate of 101.10 g/mol in 2000 L [mmol/L] (molar mass: the standard atomic weights)."""
+
+
+@pytest.mark.parametrize("when", [7.4, 8.2], ids=["its hour has passed", "it lies ahead"])
+def test_an_accepted_step_is_expected_once_and_named(when: float) -> None:
+    added = _potassium(_accepted(when)) - _potassium()
+    assert added == pytest.approx(K_OF_THE_DOSE, rel=0.15)  # the crop takes from what is more
+    (named,) = (each for each in forecast(_lettuce(_accepted(when)), 1).assumed if "accepted" in each)
+    assert named.startswith("accepted and not marked done, expected all the same: 2.022 kg potassium nitrate")
+
+
+def test_a_step_done_before_its_time_is_not_expected_again() -> None:
+    done = entry("dose", 7.45, "tank", number=10, salt="potassium nitrate", kg=2.022, plan=9.0)
+    both = forecast(_lettuce(_accepted(8.2), done), 1)
+    alone = forecast(_lettuce(done), 1)
+    assert both.days[0].points["tank"] == alone.days[0].points["tank"]
+    assert not any("accepted" in each for each in both.assumed)
+
+
+def test_of_a_step_partly_done_the_rest_is_expected() -> None:
+    half = entry("dose", 7.45, "tank", number=10, salt="potassium nitrate", kg=1.011, plan=9.0)
+    ahead = forecast(_lettuce(_accepted(8.2), half), 1)
+    added = ahead.days[0].points["tank"].ions["K"].mmol_l.value - _potassium(half)
+    assert added == pytest.approx(K_OF_THE_DOSE / 2, rel=0.15)
+    assert any("1.011 kg potassium nitrate" in each for each in ahead.assumed)
+
+
+def test_a_step_of_a_day_gone_by_is_not_expected_and_that_is_said() -> None:
+    ahead = forecast(_lettuce(_accepted(6.6)), 1)
+    assert ahead.days[0].points["tank"].ions["K"].mmol_l.value == pytest.approx(_potassium())
+    assert any(each.startswith("accepted for a day gone by and never marked done") for each in ahead.assumed)

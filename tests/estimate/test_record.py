@@ -129,7 +129,7 @@ def test_other_loops_later_entries_and_plans_made_later_are_left_out() -> None:
     plans = [entry("plan", 9.0, entered=3.0, crop=2000.0), entry("plan", 9.0, entered=8.0, crop=1000.0)]
     record = _record([*fed(1.0), *strange, *plans])
     assert [each.point for each in record.observations] == ["feed"]
-    assert [each.number_of("crop") for each in record.plans] == [2000.0]
+    assert [each.number_of("crop") for each, _ in record.plans] == [2000.0]
 
 
 def test_midnights_follow_the_clock_of_the_site_through_a_change_of_clocks() -> None:
