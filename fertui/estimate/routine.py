@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from datetime import datetime
+from functools import cached_property
 from typing import NamedTuple
 
 import numpy as np
@@ -197,7 +198,7 @@ class _Builder:
         self._assume("the feed stays as last known; a plan of the coming feed makes the forecast better")
         width = np.sqrt(max(time - self.now, 0.0) / 14.0)
         spread = np.zeros((self.estimate.members, 10))
-        spread[:, :_HCO3] = self._feed_sd() * self.draw[:, 1:10] + FEED_COMMON_SD * self.draw[:, 10, None]
+        spread[:, :_HCO3] = self._feed_sd * self.draw[:, 1:10] + FEED_COMMON_SD * self.draw[:, 10, None]
         return self._at_ec(last * np.exp(width * spread), time)
 
     def _at_ec(self, feed: Array, time: float) -> Array:
@@ -207,6 +208,7 @@ class _Builder:
             return feed
         return feed * wanted / max(float(conductivity(feed.mean(axis=0))), 0.05)
 
+    @cached_property
     def _feed_sd(self) -> Array:
         """How far each ion of the feed wanders in a fortnight (9,): from its own analyses, towards the prior."""
         knots = self.record.feed
