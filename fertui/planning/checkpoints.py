@@ -198,11 +198,15 @@ def exceeded(each: Checkpoint, composition: Array, before: Checkpoint | None = N
 SHARE_WEIGHT = 5.0
 """What a share off by its whole counts beside an ion off by its whole: a point of share about as much as 5 % of an
 ion."""
+EC_WEIGHT = 10.0
+"""What EC below its band by its whole counts beside a share off by its whole: alike, both are bands."""
 COMES_ALONG = ("NO3", "SO4", "H2PO4")
 OVERSHOT, OVERSHOT_WEIGHT = 0.5, 5.0
 """An anion lifted over its aim by more than half counts among the bands: its double as much as 50 points of share.
 Half over is where the published rule takes its larger step (Nutrient Solutions for Greenhouse Crops 2016)."""
 FAR_COST = 3.0
+EC_SHOWN = 0.05
+"""Half of the last digit of an EC as it is shown [mS/cm]."""
 NEAR_SHARE = 0.05
 """Distance of a share over its aim from which it counts as far."""
 MARGIN = {"EC": 4e-3, "SI": 1e-2}
@@ -236,12 +240,24 @@ def violation_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array,
             matrix.append(each.slope[over] / most[:, None])
             high.append((most - each.now[over] + each.slope[over] @ x0) / most)
             cost.append(np.full(len(over), heavy * each.weight))
+        if each.goal.ec_least > 0.0 and each.point != "feed":
+            row, room = _too_weak(each)
+            matrix.append(row[None])
+            high.append(np.array([row @ x0 + room]))
+            cost.append(np.array([EC_WEIGHT * each.weight]))
     n = len(x0)
     return (
         np.vstack([*matrix, np.zeros((0, n))]),
         np.concatenate([*high, np.zeros(0)]),
         np.concatenate([*cost, np.zeros(0)]),
     )
+
+
+def _too_weak(each: Checkpoint) -> tuple[Array, float]:
+    """Row (variables,) and room of EC above the foot of its band, both in parts of that foot."""
+    ec, _, slope, _ = _slopes(each)
+    least = each.goal.ec_least
+    return -(slope @ each.slope) / least, (float(ec) - least - MARGIN["EC"]) / least
 
 
 def _too_much(each: Checkpoint) -> tuple[list[int], Array]:
@@ -269,6 +285,13 @@ def violation(each: Checkpoint, composition: Array) -> float:
     shares = shared / total
     out = np.maximum(shares - each.goal.share_high, 0.0) + np.maximum(each.goal.share_low - shares, 0.0)
     return 100.0 * float(out.sum())
+
+
+def too_weak(each: Checkpoint, composition: Array) -> float | None:
+    """EC [mS/cm] of a composition (10,) that is below its band by more than the last digit shown; None where it is
+    not."""
+    ec = float(ec_of(each, composition))
+    return ec if ec < each.goal.ec_least - EC_SHOWN else None
 
 
 def misfit_rows(checkpoints: Sequence[Checkpoint], x0: Array) -> tuple[Array, Array, Array, Array]:

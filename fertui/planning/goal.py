@@ -27,7 +27,7 @@ class Goal(NamedTuple):
 
     ``aim`` (10,) [mmol/L] with NaN where the target names no number; ``share_low`` and ``share_high`` (3,) as
     fractions of K + Ca + Mg; ``most`` (10,) [mmol/L], infinite without a limit; ``sources`` says where each limit
-    comes from.
+    comes from. ``ec_least`` and ``ec_most`` [mS/cm]: the band of EC, 0 and infinite without one.
     """
 
     point: str
@@ -40,6 +40,7 @@ class Goal(NamedTuple):
     ec_step: float
     sources: Mapping[str, str]
     named: bool
+    ec_least: float = 0.0
 
     @property
     def wants(self) -> npt.NDArray[np.bool_]:
@@ -65,6 +66,7 @@ def goal_of(site: Site, loop: Loop, point: str, target: str | None) -> Goal:
     limits = limits_of(site, loop, point)
     own = {**site.limits.get(point, {}), **loop.limits.get(point, {})}
     ec_limit = limits.get("EC") or bands.get("EC")
+    ec_band = bands.get("EC")
     shares = [bands.get(f"{ion} share") for ion in SHARED]
     return Goal(
         point, target or loop.target or loop.crop, _numbers(aim),
@@ -72,6 +74,7 @@ def goal_of(site: Site, loop: Loop, point: str, target: str | None) -> Goal:
         np.array([1.0 if each is None or each.high is None else each.high / 100.0 for each in shares]),
         _most(limits, own, aim), np.inf if ec_limit is None or ec_limit.high is None else ec_limit.high,
         _step(limits, point), _sources(limits, bands), target is not None,
+        0.0 if ec_band is None or ec_band.low is None else ec_band.low,
     )  # fmt: skip
 
 

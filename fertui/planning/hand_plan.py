@@ -12,7 +12,7 @@ from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array, vector
 from fertui.planning.acid import acid_on_shelf, source_water
 from fertui.planning.acid_steps import TankAcid, acid_steps, heated_words, tank_acid
-from fertui.planning.checkpoints import ec_of, violation
+from fertui.planning.checkpoints import ec_of, too_weak, violation
 from fertui.planning.goal import LIMITED, Goal
 from fertui.planning.hand_doses import LITRES, REACHED_PCT, Dosed, Task, doing_of, dose, usable
 from fertui.planning.reasons import (
@@ -207,7 +207,8 @@ def _verdict(request: Request, dosed: Dosed, after: Outlook) -> tuple[bool, str 
         named = ", ".join(f"{ion} by {amount:.1f} mmol/L" for ion, amount in over.items())
         words = f"{named} over what is wanted, and salts only add" if named else "the limits leave them too little room"
         parts.append(f"salts alone cannot do it: {words}; renew {litres:.0f} L, with the weighings listed")
-    reached = not dosed.broken and dosed.missed_pct <= REACHED_PCT
+    weak = too_weak(dosed.checkpoints[-1], end)
+    reached = not dosed.broken and dosed.missed_pct <= REACHED_PCT and weak is None
     for what, value, limit in dosed.broken[:3]:
         parts.append(f"{what} would be {value:.2f}, limit {limit:.2f}")
     if dosed.missed_pct > REACHED_PCT:
@@ -215,10 +216,18 @@ def _verdict(request: Request, dosed: Dosed, after: Outlook) -> tuple[bool, str 
         when = f"not within {request.wishes.days} days: " if request.wishes.days else ""
         shown = after.shares_pct(request.situation.managed)
         parts.append(f"{when}{outside_words(end, shown, goal)} at the end; {held}")
+    if weak is not None:
+        parts.append(f"EC {weak:.1f} mS/cm at the end, below its band from {goal.ec_least:.3g}; {_why_weak(dosed)}")
     missed = _missed_aims(request, end, goal)
     if missed:
         parts.append(f"with these salts {missed}")
     return reached and not missed, "; ".join(parts) or None
+
+
+def _why_weak(dosed: Dosed) -> str:
+    """What keeps EC below its band, and what would lift it."""
+    held = [each.limit for each in binding(dosed.checkpoints) if each.limit.startswith("EC step")]
+    return (f"held by {held[0]}; " if held else "") + "feed the tank meanwhile, or plan again after the last weighing"
 
 
 def _missed_aims(request: Request, end: Array, goal: Goal) -> str:
@@ -293,6 +302,9 @@ def _sensitivity(dosed: Dosed) -> tuple[WhatIf, ...]:
         if case == "runner-up" or (case == "a day late" and end.day == 0):
             continue
         missed = violation(end, composition)
+        weak = too_weak(end, composition)
         words = "in the bands" if missed <= REACHED_PCT else points_out(missed)
+        if weak is not None:
+            words = f"EC {weak:.1f}, below its band" + ("" if missed <= REACHED_PCT else f"; {words}")
         found.append(WhatIf(case, share_pct(composition), float(ec_of(end, composition)), f"{case}: {words}"))
     return tuple(found)

@@ -139,17 +139,33 @@ class Request(NamedTuple):
 
     def strengthened(self, end: Array) -> Request:
         """The same with its aim at the strength the loop is run at, ``end`` (10,) being the managed point at the
-        horizon.
+        horizon without a plan.
 
-        An aim named for this plan stands as it is, and so does that of a vessel that is only being filled.
+        A shared tank that nobody feeds grows weak by then: its aim is no weaker than the EC it is set to. An aim named
+        for this plan stands as it is, and so does that of a vessel that is only being filled.
         """
-        made = _ec_of_aim(self.managed)
-        held = float(conductivity(np.maximum(end, 0.0))) - 0.1 * float(end[INDEX["Na"]])
-        if self.managed.named or made <= 0.0 or held < FILLING * made:
+        made, sodium = _ec_of_aim(self.managed), 0.1 * float(end[INDEX["Na"]])
+        held = float(conductivity(np.maximum(end, 0.0))) - sodium
+        shared = self.situation.loop.layout == "shared-tank"
+        filled = self.before[self.situation.managed].ec.value if shared else held
+        if self.managed.named or made <= 0.0 or filled < FILLING * made:
             return self
+        wanted = max(held, self._set_ec(made + sodium) - sodium) if shared else held
+        factor = float(np.clip(wanted / made, *STRENGTH))
         point = self.situation.managed
-        factor = float(np.clip(held / made, *STRENGTH))
         return self._replace(goals={**self.goals, point: self.goals[point].scaled(factor)})
+
+    def _set_ec(self, aimed: float) -> float:
+        """EC a shared tank is run at [mS/cm]: its set point; in a root zone the foot of its band; else ``aimed``."""
+        if self.situation.managed != "tank":
+            return self.managed.ec_least or aimed
+        logged = [
+            number
+            for each in self.entries
+            if each.kind == "setpoint" and each.loop == self.situation.loop.name and each.at <= self.situation.at
+            if (number := each.number_of("EC")) is not None
+        ]
+        return (logged[-1] if logged else self.situation.loop.feed_ec) or aimed
 
 
 def _ec_of_aim(goal: Goal) -> float:
