@@ -36,6 +36,10 @@ def _forecast(bench: Bench, ask: Ask, moment: datetime) -> Any:
     return bench.forecast(ask.loop, options["days"], at=moment, scenario=scenario)
 
 
+def _next_sample(bench: Bench, ask: Ask, moment: datetime) -> Any:
+    return bench.next_sample(bench.forecast(ask.loop, dict(ask.options)["days"], at=moment), ask.loop)
+
+
 def _untimed(bench: Bench, ask: Ask, moment: datetime) -> Any:
     return getattr(bench, ask.use_case)(ask.loop, **dict(ask.options))
 
@@ -49,8 +53,8 @@ def _history(bench: Bench, ask: Ask, moment: datetime) -> Any:
 
 
 USE_CASES: dict[str, UseCase] = {
-    "overview": _overview, "balance": _balance, "forecast": _forecast, "stock": _untimed, "acid": _untimed,
-    "aims": _untimed,
+    "overview": _overview, "balance": _balance, "forecast": _forecast, "next_sample": _next_sample,
+    "stock": _untimed, "acid": _untimed, "aims": _untimed,
     "check": _whole, "history": _history, "open_plans": _untimed, "site_rows": _whole, "supplies_rows": _whole,
     "news": _whole,
 }  # fmt: skip

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from fertui.estimate.assimilation import Estimate
     from fertui.estimate.forecast import Forecast, LeavesBand
     from fertui.estimate.notices import Notice
+    from fertui.estimate.sampling import SampleAdvice
 
 SHARES = ("K share", "Ca share", "Mg share")
 LIMITED = ("Na", "NH4", "Cl")
@@ -158,6 +159,15 @@ def in_words(leaving: LeavesBand | None, horizon: int, timezone: str = "UTC") ->
     if middle is None:
         return f"not in {horizon} days" if low is None else f"{low:.0f} to over {horizon} days"
     return f"in {middle:.0f} ({low or 0:.0f}-{latest}) days"
+
+
+def sample_words(sample: SampleAdvice, horizon: int, timezone: str) -> str:
+    """When to take the next sample, why, when its result can be there, and what one today would tell."""
+    taken, known = (_day(each, timezone) for each in (sample.take_at, sample.result_at))
+    shares = {what: pct for (_, what), pct in sample.narrows_pct.items() if what.endswith(" share")}
+    what, most = max(shares.items(), key=lambda each: each[1], default=("", 0.0))
+    tells = f"; one today would make the range of {what} in {horizon} days {most:.0f} % narrower" if most >= 1.0 else ""
+    return f"{taken} ({sample.why}); its result can be there on {known}{tells}"
 
 
 def _day(at: datetime, timezone: str) -> str:

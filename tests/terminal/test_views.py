@@ -122,6 +122,13 @@ def test_no_word_of_an_analysis_is_cut_in_any_unit(site: Path, open_terminal: Op
         assert not re.search(r"\d\.\d{3}", "\n".join(row for row in rows if row.startswith((" K ", " NH4", " HCO3"))))
 
 
+def test_the_forecast_says_when_to_take_the_next_sample(site: Path, open_terminal: Opened) -> None:
+    terminal = open_terminal(site, fixed=True, size=(80, 40))
+    terminal.press("5")
+    terminal.until_text("next sample:")
+    assert "one today would make the range of K share in 14 days 38 %" in " ".join(terminal.text.split())
+
+
 def test_site_shows_what_is_in_force_and_where_it_comes_from(site: Path, open_terminal: Opened) -> None:
     terminal = open_terminal(site, fixed=True)
     terminal.until_text("look at")

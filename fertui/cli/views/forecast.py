@@ -10,7 +10,7 @@ from fertui.estimate.hindcast import Hindcast
 from fertui.estimate.sampling import SampleAdvice
 from fertui.paper.page import columns, folded
 from fertui.site.points import point_name
-from fertui.workbench.today import in_words, reading_of, unit_of
+from fertui.workbench.today import in_words, reading_of, sample_words, unit_of
 
 SHOWN = ("K share", "Ca share", "Mg share", "Na", "EC")
 """Columns of the days ahead, as many as 80 columns hold; the rest speaks under "leaves its band"."""
@@ -34,7 +34,7 @@ def text(ahead: Forecast, sample: SampleAdvice, loop: str, managed: str, timezon
         lines += [f"  {_leaves(each, len(ahead.days), timezone)}" for each in shown] or ["  nothing within these days"]
     else:
         lines.append("  not known yet: no analysis stands behind these ranges; take a sample first")
-    lines += ["", "Next sample", *_sample(sample, len(ahead.days), timezone)]
+    lines += ["", "Next sample", *folded(sample_words(sample, len(ahead.days), timezone), "  ")]
     lines += ["", "Assumed", *(line for each in ahead.assumed for line in folded(each, "  "))]
     return "\n".join(lines)
 
@@ -50,15 +50,6 @@ def _inputs(ahead: Forecast) -> str:
 def _leaves(each: LeavesBand, horizon: int, timezone: str) -> str:
     chance = "" if each.days.value == 0 else f", chance {100 * each.probability:.0f} %"
     return f"{point_name(each.point)} {each.what}: {in_words(each, horizon, timezone)}{chance}"
-
-
-def _sample(sample: SampleAdvice, horizon: int, timezone: str) -> list[str]:
-    taken, known = (words.local(each, timezone)[:10] for each in (sample.take_at, sample.result_at))
-    said = f"{taken} ({sample.why}); its result can be there on {known}"
-    shares = {what: pct for (_, what), pct in sample.narrows_pct.items() if what.endswith(" share")}
-    what, most = max(shares.items(), key=lambda each: each[1], default=("", 0.0))
-    tells = f"; one today would make the range of {what} in {horizon} days {most:.0f} % narrower" if most >= 1.0 else ""
-    return folded(said + tells, "  ")
 
 
 def document(ahead: Forecast, sample: SampleAdvice, loop: str) -> dict[str, Any]:

@@ -17,6 +17,7 @@ from fertui.tui.view import View, waiting
 if TYPE_CHECKING:
     from fertui.estimate.forecast import Forecast, LeavesBand
     from fertui.estimate.points import Estimated, PointState
+    from fertui.estimate.sampling import SampleAdvice
 
 HORIZONS = (7, 14, 28)
 USUAL = 76
@@ -91,9 +92,13 @@ class ForecastView(View):
         )
 
     def asks(self, snapshot: Snapshot) -> tuple[Ask, ...]:
-        """The forecast, and the one supposed."""
+        """The forecast, the one supposed, and when to take the next sample."""
         base = self._ask(snapshot)
-        return (base, self._ask(snapshot, supposed=True)) if self.supposed else (base,)
+        supposed = (self._ask(snapshot, supposed=True),) if self.supposed else ()
+        return base, *supposed, self._sample_ask(snapshot)
+
+    def _sample_ask(self, snapshot: Snapshot) -> Ask:
+        return Ask("next_sample", snapshot.loop, (("days", self.horizon),))
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """Table, chart of the chosen row, what is assumed."""
@@ -112,7 +117,9 @@ class ForecastView(View):
         chart = _chart(
             rows[min(self.charted, len(rows) - 1)], ahead, other, snapshot.unit, width - 80 if width >= WIDE else width
         )
+        sample: SampleAdvice | None = snapshot.get(self._sample_ask(snapshot))
         rest = [*self._supposed_words(), *_assumed(ahead, min(width, 80))]
+        rest += _next_sample(sample, snapshot, self.horizon, min(width, 80))  # last: it comes later, and moves nothing
         return beside([*table, BLANK, *rest], chart, 80, 1) if width >= WIDE else [*table, BLANK, *chart, *rest]
 
     def _of_point(self, ahead: Forecast, snapshot: Snapshot) -> list[LeavesBand]:
@@ -318,6 +325,16 @@ def _chart(each: LeavesBand, ahead: Forecast, other: Forecast | None, unit: str,
     )
     chart = draw_chart(curve, 0.0, width, CHART_ROWS - 3)
     return [title, *chart[:-3], chart[-1]]
+
+
+def _next_sample(sample: SampleAdvice | None, snapshot: Snapshot, horizon: int, width: int) -> list[Line]:
+    """The best day for the next sample, once it is worked out."""
+    if sample is None:
+        return []
+    from fertui.workbench.today import sample_words
+
+    first, *more = wrap(sample_words(sample, horizon, snapshot.site.timezone), width - 16)
+    return [line(Span(" next sample: ", "strong"), first), *(line(" " * 14, words) for words in more)]
 
 
 def _assumed(ahead: Forecast, width: int) -> list[Line]:
