@@ -32,7 +32,7 @@ def acid_page(sheet: AcidSheet, loop: str, site: str, released: bool = True) -> 
         return page([*lines, *_label(sheet), *section("HELD BACK", folded(HOW_RELEASED, "!! "))], {"loop": loop}, ())
     if sheet.splits:
         lines += _label(sheet) + section("HOW", listed(sheet.words)) + _splits(sheet)
-        lines += section("WHAT IT FEEDS", listed(fed(sheet.adds_mmol_l, sheet.adds_mg_l)))
+        lines += section("WHAT IT FEEDS", listed(fed(sheet.adds_mmol_l, sheet.adds_mg_l, _counted(sheet))))
     else:
         lines += section("HOW", listed(sheet.words))
     lines += section("THE SUM, STEP BY STEP", listed(sheet.arithmetic, "  "))
@@ -48,11 +48,17 @@ def litres(value: float) -> str:
     return f"{1000.0 * value:.0f} mL" if value < SHORT_UNDER_L else f"{value:.1f} L"
 
 
-def fed(adds_mmol_l: Mapping[str, float], adds_mg_l: Mapping[str, float]) -> list[str]:
-    """What an acid brings beside its acidity, to be taken off the salts."""
+def fed(adds_mmol_l: Mapping[str, float], adds_mg_l: Mapping[str, float], counted: str) -> list[str]:
+    """What an acid brings beside its acidity, and who takes it off the salts."""
     ions = ", ".join(f"{mmol:.2f} mmol/L {ion}" for ion, mmol in adds_mmol_l.items())
     elements = ", ".join(f"{mg:.0f} mg/L {element}" for element, mg in adds_mg_l.items())
-    return [f"{ions} ({elements}): take it off the salts"] if ions else []
+    return [f"{ions} ({elements}): {counted}"] if ions else []
+
+
+def _counted(sheet: AcidSheet) -> str:
+    from fertui.planning.acid import counted_words
+
+    return counted_words((sheet.alkalinity_meq_l or 0.0) >= sheet.leave_meq_l)
 
 
 def _water(sheet: AcidSheet) -> list[str]:

@@ -156,11 +156,17 @@ def water_of(site: Site, loop: Loop) -> Composition:
     return water
 
 
+def first_acid(site: Site) -> Supply | None:
+    """The first acid among the supplies; None where there is none."""
+    found = (each for each in site.supplies if each.strength_pct is not None and named_acid(each.kind).is_acid)
+    return next(found, None)
+
+
 def acid_on_shelf(site: Site) -> Supply:
     """The first acid among the supplies; raises ``PlanningError`` where there is none."""
-    for supply in site.supplies:
-        if supply.strength_pct is not None and named_acid(supply.kind).is_acid:
-            return supply
+    found = first_acid(site)
+    if found is not None:
+        return found
     raise PlanningError("there is no acid among the supplies; add one with its kind and the strength_pct on its label.")
 
 
@@ -263,6 +269,11 @@ def element_mg(adds_mmol_l: Mapping[str, float]) -> dict[str, float]:
     return mg
 
 
+def counted_words(is_acid: bool) -> str:
+    """Who takes off the salts what an acid or a lye feeds: stock sheets count with acid alone."""
+    return "the stock sheet takes it off the salts" if is_acid else "take it off the salts"
+
+
 def _arithmetic(
     found: Acid, strength: float, density: float, mol_per_l: float, volume: float, alkalinity: float, leave: float,
     demand: Demand, litres: float, adds: Mapping[str, float],
@@ -276,7 +287,8 @@ def _arithmetic(
         f"{mol_per_l:.2f} mol/L",
         f"{demand.to_leave * volume / 1000:.2f} mol / {mol_per_l:.2f} mol/L = {litres:.2f} L",
     ]
-    brought = [f"adds {mmol:.2f} mmol/L {ion}: take it off the salts" for ion, mmol in adds.items()]
+    taken = counted_words(found.is_acid)
+    brought = [f"adds {mmol:.2f} mmol/L {ion}: {taken}" for ion, mmol in adds.items()]
     return tuple(lines + brought)
 
 

@@ -11,7 +11,7 @@ from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array, vector
 from fertui.estimate.assimilation import Estimate
 from fertui.estimate.drives import stock_proportions
-from fertui.planning.acid import LEAVE_MEQ_PER_L, PH_START, PH_TARGET, demanded, source_water
+from fertui.planning.acid import LEAVE_MEQ_PER_L, PH_START, PH_TARGET, demanded, first_acid, source_water
 from fertui.planning.checkpoints import ec_of, violation
 from fertui.planning.goal import LIMITED
 from fertui.planning.hand_doses import REACHED_PCT
@@ -183,9 +183,7 @@ def _stock_acid(request: Request) -> Supply | None:
     alkalinity = (source_water(site, loop) or Composition()).ions.get("HCO3", 0.0)
     if alkalinity <= LEAVE_MEQ_PER_L:
         return None
-    return next(
-        (each for each in site.supplies if each.strength_pct is not None and named_acid(each.kind).is_acid), None
-    )
+    return first_acid(site)
 
 
 def _used(request: Request, sheet: StockSheet) -> list[Supply]:

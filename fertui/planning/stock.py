@@ -18,7 +18,7 @@ from fertui.planning.acid import LEAVE_MEQ_PER_L, unanalysed_words, water_of
 from fertui.planning.composing import SPECIES, Composed, compose
 from fertui.planning.programme import Solver
 from fertui.planning.shelf import Material, PlanningError, material, salts_of, shelf
-from fertui.planning.stock_needs import Needed, misfits, needed_of, not_covered, per_kg, subtraction
+from fertui.planning.stock_needs import Needed, acid_words, misfits, needed_of, not_covered, per_kg, subtraction
 from fertui.planning.tanks import (
     STRONGEST,
     Fullest,
@@ -80,6 +80,7 @@ def stock_sheet(
     recipe: Composition,
     water: Composition | None = None,
     acid: Supply | None = None,
+    acid_in_water: Supply | None = None,
     supplies: Iterable[str] | None = None,
     without: Iterable[str] = (),
     leave_meq_l: float = LEAVE_MEQ_PER_L,
@@ -87,7 +88,7 @@ def stock_sheet(
     solver: Solver | None = None,
 ) -> StockSheet:
     """Stock-tank sheet for a feed ``recipe`` on the loop's make-up ``water``; ``acid`` is fixed in the stock where
-    given.
+    given, and ``acid_in_water`` goes into the make-up water by the acid sheet.
 
     ``remainder_l``: litres of the old stock still in a tank by name; what they hold is taken off. Refused pairs,
     solids that do not dissolve and ions that no supply covers are said in the sheet. Raises ``PlanningError`` for an
@@ -97,7 +98,9 @@ def stock_sheet(
     water = water_of(site, loop) if water is None else water
     materials = shelf(site.supplies, supplies, without)
     tanks = tanks_of(site, loop)
-    needed = needed_of(recipe, water, acid, materials, leave_meq_l)
+    needed = needed_of(recipe, water, acid, materials, leave_meq_l, acid_in_water)
+    if acid is None:
+        needed = needed._replace(notices=(*needed.notices, *acid_words(acid_in_water, water, leave_meq_l)))
     salts = salts_of([each for each in materials if not each.brings("Si")])
     composed = compose(salts, needed.wanted, solver)
     per_m3 = dict(needed.fixed) | {
@@ -260,7 +263,11 @@ def _sheet(
     sheets: tuple[TankSheet, ...], refused: tuple[Refused, ...], needed: Needed, composed: Composed,
     placed: Mapping[str, Mapping[Material, float]], solver: Solver,
 ) -> StockSheet:  # fmt: skip
-    reached = needed.own + sum((_given(sheet, placed[sheet.name]) for sheet in sheets), np.zeros(len(SPECIES)))
+    reached = (
+        needed.own
+        + needed.by_acid
+        + sum((_given(sheet, placed[sheet.name]) for sheet in sheets), np.zeros(len(SPECIES)))
+    )
     used = list({each.name: each for amounts in placed.values() for each in amounts}.values())
     ions, micros = reached[: len(IONS)], reached[len(IONS) :]
     return StockSheet(

@@ -19,19 +19,27 @@ MISSED = 0.05
 """Misfit of one ion, in parts of what is asked, from which the sheet speaks of it."""
 
 
+ACID_ANIONS = ("NO3", "SO4", "H2PO4", "Cl")
+
+
 class Needed(NamedTuple):
-    """What salts must bring (17,), what comes without them, and the fixed kg/m3 of acid and silicate."""
+    """What salts must bring (17,), what comes without them, and the fixed kg/m3 of acid and silicate.
+
+    ``by_acid`` (17,): what the acid of the acid sheet makes of the make-up water before any stock: its anion, less
+    HCO3.
+    """
 
     asked: Array
     own: Array
     fixed: Mapping[Material, float]
     notices: tuple[str, ...]
+    by_acid: Array
 
     @property
     def wanted(self) -> Array:
         """What is left for the salts, shape (17,) [mmol/L, umol/L]; below zero where there is too much without them."""
         brought = [1.0 * kg * per_kg(each) / 1000.0 for each, kg in self.fixed.items()]
-        return self.asked - self.own - sum(brought, np.zeros(len(SPECIES)))
+        return self.asked - self.own - self.by_acid - sum(brought, np.zeros(len(SPECIES)))
 
 
 def asked(composition: Composition) -> Array:
@@ -46,9 +54,13 @@ def per_kg(each: Material) -> Array:
 
 
 def needed_of(
-    recipe: Composition, water: Composition, acid: Supply | None, materials: Sequence[Material], leave: float
-) -> Needed:
-    """Silicate first, as its alkalinity adds to what the acid has to take; then the acid; the salts bring the rest."""
+    recipe: Composition, water: Composition, acid: Supply | None, materials: Sequence[Material], leave: float,
+    in_water: Supply | None = None,
+) -> Needed:  # fmt: skip
+    """Silicate first, as its alkalinity adds to what the acid has to take; then the acid; the salts bring the rest.
+
+    ``acid`` is fixed in the stock, ``in_water`` goes into the make-up water by the acid sheet.
+    """
     want, own = asked(recipe), asked(water)
     fixed: dict[Material, float] = {}
     notices: list[str] = []
@@ -62,11 +74,48 @@ def needed_of(
     elif acid is not None and alkalinity is not None:
         brought = sum(kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items())
         fixed |= _fixed_acid(material(acid), water._replace(ions={**water.ions, "HCO3": alkalinity + brought}), leave)
-    left = own[INDEX["HCO3"]] + sum(
+    by_acid = np.zeros(len(SPECIES)) if in_water is None else brought_by_acid(in_water, water, leave)
+    left = (own + by_acid)[INDEX["HCO3"]] + sum(
         kg * float(each.ions_mmol_per_kg[INDEX["HCO3"]]) / 1000.0 for each, kg in fixed.items()
     )
     want[INDEX["HCO3"]] = max(left, 0.0)
-    return Needed(want, own, fixed, tuple(notices))
+    return Needed(want, own, fixed, tuple(notices), by_acid)
+
+
+def brought_by_acid(acid: Supply, water: Composition, leave: float) -> Array:
+    """What an acid poured to leave so much alkalinity [meq/L] adds to a water (17,) [mmol/L]; none where the alkalinity
+    is not known.
+
+    >>> nitric = Supply("nitric acid", "nitric acid", strength_pct=60.0)
+    >>> added = brought_by_acid(nitric, Composition({"HCO3": 3.5}), 0.5)
+    >>> {ion: round(float(added[INDEX[ion]]), 2) for ion in ("NO3", "HCO3")}
+    {'NO3': 3.0, 'HCO3': -3.0}
+    """
+    if water.ions.get("HCO3") is None:
+        return np.zeros(len(SPECIES))
+    brought = (1e-3 * kg * per_kg(each) for each, kg in _fixed_acid(material(acid), water, leave).items())
+    return sum(brought, np.zeros(len(SPECIES)))
+
+
+def acid_words(acid: Supply | None, water: Composition, leave: float) -> tuple[str, ...]:
+    """What is said of the HCO3 of the make-up water beside a mix of salts: nothing where it is no more than is left."""
+    alkalinity = water.ions.get("HCO3")
+    if alkalinity is None:
+        return (MEASURE_IT,) if acid is not None and water.ions else ()
+    if alkalinity <= leave:
+        return ()
+    if acid is None:
+        return (
+            f"HCO3: the water brings {alkalinity:.1f} meq/L and no acid on the shelf takes it: the feed keeps a pH "
+            "above 7, where phosphate and iron fall out; add an acid to the shelf and make the acid sheet",
+        )
+    added = brought_by_acid(acid, water, leave)
+    anions = " and ".join(f"{added[INDEX[ion]]:.2f} mmol/L {ion}" for ion in ACID_ANIONS if added[INDEX[ion]] > 0.0)
+    return (
+        f"HCO3: the water brings {alkalinity:.1f} meq/L; the acid sheet ({acid.name}) takes it down to {leave:g} "
+        f"before the stocks go in. The {anions} it brings is taken off these salts: without the acid they are too "
+        "little",
+    )
 
 
 def _fixed_acid(acid: Material, water: Composition, leave: float) -> dict[Material, float]:
@@ -95,11 +144,15 @@ def misfits(composed: Composed, needed: Needed) -> list[str]:
     """What is missing or too much with these supplies, in words."""
     parts = composed.misfit * importance(needed.asked)
     notices = _not_on_shelf(composed, needed)
-    for name, part, off, own, ask in zip(SPECIES, parts, composed.misfit, needed.own, needed.asked, strict=True):
+    given = needed.own + needed.by_acid
+    for name, part, off, own, ask in zip(SPECIES, parts, composed.misfit, given, needed.asked, strict=True):
         if part > MISSED and own > ask:
-            notices.append(
-                f"{name}: the water alone brings {own:.2f}, the recipe asks for {ask:.2f}; no salt takes it out"
+            by = (
+                "the water and its acid bring"
+                if needed.by_acid[SPECIES.index(name)] > 0.0
+                else "the water alone brings"
             )
+            notices.append(f"{name}: {by} {own:.2f}, the recipe asks for {ask:.2f}; no salt takes it out")
         elif abs(part) > MISSED and name != "HCO3" and (name in IONS or composed.brought[SPECIES.index(name)] > 0):
             notices.append(f"{name}: {abs(off):.2f} {'too much' if off > 0 else 'missing'} with these supplies")
             if name == "NH4" and off > 0:
@@ -108,12 +161,13 @@ def misfits(composed: Composed, needed: Needed) -> list[str]:
 
 
 def subtraction(needed: Needed) -> tuple[str, ...]:
-    """Recipe less water, acid and silicate, ion by ion."""
+    """Recipe less water, the acid in it, and what acid and silicate in the stock bring, ion by ion."""
     lines = []
     for i, name in enumerate(SPECIES):
         if needed.asked[i] > 1e-9 and name != "HCO3":
-            by_acid = needed.asked[i] - needed.own[i] - needed.wanted[i]
-            less_acid = f" - {by_acid:.3f} acid and silicate" if abs(by_acid) > 1e-9 else ""
+            fixed = needed.asked[i] - needed.own[i] - needed.by_acid[i] - needed.wanted[i]
+            less_acid = f" - {needed.by_acid[i]:.3f} acid in the water" if abs(needed.by_acid[i]) > 1e-9 else ""
+            less_acid += f" - {fixed:.3f} acid and silicate" if abs(fixed) > 1e-9 else ""
             unit = "mmol/L" if name in IONS else "umol/L"
             lines.append(
                 f"{name}: recipe {needed.asked[i]:.3f} - water {needed.own[i]:.3f}{less_acid} = "

@@ -11,6 +11,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from fertui.chemistry.ions import INDEX, IONS, MICRONUTRIENTS, Array
+from fertui.planning.acid import LEAVE_MEQ_PER_L, source_water
 from fertui.planning.composing import compose
 from fertui.planning.request import Request
 from fertui.planning.runs import Course, Situation
@@ -47,10 +48,24 @@ def holding_words(request: Request, salts: Sequence[Material], course: Course) -
     ]
     if not grams:
         return ()
+    first = _acid_first(request)
     brings = ", ".join(f"{ion} {composed.brought[INDEX[ion]]:.1f}" for ion in IONS if wanted[INDEX[ion]] > 0.05)
     return (
         f"to hold the tank meanwhile, dissolve for each {PER_L:.0f} L of make-up water: {', '.join(grams)} ({brings} "
-        "mmol/L: what the crop takes of each litre, by the model, less what the water brings); log each as a dose",
+        f"mmol/L: what the crop takes of each litre, by the model, less what the water brings){first}; log each as a "
+        "dose",
+    )
+
+
+def _acid_first(request: Request) -> str:
+    """That hard make-up water meets acid before these salts; nothing where it is soft or was never analysed."""
+    water = source_water(request.situation.site, request.situation.loop)
+    alkalinity = 0.0 if water is None else water.ions.get("HCO3", 0.0)
+    if alkalinity <= LEAVE_MEQ_PER_L:
+        return ""
+    return (
+        f"; its HCO3, {alkalinity:.1f} meq/L, first: by the acid sheet, else pH climbs over 7 and phosphate and iron "
+        "fall out"
     )
 
 

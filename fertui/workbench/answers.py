@@ -204,17 +204,19 @@ class Answers(SiteFolder):
     ) -> StockSheet:
         """The stock-tank sheet of the recipe a loop runs on, its target where none was logged.
 
+        The acid of the acid sheet is counted as poured into the make-up water.
         ``left_l``: litres of old stock left in a tank by name; what they hold is taken off.
         """
         from fertui.logbook.mixes import as_mixed
-        from fertui.planning import stock_sheet
+        from fertui.planning import first_acid, stock_sheet
         from fertui.workbench.carrying_out import running_recipe
 
         chosen, entries = self.loop(loop), self.entries(at, known)
         site = self.site_as_analysed(entries)
         if left_l:
             site = site._replace(stock_tanks=as_mixed(site.stock_tanks, entries))
-        return stock_sheet(site, chosen, recipe=running_recipe(site, chosen, entries), remainder_l=left_l)
+        recipe = running_recipe(site, chosen, entries)
+        return stock_sheet(site, chosen, recipe=recipe, acid_in_water=first_acid(site), remainder_l=left_l)
 
     def acid(self, loop: str | None = None, at: datetime | None = None, known: datetime | None = None) -> AcidSheet:
         """The acid sheet of a loop's make-up water: for its tank, or for a m3 where the water is treated on its way."""

@@ -214,7 +214,7 @@ def test_portions_sum_to_the_dose_and_each_has_a_line_to_sign() -> None:
     assert sum(float(row[3]) for row in rows) == pytest.approx(1.15, abs=0.005)
     assert page.text.count(SIGN) == len(sheet.splits)
     assert "in all, if every retest allows it: 1.15 L" in page.text
-    assert "3.00 mmol/L NO3 (42 mg/L N): take it off the salts" in page.text
+    assert "3.00 mmol/L NO3 (42 mg/L N): the stock sheet takes it off the" in page.text
 
 
 def test_water_of_unknown_alkalinity_gets_no_dose_but_the_reason() -> None:

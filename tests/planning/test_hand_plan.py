@@ -251,6 +251,13 @@ def test_a_tank_that_nothing_feeds_is_held_by_salts_in_its_fresh_water() -> None
     assert plan.solver_calls <= 6
 
 
+def test_hard_fresh_water_meets_acid_before_its_salts() -> None:
+    place, tank = drunk_tank(400.0, UPTAKE)
+    hard = place.site._replace(waters=(place.site.waters[0]._replace(composition=Composition({"HCO3": 3.6})),))
+    (words,) = hand_plan(request(place._replace(site=hard), tank, days=14)).notices
+    assert "HCO3, 3.6 meq/L, first: by the acid sheet" in words
+
+
 def test_later_weighings_may_go_in_with_the_fresh_water() -> None:
     place, tank = drunk_tank(400.0, {"K": 1.2, "Ca": -0.3, "Mg": -0.1, "NO3": 0.4})
     plan = hand_plan(request(place, tank, days=14))

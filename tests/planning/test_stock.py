@@ -5,6 +5,8 @@ from __future__ import annotations
 import pytest
 
 from fertui.catalogue.figures import CatalogueError
+from fertui.chemistry.ions import INDEX
+from fertui.planning.acid import acid_sheet
 from fertui.planning.last_mix import last_mix
 from fertui.planning.shelf import PlanningError, material, shelf
 from fertui.planning.stock import StockSheet, stock_sheet
@@ -156,6 +158,47 @@ def test_silicate_counts_its_potassium_and_alkalinity_and_stands_alone() -> None
 def test_pairs_that_must_not_share_a_tank(one: Supply, other: Supply) -> None:
     refused = conflicts({material(one): 20.0, material(other): 20.0}, 1000.0, "tank")
     assert any(set(each.pair) == {one.name, other.name} for each in refused)
+
+
+@pytest.mark.parametrize(("kind", "strength", "ion"), [("nitric acid", 60.0, "NO3"), ("sulfuric acid", 37.0, "SO4")])
+def test_the_acid_of_the_acid_sheet_comes_off_the_salts(kind: str, strength: float, ion: str) -> None:
+    acid = Supply(kind, kind, strength_pct=strength)
+    water = Composition({"HCO3": 2.3, "Ca": 0.9})
+    shelf_ = (*(Supply(name, name) for name in (*SALTS, "potassium sulfate", "magnesium nitrate hexahydrate")), acid)
+    sheet = sheet_of(supplies=shelf_, water=water, acid_in_water=acid)
+    site = Site("S", "UTC", (), supplies=shelf_)
+    loop = Loop("l", "drain-blend", 1000.0, "tomato", "stone-wool")
+    poured = acid_sheet(site, loop, water=water, acid=acid, volume_l=1000.0).adds_mmol_l
+    # 2.3 - 0.5 left = 1.8 meq/L: 1.8 mmol/L of a monobasic acid, 0.9 of sulfuric (definition of the equivalent)
+    assert poured[ion] == pytest.approx({"NO3": 1.8, "SO4": 0.9}[ion], rel=0.01)
+    salts = sum(
+        line.kg * material(Supply(line.kind, line.kind)).ions_mmol_per_kg[INDEX[ion]] / tank.litres / tank.dilution
+        for tank in sheet.tanks
+        for line in tank.salts
+    )
+    assert salts + poured[ion] == pytest.approx(HOAGLAND_1.ions[ion], abs=0.6)  # 0.5 meq/L of HCO3 and what Ca leaves
+    assert salts + poured[ion] == pytest.approx(sheet.ions_mmol_l[ion], abs=0.01)
+    assert sheet.ions_mmol_l["HCO3"] == pytest.approx(0.5, abs=0.01)
+    assert not any(line.kind == kind for tank in sheet.tanks for line in tank.salts)
+    assert any(f"- {poured[ion]:.3f} acid in the water" in line for line in sheet.arithmetic)
+    (words,) = (each for each in sheet.notices if each.startswith("HCO3"))
+    assert "2.3 meq/L" in words
+    assert kind in words
+
+
+def test_an_acid_that_brings_more_than_the_recipe_asks_is_named() -> None:
+    acid = Supply("phosphoric acid", "phosphoric acid", strength_pct=75.0)
+    shelf_ = (*(Supply(name, name) for name in SALTS), acid)
+    sheet = sheet_of(supplies=shelf_, water=Composition({"HCO3": 3.5}), acid_in_water=acid)
+    # 3.0 meq/L by about one proton a mole of H3PO4: three times the 1.0 mmol/L that is asked (Circular 347)
+    assert any("the water and its acid bring" in each and each.startswith("H2PO4") for each in sheet.notices)
+    assert "monopotassium phosphate" not in kg(sheet)
+
+
+def test_hard_water_without_acid_on_the_shelf_is_named() -> None:
+    hard = sheet_of(water=Composition({"HCO3": 3.5, "Ca": 1.5}))
+    assert any(each.startswith("HCO3: the water brings 3.5 meq/L and no acid") for each in hard.notices)
+    assert not any(each.startswith("HCO3") for each in sheet_of(water=Composition({"HCO3": 0.4})).notices)
 
 
 def test_without_alkalinity_there_is_no_acid_in_the_stock() -> None:
