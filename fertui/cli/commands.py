@@ -211,15 +211,27 @@ def hindcast(options: Options) -> int:
 
 def plan(options: Options) -> int:
     """``plan``: exit code 1 where the answer is no."""
-    from fertui.cli.views.plan import document, text
+    from fertui.cli.views.plan import accepted_text, document, text
+    from fertui.workbench.carrying_out import STANDS, nothing_new, open_steps, standing
 
     bench, view = read_view(options)
     made = bench.plan(days=read_whole(options.days, "--days", 0, 60), **view, **_wishes(options))
+    timezone = bench.site.timezone
+    accepted = open_steps(bench.open_plans(made.loop, view["at"]), made.at, timezone)
+    stands = bool(standing(accepted, made.at, timezone))
+    if stands and options.sheet:
+        raise Refusal(STANDS)
     if options.sheet:
         release(bench, made, bench.plan_page(made), options)
     held = () if options.json else held_back(bench, made, options)
-    _show(options, lambda: document(made), lambda: text(made, bench.site.timezone, read_unit(bench, options), held))
-    return FINE if made.feasible else NO
+    unit = read_unit(bench, options)
+
+    def told() -> str:
+        before = accepted_text(made, accepted, stands, timezone) if accepted else ""
+        return before if stands else before + text(made, timezone, unit, held)
+
+    _show(options, lambda: document(nothing_new(made) if stands else made, accepted), told)
+    return FINE if made.feasible or stands else NO
 
 
 def _wishes(options: Options) -> dict[str, Any]:

@@ -12,6 +12,9 @@ from fertui.estimate.record import Record
 from fertui.logbook.entries import Entry
 from fertui.logbook.intended import is_step, subject
 
+GONE_BY_DAYS = 7.0
+"""So long a step that was never marked is spoken of after its day."""
+
 
 class Planned(NamedTuple):
     """A plan entry, from when until when it holds [d from the record's zero], and the part still to do [-]."""
@@ -50,7 +53,7 @@ def expected_words(record: Record, plans: Iterable[Planned]) -> tuple[str, ...]:
     acid = [each for each in steps if each.entry.text_of("acid")]
     others = [each for each in steps if each not in acid]
     lasting = [each for each in others if each.entry.text_of("recipe") or is_coming(record, each)]
-    gone = [each for each in others if each not in lasting]
+    gone = [each for each in others if each not in lasting and each.begin > record.end - GONE_BY_DAYS]
     told = (
         ("accepted and not marked done, expected all the same", lasting),
         ("accepted for a day gone by and never marked done, not expected", gone),

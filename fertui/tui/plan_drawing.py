@@ -21,15 +21,15 @@ from fertui.tui.ink import BLANK, Line, Span, barred, col, cut, fit, line, liter
 from fertui.tui.snapshot import Snapshot
 
 if TYPE_CHECKING:
-    from fertui.planning.values import Plan
+    from fertui.planning.values import Outlook, Plan
     from fertui.planning.weighing import Weighing
     from fertui.workbench.carrying_out import PlanItem
 
 Local = Callable[[datetime], datetime]
 USUAL = 76
+"""Columns from which the days without the plan have room beside those with it."""
 CELL = 19
 """Columns of a number with its sign and range."""
-"""Columns from which the days without the plan have room beside those with it."""
 COMPARED = ("K share", "Ca share", "Mg share", "EC", "Na", "NH4", "NO3")
 
 
@@ -37,7 +37,7 @@ def draw_accepted(items: Sequence[PlanItem], chosen: int, local: Local, width: i
     """Steps accepted before: what is to do, what is done."""
     if not items:
         return []
-    rows = [line(Span(" Accepted", "title"), Span("   counted only when marked done", "faint"))]
+    rows = [line(Span(" Accepted", "title"), Span("   expected; done only once marked", "faint"))]
     for index, item in enumerate(items):
         how_much = "" if item.amount is None else f"{item.amount:g} {item.unit}"
         where = f" into {item.target}" if item.target else ""
@@ -65,7 +65,11 @@ def draw_plan(
     if plan.sample_first:
         rows += _marked("watch", "The range is wider than the band: take a sample first, then plan.", width)
     rows += [*_recipe(plan, snapshot.unit, width), *_doses(plan, local, width), *_acid(plan, held, local, width), BLANK]
-    rows += [*_outcome(plan, snapshot.unit, width), BLANK, *_texts("notice", plan.notices, width)]
+    rows += [
+        *_outcome(_outlooks(plan, width), plan.point, snapshot.unit, width),
+        BLANK,
+        *_texts("notice", plan.notices, width),
+    ]
     rows += [*_tanks(plan, held, width), *_renewal(plan, width)]
     for binding in plan.binding:
         source = f" ({literal(binding.source)})" if binding.source else ""
@@ -81,6 +85,26 @@ def draw_plan(
     for caution in plan.cautions:
         rows += _marked(CAUTION_INKS[caution.severity], caution.text, width)
     return rows
+
+
+def draw_standing(plan: Plan, unit: str, width: int) -> list[Line]:
+    """In place of a plan that would tell accepted steps again: that they stand, and what comes of them."""
+    from fertui.workbench.carrying_out import STANDS
+
+    outlooks = [("now", plan.before), ("with these steps", plan.after_without)]
+    return [*_marked("watch", STANDS, width), BLANK, *_outcome(outlooks, plan.point, unit, width)]
+
+
+def draw_on_top(width: int) -> list[Line]:
+    """What a plan beside accepted steps is to be read as."""
+    from fertui.workbench.carrying_out import ON_TOP
+
+    return _marked("faint", ON_TOP, width)
+
+
+def draw_outdated(width: int) -> list[Line]:
+    """That a plan is of before the last entry."""
+    return _marked("watch", "Being worked out anew after what was logged; what stands below is of before that.", width)
 
 
 def _head(plan: Plan, wishes: Sequence[str], width: int) -> Line:
@@ -178,18 +202,22 @@ def _renewal(plan: Plan, width: int) -> list[Line]:
     return rows + [row for option in plan.renewal.options for row in _texts(option.name, [option.text], width)]
 
 
-def _outcome(plan: Plan, unit: str, width: int) -> list[Line]:
+def _outlooks(plan: Plan, width: int) -> list[tuple[str, Outlook]]:
     """Now, at the horizon with the plan, at the horizon without."""
+    outlooks = [("now", plan.before), ("with the plan", plan.after)]
+    return [*outlooks, ("without", plan.after_without)] if width >= USUAL else outlooks
+
+
+def _outcome(outlooks: Sequence[tuple[str, Outlook]], point: str, unit: str, width: int) -> list[Line]:
+    """A table of states side by side."""
     from fertui.tui.views.forecast import _in_unit, _value
 
-    outlooks = [("now", plan.before), ("with the plan", plan.after)]
-    outlooks += [("without", plan.after_without)] if width >= USUAL else []
     heads = (*((head, CELL) for head, _ in outlooks), ("band", 10))
     rows = [line(col("", 13), *(col(head, size, "faint") for head, size in heads))]
     for what in COMPARED:
         cells, label, band = [], "", ""
         for _, outlook in outlooks:
-            state = outlook.points.get(plan.point)
+            state = outlook.points.get(point)
             value, name = _in_unit(None if state is None else _value(state, what), what, unit)
             if value is None:
                 cells.append(col("-", CELL))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import deque
 from collections.abc import Callable
-from datetime import UTC, datetime
+from datetime import datetime
 from pathlib import Path
 from typing import Any, cast
 
@@ -29,6 +29,7 @@ from fertui.tui.terminal import FLOOR, Terminal
 from fertui.tui.themes import THEMES, usual_theme
 from fertui.tui.view import View
 from fertui.tui.view_line import ViewLine
+from fertui.workbench.clock import now
 
 
 class Frame(Screen[None], inherit_bindings=False):
@@ -69,7 +70,7 @@ class Shell(App[int], inherit_bindings=False):
         super().__init__(driver_class=ThinLineDriver, ansi_color=True if no_colour else None)
         self.folder, self.settings, self.terminal = folder, settings, terminal
         self.fixed_at = at
-        self.moment = at or datetime.now(UTC)
+        self.moment = at or now()
         self.initials = Initials(operator, settings.initials_minutes)
         self.fault: BaseException | None = None
         self.open_view = 1
@@ -162,7 +163,7 @@ class Shell(App[int], inherit_bindings=False):
         own = {binding.id for bindings in page._bindings.key_to_bindings.values() for binding in bindings}
         shown: dict[str | None, Binding] = {}
         for active in self.screen.active_bindings.values():
-            if active.binding.show:
+            if active.binding.show and (active.node is not page or page.offers(active.binding.action)):
                 shown.setdefault(active.binding.id, active.binding)
         ordered = sorted(shown.values(), key=lambda binding: binding.id not in own)
         if self.query_one(Stage).piled:

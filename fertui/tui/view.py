@@ -72,6 +72,10 @@ class View(Page, can_focus=True):
         self._top = max(0, min(self._top, self._total - size.height))
         return lines[self._top : self._top + size.height]
 
+    def offers(self, action: str) -> bool:
+        """Whether a key of the page can do something now: the bottom line names only those."""
+        return True
+
     def keep(self) -> bool:
         """Keep what must not be lost when the program ends; False where that failed. Most pages have nothing."""
         return True

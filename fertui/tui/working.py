@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from datetime import UTC, datetime
+from datetime import datetime
 from functools import partial
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -16,6 +16,7 @@ from fertui.tui.shell import Shell
 from fertui.tui.snapshot import Ask
 from fertui.tui.terminal import Terminal
 from fertui.tui.view import View
+from fertui.workbench.clock import now
 
 if TYPE_CHECKING:
     from fertui.site.model import Site
@@ -200,7 +201,7 @@ class Working(Shell):
     def changed(self, last_number: int) -> None:
         """The logbook has new entries: what is shown stays until better answers come."""
         self._last_number = last_number
-        self.moment = self.fixed_at or datetime.now(UTC)
+        self.moment = self.fixed_at or now()
         self._take_back(list(self._under_way.values()))
         self._under_way.clear()
         self.snapshot = self.snapshot.outdated()

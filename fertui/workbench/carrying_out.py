@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 from datetime import datetime
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 from fertui.logbook.entries import Entry
 from fertui.logbook.intended import carried_out, given, is_step, part_left, subject
@@ -31,6 +31,11 @@ class PlanItem(NamedTuple):
     target: str
     done_number: int | None
     done_amount: float | None = None
+
+    @property
+    def is_lasting(self) -> bool:
+        """Whether it is acid or a recipe: a plan made before it is done does not count it."""
+        return self.what == "recipe" or (self.unit == "L" and self.what != "bleed")
 
     @property
     def state(self) -> str:
@@ -67,6 +72,42 @@ def open_plans(entries: Sequence[Entry]) -> tuple[PlanItem, ...]:
     """Every intended step of a loop's effective entries, with what was done of it."""
     done = carried_out(entries)
     return tuple(_item(entry, done.get(entry.number or 0, [])) for entry in entries if is_step(entry))
+
+
+STANDS = (
+    "Already planned: these steps stand, and a plan made now would tell them a second time. Mark each done, or not "
+    "done, when its time has come; a new plan is worked out from what was really given."
+)
+ON_TOP = "What follows is planned on top of the accepted steps, as if they were done in their time."
+
+
+def nothing_new(plan: Plan) -> Plan:
+    """A plan in place of which accepted steps stand: it asks for nothing, and what comes is what comes without it."""
+    empty: dict[str, Any] = dict.fromkeys(("steps", "acid", "binding", "rule_of_thumb", "reasons", "arithmetic"), ())
+    return plan._replace(
+        **empty, recipe=None, renewal=None, sensitivity=(), runner_up=None, after=plan.after_without, notices=(STANDS,)
+    )
+
+
+def open_steps(items: Iterable[PlanItem], at: datetime, timezone: str) -> tuple[PlanItem, ...]:
+    """Steps still to do on the day of a time or later."""
+    from zoneinfo import ZoneInfo
+
+    zone = ZoneInfo(timezone)
+    today = at.astimezone(zone).date()
+    return tuple(item for item in items if item.state != "done" and item.at.astimezone(zone).date() >= today)
+
+
+def standing(items: Iterable[PlanItem], at: datetime, timezone: str) -> tuple[PlanItem, ...]:
+    """Steps still to do which a plan made at a time would tell again: those of its day, acid and recipes to come.
+
+    Other steps to come are in the forecast that a plan starts from; those of a day gone by are no longer expected.
+    """
+    from zoneinfo import ZoneInfo
+
+    zone = ZoneInfo(timezone)
+    today, still_open = at.astimezone(zone).date(), open_steps(items, at, timezone)
+    return tuple(item for item in still_open if item.is_lasting or item.at.astimezone(zone).date() == today)
 
 
 def in_words(item: PlanItem, timezone: str) -> str:

@@ -6,6 +6,7 @@ import csv
 import io
 import json
 import re
+from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
@@ -134,6 +135,28 @@ def test_an_acid_sheet_is_released_by_cautions_read_and_the_strength_on_the_labe
     head, *rows = csv.reader(io.StringIO(sheet.read_text()))
     assert head[:4] == ["split", "acid", "strength [%]", "litres [L]"]
     assert len(rows) >= 3
+
+
+def test_a_plan_says_that_accepted_steps_are_still_to_do_and_does_not_tell_them_again(
+    capsys: pytest.CaptureFixture[str], demo: Path, tmp_path: Path
+) -> None:
+    bench = open_site(demo)
+    _, now, _ = printed(capsys, "plan", str(demo), "--loop", "lettuce")
+    assert "accepted and still to do" not in now
+    step = {"at": datetime.now(UTC).isoformat(), "salt": "potassium nitrate", "kg": "0.35", "tank": "tank", "by": "RV"}
+    number = bench.record("plan", step, "lettuce").number or 0
+    _, out, _ = printed(capsys, "plan", str(demo), "--loop", "lettuce")
+    assert f"0.35 kg potassium nitrate into tank (plan {number})" in out
+    assert "Already planned: these steps stand" in out
+    assert "Weigh and dissolve" not in out
+    code, _, err = printed(capsys, "plan", str(demo), "--loop", "lettuce", "--sheet", str(tmp_path / "sheet.txt"))
+    assert code == 2
+    assert "Already planned" in err
+    _, told, _ = printed(capsys, "plan", str(demo), "--loop", "lettuce", "--json")
+    assert [each["number"] for each in json.loads(told)["accepted"]] == [number]
+    assert json.loads(told)["steps"] == []
+    bench.mark_done(number, "RV")
+    assert "accepted and still to do" not in printed(capsys, "plan", str(demo), "--loop", "lettuce")[1]
 
 
 def test_a_plan_on_the_command_line_holds_acid_back_until_its_cautions_are_read(

@@ -167,6 +167,23 @@ def test_plan_accepted_and_a_step_marked_done(site: Path, counting: Counted) -> 
     assert (acid.number_of("litres"), acid.text_of("cautions")) == (0.42, "acknowledged")
 
 
+def test_an_accepted_plan_stands_alone_and_is_not_accepted_twice(site: Path, counting: Counted) -> None:
+    terminal = counting.terminal
+    terminal.press("n", "p")
+    keys = terminal.until_text("with the plan").splitlines()[-1]
+    assert "y accept" in keys
+    assert "Enter done" not in keys  # nothing is accepted yet
+    terminal.press("y", "enter", "38", "enter")
+    give_initials(terminal)
+    shown = terminal.until_text("Already planned: these steps stand")
+    assert " weigh " not in shown
+    assert "with these steps" in shown
+    assert "y accept" not in shown.splitlines()[-1]
+    terminal.press("y")
+    terminal.until_text("Accepted steps stand")
+    assert len(fresh(site, "plan")) == 3
+
+
 def test_a_step_done_in_part_says_what_is_left_and_asks_for_that(site: Path, counting: Counted) -> None:
     terminal = counting.terminal
     terminal.press("n", "p")

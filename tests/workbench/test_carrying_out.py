@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from datetime import UTC, datetime
+from datetime import UTC, datetime, timedelta
 from pathlib import Path
 
 import pytest
@@ -13,7 +13,7 @@ from fertui.planning.values import RecipeChange
 from fertui.refusals import Refusal
 from fertui.workbench import open_site
 from fertui.workbench.bench import Bench
-from fertui.workbench.carrying_out import PlanItem, acids_of, check_strength, in_words
+from fertui.workbench.carrying_out import PlanItem, acids_of, check_strength, in_words, standing
 from tests.paper.hand_made import SITE, acid, acid_step, hand_plan, recipe_change, renewal, stocks
 
 LETTUCE = {"loop": "lettuce"}
@@ -185,3 +185,42 @@ def test_acid_in_a_stock_tank_is_acid_too(bench: Bench) -> None:
 def test_two_acids_of_different_strength_are_never_released_by_one_label() -> None:
     with pytest.raises(Refusal):
         check_strength([("nitric 60", 60.0), ("phosphoric 59", 75.0)], 60.0)
+
+
+NOON = datetime(2026, 6, 1, 12, 0, tzinfo=UTC)
+
+
+@pytest.mark.parametrize(
+    ("days", "what", "unit", "done", "stands"),
+    [
+        (0.1, "potassium nitrate", "kg", None, True),
+        (-0.1, "potassium nitrate", "kg", None, True),
+        (-0.1, "potassium nitrate", "kg", 7, False),
+        (1.0, "potassium nitrate", "kg", None, False),
+        (-1.0, "potassium nitrate", "kg", None, False),
+        (1.0, "nitric acid", "L", None, True),
+        (1.0, "recipe", "", None, True),
+        (1.0, "bleed", "L", None, False),
+    ],
+)
+def test_what_a_plan_made_now_would_tell_again_stands(
+    days: float, what: str, unit: str, done: int | None, stands: bool
+) -> None:
+    item = PlanItem(1, NOON + timedelta(days=days), what, 1.0, unit, "tank", done, 1.0 if done else None)
+    assert bool(standing([item], NOON, "UTC")) == stands
+
+
+def test_the_day_of_a_step_is_that_of_the_site() -> None:
+    late = PlanItem(1, datetime(2026, 6, 1, 23, 0, tzinfo=UTC), "potassium nitrate", 1.0, "kg", "tank", None)
+    assert standing([late], NOON, "UTC")
+    assert not standing([late], NOON, "Europe/Paris")  # one in the morning of the day after
+
+
+def test_what_was_just_logged_is_in_the_state_asked_for_next(bench: Bench) -> None:
+    item = accepted(bench)[0]
+    before = bench.today("lettuce")
+    done = bench.mark_done(item.number, "AN")
+    after = bench.today("lettuce")
+    assert after.at - done.at >= timedelta(seconds=9)
+    gained = after.points["tank"].ions["K"].mmol_l.value - before.points["tank"].ions["K"].mmol_l.value
+    assert gained == pytest.approx(1.75 * 1e6 / 101.10 / 2000, rel=0.1)  # 101.10 g/mol: standard atomic weights

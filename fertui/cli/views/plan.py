@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any
 
 from fertui.catalogue.acids import with_strength
@@ -11,6 +12,7 @@ from fertui.paper.cautions import read_first
 from fertui.paper.page import columns, folded
 from fertui.planning.values import Outlook, Plan, RecipeChange, Renewal
 from fertui.site.points import point_name
+from fertui.workbench.carrying_out import ON_TOP, STANDS, PlanItem, in_words
 from fertui.workbench.today import reading_of, unit_of
 
 Held = tuple[tuple[str, float], ...]
@@ -35,6 +37,16 @@ def text(plan: Plan, timezone: str, unit: str, held: Held = ()) -> str:
         lines += _section("Next best", [plan.runner_up.difference])
     lines += _section("Step by step", [each for each in plan.arithmetic if not _tells_litres(each, held)])
     return "\n".join(lines)
+
+
+def accepted_text(plan: Plan, accepted: Sequence[PlanItem], stands: bool, timezone: str) -> str:
+    """Accepted steps still to do; what comes of them where they stand in place of a plan, else that it adds to them."""
+    lines = [f"{plan.loop}: accepted and still to do", *(f"  {in_words(each, timezone)}" for each in accepted), ""]
+    if not stands:
+        return "\n".join([*lines, *folded(ON_TOP, ""), "", ""])
+    lines += [*folded(STANDS, f"{SIGNS['watch']} "), ""]
+    outlooks = (("now", plan.before), (f"with these steps, {plan.horizon_days} days on", plan.after_without))
+    return "\n".join([*lines, *_table(outlooks, plan.point)])
 
 
 def _section(title: str, rows: Any) -> list[str]:
@@ -127,9 +139,15 @@ def _renewal(plan: Plan, timezone: str) -> list[str]:
 
 
 def _outcome(plan: Plan) -> list[str]:
-    rows: list[tuple[str, ...]] = [("", "now", "with the plan", "without it")]
+    outlooks = (("now", plan.before), ("with the plan", plan.after), ("without it", plan.after_without))
+    return _table(outlooks, plan.point)
+
+
+def _table(outlooks: Sequence[tuple[str, Outlook]], point: str) -> list[str]:
+    """States side by side, each under its head."""
+    rows: list[tuple[str, ...]] = [("", *(head for head, _ in outlooks))]
     for what in ("K share", "Ca share", "Mg share", "EC", "Na", "NH4"):
-        cells = [_cell(outlook, plan.point, what) for outlook in (plan.before, plan.after, plan.after_without)]
+        cells = [_cell(outlook, point, what) for _, outlook in outlooks]
         rows.append((f"{what} {'%' if 'share' in what else 'mS/cm' if what == 'EC' else 'mmol/L'}", *cells))
     return columns(rows)
 
@@ -146,13 +164,14 @@ def _binding(each: Any) -> str:
     return f"{each.limit}: {words.number(each.value)} {each.unit}, {reached}{source}"
 
 
-def document(plan: Plan) -> dict[str, Any]:
-    """The contract of ``plan --json``."""
+def document(plan: Plan, accepted: Sequence[PlanItem] = ()) -> dict[str, Any]:
+    """The contract of ``plan --json``; ``accepted``: steps still to do, to which the new ones would come on top."""
     return {
         "schema": "fertui.plan/1",
         "loop": plan.loop,
         "layout": plan.layout,
         "at": plan.at,
+        "accepted": [{**as_json.plain(each), "state": each.state} for each in accepted],
         "feasible": plan.feasible,
         "reason": plan.reason,
         "horizon_days": plan.horizon_days,

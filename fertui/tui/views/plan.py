@@ -8,7 +8,7 @@ from textual.binding import Binding
 
 from fertui.tui.desk import Answer
 from fertui.tui.ink import BLANK, Line
-from fertui.tui.plan_drawing import draw_accepted, draw_plan
+from fertui.tui.plan_drawing import draw_accepted, draw_on_top, draw_outdated, draw_plan, draw_standing
 from fertui.tui.releasing import release
 from fertui.tui.snapshot import Ask, Snapshot
 from fertui.tui.text_page import TextPage
@@ -24,6 +24,11 @@ STEPS = (None, 1, 2, 3, 4)
 EC_STEPS = (None, 0.1, 0.2, 0.3, 0.5)
 
 
+def asks_for_something(plan: Plan) -> bool:
+    """Whether there is anything in a plan to accept."""
+    return bool(plan.steps or plan.acid or plan.recipe is not None or plan.renewal is not None)
+
+
 class PlanView(View):
     """The plan of the loop, and what was accepted of plans before."""
 
@@ -31,8 +36,8 @@ class PlanView(View):
     HELP = (
         "What brings K : Ca : Mg back without breaking EC, NH4, Na, Cl or solubility limits: the next recipe for "
         "a loop fed from stock "
-        "tanks, hand doses for a tank. It advises, you decide. y accepts it: its steps then stand on top, and "
-        "count only once marked "
+        "tanks, hand doses for a tank. It advises, you decide. y accepts it: its steps then stand on top, the forecast "
+        "expects them, and they are done only once marked "
         "done. Enter marks the chosen step done and asks what was really weighed; v says it was not done. "
         "l leaves a salt out, h sets the horizon (0: right after mixing), g the number of steps, s the number of "
         "salts, c how much EC may change in one step. "
@@ -64,6 +69,7 @@ class PlanView(View):
         self.horizon, self.salts, self.steps, self.ec_step, self.row = 14, 0, 0, 0, 0
         self.without: tuple[str, ...] = ()
         self.released: Plan | None = None
+        self.accepted: Plan | None = None
 
     def _ask(self, snapshot: Snapshot) -> Ask:
         options: list[tuple[str, Any]] = [("days", self.horizon)]
@@ -86,12 +92,39 @@ class PlanView(View):
         return found
 
     def _made(self) -> Plan | None:
-        """The plan on screen; says so where there is none yet."""
+        """The plan on screen, the accepted one where its steps stand in place of it; says so where there is none."""
+        if self._standing():
+            return self._accepted()
         plan = self.plan()
         if plan is None:
             trouble = self.fertui.snapshot.trouble(self._ask(self.fertui.snapshot))
             self.fertui.say("There is no plan." if trouble else "The plan is still being worked out.", "watch")
         return plan
+
+    def _accepted(self) -> Plan | None:
+        """The plan whose steps stand, if it was accepted here; says so where it was not."""
+        plan = self.accepted
+        if plan is not None and plan.loop == self.fertui.snapshot.loop:
+            return plan
+        self.fertui.say("Accepted steps stand: Enter marks one done, v not done.", "watch")
+        return None
+
+    def _standing(self) -> bool:
+        """Whether accepted steps stand in place of a plan."""
+        from fertui.workbench.carrying_out import standing
+
+        snapshot = self.fertui.snapshot
+        items = self.items(snapshot)
+        return bool(items and standing(items, self.fertui.moment, snapshot.site.timezone))
+
+    def offers(self, action: str) -> bool:
+        """Accepting only what asks for something and is not accepted yet; done and not done only of a step."""
+        if action in ("done", "not_done"):
+            return any(item.state != "done" for item in self.items(self.fertui.snapshot))
+        if action == "accept":
+            plan = self.plan()
+            return plan is not None and not self._standing() and asks_for_something(plan)
+        return True
 
     def _holds_acid(self, plan: Plan) -> bool:
         from fertui.workbench.carrying_out import acids_of
@@ -105,12 +138,20 @@ class PlanView(View):
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """Accepted steps, then the plan."""
+        from fertui.workbench.carrying_out import open_steps
+
         items = self.items(snapshot)
         self.row = max(0, min(self.row, len(items) - 1))
         rows = draw_accepted(items, self.row, self.fertui.local, width)
         plan, ask = self.plan(), self._ask(snapshot)
         if plan is None:
             return [*rows, *waiting(snapshot, ask, "the plan", width)]
+        if self._standing():
+            return [*rows, BLANK, *draw_standing(plan, snapshot.unit, width)]
+        if open_steps(items, self.fertui.moment, snapshot.site.timezone):
+            rows += [BLANK, *draw_on_top(width)]
+        if snapshot.lacks(ask):
+            rows += [BLANK, *draw_outdated(width)]
         held = self._holds_acid(plan) and self.released is not plan
         wishes = [f"without {', '.join(self.without)}"] if self.without else []
         wishes += [f"at most {SALTS[self.salts]} salts"] if self.salts else []
@@ -202,12 +243,15 @@ class PlanView(View):
 
     async def action_accept(self) -> None:
         """Log the steps as intended."""
-        await self._released(lambda: self.fertui.with_initials(self._accept))
+        if self._standing():
+            self.fertui.say("Accepted steps stand: Enter marks one done, v not done.", "watch")
+        else:
+            await self._released(lambda: self.fertui.with_initials(self._accept))
 
     def _accept(self, by: str) -> None:
         plan = self.plan()
         if plan is not None:
-            self.row = 0
+            self.row, self.accepted = 0, plan
             self.fertui.clerk(lambda bench: bench.accept_plan(plan, by), self.fertui.wrote, "accepting the plan")
 
     def _chosen(self) -> PlanItem | None:
@@ -271,7 +315,7 @@ class PlanView(View):
         await self._released(self._sheet)
 
     def _sheet(self) -> None:
-        plan = self.plan()
+        plan = self._made()
         if plan is None:
             return
 
