@@ -14,6 +14,7 @@ import numpy as np
 
 from fertui.chemistry.ions import IONS, Array
 from fertui.estimate.assimilation import Estimate
+from fertui.estimate.display import no_free_acid
 from fertui.loop import CAUSES, WATERS, Discharge
 from fertui.loop import discharged as discharged_by
 from fertui.loop.account import Account, Booking, summed
@@ -91,10 +92,24 @@ def balance(estimate: Estimate, start: datetime, end: datetime) -> Balance:
     """
     account, begin, until = _account(estimate, start, end)
     rows = {ion: BalanceRow(**account.row(ion)) for ion in IONS}
+    rows["HCO3"] = _believed(estimate, rows["HCO3"], begin, until)
     entries = {(ion, cause): account.entries(ion, cause) for ion in IONS for cause in CAUSES}
     moments = estimate.record.moment(begin), estimate.record.moment(until)
     behind = {cell: numbers for cell, numbers in entries.items() if numbers}
     return Balance(*moments, rows, behind, start, began(estimate))
+
+
+def _believed(estimate: Estimate, row: BalanceRow, begin: float, until: float) -> BalanceRow:
+    """The row of alkalinity, none of it below zero where a measured pH rules that out; what is cut off is
+    unexplained."""
+
+    def held(mmol: float, time: float) -> float:
+        acid = mmol < 0.0 and not no_free_acid(estimate.record.observations, estimate.loop.layout, time)
+        return mmol if acid else max(mmol, 0.0)
+
+    start, end = held(row.start_mmol, begin), held(row.end_mmol, until)
+    cut_off = (end - row.end_mmol) - (start - row.start_mmol)
+    return row._replace(start_mmol=start, end_mmol=end, unexplained=row.unexplained + cut_off)
 
 
 def began(estimate: Estimate) -> str:

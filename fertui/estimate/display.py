@@ -36,6 +36,8 @@ PH_ERROR, PH_DRIFT = 0.1, 0.1
 PH_DAYS = 28.0
 MOST_CO2, PK1 = 2.5, 6.35
 """Dissolved CO2 that a loop may hold [mmol/L]: a well water acidified in a closed line; pK1 at 25 C (CRC Handbook)."""
+FREE_ACID_PH = 5.0
+"""Above it a solution holds no free acid worth a number: H+ is below 0.01 mmol/L (definition of pH)."""
 SAME_WATER = {"root_zone": ("root_zone", "drain"), "drain": ("drain", "root_zone"), "feed": ("feed", "tank")}
 
 
@@ -116,7 +118,10 @@ def log_ec(members: Array, middle: Array) -> Array:
 
 
 class Course:
-    """Quantiles of one solution at many times: ``members`` (times, M, 10), already scaled; ``ec`` (times, M), logs."""
+    """Quantiles of one solution at many times: ``members`` (times, M, 10), already scaled; ``ec`` (times, M), logs.
+
+    The members' alkalinity may fall below zero, which is free acid; HCO3 as it is shown is an ion, and cannot.
+    """
 
     def __init__(self, members: Array, ec: Array) -> None:
         self.members = members
@@ -125,6 +130,7 @@ class Course:
         self.shares = quantiles(shares(members), axis=-2)
         self.enough = shared_meq(self.ions[0]) >= LEAST_SHARED_MEQ
         self.ec = quantiles(self.ec_members, axis=-1)
+        self.ions[..., INDEX["HCO3"]] = np.maximum(self.ions[..., INDEX["HCO3"]], 0.0)
 
 
 def courses(solutions: Mapping[str, Array], ec: Array, spread: Spread) -> dict[str, Course]:
@@ -170,6 +176,14 @@ def _as_ph_allows(alkalinity: Estimated, ph: Estimated) -> Estimated:
         for found, at in ((alkalinity.value, ph.value), (alkalinity.low, ph.value), (alkalinity.high, ph.high))
     )
     return Estimated(value, low, max(high, value), alkalinity.band)
+
+
+def no_free_acid(seen: Sequence[Observation], layout: str, time: float) -> bool:
+    """Whether the pH measured last in every point that was measured rules free acid out, and so an alkalinity below
+    zero."""
+    found = (Acidity(seen, point).at(time, None) for point in POINTS_OF[layout])
+    known = [ph.value for ph in found if ph is not None]
+    return bool(known) and min(known) > FREE_ACID_PH
 
 
 class Acidity:

@@ -51,6 +51,41 @@ def test_start_and_flows_make_the_end_for_every_period(one: float, other: float)
             assert _gap(row) < 1e-9
 
 
+def _soured(**read: float) -> Estimate:
+    """A tank into which more acid was logged than its solution can have met."""
+    log = [
+        entry("analysis", 0.5, "tank", "tank", **SALAD),
+        entry("acid", 4.25, "tank", acid="nitric acid", strength=60.0, litres=0.5),
+        *([entry("reading", 4.5, "tank", "tank", **read)] if read else []),
+    ]
+    return assimilate(SITE, TANK, log, moment(5.0), members=60)
+
+
+def test_no_free_acid_is_booked_beside_a_ph_that_rules_it_out() -> None:
+    # pH 5 is 0.01 mmol/L of H+ (definition): alkalinity below zero would show as a pH of 4 or less
+    unread, sour, read = (
+        balance(_soured(**each), moment(4.0), moment(5.0)) for each in ({}, {"pH": 3.2}, {"EC": 2.4, "pH": 6.2})
+    )
+    assert unread.ions["HCO3"].end_mmol < -1000.0
+    assert sour.ions["HCO3"].end_mmol < -1000.0
+    row = read.ions["HCO3"]
+    assert row.end_mmol == 0.0
+    assert _gap(row) < 1e-9
+    assert row.unexplained > 1000.0
+    assert row.acid == pytest.approx(sour.ions["HCO3"].acid)
+    for ion in ("K", "NO3", "Ca"):
+        assert _gap(read.ions[ion]) < 1e-9
+
+
+def test_hco3_is_shown_as_nothing_at_least() -> None:
+    for estimate in (_soured(), _soured(pH=3.2)):
+        shown = estimate.points()["tank"].ions["HCO3"].mmol_l
+        assert shown.low == shown.value == 0.0
+        assert shown.high >= 0.0
+        ahead = forecast(estimate, 2).days[-1].points["tank"].ions["HCO3"].mmol_l
+        assert 0.0 <= ahead.low <= ahead.value <= ahead.high
+
+
 def test_two_halves_make_the_whole() -> None:
     whole, one, two = (balance(_tank(), moment(a), moment(b)) for a, b in ((1.0, 8.0), (1.0, 5.3), (5.3, 8.0)))
     for ion, row in whole.ions.items():
