@@ -62,11 +62,11 @@ class Papers(Entering):
     def show_paper(self, name: str, answer: Answer, file_name: str = "") -> None:
         """Show a sheet as it will be printed."""
         text = answer if answer.value is None else Answer(answer.value.text.splitlines())
-        self.show_text(name.replace("_", " "), text, file_name or f"{name}-{self.moment:%Y-%m-%d}.txt")
+        self.show_text(name.replace("_", " "), text, file_name or f"{name}-{self.moment:%Y-%m-%d}.txt", printed=True)
 
-    def show_text(self, title: str, answer: Answer, file_name: str = "") -> None:
-        """Show lines of text, or the sentence why there are none."""
+    def show_text(self, title: str, answer: Answer, file_name: str = "", printed: bool = False) -> None:
+        """Show lines of text, ``printed`` without a margin, or the sentence why there are none."""
         from fertui.tui.text_page import TextPage
 
         lines = answer.value if answer.value is not None else [answer.trouble]
-        self.call_next(self.open_page, TextPage(title, lines, file_name))
+        self.call_next(self.open_page, TextPage(title, lines, file_name, printed=printed and answer.value is not None))

@@ -17,7 +17,7 @@ from fertui.tui.view import SCROLLING, View
 
 class TextPage(View):
     """Lines as they are: too long ones are wrapped. ``go_on``: what Enter does, where the page asks to be read
-    first."""
+    first. ``printed``: lines made for the whole width of a sheet, shown without a margin."""
 
     TITLE = "Text"
     HELP = "A page of text. o writes it to a file, y copies it to the clipboard of your terminal, Esc goes back."
@@ -36,10 +36,11 @@ class TextPage(View):
         file_name: str = "",
         go_on: Callable[[], None] | None = None,
         asks: str = "",
+        printed: bool = False,
     ) -> None:
         super().__init__()
         self.heading, self.text, self.file_name = title, tuple(text), file_name
-        self._go_on, self._asks = go_on, asks
+        self._go_on, self._asks, self._printed = go_on, asks, printed
 
     def draw(self, snapshot: Snapshot, width: int) -> list[Line]:
         """The heading and the lines; where it asks for something, that comes last."""
@@ -47,7 +48,10 @@ class TextPage(View):
         heading = cut(literal(self.heading), width - 2 - len(how))
         rows = [line(Span(f" {heading}", "title"), Span(how, "watch")), BLANK]
         for text in self.text:
-            rows += _paragraph(literal(text), width)
+            if self._printed and (cells(text) <= width or len(set(text)) == 1):
+                rows.append(line(literal(text[:width])))  # a rule is as wide as the screen
+            else:
+                rows += _paragraph(literal(text), width)
         return [*rows, BLANK, line(" ", Span(self._asks, "watch"))] if self._asks else rows
 
     def action_go_on(self) -> None:

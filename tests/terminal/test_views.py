@@ -14,6 +14,8 @@ from conftest import HERE, Opened
 from pseudo_terminal import PseudoTerminal
 
 from fertui.tui.ink import text_of
+from fertui.tui.snapshot import Snapshot
+from fertui.tui.text_page import TextPage
 from fertui.tui.views.supplies import shelf_table
 from fertui.workbench.shelf import SupplyRow
 
@@ -155,6 +157,17 @@ def test_no_line_is_wider_than_the_screen(site: Path, open_terminal: Opened, siz
         terminal.until(lambda text: "orking out" not in text)
         assert all(len(row) <= size[0] for row in terminal.text.splitlines())
         assert terminal.text.splitlines()[0].rstrip().endswith("09:00"), terminal.text
+
+
+@pytest.mark.parametrize("width", [60, 80, 120])
+def test_a_sheet_is_shown_in_the_width_it_is_made_for(width: int) -> None:
+    full = "SHIFT HANDOVER".ljust(68) + "Demo nursery"
+    shown = TextPage("handover", [full, "=" * 80], printed=True).draw(Snapshot(), width)
+    rows = [text_of(row) for row in shown][2:]
+    assert rows[-1] == "=" * min(width, 80)
+    assert all(len(row) <= width for row in rows)
+    if width >= 80:
+        assert rows == [full, "=" * 80]
 
 
 def test_below_the_floor_it_says_so_and_comes_back(site: Path, open_terminal: Opened) -> None:
