@@ -145,6 +145,7 @@ def _shown(request: Request, task: Task, dosed: Dosed, empty: Plan, acid: TankAc
         cautions=cautions_for([*(each.supply for each in used), *poured]),
         reasons=why_salts(used, request.materials, dosed.end, request.managed),
         arithmetic=(
+            *_renewed_words(request, dosed, task.days),
             *arithmetic(steps, by_name, _before(request, dosed), request.situation.volumes_l[task.tank]),
             *acid.arithmetic,
         ),
@@ -180,16 +181,34 @@ def _steps(task: Task, dosed: Dosed, units: Array | None = None) -> tuple[Step, 
 
 
 def _before(request: Request, dosed: Dosed) -> dict[object, Array]:
-    """Composition of the tank just before the doses of each day, renewal done."""
+    """Composition of the tank just before the doses of each day, renewal done; today's as the tables show it."""
     litres = _litres(dosed)
     part = litres / request.situation.volumes_l["tank"]
     found: dict[object, Array] = {}
     for each in dosed.checkpoints:
         if each.name.startswith("tank before"):
             first = each.day == dosed.checkpoints[0].day
-            renewed = each.now + part * (refill_of(request) - each.now) if first and litres else each.now
+            now = request.situation.composition("tank") if each.day == 0 else each.now
+            renewed = now + part * (refill_of(request) - now) if first and litres else now
             found[request.situation.at + timedelta(days=each.day)] = renewed
     return found
+
+
+def _renewed_words(request: Request, dosed: Dosed, days: tuple[int, ...]) -> tuple[str, ...]:
+    """What a renewal on the first day leaves of each ion, as a sum; nothing without one."""
+    litres, volume = _litres(dosed), request.situation.volumes_l["tank"]
+    if litres <= 0.0 or days[0] != 0:
+        return ()
+    rows = zip(IONS, request.situation.composition("tank"), refill_of(request), strict=True)
+    return (
+        f"renewal: {litres:.0f} of {volume:.0f} L",
+        *(
+            f"  {ion}: ({now:.2f} now x {volume - litres:.0f} L + {water:.2f} in the water x {litres:.0f} L) / "
+            f"{volume:.0f} L = {(now * (volume - litres) + water * litres) / volume:.2f} mmol/L before"
+            for ion, now, water in rows
+            if ion in MAJOR
+        ),
+    )
 
 
 def _litres(dosed: Dosed) -> float:

@@ -197,6 +197,24 @@ def test_every_sum_of_the_arithmetic_adds_up() -> None:
             assert float(before) + float(added) == pytest.approx(float(after.split(" mmol")[0]), abs=0.011)
 
 
+def test_the_arithmetic_starts_from_the_numbers_shown_and_tells_the_renewal() -> None:
+    over = {**LOW_K, "K": 3.0, "Ca": 6.3, "Mg": 1.4, "NO3": 14.0, "SO4": 1.3}
+    place = place_of(over)._replace(analysis_days_old=1.0)
+
+    class Meant(MixingTank):  # the mean loop the model runs is not the median that is shown
+        def settled(self, doing, members):
+            course = super().settled(doing, members)
+            return course._replace(ions={point: 1.04 * ions for point, ions in course.ions.items()})
+
+    drawn = 100.0 * vector({"K": 20.0, "Ca": -12.0})
+    plan = hand_plan(request(place, Meant(place, 7, drawn), days=7))
+    left = 1.0 - plan.renewal.litres / 2000.0
+    (said,) = (line for line in plan.arithmetic if line.startswith("  K: (3.00 now"))
+    assert float(said.split(" = ")[1].split()[0]) == pytest.approx(3.0 * left, abs=0.0051)  # pure water fills up
+    first = next(line for line in plan.arithmetic if line.startswith("  K: ") and " before + " in line)
+    assert float(first.split(": ")[1].split(" before")[0]) == pytest.approx(3.0 * left, abs=0.0051)
+
+
 def test_why_this_salt_and_not_that_one() -> None:
     plan = hand_plan(request(place_of(), days=0, target="steiner"))
     used = {step.salt for step in plan.steps}
