@@ -163,7 +163,7 @@ def test_no_line_is_wider_than_the_screen(site: Path, open_terminal: Opened, siz
 def test_a_sheet_is_shown_in_the_width_it_is_made_for(width: int) -> None:
     full = "SHIFT HANDOVER".ljust(68) + "Demo nursery"
     shown = TextPage("handover", [full, "=" * 80], printed=True).draw(Snapshot(), width)
-    rows = [text_of(row) for row in shown][2:]
+    rows = [text_of([row]) for row in shown][2:]
     assert rows[-1] == "=" * min(width, 80)
     assert all(len(row) <= width for row in rows)
     if width >= 80:
