@@ -121,7 +121,8 @@ def gauges(estimate: Estimate, ahead: Forecast) -> tuple[Gauge, ...]:
         if value is None or (what in LIMITED and value.band is None):
             continue
         numbers = tuple(each.value for state in course if (each := reading_of(state, what)) is not None)
-        leaves = in_words(leaving.get(what), len(ahead.days), zone) if estimate.analyses else NOT_KNOWN
+        outside = _is_outside(value)
+        leaves = in_words(leaving.get(what), len(ahead.days), zone, outside) if estimate.analyses else NOT_KNOWN
         rows.append(Gauge(what, unit_of(what), value, numbers, len(past), leaves))
     return tuple(rows)
 
@@ -148,13 +149,29 @@ def unit_of(what: str) -> str:
     return "%" if what.endswith(" share") else "mmol/L"
 
 
-def in_words(leaving: LeavesBand | None, horizon: int, timezone: str = "UTC") -> str:
-    """When something leaves its band, with its range, as an operator would say it; dates on the clock of the site."""
+def _is_outside(value: Estimated) -> bool:
+    """Whether the number itself, as it is shown, is out of its band."""
+    low, high = value.band or (None, None)
+    return (low is not None and value.value < low) or (high is not None and value.value > high)
+
+
+def in_words(leaving: LeavesBand | None, horizon: int, timezone: str = "UTC", outside: bool = False) -> str:
+    """When something leaves its band, with its range, as an operator would say it; dates on the clock of the site.
+
+    ``outside``: the number shown beside it is out. Where nothing says so, half of the members out is no certainty.
+
+    >>> from fertui.estimate.passage import Days, LeavesBand
+    >>> half_out = LeavesBand("drain", "K share", None, Days(0.0, 0.0, 3.0), None, 0.55)
+    >>> in_words(half_out, 14), in_words(half_out, 14, outside=True)
+    ('perhaps out now', 'out')
+    """
     if leaving is None:
         return ""
     low, middle, high = leaving.days.low, leaving.days.value, leaving.days.high
     if middle == 0:
-        return f"out since {_day(leaving.since, timezone)}" if leaving.since is not None else "out"
+        if leaving.since is not None:
+            return f"out since {_day(leaving.since, timezone)}"
+        return "out" if outside else "perhaps out now"
     latest = f"over {horizon}" if high is None else f"{high:.0f}"
     if middle is None:
         return f"not in {horizon} days" if low is None else f"{low:.0f} to over {horizon} days"

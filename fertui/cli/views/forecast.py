@@ -48,7 +48,7 @@ def _inputs(ahead: Forecast) -> str:
 
 
 def _leaves(each: LeavesBand, horizon: int, timezone: str) -> str:
-    chance = "" if each.days.value == 0 else f", chance {100 * each.probability:.0f} %"
+    chance = "" if each.since is not None else f", chance {100 * each.probability:.0f} %"
     return f"{point_name(each.point)} {each.what}: {in_words(each, horizon, timezone)}{chance}"
 
 

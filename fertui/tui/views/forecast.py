@@ -288,7 +288,7 @@ def _row(
 
     left, name = _in_unit(left, each.what, unit)
     right, _ = _in_unit(right, each.what, unit)
-    out, probability = leaving.days.value == 0, leaving.probability
+    out, probability = leaving.since is not None, leaving.probability
     ink = OUT if out else LEAVING if probability >= 0.1 else "good"
     likely = "" if out or probability <= 0 else f", {100 * probability:.0f} %"
     label = f" {each.what} {name}".replace(" share %", " share, %")
