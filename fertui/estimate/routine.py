@@ -221,15 +221,25 @@ class _Builder:
     def _stock(self, time: float, water: Array) -> tuple[tuple[Hold, ...], Array]:
         """Stock held to the EC set point, in the proportions in force; else the last week's litres."""
         nothing = np.zeros(10)
-        if self.loop.layout == "known-feed" or self.holding.ec is None:
+        if self.loop.layout == "known-feed":
             return (), nothing
+        if self.holding.ec is None:
+            return (), self._fed_nothing()
         recipe, _ = self._recipe(time)
         set_point = self.scenario.feed_ec or self._planned("EC", time) or self.holding.set_point(self.now)
         if set_point is None:
-            return (), self._usual_stock()
+            usual = self._usual_stock()
+            return (), usual if usual.any() else self._fed_nothing()
         self._assume(f"stock is dosed to hold EC {set_point:.2g}")
         stock = carried(self.record, self.now) if recipe is None else beyond(compositions.array(recipe), water)
         return self.holding.made_for(set_point, stock), nothing
+
+    def _fed_nothing(self) -> Array:
+        """No stock (10,) [mmol/d], and the words for it: a loop that is fed all the same only lacks the entries."""
+        self._assume(
+            "nothing feeds the loop in these sums: no stock of the last week is logged; log stock, batch or recipe"
+        )
+        return np.zeros(10)
 
     def _usual_stock(self) -> Array:
         return self.record.stock.over(np.array([self.now - WEEK, self.now]))[0] / WEEK

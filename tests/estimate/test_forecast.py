@@ -259,3 +259,11 @@ def test_a_step_of_a_day_gone_by_is_not_expected_and_that_is_said() -> None:
     ahead = forecast(_lettuce(_accepted(6.6)), 1)
     assert ahead.days[0].points["tank"].ions["K"].mmol_l.value == pytest.approx(_potassium())
     assert any(each.startswith("accepted for a day gone by and never marked done") for each in ahead.assumed)
+
+
+def test_a_tank_without_logged_stock_is_said_to_be_fed_nothing() -> None:
+    words = "nothing feeds the loop in these sums"
+    assert any(each.startswith(words) for each in forecast(_lettuce(), 1).assumed)
+    fed_by_recipe = _lettuce(entry("setpoint", 6.3, "tank", EC=2.4), entry("recipe", 6.3, "tank", **SALAD))
+    assert not any(each.startswith(words) for each in forecast(fed_by_recipe, 1).assumed)
+    assert not any(each.startswith(words) for each in forecast(_slab(), 1).assumed)  # its feed is known
