@@ -10,6 +10,8 @@ import numpy as np
 from fertui.catalogue.crops import crop
 from fertui.chemistry.conductivity import conductivity
 from fertui.chemistry.ions import INDEX, IONS, Array, vector
+from fertui.estimate.display import LEAST_SHARED_MEQ
+from fertui.estimate.ranges import shared_meq
 from fertui.planning.acid import acid_on_shelf, source_water
 from fertui.planning.acid_steps import TankAcid, acid_steps, heated_words, tank_acid
 from fertui.planning.checkpoints import ec_of, too_weak, violation
@@ -77,7 +79,8 @@ def hand_plan(request: Request) -> Plan:
         return request.counted(empty._replace(notices=(words, *acid.notices)))
     task = _task(request, days, acid)
     dosed = dose(task, request.runs, request.solver, course)
-    if request.situation.analysis_days_old is None and not dosed.units.any() and request.wishes.days:
+    held = dosed.units.any() and shared_meq(dosed.end) >= LEAST_SHARED_MEQ
+    if request.situation.analysis_days_old is None and not held and request.wishes.days:
         return request.counted(empty._replace(feasible=False, reason=NOT_ANALYSED, sample_first=True))
     return _shown(request, task, dosed, empty, acid)
 

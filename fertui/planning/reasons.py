@@ -217,6 +217,8 @@ def outside_words(end: Array, shown: Mapping[str, float], goal: Goal) -> str:
     """
     found = []
     for ion, low, high in zip(SHARED, 100 * goal.share_low, 100 * goal.share_high, strict=True):
+        if ion not in shown:
+            return "hardly any K, Ca and Mg is left"
         band = f"band {round(float(low), 1):g}-{round(float(high), 1):g} %"
         if not low <= round(shown[ion]) <= high:
             found.append(f"{ion} share {shown[ion]:.0f} %, {band}")

@@ -27,3 +27,7 @@ def test_a_share_that_the_table_shows_inside_is_said_to_be_at_the_edge() -> None
 def test_two_shares_out_are_both_named() -> None:
     words = outside_words(END, {"K": 14.0, "Ca": 62.4, "Mg": 23.6}, GOAL)
     assert words == "K share 14 %, band 18-28 %; Ca share 62 %, band 48.1-60.1 %"
+
+
+def test_a_solution_too_thin_for_shares_is_said_to_be_empty() -> None:
+    assert outside_words(vector({"K": 0.03, "Ca": 0.03}), {}, GOAL) == "hardly any K, Ca and Mg is left"
