@@ -140,9 +140,17 @@ def _shown(request: Request, task: RecipeTask, recipe: Recipe, empty: Plan) -> P
         arithmetic=(*_arithmetic(request, task, recipe), *sheet.arithmetic),
         runner_up=_runner_up(recipe),
         sensitivity=_sensitivity(recipe),
-        notices=(*notice, *over_limit_words(recipe.end, request.managed), *sheet.notices),
+        notices=(*notice, *_acid_once(request), *over_limit_words(recipe.end, request.managed), *sheet.notices),
     )  # fmt: skip
     return request.counted(found)
+
+
+def _acid_once(request: Request) -> tuple[str, ...]:
+    """The tanks of a plan hold the acid that the acid sheet would pour into the make-up water."""
+    acid = _stock_acid(request)
+    if acid is None:
+        return ()
+    return (f"the {acid.name} in these tanks is all that the make-up water takes: leave out that of the acid sheet",)
 
 
 def _named(composition: Array) -> dict[str, float]:

@@ -191,7 +191,14 @@ def test_forecast_names_the_day_of_the_next_sample(demo_once: Path, capsys: pyte
     assert found["why"]
     assert {each["what"] for each in found["narrows"]} >= {"K share", "Ca share", "Mg share"}
     text = run(capsys, "forecast", demo_once, "--days", "7", "--at", NOON)[1]
-    assert f"{taken:%a %d %b} ({found['why']})" in " ".join(text.split())
+    assert f"{taken:%a} {taken.day} {taken:%b} ({found['why']})" in " ".join(text.split())
+
+
+def test_the_acid_of_a_plan_is_said_to_be_that_of_the_acid_sheet(
+    demo_once: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    text = run(capsys, "plan", demo_once, "--loop", "north bay", "--at", NOON)[1]
+    assert "in these tanks is all that the make-up water takes" in " ".join(text.split())
 
 
 def test_old_stock_left_in_a_tank_is_taken_off_by_what_its_batch_put_in(
