@@ -138,10 +138,9 @@ class HandMade(Bench):
         return SimpleNamespace(start=start, end=end, ions=ions, columns=columns, entries={}, **begun)
 
     def next_sample(self, ahead, loop=None, known=None):
-        taken, narrows = ahead.at + timedelta(days=3), {("root_zone", "K share"): 38.0}
-        return SimpleNamespace(
-            take_at=taken, result_at=taken + timedelta(days=2), why="the medium exchanges: every week", narrows_pct=narrows
-        )
+        taken, why = ahead.at + timedelta(days=3), "the medium exchanges: every week"
+        narrows = {("root_zone", "K share"): 38.0}
+        return SimpleNamespace(take_at=taken, result_at=taken + timedelta(days=2), why=why, narrows_pct=narrows)
 
     def forecast(self, loop=None, days=14, at=None, known=None, scenario=None):
         where = "root_zone" if loop != "lettuce" else "tank"
