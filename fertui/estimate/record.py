@@ -26,6 +26,9 @@ from fertui.logbook.intended import carried_out, given, part_left, subject
 from fertui.loop.values import Event
 from fertui.site.model import Loop, Site
 
+MOMENT_D = 1.2e-4
+"""Ten seconds: what happens closer to the end of a record than the steps of a run is put before it."""
+
 ANEW = ("planted", "replanted", "new medium", "emptied", "refilled")
 WATER_AMOUNTS = ("make_up", "irrigation", "drain", "condensate", "crop")
 METERED = ("make_up", "irrigation", "drain")
@@ -149,6 +152,12 @@ def _content(ions: Mapping[str, float]) -> Array:
     return compositions.array(ions) if ions else np.full(len(IONS), np.nan)
 
 
+def _end(at: float, events: Sequence[Event]) -> float:
+    """The end of a record [d]: what happened in its last moments lies before it, so that it counts."""
+    last = max((event.at for event in events if event.at <= at + 1e-9), default=at - 1.0)
+    return max(at, last + MOMENT_D)
+
+
 class _Reader:
     """Builds a record; holds what its steps share."""
 
@@ -169,10 +178,11 @@ class _Reader:
         """The whole record, piece by piece."""
         seen = self._observations()
         held = compositions.stock_by_tank(self.site, self.loop, self._certain("batch"))
+        events = self._events(seen)
         return Record(
-            site=self.site, loop=self.loop, at=at, whole=whole, zero=self.zero, end=self.days(at),
+            site=self.site, loop=self.loop, at=at, whole=whole, zero=self.zero, end=_end(self.days(at), events),
             first=self._first(), water=self._water(), levels=self._levels(), stock=self._stock(held), stock_held=held,
-            events=self._events(seen), feed=self._feed(seen),
+            events=events, feed=self._feed(seen),
             recipes=self._recipes(), sources=self._sources(), waters=self._waters(),
             site_now=as_analysed(self.site, self.of_all_loops, at), setpoints=self._steps("setpoint"),
             stages=self._steps("crop"), standing=self._standing(), light=self._light(),

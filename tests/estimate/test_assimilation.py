@@ -78,6 +78,15 @@ def test_the_record_stands_where_every_analysis_was_held_back() -> None:
     assert {row.issued for row in rows} == {moment(0.5), moment(7.5), moment(14.5)}
 
 
+def test_a_dose_counts_from_its_own_moment_on() -> None:
+    filled = entry("analysis", 1.0, "tank", point="tank", **SALAD)
+    dose = entry("dose", 3.0, "tank", salt="potassium nitrate", kg=1.0)
+    before, after = (assimilate(SITE, TANK, [filled, *done], moment(3.0)) for done in ((), (dose,)))
+    held = [each.ensemble.state.ions_mmol.sum(axis=1).mean(axis=0)[0] for each in (before, after)]
+    # 1 kg of KNO3 is 9891 mmol (101.10 g/mol, by hand).
+    assert held[1] - held[0] == pytest.approx(9891.0, rel=0.01)
+
+
 def test_a_doubtful_analysis_is_kept_and_never_used() -> None:
     shuffled = entry("analysis", 25.0, point="drain", doubtful="bottles look interchanged", **FEED)
     assert _estimate([*_weekly(4), shuffled], 27.0).points() == _estimate(_weekly(4), 27.0).points()
