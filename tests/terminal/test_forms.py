@@ -502,13 +502,19 @@ def test_a_time_typed_is_told_back_with_its_day(counting: Counted) -> None:
     assert re.search(r"when +yesterday 8:00_+ = \w{3} \d\d \w{3} \d{4} 08:00", terminal.text), terminal.text
 
 
-def test_typing_takes_the_place_of_a_value_that_stood_there(site: Path, counting: Counted) -> None:
+def correcting_25_litres(site: Path, counting: Counted) -> PseudoTerminal:
+    """A correction of stock logged with 25 litres, open in its form."""
     number = open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay").number
     terminal = counting.terminal
     terminal.press("7")
     terminal.until_text(f"▸{number}")
     terminal.press("c")
     terminal.until_text("Correct ")
+    return terminal
+
+
+def test_typing_takes_the_place_of_a_value_that_stood_there(site: Path, counting: Counted) -> None:
+    terminal = correcting_25_litres(site, counting)
     terminal.press("down", "26", "f2")
     terminal.until_text("Why is entry")
     terminal.press("slip", "enter")
@@ -518,12 +524,7 @@ def test_typing_takes_the_place_of_a_value_that_stood_there(site: Path, counting
 
 
 def test_a_correction_is_asked_about_before_it_is_written(site: Path, counting: Counted) -> None:
-    number = open_site(site).record("stock", {"tank": "calcium", "litres": "25", "by": "RV"}, "north bay").number
-    terminal = counting.terminal
-    terminal.press("7")
-    terminal.until_text(f"▸{number}")
-    terminal.press("c")
-    terminal.until_text("Correct ")
+    terminal = correcting_25_litres(site, counting)
     terminal.press("down", "2500", "f2")
     terminal.until_text("2500 L is more than")
     terminal.press("2x", "f2")

@@ -19,21 +19,12 @@ def site(todays_site: Path) -> Path:
     return todays_site
 
 
-@pytest.fixture
-def open_today(site: Path, open_terminal: Opened) -> PseudoTerminal:
-    shown = open_terminal(site)
-    shown.until_text("more to look at")
-    shown.settle()
-    return shown
-
-
 def give_initials(terminal: PseudoTerminal) -> None:
     terminal.until_text("Your initials:")
     terminal.press("M", "K", "enter")
 
 
-def test_a_vanished_logbook_becomes_a_sentence(site: Path, open_today: PseudoTerminal) -> None:
-    terminal = open_today
+def test_a_vanished_logbook_becomes_a_sentence(site: Path, terminal: PseudoTerminal) -> None:
     terminal.press("r", "2.6", "enter")
     terminal.until_text("= 2.6")
     for path in site.glob("logbook.sqlite3*"):
@@ -43,8 +34,7 @@ def test_a_vanished_logbook_becomes_a_sentence(site: Path, open_today: PseudoTer
     terminal.until_text("Nothing was saved; the form is kept.")
 
 
-def test_a_locked_logbook_becomes_a_sentence_and_the_form_is_kept(site: Path, open_today: PseudoTerminal) -> None:
-    terminal = open_today
+def test_a_locked_logbook_becomes_a_sentence_and_the_form_is_kept(site: Path, terminal: PseudoTerminal) -> None:
     terminal.press("r", "2.6", "enter", "+")
     terminal.until_text("Your initials:")
     with sqlite3.connect(site / "logbook.sqlite3", isolation_level=None) as other:
@@ -58,10 +48,10 @@ def test_a_locked_logbook_becomes_a_sentence_and_the_form_is_kept(site: Path, op
 
 
 def test_a_disk_that_takes_no_more_becomes_a_sentence_and_saving_works_once_there_is_room(
-    site: Path, open_today: PseudoTerminal
+    site: Path, terminal: PseudoTerminal
 ) -> None:
     """The system refuses every write into a file, as on a full disk; the terminal line is no file."""
-    terminal, before = open_today, open_site(site).last_number()
+    before = open_site(site).last_number()
     terminal.press("r", "2.6", "enter")
     terminal.until_text("= 2.6")
     limits = resource.prlimit(terminal.pid, resource.RLIMIT_FSIZE)
@@ -78,9 +68,9 @@ def test_a_disk_that_takes_no_more_becomes_a_sentence_and_saving_works_once_ther
 
 
 def test_a_site_file_broken_while_open_is_told_and_taken_up_once_repaired(
-    site: Path, open_today: PseudoTerminal
+    site: Path, terminal: PseudoTerminal
 ) -> None:
-    terminal, path = open_today, site / "site.toml"
+    path = site / "site.toml"
     good = path.read_text(encoding="utf-8")
     path.write_text(good + "\nx = [\n", encoding="utf-8")
     assert "site.toml" in terminal.until_text("site.toml cannot be read now")
@@ -98,13 +88,13 @@ def test_a_change_in_site_does_not_undo_what_someone_else_wrote_meanwhile(site: 
     assert (bench.site.name, bench.site.timezone) == ("South nursery", "Europe/Paris")
 
 
-def test_a_vanished_folder_becomes_a_sentence(site: Path, open_today: PseudoTerminal) -> None:
-    open_today.press("r", "2.6", "enter")
-    open_today.until_text("= 2.6")
+def test_a_vanished_folder_becomes_a_sentence(site: Path, terminal: PseudoTerminal) -> None:
+    terminal.press("r", "2.6", "enter")
+    terminal.until_text("= 2.6")
     shutil.rmtree(site)
-    open_today.press("+")
-    give_initials(open_today)
-    open_today.until_text("Nothing was saved; no draft can be kept either")
+    terminal.press("+")
+    give_initials(terminal)
+    terminal.until_text("Nothing was saved; no draft can be kept either")
 
 
 def test_a_site_that_cannot_be_opened_says_what_is_wrong(site: Path, open_terminal: Opened) -> None:
@@ -116,9 +106,8 @@ def test_a_site_that_cannot_be_opened_says_what_is_wrong(site: Path, open_termin
 
 
 def test_a_value_of_the_site_is_changed_only_once_old_and_new_were_looked_at(
-    site: Path, open_today: PseudoTerminal
+    site: Path, terminal: PseudoTerminal
 ) -> None:
-    terminal = open_today
     before = (site / "site.toml").read_text(encoding="utf-8")
     terminal.press("9", "/", "timezone", "enter", "enter", "Europe/Paris", "enter")
     terminal.until_text("Europe/Rome -> Europe/Paris: y writes it")
